@@ -1,0 +1,94 @@
+"""What anybody says about a frame: end actions, reactions, displacements and values along the members.
+
+An opinion returns an `Answer`, or `Silent` with its reason. Arrays follow the frame's member and joint order and its
+units and signs (README, Axes and signs). NaN stands for what the idealisation leaves undetermined or what this opinion
+cannot give, and for nothing else: `Answer.undetermined` says which values may be NaN.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from typing import Protocol
+
+import numpy as np
+
+from crosscheck.frame.model import Bools, Floats, Ints
+
+AXIAL, SHEAR, MOMENT, ACROSS = range(4)
+"""Columns of values along a member; the first three are also the columns of end actions."""
+
+
+@dataclass(frozen=True, slots=True)
+class CaseAnswer:
+    """One load case or combination.
+
+    ends: (m, 2, 3) axial (tension positive), shear (along local +y, acting on the member) and moment (clockwise,
+      acting on the member) at the `from` and `to` end, at the joint.
+    joints: (j, 3) dx, dy (global), rotation (clockwise, radians).
+    reactions: (j, 3) fx, fy, moment (clockwise) on the frame, global axes; zero where there is no support.
+    """
+
+    ends: Floats
+    joints: Floats
+    reactions: Floats
+
+
+@dataclass(frozen=True, slots=True)
+class Undetermined:
+    """What the idealisation leaves undetermined, whatever the load: True where it does.
+
+    axial: (m,); joints: (j, 3); reactions: (j, 3) in global axes.
+    """
+
+    axial: Bools
+    joints: Bools
+    reactions: Bools
+
+
+class Spans(Protocol):
+    """Values along the members, worked out when asked for."""
+
+    def along(self, name: str, member: Ints, x: Floats, side: Ints) -> Floats:
+        """(n, 4) axial, shear, moment, across (README, Axes and signs) at distance x of each member, just before
+        (side -1) or just after (+1) it; NaN where undetermined or not given."""
+        ...
+
+    def turning_points(self, name: str) -> tuple[Ints, Floats]:
+        """Member index and distance of every inner place where moment, shear or across may have an extreme."""
+        ...
+
+
+@dataclass(frozen=True, slots=True)
+class Answer:
+    """A given opinion. `cases` by load case and combination name; `silent` names cases it could not speak for, and why."""
+
+    opinion: str
+    cases: Mapping[str, CaseAnswer]
+    undetermined: Undetermined
+    spans: Spans
+    silent: Mapping[str, str] = field(default_factory=dict)
+    notes: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Silent:
+    """An opinion that abstains, and why, in one sentence."""
+
+    opinion: str
+    why: str
+
+
+@dataclass(frozen=True, slots=True)
+class WorkTable:
+    """A table of working for a reader who follows by hand: a heading, column heads, rows of text or numbers, remarks."""
+
+    heading: str
+    columns: tuple[str, ...]
+    rows: tuple[tuple[str | float | None, ...], ...]
+    remarks: tuple[str, ...] = ()
+
+
+def blank_case(members: int, joints: int) -> CaseAnswer:
+    """A case answer of zeros to fill in."""
+    return CaseAnswer(np.zeros((members, 2, 3)), np.zeros((joints, 3)), np.zeros((joints, 3)))
