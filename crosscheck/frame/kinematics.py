@@ -1,0 +1,425 @@
+"""How the frame can move, from geometry alone: mechanisms by name, and what an idealisation leaves undetermined.
+
+No stiffness enters. Elongations and end rotations are formed from joint displacements; a movement that needs none of
+them is a mechanism, and a set of axial forces that loads no joint (a self-stress) is undetermined when members are
+axially rigid. Joints that are rigidly connected move as one body, so the matrices here are as small
+as the frame's hinges allow: one body for a rigid-jointed frame, however large.
+
+Published: rigid bodies and their freedoms after S. Pellegrino and C. R. Calladine, "Matrix analysis of statically and
+kinematically indeterminate frameworks", Int. J. Solids Structures 22 (1986), 409-428 (from memory).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import scipy.sparse as sp
+
+from crosscheck.answer import Undetermined
+from crosscheck.frame.loads import LoadTable, load_table
+from crosscheck.frame.model import HELD, Bools, Floats, Frame, Ints
+from crosscheck.problems import MechanismFound, Problem, UnusableInput
+
+SINGULAR = 1e-9
+"""Singular values below this share of the largest are movements without resistance. Stable frames, flexible ones and
+tall towers included, stay above 1e-5; true mechanisms fall to rounding, below 1e-13."""
+FOLLOWS = 1e-9
+"""Share of an imposed change of length that an axially rigid frame may fail to follow by rounding alone."""
+ADVICE = "give it a support, a stiff joint or a member that stops this"
+DENSE = 500
+"""Up to this many unknowns a dense decomposition is quick; above it sparse inverse iteration is used."""
+
+Sparse = Any  # scipy.sparse matrices: their types differ between scipy releases
+
+
+@dataclass(frozen=True, slots=True)
+class Study:
+    """What the geometry says of a frame that is no mechanism; undetermined values whatever the load."""
+
+    undetermined: Undetermined
+
+
+@dataclass(frozen=True, slots=True)
+class Motion:
+    """One movement without resistance: (j, 3) dx, dy, clockwise rotation by joint, largest translation 1; in words."""
+
+    joints: Floats
+    says: str
+
+
+def study(frame: Frame) -> Study:
+    """Study the frame for all its cases.
+
+    Raises MechanismFound where it can move freely, and UnusableInput where a load meets no resistance or an axially
+    rigid frame cannot follow an imposed change of length.
+    """
+    found = mechanisms(frame)
+    if found:
+        raise MechanismFound(Problem(frame.file, None, "", motion.says, ADVICE) for motion in found)
+    turning, loose = free_rotations(frame), loose_freedoms(frame)
+    redundancy = AxialRedundancy(frame)
+    axial = redundancy.members()
+    problems: list[Problem] = []
+    for name in frame.cases:
+        table = load_table(frame, name)
+        problems += _unresisted(frame, name, table, turning, loose)
+        problems += redundancy.unfollowed(name, table)
+    if problems:
+        raise UnusableInput(problems)
+    joints = loose.copy()
+    joints[turning, 2] = True
+    return Study(Undetermined(axial=axial, joints=joints, reactions=redundancy.reactions()))
+
+
+# --- bodies and mechanisms -------------------------------------------------------------------------
+
+
+def connected(frame: Frame) -> Bools:
+    """(m, 2): True where the member's end is fixed or sprung to its joint's rotation, False where it is hinged."""
+    return np.asarray(frame.member_table.turn > 0.0)
+
+
+def free_rotations(frame: Frame) -> Bools:
+    """(j,): joints that have members, every one of them hinged there without a rigid zone, and no support against
+    turning: their own rotation is undetermined and moves nothing."""
+    t, joints = frame.member_table, len(frame.joints)
+    grips = connected(frame) | (t.zone > 0.0)
+    held = np.zeros(joints, dtype=bool)
+    held[t.ends[grips]] = True
+    joined = np.zeros(joints, dtype=bool)
+    joined[t.ends.ravel()] = True
+    return np.asarray(joined & ~held & (frame.support_table.stiffness[:, 2] == 0.0))
+
+
+def loose_freedoms(frame: Frame) -> Bools:
+    """(j, 3): displacements of joints that nothing joins, where no support determines them (global axes)."""
+    joints = len(frame.joints)
+    loose = np.ones(joints, dtype=bool)
+    loose[frame.member_table.ends.ravel()] = False
+    s = frame.support_table
+    free = (s.stiffness == 0.0) & loose[:, None]
+    x = (free[:, 0] & (s.cos != 0.0)) | (free[:, 1] & (s.sin != 0.0))
+    y = (free[:, 0] & (s.sin != 0.0)) | (free[:, 1] & (s.cos != 0.0))
+    return np.column_stack([x, y, free[:, 2]])
+
+
+def bodies(frame: Frame) -> Ints:
+    """(j,): number of the rigid body that each joint belongs to; joints linked by ends that transmit moment are one."""
+    t, joints = frame.member_table, len(frame.joints)
+    stiff = connected(frame).all(axis=1)
+    i, j = t.ends[stiff].T
+    graph = sp.coo_matrix((np.ones(len(i)), (i, j)), shape=(joints, joints))
+    return np.asarray(sp.csgraph.connected_components(graph, directed=False)[1], dtype=np.int64)
+
+
+def mechanisms(frame: Frame) -> list[Motion]:
+    """Every independent movement without resistance, named; at most a handful for large frames. Loose joints and the
+    free rotations of all-hinged joints are not mechanisms."""
+    body = bodies(frame)
+    scale = float(np.median(frame.member_table.length)) if frame.members else 1.0
+    spread = _body_motion(frame, body, scale)
+    constraints = (_constraints(frame, scale) @ spread).tocsc()
+    used = _body_unknowns(frame, body)
+    null = _null_space(constraints[:, used])
+    if null.shape[1] == 0:
+        return []
+    moves = (spread[:, used] @ _localised(null)).T.reshape(-1, len(frame.joints), 3)
+    moves[:, :, 2] /= scale
+    return [_named(frame, move) for move in moves]
+
+
+def _body_motion(frame: Frame, body: Ints, scale: float) -> Sparse:
+    """(3j, 3 bodies): joint displacements (dx, dy, rotation times scale) from body displacements about each body's
+    first joint."""
+    joints, count = len(frame.joints), int(body.max()) + 1
+    first = np.full(count, joints)
+    np.minimum.at(first, body, np.arange(joints))
+    arm = (frame.xy - frame.xy[first[body]]) / scale
+    k = np.arange(joints)
+    rows = np.concatenate([3 * k, 3 * k + 1, 3 * k + 2, 3 * k, 3 * k + 1])
+    cols = np.concatenate([3 * body, 3 * body + 1, 3 * body + 2, 3 * body + 2, 3 * body + 2])
+    data = np.concatenate([np.ones(3 * joints), arm[:, 1], -arm[:, 0]])
+    return sp.csc_matrix((data, (rows, cols)), shape=(3 * joints, 3 * count))
+
+
+def _body_unknowns(frame: Frame, body: Ints) -> Ints:
+    """Body displacements that mean anything: not those of loose joints, nor an all-hinged joint's own rotation."""
+    keep = np.ones((int(body.max()) + 1, 3), dtype=bool)
+    keep[body[free_rotations(frame)], 2] = False
+    loose = np.ones(len(frame.joints), dtype=bool)
+    loose[frame.member_table.ends.ravel()] = False
+    keep[body[loose]] = False
+    return np.flatnonzero(keep.ravel())
+
+
+def _constraints(frame: Frame, scale: float) -> Sparse:
+    """(rows, 3j): what no mechanism may do: stretch a member, turn one against a stiff end, move a support."""
+    joints = len(frame.joints)
+    stiff = connected(frame)
+    hinged = np.flatnonzero(~stiff.all(axis=1))
+    one = np.flatnonzero(stiff.sum(axis=1) == 1)
+    stretch = elongations(frame)[hinged]
+    turn = _end_rotations(frame, one, np.argmax(stiff[one], axis=1), scale)
+    return sp.vstack([_rotation_scaled(stretch, scale, joints), turn, _support_rows(frame)]).tocsr()
+
+
+def _rotation_scaled(matrix: Sparse, scale: float, joints: int) -> Sparse:
+    """The same rows for rotations measured times `scale`."""
+    return matrix @ sp.diags(np.tile([1.0, 1.0, 1.0 / scale], joints))
+
+
+def elongations(frame: Frame) -> Sparse:
+    """(m, 3j) elongation of each member from joint displacements dx, dy, rotation (which never enters: the rigid zones
+    lie along the member)."""
+    t = frame.member_table
+    m = np.arange(len(t.length))
+    i, j = 3 * t.ends[:, 0], 3 * t.ends[:, 1]
+    rows = np.tile(m, 4)
+    cols = np.concatenate([i, i + 1, j, j + 1])
+    data = np.concatenate([-t.cos, -t.sin, t.cos, t.sin])
+    return sp.csr_matrix((data, (rows, cols)), shape=(len(m), 3 * len(frame.joints)))
+
+
+def _end_rotations(frame: Frame, members: Ints, end: Ints, scale: float) -> Sparse:
+    """(n, 3j): clear length times the rotation of the given end of each member against its chord.
+
+    Chord rotation (clockwise) is -(w2 - w1)/clear, with w1 = local-y displacement of the face of the `from` zone,
+    which the joint's own rotation lowers by zone times rotation (and raises at the other end).
+    """
+    t = frame.member_table
+    c, s, z = t.cos[members], t.sin[members], t.zone[members]
+    i, j = 3 * t.ends[members, 0], 3 * t.ends[members, 1]
+    own = np.where(end == 0, i, j) + 2
+    n = np.arange(len(members))
+    rows = np.tile(n, 7)
+    cols = np.concatenate([i, i + 1, i + 2, j, j + 1, j + 2, own])
+    data = np.concatenate([s, -c, z[:, 0] / scale, -s, c, z[:, 1] / scale, t.clear[members] / scale])
+    return sp.csr_matrix((data, (rows, cols)), shape=(len(members), 3 * len(frame.joints)))
+
+
+def _support_rows(frame: Frame) -> Sparse:
+    """(3j, 3j) rows of the support axes, zero where free: a spring resists as surely as a held direction."""
+    turned = support_axes(frame)
+    return sp.diags((frame.support_table.stiffness.ravel() > 0.0).astype(float)) @ turned
+
+
+def support_axes(frame: Frame) -> Sparse:
+    """(3j, 3j): displacements along each joint's support axes from global ones."""
+    s = frame.support_table
+    k = 3 * np.arange(len(frame.joints))
+    rows = np.concatenate([k, k, k + 1, k + 1, k + 2])
+    cols = np.concatenate([k, k + 1, k, k + 1, k + 2])
+    data = np.concatenate([s.cos, s.sin, -s.sin, s.cos, np.ones(len(k))])
+    return sp.csr_matrix((data, (rows, cols)), shape=(3 * len(k), 3 * len(k)))
+
+
+# --- null spaces -----------------------------------------------------------------------------------
+
+
+def _null_space(matrix: Sparse) -> Floats:
+    """(n, k) orthonormal basis of the movements that the rows do not resist."""
+    n = matrix.shape[1]
+    if n == 0:
+        return np.zeros((0, 0))
+    if n <= DENSE:
+        return _dense_null_space(matrix.toarray())
+    return _sparse_null_space(matrix)
+
+
+def _dense_null_space(matrix: Floats) -> Floats:
+    n = matrix.shape[1]
+    square = matrix if matrix.shape[0] >= n else np.vstack([matrix, np.zeros((n - matrix.shape[0], n))])
+    _, values, vectors = np.linalg.svd(square, full_matrices=False)
+    return np.asarray(vectors[values <= SINGULAR * max(values[0], 1e-300)].T)
+
+
+def _sparse_null_space(matrix: Sparse, block: int = 6) -> Floats:
+    """Inverse iteration on the shifted normal matrix finds the weakest movements; the rows themselves, not their
+    squares, then say which of those meet no resistance."""
+    from scipy.sparse.linalg import splu
+
+    normal = (matrix.T @ matrix).tocsc()
+    size = float(normal.diagonal().max())
+    factor = splu((normal + sp.identity(normal.shape[0], format="csc") * (1e-13 * size)).tocsc())
+    basis = np.linalg.qr(np.random.default_rng(0).standard_normal((normal.shape[0], block)))[0]
+    for _ in range(6):
+        basis = np.linalg.qr(factor.solve(basis))[0]
+    _, values, vectors = np.linalg.svd(matrix @ basis, full_matrices=False)
+    weak = values <= SINGULAR * np.sqrt(size)
+    return np.asarray(basis @ vectors[weak].T)
+
+
+def _localised(null: Floats) -> Floats:
+    """The same movements, each as much on its own as can be: identity at well-chosen unknowns."""
+    from scipy.linalg import qr
+
+    if null.shape[1] == 1:
+        return null
+    pivots = qr(null.T, mode="economic", pivoting=True)[2][: null.shape[1]]
+    return np.asarray(np.linalg.solve(null[pivots].T, null.T).T)
+
+
+# --- words -----------------------------------------------------------------------------------------
+
+COMPASS = ("right", "up and right", "up", "up and left", "left", "down and left", "down", "down and right")
+
+
+def _named(frame: Frame, move: Floats) -> Motion:
+    """The movement scaled to its largest translation, turned to the usual sense (right, else down), in words."""
+    names = list(frame.joints)
+    shift = np.hypot(move[:, 0], move[:, 1])
+    span = float(np.max(np.ptp(frame.xy, axis=0))) or 1.0
+    if shift.max() <= 1e-6 * np.abs(move[:, 2]).max() * span:
+        turning = [names[k] for k in np.flatnonzero(np.abs(move[:, 2]) > 1e-6 * np.abs(move[:, 2]).max())]
+        return Motion(move, f"the frame can move: {_listed(turning)} can turn freely")
+    move = move / shift.max()
+    lead = move[int(np.argmax(shift))]
+    if (lead[0] if abs(lead[0]) > 1e-6 else -lead[1]) < 0:
+        move = -move
+    moving = np.flatnonzero(shift > 1e-6 * shift.max())
+    return Motion(move, _sentence(frame, names, move, moving))
+
+
+def _sentence(frame: Frame, names: list[str], move: Floats, moving: Ints) -> str:
+    words = [COMPASS[round(np.degrees(np.arctan2(move[k, 1], move[k, 0])) / 45.0) % 8] for k in moving]
+    groups: dict[str, list[str]] = {}
+    for k, word in zip(moving, words, strict=True):
+        groups.setdefault(word, []).append(names[k])
+    joined = np.unique(frame.member_table.ends)
+    subject = "the frame can sway" if set(groups) <= {"right", "left"} else "the frame can move"
+    if len(groups) == 1 and len(moving) == len(joined):
+        word = next(iter(groups))
+        return f"nothing holds the frame: every joint moves {word} together"
+    return f"{subject}: " + ", ".join(
+        f"{_listed(group)} {'moves' if len(group) == 1 else 'move'} {word}{' together' if len(group) > 1 else ''}"
+        for word, group in groups.items()
+    )
+
+
+def _listed(names: list[str], most: int = 6) -> str:
+    if len(names) > most:
+        return f"{', '.join(names[:most])} and {len(names) - most} more"
+    return names[0] if len(names) == 1 else f"{', '.join(names[:-1])} and {names[-1]}"
+
+
+# --- what axially rigid members leave undetermined -------------------------------------------------
+
+
+class AxialRedundancy:
+    """The self-stress of the axially rigid members: axial forces that load no joint (left null space of elongations).
+
+    Small frames use a dense decomposition; large ones project random vectors with a sparse factor. Either way it
+    depends on geometry and supports alone, never on a load case.
+    """
+
+    def __init__(self, frame: Frame) -> None:
+        self.frame = frame
+        rigid = frame.analysis.axial == "rigid"
+        self.rigid = np.full(len(frame.members), rigid)
+        if rigid:
+            self._prepare()
+
+    def _prepare(self) -> None:
+        frame = self.frame
+        self.turned = elongations(frame) @ support_axes(frame).T
+        self.held = frame.support_table.stiffness.ravel() == HELD
+        self.free = self.turned[:, np.flatnonzero(~self.held)].tocsc()
+        self._null: Floats | None = None
+        self._factor: Any = None
+        if min(self.free.shape) <= DENSE:
+            self._null = self._dense_null()
+        else:
+            from scipy.sparse.linalg import splu
+
+            normal = (self.free.T @ self.free).tocsc()
+            self._shift = 1e-9 * float(normal.diagonal().max())
+            self._factor = splu((normal + sp.identity(normal.shape[0], format="csc") * self._shift).tocsc())
+
+    def _dense_null(self) -> Floats:
+        """(m, k) orthonormal self-stresses."""
+        left, values, _ = np.linalg.svd(self.free.toarray(), full_matrices=True)
+        rank = int(np.sum(values > SINGULAR * max(float(values.max(initial=0.0)), 1e-300)))
+        return np.asarray(left[:, rank:])
+
+    def project(self, lengths: Floats) -> Floats:
+        """The part of member elongations (m, k) that no displacement of the joints can produce."""
+        if self._null is not None:
+            return np.asarray(self._null @ (self._null.T @ lengths))
+        # Each pass leaves the unreachable part alone and shrinks the reachable one by shift / (value**2 + shift).
+        rest = lengths
+        for _ in range(4):
+            rest = rest - self.free @ self._factor.solve(self.free.T @ rest)
+        return np.asarray(rest)
+
+    def _samples(self) -> Floats:
+        """(m, k) self-stresses that together load every member that any self-stress loads."""
+        if self._null is not None:
+            return self._null
+        return self.project(np.random.default_rng(1).standard_normal((len(self.rigid), 3)))
+
+    def members(self) -> Bools:
+        """(m,): True where the axial force is undetermined."""
+        if not self.rigid.any():
+            return self.rigid
+        return np.asarray(np.abs(self._samples()).max(axis=1, initial=0.0) > 1e-7)
+
+    def reactions(self) -> Bools:
+        """(j, 3): True where a reaction (global axes) is undetermined."""
+        joints = len(self.frame.joints)
+        if not self.rigid.any():
+            return np.zeros((joints, 3), dtype=bool)
+        along = self.turned.T @ self._samples()
+        along[~self.held] = 0.0
+        globally = support_axes(self.frame).T @ along
+        return np.asarray((np.abs(globally).max(axis=1, initial=0.0) > 1e-7).reshape(joints, 3))
+
+    def unfollowed(self, name: str, table: LoadTable) -> list[Problem]:
+        """Problems of a case whose temperatures, misfits or settlements the axially rigid frame cannot follow."""
+        if not self.rigid.any():
+            return []
+        t = self.frame.member_table
+        heat = np.where(table.mean != 0.0, table.mean * t.alpha * t.clear, 0.0)
+        moved = np.where(self.held, table.settlement.ravel(), 0.0)
+        imposed = heat + table.misfit - self.turned @ moved
+        size = float(np.abs(imposed).max(initial=0.0))
+        if size == 0.0:
+            return []
+        rest = np.abs(self.project(imposed[:, None])[:, 0])
+        stuck = np.flatnonzero(rest > FOLLOWS * size)
+        if len(stuck) == 0:
+            return []
+        names = list(self.frame.members)
+        says = (
+            f"an axially rigid frame cannot follow the temperature, misfit or settlement of case {name}: "
+            f"it would change the length of {_listed([names[k] for k in stuck])}"
+        )
+        line = self.frame.lines.get(f"loads.{name}")
+        return [Problem(self.frame.file, line, f"loads.{name}", says, 'use axial = "elastic"')]
+
+
+# --- loads that nothing resists --------------------------------------------------------------------
+
+
+def _unresisted(frame: Frame, name: str, table: LoadTable, turning: Bools, loose: Bools) -> list[Problem]:
+    problems = []
+    names = list(frame.joints)
+    line = frame.lines.get(f"loads.{name}")
+    for k in np.flatnonzero((table.joint[:, 2] != 0.0) & turning):
+        says = f"a couple acts on joint {names[k]}, where every end is hinged and nothing resists rotation"
+        problems.append(Problem(frame.file, line, f"loads.{name}", says, "put the couple on a member, or remove it"))
+    for k in np.flatnonzero(loose.any(axis=1)):
+        if _meets_freedom(frame, table.joint[k], int(k)):
+            says = f"a load acts on joint {names[k]}, which nothing joins or holds in that direction"
+            problems.append(Problem(frame.file, line, f"loads.{name}", says, "join a member to it, or remove the load"))
+    return problems
+
+
+def _meets_freedom(frame: Frame, load: Floats, k: int) -> bool:
+    s = frame.support_table
+    along = np.array([
+        s.cos[k] * load[0] + s.sin[k] * load[1], -s.sin[k] * load[0] + s.cos[k] * load[1], load[2],
+    ])  # fmt: skip
+    free = s.stiffness[k] == 0.0
+    return bool(np.any(np.abs(along[free]) > 1e-12 * max(float(np.abs(load).max()), 1e-300)))
