@@ -1,0 +1,254 @@
+"""Slope-deflection coefficients and fixed-end actions of single members, in closed form.
+
+The flexible part of a member lies between the faces of its rigid zones; `clear` is its length l, x runs from the
+`from` face. Forces P act along local +y, couples C clockwise, line loads w along local +y. Formulas here stand on
+purpose a second and third time in the other opinion and in the audit, each by another road.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from crosscheck.frame.loads import LoadTable
+from crosscheck.frame.model import Floats, Frame, Ints
+
+
+@dataclass(frozen=True, slots=True)
+class Coefficients:
+    """The generalised slope-deflection equation M = stiffness @ phi + FEM of every member.
+
+    stiffness: (m, 2, 2) end moments (at the faces) from end rotations against the chord, force*length per radian.
+    axial: (m,) axial force per elongation, force/length; NaN where the member is axially rigid.
+    """
+
+    stiffness: Floats
+    axial: Floats
+
+
+def coefficients(frame: Frame) -> Coefficients:
+    """Slope-deflection coefficients from the flexibility of the member as a simple beam.
+
+    A simple beam under clockwise end moments turns by
+        phi_1 = (l/3EI + 1/(G As l)) M_1 + (-l/6EI + 1/(G As l)) M_2
+    and a connection of stiffness k adds M/k. With g = k/(k + s), s = EI/l, which is 1 for a rigid end and 0 for a hinge,
+    the inverse is G (F G + (1 - G)/s)^-1: hinges need no separate formula. Plain ends give 4s and 2s, a far
+    hinge 3s.
+    """
+    t = frame.member_table
+    s = t.E * t.I / t.clear
+    shear = s / (t.G * t.shear_area * t.clear) if frame.analysis.shear == "elastic" else np.zeros_like(s)
+    grip = np.where(np.isinf(t.turn), 1.0, t.turn / (np.where(np.isinf(t.turn), 0.0, t.turn) + s[:, None]))
+    same, cross = 1.0 / 3.0 + shear, -1.0 / 6.0 + shear
+    g1, g2 = grip[:, 0], grip[:, 1]
+    a11, a12 = same * g1 + 1.0 - g1, cross * g2
+    a21, a22 = cross * g1, same * g2 + 1.0 - g2
+    scale = s / (a11 * a22 - a12 * a21)
+    stiffness = np.empty((len(s), 2, 2))
+    stiffness[:, 0, 0] = g1 * a22 * scale
+    stiffness[:, 1, 1] = g2 * a11 * scale
+    stiffness[:, 0, 1] = stiffness[:, 1, 0] = -g1 * a12 * scale
+    rigid = frame.analysis.axial == "rigid"
+    axial = np.full_like(s, np.nan) if rigid else t.E * t.A / t.clear
+    return Coefficients(stiffness, axial)
+
+
+@dataclass(frozen=True, slots=True)
+class SplitLoads:
+    """A case's loads divided at the faces of the rigid zones, as flat rows.
+
+    place: 0 on the `from` zone, 1 on the flexible part, 2 on the `to` zone. at, start, end: joint-to-joint distances.
+    Lines: intensity `mean` at the middle and `slope` per length, each (rows, 2) for along and across.
+    """
+
+    point_member: Ints
+    point_place: Ints
+    point_at: Floats
+    point_force: Floats
+    point_couple: Floats
+    line_member: Ints
+    line_place: Ints
+    line_start: Floats
+    line_end: Floats
+    line_mean: Floats
+    line_slope: Floats
+
+
+def split_loads(frame: Frame, table: LoadTable) -> SplitLoads:
+    """Divide the loads of a case at the faces of the rigid zones."""
+    t = frame.member_table
+    m, at = table.point_member, table.point_at
+    place = np.where(at < t.zone[m, 0], 0, np.where(at > t.length[m] - t.zone[m, 1], 2, 1))
+    q = table.line_member
+    faces = np.column_stack([np.zeros(len(q)), t.zone[q, 0], t.length[q] - t.zone[q, 1], t.length[q]])
+    rows = [_clip_lines(table, faces[:, k], faces[:, k + 1], k) for k in range(3)]
+    member, part, start, end, mean, slope = (np.concatenate(column) for column in zip(*rows, strict=True))
+    return SplitLoads(
+        m, place, at, np.column_stack([table.point_along, table.point_across]), table.point_couple,
+        member, part, start, end, mean, slope,
+    )  # fmt: skip
+
+
+def _clip_lines(
+    table: LoadTable, lower: Floats, upper: Floats, place: int
+) -> tuple[Ints, Ints, Floats, Floats, Floats, Floats]:
+    start, end = np.maximum(table.line_start, lower), np.minimum(table.line_end, upper)
+    keep = end > start
+    run = (table.line_end - table.line_start)[keep, None]
+    first = np.stack([table.line_along[keep, 0], table.line_across[keep, 0]], axis=1)
+    last = np.stack([table.line_along[keep, 1], table.line_across[keep, 1]], axis=1)
+    slope = (last - first) / run
+    middle = 0.5 * (start + end)[keep, None] - table.line_start[keep, None]
+    member = table.line_member[keep]
+    return member, np.full(len(member), place), start[keep], end[keep], first + slope * middle, slope
+
+
+def load_moments(mean: Floats, slope: Floats, middle: Floats, half: Floats) -> tuple[Floats, Floats, Floats, Floats]:
+    """Integrals of w, w x, w x^2 and w x^3 over a linear load of middle intensity `mean` and gradient `slope` on
+    middle - half to middle + half. Centred, so that a narrow load loses no digits."""
+    h2 = half * half
+    zeroth = 2 * half * mean
+    first = 2 * half * (mean * middle + slope * h2 / 3)
+    second = 2 * half * (mean * (middle**2 + h2 / 3) + 2 * slope * middle * h2 / 3)
+    third = 2 * half * (mean * (middle**3 + middle * h2) + slope * (middle**2 * h2 + h2 * h2 / 5))
+    return zeroth, first, second, third
+
+
+@dataclass(frozen=True, slots=True)
+class FixedEnds:
+    """Actions on the members of one case with every joint held, and the free elongation.
+
+    moments: (m, 2) clockwise at the faces. axial: (m,) at the `from` face, without the effect of `stretch`.
+    stretch: (m,) elongation that temperature and misfit would give a free member.
+    between: (m, 3) on the flexible part: sum of along forces, sum of across forces, clockwise moment of across forces
+      and couples about the `to` face. zones: (m, 2, 3) on each rigid zone: along, across, clockwise moment about its joint.
+    """
+
+    moments: Floats
+    axial: Floats
+    stretch: Floats
+    between: Floats
+    zones: Floats
+
+
+def fixed_ends(frame: Frame, table: LoadTable, stiffness: Floats) -> FixedEnds:
+    """Fixed-end actions from the end rotations of the loaded simple beam: FEM = -stiffness @ phi_0.
+
+    phi_0 of a force P at a (b = l - a): -P a b (l + b)/(6 EI l) and +P a b (l + a)/(6 EI l); of a couple C:
+    C (3b^2 - l^2)/(6 EI l) + C/(G As l) and C (3a^2 - l^2)/(6 EI l) + C/(G As l); of a free curvature k (sagging):
+    +k l/2 and -k l/2; line loads by integrating the first. Forces cause no end rotation by shear.
+    """
+    loads = split_loads(frame, table)
+    turn = _point_rotations(frame, loads) + _line_rotations(frame, loads) + _thermal_rotations(frame, table)
+    between, axial = _flexible_totals(frame, loads)
+    t = frame.member_table
+    heat = np.where(table.mean != 0.0, table.mean * t.alpha * t.clear, 0.0)
+    return FixedEnds(
+        moments=-np.einsum("mij,mj->mi", stiffness, turn),
+        axial=axial,
+        stretch=heat + table.misfit,
+        between=between,
+        zones=_zone_totals(frame, loads),
+    )
+
+
+def _point_rotations(frame: Frame, loads: SplitLoads) -> Floats:
+    t = frame.member_table
+    keep = loads.point_place == 1
+    m, force, couple = loads.point_member[keep], loads.point_force[keep, 1], loads.point_couple[keep]
+    length = t.clear[m]
+    a = loads.point_at[keep] - t.zone[m, 0]
+    b = length - a
+    bend = 6 * t.E[m] * t.I[m] * length
+    shear = couple / (t.G[m] * t.shear_area[m] * length) if frame.analysis.shear == "elastic" else 0.0
+    first = (-force * a * b * (length + b) + couple * (3 * b * b - length**2)) / bend + shear
+    second = (force * a * b * (length + a) + couple * (3 * a * a - length**2)) / bend + shear
+    return _summed(len(t.length), m, np.column_stack([first, second]))
+
+
+def _line_rotations(frame: Frame, loads: SplitLoads) -> Floats:
+    t = frame.member_table
+    keep = loads.line_place == 1
+    m = loads.line_member[keep]
+    length, start, end = t.clear[m], loads.line_start[keep] - t.zone[m, 0], loads.line_end[keep] - t.zone[m, 0]
+    mean, slope = loads.line_mean[keep, 1], loads.line_slope[keep, 1]
+    _, one, two, three = load_moments(mean, slope, (start + end) / 2, (end - start) / 2)
+    bend = 6 * t.E[m] * t.I[m] * length
+    first = -(2 * length**2 * one - 3 * length * two + three) / bend
+    second = (length**2 * one - three) / bend
+    return _summed(len(t.length), m, np.column_stack([first, second]))
+
+
+def _thermal_rotations(frame: Frame, table: LoadTable) -> Floats:
+    half = thermal_curvature(frame, table) * frame.member_table.clear / 2
+    return np.column_stack([half, -half])
+
+
+def thermal_curvature(frame: Frame, table: LoadTable) -> Floats:
+    """(m,) free curvature, sagging positive (a warmer -y face lengthens), 1/length."""
+    t = frame.member_table
+    return np.asarray(np.where(table.difference != 0.0, t.alpha * table.difference / t.depth, 0.0))
+
+
+def _flexible_totals(frame: Frame, loads: SplitLoads) -> tuple[Floats, Floats]:
+    """`between` and the axial force at the `from` face with both ends held: sum of F (l - a)/l."""
+    t = frame.member_table
+    points, lines = loads.point_place == 1, loads.line_place == 1
+    m, q = loads.point_member[points], loads.line_member[lines]
+    to_face = (t.length - t.zone[:, 1])[m] - loads.point_at[points]
+    force, couple = loads.point_force[points], loads.point_couple[points]
+    rows = np.column_stack([force, force[:, 1] * to_face + couple, force[:, 0] * to_face / t.clear[m]])
+    totals = _summed(len(t.length), m, rows)
+    face = (t.length - t.zone[:, 1])[q]
+    middle, half = (loads.line_start + loads.line_end)[lines] / 2, (loads.line_end - loads.line_start)[lines] / 2
+    zeroth, first, _, _ = load_moments(
+        loads.line_mean[lines].T, -loads.line_slope[lines].T, face - middle, half
+    )
+    totals += _summed(len(t.length), q, np.column_stack([zeroth[0], zeroth[1], first[1], first[0] / t.clear[q]]))
+    return totals[:, :3], totals[:, 3]
+
+
+def _zone_totals(frame: Frame, loads: SplitLoads) -> Floats:
+    """(m, 2, 3): along, across and clockwise moment about the joint of what acts on each rigid zone."""
+    t = frame.member_table
+    zones = np.zeros((len(t.length), 2, 3))
+    for side, place in ((0, 0), (1, 2)):
+        points, lines = loads.point_place == place, loads.line_place == place
+        m, q = loads.point_member[points], loads.line_member[lines]
+        # An upward force right of the joint turns it counter-clockwise, left of the joint clockwise.
+        joint = np.zeros(len(t.length)) if side == 0 else t.length
+        arm = joint[m] - loads.point_at[points]
+        force, couple = loads.point_force[points], loads.point_couple[points]
+        zones[:, side] += _summed(len(t.length), m, np.column_stack([force, force[:, 1] * arm + couple]))
+        middle, half = (loads.line_start + loads.line_end)[lines] / 2, (loads.line_end - loads.line_start)[lines] / 2
+        zeroth, first, _, _ = load_moments(
+            loads.line_mean[lines].T, -loads.line_slope[lines].T, joint[q] - middle, half
+        )
+        zones[:, side] += _summed(len(t.length), q, np.column_stack([zeroth[0], zeroth[1], first[1]]))
+    return zones
+
+
+def _summed(count: int, member: Ints, rows: Floats) -> Floats:
+    """(count, columns): rows added up by member."""
+    out = np.zeros((count, rows.shape[1]))
+    np.add.at(out, member, rows)
+    return out
+
+
+def end_actions(frame: Frame, moments: Floats, axial: Floats, fixed: FixedEnds) -> Floats:
+    """(m, 2, 3) axial, shear, moment at the joints, from the moments at the faces and the axial force at the `from`
+    face, by statics of the flexible part and then of each rigid zone."""
+    t = frame.member_table
+    along, across, turning = fixed.between.T
+    shear_1 = -(moments.sum(axis=1) + turning) / t.clear
+    shear_2 = -shear_1 - across
+    zone_1, zone_2 = fixed.zones[:, 0], fixed.zones[:, 1]
+    ends = np.empty((len(t.length), 2, 3))
+    ends[:, 0, 0] = axial + zone_1[:, 0]
+    ends[:, 1, 0] = axial - along - zone_2[:, 0]
+    ends[:, 0, 1] = shear_1 - zone_1[:, 1]
+    ends[:, 1, 1] = shear_2 - zone_2[:, 1]
+    ends[:, 0, 2] = moments[:, 0] - shear_1 * t.zone[:, 0] - zone_1[:, 2]
+    ends[:, 1, 2] = moments[:, 1] + shear_2 * t.zone[:, 1] - zone_2[:, 2]
+    return ends

@@ -1,0 +1,195 @@
+"""Values along the members in closed form: sums of powers of the distance past each load (Macaulay 1919)."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from functools import cached_property
+
+import numpy as np
+
+from crosscheck.answer import CaseAnswer, Undetermined
+from crosscheck.frame.loads import LoadTable
+from crosscheck.frame.model import Bools, Floats, Frame, Ints
+from crosscheck.frame.stations import Stations, stations
+from crosscheck.opinions.slope_deflection.members import SplitLoads, load_moments, split_loads, thermal_curvature
+
+HALVINGS = 60
+
+
+class ClosedFormSpans:
+    """Values along members from their end actions and joint displacements (the Spans protocol of answer.py)."""
+
+    def __init__(
+        self, frame: Frame, tables: Mapping[str, LoadTable], cases: Mapping[str, CaseAnswer], undetermined: Undetermined
+    ) -> None:
+        self.frame, self.tables, self.cases, self.undetermined = frame, tables, cases, undetermined
+
+    def along(self, name: str, member: Ints, x: Floats, side: Ints) -> Floats:
+        """(n, 4) axial, shear, moment, across; see answer.Spans."""
+        axial, shear, moment = self._forces(name, member, x, side)
+        return np.stack([axial, shear, moment, self._across(name, member, x)], axis=1)
+
+    def turning_points(self, name: str) -> tuple[Ints, Floats]:
+        """Where shear passes zero, where it turns, and where the deflection turns, piece by piece between stations."""
+        left, right = self._pieces
+        member, a, b = self._stations.member[left], self._stations.x[left], self._stations.x[right]
+        found = [*self._shear_places(name, member, a, b), self._level_places(name, member, a, b)]
+        return np.concatenate([m for m, _ in found]), np.concatenate([x for _, x in found])
+
+    @cached_property
+    def _stations(self) -> Stations:
+        return stations(self.frame, list(self.tables.values()))
+
+    @cached_property
+    def _pieces(self) -> tuple[Ints, Ints]:
+        """Indices of neighbouring stations of one member that stand apart: loads are linear between them."""
+        s = self._stations
+        apart = (s.member[1:] == s.member[:-1]) & (s.x[1:] > s.x[:-1])
+        left = np.flatnonzero(apart)
+        return left, left + 1
+
+    def _forces(self, name: str, member: Ints, x: Floats, side: Ints) -> tuple[Floats, Floats, Floats]:
+        """Axial, shear and moment by statics from the `from` end, at the joint."""
+        ends, table = self.cases[name].ends[member, 0], self.tables[name]
+        axial, shear = ends[:, 0].copy(), ends[:, 1].copy()
+        moment = ends[:, 2] + ends[:, 1] * x
+        point, load = _pairs(member, table.point_member)
+        past = x[point] - table.point_at[load]
+        acts = (past > 0) | ((past == 0) & (side[point] > 0))
+        point, load, past = point[acts], load[acts], past[acts]
+        np.add.at(axial, point, -table.point_along[load])
+        np.add.at(shear, point, table.point_across[load])
+        np.add.at(moment, point, table.point_across[load] * past + table.point_couple[load])
+        point, zeroth_along, zeroth, first, _ = self._line_effects(name, member, x)
+        np.add.at(axial, point, -zeroth_along)
+        np.add.at(shear, point, zeroth)
+        np.add.at(moment, point, first)
+        return axial, shear, moment
+
+    def _line_effects(
+        self, name: str, member: Ints, x: Floats, flexible: bool = False
+    ) -> tuple[Ints, Floats, Floats, Floats, Floats]:
+        """For pairs of a place and a line load begun before it: the place, the along force, and the integrals of
+        w, w d and w d^3 over the part before it, d being the distance back from the place."""
+        t = self._split[name]
+        rows = np.flatnonzero(t.line_place == 1) if flexible else np.arange(len(t.line_member))
+        point, pick = _pairs(member, t.line_member[rows])
+        load = rows[pick]
+        begun = x[point] > t.line_start[load]
+        point, load = point[begun], load[begun]
+        start, end = t.line_start[load], np.minimum(t.line_end[load], x[point])
+        back, half = x[point] - (start + end) / 2, (end - start) / 2
+        # Middle intensity of the part before the place; distance runs backwards, hence the turned gradient.
+        shifted = (start + end) / 2 - (t.line_start[load] + t.line_end[load]) / 2
+        mean = t.line_mean[load] + t.line_slope[load] * shifted[:, None]
+        along = 2 * half * mean[:, 0]
+        zeroth, first, _, third = load_moments(mean[:, 1], -t.line_slope[load, 1], back, half)
+        return point, along, zeroth, first, third
+
+    @cached_property
+    def _split(self) -> dict[str, SplitLoads]:
+        return {name: split_loads(self.frame, table) for name, table in self.tables.items()}
+
+    # --- deflection ---
+
+    def _across(self, name: str, member: Ints, x: Floats) -> Floats:
+        """Displacement along local y: straight on the rigid zones, bent between the faces."""
+        t = self.frame.member_table
+        near, far, turn_near, turn_far = self._joint_moves(name)
+        face_1, face_2 = t.zone[member, 0], (t.length - t.zone[:, 1])[member]
+        inside = np.clip(x, face_1, face_2)
+        bent = self._bend(name, member, inside)
+        whole = self._bend(name, member, face_2)
+        w1 = near[member] - np.nan_to_num(turn_near[member]) * face_1
+        w2 = far[member] + np.nan_to_num(turn_far[member]) * (t.length[member] - face_2)
+        # The chord and the slope at the `from` face: whatever makes the deflection at the `to` face come out right.
+        flexible = w1 + bent + (w2 - w1 - whole) * (inside - face_1) / t.clear[member]
+        zone_1 = near[member] - np.nan_to_num(turn_near[member]) * x
+        zone_2 = far[member] + np.nan_to_num(turn_far[member]) * (t.length[member] - x)
+        return np.where(x < face_1, zone_1, np.where(x > face_2, zone_2, flexible))
+
+    def _joint_moves(self, name: str) -> tuple[Floats, Floats, Floats, Floats]:
+        """Displacement along local y and rotation of each member's two joints, all (m,)."""
+        t, moves = self.frame.member_table, self.cases[name].joints
+        i, j = moves[t.ends[:, 0]], moves[t.ends[:, 1]]
+        return i[:, 1] * t.cos - i[:, 0] * t.sin, j[:, 1] * t.cos - j[:, 0] * t.sin, i[:, 2], j[:, 2]
+
+    def _bend(self, name: str, member: Ints, x: Floats) -> Floats:
+        """Deflection at x from bending, temperature and shear alone, both value and section rotation zero at the `from`
+        face: double integral of M/EI and of the free curvature, less the integral of shear over G As."""
+        t, table = self.frame.member_table, self.tables[name]
+        d = x - t.zone[member, 0]
+        shear_1, moment_1 = self._face_actions(name)
+        area = moment_1[member] * d**2 / 2 + shear_1[member] * d**3 / 6
+        pull = shear_1[member] * d
+        point, load = _pairs(member, table.point_member)
+        past = x[point] - table.point_at[load]
+        acts = (past > 0) & self._on_flexible(table, load)
+        point, load, past = point[acts], load[acts], past[acts]
+        force, couple = table.point_across[load], table.point_couple[load]
+        np.add.at(area, point, force * past**3 / 6 + couple * past**2 / 2)
+        np.add.at(pull, point, force * past)
+        point, _, _, first, third = self._line_effects(name, member, x, flexible=True)
+        np.add.at(area, point, third / 6)
+        np.add.at(pull, point, first)
+        curve = thermal_curvature(self.frame, table)[member] * d**2 / 2
+        shear = pull / (t.G * t.shear_area)[member] if self.frame.analysis.shear == "elastic" else 0.0
+        return np.asarray(area / (t.E * t.I)[member] + curve - shear)
+
+    def _on_flexible(self, table: LoadTable, load: Ints) -> Bools:
+        t, m, at = self.frame.member_table, table.point_member[load], table.point_at[load]
+        return np.asarray((at >= t.zone[m, 0]) & (at <= t.length[m] - t.zone[m, 1]))
+
+    def _face_actions(self, name: str) -> tuple[Floats, Floats]:
+        """Shear and moment just inside the `from` zone, before any load at the face itself, (m,) each."""
+        t = self.frame.member_table
+        every = np.arange(len(t.length))
+        _, shear, moment = self._forces(name, every, t.zone[:, 0], np.full(len(every), -1))
+        return shear, moment
+
+    # --- turning points ---
+
+    def _shear_places(self, name: str, member: Ints, a: Floats, b: Floats) -> list[tuple[Ints, Floats]]:
+        """Shear is a parabola between stations: its zeros and its vertex, where they lie within the piece."""
+        after, before, either = np.ones(len(a), dtype=np.int64), np.full(len(a), -1), np.ones(len(a), dtype=np.int64)
+        v0 = self._forces(name, member, a, after)[1]
+        v1 = self._forces(name, member, (a + b) / 2, either)[1]
+        v2 = self._forces(name, member, b, before)[1]
+        square, linear = 2 * (v0 - 2 * v1 + v2), 4 * v1 - 3 * v0 - v2
+        with np.errstate(divide="ignore", invalid="ignore"):
+            root = np.sqrt(linear**2 - 4 * square * v0)
+            q = -(linear + np.copysign(root, linear)) / 2
+            shares = [q / square, v0 / q, -linear / (2 * square)]
+        found = []
+        for share in shares:
+            inside = np.isfinite(share) & (share > 0) & (share < 1)
+            found.append((member[inside], (a + share * (b - a))[inside]))
+        return found
+
+    def _level_places(self, name: str, member: Ints, a: Floats, b: Floats) -> tuple[Ints, Floats]:
+        """Where the member's slope changes sign within a piece, by halving."""
+        step = 1e-4 * (b - a)
+        low, high = a, b
+
+        def slope(x: Floats) -> Floats:
+            return self._across(name, member, x + step) - self._across(name, member, x - step)
+
+        rising, falling = slope(low + step), slope(high - step)
+        change = np.signbit(rising) != np.signbit(falling)
+        member, low, high, step, rising = member[change], low[change], high[change], step[change], rising[change]
+        for _ in range(HALVINGS if len(member) else 0):
+            middle = (low + high) / 2
+            same = np.signbit(slope(middle)) == np.signbit(rising)
+            low, high = np.where(same, middle, low), np.where(same, high, middle)
+        return member, (low + high) / 2
+
+
+def _pairs(member: Ints, load_member: Ints) -> tuple[Ints, Ints]:
+    """Every pair of a place and a load on the same member, as indices into both."""
+    order = np.argsort(load_member, kind="stable")
+    ordered = load_member[order]
+    first, last = np.searchsorted(ordered, member), np.searchsorted(ordered, member, side="right")
+    count = last - first
+    place = np.repeat(np.arange(len(member)), count)
+    offset = np.arange(int(count.sum())) - np.repeat(np.cumsum(count) - count, count)
+    return place, order[np.repeat(first, count) + offset]
