@@ -6,8 +6,8 @@ same B (virtual work), so one matrix serves any geometry, square or not.
 
 Axially rigid members keep the same sparse matrix: an elongation stiffness `penalty` takes the place of EA/l, and the
 axial force is corrected by penalty times what elongation remains until none does (method of multipliers, Hestenes 1969
-and Powell 1969). Moments and axial forces are accumulated from corrections, and the residual is formed from them and not
-from the matrix, so that joints balance to rounding.
+and Powell 1969). Moments and axial forces are accumulated from corrections, and the residual is formed from them and
+not from the matrix, so that joints balance to rounding.
 """
 
 from __future__ import annotations
