@@ -58,7 +58,7 @@ def coefficients(frame: Frame) -> Coefficients:
 class SplitLoads:
     """A case's loads divided at the faces of the rigid zones, as flat rows.
 
-    place: 0 on the `from` zone, 1 on the flexible part, 2 on the `to` zone. at, start, end: distances from the joint.
+    place: 0 on the `from` zone, 1 on the flexible part, 2 on the `to` zone. at, start, end: from the `from` joint.
     Lines: intensity `mean` at the middle and `slope` per length, each (rows, 2) for along and across.
     """
 
@@ -122,7 +122,8 @@ class FixedEnds:
     moments: (m, 2) clockwise at the faces. axial: (m,) at the `from` face, without the effect of `stretch`.
     stretch: (m,) elongation that temperature and misfit would give a free member.
     between: (m, 3) on the flexible part: sum of along forces, sum of across forces, clockwise moment of across
-      forces and couples about the `to` face. zones: (m, 2, 3) on each rigid zone: along, across, clockwise moment about its joint.
+      forces and couples about the `to` face.
+    zones: (m, 2, 3) on each rigid zone: along, across, clockwise moment about its joint.
     """
 
     moments: Floats

@@ -1,0 +1,269 @@
+"""One check, from the frame (and a claim) to findings: what every command and report stands on.
+
+Nothing here prints. The opinions are asked one by one and imported only then; one that fails inside abstains aloud,
+because a checker must never lose the others' answers to it.
+"""
+
+from __future__ import annotations
+
+import importlib
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field, replace
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from crosscheck.answer import Answer, CaseAnswer, Silent
+from crosscheck.compare.claim import CaseClaim, ClaimComparison
+from crosscheck.compare.claimed import ClosedClaim
+from crosscheck.compare.differences import Verdict, worst
+from crosscheck.compare.opinions import CaseJudgement, Comparison, opinions_verdict
+from crosscheck.compare.tolerance import Tolerance, claim_tolerance
+from crosscheck.frame.kinematics import Study, study
+from crosscheck.frame.model import Frame
+from crosscheck.problems import Problem, UnusableInput, nearest
+
+if TYPE_CHECKING:
+    from crosscheck.claims.reading import Reading
+
+OPINIONS = {
+    "slope-deflection": "crosscheck.opinions.slope_deflection",
+    "moment-distribution": "crosscheck.opinions.moment_distribution",
+    "library": "crosscheck.opinions.library",
+}
+
+
+@dataclass(frozen=True, slots=True)
+class Opinions:
+    """What the opinions say of a frame, and how they compare. `names`: the cases and combinations asked for."""
+
+    frame: Frame
+    study: Study
+    names: tuple[str, ...]
+    answers: Mapping[str, Answer]
+    silent: Mapping[str, Silent]
+    judgements: Mapping[str, CaseJudgement]
+
+    @property
+    def verdict(self) -> Verdict:
+        return opinions_verdict(list(self.judgements.values()))
+
+
+@dataclass(frozen=True, slots=True)
+class CaseAudit:
+    """The audit of the claim on one case: findings of crosscheck.audit, as it gives them."""
+
+    case: str
+    statics: tuple[Any, ...]
+    compatibility: Any = None
+
+
+@dataclass(frozen=True, slots=True)
+class Verification:
+    """A claim judged against the opinions.
+
+    grounds: why the verdict is what it is, one sentence each. undecided: the choices that would settle it.
+    """
+
+    opinions: Opinions
+    closed: ClosedClaim
+    tolerance: Tolerance
+    cases: tuple[CaseClaim, ...]
+    audits: tuple[CaseAudit, ...]
+    suspects: tuple[Any, ...]
+    verdict: Verdict
+    grounds: tuple[str, ...] = ()
+    undecided: tuple[str, ...] = field(default=())
+
+
+def ask(frame: Frame, names: Sequence[str] | None = None) -> Opinions:
+    """All opinions on the frame's load cases and combinations (or `names`).
+
+    Raises UnusableInput (MechanismFound among them) where nobody could answer.
+    """
+    found = study(frame)
+    wanted = frame.names if names is None else tuple(names)
+    answers: dict[str, Answer] = {}
+    silent: dict[str, Silent] = {}
+    for name in OPINIONS:
+        said = _ask_one(name, frame, found, wanted)
+        if isinstance(said, Silent):
+            silent[name] = said
+        else:
+            answers[name] = said
+    comparison = Comparison(frame, answers)
+    judgements = {name: comparison.judge(name) for name in wanted}
+    return Opinions(frame, found, wanted, answers, silent, judgements)
+
+
+def _ask_one(name: str, frame: Frame, found: Study, wanted: tuple[str, ...]) -> Answer | Silent:
+    try:
+        said: Answer | Silent = importlib.import_module(OPINIONS[name]).opine(frame, found, wanted)
+    except UnusableInput:
+        raise
+    except Exception as error:  # noqa: BLE001 - whatever it is, it silences this opinion alone and is said
+        return Silent(name, f"failed inside ({type(error).__name__}: {error}); please report this")
+    return said
+
+
+def chosen_names(frame: Frame, case: str | None) -> tuple[str, ...] | None:
+    """The names to answer for: all, or the one asked for. Raises UnusableInput for an unknown one."""
+    if case is None:
+        return None
+    if case not in frame.names:
+        advice = nearest(case, frame.names) or f"known: {', '.join(frame.names) or 'none'}"
+        raise UnusableInput([Problem(frame.file, None, "--case", f'no load case or combination "{case}"', advice)])
+    return (case,)
+
+
+def verify(
+    frame: Frame, reading: Reading, case: str | None = None, relative: float | None = None,
+    opinions: Opinions | None = None,
+) -> Verification:  # fmt: skip
+    """Judge a reading of a claim. `relative`: the claim's relative tolerance as a fraction, else the frame's."""
+    from crosscheck.compare.closing import close
+
+    chosen_names(frame, case)
+    opinions = ask(frame) if opinions is None else opinions
+    tolerance = claim_tolerance(frame.analysis.tolerance if relative is None else relative)
+    closed = close(reading, frame, opinions.answers, case, tolerance)
+    cases = ClaimComparison(frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
+    audits = tuple(_audit(frame, opinions, closed, name) for name in closed.cases)
+    verdict, grounds = _verdict(opinions, closed, cases, audits)
+    return Verification(
+        opinions, closed, tolerance, tuple(cases), audits, (), verdict, tuple(grounds), closed.undecided
+    )
+
+
+def _verdict(
+    opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], audits: tuple[CaseAudit, ...]
+) -> tuple[Verdict, list[str]]:
+    """CONTRACT: how verify judges. The opinions must agree before a claim can."""
+    grounds: list[str] = []
+    verdicts: list[Verdict] = [c.verdict for c in cases]
+    for name, audit in zip(closed.cases, audits, strict=True):
+        judged = opinions.judgements[name]
+        if judged.verdict == "disagree":
+            return "undecided", [f"the opinions disagree with each other on {name}"]
+        if judged.verdict == "undecided" and not _alone_but_proven(cases, name, audit):
+            verdicts.append("undecided")
+            grounds.append(f"fewer than two opinions speak for {name}")
+        elif judged.verdict == "undecided":
+            grounds.append(
+                f"one opinion alone speaks for {name}; the claim matches it and satisfies statics and compatibility to "
+                "its printed precision, therefore it is the solution of this model"
+            )
+    if closed.reversed_load:
+        verdicts.append("disagree")
+        grounds.append("member forces, reactions and displacements are all reversed: the load acts the other way")
+    if closed.undecided:
+        verdicts.append("undecided")
+        grounds += closed.undecided
+    if closed.foreign:
+        verdicts.append("undecided")
+        grounds.append("it has results for members or joints that the frame lacks")
+    if not sum(c.compared for c in cases):
+        verdicts.append("undecided")
+        grounds.append("no value could be compared")
+    return worst(verdicts), grounds
+
+
+def _alone_but_proven(cases: list[CaseClaim], name: str, audit: CaseAudit) -> bool:
+    agrees = any(c.case == name and c.verdict == "agree" for c in cases)
+    return agrees and bool(getattr(audit.compatibility, "is_solution", False))
+
+
+def _audit(frame: Frame, opinions: Opinions, closed: ClosedClaim, name: str) -> CaseAudit:
+    from crosscheck.audit.statics import statics
+
+    values, half = claimed_arrays(frame, closed, name)
+    return CaseAudit(name, tuple(statics(frame, name, values, half)))
+
+
+def claimed_arrays(frame: Frame, closed: ClosedClaim, name: str) -> tuple[CaseAnswer, CaseAnswer]:
+    """The claim's end actions, displacements and reactions of one case as arrays (NaN where it says nothing), and half a
+    unit of each value's last printed digit."""
+    from crosscheck.compare.claim import END_COLUMN, JOINT_COLUMN, REACTION_COLUMN
+
+    values = _blank(frame)
+    half = _blank(frame)
+    for v in closed.values:
+        if v.case != name:
+            continue
+        if v.kind == "end":
+            end = 0 if frame.members[str(v.member)].joint_from == v.joint else 1
+            index: tuple[int, ...] = (frame.member_index[str(v.member)], end, END_COLUMN[v.quantity])
+            tables = values.ends, half.ends
+        elif v.kind == "reaction" and v.joint in frame.supports:
+            index = (frame.joint_index[str(v.joint)], REACTION_COLUMN[v.quantity])
+            tables = values.reactions, half.reactions
+        elif v.kind == "displacement":
+            index = (frame.joint_index[str(v.joint)], JOINT_COLUMN[v.quantity])
+            tables = values.joints, half.joints
+        else:
+            continue
+        tables[0][index], tables[1][index] = v.value, v.half_digit
+    return values, half
+
+
+def _blank(frame: Frame) -> CaseAnswer:
+    m, j = len(frame.members), len(frame.joints)
+    return CaseAnswer(np.full((m, 2, 3), np.nan), np.full((j, 3), np.nan), np.full((j, 3), np.nan))
+
+
+def with_idealisation(
+    frame: Frame, axial: str | None = None, shear: str | None = None, order: int | None = None
+) -> Frame:
+    """The same frame analysed otherwise. Raises UnusableInput where a section or material lacks what that needs."""
+    if axial is None and shear is None and order is None:
+        return frame
+    changes: dict[str, Any] = {}
+    if axial is not None:
+        changes |= {"axial": axial, "axial_stated": True}
+    if shear is not None:
+        changes["shear"] = shear
+    if order is not None:
+        changes["order"] = order
+    changed = replace(frame, analysis=replace(frame.analysis, **changes))
+    problems = _needs(changed)
+    if problems:
+        raise UnusableInput(problems)
+    return changed
+
+
+def _needs(frame: Frame) -> list[Problem]:
+    t = frame.member_table
+    problems = []
+    if frame.analysis.order == 2:
+        problems.append(Problem(frame.file, None, "--order", "second order is not built yet", "use order 1"))
+    if frame.analysis.axial == "elastic":
+        lacking = sorted({m.section for m, a in zip(frame.members.values(), t.A, strict=True) if np.isnan(a)})
+        problems += [
+            Problem(frame.file, frame.lines.get(f"sections.{s}"), f"sections.{s}", "axially elastic needs A", "state A")
+            for s in lacking
+        ]
+    if frame.analysis.shear == "elastic":
+        members = list(frame.members.values())
+        areas = sorted({m.section for m, a in zip(members, t.shear_area, strict=True) if np.isnan(a)})
+        moduli = sorted({m.material for m, g in zip(members, t.G, strict=True) if np.isnan(g)})
+        problems += [
+            Problem(frame.file, frame.lines.get(f"sections.{s}"), f"sections.{s}",
+                    "shear elastic needs shear_area", "state shear_area")
+            for s in areas
+        ]  # fmt: skip
+        problems += [
+            Problem(frame.file, frame.lines.get(f"materials.{s}"), f"materials.{s}",
+                    "shear elastic needs G or nu", "state G or nu")
+            for s in moduli
+        ]  # fmt: skip
+    return problems
+
+
+def read(path: str | Path) -> Frame:
+    """Read a frame file. Raises UnusableInput with every problem found."""
+    from crosscheck.frame.reader import read_frame
+
+    return read_frame(path)
+
+
