@@ -19,7 +19,7 @@ Inside: rotations are counter-clockwise (phi), axial u along and w across the me
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -380,8 +380,8 @@ class Truth:
         # Judged against the largest part of each equation's right-hand side, not against the sum, which may cancel.
         return bool(np.abs(self.left_null.T @ rhs).max() <= 1e-9 * max(float(np.abs(rhs).max()), 1e-300))
 
-    def can_follow(self, case: str, load: Load) -> bool:
-        """Whether the frame can carry or follow this single load (`case` for the message only)."""
+    def can_follow(self, load: Load) -> bool:
+        """Whether the frame can carry or follow this single load."""
         one = _nothing(self.frame)
         self._add(one, load, 1.0)
         return self.follows(one)
@@ -424,12 +424,13 @@ class Truth:
         result: Array = self._arrive(k, self._loads[name], x, after)[0] @ np.concatenate([start, own, [1.0]])
         return result
 
-    def along(self, name: str, member: Sequence[int], x: Sequence[float], side: Sequence[int]) -> Array:
+    def along(self, name: str, member: Iterable[int], x: Iterable[float], side: Iterable[int]) -> Array:
         """(n, 4) axial, shear, moment, across, as answer.Spans.along gives them."""
+        member = list(member)
         places = zip(member, x, side, strict=True)
         states = [self._state(name, int(k), float(at), after=s > 0) for k, at, s in places]
         values = np.array(states).reshape(-1, 6)[:, [N, V, M, W]]
-        values[self.undetermined.axial[np.asarray(member, dtype=int)], 0] = np.nan
+        values[self.undetermined.axial[member], 0] = np.nan
         # Across stays determined where the `from` joint's rotation is open: rotation and kink are open together only.
         return values
 
@@ -445,7 +446,8 @@ class Truth:
             values = self.along(name, [member] * 7, (middle + half * nodes).tolist(), [1] * 7)
             for column in (1, 2, 3):
                 slope = Polynomial.fit(nodes, values[:, column], 6, domain=[-1, 1]).deriv()
-                places += [middle + half * float(r.real) for r in slope.roots() if abs(r.imag) < 1e-6 and abs(r) <= 1]
+                roots = [float(r.real) for r in slope.roots() if abs(r.imag) < 1e-6 and abs(r.real) <= 1]
+                places += [middle + half * r for r in roots]
         return places
 
 
