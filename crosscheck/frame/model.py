@@ -9,6 +9,7 @@ Nothing here knows stiffness: opinions make their own products of these numbers.
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Literal
@@ -286,7 +287,7 @@ class Frame:
     file: str = ""
     sha256: str = ""
     warnings: tuple[str, ...] = ()
-    lines: dict[str, int] = field(default_factory=dict)
+    lines: Mapping[str, int] = field(default_factory=dict)
     """Line of the file for dotted keys ("loads.dead.apply[0]"), as far as known; for messages only."""
 
     @cached_property

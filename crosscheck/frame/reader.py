@@ -1,0 +1,501 @@
+"""The frame file: TOML text to a checked `Frame` in its own units (README, Frame files).
+
+Everything wrong is collected and raised together as UnusableInput, each fault with its line where that can be known.
+What can be questioned but used is kept as a warning; what is merely implausible is left to `inspect`.
+"""
+
+from __future__ import annotations
+
+import difflib
+import hashlib
+import math
+import re
+import tomllib
+from collections.abc import Collection, Mapping
+from dataclasses import replace
+from pathlib import Path as FilePath
+from typing import Literal
+
+from crosscheck.frame.apply import LoadReader, Places
+from crosscheck.frame.fields import (
+    A_DENSITY,
+    A_LENGTH,
+    A_NUMBER,
+    A_STRESS,
+    AN_AREA,
+    AN_EXPANSION,
+    AN_INERTIA,
+    UNUSABLE,
+    Checker,
+    Table,
+    shown,
+)
+from crosscheck.frame.grid import Grid, read_grid
+from crosscheck.frame.locate import Lines, Path
+from crosscheck.frame.model import (
+    Analysis,
+    Combination,
+    Frame,
+    Joint,
+    LoadCase,
+    Material,
+    Member,
+    Section,
+    Support,
+    Units,
+)
+from crosscheck.frame.needs import AXIAL, SHEAR, default_axial, order_fault, unmet
+from crosscheck.frame.parts import TRAIT_KEYS, Known, Traits, read_support, read_traits
+from crosscheck.frame.units import Scale, UnitError, frame_units
+from crosscheck.problems import Problem, UnusableInput
+
+FILE_KEYS = (
+    "title", "units", "materials", "sections", "joints", "members", "supports", "grid", "loads", "combinations",
+    "analysis",
+)  # fmt: skip
+MATERIAL_KEYS = ("E", "G", "nu", "alpha", "density")
+SECTION_KEYS = ("I", "A", "shear_area", "depth")
+MEMBER_KEYS = TRAIT_KEYS | {"from", "to"}
+ANALYSIS_KEYS = ("axial", "shear", "order", "tolerance")
+NEEDED = {
+    "materials": '[materials.steel] with E = "210 GPa"', "sections": '[sections.post] with I = "8360 cm^4"',
+    "joints": "[joints] with A = [0, 0]", "members": '[members] with "A-B" = { section = "post", material = "steel" }',
+}  # fmt: skip
+
+MOST_BYTES = 100_000_000
+"""A frame of a million members is smaller."""
+
+
+def read_frame(path: str | FilePath) -> Frame:
+    """The frame in a file. Raises UnusableInput with every problem found."""
+    name = str(path)
+    try:
+        data = _bytes(FilePath(path))
+    except (OSError, ValueError) as error:
+        raise UnusableInput([_cannot_open(FilePath(path), name, error)]) from None
+    return _read(_decoded(data, name), name, hashlib.sha256(data).hexdigest())
+
+
+def read_frame_text(text: str, file: str = "", folder: FilePath | None = None) -> Frame:
+    """The frame in a text; `file` is its name in messages, `folder` where it lies (nothing is read from there yet)."""
+    del folder
+    return _read(text, file, hashlib.sha256(text.encode("utf-8", "surrogatepass")).hexdigest())
+
+
+def _bytes(path: FilePath) -> bytes:
+    with path.open("rb") as stream:
+        data = stream.read(MOST_BYTES + 1)
+    if len(data) > MOST_BYTES:
+        raise ValueError(f"larger than {MOST_BYTES // 10**6} MB")
+    return data
+
+
+def _cannot_open(path: FilePath, name: str, error: OSError | ValueError) -> Problem:
+    if isinstance(error, FileNotFoundError):
+        return Problem(name, None, "", "there is no such file", _neighbour(path))
+    if isinstance(error, IsADirectoryError) or path.is_dir():
+        return Problem(name, None, "", "this is a folder, not a frame file", "name a frame file, ending in .toml")
+    reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
+    return Problem(name, None, "", f"the file cannot be read ({reason})")
+
+
+def _neighbour(path: FilePath) -> str:
+    """A file of nearly that name beside it, as a remedy."""
+    try:
+        names = [p.name for p in sorted(path.parent.glob("*.toml"))[:1000]]
+    except (OSError, ValueError):
+        return ""
+    close = difflib.get_close_matches(path.name, names, n=1)
+    return f'did you mean "{path.parent / close[0]}"?' if close else ""
+
+
+def _decoded(data: bytes, name: str) -> str:
+    """UTF-8 text, with or without a byte-order mark."""
+    try:
+        return data.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = data.count(b"\n", 0, error.start) + 1
+        utf16 = data[:2] in (b"\xff\xfe", b"\xfe\xff")
+        says = "the file is in UTF-16" if utf16 else f"byte {data[error.start]:#04x} is not UTF-8"
+        raise UnusableInput([Problem(name, line, "", says, "save the file as UTF-8")]) from None
+
+
+def _read(text: str, file: str, sha256: str) -> Frame:
+    text = text.removeprefix("\ufeff")
+    return _FrameReader(_parsed(text, file), text, file, sha256).frame()
+
+
+def _parsed(text: str, file: str) -> Table:
+    if not text.strip():
+        raise UnusableInput([Problem(file, None, "", "the file is empty", "`crosscheck draft` writes a first one")])
+    try:
+        return tomllib.loads(text)
+    except RecursionError:
+        raise UnusableInput([Problem(file, None, "", "lists or tables nested too deeply")]) from None
+    except ValueError as error:
+        raise UnusableInput([_not_toml(str(error), text, file)]) from None
+
+
+_TOML_HINTS = {
+    "Cannot overwrite a value": "a key may stand only once in its table",
+    "Cannot declare": "a table may be opened only once",
+    "Unclosed array": "close the list with ]",
+    "Expected '=' after a key": "a line is key = value, or [table]",
+    "Invalid value": 'put text in quotes, such as "fixed"',
+    "Unbalanced": "an inline table { ... } stands on one line",
+    "Invalid initial character for a key part": "an inline table { ... } stands on one line, without a last comma",
+    "Unescaped '\\' in a string": "write \\\\ for a backslash, or use single quotes",
+    "Illegal character": "close the quotes on the same line",
+    "Unterminated string": "close the quotes",
+}
+
+
+def _not_toml(message: str, text: str, file: str) -> Problem:
+    """tomllib's message with its line; a hint where the usual cause is known."""
+    place = re.search(r"\s*\(at line (\d+), column (\d+)\)$", message)
+    line = int(place.group(1)) if place else text.rstrip().count("\n") + 1 if "end of document" in message else None
+    says = re.sub(r"\s*\(at .*\)$", "", message)
+    hint = next((hint for start, hint in _TOML_HINTS.items() if says.startswith(start)), "")
+    return Problem(file, line, "", f"not TOML: {says}", hint)
+
+
+class _FrameReader:
+    """Reads the tables of one file in turn; each method takes what the earlier ones gave."""
+
+    def __init__(self, data: Table, text: str, file: str, sha256: str) -> None:
+        self.data, self.file, self.sha256 = data, file, sha256
+        self.lines = Lines(text)
+        units, fault = self._units()
+        self.units = units
+        self.check = Checker(Scale(units), file, self.lines)
+        if fault:
+            self.check.note(*fault)
+
+    def _units(self) -> tuple[Units, tuple[Path, str, str] | None]:
+        """The frame's units; kN m, with the fault, where they cannot be read."""
+        value = self.data.get("units")
+        fallback, such_as = Units("kN", "m", 1e3, 1.0), 'give units = "kN m", or another force and length'
+        if value is None:
+            return fallback, ((), "units is missing: it says what bare numbers mean", such_as)
+        try:
+            if not isinstance(value, str):
+                raise UnitError(f"{shown(value)} is not a text")
+            return frame_units(value), None
+        except UnitError as error:
+            return fallback, (("units",), str(error), such_as)
+
+    def frame(self) -> Frame:
+        """Everything read and checked. Raises UnusableInput."""
+        check = self.check
+        check.only(self.data, FILE_KEYS, (), "a frame file", "file")
+        self._tables_there()
+        materials = {name: self._material(name, value) for name, value in self._entries("materials")}
+        sections = {name: self._section(name, value) for name, value in self._entries("sections")}
+        known = Known(self._known("sections", sections), self._known("materials", materials))
+        grid = read_grid(check, self.data["grid"], known) if "grid" in self.data else Grid()
+        joints = self._joints(grid)
+        members = self._members(grid, joints, known)
+        supports = self._supports(grid, joints)
+        places = self._places(grid, joints, members, supports)
+        cases = self._cases(places)
+        frame = Frame(
+            title=self._title(), units=self.units, materials=materials, sections=sections, joints=joints,
+            members=members, supports=supports, cases=cases, combinations=self._combinations(cases),
+            analysis=Analysis(), file=self.file, sha256=self.sha256, lines=self.lines,
+        )  # fmt: skip
+        return self._settled(frame, places)
+
+    def _settled(self, frame: Frame, places: Places) -> Frame:
+        """The frame with its idealisation, when nothing is wrong with it."""
+        default, warning = default_axial(frame)
+        stated = self._analysis(default)
+        frame = replace(frame, analysis=stated)
+        for fault in unmet(frame):
+            self.check.note(*fault)
+        if not self.check.sound:
+            raise UnusableInput(self.check.problems())
+        warnings = [] if stated.axial_stated or not warning else [warning]
+        return replace(frame, warnings=(*warnings, *_questions(frame, places.loose)))
+
+    # The file's tables -------------------------------------------------------------------------------------------
+
+    def _tables_there(self) -> None:
+        for key, such_as in NEEDED.items():
+            if key in self.data or (key in ("joints", "members") and "grid" in self.data):
+                if self.data.get(key) == {} and "grid" not in self.data:
+                    self.check.note((key,), f"the table [{key}] is empty", f"give {such_as}")
+            else:
+                self.check.note((), f"the table [{key}] is missing", f"give {such_as}")
+
+    def _known(self, key: str, names: Collection[str]) -> Collection[str] | None:
+        """Names of a table that members may use; None where the table itself is missing or unusable."""
+        return names if isinstance(self.data.get(key), dict) and names else None
+
+    def _entries(self, key: str) -> list[tuple[str, object]]:
+        """The entries of one of the file's tables."""
+        table = self.check.table(self.data.get(key, {}), (key,), NEEDED.get(key, f"[{key}]"))
+        return [] if table is None else list(table.items())
+
+    def _title(self) -> str:
+        title = self.data.get("title", "")
+        if isinstance(title, str):
+            return title
+        self.check.note(("title",), f"{shown(title)} is not a text", "put the title in quotes")
+        return ""
+
+    def _material(self, name: str, value: object) -> Material:
+        path: Path = ("materials", name)
+        check = self.check
+        check.usable_name(name, path, "material")
+        table = check.table(value, path, NEEDED["materials"])
+        if table is None:
+            return Material(name, UNUSABLE, UNUSABLE, UNUSABLE, UNUSABLE)
+        check.only(table, MATERIAL_KEYS, path, "a material")
+        modulus = check.wanted(table, "E", A_STRESS, path)
+        shear_modulus = self._shear_modulus(table, modulus, path)
+        alpha = check.get(table, "alpha", AN_EXPANSION, path)
+        weight = check.get(table, "density", A_DENSITY, path)
+        if weight is not None and weight < 0:
+            check.note((*path, "density"), f"{shown(table['density'])} is below zero", f"give {A_DENSITY.name}")
+        return Material(name, modulus, shear_modulus, alpha, weight)
+
+    def _shear_modulus(self, table: Table, modulus: float, path: Path) -> float | None:
+        """G as stated, or E / (2 (1 + nu)) of an isotropic material."""
+        stated = self.check.positive(table, "G", A_STRESS, path)
+        nu = self.check.get(table, "nu", A_NUMBER, path)
+        if nu is None:
+            return stated
+        if stated is not None:
+            self.check.note((*path, "nu"), "G and nu both stated", "give one of the two")
+        elif nu <= -1 or nu > 0.5:
+            self.check.note((*path, "nu"), f"{shown(table['nu'])} is not between -1 and 0.5", "give nu = 0.3, say")
+        else:
+            return modulus / (2 * (1 + nu))
+        return UNUSABLE
+
+    def _section(self, name: str, value: object) -> Section:
+        path: Path = ("sections", name)
+        check = self.check
+        check.usable_name(name, path, "section")
+        table = check.table(value, path, NEEDED["sections"])
+        if table is None:
+            return Section(name, UNUSABLE, UNUSABLE, UNUSABLE, UNUSABLE)
+        check.only(table, SECTION_KEYS, path, "a section")
+        return Section(
+            name,
+            check.wanted(table, "I", AN_INERTIA, path),
+            check.positive(table, "A", AN_AREA, path),
+            check.positive(table, "shear_area", AN_AREA, path),
+            check.positive(table, "depth", A_LENGTH, path),
+        )
+
+    # Joints, members, supports -----------------------------------------------------------------------------------
+
+    def _joints(self, grid: Grid) -> dict[str, Joint]:
+        joints = {name: Joint(name, x, y) for name, (x, y) in grid.joints.items()}
+        for name, value in self._entries("joints"):
+            path: Path = ("joints", name)
+            self.check.usable_name(name, path, "joint")
+            if isinstance(value, list) and len(value) == 2:
+                x, y = (self.check.number(v, A_LENGTH, path) for v in value)
+            else:
+                self.check.note(path, f"{shown(value)} is not a place", "give [x, y]")
+                x = y = UNUSABLE
+            joints[name] = Joint(name, x, y)
+        return joints
+
+    def _members(self, grid: Grid, joints: Mapping[str, Joint], known: Known) -> dict[str, Member]:
+        members = {name: traits.member(name, *ends) for name, (*ends, traits) in grid.members.items()}
+        valid = joints if joints and grid.whole else None
+        for name, value in self._entries("members"):
+            members[name] = self._member(name, value, grid, valid, known)
+        for member in members.values():
+            self._check_length(member, joints)
+        return members
+
+    def _member(
+        self, name: str, value: object, grid: Grid, joints: Mapping[str, Joint] | None, known: Known
+    ) -> Member:
+        path: Path = ("members", name)
+        self.check.usable_name(name, path, "member")
+        table = self.check.table(value, path, '{ section = "post", material = "steel" }')
+        if table is None:
+            return Traits().member(name, "", "")
+        self.check.only(table, MEMBER_KEYS, path, "a member", "member")
+        traits = read_traits(self.check, table, path, known)
+        start, end, base = grid.members.get(name, ("", "", Traits()))
+        if name not in grid.members or "from" in table or "to" in table:
+            start, end = self._ends(name, table, path, joints)
+        traits = traits.over(base)
+        for key in ("section", "material"):
+            if getattr(traits, key) is None:
+                self.check.note(path, f"{key} is missing", f"give {key}, the name of one in [{key}s]")
+        return traits.member(name, start, end)
+
+    def _ends(self, name: str, table: Table, path: Path, joints: Mapping[str, Joint] | None) -> tuple[str, str]:
+        """The joints of a member, stated or from its key; ("", "") with the fault noted where they are not clear."""
+        if "from" not in table and "to" not in table:
+            return self._split(name, path, joints)
+        ends = []
+        for key in ("from", "to"):
+            if key in table:
+                ends.append(self.check.name(table[key], joints, "joint", (*path, key)))
+            else:
+                self.check.note(path, f"{key} is missing", "give from and to, the names of two joints")
+                ends.append("")
+        if ends[0] and ends[0] == ends[1]:
+            self.check.note(path, f"joins joint {shown(ends[0])} to itself", "give two joints")
+        return ends[0], ends[1]
+
+    def _split(self, name: str, path: Path, joints: Mapping[str, Joint] | None) -> tuple[str, str]:
+        """A key "A-B" as two joints; of several dashes, the one that parts two joints of the frame."""
+        halves = [(name[:k].strip(), name[k + 1 :].strip()) for k, c in enumerate(name) if c == "-"]
+        if joints is None and halves:
+            return "", ""
+        fits = [pair for pair in halves if joints and pair[0] in joints and pair[1] in joints and pair[0] != pair[1]]
+        if len(fits) == 1:
+            return fits[0]
+        self._unsplit(name, halves, fits, path, joints or {})
+        return "", ""
+
+    def _unsplit(
+        self, name: str, halves: list[tuple[str, str]], fits: list[tuple[str, str]], path: Path, joints: Collection[str]
+    ) -> None:
+        if not halves:
+            self.check.note(path, "from and to are missing", 'give from and to, or a key such as "A-B"')
+        elif fits:
+            readings = " or ".join(f"{shown(a)} to {shown(b)}" for a, b in fits)
+            self.check.note(path, f"may mean {readings}", "give from and to")
+        elif len(halves) > 1:
+            self.check.note(path, "no dash of the key parts two joints of the frame", "give from and to")
+        elif halves[0][0] == halves[0][1]:
+            self.check.note(path, f"joins joint {shown(halves[0][0])} to itself", "give two joints")
+        else:
+            for joint in halves[0]:
+                if joint not in joints:
+                    self.check.note(path, f"there is no joint {shown(joint)}", self.check.near(joint, joints))
+
+    def _check_length(self, member: Member, joints: Mapping[str, Joint]) -> None:
+        """Joints apart, and rigid zones that leave something between them."""
+        length = _length(member, joints)
+        zones = member.rigid_from + member.rigid_to
+        path: Path = ("members", member.name)
+        if length == 0:
+            says = f"joins {shown(member.joint_from)} and {shown(member.joint_to)}, which are at one place"
+            self.check.note(path, says, "a member needs a length: move a joint, or leave the member out")
+        elif zones and zones >= length:
+            says = f"rigid zones of {zones:.6g} together leave nothing of its length of {length:.6g}"
+            self.check.note(path, says, "give rigid zones that are shorter than the member")
+
+    def _supports(self, grid: Grid, joints: Mapping[str, Joint]) -> dict[str, Support]:
+        supports = dict(grid.supports)
+        valid = joints if joints and grid.whole else None
+        for name, value in self._entries("supports"):
+            path: Path = ("supports", name)
+            joint = self.check.name(name, valid, "joint", path)
+            support = read_support(self.check, value, path, name)
+            if joint or valid is None:
+                supports[name] = support
+        return supports
+
+    def _places(
+        self, grid: Grid, joints: dict[str, Joint], members: dict[str, Member], supports: dict[str, Support]
+    ) -> Places:
+        joined = {joint for m in members.values() for joint in (m.joint_from, m.joint_to)}
+        # A member whose ends are not known may be what joins a joint: then nothing is called loose.
+        loose = frozenset() if "" in joined else frozenset(joints) - joined
+        return Places(
+            joints=joints, members=members, supports=supports,
+            lengths={m.name: _length(m, joints) for m in members.values()},
+            joint_groups=grid.joint_groups, member_groups=grid.member_groups, loose=loose,
+            joints_known=bool(joints) and grid.whole, members_known=bool(members) and grid.whole,
+        )  # fmt: skip
+
+    # Loads, combinations, analysis -------------------------------------------------------------------------------
+
+    def _cases(self, places: Places) -> dict[str, LoadCase]:
+        table = self.check.table(self.data.get("loads", {}), ("loads",), "[loads.dead] with apply = [ ... ]")
+        if table is None:
+            return {}
+        loads = LoadReader(self.check, places)
+        later = {key: value for key, value in table.items() if key == "exclusive" and not isinstance(value, dict)}
+        self.check.only(later, (), ("loads",), "[loads]", "loads")
+        return {name: loads.case(name, value) for name, value in table.items() if name not in later}
+
+    def _combinations(self, cases: Mapping[str, LoadCase]) -> dict[str, Combination]:
+        return {name: self._combination(name, value, cases) for name, value in self._entries("combinations")}
+
+    def _combination(self, name: str, value: object, cases: Mapping[str, LoadCase]) -> Combination:
+        path: Path = ("combinations", name)
+        self.check.usable_name(name, path, "combination")
+        if name in cases:
+            self.check.note(path, "a load case has this name too", "give the combination a name of its own")
+        table = self.check.table(value, path, "{ dead = 1.35 }")
+        if table is None:
+            return Combination(name, {})
+        if not table:
+            self.check.note(path, "combines nothing", "give factors by load case, such as { dead = 1.35 }")
+        stated = {key: factor for key, factor in table.items() if key in cases}
+        self._not_cases(table, stated, cases, path)
+        return Combination(name, {key: self.check.number(v, A_NUMBER, (*path, key)) for key, v in stated.items()})
+
+    def _not_cases(self, table: Table, stated: Table, cases: Mapping[str, LoadCase], path: Path) -> None:
+        """Notes every key of a combination that names no load case."""
+        others = {key: value for key, value in table.items() if key not in stated}
+        later = {key: value for key, value in others.items() if key in ("stiffness", "order", "lean")}
+        self.check.only(later, (), path, "a combination", "combination")
+        combinations = self.data.get("combinations")
+        for key in others.keys() - later.keys():
+            if isinstance(combinations, dict) and key in combinations:
+                self.check.note((*path, key), "is a combination, not a load case", "combine load cases only")
+            else:
+                self.check.note((*path, key), f"there is no load case {shown(key)}", self.check.near(key, cases))
+
+    def _analysis(self, default: Literal["elastic", "rigid"]) -> Analysis:
+        table = self.check.table(self.data.get("analysis", {}), ("analysis",), '[analysis] with axial = "elastic"')
+        if table is None:
+            return Analysis(axial=default)
+        path: Path = ("analysis",)
+        self.check.only(table, ANALYSIS_KEYS, path, "[analysis]")
+        axial = self.check.word(table["axial"], AXIAL, (*path, "axial")) if "axial" in table else default
+        shear = self.check.word(table["shear"], SHEAR, (*path, "shear")) if "shear" in table else "rigid"
+        return Analysis(
+            axial="rigid" if axial == "rigid" else "elastic" if axial else default,
+            axial_stated="axial" in table,
+            shear="elastic" if shear == "elastic" else "rigid",
+            order=self._order(table, path),
+            tolerance=self._tolerance(table, path),
+        )
+
+    def _order(self, table: Table, path: Path) -> Literal[1, 2]:
+        order = table.get("order", 1)
+        fault = order_fault(order)
+        if fault:
+            self.check.note((*path, "order"), fault, "give order = 1")
+        return 2 if order == 2 else 1
+
+    def _tolerance(self, table: Table, path: Path) -> float:
+        """A percentage as a fraction: "1%", "1 %" and the bare number 1 all mean one per cent."""
+        value = table.get("tolerance", 1)
+        path = (*path, "tolerance")
+        text = value.rstrip() if isinstance(value, str) else ""
+        percent = self.check.number(text[:-1] if text.endswith("%") else value, A_NUMBER, path)
+        if percent <= 0 or percent >= 100:
+            self.check.note(path, f"{shown(value)} is not between 0 and 100 per cent", 'give tolerance = "1%", say')
+        return percent / 100
+
+
+def _length(member: Member, joints: Mapping[str, Joint]) -> float:
+    """Joint to joint; NaN where a joint is not known."""
+    a, b = joints.get(member.joint_from), joints.get(member.joint_to)
+    return math.hypot(b.x - a.x, b.y - a.y) if a and b and a is not b else UNUSABLE
+
+
+def _questions(frame: Frame, loose: Collection[str]) -> list[str]:
+    """What is accepted, but should be known to whoever reads the results."""
+    found = [f'no member joins joint "{joint}"' for joint in frame.joints if joint in loose]
+    if not any(support.x or support.y or support.rotation for support in frame.supports.values()):
+        found.append("the frame has no support")
+    if not frame.cases:
+        found.append("the frame has no load case: there is nothing to compare")
+    return found + [f'load case "{case.name}" has no load' for case in frame.cases.values() if not case.loads]
