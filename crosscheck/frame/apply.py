@@ -178,6 +178,8 @@ class LoadReader:
         groups = self.places.joint_groups if on == "joint" else self.places.member_groups
         if isinstance(value, str) and value in groups:
             return groups[value]
+        if isinstance(value, str) and valid is None:
+            return []
         if not isinstance(value, list) or not value:
             what = "an empty list" if value == [] else f"{shown(value)}, not a list"
             self.check.note(path, f"{on}s is {what}", f'give {on}s = ["A", "B"]' + _of_groups(groups))
