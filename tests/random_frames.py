@@ -34,7 +34,7 @@ FEATURES = {
     # supports
     "support tables": 0.5,
     "support springs": 0.25,
-    "turned supports": 0.25,
+    "turned supports": 0.35,
     "support above": 0.15,
     # loads
     "joint force": 0.5,
@@ -42,7 +42,7 @@ FEATURES = {
     "settlement": 0.15,
     "point force": 0.5,
     "point couple": 0.3,
-    "couple at an end": 0.2,
+    "couple at an end": 0.25,
     "uniform": 0.7,
     "varying": 0.4,
     "partial": 0.4,
@@ -50,7 +50,7 @@ FEATURES = {
     "across": 0.3,
     "along": 0.25,
     "at an angle": 0.3,
-    "on a zone or end": 0.15,
+    "on a zone or end": 0.35,
     "mean temperature": 0.08,
     "temperature difference": 0.08,
     "misfit": 0.08,

@@ -9,7 +9,7 @@ A case is a table in one of the files beside this one:
     frames                   frame files in our own grammar, axially and shear rigid, one load case called load
     check                    one published value each:
         quantity             the source's name for it
-        of                   our value: { member, end }, { member, at }, { member, extreme } (largest magnitude along
+        of                   our value: { member, end }, { member, at }, { member, extreme = "max" or "min" } (along
                              it; with `place` its distance from the `from` end), { reaction } or { joint }; and `value`
         over                 a second value of ours by which the first is divided
         factor, plus         turn ours into the source's sign and unit: factor * ours + plus
@@ -37,11 +37,12 @@ from typing import Any
 
 import numpy as np
 import pytest
-from crosscheck.frame.reader import read_frame_text
 
 from crosscheck.answer import Answer
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.model import Frame
+from crosscheck.frame.reader import read_frame_text
+from crosscheck.frame.stations import stations
 from crosscheck.frame.units import parse_unit
 from crosscheck.opinions import library, moment_distribution, slope_deflection
 from tests.truth import Truth
@@ -111,7 +112,8 @@ def opinion(name: str, text: str) -> tuple[Frame, Any]:
 
 
 def ours(case: Table, check: Table, name: str) -> float | None:
-    """Our value in the source's sign and unit, or None where the opinion is silent."""
+    """Our value in the source's sign and unit; None where the library abstains, or has no value because it
+    names no turning points and gives values along members only where it has a joint of its own."""
     texts = case["frames"]
     text = texts[check["frame"]] if "frame" in check else next(iter(texts.values()))
     frame, answer = opinion(name, text)
@@ -119,6 +121,8 @@ def ours(case: Table, check: Table, name: str) -> float | None:
         return None
     assert isinstance(answer, (Answer, Truth)), f"{name}: {answer}"
     value = pick(frame, answer, check["of"])
+    if name == "library" and ("extreme" in check["of"] or ("at" in check["of"] and math.isnan(value))):
+        return None
     if "over" in check:
         value /= pick(frame, answer, check["over"])
     return float(check.get("factor", 1)) * value + float(check.get("plus", 0))
@@ -139,8 +143,8 @@ def pick(frame: Frame, answer: Answer | Truth, of: Table) -> float:
         return float(along(answer, member, [of["at"]])[0, column])
     places = candidates(frame, answer, member)
     values = along(answer, member, places)[:, column]
-    largest = int(np.argmax(np.abs(values)))
-    return float(places[largest] if of.get("place") else values[largest])
+    chosen = int(np.argmax(values) if of["extreme"] == "max" else np.argmin(values))
+    return float(places[chosen] if of.get("place") else values[chosen])
 
 
 def along(answer: Answer | Truth, member: int, x: list[float]) -> Any:
@@ -149,12 +153,12 @@ def along(answer: Answer | Truth, member: int, x: list[float]) -> Any:
 
 
 def candidates(frame: Frame, answer: Answer | Truth, member: int) -> list[float]:
-    """Distances where a member may have its extreme: its ends and the opinion's own turning points."""
-    length = float(frame.member_table.length[member])
+    """Distances where a member may have its extreme: its stations and the opinion's own turning points."""
     if isinstance(answer, Truth):
         return answer.turning_places(CASE, member)
     which, x = answer.spans.turning_points(CASE)
-    return [0.0, *x[which == member].tolist(), length]
+    at = stations(frame)
+    return [*at.x[at.of(member)].tolist(), *x[which == member].tolist()]
 
 
 @pytest.mark.parametrize("name", ["truth", *OPINIONS])
