@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from crosscheck.answer import Answer, CaseAnswer, Silent
+from crosscheck.answer import Answer, CaseAnswer, Silent, WorkTable
 from crosscheck.compare.claim import CaseClaim, ClaimComparison
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.compare.differences import Verdict, worst
@@ -182,8 +182,8 @@ def _audit(frame: Frame, opinions: Opinions, closed: ClosedClaim, name: str) -> 
 
 
 def claimed_arrays(frame: Frame, closed: ClosedClaim, name: str) -> tuple[CaseAnswer, CaseAnswer]:
-    """The claim's end actions, displacements and reactions of one case as arrays (NaN where it says nothing), and half a
-    unit of each value's last printed digit."""
+    """The claim's end actions, displacements and reactions of one case as arrays (NaN where it says nothing), and half
+    a unit of each value's last printed digit."""
     from crosscheck.compare.claim import END_COLUMN, JOINT_COLUMN, REACTION_COLUMN
 
     values = _blank(frame)
@@ -267,3 +267,15 @@ def read(path: str | Path) -> Frame:
     return read_frame(path)
 
 
+
+
+def workings(opinions: Opinions) -> list[tuple[str, list[WorkTable]]]:
+    """The working of our own two opinions for every case asked for, each under a heading."""
+    out = []
+    for opinion in ("slope-deflection", "moment-distribution"):
+        module = importlib.import_module(OPINIONS[opinion])
+        for name in opinions.names:
+            if opinion in opinions.answers and name in opinions.answers[opinion].cases:
+                tables = module.working(opinions.frame, opinions.study, name)
+                out.append((f"Working of {opinion}, {name}", tables))
+    return out

@@ -1,0 +1,252 @@
+"""The `crosscheck` command. Parsing only; each command imports what it needs when it runs.
+
+Exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided (README, Commands).
+"""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Callable, Sequence
+from typing import TYPE_CHECKING, Any
+
+from crosscheck import __version__
+
+if TYPE_CHECKING:
+    from rich.console import RenderableType
+
+EXIT = {"agree": 0, "disagree": 1, "undecided": 3}
+UNUSABLE = 2
+
+EXAMPLES = """\
+examples:
+  crosscheck draft --bays 6,6 --storeys 3.5,3.2 > hall.toml     a frame file to start from
+  crosscheck opinions hall.toml                                 what three methods make of it
+  crosscheck verify hall.toml hall.claim.txt                    is the pasted table right?
+  crosscheck verify hall.toml - --case wind < paste.txt         the same from standard input
+"""
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run the command line; returns the exit status."""
+    args = _parser().parse_args(argv)
+    if args.command is None:
+        _parser().print_help()
+        return UNUSABLE
+    _plain_text_out()
+    from crosscheck.problems import UnusableInput
+
+    try:
+        return int(args.run(args))
+    except UnusableInput as error:
+        return _refuse(args, error)
+    except BrokenPipeError:
+        # The reader of a pipe went away (`| head`): not an error of ours, and nothing can be printed any more.
+        sys.stderr.close()
+        return UNUSABLE
+    except KeyboardInterrupt:
+        print("stopped", file=sys.stderr)
+        return UNUSABLE
+
+
+def _plain_text_out() -> None:
+    """UTF-8 on every system, so that a report piped to a file reads the same everywhere."""
+    for stream in (sys.stdout, sys.stderr):
+        reconfigure: Callable[..., Any] | None = getattr(stream, "reconfigure", None)
+        if reconfigure is not None and (stream.encoding or "").lower().replace("-", "") != "utf8":
+            reconfigure(encoding="utf-8", errors="replace")
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(
+        prog="crosscheck", epilog=EXAMPLES, formatter_class=argparse.RawDescriptionHelpFormatter,
+        description="An independent second and third opinion on plane-frame results from somebody else's analysis.",
+    )  # fmt: skip
+    parser.add_argument("--version", action="version", version=f"crosscheck {__version__}")
+    commands = parser.add_subparsers(dest="command", metavar="COMMAND")
+    _add_opinions(commands)
+    _add_verify(commands)
+    _add_draft(commands)
+    return parser
+
+
+def _add_common(command: argparse.ArgumentParser) -> None:
+    command.add_argument("frame", metavar="FRAME", help="frame file (TOML)")
+    command.add_argument("--case", metavar="NAME", help="one load case or combination only")
+    command.add_argument("--axial", choices=("elastic", "rigid"), help="instead of what the frame file says")
+    command.add_argument("--shear", choices=("rigid", "elastic"), help="instead of what the frame file says")
+    command.add_argument("--order", type=int, choices=(1, 2), help="instead of what the frame file says")
+    command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
+
+
+def _add_opinions(commands: Any) -> None:
+    command = commands.add_parser("opinions", help="three opinions on a frame, and where they disagree")
+    _add_common(command)
+    command.add_argument("--working", action="store_true", help="print equations and distribution to follow by hand")
+    command.set_defaults(run=run_opinions)
+
+
+def _add_verify(commands: Any) -> None:
+    command = commands.add_parser("verify", help="a pasted table of results against the opinions")
+    _add_common(command)
+    command.add_argument("claim", metavar="CLAIM", nargs="?", help="file of pasted results, or - for standard input")
+    command.add_argument("--tolerance", metavar="PERCENT", help="relative tolerance of the claim in percent (usual: 1)")
+    command.add_argument("--units", metavar="UNITS", help='units of the paste where it states none: "kN m", '
+                         'or by quantity: "moment kN mm, displacement mm"')  # fmt: skip
+    command.add_argument("--columns", metavar="HEADS", help='what the columns are: "member, joint, axial, shear, moment"')
+    command.add_argument("--reading", metavar="PATH", help="reading file (TOML): units, columns, signs, names stated once")
+    command.add_argument("--sheet", metavar="NAME", help="sheet of a spreadsheet file")
+    command.add_argument("--value", metavar="TEXT", action="append", default=[],
+                         help='a value in words, "B2 max 412 kNm"; may be repeated')  # fmt: skip
+    command.add_argument("--show-reading", action="store_true", help="print the table as understood; compare nothing")
+    command.set_defaults(run=run_verify)
+
+
+def _add_draft(commands: Any) -> None:
+    command = commands.add_parser("draft", help="write a frame file to start from: blank, or a regular grid")
+    command.add_argument("--bays", metavar="WIDTHS", help='bay widths: "6,6,7.5" or "3 x 6 m"; makes a regular grid')
+    command.add_argument("--storeys", metavar="HEIGHTS", help='storey heights: "4.2,3.5" or "3 x 3.5 m"')
+    command.add_argument("--units", default="kN m", metavar="UNITS", help='force and length unit (default "kN m")')
+    command.add_argument("--output", metavar="PATH", help="file to write (default: standard output); never overwrites")
+    command.add_argument("--json", metavar="PATH", help="also say what was written as JSON")
+    command.set_defaults(run=run_draft)
+
+
+# --- commands
+
+
+def run_opinions(args: argparse.Namespace) -> int:
+    """`crosscheck opinions FRAME`."""
+    from crosscheck import check
+
+    frame = _frame(args)
+    result = check.ask(frame, check.chosen_names(frame, args.case))
+
+    def document() -> dict[str, Any]:
+        from crosscheck.report.document import opinions_document
+
+        return opinions_document(result)
+
+    def report() -> RenderableType:
+        from crosscheck.report.terminal import opinions_report
+
+        return opinions_report(result, check.workings(result) if args.working else ())
+
+    _give(args, document, report)
+    return EXIT[result.verdict]
+
+
+def run_verify(args: argparse.Namespace) -> int:
+    """`crosscheck verify FRAME CLAIM`."""
+    from crosscheck import check
+    from crosscheck.claims import ReadingOptions, read_claim
+    from crosscheck.claims.reading import FrameNames
+    from crosscheck.problems import Problem, UnusableInput
+
+    if args.claim is None and not args.value:
+        advice = "name a file, or - for standard input, or --value"
+        raise UnusableInput([Problem("", None, "CLAIM", "no claim given", advice)])
+    relative = _percent(args.tolerance)
+    frame = _frame(args)
+    options = ReadingOptions(
+        units=args.units, columns=_columns(args.columns), file=args.reading, values=tuple(args.value), sheet=args.sheet
+    )
+    reading = read_claim(args.claim, FrameNames.of(frame), options)
+    if args.show_reading:
+        from crosscheck.claims import show_reading
+
+        for row in show_reading(reading):
+            print(row)
+        return 0
+    result = check.verify(frame, reading, args.case, relative)
+
+    def document() -> dict[str, Any]:
+        from crosscheck.report.document import verification_document
+
+        return verification_document(result)
+
+    def report() -> RenderableType:
+        from crosscheck.report.terminal import verify_report
+
+        return verify_report(result)
+
+    _give(args, document, report)
+    return EXIT[result.verdict]
+
+
+def run_draft(args: argparse.Namespace) -> int:
+    """`crosscheck draft`."""
+    from crosscheck.files import write_new
+    from crosscheck.frame.draft import draft
+
+    text = draft(units=args.units, bays=args.bays, storeys=args.storeys)
+    if args.output:
+        write_new(args.output, text)
+        print(f"wrote {args.output}; try: crosscheck opinions {args.output}", file=sys.stderr)
+    elif args.json != "-":
+        sys.stdout.write(text)
+    if args.json:
+        _write_json(args.json, {"format": "crosscheck/1", "file": args.output, "text": text})
+    return 0
+
+
+# --- input and output
+
+
+def _frame(args: argparse.Namespace) -> Any:
+    from crosscheck import check
+
+    return check.with_idealisation(check.read(args.frame), args.axial, args.shear, args.order)
+
+
+def _percent(text: str | None) -> float | None:
+    from crosscheck.problems import Problem, UnusableInput
+
+    if text is None:
+        return None
+    try:
+        value = float(text.strip().removesuffix("%"))
+    except ValueError:
+        value = float("nan")
+    if not 0 < value < 100:
+        says = f'"{text}" is not a percentage'
+        raise UnusableInput([Problem("", None, "--tolerance", says, "a number like 1 or 2.5")])
+    return value / 100
+
+
+def _columns(text: str | None) -> tuple[str, ...]:
+    return tuple(part.strip() for part in text.split(",")) if text else ()
+
+
+def _give(
+    args: argparse.Namespace, document: Callable[[], dict[str, Any]], report: Callable[[], RenderableType]
+) -> None:
+    """Print the report and write the JSON document; with `--json -` nothing but JSON goes to standard output."""
+    if args.json:
+        _write_json(args.json, document())
+    if args.json != "-":
+        from crosscheck.report.terminal import console
+
+        console().print(report())
+
+
+def _write_json(path: str, document: dict[str, Any]) -> None:
+    from crosscheck.report.document import dumps
+
+    if path == "-":
+        sys.stdout.write(dumps(document))
+        return
+    from crosscheck.files import replace_text
+
+    replace_text(path, dumps(document))
+
+
+def _refuse(args: argparse.Namespace, error: Any) -> int:
+    """Print one message a problem, on standard error."""
+    for problem in error.problems:
+        print(f"crosscheck: {problem}", file=sys.stderr)
+    return UNUSABLE
+
+
+if __name__ == "__main__":
+    raise SystemExit(main())

@@ -1,0 +1,445 @@
+"""The terminal report: verdict first, then how it was compared, the worst differences, and what was not compared.
+
+Readable at 80 columns, in a pipe and without colour: every mark is a word. Renders findings and computes nothing but
+their layout.
+"""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterable, Sequence
+from typing import IO, Any
+
+import numpy as np
+from rich.console import Console, Group, RenderableType
+from rich.padding import Padding
+from rich.table import Table
+from rich.text import Text
+
+from crosscheck.answer import MOMENT, Answer, WorkTable
+from crosscheck.check import CaseAudit, Opinions, Verification
+from crosscheck.compare.differences import Difference, Verdict
+from crosscheck.compare.opinions import CaseJudgement, with_turning_points
+from crosscheck.compare.tolerance import CLAIM, OWN
+from crosscheck.frame.model import Frame
+from crosscheck.frame.stations import stations
+from crosscheck.problems import UnusableInput
+from crosscheck.report import words
+
+MOST_DIFFERENCES = 15
+MOST_ROWS = 60
+VERDICT_STYLE: dict[Verdict, str] = {"agree": "bold", "disagree": "bold reverse", "undecided": "bold underline"}
+
+
+def console(file: IO[str] | None = None) -> Console:
+    """A console that neither guesses at numbers to colour nor breaks words in a pipe."""
+    return Console(file=file, highlight=False, emoji=False, markup=False)
+
+
+# --- small parts
+
+
+def _heading(text: str) -> Text:
+    return Text(f"\n{text}", style="bold")
+
+
+def _rows(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> RenderableType:
+    """A plain table; columns as (head, "left" or "right")."""
+    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="underline", show_edge=False)
+    for head, side in columns:
+        table.add_column(head, justify="right" if side == "right" else "left", overflow="fold")
+    for row in rows:
+        table.add_row(*[Text(cell) for cell in row])
+    return Padding(table, (0, 0, 0, 2))
+
+
+def _facts(rows: Iterable[tuple[str, str]]) -> RenderableType:
+    table = Table(box=None, show_header=False, pad_edge=False, padding=(0, 2, 0, 0))
+    table.add_column(no_wrap=True)
+    table.add_column(overflow="fold")
+    for name, text in rows:
+        table.add_row(Text(name, style="dim"), Text(text))
+    return Padding(table, (0, 0, 0, 2))
+
+
+def _notes(lines: Iterable[str]) -> RenderableType:
+    return Padding(Group(*[Text(line) for line in lines]), (0, 0, 0, 2))
+
+
+def _verdict_line(verdict: Verdict, sentence: str) -> Text:
+    return Text.assemble((f" {verdict.upper()} ", VERDICT_STYLE[verdict]), "  ", sentence)
+
+
+def _cautions() -> RenderableType:
+    return Group(_heading("Cautions"), _notes(words.CAUTIONS))
+
+
+def _warnings(frame: Frame) -> list[RenderableType]:
+    return [Text(f"Note: {w}", style="bold") for w in frame.warnings]
+
+
+# --- opinions
+
+
+def opinions_report(result: Opinions, working: Sequence[tuple[str, Sequence[WorkTable]]] = ()) -> RenderableType:
+    """What `crosscheck opinions` prints."""
+    parts: list[RenderableType] = [_verdict_line(result.verdict, _opinions_sentence(result)), *_warnings(result.frame)]
+    parts += [Text(line) for line in undetermined_lines(result)]
+    parts += [_heading("How it was compared"), _facts(_opinions_facts(result))]
+    for judged in result.judgements.values():
+        parts += _opinion_differences(result.frame, judged)
+    for name in result.names:
+        parts += _results(result, name)
+    for heading, tables in working:
+        parts.append(_heading(heading))
+        parts += [_work_table(t) for t in tables]
+    parts.append(_cautions())
+    return Group(*parts)
+
+
+def _opinions_sentence(result: Opinions) -> str:
+    judged = list(result.judgements.values())
+    count = sum(j.compared for j in judged)
+    cases = words.counted(len(judged), "case")
+    if result.verdict == "agree":
+        return f"{_spoke(result)} agree in {words.counted(count, 'value')} of {cases}."
+    if result.verdict == "undecided":
+        few = [j.case for j in judged if len(j.spoke) < 2]
+        return f"Fewer than two opinions speak for {_some(few)}." if few else "Nothing could be compared."
+    bad = [j for j in judged if j.differences]
+    dissenters = {j.dissenter for j in bad}
+    lone = dissenters.pop() if len(dissenters) == 1 else None
+    who = f" {lone} stands alone against the others." if lone else ""
+    many = words.counted(sum(len(j.differences) for j in bad), "value")
+    return f"The opinions differ in {many} of {_some([j.case for j in bad])}.{who}"
+
+
+def _spoke(result: Opinions) -> str:
+    names = list(result.answers)
+    return f"{', '.join(names[:-1])} and {names[-1]}" if len(names) > 1 else "".join(names)
+
+
+def _some(names: Sequence[str], most: int = 4) -> str:
+    return ", ".join(names) if len(names) <= most else f"{', '.join(names[:most])} and {len(names) - most} more"
+
+
+def undetermined_lines(result: Opinions) -> list[str]:
+    """What the idealisation leaves undetermined, beside the verdict."""
+    frame, none = result.frame, result.study.undetermined
+    members, joints = list(frame.members), list(frame.joints)
+    lines = []
+    if none.axial.any():
+        which = _some([members[k] for k in np.flatnonzero(none.axial)])
+        lines.append(f"Undetermined (axially rigid): axial force of {which}")
+    loose = [joints[k] for k in np.flatnonzero(none.joints.any(axis=1))]
+    if loose:
+        lines.append(f"Undetermined (nothing resists it): rotation or movement of joint {_some(loose)}")
+    pulls = [joints[k] for k in np.flatnonzero(none.reactions.any(axis=1))]
+    if pulls:
+        lines.append(f"Undetermined (axially rigid): reactions at {_some(pulls)}")
+    return lines
+
+
+def _frame_facts(frame: Frame) -> list[tuple[str, str]]:
+    return [
+        ("frame", f"{frame.title or '(no title)'}  [{frame.file or 'text'}, sha256 {frame.sha256[:12]}]"),
+        ("size", f"{words.counted(len(frame.joints), 'joint')}, {words.counted(len(frame.members), 'member')}, "
+                 f"{words.counted(len(frame.supports), 'support')}; {frame.units.force}, {frame.units.length}"),
+        ("idealisation", words.idealisation(frame)),
+    ]  # fmt: skip
+
+
+def _opinions_facts(result: Opinions) -> list[tuple[str, str]]:
+    rows = _frame_facts(result.frame)
+    rows.append(("cases", _some(result.names, 8)))
+    rows += _opinion_rows(result)
+    own = f"{OWN.relative:g} of the larger value, or {OWN.floor:g} of the case's largest of its kind"
+    rows.append(("allowed", f"{own}; ten times that where the library is one of the two"))
+    return rows
+
+
+def _opinion_rows(result: Opinions) -> list[tuple[str, str]]:
+    rows = []
+    for name, answer in result.answers.items():
+        left = "".join(f"; abstains on {case}: {why}" for case, why in answer.silent.items())
+        rows.append((name, "given" + left))
+    rows += [(name, f"abstains: {said.why}") for name, said in result.silent.items()]
+    return rows
+
+
+def _opinion_differences(frame: Frame, judged: CaseJudgement) -> list[RenderableType]:
+    if not judged.differences:
+        return []
+    names = list(judged.spoke)
+    rows = [
+        (words.place(d.place), d.place.quantity, *[words.number(d.values.get(n)) for n in names],
+         words.short(d.difference), words.short(d.allowed))
+        for d in judged.differences[:MOST_DIFFERENCES]
+    ]  # fmt: skip
+    columns = [("place", "left"), ("quantity", "left"), *[(n, "right") for n in names],
+               ("differ by", "right"), ("allowed", "right")]  # fmt: skip
+    title = f"Differences in {judged.case}: {len(judged.differences):,} of {judged.compared:,} values, worst first"
+    more = _more(len(judged.differences), MOST_DIFFERENCES)
+    return [_heading(title), _rows(columns, rows), *more]
+
+
+def _more(count: int, shown: int) -> list[RenderableType]:
+    return [_notes([f"... and {count - shown:,} more; --json gives all of them"])] if count > shown else []
+
+
+# --- results
+
+
+def _results(result: Opinions, name: str) -> list[RenderableType]:
+    """The agreed results of a case, or the first opinion's where they do not agree."""
+    given = [a for a in result.answers.values() if name in a.cases]
+    if not given:
+        return []
+    answer = given[0]
+    agreed = result.judgements[name].verdict == "agree"
+    whose = "as agreed" if agreed else f"by {answer.opinion} alone" if len(given) == 1 else f"by {answer.opinion}"
+    parts: list[RenderableType] = [_heading(f"{name}: results {whose}")]
+    parts += [_end_table(result.frame, answer, name), *_more(2 * len(result.frame.members), MOST_ROWS)]
+    parts += [Text(""), _along_table(result.frame, answer, name), *_more(len(result.frame.members), MOST_ROWS)]
+    parts += [Text(""), _joint_table(result.frame, answer, name), *_more(len(result.frame.joints), MOST_ROWS)]
+    parts += [Text(""), _reaction_table(result.frame, answer, name)]
+    return parts
+
+
+def _heads(frame: Frame, quantities: Iterable[str]) -> list[tuple[str, str]]:
+    return [(f"{q}, {words.unit_of(frame, q)}", "right") for q in quantities]
+
+
+def _largest(values: Any) -> float:
+    finite = [abs(float(v)) for v in values.ravel() if v == v]
+    return max(finite, default=0.0)
+
+
+def _end_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
+    ends = answer.cases[name].ends
+    scale = [_largest(ends[:, :, k]) for k in range(3)]
+    rows = []
+    for m, member in enumerate(list(frame.members.values())[: MOST_ROWS // 2]):
+        for end, joint in ((0, member.joint_from), (1, member.joint_to)):
+            moment = float(ends[m, end, 2])
+            numbers = [words.number(float(ends[m, end, k]), scale[k]) for k in range(3)]
+            rows.append((member.name, joint, *numbers, words.end_face(frame, member.name, joint, moment)))
+    columns = [("member", "left"), ("at", "left"), *_heads(frame, ("axial", "shear", "moment")), ("tension", "left")]
+    return _rows(columns, rows)
+
+
+def _along_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
+    member, x, side = with_turning_points(answer, name, stations(frame))
+    values = answer.spans.along(name, member, x, side)
+    scale = _largest(values[:, MOMENT]), _largest(values[:, 3])
+    rows = []
+    for m, title in enumerate(list(frame.members)[:MOST_ROWS]):
+        own = (member == m).nonzero()[0]
+        moments, across = values[own, MOMENT], values[own, 3]
+        high, low = own[moments.argmax()], own[moments.argmin()]
+        bend = own[abs(across).argmax()] if (across == across).any() else own[0]
+        rows.append((
+            title, *_at(moments.max(), x[high], scale[0]), words.tension_face(frame, title, moments.max()),
+            *_at(moments.min(), x[low], scale[0]), words.tension_face(frame, title, moments.min()),
+            *_at(values[bend, 3], x[bend], scale[1]),
+        ))  # fmt: skip
+    columns = [("member", "left"), ("most moment", "right"), ("at x", "right"), ("tension", "left"),
+               ("least", "right"), ("at x", "right"), ("tension", "left"),
+               ("across", "right"), ("at x", "right")]  # fmt: skip
+    return _rows(columns, rows)
+
+
+def _at(value: float, x: float, scale: float) -> tuple[str, str]:
+    return words.number(float(value), scale), f"{x:.4g}"
+
+
+def _joint_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
+    moves = answer.cases[name].joints
+    shift, turn = _largest(moves[:, :2]), _largest(moves[:, 2])
+    rows = [
+        (joint, *[words.number(float(moves[k, c]), shift) for c in (0, 1)], words.number(float(moves[k, 2]), turn))
+        for k, joint in enumerate(list(frame.joints)[:MOST_ROWS])
+    ]
+    return _rows([("joint", "left"), *_heads(frame, ("dx", "dy", "rotation"))], rows)
+
+
+def _reaction_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
+    pulls = answer.cases[name].reactions
+    force, moment = _largest(pulls[:, :2]), _largest(pulls[:, 2])
+    rows = []
+    for joint in list(frame.supports)[:MOST_ROWS]:
+        r = pulls[frame.joint_index[joint]]
+        rows.append((joint, *[words.number(float(r[c]), force) for c in (0, 1)], words.number(float(r[2]), moment)))
+    return _rows([("support", "left"), *_heads(frame, ("fx", "fy", "moment"))], rows)
+
+
+def _work_table(table: WorkTable) -> RenderableType:
+    rows = [tuple(words.number(c) if isinstance(c, float) else "" if c is None else str(c) for c in row)
+            for row in table.rows]  # fmt: skip
+    numeric = [any(isinstance(row[k], float) for row in table.rows) for k in range(len(table.columns))]
+    columns = [(head, "right" if right else "left") for head, right in zip(table.columns, numeric, strict=True)]
+    return Group(_heading(table.heading), _rows(columns, rows), _notes(table.remarks))
+
+
+# --- verify
+
+
+def verify_report(result: Verification) -> RenderableType:
+    """What `crosscheck verify` prints."""
+    opinions = result.opinions
+    parts: list[RenderableType] = [_verdict_line(result.verdict, _claim_sentence(result))]
+    parts += [Text(f"  {line}") for line in _beside(result)]
+    parts += _warnings(opinions.frame)
+    parts += [Text(line) for line in undetermined_lines(opinions)]
+    parts += _suspect_lines(result)
+    parts += [_heading("How it was compared"), _facts(_claim_facts(result))]
+    for judged in opinions.judgements.values():
+        if judged.case in result.closed.cases:
+            parts += _opinion_differences(opinions.frame, judged)
+    for case in result.cases:
+        parts += _claim_differences(opinions.frame, case.case, case.differences, case.compared)
+    parts += _not_compared(result)
+    for audit in result.audits:
+        parts += _audit_lines(opinions.frame, audit)
+    parts.append(_cautions())
+    return Group(*parts)
+
+
+def _claim_sentence(result: Verification) -> str:
+    compared, of = sum(c.compared for c in result.cases), sum(c.of for c in result.cases)
+    differ = sum(len(c.differences) for c in result.cases)
+    which = _some(result.closed.cases) or "no case"
+    if result.verdict == "agree":
+        return f"The claim agrees in the {words.counted(compared, 'value')} it gives, of {of:,} ({which})."
+    if result.verdict == "disagree" and differ:
+        given = words.counted(compared, "value")
+        return f"The claim differs in {differ:,} of the {given} it gives, of {of:,} ({which})."
+    if result.verdict == "disagree":
+        return f"The claim is not the answer to this frame ({which})."
+    return f"The claim cannot be judged surely ({words.counted(compared, 'value')} compared, of {of:,})."
+
+
+def _beside(result: Verification) -> list[str]:
+    lines = list(result.grounds)
+    unsafe = sum(d.unsafe for c in result.cases for d in c.differences)
+    if unsafe:
+        lines.append(f"In {unsafe:,} of them the claim is smaller than the opinions: the unsafe side more often.")
+    by_floor = sum(c.by_floor for c in result.cases)
+    if by_floor:
+        few = words.counted(by_floor, "value agrees", "values agree")
+        lines.append(f"{few} only because small beside the largest.")
+    return lines
+
+
+def _suspect_lines(result: Verification) -> list[RenderableType]:
+    if not result.suspects:
+        return []
+    rows = [
+        (str(k + 1), s.kind, s.says, f"{100 * s.explains:.4g}%", "tied" if s.tied_with else "")
+        for k, s in enumerate(result.suspects)
+    ]
+    columns = [("", "right"), ("kind", "left"), ("would explain it", "left"), ("share", "right"), ("", "left")]
+    return [_heading("Suspects (hypotheses, best first)"), _rows(columns, rows)]
+
+
+def _claim_facts(result: Verification) -> list[tuple[str, str]]:
+    c, rows = result.closed, _frame_facts(result.opinions.frame)
+    rows.insert(1, ("claim", f"{c.file or 'text'}, {words.counted(c.rows, 'row')}, sha256 {c.sha256[:12]}"))
+    rows.append(("case", _some(c.cases) or "none"))
+    rows.append(("allowed", allowed_words(result)))
+    rows += [("units", f"{quantity}: {taken}") for quantity, taken in _grouped(c.units)]
+    rows += [("signs", f"{quantity}: {taken}") for quantity, taken in _grouped(c.signs)]
+    rows += [("reading", note) for note in c.notes]
+    return rows + _opinion_rows(result.opinions)
+
+
+def _grouped(taken: dict[str, str]) -> list[tuple[str, str]]:
+    """Quantities that were taken alike, on one line."""
+    groups: dict[str, list[str]] = {}
+    for quantity, text in taken.items():
+        groups.setdefault(text, []).append(quantity)
+    return [(", ".join(quantities), text) for text, quantities in groups.items()]
+
+
+def allowed_words(result: Verification) -> str:
+    t = result.tolerance
+    text = (
+        f"{100 * t.relative:g}% of the larger value, or {100 * t.floor:g}% of the member's or joint's largest, or the "
+        "printed rounding"
+    )
+    return text if t.relative == CLAIM.relative else f"{text}  (NOT the usual {100 * CLAIM.relative:g}%)"
+
+
+def _claim_differences(
+    frame: Frame, case: str, differences: Sequence[Difference], compared: int
+) -> list[RenderableType]:
+    if not differences:
+        return []
+    rows = []
+    for d in differences[:MOST_DIFFERENCES]:
+        claim, ours = d.values.get("claim"), words.opinions_value(d)
+        side = "claim low" if d.unsafe else "claim high"
+        rows.append((
+            words.place(d.place), d.place.quantity,
+            _with_face(frame, d, claim, ours), _with_face(frame, d, ours, claim),
+            words.short(d.difference), words.short(d.allowed), d.note or side,
+        ))  # fmt: skip
+    columns = [("place", "left"), ("quantity", "left"), ("claim", "right"), ("opinions", "right"),
+               ("differ by", "right"), ("allowed", "right"), ("", "left")]  # fmt: skip
+    title = f"Differences in {case}: {len(differences):,} of {compared:,} values, unsafe side first, then worst first"
+    return [_heading(title), _rows(columns, rows), *_more(len(differences), MOST_DIFFERENCES)]
+
+
+def _with_face(frame: Frame, d: Difference, value: float | None, beside: float | None) -> str:
+    face = words.face_of(frame, d.place, value)
+    return words.number(value, beside) + (f" {face}" if face else "")
+
+
+def _not_compared(result: Verification) -> list[RenderableType]:
+    closed = result.closed
+    lines = []
+    reasons = Counter(why for c in result.cases for _, why in c.not_compared)
+    lines += [f"{words.counted(n, 'value')}: {why}" for why, n in reasons.items()]
+    lines += [f"line {line}: {text.strip()[:60]!r}: {why}" for line, text, why in closed.not_understood[:10]]
+    if len(closed.not_understood) > 10:
+        lines.append(f"... and {len(closed.not_understood) - 10:,} more rows not understood")
+    lines += [f"line {line}: {text.strip()[:60]!r}: {why}" for line, text, why in closed.foreign[:10]]
+    compared, of = sum(c.compared for c in result.cases), sum(c.of for c in result.cases)
+    if of > compared:
+        lines.append(f"{of - compared:,} of the frame's {of:,} values are not in the claim or were not judged")
+    others = [n for n in result.opinions.frame.names if n not in closed.cases]
+    if others:
+        lines.append(f"cases the claim does not speak of: {_some(others)}")
+    return [_heading("Not compared"), _notes(lines)] if lines else []
+
+
+def _audit_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]:
+    judged = [s for s in audit.statics if s.ok is not None]
+    failing = [s for s in judged if not s.ok]
+    left = len(audit.statics) - len(judged)
+    unjudged = f"; {left:,} could not be judged from what the claim gives" if left else ""
+    if not judged:
+        return [_heading(f"Statics of the claim, {audit.case}"), _notes([f"nothing could be judged{unjudged}"])]
+    if not failing:
+        text = f"all {words.counted(len(judged), 'balance')} hold to the printed rounding{unjudged}"
+        return [_heading(f"Statics of the claim, {audit.case}"), _notes([text])]
+    failing.sort(key=lambda s: -abs(s.residual) / (s.allowed or 1.0))
+    rows = [
+        (s.check, s.where or "whole frame", s.component, words.short(s.residual), words.short(s.allowed))
+        for s in failing[:MOST_DIFFERENCES]
+    ]
+    columns = [("balance", "left"), ("where", "left"), ("of", "left"), ("left over", "right"), ("allowed", "right")]
+    count = words.counted(len(judged), "balance")
+    title = f"Statics of the claim, {audit.case}: {len(failing):,} of {count} fail{unjudged}"
+    return [_heading(title), _rows(columns, rows)]
+
+
+# --- problems
+
+
+def problems_report(error: UnusableInput) -> RenderableType:
+    """One message a problem."""
+    count = words.counted(len(error.problems), "problem")
+    return Group(Text(f"Unusable input: {count}", style="bold"), *[Text(f"  {p}") for p in error.problems])
+
+

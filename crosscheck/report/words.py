@@ -1,0 +1,109 @@
+"""Words and numbers for people: units, places, tension faces, cautions. Shared by every renderer; none computes."""
+
+from __future__ import annotations
+
+import math
+
+from crosscheck.compare.differences import Difference, Place
+from crosscheck.frame.model import Frame
+
+CAUTIONS = (
+    "This supports and does not replace a licensed engineer's judgement; local codes govern.",
+    "Agreement between analyses does not make a design safe: it is agreement with this stated model, and an error that "
+    "the frame file shares with the other analysis remains.",
+    "Not covered: capacity, lateral buckling, connections, foundations, out-of-plane effects, dynamics, plasticity.",
+)
+TABLE_WORDS = {
+    "member_ends": "end", "spans": "span", "extremes": "extreme", "joints": "displacement", "reactions": "reaction",
+}  # fmt: skip
+
+
+def unit_of(frame: Frame, quantity: str) -> str:
+    """The frame's unit for a quantity by its contract name."""
+    force, length = frame.units.force, frame.units.length
+    if quantity in ("axial", "shear", "fx", "fy"):
+        return force
+    if quantity == "moment":
+        return f"{force} {length}"
+    return "rad" if quantity == "rotation" else length
+
+
+def number(value: float | None, scale: float | None = None) -> str:
+    """A number for a table: four or more significant digits of `scale` (the largest it stands beside), no exponent for
+    ordinary sizes; a dash for nothing."""
+    if value is None or math.isnan(value):
+        return "-"
+    size = max(abs(value), abs(scale or 0.0))
+    if size == 0.0:
+        return "0"
+    if not 1e-4 <= size < 1e7:
+        return f"{value:.4g}"
+    decimals = max(0, 3 - math.floor(math.log10(size)))
+    text = f"{value:.{decimals}f}"
+    return "0" if float(text) == 0.0 and value == 0.0 else text
+
+
+def short(value: float) -> str:
+    """A difference or an allowance: three significant digits."""
+    return "no number" if math.isinf(value) or math.isnan(value) else f"{value:.3g}"
+
+
+def place(p: Place) -> str:
+    """Where a value stands, in words."""
+    if p.member and p.joint:
+        return f"{p.member} at {p.joint}"
+    if p.member and p.at is not None:
+        return f"{p.member} at x = {p.at:.4g}"
+    if p.member:
+        return f"{p.member}, along it"
+    if p.joint:
+        return f"joint {p.joint}" if p.of == "joints" else f"support {p.joint}" if p.of == "reactions" else str(p.joint)
+    return "whole frame"
+
+
+def tension_face(frame: Frame, member: str, span_moment: float | None) -> str:
+    """Which face of the member a moment stretches: "bottom", "top", "left", "right".
+
+    span_moment: sagging positive, that is tension on the local -y face.
+    """
+    if span_moment is None or math.isnan(span_moment) or span_moment == 0.0:
+        return ""
+    t, m = frame.member_table, frame.member_index[member]
+    sign = 1.0 if span_moment > 0 else -1.0
+    x, y = sign * float(t.sin[m]), -sign * float(t.cos[m])
+    if abs(y) >= abs(x) - 1e-9:
+        return "top" if y > 0 else "bottom"
+    return "right" if x > 0 else "left"
+
+
+def end_face(frame: Frame, member: str, joint: str, moment: float | None) -> str:
+    """The tension face at a member's end, from its clockwise end moment."""
+    if moment is None:
+        return ""
+    sagging = moment if frame.members[member].joint_from == joint else -moment
+    return tension_face(frame, member, sagging)
+
+
+def face_of(frame: Frame, p: Place, value: float | None) -> str:
+    """The tension face for a moment of a member, "" for anything else."""
+    if p.quantity != "moment" or p.member is None:
+        return ""
+    if p.joint is not None:
+        return end_face(frame, p.member, p.joint, value)
+    return tension_face(frame, p.member, value)
+
+
+def idealisation(frame: Frame) -> str:
+    """One line: what the analysis neglects."""
+    a = frame.analysis
+    axial = "axially elastic" if a.axial == "elastic" else "axially rigid (no member changes its length)"
+    return f"{axial}, shear {a.shear}, {'first' if a.order == 1 else 'second'} order"
+
+
+def opinions_value(d: Difference) -> float | None:
+    """The opinions' value beside a claim's: the first that gives one."""
+    return next((v for o, v in d.values.items() if o != "claim" and v is not None), None)
+
+
+def counted(n: int, one: str, many: str = "") -> str:
+    return f"{n:,} {one if n == 1 else many or one + 's'}"
