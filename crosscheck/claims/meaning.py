@@ -1,0 +1,300 @@
+"""What a table's columns mean: its kind, and the role of each column, from heads, cells and the heading above.
+
+A symbol alone says little ("Rz" is a force in one table and a rotation in another), so the kind is settled first.
+"""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass, replace
+
+from crosscheck.claims.grid import Grid
+from crosscheck.claims.names import Names, plain
+from crosscheck.claims.numbers import is_blank, parse_number
+from crosscheck.claims.scan import RawTable, is_number
+from crosscheck.claims.words import NUMBERED_AXIS, Head, Size
+from crosscheck.frame.units import ANGLE, FORCE, LENGTH, MOMENT
+
+START_WORDS = frozenset({"i", "start", "from", "1", "left", "near", "a", "first", "begin", "end1", "endi", "bottom", "0"})
+LAST_WORDS = frozenset({"j", "end", "to", "2", "right", "far", "b", "second", "last", "end2", "endj", "top"})
+WHICH_WORDS = {
+    "max": "max", "maximum": "max", "largest": "max", "+": "max", "min": "min", "minimum": "min", "smallest": "min",
+    "abs": "size", "absmax": "size", "maxabs": "size", "absolute": "size", "peak": "size", "extreme": "size",
+}  # fmt: skip
+
+
+@dataclass(frozen=True, slots=True)
+class Role:
+    """What a column is for: "" (not used), member, joint, start joint, end joint, end, case, station, which, value."""
+
+    name: str = ""
+    quantity: str = ""
+    end: int | None = None
+    which: str = ""
+    unit: Size | None = None
+    share: bool = False
+    axes: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Meaning:
+    """kind: end, ends (both in a row), span, reaction, displacement, extreme, echo ..., or "" with the reason why not."""
+
+    kind: str
+    roles: tuple[Role, ...]
+    why: str = ""
+
+
+def meaning_of(grid: Grid, table: RawTable, names: Names) -> Meaning:
+    """Kind and roles of the columns of one table."""
+    heads = _numbered(_filled(grid, table, names))
+    roles = _named_roles(heads, grid, names)
+    kind, why = _kind(heads, roles, table)
+    if not kind:
+        return Meaning("", tuple(roles), why)
+    if kind.startswith("echo"):
+        return Meaning(kind, tuple(roles))
+    roles, why = _values(kind, heads, roles, grid)
+    if not any(r.name == "value" for r in roles):
+        return Meaning("", tuple(roles), why or "no column of results was recognised")
+    if kind == "end" and not any(r.name in ("joint", "end") for r in roles):
+        kind = "ends" if any(r.name == "value" and r.end is not None for r in roles) else "end"
+    return Meaning(kind, tuple(roles), why)
+
+
+# -- heads that say nothing, from the cells below them
+
+
+def column(grid: Grid, k: int) -> list[str]:
+    return [row[k] for row in grid.rows if not is_blank(row[k])]
+
+
+def _filled(grid: Grid, table: RawTable, names: Names) -> list[Head]:
+    """Heads with those that say nothing told from their cells."""
+    heads = list(grid.heads)
+    results = {h.noun for h in heads}
+    member_wanted = not any(h.noun == "member" for h in heads) and not any(table.blocks)
+    for k, head in enumerate(heads):
+        if head.noun not in ("", "id") or head.which:
+            continue
+        cells = column(grid, k)
+        if head.noun == "" and head.end is None and k == 0 and _is_index(cells) and len(heads) > 2:
+            if any(h.noun in ("member", "joint", "id") for h in heads):
+                continue
+        noun = _noun_of_cells(cells, names, member_wanted and bool(results & {"N", "V", "w"}))
+        if head.noun == "id" and not noun:
+            noun = "member" if results & {"N", "V", "w"} or re.search("element|member", table.heading, re.I) else "joint"
+        if noun == "member":
+            member_wanted = False
+        heads[k] = replace(head, noun=noun)
+    return heads
+
+
+def _is_index(cells: list[str]) -> bool:
+    return cells == [str(k) for k in range(len(cells))]
+
+
+def _noun_of_cells(cells: list[str], names: Names, member_first: bool) -> str:
+    """What most cells name: members, joints, ends, cases, which extreme; "" where they do not."""
+    if not cells:
+        return ""
+    shares = {
+        "member": _share(cells, lambda t: names.member(t) is not None),
+        "joint": _share(cells, lambda t: names.joint(t) is not None),
+        "end": _share(cells, lambda t: plain(t) in START_WORDS | LAST_WORDS) if not _share(cells, is_number) else 0.0,
+        "which": _share(cells, lambda t: plain(t) in WHICH_WORDS),
+        "case": _share(cells, lambda t: names.case(t) is not None),
+    }
+    order = ["member", "joint", "which", "case", "end"] if member_first else ["joint", "member", "which", "case", "end"]
+    best = max(order, key=lambda noun: shares[noun])
+    return best if shares[best] >= 0.6 else ""
+
+
+def _share(cells: list[str], test: object) -> float:
+    assert callable(test)
+    some = cells[:200]
+    return sum(bool(test(c)) for c in some) / len(some) if some else 0.0
+
+
+def _numbered(heads: list[Head]) -> list[Head]:
+    """A number behind a symbol is an axis where 3 occurs ("M3", "V2"), else an end ("M1", "M2")."""
+    axes = {h.axis for h in heads if h.axis in NUMBERED_AXIS}
+    if not axes:
+        return heads
+    if axes <= {"1", "2"} and "1" in axes:
+        return [
+            replace(h, axis="", end=int(h.axis) - 1) if h.axis in ("1", "2") else h for h in heads
+        ]
+    return [replace(h, axis=NUMBERED_AXIS.get(h.axis, h.axis)) for h in heads]
+
+
+# -- columns that name places
+
+
+def _named_roles(heads: list[Head], grid: Grid, names: Names) -> list[Role]:
+    roles = [Role() for _ in heads]
+    joints = [k for k, h in enumerate(heads) if h.noun == "joint"]
+    bare_ends = [k for k, h in enumerate(heads) if h.noun == "" and h.end is not None and not h.which]
+    for k in bare_ends:
+        cells = column(grid, k)
+        if _share(cells, lambda t: names.joint(t) is not None) >= 0.6:
+            joints.append(k)
+    pair = len(joints) == 2
+    for position, k in enumerate(sorted(joints)):
+        end = heads[k].end if heads[k].end is not None else (position if pair else None)
+        roles[k] = Role("joint" if end is None or not pair else ("start joint", "end joint")[end])
+    for k, head in enumerate(heads):
+        if head.noun in ("case", "which", "end") and not roles[k].name:
+            roles[k] = Role(head.noun)
+        if head.noun == "member":
+            roles[k] = Role("end" if any(r.name == "member" for r in roles) else "member")
+        if head.noun == "station" and not any(r.name == "station" for r in roles):
+            roles[k] = Role("station", unit=head.unit, share=head.share)
+    return [_which_or_case(r, column(grid, k), names) for k, r in enumerate(roles)]
+
+
+def _which_or_case(role: Role, cells: list[str], names: Names) -> Role:
+    """A head such as "end" or "case" is held to its cells."""
+    if role.name == "which" and _share(cells, lambda t: plain(t) in WHICH_WORDS) < 0.5:
+        return Role()
+    return role
+
+
+# -- kind
+
+
+def _kind(heads: list[Head], roles: list[Role], table: RawTable) -> tuple[str, str]:
+    heading = table.heading.lower()
+    nouns = {h.noun for h in heads}
+    names_of = {r.name for r in roles}
+    forces = nouns & {"N", "V", "M", "F"}
+    if echo := _echo_kind(heads, names_of, heading, nouns):
+        return echo, ""
+    of_member = "member" in names_of or {"start joint", "end joint"} <= names_of or any(table.blocks)
+    station = "station" in names_of or ("x" in nouns and bool(forces) and not re.search("react|displ", heading))
+    if _moves(heads, nouns, heading) and not (of_member and station):
+        return ("displacement", "") if "joint" in names_of else ("", "displacements of what is not said")
+    if station and (of_member or nouns & {"N", "V"} or "M" in nouns):
+        return ("span", "") if of_member else ("", "values along a member whose name is not said")
+    if of_member and (forces or "R" in nouns):
+        if "which" in names_of or any(h.which for h in heads):
+            return "extreme", ""
+        return "end", ""
+    if "joint" in names_of and (forces or "R" in nouns or "x" in nouns):
+        return "reaction", ""
+    return "", "it is not said what the values belong to"
+
+
+def _moves(heads: list[Head], nouns: set[str], heading: str) -> bool:
+    """Do the columns hold displacements?"""
+    if any(h.unit and h.unit.dimension == FORCE for h in heads):
+        return False
+    if nouns & {"D", "T"} and not nouns & {"F", "N"}:
+        return True
+    told = re.search(r"displ|deflect|rotation|movement|translation", heading) is not None
+    lengths = any(h.unit and h.unit.dimension in (LENGTH, ANGLE) for h in heads)
+    return bool(nouns & {"R", "x", "w"}) and (told or lengths) and not nouns & {"F", "N"}
+
+
+def _echo_kind(heads: list[Head], names_of: set[str], heading: str, nouns: set[str]) -> str:
+    """Kind of a table of the other model's own input, "" where it is none."""
+    results = nouns & {"N", "V", "M", "F", "R", "D", "T", "w"}
+    if {"I", "A"} & nouns or "E" in nouns and not results:
+        return "echo sections" if not results else ""
+    if results and "coordinate" not in heading:
+        return ""
+    axes = [h.axis for h in heads if h.noun == "x"]
+    if "joint" in names_of and len(axes) >= 2 and not re.search(r"displ|react|deflect", heading):
+        return "echo joints"
+    if {"start joint", "end joint"} <= names_of:
+        return "echo members"
+    if "support" in nouns or re.search(r"\bsupports?\b|restrain|fixity", heading) and "joint" in names_of and not axes:
+        return "echo supports"
+    return "echo other" if nouns & {"section", "length"} and not results else ""
+
+
+# -- columns of values
+
+_TARGETS = {
+    "end": {"axial": "N Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx"},
+    "span": {"axial": "N Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx", "across": "w D Dy Dz wy wz"},
+    "extreme": {"axial": "N Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx", "across": "w D Dy Dz wy wz"},
+    "reaction": {"fx": "Fx Rx xx Vx", "fy": "Fy Fz Ry Rz xy xz V Vy Vz", "moment": "M Mz My Mx"},
+    "displacement": {"dx": "Dx xx", "dy": "Dy Dz xy xz w V wy wz", "rotation": "T Tz Ty Tx Rz Ry Rx"},
+}
+_DIMENSIONS = {
+    "axial": FORCE, "shear": FORCE, "fx": FORCE, "fy": FORCE, "moment": MOMENT, "dx": LENGTH, "dy": LENGTH,
+    "across": LENGTH, "rotation": ANGLE,
+}  # fmt: skip
+
+
+def dimension_of(quantity: str) -> object:
+    """The dimension of a quantity's values."""
+    return _DIMENSIONS[quantity]
+
+
+def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tuple[list[Role], str]:
+    roles = list(roles)
+    heads = _sided(kind, heads)
+    if kind == "span" and not any(r.name == "station" for r in roles):
+        k = next(k for k, h in enumerate(heads) if h.noun == "x")
+        roles[k] = Role("station", unit=heads[k].unit, share=heads[k].share)
+    groups = sorted({(h.end, h.which) for h in heads if h.noun in "NVMFRDTwx"}, key=str)
+    why = ""
+    for end, which in groups:
+        mine = [k for k, h in enumerate(heads) if (h.end, h.which) == (end, which) and not roles[k].name]
+        for quantity, wanted in _TARGETS[kind].items():
+            found = _columns_for(wanted.split(), mine, heads, quantity)
+            chosen, doubt = _in_plane(found, quantity, heads, grid, roles)
+            why = why or doubt
+            if chosen is not None:
+                axes = "open" if heads[chosen].noun == "F" and heads[chosen].axis else ""
+                roles[chosen] = Role("value", quantity, end, which, heads[chosen].unit, axes=axes)
+    return roles, why
+
+
+def _sided(kind: str, heads: list[Head]) -> list[Head]:
+    """Symbols that the kind of table turns: u, v and w of displacements; H and V of reactions."""
+    if kind != "displacement":
+        return heads
+    plain_moves = [k for k, h in enumerate(heads) if h.noun == "D" and not h.axis]
+    if plain_moves and not any(h.noun == "D" and h.axis == "x" for h in heads):
+        heads = list(heads)
+        for k, axis in zip(plain_moves, "xy", strict=False):
+            heads[k] = replace(heads[k], axis=axis)
+    return heads
+
+
+def _columns_for(wanted: list[str], mine: list[int], heads: list[Head], quantity: str) -> list[int]:
+    keys = {k: heads[k].noun + heads[k].axis for k in mine}
+    found = [k for want in wanted for k in mine if keys[k] == want]
+    fits = [k for k in found if not _misfit(heads[k].unit, quantity)]
+    return list(dict.fromkeys(fits))
+
+
+def _misfit(unit: Size | None, quantity: str) -> bool:
+    if unit is None or quantity == "rotation" and unit.dimension == type(unit.dimension)():
+        return False
+    return unit.dimension != _DIMENSIONS[quantity]
+
+
+def _in_plane(
+    found: list[int], quantity: str, heads: list[Head], grid: Grid, roles: list[Role]
+) -> tuple[int | None, str]:
+    """Of the columns that may hold a quantity (y and z of a spatial table) the one that is not all zero."""
+    free = [k for k in found if not roles[k].name]
+    if len(free) <= 1:
+        return (free[0] if free else None), ""
+    busy = [k for k in free if not _all_zero(column(grid, k))]
+    if len(busy) > 1:
+        names = ", ".join(heads[k].text for k in busy)
+        return None, f"more than one column may hold {quantity} ({names}); say which with --columns"
+    return (busy or free)[0], ""
+
+
+def _all_zero(cells: list[str]) -> bool:
+    for cell in cells:
+        number = parse_number(cell) or parse_number(cell, decimal_comma=True)
+        if number is None or number.value != 0:
+            return False
+    return True

@@ -1,0 +1,158 @@
+"""Names in a paste and names in the frame: case, blanks, prefixes and separators are forgiven, doubt is not.
+
+A forgiven name counts only where exactly one name of the frame answers to it.
+"""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+
+from crosscheck.claims.reading import FrameNames
+
+_PREFIXES = {
+    "member": r"members?|memb?r?|mbr|beams?|bars?|elements?|elem|ele?|elt|rods?|columns?|col|no|nr",
+    "joint": r"joints?|jo?i?n?t|nodes?|nod|nd|points?|pt|supports?|supp?|at|no|nr",
+    "case": r"load\s*cases?|load\s*combinations?|cases?|combinations?|combos?|comb?|lc|load|loading|results? for|no|nr",
+}
+_DASH = re.compile(r"[\u2010-\u2015\u2212]")
+_PAIR = re.compile(r"\s*(?:-+>?|\u2192|/|\bto\b|:|\.\.|,|~|_)\s*|\s+")
+
+
+def plain(text: str) -> str:
+    """Letters and digits of a name in one case; zeros before a number dropped ("M03" is "m3")."""
+    return re.sub(r"(?<![0-9.])0+(?=[0-9])", "", re.sub(r"[^\w.+']|_", "", _DASH.sub("-", text).casefold()))
+
+
+def without_prefix(text: str, kind: str) -> str:
+    """The name without a word such as "member" or "node no." before it."""
+    tidy = " ".join(text.split())
+    while found := re.match(rf"(?:{_PREFIXES[kind]})\b[\s.:#_-]*(?=\S)", tidy, re.IGNORECASE):
+        tidy = tidy[found.end() :]
+    return tidy.strip(" .:#")
+
+
+def _core(name: str) -> str:
+    """A name's number where letters of at most a short prefix stand before it: "m3", "M-3", "Beam 3" give "3"."""
+    found = re.fullmatch(r"[a-z]*0*(\d+)", plain(name))
+    return found.group(1) if found else ""
+
+
+class _Book:
+    """Names of one kind under their forgiven writings."""
+
+    def __init__(self, names: Iterable[str], kind: str, given: Mapping[str, str]) -> None:
+        self.kind = kind
+        self.names = frozenset(names)
+        self.given = {plain(k): v for k, v in given.items()} | dict(given)
+        self.levels: list[dict[str, list[str]]] = [{}, {}]
+        for name in self.names:
+            for level, key in enumerate((plain(name), _core(name))):
+                if key:
+                    self.levels[level].setdefault(key, []).append(name)
+
+    def find(self, text: str) -> str | None:
+        """The one name that `text` may mean, or None."""
+        text = text.strip().strip("\"'`*")
+        for writing in (text, plain(text)):
+            if writing in self.given:
+                return self.given[writing]
+        if text in self.names:
+            return text
+        for writing in dict.fromkeys((text, without_prefix(text, self.kind))):
+            if found := self._only(0, plain(writing)):
+                return found
+        bare = without_prefix(text, self.kind)
+        # "m3" may be the frame's "3", and "3" its "m3", but never "c3" its "b3".
+        return self._only(1, _core(bare)) if self._same_letters(bare) else None
+
+    def _only(self, level: int, key: str) -> str | None:
+        found = self.levels[level].get(key, [])
+        return found[0] if key and len(found) == 1 else None
+
+    def _same_letters(self, text: str) -> bool:
+        found = self._only(1, _core(text))
+        if not found:
+            return False
+        letters = [re.sub(r"\d.*", "", plain(t)) for t in (text, found)]
+        usual = {"member": "m mem e el b s", "joint": "j n k p", "case": "lc c l"}[self.kind].split()
+        return all(not word or word in usual for word in letters)
+
+
+@dataclass(frozen=True, slots=True)
+class MemberHit:
+    """A member of the frame, and how the paste's runs: +1 as the frame's, -1 the other way, 0 not said."""
+
+    name: str
+    run: int
+
+
+class Names:
+    """Finds the frame's names for a paste's."""
+
+    def __init__(
+        self,
+        frame: FrameNames,
+        members: Mapping[str, str] | None = None,
+        joints: Mapping[str, str] | None = None,
+        cases: Mapping[str, str] | None = None,
+    ) -> None:
+        self.frame = frame
+        self._members = _Book(frame.members, "member", members or {})
+        self._joints = _Book(frame.xy, "joint", joints or {})
+        self._cases = _Book(frame.cases, "case", cases or {})
+        self._between: dict[tuple[str, str], list[str]] = {}
+        for name, ends in frame.members.items():
+            self._between.setdefault(ends, []).append(name)
+        self._known: dict[str, MemberHit | None] = {}
+
+    def joint(self, text: str) -> str | None:
+        return self._joints.find(text)
+
+    def case(self, text: str) -> str | None:
+        return self._cases.find(text)
+
+    def between(self, first: str, last: str) -> MemberHit | None:
+        """The one member that joins two joints of the frame."""
+        for ends, run in (((first, last), 1), ((last, first), -1)):
+            found = self._between.get(ends, [])
+            if len(found) == 1:
+                return MemberHit(found[0], run)
+        return None
+
+    def member(self, text: str) -> MemberHit | None:
+        if text not in self._known:
+            self._known[text] = self._find_member(text)
+        return self._known[text]
+
+    def _find_member(self, text: str) -> MemberHit | None:
+        if text.strip() in self.frame.members or plain(text) in self._members.given or text in self._members.given:
+            name = self._members.find(text)
+            return MemberHit(name, self._run(name, text)) if name else None
+        # The two joints of "B - A" say more than the letters: they say which way the paste's member runs.
+        if hit := self._pair(text):
+            return hit
+        name = self._members.find(text)
+        return MemberHit(name, 0) if name else None
+
+    def _run(self, name: str, text: str) -> int:
+        hit = self._pair(text)
+        return hit.run if hit and hit.name == name else 0
+
+    def _pair(self, text: str) -> MemberHit | None:
+        bare = _DASH.sub("-", without_prefix(text, "member")).strip("()[] ")
+        hits = set()
+        for found in _PAIR.finditer(bare):
+            first, last = self.joint(bare[: found.start()]), self.joint(bare[found.end() :])
+            if first and last and (hit := self.between(first, last)):
+                hits.add(hit)
+        if not hits and bare.isalnum():
+            for k in range(1, len(bare)):
+                first, last = self._joints_exactly(bare[:k]), self._joints_exactly(bare[k:])
+                if first and last and (hit := self.between(first, last)):
+                    hits.add(hit)
+        return hits.pop() if len(hits) == 1 else None
+
+    def _joints_exactly(self, text: str) -> str | None:
+        return self._joints._only(0, plain(text))

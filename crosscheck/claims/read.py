@@ -1,0 +1,351 @@
+"""Reading a claim: text to a Reading, stage by stage (decode, lines, tables, columns, values), keeping the trace."""
+
+from __future__ import annotations
+
+import hashlib
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field, replace
+from pathlib import Path
+
+from crosscheck.claims.decode import lines_of, read_source, refuse
+from crosscheck.claims.grid import Grid, grid_of
+from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Meaning, Role, dimension_of, meaning_of
+from crosscheck.claims.names import MemberHit, Names, plain
+from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
+from crosscheck.claims.reading import Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
+from crosscheck.claims.scan import RawTable, Scan, scan
+from crosscheck.claims.stated import Stated, stated_in, with_options
+from crosscheck.claims.words import Size, unit_of
+
+from crosscheck.frame.units import Dimension
+
+MOST_TRACED = 2000
+"""Lines not understood that are kept: more of them say no more."""
+
+
+def read_claim(
+    path_or_dash: str | Path, frame_names: FrameNames, options: ReadingOptions | None = None
+) -> Reading:
+    """Reads the claim in a file, or "-" for standard input. Raises UnusableInput where it cannot be opened or decoded, or
+    holds no results at all."""
+    options = options or ReadingOptions()
+    file, digest, text = read_source(path_or_dash, options.sheet)
+    return _read(text, frame_names, options, file, digest)
+
+
+def read_claim_text(
+    text: str, frame_names: FrameNames, options: ReadingOptions | None = None, file: str = ""
+) -> Reading:
+    """Reads a claim that is already text. Raises UnusableInput where it holds no results at all."""
+    digest = hashlib.sha256(text.encode("utf-8", errors="replace")).hexdigest()
+    return _read(text, frame_names, options or ReadingOptions(), file, digest)
+
+
+def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str, digest: str) -> Reading:
+    names = Names(frame_names, options.members, options.joints, options.cases)
+    scanned = scan(lines_of(text), names)
+    stated = with_options(stated_in(scanned), options)
+    reader = _Reader(names, options, stated, scanned)
+    for raw in scanned.tables:
+        if raw.rows:
+            reader.table(raw)
+    if not reader.entries and not reader.foreign and not reader.undecided:
+        refuse(file or "claim", *_nothing(scanned, reader))
+    return Reading(
+        file=file,
+        sha256=digest,
+        entries=tuple(reader.entries),
+        tables=tuple(reader.tables),
+        trace=tuple(scanned.trace[k] for k in sorted(scanned.trace)),
+        rows=len({e.line for e in reader.entries} | {line for line, _, _ in reader.foreign}),
+        not_understood=tuple(reader.odd[:MOST_TRACED]),
+        foreign=tuple(reader.foreign),
+        signs=stated.signs,
+        notes=tuple(reader.notes),
+        undecided=tuple(dict.fromkeys(reader.undecided)),
+        unknown_cases=tuple(scanned.unknown_cases),
+        expect=scanned.expect,
+    )
+
+
+def _nothing(scanned: Scan, reader: _Reader) -> tuple[str, str]:
+    rows = sum(len(t.rows) for t in scanned.tables)
+    why = f": {reader.odd[0][2]}" if reader.odd else ""
+    return (
+        f"no results were recognised in its {rows} rows of numbers{why}" if rows else "it holds no results",
+        "give a table with heads such as Member, End, N, V, M, or say what the columns are with --columns",
+    )
+
+
+@dataclass(slots=True)
+class _Place:
+    """Where a row's values belong, as far as the row says."""
+
+    member: MemberHit | None = None
+    joint: str | None = None
+    end: int | None = None
+    place: int | None = None
+    case: str | None = None
+    at: Number | None = None
+    which: str = ""
+
+
+@dataclass(slots=True)
+class _Carried:
+    """Cells that a row may leave empty because the row above says it."""
+
+    member: str = ""
+    case: str = ""
+    start: str = ""
+    last: str = ""
+
+
+class _Misread(Exception):
+    """A row that cannot be used; `foreign` where it speaks of what the frame lacks."""
+
+    def __init__(self, why: str, foreign: bool = False) -> None:
+        super().__init__(why)
+        self.foreign = foreign
+
+
+@dataclass(slots=True)
+class _Reader:
+    names: Names
+    options: ReadingOptions
+    stated: Stated
+    scanned: Scan
+    entries: list[Entry] = field(default_factory=list)
+    tables: list[TableRead] = field(default_factory=list)
+    odd: list[tuple[int, str, str]] = field(default_factory=list)
+    foreign: list[tuple[int, str, str]] = field(default_factory=list)
+    notes: list[str] = field(default_factory=list)
+    undecided: list[str] = field(default_factory=list)
+
+    def table(self, raw: RawTable) -> None:
+        """Reads one table into entries; what cannot be used is noted by line."""
+        grid = grid_of(raw, self.names, self.options.columns)
+        meaning = meaning_of(grid, raw, self.names)
+        number = len(self.tables) + 1
+        self.odd += grid.odd
+        self._trace(grid.odd)
+        columns = tuple((h.text, _says(r)) for h, r in zip(grid.heads, meaning.roles, strict=False))
+        self.tables.append(
+            TableRead(number, raw.heading, meaning.kind, columns, len(grid.rows), raw.rows[0][0], raw.case)
+        )
+        if not meaning.kind:
+            self._unused(raw, meaning)
+        elif not meaning.kind.startswith("echo"):
+            if meaning.why:
+                self.undecided.append(f"table {number}: {meaning.why}")
+            self.entries += _in_order(list(self._rows(number, raw, grid, meaning)))
+
+    def _unused(self, raw: RawTable, meaning: Meaning) -> None:
+        rows = [(line, text, meaning.why) for line, text in raw.rows]
+        self.odd += rows
+        self._trace(rows)
+        if raw.heads:
+            self.undecided.append(
+                f"the table at line {raw.rows[0][0]} cannot be understood ({meaning.why}); "
+                "say what its columns are with --columns"
+            )
+
+    def _trace(self, rows: list[tuple[int, str, str]]) -> None:
+        for line, text, why in rows:
+            self.scanned.trace[line] = LineTrace(line, text[:200], "not understood", why)
+
+    def _rows(self, number: int, raw: RawTable, grid: Grid, meaning: Meaning) -> Iterator[Entry]:
+        values = [k for k, r in enumerate(meaning.roles) if r.name in ("value", "station")]
+        comma = commas_are_decimal(row[k] for row in grid.rows for k in values)
+        if comma is None:
+            self.undecided.append(
+                f"table {number}: the comma may stand before decimals or thousands; write one number with both, or a point"
+            )
+        carried = _Carried()
+        for row, line, kept in zip(grid.rows, grid.lines, grid.kept, strict=True):
+            text = raw.rows[kept][1]
+            try:
+                place = self._place(row, meaning, carried, raw, raw.blocks[kept], bool(comma))
+                yield from self._entries(number, line, text, row, meaning, place, bool(comma))
+            except _Misread as why:
+                (self.foreign if why.foreign else self.odd).append((line, text.strip()[:200], str(why)))
+                self._trace([(line, text, str(why))])
+
+    # -- where the row's values belong
+
+    def _place(
+        self, row: list[str], meaning: Meaning, carried: _Carried, raw: RawTable, block: MemberHit | None, comma: bool
+    ) -> _Place:
+        cells = {r.name: row[k] for k, r in enumerate(meaning.roles) if r.name and r.name != "value"}
+        place = _Place(case=self._case(cells, carried, raw))
+        if meaning.kind in ("reaction", "displacement"):
+            place.joint = self._joint(cells.get("joint", ""))
+            return place
+        place.member = self._member(cells, carried, block)
+        if meaning.kind == "end":
+            self._end(place, cells)
+        if "which" in cells:
+            place.which = WHICH_WORDS.get(plain(cells["which"]), "")
+        if "station" in cells:
+            place.at = self._station(cells["station"], comma)
+        return place
+
+    def _case(self, cells: Mapping[str, str], carried: _Carried, raw: RawTable) -> str | None:
+        if "case" not in cells:
+            if raw.case_label and raw.case is None:
+                raise _Misread(f'load case "{raw.case_label}" is not one of the frame')
+            return raw.case
+        carried.case = cells["case"] or carried.case
+        if not carried.case:
+            return raw.case
+        name = self.names.case(carried.case)
+        if name is None:
+            if carried.case not in self.scanned.unknown_cases:
+                self.scanned.unknown_cases.append(carried.case)
+            raise _Misread(f'load case "{carried.case}" is not one of the frame')
+        return name
+
+    def _joint(self, label: str) -> str:
+        if is_blank(label):
+            raise _Misread("no joint is named")
+        name = self.names.joint(label)
+        if name is None:
+            raise _Misread(f'the frame has no joint "{label}"', foreign=True)
+        return name
+
+    def _member(self, cells: Mapping[str, str], carried: _Carried, block: MemberHit | None) -> MemberHit:
+        label = cells.get("member", "")
+        if not is_blank(label) and label != carried.member:
+            carried.member, carried.start, carried.last = label, "", ""
+        carried.start = cells.get("start joint", "") or carried.start
+        carried.last = cells.get("end joint", "") or carried.last
+        hit = self.names.member(carried.member) if carried.member else block
+        if carried.start and carried.last:
+            return self._between(hit, carried)
+        if hit is None:
+            if carried.member:
+                raise _Misread(f'the frame has no member "{carried.member}"', foreign=True)
+            raise _Misread("no member is named")
+        return hit
+
+    def _between(self, hit: MemberHit | None, carried: _Carried) -> MemberHit:
+        """The member of a row that names both its joints; they say which way it runs."""
+        first, last = self.names.joint(carried.start), self.names.joint(carried.last)
+        ends = self.names.frame.members[hit.name] if hit else None
+        if ends and (first, last) in (ends, ends[::-1]):
+            assert hit
+            return MemberHit(hit.name, 1 if (first, last) == ends else -1)
+        found = self.names.between(first, last) if first and last else None
+        if found is None or (hit and carried.member):
+            label = carried.member or f"{carried.start}-{carried.last}"
+            raise _Misread(f'the frame has no member "{label}" from {carried.start} to {carried.last}', foreign=True)
+        return found
+
+    def _end(self, place: _Place, cells: Mapping[str, str]) -> None:
+        assert place.member
+        first, last = self.names.frame.members[place.member.name]
+        for label in (cells.get("joint", ""), cells.get("end", "")):
+            if is_blank(label):
+                continue
+            joint = self.names.joint(label)
+            if joint in (first, last):
+                place.joint, place.end = joint, 0 if joint == first else 1
+            elif plain(label) in START_WORDS | LAST_WORDS:
+                place.place = 0 if plain(label) in START_WORDS else 1
+            else:
+                raise _Misread(f'"{label}" is not an end of member {place.member.name}', foreign=True)
+
+    @staticmethod
+    def _station(label: str, comma: bool) -> Number:
+        number = parse_number(label, comma)
+        if number is None:
+            raise _Misread(f'"{label}" is not a distance')
+        return number
+
+    # -- its values
+
+    def _entries(
+        self, table: int, line: int, text: str, row: list[str], meaning: Meaning, place: _Place, comma: bool
+    ) -> Iterator[Entry]:
+        station = next((r for r in meaning.roles if r.name == "station"), None)
+        for k, role in enumerate(meaning.roles):
+            if role.name != "value" or is_blank(row[k]):
+                continue
+            number = parse_number(row[k], comma)
+            unit = role.unit or self.stated.unit(role.quantity)
+            if number is not None and number.tail:
+                stuck = unit_of(number.tail)
+                number, unit = (number, stuck) if stuck and _suits(stuck, role.quantity) else (None, unit)
+            if number is None:
+                why = f'"{row[k]}" is not a number'
+                self.odd.append((line, text.strip()[:200], why))
+                self._trace([(line, text, why)])
+                continue
+            yield self._entry(table, line, role, number, unit, meaning, place, station)
+
+    def _entry(
+        self, table: int, line: int, role: Role, number: Number, unit: Size | None, meaning: Meaning, place: _Place,
+        station: Role | None,
+    ) -> Entry:  # fmt: skip
+        kind: Kind = "end" if meaning.kind == "ends" else meaning.kind  # type: ignore[assignment]
+        entry = Entry(table, line, kind, role.quantity, number, unit, case=place.case, axes=role.axes)
+        if place.member is None:
+            return replace(entry, joint=place.joint)
+        entry = replace(entry, member=place.member.name, run=place.member.run)
+        if kind == "end":
+            spot = role.end if role.end is not None else place.place
+            return _joined(replace(entry, end=place.end, place=spot), self.names)
+        if kind == "extreme":
+            return replace(entry, extreme=role.which or place.which or "size")
+        assert place.at is not None and station is not None
+        unit = station.unit or (None if station.share else self.stated.unit("station"))
+        at = place.at.value * (0.01 if station.share and "%" in (place.at.tail + str(station.unit)) else 1.0)
+        return replace(entry, at=at, at_unit=unit, at_share=station.share)
+
+
+def _suits(unit: Size, quantity: str) -> bool:
+    return unit.dimension == dimension_of(quantity) or (quantity == "rotation" and unit.dimension == Dimension())
+
+
+def _joined(entry: Entry, names: Names) -> Entry:
+    """The frame's end and the paste's, one from the other where the paste says which way its member runs."""
+    if entry.run and entry.end is None and entry.place is not None:
+        entry = replace(entry, end=entry.place if entry.run > 0 else 1 - entry.place)
+    elif entry.run and entry.place is None and entry.end is not None:
+        entry = replace(entry, place=entry.end if entry.run > 0 else 1 - entry.end)
+    elif not entry.run and entry.end is not None and entry.place is not None:
+        entry = replace(entry, run=1 if entry.end == entry.place else -1)
+    if entry.end is not None and entry.member:
+        entry = replace(entry, joint=names.frame.members[entry.member][entry.end])
+    return entry
+
+
+def _in_order(entries: list[Entry]) -> list[Entry]:
+    """End rows that leave open which way members run: the row that comes first may be the start. Rows that name no end
+    at all are start and end by their order."""
+    if not entries or entries[0].kind != "end" or all(e.place is not None for e in entries):
+        return entries
+    lines: dict[tuple[str | None, str | None], list[int]] = {}
+    for e in entries:
+        seen = lines.setdefault((e.case, e.member), [])
+        if e.line not in seen:
+            seen.append(e.line)
+    if any(len(seen) != 2 for seen in lines.values()):
+        return entries
+    return [
+        e if e.place is not None else replace(e, place=lines[e.case, e.member].index(e.line)) for e in entries
+    ]
+
+
+def _says(role: Role) -> str:
+    """A role in words, for --show-reading."""
+    parts = [role.which, role.quantity or role.name]
+    if role.end is not None:
+        parts.append(("at the start", "at the end")[role.end])
+    if role.unit:
+        parts.append(f"in {role.unit.text}")
+    return " ".join(p for p in parts if p) or "not used"
+
+
+__all__ = ["read_claim", "read_claim_text"]
+

@@ -1,0 +1,283 @@
+"""Third stage: lines to tables. Each line is taken for a head, a row, a heading, a rule, a total or a remark.
+
+Nothing is compared or named here beyond what tells a heading ("Load case: dead") from a row.
+"""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass, field
+
+from crosscheck.claims.names import MemberHit, Names, plain
+from crosscheck.claims.numbers import parse_number
+from crosscheck.claims.reading import LineTrace
+from crosscheck.claims.split import Cell, Separator, is_rule, join_units, separator_of, split, wide_cells
+from crosscheck.claims.words import RESULT_NOUNS, head_of, is_header_word, unit_of
+
+LONGEST_LINE = 20_000
+"""Characters: a longer line is no row of a table, and reading it must not take long."""
+_CASE = re.compile(
+    r"(?:load\s*(?:case|combination|comb\w*)|lc|l/c|case|combination|comb(?:o|ination)?|loading|results? for|load)\b"
+    r"(?:\s*(?:no|nr|number|name)\b\.?)?[\s:#=.\u2013-]*(.+)",
+    re.IGNORECASE,
+)
+_MEMBER = re.compile(r"(?:members?|memb|mbr|beams?|elements?|elem|bars?|rods?|columns?)\b[\s:#=.]*(\S.*)", re.IGNORECASE)
+_TOTAL = re.compile(r"(?:sum|totals?|sigma|\u03a3|\u2211|sub-?total|resultant|average|mean|applied|check)\b|[\u03a3\u2211]", re.I)
+_TITLE = re.compile(
+    r"\b(?:forces|reactions|displacements|moments|results|rotations|deflections|actions|translations|values|coordinates"
+    r"|summary|properties|table)\b",
+    re.IGNORECASE,
+)
+_DATE = re.compile(
+    r"\b\d{1,4}[-/.]\d{1,2}[-/.]\d{1,4}\b|\b\d{1,2}:\d{2}\b|\bpage\b|\bsheet\b|\bprinted\b|\bversion\b|\brev(?:ision)?\b"
+    r"|\bdate\b|\bproject\b|\bjob\b|\bcopyright\b|\bfile\b|https?:|\bdtype\b|\bname:|\[\d+ rows x \d+ columns\]",
+    re.IGNORECASE,
+)
+
+
+@dataclass(slots=True)
+class RawTable:
+    """Lines that belong together. heads and rows: (line number, text); members: block name by row, as hit."""
+
+    heads: list[tuple[int, str]]
+    heading: str = ""
+    rows: list[tuple[int, str]] = field(default_factory=list)
+    blocks: list[MemberHit | None] = field(default_factory=list)
+    case: str | None = None
+    case_label: str = ""
+
+
+@dataclass(slots=True)
+class Scan:
+    """What the lines were taken for."""
+
+    tables: list[RawTable] = field(default_factory=list)
+    trace: dict[int, LineTrace] = field(default_factory=dict)
+    headings: list[tuple[int, str]] = field(default_factory=list)
+    remarks: list[tuple[int, str]] = field(default_factory=list)
+    unknown_cases: list[str] = field(default_factory=list)
+    expect: str = ""
+
+
+def cells_of(line: str) -> tuple[Separator, list[Cell]]:
+    """The line's separator and cells; units put to their numbers."""
+    separator = separator_of(line)
+    cells = split(line, separator)
+    return separator, (join_units(cells) if separator == "blank" else cells)
+
+
+def is_number(text: str) -> bool:
+    """A number, alone or with a unit stuck to it."""
+    read = parse_number(text) or parse_number(text, decimal_comma=True)
+    return read is not None and (not read.tail or unit_of(read.tail) is not None)
+
+
+def scan(lines: list[str], names: Names) -> Scan:
+    """Takes each line for what it is."""
+    return _Scanner(names).run(lines)
+
+
+class _Scanner:
+    def __init__(self, names: Names) -> None:
+        self.names = names
+        self.out = Scan()
+        self.table: RawTable | None = None
+        self.heading: list[str] = []
+        self.case: str | None = None
+        self.case_label = ""
+        self.block: MemberHit | None = None
+
+    def run(self, lines: list[str]) -> Scan:
+        for number, text in enumerate(lines, 1):
+            taken, why = self._take(number, text)
+            if taken:
+                self.out.trace[number] = LineTrace(number, text[:200], taken, why)
+        return self.out
+
+    def _take(self, number: int, text: str) -> tuple[str, str]:
+        if not text.strip():
+            return "", ""
+        if len(text) > LONGEST_LINE:
+            return "remark", "too long for a line of a table"
+        body = self._without_hash(text)
+        if is_rule(text) or not body.strip():
+            return "rule", ""
+        if body.strip().lower().startswith("expect:"):
+            self.out.expect = body.strip()[7:].strip()
+            return "expect", ""
+        separator, cells = cells_of(body)
+        filled = [c.text for c in cells if c.text]
+        numbers = sum(is_number(t) for t in filled)
+        return (
+            self._head(number, body, filled, numbers, separator)
+            or self._heading_of_case(number, body, filled, numbers)
+            or self._heading_of_member(body, filled, numbers)
+            or self._row(number, body, filled, numbers)
+            or self._heading(number, body)
+        )
+
+    @staticmethod
+    def _without_hash(text: str) -> str:
+        """Headings may be written as remarks ("# case: dead") or as titles ("## Reactions")."""
+        return text.lstrip().lstrip("#").lstrip() if text.lstrip().startswith("#") else text
+
+    # -- heads
+
+    def _head(
+        self, number: int, text: str, filled: list[str], numbers: int, separator: Separator
+    ) -> tuple[str, str] | None:
+        if self._is_units(filled) and self._head_is_open():
+            assert self.table
+            self.table.heads.append((number, text))
+            return "head", "units"
+        if numbers or not self._says_columns(text, filled, separator):
+            return None
+        if self._head_is_open() and len(self.table.heads) < 3:  # type: ignore[union-attr]
+            assert self.table
+            self.table.heads.append((number, text))
+            return "head", "second line"
+        if self.table and [plain(t) for _, t in self.table.heads][:1] == [plain(text)] and not self.heading:
+            self.table = self._fresh(list(self.table.heads), self.table.heading)
+            return "head", "repeated"
+        self.table = self._fresh([(number, text)], " / ".join(self.heading))
+        self.heading = []
+        return "head", ""
+
+    def _fresh(self, heads: list[tuple[int, str]], heading: str) -> RawTable:
+        table = RawTable(heads, heading, case=self.case, case_label=self.case_label)
+        self.out.tables.append(table)
+        return table
+
+    def _head_is_open(self) -> bool:
+        return self.table is not None and bool(self.table.heads) and not self.table.rows and not self.heading
+
+    @staticmethod
+    def _is_units(filled: list[str]) -> bool:
+        bare = [t.strip("[](){}") for t in filled]
+        known = sum(unit_of(t) is not None or t in ("-", "") for t in bare)
+        return len(bare) > 0 and known == len(bare) and any(unit_of(t) for t in bare)
+
+    @staticmethod
+    def _says_columns(text: str, filled: list[str], separator: Separator) -> bool:
+        if separator == "blank" and _TITLE.search(text) and len(wide_cells(text)) == 1:
+            return False
+        groups = [filled]
+        if separator == "blank":
+            groups.append([c.text for c in wide_cells(text)])
+        for cells in groups:
+            heads = [head_of(c) for c in cells]
+            known = sum(is_header_word(c) for c in cells)
+            results = sum(h.noun in RESULT_NOUNS or h.noun in ("x", "E", "I", "A") or bool(h.which) for h in heads)
+            units = sum(unit_of(c.strip("[](){}")) is not None for c in cells)
+            if known >= 2 and known + units >= 0.6 * len(cells) and (results or known == len(cells) > 1):
+                return separator != "blank" or len(cells) == len(filled) or known >= 2
+        return False
+
+    # -- headings
+
+    def _heading_of_case(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
+        if numbers > 1 and len(filled) > 3:
+            return None
+        label = self._case_in(text)
+        if label is None:
+            return None
+        name = self._resolve_case(label)
+        if name is None and numbers and self.table is not None and self._fits(filled):
+            return None
+        self.case, self.case_label = name, label
+        if name is None and label not in self.out.unknown_cases:
+            self.out.unknown_cases.append(label)
+        self._carry_on(number, text)
+        return "heading", f"case {name}" if name else f'case "{label}" is not one of the frame'
+
+    def _case_in(self, text: str) -> str | None:
+        """The case that a heading names, or None where it names none."""
+        tidy = " ".join(text.replace("\t", " ").strip().strip("*|[](){}\"'").split())
+        if found := _CASE.match(tidy):
+            return found.group(1).strip(" .:*\"'|")
+        if found := re.search(r"\b(?:load case|case|combination|lc|results for)\b[\s:#=]*(.+)", tidy, re.IGNORECASE):
+            label = found.group(1).strip(" .:*\"'|)")
+            return label if self._resolve_case(label) else None
+        parts = [p.strip() for p in re.split(r"\s[-\u2013\u2014]\s|[,;:()\[\]]", tidy) if p.strip()]
+        exact = [p for p in parts if p.casefold() in {c.casefold() for c in self.names.frame.cases}]
+        return exact[0] if len(exact) == 1 and len(exact[0]) > 1 else None
+
+    def _resolve_case(self, label: str) -> str | None:
+        if name := self.names.case(label):
+            return name
+        pieces = [p for p in re.split(r"\s[-\u2013\u2014]\s|[:;,()\[\]]|\s+", label) if p]
+        whole = [p for p in re.split(r"\s[-\u2013\u2014]\s|[:;,()\[\]]", label) if p.strip()]
+        for parts in (whole, pieces):
+            found = {n for p in parts if (n := self.names.case(p.strip(" \"'")))}
+            if len(found) == 1:
+                return found.pop()
+        return None
+
+    def _heading_of_member(self, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
+        tidy = " ".join(text.strip().strip("*|").split())
+        found = _MEMBER.fullmatch(tidy)
+        label = found.group(1).strip(" :.") if found else tidy.rstrip(":").strip()
+        if len(filled) > 6 or (not found and (numbers or not text.rstrip().endswith(":"))):
+            return None
+        hit = self.names.member(label)
+        if hit is None:
+            first = re.split(r"[,(;]|\s(?:from|length|section|l\s*=)\b", label, maxsplit=1)[0].strip(" :.")
+            hit = self.names.member(first) if first else None
+        if hit is None:
+            return None
+        self.block = hit
+        return "heading", f"member {hit.name}"
+
+    def _carry_on(self, number: int, text: str) -> None:
+        """A new case over the same columns: the head stays."""
+        self.out.headings.append((number, text))
+        if self.table is not None and not self.table.rows:
+            self.table.case, self.table.case_label = self.case, self.case_label
+        elif self.table is not None:
+            self.table = self._fresh(list(self.table.heads), self.table.heading)
+        self.heading.append(" ".join(text.split())[:200])
+
+    def _heading(self, number: int, text: str) -> tuple[str, str]:
+        self.out.headings.append((number, text))
+        if self.table is not None and self.table.rows:
+            self.heading = self.heading[-3:]
+        self.heading.append(" ".join(text.split())[:200])
+        self.heading = self.heading[-6:]
+        return "heading", ""
+
+    # -- rows
+
+    def _row(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
+        if not numbers:
+            return self._named_row(number, text, filled)
+        if _TOTAL.match(filled[0]) and not self._knows(filled[0]):
+            return "total", ""
+        if _DATE.search(text) and not self._fits(filled):
+            return "remark", "a date, a page or the like"
+        words = [t for t in filled if not is_number(t) and not self._knows(t) and len(re.sub(r"\W", "", t)) > 1]
+        if len(words) > max(2, numbers):
+            self.out.remarks.append((number, text))
+            return "remark", ""
+        if self.table is None:
+            self.table = self._fresh([], " / ".join(self.heading))
+        self.heading = []
+        self.table.rows.append((number, text))
+        self.table.blocks.append(self.block)
+        return "row", ""
+
+    def _named_row(self, number: int, text: str, filled: list[str]) -> tuple[str, str] | None:
+        """The first line of a block may hold the member's name alone, under the table's head."""
+        if self.table is not None and len(filled) == 1 and (hit := self.names.member(filled[0])):
+            self.block = hit
+            return "heading", f"member {hit.name}"
+        return None
+
+    def _knows(self, text: str) -> bool:
+        return self.names.member(text) is not None or self.names.joint(text) is not None
+
+    def _fits(self, filled: list[str]) -> bool:
+        """Does the line have about as many cells as the table's rows?"""
+        if self.table is None or not self.table.rows:
+            return False
+        last = [c for c in cells_of(self.table.rows[-1][1])[1] if c.text]
+        return abs(len(last) - len(filled)) <= 1 and (self._knows(filled[0]) or is_number(filled[0]))
