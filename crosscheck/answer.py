@@ -47,7 +47,13 @@ class Undetermined:
 
 
 class Spans(Protocol):
-    """Values along the members, worked out when asked for."""
+    """Values along the members, worked out when asked for.
+
+    sampled: True where the values are exact at the stations only, so that no extreme between them may be claimed.
+    """
+
+    @property
+    def sampled(self) -> bool: ...
 
     def along(self, name: str, member: Ints, x: Floats, side: Ints) -> Floats:
         """(n, 4) axial, shear, moment, across (README, Axes and signs) at distance x of each member, just before
@@ -61,7 +67,7 @@ class Spans(Protocol):
 
 @dataclass(frozen=True, slots=True)
 class Answer:
-    """A given opinion. `cases` by load case and combination name; `silent` names cases it could not speak for, and why."""
+    """A given opinion. `cases` by load case and combination name; `silent`: cases it could not speak for, and why."""
 
     opinion: str
     cases: Mapping[str, CaseAnswer]
@@ -81,7 +87,7 @@ class Silent:
 
 @dataclass(frozen=True, slots=True)
 class WorkTable:
-    """A table of working for a reader who follows by hand: a heading, column heads, rows of text or numbers, remarks."""
+    """A table of working to follow by hand: a heading, column heads, rows of text or numbers, remarks."""
 
     heading: str
     columns: tuple[str, ...]

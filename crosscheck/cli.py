@@ -93,8 +93,8 @@ def _add_verify(commands: Any) -> None:
     command.add_argument("--tolerance", metavar="PERCENT", help="relative tolerance of the claim in percent (usual: 1)")
     command.add_argument("--units", metavar="UNITS", help='units of the paste where it states none: "kN m", '
                          'or by quantity: "moment kN mm, displacement mm"')  # fmt: skip
-    command.add_argument("--columns", metavar="HEADS", help='what the columns are: "member, joint, axial, shear, moment"')
-    command.add_argument("--reading", metavar="PATH", help="reading file (TOML): units, columns, signs, names stated once")
+    command.add_argument("--columns", metavar="HEADS", help='what the columns are: "member, joint, N, V, M"')
+    command.add_argument("--reading", metavar="PATH", help="reading file (TOML): units, columns, signs, names")
     command.add_argument("--sheet", metavar="NAME", help="sheet of a spreadsheet file")
     command.add_argument("--value", metavar="TEXT", action="append", default=[],
                          help='a value in words, "B2 max 412 kNm"; may be repeated')  # fmt: skip
@@ -104,8 +104,11 @@ def _add_verify(commands: Any) -> None:
 
 def _add_draft(commands: Any) -> None:
     command = commands.add_parser("draft", help="write a frame file to start from: blank, or a regular grid")
-    command.add_argument("--bays", metavar="WIDTHS", help='bay widths: "6,6,7.5" or "3 x 6 m"; makes a regular grid')
-    command.add_argument("--storeys", metavar="HEIGHTS", help='storey heights: "4.2,3.5" or "3 x 3.5 m"')
+    command.add_argument("--bays", metavar="WIDTHS", help='bay widths from the left: "6, 6, 7.5" or "3 x 6 m"')
+    command.add_argument("--storeys", metavar="HEIGHTS", help='storey heights from the ground: "4.2, 2 x 3.5 m"')
+    command.add_argument("--feet", default="fixed", metavar="WORD", help="support of every column foot: fixed or pinned")
+    command.add_argument("--hinged-beams", action="store_true", help="beams hinged at both ends")
+    command.add_argument("--title", metavar="TEXT", help="title of the frame")
     command.add_argument("--units", default="kN m", metavar="UNITS", help='force and length unit (default "kN m")')
     command.add_argument("--output", metavar="PATH", help="file to write (default: standard output); never overwrites")
     command.add_argument("--json", metavar="PATH", help="also say what was written as JSON")
@@ -149,7 +152,7 @@ def run_verify(args: argparse.Namespace) -> int:
     relative = _percent(args.tolerance)
     frame = _frame(args)
     options = ReadingOptions(
-        units=args.units, columns=_columns(args.columns), file=args.reading, values=tuple(args.value), sheet=args.sheet
+        units=args.units, columns=_parts(args.columns), file=args.reading, values=tuple(args.value), sheet=args.sheet
     )
     reading = read_claim(args.claim, FrameNames.of(frame), options)
     if args.show_reading:
@@ -175,14 +178,23 @@ def run_verify(args: argparse.Namespace) -> int:
 
 
 def run_draft(args: argparse.Namespace) -> int:
-    """`crosscheck draft`."""
+    """`crosscheck draft`: blank, or a regular grid where bays and storeys are given."""
     from crosscheck.files import write_new
-    from crosscheck.frame.draft import draft
+    from crosscheck.frame.draft import draft_blank, draft_grid
+    from crosscheck.problems import Problem, UnusableInput
 
-    text = draft(units=args.units, bays=args.bays, storeys=args.storeys)
+    if (args.bays is None) != (args.storeys is None):
+        raise UnusableInput([Problem("", None, "draft", "a regular grid needs both --bays and --storeys", "give both")])
+    title = {"title": args.title} if args.title else {}
+    if args.bays is None:
+        text = draft_blank(args.units, **title)
+    else:
+        text = draft_grid(
+            _parts(args.bays), _parts(args.storeys), args.units, args.feet, args.hinged_beams, **title
+        )
     if args.output:
         write_new(args.output, text)
-        print(f"wrote {args.output}; try: crosscheck opinions {args.output}", file=sys.stderr)
+        print(f"wrote {args.output}; next: crosscheck opinions {args.output}", file=sys.stderr)
     elif args.json != "-":
         sys.stdout.write(text)
     if args.json:
@@ -214,7 +226,7 @@ def _percent(text: str | None) -> float | None:
     return value / 100
 
 
-def _columns(text: str | None) -> tuple[str, ...]:
+def _parts(text: str | None) -> tuple[str, ...]:
     return tuple(part.strip() for part in text.split(",")) if text else ()
 
 

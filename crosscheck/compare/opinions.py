@@ -9,7 +9,7 @@ from itertools import combinations
 
 import numpy as np
 
-from crosscheck.answer import AXIAL, MOMENT, Answer, CaseAnswer
+from crosscheck.answer import AXIAL, Answer, CaseAnswer
 from crosscheck.compare.differences import Difference, Place, Verdict, worst, worst_first
 from crosscheck.compare.tolerance import LIBRARY, OWN, Scales, Tolerance, allowed, case_scales
 from crosscheck.frame.loads import load_table
@@ -173,8 +173,7 @@ def extremes(answer: Answer, name: str, at: Stations) -> Floats:
     member, x, side = with_turning_points(answer, name, at)
     values = answer.spans.along(name, member, x, side)
     start = np.searchsorted(member, np.arange(len(at.start) - 1))
-    # An opinion that names no turning points (its values are only sampled) has no extremes to compare.
-    if len(x) == len(at.x) and np.isnan(values[:, MOMENT]).any():
+    if answer.spans.sampled:
         return np.full((len(start), 2, 4), np.nan)
     return np.stack([np.minimum.reduceat(values, start), np.maximum.reduceat(values, start)], axis=1)
 

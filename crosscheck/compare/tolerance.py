@@ -1,9 +1,10 @@
-"""How far two values may lie apart: one symmetric measure, used by every comparison and printed beside every difference.
+"""How far two values may lie apart: one symmetric measure, used by every comparison, printed beside every difference.
 
     allowed = max(relative * size, floor * scale, half digit)
 
 size is the larger of the two magnitudes; scale keeps values that are zero but for rounding noise from being compared by
-their noise; half digit is half a unit of the claim's last printed digit. Scales come from the opinions, never from a claim.
+their noise; half digit is half a unit of the claim's last printed digit. Scales come from the opinions, never from a
+claim.
 """
 
 from __future__ import annotations

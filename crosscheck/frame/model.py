@@ -32,7 +32,7 @@ Direction = float | Literal["across", "along"]
 
 @dataclass(frozen=True, slots=True)
 class Units:
-    """Names of the force and length unit, and their size: `newton` N in one force unit, `metre` m in one length unit."""
+    """Names of the force and length unit, and their size: `newton` N in one force unit, `metre` m in one length."""
 
     force: str
     length: str
@@ -91,7 +91,7 @@ class Member:
 
 @dataclass(frozen=True, slots=True)
 class Support:
-    """HELD, FREE or a stiffness in each of the support's own axes; `angle` turns x and y counter-clockwise (degrees)."""
+    """HELD, FREE or a stiffness along each of the support's own axes; `angle` (degrees) turns them."""
 
     joint: str
     x: float
@@ -262,7 +262,7 @@ class MemberTable:
 class SupportTable:
     """Supports as columns by joint (every joint; FREE where it has none).
 
-    stiffness: (j, 3) along the support's own x, y and rotation: HELD, FREE or a stiffness. cos, sin: (j,) of its angle.
+    stiffness: (j, 3) along the support's own x, y and rotation: HELD, FREE or a stiffness. cos, sin: (j,) its angle.
     """
 
     stiffness: Floats

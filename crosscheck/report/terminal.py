@@ -50,7 +50,7 @@ def _rows(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> 
         table.add_column(head, justify="right" if side == "right" else "left", overflow="fold")
     for row in rows:
         table.add_row(*[Text(cell) for cell in row])
-    return Padding(table, (0, 0, 0, 2))
+    return Padding(table, (0, 0, 0, 2), expand=False)
 
 
 def _facts(rows: Iterable[tuple[str, str]]) -> RenderableType:
@@ -59,11 +59,11 @@ def _facts(rows: Iterable[tuple[str, str]]) -> RenderableType:
     table.add_column(overflow="fold")
     for name, text in rows:
         table.add_row(Text(name, style="dim"), Text(text))
-    return Padding(table, (0, 0, 0, 2))
+    return Padding(table, (0, 0, 0, 2), expand=False)
 
 
 def _notes(lines: Iterable[str]) -> RenderableType:
-    return Padding(Group(*[Text(line) for line in lines]), (0, 0, 0, 2))
+    return Padding(Group(*[Text(line) for line in lines]), (0, 0, 0, 2), expand=False)
 
 
 def _verdict_line(verdict: Verdict, sentence: str) -> Text:
@@ -176,7 +176,7 @@ def _opinion_differences(frame: Frame, judged: CaseJudgement) -> list[Renderable
          words.short(d.difference), words.short(d.allowed))
         for d in judged.differences[:MOST_DIFFERENCES]
     ]  # fmt: skip
-    columns = [("place", "left"), ("quantity", "left"), *[(n, "right") for n in names],
+    columns = [("place", "left"), ("quantity", "left"), *[(n.replace("-", "-\n"), "right") for n in names],
                ("differ by", "right"), ("allowed", "right")]  # fmt: skip
     title = f"Differences in {judged.case}: {len(judged.differences):,} of {judged.compared:,} values, worst first"
     more = _more(len(judged.differences), MOST_DIFFERENCES)
@@ -223,7 +223,7 @@ def _end_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
         for end, joint in ((0, member.joint_from), (1, member.joint_to)):
             moment = float(ends[m, end, 2])
             numbers = [words.number(float(ends[m, end, k]), scale[k]) for k in range(3)]
-            rows.append((member.name, joint, *numbers, words.end_face(frame, member.name, joint, moment)))
+            rows.append((member.name, joint, *numbers, words.end_face(frame, member.name, joint, moment, scale[2])))
     columns = [("member", "left"), ("at", "left"), *_heads(frame, ("axial", "shear", "moment")), ("tension", "left")]
     return _rows(columns, rows)
 
@@ -239,11 +239,11 @@ def _along_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
         high, low = own[moments.argmax()], own[moments.argmin()]
         bend = own[abs(across).argmax()] if (across == across).any() else own[0]
         rows.append((
-            title, *_at(moments.max(), x[high], scale[0]), words.tension_face(frame, title, moments.max()),
-            *_at(moments.min(), x[low], scale[0]), words.tension_face(frame, title, moments.min()),
+            title, *_at(moments.max(), x[high], scale[0]), words.tension_face(frame, title, moments.max(), scale[0]),
+            *_at(moments.min(), x[low], scale[0]), words.tension_face(frame, title, moments.min(), scale[0]),
             *_at(values[bend, 3], x[bend], scale[1]),
         ))  # fmt: skip
-    columns = [("member", "left"), ("most moment", "right"), ("at x", "right"), ("tension", "left"),
+    columns = [("member", "left"), ("greatest moment", "right"), ("at x", "right"), ("tension", "left"),
                ("least", "right"), ("at x", "right"), ("tension", "left"),
                ("across", "right"), ("at x", "right")]  # fmt: skip
     return _rows(columns, rows)
@@ -255,9 +255,9 @@ def _at(value: float, x: float, scale: float) -> tuple[str, str]:
 
 def _joint_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
     moves = answer.cases[name].joints
-    shift, turn = _largest(moves[:, :2]), _largest(moves[:, 2])
+    scale = [_largest(moves[:, c]) for c in range(3)]
     rows = [
-        (joint, *[words.number(float(moves[k, c]), shift) for c in (0, 1)], words.number(float(moves[k, 2]), turn))
+        (joint, *[words.number(float(moves[k, c]), scale[c]) for c in range(3)])
         for k, joint in enumerate(list(frame.joints)[:MOST_ROWS])
     ]
     return _rows([("joint", "left"), *_heads(frame, ("dx", "dy", "rotation"))], rows)

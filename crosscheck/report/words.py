@@ -13,9 +13,8 @@ CAUTIONS = (
     "the frame file shares with the other analysis remains.",
     "Not covered: capacity, lateral buckling, connections, foundations, out-of-plane effects, dynamics, plasticity.",
 )
-TABLE_WORDS = {
-    "member_ends": "end", "spans": "span", "extremes": "extreme", "joints": "displacement", "reactions": "reaction",
-}  # fmt: skip
+NOISE = 1e-9
+"""Of the largest value of its kind: below this a value is rounding, shown as zero and without a tension face."""
 
 
 def unit_of(frame: Frame, quantity: str) -> str:
@@ -34,13 +33,12 @@ def number(value: float | None, scale: float | None = None) -> str:
     if value is None or math.isnan(value):
         return "-"
     size = max(abs(value), abs(scale or 0.0))
-    if size == 0.0:
+    if abs(value) <= NOISE * size:
         return "0"
     if not 1e-4 <= size < 1e7:
         return f"{value:.4g}"
     decimals = max(0, 3 - math.floor(math.log10(size)))
-    text = f"{value:.{decimals}f}"
-    return "0" if float(text) == 0.0 and value == 0.0 else text
+    return f"{value:.{decimals}f}"
 
 
 def short(value: float) -> str:
@@ -61,12 +59,12 @@ def place(p: Place) -> str:
     return "whole frame"
 
 
-def tension_face(frame: Frame, member: str, span_moment: float | None) -> str:
-    """Which face of the member a moment stretches: "bottom", "top", "left", "right".
+def tension_face(frame: Frame, member: str, span_moment: float | None, scale: float = 0.0) -> str:
+    """Which face of the member a moment stretches: "bottom", "top", "left", "right"; none for rounding noise of `scale`.
 
     span_moment: sagging positive, that is tension on the local -y face.
     """
-    if span_moment is None or math.isnan(span_moment) or span_moment == 0.0:
+    if span_moment is None or math.isnan(span_moment) or abs(span_moment) <= NOISE * scale:
         return ""
     t, m = frame.member_table, frame.member_index[member]
     sign = 1.0 if span_moment > 0 else -1.0
@@ -76,12 +74,12 @@ def tension_face(frame: Frame, member: str, span_moment: float | None) -> str:
     return "right" if x > 0 else "left"
 
 
-def end_face(frame: Frame, member: str, joint: str, moment: float | None) -> str:
+def end_face(frame: Frame, member: str, joint: str, moment: float | None, scale: float = 0.0) -> str:
     """The tension face at a member's end, from its clockwise end moment."""
     if moment is None:
         return ""
     sagging = moment if frame.members[member].joint_from == joint else -moment
-    return tension_face(frame, member, sagging)
+    return tension_face(frame, member, sagging, scale)
 
 
 def face_of(frame: Frame, p: Place, value: float | None) -> str:

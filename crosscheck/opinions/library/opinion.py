@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from typing import ClassVar
 
 import numpy as np
 
@@ -72,6 +73,7 @@ def _notes(frame: Frame) -> tuple[str, ...]:
 class _Spans:
     """Values at the places where members are divided; small frames are solved once more, divided at every station."""
 
+    sampled: ClassVar[bool] = True
     frame: Frame
     tables: dict[str, LoadTable]
     ends_only: dict[str, Solved]

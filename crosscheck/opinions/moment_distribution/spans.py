@@ -5,6 +5,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import ClassVar
 
 import numpy as np
 
@@ -42,6 +43,7 @@ class Bent:
 class MemberSpans:
     """Spans of the protocol in answer.py; each case is bent when first asked for."""
 
+    sampled: ClassVar[bool] = False
     members: Members
     frame: Frame
     cases: Mapping[str, CaseAnswer]
@@ -136,7 +138,7 @@ def _across(m: Members, bent: Bent, piece: Ints, s: Floats) -> Floats:
     bending = bent.base[k] + bent.tilt[k] * (x - t.zone[k, 0]) + bent.rise[piece] + _gain(m, bent, piece, s)[1]
     near = bent.end[k, 0] - bent.turn[k, 0] * x
     far = bent.end[k, 1] + bent.turn[k, 1] * (t.length[k] - x)
-    return np.where(piece <= pieces.face[k, 0], near, np.where(piece >= pieces.face[k, 1], far, bending))
+    return np.asarray(np.where(piece <= pieces.face[k, 0], near, np.where(piece >= pieces.face[k, 1], far, bending)))
 
 
 def _slope_terms(m: Members, bent: Bent, piece: Ints) -> Floats:

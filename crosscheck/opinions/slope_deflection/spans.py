@@ -19,6 +19,8 @@ HALVINGS = 60
 class ClosedFormSpans:
     """Values along members from their end actions and joint displacements (the Spans protocol of answer.py)."""
 
+    sampled = False
+
     def __init__(
         self, frame: Frame, tables: Mapping[str, LoadTable], cases: Mapping[str, CaseAnswer], undetermined: Undetermined
     ) -> None:
