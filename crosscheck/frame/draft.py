@@ -214,4 +214,4 @@ def _checked(text: str) -> str:
 
 def _aligned(text: str) -> str:
     """Remarks behind values, where there is room, begin in one column."""
-    return re.sub(r"^(\S.*?) {2}# ", lambda m: f"{m[1]:<{REMARKS - 2}}  # ", text, flags=re.MULTILINE)
+    return re.sub(r"^(?!title )(\S.*?) {2}# ", lambda m: f"{m[1]:<{REMARKS - 2}}  # ", text, flags=re.MULTILINE)

@@ -220,12 +220,14 @@ class _FrameReader:
     # The file's tables -------------------------------------------------------------------------------------------
 
     def _tables_there(self) -> None:
+        """Notes each table that a frame cannot do without; a grid stands for joints and members."""
         for key, such_as in NEEDED.items():
-            if key in self.data or (key in ("joints", "members") and "grid" in self.data):
-                if self.data.get(key) == {} and "grid" not in self.data:
-                    self.check.note((key,), f"the table [{key}] is empty", f"give {such_as}")
-            else:
+            if self.data.get(key) or (key in ("joints", "members") and "grid" in self.data):
+                continue
+            if key not in self.data:
                 self.check.note((), f"the table [{key}] is missing", f"give {such_as}")
+            elif self.data[key] == {}:
+                self.check.note((key,), f"the table [{key}] is empty", f"give {such_as}")
 
     def _known(self, key: str, names: Collection[str]) -> Collection[str] | None:
         """Names of a table that members may use; None where the table itself is missing or unusable."""
@@ -406,7 +408,8 @@ class _FrameReader:
         loose = frozenset() if "" in joined else frozenset(joints) - joined
         return Places(
             joints=joints, members=members, supports=supports,
-            lengths={m.name: _length(m, joints) for m in members.values()},
+            # No length is no place for a load: the member is at fault already.
+            lengths={m.name: _length(m, joints) or UNUSABLE for m in members.values()},
             joint_groups=grid.joint_groups, member_groups=grid.member_groups, loose=loose,
             joints_known=bool(joints) and grid.whole, members_known=bool(members) and grid.whole,
         )  # fmt: skip
