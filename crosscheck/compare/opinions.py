@@ -9,7 +9,7 @@ from itertools import combinations
 
 import numpy as np
 
-from crosscheck.answer import AXIAL, Answer, CaseAnswer
+from crosscheck.answer import ACROSS, AXIAL, Answer, CaseAnswer
 from crosscheck.compare.differences import Difference, Place, Verdict, worst, worst_first
 from crosscheck.compare.tolerance import LIBRARY, OWN, Scales, Tolerance, allowed, case_scales
 from crosscheck.frame.loads import load_table
@@ -64,17 +64,23 @@ class Comparison:
     def judge(self, name: str) -> CaseJudgement:
         """Compare all pairs that spoke for the case or combination `name`."""
         answers = {o: a for o, a in self.answers.items() if name in a.cases}
-        scales = case_scales(self.frame, load_table(self.frame, name), [a.cases[name] for a in answers.values()])
+        s = self.stations
+        spans = {o: a.spans.along(name, s.member, s.x, s.side) for o, a in answers.items()}
+        cases = [a.cases[name] for a in answers.values()]
+        across = [values[:, ACROSS] for values in spans.values()]
+        scales = case_scales(self.frame, load_table(self.frame, name), cases, across)
         found: list[Difference] = []
         compared = 0
-        for sheet in self._sheets(name, answers, scales):
+        for sheet in self._sheets(name, answers, spans, scales):
             differences, count = self._compare(name, sheet)
             found += differences
             compared += count
         verdict: Verdict = "undecided" if len(answers) < 2 or compared == 0 else "disagree" if found else "agree"
         return CaseJudgement(name, tuple(answers), verdict, tuple(worst_first(found)), compared, scales)
 
-    def _sheets(self, name: str, answers: Mapping[str, Answer], scales: Scales) -> Iterator[_Sheet]:
+    def _sheets(
+        self, name: str, answers: Mapping[str, Answer], spans: Mapping[str, Floats], scales: Scales
+    ) -> Iterator[_Sheet]:
         if not answers:
             return
         none = next(iter(answers.values())).undetermined
@@ -86,7 +92,6 @@ class Comparison:
         pulls = {o: c.reactions for o, c in cases.items()}
         yield _sheet("reactions", REACTION_QUANTITIES, scales, pulls, none.reactions)
         s = self.stations
-        spans = {o: a.spans.along(name, s.member, s.x, s.side) for o, a in answers.items()}
         hidden = np.zeros((len(s.x), 4), dtype=bool)
         hidden[:, AXIAL] = none.axial[s.member]
         yield _sheet("spans", SPAN_QUANTITIES, scales, spans, hidden, optional=True)

@@ -78,8 +78,13 @@ KIND = {
 }  # fmt: skip
 
 
-def case_scales(frame: Frame, table: LoadTable, answers: Iterable[CaseAnswer]) -> Scales:
-    """Scales of one case from its loads and the opinions' answers to it; undetermined (NaN) values are left out."""
+def case_scales(
+    frame: Frame, table: LoadTable, answers: Iterable[CaseAnswer], across: Iterable[Floats] = ()
+) -> Scales:
+    """Scales of one case from its loads and the opinions' answers to it; undetermined (NaN) values are left out.
+
+    across: displacements along the members, of any shape; they count too, for a frame whose joints all stay still.
+    """
     answers = list(answers)
     longest = float(frame.member_table.length.max(initial=0.0))
     ends = [a.ends for a in answers]
@@ -92,7 +97,7 @@ def case_scales(frame: Frame, table: LoadTable, answers: Iterable[CaseAnswer]) -
         table.joint[:, 2], table.point_couple, np.array([forces * longest]),
     )  # fmt: skip
     turns = _largest(*[a.joints[:, 2] for a in answers])
-    displacements = _largest(*[a.joints[:, :2] for a in answers], np.array([turns * longest]))
+    displacements = _largest(*[a.joints[:, :2] for a in answers], np.array([turns * longest]), *across)
     rotations = max(turns, displacements / longest if longest else 0.0)
     return Scales(forces, moments, displacements, rotations)
 
