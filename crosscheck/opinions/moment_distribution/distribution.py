@@ -22,6 +22,8 @@ UNRESISTED = 1e-12
 """Resistance, as a share of the rough one, below which a correction is not made."""
 PLAIN_ROUNDS = 24
 """Rounds of plain distribution before conjugate ones take over; halving each time, they leave 6e-8."""
+LOOK = 4
+"""Plain rounds between two looks at what is left over: looking costs as much as a round."""
 
 
 @dataclass(frozen=True)
@@ -43,12 +45,13 @@ class Distribution:
         if not unbalanced.size:
             return turned, 0
         left, goal = unbalanced, leave * np.abs(unbalanced).max(axis=0)
-        for taken in range(PLAIN_ROUNDS):
+        for taken in range(0, PLAIN_ROUNDS, LOOK):
             if np.all(np.abs(left).max(axis=0) <= goal):
                 return turned, taken
-            step = left / self.stiffness[:, None]
-            turned += step
-            left = -(self.carried @ step)
+            for _ in range(LOOK):
+                step = left / self.stiffness[:, None]
+                turned += step
+                left = -(self.carried @ step)
         rest, further = conjugate(
             self.resisting, lambda r: r / self.stiffness[:, None], left, goal, 4 * len(left) + 100
         )

@@ -271,12 +271,14 @@ def unbalanced(held: Held, given: Given, state: State, cases: Ints) -> tuple[Flo
     s = held.sways
     moment = joint_moments(held, given, state, cases)[held.turning]
     force = s.shape.T @ joint_forces(held, given, state, cases)[s.free]
+    length = held.members.table.length
     ends = np.abs(state.moment[:, :, cases])
-    size_moment = ends.max(axis=(0, 1), initial=0.0) + np.abs(given.couple[:, cases]).max(axis=0, initial=0.0)
     parts = (given.force, state.push, state.axial)
-    shear = (ends.sum(axis=1) / held.members.table.length[:, None]).max(axis=0, initial=0.0)
+    shear = (ends.sum(axis=1) / length[:, None]).max(axis=0, initial=0.0)
     size_force = shear + sum(np.abs(part[:, cases]).max(axis=0, initial=0.0) for part in parts)
-    return moment, np.asarray(force), size_moment, np.asarray(size_force)
+    size_moment = ends.max(axis=(0, 1), initial=0.0) + np.abs(given.couple[:, cases]).max(axis=0, initial=0.0)
+    # A moment is the small sum of forces on long arms as much as of moments: where there is none, that is its rounding.
+    return moment, np.asarray(force), size_moment + size_force * length.max(initial=0.0), np.asarray(size_force)
 
 
 def correct(held: Held, moment: Floats, force: Floats) -> tuple[Floats, Floats, int, int]:

@@ -61,9 +61,13 @@ class Sways:
         return sparse.csc_array(self.stretch[self.basic][:, self.free[self.tied]])
 
     @cached_property
+    def own(self) -> Ints:
+        """(q,) position in `free` of the translation that is one in each unit sway and nothing in the others."""
+        return np.setdiff1d(np.arange(len(self.free)), self.tied)
+
+    @cached_property
     def shape(self) -> Any:
-        count = len(self.free)
-        loose = np.setdiff1d(np.arange(count), self.tied)
+        count, loose = len(self.free), self.own
         if not len(self.basic):
             return sparse.eye_array(count, format="csr")
         followed = sparse.csc_array(self.stretch[self.basic][:, self.free[loose]])
