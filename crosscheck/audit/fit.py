@@ -96,6 +96,8 @@ class Fit:
     keep: (n, 3 m + 3 j) reduces raw deformations to those that can be judged: hinges and missing values projected out.
     weight: (n, n) covariance S of rounding; rigid: (n,) True where a row is the elongation of a rigid member.
     base: (n, c) B of the independent free displacements; columns: (c,) which of the 3 j they are.
+    raw_flexibility: (3 m + 3 j, 3 m + 3 j). forces, rounding: (3 m + 3 j,) forces that go with the raw deformations
+      (reactions along the supports' own axes), nil where missing, and the rounding of each.
     source: (n, v) deformations from given values; d: (n,) deformations less those of settled supports.
     unit: (n,) a typical size of each row's rounding, for scaling. half: (v,) rounding and round-off.
     """
@@ -104,7 +106,9 @@ class Fit:
     geometry: Geometry
     flexibility: Flexibility
     forces: Floats
+    rounding: Floats
     keep: Sparse
+    raw_flexibility: Sparse
     weight: Sparse
     rigid: Bools
     base: Sparse
@@ -143,6 +147,16 @@ class Fit:
         found = factors.solve(right)
         found += factors.solve(right - matrix @ found)
         return (found[: len(row)].T * row).T, (found[len(row) :].T * column).T
+
+    def carry(self, outside: Floats) -> Floats:
+        """(n,) the forces x with B'x = outside (c,) that are least in the measure x'S x."""
+        if not len(self.d):
+            return np.zeros(0)
+        (factors, matrix), row, column = self._scaled
+        right = np.concatenate([np.zeros(len(row)), outside * column])
+        found = factors.solve(right)
+        found += factors.solve(right - matrix @ found)
+        return np.asarray(found[: len(row)] * row)
 
     @cached_property
     def solved(self) -> tuple[Floats, Floats]:
@@ -202,8 +216,11 @@ class Fit:
         return full
 
 
-def fit(frame: Frame, balance: Balance) -> Fit:
-    """Set up the fit for a case from its completed values (statics.balance)."""
+def fit(frame: Frame, balance: Balance, energy: bool = False) -> Fit:
+    """Set up the fit for a case from its completed values (statics.balance).
+
+    energy: measure by strain energy instead of by rounding, S = F (then L is stiffness less its projection).
+    """
     loads = load_table(frame, balance.case)
     g, soft = geometry(frame), flexibility(frame, loads)
     m, j = len(frame.members), len(frame.joints)
@@ -222,7 +239,8 @@ def fit(frame: Frame, balance: Balance) -> Fit:
     raw = raw_flex @ forces + imposed - g.matrix @ np.where(g.held, settlement, 0.0)
     keep, rigid = _keep(frame, g, soft, missing)
     loose = raw_flex @ sparse.diags_array(rounding)
-    weight = keep @ (loose @ loose.T) @ keep.T
+    raw_weight = abs_springs(raw_flex, 3 * m) if energy else loose @ loose.T
+    weight = keep @ raw_weight @ keep.T
     base = (keep @ g.matrix[:, ~g.held]).tocsc()
     scale = np.where(np.arange(3 * j) % 3 == 2, 1.0, scales.length)[~g.held]
     unit = _units(frame, keep, rigid, weight)
@@ -237,7 +255,8 @@ def fit(frame: Frame, balance: Balance) -> Fit:
     columns = np.flatnonzero(~g.held)[good]
     half = done.half + np.where(done.half_width + floor > 0, floor, 0.0)
     return Fit(
-        frame=frame, geometry=g, flexibility=soft, forces=forces, keep=keep[rows].tocsr(),
+        frame=frame, geometry=g, flexibility=soft, forces=forces, rounding=rounding, keep=keep[rows].tocsr(),
+        raw_flexibility=raw_flex,
         weight=weight.tocsr()[rows][:, rows].tocsr(), rigid=rigid[rows],
         base=base[:, np.flatnonzero(good)].tocsr()[rows].tocsc(), columns=columns,
         source=(keep[rows] @ values).tocsr(), d=np.asarray(keep[rows] @ raw), unit=unit[rows], half=half,
@@ -263,6 +282,12 @@ def _picker(frame: Frame) -> Sparse:
     matrix = sparse.coo_array((entry, (row, column)), shape=(3 * m + 3 * j, 6 * m + 3 * j)).tocsr()
     matrix.eliminate_zeros()
     return matrix
+
+
+def abs_springs(raw: Sparse, first: int) -> Sparse:
+    """Raw flexibility with support springs (rows from `first` on) positive: the energy of a reaction has no sign."""
+    sign = np.where(np.arange(raw.shape[0]) < first, 1.0, -1.0)
+    return (sparse.diags_array(sign) @ raw).tocsr()
 
 
 def _sprung(g: Geometry) -> Bools:

@@ -1,0 +1,175 @@
+"""How far the claimed forces can be from this frame's own: the hypercircle bound.
+
+W. Prager and J. L. Synge, Approximations in elasticity based on the concept of function space, Quarterly of Applied
+Mathematics 5 (1947), 241-269. For forces s that satisfy statics and any compatible deformations B u,
+
+    |s - true|^2 + |D B u - true|^2 = |s - D B u|^2        in |s|^2 = s'F s (twice the strain energy),
+
+with F the flexibility of the members and of the support springs and D its inverse, so |s - true| is at most the misfit
+|F s + d0 - B u| measured with D. Claimed forces are first moved to the nearest s that balances exactly. The bound on
+the claim is the length of that move plus the misfit of s. With the claimed displacements for u no solver is used;
+with the nearest u the bound is attained, but finding it is a displacement solution. Axially rigid members hold no
+energy.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from crosscheck.answer import CaseAnswer
+from crosscheck.audit.compatibility import CompatibilityFindings
+from crosscheck.audit.equilibrium import JOINT, Sparse, equations, pieces, resultants
+from crosscheck.audit.fit import Fit, abs_springs, fit
+from crosscheck.frame.loads import load_table
+from crosscheck.frame.model import FREE, Floats, Frame
+
+SAFE = 1 + 1e-9
+ROUND_OFF = 1e-10
+"""Of the claim's own size: what arithmetic may take from a computed bound."""
+
+
+@dataclass(frozen=True, slots=True)
+class ForceBound:
+    """Bounds on the distance of the claim from this frame's true forces.
+
+    energy: bound on the root of s'F s of the difference s; size: the same measure of the claim itself (for a share).
+    moved: how far the claim was moved to balance exactly; misfit: of the moved forces, with the nearest compatible
+      displacements; energy = moved + misfit. solver_free: moved + misfit with the claimed displacements; None where
+      they are not all given, or the frame is axially rigid (rounded displacements would stretch it).
+    moment: (m, 2) bound on the error of each end moment; axial: (m,) of the axial force at `from`, NaN if rigid.
+    """
+
+    case: str
+    energy: float
+    size: float
+    moved: float
+    misfit: float
+    solver_free: float | None
+    moment: Floats
+    axial: Floats
+
+
+def hypercircle(frame: Frame, findings: CompatibilityFindings, values: CaseAnswer | None = None) -> ForceBound | str:
+    """The bound for one case, or why there is none. values: the claim, for its displacements."""
+    done = findings.balance
+    if findings.fit is None:
+        return findings.says
+    if not done.holds:
+        return "no bound: statics fails beyond rounding"
+    if _incomplete(frame, findings):
+        return "no bound: the claim does not give every end moment and axial force"
+    system = fit(frame, done, energy=True)
+    claimed = system.forces.copy()
+    balanced = _nearest_balanced(frame, findings.case, system, claimed)
+    raw = system.raw_flexibility
+    metric = abs_springs(raw, 3 * len(frame.members))
+    off = claimed - balanced
+    moved = _root(off @ (metric @ off))
+    deformation = system.d + system.keep @ (raw @ (balanced - claimed))
+    spread, _ = system.solve(deformation)
+    misfit = _root(deformation @ spread)
+    size = _root(claimed @ (metric @ claimed))
+    slack = ROUND_OFF * size
+    reach = _reach(system, len(frame.members))
+    error = np.abs(off[: 3 * len(frame.members)]).reshape(-1, 3) * SAFE + (misfit * SAFE + slack) * reach
+    error += ROUND_OFF * np.array([done.scales.moment, done.scales.moment, done.scales.force])
+    axial = np.full(len(error), np.nan) if frame.analysis.axial == "rigid" else error[:, 2]
+    free = None if values is None else _solver_free(frame, system, deformation, values)
+    return ForceBound(
+        case=findings.case, energy=(moved + misfit) * SAFE + slack, size=size, moved=moved, misfit=misfit,
+        solver_free=None if free is None else (moved + free) * SAFE + slack, moment=error[:, :2], axial=axial,
+    )  # fmt: skip
+
+
+def _root(square: float) -> float:
+    return float(np.sqrt(max(float(square), 0.0)))
+
+
+def _incomplete(frame: Frame, findings: CompatibilityFindings) -> bool:
+    """Whether a force that holds energy is missing."""
+    assert findings.fit is not None
+    return findings.dimension < findings.indeterminacy or bool(np.isnan(findings.fit.d).any())
+
+
+def _nearest_balanced(frame: Frame, case: str, system: Fit, claimed: Floats) -> Floats:
+    """(3 m + 3 j,) forces that satisfy statics exactly and are nearest to the claim in energy.
+
+    Forces are reduced as deformations are (fit.keep), about a set that has no moment at the hinges. Held reactions
+    take what they must; axial forces of rigid members too. Signs of support springs are those of their displacement.
+    """
+    g = system.geometry
+    m = len(frame.members)
+    springs = np.arange(len(claimed)) >= 3 * m
+    sign = np.where(springs, -1.0, 1.0)
+    base: Sparse = g.matrix[:, system.columns]
+    start = _at_hinges(system, m)
+    outside = _joint_loads(frame, case)[system.columns] - base.T @ start
+    metric = abs_springs(system.raw_flexibility, 3 * m)
+    target = system.keep @ (metric @ (sign * claimed - start))
+    inner = system.solve(target)[0] + system.carry(outside)
+    return np.asarray(sign * (system.keep.T @ inner + start))
+
+
+def _at_hinges(system: Fit, m: int) -> Floats:
+    """(3 m + 3 j,) smallest end moments with no moment at any hinge, for the loads on the members."""
+    soft = system.flexibility
+    hinged = system.frame.member_table.turn == FREE
+    start = np.zeros(system.keep.shape[1])
+    for k in np.flatnonzero(hinged.any(axis=1)).tolist():
+        rows = soft.connection[k, hinged[k], :2]
+        start[3 * k : 3 * k + 2] = np.linalg.lstsq(rows, -soft.connection_load[k, hinged[k]], rcond=None)[0]
+    return start
+
+
+def _joint_loads(frame: Frame, case: str) -> Floats:
+    """(3 j,) loads on the joints and from the members as simple beams, along the supports' own axes, rotation last.
+
+    The members' part is what their end actions would be with no end moments and no axial force at `from`.
+    """
+    loads = load_table(frame, case)
+    system = equations(frame, case, loads)
+    m, j = len(frame.members), len(frame.joints)
+    load = resultants(pieces(loads), m)
+    ends = np.zeros((m, 2, 3))
+    ends[:, 1, 1] = load[:, 2] / frame.member_table.length
+    ends[:, 0, 1] = -ends[:, 1, 1] - load[:, 1]
+    ends[:, 1, 0] = -load[:, 0]
+    rows = np.flatnonzero(np.array([kind == JOINT for kind in system.kind]))
+    total = system.matrix[rows] @ np.concatenate([ends.ravel(), np.zeros(3 * j)]) + system.constant[rows]
+    s = frame.support_table
+    turned = total.reshape(-1, 3).copy()
+    fx, fy = turned[:, 0].copy(), turned[:, 1].copy()
+    turned[:, 0], turned[:, 1] = s.cos * fx + s.sin * fy, -s.sin * fx + s.cos * fy
+    return np.asarray(turned.ravel())
+
+
+def _reach(system: Fit, m: int) -> Floats:
+    """(m, 3) largest end moments and axial force that one unit of energy can put into a member by itself."""
+    reach = np.zeros((m, 3))
+    owner: dict[int, list[int]] = {}
+    for k in range(system.keep.shape[0]):
+        part = system.keep[[k]]
+        place = int(part.indices[0])
+        if place < 3 * m and not system.rigid[k]:
+            owner.setdefault(place // 3, []).append(k)
+    for member, rows in owner.items():
+        shape = system.keep[rows][:, 3 * member : 3 * member + 3].toarray()
+        stiff = np.linalg.inv(system.weight[rows][:, rows].toarray())
+        reach[member] = np.sqrt(np.maximum(np.einsum("ra,rs,sa->a", shape, stiff, shape), 0.0))
+    return reach
+
+
+def _solver_free(frame: Frame, system: Fit, deformation: Floats, values: CaseAnswer) -> float | None:
+    """Misfit of the balanced forces with the claimed displacements, supports where the frame holds them."""
+    if frame.analysis.axial == "rigid":
+        return None
+    s = frame.support_table
+    dx, dy, turn = values.joints.T
+    own = np.column_stack([s.cos * dx + s.sin * dy, -s.sin * dx + s.cos * dy, turn]).ravel()
+    u = own[system.columns]
+    if np.isnan(u).any():
+        return None
+    gap = deformation - system.base @ u
+    return _root(gap @ np.linalg.solve(system.weight.toarray(), gap)) if system.small else None

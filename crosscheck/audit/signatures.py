@@ -1,0 +1,298 @@
+"""What single slip or single mistake of stiffness would explain a misfit, without solving any frame again.
+
+Results of a frame with one support freed, one end hinged or one stiffness changed still fit together in that frame. In
+this frame they then misfit by a multiple of one fixed vector a_k, so that the share of the squared misfit that it
+explains, (a'Ld)^2 / (a'La d'Ld), is exactly 1 for the true mistake (fit.py has L; the test is Baarda's, 1968). The
+multiple gives the mistake's size: the spring constant, or the factor of stiffness, that the claim goes with.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+from scipy import sparse
+from scipy.sparse.linalg import splu
+
+from crosscheck.audit.compatibility import CompatibilityFindings
+from crosscheck.audit.equilibrium import Sparse
+from crosscheck.audit.fit import NUDGE, Fit
+from crosscheck.audit.flexibility import BENDING, SHEAR_STRAIN, STRETCH
+from crosscheck.frame.model import FREE, HELD, Bools, Floats, Ints
+
+SUPPORT, END, LENGTH = "support", "end", "length"
+BENDING_FACTOR, AXIAL_FACTOR, SHEAR_FACTOR, MODULUS = "EI", "EA", "shear stiffness", "E"
+INVISIBLE = 1e-9
+"""A signature of which less than this share survives the fit cannot be seen in the misfit at all."""
+ALIKE = 1e-9
+"""Two signatures within this of the same direction cannot be told apart by compatibility."""
+BATCH = 400
+
+
+@dataclass(frozen=True, slots=True)
+class Signature:
+    """One candidate and what it would explain.
+
+    kind: "support" (one direction gives way), "end" (a member end turns against its joint), "length" (a member's
+      elongation is off), "EI", "EA", "shear stiffness" (by a factor, of a member or of all of a section), "E" (of a
+      material: bending and axial together).
+    of, where: "joint", "member", "section" or "material", and its name. joint: of an "end", its joint.
+    direction: of a "support" one of "x", "y", "rotation" in its own axes.
+    share: of the squared misfit it explains, 0 to 1. size: movement, rotation or stretch of the slip, or 1 - 1/factor.
+    allowed: how large a size rounding alone could give; significant: size beyond that.
+    fitted: what the claim goes with: the stiffness left (0: free, or a hinge), or the factor; NaN for "length".
+    possible: False where that would be a negative stiffness or factor.
+    """
+
+    kind: str
+    of: str
+    where: str
+    share: float
+    size: float
+    allowed: float
+    fitted: float
+    joint: str = ""
+    direction: str = ""
+
+    @property
+    def significant(self) -> bool:
+        return abs(self.size) > self.allowed
+
+    @property
+    def possible(self) -> bool:
+        return not self.fitted < 0
+
+
+@dataclass(frozen=True, eq=False)
+class SignatureTable:
+    """All candidates of a case, best first, with their columns for pairs and ties. columns: (n, k) in their order."""
+
+    fit: Fit
+    entries: tuple[Signature, ...]
+    columns: Sparse
+
+    def share_of(self, chosen: Sequence[int]) -> float:
+        """Share of the squared misfit that several candidates explain together, by least squares."""
+        return share(self.fit, self.columns[:, list(chosen)])
+
+    def ties(self, index: int, among: int = 40) -> list[int]:
+        """Candidates among the best that compatibility cannot tell from this one."""
+        count = min(among, len(self.entries))
+        part = self.columns[:, [index, *range(count)]].toarray()
+        gram = part.T @ self.fit.solve(part)[0]
+        size = np.diag(gram)
+        like = gram[0, 1:] ** 2 >= (1 - ALIKE) * size[0] * size[1:]
+        return [k for k in np.flatnonzero(like).tolist() if k != index]
+
+
+def share(system: Fit, columns: Sparse) -> float:
+    """Share of the squared misfit that any combination of the columns (n, k) explains."""
+    if system.squared <= 0:
+        return 0.0
+    dense = columns.toarray()
+    gram = dense.T @ system.solve(dense)[0]
+    seen = dense.T @ system.solved[0]
+    size = np.sqrt(np.maximum(np.diag(gram), 1e-300))
+    scaled = gram / size / size[:, None]
+    found = np.linalg.lstsq(scaled, seen / size, rcond=1e-10)[0]
+    return float(found @ (seen / size)) / system.squared
+
+
+@dataclass
+class _Candidates:
+    """Raw columns (3 m + 3 j) being collected as triplets, with a label and what turns a size into a fitted value."""
+
+    labels: list[Signature]
+    forces: list[tuple[float, float]]
+    row: list[Ints]
+    entry: list[Floats]
+
+    def add(self, label: Signature, row: Ints, entry: Floats, force: float = 0.0, soft: float = 0.0) -> None:
+        """force: what acts at a slip; soft: its flexibility today (1/k)."""
+        self.labels.append(label)
+        self.forces.append((force, soft))
+        self.row.append(row)
+        self.entry.append(entry)
+
+    def matrix(self, size: int) -> Sparse:
+        count = np.array([len(r) for r in self.row])
+        column = np.repeat(np.arange(len(count)), count)
+        return sparse.coo_array(
+            (np.concatenate(self.entry), (np.concatenate(self.row), column)), shape=(size, len(count))
+        ).tocsc()
+
+
+def signatures(findings: CompatibilityFindings, slips_only: bool = False) -> SignatureTable:
+    """Every single candidate of the case, best first; invisible ones left out.
+
+    slips_only: supports, ends and lengths only (the local findings of compatibility).
+    """
+    system = findings.fit
+    if system is None:
+        raise ValueError("no fit to take signatures of: " + findings.says)
+    candidates = _Candidates([], [], [], [])
+    _supports(system, candidates)
+    _ends(system, candidates)
+    _lengths(system, candidates)
+    if not slips_only:
+        _factors(system, candidates)
+    if not candidates.labels:
+        return SignatureTable(system, (), sparse.csc_array((len(system.d), 0)))
+    columns = (system.keep @ candidates.matrix(system.keep.shape[1])).tocsc()
+    return _judge(system, candidates, columns)
+
+
+def local_findings(findings: CompatibilityFindings) -> list[Signature]:
+    """Slips beyond rounding, the one that explains most first; empty where everything fits.
+
+    Which end turns against its joint, which support gives way, which member's length does not fit.
+    """
+    if findings.fit is None or not findings.dimension:
+        return []
+    return [s for s in signatures(findings, slips_only=True).entries if s.significant]
+
+
+def _judge(system: Fit, candidates: _Candidates, columns: Sparse) -> SignatureTable:
+    """Shares, sizes and intervals of every candidate, sorted."""
+    count = columns.shape[1]
+    seen = np.asarray(columns.T @ system.solved[0])
+    own, carried = np.zeros(count), np.zeros(count)
+    for first in range(0, count, BATCH):
+        part = slice(first, first + BATCH)
+        dense = columns[:, part].toarray()
+        own[part] = np.einsum("nk,nk->k", dense, _apply(system, dense))
+        carried[part] = system.carried(dense.T)
+    scaled = (sparse.diags_array(1 / system.unit) @ columns).tocsc()
+    whole = np.asarray(scaled.multiply(scaled).sum(axis=0)).ravel()
+    visible = (own > INVISIBLE * whole) & (whole > 0)
+    safe = np.where(visible, own, 1.0)
+    size, most = seen / safe, carried / safe
+    explained = seen**2 / safe / (system.squared or 1.0)
+    order = np.flatnonzero(visible)
+    order = order[np.argsort(-explained[order], kind="stable")]
+    entries = [
+        replace(
+            candidates.labels[k], share=min(float(explained[k]), 1.0), size=float(size[k]), allowed=float(most[k]),
+            fitted=_fitted(candidates.labels[k].kind, float(size[k]), float(most[k]), *candidates.forces[k]),
+        )
+        for k in order.tolist()
+    ]  # fmt: skip
+    return SignatureTable(system, tuple(entries), columns[:, order])
+
+
+def _apply(system: Fit, dense: Floats) -> Floats:
+    """L times columns, from the dense L where it is at hand."""
+    return system.inverse @ dense if system.small else system.solve(dense)[0]
+
+
+def _fitted(kind: str, size: float, allowed: float, force: float, soft: float) -> float:
+    """Stiffness left at a slip, or factor of stiffness; nil stiffness where no force acts there to speak of."""
+    if kind == LENGTH:
+        return float("nan")
+    if kind not in (SUPPORT, END):
+        return 1 / (1 - size) if abs(1 - size) > 1e-12 else float("inf")
+    if size == 0:
+        return float("inf")
+    now = soft - size / force if force else float("inf")
+    return 0.0 if np.isinf(now) else 1 / now if now else float("inf")
+
+
+def _supports(system: Fit, into: _Candidates) -> None:
+    """A held direction moves: B of that displacement. A sprung one moves more: its own row."""
+    frame, g = system.frame, system.geometry
+    m = len(frame.members)
+    columns = g.matrix.tocsc()
+    blocked = _blocked(system)
+    for joint, axis in zip(*np.nonzero(frame.support_table.stiffness != FREE), strict=True):
+        place = 3 * int(joint) + int(axis)
+        if blocked[place]:
+            continue
+        label = Signature(
+            SUPPORT, "joint", list(frame.joints)[joint], 0, 0, 0, 0, direction=("x", "y", "rotation")[axis]
+        )
+        reaction = _beyond(system.forces[3 * m + place], system.rounding[3 * m + place])
+        if g.held[place]:
+            start, end = columns.indptr[place], columns.indptr[place + 1]
+            into.add(label, columns.indices[start:end], columns.data[start:end], reaction, 0.0)
+        else:
+            # Here the row is displacement less (settlement - reaction/k): more give makes it negative by reaction.
+            into.add(label, np.array([3 * m + place]), np.array([-1.0]), reaction, 1 / float(g.stiffness[place]))
+
+
+def _blocked(system: Fit) -> Bools:
+    """(3 j,) held directions that rigid members stop from moving even when freed.
+
+    Where rigid members leave axial forces undetermined, some of their elongations repeat others and are not kept: a
+    freed support may only move if all of them allow it.
+    """
+    blocked = np.zeros(system.geometry.matrix.shape[1], dtype=bool)
+    if not system.lost_rows.shape[0]:
+        return blocked
+    rigid = sparse.vstack([system.keep[np.flatnonzero(system.rigid)], system.lost_rows]) @ system.geometry.matrix
+    rigid = rigid.tocsc()
+    base = rigid[:, system.columns]
+    square = (base.T @ base + 1e4 * NUDGE * sparse.eye_array(base.shape[1])).tocsc()
+    factors = splu(square)
+    held = np.flatnonzero(system.geometry.held)
+    target = rigid[:, held].toarray()
+    left = target.copy()
+    for _ in range(3):
+        left = left - base @ factors.solve(base.T @ left)
+    blocked[held] = np.abs(left).max(axis=0, initial=0.0) > 1e-6
+    return blocked
+
+
+def _ends(system: Fit, into: _Candidates) -> None:
+    """A member end turns against its joint: a kink at the face of the zone, where the connection is."""
+    frame, soft = system.frame, system.flexibility
+    t = frame.member_table
+    members, joints = list(frame.members), list(frame.joints)
+    forces = system.forces[: 3 * len(members)].reshape(-1, 3)
+    moment = np.einsum("mea,ma->me", soft.connection, forces) + soft.connection_load
+    rounding = np.einsum("mea,ma->me", np.abs(soft.connection), system.rounding[: forces.size].reshape(-1, 3))
+    for k, end in zip(*np.nonzero(t.turn != FREE), strict=True):
+        label = Signature(END, "member", members[k], 0, 0, 0, 0, joint=joints[int(t.ends[k, end])])
+        now = 0.0 if t.turn[k, end] == HELD else 1 / float(t.turn[k, end])
+        into.add(label, np.array([3 * k, 3 * k + 1]), soft.connection[k, end, :2],
+                 _beyond(moment[k, end], rounding[k, end]), now)  # fmt: skip
+
+
+def _beyond(force: float, rounding: float) -> float:
+    """The force at a slip, nil where it is no more than rounding: then nothing holds there."""
+    return float(force) if abs(force) > rounding else 0.0
+
+
+def _lengths(system: Fit, into: _Candidates) -> None:
+    for k, name in enumerate(system.frame.members):
+        into.add(Signature(LENGTH, "member", name, 0, 0, 0, 0), np.array([3 * k + 2]), np.ones(1))
+
+
+def _factors(system: Fit, into: _Candidates) -> None:
+    """The deformations of bending, of axial force or of shear by a factor: of a member, a section, a material."""
+    frame, soft = system.frame, system.flexibility
+    forces = system.forces[: 3 * len(frame.members)].reshape(-1, 3)
+    part = np.einsum("smab,mb->sma", soft.matrix, forces) + soft.load
+    members = list(frame.members.values())
+    sources: list[tuple[str, Floats]] = [(BENDING_FACTOR, part[BENDING])]
+    if frame.analysis.axial == "elastic":
+        sources.append((AXIAL_FACTOR, part[STRETCH]))
+    if frame.analysis.shear == "elastic":
+        sources.append((SHEAR_FACTOR, part[SHEAR_STRAIN]))
+    for kind, deformation in sources:
+        for k, member in enumerate(members):
+            _factor(into, Signature(kind, "member", member.name, 0, 0, 0, 0), np.array([k]), deformation)
+        for section in frame.sections:
+            chosen = np.array([k for k, member in enumerate(members) if member.section == section], dtype=np.int64)
+            if len(chosen):
+                _factor(into, Signature(kind, "section", section, 0, 0, 0, 0), chosen, deformation)
+    for material in frame.materials:
+        chosen = np.array([k for k, member in enumerate(members) if member.material == material], dtype=np.int64)
+        if len(chosen):
+            both = part[BENDING] + part[STRETCH]
+            _factor(into, Signature(MODULUS, "material", material, 0, 0, 0, 0), chosen, both)
+
+
+def _factor(into: _Candidates, label: Signature, chosen: Ints, deformation: Floats) -> None:
+    row = (3 * chosen[:, None] + np.arange(3)).ravel()
+    into.add(label, row, deformation[chosen].ravel())
