@@ -20,6 +20,9 @@ from crosscheck.frame.model import Floats, Frame
 
 COARSE = 0.05
 """A claimed value whose half digit exceeds this share of its scale is printed too coarsely to judge."""
+TRACE = 1e-4
+"""Share of what full restraint would cause that counts as scale even where no such value occurs: a determinate frame
+that warms has forces of rounding noise alone, and an axially rigid one loaded along its members no displacement."""
 LEAST_SHARE = 0.1
 """The scale for a claim is the member's own largest value, but no less than this share of the case's scale."""
 
@@ -87,19 +90,45 @@ def case_scales(
     """
     answers = list(answers)
     longest = float(frame.member_table.length.max(initial=0.0))
+    restraint = full_restraint(frame, table)
     ends = [a.ends for a in answers]
     forces = _largest(
         *[e[:, :, (AXIAL, SHEAR)] for e in ends], *[a.reactions[:, :2] for a in answers],
         np.hypot(table.joint[:, 0], table.joint[:, 1]), member_load_totals(frame, table),
+        np.array([TRACE * restraint.forces]),
     )  # fmt: skip
     moments = _largest(
         *[e[:, :, MOMENT] for e in ends], *[a.reactions[:, 2] for a in answers],
-        table.joint[:, 2], table.point_couple, np.array([forces * longest]),
+        table.joint[:, 2], table.point_couple, np.array([forces * longest, TRACE * restraint.moments]),
     )  # fmt: skip
+    forces = max(forces, TRACE * moments / longest if longest else 0.0)
     turns = _largest(*[a.joints[:, 2] for a in answers])
     displacements = _largest(*[a.joints[:, :2] for a in answers], np.array([turns * longest]), *across)
+    displacements = max(displacements, TRACE * restraint.displacements, TRACE * moments * _span_flexibility(frame))
     rotations = max(turns, displacements / longest if longest else 0.0)
     return Scales(forces, moments, displacements, rotations)
+
+
+def full_restraint(frame: Frame, table: LoadTable) -> Scales:
+    """The size of what temperature, misfit and settlement impose, and of what they would cause in members held fast:
+    EA times the strain (axially elastic), EI times the curvature, 6 EI / L^2 and 4 EI / L times the movement."""
+    t = frame.member_table
+    stiffness = t.E * t.I
+    bend = np.where(table.difference != 0.0, np.abs(table.difference) * t.alpha / t.depth, 0.0)
+    longer = np.where(table.mean != 0.0, np.abs(table.mean) * t.alpha * t.length, 0.0) + np.abs(table.misfit)
+    moved = max(_largest(longer), _largest(table.settlement[:, :2]))
+    turned = _largest(table.settlement[:, 2])
+    axial = np.where(longer > 0.0, t.E * t.A * longer / t.length, 0.0) if frame.analysis.axial == "elastic" else 0.0
+    moments = stiffness * (bend + 6.0 * moved / t.length**2 + 4.0 * turned / t.length)
+    longest = float(t.length.max(initial=0.0))
+    displacements = moved + turned * longest + _largest(bend) * longest**2
+    return Scales(_largest(np.asarray(axial)), _largest(moments), displacements, turned)
+
+
+def _span_flexibility(frame: Frame) -> float:
+    """Displacement that a unit moment causes in a usual member: L^2 / EI."""
+    t = frame.member_table
+    return float(np.median(t.length**2 / (t.E * t.I))) if len(t.length) else 0.0
 
 
 def _largest(*values: Floats) -> float:
