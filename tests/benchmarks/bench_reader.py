@@ -1,7 +1,7 @@
 """Reading and checking a frame file of 10,000 members against `tomllib.loads` of the same text.
 
-Run by `python tests/benchmarks/bench_reader.py`. Both are timed in turn in one process, the best of several; the limit is
-a ratio of 6. The second row reads the same file with three faults in it, located by line.
+Run by `python tests/benchmarks/bench_reader.py`. Both are timed in turn in one process, the best of several; the limit
+is a ratio of 6. The second row reads the same file with three faults in it, located by line.
 """
 
 from __future__ import annotations
