@@ -10,7 +10,7 @@ import re
 from collections.abc import Iterable
 from dataclasses import dataclass
 
-_DASHES = str.maketrans({c: "-" for c in "\u2212\u2010\u2011\u2012\u2013\u2014\ufe63\uff0d"} | {"\uff0b": "+"})
+_DASHES = str.maketrans(dict.fromkeys("−‐‑‒–—﹣－", "-") | {"\uff0b": "+"})
 _SPACES = "\u00a0\u2007\u2009\u200a\u202f"
 _GROUP = re.compile(rf"(?<=\d)[ '\u2019{_SPACES}](?=\d\d\d(?!\d))")
 _PLAIN = r"\d+(?:[.,]\d*)*|[.,]\d+"

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import hashlib
-
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
@@ -17,7 +16,6 @@ from crosscheck.claims.reading import Entry, FrameNames, Kind, LineTrace, Readin
 from crosscheck.claims.scan import RawTable, Scan, scan
 from crosscheck.claims.stated import Stated, stated_in, with_options
 from crosscheck.claims.words import Size, unit_of
-
 from crosscheck.frame.units import Dimension
 
 MOST_TRACED = 2000

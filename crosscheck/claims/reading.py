@@ -13,7 +13,6 @@ from typing import Literal
 
 from crosscheck.claims.numbers import Number
 from crosscheck.claims.words import Size
-
 from crosscheck.frame.model import Frame
 
 Kind = Literal["end", "span", "reaction", "displacement", "extreme"]

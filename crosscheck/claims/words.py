@@ -14,7 +14,7 @@ from functools import lru_cache
 
 from crosscheck.frame.units import ANGLE, FORCE, GRAVITY, LENGTH, LONGEST, MOMENT, Dimension, UnitError, parse_unit
 
-RESULT_NOUNS = frozenset("N V M F R D T w".split())
+RESULT_NOUNS = frozenset(["N", "V", "M", "F", "R", "D", "T", "w"])
 """Nouns of results: axial, shear, moment, force, reaction, displacement, turning (rotation), deflection across."""
 
 
@@ -75,8 +75,8 @@ _AXES = {
     "x": "x", "y": "y", "z": "z", "horizontal": "x", "horiz": "x", "hor": "x", "hz": "x", "vertical": "y", "vert": "y",
     "vrt": "y", "vt": "y",
 }  # fmt: skip
-_FIRST = frozenset("i start from begin beginning first left bottom near l lh".split())
-_LAST = frozenset("j to last right top far second rh".split())
+_FIRST = frozenset(["i", "start", "from", "begin", "beginning", "first", "left", "bottom", "near", "l", "lh"])
+_LAST = frozenset(["j", "to", "last", "right", "top", "far", "second", "rh"])
 _WHICH = {
     "max": "max", "maximum": "max", "largest": "max", "peak": "max", "maxi": "max", "greatest": "max", "highest": "max",
     "min": "min", "minimum": "min", "least": "min", "smallest": "min", "lowest": "min",
@@ -96,7 +96,7 @@ _BRACKETS = re.compile(r"[\[({<]([^\[\](){}<>]*)[\])}>]")
 _STRAY = re.compile(r"(?:^|[\s,;:/]|\bin\s)([^\s,;:]{1,12})\s*$")
 _FIT = frozenset({FORCE, LENGTH, MOMENT, ANGLE, Dimension(mass=1), Dimension(mass=1, length=1)})
 _SCALED = re.compile(r"^(?:x|\*|\u00d7)?\s*(?:1e|10\^?|10\*\*)([+-]?\d+)\s*[*\u00b7\s]?\s*(.+)$")
-_NOT_UNITS = frozenset("i j a b g x y z e f n m k c t h in".split())
+_NOT_UNITS = frozenset(["i", "j", "a", "b", "g", "x", "y", "z", "e", "f", "n", "m", "k", "c", "t", "h", "in"])
 """Bare letters that a head means as symbols, not as units."""
 
 

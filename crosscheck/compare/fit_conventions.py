@@ -173,23 +173,25 @@ def _expected_in(batch: Batch, reference: Reference, convention: Convention) -> 
     if batch.kind == "span":
         x = distance(batch, reference.frame, r)
         sides = [reference.along(batch.member, x, side)[:, column] for side in (-1, 1)]
-        return s * turned[:, None] * np.column_stack(sides)
+        both: Floats = s * turned[:, None] * np.column_stack(sides)
+        return both
     if batch.kind == "extreme":
-        most = reference.extremes()[batch.member, :, column]
+        most = reference.extremes[batch.member, :, column]
         return _extreme(batch.extreme, most, s * turned)[:, None]
-    values = reference.result.ends[batch.member, end, column]
+    acting: Floats = reference.result.ends[batch.member, end, column]
     if batch.quantity == "shear":
-        values = values * r
+        acting = acting * r
     flips = convention.form == ("action" if batch.quantity == "axial" else "internal")
     if flips:
         at_start = -1 if batch.quantity == "axial" else 1
-        values = values * np.where(place == 0, at_start, -at_start)
-    return (s * values)[:, None]
+        acting = acting * np.where(place == 0, at_start, -at_start)
+    return np.asarray(s * acting, dtype=float)[:, None]
 
 
 def _extreme(which: Ints, most: Floats, sign: Ints) -> Floats:
-    """Largest (1), smallest (-1) or largest magnitude (0) of values that are turned by `sign`."""
-    high, low = most[:, 0] * sign, most[:, 1] * sign
+    """Largest (1), smallest (-1) or, without its sign, largest magnitude (0) of values that are turned by `sign`."""
+    low, high = most[:, 0] * sign, most[:, 1] * sign
     largest, smallest = np.fmax(high, low), np.fmin(high, low)
     size = np.where(np.abs(largest) >= np.abs(smallest), largest, smallest)
-    return np.where(which > 0, largest, np.where(which < 0, smallest, size))
+    out: Floats = np.where(which > 0, largest, np.where(which < 0, smallest, np.abs(size)))
+    return out

@@ -1,19 +1,24 @@
-"""What an opinion says at each place that a claim speaks of, as arrays, and how far a claimed value may lie from it."""
+"""What an opinion says at each place that a claim speaks of, as arrays, and how far a claimed value may lie from it.
+
+The same measure as crosscheck.compare.claim uses on single values, over arrays: fitting asks for it many times.
+"""
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from collections.abc import Mapping
+from functools import cached_property
 
 import numpy as np
 
 from crosscheck.answer import ACROSS, AXIAL, MOMENT, SHEAR, Answer, CaseAnswer
-from crosscheck.compare.tolerance import Scales, case_scales
+from crosscheck.compare.opinions import extremes
+from crosscheck.compare.tolerance import LEAST_SHARE, Scales, case_scales
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.frame.stations import stations
 
 COLUMN = {"axial": AXIAL, "shear": SHEAR, "moment": MOMENT, "across": ACROSS, "fx": 0, "fy": 1, "dx": 0, "dy": 1}
 """Column of a quantity in its array; a joint's moment and rotation stand third as well."""
-LEAST_SHARE = 0.1
 
 
 def joint_column(quantity: str) -> int:
@@ -21,63 +26,44 @@ def joint_column(quantity: str) -> int:
     return 2 if quantity in ("moment", "rotation") else COLUMN[quantity]
 
 
-@dataclass(slots=True)
 class Reference:
     """One opinion's answer to one case, with scales; values along the members are worked out once, when asked for."""
 
-    frame: Frame
-    answer: Answer
-    case: str
-    scales: Scales = field(init=False)
-    result: CaseAnswer = field(init=False)
-    _tenths: Floats | None = None
-    _extremes: Floats | None = None
-
-    def __post_init__(self) -> None:
-        self.result = self.answer.cases[self.case]
-        self.scales = case_scales(self.frame, load_table(self.frame, self.case), [self.result])
+    def __init__(self, frame: Frame, answers: Mapping[str, Answer], case: str) -> None:
+        self.frame, self.case = frame, case
+        given = [a for a in answers.values() if case in a.cases]
+        self.answer = next((a for a in given if not a.spans.sampled), given[0])
+        self.result: CaseAnswer = self.answer.cases[case]
+        self.scales: Scales = case_scales(frame, load_table(frame, case), [a.cases[case] for a in given])
 
     def along(self, member: Ints, x: Floats, side: int) -> Floats:
-        """(n, 4) values at distances x of members, just before or after them."""
+        """(n, 4) values at distances x of members, just before or after them; NaN off the member."""
         if not len(member):
             return np.zeros((0, 4))
-        return self.answer.spans.along(self.case, member, x, np.full(len(member), side, dtype=np.int64))
+        length = self.frame.member_table.length[member]
+        off = (x < -1e-3 * length) | (x > 1.001 * length) | ~np.isfinite(x)
+        inside = np.clip(np.where(off, 0.0, x), 0.0, length)
+        values = self.answer.spans.along(self.case, member, inside, np.full(len(member), side, dtype=np.int64))
+        return np.where(off[:, None], np.nan, values)
 
+    @cached_property
     def extremes(self) -> Floats:
-        """(m, 2, 4) largest and smallest value along each member."""
-        if self._extremes is None:
-            table = self.frame.member_table
-            count = len(table.length)
-            member = np.repeat(np.arange(count), 41)
-            x = (table.length[:, None] * np.linspace(0.0, 1.0, 41)).ravel()
-            turning, places = self.answer.spans.turning_points(self.case)
-            member, x = np.concatenate([member, turning]), np.concatenate([x, places])
-            out = np.empty((count, 2, 4))
-            out[:, 0], out[:, 1] = -np.inf, np.inf
-            for side in (-1, 1):
-                values = self.along(member, x, side)
-                np.fmax.at(out[:, 0], member, values)
-                np.fmin.at(out[:, 1], member, values)
-            self._extremes = np.where(np.isfinite(out), out, np.nan)
-        return self._extremes
+        """(m, 2, 4) smallest and largest value along each member."""
+        return extremes(self.answer, self.case, stations(self.frame))
+
+    @cached_property
+    def _largest(self) -> Floats:
+        """(m, 4) largest magnitude along each member and at its ends."""
+        along: Floats = np.abs(np.nan_to_num(self.extremes)).max(axis=1, initial=0.0)
+        along[:, :3] = np.maximum(along[:, :3], np.abs(np.nan_to_num(self.result.ends)).max(axis=1, initial=0.0))
+        return along
 
     def member_scale(self, quantity: str) -> Floats:
         """(m,) the scale of a claim by member: its own largest value, but no less than a tenth of the case's."""
-        if self._tenths is None:
-            table = self.frame.member_table
-            count = len(table.length)
-            member = np.repeat(np.arange(count), 11)
-            x = (table.length[:, None] * np.linspace(0.0, 1.0, 11)).ravel()
-            values = np.abs(np.nan_to_num(self.along(member, x, 1))).reshape(count, 11, 4).max(axis=1)
-            ends = np.abs(np.nan_to_num(self.result.ends)).max(axis=1)
-            values[:, :3] = np.maximum(values[:, :3], ends)
-            self._tenths = values
-        return np.maximum(self._tenths[:, COLUMN[quantity]], LEAST_SHARE * self.scales.of(quantity))
+        return np.maximum(self._largest[:, COLUMN[quantity]], LEAST_SHARE * self.scales.of(quantity))
 
     def joint_scale(self, quantity: str, kind: str) -> Floats:
-        """(j,) the scale of a claim by joint."""
-        values = self.result.reactions if kind == "reaction" else self.result.joints
-        own = np.abs(np.nan_to_num(values))
-        # A joint's own largest value of that quantity's kind: its two forces, or its two displacements, share one.
-        size = own[:, 2] if joint_column(quantity) == 2 else own[:, :2].max(axis=1)
+        """(j,) the scale of a claim by joint: its own largest force (displacement), or its moment (rotation)."""
+        own = np.abs(np.nan_to_num(self.result.reactions if kind == "reaction" else self.result.joints))
+        size = own[:, 2] if joint_column(quantity) == 2 else own[:, :2].max(axis=1, initial=0.0)
         return np.maximum(size, LEAST_SHARE * self.scales.of(quantity))

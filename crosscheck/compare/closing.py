@@ -1,0 +1,328 @@
+"""Closing a reading's open choices: signs, units, the way members run, and the case, by what fits the opinions.
+
+Nothing is explained away: one choice holds for a whole quantity, a choice that is not the plain one counts only if at least
+three values fix it, and where no choice fits the claim disagrees in all of them.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field, replace
+
+import numpy as np
+
+from crosscheck.answer import Answer
+from crosscheck.claims.reading import Entry, Reading
+from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
+from crosscheck.compare.fit import Choice, Fitted, Fitter
+from crosscheck.compare.fit_conventions import Batch, distance, placed
+from crosscheck.compare.fit_signs import Senses, narrowed, senses
+from crosscheck.compare.fit_values import Reference
+from crosscheck.compare.tolerance import Tolerance
+from crosscheck.frame.model import Frame
+from crosscheck.frame.units import FORCE, LENGTH, MOMENT, Dimension, unit_name
+
+FIXED_BY = 3
+"""Values above tolerance that must fix a choice."""
+_EXTREME = {"max": 1, "min": -1, "size": 0}
+
+
+def close(
+    reading: Reading, frame: Frame, answers: Mapping[str, Answer], case: str | None, tolerance: Tolerance
+) -> ClosedClaim:
+    """The claim in the frame's own units, signs and names, or the reasons why it cannot be judged.
+
+    case: the one asked for by name; it is given to values whose case the paste leaves open, and others are left out.
+    """
+    closer = _Closer(reading, frame, answers, tolerance)
+    if not answers:
+        return closer.result((), [], ["no opinion speaks for this frame"])
+    entries, notes = _of_case(reading, case)
+    if case is not None:
+        return closer.close([replace(e, case=case) for e in entries], notes)
+    if all(e.case is not None for e in entries):
+        return closer.close(entries, notes)
+    spoken = [n for n in frame.names if any(n in a.cases for a in answers.values())]
+    if len(frame.names) == 1:
+        return closer.close([replace(e, case=e.case or frame.names[0]) for e in entries], notes)
+    return _by_fit(closer, entries, spoken, notes)
+
+
+def _of_case(reading: Reading, case: str | None) -> tuple[list[Entry], list[str]]:
+    """Entries of the case asked for; with none asked for, all."""
+    if case is None:
+        return list(reading.entries), []
+    entries = [e for e in reading.entries if e.case in (None, case)]
+    left = len(reading.entries) - len(entries)
+    return entries, [f"{left} values of other cases are left out"] if left else []
+
+
+def _by_fit(closer: _Closer, entries: list[Entry], names: list[str], notes: list[str]) -> ClosedClaim:
+    """The one case that the values without a case fit; undecided where none or several do."""
+    tried = {n: closer.close([replace(e, case=e.case or n) for e in entries], notes) for n in names}
+    fitting = [n for n, closed in tried.items() if not closer.bad[n] and not closed.undecided]
+    if len(fitting) == 1:
+        name = fitting[0]
+        said = f'the claim names no case; "{name}" is the only one of {len(names)} that it fits'
+        return replace(tried[name], notes=(said, *tried[name].notes))
+    why = "fits none of them" if not fitting else f"fits {' and '.join(fitting)}"
+    reason = f"the claim names no load case and {why}; say which with --case ({', '.join(closer.frame.names)})"
+    return closer.result((), notes, [reason])
+
+
+@dataclass(slots=True)
+class _Closer:
+    reading: Reading
+    frame: Frame
+    answers: Mapping[str, Answer]
+    tolerance: Tolerance
+    bad: dict[str, bool] = field(default_factory=dict)
+    _references: dict[str, Reference] = field(default_factory=dict)
+
+    def close(self, entries: list[Entry], notes: Iterable[str]) -> ClosedClaim:
+        """Every entry has its case by now. Notes in `bad`, under the first open case, whether any value is beyond reach."""
+        notes = list(notes)
+        cases = tuple(n for n in self.frame.names if any(e.case == n for e in entries))
+        silent = [n for n in cases if not any(n in a.cases for a in self.answers.values())]
+        undecided = [f"no opinion speaks for {n}" for n in silent]
+        entries = [e for e in entries if e.case not in silent]
+        batches = _batches(entries, self.frame, cases)
+        fitter = Fitter(self.frame.units, [self._reference(n) for n in cases if n not in silent], self.tolerance)
+        fitted = [narrowed(f, self.reading.signs) for f in fitter.fit(batches)]
+        meant = senses(fitted, self.reading.signs)
+        open_choices = _open(fitted, meant)
+        sure_to_fail = any(not f.taken.fits for f in fitted if id(f) not in open_choices)
+        for name in cases:
+            self.bad[name] = any(not f.taken.fits for f in fitted)
+        if sure_to_fail:
+            notes += [f"{why}; it disagrees whichever is meant" for why in open_choices.values()]
+        else:
+            undecided += open_choices.values()
+        values: list[ClaimedValue] = []
+        for f in fitted:
+            if id(f) not in open_choices or sure_to_fail:
+                values += self._values(f, entries, cases, meant)
+        notes += [_sureness(f) for f in fitted if id(f) not in open_choices]
+        closed = self.result(cases, notes, undecided)
+        return replace(
+            closed,
+            values=tuple(sorted(values, key=lambda v: v.line)),
+            units=_units_said(fitted, entries, self.frame),
+            signs=_signs_said(fitted, meant),
+            reversed_load=meant.reversed_load,
+        )
+
+    def _reference(self, name: str) -> Reference:
+        if name not in self._references:
+            self._references[name] = Reference(self.frame, self.answers, name)
+        return self._references[name]
+
+    def result(self, cases: tuple[str, ...], notes: list[str], undecided: list[str]) -> ClosedClaim:
+        r = self.reading
+        unknown = [
+            f'load case "{label}" is not one of the frame\'s ({", ".join(self.frame.names)}); '
+            "say which it is in a reading file, or with --case"
+            for label in r.unknown_cases
+        ]
+        return ClosedClaim(
+            file=r.file, sha256=r.sha256, rows=r.rows, cases=cases, values=(),
+            notes=(*r.notes, *notes), not_understood=r.not_understood, foreign=r.foreign,
+            undecided=tuple(dict.fromkeys([*r.undecided, *unknown, *undecided])),
+        )  # fmt: skip
+
+    def _values(
+        self, fitted: Fitted, entries: list[Entry], cases: tuple[str, ...], meant: Senses
+    ) -> list[ClaimedValue]:
+        """The batch in the frame's own units and signs."""
+        batch, choice = fitted.batch, meant.shown(fitted)
+        sign, joints, at = _to_frame(batch, choice, self.frame)
+        factor = np.where(np.isnan(batch.factor), choice.unit.factor if choice.unit else 1.0, batch.factor)
+        value, half = batch.value * factor * sign, batch.half * factor
+        out = []
+        for k, index in enumerate(batch.entry.tolist()):
+            e = entries[index]
+            out.append(
+                ClaimedValue(
+                    case=cases[int(batch.case[k])], kind=batch.kind,  # type: ignore[arg-type]
+                    quantity=batch.quantity,  # type: ignore[arg-type]
+                    member=e.member, joint=joints[k], at=at[k], value=float(value[k]), half_digit=float(half[k]),
+                    line=e.line, printed=e.number.printed, extreme=_turned(e.extreme, float(sign[k])),  # type: ignore[arg-type]
+                )  # fmt: skip
+            )
+        return out
+
+
+def _turned(extreme: str | None, sign: float) -> str | None:
+    """A largest value printed with the sign reversed is a smallest one."""
+    return {"max": "min", "min": "max"}.get(extreme, extreme) if extreme and sign < 0 else extreme
+
+
+# -- entries to arrays
+
+
+def _batches(entries: list[Entry], frame: Frame, cases: tuple[str, ...]) -> list[Batch]:
+    """Entries by kind and quantity: what one convention and one unit must hold for."""
+    groups: dict[tuple[str, str], list[int]] = {}
+    for k, e in enumerate(entries):
+        groups.setdefault((e.kind, e.quantity), []).append(k)
+    return [_batch(kind, quantity, where, entries, frame, cases) for (kind, quantity), where in groups.items()]
+
+
+def _batch(
+    kind: str, quantity: str, where: list[int], entries: list[Entry], frame: Frame, cases: tuple[str, ...]
+) -> Batch:
+    mine = [entries[k] for k in where]
+    spoken = {n: k for k, n in enumerate(cases)}
+    at = [_at(e, frame) for e in mine]
+
+    def ints(values: Iterable[int | None]) -> np.ndarray:
+        return np.array([-1 if v is None else v for v in values], dtype=np.int64)
+
+    return Batch(
+        kind=kind, quantity=quantity, cases=cases,
+        case=ints(spoken[str(e.case)] for e in mine),
+        member=ints(frame.member_index[e.member] if e.member else None for e in mine),
+        joint=ints(frame.joint_index[e.joint] if e.joint else None for e in mine),
+        end=ints(e.end for e in mine), place=ints(e.place for e in mine), run=ints(e.run for e in mine),
+        at=np.array(at), at_share=np.array([e.at_share for e in mine]),
+        extreme=ints(_EXTREME.get(e.extreme or "size", 0) for e in mine),
+        value=np.array([e.number.value for e in mine]), half=np.array([e.number.half for e in mine]),
+        factor=np.array([_factor(e, frame) for e in mine]), entry=np.array(where, dtype=np.int64),
+    )  # fmt: skip
+
+
+def _at(e: Entry, frame: Frame) -> float:
+    if e.at is None:
+        return 0.0
+    return e.at if e.at_unit is None or e.at_share else e.at * e.at_unit.factor / frame.units.metre
+
+
+def _factor(e: Entry, frame: Frame) -> float:
+    """What one of the stated unit is in the frame's units; NaN where none is stated."""
+    if e.unit is None:
+        return np.nan
+    d: Dimension = e.unit.dimension
+    return float(e.unit.factor / frame.units.newton**d.force / frame.units.metre**d.length)
+
+
+# -- what is still open, and what is said of it
+
+
+def _open(fitted: list[Fitted], meant: Senses) -> dict[int, str]:
+    """Batches whose choice is not fixed, and what would settle it."""
+    out: dict[int, str] = {}
+    for f in fitted:
+        if f.taken.fits:
+            why = meant.unfixed.get(id(f), "") or _form_unfixed(f) or _unit_unfixed(f)
+        else:
+            why = _signs_at_odds(f)
+        if why:
+            out[id(f)] = why
+    total = sum(int(f.taken.telling.sum()) for f in fitted)
+    if total and total < FIXED_BY and not out:
+        for f in fitted:
+            if f.taken.fits and f.taken.telling.any() and not _same_whichever(f) and not meant.stated(f):
+                out[id(f)] = f"too few values ({total}) to tell the sign of {f.batch.quantity}; state it"
+    return out
+
+
+def _same_whichever(f: Fitted) -> bool:
+    return all(c.fits for c in f.choices)
+
+
+def _form_unfixed(f: Fitted) -> str:
+    """Another kind of convention that fewer than three values speak against (the plain first one needs none)."""
+    plain = f.choices[0].convention
+    mine = f.taken.convention
+    if (mine.form, mine.rule) == (plain.form, plain.rule):
+        return ""
+    for other in f.choices:
+        against = int((other.bad & other.telling).sum())
+        if not other.fits and against < FIXED_BY and (other.convention.form, other.convention.rule) != (mine.form, mine.rule):
+            return (
+                f"{against or 'no'} value{'' if against == 1 else 's'} of {f.batch.quantity} tell{'s' if against == 1 else ''} "
+                f'"{mine.words}" from "{other.convention.words}"; state which with signs in a reading file'
+            )
+    return ""
+
+
+def _unit_unfixed(f: Fitted) -> str:
+    unit = f.taken.unit
+    if unit is None or unit.own:
+        return ""
+    telling = int((f.taken.telling & np.isnan(f.batch.factor)).sum())
+    if telling >= FIXED_BY:
+        return ""
+    return f"{f.batch.quantity} fits in {unit.text}, but too few values ({telling}) fix that; state it with --units"
+
+
+def _signs_at_odds(f: Fitted) -> str:
+    """All sizes right and several members with the other sign: the convention is not understood, which is not an error of one
+    member."""
+    batch, bad = f.batch, f.taken.bad
+    if batch.kind in ("reaction", "displacement") or f.taken.sizes_bad.any():
+        return ""
+    members = set(batch.member[f.taken.telling].tolist())
+    turned = set(batch.member[bad].tolist())
+    if len(turned) < 2 or 4 * len(turned) <= len(members):
+        return ""
+    return (
+        f"every size of {batch.quantity} is right, but {len(turned)} of {len(members)} members need another sign than the "
+        "rest; state the sign convention, or which way members run, in a reading file"
+    )
+
+
+def _sureness(f: Fitted) -> str:
+    telling = f.taken.telling
+    right = int((telling & ~f.taken.bad).sum())
+    where = {"end": "member ends", "span": "along members", "extreme": "extremes"}.get(f.batch.kind, f.batch.kind + "s")
+    return f"{f.batch.quantity} ({where}): {f.taken.convention.words}; {right} of {int(telling.sum())} telling values fit"
+
+
+def _to_frame(
+    batch: Batch, choice: Choice, frame: Frame
+) -> tuple[np.ndarray, list[str | None], list[float | None]]:
+    """(n,) factor that turns a printed value's sign into the frame's, joints, and distances from the `from` joint."""
+    names = list(frame.joints)
+    c = choice.convention
+    sign = np.full(len(batch.value), float(c.sign))
+    if batch.kind in ("reaction", "displacement"):
+        return sign, [names[j] for j in batch.joint.tolist()], [None] * len(sign)
+    end, place, r = placed(batch, frame, c.rule)
+    if batch.kind == "end":
+        joints = [names[j] for j in frame.member_table.ends[batch.member, end].tolist()]
+        if batch.quantity == "shear":
+            sign = sign * r
+        if c.form == ("action" if batch.quantity == "axial" else "internal"):
+            at_start = -1 if batch.quantity == "axial" else 1
+            sign = sign * np.where(place == 0, at_start, -at_start)
+        return sign, list(joints), [None] * len(sign)
+    if batch.quantity in ("moment", "across"):
+        sign = sign * r
+    at = distance(batch, frame, r).tolist() if batch.kind == "span" else [None] * len(sign)
+    return sign, [None] * len(sign), at
+
+
+def _units_said(fitted: list[Fitted], entries: list[Entry], frame: Frame) -> dict[str, str]:
+    out: dict[str, str] = {}
+    for f in fitted:
+        stated = {str(e.unit.text) for k in f.batch.entry.tolist() if (e := entries[k]).unit}
+        found = f.taken.unit.text if f.taken.unit and np.isnan(f.batch.factor).any() else ""
+        said = [*sorted(stated), *([f"{found} ({'assumed' if f.taken.unit and f.taken.unit.own else 'by fit'})"] if found else [])]
+        key = f.batch.quantity if f.batch.quantity not in out else f"{f.batch.kind} {f.batch.quantity}"
+        out[key] = ", ".join(said) or unit_name(frame.units, _dimension(f.batch.quantity))
+    return out
+
+
+def _dimension(quantity: str) -> Dimension:
+    if quantity in ("axial", "shear", "fx", "fy"):
+        return FORCE
+    return MOMENT if quantity == "moment" else LENGTH
+
+
+def _signs_said(fitted: list[Fitted], meant: Senses) -> dict[str, str]:
+    out: dict[str, str] = {}
+    for f in fitted:
+        key = f.batch.quantity if f.batch.quantity not in out else f"{f.batch.kind} {f.batch.quantity}"
+        out[key] = meant.words(f)
+    return out

@@ -1,0 +1,180 @@
+"""Finding the convention and the unit that a claim is printed in, for each kind and quantity, by what fits the opinions.
+
+A value is bad in a choice when it lies further from the opinion than is allowed. A choice in which no value is bad fits. Where
+no choice fits, every choice gives the same verdict (disagree), and the nearest is taken to show the differences in.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from itertools import product
+
+import numpy as np
+
+from crosscheck.compare.fit_conventions import Batch, Convention, conventions, expected
+from crosscheck.compare.fit_units import UnitChoice, angle_choices, arm_choices, force_choices, length_choices
+from crosscheck.compare.fit_values import Reference
+from crosscheck.compare.tolerance import COARSE, Tolerance, allowed
+from crosscheck.frame.model import Bools, Floats, Units
+
+UNSUPPORTED = 1e-6
+"""Share of the case's scale within which a reaction at a joint without support counts as zero."""
+FORCES = ("axial", "shear", "fx", "fy")
+
+
+@dataclass(frozen=True, slots=True)
+class Choice:
+    """A unit and a convention, and how the batch fits them.
+
+    bad: (n,) beyond what is allowed. telling: (n,) judged at all and large enough to tell a sign or a unit by.
+    distance: mean over telling values of |claim - opinion| / (|claim| + |opinion|), 0 (all right) to 1 (all wrong).
+    """
+
+    unit: UnitChoice | None
+    convention: Convention
+    bad: Bools
+    telling: Bools
+    sizes_bad: Bools
+    distance: float
+
+    @property
+    def fits(self) -> bool:
+        return not bool(self.bad.any())
+
+
+@dataclass(slots=True)
+class Fitted:
+    """A batch with every choice tried (the plainest first) and the one taken."""
+
+    batch: Batch
+    choices: list[Choice]
+    taken: Choice
+
+
+class Fitter:
+    """Tries choices on batches. `references` in the order of each batch's cases."""
+
+    def __init__(self, units: Units, references: list[Reference], tolerance: Tolerance) -> None:
+        self.units, self.references, self.tolerance = units, references, tolerance
+
+    def fit(self, batches: list[Batch]) -> list[Fitted]:
+        """Fits all batches: one unit of force for the whole claim, one length for its moments; the rest each by itself."""
+        tables = [_Trial(self, batch) for batch in batches]
+        by_force = [t for t in tables if t.batch.quantity in (*FORCES, "moment")]
+        open_force = [t for t in by_force if t.open]
+        picked: dict[int, UnitChoice | None] = {}
+        if open_force:
+            picked = _one_system(open_force, force_choices(self.units), arm_choices(self.units))
+        for trial in tables:
+            if trial.open and id(trial) not in picked:
+                lengths = angle_choices() if trial.batch.quantity == "rotation" else length_choices(self.units)
+                picked[id(trial)] = min(lengths, key=lambda u: (*trial.best(u).rank, not u.own))
+        return [trial.fitted(picked.get(id(trial))) for trial in tables]
+
+
+@dataclass(frozen=True, slots=True)
+class _Best:
+    choice: Choice
+    rank: tuple[bool, float]
+
+
+class _Trial:
+    """One batch against every convention, unit by unit, each worked out once."""
+
+    def __init__(self, fitter: Fitter, batch: Batch) -> None:
+        self.batch, self.tolerance = batch, fitter.tolerance
+        self.open = bool(np.isnan(batch.factor).any())
+        self.conventions = conventions(batch)
+        self.expected = [expected(batch, fitter.references, c) for c in self.conventions]
+        self.scale, self.unsupported = _scales(batch, fitter.references)
+        self._known: dict[float, list[Choice]] = {}
+
+    def choices(self, unit: UnitChoice | None) -> list[Choice]:
+        key = unit.factor if unit else 1.0
+        if key not in self._known:
+            factor = np.where(np.isnan(self.batch.factor), key, self.batch.factor)
+            value, half = self.batch.value * factor, self.batch.half * factor
+            self._known[key] = [
+                self._choice(unit, c, e, value, half) for c, e in zip(self.conventions, self.expected, strict=True)
+            ]
+        return self._known[key]
+
+    def best(self, unit: UnitChoice | None) -> _Best:
+        choices = self.choices(unit)
+        ranks = [(not c.fits, 0.0 if c.fits else c.distance) for c in choices]
+        k = min(range(len(choices)), key=lambda k: (ranks[k], k))
+        return _Best(choices[k], ranks[k])
+
+    def fitted(self, unit: UnitChoice | None) -> Fitted:
+        return Fitted(self.batch, self.choices(unit), self.best(unit).choice)
+
+    def _choice(
+        self, unit: UnitChoice | None, convention: Convention, said: Floats, value: Floats, half: Floats
+    ) -> Choice:
+        if self.batch.kind == "extreme":
+            value = np.where(self.batch.extreme == 0, np.abs(value), value)
+        sizes = np.abs(said)
+        said = _nearer(said, value)
+        may = np.where(self.unsupported, np.maximum(half, UNSUPPORTED * self.scale),
+                       allowed(value, said, self.tolerance, self.scale, half))  # fmt: skip
+        known = np.isfinite(said) & ((half <= COARSE * self.scale) | self.unsupported)
+        apart = np.abs(value - said)
+        bad = known & (apart > may)
+        size_apart = np.abs(np.abs(value) - _nearer(sizes, np.abs(value)))
+        telling = known & ((np.abs(said) > may) | (np.abs(value) > may))
+        total = np.abs(value) + np.abs(said)
+        share = np.where(telling & (total > 0), apart / np.where(total > 0, total, 1.0), 0.0)
+        distance = float(share.sum() / max(1, int(telling.sum())))
+        return Choice(unit, convention, bad, telling, known & (size_apart > may), distance)
+
+
+def _nearer(said: Floats, value: Floats) -> Floats:
+    """(n,) of the values on both sides of a jump the one that the claim is nearer to."""
+    if said.shape[1] == 1:
+        return said[:, 0]
+    first, second = said[:, 0], said[:, 1]
+    takes_first = ~(np.abs(second - value) < np.abs(first - value))
+    return np.where(takes_first & np.isfinite(first), first, second)
+
+
+def _scales(batch: Batch, references: list[Reference]) -> tuple[Floats, Bools]:
+    """(n,) the scale of each value, and where a reaction stands at a joint without support."""
+    scale = np.zeros(len(batch.value))
+    unsupported = np.zeros(len(batch.value), dtype=bool)
+    for k, reference in enumerate(references):
+        mine = batch.case == k
+        if batch.kind in ("reaction", "displacement"):
+            joint = batch.joint[mine]
+            scale[mine] = reference.joint_scale(batch.quantity, batch.kind)[joint]
+            if batch.kind == "reaction":
+                held = np.array([j in reference.frame.supports for j in reference.frame.joints])
+                unsupported[mine] = ~held[joint]
+        else:
+            scale[mine] = reference.member_scale(batch.quantity)[batch.member[mine]]
+    if unsupported.any():
+        whole = np.array([r.scales.of(batch.quantity) for r in references])
+        scale = np.where(unsupported, whole[batch.case], scale)
+    return scale, unsupported
+
+
+def _one_system(
+    trials: list[_Trial], forces: list[UnitChoice], arms: list[UnitChoice]
+) -> dict[int, UnitChoice | None]:
+    """The unit of force and of length in moments under which most fits, the frame's own before others."""
+    turning = [t for t in trials if t.batch.quantity == "moment"]
+    pushing = [t for t in trials if t.batch.quantity != "moment"]
+
+    def cost(pair: tuple[UnitChoice, UnitChoice]) -> tuple[int, float, int]:
+        force, arm = pair
+        ranks = [t.best(force).rank for t in pushing] + [t.best(_moment_unit(force, arm)).rank for t in turning]
+        return sum(r[0] for r in ranks), sum(r[1] for r in ranks), (not force.own) + (not arm.own)
+
+    pairs = product(forces, arms if turning else arms[:1])
+    force, arm = min(pairs, key=cost)
+    out: dict[int, UnitChoice | None] = {id(t): force for t in pushing}
+    out |= {id(t): _moment_unit(force, arm) for t in turning}
+    return out
+
+
+def _moment_unit(force: UnitChoice, arm: UnitChoice) -> UnitChoice:
+    return UnitChoice(f"{force.text} {arm.text}", force.factor * arm.factor, force.own and arm.own)

@@ -1,0 +1,188 @@
+"""Signs of a whole claim: which plain sense turns explain those that fit, and how many values fix each.
+
+Four turns explain most of the world's printouts: rotations anticlockwise positive, reactions on the supports instead of the
+frame, y down, x to the left. Each turns several quantities at once, so their values count together; a sign that no turn
+explains needs its own three values. Nothing turned is the README's convention and needs no more than three values in all.
+"""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
+from itertools import product
+
+from crosscheck.compare.fit import Choice, Fitted
+from crosscheck.compare.fit_conventions import Convention
+
+FIXED_BY = 3
+TURNS = ("turn", "support", "down", "left")
+TURN_WORDS = {
+    "turn": "rotations and couples are anticlockwise positive", "support": "reactions act on the supports",
+    "down": "y is positive downward", "left": "x is positive to the left",
+}  # fmt: skip
+_TURNED_BY: dict[tuple[str, str], tuple[str, ...]] = {
+    ("end", "moment"): ("turn",),
+    ("reaction", "fx"): ("support", "left"), ("reaction", "fy"): ("support", "down"),
+    ("reaction", "moment"): ("support", "turn"),
+    ("displacement", "dx"): ("left",), ("displacement", "dy"): ("down",), ("displacement", "rotation"): ("turn",),
+}  # fmt: skip
+GROUPS = {"end": "member forces", "span": "member forces", "extreme": "member forces", "reaction": "reactions",
+          "displacement": "displacements"}  # fmt: skip
+_STATED = {
+    "anticlockwise": ("action", -1), "counterclockwise": ("action", -1), "clockwise": ("action", 1),
+    "sagging": ("internal", 1), "hogging": ("internal", -1),
+}  # fmt: skip
+
+
+@dataclass(slots=True)
+class Senses:
+    """turns: those taken. unfixed: by id of a fitted batch, why its sign is not fixed. base: choices to show instead."""
+
+    turns: frozenset[str] = frozenset()
+    unfixed: dict[int, str] = field(default_factory=dict)
+    reversed_load: bool = False
+    base: dict[int, Choice] = field(default_factory=dict)
+    stated_ids: frozenset[int] = frozenset()
+
+    def shown(self, f: Fitted) -> Choice:
+        return self.base.get(id(f), f.taken)
+
+    def stated(self, f: Fitted) -> bool:
+        return id(f) in self.stated_ids
+
+    def words(self, f: Fitted) -> str:
+        c = self.shown(f).convention
+        if f.batch.kind != "reaction":
+            return c.words
+        on = "support" if "support" in self.turns else "frame"
+        sign = -c.sign if on == "support" else c.sign
+        positive, negative = {
+            "fx": ("right", "left"), "fy": ("up", "down"), "moment": ("clockwise", "anticlockwise"),
+        }[f.batch.quantity]  # fmt: skip
+        return f"on the {on}, {positive if sign > 0 else negative} positive"
+
+
+def narrowed(f: Fitted, signs: Mapping[str, str]) -> Fitted:
+    """Only the conventions that the paste or the user states, where it states any for this quantity."""
+    if _stated(f, signs) is None:
+        return f
+    kept = [c for c in f.choices if _allows(f, c.convention, signs)]
+    if not kept:
+        return f
+    best = min(range(len(kept)), key=lambda k: (not kept[k].fits, 0.0 if kept[k].fits else kept[k].distance, k))
+    return Fitted(f.batch, kept, kept[best])
+
+
+def _stated(f: Fitted, signs: Mapping[str, str]) -> str | None:
+    """The stated convention in words, or None."""
+    kind, quantity = f.batch.kind, f.batch.quantity
+    if kind == "reaction":
+        return signs.get("reactions") or (signs.get(quantity) if quantity != "moment" else None)
+    if kind == "displacement":
+        return signs.get(quantity) or (signs.get("displacements"))
+    return signs.get(quantity)
+
+
+def _allows(f: Fitted, convention: Convention, signs: Mapping[str, str]) -> bool:
+    said = str(_stated(f, signs)).lower()
+    if f.batch.kind == "reaction":
+        wanted = -1 if re.search("support|ground|foundation|revers", said) else 1
+        return convention.sign == wanted
+    if f.batch.quantity == "axial":
+        wanted = -1 if "compress" in said else 1
+        return convention.sign == wanted and convention.form == "internal"
+    if f.batch.quantity == "moment":
+        word = re.sub(r"[\s-]", "", said)
+        for name, (form, sign) in _STATED.items():
+            if word.startswith(name):
+                return convention.sign == sign and (convention.form == form or f.batch.kind != "end" and form == "internal")
+    if re.search(r"\b(down|left|revers|negative|anti)", said):
+        return convention.sign == -1
+    return convention.sign == 1
+
+
+def senses(fitted: list[Fitted], signs: Mapping[str, str]) -> Senses:
+    """Explains the signs taken by as few turns as can be, and counts what fixes each."""
+    stated = frozenset(id(f) for f in fitted if _stated(f, signs) is not None)
+    sure = {id(f): s for f in fitted if (s := _sign(f)) is not None}
+    best = min(product((False, True), repeat=4), key=lambda flags: _cost(fitted, sure, dict(zip(TURNS, flags, strict=True))))
+    turns = frozenset(t for t, on in zip(TURNS, best, strict=True) if on)
+    out = Senses(turns, stated_ids=stated)
+    odd = [f for f in fitted if id(f) in sure and sure[id(f)] != _predicted(f, turns)]
+    for turn in sorted(turns):
+        touched = [f for f in fitted if id(f) in sure and f not in odd and turn in _turned_by(f)]
+        if sum(_against(f) for f in touched) < FIXED_BY and not any(id(f) in stated for f in touched):
+            for f in touched:
+                out.unfixed[id(f)] = f"too few values fix that {TURN_WORDS[turn]}; state it with signs in a reading file"
+    for f in odd:
+        if _against(f) < FIXED_BY and id(f) not in stated:
+            out.unfixed[id(f)] = (
+                f"{f.batch.quantity} fits with its sign reversed, but too few values fix that; state it in a reading file"
+            )
+    return _with_reversed_load(fitted, sure, out)
+
+
+def _turned_by(f: Fitted) -> tuple[str, ...]:
+    if f.batch.kind == "end" and f.batch.quantity == "moment" and f.taken.convention.form != "action":
+        return ()
+    return _TURNED_BY.get((f.batch.kind, f.batch.quantity), ())
+
+
+def _predicted(f: Fitted, turns: frozenset[str]) -> int:
+    return -1 if sum(t in turns for t in _turned_by(f)) % 2 else 1
+
+
+def _cost(fitted: list[Fitted], sure: Mapping[int, int], flags: Mapping[str, bool]) -> tuple[int, int]:
+    turns = frozenset(t for t, on in flags.items() if on)
+    odd = sum(sure[id(f)] != _predicted(f, turns) for f in fitted if id(f) in sure and _turned_by(f))
+    return 2 * odd + len(turns), len(turns)
+
+
+def _sign(f: Fitted) -> int | None:
+    """The sign taken, or None where both signs do as well."""
+    other = _opposite(f)
+    if other is None or (other.fits and f.taken.fits):
+        return None
+    return f.taken.convention.sign
+
+
+def _opposite(f: Fitted) -> Choice | None:
+    c = f.taken.convention
+    return next(
+        (o for o in f.choices if (o.convention.form, o.convention.rule, o.convention.sign) == (c.form, c.rule, -c.sign)), None
+    )
+
+
+def _against(f: Fitted) -> int:
+    """Values that the opposite sign would make bad and the one taken does not."""
+    other = _opposite(f)
+    return 0 if other is None else int((other.bad & other.telling & ~f.taken.bad).sum())
+
+
+def _with_reversed_load(fitted: list[Fitted], sure: Mapping[int, int], out: Senses) -> Senses:
+    """Member forces, reactions and displacements all reversed: no convention turns all of these."""
+    straight = ("axial", "shear", "fx", "fy", "dx", "dy", "across")
+    signs: dict[str, set[int]] = {}
+    turning: set[int] = set()
+    for f in fitted:
+        if id(f) not in sure:
+            continue
+        if f.batch.quantity in straight:
+            signs.setdefault(GROUPS[f.batch.kind], set()).add(sure[id(f)])
+        elif f.batch.kind in ("end", "reaction", "displacement") and f.taken.convention.form != "internal":
+            turning.add(sure[id(f)])
+        else:
+            signs.setdefault(GROUPS[f.batch.kind], set()).add(sure[id(f)])
+    if "member forces" not in signs:
+        moments = {sure[id(f)] for f in fitted if id(f) in sure and GROUPS[f.batch.kind] == "member forces"}
+        signs["member forces"] = moments
+    groups = ("member forces", "reactions", "displacements")
+    all_reversed = all(signs.get(g) == {-1} for g in groups) and len(turning) <= 1
+    if not all_reversed or any(id(f) in out.stated_ids for f in fitted):
+        return out
+    base: dict[int, Choice] = {}
+    for f in fitted:
+        if id(f) in sure and (other := _opposite(f)) is not None and (f.batch.quantity in straight or turning == {-1}):
+            base[id(f)] = other
+    return replace(out, reversed_load=True, base=base, unfixed={}, turns=frozenset())
