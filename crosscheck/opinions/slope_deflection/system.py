@@ -100,13 +100,16 @@ class System:
         # The first axial force of a rigid member is penalty times the elongation that the held displacements ask for.
         forces[rigid_rows] -= penalty * stretch
         last = np.inf
+        # Corrections are judged by the largest displacement so far: the final ones may be nothing but rounding noise.
+        reach = np.abs(shift).max(axis=0, initial=0.0)
         for _ in range(ROUNDS):
             residual = outer - self.deformation.T @ forces - self.spring[:, None] * shift
             step = np.zeros_like(shift)
             step[self.free] = self.correct(residual[self.free])
             shift = shift + step
             forces = forces + self.member_stiffness @ (self.deformation @ step)
-            size = _largest_share(step, shift)
+            reach = np.maximum(reach, np.abs(shift).max(axis=0, initial=0.0))
+            size = _largest_share(step, reach)
             if size <= STILL or (size >= last / 2 and size <= 1e-12):
                 break
             last = size
@@ -147,10 +150,10 @@ class Solution:
         return CaseAnswer(ends, joints, reactions)
 
 
-def _largest_share(step: Floats, shift: Floats) -> float:
-    """Largest correction of any case against that case's largest displacement."""
-    size, moved = np.abs(step).max(axis=0, initial=0.0), np.abs(shift).max(axis=0, initial=0.0)
-    return float(np.max(size / np.where(moved > 0.0, moved, 1.0), initial=0.0))
+def _largest_share(step: Floats, reach: Floats) -> float:
+    """Largest correction (n, cases) of any case as a share of that case's reach (cases,)."""
+    size = np.abs(step).max(axis=0, initial=0.0)
+    return float(np.max(size / np.where(reach > 0.0, reach, 1.0), initial=0.0))
 
 
 def deformations(frame: Frame) -> Sparse:
