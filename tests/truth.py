@@ -351,12 +351,20 @@ class Truth:
 
     @cached_property
     def mechanism(self) -> list[str]:
-        """Joints that can move without resistance (a joint that nothing joins apart)."""
-        joined = {m.joint_from for m in self.members} | {m.joint_to for m in self.members}
+        """Joints that can move, or turn something, without resistance (a joint that nothing joins apart)."""
         loose = np.abs(self.right_null[: 3 * len(self.joints)]).reshape(len(self.joints), 3, -1) > 1e-7
-        if loose.shape[2] == 0:
-            return []
-        return [name for k, name in enumerate(self.joints) if name in joined and loose[k, :2].any()]
+        moves = loose.any(axis=2)
+        # A joint's own rotation moves nothing where every end is hinged at the joint itself, without a zone.
+        joined, gripped = set(), set()
+        for m in self.members:
+            ends = ((m.joint_from, m.turn_from, m.rigid_from), (m.joint_to, m.turn_to, m.rigid_to))
+            joined |= {joint for joint, _, _ in ends}
+            gripped |= {joint for joint, turn, zone in ends if turn != FREE or zone > 0.0}
+        return [
+            name
+            for k, name in enumerate(self.joints)
+            if (name in joined and moves[k, :2].any()) or (name in gripped and moves[k, 2])
+        ]
 
     @cached_property
     def undetermined(self) -> Undetermined:
