@@ -25,6 +25,9 @@ from crosscheck.frame.model import Frame
 from crosscheck.problems import Problem, UnusableInput, nearest
 
 if TYPE_CHECKING:
+    from crosscheck.audit.bound import ForceBound
+    from crosscheck.audit.compatibility import CompatibilityFindings
+    from crosscheck.audit.statics import StaticCheck
     from crosscheck.claims.reading import Reading
 
 OPINIONS = {
@@ -50,13 +53,19 @@ class Opinions:
         return opinions_verdict(list(self.judgements.values()))
 
 
+AUDITED = 1000
+"""Most members for which compatibility is judged; statics is judged always."""
+
+
 @dataclass(frozen=True, slots=True)
 class CaseAudit:
-    """The audit of the claim on one case: findings of crosscheck.audit, as it gives them."""
+    """The audit of the claim on one case. compatibility is None for a frame beyond AUDITED members; bound is None where
+    the claim is the solution, and a sentence where no bound can be given."""
 
     case: str
-    statics: tuple[Any, ...]
-    compatibility: Any = None
+    statics: tuple[StaticCheck, ...]
+    compatibility: CompatibilityFindings | None = None
+    bound: ForceBound | str | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -171,14 +180,21 @@ def _verdict(
 
 def _alone_but_proven(cases: list[CaseClaim], name: str, audit: CaseAudit) -> bool:
     agrees = any(c.case == name and c.verdict == "agree" for c in cases)
-    return agrees and bool(getattr(audit.compatibility, "is_solution", False))
+    return agrees and audit.compatibility is not None and audit.compatibility.solution
 
 
 def _audit(frame: Frame, opinions: Opinions, closed: ClosedClaim, name: str) -> CaseAudit:
-    from crosscheck.audit.statics import statics
+    from crosscheck.audit.bound import hypercircle
+    from crosscheck.audit.compatibility import compatibility
+    from crosscheck.audit.statics import balance
 
     values, half = claimed_arrays(frame, closed, name)
-    return CaseAudit(name, tuple(statics(frame, name, values, half)))
+    done = balance(frame, name, values, half)
+    if len(frame.members) > AUDITED or not np.isfinite(values.ends).any():
+        return CaseAudit(name, done.checks)
+    findings = compatibility(frame, name, values, half, opinions.study.undetermined, done)
+    bound = None if findings.solution or not findings.complete else hypercircle(frame, findings, values)
+    return CaseAudit(name, done.checks, findings, bound)
 
 
 def claimed_arrays(frame: Frame, closed: ClosedClaim, name: str) -> tuple[CaseAnswer, CaseAnswer]:

@@ -6,6 +6,7 @@ Exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided (README, Command
 from __future__ import annotations
 
 import argparse
+import os
 import sys
 from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, Any
@@ -34,6 +35,8 @@ def main(argv: Sequence[str] | None = None) -> int:
         _parser().print_help()
         return UNUSABLE
     _plain_text_out()
+    # One thread: frames are small, two cores are busy with frames of their own, and threads only wait for each other.
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
     from crosscheck.problems import UnusableInput
 
     try:
@@ -66,6 +69,8 @@ def _parser() -> argparse.ArgumentParser:
     commands = parser.add_subparsers(dest="command", metavar="COMMAND")
     _add_opinions(commands)
     _add_verify(commands)
+    _add_record(commands)
+    _add_regress(commands)
     _add_draft(commands)
     return parser
 
@@ -100,6 +105,25 @@ def _add_verify(commands: Any) -> None:
                          help='a value in words, "B2 max 412 kNm"; may be repeated')  # fmt: skip
     command.add_argument("--show-reading", action="store_true", help="print the table as understood; compare nothing")
     command.set_defaults(run=run_verify)
+
+
+def _add_record(commands: Any) -> None:
+    command = commands.add_parser("record", help="put today's agreed values on record")
+    command.add_argument("frame", metavar="FRAME", nargs="+", help="frame file, or a folder of them")
+    command.add_argument("--reason", required=True, metavar="TEXT", help="why these values go on record")
+    command.add_argument("--json", metavar="PATH", help="say what was recorded as JSON (- for stdout)")
+    command.set_defaults(run=run_record)
+
+
+def _add_regress(commands: Any) -> None:
+    command = commands.add_parser("regress", help="standard frames against their values on record and their claims")
+    command.add_argument("path", metavar="PATH", nargs="*", help="folders or frame files (default: this folder)")
+    command.add_argument("--only", metavar="NAME", help="frames with this in their name (* and ? stand for anything)")
+    command.add_argument("--changed-since", metavar="REVISION", help="frames changed since a git revision")
+    command.add_argument("--against", metavar="DIR", help="another set's values on record instead: what moved between")
+    command.add_argument("--junit", metavar="PATH", help="also write a JUnit XML file")
+    command.add_argument("--json", metavar="PATH", help="write the outcome as JSON (- for standard output alone)")
+    command.set_defaults(run=run_regress)
 
 
 def _add_draft(commands: Any) -> None:
@@ -175,6 +199,93 @@ def run_verify(args: argparse.Namespace) -> int:
 
     _give(args, document, report)
     return EXIT[result.verdict]
+
+
+def run_record(args: argparse.Namespace) -> int:
+    """`crosscheck record FRAME --reason TEXT`: 0 recorded, 1 refused, 2 unusable."""
+    from pathlib import Path
+
+    from crosscheck import check
+    from crosscheck.problems import Problem, UnusableInput
+    from crosscheck.suite.record import Refused, put_on_record
+    from crosscheck.suite.regress import chosen
+
+    frames = chosen([Path(p) for p in args.frame])
+    if not frames:
+        raise UnusableInput([Problem(", ".join(args.frame), None, "", "holds no frame file", "name a frame file")])
+    rows, status = [], 0
+    for frame in frames:
+        try:
+            target = put_on_record(frame, check.ask(check.read(frame)), args.reason)
+            rows.append({"file": frame.as_posix(), "recorded": target.as_posix(), "why": None})
+        except Refused as refusal:
+            rows.append({"file": frame.as_posix(), "recorded": None, "why": str(refusal)})
+            status = max(status, 1)
+        except UnusableInput as error:
+            rows.append({"file": frame.as_posix(), "recorded": None, "why": "; ".join(map(str, error.problems))})
+            status = UNUSABLE
+    if args.json:
+        _write_json(args.json, {"format": "crosscheck/1", "frames": rows})
+    for row in rows:
+        if row["recorded"] is None:
+            print(f"crosscheck: {row['why']}", file=sys.stderr)
+        elif args.json != "-":
+            print(f"on record: {row['recorded']}")
+    return status
+
+
+def run_regress(args: argparse.Namespace) -> int:
+    """`crosscheck regress [PATH ...]`: 0 all held, 1 anything else, 2 no frame found or none readable."""
+    from pathlib import Path
+
+    from crosscheck.suite import regress
+
+    roots = [Path(p) for p in args.path] or [Path()]
+    frames = regress.chosen(roots, args.only, args.changed_since)
+    other = _folder(args.against) if args.against else None
+    outcome = _with_progress(frames, roots) if other is None else regress.against(frames, roots, other)
+    if args.junit:
+        from crosscheck.files import replace_text
+        from crosscheck.report.suite import junit
+
+        replace_text(args.junit, junit(outcome))
+
+    def document() -> dict[str, Any]:
+        from crosscheck.report.suite import suite_document
+
+        return suite_document(outcome)
+
+    def report() -> RenderableType:
+        from crosscheck.report.suite import suite_report
+
+        return suite_report(outcome)
+
+    _give(args, document, report)
+    return outcome.exit_status
+
+
+def _folder(path: str) -> Any:
+    from pathlib import Path
+
+    from crosscheck.problems import Problem, UnusableInput
+
+    if not Path(path).is_dir():
+        raise UnusableInput([Problem(path, None, "--against", "is not a folder", "name the other set's folder")])
+    return Path(path)
+
+
+def _with_progress(frames: Sequence[Any], roots: Sequence[Any]) -> Any:
+    """Run the set, with a progress bar where standard error is a terminal."""
+    from crosscheck.suite import regress
+
+    if not sys.stderr.isatty() or len(frames) < 4:
+        return regress.run(frames, roots)
+    from rich.console import Console
+    from rich.progress import Progress
+
+    with Progress(console=Console(stderr=True), transient=True) as bar:
+        task = bar.add_task("frames", total=len(frames))
+        return regress.run(frames, roots, lambda outcome: bar.advance(task))
 
 
 def run_draft(args: argparse.Namespace) -> int:

@@ -219,3 +219,16 @@ def opinions_verdict(judgements: list[CaseJudgement]) -> Verdict:
     return worst([j.verdict for j in judgements])
 
 
+
+
+def closeness(answers: Mapping[str, Answer], judged: CaseJudgement) -> float:
+    """Largest difference between any two opinions in end actions, displacements and reactions of a case, as a share of
+    the scale of its kind."""
+    cases = [answers[o].cases[judged.case] for o in judged.spoke]
+    largest = 0.0
+    for quantities, of in ((END_QUANTITIES, "ends"), (JOINT_QUANTITIES, "joints"), (REACTION_QUANTITIES, "reactions")):
+        scale = np.array([judged.scales.of(q) for q in quantities])
+        for one, other in combinations([getattr(c, of) for c in cases], 2):
+            apart = np.abs(one - other) / np.where(scale > 0, scale, 1.0)
+            largest = max(largest, float(apart[np.isfinite(apart)].max(initial=0.0)))
+    return largest

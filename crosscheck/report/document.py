@@ -161,10 +161,11 @@ def _compatibility_part(audit: CaseAudit) -> Iterable[dict[str, Any]]:
         return []
     return [
         {
-            "case": audit.case, "where": row.where, "member": row.member, "rotation": plain(row.rotation),
-            "expected": plain(row.expected), "ok": bool(row.ok),
+            "case": audit.case, "check": row.kind, "where": row.where, "member": row.member or None,
+            "rotation": plain(row.rotation), "expected": plain(row.expected), "allowed": plain(row.allowed),
+            "ok": bool(row.ok),
         }
-        for row in audit.compatibility.rows
+        for row in audit.compatibility.checks
     ]  # fmt: skip
 
 

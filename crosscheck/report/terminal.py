@@ -39,11 +39,11 @@ def console(file: IO[str] | None = None) -> Console:
 # --- small parts
 
 
-def _heading(text: str) -> Text:
+def heading(text: str) -> Text:
     return Text(f"\n{text}", style="bold")
 
 
-def _rows(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> RenderableType:
+def table(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> RenderableType:
     """A plain table; columns as (head, "left" or "right")."""
     table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="underline", show_edge=False)
     for head, side in columns:
@@ -70,8 +70,8 @@ def _verdict_line(verdict: Verdict, sentence: str) -> Text:
     return Text.assemble((f" {verdict.upper()} ", VERDICT_STYLE[verdict]), "  ", sentence)
 
 
-def _cautions() -> RenderableType:
-    return Group(_heading("Cautions"), _notes(words.CAUTIONS))
+def cautions() -> RenderableType:
+    return Group(heading("Cautions"), _notes(words.CAUTIONS))
 
 
 def _warnings(frame: Frame) -> list[RenderableType]:
@@ -85,15 +85,15 @@ def opinions_report(result: Opinions, working: Sequence[tuple[str, Sequence[Work
     """What `crosscheck opinions` prints."""
     parts: list[RenderableType] = [_verdict_line(result.verdict, _opinions_sentence(result)), *_warnings(result.frame)]
     parts += [Text(line) for line in undetermined_lines(result)]
-    parts += [_heading("How it was compared"), _facts(_opinions_facts(result))]
+    parts += [heading("How it was compared"), _facts(_opinions_facts(result))]
     for judged in result.judgements.values():
         parts += _opinion_differences(result.frame, judged)
     for name in result.names:
         parts += _results(result, name)
-    for heading, tables in working:
-        parts.append(_heading(heading))
+    for title, tables in working:
+        parts.append(heading(title))
         parts += [_work_table(t) for t in tables]
-    parts.append(_cautions())
+    parts.append(cautions())
     return Group(*parts)
 
 
@@ -179,11 +179,10 @@ def _opinion_differences(frame: Frame, judged: CaseJudgement) -> list[Renderable
     columns = [("place", "left"), ("quantity", "left"), *[(n.replace("-", "-\n"), "right") for n in names],
                ("differ by", "right"), ("allowed", "right")]  # fmt: skip
     title = f"Differences in {judged.case}: {len(judged.differences):,} of {judged.compared:,} values, worst first"
-    more = _more(len(judged.differences), MOST_DIFFERENCES)
-    return [_heading(title), _rows(columns, rows), *more]
+    return [heading(title), table(columns, rows), *more(len(judged.differences), MOST_DIFFERENCES)]
 
 
-def _more(count: int, shown: int) -> list[RenderableType]:
+def more(count: int, shown: int) -> list[RenderableType]:
     return [_notes([f"... and {count - shown:,} more; --json gives all of them"])] if count > shown else []
 
 
@@ -198,10 +197,10 @@ def _results(result: Opinions, name: str) -> list[RenderableType]:
     answer = given[0]
     agreed = result.judgements[name].verdict == "agree"
     whose = "as agreed" if agreed else f"by {answer.opinion} alone" if len(given) == 1 else f"by {answer.opinion}"
-    parts: list[RenderableType] = [_heading(f"{name}: results {whose}")]
-    parts += [_end_table(result.frame, answer, name), *_more(2 * len(result.frame.members), MOST_ROWS)]
-    parts += [Text(""), _along_table(result.frame, answer, name), *_more(len(result.frame.members), MOST_ROWS)]
-    parts += [Text(""), _joint_table(result.frame, answer, name), *_more(len(result.frame.joints), MOST_ROWS)]
+    parts: list[RenderableType] = [heading(f"{name}: results {whose}")]
+    parts += [_end_table(result.frame, answer, name), *more(2 * len(result.frame.members), MOST_ROWS)]
+    parts += [Text(""), _along_table(result.frame, answer, name), *more(len(result.frame.members), MOST_ROWS)]
+    parts += [Text(""), _joint_table(result.frame, answer, name), *more(len(result.frame.joints), MOST_ROWS)]
     parts += [Text(""), _reaction_table(result.frame, answer, name)]
     return parts
 
@@ -225,7 +224,7 @@ def _end_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
             numbers = [words.number(float(ends[m, end, k]), scale[k]) for k in range(3)]
             rows.append((member.name, joint, *numbers, words.end_face(frame, member.name, joint, moment, scale[2])))
     columns = [("member", "left"), ("at", "left"), *_heads(frame, ("axial", "shear", "moment")), ("tension", "left")]
-    return _rows(columns, rows)
+    return table(columns, rows)
 
 
 def _along_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
@@ -246,7 +245,7 @@ def _along_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
     columns = [("member", "left"), ("greatest moment", "right"), ("at x", "right"), ("tension", "left"),
                ("least", "right"), ("at x", "right"), ("tension", "left"),
                ("across", "right"), ("at x", "right")]  # fmt: skip
-    return _rows(columns, rows)
+    return table(columns, rows)
 
 
 def _at(value: float, x: float, scale: float) -> tuple[str, str]:
@@ -260,7 +259,7 @@ def _joint_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
         (joint, *[words.number(float(moves[k, c]), scale[c]) for c in range(3)])
         for k, joint in enumerate(list(frame.joints)[:MOST_ROWS])
     ]
-    return _rows([("joint", "left"), *_heads(frame, ("dx", "dy", "rotation"))], rows)
+    return table([("joint", "left"), *_heads(frame, ("dx", "dy", "rotation"))], rows)
 
 
 def _reaction_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
@@ -270,15 +269,23 @@ def _reaction_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
     for joint in list(frame.supports)[:MOST_ROWS]:
         r = pulls[frame.joint_index[joint]]
         rows.append((joint, *[words.number(float(r[c]), force) for c in (0, 1)], words.number(float(r[2]), moment)))
-    return _rows([("support", "left"), *_heads(frame, ("fx", "fy", "moment"))], rows)
+    return table([("support", "left"), *_heads(frame, ("fx", "fy", "moment"))], rows)
 
 
-def _work_table(table: WorkTable) -> RenderableType:
-    rows = [tuple(words.number(c) if isinstance(c, float) else "" if c is None else str(c) for c in row)
-            for row in table.rows]  # fmt: skip
-    numeric = [any(isinstance(row[k], float) for row in table.rows) for k in range(len(table.columns))]
-    columns = [(head, "right" if right else "left") for head, right in zip(table.columns, numeric, strict=True)]
-    return Group(_heading(table.heading), _rows(columns, rows), _notes(table.remarks))
+def _work_table(work: WorkTable) -> RenderableType:
+    scale = [max((abs(r[k]) for r in work.rows if isinstance(r[k], float)), default=0.0)  # type: ignore[arg-type]
+             for k in range(len(work.columns))]  # fmt: skip
+    rows = [tuple(_work_cell(c, scale[k]) for k, c in enumerate(row)) for row in work.rows]
+    numeric = [any(isinstance(row[k], float) for row in work.rows) for k in range(len(work.columns))]
+    columns = [(head, "right" if right else "left") for head, right in zip(work.columns, numeric, strict=True)]
+    return Group(heading(work.heading), table(columns, rows), _notes(work.remarks))
+
+
+def _work_cell(cell: str | float | None, scale: float) -> str:
+    """Numbers of a column may differ in kind, so each keeps its own digits; only rounding noise is dropped."""
+    if isinstance(cell, float):
+        return "0" if abs(cell) <= words.NOISE * scale else words.number(cell)
+    return "" if cell is None else str(cell)
 
 
 # --- verify
@@ -292,7 +299,7 @@ def verify_report(result: Verification) -> RenderableType:
     parts += _warnings(opinions.frame)
     parts += [Text(line) for line in undetermined_lines(opinions)]
     parts += _suspect_lines(result)
-    parts += [_heading("How it was compared"), _facts(_claim_facts(result))]
+    parts += [heading("How it was compared"), _facts(_claim_facts(result))]
     for judged in opinions.judgements.values():
         if judged.case in result.closed.cases:
             parts += _opinion_differences(opinions.frame, judged)
@@ -301,7 +308,7 @@ def verify_report(result: Verification) -> RenderableType:
     parts += _not_compared(result)
     for audit in result.audits:
         parts += _audit_lines(opinions.frame, audit)
-    parts.append(_cautions())
+    parts.append(cautions())
     return Group(*parts)
 
 
@@ -339,7 +346,7 @@ def _suspect_lines(result: Verification) -> list[RenderableType]:
         for k, s in enumerate(result.suspects)
     ]
     columns = [("", "right"), ("kind", "left"), ("would explain it", "left"), ("share", "right"), ("", "left")]
-    return [_heading("Suspects (hypotheses, best first)"), _rows(columns, rows)]
+    return [heading("Suspects (hypotheses, best first)"), table(columns, rows)]
 
 
 def _claim_facts(result: Verification) -> list[tuple[str, str]]:
@@ -387,7 +394,7 @@ def _claim_differences(
     columns = [("place", "left"), ("quantity", "left"), ("claim", "right"), ("opinions", "right"),
                ("differ by", "right"), ("allowed", "right"), ("", "left")]  # fmt: skip
     title = f"Differences in {case}: {len(differences):,} of {compared:,} values, unsafe side first, then worst first"
-    return [_heading(title), _rows(columns, rows), *_more(len(differences), MOST_DIFFERENCES)]
+    return [heading(title), table(columns, rows), *more(len(differences), MOST_DIFFERENCES)]
 
 
 def _with_face(frame: Frame, d: Difference, value: float | None, beside: float | None) -> str:
@@ -410,28 +417,68 @@ def _not_compared(result: Verification) -> list[RenderableType]:
     others = [n for n in result.opinions.frame.names if n not in closed.cases]
     if others:
         lines.append(f"cases the claim does not speak of: {_some(others)}")
-    return [_heading("Not compared"), _notes(lines)] if lines else []
+    return [heading("Not compared"), _notes(lines)] if lines else []
 
 
 def _audit_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]:
+    return [*_statics_lines(audit), *_compatibility_lines(frame, audit)]
+
+
+def _statics_lines(audit: CaseAudit) -> list[RenderableType]:
     judged = [s for s in audit.statics if s.ok is not None]
     failing = [s for s in judged if not s.ok]
     left = len(audit.statics) - len(judged)
     unjudged = f"; {left:,} could not be judged from what the claim gives" if left else ""
+    title = f"Statics of the claim, {audit.case}"
+    count = words.counted(len(judged), "balance")
     if not judged:
-        return [_heading(f"Statics of the claim, {audit.case}"), _notes([f"nothing could be judged{unjudged}"])]
+        return [heading(title), _notes([f"nothing could be judged{unjudged}"])]
     if not failing:
-        text = f"all {words.counted(len(judged), 'balance')} hold to the printed rounding{unjudged}"
-        return [_heading(f"Statics of the claim, {audit.case}"), _notes([text])]
+        return [heading(title), _notes([f"all {count} hold to the printed rounding{unjudged}"])]
     failing.sort(key=lambda s: -abs(s.residual) / (s.allowed or 1.0))
     rows = [
         (s.check, s.where or "whole frame", s.component, words.short(s.residual), words.short(s.allowed))
         for s in failing[:MOST_DIFFERENCES]
     ]
     columns = [("balance", "left"), ("where", "left"), ("of", "left"), ("left over", "right"), ("allowed", "right")]
-    count = words.counted(len(judged), "balance")
-    title = f"Statics of the claim, {audit.case}: {len(failing):,} of {count} fail{unjudged}"
-    return [_heading(title), _rows(columns, rows)]
+    parts = [heading(title), _notes([f"{len(failing):,} of {count} fail{unjudged}"]), table(columns, rows)]
+    return [*parts, *more(len(failing), MOST_DIFFERENCES)]
+
+
+def _compatibility_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]:
+    found = audit.compatibility
+    if found is None:
+        return []
+    lines = [found.says, *(f"not judged: {line}" for line in found.not_judged)]
+    failing = [c for c in found.checks if not c.ok]
+    parts: list[RenderableType] = [heading(f"Compatibility of the claim, {audit.case}"), _notes(lines)]
+    if failing:
+        failing.sort(key=lambda c: -abs(c.rotation - c.expected) / (c.allowed or 1.0))
+        rows = [
+            (c.kind, c.member or c.where, (c.where if c.member else c.direction), words.short(c.rotation),
+             words.short(c.expected), words.short(c.allowed))
+            for c in failing[:MOST_DIFFERENCES]
+        ]  # fmt: skip
+        columns = [("what", "left"), ("of", "left"), ("at", "left"), ("by the claim", "right"),
+                   ("what fits the rest", "right"), ("allowed", "right")]  # fmt: skip
+        parts += [table(columns, rows), *more(len(failing), MOST_DIFFERENCES)]
+    if audit.bound is not None:
+        parts.append(_notes([_bound_words(frame, audit.bound)]))
+    return parts
+
+
+def _bound_words(frame: Frame, bound: Any) -> str:
+    if isinstance(bound, str):
+        return bound
+    m, end = np.unravel_index(int(np.nanargmax(bound.moment)), bound.moment.shape)
+    member = list(frame.members.values())[m]
+    joint = member.joint_from if end == 0 else member.joint_to
+    most = f"{words.short(float(bound.moment[m, end]))} {words.unit_of(frame, 'moment')}"
+    share = f"{100 * bound.energy / bound.size:.2g}% of the claim's own size" if bound.size else "all of it"
+    return (
+        "Rigorous bound (hypercircle, Prager and Synge 1947): in the energy norm the claimed forces lie within "
+        f"{share} of this model's true ones; no end moment is off by more than {most} ({member.name} at {joint})."
+    )
 
 
 # --- problems

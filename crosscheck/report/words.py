@@ -60,7 +60,7 @@ def place(p: Place) -> str:
 
 
 def tension_face(frame: Frame, member: str, span_moment: float | None, scale: float = 0.0) -> str:
-    """Which face of the member a moment stretches: "bottom", "top", "left", "right"; none for rounding noise of `scale`.
+    """Which face of the member a moment stretches: "bottom", "top", "left", "right"; none for noise of `scale`.
 
     span_moment: sagging positive, that is tension on the local -y face.
     """

@@ -1,0 +1,1 @@
+"""A firm's standard frames: values on record, run on every change."""

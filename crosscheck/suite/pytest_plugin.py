@@ -1,0 +1,101 @@
+"""pytest collects frame files: `pytest cases/` runs each frame, its record and its claims as tests.
+
+Ids are the frame's name, "record" or "opinions", and each claim's file name, so that -k, -x, --lf, JUnit output and
+pytest-xdist work on them. A failure shows crosscheck's own words and not an assertion of floats. Folders that hold
+crosscheck frames are recognised by the frame file itself: a TOML file with joints or a grid, and members.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import pytest
+
+if TYPE_CHECKING:
+    from crosscheck.suite.regress import FrameOutcome
+
+
+def pytest_collect_file(parent: pytest.Collector, file_path: Path) -> pytest.Collector | None:
+    """A frame file is a test file."""
+    from crosscheck.suite.beside import is_frame
+
+    if file_path.suffix == ".toml" and is_frame(file_path) and _looks_like_a_frame(file_path):
+        file: FrameFile = FrameFile.from_parent(parent, path=file_path)
+        return file
+    return None
+
+
+def _looks_like_a_frame(path: Path) -> bool:
+    """Told from other TOML files (pyproject.toml, say) by the heads of its tables, without parsing it."""
+    try:
+        lines = path.read_text(encoding="utf-8-sig", errors="replace").splitlines()
+    except OSError:
+        return False
+    heads = {line.split("]")[0].strip(" [").split(".")[0] for line in lines if line.lstrip().startswith("[")}
+    return "grid" in heads or {"joints", "members"} <= heads
+
+
+class FrameFile(pytest.File):
+    """One frame file; checked once, however many of its items run."""
+
+    _outcome: FrameOutcome | None = None
+
+    def collect(self) -> Iterator[pytest.Item]:
+        from crosscheck.suite.beside import claims_beside
+
+        yield FrameItem.from_parent(self, name="record")
+        for claim in claims_beside(self.path):
+            yield FrameItem.from_parent(self, name=claim.name)
+
+    def outcome(self) -> FrameOutcome:
+        if self._outcome is None:
+            from crosscheck.suite.regress import check_frame
+
+            self._outcome = check_frame(self.path.as_posix())
+        return self._outcome
+
+
+class FrameItem(pytest.Item):
+    """The frame with its values on record, or one of its claims."""
+
+    def runtest(self) -> None:
+        assert isinstance(self.parent, FrameFile)
+        outcome = self.parent.outcome()
+        if self.name == "record":
+            if outcome.state != "held" and not self._claim_failed_alone(outcome):
+                raise NotHeld(_told(outcome))
+            return
+        claim = next((c for c in outcome.claims if c.file == self.name), None)
+        if claim is None or not claim.held:
+            says = claim.says if claim is not None else outcome.says
+            raise NotHeld(f"{self.name}: {says}\n{_told(outcome)}")
+
+    @staticmethod
+    def _claim_failed_alone(outcome: FrameOutcome) -> bool:
+        """A claim that fails is that claim's failure; the record itself was then not looked at and says nothing."""
+        return any(not c.held for c in outcome.claims) and outcome.state in ("disagree", "undecided")
+
+    def repr_failure(self, excinfo: pytest.ExceptionInfo[BaseException], style: Any = None) -> Any:
+        if isinstance(excinfo.value, NotHeld):
+            return str(excinfo.value)
+        return super().repr_failure(excinfo, style)
+
+    def reportinfo(self) -> tuple[Path, int | None, str]:
+        return self.path, 0, f"{self.path.name}: {self.name}"
+
+
+class NotHeld(Exception):
+    """What crosscheck says of a frame that did not hold."""
+
+
+def _told(outcome: FrameOutcome) -> str:
+    import io
+
+    from crosscheck.report.suite import frame_report
+    from crosscheck.report.terminal import console
+
+    out = io.StringIO()
+    console(out).print(frame_report(outcome))
+    return out.getvalue().rstrip()
