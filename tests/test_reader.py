@@ -255,7 +255,8 @@ def test_rounding_does_not_settle_a_free_direction() -> None:
         '[loads.L]\napply = [{ joint = "C", settlement = { left = "10 mm" } }]\n')  # fmt: skip
     (load,) = read_frame_text(text).cases["L"].loads
     assert load == Settlement(0, "C", 0.0, 0.01)
-    slanted = text.replace("angle = 90", "angle = 30").replace('left = "10 mm"', 'left = 5e-3, up = 8.660254037844386e-3')
+    text = text.replace("angle = 90", "angle = 30")
+    slanted = text.replace('left = "10 mm"', "left = 5e-3, up = 8.660254037844386e-3")
     (load,) = read_frame_text(slanted).cases["L"].loads
     assert isinstance(load, Settlement) and load.x == 0.0 and load.y == pytest.approx(0.01, rel=1e-12)
 

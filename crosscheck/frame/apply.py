@@ -240,7 +240,7 @@ class _Entry:
             return default
         path = (*self.path, key)
         if isinstance(value, str) and value.rstrip().endswith("%"):
-            return Distance(self.check.number(value.rstrip()[:-1], A_NUMBER, path) / 100, 0.0)
+            return Distance(self.check.percentage(value, path), 0.0)
         return Distance(0.0, self.check.number(value, A_LENGTH, path))
 
     def within(self, key: str, distance: Distance, member: str) -> float:

@@ -7,7 +7,7 @@ check silently: one fault makes one message. `None` stands for a key that is abs
 from __future__ import annotations
 
 import math
-from collections.abc import Collection, Iterable, Mapping
+from collections.abc import Collection, Mapping
 from dataclasses import dataclass
 from typing import TypeVar
 
@@ -37,6 +37,9 @@ UNUSABLE = math.nan
 
 LARGEST = 1e50
 """Beyond this (and below its inverse, but for zero) a number is no dimension or load in any unit."""
+
+FEW = 8
+"""Valid names that a message lists."""
 
 MOST_SUGGESTIONS = 20
 """Names for which the nearest valid one is looked up in one file: each costs a walk over all the valid names."""
@@ -85,12 +88,13 @@ A_TURN_SPRING = Kind(
 AN_EXPANSION = Kind("an expansion per degree", (Dimension(temperature=-1),), "12e-6 /K")
 A_TEMPERATURE = Kind("a temperature", (Dimension(temperature=1),), "20 K")
 A_DENSITY = Kind(
-    "a mass or a weight per volume, always with its unit",
+    "a mass or weight per volume with its unit",
     (Dimension(mass=1, length=-3), Dimension(force=1, length=-3)), "7850 kg/m^3", bare="",
 )  # fmt: skip
 A_ROTATION = Kind("a rotation", (ANGLE,), "2 mrad", bare="radians")
 DEGREES = Kind("an angle in degrees", (ANGLE,), "30 deg", bare="degrees", degrees=True)
 A_NUMBER = Kind("a plain number", (PLAIN,), "1.35", bare="plain")
+A_PERCENTAGE = Kind("a percentage", (PLAIN,), "40%", bare="per cent")
 
 
 class Checker:
@@ -116,10 +120,13 @@ class Checker:
         found = [Problem(self.file, self.lines.nearest(path), dotted(path), *words) for path, *words in self._faults]
         return sorted(dict.fromkeys(found), key=lambda problem: problem.line or 0)
 
-    def near(self, name: str, valid: Iterable[str]) -> str:
+    def near(self, name: str, valid: Collection[str]) -> str:
         """The nearest valid name as a remedy; only for the first few of a file and for names of a usual length."""
         self._suggestions += 1
-        return nearest(name, valid) if self._suggestions <= MOST_SUGGESTIONS and len(name) <= 60 else ""
+        if self._suggestions > MOST_SUGGESTIONS or len(name) > 60:
+            return ""
+        same = [one for one in valid if one.casefold() == name.casefold()]
+        return nearest(same[0] if same else name, valid)
 
     # Numbers -----------------------------------------------------------------------------------------------------
 
@@ -171,6 +178,11 @@ class Checker:
             return UNUSABLE
         return found
 
+    def percentage(self, text: str, path: Path) -> float:
+        """"40%", or "40", as 0.4."""
+        bare = text.rstrip().removesuffix("%")
+        return self.number(bare, A_PERCENTAGE, path) / 100
+
     # Words, tables and keys --------------------------------------------------------------------------------------
 
     def word(self, value: object, words: Collection[str], path: Path) -> str:
@@ -192,7 +204,8 @@ class Checker:
                 return ""
             if value in valid:
                 return value
-            self.note(path, f"there is no {what} {shown(value)}", self.near(value, valid))
+            few = f"there are {', '.join(map(shown, valid))}" if 0 < len(valid) <= FEW else ""
+            self.note(path, f"there is no {what} {shown(value)}", self.near(value, valid) or few)
         else:
             self.note(path, f"{shown(value)} is not the name of a {what}", f"give the name of a {what} in quotes")
         return ""
@@ -201,7 +214,7 @@ class Checker:
         """`value` as a table, or None with a fault noted."""
         if isinstance(value, dict):
             return value
-        self.note(path, f"{shown(value)} is not a table", f"such as {such_as}")
+        self.note(path, f"{shown(value)} is not a table", f"write {such_as}, say")
         return None
 
     def only(self, table: Table, keys: Collection[str], path: Path, what: str, place: str = "") -> None:

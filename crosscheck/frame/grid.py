@@ -38,7 +38,7 @@ import re
 import string
 from collections import defaultdict
 from collections.abc import Collection, Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from crosscheck.frame.fields import A_LENGTH, UNUSABLE, Checker, Table, shown
 from crosscheck.frame.locate import Path
@@ -190,9 +190,7 @@ class _Expansion:
         pattern = read_support(self.check, self.table["feet"], (*PATH, "feet"), "")
         for names in self.name:
             if names[0] in self.grid.joints:
-                self.grid.supports[names[0]] = Support(
-                    names[0], pattern.x, pattern.y, pattern.rotation, pattern.angle
-                )  # fmt: skip
+                self.grid.supports[names[0]] = replace(pattern, joint=names[0])
 
     def _groups(self) -> None:
         """Groups by gridline, bay, storey and level, of what is left after `omit`."""

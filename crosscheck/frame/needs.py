@@ -132,6 +132,9 @@ def with_analysis(
     order = frame.analysis.order if order is None else order
     if order_fault(order):
         faults.append((("analysis", "order"), order_fault(order), "use order = 1"))
+    if tolerance is not None and not 0 < tolerance < 1:
+        says = f"a tolerance of {100 * tolerance:g}% is not between 0 and 100 per cent"
+        faults.append((("analysis", "tolerance"), says, "give 1, for 1%, say"))
     if faults:
         raise UnusableInput(_problems(frame, faults))
     analysis = Analysis(

@@ -21,6 +21,7 @@ from crosscheck.frame.fields import (
     A_DENSITY,
     A_LENGTH,
     A_NUMBER,
+    A_PERCENTAGE,
     A_STRESS,
     AN_AREA,
     AN_EXPANSION,
@@ -381,12 +382,15 @@ class _FrameReader:
         """Joints apart, and rigid zones that leave something between them."""
         length = _length(member, joints)
         zones = member.rigid_from + member.rigid_to
-        path: Path = ("members", member.name)
+        stated = self.data.get("members")
+        own = isinstance(stated, dict) and member.name in stated
+        path: Path = ("members", member.name) if own else ("grid",)
+        what = f"member {shown(member.name)}"
         if length == 0:
-            says = f"joins {shown(member.joint_from)} and {shown(member.joint_to)}, which are at one place"
+            says = f"{what} joins {shown(member.joint_from)} and {shown(member.joint_to)}, which are at one place"
             self.check.note(path, says, "a member needs a length: move a joint, or leave the member out")
         elif zones and zones >= length:
-            says = f"rigid zones of {zones:.6g} together leave nothing of its length of {length:.6g}"
+            says = f"rigid zones of {zones:.6g} together leave nothing of {what}, {length:.6g} long"
             self.check.note(path, says, "give rigid zones that are shorter than the member")
 
     def _supports(self, grid: Grid, joints: Mapping[str, Joint]) -> dict[str, Support]:
@@ -481,11 +485,13 @@ class _FrameReader:
         """A percentage as a fraction: "1%", "1 %" and the bare number 1 all mean one per cent."""
         value = table.get("tolerance", 1)
         path = (*path, "tolerance")
-        text = value.rstrip() if isinstance(value, str) else ""
-        percent = self.check.number(text[:-1] if text.endswith("%") else value, A_NUMBER, path)
-        if percent <= 0 or percent >= 100:
+        if isinstance(value, str):
+            share = self.check.percentage(value, path)
+        else:
+            share = self.check.number(value, A_PERCENTAGE, path) / 100
+        if share <= 0 or share >= 1:
             self.check.note(path, f"{shown(value)} is not between 0 and 100 per cent", 'give tolerance = "1%", say')
-        return percent / 100
+        return share
 
 
 def _length(member: Member, joints: Mapping[str, Joint]) -> float:
