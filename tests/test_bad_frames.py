@@ -441,6 +441,7 @@ def test_bad_options_of_a_draft_are_named() -> None:
         (lambda: draft_grid(["6"], ["x"]), "storeys[0]"),
         (lambda: draft_grid(["6"], ["3"], feet="glued"), "feet"),
         (lambda: draft_grid([], ["3"]), "bays"),
+        (lambda: draft_grid(["6"], ["3"], feet="pinned", hinged_beams=True), "feet"),
     ):
         with pytest.raises(UnusableInput) as caught:
             make()

@@ -162,6 +162,9 @@ def draft_grid(
     figures = _figures(units)
     if feet not in FEET:
         raise UnusableInput([Problem("", None, "feet", f'"{feet}" is not known', f"give {' or '.join(FEET)}")])
+    if feet == "pinned" and hinged_beams:
+        says = "columns on pinned feet with hinged beams can sway"
+        raise UnusableInput([Problem("", None, "feet", says, "give fixed feet, or beams that are not hinged")])
     grid = _GRID.format(
         f=figures,
         bays=_spaces(bays),
