@@ -199,7 +199,7 @@ class SelfWeight:
 Load = (
     JointForce | JointCouple | Settlement | PointForce | PointCouple | Spread | Temperature | Misfit | SelfWeight
 )
-"""`entry` is the index in the case's `apply` list: dead[0] is entry 0 of case dead. One entry may make several loads."""
+"""`entry` is the index in the case's `apply` list: dead[0] is entry 0 of case dead. One entry may make several."""
 
 
 @dataclass(frozen=True, slots=True)
