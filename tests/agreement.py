@@ -52,6 +52,12 @@ class Heard:
     moment_distribution: Answer | Silent
     library: Answer | Silent
 
+    @property
+    def speaking(self) -> dict[str, Answer]:
+        """The answers of the opinions that speak."""
+        heard = (self.slope_deflection, self.moment_distribution, self.library)
+        return {answer.opinion: answer for answer in heard if isinstance(answer, Answer)}
+
 
 def hear(seed: int) -> Heard:
     """Ask every opinion about the random frame of a seed."""
