@@ -141,7 +141,7 @@ def fixed_ends(frame: Frame, table: LoadTable, stiffness: Floats) -> FixedEnds:
     +k l/2 and -k l/2; line loads by integrating the first. Forces cause no end rotation by shear.
     """
     loads = split_loads(frame, table)
-    turn = _point_rotations(frame, loads) + _line_rotations(frame, loads) + _thermal_rotations(frame, table)
+    turn = _rotations(frame, table, loads)
     between, axial = _flexible_totals(frame, loads)
     t = frame.member_table
     heat = np.where(table.mean != 0.0, table.mean * t.alpha * t.clear, 0.0)
@@ -152,6 +152,15 @@ def fixed_ends(frame: Frame, table: LoadTable, stiffness: Floats) -> FixedEnds:
         between=between,
         zones=_zone_totals(frame, loads),
     )
+
+
+def simple_beam_rotations(frame: Frame, table: LoadTable) -> Floats:
+    """(m, 2) clockwise end rotations phi_0 of the members' flexible parts as simple beams under their loads."""
+    return _rotations(frame, table, split_loads(frame, table))
+
+
+def _rotations(frame: Frame, table: LoadTable, loads: SplitLoads) -> Floats:
+    return _point_rotations(frame, loads) + _line_rotations(frame, loads) + _thermal_rotations(frame, table)
 
 
 def _point_rotations(frame: Frame, loads: SplitLoads) -> Floats:

@@ -1,0 +1,430 @@
+"""One frame prepared for many questions: factor once, then answer for other loads or for a change in one place.
+
+A change confined to one member shows outside it only as three self-balanced end actions (two moments and an axial force);
+a change of one support only as forces or movements of its three directions; a change of load as forces on the joints of
+its member. So every such change is a product of two small things: what a unit action does to the results asked for
+(`Effects`, from the matrix factorised once), and how large the action is (a system of three equations). This is the
+Woodbury identity (M. A. Woodbury 1950) in the terms of frames: no change of this kind needs another factorisation.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+import scipy.sparse as sp
+
+from crosscheck.answer import Answer, CaseAnswer, Undetermined
+from crosscheck.frame.loads import LoadTable, load_table
+from crosscheck.frame.model import (
+    FREE,
+    HELD,
+    Bools,
+    Floats,
+    Frame,
+    Ints,
+    JointCouple,
+    JointForce,
+    Load,
+    LoadCase,
+    MemberTable,
+    Settlement,
+)
+from crosscheck.opinions.slope_deflection.members import coefficients, end_actions, fixed_ends, simple_beam_rotations
+from crosscheck.opinions.slope_deflection.spans import ClosedFormSpans
+from crosscheck.opinions.slope_deflection.system import Solution, System, gathered, support_axes
+
+END, SPAN, REACTION, DISPLACEMENT = range(4)
+"""Kinds of place."""
+SINGULAR_PIVOT = 1e-13
+"""A pivot below this share of its own diagonal entry is a movement without resistance."""
+SINGULAR_CHANGE = 1e-9
+"""A change that leaves less than this share of the stiffness makes a mechanism."""
+STIFFER = 1e9
+"""Stiffness factor that stands for a rigid one when load rotations are parted into what bends and what does not."""
+
+
+@dataclass(frozen=True, slots=True)
+class Places:
+    """Where results are asked for, (n,) each: kind, column (axial, shear, moment; or x, y, rotation), member and its end
+    or distance x and side of a jump, or joint; -1 where it means nothing."""
+
+    kind: Ints
+    column: Ints
+    member: Ints
+    end: Ints
+    joint: Ints
+    x: Floats
+    side: Ints
+
+
+@dataclass(frozen=True, eq=False)
+class Effects:
+    """What unit actions do to the results at the places, n of them.
+
+    force: (n, 3 j) of a unit force or couple on a joint along its support's axes, in directions that are not held; of a
+      unit movement of the support in those that are. reaction: the same when the force comes from a support, so that it
+      counts as a reaction. member: (n, 3 m) of a self-balanced moment at the `from` face, at the `to` face, tension.
+    """
+
+    force: Floats
+    reaction: Floats
+    member: Floats
+
+
+class Prepared:
+    """A frame with its matrix factorised. Raises ArithmeticError when asked of a frame that can move freely."""
+
+    def __init__(self, frame: Frame) -> None:
+        self.frame = frame
+        self.system = System(frame)
+        self.free = self.system.free
+        self.B = self.system.deformation.tocsr()
+        self.Bf = self.B[:, self.free].tocsc()
+        self.D = self.system.member_stiffness
+        self._states: dict[str, Solution] = {}
+        self._check()
+
+    def _check(self) -> None:
+        """No pivot may vanish: the matrix of a mechanism is singular, whatever the load."""
+        if not len(self.free):
+            return
+        try:
+            self.system.correct(np.zeros((len(self.free), 1)))
+        except RuntimeError as error:
+            raise ArithmeticError("the frame can move freely") from error
+        factor: Any = self.system._factor
+        pivots = np.abs(factor.U.diagonal())[factor.perm_c]
+        if not np.all(pivots > SINGULAR_PIVOT * np.abs(self.system.matrix.diagonal())):
+            raise ArithmeticError("the frame can move freely")
+
+    # --- answers ---
+
+    def answer(self, names: Sequence[str], loaded: Frame | None = None) -> Answer:
+        """Results of cases and combinations, with the loads of `loaded` (the same structure) where given."""
+        source = self.frame if loaded is None else loaded
+        tables = [load_table(source, name) for name in names]
+        solution = self.system.solve(tables)
+        none = self._all_determined
+        cases = {name: solution.case_answer(k, none) for k, name in enumerate(names)}
+        return Answer("slope-deflection", cases, none, ClosedFormSpans(
+            source, dict(zip(names, tables, strict=True)), cases, none))  # fmt: skip
+
+    @cached_property
+    def _all_determined(self) -> Undetermined:
+        m, j = len(self.frame.members), len(self.frame.joints)
+        return Undetermined(np.zeros(m, dtype=bool), np.zeros((j, 3), dtype=bool), np.zeros((j, 3), dtype=bool))
+
+    def _state(self, name: str) -> Solution:
+        if name not in self._states:
+            self._states[name] = self.system.solve([load_table(self.frame, name)])
+        return self._states[name]
+
+    # --- effects ---
+
+    @cached_property
+    def _axes(self) -> Any:
+        return support_axes(self.frame).tocsr()
+
+    @cached_property
+    def _ends(self) -> Any:
+        """(6 m, 3 m): end actions at the joints from the moments at the faces and the axial force."""
+        t = self.frame.member_table
+        m = np.arange(len(t.length))
+        up, z1, z2 = 1 / t.clear, t.zone[:, 0] / t.clear, t.zone[:, 1] / t.clear
+        one = np.ones(len(m))
+        parts = [
+            (0, 2, one), (3, 2, one), (1, 0, -up), (1, 1, -up), (4, 0, up), (4, 1, up),
+            (2, 0, one + z1), (2, 1, z1), (5, 1, one + z2), (5, 0, z2),
+        ]  # fmt: skip
+        rows = np.concatenate([6 * m + r for r, _, _ in parts])
+        columns = np.concatenate([3 * m + c for _, c, _ in parts])
+        data = np.concatenate([d for _, _, d in parts])
+        return sp.csr_matrix((data, (rows, columns)), shape=(6 * len(m), 3 * len(m)))
+
+    @property
+    def _restrained(self) -> Bools:
+        return np.asarray(self.frame.support_table.stiffness.ravel() != FREE)
+
+    def effects(self, places: Places) -> Effects:
+        """Unit effects at the places (for values along a member: axial, shear and moment only)."""
+        forces, moves = self._readers(places)
+        held = np.flatnonzero(self.system.held)
+        whole = (forces @ self.D @ self.B + moves).tocsc()
+        right = whole[:, self.free].T.toarray()
+        n, size = len(places.kind), 3 * len(self.frame.joints)
+        force = np.zeros((n, size))
+        if len(self.free):
+            force[:, self.free] = self.system.correct(right).T
+        a = force[:, self.free]
+        coupling = (self.Bf.T @ self.D @ self.B[:, held]).tocsc()
+        force[:, held] = whole[:, held].toarray() - (coupling.T @ a.T).T
+        member = forces.toarray() - (self.Bf @ a.T).T
+        reaction = force.copy()
+        rows = np.flatnonzero(places.kind == REACTION)
+        hidden = self._axes.T.tocsr()[3 * places.joint[rows] + places.column[rows]] @ sp.diags(
+            (~self._restrained).astype(float)
+        )
+        reaction[rows] += hidden.toarray()
+        return Effects(force, reaction, np.asarray(member))
+
+    def _readers(self, p: Places) -> tuple[Any, Any]:
+        """(n, 3 m) and (n, 3 j): the places' values from member forces and from displacements in the supports' axes."""
+        m, j, n = len(self.frame.members), len(self.frame.joints), len(p.kind)
+        row = np.arange(n)
+        near = np.where(p.end == 1, 1, 0)
+        on = np.flatnonzero((p.kind == END) | (p.kind == SPAN))
+        column = 6 * p.member[on] + 3 * near[on] + p.column[on]
+        lever = np.flatnonzero((p.kind == SPAN) & (p.column == 2))
+        picks = sp.csr_matrix(
+            (np.concatenate([np.ones(len(on)), p.x[lever]]),
+             (np.concatenate([on, lever]), np.concatenate([column, 6 * p.member[lever] + 1]))), shape=(n, 6 * m),
+        )  # fmt: skip
+        forces = picks @ self._ends
+        pull = np.flatnonzero(p.kind == REACTION)
+        choose = sp.csr_matrix((np.ones(len(pull)), (pull, 3 * p.joint[pull] + p.column[pull])), shape=(n, 3 * j))
+        forces = forces + choose @ self._axes.T @ sp.diags(self._restrained.astype(float)) @ self.B.T
+        go = row[p.kind == DISPLACEMENT]
+        moves = sp.csr_matrix((np.ones(len(go)), (go, 3 * p.joint[go] + p.column[go])), shape=(n, 3 * j)) @ self._axes.T
+        return forces.tocsr(), moves.tocsr()
+
+    # --- how large the actions are ---
+
+    @cached_property
+    def _own(self) -> Floats:
+        """(m, 3, 3) deformation of each member under its own self-balanced actions, the rest of the frame included."""
+        m = len(self.frame.members)
+        out = np.zeros((m, 3, 3))
+        if not len(self.free):
+            return out
+        for first in range(0, m, 200):
+            rows = self.Bf[3 * first : 3 * min(first + 200, m)]
+            moved = self.system.correct(rows.T.toarray())
+            product = rows @ moved
+            for k in range(rows.shape[0] // 3):
+                out[first + k] = product[3 * k : 3 * k + 3, 3 * k : 3 * k + 3]
+        return out
+
+    @cached_property
+    def _blocks(self) -> Floats:
+        """(m, 3, 3) stiffness of each member."""
+        c = self.system.coefficients
+        out = np.zeros((len(c.axial), 3, 3))
+        out[:, :2, :2] = c.stiffness
+        out[:, 2, 2] = self.D.diagonal()[2::3]
+        return out
+
+    def _load_rotations(self, name: str) -> tuple[Floats, Floats]:
+        """(m, 2) end rotations of the loaded simple beams: the part that bending stiffness divides, and the rest."""
+        table = load_table(self.frame, name)
+        stiff = replace(self.frame)
+        t = self.frame.member_table
+        stiff.__dict__["member_table"] = replace(t, I=t.I * STIFFER)
+        rest = simple_beam_rotations(stiff, table)
+        return simple_beam_rotations(self.frame, table) - rest, rest
+
+    def member_actions(self, name: str, member: Ints, bending: Floats, stretching: Floats, turn: Floats) -> Floats:
+        """(n, 3) actions that stand for one member's change: EI and EA times `bending` and `stretching` (n,), end
+        connections `turn` (n, 2). NaN where the change makes a mechanism."""
+        t = self.frame.member_table
+        bench = replace(self.frame)
+        fields = {f: getattr(t, f)[member] for f in MemberTable.__dataclass_fields__}
+        fields |= {"I": fields["I"] * bending, "A": fields["A"] * stretching, "turn": turn}
+        bench.__dict__["member_table"] = MemberTable(**fields)
+        new = coefficients(bench)
+        blocks = np.zeros((len(member), 3, 3))
+        blocks[:, :2, :2] = new.stiffness
+        rigid = self.system.rigid[member]
+        blocks[:, 2, 2] = np.where(rigid, self._blocks[member, 2, 2], new.axial)
+        state = self._state(name)
+        bends, rest = self._load_rotations(name)
+        free = np.zeros((len(member), 3))
+        free[:, :2] = bends[member] / bending[:, None] + rest[member]
+        free[:, 2] = state.fixed[0].stretch[member]
+        deformed = (self.B @ state.shift[:, 0]).reshape(-1, 3)[member]
+        forces = state.forces[member, :, 0]
+        right = np.einsum("nij,nj->ni", blocks, deformed - free) - forces
+        right[rigid, 2] = 0.0
+        matrix = np.eye(3) + (blocks - self._blocks[member]) @ self._own[member]
+        return _solved(matrix, right)
+
+    @cached_property
+    def _support_response(self) -> tuple[Floats, Floats]:
+        """(j, 3, 3) response of each joint's three directions to actions there, and (j, 3) its scale: displacement to
+        force where not held, reaction to movement where held."""
+        j = len(self.frame.joints)
+        out, scale = np.zeros((j, 3, 3)), np.ones((j, 3))
+        held = self.system.held
+        position = np.full(3 * j, -1)
+        position[self.free] = np.arange(len(self.free))
+        stiffness = (self.B.T @ self.D @ self.B).tocsr()
+        for first in range(0, j, 100):
+            dofs = np.arange(3 * first, 3 * min(first + 100, j))
+            right = np.zeros((len(self.free), len(dofs)))
+            mine = position[dofs] >= 0
+            right[position[dofs[mine]], np.flatnonzero(mine)] = 1.0
+            fixed = np.flatnonzero(held[dofs])
+            if len(fixed):
+                right[:, fixed] = -stiffness[:, dofs[fixed]][self.free].toarray()
+            moved = np.zeros((3 * j, len(dofs)))
+            if len(self.free):
+                moved[self.free] = self.system.correct(right)
+            moved[dofs[fixed], fixed] = 1.0
+            pull = stiffness[dofs] @ moved
+            said = np.where(held[dofs][:, None], pull, moved[dofs])
+            for k in range(len(dofs) // 3):
+                out[first + k] = said[3 * k : 3 * k + 3, 3 * k : 3 * k + 3]
+        diagonal = np.einsum("jii->ji", out)
+        own = stiffness.diagonal().reshape(-1, 3)
+        scale = np.where(held.reshape(-1, 3), own, diagonal)
+        return out, np.where(scale > 0, scale, 1.0)
+
+    def support_actions(self, name: str, joint: Ints, stiffness: Floats) -> Floats:
+        """(n, 3) actions along a joint's support axes that stand for its support having `stiffness` (n, 3) instead.
+        NaN where that makes a mechanism."""
+        response, scale = (a[joint] for a in self._support_response)
+        s = self.frame.support_table
+        held = self.system.held.reshape(-1, 3)[joint]
+        old = np.where(held, 0.0, s.stiffness[joint])
+        state = self._state(name)
+        moved = state.shift[:, 0].reshape(-1, 3)[joint]
+        settled = state.tables[0].settlement[joint]
+        pull = (self._axes @ gathered_forces(self, name).ravel()).reshape(-1, 3)[joint]
+        matrix, right = np.zeros((len(joint), 3, 3)), np.zeros((len(joint), 3))
+        stays = held & (stiffness == HELD) | (~held & (stiffness == old))
+        finite = np.where(np.isinf(stiffness), 0.0, stiffness)
+        unit = np.eye(3)
+        for i in range(3):
+            loosened, stopped = held[:, i] & ~stays[:, i], ~held[:, i] & np.isinf(stiffness[:, i])
+            changed = ~held[:, i] & ~stays[:, i] & ~stopped
+            k, up = finite[:, i], finite[:, i] - old[:, i]
+            size = scale[:, i]
+            matrix[:, i] = np.where(stays[:, i, None], unit[i], 0.0)
+            matrix[:, i] += np.where(loosened[:, None], (response[:, i] + k[:, None] * unit[i]) / (size + k)[:, None], 0.0)
+            right[:, i] += np.where(loosened, -pull[:, i] / (size + k), 0.0)
+            matrix[:, i] += np.where(stopped[:, None], response[:, i] / size[:, None], 0.0)
+            right[:, i] += np.where(stopped, (settled[:, i] - moved[:, i]) / size, 0.0)
+            matrix[:, i] += np.where(changed[:, None], unit[i] + up[:, None] * response[:, i], 0.0)
+            right[:, i] += np.where(changed, -up * (moved[:, i] - settled[:, i]), 0.0)
+        return _solved(matrix, right)
+
+    # --- loads ---
+
+    def load_effects(self, loads: Sequence[Load], places: Places, effects: Effects) -> Floats:
+        """(n, k) effect of each of k loads (not self weight) on the places."""
+        count = len(loads)
+        out = np.zeros((len(places.kind), count))
+        if not count:
+            return out
+        onto = np.zeros((3 * len(self.frame.joints), count))
+        moved = np.zeros_like(onto)
+        self._on_joints(loads, onto, moved)
+        on = [k for k, load in enumerate(loads) if hasattr(load, "member")]
+        if on:
+            self._on_members([loads[k] for k in on], np.array(on), places, onto, out)
+        free = ~self.system.held[:, None]
+        out += effects.force @ np.where(free, onto, moved)
+        out += effects.reaction @ np.where(free, self.system.spring[:, None] * moved, 0.0)
+        rows = np.flatnonzero(places.kind == REACTION)
+        turned = self._axes.T.tocsr()[3 * places.joint[rows] + places.column[rows]]
+        # A force that goes straight into a held direction; one beside it in a free direction reacts nowhere here.
+        out[rows] -= turned @ (onto * self._restrained[:, None])
+        return out
+
+    def _on_joints(self, loads: Sequence[Load], onto: Floats, moved: Floats) -> None:
+        blank = replace(self.frame)
+        for k, load in enumerate(loads):
+            if not isinstance(load, (JointForce, JointCouple, Settlement)):
+                continue
+            joint = self.frame.joint_index[load.joint]
+            if isinstance(load, Settlement):
+                moved[3 * joint : 3 * joint + 3, k] = load.x, load.y, load.rotation
+                continue
+            table = _one_case(blank, (load,))
+            onto[:, k] = self._axes @ table.joint.ravel()
+
+    def _on_members(self, loads: Sequence[Load], place: Ints, places: Places, onto: Floats, out: Floats) -> None:
+        members = list(self.frame.members.values())
+        of = np.array([self.frame.member_index[load.member] for load in loads])  # type: ignore[union-attr]
+        copies = {str(k): replace(members[m], name=str(k)) for k, m in enumerate(of.tolist())}
+        bench = replace(self.frame, members=copies, combinations={})
+        case = tuple(replace(load, member=str(k)) for k, load in enumerate(loads))  # type: ignore[call-arg]
+        table = _one_case(bench, case)
+        fixed = fixed_ends(bench, table, self.system.coefficients.stiffness[of])
+        rigid = self.system.rigid[of]
+        axial = np.where(rigid, self._blocks[of, 2, 2], self.system.coefficients.axial[of])
+        pulled = -axial * fixed.stretch
+        ends = end_actions(bench, fixed.moments, pulled + fixed.axial, fixed)
+        on_joints = _gathered_each(bench, ends)
+        t = bench.member_table
+        each = np.zeros((len(of), len(self.frame.joints), 3))
+        copy = np.arange(len(of))
+        np.add.at(each, (copy, t.ends[:, 0]), on_joints[:, 0])
+        np.add.at(each, (copy, t.ends[:, 1]), on_joints[:, 1])
+        onto[:, place] -= self._axes @ each.reshape(len(of), -1).T
+        self._on_own_member(of, place, places, bench, table, ends, out)
+
+    def _on_own_member(
+        self, of: Ints, place: Ints, places: Places, bench: Frame, table: LoadTable, ends: Floats, out: Floats
+    ) -> None:
+        rows = np.flatnonzero((places.kind == END) | (places.kind == SPAN))
+        order = np.argsort(of, kind="stable")
+        first = np.searchsorted(of[order], places.member[rows])
+        last = np.searchsorted(of[order], places.member[rows], side="right")
+        count = last - first
+        row = np.repeat(rows, count)
+        offset = np.arange(int(count.sum())) - np.repeat(np.cumsum(count) - count, count)
+        copy = order[np.repeat(first, count) + offset]
+        if not len(row):
+            return
+        at_end = places.kind[row] == END
+        column = places.column[row]
+        value = ends[copy, np.where(places.end[row] == 1, 1, 0), column]
+        inner = ~at_end
+        if inner.any():
+            nil = np.zeros((len(bench.joints), 3))
+            spans = ClosedFormSpans(bench, {"": table}, {"": CaseAnswer(ends, nil, nil)}, self._all_determined)
+            along = spans.along("", copy[inner], places.x[row[inner]], places.side[row[inner]])
+            value[inner] = along[np.arange(int(inner.sum())), column[inner]]
+        out[row, place[copy]] += value
+
+
+def prepared(frame: Frame) -> Prepared:
+    """The frame with its matrix factorised. Raises ArithmeticError where it can move freely."""
+    return Prepared(frame)
+
+
+def gathered_forces(p: Prepared, name: str) -> Floats:
+    """(j, 3) what supports and nothing else must supply at each joint, global axes, as an array to be turned."""
+    state = p._state(name)
+    fixed = state.fixed[0]
+    ends = end_actions(p.frame, state.forces[:, :2, 0], state.forces[:, 2, 0] + fixed.axial, fixed)
+    return gathered(p.frame, ends) - state.tables[0].joint
+
+
+def _gathered_each(frame: Frame, ends: Floats) -> Floats:
+    """(m, 2, 3) what acts on each end of each member, in global axes."""
+    t = frame.member_table
+    sign = np.array([-1.0, 1.0])
+    along, across = ends[:, :, 0] * sign, ends[:, :, 1]
+    c, s = t.cos[:, None], t.sin[:, None]
+    return np.stack([along * c - across * s, along * s + across * c, ends[:, :, 2]], axis=2)
+
+
+def _one_case(frame: Frame, loads: tuple[Load, ...]) -> LoadTable:
+    changed = replace(frame, cases={"": LoadCase("", loads)}, combinations={})
+    for name in ("member_table", "joint_index", "member_index", "support_table", "xy"):
+        if name in frame.__dict__:
+            changed.__dict__[name] = frame.__dict__[name]
+    return load_table(changed, "")
+
+
+def _solved(matrix: Floats, right: Floats) -> Floats:
+    """Solutions of (n, 3, 3) systems; NaN where singular."""
+    good = np.abs(np.linalg.det(matrix)) > SINGULAR_CHANGE
+    out = np.full(right.shape, np.nan)
+    out[good] = np.linalg.solve(matrix[good], right[good][:, :, None])[:, :, 0]
+    return out
