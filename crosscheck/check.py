@@ -228,54 +228,6 @@ def _blank(frame: Frame) -> CaseAnswer:
     return CaseAnswer(np.full((m, 2, 3), np.nan), np.full((j, 3), np.nan), np.full((j, 3), np.nan))
 
 
-def with_idealisation(
-    frame: Frame, axial: str | None = None, shear: str | None = None, order: int | None = None
-) -> Frame:
-    """The same frame analysed otherwise. Raises UnusableInput where a section or material lacks what that needs."""
-    if axial is None and shear is None and order is None:
-        return frame
-    changes: dict[str, Any] = {}
-    if axial is not None:
-        changes |= {"axial": axial, "axial_stated": True}
-    if shear is not None:
-        changes["shear"] = shear
-    if order is not None:
-        changes["order"] = order
-    changed = replace(frame, analysis=replace(frame.analysis, **changes))
-    problems = _needs(changed)
-    if problems:
-        raise UnusableInput(problems)
-    return changed
-
-
-def _needs(frame: Frame) -> list[Problem]:
-    t = frame.member_table
-    problems = []
-    if frame.analysis.order == 2:
-        problems.append(Problem(frame.file, None, "--order", "second order is not built yet", "use order 1"))
-    if frame.analysis.axial == "elastic":
-        lacking = sorted({m.section for m, a in zip(frame.members.values(), t.A, strict=True) if np.isnan(a)})
-        problems += [
-            Problem(frame.file, frame.lines.get(f"sections.{s}"), f"sections.{s}", "axially elastic needs A", "state A")
-            for s in lacking
-        ]
-    if frame.analysis.shear == "elastic":
-        members = list(frame.members.values())
-        areas = sorted({m.section for m, a in zip(members, t.shear_area, strict=True) if np.isnan(a)})
-        moduli = sorted({m.material for m, g in zip(members, t.G, strict=True) if np.isnan(g)})
-        problems += [
-            Problem(frame.file, frame.lines.get(f"sections.{s}"), f"sections.{s}",
-                    "shear elastic needs shear_area", "state shear_area")
-            for s in areas
-        ]  # fmt: skip
-        problems += [
-            Problem(frame.file, frame.lines.get(f"materials.{s}"), f"materials.{s}",
-                    "shear elastic needs G or nu", "state G or nu")
-            for s in moduli
-        ]  # fmt: skip
-    return problems
-
-
 def read(path: str | Path) -> Frame:
     """Read a frame file. Raises UnusableInput with every problem found."""
     from crosscheck.frame.reader import read_frame

@@ -319,7 +319,12 @@ def run_draft(args: argparse.Namespace) -> int:
 def _frame(args: argparse.Namespace) -> Any:
     from crosscheck import check
 
-    return check.with_idealisation(check.read(args.frame), args.axial, args.shear, args.order)
+    frame = check.read(args.frame)
+    if args.axial is None and args.shear is None and args.order is None:
+        return frame
+    from crosscheck.frame.needs import with_analysis
+
+    return with_analysis(frame, args.axial, args.shear, args.order)
 
 
 def _percent(text: str | None) -> float | None:
