@@ -193,25 +193,30 @@ def with_turning_points(answer: Answer, name: str, at: Stations) -> tuple[Ints, 
 
 
 def lone_dissenter(spoke: tuple[str, ...], differences: tuple[Difference, ...]) -> str | None:
-    """The one opinion without which the others agree, wherever at least three give a value; None where none stands out.
+    """The one opinion without which the others agree, wherever a third voice can tell; None where none stands out.
 
-    The others agree when they lie within what is allowed, or within a tenth of the difference: the library is allowed
-    more than our own two.
+    Two opinions that differ where the third gives no value (the library between its own joints) tell nothing. One that
+    gives no value where the others agree on one, or the only value where they give none, does stand out. The others
+    agree when they lie within what is allowed, or within a tenth of the difference: the library is allowed more than
+    our own two.
     """
-    telling = [d for d in differences if len(d.values) >= 3 and sum(v is not None for v in d.values.values()) >= 2]
     if len(spoke) < 3:
         return None
-    suspects = [name for name in spoke if telling and all(_others_agree(d, name) for d in telling)]
-    return suspects[0] if len(suspects) == 1 else None
+    odd = [[name for name in spoke if _others_agree(d, name)] for d in differences]
+    telling = [set(names) for names in odd if names]
+    suspects = set.intersection(*telling) if telling else set()
+    torn = any(not names and None not in d.values.values() for names, d in zip(odd, differences, strict=True))
+    return suspects.pop() if len(suspects) == 1 and not torn else None
 
 
 def _others_agree(difference: Difference, name: str) -> bool:
+    """Whether all but `name` give the same there, or all of them nothing while it gives a value."""
     rest = [v for o, v in difference.values.items() if o != name]
     known = [v for v in rest if v is not None]
     if len(known) < len(rest):
-        return len(known) == 0
+        return len(known) == 0 and len(rest) > 1
     share = 0.1 * difference.difference if np.isfinite(difference.difference) else 0.0
-    return max(known) - min(known) <= max(difference.allowed, share)
+    return len(rest) > 1 and max(known) - min(known) <= max(difference.allowed, share)
 
 
 def opinions_verdict(judgements: list[CaseJudgement]) -> Verdict:
