@@ -17,9 +17,11 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from scipy import sparse
 
 from crosscheck.answer import CaseAnswer
 from crosscheck.audit.compatibility import CompatibilityFindings
+from crosscheck.audit.completion import Entries
 from crosscheck.audit.equilibrium import JOINT, Sparse, equations, pieces, resultants
 from crosscheck.audit.fit import Fit, abs_springs, fit
 from crosscheck.frame.loads import load_table
@@ -147,18 +149,19 @@ def _joint_loads(frame: Frame, case: str) -> Floats:
 
 def _reach(system: Fit, m: int) -> Floats:
     """(m, 3) largest end moments and axial force that one unit of energy can put into a member by itself."""
-    reach = np.zeros((m, 3))
-    owner: dict[int, list[int]] = {}
-    for k in range(system.keep.shape[0]):
-        part = system.keep[[k]]
-        place = int(part.indices[0])
-        if place < 3 * m and not system.rigid[k]:
-            owner.setdefault(place // 3, []).append(k)
-    for member, rows in owner.items():
-        shape = system.keep[rows][:, 3 * member : 3 * member + 3].toarray()
-        stiff = np.linalg.inv(system.weight[rows][:, rows].toarray())
-        reach[member] = np.sqrt(np.maximum(np.einsum("ra,rs,sa->a", shape, stiff, shape), 0.0))
-    return reach
+    owner = system.keep.indices[system.keep.indptr[:-1]] // 3
+    # Every row of a member, or of a joint's springs, is coupled with the others of its own only.
+    blocks = Entries.of(system.weight, owner).stack()
+    inverse = np.linalg.pinv(blocks.dense)
+    rows, columns = blocks.rows[:, :, None], blocks.columns[:, None, :]
+    there = (rows >= 0) & (columns >= 0)
+    stiff: Sparse = sparse.coo_array(
+        (inverse[there], (np.broadcast_to(rows, there.shape)[there], np.broadcast_to(columns, there.shape)[there])),
+        shape=system.weight.shape,
+    ).tocsr()
+    spread = system.keep.T.tocsr()
+    square = np.asarray((spread @ stiff).multiply(spread).sum(axis=1)).ravel()
+    return np.asarray(np.sqrt(np.maximum(square[: 3 * m], 0.0)).reshape(m, 3))
 
 
 def _solver_free(frame: Frame, system: Fit, deformation: Floats, values: CaseAnswer) -> float | None:

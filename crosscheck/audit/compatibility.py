@@ -90,7 +90,7 @@ def compatibility(
     system = fit(frame, done)
     checks = _checks(system, name)
     dimension = system.dimension
-    whole = indeterminacy(frame)
+    whole = indeterminacy(frame) if system.reduced else dimension
     lacking = _lacking(frame, done, undetermined)
     not_judged = [*lacking, *_unjudged(done)]
     if dimension < whole:
@@ -163,10 +163,7 @@ def _checks(system: Fit, name: str) -> list[CompatibilityCheck]:
     raw = system.geometry.matrix @ system.displacements
     residual, allowed = system.residual, system.allowed
     checks: list[CompatibilityCheck] = []
-    for k in np.flatnonzero(~system.rigid & (system.shares > UNTESTED)).tolist():
-        part = system.keep[[k]]
-        place = int(part.indices[np.argmax(np.abs(part.data))])
-        share = float(np.abs(part.data).max()) * float(np.sign(part.data[np.argmax(np.abs(part.data))]))
+    for k, place, share in zip(*_main_entries(system), strict=True):
         gap, most = float(residual[k]) / share, float(allowed[k]) / abs(share)
         if place >= 3 * m:
             joint, axis = divmod(place - 3 * m, 3)
@@ -183,6 +180,16 @@ def _checks(system: Fit, name: str) -> list[CompatibilityCheck]:
             CompatibilityCheck(name, kind, where, member, expected + gap, expected, most, abs(gap) <= most, direction)
         )
     return checks
+
+
+def _main_entries(system: Fit) -> tuple[list[int], list[int], list[float]]:
+    """Rows that test something, the raw deformation that each is mostly made of, and its entry there."""
+    keep = system.keep
+    row = np.repeat(np.arange(keep.shape[0]), np.diff(keep.indptr))
+    order = np.lexsort((np.abs(keep.data), row))
+    last = order[np.searchsorted(row[order], np.arange(keep.shape[0]), side="right") - 1]
+    tested = np.flatnonzero(~system.rigid & (system.shares > UNTESTED))
+    return tested.tolist(), keep.indices[last[tested]].tolist(), keep.data[last[tested]].tolist()
 
 
 def _joint_values(system: Fit) -> Floats:

@@ -8,12 +8,12 @@ the given ones is carried through exactly, as an interval (R. E. Moore, Interval
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy import sparse
 
-from crosscheck.audit.equilibrium import FREE_SUPPORT, HINGE, Equations, Sparse, blocks_of_rows, couple_values
+from crosscheck.audit.equilibrium import FREE_SUPPORT, HINGE, Equations, Sparse, couple_values
 from crosscheck.frame.model import Bools, Floats, Ints
 
 TOGETHER = 1200
@@ -21,6 +21,67 @@ TOGETHER = 1200
 BY_RULE, TOGETHER_BLOCK = -3, -2
 RANK = 1e-9
 """A direction whose share is below this is null: the scaled equations have entries of the order of one."""
+LOOSE = 1e-7
+"""An unknown that a free movement of the others changes by less than this is settled."""
+
+
+@dataclass(frozen=True, slots=True)
+class Stack:
+    """Small dense matrices side by side, padded with zeros: what pseudo-inverses are taken of, all at once.
+
+    dense: (b, r, c); rows: (b, r) and columns: (b, c) which they are, -1 where padded; block: (b,).
+    """
+
+    dense: Floats
+    rows: Ints
+    columns: Ints
+    block: Ints
+
+
+@dataclass(frozen=True, slots=True)
+class Entries:
+    """Entries of a sparse matrix as columns, with the block of each row."""
+
+    row: Ints
+    column: Ints
+    entry: Floats
+    block: Ints
+
+    @staticmethod
+    def of(matrix: Sparse, block: Ints) -> Entries:
+        """Every entry that is not nil."""
+        table = matrix.tocoo()
+        row, column = table.coords
+        there = table.data != 0
+        row, column = row[there].astype(np.int64), column[there].astype(np.int64)
+        return Entries(row, column, table.data[there], block[row])
+
+    def where(self, columns: Bools) -> Entries:
+        """Entries of the marked columns."""
+        return self.only(columns[self.column])
+
+    def only(self, which: Bools) -> Entries:
+        return Entries(self.row[which], self.column[which], self.entry[which], self.block[which])
+
+    def stack(self) -> Stack:
+        """Each block as a dense matrix of the rows and columns that it has entries in."""
+        names, block = np.unique(self.block, return_inverse=True)
+        row, rows = _places(block, self.row, len(names))
+        column, columns = _places(block, self.column, len(names))
+        dense = np.zeros((len(names), rows.shape[1], columns.shape[1]))
+        dense[block, row, column] = self.entry
+        return Stack(dense, rows, columns, names)
+
+
+def _places(block: Ints, index: Ints, blocks: int) -> tuple[Ints, Ints]:
+    """Place of each index among the distinct ones of its block, and those distinct ones (b, most), -1 where padded."""
+    pairs, which = np.unique(np.column_stack([block, index]), axis=0, return_inverse=True)
+    count = np.bincount(pairs[:, 0], minlength=blocks)
+    start = np.cumsum(count) - count
+    place = np.arange(len(pairs)) - start[pairs[:, 0]]
+    table = np.full((blocks, int(count.max(initial=0))), -1, dtype=np.int64)
+    table[pairs[:, 0], place] = pairs[:, 1]
+    return place[which.ravel()], table
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,16 +134,7 @@ class _Completer:
         self.scaled: Sparse = (
             sparse.diags_array(self.row_scale) @ system.matrix @ sparse.diags_array(column_scale)
         ).tocsr()
-        self.rows_of = blocks_of_rows(system)
-        self.block_of_value = self._blocks_of_values()
-
-    def _blocks_of_values(self) -> Sparse:
-        """(v, blocks) pattern: which blocks speak of a value."""
-        s = self.system
-        blocks = sparse.coo_array(
-            (np.ones(len(s.block)), (np.arange(len(s.block)), s.block)), shape=(len(s.block), len(self.rows_of))
-        )
-        return (abs(s.matrix).T @ blocks).tocsr()
+        self.entries = Entries.of(self.scaled, system.block)
 
     def run(self) -> Completed:
         self._by_rule()
@@ -109,59 +161,43 @@ class _Completer:
 
     def _members_then_joints(self) -> bool:
         """One round; True while something was found. Members come first: what they give needs no other result."""
-        unknown = np.flatnonzero(~self.known)
-        if not len(unknown):
+        unknown = self.entries.where(~self.known)
+        member = unknown.block < self.system.members
+        return self._round(unknown.only(member)) or self._round(unknown.only(~member))
+
+    def _round(self, unknown: Entries) -> bool:
+        """Take from every block what it settles by itself; a value that two blocks settle is taken from the first."""
+        if not len(unknown.row):
             return False
-        blocks = np.unique(self.block_of_value[unknown].indices)
-        is_member = blocks < self.system.members
-        return self._round(blocks[is_member]) or self._round(blocks[~is_member])
-
-    def _round(self, blocks: Ints) -> bool:
-        found: dict[int, tuple[Ints, Floats, int]] = {}
-        for block in blocks.tolist():
-            rows = self.rows_of[block]
-            for value, weights in self._settled(rows):
-                found.setdefault(value, (rows, weights, block))
-        return self._take(found)
-
-    def _settled(self, rows: Ints) -> list[tuple[int, Floats]]:
-        """Unknown values that these rows settle, each with the weights of the rows that give it."""
-        part = self.scaled[rows]
-        columns = np.unique(part.indices[part.data != 0])
-        columns = columns[~self.known[columns]]
-        if not len(columns):
-            return []
-        dense = part[:, columns].toarray()
-        inverse = np.linalg.pinv(dense, rcond=RANK)
-        loose = np.abs(np.eye(len(columns)) - inverse @ dense).max(axis=1)
-        return [
-            (int(columns[k]), -inverse[k] * self.row_scale[rows] * self.column_scale[columns[k]])
-            for k in np.flatnonzero(loose < 1e-7)
-        ]
-
-    def _take(self, found: dict[int, tuple[Ints, Floats, int]]) -> bool:
-        """Enter the found values: each is `weights @ (equations with what was known before)`."""
-        if not found:
-            return False
-        target = np.concatenate([np.full(len(rows), v) for v, (rows, _, _) in found.items()])
-        rows = np.concatenate([r for r, _, _ in found.values()])
-        weights = np.concatenate([w for _, w, _ in found.values()])
-        self._enter(np.array(list(found)), target, rows, weights, np.array([b for _, _, b in found.values()]))
-        return True
+        stack = unknown.stack()
+        inverse = np.asarray(np.linalg.pinv(stack.dense, rcond=RANK), dtype=np.float64)
+        spread = np.eye(stack.dense.shape[2]) - inverse @ stack.dense
+        settled = (np.abs(spread).max(axis=2) < LOOSE) & (stack.columns >= 0)
+        block, local = np.nonzero(settled)
+        value, first = np.unique(stack.columns[block, local], return_index=True)
+        block, local = block[first], local[first]
+        rows = stack.rows[block]
+        weights = -inverse[block, local] * self.column_scale[value, None]
+        there = rows >= 0
+        target = np.repeat(value, there.sum(axis=1))
+        flat: Floats = weights[there] * self.row_scale[rows[there]]
+        self._enter(value, target, rows[there], flat, stack.block[block])
+        return len(value) > 0
 
     def _enter(self, value: Ints, target: Ints, rows: Ints, weights: Floats, by: Ints) -> None:
-        """Set `value`: entry k adds weights[k] times equation rows[k] to value target[k]."""
+        """Set `value`: entry k adds weights[k] times equation rows[k], as known before, to value target[k]."""
         shape = (len(self.given), len(self.system.constant))
         gather: Sparse = sparse.coo_array((weights, (target, rows)), shape=shape).tocsr()
         self.constant = self.constant + gather @ (self.system.matrix @ self.constant + self.system.constant)
-        self.combination = (self.combination + gather @ (self.system.matrix @ self.combination)).tocsr()
+        used: Sparse = gather @ self.system.matrix
+        self.combination = (self.combination + used @ self.combination).tocsr()
         self.known[value] = True
         self.by[value] = by
 
     def _together(self) -> None:
         """What no single joint settles may still be settled by several at once."""
-        unknown = np.flatnonzero(~self.known)
-        if not 0 < len(unknown) <= TOGETHER:
+        unknown = self.entries.where(~self.known)
+        if not 0 < len(np.unique(unknown.column)) <= TOGETHER:
             return
-        rows = np.unique(self.scaled[:, unknown].tocoo().coords[0])
-        self._take({v: (rows, w, TOGETHER_BLOCK) for v, w in self._settled(rows)})
+        one = replace(unknown, block=np.full(len(unknown.row), TOGETHER_BLOCK))
+        self._round(one)

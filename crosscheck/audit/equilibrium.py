@@ -51,12 +51,6 @@ class Equations:
         return np.array([c == "moment" for c in self.component], dtype=bool)
 
 
-def blocks_of_rows(system: Equations) -> list[Ints]:
-    """The rows of every block, by block number (members, then joints)."""
-    order = np.argsort(system.block, kind="stable")
-    return np.split(order, np.flatnonzero(np.diff(system.block[order])) + 1)
-
-
 def end_index(member: Ints | int, end: Ints | int, quantity: int) -> Ints:
     """Place of an end action in the vector of values."""
     return np.asarray(6 * np.asarray(member) + 3 * np.asarray(end) + quantity, dtype=np.int64)

@@ -33,6 +33,7 @@ DENSE_ROWS = 3000
 DEPENDENT = 1e-11
 """A pivot of the scaled geometry below this belongs to a column that the ones before it make up."""
 NUDGE = 1e-14
+BATCH = 400
 ARITHMETIC = 1e-3
 """Of a row's rounding, round-off of values included: what solving may add."""
 
@@ -99,6 +100,8 @@ class Fit:
     raw_flexibility: (3 m + 3 j, 3 m + 3 j). forces, rounding: (3 m + 3 j,) forces that go with the raw deformations
       (reactions along the supports' own axes), nil where missing, and the rounding of each.
     source: (n, v) deformations from given values; d: (n,) deformations less those of settled supports.
+    lost_rows: rigid elongations that repeat others; settlement: (3 j,) of held directions.
+    reduced: missing values cost conditions.
     unit: (n,) a typical size of each row's rounding, for scaling. half: (v,) rounding and round-off.
     """
 
@@ -119,6 +122,7 @@ class Fit:
     half: Floats
     lost_rows: Sparse
     settlement: Floats
+    reduced: bool
 
     @property
     def dimension(self) -> int:
@@ -175,38 +179,62 @@ class Fit:
 
     @cached_property
     def inverse(self) -> Floats:
-        """(n, n) L, dense; only for frames small enough."""
-        dense = np.eye(len(self.d))
-        found, _ = self.solve(dense)
-        return (found + found.T) / 2
+        """(n, n) L, dense; only for frames small enough. One pass: it serves intervals and sizes, not the misfit."""
+        return np.concatenate([self._columns(part) for part in self._parts()], axis=1)
+
+    def _parts(self) -> list[slice]:
+        return [slice(k, min(k + BATCH, len(self.d))) for k in range(0, len(self.d), BATCH)]
+
+    def _columns(self, part: slice) -> Floats:
+        """(n, k) columns of L."""
+        (factors, matrix), row, _ = self._scaled
+        right = np.zeros((matrix.shape[0], part.stop - part.start))
+        right[np.arange(part.start, part.stop), np.arange(part.stop - part.start)] = row[part]
+        return np.asarray(factors.solve(right)[: len(row)] * row[:, None])
 
     @property
     def small(self) -> bool:
         """Small enough to carry the rounding of every value to every condition."""
         return len(self.d) <= DENSE_ROWS
 
-    def carried(self, rows: Floats) -> Floats:
-        """(k,) how far rounding can move rows @ L d, rows (k, n) dense: an interval, exact to first and only order."""
-        if self.small:
-            influence = np.asarray(self.source.T @ (self.inverse @ rows.T)).T
-            return np.asarray(np.abs(influence) @ self.half)
-        # |a'L e| <= sqrt(a'La) sqrt(e'S^-1 e), and the last is at most the root of the number of values.
-        span = np.einsum("kn,nk->k", rows, self.solve(rows.T)[0])
-        return np.asarray(np.sqrt(np.maximum(span, 0.0) * np.count_nonzero(self.half)))
+    def own(self, columns: Sparse) -> Floats:
+        """(k,) a'La of each column (n, k)."""
+        across = columns.T.tocsr()
+        total = np.zeros(columns.shape[1])
+        for part in self._parts():
+            inverse = self.inverse[:, part] if self.small else self._columns(part)
+            total += np.asarray(across[:, part].multiply(across @ inverse).sum(axis=1)).ravel()
+        return total
+
+    def carried(self, rows: Sparse, own: Floats) -> Floats:
+        """(k,) how far rounding can move rows @ L d, rows (k, n): an exact interval, for all is linear.
+
+        own: (k,) a'La of each row. Beyond DENSE_ROWS conditions |a'L e| <= sqrt(a'La) sqrt(e'S^-1 e) bounds it, and the
+        last is at most the root of the number of rounded values.
+        """
+        if not self.small:
+            return np.asarray(np.sqrt(np.maximum(own, 0.0) * np.count_nonzero(self.half)))
+        source = (self.source @ sparse.diags_array(self.half)).tocsc()
+        source = source[:, np.flatnonzero(np.diff(source.indptr))]
+        total = np.zeros(rows.shape[0])
+        for first in range(0, rows.shape[0], BATCH):
+            part = slice(first, first + BATCH)
+            total[part] = np.abs((rows[part] @ self.inverse) @ source).sum(axis=1)
+        return total
 
     @cached_property
     def allowed(self) -> Floats:
         """(n,) how far rounding can move each component of r."""
-        if self.small:
-            return self.carried(self.weight.toarray()) + ARITHMETIC * self.unit
-        return np.asarray(np.sqrt(self.weight.diagonal() * np.count_nonzero(self.half)))
+        if not self.small:
+            return np.asarray(np.sqrt(self.weight.diagonal() * np.count_nonzero(self.half)))
+        return self.carried(self.weight, np.zeros(0)) + ARITHMETIC * self.unit
 
     @cached_property
     def shares(self) -> Floats:
         """(n,) how much of a change in one deformation alone shows in its own misfit: nil where nothing tests it."""
         if not self.small:
             return np.ones(len(self.d))
-        return np.asarray(np.einsum("ij,ji->i", self.weight.toarray(), self.inverse))
+        return np.asarray(self.weight.multiply(self.inverse.T).sum(axis=1)).ravel()
 
     @cached_property
     def displacements(self) -> Floats:
@@ -247,7 +275,8 @@ def fit(frame: Frame, balance: Balance, energy: bool = False) -> Fit:
     length = np.concatenate([np.tile([1.0, 1.0, scales.length], m), np.tile([scales.length, scales.length, 1.0], j)])
     plain = 1 / (abs(keep) @ length) * (abs(keep) @ np.ones(len(length)))
     shape = (sparse.diags_array(plain) @ base @ sparse.diags_array(scale)).tocsc()
-    good = _independent(shape, bool(missing.any()))
+    reduced = _reduced(g, soft, missing)
+    good = _independent(shape, reduced)
     fine = np.ones(len(rigid), dtype=bool)
     fine[rigid] = _independent(shape[np.flatnonzero(rigid)][:, np.flatnonzero(good)].T.tocsc(), True)
     rows = np.flatnonzero(fine)
@@ -261,6 +290,7 @@ def fit(frame: Frame, balance: Balance, energy: bool = False) -> Fit:
         base=base[:, np.flatnonzero(good)].tocsr()[rows].tocsc(), columns=columns,
         source=(keep[rows] @ values).tocsr(), d=np.asarray(keep[rows] @ raw), unit=unit[rows], half=half,
         lost_rows=keep[np.flatnonzero(~fine)].tocsr(), settlement=np.where(g.held, settlement, 0.0),
+        reduced=reduced,
     )  # fmt: skip
 
 
@@ -341,6 +371,13 @@ def _keep(frame: Frame, g: Geometry, soft: Flexibility, missing: Bools) -> tuple
     flags = np.zeros(total, dtype=bool)
     flags[count : count + len(stretch)] = rigid[stretch]
     return keep, flags
+
+
+def _reduced(g: Geometry, soft: Flexibility, missing: Bools) -> bool:
+    """Whether a value is missing that deforms something: then the rest may leave displacements open."""
+    m = len(soft.load[0])
+    deforms = np.column_stack([np.ones((m, 2), dtype=bool), soft.matrix[STRETCH, :, 2, 2] > 0]).ravel()
+    return bool((missing[: 3 * m] & deforms).any() or (missing[3 * m :] & _sprung(g)).any())
 
 
 def _left_null(spans: Floats) -> Floats | None:

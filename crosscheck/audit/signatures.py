@@ -27,7 +27,6 @@ INVISIBLE = 1e-9
 """A signature of which less than this share survives the fit cannot be seen in the misfit at all."""
 ALIKE = 1e-9
 """Two signatures within this of the same direction cannot be told apart by compatibility."""
-BATCH = 400
 
 
 @dataclass(frozen=True, slots=True)
@@ -155,14 +154,9 @@ def local_findings(findings: CompatibilityFindings) -> list[Signature]:
 
 def _judge(system: Fit, candidates: _Candidates, columns: Sparse) -> SignatureTable:
     """Shares, sizes and intervals of every candidate, sorted."""
-    count = columns.shape[1]
     seen = np.asarray(columns.T @ system.solved[0])
-    own, carried = np.zeros(count), np.zeros(count)
-    for first in range(0, count, BATCH):
-        part = slice(first, first + BATCH)
-        dense = columns[:, part].toarray()
-        own[part] = np.einsum("nk,nk->k", dense, _apply(system, dense))
-        carried[part] = system.carried(dense.T)
+    own = system.own(columns)
+    carried = system.carried(columns.T.tocsr(), own)
     scaled = (sparse.diags_array(1 / system.unit) @ columns).tocsc()
     whole = np.asarray(scaled.multiply(scaled).sum(axis=0)).ravel()
     visible = (own > INVISIBLE * whole) & (whole > 0)
@@ -179,11 +173,6 @@ def _judge(system: Fit, candidates: _Candidates, columns: Sparse) -> SignatureTa
         for k in order.tolist()
     ]  # fmt: skip
     return SignatureTable(system, tuple(entries), columns[:, order])
-
-
-def _apply(system: Fit, dense: Floats) -> Floats:
-    """L times columns, from the dense L where it is at hand."""
-    return system.inverse @ dense if system.small else system.solve(dense)[0]
 
 
 def _fitted(kind: str, size: float, allowed: float, force: float, soft: float) -> float:

@@ -13,7 +13,7 @@ import numpy as np
 from scipy import sparse
 
 from crosscheck.answer import CaseAnswer
-from crosscheck.audit.completion import BY_RULE, RANK, TOGETHER, Completed, complete
+from crosscheck.audit.completion import BY_RULE, RANK, TOGETHER, Completed, Entries, complete
 from crosscheck.audit.equilibrium import (
     FREE_SUPPORT,
     HINGE,
@@ -21,7 +21,6 @@ from crosscheck.audit.equilibrium import (
     MEMBER,
     Equations,
     Sparse,
-    blocks_of_rows,
     couple_values,
     end_index,
     equations,
@@ -185,14 +184,13 @@ class _Judge:
         if not len(touched):
             return matrix, constant, lost
         scale = np.where(self.system.couples, 1 / self.scales.length, 1.0)
-        rows_of = blocks_of_rows(self.system)
-        correction: list[tuple[Ints, Ints, Floats]] = []
-        for block in touched.tolist():
-            rows = rows_of[block]
-            taken, own = self._used_up(rows, block, scale)
-            correction.append((np.repeat(rows, len(rows)), np.tile(rows, len(rows)), taken.ravel()))
-            lost[rows] = own < 1e-6
-        row, column, entry = (np.concatenate([c[k] for c in correction]) for k in range(3))
+        taken, rows = self._used_up(touched, scale)
+        there = (rows[:, :, None] >= 0) & (rows[:, None, :] >= 0)
+        row = np.broadcast_to(rows[:, :, None], there.shape)[there]
+        column = np.broadcast_to(rows[:, None, :], there.shape)[there]
+        entry = taken[there] * scale[column] / scale[row]
+        own = np.diagonal(taken, axis1=1, axis2=2)
+        lost[rows[rows >= 0]] = 1 - own[rows >= 0] < 1e-6
         project: Sparse = sparse.eye_array(len(constant)) - sparse.coo_array(
             (entry, (row, column)), shape=(len(constant), len(constant))
         )
@@ -205,17 +203,21 @@ class _Judge:
         missing_rows = (abs(s.matrix) @ self.done.missing.astype(float)) > 0
         return np.unique(np.concatenate([s.block[missing_rows], self.done.by[self.done.by >= 0]]))
 
-    def _used_up(self, rows: Ints, block: int, scale: Floats) -> tuple[Floats, Floats]:
-        """Projector of these rows on what used values can account for, and each row's own share outside it."""
-        part = self.system.matrix[rows]
-        columns = np.unique(part.indices)
-        columns = columns[self.done.missing[columns] | (self.done.by[columns] == block)]
-        dense = scale[rows, None] * part[:, columns].toarray()
-        couples = couple_values(self.system.members, self.system.joints)[columns]
-        dense = dense * np.where(couples, self.scales.length, 1.0)
-        taken = dense @ np.linalg.pinv(dense, rcond=RANK)
+    def _used_up(self, blocks: Ints, scale: Floats) -> tuple[Floats, Ints]:
+        """(b, r, r) projectors of each block's rows on what its used values can account for, and those rows (b, r).
+
+        Rows that no used value enters are left alone, and do not appear.
+        """
+        s = self.system
+        couples = couple_values(s.members, s.joints)
+        columns = sparse.diags_array(np.where(couples, self.scales.length, 1.0))
+        scaled: Sparse = sparse.diags_array(scale) @ s.matrix @ columns
+        entries = Entries.of(scaled, s.block)
+        used = self.done.missing[entries.column] | (self.done.by[entries.column] == entries.block)
+        stack = entries.only(used & np.isin(entries.block, blocks)).stack()
+        taken = stack.dense @ np.linalg.pinv(stack.dense, rcond=RANK)
         taken[np.abs(taken) < 1e-12] = 0.0
-        return taken * scale[rows] / scale[rows, None], 1 - np.diag(taken)
+        return taken, stack.rows
 
     def _check(self, k: int, residual: float, allowed: float, judged: bool, used: bool) -> StaticCheck:
         s = self.system
