@@ -9,11 +9,74 @@ import numpy as np
 
 from crosscheck.answer import CaseAnswer, Undetermined
 from crosscheck.frame.loads import LoadTable
-from crosscheck.frame.model import Bools, Floats, Frame, Ints
+from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.frame.stations import Stations, stations
 from crosscheck.opinions.slope_deflection.members import SplitLoads, load_moments, split_loads, thermal_curvature
 
 HALVINGS = 60
+
+
+class LoadRuns:
+    """What the loads of one case add up to from each member's `from` joint to a place: power sums past each load."""
+
+    def __init__(self, frame: Frame, table: LoadTable) -> None:
+        self.frame, self.table = frame, table
+        self._split: SplitLoads = split_loads(frame, table)
+
+    def sums(self, member: Ints, x: Floats, side: Ints) -> tuple[Floats, Floats, Floats]:
+        """(n,) each: minus the along forces, the across forces, and the sagging moment about the place of across forces
+        and couples, of all loads before x (or at x where side is +1)."""
+        table = self.table
+        axial, shear, moment = np.zeros(len(x)), np.zeros(len(x)), np.zeros(len(x))
+        point, load = _pairs(member, table.point_member)
+        past = x[point] - table.point_at[load]
+        acts = (past > 0) | ((past == 0) & (side[point] > 0))
+        point, load, past = point[acts], load[acts], past[acts]
+        np.add.at(axial, point, -table.point_along[load])
+        np.add.at(shear, point, table.point_across[load])
+        np.add.at(moment, point, table.point_across[load] * past + table.point_couple[load])
+        point, zeroth_along, zeroth, first, _ = self._line_effects(member, x)
+        np.add.at(axial, point, -zeroth_along)
+        np.add.at(shear, point, zeroth)
+        np.add.at(moment, point, first)
+        return axial, shear, moment
+
+    def bends(self, member: Ints, x: Floats) -> tuple[Floats, Floats]:
+        """(n,) each, of loads on the flexible part before x: the double integral of their moment, and the integral of
+        their across force."""
+        table = self.table
+        area, pull = np.zeros(len(x)), np.zeros(len(x))
+        point, load = _pairs(member, table.point_member)
+        past = x[point] - table.point_at[load]
+        acts = (past > 0) & (self._split.point_place[load] == 1)
+        point, load, past = point[acts], load[acts], past[acts]
+        force, couple = table.point_across[load], table.point_couple[load]
+        np.add.at(area, point, force * past**3 / 6 + couple * past**2 / 2)
+        np.add.at(pull, point, force * past)
+        point, _, _, first, third = self._line_effects(member, x, flexible=True)
+        np.add.at(area, point, third / 6)
+        np.add.at(pull, point, first)
+        return area, pull
+
+    def _line_effects(
+        self, member: Ints, x: Floats, flexible: bool = False
+    ) -> tuple[Ints, Floats, Floats, Floats, Floats]:
+        """For pairs of a place and a line load begun before it: the place, the along force, and the integrals of
+        w, w d and w d^3 over the part before it, d being the distance back from the place."""
+        t = self._split
+        rows = np.flatnonzero(t.line_place == 1) if flexible else np.arange(len(t.line_member))
+        point, pick = _pairs(member, t.line_member[rows])
+        load = rows[pick]
+        begun = x[point] > t.line_start[load]
+        point, load = point[begun], load[begun]
+        start, end = t.line_start[load], np.minimum(t.line_end[load], x[point])
+        back, half = x[point] - (start + end) / 2, (end - start) / 2
+        # Middle intensity of the part before the place; distance runs backwards, hence the turned gradient.
+        shifted = (start + end) / 2 - (t.line_start[load] + t.line_end[load]) / 2
+        mean = t.line_mean[load] + t.line_slope[load] * shifted[:, None]
+        along = 2 * half * mean[:, 0]
+        zeroth, first, _, third = load_moments(mean[:, 1], -t.line_slope[load, 1], back, half)
+        return point, along, zeroth, first, third
 
 
 class ClosedFormSpans:
@@ -52,45 +115,13 @@ class ClosedFormSpans:
 
     def _forces(self, name: str, member: Ints, x: Floats, side: Ints) -> tuple[Floats, Floats, Floats]:
         """Axial, shear and moment by statics from the `from` end, at the joint."""
-        ends, table = self.cases[name].ends[member, 0], self.tables[name]
-        axial, shear = ends[:, 0].copy(), ends[:, 1].copy()
-        moment = ends[:, 2] + ends[:, 1] * x
-        point, load = _pairs(member, table.point_member)
-        past = x[point] - table.point_at[load]
-        acts = (past > 0) | ((past == 0) & (side[point] > 0))
-        point, load, past = point[acts], load[acts], past[acts]
-        np.add.at(axial, point, -table.point_along[load])
-        np.add.at(shear, point, table.point_across[load])
-        np.add.at(moment, point, table.point_across[load] * past + table.point_couple[load])
-        point, zeroth_along, zeroth, first, _ = self._line_effects(name, member, x)
-        np.add.at(axial, point, -zeroth_along)
-        np.add.at(shear, point, zeroth)
-        np.add.at(moment, point, first)
-        return axial, shear, moment
-
-    def _line_effects(
-        self, name: str, member: Ints, x: Floats, flexible: bool = False
-    ) -> tuple[Ints, Floats, Floats, Floats, Floats]:
-        """For pairs of a place and a line load begun before it: the place, the along force, and the integrals of
-        w, w d and w d^3 over the part before it, d being the distance back from the place."""
-        t = self._split[name]
-        rows = np.flatnonzero(t.line_place == 1) if flexible else np.arange(len(t.line_member))
-        point, pick = _pairs(member, t.line_member[rows])
-        load = rows[pick]
-        begun = x[point] > t.line_start[load]
-        point, load = point[begun], load[begun]
-        start, end = t.line_start[load], np.minimum(t.line_end[load], x[point])
-        back, half = x[point] - (start + end) / 2, (end - start) / 2
-        # Middle intensity of the part before the place; distance runs backwards, hence the turned gradient.
-        shifted = (start + end) / 2 - (t.line_start[load] + t.line_end[load]) / 2
-        mean = t.line_mean[load] + t.line_slope[load] * shifted[:, None]
-        along = 2 * half * mean[:, 0]
-        zeroth, first, _, third = load_moments(mean[:, 1], -t.line_slope[load, 1], back, half)
-        return point, along, zeroth, first, third
+        ends = self.cases[name].ends[member, 0]
+        axial, shear, moment = self._runs[name].sums(member, x, side)
+        return ends[:, 0] + axial, ends[:, 1] + shear, ends[:, 2] + ends[:, 1] * x + moment
 
     @cached_property
-    def _split(self) -> dict[str, SplitLoads]:
-        return {name: split_loads(self.frame, table) for name, table in self.tables.items()}
+    def _runs(self) -> dict[str, LoadRuns]:
+        return {name: LoadRuns(self.frame, table) for name, table in self.tables.items()}
 
     # --- deflection ---
 
@@ -122,25 +153,12 @@ class ClosedFormSpans:
         t, table = self.frame.member_table, self.tables[name]
         d = x - t.zone[member, 0]
         shear_1, moment_1 = self._face_actions(name)
-        area = moment_1[member] * d**2 / 2 + shear_1[member] * d**3 / 6
-        pull = shear_1[member] * d
-        point, load = _pairs(member, table.point_member)
-        past = x[point] - table.point_at[load]
-        acts = (past > 0) & self._on_flexible(table, load)
-        point, load, past = point[acts], load[acts], past[acts]
-        force, couple = table.point_across[load], table.point_couple[load]
-        np.add.at(area, point, force * past**3 / 6 + couple * past**2 / 2)
-        np.add.at(pull, point, force * past)
-        point, _, _, first, third = self._line_effects(name, member, x, flexible=True)
-        np.add.at(area, point, third / 6)
-        np.add.at(pull, point, first)
+        area, pull = self._runs[name].bends(member, x)
+        area += moment_1[member] * d**2 / 2 + shear_1[member] * d**3 / 6
+        pull += shear_1[member] * d
         curve = thermal_curvature(self.frame, table)[member] * d**2 / 2
         shear = pull / (t.G * t.shear_area)[member] if self.frame.analysis.shear == "elastic" else 0.0
         return np.asarray(area / (t.E * t.I)[member] + curve - shear)
-
-    def _on_flexible(self, table: LoadTable, load: Ints) -> Bools:
-        t, m, at = self.frame.member_table, table.point_member[load], table.point_at[load]
-        return np.asarray((at >= t.zone[m, 0]) & (at <= t.length[m] - t.zone[m, 1]))
 
     def _face_actions(self, name: str) -> tuple[Floats, Floats]:
         """Shear and moment just inside the `from` zone, before any load at the face itself, (m,) each."""
