@@ -8,7 +8,7 @@ import json
 import os
 import time
 import tomllib
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from importlib.metadata import version
 from pathlib import Path
@@ -31,7 +31,7 @@ FORMAT = "crosscheck record/1"
 DIGITS = 10
 """Significant digits on record: far finer than the tolerance, and coarse enough that machines do not differ in them."""
 NOISE = 1e-11
-"""Of the largest value of its kind: rounding, put on record as zero."""
+"""Of the case's scale of its kind: rounding, put on record as zero."""
 UNDETERMINED = "undetermined"
 QUANTITIES = {"ends": END_QUANTITIES, "joints": JOINT_QUANTITIES, "reactions": REACTION_QUANTITIES}
 PATIENCE = 30.0
@@ -97,15 +97,17 @@ def _entry(result: Opinions, reason: str, today: datetime.date, claims: list[str
         "opinions": list(result.answers),
         "agree_to": float(f"{max(closeness(result.answers, j) for j in result.judgements.values()):.1e}"),
     }
-    return Entry(facts, {name: _tables(frame, _agreed(result, name)) for name in result.names})
+    return Entry(facts, {name: _agreed_tables(result, name) for name in result.names})
 
 
-def _agreed(result: Opinions, name: str) -> CaseAnswer:
-    return next(a.cases[name] for a in result.answers.values() if name in a.cases)
+def _agreed_tables(result: Opinions, name: str) -> dict[str, Rows]:
+    agreed = next(a.cases[name] for a in result.answers.values() if name in a.cases)
+    return _tables(result.frame, agreed, result.judgements[name].scales)
 
 
-def _tables(frame: Frame, case: CaseAnswer) -> dict[str, Rows]:
-    case = CaseAnswer(*(_quiet(v) for v in (case.ends, case.joints, case.reactions)))
+def _tables(frame: Frame, case: CaseAnswer, scales: Scales) -> dict[str, Rows]:
+    tables = zip((case.ends, case.joints, case.reactions), QUANTITIES.values(), strict=True)
+    case = CaseAnswer(*(_quiet(values, [scales.of(q) for q in quantities]) for values, quantities in tables))
     ends = {
         f"{m.name} at {joint}": _row(case.ends[k, end])
         for k, m in enumerate(frame.members.values())
@@ -116,10 +118,9 @@ def _tables(frame: Frame, case: CaseAnswer) -> dict[str, Rows]:
     return {"ends": ends, "joints": joints, "reactions": reactions}
 
 
-def _quiet(values: Floats) -> Floats:
-    """Rounding noise as plain zero; forces and moments (or lengths and rotations) apart, by the last index."""
-    largest = np.nanmax(np.abs(values), axis=tuple(range(values.ndim - 1)), initial=0.0)
-    return np.where(np.abs(values) <= NOISE * largest, 0.0, values)
+def _quiet(values: Floats, scales: Sequence[float]) -> Floats:
+    """Rounding noise as plain zero, by the case's scale of each column: it would differ from machine to machine."""
+    return np.where(np.abs(values) <= NOISE * np.asarray(scales), 0.0, values)
 
 
 def _row(values: Any) -> tuple[float | None, ...]:
@@ -293,7 +294,7 @@ def against_record(result: Opinions, record: Record) -> tuple[list[Difference], 
     compared = 0
     for name in [*result.names, *(n for n in record.now.values if n not in result.names)]:
         if name in result.judgements:
-            ours, scales = _tables(result.frame, _agreed(result, name)), result.judgements[name].scales
+            ours, scales = _agreed_tables(result, name), result.judgements[name].scales
         else:
             ours, scales = {}, Scales(1.0, 1.0, 1.0, 1.0)
         differences, count = compare_tables(name, ours, record.now.values.get(name, {}), scales, ("now", "on record"))
