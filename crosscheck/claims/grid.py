@@ -14,7 +14,7 @@ from crosscheck.claims.names import Names, without_prefix
 from crosscheck.claims.numbers import is_blank
 from crosscheck.claims.scan import RawTable, is_number
 from crosscheck.claims.split import Cell, Separator, join_units, separator_of, split, wide_cells
-from crosscheck.claims.words import Head, head_of, is_header_word, unit_of
+from crosscheck.claims.words import RESULT_NOUNS, Head, head_of, is_header_word, unit_of
 
 Row = list[str]
 
@@ -187,10 +187,11 @@ def _blank_heads(table: RawTable, spans: list[tuple[int, int]], aligned: bool) -
     if not table.heads:
         return [Head("")] * width
     best: list[Head] = []
-    for way in (_by_wide, _by_words, _by_single_words, _by_place):
+    for way in (_by_wide, _by_words, _by_single_words, _by_words_with_ends, _by_place):
         stacked = [""] * width
         for depth, (_, text) in enumerate(table.heads):
-            row = way(text, spans, aligned, depth < len(table.heads) - 1)
+            units = wide_or_single(text)
+            row = _under(units, spans, aligned) if depth and _all_units([c.text for c in units]) else way(text, spans, aligned, depth < len(table.heads) - 1)
             if row is None:
                 break
             stacked = [_put_together(a, b) for a, b in zip(stacked, row, strict=True)]
@@ -199,6 +200,19 @@ def _blank_heads(table: RawTable, spans: list[tuple[int, int]], aligned: bool) -
             if _understood(heads) > _understood(best):
                 best = heads
     return best or [Head("")] * width
+
+
+def wide_or_single(text: str) -> list[Cell]:
+    """Cells of a line of units."""
+    wide = wide_cells(text)
+    return wide if all(unit_of(c.text.strip("[](){}")) for c in wide) else split(text, "blank")
+
+
+def _under(cells: list[Cell], spans: list[tuple[int, int]], aligned: bool) -> Row | None:
+    """A line of units under the heads: by place, or the last columns where the rows do not stand in line."""
+    if len(cells) > len(spans):
+        return None
+    return _placed(cells, spans, aligned)
 
 
 def _understood(heads: list[Head]) -> float:
@@ -218,6 +232,10 @@ def _by_words(text: str, spans: list[tuple[int, int]], aligned: bool, group: boo
 
 def _by_single_words(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
     return _by_count(_phrases(split(text, "blank"), _is_units_of), spans, aligned, group)
+
+
+def _by_words_with_ends(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
+    return _by_count(_phrases(split(text, "blank"), _belongs_or_end), spans, aligned, group)
 
 
 def _by_count(words: list[Cell], spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
@@ -287,6 +305,15 @@ _PAIRS = {
 
 def _belongs(before: str, word: str) -> bool:
     return _is_units_of(before, word) or word.lower() in _PAIRS.get(before.lower().split()[-1], set())
+
+
+_END_WORDS = frozenset({"i", "j", "1", "2", "start", "end", "a", "b", "from", "to", "left", "right"})
+
+
+def _belongs_or_end(before: str, word: str) -> bool:
+    """Also the end of the member to its result ("N i (kN)")."""
+    head = head_of(before)
+    return _belongs(before, word) or (word.lower() in _END_WORDS and head.noun in RESULT_NOUNS and head.end is None)
 
 
 def _is_units_of(before: str, word: str) -> bool:

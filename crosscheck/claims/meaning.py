@@ -12,7 +12,7 @@ from crosscheck.claims.grid import Grid
 from crosscheck.claims.names import Names, plain
 from crosscheck.claims.numbers import is_blank, parse_number
 from crosscheck.claims.scan import RawTable, is_number
-from crosscheck.claims.words import NUMBERED_AXIS, Head, Size
+from crosscheck.claims.words import NUMBERED_AXIS, RESULT_NOUNS, Head, Size
 from crosscheck.frame.units import ANGLE, FORCE, LENGTH, MOMENT
 
 START_WORDS = frozenset({"i", "start", "from", "1", "left", "near", "a", "first", "begin", "end1", "endi", "bottom", "0"})
@@ -47,6 +47,8 @@ class Meaning:
 
 def meaning_of(grid: Grid, table: RawTable, names: Names) -> Meaning:
     """Kind and roles of the columns of one table."""
+    if table.heads and grid.heads and not any(h.text for h in grid.heads):
+        return Meaning("", tuple(Role() for _ in grid.heads), "the heads do not match the columns below them")
     heads = _numbered(_filled(grid, table, names))
     roles = _named_roles(heads, grid, names)
     kind, why = _kind(heads, roles, table)
@@ -216,9 +218,9 @@ def _echo_kind(heads: list[Head], names_of: set[str], heading: str, nouns: set[s
 # -- columns of values
 
 _TARGETS = {
-    "end": {"axial": "N Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx"},
-    "span": {"axial": "N Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx", "across": "w D Dy Dz wy wz"},
-    "extreme": {"axial": "N Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx", "across": "w D Dy Dz wy wz"},
+    "end": {"axial": "N Nx Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx"},
+    "span": {"axial": "N Nx Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx", "across": "w D Dy Dz wy wz"},
+    "extreme": {"axial": "N Nx Fx F", "shear": "V Vy Vz Fy Fz", "moment": "M Mz My Mx", "across": "w D Dy Dz wy wz"},
     "reaction": {"fx": "Fx Rx xx Vx", "fy": "Fy Fz Ry Rz xy xz V Vy Vz", "moment": "M Mz My Mx"},
     "displacement": {"dx": "Dx xx", "dy": "Dy Dz xy xz w V wy wz", "rotation": "T Tz Ty Tx Rz Ry Rx"},
 }
@@ -241,6 +243,7 @@ def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tupl
         roles[k] = Role("station", unit=heads[k].unit, share=heads[k].share)
     groups = sorted({(h.end, h.which) for h in heads if h.noun in "NVMFRDTwx"}, key=str)
     why = ""
+    left = {k for k, h in enumerate(heads) if h.noun in RESULT_NOUNS and not roles[k].name}
     for end, which in groups:
         mine = [k for k, h in enumerate(heads) if (h.end, h.which) == (end, which) and not roles[k].name]
         for quantity, wanted in _TARGETS[kind].items():
@@ -250,6 +253,10 @@ def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tupl
             if chosen is not None:
                 axes = "open" if heads[chosen].noun == "F" and heads[chosen].axis else ""
                 roles[chosen] = Role("value", quantity, end, which, heads[chosen].unit, axes=axes)
+                left -= set(found)
+    idle = [heads[k].text for k in sorted(left) if not roles[k].name and not _all_zero(column(grid, k))]
+    if idle and not why:
+        why = f"it is not clear what the column{'s' if len(idle) > 1 else ''} {', '.join(idle)} hold{'' if len(idle) > 1 else 's'}"
     return roles, why
 
 

@@ -78,13 +78,14 @@ def _one_point(digits: str, decimal_comma: bool) -> str | None:
 
 def commas_are_decimal(texts: Iterable[str]) -> bool | None:
     """Does a comma stand before the decimals, told from all numbers of a table; None where nothing tells."""
-    unsure = False
+    unsure = whole = False
     for text in texts:
         body = _GROUP.sub("", text)
         commas, points = body.count(","), body.count(".")
         if not commas:
             if points == 1 and not re.search(r"\d\.\d{3}(?!\d)", body):
                 return False
+            whole = whole or (not points and any(c in "123456789" for c in body))
             continue
         if points:
             return body.rfind(",") > body.rfind(".")
@@ -93,4 +94,5 @@ def commas_are_decimal(texts: Iterable[str]) -> bool | None:
         if not re.fullmatch(r"\D*[1-9]\d{0,2},\d{3}(?!\d)\D*", body):
             return True
         unsure = True
-    return None if unsure else False
+    # Decimals are printed to a fixed number of places: whole numbers beside "12,345" say that its comma parts thousands.
+    return None if unsure and not whole else False

@@ -136,7 +136,20 @@ class _Reader:
         elif not meaning.kind.startswith("echo"):
             if meaning.why:
                 self.undecided.append(f"table {number}: {meaning.why}")
-            self.entries += _in_order(list(self._rows(number, raw, grid, meaning)))
+            self._keep(_in_order(list(self._rows(number, raw, grid, meaning))), raw)
+
+    def _keep(self, entries: list[Entry], raw: RawTable) -> None:
+        """Entries of a table; end values whose end nothing tells are not understood."""
+        lost = {e.line for e in entries if e.kind == "end" and e.end is None and e.place is None}
+        self.entries += [e for e in entries if e.line not in lost]
+        rows = [(line, text, "which end of the member is not said") for line, text in raw.rows if line in lost]
+        self.odd += rows
+        self._trace(rows)
+        if rows:
+            self.undecided.append(
+                f"{len(rows)} rows from line {rows[0][0]} do not say which end of the member they are for; "
+                "name the joint or the end, or say what the columns are with --columns"
+            )
 
     def _unused(self, raw: RawTable, meaning: Meaning) -> None:
         rows = [(line, text, meaning.why) for line, text in raw.rows]

@@ -23,9 +23,15 @@ _CASE = re.compile(
 )
 _MEMBER = re.compile(r"(?:members?|memb|mbr|beams?|elements?|elem|bars?|rods?|columns?)\b[\s:#=.]*(\S.*)", re.IGNORECASE)
 _TOTAL = re.compile(r"(?:sum|totals?|sigma|\u03a3|\u2211|sub-?total|resultant|average|mean|applied|check)\b|[\u03a3\u2211]", re.I)
+_ABOUT_A_MEMBER = re.compile(r"\b(?:from|to|length|section|l\s*=|between)\b", re.IGNORECASE)
 _TITLE = re.compile(
     r"\b(?:forces|reactions|displacements|moments|results|rotations|deflections|actions|translations|values|coordinates"
     r"|summary|properties|table)\b",
+    re.IGNORECASE,
+)
+_UNITS_SENTENCE = re.compile(
+    r"^\W*(?:all\s+)?units?\b|\b(?:forces?|moments?|displacements?|deflections?|rotations?|lengths?|reactions?|values|results)\s+"
+    r"(?:are\s+)?(?:given\s+)?in\s+\S",
     re.IGNORECASE,
 )
 _DATE = re.compile(
@@ -64,6 +70,12 @@ def cells_of(line: str) -> tuple[Separator, list[Cell]]:
     separator = separator_of(line)
     cells = split(line, separator)
     return separator, (join_units(cells) if separator == "blank" else cells)
+
+
+def _end_numbers(filled: list[str]) -> int:
+    """How many cells are a 1 or 2 behind a result's symbol ("N 1"): ends of members in a head."""
+    pairs = zip(filled, filled[1:], strict=False)
+    return sum(b in ("1", "2") and head_of(a).noun in RESULT_NOUNS for a, b in pairs)
 
 
 def is_number(text: str) -> bool:
@@ -130,15 +142,18 @@ class _Scanner:
             assert self.table
             self.table.heads.append((number, text))
             return "head", "units"
-        if numbers or not self._says_columns(text, filled, separator):
+        if numbers > _end_numbers(filled) or not self._says_columns(text, filled, separator):
             return None
         if self._head_is_open() and len(self.table.heads) < 3:  # type: ignore[union-attr]
             assert self.table
             self.table.heads.append((number, text))
             return "head", "second line"
-        if self.table and [plain(t) for _, t in self.table.heads][:1] == [plain(text)] and not self.heading:
-            self.table = self._fresh(list(self.table.heads), self.table.heading)
-            return "head", "repeated"
+        if self.table and self.table.rows and plain(text) in {plain(t) for _, t in self.table.heads}:
+            if all(h in self.table.heading for h in self.heading):
+                self.heading = []
+                return "head", "repeated"
+        if self.table is not None and self.table.rows and self.table.blocks[-1] is self.block:
+            self.block = None  # the heading of a member holds for the table below it
         self.table = self._fresh([(number, text)], " / ".join(self.heading))
         self.heading = []
         return "head", ""
@@ -160,6 +175,8 @@ class _Scanner:
     @staticmethod
     def _says_columns(text: str, filled: list[str], separator: Separator) -> bool:
         if separator == "blank" and _TITLE.search(text) and len(wide_cells(text)) == 1:
+            return False
+        if _UNITS_SENTENCE.search(text):
             return False
         groups = [filled]
         if separator == "blank":
@@ -219,6 +236,8 @@ class _Scanner:
         label = found.group(1).strip(" :.") if found else tidy.rstrip(":").strip()
         if len(filled) > 6 or (not found and (numbers or not text.rstrip().endswith(":"))):
             return None
+        if len(filled) > 2 and (separator_of(text) != "blank" or numbers and not _ABOUT_A_MEMBER.search(tidy)):
+            return None
         hit = self.names.member(label)
         if hit is None:
             first = re.split(r"[,(;]|\s(?:from|length|section|l\s*=)\b", label, maxsplit=1)[0].strip(" :.")
@@ -239,8 +258,8 @@ class _Scanner:
 
     def _heading(self, number: int, text: str) -> tuple[str, str]:
         self.out.headings.append((number, text))
-        if self.table is not None and self.table.rows:
-            self.heading = self.heading[-3:]
+        if _UNITS_SENTENCE.search(text):
+            return "heading", "units"
         self.heading.append(" ".join(text.split())[:200])
         self.heading = self.heading[-6:]
         return "heading", ""

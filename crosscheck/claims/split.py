@@ -15,7 +15,7 @@ _BAR = str.maketrans({"\u2502": "|", "\u2503": "|", "\u2551": "|", "\u00a6": "|"
 _BLANK = re.compile(r"[^\s]+")
 _WIDE = re.compile(r"\S+(?:[ \u00a0]\S+)*")
 _RULE = re.compile(r"[\s\-=_+*~.|:#\u2500-\u257f\u2014\u2013<>]*")
-_GROUPED = re.compile(r"(?<![\w.,])[+-]?\d{1,3}(?: \d{3})+(?=[.,]\d)")
+_GROUPED = re.compile(r"(?<=  )[+-]?[1-9]\d{0,2}(?: \d{3})+(?=[.,]\d)")
 
 
 class Cell(NamedTuple):
@@ -45,7 +45,8 @@ def separator_of(line: str) -> Separator:
 def _crowded(line: str) -> bool:
     """Bars round groups of blank-separated numbers are ornament."""
     parts = line.translate(_BAR).split("|")
-    return any(sum(parse_number(t) is not None for t in part.split()) > 1 for part in parts)
+    tokens = [part.split() for part in parts]
+    return any(len(ts) > 1 and sum(parse_number(t) is not None for t in ts) == len(ts) for ts in tokens)
 
 
 def _comma_parts(line: str) -> bool:
@@ -65,7 +66,9 @@ def _comma_parts(line: str) -> bool:
 def split(line: str, separator: Separator) -> list[Cell]:
     """Cells of the line. Blanks: one cell a word, names and units still to be put together."""
     if separator == "blank":
-        line = _GROUPED.sub(lambda m: m.group().replace(" ", "\u00a0"), line.translate(_BAR).replace("|", " "))
+        line = line.translate(_BAR).replace("|", " ")
+        if "  " in line.strip():  # only where wider gaps part the cells can one blank part thousands
+            line = _GROUPED.sub(lambda m: m.group().replace(" ", "\u00a0"), line)
         return [Cell(m.start(), m.end(), m.group()) for m in re.finditer(r"[^\s\u00a0]+(?:\u00a0[^\s\u00a0]+)*", line)]
     if separator == "bar":
         body = line.translate(_BAR).strip()

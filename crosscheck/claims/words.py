@@ -172,6 +172,8 @@ def _from_tokens(text: str, tokens: list[str]) -> Head:
         candidate = _NOUNS.get(token, "")
         if candidate == "end" and tokens.index(token) == 0 and any(t in ("node", "joint", "jt") for t in tokens[1:]):
             end, candidate = 1, ""  # "end joint" beside "start joint"
+        if candidate == "end" and noun in RESULT_NOUNS:
+            end, candidate = 1, ""  # "axial force end" beside "axial force start"
         if candidate:
             if not noun or _RANK.get(candidate, 99) < _RANK.get(noun, 99):
                 noun = candidate

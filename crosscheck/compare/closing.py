@@ -17,6 +17,7 @@ from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.fit import Choice, Fitted, Fitter
 from crosscheck.compare.fit_conventions import Batch, distance, placed
 from crosscheck.compare.fit_signs import Senses, narrowed, senses
+from crosscheck.compare.fit_stations import with_stations
 from crosscheck.compare.fit_values import Reference
 from crosscheck.compare.tolerance import Tolerance
 from crosscheck.frame.model import Frame
@@ -86,6 +87,7 @@ class _Closer:
         silent = [n for n in cases if not any(n in a.cases for a in self.answers.values())]
         undecided = [f"no opinion speaks for {n}" for n in silent]
         entries = [e for e in entries if e.case not in silent]
+        entries = with_stations(entries, self.frame)
         batches = _batches(entries, self.frame, cases)
         fitter = Fitter(self.frame.units, [self._reference(n) for n in cases if n not in silent], self.tolerance)
         fitted = [narrowed(f, self.reading.signs) for f in fitter.fit(batches)]
@@ -213,7 +215,7 @@ def _open(fitted: list[Fitted], meant: Senses) -> dict[int, str]:
     out: dict[int, str] = {}
     for f in fitted:
         if f.taken.fits:
-            why = meant.unfixed.get(id(f), "") or _form_unfixed(f) or _unit_unfixed(f)
+            why = meant.unfixed.get(id(f), "") or _form_unfixed(f) or _unit_unfixed(f, fitted)
         else:
             why = _signs_at_odds(f)
         if why:
@@ -231,29 +233,35 @@ def _same_whichever(f: Fitted) -> bool:
 
 
 def _form_unfixed(f: Fitted) -> str:
-    """Another kind of convention that fewer than three values speak against (the plain first one needs none)."""
-    plain = f.choices[0].convention
-    mine = f.taken.convention
-    if (mine.form, mine.rule) == (plain.form, plain.rule):
-        return ""
+    """Another kind of convention that fewer than three values speak against. The plain kind needs none, and members that run as
+    in the frame need none against other directions."""
+    plain, mine = f.choices[0].convention, f.taken.convention
     for other in f.choices:
+        c = other.convention
+        rival = (mine.form != plain.form and c.form != mine.form) or (mine.rule != plain.rule and c.rule == plain.rule)
         against = int((other.bad & other.telling).sum())
-        if not other.fits and against < FIXED_BY and (other.convention.form, other.convention.rule) != (mine.form, mine.rule):
+        if rival and not other.fits and against < FIXED_BY:
             return (
-                f"{against or 'no'} value{'' if against == 1 else 's'} of {f.batch.quantity} tell{'s' if against == 1 else ''} "
-                f'"{mine.words}" from "{other.convention.words}"; state which with signs in a reading file'
+                f"only {against} value{'' if against == 1 else 's'} of {f.batch.quantity} "
+                f'tell{"s" if against == 1 else ""} "{mine.words}" from "{c.words}"; '
+                "state which with signs in a reading file"
             )
     return ""
 
 
-def _unit_unfixed(f: Fitted) -> str:
+def _unit_unfixed(f: Fitted, fitted: list[Fitted]) -> str:
+    """A unit that is not the frame's own needs three values that it fits, of all that share it."""
     unit = f.taken.unit
-    if unit is None or unit.own:
+    if unit is None or unit.own or not _open_and_telling(f):
         return ""
-    telling = int((f.taken.telling & np.isnan(f.batch.factor)).sum())
+    telling = sum(_open_and_telling(g) for g in fitted if g.taken.unit and g.taken.unit.text == unit.text)
     if telling >= FIXED_BY:
         return ""
     return f"{f.batch.quantity} fits in {unit.text}, but too few values ({telling}) fix that; state it with --units"
+
+
+def _open_and_telling(f: Fitted) -> int:
+    return int((f.taken.telling & ~f.taken.bad & np.isnan(f.batch.factor)).sum())
 
 
 def _signs_at_odds(f: Fitted) -> str:

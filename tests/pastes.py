@@ -1,0 +1,651 @@
+"""A generator of pastes: right results of thirty frames, printed in the ways that people's analyses print them.
+
+Every paste is drawn from a seed: layout, separator, number writing, units, signs, names, heads, noise, encoding and cases are
+each drawn on their own. The sign formulas stand here a second time on purpose: nothing of crosscheck.claims or
+crosscheck.compare makes a paste. Run `python -m tests.pastes 2000` for the figures by layout.
+"""
+
+from __future__ import annotations
+
+import sys
+from collections import Counter
+from collections.abc import Callable
+from dataclasses import dataclass, field
+from functools import lru_cache
+from random import Random
+from typing import Any
+
+import numpy as np
+
+from crosscheck import check
+from crosscheck.claims.decode import decode
+from crosscheck.claims.read import read_claim_text
+from crosscheck.claims.reading import FrameNames, ReadingOptions
+from crosscheck.compare.claim import ClaimComparison
+from crosscheck.compare.closing import close
+from crosscheck.compare.differences import worst
+from crosscheck.compare.tolerance import CLAIM
+from crosscheck.frame.model import Frame
+from crosscheck.frame.reader import read_frame_text
+
+FRAMES = 30
+
+# --- thirty frames
+
+
+def frame_text(k: int) -> str:
+    """Frame k as a file: portals, grids, gables, beams and trusses with enough members and supports to fix any sign."""
+    r = Random(f"frame {k}")
+    shape = ("grid", "grid", "gable", "beam", "truss", "portals")[k % 6]
+    joints, members, feet, roofs = _SHAPES[shape](r)
+    style = k % 4
+    names = {j: _joint_name(n, style) for n, j in enumerate(joints)}
+    out = [f'title = "Frame {k}"', f'units = "{("kN m", "kN m", "N mm", "kip ft")[k % 4]}"', "[materials.s]"]
+    out += ['E = "210 GPa"', "[sections.s]", 'I = "12000 cm^4"', 'A = "60 cm^2"', "[joints]"]
+    unit = {0: "m", 1: "m", 2: "m", 3: "m"}[k % 4]
+    out += [f'"{names[j]}" = ["{x} {unit}", "{y} {unit}"]' for j, (x, y) in joints.items()]
+    out.append("[members]")
+    keys = []
+    for n, (a, b) in enumerate(members):
+        key = _member_name(n, names[a], names[b], style)
+        keys.append(key)
+        out.append(f'"{key}" = {{ from = "{names[a]}", to = "{names[b]}", section = "s", material = "s" }}')
+    out.append("[supports]")
+    out += [f'"{names[j]}" = "{"fixed" if shape in ("grid", "portals") or n == 0 else "pinned"}"' for n, j in enumerate(feet)]
+    out += ["[loads.dead]", "apply = ["]
+    out += [f'  {{ member = "{keys[m]}", uniform = "{r.uniform(8, 20):.2f} kN/m", direction = "down" }},' for m in roofs]
+    out += [f'  {{ member = "{keys[roofs[0]]}", force = "{r.uniform(15, 30):.1f} kN", at = "35%", direction = "down" }},']
+    free = [j for j in joints if j not in feet]
+    out += ["]", "[loads.wind]", "apply = ["]
+    out += [f'  {{ joint = "{names[j]}", force = "{r.uniform(8, 25):.1f} kN", direction = {r.choice([0, 0, 20, 160])} }},'
+            for j in (r.sample(free, min(3, len(free))) if free else [])]  # fmt: skip
+    out += [f'  {{ member = "{keys[0]}", uniform = "{r.uniform(3, 6):.2f} kN/m", direction = "across" }},']
+    out += [f'  {{ member = "{keys[-1]}", force = "{r.uniform(5, 9):.2f} kN", at = "60%", direction = -60 }},', "]"]
+    if k % 3 == 0:
+        out += ["[combinations]", "strength = { dead = 1.35, wind = 1.5 }"]
+    return "\n".join(out) + "\n"
+
+
+def _grid(r: Random) -> tuple[Any, ...]:
+    bays, storeys = r.choice([2, 3]), r.choice([1, 2])
+    joints, members, roofs = {}, [], []
+    for i in range(bays + 1):
+        for s in range(storeys + 1):
+            joints[i, s] = (round(i * 5.5 + r.uniform(-0.3, 0.3), 2), round(s * 3.4, 2))
+    for i in range(bays + 1):
+        members += [((i, s), (i, s + 1)) for s in range(storeys)]
+    for s in range(1, storeys + 1):
+        for i in range(bays):
+            roofs.append(len(members))
+            members.append(((i, s), (i + 1, s)))
+    return joints, members, [(i, 0) for i in range(bays + 1)], roofs
+
+
+def _portals(r: Random) -> tuple[Any, ...]:
+    joints = {j: (round(x + r.uniform(-0.2, 0.2), 2), y) for j, (x, y) in
+              {0: (0, 0), 1: (0, 4), 2: (6, 4.5), 3: (6, 0), 4: (11, 4), 5: (11, 0.5)}.items()}  # fmt: skip
+    return joints, [(0, 1), (1, 2), (3, 2), (2, 4), (4, 5)], [0, 3, 5], [1, 3]
+
+
+def _gable(r: Random) -> tuple[Any, ...]:
+    joints = {0: (0, 0), 1: (0, 4), 2: (5, round(r.uniform(5, 6.5), 2)), 3: (10, 4), 4: (10, 0), 5: (15, 5.2), 6: (20, 4), 7: (20, 0)}
+    return joints, [(0, 1), (1, 2), (2, 3), (4, 3), (3, 5), (5, 6), (6, 7)], [0, 4, 7], [1, 2, 4, 5]
+
+
+def _beam(r: Random) -> tuple[Any, ...]:
+    spans = r.choice([3, 4, 5])
+    x = np.cumsum([0, *[round(r.uniform(4, 7), 1) for _ in range(spans)]])
+    joints = {i: (round(float(x[i]), 2), 0) for i in range(spans + 1)}
+    joints[spans + 1] = (round(float(x[-1]) + 1.5, 2), round(r.uniform(0.5, 1.5), 2))
+    members = [(i, i + 1) for i in range(spans + 1)]
+    return joints, members, list(range(spans + 1)), list(range(spans))
+
+
+def _truss(r: Random) -> tuple[Any, ...]:
+    n = r.choice([3, 4])
+    h = round(r.uniform(1.8, 2.6), 2)
+    joints: dict[Any, Any] = {("b", i): (3 * i, 0) for i in range(n + 1)} | {("t", i): (3 * i + 1.5, h) for i in range(n)}
+    members = [(("b", i), ("b", i + 1)) for i in range(n)] + [(("t", i), ("t", i + 1)) for i in range(n - 1)]
+    for i in range(n):
+        members += [(("b", i), ("t", i)), (("t", i), ("b", i + 1))]
+    return joints, members, [("b", 0), ("b", n), ("b", 1)], [n, n + 1]
+
+
+_SHAPES: dict[str, Callable[[Random], tuple[Any, ...]]] = {
+    "grid": _grid, "portals": _portals, "gable": _gable, "beam": _beam, "truss": _truss,
+}  # fmt: skip
+
+
+def _joint_name(n: int, style: int) -> str:
+    return ("ABCDEFGHJKLMNPQRSTUVW"[n], str(n + 1), f"N{n + 1}", f"J{n + 1:02d}")[style]
+
+
+def _member_name(n: int, a: str, b: str, style: int) -> str:
+    return (f"{a}-{b}", str(n + 1), f"M{n + 1}", f"B{n + 1}")[style]
+
+
+@dataclass(frozen=True)
+class Known:
+    """A frame with its opinions."""
+
+    frame: Frame
+    opinions: check.Opinions
+
+    @property
+    def names(self) -> FrameNames:
+        return FrameNames.of(self.frame)
+
+
+@lru_cache(maxsize=None)
+def known(k: int) -> Known:
+    frame = read_frame_text(frame_text(k), f"frame{k}.toml")
+    return Known(frame, check.ask(frame))
+
+
+# --- what a paste looks like
+
+LAYOUTS = ("ends", "both", "stations", "block", "extremes")
+SEPARATORS = ("tab", "aligned", "single blanks", "comma", "semicolon", "bar")
+WRITINGS = ("fixed", "exponent", "thousands", "unicode minus", "trailing minus", "brackets", "decimal comma", "units stuck")
+UNITS = {  # force, arm of moments, displacement, rotation: words and sizes in N, m, rad
+    "kN m": ("kN", 1e3, "m", 1.0, "mm", 1e-3, "rad", 1.0),
+    "N mm": ("N", 1.0, "mm", 1e-3, "mm", 1e-3, "rad", 1.0),
+    "N m": ("N", 1.0, "m", 1.0, "m", 1.0, "rad", 1.0),
+    "kip ft": ("kip", 4448.2216152605, "ft", 0.3048, "in", 0.0254, "rad", 1.0),
+    "lbf in": ("lbf", 4.4482216152605, "in", 0.0254, "in", 0.0254, "deg", np.pi / 180),
+    "kN cm": ("kN", 1e3, "cm", 0.01, "cm", 0.01, "mrad", 1e-3),
+}  # fmt: skip
+HEADS = {
+    "member": ("Member", "Memb.", "Beam", "Element", "MEMBER NO.", "Bar", "Mbr", "Elem"),
+    "joint": ("Joint", "Node", "Jt", "NODE", "Joint no.", "Point"),
+    "end": ("End", "Joint", "Node", "At", "END"),
+    "axial": ("N", "Axial", "Axial force", "Fx", "AXIAL", "P", "Axial N", "Nx"),
+    "shear": ("V", "Shear", "Shear force", "Fy", "SHEAR", "Vy", "Q", "Shear V"),
+    "moment": ("M", "Moment", "Bending moment", "Mz", "MOMENT", "BM", "M3", "Mom."),
+    "x": ("x", "Station", "Dist.", "Distance", "X", "Position", "Location"),
+    "fx": ("Fx", "Rx", "H", "FX", "Horizontal", "Force-X", "X force", "Reaction x"),
+    "fy": ("Fy", "Ry", "V", "FY", "Vertical", "Force-Y", "Y force", "Reaction y"),
+    "rm": ("M", "Mz", "Moment", "MZ", "Moment", "Moment-Z", "Z moment", "Moment"),
+    "dx": ("dx", "ux", "Dx", "X-disp", "Horizontal", "x-displacement", "u", "UX"),
+    "dy": ("dy", "uy", "Dy", "Y-disp", "Vertical", "y-displacement", "v", "UY"),
+    "rot": ("rotation", "rz", "Rot", "Z-rot", "Rotation", "θ", "phi", "RZ"),
+    "case": ("Case", "Load case", "LC", "Loading", "Combination"),
+}  # fmt: skip
+
+
+@dataclass
+class Spec:
+    """What was drawn for one paste."""
+
+    seed: int
+    frame: int
+    layout: str
+    separator: str
+    writing: str
+    heads: str  # "bracket units", "unit line", "units stated", "no units"
+    units: str
+    cases: str  # "heading", "column", "option", "several headings", "several column"
+    encoding: str
+    noise: bool
+    names: str
+    spatial: bool
+    tables: tuple[str, ...]
+    signs: dict[str, Any]
+    vocabulary: dict[str, int] = field(default_factory=dict)
+    digits: int = 5
+
+
+@dataclass
+class Paste:
+    spec: Spec
+    data: bytes
+    options: ReadingOptions
+    case: str | None
+    values: int
+    planted: str = ""
+
+
+def draw(seed: int) -> Spec:
+    r = Random(f"paste {seed}")
+    frame = seed % FRAMES
+    separator = r.choice(SEPARATORS)
+    writings = [w for w in WRITINGS if (w != "decimal comma" or separator not in ("comma",))
+                and (w != "thousands" or separator != "comma")]  # fmt: skip
+    writing = "decimal comma" if separator == "semicolon" and r.random() < 0.7 else r.choice(writings)
+    layout = r.choice(LAYOUTS)
+    tables = tuple(t for t in ("reactions", "displacements") if r.random() < 0.6)
+    heads = r.choice(("bracket units", "bracket units", "unit line", "units stated", "no units"))
+    vocabulary = {key: r.randrange(len(words)) for key, words in HEADS.items()}
+    same = r.randrange(8)
+    for key in ("axial", "shear", "moment"):
+        vocabulary[key] = same
+    same = r.randrange(8)
+    for key in ("fx", "fy", "rm"):
+        vocabulary[key] = same
+    same = r.randrange(8)
+    for key in ("dx", "dy", "rot"):
+        vocabulary[key] = same
+    return Spec(
+        seed, frame, layout, separator, writing, heads, r.choice(list(UNITS)),
+        r.choice(("heading", "column", "option", "several headings", "several column")),
+        r.choice(("utf-8", "utf-8-sig", "utf-16", "latin-1", "crlf")), r.random() < 0.6,
+        r.choice(("same", "same", "lower", "prefixed", "pair")), r.random() < 0.15, tables,
+        {
+            "axial": r.choice((1, 1, -1)), "axial form": r.choice(("internal", "internal", "action")),
+            "shear": r.choice((1, -1)), "shear form": r.choice(("internal", "action")),
+            "moment": r.choice((1, -1)), "moment form": r.choice(("internal", "action")),
+            "support": r.choice((1, 1, -1)), "turn": r.choice((1, -1)), "down": r.choice((1, 1, 1, -1)),
+        }, vocabulary, r.choice((4, 5, 6)),
+    )  # fmt: skip
+
+
+# --- numbers
+
+
+def number(value: float, decimals: int, writing: str, unit: str = "") -> str:
+    """One number as `writing` has it; NaN as a dash."""
+    if not np.isfinite(value):
+        return "-"
+    value = round(value, decimals) + 0.0
+    if writing == "exponent":
+        return f"{value:.{max(3, min(decimals + 2, 7))}E}"
+    text = f"{abs(value):,.{decimals}f}" if writing == "thousands" else f"{abs(value):.{decimals}f}"
+    negative = value < 0
+    if writing == "decimal comma":
+        text = text.replace(".", ",")
+    if writing == "units stuck" and unit:
+        text += unit
+    if not negative:
+        return text
+    if writing == "trailing minus":
+        return text + "-"
+    if writing == "brackets":
+        return f"({text})"
+    return ("\u2212" if writing == "unicode minus" else "-") + text
+
+
+def decimals_for(values: np.ndarray, digits: int) -> int:
+    """Decimals that give the largest of the values `digits` significant digits."""
+    size = float(np.nanmax(np.abs(values), initial=0.0))
+    return 3 if size == 0 else int(np.clip(digits - 1 - np.floor(np.log10(size)), 0, 9))
+
+
+# --- making one
+
+
+class Maker:
+    def __init__(self, spec: Spec, plant: str = "") -> None:
+        self.spec, self.plant = spec, plant
+        self.known = known(spec.frame)
+        self.frame, self.r = self.known.frame, Random(f"make {spec.seed}")
+        self.answer = self.known.opinions.answers["slope-deflection"]
+        f, self.F, a, arm, d, self.D, t, self.T = UNITS[spec.units]
+        self.unit_words = {"force": f, "moment": (f + a if len(f) <= 2 else f"{f} {a}"), "length": d, "angle": t, "arm": a}
+        self.scale = {"force": self.F, "moment": self.F * arm, "length": self.D, "angle": self.T, "arm": arm}
+        self.values = 0
+        self.planted = ""
+        self.planting = -1
+
+    def word(self, key: str) -> str:
+        return HEADS[key][self.spec.vocabulary[key] % len(HEADS[key])]
+
+    def in_units(self, values: Any, kind: str) -> np.ndarray:
+        """Values of the frame's units in the paste's."""
+        u = self.frame.units
+        si = {"force": u.newton, "moment": u.newton * u.metre, "length": u.metre, "angle": 1.0, "arm": u.metre}[kind]
+        return np.asarray(values, dtype=float) * si / self.scale[kind]
+
+    # -- names
+
+    def member(self, name: str, last: bool = False) -> str:
+        m = self.frame.members[name]
+        return {
+            "same": name, "lower": name.lower(), "prefixed": f"Member {name}",
+            "pair": f"{m.joint_to} - {m.joint_from}" if self._backwards(name) else f"{m.joint_from} - {m.joint_to}",
+        }[self.spec.names]  # fmt: skip
+
+    def _backwards(self, name: str) -> bool:
+        """Pairs of joints may be printed the other way round: the member then runs that way."""
+        return self.spec.names == "pair" and Random(f"{self.spec.seed} {name}").random() < 0.4
+
+    def joint(self, name: str) -> str:
+        return {"same": name, "lower": name.lower(), "prefixed": f"Node {name}", "pair": name}[self.spec.names]
+
+    # -- member values in the paste's conventions: place 0 is the paste's start
+
+    def end_values(self, case: str, name: str) -> np.ndarray:
+        """(2, 3) at the paste's start and end: axial, shear, moment as printed, in the paste's units."""
+        s = self.spec.signs
+        ends = self.answer.cases[case].ends[self.frame.member_index[name]]
+        back = self._backwards(name)
+        ends = ends[::-1] if back else ends
+        r = -1 if back else 1
+        tension, shear, moment = ends[:, 0], r * ends[:, 1], ends[:, 2]
+        out = np.column_stack([
+            s["axial"] * (tension if s["axial form"] == "internal" else tension * [-1, 1]),
+            s["shear"] * (shear if s["shear form"] == "action" else shear * [1, -1]),
+            s["moment"] * (moment if s["moment form"] == "action" else moment * [1, -1]),
+        ])  # fmt: skip
+        out[:, :2] = self.in_units(out[:, :2], "force")
+        out[:, 2] = self.in_units(out[:, 2], "moment")
+        return out
+
+    def stations(self, case: str, name: str) -> tuple[np.ndarray, np.ndarray]:
+        """(5,) distances and (5, 3) N, V, M along the paste's member."""
+        s = self.spec.signs
+        m = self.frame.member_index[name]
+        length = float(self.frame.member_table.length[m])
+        x = np.array([0, 0.2, 0.5, 0.75, 1.0]) * length
+        back = self._backwards(name)
+        at = length - x if back else x
+        side = np.where(x == 0, 1, -1) * (-1 if back else 1)
+        values = self.answer.spans.along(case, np.full(5, m), at, side)[:, :3].copy()
+        values *= [s["axial"], s["shear"], s["moment"] * (-1 if back else 1)]
+        values[:, :2] = self.in_units(values[:, :2], "force")
+        values[:, 2] = self.in_units(values[:, 2], "moment")
+        return self.in_units(x, "arm"), values
+
+    def extremes(self, case: str, name: str) -> np.ndarray:
+        """(2, 3) largest and smallest N, V, M along the member, densely sampled and at its ends."""
+        s = self.spec.signs
+        m = self.frame.member_index[name]
+        length = float(self.frame.member_table.length[m])
+        turning, places = self.answer.spans.turning_points(case)
+        x = np.concatenate([np.linspace(0, length, 201), places[turning == m], [0.35 * length, 0.6 * length]])
+        values = np.concatenate([
+            self.answer.spans.along(case, np.full(len(x), m), x, np.full(len(x), side))[:, :3] for side in (-1, 1)
+        ])  # fmt: skip
+        values = values * [s["axial"], s["shear"], s["moment"] * (-1 if self._backwards(name) else 1)]
+        out = np.array([values.max(axis=0), values.min(axis=0)])
+        out[:, :2] = self.in_units(out[:, :2], "force")
+        out[:, 2] = self.in_units(out[:, 2], "moment")
+        return out
+
+    # -- tables: head cells with their unit kind, and rows of cells
+
+    def member_table(self, case: str) -> tuple[list[tuple[str, str]], list[list[Any]]]:
+        layout = self.spec.layout
+        forces = [(self.word("axial"), "force"), (self.word("shear"), "force"), (self.word("moment"), "moment")]
+        forces, keep = self._spatial(forces)
+        rows: list[list[Any]] = []
+        for name in self.frame.members:
+            m = self.frame.members[name]
+            joints = [m.joint_from, m.joint_to]
+            joints = joints[::-1] if self._backwards(name) else joints
+            label = self.member(name)
+            if layout in ("ends", "block"):
+                v = self.end_values(case, name)
+                rows += [[label if layout == "ends" or k == 0 else "", self.joint(j), *keep(v[k])]
+                         for k, j in enumerate(joints)]  # fmt: skip
+            elif layout == "both":
+                rows.append([label, *keep(self.end_values(case, name)[0]), *keep(self.end_values(case, name)[1])])
+            elif layout == "stations":
+                x, v = self.stations(case, name)
+                rows += [[label, ("at", x[k]), *keep(v[k])] for k in range(len(x))]
+            else:
+                v = self.extremes(case, name)
+                rows.append([label, *[value for q in range(3) for value in (v[0, q], v[1, q])]])
+        heads = {
+            "ends": [(self.word("member"), ""), (self.word("end"), ""), *forces],
+            "block": [(self.word("member"), ""), (self.word("end"), ""), *forces],
+            "both": [(self.word("member"), ""), *[(f"{h} {e}", u) for e in self._end_words() for h, u in forces]],
+            "stations": [(self.word("member"), ""), (self.word("x"), "arm"), *forces],
+            "extremes": [(self.word("member"), ""), *[(f"{w} {h}", u) for h, u in forces[:3] for w in ("max", "min")]],
+        }[layout]  # fmt: skip
+        return heads, rows
+
+    def _end_words(self) -> tuple[str, str]:
+        return (("i", "j"), ("start", "end"), ("1", "2"))[self.spec.seed % 3]
+
+    def _spatial(self, forces: list[tuple[str, str]]) -> tuple[list[tuple[str, str]], Callable[[Any], list[Any]]]:
+        """Spatial results: the columns out of the plane are zero."""
+        if not self.spec.spatial or self.spec.layout == "extremes":
+            return forces, list
+        heads = [("Fx", "force"), ("Fy", "force"), ("Fz", "force"), ("Mx", "moment"), ("My", "moment"), ("Mz", "moment")]
+        return heads, lambda v: [v[0], v[1], ("zero", 0.0), ("zero", 0.0), ("zero", 0.0), v[2]]
+
+    def reaction_table(self, case: str) -> tuple[list[tuple[str, str]], list[list[Any]]]:
+        s = self.spec.signs
+        heads = [(self.word("joint"), ""), (self.word("fx"), "force"), (self.word("fy"), "force"), (self.word("rm"), "moment")]
+        rows = []
+        for name in self.frame.supports:
+            fx, fy, m = self.answer.cases[case].reactions[self.frame.joint_index[name]]
+            forces = self.in_units([s["support"] * fx, s["support"] * s["down"] * fy], "force")
+            moment = self.in_units(s["support"] * s["turn"] * m, "moment")
+            rows.append([self.joint(name), *forces, float(moment)])
+        return heads, rows
+
+    def displacement_table(self, case: str) -> tuple[list[tuple[str, str]], list[list[Any]]]:
+        s = self.spec.signs
+        heads = [(self.word("joint"), ""), (self.word("dx"), "length"), (self.word("dy"), "length"), (self.word("rot"), "angle")]
+        rows = []
+        for name in self.frame.joints:
+            dx, dy, t = self.answer.cases[case].joints[self.frame.joint_index[name]]
+            moves = self.in_units([dx, s["down"] * dy], "length")
+            rows.append([self.joint(name), *moves, float(self.in_units(s["turn"] * t, "angle"))])
+        return heads, rows
+
+    # -- text
+
+    def text(self, cases: list[str]) -> str:
+        s = self.spec
+        out: list[str] = []
+        if s.noise:
+            out += [f"Analysis of frame {s.frame}", "Printed 2024-05-17 10:32   page 1", ""]
+        if s.heads == "units stated":
+            w = self.unit_words
+            out += [f"Forces in {w['force']}, moments in {w['moment']}, displacements in {w['length']}, rotations in {w['angle']}, "
+                    f"distances in {w['arm']}", ""]  # fmt: skip
+        makers = {"member": self.member_table, "reactions": self.reaction_table, "displacements": self.displacement_table}
+        titles = {
+            "member": {"ends": "Member end forces", "both": "Member end forces", "block": "Member end forces",
+                       "stations": "Forces along members", "extremes": "Largest and smallest member forces"}[s.layout],
+            "reactions": "Support reactions", "displacements": "Joint displacements",
+        }  # fmt: skip
+        for table in ("member", *s.tables):
+            if s.cases.endswith("column"):
+                parts = [(case, makers[table](case)) for case in cases]
+                heads = [(self.word("case"), ""), *parts[0][1][0]]
+                rows = [[case, *row] for case, (_, body) in parts for row in body]
+                out += self.table(titles[table], heads, rows)
+            else:
+                for case in cases:
+                    if s.cases != "option":
+                        out += [(f"Load case: {case}", f"LC {case}", f"Results for {case}")[s.seed % 3], ""]
+                    out += self.table(titles[table], *makers[table](case))
+        if s.noise:
+            out += ["", "End of results"]
+        return "\n".join(out) + "\n"
+
+    def table(self, title: str, heads: list[tuple[str, str]], rows: list[list[Any]]) -> list[str]:
+        s = self.spec
+        out = [title] if s.noise or s.seed % 2 or title.startswith("Joint") else []
+        cells = self._cells(heads, rows)
+        head_lines = self._head_lines(heads)
+        lines = self._lay(head_lines, cells)
+        head_count = len(head_lines)
+        if s.separator == "bar":
+            lines.insert(head_count, "|" + "|".join("---" for _ in heads) + "|")
+            head_count += 1
+        elif s.separator in ("aligned", "single blanks") and s.noise:
+            lines.insert(head_count, "-" * 60)
+            head_count += 1
+        if s.noise and len(lines) > 14 and s.separator != "bar":
+            middle = lines[:head_count]
+            lines[12:12] = ["", "page 2", *middle]
+        if s.noise and title.startswith("Support"):
+            lines.append(self._lay_total(heads, rows))
+        return [*out, *lines, ""]
+
+    def _lay_total(self, heads: list[tuple[str, str]], rows: list[list[Any]]) -> str:
+        return {"tab": "\t", "comma": ",", "semicolon": ";", "bar": "|"}.get(self.spec.separator, "  ").join(
+            ["Total", *["1.00" for _ in heads[1:]]]
+        )
+
+    def _cells(self, heads: list[tuple[str, str]], rows: list[list[Any]]) -> list[list[str]]:
+        s = self.spec
+        kinds = [k for _, k in heads]
+        decimals = {}
+        for j, kind in enumerate(kinds):
+            if kind:
+                same = [i for i, k in enumerate(kinds) if k == kind]
+                column = np.array([_plain(row[i]) for row in rows for i in same], dtype=float)
+                decimals[j] = decimals_for(column, s.digits)
+        out = []
+        for row in rows:
+            line = []
+            for j, cell in enumerate(row):
+                if not kinds[j]:
+                    line.append(str(cell))
+                    continue
+                value = _plain(cell)
+                if not isinstance(cell, tuple) and np.isfinite(value):
+                    value = self._maybe_plant(value, decimals[j])
+                    self.values += 1
+                unit = self.unit_words[kinds[j]] if " " not in self.unit_words[kinds[j]] else ""
+                at_exponent = "fixed" if isinstance(cell, tuple) and s.writing == "exponent" else s.writing
+                places = decimals[j] if not (isinstance(cell, tuple) and cell[0] == "at") else decimals[j] + 2
+                line.append(number(value, places, at_exponent, unit if s.heads != "units stated" else ""))
+            out.append(line)
+        return out
+
+    def _maybe_plant(self, value: float, decimals: int) -> float:
+        """The one error of this paste: another sign, a digit dropped, or a size far beyond tolerance."""
+        if not self.plant or self.values != self.planting:
+            return value
+        wrong = {"sign": -value, "tenth": value / 10, "more": value * 1.3, "ten": value * 10}[self.plant]
+        self.planted = f"{value:.6g} -> {wrong:.6g}"
+        return wrong
+
+    def _head_lines(self, heads: list[tuple[str, str]]) -> list[list[str]]:
+        w = self.unit_words
+        if self.spec.heads == "bracket units":
+            left, right = (("[", "]"), ("(", ")"))[self.spec.seed % 2]
+            return [[f"{h} {left}{w[u]}{right}" if u else h for h, u in heads]]
+        if self.spec.heads == "unit line":
+            return [[h for h, _ in heads], [(f"[{w[u]}]" if u else "") for _, u in heads]]
+        return [[h for h, _ in heads]]
+
+    def _lay(self, heads: list[list[str]], cells: list[list[str]]) -> list[str]:
+        lines = [*heads, *cells]
+        separator = self.spec.separator
+        if separator == "aligned":
+            widths = [max(len(line[j]) for line in lines) + 2 for j in range(len(lines[0]))]
+            return ["".join(c.ljust(w) if j == 0 else c.rjust(w) for j, (c, w) in enumerate(zip(line, widths, strict=True))).rstrip()
+                    for line in lines]  # fmt: skip
+        if separator == "single blanks":
+            return [" ".join(c for c in line if c) for line in lines]
+        if separator == "bar":
+            return ["| " + " | ".join(line) + " |" for line in lines]
+        mark = {"tab": "\t", "comma": ",", "semicolon": ";"}[separator]
+        return [mark.join(line) for line in lines]
+
+
+def _plain(cell: Any) -> float:
+    return float(cell[1]) if isinstance(cell, tuple) else float(cell)
+
+
+def make(seed: int, plant: str = "") -> Paste:
+    """The paste of a seed, right in every value, or with one planted error."""
+    spec = draw(seed)
+    maker = Maker(spec, plant)
+    every = list(maker.frame.names)
+    cases = every if spec.cases.startswith("several") else [every[seed % len(every)]]
+    if plant:
+        count = Maker(spec)
+        count.text(cases)
+        maker.planting = _worth(spec, cases, count.values)
+    text = maker.text(cases)
+    encoding = {"crlf": "utf-8"}.get(spec.encoding, spec.encoding)
+    if spec.encoding == "crlf":
+        text = text.replace("\n", "\r\n")
+    try:
+        data = text.encode(encoding)
+    except UnicodeEncodeError:
+        data = text.encode("utf-8")
+    case = cases[0] if spec.cases == "option" else None
+    return Paste(spec, data, ReadingOptions(), case, maker.values, maker.planted)
+
+
+def _worth(spec: Spec, cases: list[str], count: int) -> int:
+    """A value large enough that an error in it lies beyond tolerance: the one drawn, or the next that is."""
+
+    class Sizes(Maker):
+        found: list[float] = []  # noqa: RUF012
+
+        def _maybe_plant(self, value: float, decimals: int) -> float:
+            self.sizes.append((abs(round(value, decimals)), decimals))
+            return value
+
+    sizes = Sizes(spec)
+    sizes.sizes = []  # type: ignore[attr-defined]
+    sizes.text(cases)
+    found = sizes.sizes  # type: ignore[attr-defined]
+    start = Random(f"plant {spec.seed}").randrange(count)
+    for k in range(count):
+        size, decimals = found[(start + k) % count]
+        if size * 10.0**decimals >= 0.3 * 10 ** (spec.digits - 1):
+            return (start + k) % count
+    return start
+
+
+@dataclass(frozen=True)
+class Outcome:
+    verdict: str
+    compared: int
+    closed: Any
+    comparisons: Any
+
+
+def judge(paste: Paste) -> Outcome:
+    """The verdict on the paste, as `verify` gives it where the opinions agree."""
+    k = known(paste.spec.frame)
+    reading = read_claim_text(decode(paste.data), k.names, paste.options)
+    closed = close(reading, k.frame, k.opinions.answers, paste.case, CLAIM)
+    cases = ClaimComparison(k.frame, k.opinions.answers, k.opinions.judgements, CLAIM).judge(closed)
+    verdicts = [c.verdict for c in cases]
+    if closed.undecided or closed.foreign or not cases:
+        verdicts.append("undecided")
+    if closed.reversed_load:
+        verdicts.append("disagree")
+    return Outcome(worst(verdicts), sum(c.compared for c in cases), closed, cases)
+
+
+def is_right(paste: Paste, outcome: Outcome) -> bool:
+    """Every printed value read, compared and found to agree."""
+    return outcome.verdict == "agree" and outcome.compared + _coarse(outcome) == paste.values
+
+
+def _coarse(outcome: Outcome) -> int:
+    return sum(1 for c in outcome.comparisons for _, why in c.not_compared)
+
+
+def main() -> None:
+    count = int(sys.argv[1]) if len(sys.argv) > 1 else 300
+    verbose = "-v" in sys.argv
+    right: Counter[str] = Counter()
+    drawn: Counter[str] = Counter()
+    verdicts: Counter[str] = Counter()
+    for seed in range(count):
+        paste = make(seed)
+        outcome = judge(paste)
+        ok = is_right(paste, outcome)
+        keys = [f"layout {paste.spec.layout}", f"separator {paste.spec.separator}", f"writing {paste.spec.writing}",
+                f"heads {paste.spec.heads}", f"cases {paste.spec.cases}", f"names {paste.spec.names}",
+                f"units {paste.spec.units}", f"encoding {paste.spec.encoding}", f"noise {paste.spec.noise}",
+                f"spatial {paste.spec.spatial}"]  # fmt: skip
+        for key in keys:
+            drawn[key] += 1
+            right[key] += ok
+        verdicts["right" if ok else f"not right: {outcome.verdict}"] += 1
+        if verbose and not ok:
+            print(seed, outcome.verdict, f"{outcome.compared}/{paste.values}", paste.spec.layout, paste.spec.separator,
+                  paste.spec.writing, paste.spec.heads, paste.spec.cases, paste.spec.names, outcome.closed.undecided[:2],
+                  outcome.closed.foreign[:1], outcome.closed.not_understood[:1])  # fmt: skip
+    print(dict(verdicts))
+    for key in sorted(drawn):
+        print(f"{key:<28} {right[key]:>5} of {drawn[key]:>5}")
+
+
+if __name__ == "__main__":
+    main()
