@@ -1,0 +1,173 @@
+"""Members softer or stiffer than stated: end releases missing or extra, semi-rigid ends, EI and EA by a factor."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from functools import partial
+
+import numpy as np
+
+from crosscheck.frame.model import FREE, HELD, Floats, Frame
+from crosscheck.suspects.changes import Change, with_member, with_member_factors
+from crosscheck.suspects.screen import Screen
+from crosscheck.suspects.suspect import Option, named
+
+COMMON = (0.5, 0.7, 0.35, 0.25, 0.1, 2.0, 10.0, 0.01, 100.0, 1e-4)
+"""Factors that mistakes of stiffness often have: cracked sections, halves, decimal slips, units."""
+RELEASE, UNRELEASE, SPRING, STIFFNESS, FITTED = 0.4, 0.4, 0.9, 0.7, 1.3
+OTHER_SECTION = 0.6
+
+
+@dataclass(frozen=True, slots=True)
+class _Trial:
+    """One member's change: EI and EA factors and end connections, how it reads, and how rare it is."""
+
+    member: int
+    bending: float
+    stretching: float
+    turn: tuple[float, float]
+    kind: str
+    says: str
+    cost: float
+    section: str = ""
+    family: str = ""
+
+
+def member_options(screen: Screen) -> Iterator[Option]:
+    """The best member changes, fixed ones and fitted ones, by what they leave over."""
+    frame = screen.frame
+    fixed = [t for m in range(len(frame.members)) for t in _fixed(frame, m)]
+    left, actions = _weigh(screen, fixed)
+    for k in np.argsort(left)[:80].tolist():
+        if np.isfinite(left[k]):
+            yield _option(screen, fixed[k], [a[k] for a in actions])
+    yield from _fits(screen)
+
+
+def _weigh(screen: Screen, trials: list[_Trial]) -> tuple[Floats, list[Floats]]:
+    member = np.array([t.member for t in trials], dtype=np.int64)
+    bending, stretching = np.array([t.bending for t in trials]), np.array([t.stretching for t in trials])
+    turn = np.array([t.turn for t in trials], dtype=float).reshape(-1, 2)
+    actions = [screen.base.member_actions(n, member, bending, stretching, turn) for n in screen.seen.names]
+    return screen.left_by(screen.member_grams, member, actions), actions
+
+
+def _option(screen: Screen, t: _Trial, actions: list[Floats], fitted: int = 0) -> Option:
+    frame = screen.frame
+    name = list(frame.members)[t.member]
+    delta = screen.delta_of(screen.effects.member, t.member, actions)
+    where = (named(frame, "member", name),)
+    return Option(t.kind, where, t.says, Change(_change(t, name)), t.cost, delta, fitted=fitted)
+
+
+def _change(t: _Trial, name: str):  # type: ignore[no-untyped-def]
+    if t.section:
+        return partial(with_member, name=name, section=t.section)
+    if t.kind == "stiffness":
+        return partial(with_member_factors, name=name, bending=t.bending, stretching=t.stretching)
+    return partial(with_member, name=name, turn_from=t.turn[0], turn_to=t.turn[1])
+
+
+def _fixed(frame: Frame, m: int) -> Iterator[_Trial]:
+    name = list(frame.members)[m]
+    member = frame.members[name]
+    own = (member.turn_from, member.turn_to)
+    label, ends = named(frame, "member", name), (member.joint_from, member.joint_to)
+    for end in (0, 1):
+        other = own[1 - end]
+        for value, says, cost in _connections(own[end]):
+            turn = (value, other) if end == 0 else (other, value)
+            yield _Trial(m, 1.0, 1.0, turn, "end release", f"{label} {says} at {ends[end]}", cost)
+    if FREE not in own:
+        yield _Trial(m, 1.0, 1.0, (FREE, FREE), "end release", f"{label} was hinged at both ends", RELEASE + 0.2)
+    if own == (FREE, FREE):
+        yield _Trial(m, 1.0, 1.0, (HELD, HELD), "end release", f"{label} had no hinges", UNRELEASE)
+    elastic = frame.analysis.axial == "elastic"
+    for factor in COMMON:
+        yield _Trial(m, factor, 1.0, own, "stiffness", f"{label} had {factor:g} times its EI", STIFFNESS)
+        if elastic:
+            yield _Trial(m, 1.0, factor, own, "stiffness", f"{label} had {factor:g} times its EA", STIFFNESS + 0.2)
+            yield _Trial(m, factor, factor, own, "stiffness", f"{label} had {factor:g} times its EI and EA", STIFFNESS)
+    s = frame.sections[member.section]
+    for q in frame.sections.values():
+        stretch = q.A / s.A if q.A and s.A else 1.0
+        if q.name != s.name:
+            yield _Trial(m, q.I / s.I, stretch, own, "stiffness", f"{label} was given section {q.name}", OTHER_SECTION, q.name)
+
+
+def _connections(now: float) -> Iterator[tuple[float, str, float]]:
+    """Other end connections in words, with how rare they are as a mistake."""
+    if now == HELD:
+        yield FREE, "was hinged", RELEASE
+    elif now == FREE:
+        yield HELD, "had no hinge", UNRELEASE
+    else:
+        yield HELD, "was rigidly joined", 0.2
+        yield FREE, "was hinged", 0.3
+        for factor in (1e3, 1e-3, 10.0, 0.1, 1e6, 1e-6):
+            yield now * factor, f"had a connection {factor:g} times as stiff (a slip of unit?)", 0.5
+
+
+# --- fitted ---
+
+SPAN_OF_FACTORS = (0.02, 50.0)
+GRID, ROUNDS, KEPT = 25, 4, 8
+
+
+def _fits(screen: Screen) -> Iterator[Option]:
+    """EI, EA, both, and the stiffness of either end connection, each fitted for the members that promise most."""
+    frame = screen.frame
+    least = screen.least(screen.member_grams)
+    t = frame.member_table
+    found: list[tuple[float, _Trial, list[Floats]]] = []
+    for m in np.argsort(least)[:KEPT].tolist():
+        if least[m] > 0.5 * screen.total:
+            break
+        for family in ("EI", "EA", "EI and EA", "from", "to"):
+            if "EA" in family and frame.analysis.axial == "rigid":
+                continue
+            end = ("from", "to").index(family) if family in ("from", "to") else -1
+            if end >= 0 and t.turn[m, end] == FREE and t.zone[m, end] == 0 and False:
+                continue
+            got = _fit(screen, m, family)
+            if got is not None:
+                found.append(got)
+    for _, trial, actions in sorted(found, key=lambda f: f[0]):
+        yield _option(screen, trial, actions, 1)
+
+
+def _fit(screen: Screen, m: int, family: str) -> tuple[float, _Trial, list[Floats]] | None:
+    low, high = np.log(SPAN_OF_FACTORS[0]), np.log(SPAN_OF_FACTORS[1])
+    for _ in range(ROUNDS):
+        grid = np.exp(np.linspace(low, high, GRID))
+        trials = [_member_trial(screen.frame, m, family, float(g)) for g in grid]
+        left, actions = _weigh(screen, trials)
+        k = int(np.argmin(left))
+        if not np.isfinite(left[k]) or left[k] > 0.5 * screen.total:
+            return None
+        step = (high - low) / (GRID - 1)
+        low, high = np.log(grid[k]) - step, np.log(grid[k]) + step
+    tidy = float(f"{grid[k]:.2g}")
+    rounded = [_member_trial(screen.frame, m, family, tidy)]
+    left_tidy, actions_tidy = _weigh(screen, rounded)
+    if left_tidy[0] <= max(1.2 * left[k], len(screen.residual)):
+        return float(left_tidy[0]), rounded[0], [a[0] for a in actions_tidy]
+    return float(left[k]), trials[k], [a[k] for a in actions]
+
+
+def _member_trial(frame: Frame, m: int, family: str, p: float) -> _Trial:
+    name = list(frame.members)[m]
+    member = frame.members[name]
+    own = (member.turn_from, member.turn_to)
+    label = named(frame, "member", name)
+    if family in ("from", "to"):
+        t = frame.member_table
+        k = p * float(t.E[m] * t.I[m] / t.clear[m])
+        turn = (k, own[1]) if family == "from" else (own[0], k)
+        joint = member.joint_from if family == "from" else member.joint_to
+        says = f"{label} was joined at {joint} by a spring of {k:.4g} per radian"
+        return _Trial(m, 1.0, 1.0, turn, "end release", says, SPRING)
+    bending, stretching = (p if "EI" in family else 1.0), (p if "EA" in family else 1.0)
+    cost = FITTED if family == "EI" else FITTED + 0.2
+    return _Trial(m, bending, stretching, own, "stiffness", f"{label} had {p:.4g} times its {family}", cost)

@@ -1,0 +1,216 @@
+"""What the claim says, what the model says at the same places, and how far apart they are in two measures.
+
+`allowed` is the comparison's tolerance; `explains` is counted in it. `noise` is the printed rounding, which tells one
+suspect from another: a change that leaves no value further off than its half digit fits to the printed precision.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+import numpy as np
+
+from crosscheck.answer import Answer
+from crosscheck.compare.claim import END_COLUMN, JOINT_COLUMN, REACTION_COLUMN, ZERO
+from crosscheck.compare.claimed import ClaimedValue
+from crosscheck.compare.fit_values import Reference
+from crosscheck.compare.opinions import extremes
+from crosscheck.compare.tolerance import Tolerance, allowed
+from crosscheck.frame.model import Bools, Floats, Frame, Ints
+from crosscheck.frame.stations import Stations, stations
+from crosscheck.opinions.slope_deflection.prepared import DISPLACEMENT, END, REACTION, SPAN, Places
+
+EXTREME = 4
+KINDS = {"end": END, "span": SPAN, "reaction": REACTION, "displacement": DISPLACEMENT, "extreme": EXTREME}
+WORKING = 0.01
+"""Share of the tolerance below which differences are no evidence even where more digits are printed."""
+ARITHMETIC = 1e-4
+"""Share of the tolerance that arithmetic alone may leave over in a value printed to many digits."""
+SPARE = 1.05
+"""Of half a digit, before a value counts as not met: programs round halves either way."""
+
+
+@dataclass(frozen=True, eq=False)
+class Observation:
+    """The compared values (n,) of a claim.
+
+    value: claimed; said: the model's; half: half a printed digit; allowed: the tolerance. case: index into `names`.
+    linear: answers to unit actions give the value (all but extremes and displacements along a member).
+    """
+
+    frame: Frame
+    names: tuple[str, ...]
+    values: tuple[ClaimedValue, ...]
+    case: Ints
+    places: Places
+    extreme: Ints
+    value: Floats
+    said: Floats
+    half: Floats
+    allowed: Floats
+    at: Stations
+
+    @property
+    def linear(self) -> Bools:
+        p = self.places
+        return np.asarray((p.kind != EXTREME) & ~((p.kind == SPAN) & (p.column == 3)))
+
+    @property
+    def noise(self) -> Floats:
+        """(n,) the measure that suspects are fitted in."""
+        return np.maximum(self.half, WORKING * self.allowed)
+
+    @property
+    def meets(self) -> Floats:
+        """(n,) how far off a value may be and still be met to its printed precision."""
+        return np.asarray(SPARE * self.half + ARITHMETIC * self.allowed)
+
+    @property
+    def residual(self) -> Floats:
+        return self.value - self.said
+
+    def read(self, answer: Answer, names: tuple[str, ...] | None = None) -> Floats:
+        """(n,) the values of another answer at the same places; `names` stand for the claim's cases, in their order."""
+        out = np.full(len(self.value), np.nan)
+        for k, name in enumerate(self.names if names is None else names):
+            rows = np.flatnonzero(self.case == k)
+            if name in answer.cases and len(rows):
+                out[rows] = _read(self, answer, name, rows)
+        return out
+
+    def part(self, rows: Ints) -> Places:
+        """The places of some rows."""
+        p = self.places
+        return Places(*(getattr(p, f)[rows] for f in Places.__dataclass_fields__))
+
+
+def observe(
+    frame: Frame, answer: Answer, names: tuple[str, ...], values: Iterable[ClaimedValue], tolerance: Tolerance,
+) -> Observation:  # fmt: skip
+    """The values that can be compared, with the model's `answer` at their places."""
+    kept = [v for v in values if v.case in names and v.case in answer.cases]
+    column = [_column(v) for v in kept]
+    ends = [_end(frame, v) for v in kept]
+    places = Places(
+        kind=np.array([KINDS[v.kind] for v in kept], dtype=np.int64),
+        column=np.array(column, dtype=np.int64),
+        member=np.array([frame.member_index.get(str(v.member), -1) for v in kept], dtype=np.int64),
+        end=np.array(ends, dtype=np.int64),
+        joint=np.array([frame.joint_index.get(str(v.joint), -1) for v in kept], dtype=np.int64),
+        x=np.array([v.at if v.kind == "span" and v.at is not None else 0.0 for v in kept], dtype=float),
+        side=np.full(len(kept), 1, dtype=np.int64),
+    )
+    case = np.array([names.index(v.case) for v in kept], dtype=np.int64)
+    extreme = np.array([{"max": 1, "min": -1, "size": 2}.get(v.extreme or "", 0) for v in kept], dtype=np.int64)
+    value = np.array([v.value for v in kept], dtype=float)
+    value = np.where(extreme == 2, np.abs(value), value)
+    half = np.array([v.half_digit for v in kept], dtype=float)
+    nil = np.zeros(len(kept))
+    seen = Observation(
+        frame, names, tuple(kept), case, places, extreme, value, nil, half, nil, stations(frame)
+    )
+    _choose_sides(seen, answer)
+    said = seen.read(answer)
+    tolerated = _allowed(seen, answer, said, tolerance)
+    good = np.flatnonzero(np.isfinite(said) & np.isfinite(value) & (tolerated > 0))
+    return Observation(
+        frame, names, tuple(kept[k] for k in good), case[good], seen.part(good), extreme[good], value[good], said[good],
+        half[good], tolerated[good], seen.at,
+    )  # fmt: skip
+
+
+def _column(v: ClaimedValue) -> int:
+    if v.kind == "reaction" or (v.kind == "extreme" and v.quantity in ("fx", "fy")):
+        return REACTION_COLUMN[v.quantity]
+    if v.quantity in JOINT_COLUMN:
+        return JOINT_COLUMN[v.quantity]
+    return END_COLUMN[v.quantity]
+
+
+def _end(frame: Frame, v: ClaimedValue) -> int:
+    if v.kind != "end" or v.member not in frame.members:
+        return -1
+    return 0 if frame.members[v.member].joint_from == v.joint else 1
+
+
+def _choose_sides(seen: Observation, answer: Answer) -> None:
+    """At a jump the claim means the side that it is nearer to."""
+    p = seen.places
+    for k, name in enumerate(seen.names):
+        rows = np.flatnonzero((p.kind == SPAN) & (seen.case == k))
+        if name not in answer.cases or not len(rows):
+            continue
+        before, after = (_along(answer, name, p, rows, side) for side in (-1, 1))
+        nearer = np.abs(before - seen.value[rows]) < np.abs(after - seen.value[rows])
+        last = p.x[rows] >= seen.frame.member_table.length[p.member[rows]] * (1 - 1e-9)
+        p.side[rows[nearer | last]] = -1
+
+
+def _along(answer: Answer, name: str, p: Places, rows: Ints, side: int) -> Floats:
+    values = answer.spans.along(name, p.member[rows], p.x[rows], np.full(len(rows), side, dtype=np.int64))
+    return np.asarray(values[np.arange(len(rows)), p.column[rows]])
+
+
+def _read(seen: Observation, answer: Answer, name: str, rows: Ints) -> Floats:
+    p, c = seen.places, answer.cases[name]
+    out = np.full(len(rows), np.nan)
+    kind = p.kind[rows]
+    at = rows[kind == END]
+    out[kind == END] = c.ends[p.member[at], p.end[at], p.column[at]]
+    at = rows[kind == REACTION]
+    out[kind == REACTION] = c.reactions[p.joint[at], p.column[at]]
+    at = rows[kind == DISPLACEMENT]
+    out[kind == DISPLACEMENT] = c.joints[p.joint[at], p.column[at]]
+    at = rows[kind == SPAN]
+    if len(at):
+        values = answer.spans.along(name, p.member[at], p.x[at], p.side[at])
+        out[kind == SPAN] = values[np.arange(len(at)), p.column[at]]
+    at = rows[kind == EXTREME]
+    if len(at):
+        most = extremes(answer, name, seen.at)
+        out[kind == EXTREME] = [_extreme(seen, c.joints, c.reactions, most, int(k)) for k in at]
+    return out
+
+
+def _extreme(seen: Observation, joints: Floats, reactions: Floats, most: Floats, k: int) -> float:
+    p, v = seen.places, seen.values[k]
+    if v.quantity in JOINT_COLUMN or v.quantity in ("fx", "fy"):
+        table = joints if v.quantity in JOINT_COLUMN else reactions
+        values = table[:, p.column[k]] if v.joint is None else table[[p.joint[k]], p.column[k]]
+    else:
+        values = (most[:, :, p.column[k]] if v.member is None else most[p.member[k], :, p.column[k]]).ravel()
+    values = values[np.isfinite(values)]
+    if not len(values):
+        return float("nan")
+    if seen.extreme[k] == 2:
+        return float(np.abs(values).max())
+    return float(values.max() if seen.extreme[k] > 0 else values.min())
+
+
+def _allowed(seen: Observation, answer: Answer, said: Floats, tolerance: Tolerance) -> Floats:
+    """(n,) the comparison's allowed difference, by its own scales."""
+    out = np.zeros(len(said))
+    p = seen.places
+    for k, name in enumerate(seen.names):
+        if name not in answer.cases:
+            continue
+        reference = Reference(seen.frame, {answer.opinion: answer}, name)
+        for quantity in {v.quantity for v in seen.values}:
+            rows = np.array([n for n, v in enumerate(seen.values) if v.quantity == quantity and seen.case[n] == k])
+            if not len(rows):
+                continue
+            scale = np.full(len(rows), reference.scales.of(quantity))
+            on = (p.member[rows] >= 0) & (p.kind[rows] != REACTION) & (p.kind[rows] != DISPLACEMENT)
+            if on.any():
+                scale[on] = reference.member_scale(quantity)[p.member[rows[on]]]
+            off = ~on & (p.joint[rows] >= 0)
+            if off.any():
+                table = "displacement" if quantity in JOINT_COLUMN else "reaction"
+                scale[off] = reference.joint_scale(quantity, table)[p.joint[rows[off]]]
+            may = allowed(said[rows], seen.value[rows], tolerance, scale, seen.half[rows])
+            bare = np.array([
+                seen.values[n].kind == "reaction" and seen.values[n].joint not in seen.frame.supports for n in rows
+            ])  # fmt: skip
+            out[rows] = np.where(bare, np.maximum(seen.half[rows], ZERO * reference.scales.of(quantity)), may)
+    return out

@@ -1,0 +1,134 @@
+"""Supports of another kind, missing, extra, sprung, turned otherwise, or with a stiffness out by a unit."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import replace
+from functools import partial
+
+import numpy as np
+
+from crosscheck.frame.model import FREE, HELD, Floats, Frame, Support
+from crosscheck.suspects.changes import Change, kind_of, with_support
+from crosscheck.suspects.screen import Screen
+from crosscheck.suspects.suspect import Option, named
+
+KINDS = (
+    ((HELD, HELD, HELD), 0.0), ((HELD, HELD, FREE), 0.0), ((FREE, HELD, FREE), 0.2), ((HELD, FREE, FREE), 0.6),
+    ((FREE, HELD, HELD), 0.6), ((HELD, FREE, HELD), 0.6), ((FREE, FREE, HELD), 1.0), ((FREE, FREE, FREE), 0.3),
+)  # fmt: skip
+"""Kinds of support and how rare each is as a mistake."""
+AXES = ("x", "y", "rotation")
+UNIT_SLIPS = (1e3, 1e-3, 1e6, 1e-6, 10.0, 0.1, 100.0, 0.01)
+EXTRA = 1.0
+SPRUNG = 0.9
+
+
+def support_options(screen: Screen) -> Iterator[Option]:
+    """Every support change whose actions follow from the factorised matrix."""
+    frame = screen.frame
+    joints, stiffness, texts, costs = [], [], [], []
+    for j, joint in enumerate(frame.joints):
+        for new, says, cost in _kinds(frame, joint):
+            joints.append(j)
+            stiffness.append(new)
+            texts.append(says)
+            costs.append(cost)
+    block, wanted = np.array(joints, dtype=np.int64), np.array(stiffness, dtype=float).reshape(-1, 3)
+    actions = [screen.base.support_actions(name, block, wanted) for name in screen.seen.names]
+    good = np.all([np.isfinite(a).all(axis=1) for a in actions], axis=0)
+    left = screen.left_by(screen.support_grams, block, [np.nan_to_num(a) for a in actions])
+    names = list(frame.joints)
+    for k in np.argsort(np.where(good, left, np.inf))[:60].tolist():
+        if good[k]:
+            delta = screen.delta_of(screen.effects.reaction, joints[k], [a[k] for a in actions])
+            yield _option(frame, names[joints[k]], wanted[k], texts[k], costs[k], delta)
+    yield from _springs(screen)
+
+
+def _current(frame: Frame, joint: str) -> Support:
+    return frame.supports.get(joint, Support(joint, FREE, FREE, FREE))
+
+
+def _kinds(frame: Frame, joint: str) -> Iterator[tuple[tuple[float, float, float], str, float]]:
+    """Other stiffnesses of one joint's support, in words, with how rare they are."""
+    now = _current(frame, joint)
+    own = (now.x, now.y, now.rotation)
+    new_there = 0.0 if joint in frame.supports else EXTRA
+    label = named(frame, "joint", joint)
+    for kind, cost in KINDS:
+        if kind != own:
+            says = f"the support at {label} was left out" if not any(kind) else (
+                f"{label} was analysed as {kind_of(Support(joint, *kind))}"
+            )  # fmt: skip
+            yield kind, says, cost + new_there
+    for axis in range(3):
+        if own[axis] in (FREE, HELD):
+            continue
+        word = f"the {AXES[axis]} spring at {label}"
+        for value, text in ((HELD, "was taken as rigid"), (FREE, "was left out")):
+            yield _with(own, axis, value), f"{word} {text}", 0.2
+        for factor in UNIT_SLIPS:
+            yield _with(own, axis, own[axis] * factor), f"{word} was {factor:g} times as stiff (a slip of unit?)", 0.5
+
+
+def _with(own: tuple[float, float, float], axis: int, value: float) -> tuple[float, float, float]:
+    new = list(own)
+    new[axis] = value
+    return new[0], new[1], new[2]
+
+
+def _option(frame: Frame, joint: str, stiffness: Floats, says: str, cost: float, delta: Floats, fitted: int = 0) -> Option:
+    change = Change(partial(_applied, joint=joint, stiffness=tuple(stiffness.tolist())))
+    return Option("support", (named(frame, "joint", joint),), says, change, cost, delta, fitted=fitted)
+
+
+def _applied(frame: Frame, joint: str, stiffness: tuple[float, float, float]) -> Frame:
+    if not any(stiffness):
+        return with_support(frame, joint, None)
+    x, y, rotation = stiffness
+    return with_support(frame, joint, replace(_current(frame, joint), x=x, y=y, rotation=rotation))
+
+
+def _springs(screen: Screen) -> Iterator[Option]:
+    """A direction that gave way by a spring whose stiffness fits best: of those held, and of those sprung."""
+    frame = screen.frame
+    for joint, support in frame.supports.items():
+        j = frame.joint_index[joint]
+        own = (support.x, support.y, support.rotation)
+        _, scale = screen.base._support_response
+        for axis in range(3):
+            if own[axis] == FREE:
+                continue
+            fitted = _fit_spring(screen, j, own, axis, float(scale[j, axis]))
+            if fitted is None:
+                continue
+            k, delta = fitted
+            label = named(frame, "joint", joint)
+            says = f"{label} gave way along {AXES[axis]} like a spring of {k:.4g}" if axis < 2 else (
+                f"{label} turned like a spring of {k:.4g}"
+            )  # fmt: skip
+            if own[axis] != HELD:
+                says = f"the {AXES[axis]} spring at {label} had a stiffness of {k:.4g} ({k / own[axis]:.4g} times)"
+            yield _option(frame, joint, np.array(_with(own, axis, k)), says, SPRUNG, delta, 1)
+
+
+def _fit_spring(
+    screen: Screen, j: int, own: tuple[float, float, float], axis: int, scale: float
+) -> tuple[float, Floats] | None:
+    """The stiffness that leaves least over, and its effect; None where it improves little."""
+    low, high = np.log(1e-3), np.log(1e3)
+    best = np.nan
+    for _ in range(4):
+        trial = np.exp(np.linspace(low, high, 25)) * scale
+        wanted = np.array([_with(own, axis, float(k)) for k in trial])
+        block = np.full(len(trial), j)
+        actions = [screen.base.support_actions(name, block, wanted) for name in screen.seen.names]
+        left = screen.left_by(screen.support_grams, block, actions)
+        k = int(np.argmin(left))
+        if not np.isfinite(left[k]) or left[k] > 0.5 * screen.total:
+            return None
+        best, step = trial[k], (high - low) / 24
+        low, high = np.log(best / scale) - step, np.log(best / scale) + step
+        delta = screen.delta_of(screen.effects.reaction, j, [a[k] for a in actions])
+    return float(best), delta

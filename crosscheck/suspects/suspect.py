@@ -1,0 +1,52 @@
+"""What a suspect is, and what it is while it is still being weighed."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from crosscheck.frame.model import Floats, Frame
+from crosscheck.suspects.changes import Change
+
+
+@dataclass(frozen=True, slots=True)
+class Suspect:
+    """One mistake (or a pair) that would explain the difference: a hypothesis.
+
+    kind, where: as the README lists them. says: what the other analysis may have had. explains: share of the squared,
+    tolerance-scaled difference that the change removes. tied_with: what explains it as well, each with the further
+    result that would tell the two apart. change: applies it (`verify --suspect N`). fits: to the printed precision.
+    """
+
+    kind: str
+    where: tuple[str, ...]
+    says: str
+    explains: float
+    tied_with: tuple[str, ...] = ()
+    change: Change = field(default_factory=Change)
+    fits: bool = False
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Option:
+    """A change being weighed.
+
+    cost: how unusual the mistake is: 0 for the commonest, 1 for one e times rarer. delta: (n,) what it adds to the
+    model's values at the linear places, where foretold; None where the frame must be solved again. claimed, half: (n,)
+    the claim's values and half digits where the change is to the claim. fitted: numbers chosen to fit.
+    """
+
+    kind: str
+    where: tuple[str, ...]
+    says: str
+    change: Change
+    cost: float
+    delta: Floats | None = None
+    claimed: Floats | None = None
+    half: Floats | None = None
+    fitted: int = 0
+
+
+def named(frame: Frame, kind: str, name: str) -> str:
+    """A name as `where` says it: with its kind in front where the bare name would be two things."""
+    tables = (frame.joints, frame.members, frame.sections, frame.materials)
+    return f"{kind} {name}" if sum(name in t for t in tables) > 1 else name

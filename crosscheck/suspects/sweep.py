@@ -1,0 +1,307 @@
+"""The sweep: gather what may have happened, weigh it, rank it, and say what ties with what.
+
+Single mistakes first, those foretold from the factorised matrix before those that need another solution; pairs only
+where no single one leaves every value within tolerance. Rank by what is left over beyond the printed rounding, and among
+equals by how few and how common the mistakes are.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from crosscheck.answer import Answer
+from crosscheck.compare.claimed import ClosedClaim
+from crosscheck.frame.model import Floats, Frame
+from crosscheck.opinions.slope_deflection.prepared import Prepared, prepared
+from crosscheck.suspects.changes import usable
+from crosscheck.suspects.geometry import geometry_families, geometry_options
+from crosscheck.suspects.loads import case_options, load_options
+from crosscheck.suspects.members import member_options
+from crosscheck.suspects.observation import Observation
+from crosscheck.suspects.paste import paste_options
+from crosscheck.suspects.screen import Screen
+from crosscheck.suspects.supports import support_options
+from crosscheck.suspects.suspect import Option
+from crosscheck.suspects.whole import Family, temperature_options, whole_families, whole_options
+
+UNFIT, STEEPNESS = 3.0, 2.0
+"""What not fitting to the printed precision costs, and how steeply the misfit counts after that."""
+PER_NUMBER = 0.2
+CONFIRMED = 16
+PROMISE = 0.5
+"""A family whose best start leaves more than this share over is not fitted further."""
+RIVALS = 4.0
+"""Places are searched where the least misfit they can leave is within this factor of rounding, or among the best."""
+PLACES = 6
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Weighed:
+    """An option with what is left over. said: (n,) the model's values after it; claimed: the claim's.
+
+    explains: share of the squared, tolerance-scaled difference removed. beyond: worst value against what it may be off
+    by to count as met. rough: root mean square of what is left, in units of noise. within: every value within tolerance.
+    """
+
+    option: Option
+    said: Floats
+    claimed: Floats
+    explains: float
+    beyond: float
+    rough: float
+    within: bool
+
+    @property
+    def fits(self) -> bool:
+        return self.beyond <= (1.0 if not self.option.fitted else 1.5)
+
+    @property
+    def score(self) -> float:
+        """Less is better."""
+        unfit = 0.0 if self.fits else UNFIT + STEEPNESS * float(np.log(max(self.rough, 1.0)))
+        return unfit + self.option.cost + PER_NUMBER * self.option.fitted
+
+
+class Sweep:
+    """One observation and everything tried on it."""
+
+    def __init__(self, seen: Observation, closed: ClosedClaim, base: Prepared, answer: Answer) -> None:
+        self.seen, self.closed, self.base, self.answer = seen, closed, base, answer
+        self.frame: Frame = seen.frame
+        self.screen = Screen(seen, base)
+        self.solved = 0
+
+    # --- weighing ---
+
+    def weigh(self, option: Option, said: Floats | None = None) -> Weighed:
+        seen = self.seen
+        said = seen.said if said is None else said
+        claimed = seen.value if option.claimed is None else option.claimed
+        half = seen.half if option.half is None else option.half
+        before = float(((seen.residual / seen.allowed) ** 2).sum())
+        left = claimed - said
+        lost = ~np.isfinite(left)
+        left = np.where(lost, seen.residual, left)
+        after = float(((left / seen.allowed) ** 2).sum())
+        meets = seen.meets + 1.05 * np.maximum(half - seen.half, 0.0)
+        noise = np.maximum(half, seen.noise)
+        return Weighed(
+            option, said, claimed, 1.0 - after / before if before else 0.0, float((np.abs(left) / meets).max()),
+            float(np.sqrt(((left / noise) ** 2).mean())), bool((np.abs(left) <= np.maximum(seen.allowed, half)).all()),
+        )  # fmt: skip
+
+    def foretold(self, option: Option) -> Weighed:
+        """By its delta where it has one; places that are not linear are left as they were."""
+        if option.delta is None:
+            return self.weigh(option)
+        said = self.seen.said.copy()
+        rows = self.screen.rows
+        direct = self.seen.linear[rows]
+        said[rows[direct]] += option.delta[direct]
+        return self.weigh(option, said)
+
+    def solve(self, option: Option) -> Weighed | None:
+        """By solving the frame so changed; None where it can move or lacks a number."""
+        if option.change.frame is None:
+            return self.weigh(option)
+        changed = option.change.frame(self.frame)
+        names = self._names(option)
+        self.solved += 1
+        with np.errstate(all="ignore"):
+            try:
+                if option.change.loads_only:
+                    answer = self.base.answer(names, changed)
+                elif not usable(changed):
+                    return None
+                else:
+                    answer = prepared(changed).answer(names)
+            except (ArithmeticError, np.linalg.LinAlgError):
+                return None
+            said = self._read(answer, changed, names)
+        return None if not np.isfinite(said).all() else self.weigh(option, said)
+
+    def _names(self, option: Option) -> tuple[str, ...]:
+        return self.seen.names
+
+    def _read(self, answer: Answer, changed: Frame, names: tuple[str, ...]) -> Floats:
+        seen = self.seen
+        if changed.members.keys() == self.frame.members.keys():
+            return seen.read(answer, names)
+        return _without_missing(seen, answer, changed, names)
+
+    # --- gathering ---
+
+    def singles(self) -> list[Weighed]:
+        """Every single mistake worth telling, best first."""
+        quick = [self.weigh(o) for o in paste_options(self.seen)]
+        told = [self.foretold(o) for o in self._foretellable()]
+        if not self.seen.linear.all():
+            told.sort(key=lambda w: w.rough)
+            told = [w for o in told[: 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
+        quick += told
+        quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame), *case_options(self.screen)])
+        quick.sort(key=lambda w: w.score)
+        if not (quick and quick[0].fits):
+            quick += self._solved(self._near_geometry())
+            for family in (*whole_families(self.frame), *self._near_families()):
+                found = self.fit(family)
+                if found is not None:
+                    quick.append(found)
+        quick.sort(key=lambda w: w.score)
+        return quick
+
+    def _foretellable(self) -> Iterator[Option]:
+        if not len(self.screen.rows):
+            return
+        with np.errstate(all="ignore"):
+            yield from load_options(self.screen)
+            yield from support_options(self.screen)
+            yield from member_options(self.screen)
+
+    def _solved(self, options: Iterable[Option]) -> list[Weighed]:
+        return [w for o in options if (w := self.solve(o)) is not None]
+
+    def _near_geometry(self) -> Iterator[Option]:
+        for option, joints, members in geometry_options(self.frame):
+            if self._promising(joints, members):
+                yield option
+
+    def _near_families(self) -> Iterator[Family]:
+        for family in geometry_families(self.frame):
+            if self._promising(family.joints or (), family.members or ()):
+                yield family
+
+    def _promising(self, joints: tuple[int, ...], members: tuple[int, ...]) -> bool:
+        """Whether anything at this place could leave little enough over."""
+        if not len(self.screen.rows):
+            return True
+        key = (joints, members)
+        if key not in self._bounds:
+            self._bounds[key] = self.screen.place_left(joints, members)
+        return self._bounds[key] <= max(RIVALS * len(self.screen.rows), 0.02 * self.screen.total)
+
+    @property
+    def _bounds(self) -> dict[tuple[tuple[int, ...], tuple[int, ...]], float]:
+        if not hasattr(self, "_bound_cache"):
+            self._bound_cache: dict[tuple[tuple[int, ...], tuple[int, ...]], float] = {}
+        return self._bound_cache
+
+    # --- fitting one number by solving again ---
+
+    def fit(self, family: Family) -> Weighed | None:
+        """The best member of a family: a coarse look, then secant steps on the weighted residual."""
+        tried = [(p, w) for p in family.starts if (w := self.solve(family.at(p))) is not None]
+        if not tried:
+            return None
+        at = np.log if family.logarithmic else float
+        back = (lambda q: float(np.exp(q))) if family.logarithmic else float
+        nil = self.weigh(Option("", (), "", family.at(family.starts[0]).change, 0.0))
+        points = [(0.0, nil), *((float(at(p)), w) for p, w in tried)]
+        points.sort(key=lambda pw: pw[1].rough)
+        if points[0][1].rough > np.sqrt(PROMISE) * nil.rough and family.logarithmic:
+            return None
+        for _ in range(6):
+            step = self._secant(points)
+            if step is None:
+                break
+            found = self.solve(family.at(back(step)))
+            if found is None:
+                break
+            points.append((step, found))
+            points.sort(key=lambda pw: pw[1].rough)
+            if points[0][1].fits and points[0][1].rough < 1.0:
+                break
+        best_at, best = points[0]
+        if best is nil:
+            return None
+        for digits in (2, 3):
+            tidy = self.solve(family.at(float(f"{back(best_at):.{digits}g}")))
+            if tidy is not None and (tidy.rough <= max(1.1 * best.rough, 0.75) or (tidy.fits and not best.fits)):
+                return tidy
+        return best
+
+    def _secant(self, points: list[tuple[float, Weighed]]) -> float | None:
+        """The next number by Gauss-Newton with the slope between the best two."""
+        (a, one), (b, two) = points[0], min(points[1:], key=lambda pw: abs(pw[0] - points[0][0]))
+        if a == b:
+            return None
+        w = 1 / self.seen.noise
+        slope = w * (two.said - one.said) / (b - a)
+        size = float(slope @ slope)
+        if not size > 0:
+            return None
+        step = float(slope @ (w * (one.claimed - one.said))) / size
+        limit = 3 * max(abs(b - a), 1e-6)
+        new = a + float(np.clip(step, -limit, limit))
+        return None if abs(new - a) <= 1e-7 * max(abs(a), 1e-3) else new
+
+    # --- pairs ---
+
+    def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
+        """Two mistakes together, begun from the singles that explain most."""
+        out: list[Weighed] = []
+        begin = sorted((w for w in singles if w.explains > 0.05), key=lambda w: w.rough)[:first]
+        for one in begin:
+            out += self._second(one)
+            if any(w.fits for w in out):
+                break
+        return sorted(out, key=lambda w: w.score)
+
+    def _second(self, one: Weighed) -> Iterator[Weighed]:
+        option = one.option
+        changed, claim = option.change.apply(self.frame, self.closed)
+        seen = replace(self.seen, frame=changed, said=one.said, value=one.claimed)
+        if changed.members.keys() != self.frame.members.keys() or changed.joints.keys() != self.frame.joints.keys():
+            return
+        try:
+            base = prepared(changed)
+        except ArithmeticError:
+            return
+        inner = Sweep(seen, claim, base, base.answer(seen.names))
+        with np.errstate(all="ignore"):
+            best = inner.cheap_singles()
+        for two in best[:8]:
+            if two.option.where == option.where and two.option.kind == option.kind:
+                continue
+            both = Option(
+                option.kind, tuple(dict.fromkeys((*option.where, *two.option.where))),
+                f"{option.says}, and {two.option.says}", option.change.then(two.option.change),
+                PAIR + option.cost + two.option.cost, claimed=two.claimed, fitted=option.fitted + two.option.fitted,
+            )  # fmt: skip
+            yield self.weigh(both, two.said)
+
+    def cheap_singles(self) -> list[Weighed]:
+        """Singles without the searches that solve again many times."""
+        found = [self.weigh(o) for o in paste_options(self.seen)] + [self.foretold(o) for o in self._foretellable()]
+        found.sort(key=lambda w: w.score)
+        if found and found[0].fits:
+            return found
+        found += self._solved([*whole_options(self.frame), *case_options(self.screen)])
+        return sorted(found, key=lambda w: w.score)
+
+
+PAIR = 2.5
+"""What a second mistake costs."""
+
+
+def _without_missing(seen: Observation, answer: Answer, changed: Frame, names: tuple[str, ...]) -> Floats:
+    """Values of a frame that lacks a member: what the claim says of that member stays as it was."""
+    p = seen.places
+    old = list(seen.frame.members)
+    position = np.array([changed.member_index.get(n, -1) for n in old])
+    gone = (p.member >= 0) & (position[np.maximum(p.member, 0)] < 0)
+    moved = replace(p, member=np.where(p.member >= 0, position[np.maximum(p.member, 0)], -1))
+    keep = np.flatnonzero(~gone)
+    if not len(keep):
+        return seen.said.copy()
+    part = Observation(
+        changed, seen.names, tuple(seen.values[k] for k in keep), seen.case[keep],
+        replace(moved, **{f: getattr(moved, f)[keep] for f in ("kind", "column", "member", "end", "joint", "x", "side")}),
+        seen.extreme[keep], seen.value[keep], seen.said[keep], seen.half[keep], seen.allowed[keep], seen.at,
+    )  # fmt: skip
+    out = np.zeros(len(seen.value))
+    out[keep] = part.read(answer, names)
+    return out

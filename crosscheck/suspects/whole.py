@@ -1,0 +1,168 @@
+"""Changes that reach the whole frame, few enough to solve again for each: sections, materials, idealisation, zones."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, replace
+from functools import partial
+
+from crosscheck.frame.model import HELD, Frame, Temperature
+from crosscheck.suspects.changes import (
+    Change,
+    usable,
+    with_analysis,
+    with_load,
+    with_material_factor,
+    with_member,
+    with_section_factors,
+    with_support,
+)
+from crosscheck.suspects.members import COMMON
+from crosscheck.suspects.suspect import Option, named
+
+SECTION, MATERIAL, FITTED, SWAPPED, IDEALISED, ZONES, ANGLE, ONE_ZONE = 0.5, 0.6, 1.1, 0.6, 0.3, 0.4, 0.6, 0.7
+
+
+@dataclass(frozen=True, slots=True)
+class Family:
+    """Options with one number to be fitted. at(p): the option; starts: where to begin; logarithmic: p is a factor.
+
+    joints, members: indices of the place it is confined to; None where it reaches further.
+    """
+
+    at: Callable[[float], Option]
+    starts: tuple[float, ...]
+    logarithmic: bool = True
+    joints: tuple[int, ...] | None = None
+    members: tuple[int, ...] | None = None
+
+
+def whole_options(frame: Frame) -> Iterator[Option]:
+    """The fixed ones."""
+    yield from _idealisations(frame)
+    yield from _zones(frame)
+    yield from _angles(frame)
+    yield from _sections(frame)
+    used = {m.material for m in frame.members.values()}
+    for name in frame.materials:
+        if name in used:
+            for other in frame.materials.values():
+                if other.name != name:
+                    says = f"members of {named(frame, 'material', name)} were given {other.name}"
+                    change = Change(partial(_other_material, name=name, other=other.name))
+                    yield Option("stiffness", (named(frame, "material", name),), says, change, SWAPPED)
+            for factor in (*COMMON[:7], 1e3, 1e-3):
+                yield _material(frame, name, factor, MATERIAL)
+
+
+def whole_families(frame: Frame) -> Iterator[Family]:
+    """The fitted ones: I, A and both of a section, E of a material."""
+    sections, materials = {m.section for m in frame.members.values()}, {m.material for m in frame.members.values()}
+    for name in sorted(sections):
+        yield Family(partial(_section, frame, name, "EI"), FACTORS)
+        if frame.analysis.axial == "elastic":
+            yield Family(partial(_section, frame, name, "EA"), FACTORS)
+            yield Family(partial(_section, frame, name, "EI and EA"), FACTORS)
+    for name in sorted(materials):
+        yield Family(partial(_material, frame, name), FACTORS)
+
+
+FACTORS = (0.15, 0.5, 2.0, 7.0)
+
+
+def _section(frame: Frame, name: str, what: str, factor: float, cost: float = FITTED) -> Option:
+    bending, stretching = (factor if "EI" in what else 1.0), (factor if "EA" in what else 1.0)
+    says = f"section {name} had {factor:.4g} times its {what}"
+    change = Change(partial(with_section_factors, name=name, bending=bending, stretching=stretching))
+    return Option("stiffness", (named(frame, "section", name),), says, change, cost, fitted=int(cost >= FITTED))
+
+
+def _material(frame: Frame, name: str, factor: float, cost: float = FITTED) -> Option:
+    says = f"material {name} had {factor:.4g} times its E"
+    change = Change(partial(with_material_factor, name=name, factor=factor))
+    return Option("stiffness", (named(frame, "material", name),), says, change, cost, fitted=int(cost >= FITTED))
+
+
+def _sections(frame: Frame) -> Iterator[Option]:
+    used = {m.section for m in frame.members.values()}
+    for name in frame.sections:
+        if name not in used:
+            continue
+        for factor in COMMON:
+            yield _section(frame, name, "EI", factor, SECTION)
+            if frame.analysis.axial == "elastic":
+                yield _section(frame, name, "EA", factor, SECTION + 0.2)
+                yield _section(frame, name, "EI and EA", factor, SECTION + 0.1)
+        for other in frame.sections:
+            if other != name:
+                says = f"members of section {name} were given section {other}"
+                change = Change(partial(_other_section, name=name, other=other))
+                yield Option("stiffness", (named(frame, "section", name),), says, change, SWAPPED)
+
+
+def _other_section(frame: Frame, name: str, other: str) -> Frame:
+    return replace(frame, members={
+        n: replace(m, section=other) if m.section == name else m for n, m in frame.members.items()
+    })  # fmt: skip
+
+
+def _other_material(frame: Frame, name: str, other: str) -> Frame:
+    return replace(frame, members={
+        n: replace(m, material=other) if m.material == name else m for n, m in frame.members.items()
+    })  # fmt: skip
+
+
+# --- idealisation ---
+
+
+def _idealisations(frame: Frame) -> Iterator[Option]:
+    axial, shear = frame.analysis.axial, frame.analysis.shear
+    new_axial, new_shear = ("rigid" if axial == "elastic" else "elastic"), ("rigid" if shear == "elastic" else "elastic")
+    says_axial = "members were axially rigid" if axial == "elastic" else "members could stretch (axially elastic)"
+    says_shear = "shear deformation was left out" if shear == "elastic" else "shear deformation was counted"
+    for fields, says, cost in (
+        ({"axial": new_axial}, says_axial, IDEALISED), ({"shear": new_shear}, says_shear, IDEALISED),
+        ({"axial": new_axial, "shear": new_shear}, f"{says_axial} and {says_shear}", IDEALISED + 0.5),
+    ):  # fmt: skip
+        if usable(with_analysis(frame, **fields)):
+            yield Option("idealisation", (), says, Change(partial(with_analysis, **fields)), cost)
+
+
+def _zones(frame: Frame) -> Iterator[Option]:
+    zoned = [m for m in frame.members.values() if m.rigid_from or m.rigid_to]
+    if not zoned:
+        return
+    where = tuple(named(frame, "member", m.name) for m in zoned) if len(zoned) == 1 else ()
+    yield Option("idealisation", where, "rigid end zones were left out", Change(_no_zones), ZONES)
+    for m in zoned:
+        if len(zoned) > 1:
+            change = Change(partial(with_member, name=m.name, rigid_from=0.0, rigid_to=0.0))
+            label = named(frame, "member", m.name)
+            yield Option("idealisation", (label,), f"the rigid end zones of {label} were left out", change, ONE_ZONE)
+
+
+def _no_zones(frame: Frame) -> Frame:
+    return replace(frame, members={n: replace(m, rigid_from=0.0, rigid_to=0.0) for n, m in frame.members.items()})
+
+
+def _angles(frame: Frame) -> Iterator[Option]:
+    """A turned support taken as square, or turned the other way."""
+    for joint, s in frame.supports.items():
+        if (s.x, s.y) == (HELD, HELD) or s.x == s.y:
+            continue
+        label = named(frame, "joint", joint)
+        for angle, says in ((0.0, "was not turned"), (-s.angle, "was turned the other way"), (s.angle + 90, "was turned a further 90 degrees")):
+            if abs(angle - s.angle) > 1e-9:
+                change = Change(partial(with_support, joint=joint, support=replace(s, angle=angle)))
+                yield Option("support", (label,), f"the support at {label} {says}", change, ANGLE)
+
+
+def temperature_options(frame: Frame) -> Iterator[Option]:
+    """A temperature difference between the wrong faces."""
+    for case, loads in frame.cases.items():
+        for k, load in enumerate(loads.loads):
+            if isinstance(load, Temperature) and load.difference and load.mean:
+                new = replace(load, difference=-load.difference)
+                change = Change(partial(with_load, case=case, index={k: (new,)}), loads_only=True)
+                says = f"the temperature difference of {load.member} was taken the other way round"
+                yield Option("load", (f"{case}[{load.entry}]",), says, change, ANGLE)

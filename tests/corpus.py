@@ -1,0 +1,442 @@
+"""Seeded mistakes: a frame, what another analysis may have had in place of it, and its results as printed.
+
+The other analysis is solved by moment distribution, so that suspects (which stand on slope-deflection) meet results they
+did not make. Mistakes are drawn here from their own small functions, not from the ones that suspects are made with.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, replace
+from random import Random
+
+import numpy as np
+
+from crosscheck import check
+from crosscheck.answer import Answer, Silent
+from crosscheck.compare.claim import ClaimComparison
+from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
+from crosscheck.compare.opinions import Comparison
+from crosscheck.compare.tolerance import CLAIM
+from crosscheck.frame.kinematics import study
+from crosscheck.frame.model import (
+    FREE,
+    HELD,
+    Frame,
+    JointCouple,
+    JointForce,
+    Load,
+    Misfit,
+    PointCouple,
+    PointForce,
+    SelfWeight,
+    Settlement,
+    Spread,
+    Support,
+    Temperature,
+)
+from crosscheck.opinions import moment_distribution, slope_deflection
+from crosscheck.problems import UnusableInput
+
+END_NAMES, JOINT_NAMES, PULL_NAMES = ("axial", "shear", "moment"), ("dx", "dy", "rotation"), ("fx", "fy", "moment")
+EFFECT = 0.03
+"""Least change of an end moment, as a share of the peak, for a mistake to count."""
+
+
+@dataclass(frozen=True)
+class Mistake:
+    """kind: as the contract names it. sort: finer, for the table. where: what a suspect should name ('' for nowhere).
+
+    frame: what the other analysis had; None where the mistake is in the paste. paste: changes the printed values.
+    name: case of the other frame whose results stand under the claimed case's name.
+    """
+
+    kind: str
+    sort: str
+    where: tuple[str, ...]
+    frame: Frame | None = None
+    paste: Callable[[list[ClaimedValue]], list[ClaimedValue]] | None = None
+    name: str | None = None
+
+
+# --- printing --------------------------------------------------------------------------------------
+
+
+def printed(value: float, digits: int, peak: float, fixed: bool) -> tuple[float, float, str]:
+    """(value, half digit, text) with so many significant digits, of its own or (fixed) of the column's peak."""
+    if abs(value) < 1e-9 * peak:
+        value = 0.0
+    size = peak if fixed or value == 0.0 else abs(value)
+    decimals = digits - 1 - math.floor(math.log10(size)) if size > 0 else digits
+    text = f"{round(value, decimals):.{max(decimals, 0)}f}"
+    return float(text), 0.5 * 10.0**-decimals, text
+
+
+def claim_values(
+    frame: Frame, answer: Answer, name: str, under: str, digits: int, fixed: bool, only: str = "all"
+) -> list[ClaimedValue]:
+    """The results of case `name` as a claim on case `under`. only: "all", "moments" or "reactions"."""
+    c = answer.cases[name]
+    out: list[ClaimedValue] = []
+    line = 0
+
+    def add(kind: str, names: tuple[str, ...], values: np.ndarray, peaks: np.ndarray, member: str | None, joint: str) -> None:
+        nonlocal line
+        line += 1
+        for q, v, peak in zip(names, values.tolist(), peaks.tolist(), strict=True):
+            if not math.isfinite(v) or (only == "moments" and (q != "moment" or kind != "end")):
+                continue
+            if only == "reactions" and kind != "reaction":
+                continue
+            value, half, text = printed(v, digits, peak, fixed)
+            out.append(ClaimedValue(under, kind, q, member, joint, None, value, half, line, text))  # type: ignore[arg-type]
+
+    peaks = np.nanmax(np.abs(np.nan_to_num(c.ends)), axis=(0, 1))
+    for m, member in enumerate(frame.members.values()):
+        for e, joint in enumerate((member.joint_from, member.joint_to)):
+            add("end", END_NAMES, c.ends[m, e], peaks, member.name, joint)
+    peaks = np.abs(np.nan_to_num(c.reactions)).max(axis=0)
+    for joint in frame.supports:
+        add("reaction", PULL_NAMES, c.reactions[frame.joint_index[joint]], peaks, None, joint)
+    peaks = np.abs(np.nan_to_num(c.joints)).max(axis=0)
+    for j, joint in enumerate(frame.joints):
+        add("displacement", JOINT_NAMES, c.joints[j], peaks, None, joint)
+    return out
+
+
+def solved(frame: Frame, names: tuple[str, ...] | None = None, by: object = moment_distribution) -> Answer | None:
+    """The frame's results, or None where it cannot be solved."""
+    try:
+        found = study(frame)
+        answer = by.opine(frame, found, names)  # type: ignore[attr-defined]
+    except (UnusableInput, ArithmeticError, np.linalg.LinAlgError):
+        return None
+    return None if isinstance(answer, Silent) else answer
+
+
+def opinions_on(frame: Frame, names: tuple[str, ...] | None = None) -> check.Opinions:
+    """Opinions with slope-deflection alone: all that suspects need."""
+    found = study(frame)
+    wanted = frame.names if names is None else names
+    answer = slope_deflection.opine(frame, found, wanted)
+    assert isinstance(answer, Answer)
+    answers = {"slope-deflection": answer}
+    comparison = Comparison(frame, answers)
+    return check.Opinions(frame, found, wanted, answers, {}, {n: comparison.judge(n) for n in wanted})
+
+
+def closed_claim(values: list[ClaimedValue]) -> ClosedClaim:
+    return ClosedClaim("", "", len({v.line for v in values}), tuple(dict.fromkeys(v.case for v in values)), tuple(values))
+
+
+def judged(frame: Frame, opinions: check.Opinions, closed: ClosedClaim):  # type: ignore[no-untyped-def]
+    return ClaimComparison(frame, opinions.answers, opinions.judgements, CLAIM).judge(closed)
+
+
+# --- mistakes of the frame ---------------------------------------------------------------------------
+
+
+def mistakes(frame: Frame, case: str, r: Random) -> list[Mistake]:
+    """Every mistake that can be drawn for a frame and case, in random order."""
+    out: list[Mistake] = []
+    for source in (
+        _supports, _ends, _stiffness, _loads, _positions, _cases, _geometry, _idealisation, _units_of_springs, _pastes,
+    ):  # fmt: skip
+        out += list(source(frame, case, r))
+    r.shuffle(out)
+    return out
+
+
+def _put(frame: Frame, table: str, name: str, thing: object) -> Frame:
+    return replace(frame, **{table: {**getattr(frame, table), name: thing}})
+
+
+def _supports(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    for joint, s in frame.supports.items():
+        for kind in ((HELD, HELD, HELD), (HELD, HELD, FREE), (FREE, HELD, FREE), (HELD, FREE, FREE)):
+            if kind != (s.x, s.y, s.rotation):
+                x, y, t = kind
+                yield Mistake("support", "another kind", (joint,), _put(frame, "supports", joint, replace(s, x=x, y=y, rotation=t)))
+        gone = {n: q for n, q in frame.supports.items() if n != joint}
+        yield Mistake("support", "missing", (joint,), replace(frame, supports=gone))
+        for axis in ("x", "y", "rotation"):
+            if getattr(s, axis) == HELD:
+                m = frame.member_table
+                scale = float(np.median(m.E * m.I / m.length ** (1 if axis == "rotation" else 3)))
+                k = scale * math.exp(r.uniform(-2, 4))
+                yield Mistake("support", "sprung", (joint,), _put(frame, "supports", joint, replace(s, **{axis: k})))
+        if s.angle:
+            yield Mistake("support", "not turned", (joint,), _put(frame, "supports", joint, replace(s, angle=0.0)))
+    bare = [n for n in frame.joints if n not in frame.supports and (frame.member_table.ends == frame.joint_index[n]).any()]
+    for joint in bare[:3]:
+        yield Mistake("support", "extra", (joint,), _put(frame, "supports", joint, Support(joint, FREE, HELD, FREE)))
+
+
+def _units_of_springs(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    for joint, s in frame.supports.items():
+        for axis in ("x", "y", "rotation"):
+            k = getattr(s, axis)
+            if 0 < k < HELD:
+                f = r.choice([1e3, 1e-3])
+                yield Mistake("support", "spring by a unit", (joint,), _put(frame, "supports", joint, replace(s, **{axis: k * f})))
+
+
+def _ends(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    for name, m in frame.members.items():
+        for field in ("turn_from", "turn_to"):
+            now = getattr(m, field)
+            if now != FREE:
+                yield Mistake("end release", "hinge added", (name,), _put(frame, "members", name, replace(m, **{field: FREE})))
+            if now != HELD:
+                yield Mistake("end release", "hinge or spring left out", (name,), _put(frame, "members", name, replace(m, **{field: HELD})))
+            if now == HELD and r.random() < 0.3:
+                t, k = frame.member_table, frame.member_index[name]
+                spring = float(t.E[k] * t.I[k] / t.length[k]) * math.exp(r.uniform(-1, 2))
+                yield Mistake("end release", "semi-rigid", (name,), _put(frame, "members", name, replace(m, **{field: spring})))
+            if 0 < now < HELD:
+                spring = now * r.choice([1e3, 1e-3])
+                yield Mistake("end release", "spring by a unit", (name,), _put(frame, "members", name, replace(m, **{field: spring})))
+
+
+def _stiffness(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    elastic = frame.analysis.axial == "elastic"
+    factor = lambda: r.choice([0.5, 0.35, 0.7, 2.0, 10.0, 0.1, round(math.exp(r.uniform(-2, 2)), 3)])  # noqa: E731
+    for name, m in frame.members.items():
+        s = frame.sections[m.section]
+        f = factor()
+        own = replace(s, name="own", I=s.I * f)
+        yield Mistake("stiffness", "EI of a member", (name,), _put(_put(frame, "sections", "own", own), "members", name, replace(m, section="own")))
+        if elastic and s.A:
+            own = replace(s, name="own", A=s.A * factor())
+            yield Mistake("stiffness", "EA of a member", (name,), _put(_put(frame, "sections", "own", own), "members", name, replace(m, section="own")))
+        for other in frame.sections:
+            if other != m.section:
+                yield Mistake("stiffness", "another section", (name,), _put(frame, "members", name, replace(m, section=other)))
+    for name in {m.section for m in frame.members.values()}:
+        s = frame.sections[name]
+        yield Mistake("stiffness", "EI of a section", (name,), _put(frame, "sections", name, replace(s, I=s.I * factor())))
+    for name in {m.material for m in frame.members.values()}:
+        t = frame.materials[name]
+        f = factor()
+        yield Mistake("stiffness", "E of a material", (name,), _put(frame, "materials", name, replace(t, E=t.E * f, G=None if t.G is None else t.G * f)))
+
+
+# --- loads -----------------------------------------------------------------------------------------
+
+AMOUNTS = ("force", "couple", "x", "y", "rotation", "first", "last", "mean", "difference", "too_long", "factor")
+
+
+def times(load: Load, f: float) -> Load:
+    return replace(load, **{a: f * getattr(load, a) for a in AMOUNTS if hasattr(load, a)})
+
+
+def _with(frame: Frame, case: str, loads: list[Load]) -> Frame:
+    return _put(frame, "cases", case, replace(frame.cases[case], loads=tuple(loads)))
+
+
+def _cases_of(frame: Frame, case: str) -> list[str]:
+    return [case] if case in frame.cases else list(frame.combinations[case].factors)
+
+
+def _loads(frame: Frame, claimed: str, r: Random) -> Iterator[Mistake]:
+    for case in _cases_of(frame, claimed):
+        loads = list(frame.cases[case].loads)
+        for entry in dict.fromkeys(q.entry for q in loads):
+            mine = [q for q in loads if q.entry == entry]
+            where = (f"{case}[{entry}]",)
+            word = {SelfWeight: "self weight ", Settlement: "settlement ", Temperature: "temperature ", Misfit: "misfit "}.get(type(mine[0]), "")
+            yield Mistake("load", f"{word}left out", where, _with(frame, case, [q for q in loads if q.entry != entry]))
+            yield Mistake("load", f"{word}in twice", where, _with(frame, case, loads + mine))
+            yield Mistake("load", f"{word}reversed", where, _with(frame, case, [times(q, -1) if q.entry == entry else q for q in loads]))
+            if len(mine) > 1:
+                yield Mistake("load", "one of a run left out", where, _with(frame, case, [q for q in loads if q is not mine[0]]))
+            for k, load in enumerate(loads):
+                if load is mine[0] and isinstance(load, (PointForce, Spread, JointForce)):
+                    yield from _directions(frame, case, loads, entry, load, where, r)
+
+
+def _directions(frame, case, loads, entry, load, where, r):  # type: ignore[no-untyped-def]
+    options = [0.0, 270.0, 90.0] + ([] if isinstance(load, JointForce) else ["across"])
+    new = r.choice([d for d in options if d != load.direction])
+    sort = "local for global" if "across" in (new, load.direction) else "another direction"
+    yield Mistake("load", sort, where, _with(frame, case, [replace(q, direction=new) if q.entry == entry else q for q in loads]))
+    if isinstance(load, Spread) and not isinstance(load.direction, str):
+        flipped = [replace(q, projection=not q.projection) if q.entry == entry else q for q in loads]
+        yield Mistake("load", "length for projection", where, _with(frame, case, flipped))
+
+
+def _positions(frame: Frame, claimed: str, r: Random) -> Iterator[Mistake]:
+    for case in _cases_of(frame, claimed):
+        loads = list(frame.cases[case].loads)
+        for k, load in enumerate(loads):
+            where = (f"{case}[{load.entry}]",)
+
+            def swapped(new: Load, k: int = k, case: str = case, loads: list[Load] = loads) -> Frame:
+                return _with(frame, case, [*loads[:k], new, *loads[k + 1 :]])
+
+            if isinstance(load, (PointForce, PointCouple, Spread)):
+                length = float(frame.member_table.length[frame.member_index[load.member]])
+                if isinstance(load, Spread):
+                    new = replace(load, first=load.last, last=load.first, start=max(length - load.end, 0.0), end=length - load.start)
+                    if load.start > 0.01 * length or load.end < 0.99 * length:
+                        yield Mistake("load", "whole for part", where, swapped(replace(load, start=0.0, end=length)))
+                else:
+                    new = replace(load, at=length - load.at)
+                yield Mistake("load", "from the other end", where, swapped(new))
+                others = [n for n in frame.members if n != load.member]
+                if others:
+                    n = r.choice(others)
+                    far = float(frame.member_table.length[frame.member_index[n]])
+                    if isinstance(load, Spread):
+                        whole = load.start <= 1e-9 and load.end >= length * (1 - 1e-9)
+                        end = far if whole else min(load.end, far)
+                        if load.start < end * 0.5:
+                            yield Mistake("load", "on another member", where, swapped(replace(load, member=n, end=end)))
+                    elif load.at <= far:
+                        yield Mistake("load", "on another member", where, swapped(replace(load, member=n)))
+            if isinstance(load, (JointForce, JointCouple)):
+                n = r.choice([j for j in frame.joints if j != load.joint])
+                yield Mistake("load", "on another joint", where, swapped(replace(load, joint=n)))
+
+
+def _cases(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    for other in frame.names:
+        if other != case:
+            yield Mistake("load case", "another case pasted", (), frame, name=other)
+    if case in frame.combinations:
+        combination = frame.combinations[case]
+        for name, f in combination.factors.items():
+            if f != 1.0:
+                for g, sort in ((1.0, "factor left out"), (f * f, "factored twice")):
+                    new = replace(combination, factors={**combination.factors, name: g})
+                    yield Mistake("load case", sort, (), _put(frame, "combinations", case, new))
+        if len(combination.factors) > 1:
+            new = replace(combination, factors={n: f * f for n, f in combination.factors.items()})
+            yield Mistake("load case", "all factored again", (), _put(frame, "combinations", case, new))
+
+
+# --- geometry and idealisation -----------------------------------------------------------------------
+
+
+def _relength(old: Frame, new: Frame) -> Frame:
+    a, b = old.member_table.length, new.member_table.length
+    ratio = {n: float(b[k] / a[k]) for k, n in enumerate(old.members)}
+
+    def moved(q: Load) -> Load:
+        f = ratio.get(getattr(q, "member", ""), 1.0)
+        if isinstance(q, Spread):
+            return replace(q, start=q.start * f, end=q.end * f)
+        return replace(q, at=q.at * f) if isinstance(q, (PointForce, PointCouple)) else q
+
+    return replace(new, cases={n: replace(c, loads=tuple(map(moved, c.loads))) for n, c in new.cases.items()})
+
+
+def _geometry(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    t = frame.member_table
+    for name, j in frame.joints.items():
+        around = (t.ends == frame.joint_index[name]).any(axis=1)
+        if not around.any():
+            continue
+        by = r.choice([-1, 1]) * r.uniform(0.05, 0.25) * float(t.length[around].min())
+        new = replace(j, x=j.x + by) if r.random() < 0.5 else replace(j, y=j.y + by)
+        yield Mistake("geometry", "joint elsewhere", (name,), _relength(frame, _put(frame, "joints", name, new)))
+    for name, m in frame.members.items():
+        gone = replace(
+            frame, members={n: q for n, q in frame.members.items() if n != name},
+            cases={n: replace(c, loads=tuple(q for q in c.loads if getattr(q, "member", "") != name)) for n, c in frame.cases.items()},
+        )  # fmt: skip
+        yield Mistake("geometry", "member missing", (name,), gone)
+        away = np.hypot(*(frame.xy - frame.xy[frame.joint_index[m.joint_to]]).T)
+        near = [list(frame.joints)[k] for k in np.argsort(away)[1:4]]
+        near = [n for n in near if n not in (m.joint_from, m.joint_to)]
+        if near:
+            new_m = replace(m, joint_to=r.choice(near))
+            yield Mistake("geometry", "joined elsewhere", (name,), _relength(frame, _put(frame, "members", name, new_m)))
+
+
+def _idealisation(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    a = frame.analysis
+    t = frame.member_table
+    if a.axial == "elastic" or not np.isnan(t.A).any():
+        new = replace(a, axial="rigid" if a.axial == "elastic" else "elastic")
+        yield Mistake("idealisation", "axial", (), replace(frame, analysis=new))
+    if a.shear == "elastic" or not (np.isnan(t.G).any() or np.isnan(t.shear_area).any()):
+        new = replace(a, shear="rigid" if a.shear == "elastic" else "elastic")
+        yield Mistake("idealisation", "shear", (), replace(frame, analysis=new))
+    if t.zone.any():
+        bare = {n: replace(m, rigid_from=0.0, rigid_to=0.0) for n, m in frame.members.items()}
+        yield Mistake("idealisation", "end zones", (), replace(frame, members=bare))
+        yield Mistake("idealisation", "face values", (), paste=lambda v: v)
+
+
+# --- mistakes of the paste ---------------------------------------------------------------------------
+
+
+def _pastes(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
+    """Mistakes of the paste: what they do is decided when the values are there."""
+    seed = r.random()
+    members = list(frame.members)
+    for kind, sort, do in (
+        ("units", "units of a column", _unit), ("transcription", "rows swapped", _swap), ("transcription", "digits transposed", _transpose),
+        ("transcription", "decimal slip", _slip), ("signs", "sign of one value", _one_sign),
+    ):  # fmt: skip
+        yield Mistake(kind, sort, (), paste=lambda v, do=do: do(v, Random(seed)))
+    for name in r.sample(members, min(2, len(members))):
+        yield Mistake("signs", "signs of a member", (name,), paste=lambda v, name=name: _member_signs(v, name))
+    yield Mistake("load", "all reversed", (), paste=lambda v: [replace(q, value=-q.value) for q in v])
+
+
+def _changed(values: list[ClaimedValue], k: int, value: float, half: float | None = None) -> list[ClaimedValue]:
+    out = list(values)
+    out[k] = replace(out[k], value=value, half_digit=out[k].half_digit if half is None else half)
+    return out
+
+
+def _unit(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
+    quantity, f = r.choice([("moment", 1e3), ("moment", 1e-3), ("shear", 1e3), ("axial", 1e-3), ("rotation", 180 / math.pi)])
+    return [replace(v, value=v.value * f, half_digit=v.half_digit * f) if v.quantity == quantity else v for v in values]
+
+
+def _swap(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
+    lines = sorted({v.line for v in values if v.kind == "end"})
+    a, b = r.sample(lines, 2)
+    of = {n: {v.quantity: v for v in values if v.line == n} for n in (a, b)}
+    if of[a].keys() != of[b].keys():
+        return values
+    out = []
+    for v in values:
+        other = of[b] if v.line == a else of[a] if v.line == b else None
+        w = other[v.quantity] if other is not None else v
+        out.append(replace(v, value=w.value, half_digit=w.half_digit))
+    return out
+
+
+def _large(values: list[ClaimedValue], r: Random) -> int:
+    peak = max(abs(v.value) for v in values if v.kind == "end" and v.quantity == "moment")
+    return r.choice([k for k, v in enumerate(values) if v.kind == "end" and v.quantity == "moment" and abs(v.value) > 0.2 * peak])
+
+
+def _transpose(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
+    k = _large(values, r)
+    v = values[k]
+    unit = 2 * v.half_digit
+    digits = str(round(abs(v.value) / unit))
+    n = r.randrange(max(len(digits) - 2, 1))
+    new = digits[:n] + digits[n + 1 : n + 2] + digits[n] + digits[n + 2 :]
+    return _changed(values, k, math.copysign(int(new) * unit, v.value))
+
+
+def _slip(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
+    k = _large(values, r)
+    f = r.choice([0.1, 10.0])
+    return _changed(values, k, values[k].value * f, values[k].half_digit * f)
+
+
+def _one_sign(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
+    k = _large(values, r)
+    return _changed(values, k, -values[k].value)
+
+
+def _member_signs(values: list[ClaimedValue], name: str) -> list[ClaimedValue]:
+    return [replace(v, value=-v.value) if v.member == name and v.quantity in ("moment", "shear") else v for v in values]
