@@ -236,10 +236,10 @@ TURNED: dict[type[ast.operator], type[ast.operator]] = {
 }  # fmt: skip
 ASIDE = ("__init__.py", "working.py", "qualification.py", "scope.py")
 """Modules of an opinion without mechanics of its own results."""
-PLACES = 60
-"""Places altered in each opinion, chosen by a fixed seed."""
+PLACES = 120
+"""Most places altered in each opinion, in an order fixed by a seed."""
 NAMED = 20
-"""Of them at least so many must bring about a difference that is laid at the right door."""
+"""As soon as so many brought about a difference that is laid at the right door, enough is shown."""
 
 
 @dataclass(frozen=True)
@@ -342,7 +342,8 @@ def test_the_opinions_agree_as_they_are(text: str) -> None:
 )
 def test_who_stands_out(values: list[tuple[float | None, ...]], lone: str | None) -> None:
     differences = tuple(
-        Difference(ComparedPlace("all", "joints", "dx"), dict(zip("abc", row, strict=True)), 1.0, 1e-6) for row in values
+        Difference(ComparedPlace("all", "joints", "dx"), dict(zip("abc", row, strict=True)), 1.0, 1e-6)
+        for row in values
     )
     assert lone_dissenter(("a", "b", "c"), differences) == lone
     assert lone_dissenter(("a", "b"), differences) is None
@@ -368,6 +369,7 @@ def test_a_wrong_term_is_laid_at_the_right_door(
         tally[outcome(opinion, module)] += 1
         for name in [m for m in sys.modules if m.split(".")[0] == module.__name__]:
             del sys.modules[name]
-    print(tally)
+        if tally[opinion] == NAMED:
+            break
     assert set(tally) <= {opinion, "unnamed", "silent", "stopped", "unseen"}, tally
     assert tally[opinion] >= NAMED, tally
