@@ -332,7 +332,6 @@ def _support(rng: np.random.Generator, joint: str) -> Support:
 def _loads(rng, joints, members, supports, axial) -> list[Load]:
     loads: list[Load] = []
     names = list(members)
-    entry = 0
 
     def length(m: str) -> float:
         a, b = joints[members[m].joint_from], joints[members[m].joint_to]
@@ -341,12 +340,13 @@ def _loads(rng, joints, members, supports, axial) -> list[Load]:
     def direction():
         return rng.choice(np.array(["across", "along", 270.0, 0.0, 33.0], dtype=object))
 
-    for _ in range(int(rng.integers(2, 7))):
+    for entry in range(int(rng.integers(2, 7))):
         m = str(rng.choice(names))
         size = length(m)
         kind = rng.integers(0, 8)
         if kind == 0:
-            loads.append(JointForce(entry, str(rng.choice(list(joints))), rng.normal() * 20, float(rng.uniform(0, 360))))
+            place, angle = str(rng.choice(list(joints))), float(rng.uniform(0, 360))
+            loads.append(JointForce(entry, place, rng.normal() * 20, angle))
         elif kind == 1:
             rigid = [m for m in members.values() if m.turn_from == HELD]
             if rigid:
@@ -375,7 +375,6 @@ def _loads(rng, joints, members, supports, axial) -> list[Load]:
         way = direction()
         projection = bool(rng.random() < 0.2) and not isinstance(way, str)
         loads.append(Spread(entry, m, rng.normal() * 10, rng.normal() * 10, way, a, b, projection))
-        entry += 1
     return loads
 
 

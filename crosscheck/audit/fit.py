@@ -174,13 +174,13 @@ class Fit:
 
     @cached_property
     def squared(self) -> float:
-        """d'Ld: the misfit squared, in units of the printed rounding."""
-        return max(float(self.solved[0] @ self.d), 0.0)
+        """The misfit r'S^-1 r in units of the printed rounding, as (Ld)'S(Ld): d'Ld would lose digits to cancellation."""
+        return float(self.solved[0] @ self.residual)
 
     @cached_property
     def inverse(self) -> Floats:
         """(n, n) L, dense; only for frames small enough. One pass: it serves intervals and sizes, not the misfit."""
-        return np.concatenate([self._columns(part) for part in self._parts()], axis=1)
+        return np.concatenate([np.zeros((len(self.d), 0)), *map(self._columns, self._parts())], axis=1)
 
     def _parts(self) -> list[slice]:
         return [slice(k, min(k + BATCH, len(self.d))) for k in range(0, len(self.d), BATCH)]
@@ -198,12 +198,14 @@ class Fit:
         return len(self.d) <= DENSE_ROWS
 
     def own(self, columns: Sparse) -> Floats:
-        """(k,) a'La of each column (n, k)."""
+        """(k,) a'La of each column (n, k); where small as (La)'S(La), which loses no digits to cancellation."""
         across = columns.T.tocsr()
+        if self.small:
+            spread = across @ self.inverse
+            return np.asarray(((spread @ self.weight) * spread).sum(axis=1))
         total = np.zeros(columns.shape[1])
         for part in self._parts():
-            inverse = self.inverse[:, part] if self.small else self._columns(part)
-            total += np.asarray(across[:, part].multiply(across @ inverse).sum(axis=1)).ravel()
+            total += np.asarray(across[:, part].multiply(across @ self._columns(part)).sum(axis=1)).ravel()
         return total
 
     def carried(self, rows: Sparse, own: Floats) -> Floats:

@@ -23,6 +23,8 @@ from crosscheck.frame.model import FREE, HELD, Bools, Floats, Ints
 
 SUPPORT, END, LENGTH = "support", "end", "length"
 BENDING_FACTOR, AXIAL_FACTOR, SHEAR_FACTOR, MODULUS = "EI", "EA", "shear stiffness", "E"
+STIFFEST = 100.0
+"""The largest factor of stiffness of a whole section or material that is worth naming."""
 INVISIBLE = 1e-9
 """A signature of which less than this share survives the fit cannot be seen in the misfit at all."""
 ALIKE = 1e-9
@@ -41,7 +43,6 @@ class Signature:
     share: of the squared misfit it explains, 0 to 1. size: movement, rotation or stretch of the slip, or 1 - 1/factor.
     allowed: how large a size rounding alone could give; significant: size beyond that.
     fitted: what the claim goes with: the stiffness left (0: free, or a hinge), or the factor; NaN for "length".
-    possible: False where that would be a negative stiffness or factor.
     """
 
     kind: str
@@ -60,12 +61,16 @@ class Signature:
 
     @property
     def possible(self) -> bool:
+        """No negative stiffness; and not a group of members made (nearly) rigid, which explains any misfit there is:
+        where all members are of one section or material, no deformation at all is left."""
+        if self.of in ("section", "material"):
+            return 0 < self.fitted <= STIFFEST
         return not self.fitted < 0
 
 
 @dataclass(frozen=True, eq=False)
 class SignatureTable:
-    """All candidates of a case, best first, with their columns for pairs and ties. columns: (n, k) in their order."""
+    """All candidates of a case with their columns (n, k) for pairs and ties; best first, impossible ones last."""
 
     fit: Fit
     entries: tuple[Signature, ...]
@@ -82,7 +87,7 @@ class SignatureTable:
         gram = part.T @ self.fit.solve(part)[0]
         size = np.diag(gram)
         like = gram[0, 1:] ** 2 >= (1 - ALIKE) * size[0] * size[1:]
-        return [k for k in np.flatnonzero(like).tolist() if k != index]
+        return [k for k in np.flatnonzero(like).tolist() if k != index and self.entries[k].possible]
 
 
 def share(system: Fit, columns: Sparse) -> float:
@@ -165,14 +170,15 @@ def _judge(system: Fit, candidates: _Candidates, columns: Sparse) -> SignatureTa
     explained = seen**2 / safe / (system.squared or 1.0)
     order = np.flatnonzero(visible)
     order = order[np.argsort(-explained[order], kind="stable")]
-    entries = [
+    found = [
         replace(
             candidates.labels[k], share=min(float(explained[k]), 1.0), size=float(size[k]), allowed=float(most[k]),
             fitted=_fitted(candidates.labels[k].kind, float(size[k]), float(most[k]), *candidates.forces[k]),
         )
         for k in order.tolist()
     ]  # fmt: skip
-    return SignatureTable(system, tuple(entries), columns[:, order])
+    ranked = sorted(range(len(found)), key=lambda k: not found[k].possible)
+    return SignatureTable(system, tuple(found[k] for k in ranked), columns[:, order[ranked]])
 
 
 def _fitted(kind: str, size: float, allowed: float, force: float, soft: float) -> float:
