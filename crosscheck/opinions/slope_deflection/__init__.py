@@ -27,13 +27,47 @@ NAME = "slope-deflection"
 
 
 def opine(frame: Frame, study: Study, names: Sequence[str] | None = None) -> Answer | Silent:
-    """Every load case and combination (or those of `names`) by slope-deflection, first order."""
+    """Every load case and combination (or those of `names`) by slope-deflection, in the frame's order."""
     names = frame.names if names is None else tuple(names)
+    if frame.analysis.order == 2:
+        return _second_order(frame, study, names)
     tables = [load_table(frame, name) for name in names]
     solution = System(frame).solve(tables)
     cases = {name: solution.case_answer(k, study.undetermined) for k, name in enumerate(names)}
     spans = ClosedFormSpans(frame, dict(zip(names, tables, strict=True)), cases, study.undetermined)
     return Answer(NAME, cases, study.undetermined, spans)
+
+
+def _second_order(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer:
+    """Case by case, because the stiffness knows the axial forces; a case past its critical load is named, not given."""
+    from crosscheck.opinions.slope_deflection.displaced_spans import DisplacedSpans
+    from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder, PastCritical
+
+    tables, cases, states, silent = {}, {}, {}, {}
+    for name in names:
+        table = load_table(frame, name)
+        case = CaseInSecondOrder(frame, table)
+        try:
+            states[name] = case.solve()
+        except PastCritical as past:
+            silent[name] = str(past)
+            continue
+        tables[name] = table
+        cases[name] = case.case_answer(states[name], study.undetermined)
+    return Answer(NAME, cases, study.undetermined, DisplacedSpans(frame, tables, cases, states), silent)
+
+
+def critical_factors(frame: Frame, names: Sequence[str] | None = None) -> dict[str, float]:
+    """Critical load factor of each case and combination: the least factor on its first-order axial forces at which the
+    frame or a member in it buckles; inf where nothing is compressed enough."""
+    from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
+
+    names = frame.names if names is None else tuple(names)
+    factors = {}
+    for name in names:
+        case = CaseInSecondOrder(frame, load_table(frame, name))
+        factors[name] = case.critical_factor(case.first_order())
+    return factors
 
 
 def working(frame: Frame, study: Study, name: str) -> list[WorkTable]:
