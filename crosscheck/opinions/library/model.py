@@ -29,7 +29,7 @@ from typing import Any
 import numpy as np
 
 from crosscheck.frame.model import FREE, HELD, Floats, Frame
-from crosscheck.opinions.library.mesh import Laid, Mesh
+from crosscheck.opinions.library.mesh import Mesh
 
 STIFFER = 1e-8
 """Factor on the EI that only its line-load springs read: they become 1e14 times stiffer than the member."""
@@ -47,7 +47,8 @@ class Unfit(Exception):
 class Strip:
     """One of its members: between two of our nodes, with share `share` of what piece `piece` carries (-1: of none).
 
-    length, angle (radians, counter-clockwise from x), EA, EI as it shall use them; hinges: 1 its start, 2 its end.
+    length, angle (radians, counter-clockwise from x), EA, EI as it shall use them; hinges: 1 its start, 2 its end;
+    is_load: it only brings a load to its start.
     """
 
     start: int
@@ -59,6 +60,7 @@ class Strip:
     hinges: tuple[int, ...] = ()
     piece: int = -1
     share: float = 0.0
+    is_load: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,19 +68,22 @@ class Vectors:
     """What one solve gives.
 
     pieces: (places, 2, 3) actions on the piece that starts at a place, at its start and end: along its x, along its y,
-    clockwise. nodes: (nodes, 3) dx, dy (global), clockwise rotation.
+    clockwise. nodes: (nodes, 3) dx, dy (global), clockwise rotation. taken: (nodes, 3) what all its members and springs
+    take from each node: global fx, fy, clockwise couple; the load there, but for reactions and rounding.
     """
 
     pieces: Floats
     nodes: Floats
+    taken: Floats
 
 
-def solve(frame: Frame, mesh: Mesh, laid: Laid, EI: Floats, EA: Floats) -> Vectors:
-    """One solve on a fresh system. EI, EA: (m,) stiffness of each member.
+def solve(frame: Frame, mesh: Mesh, force: Floats, line: Floats, EI: Floats, EA: Floats) -> Vectors:
+    """One solve on a fresh system.
 
+    force: (nodes, 3) global fx, fy, clockwise couple. line: (places, 2, 2) as in Laid. EI, EA: (m,) of each member.
     Raises Unfit where the library refuses, finds the system singular, or treats a joint as hinged on its own account.
     """
-    feeder = _Feeder(frame, mesh, laid, EI, EA)
+    feeder = _Feeder(frame, mesh, force, line, EI, EA)
     try:
         return feeder.vectors()
     except Unfit:
@@ -97,11 +102,14 @@ def fixity_shares(EI: float, length: float, turn: tuple[float, float]) -> list[f
 class _Feeder:
     """Builds one system. Node numbers are ours; `ids` gives the library's."""
 
-    def __init__(self, frame: Frame, mesh: Mesh, laid: Laid, EI: Floats, EA: Floats) -> None:
+    def __init__(self, frame: Frame, mesh: Mesh, force: Floats, line: Floats, EI: Floats, EA: Floats) -> None:
         from anastruct.fem.system import SystemElements
+        from anastruct.vertex import Vertex
 
-        self.frame, self.mesh, self.laid, self.EI, self.EA = frame, mesh, laid, EI, EA
+        self.frame, self.mesh, self.line, self.EI, self.EA = frame, mesh, line, EI, EA
+        self.force: dict[int, Floats] = dict(enumerate(force.copy()))
         self.system: Any = SystemElements()
+        self.vertex: Any = Vertex
         self.ids: dict[int, int] = {}
         self.nodes = mesh.nodes
         self.turned: dict[int, float] = {}
@@ -110,7 +118,6 @@ class _Feeder:
         self.angle = np.arctan2(t.sin, t.cos)
         self.stiffness = _held_where_nothing_resists(frame)
         self.support_angle = np.arctan2(s.sin, s.cos)
-        self.force = self._node_forces()
 
     def vectors(self) -> Vectors:
         strips = [*self._pieces(), *self._springs(), *self._stubs(), *self._lonely()]
@@ -155,7 +162,7 @@ class _Feeder:
             end = self._new_node()
             self.force[end] = np.array([fx, fy, 0.0])
             self.force[j][:2] = 0.0
-            yield Strip(j, end, length, math.atan2(fy, fx), 1e3 * EI / length**2, EI)
+            yield Strip(j, end, length, math.atan2(fy, fx), 1e3 * EI / length**2, EI, is_load=True)
 
     def _lonely(self) -> Iterable[Strip]:
         """A joint that nothing joins exists for the library only with a member: one without stiffness."""
@@ -172,7 +179,7 @@ class _Feeder:
     def _enter(self, strip: Strip) -> Any:
         for node in (strip.start, strip.end):
             self.ids.setdefault(node, len(self.ids) + 1)
-        where = [[0.0, float(strip.start)], [0.0, float(strip.end)]]
+        where = [self.vertex(0.0, float(node)) for node in (strip.start, strip.end)]
         number = self.system.add_element(where, EA=strip.EA, EI=strip.EI, spring=dict.fromkeys(strip.hinges, 0))
         element = self.system.element_map[number]
         element.l = strip.length
@@ -219,16 +226,6 @@ class _Feeder:
 
     # --- loads ---
 
-    def _node_forces(self) -> dict[int, Floats]:
-        """By node: (3,) global fx, fy, clockwise couple: joint loads and what is laid at the members' places."""
-        mesh, t = self.mesh, self.frame.member_table
-        cos, sin = t.cos[mesh.member], t.sin[mesh.member]
-        along, across, couple = self.laid.force.T
-        out = np.zeros((mesh.nodes, 3))
-        out[: len(self.laid.joint)] = self.laid.joint
-        np.add.at(out, mesh.node, np.column_stack([along * cos - across * sin, along * sin + across * cos, couple]))
-        return dict(enumerate(out))
-
     def _load(self, strips: list[Strip], elements: list[Any]) -> None:
         for node, force in self.force.items():
             fx, fy, couple = force.tolist()
@@ -237,21 +234,27 @@ class _Feeder:
             if couple:
                 self.system.moment_load(self.ids[node], Tz=-couple)
         for strip, element in zip(strips, elements, strict=True):
-            if strip.share and self.laid.line[strip.piece].any():
-                along, across = (strip.share * self.laid.line[strip.piece]).T.tolist()
+            if strip.share and self.line[strip.piece].any():
+                along, across = (strip.share * self.line[strip.piece]).T.tolist()
                 self.system.q_load(across, element.id, direction="element", q_perp=along)
                 element.EI *= STIFFER
 
     # --- results ---
 
     def _read(self, strips: list[Strip], elements: list[Any]) -> Vectors:
-        pieces = np.zeros((len(self.mesh.x), 2, 3))
+        pieces, taken = np.zeros((len(self.mesh.x), 2, 3)), np.zeros((self.nodes, 3))
         for strip, element in zip(strips, elements, strict=True):
+            raw = np.asarray(element.element_force_vector + element.element_primary_force_vector)
+            both = np.array([_local(raw[:3], element.a1), _local(raw[3:], element.a2)])
             if strip.piece >= 0:
-                raw = np.asarray(element.element_force_vector + element.element_primary_force_vector)
-                pieces[strip.piece, 0] += _local(raw[:3], element.a1)
-                pieces[strip.piece, 1] += _local(raw[3:], element.a2)
-        return Vectors(pieces, self._displacements())
+                pieces[strip.piece] += both
+            if not strip.is_load:
+                taken[[strip.start, strip.end]] += to_global(both, math.cos(strip.angle), math.sin(strip.angle))
+        moved = self._displacements()
+        turn = self.stiffness[:, 2]
+        sprung = np.flatnonzero((turn != FREE) & (turn != HELD))
+        taken[sprung, 2] += turn[sprung] * moved[sprung, 2]
+        return Vectors(pieces, moved, taken[: self.mesh.nodes])
 
     def _displacements(self) -> Floats:
         raw = np.asarray(self.system.system_displacement_vector, dtype=float).reshape(-1, 3)
@@ -263,6 +266,12 @@ class _Feeder:
             moved[node, 0] = x * math.cos(angle) - y * math.sin(angle)
             moved[node, 1] = x * math.sin(angle) + y * math.cos(angle)
         return moved
+
+
+def to_global(action: Floats, cos: Floats | float, sin: Floats | float) -> Floats:
+    """(n, 3) along, across, clockwise of members of direction (cos, sin) as global fx, fy, clockwise."""
+    along, across, couple = action.T
+    return np.column_stack([along * cos - across * sin, along * sin + across * cos, couple])
 
 
 def _side_by_side(

@@ -5,6 +5,7 @@ Axes, signs and sums of reactions only, and the axially rigid frame as the limit
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,12 +14,13 @@ from crosscheck.answer import CaseAnswer, Undetermined
 from crosscheck.frame.loads import SNAP, LoadTable
 from crosscheck.frame.model import FREE, Floats, Frame, Ints
 from crosscheck.opinions.library.mesh import Laid, Mesh, divide, lay
-from crosscheck.opinions.library.model import Unfit, Vectors, solve
+from crosscheck.opinions.library.model import Unfit, Vectors, solve, to_global
 
-STIFFNESS_RATIO = 1e5
-"""EA L^2 / EI from which an axially rigid frame's limit is taken."""
-LIMIT_TRUSTED = 1e-6
-"""Largest estimated error of that limit, as a share of the largest value of its kind."""
+STIFFNESS_RATIOS = (3e4, 1e6)
+"""EA / L as a multiple of the stiffest member's EI / L^3, from which the limit of axial rigidity is taken: the second
+where the first does not do. A higher one costs digits, a lower one leaves more of the series."""
+LIMIT_SURE, LIMIT_TRUSTED = 1e-7, 1e-6
+"""Estimated error of that limit with which the first ratio does, and above which no word is given."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,41 +38,84 @@ class Solved:
     across: Floats
 
 
-def solve_case(frame: Frame, table: LoadTable, stations: tuple[Ints, Floats] | None = None) -> Solved:
-    """Divide, lay, solve and read. Raises model.Unfit where the library does not do what it was qualified for."""
+def solve_case(frame: Frame, table: LoadTable) -> Solved:
+    """Divide at the loads, lay them, solve and read, in the frame's idealisation.
+
+    Raises model.Unfit where the library does not do what it was qualified for.
+    """
+    mesh = divide(frame, table)
+    laid = lay(frame, mesh, table)
+    return _read(frame, mesh, laid, _vectors(frame, mesh, laid))
+
+
+def solve_once(frame: Frame, table: LoadTable, stations: tuple[Ints, Floats]) -> Solved:
+    """The same of an axially elastic frame, divided at `stations` (member indices, distances) too, without refinement.
+
+    Raises model.Unfit as solve_case does.
+    """
     mesh = divide(frame, table, stations)
     laid = lay(frame, mesh, table)
-    return _read(frame, table, mesh, laid, _vectors(frame, mesh, laid))
+    t = frame.member_table
+    return _read(frame, mesh, laid, solve(frame, mesh, _node_forces(frame, mesh, laid), laid.line, t.E * t.I, t.E * t.A))
 
 
 def _vectors(frame: Frame, mesh: Mesh, laid: Laid) -> Vectors:
     t = frame.member_table
-    EI = t.E * t.I
     if frame.analysis.axial == "elastic":
-        return solve(frame, mesh, laid, EI, t.E * t.A)
-    ratios = (STIFFNESS_RATIO, 2.0 * STIFFNESS_RATIO, 4.0 * STIFFNESS_RATIO)
-    return _rigid_limit([solve(frame, mesh, laid, EI, c * EI / t.length**2) for c in ratios])
+        return _refined(frame, mesh, laid, t.E * t.A)
+    # One stiffness EA / L for all members: a slender one must not stretch under what a stout neighbour brings to it.
+    stiffest = float((t.E * t.I / t.length**3).max())
+    tried = []
+    for ratio in STIFFNESS_RATIOS:
+        three = [_refined(frame, mesh, laid, c * ratio * stiffest * t.length) for c in (1.0, 2.0, 4.0)]
+        tried.append(_rigid_limit(three, float(t.length.max())))
+        if tried[-1][1] <= LIMIT_SURE:
+            break
+    vectors, error = min(tried, key=lambda limit: limit[1])
+    if error > LIMIT_TRUSTED:
+        raise Unfit("the limit of axial rigidity is not reached surely enough")
+    return vectors
 
 
-def _rigid_limit(at: list[Vectors]) -> Vectors:
-    """The limit of c -> infinity from c, 2c, 4c: a series in 1/c, of which two terms are removed.
+def _refined(frame: Frame, mesh: Mesh, laid: Laid, EA: Floats) -> Vectors:
+    """Its answer, and its answer to what that leaves out of balance at the nodes by rounding, added (J. H. Wilkinson,
+    Rounding Errors in Algebraic Processes, 1963): flexible frames of stiff members need those digits."""
+    EI = frame.member_table.E * frame.member_table.I
+    force = _node_forces(frame, mesh, laid)
+    first = solve(frame, mesh, force, laid.line, EI, EA)
+    more = solve(frame, mesh, force - first.taken, np.zeros_like(laid.line), EI, EA)
+    return Vectors(first.pieces + more.pieces, first.nodes + more.nodes, first.taken + more.taken)
 
-    After L. F. Richardson, Phil. Trans. R. Soc. A 226 (1927), 299-361. The change that the second removal makes
-    estimates what is left; raises Unfit where it is large.
+
+def _node_forces(frame: Frame, mesh: Mesh, laid: Laid) -> Floats:
+    """(nodes, 3) global fx, fy, clockwise couple: joint loads and what is laid at the members' places."""
+    t = frame.member_table
+    force = np.zeros((mesh.nodes, 3))
+    force[: len(laid.joint)] = laid.joint
+    np.add.at(force, mesh.node, to_global(laid.force, t.cos[mesh.member], t.sin[mesh.member]))
+    return force
+
+
+def _rigid_limit(at: Sequence[Vectors], length: float) -> tuple[Vectors, float]:
+    """The limit of c -> infinity from c, 2c, 4c, a series in 1/c of which two terms are removed, and its error.
+
+    After L. F. Richardson, Phil. Trans. R. Soc. A 226 (1927), 299-361. The error is estimated by the change that the
+    second removal makes, as a share of the largest force or displacement; `length` makes couples and rotations such.
     """
-    out = []
-    for parts in ([v.pieces for v in at], [v.nodes for v in at]):
-        once = 2.0 * parts[2] - parts[1]
-        twice = (8.0 * parts[2] - 6.0 * parts[1] + parts[0]) / 3.0
-        change, size = np.abs(twice - once), np.abs(twice)
-        axes = tuple(range(size.ndim - 1))
-        if (change.max(axis=axes) > LIMIT_TRUSTED * size.max()).any():
-            raise Unfit("the limit of axial rigidity is not reached surely enough")
-        out.append(twice)
-    return Vectors(*out)
+    pieces, forces_error = _limit([v.pieces for v in at], 1.0 / length)
+    nodes, moved_error = _limit([v.nodes for v in at], length)
+    return Vectors(pieces, nodes, at[-1].taken), max(forces_error, moved_error)
 
 
-def _read(frame: Frame, table: LoadTable, mesh: Mesh, laid: Laid, vectors: Vectors) -> Solved:
+def _limit(at: Sequence[Floats], third: float) -> tuple[Floats, float]:
+    """`third` brings the last axis's third value to the kind of the first two."""
+    one, two, four = at
+    limit = (8.0 * four - 6.0 * two + one) / 3.0
+    change = (limit - (2.0 * four - two)) * [1.0, 1.0, third]
+    return limit, float(np.abs(change).max() / max(np.abs(limit * [1.0, 1.0, third]).max(), 1e-300))
+
+
+def _read(frame: Frame, mesh: Mesh, laid: Laid, vectors: Vectors) -> Solved:
     first, last = mesh.first[:-1], mesh.first[1:] - 1
     ends = np.stack([vectors.pieces[first, 0], vectors.pieces[last - 1, 1]], axis=1)
     # What a member's own loads put on its joints acts between the joint and the member: the end action includes it.
