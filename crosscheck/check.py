@@ -8,9 +8,9 @@ from __future__ import annotations
 
 import importlib
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -29,6 +29,7 @@ if TYPE_CHECKING:
     from crosscheck.audit.compatibility import CompatibilityFindings
     from crosscheck.audit.statics import StaticCheck
     from crosscheck.claims.reading import Reading
+    from crosscheck.suspects import Suspect
 
 OPINIONS = {
     "slope-deflection": "crosscheck.opinions.slope_deflection",
@@ -73,6 +74,7 @@ class Verification:
     """A claim judged against the opinions.
 
     grounds: why the verdict is what it is, one sentence each. undecided: the choices that would settle it.
+    no_suspects: why none is named, where the claim disagrees.
     """
 
     opinions: Opinions
@@ -80,10 +82,11 @@ class Verification:
     tolerance: Tolerance
     cases: tuple[CaseClaim, ...]
     audits: tuple[CaseAudit, ...]
-    suspects: tuple[Any, ...]
+    suspects: tuple[Suspect, ...]
     verdict: Verdict
     grounds: tuple[str, ...] = ()
     undecided: tuple[str, ...] = field(default=())
+    no_suspects: str = ""
 
 
 def ask(frame: Frame, names: Sequence[str] | None = None) -> Opinions:
@@ -128,9 +131,12 @@ def chosen_names(frame: Frame, case: str | None) -> tuple[str, ...] | None:
 
 def verify(
     frame: Frame, reading: Reading, case: str | None = None, relative: float | None = None,
-    opinions: Opinions | None = None,
+    opinions: Opinions | None = None, suspects: bool = True,
 ) -> Verification:  # fmt: skip
-    """Judge a reading of a claim. `relative`: the claim's relative tolerance as a fraction, else the frame's."""
+    """Judge a reading of a claim. `relative`: the claim's relative tolerance as a fraction, else the frame's.
+
+    suspects: whether to look for what would explain a difference.
+    """
     from crosscheck.compare.closing import close
 
     chosen_names(frame, case)
@@ -140,9 +146,38 @@ def verify(
     cases = ClaimComparison(frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
     audits = tuple(_audit(frame, opinions, closed, name) for name in closed.cases)
     verdict, grounds = _verdict(opinions, closed, cases, audits)
+    found, why = _suspects(opinions, closed, cases, tolerance) if suspects and verdict == "disagree" else ((), "")
     return Verification(
-        opinions, closed, tolerance, tuple(cases), audits, (), verdict, tuple(grounds), closed.undecided
+        opinions, closed, tolerance, tuple(cases), audits, found, verdict, tuple(grounds), closed.undecided, why
     )
+
+
+def _suspects(
+    opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], tolerance: Tolerance
+) -> tuple[tuple[Suspect, ...], str]:
+    from crosscheck.suspects import Suspect, search
+
+    if closed.reversed_load:
+        says = "the load acts the other way: member forces, reactions and displacements are all reversed"
+        return (Suspect("load", (), says, 1.0),), ""
+    found = search(opinions.frame, opinions, closed, cases, tolerance)
+    return found.suspects, found.why
+
+
+def as_suspected(result: Verification, number: int) -> Verification:
+    """The same claim judged against the frame (or the claim) changed as suspect `number` (from 1) says.
+
+    Raises UnusableInput for a number that no suspect has, or where the changed frame cannot stand.
+    """
+    if not 1 <= number <= len(result.suspects):
+        known = f"give 1 to {len(result.suspects)}" if result.suspects else "this claim has no suspects"
+        raise UnusableInput([Problem("", None, "--suspect", f"there is no suspect {number}", known)])
+    frame, closed = result.suspects[number - 1].change.apply(result.opinions.frame, result.closed)
+    opinions = ask(frame, result.opinions.names)
+    cases = ClaimComparison(frame, opinions.answers, opinions.judgements, result.tolerance).judge(closed)
+    audits = tuple(_audit(frame, opinions, closed, name) for name in closed.cases)
+    verdict, grounds = _verdict(opinions, closed, cases, audits)
+    return Verification(opinions, closed, result.tolerance, tuple(cases), audits, (), verdict, tuple(grounds))
 
 
 def _verdict(

@@ -103,6 +103,7 @@ def _add_verify(commands: Any) -> None:
     command.add_argument("--sheet", metavar="NAME", help="sheet of a spreadsheet file")
     command.add_argument("--value", metavar="TEXT", action="append", default=[],
                          help='a value in words, "B2 max 412 kNm"; may be repeated')  # fmt: skip
+    command.add_argument("--suspect", metavar="N", type=int, help="compare the claim with what suspect N supposes")
     command.add_argument("--show-reading", action="store_true", help="print the table as understood; compare nothing")
     command.set_defaults(run=run_verify)
 
@@ -130,7 +131,7 @@ def _add_draft(commands: Any) -> None:
     command = commands.add_parser("draft", help="write a frame file to start from: blank, or a regular grid")
     command.add_argument("--bays", metavar="WIDTHS", help='bay widths from the left: "6, 6, 7.5" or "3 x 6 m"')
     command.add_argument("--storeys", metavar="HEIGHTS", help='storey heights from the ground: "4.2, 2 x 3.5 m"')
-    command.add_argument("--feet", default="fixed", metavar="WORD", help="support of every column foot: fixed or pinned")
+    command.add_argument("--feet", default="fixed", metavar="WORD", help="column feet: fixed or pinned")
     command.add_argument("--hinged-beams", action="store_true", help="beams hinged at both ends")
     command.add_argument("--title", metavar="TEXT", help="title of the frame")
     command.add_argument("--units", default="kN m", metavar="UNITS", help='force and length unit (default "kN m")')
@@ -186,6 +187,8 @@ def run_verify(args: argparse.Namespace) -> int:
             print(row)
         return 0
     result = check.verify(frame, reading, args.case, relative)
+    if args.suspect is not None:
+        result = check.as_suspected(result, args.suspect)
 
     def document() -> dict[str, Any]:
         from crosscheck.report.document import verification_document

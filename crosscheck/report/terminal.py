@@ -340,13 +340,15 @@ def _beside(result: Verification) -> list[str]:
 
 def _suspect_lines(result: Verification) -> list[RenderableType]:
     if not result.suspects:
-        return []
+        return [Text(f"Suspects: {result.no_suspects}.")] if result.no_suspects else []
     rows = [
-        (str(k + 1), s.kind, s.says, f"{100 * s.explains:.4g}%", "tied" if s.tied_with else "")
+        (str(k + 1), s.kind, s.says, f"{100 * s.explains:.4g}%")
         for k, s in enumerate(result.suspects)
     ]
-    columns = [("", "right"), ("kind", "left"), ("would explain it", "left"), ("share", "right"), ("", "left")]
-    return [heading("Suspects (hypotheses, best first)"), table(columns, rows)]
+    columns = [("", "right"), ("kind", "left"), ("what would explain it", "left"), ("explains", "right")]
+    parts = [heading("Suspects: hypotheses, best first"), table(columns, rows)]
+    ties = [f"{k + 1} ties with: {tie}" for k, s in enumerate(result.suspects[:1]) for tie in s.tied_with]
+    return [*parts, _notes([*ties, "--suspect N compares the claim with the frame or claim so changed"])]
 
 
 def _claim_facts(result: Verification) -> list[tuple[str, str]]:
