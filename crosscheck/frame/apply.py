@@ -157,7 +157,7 @@ class LoadReader:
             return None
         words = [key for action in _ACTIONS[on] for key in action.does]
         elsewhere = [key for other in _ACTIONS.values() for a in other for key in a.does if key in table]
-        near = next((self.check.near(key, words) for key in table if key not in _ALL_KEYS), "")
+        near = next((self.check.near(key, words) for key in table if key not in ENTRY_KEYS), "")
         what = f"{elsewhere[0]} does not act on a {on}" if elsewhere else "the entry holds no load"
         self.check.note(path, what, near or f"give one of {', '.join(words)}")
         return None
@@ -415,7 +415,7 @@ _ACTIONS: dict[str, tuple[_Action, ...]] = {
 }  # fmt: skip
 _TARGETS = {"joint": ("joint", "joints"), "member": ("member", "members")}
 _ON = {"joint": "joint", "joints": "joint", "member": "member", "members": "member", "self_weight": "frame"}
-_ALL_KEYS = {*_ON, *(k for a in _ACTIONS.values() for x in a for k in (*x.does, *x.needs, *x.takes))}
+ENTRY_KEYS = {*_ON, *(k for a in _ACTIONS.values() for x in a for k in (*x.does, *x.needs, *x.takes))}
 
 
 def _of_groups(groups: Iterable[str]) -> str:

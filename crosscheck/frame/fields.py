@@ -105,20 +105,26 @@ class Checker:
         self.file = file
         self.lines = lines
         self._faults: list[tuple[Path, str, str]] = []
+        self._elsewhere: list[Problem] = []
         self._suggestions = 0
 
     def note(self, path: Path, says: str, instead: str = "") -> None:
         """Keep a fault: where it is, what is wrong, what would be right."""
         self._faults.append((path, says, instead))
 
+    def note_at(self, place: tuple[str, int | None], path: Path, says: str, instead: str = "") -> None:
+        """Keep a fault of a file beside the frame file."""
+        self._elsewhere.append(Problem(*place, dotted(path), says, instead))
+
     @property
     def sound(self) -> bool:
-        return not self._faults
+        return not self._faults and not self._elsewhere
 
     def problems(self) -> list[Problem]:
         """Every fault as a Problem, by line; what has no line of its own comes first."""
-        found = [Problem(self.file, self.lines.nearest(path), dotted(path), *words) for path, *words in self._faults]
-        return sorted(dict.fromkeys(found), key=lambda problem: problem.line or 0)
+        placed = [(*self.lines.nearest(path), path, words) for path, *words in self._faults]
+        found = [Problem(file or self.file, line, dotted(path), *words) for file, line, path, words in placed]
+        return sorted(dict.fromkeys(found + self._elsewhere), key=lambda p: (p.file != self.file, p.file, p.line or 0))
 
     def near(self, name: str, valid: Collection[str]) -> str:
         """The nearest valid name as a remedy; only for the first few of a file and for names of a usual length."""

@@ -39,6 +39,8 @@ class Lines(Mapping[str, int]):
 
     def __init__(self, text: str) -> None:
         self._text = text
+        self.beside: dict[Path, tuple[str, int]] = {}
+        """File and line of what does not stand in the text but in a table beside it."""
 
     @cached_property
     def by_path(self) -> dict[Path, int]:
@@ -49,13 +51,16 @@ class Lines(Mapping[str, int]):
     def _by_key(self) -> dict[str, int]:
         return {dotted(path): line for path, line in self.by_path.items()}
 
-    def nearest(self, path: Path) -> int | None:
-        """Line of the path, or of the innermost table around it that stands in the text."""
+    def nearest(self, path: Path) -> tuple[str, int | None]:
+        """File ("" for the text itself) and line of the path, or of the innermost table around it that stands anywhere."""
         for length in range(len(path), 0, -1):
+            place = self.beside.get(path[:length])
+            if place is not None:
+                return place
             line = self.by_path.get(path[:length])
             if line is not None:
-                return line
-        return None
+                return "", line
+        return "", None
 
     def __getitem__(self, key: str) -> int:
         return self._by_key[key]

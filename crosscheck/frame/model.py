@@ -286,6 +286,10 @@ class Frame:
     analysis: Analysis = field(default_factory=Analysis)
     file: str = ""
     sha256: str = ""
+    content: str = ""
+    """Checksum of all that makes the frame, tables beside it included, blind to line ends: what a record is of."""
+    variant: str = ""
+    """Which frame of its file's family it is; "" where the file is no family."""
     warnings: tuple[str, ...] = ()
     lines: Mapping[str, int] = field(default_factory=dict)
     """Line of the file for dotted keys ("loads.dead.apply[0]"), as far as known; for messages only."""

@@ -23,9 +23,12 @@ from crosscheck.frame.model import FREE, HELD, Member, Support
 SUPPORT_WORDS: dict[str, tuple[float, float, float]] = {
     "fixed": (HELD, HELD, HELD), "pinned": (HELD, HELD, FREE), "roller": (FREE, HELD, FREE),
 }  # fmt: skip
+MATERIAL_KEYS = ("E", "G", "nu", "alpha", "density")
+SECTION_KEYS = ("I", "A", "shear_area", "depth")
 SUPPORT_KEYS = ("x", "y", "rotation", "angle")
 TRAIT_KEYS = frozenset({"section", "material", "hinge", "spring_from", "spring_to", "rigid_from", "rigid_to"})
 ENDS = ("from", "to")
+MEMBER_KEYS = TRAIT_KEYS | {*ENDS}
 
 
 @dataclass(frozen=True, slots=True)

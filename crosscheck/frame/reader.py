@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import difflib
 import hashlib
+import json
 import math
 import re
 import tomllib
@@ -17,6 +18,8 @@ from pathlib import Path as FilePath
 from typing import Literal
 
 from crosscheck.frame.apply import LoadReader, Places
+from crosscheck.frame.arithmetic import Value
+from crosscheck.frame.family import of_variant, read_family
 from crosscheck.frame.fields import (
     A_DENSITY,
     A_LENGTH,
@@ -26,6 +29,7 @@ from crosscheck.frame.fields import (
     AN_AREA,
     AN_EXPANSION,
     AN_INERTIA,
+    FEW,
     UNUSABLE,
     Checker,
     Table,
@@ -46,17 +50,25 @@ from crosscheck.frame.model import (
     Units,
 )
 from crosscheck.frame.needs import AXIAL, SHEAR, default_axial, order_fault, unmet
-from crosscheck.frame.parts import TRAIT_KEYS, Known, Traits, read_support, read_traits
+from crosscheck.frame.parts import (
+    MATERIAL_KEYS,
+    MEMBER_KEYS,
+    SECTION_KEYS,
+    Known,
+    Traits,
+    read_support,
+    read_traits,
+)
+from crosscheck.frame.tables import inside, sheet_names, with_tables
 from crosscheck.frame.units import Scale, UnitError, frame_units
 from crosscheck.problems import Problem, UnusableInput
 
 FILE_KEYS = (
     "title", "units", "materials", "sections", "joints", "members", "supports", "grid", "loads", "combinations",
-    "analysis",
+    "analysis", "tables", "family",
 )  # fmt: skip
-MATERIAL_KEYS = ("E", "G", "nu", "alpha", "density")
-SECTION_KEYS = ("I", "A", "shear_area", "depth")
-MEMBER_KEYS = TRAIT_KEYS | {"from", "to"}
+NO_UNITS = Units("kN", "m", 1e3, 1.0)
+"""Taken where a file states none that can be read, which is a fault."""
 ANALYSIS_KEYS = ("axial", "shear", "order", "tolerance")
 NEEDED = {
     "materials": '[materials.steel] with E = "210 GPa"', "sections": '[sections.post] with I = "8360 cm^4"',
@@ -67,20 +79,42 @@ MOST_BYTES = 100_000_000
 """A frame of a million members is smaller."""
 
 
-def read_frame(path: str | FilePath) -> Frame:
-    """The frame in a file. Raises UnusableInput with every problem found."""
+def read_frame(path: str | FilePath, variant: str = "") -> Frame:
+    """The frame in a file, or the one named `variant` of the family in it. Raises UnusableInput with every problem."""
     name = str(path)
     try:
         data = _bytes(FilePath(path))
     except (OSError, ValueError) as error:
         raise UnusableInput([_cannot_open(FilePath(path), name, error)]) from None
-    return _read(_decoded(data, name), name, hashlib.sha256(data).hexdigest())
+    return _read(_decoded(data, name), name, hashlib.sha256(data).hexdigest(), FilePath(path).parent, variant)
 
 
-def read_frame_text(text: str, file: str = "", folder: FilePath | None = None) -> Frame:
-    """The frame in a text; `file` is its name in messages, `folder` where it lies (nothing is read from there yet)."""
-    del folder
-    return _read(text, file, hashlib.sha256(text.encode("utf-8", "surrogatepass")).hexdigest())
+def read_frame_text(text: str, file: str = "", folder: FilePath | None = None, variant: str = "") -> Frame:
+    """The frame in a text; `file` is its name in messages, `folder` where its tables lie (None: it can have none)."""
+    return _read(text, file, hashlib.sha256(text.encode("utf-8", "surrogatepass")).hexdigest(), folder, variant)
+
+
+def variants(path: FilePath) -> tuple[str, ...]:
+    """Names of the frames that a family file makes; none where it is no family or cannot be read."""
+    try:
+        text = _decoded(_bytes(path), str(path))
+        data = _parsed(text, str(path)) if "family" in text else {}
+        if "family" not in data:
+            return ()
+        check = Checker(Scale(NO_UNITS), str(path), Lines(text))
+        return tuple(read_family(check, data["family"], path.parent))
+    except (OSError, ValueError, UnusableInput):
+        return ()
+
+
+def sources(path: FilePath) -> list[FilePath]:
+    """The frame file and the tables beside it that it draws on, as far as they can be known."""
+    try:
+        text = _decoded(_bytes(path), str(path))
+        data = _parsed(text, str(path)) if "tables" in text or "rows" in text else {}
+    except (OSError, ValueError, UnusableInput):
+        data = {}
+    return [path, *(path.parent / name for name in sheet_names(data) if inside(path.parent, name))]
 
 
 def _bytes(path: FilePath) -> bytes:
@@ -121,9 +155,9 @@ def _decoded(data: bytes, name: str) -> str:
         raise UnusableInput([Problem(name, line, "", says, "save the file as UTF-8")]) from None
 
 
-def _read(text: str, file: str, sha256: str) -> Frame:
+def _read(text: str, file: str, sha256: str, folder: FilePath | None, variant: str) -> Frame:
     text = text.removeprefix("\ufeff")
-    return _FrameReader(_parsed(text, file), text, file, sha256).frame()
+    return _FrameReader(_parsed(text, file), text, file, sha256).made_up(folder, variant).frame()
 
 
 def _parsed(text: str, file: str) -> Table:
@@ -160,11 +194,19 @@ def _not_toml(message: str, text: str, file: str) -> Problem:
     return Problem(file, line, "", f"not TOML: {says}", hint)
 
 
+def _checksum(text: str, sums: list[str]) -> str:
+    """SHA-256 of a text with plain line ends, and of the tables that belong to it."""
+    plain = text.replace("\r\n", "\n")
+    whole = "\n".join([plain, *sums]) if sums else plain
+    return hashlib.sha256(whole.encode("utf-8", "surrogatepass")).hexdigest()
+
+
 class _FrameReader:
     """Reads the tables of one file in turn; each method takes what the earlier ones gave."""
 
     def __init__(self, data: Table, text: str, file: str, sha256: str) -> None:
-        self.data, self.file, self.sha256 = data, file, sha256
+        self.data, self.text, self.file, self.sha256 = data, text, file, sha256
+        self.content = self.variant = ""
         self.lines = Lines(text)
         units, fault = self._units()
         self.units = units
@@ -175,7 +217,7 @@ class _FrameReader:
     def _units(self) -> tuple[Units, tuple[Path, str, str] | None]:
         """The frame's units; kN m, with the fault, where they cannot be read."""
         value = self.data.get("units")
-        fallback, such_as = Units("kN", "m", 1e3, 1.0), 'give units = "kN m", or another force and length'
+        fallback, such_as = NO_UNITS, 'give units = "kN m", or another force and length'
         if value is None:
             return fallback, ((), "units is missing: it says what bare numbers mean", such_as)
         try:
@@ -184,6 +226,37 @@ class _FrameReader:
             return frame_units(value), None
         except UnitError as error:
             return fallback, (("units",), str(error), such_as)
+
+    def made_up(self, folder: FilePath | None, variant: str) -> _FrameReader:
+        """The same, tables beside it and the parameters of the chosen variant put in. Raises UnusableInput."""
+        sums: list[str] = []
+        if "tables" in self.data:
+            self.data, sums = with_tables(self.check, self.data, folder)
+        self.content = _checksum(self.text, sums)
+        if "family" in self.data:
+            self._choose(read_family(self.check, self.data["family"], folder), variant)
+        elif variant:
+            self.check.note((), f"there is no [family] with a variant {shown(variant)}", "leave --variant out")
+        if sums or self.variant or "tables" in self.data or "family" in self.data:
+            self._must_be_sound()
+        return self
+
+    def _choose(self, family: Mapping[str, Mapping[str, Value]], variant: str) -> None:
+        """Takes one frame of the family."""
+        if family and variant in family:
+            self.variant = variant
+            self.data = of_variant(self.check, self.data, variant, family)
+            self.content = _checksum(json.dumps(self.data, sort_keys=True, default=str), [])
+        elif family:
+            says = f"there is no variant {shown(variant)}" if variant else f"the file makes {len(family)} frames"
+            few = ", ".join(list(family)[:FEW]) + (", ..." if len(family) > FEW else "")
+            near = self.check.near(variant, family) if variant else ""
+            self.check.note(("family",), says, near or f"choose one with --variant: {few}")
+
+    def _must_be_sound(self) -> None:
+        """What is made up wrongly would make every later message misleading."""
+        if not self.check.sound:
+            raise UnusableInput(self.check.problems())
 
     def frame(self) -> Frame:
         """Everything read and checked. Raises UnusableInput."""
@@ -202,7 +275,8 @@ class _FrameReader:
         frame = Frame(
             title=self._title(), units=self.units, materials=materials, sections=sections, joints=joints,
             members=members, supports=supports, cases=cases, combinations=self._combinations(cases),
-            analysis=Analysis(), file=self.file, sha256=self.sha256, lines=self.lines,
+            analysis=Analysis(), file=self.file, sha256=self.sha256, content=self.content, variant=self.variant,
+            lines=self.lines,
         )  # fmt: skip
         return self._settled(frame, places)
 
