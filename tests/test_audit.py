@@ -371,6 +371,79 @@ def test_a_freed_support_and_a_hinge_at_the_only_member_there_are_told_as_alike(
     assert best == {("support", "0.0"), ("end", "0.0-0.1")}
 
 
+def test_claimed_displacements_show_a_mistake_of_stiffness_at_its_very_member() -> None:
+    tried = 0
+    for seed in range(60):
+        made = planted(seed)
+        if made is None or made[3][0] == "support":
+            continue
+        tried += 1
+        frame, truth, claim, what, _ = made
+        softer = {m.name for m in frame.members.values() if m.section == what[1]} or {what[1]}
+        right = compatibility(frame, "p", *rounded(truth.values, 4), undetermined=truth.undetermined)
+        assert right.displaced
+        assert all(c.ok for c in right.displaced), seed
+        wrong = compatibility(frame, "p", claim.values, undetermined=truth.undetermined)
+        found = {c.member for c in wrong.displaced if not c.ok}
+        assert found, (seed, what)
+        assert found <= softer, (seed, what)
+    assert tried >= 20
+
+
+def test_a_support_that_moves_in_the_claimed_displacements_is_named() -> None:
+    frame = portal()
+    claim = solve(with_support(frame, "1.0", y=3e3), "p").values
+    moved = [c for c in compatibility(frame, "p", claim).displaced if not c.ok]
+    assert [(c.kind, c.where, c.direction) for c in moved] == [("support", "1.0", "y")]
+    assert moved[0].rotation == pytest.approx(claim.joints[list(frame.joints).index("1.0"), 1])
+
+
+def test_results_printed_too_coarsely_prove_nothing() -> None:
+    frame = portal()
+    values = solve(frame, "p").values
+    half = CaseAnswer(np.full((15, 2, 3), 5.0), values.joints * 0, np.full((12, 3), 5.0))
+    found = compatibility(frame, "p", values, half)
+    assert found.holds
+    assert not found.solution
+    assert any("coarsely" in said for said in found.not_judged)
+
+
+def continuous_beam() -> Frame:
+    """Two spans with both ends held along: axially rigid, so that the axial force is anybody's guess."""
+    base = portal("rigid")
+    joints = {k: Joint(k, x, 0.0) for k, x in (("A", 0.0), ("B", 5.0), ("C", 9.0))}
+    members = {f"{a}-{b}": Member(f"{a}-{b}", a, b, "s", "m") for a, b in (("A", "B"), ("B", "C"))}
+    supports = {
+        "A": Support("A", HELD, HELD, HELD), "B": Support("B", FREE, HELD, FREE), "C": Support("C", HELD, HELD, FREE),
+    }  # fmt: skip
+    load = LoadCase("p", (Spread(0, "A-B", -10.0, -10.0, "across", 0.0, 5.0),))
+    return replace(base, joints=joints, members=members, supports=supports, cases={"p": load})
+
+
+def test_undetermined_axial_forces_are_no_want_of_the_claim() -> None:
+    frame = continuous_beam()
+    truth = solve(frame, "p")
+    assert truth.undetermined.axial.all()
+    assert not compatibility(frame, "p", truth.values).complete
+    found = compatibility(frame, "p", truth.values, undetermined=truth.undetermined)
+    assert (found.dimension, found.solution) == (2, True)
+    free = solve(with_support(frame, "A", rotation=FREE), "p").values
+    table = signatures(compatibility(frame, "p", free, undetermined=truth.undetermined))
+    assert (table.entries[0].kind, table.entries[0].where, table.entries[0].direction) == ("support", "A", "rotation")
+    assert table.entries[0].share == pytest.approx(1, abs=1e-12)
+    # A support freed along the rigid beam moves nothing, for the other end holds it too.
+    assert not [s for s in table.entries if s.direction == "x"]
+
+
+def test_an_unloaded_case_and_a_joint_that_nothing_joins_are_judged() -> None:
+    frame = portal()
+    frame = replace(frame, joints={**frame.joints, "lone": Joint("lone", 50.0, 50.0)}, cases={"p": LoadCase("p", ())})
+    nil = CaseAnswer(np.zeros((15, 2, 3)), np.zeros((13, 3)), np.zeros((13, 3)))
+    assert compatibility(frame, "p", nil).solution
+    nil.ends[0, 0, MOMENT] = 1.0
+    assert not compatibility(frame, "p", nil).solution
+
+
 def test_two_mistakes_are_explained_by_two_signatures_together() -> None:
     frame = portal()
     other = with_member(with_support(frame, "0.0", rotation=FREE), "1.2-2.2", turn_from=FREE)

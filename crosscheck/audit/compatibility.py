@@ -16,14 +16,17 @@ from dataclasses import dataclass
 import numpy as np
 
 from crosscheck.answer import CaseAnswer, Undetermined
-from crosscheck.audit.equilibrium import JOINT, MEMBER
+from crosscheck.audit.equilibrium import JOINT, MEMBER, couple_values
 from crosscheck.audit.fit import Fit, fit
-from crosscheck.audit.statics import TOGETHER_CHECK, Balance, balance
-from crosscheck.frame.model import Bools, Floats, Frame
+from crosscheck.audit.statics import ROUND_OFF, TOGETHER_CHECK, Balance, balance
+from crosscheck.frame.model import Floats, Frame, Ints
 
+COARSE = 0.05
+"""Of the largest value of its kind: a rounding beyond this proves nothing (as for single values, CONTRACT.md)."""
 UNTESTED = 1e-6
 """A condition whose own misfit would show less than this share of a change in it is no test of it."""
 ROTATION, ELONGATION, SUPPORT = "end rotation", "elongation", "support"
+AXES = ("x", "y", "rotation")
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,6 +58,9 @@ class CompatibilityFindings:
       without the axial forces that the idealisation leaves undetermined). misfit: the root of the squared misfit in
       units of rounding. holds: None where nothing could be tested. not_judged: what could not be, one sentence each.
     complete: statics gives every value that the idealisation determines. solution: the claim is the frame's solution.
+    displaced: where displacements are claimed too, whether each member's claimed forces go with its joints' claimed
+      displacements (`expected` is then what those give), and whether supports stay where the frame holds them; a mistake
+      of stiffness shows here at its very member. They do not enter `holds`.
     """
 
     case: str
@@ -69,6 +75,7 @@ class CompatibilityFindings:
     not_judged: tuple[str, ...]
     balance: Balance
     fit: Fit | None
+    displaced: tuple[CompatibilityCheck, ...] = ()
 
 
 def compatibility(
@@ -88,20 +95,20 @@ def compatibility(
         why = "compatibility is judged in first order only"
         return CompatibilityFindings(name, (), 0, 0, 0.0, None, False, False, why, (why,), done, None)
     system = fit(frame, done)
-    checks = _checks(system, name)
+    checks = _fitted(system, name)
     dimension = system.dimension
     whole = indeterminacy(frame) if system.reduced else dimension
-    lacking = _lacking(frame, done, undetermined)
+    lacking = [*_lacking(frame, done, undetermined), *_coarse(frame, done)]
     not_judged = [*lacking, *_unjudged(done)]
     if dimension < whole:
         not_judged.append(f"{whole - dimension} of {whole} conditions of compatibility")
     holds = all(c.ok for c in checks) if dimension or whole == 0 else None
-    complete = not lacking and dimension == whole and not _unbalanced_unknown(frame, done)
+    complete = not lacking and dimension == whole and not _unbalanced_unknown(done)
     solution = complete and holds is True and done.holds
     says = _conclusion(done, holds, solution, dimension, whole)
     return CompatibilityFindings(
         name, tuple(checks), dimension, whole, float(np.sqrt(system.squared)), holds, complete, solution, says,
-        tuple(not_judged), done, system,
+        tuple(not_judged), done, system, tuple(_displaced(system, name, values, half)),
     )  # fmt: skip
 
 
@@ -132,13 +139,23 @@ def _lacking(frame: Frame, done: Balance, undetermined: Undetermined | None) -> 
 def _unjudged(done: Balance) -> list[str]:
     """Balances that could not be judged because they were needed, counted."""
     count = sum(c.check in (JOINT, MEMBER) for c in done.unjudged)
-    return [f"{count} balances went into completing the claim"] if count else []
+    return [f"{count} balances, needed to complete the claim or resting on undetermined values"] if count else []
 
 
-def _unbalanced_unknown(frame: Frame, done: Balance) -> bool:
-    """Whether missing values stand in balances that no check of several joints together could cover."""
-    covered = any(c.check == TOGETHER_CHECK for c in done.checks)
-    return bool(done.completed.missing.any()) and not covered and frame.analysis.axial == "elastic"
+def _unbalanced_unknown(done: Balance) -> bool:
+    """Whether missing values stand in balances of several joints together that were too many to judge."""
+    return any(c.check == TOGETHER_CHECK and c.ok is None for c in done.checks)
+
+
+def _coarse(frame: Frame, done: Balance) -> list[str]:
+    """Forces or moments whose rounding is so large that passing proves nothing, by kind."""
+    couples = couple_values(len(frame.members), len(frame.joints))
+    value, half = np.abs(np.nan_to_num(done.completed.value)), done.completed.half_width
+    said = []
+    for kind, which in (("moments", couples), ("forces", ~couples)):
+        if half[which].max(initial=0.0) > COARSE * value[which].max(initial=0.0):
+            said.append(f"{kind} are printed too coarsely to prove anything")
+    return said
 
 
 def _conclusion(done: Balance, holds: bool | None, solution: bool, dimension: int, whole: int) -> str:
@@ -154,52 +171,83 @@ def _conclusion(done: Balance, holds: bool | None, solution: bool, dimension: in
     return f"the claimed deformations fit together ({tested} tested), but not everything could be judged"
 
 
-def _checks(system: Fit, name: str) -> list[CompatibilityCheck]:
-    """One check a condition. A single condition of a member with a hinge is told as the rotation of its other end."""
+def _fitted(system: Fit, name: str) -> list[CompatibilityCheck]:
+    """Every condition that is a test, against the displacements that fit best."""
+    rows = np.flatnonzero(~system.rigid & (system.shares > UNTESTED))
+    return _tell(system, name, rows, system.residual, system.allowed, system.displacements)
+
+
+def _displaced(system: Fit, name: str, values: CaseAnswer, half: CaseAnswer | None) -> list[CompatibilityCheck]:
+    """Every condition against the claimed displacements, and every held support; those with gaps in them left out."""
+    u = _own_axes(system, values.joints).ravel()
+    if np.isnan(u).all():
+        return []
+    rounding = np.zeros_like(u) if half is None else np.nan_to_num(_own_axes(system, half.joints, spread=True).ravel())
+    scale = np.abs(np.nan_to_num(u)).max()
+    rounding += ROUND_OFF * scale
+    known = ~np.isnan(u)
+    u = np.where(known | ~system.geometry.held, u, system.settlement)
+    full = (system.keep @ system.geometry.matrix).tocsr()
+    full.eliminate_zeros()
+    whole = (abs(full) @ np.isnan(u).astype(float)) == 0
+    gap = system.d - full @ (np.nan_to_num(u) - system.settlement)
+    allowed = abs(full) @ rounding + abs(system.source) @ system.half
+    checks = _tell(system, name, np.flatnonzero(whole), gap, allowed, np.nan_to_num(u))
+    joints = list(system.frame.joints)
+    for place in np.flatnonzero(system.geometry.held & known).tolist():
+        expected, most = float(system.settlement[place]), float(rounding[place])
+        ok = abs(float(u[place]) - expected) <= most
+        where, axis = joints[place // 3], AXES[place % 3]
+        checks.append(CompatibilityCheck(name, SUPPORT, where, "", float(u[place]), expected, most, ok, axis))
+    return checks
+
+
+def _own_axes(system: Fit, joints: Floats, spread: bool = False) -> Floats:
+    """(j, 3) displacements along the supports' own axes; of roundings (`spread`) the largest."""
+    s = system.frame.support_table
+    x, y, turn = joints.T
+    sin, back = (np.abs(s.sin), np.abs(s.sin)) if spread else (s.sin, -s.sin)
+    cos = np.abs(s.cos) if spread else s.cos
+    # A direction that the axis has no share of may be missing.
+    along = np.where(cos == 0, 0.0, cos * x) + np.where(sin == 0, 0.0, sin * y)
+    across = np.where(back == 0, 0.0, back * x) + np.where(cos == 0, 0.0, cos * y)
+    return np.column_stack([along, across, turn])
+
+
+def _tell(
+    system: Fit, name: str, rows: Ints, gap: Floats, allowed: Floats, displacements: Floats
+) -> list[CompatibilityCheck]:
+    """Checks in words: a single condition of a member with a hinge is told as the rotation of its other end.
+
+    rows: which conditions; gap, allowed: (n,) of all of them; displacements: (3 j,) in the supports' own axes.
+    """
     frame = system.frame
     members, joints = list(frame.members), list(frame.joints)
     m = len(members)
-    turns = _joint_values(system)
-    raw = system.geometry.matrix @ system.displacements
-    residual, allowed = system.residual, system.allowed
+    turns = displacements.reshape(-1, 3)
+    raw = system.geometry.matrix @ displacements
     checks: list[CompatibilityCheck] = []
-    for k, place, share in zip(*_main_entries(system), strict=True):
-        gap, most = float(residual[k]) / share, float(allowed[k]) / abs(share)
+    for k, place, share in zip(rows.tolist(), *_main_entries(system, rows), strict=True):
+        where, member, direction = "", members[place // 3] if place < 3 * m else "", ""
         if place >= 3 * m:
             joint, axis = divmod(place - 3 * m, 3)
-            expected = float(turns[joint, axis])
-            kind, where, member, direction = SUPPORT, joints[joint], "", ("x", "y", "rotation")[axis]
+            kind, where, direction, expected = SUPPORT, joints[joint], AXES[axis], float(turns[joint, axis])
         elif place % 3 == 2:
-            expected = float(raw[place])
-            kind, where, member, direction = ELONGATION, "", members[place // 3], ""
+            kind, expected = ELONGATION, float(raw[place])
         else:
             index = int(frame.member_table.ends[place // 3, place % 3])
-            expected = float(turns[index, 2])
-            kind, where, member, direction = ROTATION, joints[index], members[place // 3], ""
+            kind, where, expected = ROTATION, joints[index], float(turns[index, 2])
+        off, most = float(gap[k]) / share, float(allowed[k]) / abs(share)
         checks.append(
-            CompatibilityCheck(name, kind, where, member, expected + gap, expected, most, abs(gap) <= most, direction)
+            CompatibilityCheck(name, kind, where, member, expected + off, expected, most, abs(off) <= most, direction)
         )
     return checks
 
 
-def _main_entries(system: Fit) -> tuple[list[int], list[int], list[float]]:
-    """Rows that test something, the raw deformation that each is mostly made of, and its entry there."""
+def _main_entries(system: Fit, rows: Ints) -> tuple[list[int], list[float]]:
+    """The raw deformation that each of the rows is mostly made of, and its entry there."""
     keep = system.keep
     row = np.repeat(np.arange(keep.shape[0]), np.diff(keep.indptr))
     order = np.lexsort((np.abs(keep.data), row))
     last = order[np.searchsorted(row[order], np.arange(keep.shape[0]), side="right") - 1]
-    tested = np.flatnonzero(~system.rigid & (system.shares > UNTESTED))
-    return tested.tolist(), keep.indices[last[tested]].tolist(), keep.data[last[tested]].tolist()
-
-
-def _joint_values(system: Fit) -> Floats:
-    """(j, 3) best-fitting displacements along the supports' own axes."""
-    return system.displacements.reshape(-1, 3)
-
-
-def tested_joints(system: Fit) -> Bools:
-    """(j, 3) displacements, in the supports' own axes, that the claim's deformations settle or the supports hold."""
-    found = system.geometry.held.copy()
-    found[system.columns] = True
-    return found.reshape(-1, 3)
-
+    return keep.indices[last[rows]].tolist(), keep.data[last[rows]].tolist()

@@ -245,14 +245,14 @@ class _Judge:
         the longest member; rounding enters by the norm of what it may put in, which is rigorous.
         """
         missing = np.flatnonzero(self.done.missing)
-        if not 0 < len(missing) <= TOGETHER:
+        if not len(missing):
             return []
         s = self.system
         rows = np.unique(s.matrix[:, missing].tocoo().coords[0])
         inside = np.unique(s.matrix[rows].indices)
         columns = inside[self.done.missing[inside] | (self.done.completed & (self.done.by != BY_RULE))[inside]]
         if len(columns) > TOGETHER:
-            return []
+            return [self.check(TOGETHER_CHECK, "", "force", 0.0, 0.0, False, True, why="too many values are missing")]
         scale = np.where(s.couples[rows], 1 / self.scales.length, 1.0)
         orthogonal, weights = self._range(rows, columns, scale)
         residual, allowed, _, used = self.measure(s.matrix[rows], s.constant[rows], s.couples[rows])
