@@ -53,6 +53,12 @@ def _place(frame: Frame, of: str, index: tuple[int, ...]) -> str:
 
 
 def _results(sweep: Sweep, w: Weighed, name: str) -> CaseAnswer | None:
+    if id(w) not in sweep.results:
+        sweep.results[id(w)] = _solved(sweep, w, name)
+    return sweep.results[id(w)]
+
+
+def _solved(sweep: Sweep, w: Weighed, name: str) -> CaseAnswer | None:
     change = w.option.change
     try:
         if change.frame is None:

@@ -57,7 +57,8 @@ def search(
         return Findings((), "no opinion gives what could be compared")
     names = tuple(c.case for c in claims if c.case in answer.cases and c.compared)
     left = {id(v) for c in claims for v, _ in c.not_compared}
-    seen = observe(frame, answer, names, [v for v in closed.values if id(v) not in left], tolerance)
+    seen = observe(frame, answer, names, [v for v in closed.values if id(v) not in left], tolerance,
+                   {n: opinions.judgements[n].scales for n in names})
     if not len(seen.value):
         return Findings((), "no value could be compared")
     if not (np.abs(seen.residual) > seen.allowed).any():

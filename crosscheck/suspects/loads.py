@@ -11,7 +11,9 @@ from functools import partial
 
 import numpy as np
 
+from crosscheck.frame.loads import case_factors
 from crosscheck.frame.model import (
+    Bools,
     Floats,
     Frame,
     JointCouple,
@@ -312,28 +314,26 @@ def factor_changes(frame: Frame, name: str) -> Iterator[tuple[dict[str, float], 
 
 def case_options(screen: Screen) -> Iterator[Option]:
     """Factors left out or applied twice, and factors that fit, for every claimed case."""
-    frame, base = screen.frame, screen.base
-    by_case = {case: base.answer([case]) for case in frame.cases} if len(frame.cases) else {}
-    seen = screen.seen
+    seen, rows = screen.seen, screen.rows
+    wanted = {c for n in seen.names for c in case_factors(screen.frame, n)}
+    answer = screen.base.answer(sorted(wanted))
+    alone = {case: seen.read(answer, (case,) * len(seen.names))[rows] for case in wanted}
     for k, name in enumerate(seen.names):
-        part = np.flatnonzero(seen.case == k)
-        alone = {case: seen.read(a, (case,) * len(seen.names)) for case, a in by_case.items()}
-        now = frame.combinations[name].factors if name in frame.combinations else {name: 1.0}
-        trials = list(factor_changes(frame, name))
-        trials += _fitted_factors(screen, part, alone, now, name)
-        for factors, says, cost in trials:
+        part = screen.case == k
+        now = case_factors(screen.frame, name)
+        for factors, says, cost in (*factor_changes(screen.frame, name), *_fitted_factors(screen, part, alone, now, name)):
             change = Change(partial(with_factors, name=name, factors=factors), loads_only=True)
-            yield Option("load case", (), says, change, cost, fitted=int(cost >= OTHER_FACTOR))
-
-
+            delta = np.zeros(len(rows))
+            for case, old in now.items():
+                delta[part] += (factors.get(case, 0.0) - old) * alone[case][part]
+            yield Option("load case", (), says, change, cost, delta, fitted=int(cost >= OTHER_FACTOR))
 
 
 def _fitted_factors(
-    screen: Screen, part: Floats, alone: dict[str, Floats], now: dict[str, float], name: str
+    screen: Screen, part: Bools, alone: dict[str, Floats], now: dict[str, float], name: str
 ) -> list[tuple[dict[str, float], str, float]]:
     """The factor on each case that fits best, and one on the whole."""
-    seen = screen.seen
-    w, r = 1 / seen.noise[part], seen.residual[part]
+    w, r = screen.weight[part], screen.residual[part]
     out = []
     for case in now:
         y = alone[case][part] * w
@@ -342,7 +342,7 @@ def _fitted_factors(
         f = float(f"{now[case] + float(y @ (r * w)) / float(y @ y):.3g}")
         if f != now[case]:
             out.append(({**now, case: f}, f"{case} had the factor {f:g} in {name}", OTHER_FACTOR))
-    whole = seen.said[part] * w
+    whole = sum((f * alone[case][part] for case, f in now.items()), np.zeros(int(part.sum()))) * w
     if len(now) > 1 and whole @ whole:
         f = float(f"{1 + float(whole @ (r * w)) / float(whole @ whole):.3g}")
         out.append(({c: f * g for c, g in now.items()}, f"all of {name} was {f:g} times as large", OTHER_FACTOR))

@@ -6,7 +6,7 @@ suspect from another: a change that leaves no value further off than its half di
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,9 +14,8 @@ import numpy as np
 from crosscheck.answer import Answer
 from crosscheck.compare.claim import END_COLUMN, JOINT_COLUMN, REACTION_COLUMN, ZERO
 from crosscheck.compare.claimed import ClaimedValue
-from crosscheck.compare.fit_values import Reference
 from crosscheck.compare.opinions import extremes
-from crosscheck.compare.tolerance import Tolerance, allowed
+from crosscheck.compare.tolerance import LEAST_SHARE, Scales, Tolerance, allowed
 from crosscheck.frame.model import Bools, Floats, Frame, Ints
 from crosscheck.frame.stations import Stations, stations
 from crosscheck.opinions.slope_deflection.prepared import DISPLACEMENT, END, REACTION, SPAN, Places
@@ -87,8 +86,9 @@ class Observation:
 
 def observe(
     frame: Frame, answer: Answer, names: tuple[str, ...], values: Iterable[ClaimedValue], tolerance: Tolerance,
+    scales: Mapping[str, Scales],
 ) -> Observation:  # fmt: skip
-    """The values that can be compared, with the model's `answer` at their places."""
+    """The values that can be compared, with the model's `answer` at their places. scales: of the comparison, by case."""
     kept = [v for v in values if v.case in names and v.case in answer.cases]
     column = [_column(v) for v in kept]
     ends = [_end(frame, v) for v in kept]
@@ -112,7 +112,7 @@ def observe(
     )
     _choose_sides(seen, answer)
     said = seen.read(answer)
-    tolerated = _allowed(seen, answer, said, tolerance)
+    tolerated = _allowed(seen, answer, said, tolerance, scales)
     good = np.flatnonzero(np.isfinite(said) & np.isfinite(value) & (tolerated > 0))
     return Observation(
         frame, names, tuple(kept[k] for k in good), case[good], seen.part(good), extreme[good], value[good], said[good],
@@ -188,29 +188,37 @@ def _extreme(seen: Observation, joints: Floats, reactions: Floats, most: Floats,
     return float(values.max() if seen.extreme[k] > 0 else values.min())
 
 
-def _allowed(seen: Observation, answer: Answer, said: Floats, tolerance: Tolerance) -> Floats:
-    """(n,) the comparison's allowed difference, by its own scales."""
+def _allowed(seen: Observation, answer: Answer, said: Floats, tolerance: Tolerance, scales: Mapping[str, Scales]) -> Floats:
+    """(n,) the comparison's allowed difference: its scales, with each member's largest values taken at its stations."""
     out = np.zeros(len(said))
-    p = seen.places
+    quantity = np.array([v.quantity for v in seen.values])
+    bare = np.array([v.kind == "reaction" and v.joint not in seen.frame.supports for v in seen.values], dtype=bool)
     for k, name in enumerate(seen.names):
-        if name not in answer.cases:
+        rows = np.flatnonzero(seen.case == k)
+        if name not in answer.cases or not len(rows):
             continue
-        reference = Reference(seen.frame, {answer.opinion: answer}, name)
-        for quantity in {v.quantity for v in seen.values}:
-            rows = np.array([n for n, v in enumerate(seen.values) if v.quantity == quantity and seen.case[n] == k])
-            if not len(rows):
-                continue
-            scale = np.full(len(rows), reference.scales.of(quantity))
-            on = (p.member[rows] >= 0) & (p.kind[rows] != REACTION) & (p.kind[rows] != DISPLACEMENT)
-            if on.any():
-                scale[on] = reference.member_scale(quantity)[p.member[rows[on]]]
-            off = ~on & (p.joint[rows] >= 0)
-            if off.any():
-                table = "displacement" if quantity in JOINT_COLUMN else "reaction"
-                scale[off] = reference.joint_scale(quantity, table)[p.joint[rows[off]]]
-            may = allowed(said[rows], seen.value[rows], tolerance, scale, seen.half[rows])
-            bare = np.array([
-                seen.values[n].kind == "reaction" and seen.values[n].joint not in seen.frame.supports for n in rows
-            ])  # fmt: skip
-            out[rows] = np.where(bare, np.maximum(seen.half[rows], ZERO * reference.scales.of(quantity)), may)
+        case = np.array([scales[name].of(q) for q in quantity[rows]])
+        scale = np.maximum(_own(seen, answer, name, rows), LEAST_SHARE * case)
+        may = allowed(said[rows], seen.value[rows], tolerance, scale, seen.half[rows])
+        out[rows] = np.where(bare[rows], np.maximum(seen.half[rows], ZERO * case), may)
+    return out
+
+
+def _own(seen: Observation, answer: Answer, name: str, rows: Ints) -> Floats:
+    """(n,) the largest value of its quantity that each value's own member or joint has."""
+    c, at, p = answer.cases[name], seen.at, seen.places
+    along = np.abs(np.nan_to_num(answer.spans.along(name, at.member, at.x, at.side)))
+    most = np.maximum.reduceat(along, at.start[:-1]) if len(at.member) else np.zeros((0, 4))
+    most[:, :3] = np.maximum(most[:, :3], np.abs(np.nan_to_num(c.ends)).max(axis=1, initial=0.0))
+    kind, column = p.kind[rows], p.column[rows]
+    named = np.array([seen.values[k].quantity for k in rows])
+    out = np.zeros(len(rows))
+    moves = np.isin(named, list(JOINT_COLUMN)) | (kind == DISPLACEMENT)
+    on = (p.member[rows] >= 0) & (kind != REACTION) & ~moves
+    out[on] = most[p.member[rows[on]], column[on]]
+    for table, mine in ((c.joints, moves), (c.reactions, ~moves & ~on)):
+        size = np.abs(np.nan_to_num(table))
+        largest = np.column_stack([size[:, :2].max(axis=1)] * 2 + [size[:, 2]])
+        mine = mine & (p.joint[rows] >= 0)
+        out[mine] = largest[p.joint[rows[mine]], column[mine]]
     return out

@@ -9,15 +9,17 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass, replace
+from functools import partial
 
 import numpy as np
 
-from crosscheck.answer import Answer
+from crosscheck.answer import Answer, CaseAnswer
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.opinions.slope_deflection.prepared import Prepared, prepared
-from crosscheck.suspects.changes import usable
+from crosscheck.suspects.changes import Change, of_case, usable
 from crosscheck.suspects.geometry import geometry_families, geometry_options
+from crosscheck.suspects.groups import group_options, large_families
 from crosscheck.suspects.loads import case_options, load_options
 from crosscheck.suspects.members import member_options
 from crosscheck.suspects.observation import Observation
@@ -25,7 +27,7 @@ from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.supports import support_options
 from crosscheck.suspects.suspect import Option
-from crosscheck.suspects.whole import Family, temperature_options, whole_families, whole_options
+from crosscheck.suspects.whole import Family, temperature_options, whole_options
 
 UNFIT, STEEPNESS = 3.0, 2.0
 """What not fitting to the printed precision costs, and how steeply the misfit counts after that."""
@@ -73,6 +75,8 @@ class Sweep:
         self.frame: Frame = seen.frame
         self.screen = Screen(seen, base)
         self.solved = 0
+        self.results: dict[int, CaseAnswer | None] = {}
+        self._least: dict[tuple[tuple[int, ...], tuple[int, ...]], float] = {}
 
     # --- weighing ---
 
@@ -93,10 +97,12 @@ class Sweep:
             float(np.sqrt(((left / noise) ** 2).mean())), bool((np.abs(left) <= np.maximum(seen.allowed, half)).all()),
         )  # fmt: skip
 
-    def foretold(self, option: Option) -> Weighed:
-        """By its delta where it has one; places that are not linear are left as they were."""
+    def foretold(self, option: Option) -> Weighed | None:
+        """By its delta where it has one, else by solving; places that are not linear are left as they were."""
         if option.delta is None:
-            return self.weigh(option)
+            return self.solve(option)
+        if not np.isfinite(option.delta).all():
+            return None
         said = self.seen.said.copy()
         rows = self.screen.rows
         direct = self.seen.linear[rows]
@@ -108,7 +114,7 @@ class Sweep:
         if option.change.frame is None:
             return self.weigh(option)
         changed = option.change.frame(self.frame)
-        names = self._names(option)
+        names = self.seen.names
         self.solved += 1
         with np.errstate(all="ignore"):
             try:
@@ -123,9 +129,6 @@ class Sweep:
             said = self._read(answer, changed, names)
         return None if not np.isfinite(said).all() else self.weigh(option, said)
 
-    def _names(self, option: Option) -> tuple[str, ...]:
-        return self.seen.names
-
     def _read(self, answer: Answer, changed: Frame, names: tuple[str, ...]) -> Floats:
         seen = self.seen
         if changed.members.keys() == self.frame.members.keys():
@@ -137,16 +140,16 @@ class Sweep:
     def singles(self) -> list[Weighed]:
         """Every single mistake worth telling, best first."""
         quick = [self.weigh(o) for o in paste_options(self.seen)]
-        told = [self.foretold(o) for o in self._foretellable()]
+        told = [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
         if not self.seen.linear.all():
             told.sort(key=lambda w: w.rough)
             told = [w for o in told[: 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
         quick += told
-        quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame), *case_options(self.screen)])
+        quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
         quick.sort(key=lambda w: w.score)
         if not (quick and quick[0].fits):
             quick += self._solved(self._near_geometry())
-            for family in (*whole_families(self.frame), *self._near_families()):
+            for family in (*large_families(self.frame), *self._near_families()):
                 found = self.fit(family)
                 if found is not None:
                     quick.append(found)
@@ -160,6 +163,23 @@ class Sweep:
             yield from load_options(self.screen)
             yield from support_options(self.screen)
             yield from member_options(self.screen)
+            yield from group_options(self.screen)
+            yield from case_options(self.screen)
+
+    def _other_cases(self) -> list[Weighed]:
+        """Results of one case standing under the name of another."""
+        seen, out = self.seen, []
+        for k, name in enumerate(seen.names):
+            for other in self.frame.names:
+                if other == name:
+                    continue
+                names = tuple(other if n == name else n for n in seen.names)
+                said = np.where(seen.case == k, seen.read(self.base.answer((other,)), names), seen.said)
+                option = Option("load case", (), f"the results of {other} stand under {name}",
+                                Change(claim=partial(of_case, case=name, other=other)), 0.2)  # fmt: skip
+                if np.isfinite(said).all():
+                    out.append(self.weigh(option, said))
+        return out
 
     def _solved(self, options: Iterable[Option]) -> list[Weighed]:
         return [w for o in options if (w := self.solve(o)) is not None]
@@ -179,15 +199,9 @@ class Sweep:
         if not len(self.screen.rows):
             return True
         key = (joints, members)
-        if key not in self._bounds:
-            self._bounds[key] = self.screen.place_left(joints, members)
-        return self._bounds[key] <= max(RIVALS * len(self.screen.rows), 0.02 * self.screen.total)
-
-    @property
-    def _bounds(self) -> dict[tuple[tuple[int, ...], tuple[int, ...]], float]:
-        if not hasattr(self, "_bound_cache"):
-            self._bound_cache: dict[tuple[tuple[int, ...], tuple[int, ...]], float] = {}
-        return self._bound_cache
+        if key not in self._least:
+            self._least[key] = self.screen.place_left(joints, members)
+        return self._least[key] <= max(RIVALS * len(self.screen.rows), 0.02 * self.screen.total)
 
     # --- fitting one number by solving again ---
 
@@ -275,11 +289,12 @@ class Sweep:
 
     def cheap_singles(self) -> list[Weighed]:
         """Singles without the searches that solve again many times."""
-        found = [self.weigh(o) for o in paste_options(self.seen)] + [self.foretold(o) for o in self._foretellable()]
+        found = [self.weigh(o) for o in paste_options(self.seen)]
+        found += [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
         found.sort(key=lambda w: w.score)
         if found and found[0].fits:
             return found
-        found += self._solved([*whole_options(self.frame), *case_options(self.screen)])
+        found += self._solved(whole_options(self.frame))
         return sorted(found, key=lambda w: w.score)
 
 

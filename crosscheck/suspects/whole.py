@@ -1,4 +1,4 @@
-"""Changes that reach the whole frame, few enough to solve again for each: sections, materials, idealisation, zones."""
+"""Changes that reach the whole frame, few enough to solve again for each: idealisation, zones, turned supports."""
 
 from __future__ import annotations
 
@@ -12,15 +12,12 @@ from crosscheck.suspects.changes import (
     usable,
     with_analysis,
     with_load,
-    with_material_factor,
     with_member,
-    with_section_factors,
     with_support,
 )
-from crosscheck.suspects.members import COMMON
 from crosscheck.suspects.suspect import Option, named
 
-SECTION, MATERIAL, FITTED, SWAPPED, IDEALISED, ZONES, ANGLE, ONE_ZONE = 0.5, 0.6, 1.1, 0.6, 0.3, 0.4, 0.6, 0.7
+IDEALISED, ZONES, ANGLE, ONE_ZONE = 0.3, 0.4, 0.6, 0.7
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,74 +39,6 @@ def whole_options(frame: Frame) -> Iterator[Option]:
     yield from _idealisations(frame)
     yield from _zones(frame)
     yield from _angles(frame)
-    yield from _sections(frame)
-    used = {m.material for m in frame.members.values()}
-    for name in frame.materials:
-        if name in used:
-            for other in frame.materials.values():
-                if other.name != name:
-                    says = f"members of {named(frame, 'material', name)} were given {other.name}"
-                    change = Change(partial(_other_material, name=name, other=other.name))
-                    yield Option("stiffness", (named(frame, "material", name),), says, change, SWAPPED)
-            for factor in (*COMMON[:7], 1e3, 1e-3):
-                yield _material(frame, name, factor, MATERIAL)
-
-
-def whole_families(frame: Frame) -> Iterator[Family]:
-    """The fitted ones: I, A and both of a section, E of a material."""
-    sections, materials = {m.section for m in frame.members.values()}, {m.material for m in frame.members.values()}
-    for name in sorted(sections):
-        yield Family(partial(_section, frame, name, "EI"), FACTORS)
-        if frame.analysis.axial == "elastic":
-            yield Family(partial(_section, frame, name, "EA"), FACTORS)
-            yield Family(partial(_section, frame, name, "EI and EA"), FACTORS)
-    for name in sorted(materials):
-        yield Family(partial(_material, frame, name), FACTORS)
-
-
-FACTORS = (0.15, 0.5, 2.0, 7.0)
-
-
-def _section(frame: Frame, name: str, what: str, factor: float, cost: float = FITTED) -> Option:
-    bending, stretching = (factor if "EI" in what else 1.0), (factor if "EA" in what else 1.0)
-    says = f"section {name} had {factor:.4g} times its {what}"
-    change = Change(partial(with_section_factors, name=name, bending=bending, stretching=stretching))
-    return Option("stiffness", (named(frame, "section", name),), says, change, cost, fitted=int(cost >= FITTED))
-
-
-def _material(frame: Frame, name: str, factor: float, cost: float = FITTED) -> Option:
-    says = f"material {name} had {factor:.4g} times its E"
-    change = Change(partial(with_material_factor, name=name, factor=factor))
-    return Option("stiffness", (named(frame, "material", name),), says, change, cost, fitted=int(cost >= FITTED))
-
-
-def _sections(frame: Frame) -> Iterator[Option]:
-    used = {m.section for m in frame.members.values()}
-    for name in frame.sections:
-        if name not in used:
-            continue
-        for factor in COMMON:
-            yield _section(frame, name, "EI", factor, SECTION)
-            if frame.analysis.axial == "elastic":
-                yield _section(frame, name, "EA", factor, SECTION + 0.2)
-                yield _section(frame, name, "EI and EA", factor, SECTION + 0.1)
-        for other in frame.sections:
-            if other != name:
-                says = f"members of section {name} were given section {other}"
-                change = Change(partial(_other_section, name=name, other=other))
-                yield Option("stiffness", (named(frame, "section", name),), says, change, SWAPPED)
-
-
-def _other_section(frame: Frame, name: str, other: str) -> Frame:
-    return replace(frame, members={
-        n: replace(m, section=other) if m.section == name else m for n, m in frame.members.items()
-    })  # fmt: skip
-
-
-def _other_material(frame: Frame, name: str, other: str) -> Frame:
-    return replace(frame, members={
-        n: replace(m, material=other) if m.material == name else m for n, m in frame.members.items()
-    })  # fmt: skip
 
 
 # --- idealisation ---

@@ -75,6 +75,16 @@ class Effects:
     member: Floats
 
 
+class ForceSpans(ClosedFormSpans):
+    """Values along members whose turning points are those of shear and moment alone."""
+
+    def turning_points(self, name: str) -> tuple[Ints, Floats]:
+        left, right = self._pieces
+        s = self._stations
+        found = self._shear_places(name, s.member[left], s.x[left], s.x[right])
+        return np.concatenate([m for m, _ in found]), np.concatenate([x for _, x in found])
+
+
 class Prepared:
     """A frame with its matrix factorised. Raises ArithmeticError when asked of a frame that can move freely."""
 
@@ -86,6 +96,8 @@ class Prepared:
         self.Bf = self.B[:, self.free].tocsc()
         self.D = self.system.member_stiffness
         self._states: dict[str, Solution] = {}
+        self._turns: dict[str, tuple[Floats, Floats]] = {}
+        self._shared_by: dict[tuple[int, ...], Floats] = {}
         self._check()
 
     def _check(self) -> None:
@@ -103,15 +115,18 @@ class Prepared:
 
     # --- answers ---
 
-    def answer(self, names: Sequence[str], loaded: Frame | None = None) -> Answer:
-        """Results of cases and combinations, with the loads of `loaded` (the same structure) where given."""
+    def answer(self, names: Sequence[str], loaded: Frame | None = None, deflections: bool = False) -> Answer:
+        """Results of cases and combinations, with the loads of `loaded` (the same structure) where given.
+
+        deflections: whether largest deflections along members will be asked for; finding them is slow.
+        """
         source = self.frame if loaded is None else loaded
         tables = [load_table(source, name) for name in names]
         solution = self.system.solve(tables)
         none = self._all_determined
         cases = {name: solution.case_answer(k, none) for k, name in enumerate(names)}
-        return Answer("slope-deflection", cases, none, ClosedFormSpans(
-            source, dict(zip(names, tables, strict=True)), cases, none))  # fmt: skip
+        spans = ClosedFormSpans if deflections else ForceSpans
+        return Answer("slope-deflection", cases, none, spans(source, dict(zip(names, tables, strict=True)), cases, none))
 
     @cached_property
     def _all_determined(self) -> Undetermined:
@@ -122,6 +137,13 @@ class Prepared:
         if name not in self._states:
             self._states[name] = self.system.solve([load_table(self.frame, name)])
         return self._states[name]
+
+    def _pull(self, name: str) -> Floats:
+        """(j, 3) what the supports supply at each joint, global axes; nothing but rounding where there is none."""
+        state = self._state(name)
+        fixed = state.fixed[0]
+        ends = end_actions(self.frame, state.forces[:, :2, 0], state.forces[:, 2, 0] + fixed.axial, fixed)
+        return gathered(self.frame, ends) - state.tables[0].joint
 
     # --- effects ---
 
@@ -219,16 +241,46 @@ class Prepared:
 
     def _load_rotations(self, name: str) -> tuple[Floats, Floats]:
         """(m, 2) end rotations of the loaded simple beams: the part that bending stiffness divides, and the rest."""
-        table = load_table(self.frame, name)
-        stiff = replace(self.frame)
-        t = self.frame.member_table
-        stiff.__dict__["member_table"] = replace(t, I=t.I * STIFFER)
-        rest = simple_beam_rotations(stiff, table)
-        return simple_beam_rotations(self.frame, table) - rest, rest
+        if name not in self._turns:
+            table = load_table(self.frame, name)
+            stiff = replace(self.frame)
+            t = self.frame.member_table
+            stiff.__dict__["member_table"] = replace(t, I=t.I * STIFFER)
+            rest = simple_beam_rotations(stiff, table)
+            self._turns[name] = simple_beam_rotations(self.frame, table) - rest, rest
+        return self._turns[name]
 
     def member_actions(self, name: str, member: Ints, bending: Floats, stretching: Floats, turn: Floats) -> Floats:
-        """(n, 3) actions that stand for one member's change: EI and EA times `bending` and `stretching` (n,), end
-        connections `turn` (n, 2). NaN where the change makes a mechanism."""
+        """(n, 3) actions that stand for one member's change, n changes each on its own: EI and EA times `bending` and
+        `stretching` (n,), end connections `turn` (n, 2). NaN where the change makes a mechanism."""
+        blocks, right = self._changed_members(name, member, bending, stretching, turn)
+        matrix = np.eye(3) + (blocks - self._blocks[member]) @ self._own[member]
+        return _solved(matrix, right)
+
+    def joint_actions(self, name: str, member: Ints, bending: Floats, stretching: Floats) -> Floats:
+        """(n, 3) actions that stand for n members changed together. NaN where the change makes a mechanism."""
+        turn = self.frame.member_table.turn[member]
+        blocks, right = self._changed_members(name, member, bending, stretching, turn)
+        n = len(member)
+        less = blocks - self._blocks[member]
+        shared = self._shared(tuple(member.tolist())).reshape(n, 3, 3 * n)
+        matrix = np.eye(3 * n) + np.einsum("nij,njk->nik", less, shared).reshape(3 * n, 3 * n)
+        try:
+            return np.asarray(np.linalg.solve(matrix, right.ravel()).reshape(n, 3))
+        except np.linalg.LinAlgError:
+            return np.full((n, 3), np.nan)
+
+    def _shared(self, member: tuple[int, ...]) -> Floats:
+        """(3 n, 3 n) deformations of some members under their own and each other's self-balanced actions."""
+        if member not in self._shared_by:
+            rows = self.Bf.tocsr()[(3 * np.array(member)[:, None] + np.arange(3)).ravel()]
+            self._shared_by[member] = np.asarray(rows @ self.system.correct(rows.T.toarray()))
+        return self._shared_by[member]
+
+    def _changed_members(
+        self, name: str, member: Ints, bending: Floats, stretching: Floats, turn: Floats
+    ) -> tuple[Floats, Floats]:
+        """(n, 3, 3) new stiffness of members, and (n, 3) their forces at the old deformations less the old forces."""
         t = self.frame.member_table
         bench = replace(self.frame)
         fields = {f: getattr(t, f)[member] for f in MemberTable.__dataclass_fields__}
@@ -245,11 +297,9 @@ class Prepared:
         free[:, :2] = bends[member] / bending[:, None] + rest[member]
         free[:, 2] = state.fixed[0].stretch[member]
         deformed = (self.B @ state.shift[:, 0]).reshape(-1, 3)[member]
-        forces = state.forces[member, :, 0]
-        right = np.einsum("nij,nj->ni", blocks, deformed - free) - forces
+        right = np.einsum("nij,nj->ni", blocks, deformed - free) - state.forces[member, :, 0]
         right[rigid, 2] = 0.0
-        matrix = np.eye(3) + (blocks - self._blocks[member]) @ self._own[member]
-        return _solved(matrix, right)
+        return blocks, right
 
     @cached_property
     def _support_response(self) -> tuple[Floats, Floats]:
@@ -292,7 +342,7 @@ class Prepared:
         state = self._state(name)
         moved = state.shift[:, 0].reshape(-1, 3)[joint]
         settled = state.tables[0].settlement[joint]
-        pull = (self._axes @ gathered_forces(self, name).ravel()).reshape(-1, 3)[joint]
+        pull = (self._axes @ self._pull(name).ravel()).reshape(-1, 3)[joint]
         matrix, right = np.zeros((len(joint), 3, 3)), np.zeros((len(joint), 3))
         stays = held & (stiffness == HELD) | (~held & (stiffness == old))
         finite = np.where(np.isinf(stiffness), 0.0, stiffness)
@@ -395,14 +445,6 @@ class Prepared:
 def prepared(frame: Frame) -> Prepared:
     """The frame with its matrix factorised. Raises ArithmeticError where it can move freely."""
     return Prepared(frame)
-
-
-def gathered_forces(p: Prepared, name: str) -> Floats:
-    """(j, 3) what supports and nothing else must supply at each joint, global axes, as an array to be turned."""
-    state = p._state(name)
-    fixed = state.fixed[0]
-    ends = end_actions(p.frame, state.forces[:, :2, 0], state.forces[:, 2, 0] + fixed.axial, fixed)
-    return gathered(p.frame, ends) - state.tables[0].joint
 
 
 def _gathered_each(frame: Frame, ends: Floats) -> Floats:

@@ -1,0 +1,167 @@
+"""Sections and materials: stiffness of several members changed together, by one factor or for another section's."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+from functools import partial
+
+import numpy as np
+
+from crosscheck.frame.model import Floats, Frame, Ints, SelfWeight
+from crosscheck.suspects.changes import Change, with_material_factor, with_section_factors
+from crosscheck.suspects.members import COMMON, GRID, ROUNDS, SPAN_OF_FACTORS
+from crosscheck.suspects.screen import Screen
+from crosscheck.suspects.suspect import Option, named
+from crosscheck.suspects.whole import Family
+
+SECTION, MATERIAL, FITTED, SWAPPED = 0.5, 0.6, 1.1, 0.6
+MOST_TOGETHER = 60
+"""Members changed together without solving again; for more a new solution is quicker."""
+STARTS = (0.15, 0.5, 2.0, 7.0)
+
+
+@dataclass(frozen=True, slots=True)
+class Group:
+    """Members that share a section or a material, and what of it changes: "EI", "EA", "EI and EA" or "E"."""
+
+    table: str
+    name: str
+    what: str
+    members: Ints
+
+    def factors(self, p: float) -> tuple[float, float]:
+        """On EI and EA."""
+        return (1.0 if self.what == "EA" else p), (1.0 if self.what == "EI" else p)
+
+
+def groups(frame: Frame) -> Iterator[Group]:
+    """Every section and material in use, with what of it may be wrong."""
+    members = list(frame.members.values())
+    elastic = frame.analysis.axial == "elastic"
+    for name in frame.sections:
+        of = np.array([k for k, m in enumerate(members) if m.section == name], dtype=np.int64)
+        if len(of):
+            for what in ("EI", "EA", "EI and EA") if elastic else ("EI",):
+                yield Group("section", name, what, of)
+    for name in frame.materials:
+        of = np.array([k for k, m in enumerate(members) if m.material == name], dtype=np.int64)
+        if len(of):
+            yield Group("material", name, "E", of)
+
+
+def _foretold(frame: Frame, group: Group) -> bool:
+    """Whether the factorised matrix serves: few members, and no shear stiffness or weight that changes along."""
+    if len(group.members) > MOST_TOGETHER or (group.table == "material" and frame.analysis.shear == "elastic"):
+        return False
+    heavy = any(isinstance(q, SelfWeight) for c in frame.cases.values() for q in c.loads)
+    return group.what in ("EI", "E") or not heavy
+
+
+def group_options(screen: Screen) -> Iterator[Option]:
+    """Common factors and other sections for each group, and the factor that fits best."""
+    frame = screen.frame
+    for group in groups(frame):
+        if not _foretold(frame, group):
+            continue
+        cost = SECTION if group.what == "EI" else MATERIAL
+        for factor in COMMON:
+            yield _option(screen, group, factor, cost)
+        fitted = _fit(screen, group)
+        if fitted is not None:
+            yield fitted
+    yield from _swapped(screen)
+
+
+def large_families(frame: Frame) -> Iterator[Family]:
+    """The groups whose factor must be fitted by solving again."""
+    for group in groups(frame):
+        if not _foretold(frame, group):
+            yield Family(partial(_at, frame, group), STARTS)
+
+
+def _at(frame: Frame, group: Group, p: float) -> Option:
+    return _plain(frame, group, p, FITTED, None, 1)
+
+
+def _plain(frame: Frame, group: Group, p: float, cost: float, delta: Floats | None, fitted: int) -> Option:
+    label = named(frame, group.table, group.name)
+    if group.table == "material":
+        change = Change(partial(with_material_factor, name=group.name, factor=p))
+    else:
+        bending, stretching = group.factors(p)
+        change = Change(partial(with_section_factors, name=group.name, bending=bending, stretching=stretching))
+    says = f"{group.table} {group.name} had {p:.4g} times its {group.what}"
+    return Option("stiffness", (label,), says, change, cost, delta, fitted=fitted)
+
+
+def _delta(screen: Screen, members: Ints, bending: Floats, stretching: Floats) -> Floats:
+    """(n,) change of the values when members change together."""
+    out = np.zeros(len(screen.residual))
+    columns = (3 * members[:, None] + np.arange(3)).ravel()
+    for name, part in zip(screen.seen.names, screen.parts, strict=True):
+        actions = screen.base.joint_actions(name, members, bending, stretching)
+        out[part] = screen.effects.member[np.ix_(part, columns)] @ actions.ravel()
+    return out
+
+
+def _group_delta(screen: Screen, group: Group, p: float) -> Floats:
+    one = np.ones(len(group.members))
+    bending, stretching = group.factors(p)
+    return _delta(screen, group.members, bending * one, stretching * one)
+
+
+def _option(screen: Screen, group: Group, p: float, cost: float, fitted: int = 0) -> Option:
+    return _plain(screen.frame, group, p, cost, _group_delta(screen, group, p), fitted)
+
+
+def _fit(screen: Screen, group: Group) -> Option | None:
+    low, high = np.log(SPAN_OF_FACTORS[0]), np.log(SPAN_OF_FACTORS[1])
+    for turn in range(ROUNDS + 1):
+        grid = np.exp(np.linspace(low, high, GRID if turn == 0 else 9))
+        left = screen.left(np.column_stack([_group_delta(screen, group, float(g)) for g in grid]))
+        k = int(np.argmin(np.where(np.isfinite(left), left, np.inf)))
+        if not left[k] <= 0.5 * screen.total:
+            return None
+        step = (high - low) / (len(grid) - 1)
+        low, high = np.log(grid[k]) - step, np.log(grid[k]) + step
+    tidy = float(f"{grid[k]:.2g}")
+    left_tidy = screen.left(_group_delta(screen, group, tidy)[:, None])[0]
+    p = tidy if left_tidy <= max(1.2 * left[k], len(screen.residual)) else float(grid[k])
+    return _option(screen, group, p, FITTED, 1)
+
+
+def _swapped(screen: Screen) -> Iterator[Option]:
+    """Members of one section given another, or of one material another."""
+    frame = screen.frame
+    for group in groups(frame):
+        if group.what not in ("EI", "E"):
+            continue
+        table = frame.sections if group.table == "section" else frame.materials
+        for other in table:
+            if other != group.name:
+                change = Change(partial(_given, table=group.table, name=group.name, other=other))
+                says = f"members of {group.table} {group.name} were given {other}"
+                where = (named(frame, group.table, group.name),)
+                yield Option("stiffness", where, says, change, SWAPPED, _swap_delta(screen, group, other))
+
+
+def _swap_delta(screen: Screen, group: Group, other: str) -> Floats | None:
+    """Foretold where stiffness alone changes; depth, weight and shear need another solution."""
+    frame = screen.frame
+    plain = frame.analysis.shear == "rigid" and len(group.members) <= MOST_TOGETHER
+    acts = any(not hasattr(q, "force") and not hasattr(q, "first") for c in frame.cases.values() for q in c.loads)
+    if not plain or acts:
+        return None
+    one = np.ones(len(group.members))
+    if group.table == "material":
+        ratio = frame.materials[other].E / frame.materials[group.name].E
+        return _delta(screen, group.members, ratio * one, ratio * one)
+    new, old = frame.sections[other], frame.sections[group.name]
+    stretching = new.A / old.A if new.A and old.A else 1.0
+    return _delta(screen, group.members, new.I / old.I * one, stretching * one)
+
+
+def _given(frame: Frame, table: str, name: str, other: str) -> Frame:
+    members = {n: replace(m, **{table: other}) if getattr(m, table) == name else m for n, m in frame.members.items()}
+    return replace(frame, members=members)
