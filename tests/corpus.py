@@ -14,7 +14,7 @@ from random import Random
 import numpy as np
 
 from crosscheck import check
-from crosscheck.answer import Answer, Silent
+from crosscheck.answer import Answer, CaseAnswer, Silent
 from crosscheck.compare.claim import ClaimComparison
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.opinions import Comparison
@@ -49,7 +49,8 @@ class Mistake:
     """kind: as the contract names it. sort: finer, for the table. where: what a suspect should name ('' for nowhere).
 
     frame: what the other analysis had; None where the mistake is in the paste. paste: changes the printed values.
-    name: case of the other frame whose results stand under the claimed case's name.
+    name: case of the other frame whose results stand under the claimed case's name. adjust: what was done to its
+    results before they were printed.
     """
 
     kind: str
@@ -58,6 +59,7 @@ class Mistake:
     frame: Frame | None = None
     paste: Callable[[list[ClaimedValue]], list[ClaimedValue]] | None = None
     name: str | None = None
+    adjust: Callable[[Frame, Answer, str], CaseAnswer] | None = None
 
 
 # --- printing --------------------------------------------------------------------------------------
@@ -77,7 +79,13 @@ def claim_values(
     frame: Frame, answer: Answer, name: str, under: str, digits: int, fixed: bool, only: str = "all"
 ) -> list[ClaimedValue]:
     """The results of case `name` as a claim on case `under`. only: "all", "moments" or "reactions"."""
-    c = answer.cases[name]
+    return case_values(frame, answer.cases[name], under, digits, fixed, only)
+
+
+def case_values(
+    frame: Frame, c: CaseAnswer, under: str, digits: int, fixed: bool, only: str = "all"
+) -> list[ClaimedValue]:
+    """One case's results as a claim."""
     out: list[ClaimedValue] = []
     line = 0
 
@@ -367,7 +375,39 @@ def _idealisation(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
     if t.zone.any():
         bare = {n: replace(m, rigid_from=0.0, rigid_to=0.0) for n, m in frame.members.items()}
         yield Mistake("idealisation", "end zones", (), replace(frame, members=bare))
-        yield Mistake("idealisation", "face values", (), paste=lambda v: v)
+        yield Mistake("idealisation", "face values", (), frame, adjust=_at_faces)
+    supported = np.array([n in frame.supports for n in frame.joints])
+    for j in np.flatnonzero(supported):
+        on = (t.ends == j).any(axis=1)
+        if on.sum() >= 2 and supported[t.ends[on]].all():
+            share = r.choice([0.1, 0.15, 0.2, 0.3])
+            where = (list(frame.joints)[j],)
+            yield Mistake("idealisation", "redistributed", where, frame, adjust=lambda f, a, n, j=j, s=share: _less(f, a, n, j, s))
+
+
+def _at_faces(frame: Frame, answer: Answer, name: str) -> CaseAnswer:
+    t, ends = frame.member_table, answer.cases[name].ends.copy()
+    m = np.arange(len(frame.members))
+    for end, x, side, sign in ((0, t.zone[:, 0], -1, 1.0), (1, t.length - t.zone[:, 1], 1, -1.0)):
+        there = answer.spans.along(name, m, x, np.full(len(m), side))
+        zoned = t.zone[:, end] > 0
+        ends[zoned, end, 2] = sign * there[zoned, 2]
+    return replace(answer.cases[name], ends=ends)
+
+
+def _less(frame: Frame, answer: Answer, name: str, j: int, share: float) -> CaseAnswer:
+    """Moments at joint j less by a share; shears and reactions by statics."""
+    t, c = frame.member_table, answer.cases[name]
+    ends, reactions = c.ends.copy(), c.reactions.copy()
+    for m, end in np.argwhere(t.ends == j):
+        gone = share * c.ends[m, end, 2]
+        ends[m, end, 2] -= gone
+        up = gone / t.length[m]
+        ends[m, 0, 1] += up
+        ends[m, 1, 1] -= up
+        for e, force in ((0, up), (1, -up)):
+            reactions[t.ends[m, e], :2] += force * np.array([-t.sin[m], t.cos[m]])
+    return replace(c, ends=ends, reactions=reactions)
 
 
 # --- mistakes of the paste ---------------------------------------------------------------------------

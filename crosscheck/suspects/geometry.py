@@ -9,8 +9,7 @@ import numpy as np
 
 from crosscheck.frame.model import Frame
 from crosscheck.suspects.changes import Change, with_ends, with_joint, without_member
-from crosscheck.suspects.suspect import Option, named
-from crosscheck.suspects.whole import Family
+from crosscheck.suspects.suspect import Family, Option, named
 
 MISSING, JOINED, MOVED, SWAPPED = 0.5, 0.8, 1.0, 0.8
 NEAR = 6

@@ -12,8 +12,7 @@ from crosscheck.frame.model import Floats, Frame, Ints, SelfWeight
 from crosscheck.suspects.changes import Change, with_material_factor, with_section_factors
 from crosscheck.suspects.members import COMMON, GRID, ROUNDS, SPAN_OF_FACTORS
 from crosscheck.suspects.screen import Screen
-from crosscheck.suspects.suspect import Option, named
-from crosscheck.suspects.whole import Family
+from crosscheck.suspects.suspect import Family, Option, named
 
 SECTION, MATERIAL, FITTED, SWAPPED = 0.5, 0.6, 1.1, 0.6
 MOST_TOGETHER = 60

@@ -120,7 +120,7 @@ def _moves(frame: Frame, case: str) -> Iterator[_Move]:
     for entry, places in entries.items():
         where = (f"{case}[{entry}]",)
         what = _what(frame, [loads[k] for k in places])
-        yield _Move(case, {k: () for k in places}, where, f"{what} was left out", LEFT_OUT)
+        yield _Move(case, dict.fromkeys(places, ()), where, f"{what} was left out", LEFT_OUT)
         yield _Move(case, {k: (loads[k], loads[k]) for k in places}, where, f"{what} was in twice", TWICE)
         yield _Move(case, {k: (scaled(loads[k], -1.0),) for k in places}, where, f"{what} was reversed", REVERSED)
         for variant, says, cost in _variants_of_entry([loads[k] for k in places]):
@@ -135,7 +135,7 @@ def _moves(frame: Frame, case: str) -> Iterator[_Move]:
         where = tuple(f"{case}[{e}]" for e in entries)
         turned: dict[int, tuple[Load, ...]] = {k: (scaled(q, -1.0),) for k, q in enumerate(loads)}
         yield _Move(case, turned, where, f"all loads of {case} were reversed", REVERSED)
-        yield _Move(case, {k: () for k in range(len(loads))}, where, f"all loads of {case} were left out", LEFT_OUT + 0.3)
+        yield _Move(case, dict.fromkeys(range(len(loads)), ()), where, f"all loads of {case} were left out", LEFT_OUT + 0.3)
 
 
 def _what(frame: Frame, loads: list[Load]) -> str:
@@ -265,7 +265,7 @@ def _factors_of_entries(screen: Screen) -> Iterator[Option]:
         for k, load in enumerate(frame.cases[case].loads):
             entries.setdefault(load.entry, []).append(k)
         for entry, places in entries.items():
-            moves.append(_Move(case, {k: () for k in places}, (f"{case}[{entry}]",), "", FACTOR))
+            moves.append(_Move(case, dict.fromkeys(places, ()), (f"{case}[{entry}]",), "", FACTOR))
     gone = _deltas(screen, moves)
     w2 = screen.weight[:, None] ** 2
     size = (w2 * gone**2).sum(axis=0)
@@ -304,7 +304,7 @@ def factor_changes(frame: Frame, name: str) -> Iterator[tuple[dict[str, float], 
                 yield {**factors, case: -f}, f"{case} had the other sign in {name}", OTHER_FACTOR
             yield {c: g for c, g in factors.items() if c != case}, f"{case} was left out of {name}", CASE_OUT
         if any(f != 1.0 for f in factors.values()):
-            yield {c: 1.0 for c in factors}, f"no factor was applied in {name}", ALL_ONE
+            yield dict.fromkeys(factors, 1.0), f"no factor was applied in {name}", ALL_ONE
             yield {c: f * f for c, f in factors.items()}, f"loads factored already were factored again in {name}", 0.2
         return
     known = {f for c in frame.combinations.values() for case, f in c.factors.items() if case == name and f != 1.0}

@@ -8,10 +8,10 @@ from functools import partial
 
 import numpy as np
 
-from crosscheck.frame.model import FREE, HELD, Floats, Frame
+from crosscheck.frame.model import FREE, HELD, Floats, Frame, SelfWeight
 from crosscheck.suspects.changes import Change, with_member, with_member_factors
 from crosscheck.suspects.screen import Screen
-from crosscheck.suspects.suspect import Option, named
+from crosscheck.suspects.suspect import Family, Option, named
 
 COMMON = (0.5, 0.7, 0.35, 0.25, 0.1, 2.0, 10.0, 0.01, 100.0, 1e-4)
 """Factors that mistakes of stiffness often have: cracked sections, halves, decimal slips, units."""
@@ -171,3 +171,20 @@ def _member_trial(frame: Frame, m: int, family: str, p: float) -> _Trial:
     bending, stretching = (p if "EI" in family else 1.0), (p if "EA" in family else 1.0)
     cost = FITTED if family == "EI" else FITTED + 0.2
     return _Trial(m, bending, stretching, own, "stiffness", f"{label} had {p:.4g} times its {family}", cost)
+
+
+def heavy_families(frame: Frame) -> Iterator[Family]:
+    """A member's area by a factor where self weight follows it: fitted by solving again."""
+    heavy = any(isinstance(q, SelfWeight) for c in frame.cases.values() for q in c.loads)
+    if not heavy or frame.analysis.axial == "rigid":
+        return
+    for m in range(len(frame.members)):
+        for what in ("EA", "EI and EA"):
+            yield Family(partial(_heavy, frame, m, what), (0.15, 0.5, 2.0, 7.0), members=(m,))
+
+
+def _heavy(frame: Frame, m: int, what: str, p: float) -> Option:
+    trial = _member_trial(frame, m, what, p)
+    name = list(frame.members)[m]
+    where = (named(frame, "member", name),)
+    return Option("stiffness", where, f"{trial.says} (and weight)", Change(_change(trial, name)), FITTED, fitted=1)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
 
 from crosscheck.frame.model import Floats, Frame
@@ -44,6 +45,20 @@ class Option:
     claimed: Floats | None = None
     half: Floats | None = None
     fitted: int = 0
+
+
+@dataclass(frozen=True, slots=True)
+class Family:
+    """Options with one number to be fitted. at(p): the option; starts: where to begin; logarithmic: p is a factor.
+
+    joints, members: indices of the place it is confined to; None where it reaches further.
+    """
+
+    at: Callable[[float], Option]
+    starts: tuple[float, ...]
+    logarithmic: bool = True
+    joints: tuple[int, ...] | None = None
+    members: tuple[int, ...] | None = None
 
 
 def named(frame: Frame, kind: str, name: str) -> str:

@@ -17,17 +17,18 @@ from crosscheck.answer import Answer, CaseAnswer
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.opinions.slope_deflection.prepared import Prepared, prepared
+from crosscheck.suspects.adjusted import adjusted
 from crosscheck.suspects.changes import Change, of_case, usable
 from crosscheck.suspects.geometry import geometry_families, geometry_options
 from crosscheck.suspects.groups import group_options, large_families
 from crosscheck.suspects.loads import case_options, load_options
-from crosscheck.suspects.members import member_options
+from crosscheck.suspects.members import heavy_families, member_options
 from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.supports import support_options
-from crosscheck.suspects.suspect import Option
-from crosscheck.suspects.whole import Family, temperature_options, whole_options
+from crosscheck.suspects.suspect import Family, Option
+from crosscheck.suspects.whole import temperature_options, whole_options
 
 UNFIT, STEEPNESS = 3.0, 2.0
 """What not fitting to the printed precision costs, and how steeply the misfit counts after that."""
@@ -146,6 +147,7 @@ class Sweep:
             told = [w for o in told[: 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
         quick += told
         quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
+        quick += adjusted(self)
         quick.sort(key=lambda w: w.score)
         if not (quick and quick[0].fits):
             quick += self._solved(self._near_geometry())
@@ -190,7 +192,7 @@ class Sweep:
                 yield option
 
     def _near_families(self) -> Iterator[Family]:
-        for family in geometry_families(self.frame):
+        for family in (*geometry_families(self.frame), *heavy_families(self.frame)):
             if self._promising(family.joints or (), family.members or ()):
                 yield family
 

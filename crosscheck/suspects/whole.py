@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
-from dataclasses import dataclass, replace
+from collections.abc import Iterator
+from dataclasses import replace
 from functools import partial
 
 from crosscheck.frame.model import HELD, Frame, Temperature
@@ -18,20 +18,6 @@ from crosscheck.suspects.changes import (
 from crosscheck.suspects.suspect import Option, named
 
 IDEALISED, ZONES, ANGLE, ONE_ZONE = 0.3, 0.4, 0.6, 0.7
-
-
-@dataclass(frozen=True, slots=True)
-class Family:
-    """Options with one number to be fitted. at(p): the option; starts: where to begin; logarithmic: p is a factor.
-
-    joints, members: indices of the place it is confined to; None where it reaches further.
-    """
-
-    at: Callable[[float], Option]
-    starts: tuple[float, ...]
-    logarithmic: bool = True
-    joints: tuple[int, ...] | None = None
-    members: tuple[int, ...] | None = None
 
 
 def whole_options(frame: Frame) -> Iterator[Option]:
