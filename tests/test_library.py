@@ -280,7 +280,7 @@ def test_either_side_of_a_jump() -> None:
 def test_what_lies_between_the_forces_of_a_restated_load_is_not_given() -> None:
     answer = speak(beam(PointForce(0, "AB", 16.0, -90.0, 0.01)))
     assert isinstance(answer, Answer)
-    tenths = np.arange(11) * 0.4
+    tenths = np.linspace(0.0, 4.0, 11)
     got = answer.spans.along("c", np.zeros(11, dtype=np.int64), tenths, np.array([-1, *[1] * 9, -1]))
     assert list(np.flatnonzero(np.isnan(got[:, 2]))) == [1, 2]
 
@@ -331,6 +331,49 @@ def test_it_abstains_above_a_size_and_says_so() -> None:
     assert isinstance(answer, Silent)
     assert "1 members are more than the 0" in answer.why
     assert isinstance(opine(beam(), study(beam()), size_limit=None), Answer)
+
+
+def rigid(joints: dict[str, tuple[float, float]], members: list[Member], supports: list[Support], *loads: Load) -> Frame:
+    return Frame(
+        title="", units=Units("kN", "m", 1e3, 1.0), materials={"m": Material("m", 2e8)},
+        sections={"s": Section("s", 1e-4), "t": Section("t", 2.5e-3)},
+        joints={n: Joint(n, *xy) for n, xy in joints.items()},
+        members={m.name: m for m in members}, supports={s.joint: s for s in supports},
+        cases={"c": LoadCase("c", loads)}, analysis=Analysis(axial="rigid"),
+    )  # fmt: skip
+
+
+STILL = rigid(
+    {"A": (0, 0), "B": (4, 0), "C": (2, 3)},
+    [Member("AB", "A", "B", "s", "m"), Member("BC", "B", "C", "s", "m"), Member("CA", "C", "A", "s", "m")],
+    [Support("A", HELD, HELD, FREE), Support("B", FREE, HELD, FREE)],
+    JointForce(0, "C", 8.0, -70.0),
+)
+"""Its joints do not move at all, so displacements are rounding and nothing else."""
+NEARLY_LOOSE = rigid(
+    {"A": (0, 0), "B": (-13.6, 186.5), "C": (246, 186.8), "D": (235.6, -28.4)},
+    [
+        Member("AB", "A", "B", "t", "m"),
+        Member("BC", "B", "C", "s", "m"),
+        Member("CD", "C", "D", "s", "m"),
+        Member("CA", "C", "A", "s", "m", FREE, FREE),
+    ],
+    [Support("A", HELD, HELD, FREE), Support("D", FREE, HELD, FREE), Support("B", FREE, HELD, FREE)],
+    PointForce(0, "BC", 11.0, "across", 22.0),
+    PointForce(0, "CD", 13.0, 0.0, 47.0),
+)
+"""AB alone keeps it from swaying, by its slight slope: its axial force is a multiple of the loads."""
+
+
+@pytest.mark.parametrize("frame", [STILL, NEARLY_LOOSE], ids=["still", "nearly loose"])
+def test_axially_rigid_frames_that_barely_move(frame: Frame) -> None:
+    answer = speak(frame)
+    assert isinstance(answer, Answer)
+    true = Truth(frame).cases["c"]
+    force = np.abs(true.ends[..., :2]).max()
+    assert np.abs(answer.cases["c"].ends - true.ends).max() < 1e-8 * force * frame.member_table.length.max()
+    supple = force * frame.member_table.length.max() ** 3 / (2e8 * 1e-4)
+    assert np.abs(answer.cases["c"].joints - true.joints).max() < 1e-8 * supple
 
 
 # --- a library that has changed inside -----------------------------------------------------------------------------

@@ -16,11 +16,14 @@ from crosscheck.frame.model import FREE, Floats, Frame, Ints
 from crosscheck.opinions.library.mesh import Laid, Mesh, divide, lay
 from crosscheck.opinions.library.model import Unfit, Vectors, solve, to_global
 
-STIFFNESS_RATIOS = (3e4, 1e6)
-"""EA / L as a multiple of the stiffest member's EI / L^3, from which the limit of axial rigidity is taken: the second
-where the first does not do. A higher one costs digits, a lower one leaves more of the series."""
+STIFFNESS_RATIOS = (3e4, 1e6, 3e7)
+"""EA / L as a multiple of the stiffest member's EI / L^3, from which the limit of axial rigidity is taken: a further
+one where the one before does not do. A higher one costs digits, a lower one leaves more of the series."""
 LIMIT_SURE, LIMIT_TRUSTED = 1e-7, 1e-6
-"""Estimated error of that limit with which the first ratio does, and above which no word is given."""
+"""Estimated error of that limit with which a ratio does, and above which no word is given."""
+TRACE = 1e-4
+"""Share of the largest force times L^3 / EI below which displacements count as none: the joints of many an axially
+rigid frame stay still, and rounding has no size of its own."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,10 +68,11 @@ def _vectors(frame: Frame, mesh: Mesh, laid: Laid) -> Vectors:
         return _refined(frame, mesh, laid, t.E * t.A)
     # One stiffness EA / L for all members: a slender one must not stretch under what a stout neighbour brings to it.
     stiffest = float((t.E * t.I / t.length**3).max())
+    supple = float(np.median(t.length**3 / (t.E * t.I)))
     tried = []
     for ratio in STIFFNESS_RATIOS:
         three = [_refined(frame, mesh, laid, c * ratio * stiffest * t.length) for c in (1.0, 2.0, 4.0)]
-        tried.append(_rigid_limit(three, float(t.length.max())))
+        tried.append(_rigid_limit(three, float(t.length.max()), supple))
         if tried[-1][1] <= LIMIT_SURE:
             break
     vectors, error = min(tried, key=lambda limit: limit[1])
@@ -96,23 +100,27 @@ def _node_forces(frame: Frame, mesh: Mesh, laid: Laid) -> Floats:
     return force
 
 
-def _rigid_limit(at: Sequence[Vectors], length: float) -> tuple[Vectors, float]:
+def _rigid_limit(at: Sequence[Vectors], length: float, supple: float) -> tuple[Vectors, float]:
     """The limit of c -> infinity from c, 2c, 4c, a series in 1/c of which two terms are removed, and its error.
 
     After L. F. Richardson, Phil. Trans. R. Soc. A 226 (1927), 299-361. The error is estimated by the change that the
-    second removal makes, as a share of the largest force or displacement; `length` makes couples and rotations such.
+    second removal makes, as a share of the largest force or displacement; `length` makes couples and rotations such,
+    `supple` (displacement per force) displacements of the largest force.
     """
-    pieces, forces_error = _limit([v.pieces for v in at], 1.0 / length)
-    nodes, moved_error = _limit([v.nodes for v in at], length)
-    return Vectors(pieces, nodes, at[-1].taken), max(forces_error, moved_error)
+    pieces, change, force = _limit([v.pieces for v in at], 1.0 / length)
+    nodes, shift, moved = _limit([v.nodes for v in at], length)
+    if force == 0.0:
+        return Vectors(pieces, nodes, at[-1].taken), 0.0
+    return Vectors(pieces, nodes, at[-1].taken), max(change / force, shift / max(moved, TRACE * supple * force))
 
 
-def _limit(at: Sequence[Floats], third: float) -> tuple[Floats, float]:
-    """`third` brings the last axis's third value to the kind of the first two."""
+def _limit(at: Sequence[Floats], third: float) -> tuple[Floats, float, float]:
+    """The limit, the change and the size; `third` brings the last axis's third value to the kind of the first two."""
     one, two, four = at
     limit = (8.0 * four - 6.0 * two + one) / 3.0
-    change = (limit - (2.0 * four - two)) * [1.0, 1.0, third]
-    return limit, float(np.abs(change).max() / max(np.abs(limit * [1.0, 1.0, third]).max(), 1e-300))
+    change = limit - (2.0 * four - two)
+    kinds = [1.0, 1.0, third]
+    return limit, float(np.abs(change * kinds).max()), float(np.abs(limit * kinds).max())
 
 
 def _read(frame: Frame, mesh: Mesh, laid: Laid, vectors: Vectors) -> Solved:
