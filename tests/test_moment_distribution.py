@@ -385,6 +385,23 @@ def test_sways_lengthen_no_rigid_member() -> None:
     assert np.abs((s.stretch[:, s.free] @ s.shape).toarray()).max() < 1e-13
 
 
+def test_sways_of_pitched_bays_stay_local() -> None:
+    """Thirty pitched bays: each eaves sways on its own and takes its two ridges along, nothing further."""
+    bays = 30
+    lines = ["[joints]", *(f"c{k} = [{8 * k}, 0]\ne{k} = [{8 * k}, 5]" for k in range(bays + 1))]
+    lines += [*(f"r{k} = [{8 * k + 4}, 6.5]" for k in range(bays)), "[members]"]
+    pairs = [(f"c{k}", f"e{k}") for k in range(bays + 1)]
+    pairs += [pair for k in range(bays) for pair in ((f"e{k}", f"r{k}"), (f"r{k}", f"e{k + 1}"))]
+    lines += [f'"{a}-{b}" = {{ section = "s", material = "m" }}' for a, b in pairs]
+    lines += ["[supports]", *(f'c{k} = "fixed"' for k in range(bays + 1))]
+    lines += ["[loads.case]", 'apply = [{ joint = "e3", force = 9, direction = "right" }]']
+    frame = frame_of("\n".join(lines))
+    shape = sways(frame, np.ones(len(frame.members), dtype=bool)).shape
+    assert shape.shape[1] == bays + 1
+    assert np.diff(shape.tocsc().indptr).max() <= 5
+    agrees(frame)
+
+
 def test_one_rigid_member_among_elastic_ones() -> None:
     """The girder's two ends move as one; the sways are one fewer."""
     frame = tower(2, "elastic")
@@ -402,7 +419,7 @@ def test_many_sways_and_few_give_the_same(monkeypatch: pytest.MonkeyPatch) -> No
     frame = tower(4, "elastic")
     monkeypatch.setattr(holding, "FEW", 0)
     together = answer(frame).cases["case"]
-    assert max(p.corrections for p in distribute(frame, ("case",)).trace) < 16
+    assert max(p.corrections for p in distribute(frame, ("case",)).trace) < 40
     monkeypatch.setattr(holding, "FEW", 16)
     one_by_one = answer(frame).cases["case"]
     assert together.ends == pytest.approx(one_by_one.ends, rel=1e-11, abs=1e-9)

@@ -38,7 +38,7 @@ class Distribution:
         """(r, n) moments that hold the joints at these rotations, no joint moving."""
         return np.asarray(self.stiffness[:, None] * turned + self.carried @ turned)
 
-    def distribute(self, unbalanced: Floats, leave: float) -> tuple[Floats, int]:
+    def distribute(self, unbalanced: Floats, leave: Floats | float) -> tuple[Floats, int]:
         """Rotations (r, n) that take the unbalanced moments (r, n), and the rounds; at most the share `leave` of the
         largest is left."""
         turned = np.zeros_like(unbalanced)
@@ -67,14 +67,15 @@ def conjugate(
 ) -> tuple[Floats, int]:
     """Conjugate corrections x with apply(x) = left, column by column, and how many; `release` is the rough inverse.
 
-    left, x: (k, n); goal: (n,) largest leftover allowed. Stops at `most`: the caller looks at what is left.
+    left, x: (k, n); goal: largest leftover allowed, (n,) or (k, n). Stops at `most`: the caller looks at what is
+    left.
     """
     x = np.zeros_like(left)
     rough = release(left)
     way = rough
     power = (left * rough).sum(axis=0)
     for taken in range(most):
-        busy = (np.abs(left).max(axis=0) > goal) & (power > 0)
+        busy = (np.abs(left) > goal).any(axis=0) & (power > 0)
         if not busy.any():
             return x, taken
         against = apply(way)

@@ -2,10 +2,11 @@
 
 With the joints held against sway the unbalanced moments are distributed; the forces that this takes at the sways are
 the holding forces. Few sways: each is imposed once by one unit, its moments distributed, and the sways that take
-away the holding forces follow from as many equations. Many: all sways are corrected together by conjugate gradients
-on the holding forces, each correction one distribution; the rough guess of the sways is the one with rotations held
-(a sparse factorisation). Either way the process is repeated on what the final moments and forces leave unbalanced at
-the joints, until joints and sways balance nearly to rounding.
+away the holding forces follow from as many equations. Many: all sways and all joints are let go together, round by
+round, by conjugate gradients on the holding forces and the unbalanced moments; in each round every joint is released
+as in distribution, and the sways are corrected as if no joint turned (one sparse factorisation). Either way the
+process is repeated on what the final moments and forces leave unbalanced, until joints and sways balance nearly to
+rounding.
 
 Moments and forces are summed up from their corrections and never worked out afresh from the movements, as in the
 hand method: rounding in large movements (stiff members, settlements) then costs no balance.
@@ -33,6 +34,8 @@ LEAVE = 1e-9
 """Share of the holding forces that one pass may leave; the next pass takes it up."""
 SETTLED = 2e-15
 """Unbalanced share of the largest force or moment at which joints and sways count as balanced."""
+STUCK = 1e-12
+"""Unbalanced share at which a pass that no longer helps is the last."""
 MOST_PASSES = 12
 
 
@@ -152,6 +155,15 @@ class Held:
         return splu(self.sway_stiffness, permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True})
 
     @cached_property
+    def released(self) -> Any:
+        """(r + q, r + q) sparse: moments on the joints and holding forces per rotation and per unit sway."""
+        d = self.distribution
+        own = sparse.diags_array(d.stiffness) + d.carried
+        return sparse.csr_array(
+            sparse.block_array([[own, self.sway_moment], [self.sway_moment.T, self.sway_stiffness]])
+        )
+
+    @cached_property
     def unit_sways(self) -> tuple[Floats, Any]:
         """(r, q) rotations to which the joints settle under each unit sway, and the factorised (q, q) holding
         forces."""
@@ -187,11 +199,12 @@ def settle(held: Held, given: Given) -> tuple[State, list[Pass], Floats]:
         # Forces that fell to nothing against those at the start are rounding, and are not chased for ever.
         gone = (sizes[0] <= 1e-30 * first[0][busy]) & (sizes[1] <= 1e-30 * first[1][busy])
         done = (share[busy] <= SETTLED) | gone
-        done |= (number > 2) & (share[busy] > 0.25 * before) & (share[busy] < 1e-14)
+        done |= (number > 2) & (share[busy] > 0.25 * before) & (share[busy] < STUCK)
         busy, moment, force = busy[~done], moment[:, ~done], force[:, ~done]
         if not len(busy) or number == MOST_PASSES:
             break
-        turned, swayed, rounds, corrections = correct(held, moment, force)
+        leave = np.clip(0.1 * SETTLED / share[busy], LEAVE, 0.01)
+        turned, swayed, rounds, corrections = correct(held, moment, force, leave)
         trace.append(Pass(rounds, corrections, _largest(moment), _largest(force)))
         _apply(held, state, busy, turned, swayed)
     return state, trace, left
@@ -277,14 +290,14 @@ def unbalanced(held: Held, given: Given, state: State, cases: Ints) -> tuple[Flo
     shear = (ends.sum(axis=1) / length[:, None]).max(axis=0, initial=0.0)
     size_force = shear + sum(np.abs(part[:, cases]).max(axis=0, initial=0.0) for part in parts)
     size_moment = ends.max(axis=(0, 1), initial=0.0) + np.abs(given.couple[:, cases]).max(axis=0, initial=0.0)
-    # A moment is the small sum of forces on long arms as much as of moments: where there is none, that is its rounding.
+    # A moment is the small sum of forces on long arms as much as of moments: where there is none, that is rounding.
     return moment, np.asarray(force), size_moment + size_force * length.max(initial=0.0), np.asarray(size_force)
 
 
-def correct(held: Held, moment: Floats, force: Floats) -> tuple[Floats, Floats, int, int]:
-    """Rotations (r, n) and sways (q, n) that take the unbalanced moments and forces; rounds and corrections taken."""
-    distribute = held.distribution.distribute
-    turned, rounds = distribute(moment, LEAVE / 10)
+def correct(held: Held, moment: Floats, force: Floats, leave: Floats) -> tuple[Floats, Floats, int, int]:
+    """Rotations (r, n) and sways (q, n) that take the unbalanced moments and forces, but for the share `leave` (n,)
+    of them; rounds of distribution and sway corrections taken."""
+    turned, rounds = held.distribution.distribute(moment, leave)
     if not force.size:
         return turned, np.zeros_like(force), rounds, 0
     holding = force - held.sway_moment.T @ turned
@@ -292,15 +305,22 @@ def correct(held: Held, moment: Floats, force: Floats) -> tuple[Floats, Floats, 
         unit, factor = held.unit_sways
         swayed = cho_solve(factor, holding)
         return turned + unit @ swayed, swayed, rounds, len(force)
+    joints = len(moment)
+    left = np.vstack([moment - held.distribution.resisting(turned), holding])
+    goal = np.repeat(leave * _together(held, left[:joints], holding), [joints, len(force)], axis=0)
+    more, corrections = conjugate(
+        lambda x: np.asarray(held.released @ x),
+        lambda x: np.vstack([x[:joints] / held.distribution.stiffness[:, None], held.rough.solve(x[joints:])]),
+        left, goal, 4 * len(left) + 100,
+    )  # fmt: skip
+    return turned + more[:joints], more[joints:], rounds, corrections
 
-    def against(sway: Floats) -> Floats:
-        follow = distribute(held.sway_moment @ sway, LEAVE / 100)[0]
-        return np.asarray(held.sway_stiffness @ sway - held.sway_moment.T @ follow)
 
-    goal = LEAVE * np.abs(holding).max(axis=0)
-    swayed, corrections = conjugate(against, held.rough.solve, holding, goal, 4 * len(force) + 100)
-    follow, more = distribute(held.sway_moment @ swayed, LEAVE / 10)
-    return turned - follow, swayed, max(rounds, more), corrections
+def _together(held: Held, moment: Floats, force: Floats) -> Floats:
+    """(2, n) size of unbalanced moments and of holding forces, each counting for the other over a mean length."""
+    arm = float(held.members.table.length.mean())
+    size = np.abs(moment).max(axis=0, initial=0.0) + arm * np.abs(force).max(axis=0, initial=0.0)
+    return np.stack([size, size / arm])
 
 
 def _flat(moment: Floats) -> Floats:

@@ -12,7 +12,7 @@ Translations are along each joint's own axes: those of its support, global where
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any
 
@@ -22,12 +22,12 @@ from scipy.sparse.linalg import splu
 
 from crosscheck.frame.model import HELD, Bools, Floats, Frame, Ints
 
-ROUNDING = 1e-12
+ROUNDING = 1e-14
 """Coefficients of unit direction vectors below this are rounding."""
 TIED = 1e-8
 """A bar whose hold on the translations not yet tied is below this adds nothing: it is redundant."""
-BLOCK = 256
-"""Sways worked out at a time, to bound memory."""
+PIVOT = 0.3
+"""A bar may tie a translation that it holds at least this well against the one it holds best."""
 
 
 @dataclass(frozen=True)
@@ -50,6 +50,12 @@ class Sways:
     bars: Ints
     basic: Ints
     tied: Ints
+    shape: Any
+
+    @cached_property
+    def own(self) -> Ints:
+        """(q,) position in `free` of the translation that is one in each unit sway and nothing in the others."""
+        return np.setdiff1d(np.arange(len(self.free)), self.tied)
 
     @cached_property
     def skeleton(self) -> Any:
@@ -59,27 +65,6 @@ class Sways:
     @cached_property
     def _skeleton(self) -> Any:
         return sparse.csc_array(self.stretch[self.basic][:, self.free[self.tied]])
-
-    @cached_property
-    def own(self) -> Ints:
-        """(q,) position in `free` of the translation that is one in each unit sway and nothing in the others."""
-        return np.setdiff1d(np.arange(len(self.free)), self.tied)
-
-    @cached_property
-    def shape(self) -> Any:
-        count, loose = len(self.free), self.own
-        if not len(self.basic):
-            return sparse.eye_array(count, format="csr")
-        followed = sparse.csc_array(self.stretch[self.basic][:, self.free[loose]])
-        rows, columns, values = [loose], [np.arange(len(loose))], [np.ones(len(loose))]
-        for start in range(0, len(loose), BLOCK):
-            block = self.tie(-followed[:, start : start + BLOCK].toarray())
-            r, c = np.nonzero(np.abs(block) > ROUNDING)
-            rows.append(self.tied[r])
-            columns.append(c + start)
-            values.append(block[r, c])
-        where = (np.concatenate(rows), np.concatenate(columns))
-        return sparse.csr_array((np.concatenate(values), where), shape=(count, len(loose)))
 
     def tie(self, lengths: Floats) -> Floats:
         """(r, n) tied translations that give the skeleton's bars these elongations, no sway moving."""
@@ -115,10 +100,11 @@ def sways(frame: Frame, rigid: Bools) -> Sways:
     held = stiffness == HELD
     free = np.flatnonzero(~held & (np.repeat(joined, 2) | (stiffness > 0)))
     bars = np.flatnonzero(rigid)
-    chosen, tied = _skeleton_of(stretch[bars][:, free])
+    meeting = np.bincount(t.ends[bars].ravel(), minlength=joints)[free // 2]
+    chosen, tied, shape = _skeleton_of(sparse.csr_array(stretch[bars][:, free]), meeting)
     return Sways(
         cos=support.cos, sin=support.sin, stretch=stretch, turn=turn, free=free, held=np.flatnonzero(held),
-        ground=np.where(held, 0.0, stiffness), bars=bars, basic=bars[chosen], tied=tied,
+        ground=np.where(held, 0.0, stiffness), bars=bars, basic=bars[chosen], tied=tied, shape=shape,
     )  # fmt: skip
 
 
@@ -142,48 +128,95 @@ def _per_translation(frame: Frame, direction: Floats, joints: int) -> Any:
     return matrix
 
 
-def _skeleton_of(bars: Any) -> tuple[Ints, Ints]:
-    """Rows of (b, f) `bars` that tie something new, and the translation that each of them ties.
+@dataclass
+class _Tying:
+    """Bars taken one after another. `written`: each tied translation in others, at first in those loose at that time.
 
-    Each translation already tied is kept written in those still loose, so that a new bar is seen at once to tie one
-    of them or none. Of those that it holds about equally well it ties the one that the fewest others depend on.
+    pending: how many bars still to come hold each translation. A translation that no bar to come holds is not looked
+    up again, so what it is written in is left as it stands until the end; the others are kept in loose ones (`users`:
+    who is written in whom).
     """
-    written: dict[int, dict[int, float]] = {}
-    users: dict[int, set[int]] = {}
-    rows, tied = [], []
-    bounds, columns, values = bars.indptr.tolist(), bars.indices.tolist(), bars.data.tolist()
-    for row in range(bars.shape[0]):
+
+    meeting: list[int]
+    pending: list[int]
+    written: dict[int, dict[int, float]] = field(default_factory=dict)
+    users: dict[int, set[int]] = field(default_factory=dict)
+
+    def take(self, bar: dict[int, float]) -> int | None:
+        """The translation that a bar (coefficient by translation) ties, or None where it ties nothing new.
+
+        Of those it holds about equally well it ties one of the joint where the fewest bars meet: the sways are then of
+        the joints where many meet, and stay local (the ridge of a pitched bay follows its eaves, not the other way
+        round). Among equals it ties the one that the fewest others are written in.
+        """
         hold: dict[int, float] = {}
-        for k in range(bounds[row], bounds[row + 1]):
-            for v, share in written.get(columns[k], {columns[k]: 1.0}).items():
-                hold[v] = hold.get(v, 0.0) + values[k] * share
+        for k, value in bar.items():
+            self.pending[k] -= 1
+            for v, share in self.written.get(k, {k: 1.0}).items():
+                hold[v] = hold.get(v, 0.0) + value * share
         best = max((abs(c) for c in hold.values()), default=0.0)
         if best < TIED:
-            continue
-        new = min((v for v, c in hold.items() if abs(c) >= 0.3 * best), key=lambda v: len(users.get(v, ())))
+            return None
+        able = [v for v, c in hold.items() if abs(c) >= PIVOT * best]
+        new = min(able, key=lambda v: (self.meeting[v], len(self.users.get(v, ()))))
         own = hold.pop(new)
-        rows.append(row)
-        tied.append(new)
-        written[new] = {v: -c / own for v, c in hold.items() if abs(c) > ROUNDING}
-        for v in written[new]:
-            users.setdefault(v, set()).add(new)
-        for other in users.pop(new, set()):
-            _rewrite(other, new, written, users)
-    return np.array(rows, dtype=np.int64), np.array(tied, dtype=np.int64)
+        self.written[new] = {v: -c / own for v, c in hold.items() if abs(c) > ROUNDING}
+        self._note(new)
+        for other in self.users.pop(new, set()):
+            if self.pending[other] and new in self.written[other]:
+                self._rewrite(other, new)
+        return new
+
+    def _note(self, tied: int) -> None:
+        if self.pending[tied]:
+            for v in self.written[tied]:
+                self.users.setdefault(v, set()).add(tied)
+
+    def _rewrite(self, other: int, new: int) -> None:
+        """Write the translation `other` in what `new`, which it was written in, now depends on."""
+        self.written[other] = _put_in(self.written[other], new, self.written[new])
+        self._note(other)
+
+    def in_loose_ones(self, order: list[int]) -> dict[int, dict[int, float]]:
+        """Every tied translation in loose ones alone; `order` is that in which they were tied."""
+        for tied in reversed(order):
+            for v in [v for v in self.written[tied] if v in self.written]:
+                self.written[tied] = _put_in(self.written[tied], v, self.written[v])
+        return self.written
 
 
-def _rewrite(other: int, new: int, written: dict[int, dict[int, float]], users: dict[int, set[int]]) -> None:
-    """Write the translation `other`, which depends on `new`, in what `new` now depends on."""
-    terms = written[other]
-    share = terms.pop(new)
-    for v, c in written[new].items():
-        value = terms.get(v, 0.0) + share * c
-        if abs(value) > ROUNDING:
-            terms[v] = value
-            users[v].add(other)
-        else:
-            terms.pop(v, None)
-            users[v].discard(other)
+def _put_in(terms: dict[int, float], gone: int, instead: dict[int, float]) -> dict[int, float]:
+    """A sum of translations with one of them written in others."""
+    new = dict(terms)
+    share = new.pop(gone)
+    for v, c in instead.items():
+        new[v] = new.get(v, 0.0) + share * c
+    return {v: c for v, c in new.items() if abs(c) > ROUNDING}
+
+
+def _skeleton_of(bars: Any, meeting: Ints) -> tuple[Ints, Ints, Any]:
+    """Rows of (b, f) `bars` that tie something new, what translation each ties, and the (f, q) shape of the sways.
+
+    meeting: (f,) how many bars meet at the joint of each translation.
+    """
+    bounds, columns, values = bars.indptr.tolist(), bars.indices.tolist(), bars.data.tolist()
+    tying = _Tying(meeting.tolist(), np.bincount(bars.indices, minlength=bars.shape[1]).tolist())
+    rows, tied = [], []
+    for row in range(bars.shape[0]):
+        span = slice(bounds[row], bounds[row + 1])
+        new = tying.take(dict(zip(columns[span], values[span], strict=True)))
+        if new is not None:
+            rows.append(row)
+            tied.append(new)
+    loose = np.setdiff1d(np.arange(bars.shape[1]), tied)
+    column = {v: k for k, v in enumerate(loose.tolist())}
+    entries = [(v, k, 1.0) for v, k in column.items()]
+    for t, terms in tying.in_loose_ones(tied).items():
+        entries += [(t, column[v], c) for v, c in terms.items()]
+    table = np.array(entries, dtype=float).reshape(-1, 3)
+    where = (table[:, 0].astype(np.int64), table[:, 1].astype(np.int64))
+    shape = sparse.csr_array((table[:, 2], where), shape=(bars.shape[1], len(loose)))
+    return np.array(rows, dtype=np.int64), np.array(tied, dtype=np.int64), shape
 
 
 def _refined(factor: Any, matrix: Any, right: Floats, side: str) -> Floats:

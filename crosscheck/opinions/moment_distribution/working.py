@@ -27,7 +27,8 @@ Row = tuple[str | float | None, ...]
 
 
 def working(frame: Frame, study: Study, name: str) -> list[WorkTable]:
-    """The distribution of one load case or combination, table by table. `study` is taken for likeness with the others.
+    """The distribution of one load case or combination, table by table. `study` is taken for likeness with the
+    others.
 
     Units are the frame's; moments clockwise on the member ends, rotations per radian.
     """
@@ -200,7 +201,7 @@ def _sways(hand: _Hand) -> WorkTable:
     how = (
         "each sway imposed by one unit, its moments distributed, and as many equations solved"
         if count <= FEW
-        else "all sways corrected together by conjugate gradients on the holding forces"
+        else "all sways corrected and all joints released together, round by round, by conjugate gradients"
     )
     remarks = [how, "holding force: what the frame pushes with along the sway while it is held"]
     if count > len(rows):
