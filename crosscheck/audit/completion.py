@@ -135,6 +135,8 @@ class _Completer:
             sparse.diags_array(self.row_scale) @ system.matrix @ sparse.diags_array(column_scale)
         ).tocsr()
         self.entries = Entries.of(self.scaled, system.block)
+        # A block is looked at again only when one of its values has become known since.
+        self.stale = np.ones(int(system.block.max()) + 1, dtype=bool)
 
     def run(self) -> Completed:
         self._by_rule()
@@ -161,9 +163,13 @@ class _Completer:
 
     def _members_then_joints(self) -> bool:
         """One round; True while something was found. Members come first: what they give needs no other result."""
-        unknown = self.entries.where(~self.known)
+        unknown = self.entries.only(self.stale[self.entries.block] & ~self.known[self.entries.column])
         member = unknown.block < self.system.members
-        return self._round(unknown.only(member)) or self._round(unknown.only(~member))
+        for chosen in (unknown.only(member), unknown.only(~member)):
+            self.stale[chosen.block] = False
+            if self._round(chosen):
+                return True
+        return False
 
     def _round(self, unknown: Entries) -> bool:
         """Take from every block what it settles by itself; a value that two blocks settle is taken from the first."""
@@ -193,6 +199,9 @@ class _Completer:
         self.combination = (self.combination + used @ self.combination).tocsr()
         self.known[value] = True
         self.by[value] = by
+        fresh = np.zeros(len(self.known), dtype=bool)
+        fresh[value] = True
+        self.stale[self.entries.where(fresh).block] = True
 
     def _together(self) -> None:
         """What no single joint settles may still be settled by several at once."""
