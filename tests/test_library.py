@@ -6,6 +6,7 @@ import math
 from collections.abc import Callable, Iterator
 from dataclasses import replace
 from functools import cache
+from typing import Any
 
 import numpy as np
 import pytest
@@ -400,6 +401,18 @@ def broken_line_loads(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(assembly, "det_moment", lambda *given: 1.001 * right(*given))
 
 
+def missing_numbers(monkeypatch: pytest.MonkeyPatch) -> None:
+    from anastruct.fem.system import SystemElements
+
+    right = SystemElements.solve
+
+    def solve(self: Any, **given: bool) -> None:
+        right(self, **given)
+        self.system_displacement_vector *= np.nan
+
+    monkeypatch.setattr(SystemElements, "solve", solve)
+
+
 def broken_interface(monkeypatch: pytest.MonkeyPatch) -> None:
     from anastruct.fem.system import SystemElements
 
@@ -413,6 +426,7 @@ def broken_interface(monkeypatch: pytest.MonkeyPatch) -> None:
         (broken_stiffness, "bending and stretching"),
         (broken_line_loads, "line loads"),
         (broken_interface, "bending and stretching"),
+        (missing_numbers, "bending and stretching"),
     ],
 )
 def test_a_library_that_gives_other_values_makes_it_abstain(

@@ -83,9 +83,8 @@ def solve(frame: Frame, mesh: Mesh, force: Floats, line: Floats, EI: Floats, EA:
     force: (nodes, 3) global fx, fy, clockwise couple. line: (places, 2, 2) as in Laid. EI, EA: (m,) of each member.
     Raises Unfit where the library refuses, finds the system singular, or treats a joint as hinged on its own account.
     """
-    feeder = _Feeder(frame, mesh, force, line, EI, EA)
     try:
-        return feeder.vectors()
+        return _Feeder(frame, mesh, force, line, EI, EA).vectors()
     except Unfit:
         raise
     except Exception as error:  # whatever a foreign library may throw: it costs its own word, never ours
@@ -209,8 +208,6 @@ class _Feeder:
                 system.add_support_rotational(ids[j])
             elif turn != FREE:
                 system.add_support_spring(ids[j], 3, turn, roll=True)
-        if system.system_displacement_vector is not None:
-            raise Unfit("it keeps results of an earlier solve")
 
     def _hold_translation(self, j: int) -> None:
         held = self.stiffness[j, :2] == HELD
@@ -254,6 +251,8 @@ class _Feeder:
         turn = self.stiffness[:, 2]
         sprung = np.flatnonzero((turn != FREE) & (turn != HELD))
         taken[sprung, 2] += turn[sprung] * moved[sprung, 2]
+        if not (np.isfinite(pieces).all() and np.isfinite(moved).all()):
+            raise Unfit("it gave values that are no numbers")
         return Vectors(pieces, moved, taken[: self.mesh.nodes])
 
     def _displacements(self) -> Floats:

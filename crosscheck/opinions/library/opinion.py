@@ -15,7 +15,7 @@ from crosscheck.opinions.library.scope import case_reason, frame_reason
 from crosscheck.opinions.library.spans import LibrarySpans
 
 NAME = "library"
-SIZE_LIMIT = 400
+SIZE_LIMIT = 200
 """Members for which it is still asked: its matrix is dense and its time goes with the cube of the joints."""
 
 
