@@ -263,11 +263,11 @@ def _blank(frame: Frame) -> CaseAnswer:
     return CaseAnswer(np.full((m, 2, 3), np.nan), np.full((j, 3), np.nan), np.full((j, 3), np.nan))
 
 
-def read(path: str | Path) -> Frame:
-    """Read a frame file. Raises UnusableInput with every problem found."""
+def read(path: str | Path, variant: str = "") -> Frame:
+    """Read a frame file, or one frame of the family in it. Raises UnusableInput with every problem found."""
     from crosscheck.frame.reader import read_frame
 
-    return read_frame(path)
+    return read_frame(path, variant)
 
 
 

@@ -6,9 +6,10 @@ Exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided (README, Command
 from __future__ import annotations
 
 import argparse
+import contextlib
 import os
 import sys
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from typing import TYPE_CHECKING, Any
 
 from crosscheck import __version__
@@ -77,6 +78,7 @@ def _parser() -> argparse.ArgumentParser:
 
 def _add_common(command: argparse.ArgumentParser) -> None:
     command.add_argument("frame", metavar="FRAME", help="frame file (TOML)")
+    command.add_argument("--variant", metavar="NAME", default="", help="which frame of a [family]")
     command.add_argument("--case", metavar="NAME", help="one load case or combination only")
     command.add_argument("--axial", choices=("elastic", "rigid"), help="instead of what the frame file says")
     command.add_argument("--shear", choices=("rigid", "elastic"), help="instead of what the frame file says")
@@ -112,6 +114,7 @@ def _add_record(commands: Any) -> None:
     command = commands.add_parser("record", help="put today's agreed values on record")
     command.add_argument("frame", metavar="FRAME", nargs="+", help="frame file, or a folder of them")
     command.add_argument("--reason", required=True, metavar="TEXT", help="why these values go on record")
+    command.add_argument("--only", metavar="NAME", help="frames with this in their name (* and ? stand for anything)")
     command.add_argument("--json", metavar="PATH", help="say what was recorded as JSON (- for stdout)")
     command.set_defaults(run=run_record)
 
@@ -208,33 +211,25 @@ def run_record(args: argparse.Namespace) -> int:
     """`crosscheck record FRAME --reason TEXT`: 0 recorded, 1 refused, 2 unusable."""
     from pathlib import Path
 
-    from crosscheck import check
     from crosscheck.problems import Problem, UnusableInput
-    from crosscheck.suite.record import Refused, put_on_record
+    from crosscheck.suite.record import record_all
     from crosscheck.suite.regress import chosen
 
-    frames = chosen([Path(p) for p in args.frame])
+    frames = chosen([Path(p) for p in args.frame], args.only)
     if not frames:
         raise UnusableInput([Problem(", ".join(args.frame), None, "", "holds no frame file", "name a frame file")])
-    rows, status = [], 0
-    for frame in frames:
-        try:
-            target = put_on_record(frame, check.ask(check.read(frame)), args.reason)
-            rows.append({"file": frame.as_posix(), "recorded": target.as_posix(), "why": None})
-        except Refused as refusal:
-            rows.append({"file": frame.as_posix(), "recorded": None, "why": str(refusal)})
-            status = max(status, 1)
-        except UnusableInput as error:
-            rows.append({"file": frame.as_posix(), "recorded": None, "why": "; ".join(map(str, error.problems))})
-            status = UNUSABLE
+    with _progress(len(frames)) as advance:
+        outcomes = record_all(frames, args.reason, advance)
     if args.json:
-        _write_json(args.json, {"format": "crosscheck/1", "frames": rows})
-    for row in rows:
-        if row["recorded"] is None:
-            print(f"crosscheck: {row['why']}", file=sys.stderr)
+        from crosscheck.report.suite import record_document
+
+        _write_json(args.json, record_document(outcomes))
+    for o in outcomes:
+        if o.status:
+            print("\n".join(f"crosscheck: {line}" for line in o.says), file=sys.stderr)
         elif args.json != "-":
-            print(f"on record: {row['recorded']}")
-    return status
+            print(f"on record: {o.standard.record.as_posix()}")
+    return max(o.status for o in outcomes)
 
 
 def run_regress(args: argparse.Namespace) -> int:
@@ -246,7 +241,11 @@ def run_regress(args: argparse.Namespace) -> int:
     roots = [Path(p) for p in args.path] or [Path()]
     frames = regress.chosen(roots, args.only, args.changed_since)
     other = _folder(args.against) if args.against else None
-    outcome = _with_progress(frames, roots) if other is None else regress.against(frames, roots, other)
+    if other is not None:
+        outcome = regress.against(frames, roots, other)
+    else:
+        with _progress(len(frames)) as advance:
+            outcome = regress.run(frames, roots, advance)
     if args.junit:
         from crosscheck.files import replace_text
         from crosscheck.report.suite import junit
@@ -277,18 +276,18 @@ def _folder(path: str) -> Any:
     return Path(path)
 
 
-def _with_progress(frames: Sequence[Any], roots: Sequence[Any]) -> Any:
-    """Run the set, with a progress bar where standard error is a terminal."""
-    from crosscheck.suite import regress
-
-    if not sys.stderr.isatty() or len(frames) < 4:
-        return regress.run(frames, roots)
+@contextlib.contextmanager
+def _progress(count: int) -> Iterator[Callable[[Any], None]]:
+    """What to call when a frame is done: a progress bar where standard error is a terminal."""
+    if not sys.stderr.isatty() or count < 4:
+        yield lambda _: None
+        return
     from rich.console import Console
     from rich.progress import Progress
 
     with Progress(console=Console(stderr=True), transient=True) as bar:
-        task = bar.add_task("frames", total=len(frames))
-        return regress.run(frames, roots, lambda outcome: bar.advance(task))
+        task = bar.add_task("frames", total=count)
+        yield lambda _: bar.advance(task)
 
 
 def run_draft(args: argparse.Namespace) -> int:
@@ -322,7 +321,7 @@ def run_draft(args: argparse.Namespace) -> int:
 def _frame(args: argparse.Namespace) -> Any:
     from crosscheck import check
 
-    frame = check.read(args.frame)
+    frame = check.read(args.frame, args.variant)
     if args.axial is None and args.shear is None and args.order is None:
         return frame
     from crosscheck.frame.needs import with_analysis

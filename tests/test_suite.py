@@ -14,7 +14,7 @@ import pytest
 
 from crosscheck import check
 from crosscheck.cli import main
-from crosscheck.suite.beside import claims_beside, expectation
+from crosscheck.suite.beside import Standard, expectation
 from crosscheck.suite.record import Refused, put_on_record, read_record
 from crosscheck.suite.regress import check_frame, run
 from tests.sheds import SHED, claim_text, write_shed
@@ -39,7 +39,7 @@ def alter(path: Path, row: str, factor: float) -> None:
 
 def test_recorded_frame_holds(tmp_path: Path) -> None:
     path = recorded(tmp_path)
-    outcome = check_frame(str(path))
+    outcome = check_frame(Standard(path))
     assert outcome.state == "held"
     assert outcome.compared == 3 * (6 * 3 + 4 * 3 + 2 * 3)  # cases and combination, each end, joint and support value
 
@@ -48,7 +48,7 @@ def test_recorded_frame_holds(tmp_path: Path) -> None:
 def test_drift_of_a_recorded_value(tmp_path: Path, factor: float, state: str) -> None:
     path = recorded(tmp_path)
     alter(tmp_path / "shed.record.toml", "A-B at A", factor)
-    outcome = check_frame(str(path))
+    outcome = check_frame(Standard(path))
     assert outcome.state == state
     if state == "moved":
         (moved,) = outcome.differences
@@ -68,7 +68,7 @@ def test_states_are_told_apart(tmp_path: Path) -> None:
     claim = tmp_path / "wrong.claim.txt"
     claim.write_text(claim_text(wrong).replace("A-B,A,-", "A-B,A,-1"), encoding="utf-8")
     frames = sorted(p for p in tmp_path.glob("*.toml") if ".record." not in p.name)
-    states = {Path(f.file).stem: f.state for f in run(frames, [tmp_path]).frames}
+    states = {f.standard.stem: f.state for f in run([Standard(p) for p in frames], [tmp_path]).frames}
     assert states == {
         "held": "held", "changed": "record older than the frame", "gone": "claim deleted", "fresh": "never on record",
         "broken": "unreadable", "wrong": "disagree",
@@ -136,7 +136,7 @@ def test_refused_when_opinions_disagree(tmp_path: Path, monkeypatch: pytest.Monk
 
     monkeypatch.setattr(moment_distribution, "opine", wrong)
     with pytest.raises(Refused, match="disagree"):
-        put_on_record(path, check.ask(check.read(path)), "no")
+        put_on_record(Standard(path), check.ask(check.read(path)), "no")
     assert main(["record", str(path), "--reason", "no"]) == 1
     assert not (tmp_path / "shed.record.toml").exists()
 
@@ -175,9 +175,9 @@ def test_accepted_differences(tmp_path: Path, size: float, until: str, state: st
     row = next(line for line in text.splitlines() if line.startswith("A-B,A,"))
     value = row.rsplit(",", 1)[1]
     claim.write_text(text.replace(row, row.replace(value, f"{float(value) * 1.1:.5g}")), encoding="utf-8")
-    assert check_frame(str(path)).state == "disagree"
+    assert check_frame(Standard(path)).state == "disagree"
     (tmp_path / "shed.accepted.toml").write_text(ACCEPTED.format(size=size, until=until), encoding="utf-8")
-    outcome = check_frame(str(path))
+    outcome = check_frame(Standard(path))
     assert outcome.state == state
     assert len(outcome.accepted) == (1 if state == "held" else 0)
 
@@ -185,7 +185,7 @@ def test_accepted_differences(tmp_path: Path, size: float, until: str, state: st
 def test_bad_accepted_file_is_said(tmp_path: Path) -> None:
     path = recorded(tmp_path)
     (tmp_path / "shed.accepted.toml").write_text("[[accepted]]\ncase = 'dead'\nquantty = 'x'\n", encoding="utf-8")
-    outcome = check_frame(str(path), datetime.date(2026, 12, 1))
+    outcome = check_frame(Standard(path), datetime.date(2026, 12, 1))
     assert outcome.state == "unreadable"
     assert "until" in outcome.says or "quantity" in outcome.says
 
@@ -211,7 +211,7 @@ def test_changed_since(tmp_path: Path) -> None:
     (tmp_path / "new.claim.txt").write_text(claim_text(tmp_path / "new.toml", digits=4), encoding="utf-8")
     from crosscheck.suite.regress import chosen
 
-    assert [p.name for p in chosen([tmp_path], since="HEAD")] == ["new.toml"]
+    assert [s.path.name for s in chosen([tmp_path], since="HEAD")] == ["new.toml"]
     assert main(["regress", str(tmp_path), "--changed-since", "no-such-revision"]) == 2
 
 
@@ -220,7 +220,7 @@ def test_claims_beside_and_expectations(tmp_path: Path) -> None:
     write_shed(tmp_path, "shed.long")
     (tmp_path / "shed.two.claim.csv").write_text("# expect: disagree, end release rafter\n", encoding="utf-8")
     (tmp_path / "shed.three.claim.txt").write_text("# expect: disagree\n", encoding="utf-8")
-    names = [c.name for c in claims_beside(path)]
+    names = [c.name for c in Standard(path).claims()]
     assert names == ["shed.claim.txt", "shed.three.claim.txt", "shed.two.claim.csv"]
     wanted = expectation(tmp_path / "shed.two.claim.csv")
     assert wanted is not None
@@ -229,17 +229,17 @@ def test_claims_beside_and_expectations(tmp_path: Path) -> None:
 
 
 def test_crash_costs_that_frame_only(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    recorded(tmp_path)
+    path = recorded(tmp_path)
     recorded(tmp_path, "bad")
     honest = check.read
 
-    def crashing(path: Path) -> object:
+    def crashing(path: Path, variant: str) -> object:
         if "bad" in str(path):
             raise ZeroDivisionError("planted")
-        return honest(path)
+        return honest(path, variant)
 
     monkeypatch.setattr(check, "read", crashing)
-    states = {Path(f.file).stem: f.state for f in run([tmp_path / "bad.toml", tmp_path / "shed.toml"], [tmp_path]).frames}
+    states = {f.standard.stem: f.state for f in run([Standard(tmp_path / "bad.toml"), Standard(path)], [tmp_path]).frames}
     assert states == {"bad": "crashed", "shed": "held"}
 
 

@@ -13,6 +13,9 @@ from crosscheck.report.document import FORMAT, difference_part
 from crosscheck.report.terminal import MOST_DIFFERENCES, cautions, heading, more, table
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from crosscheck.suite.record import Recorded
     from crosscheck.suite.regress import FrameOutcome, SuiteOutcome
 
 
@@ -22,13 +25,13 @@ def suite_report(outcome: SuiteOutcome) -> RenderableType:
         return Text(f"No frame file found in {', '.join(outcome.looked_in) or 'what was named'}.", style="bold")
     counts = ", ".join(f"{n:,} {state}" for state, n in outcome.counts.items())
     parts: list[RenderableType] = [Text(f"{words.counted(len(outcome.frames), 'frame')}: {counts}", style="bold")]
-    rows = [(f.file, f.state, f.says) for f in outcome.frames if f.state != "held"]
+    rows = [(f.label, f.state, f.says) for f in outcome.frames if f.state != "held"]
     if rows:
         parts += [heading("Not held"), table([("frame", "left"), ("state", "left"), ("why", "left")], rows)]
     for frame in outcome.frames:
         if frame.state != "held" and frame.differences:
             parts.append(frame_report(frame))
-    lived_with = [(f.file, d, e) for f in outcome.frames for d, e in f.accepted]
+    lived_with = [(f.label, d, e) for f in outcome.frames for d, e in f.accepted]
     if lived_with:
         parts += [heading("Accepted differences"), table(_ACCEPTED, [_accepted_row(*row) for row in lived_with])]
     parts.append(cautions())
@@ -46,7 +49,7 @@ def _accepted_row(file: str, d: Any, e: Any) -> tuple[str, ...]:
 
 def frame_report(frame: FrameOutcome) -> RenderableType:
     """One frame that did not hold: why, and the worst of its differences."""
-    parts: list[RenderableType] = [heading(f"{frame.file}: {frame.state}"), Text(f"  {frame.says}")]
+    parts: list[RenderableType] = [heading(f"{frame.label}: {frame.state}"), Text(f"  {frame.says}")]
     rows = [
         (d.place.case, words.place(d.place), d.place.quantity,
          "; ".join(f"{name} {words.number(v)}" for name, v in d.values.items()),
@@ -66,7 +69,8 @@ def suite_document(outcome: SuiteOutcome) -> dict[str, Any]:
         "format": FORMAT,
         "frames": [
             {
-                "file": f.file,
+                "file": f.standard.path.as_posix(),
+                "variant": f.standard.variant or None,
                 "verdict": f.state,
                 "says": f.says,
                 "disagreements": [difference_part(d) for d in f.differences],
@@ -83,6 +87,22 @@ def suite_document(outcome: SuiteOutcome) -> dict[str, Any]:
     }
 
 
+def record_document(outcomes: Sequence[Recorded]) -> dict[str, Any]:
+    """The document of `crosscheck record`."""
+    return {
+        "format": FORMAT,
+        "frames": [
+            {
+                "file": o.standard.path.as_posix(),
+                "variant": o.standard.variant or None,
+                "recorded": None if o.status else o.standard.record.as_posix(),
+                "why": "; ".join(o.says) or None,
+            }
+            for o in outcomes
+        ],
+    }
+
+
 def junit(outcome: SuiteOutcome) -> str:
     """The outcome as JUnit XML, one test case a frame."""
     failed = [f for f in outcome.frames if f.state != "held"]
@@ -92,7 +112,7 @@ def junit(outcome: SuiteOutcome) -> str:
         failures=str(len(failed) - len(crashed)), skipped="0",
     )  # fmt: skip
     for f in outcome.frames:
-        case = ElementTree.SubElement(suite, "testcase", classname="crosscheck", name=f.file)
+        case = ElementTree.SubElement(suite, "testcase", classname="crosscheck", name=f.label)
         if f.state != "held":
             kind = "error" if f in crashed else "failure"
             ElementTree.SubElement(case, kind, type=f.state, message=_clean(f.says)).text = _clean(_plain(f))

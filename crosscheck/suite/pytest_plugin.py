@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, Any
 import pytest
 
 if TYPE_CHECKING:
+    from crosscheck.suite.beside import Standard
     from crosscheck.suite.regress import FrameOutcome
 
 
@@ -38,39 +39,46 @@ def _looks_like_a_frame(path: Path) -> bool:
 
 
 class FrameFile(pytest.File):
-    """One frame file; checked once, however many of its items run."""
+    """One frame file; each frame in it is checked once, however many of its items run."""
 
-    _outcome: FrameOutcome | None = None
+    _latest: FrameOutcome | None = None
 
     def collect(self) -> Iterator[pytest.Item]:
-        from crosscheck.suite.beside import claims_beside
+        from crosscheck.suite.beside import standards
 
-        yield FrameItem.from_parent(self, name="record")
-        for claim in claims_beside(self.path):
-            yield FrameItem.from_parent(self, name=claim.name)
+        for standard in standards(self.path):
+            name = f"{standard.variant} record" if standard.variant else "record"
+            yield FrameItem.from_parent(self, name=name, standard=standard)
+            for claim in standard.claims():
+                yield FrameItem.from_parent(self, name=claim.name, standard=standard, claim=claim.name)
 
-    def outcome(self) -> FrameOutcome:
-        if self._outcome is None:
+    def outcome(self, standard: Standard) -> FrameOutcome:
+        # The latest alone is kept: items of one frame run one after the other, and a family may be large.
+        if self._latest is None or self._latest.standard != standard:
             from crosscheck.suite.regress import check_frame
 
-            self._outcome = check_frame(self.path.as_posix())
-        return self._outcome
+            self._latest = check_frame(standard)
+        return self._latest
 
 
 class FrameItem(pytest.Item):
-    """The frame with its values on record, or one of its claims."""
+    """A frame with its values on record, or one of its claims."""
+
+    def __init__(self, *, standard: Standard, claim: str = "", **rest: Any) -> None:
+        super().__init__(**rest)
+        self.standard, self.claim = standard, claim
 
     def runtest(self) -> None:
         assert isinstance(self.parent, FrameFile)
-        outcome = self.parent.outcome()
-        if self.name == "record":
+        outcome = self.parent.outcome(self.standard)
+        if not self.claim:
             if outcome.state != "held" and not self._claim_failed_alone(outcome):
                 raise NotHeld(_told(outcome))
             return
-        claim = next((c for c in outcome.claims if c.file == self.name), None)
+        claim = next((c for c in outcome.claims if c.file == self.claim), None)
         if claim is None or not claim.held:
             says = claim.says if claim is not None else outcome.says
-            raise NotHeld(f"{self.name}: {says}\n{_told(outcome)}")
+            raise NotHeld(f"{self.claim}: {says}\n{_told(outcome)}")
 
     @staticmethod
     def _claim_failed_alone(outcome: FrameOutcome) -> bool:

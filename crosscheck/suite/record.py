@@ -2,14 +2,12 @@
 
 from __future__ import annotations
 
-import contextlib
 import datetime
 import json
-import os
-import time
 import tomllib
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import partial
 from importlib.metadata import version
 from pathlib import Path
 from typing import Any
@@ -18,14 +16,15 @@ import numpy as np
 
 from crosscheck import __version__
 from crosscheck.answer import CaseAnswer
-from crosscheck.check import Opinions
+from crosscheck.check import Opinions, ask, read
 from crosscheck.compare.differences import Difference, Place, worst_first
 from crosscheck.compare.opinions import END_QUANTITIES, JOINT_QUANTITIES, REACTION_QUANTITIES, closeness
 from crosscheck.compare.tolerance import RECORD, Scales, allowed
-from crosscheck.files import replace_text
+from crosscheck.files import alone, replace_text
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.problems import Problem, UnusableInput
-from crosscheck.suite.beside import claims_beside, record_path
+from crosscheck.suite.beside import Standard
+from crosscheck.suite.spread import spread
 
 FORMAT = "crosscheck record/1"
 DIGITS = 10
@@ -34,8 +33,6 @@ NOISE = 1e-11
 """Of the case's scale of its kind: rounding, put on record as zero."""
 UNDETERMINED = "undetermined"
 QUANTITIES = {"ends": END_QUANTITIES, "joints": JOINT_QUANTITIES, "reactions": REACTION_QUANTITIES}
-PATIENCE = 30.0
-"""Seconds to wait for another process that writes the same record; a lock older than this was left by one that died."""
 
 Rows = Mapping[str, tuple[float | None, ...]]
 
@@ -63,7 +60,7 @@ class Record:
 # --- writing
 
 
-def put_on_record(path: Path, result: Opinions, reason: str, today: datetime.date | None = None) -> Path:
+def put_on_record(standard: Standard, result: Opinions, reason: str, today: datetime.date | None = None) -> Path:
     """Put the agreed values of a frame on record with the reason; earlier values move into its history.
 
     Raises Refused where the opinions do not agree, and UnusableInput where the record cannot be read or written.
@@ -71,14 +68,15 @@ def put_on_record(path: Path, result: Opinions, reason: str, today: datetime.dat
     if not reason.strip():
         raise UnusableInput([Problem("", None, "--reason", "is empty", "say why these values go on record")])
     if result.verdict != "agree":
-        raise Refused(f"{path}: the opinions do not agree ({result.verdict}), so nothing goes on record")
-    target = record_path(path)
-    with _alone(target):
+        raise Refused(f"{standard.label}: the opinions do not agree ({result.verdict}), so nothing goes on record")
+    target = standard.record
+    with alone(target):
         old = read_record(target) if target.exists() else None
-        beside = [c.name for c in claims_beside(path)]
+        beside = [c.name for c in standard.claims()]
         entry = _entry(result, reason, today or datetime.date.today(), beside)
         history = () if old is None else (old.now, *old.before)
-        replace_text(target, as_text(path.name, Record(entry, history)))
+        name = f"{standard.path.name} [{standard.variant}]" if standard.variant else standard.path.name
+        replace_text(target, as_text(name, Record(entry, history)))
     return target
 
 
@@ -90,7 +88,7 @@ def _entry(result: Opinions, reason: str, today: datetime.date, claims: list[str
         "date": today,
         "crosscheck": __version__,
         "libraries": {name: version(name) for name in ("numpy", "scipy", "anastruct")},
-        "frame_sha256": frame.sha256,
+        "frame_sha256": frame.content,
         "units": f"{frame.units.force} {frame.units.length}",
         "idealisation": {"axial": a.axial, "shear": a.shear, "order": a.order},
         "claims": claims,
@@ -175,34 +173,40 @@ def _number(value: float | None) -> str:
     return text if any(c in text for c in ".en") else text + ".0"
 
 
-@contextlib.contextmanager
-def _alone(target: Path) -> Iterator[None]:
-    """Holds a lock file while the record is read and replaced, so that two processes at once lose nothing."""
-    lock = target.with_name(f".{target.name}.lock")
-    deadline = time.monotonic() + PATIENCE
-    while True:
-        try:
-            os.close(os.open(lock, os.O_CREAT | os.O_EXCL | os.O_WRONLY))
-            break
-        except FileExistsError:
-            _drop_stale(lock)
-            if time.monotonic() > deadline:
-                says, advice = "another process is writing it", f"remove {lock.name} if no other crosscheck runs"
-                raise UnusableInput([Problem(str(target), None, "", says, advice)]) from None
-            time.sleep(0.02)
-        except OSError as error:
-            says = f"cannot be written ({error.strerror or error})"
-            raise UnusableInput([Problem(str(target), None, "", says)]) from None
+@dataclass(frozen=True, slots=True)
+class Recorded:
+    """What came of putting one frame on record. status: 0 recorded, 1 refused, 2 unusable. says: why, a line each."""
+
+    standard: Standard
+    status: int
+    says: tuple[str, ...] = ()
+
+
+def record_all(
+    frames: Sequence[Standard], reason: str, progress: Callable[[Recorded], None], workers: int | None = None
+) -> list[Recorded]:
+    """Put every frame on record with one reason, on all cores; in the order of the frames."""
+    outcomes = {}
+    for outcome in spread(partial(_record_one, reason=reason), frames, _died, workers):
+        outcomes[outcome.standard] = outcome
+        progress(outcome)
+    return [outcomes[standard] for standard in frames]
+
+
+def _record_one(standard: Standard, reason: str) -> Recorded:
     try:
-        yield
-    finally:
-        lock.unlink(missing_ok=True)
+        put_on_record(standard, ask(read(standard.path, standard.variant)), reason)
+    except Refused as refusal:
+        return Recorded(standard, 1, (str(refusal),))
+    except UnusableInput as error:
+        return Recorded(standard, 2, tuple(map(str, error.problems)))
+    except Exception as error:  # noqa: BLE001 - one frame's crash must not cost the others
+        return Recorded(standard, 2, (f"{standard.label}: {type(error).__name__}: {error}; please report this",))
+    return Recorded(standard, 0)
 
 
-def _drop_stale(lock: Path) -> None:
-    with contextlib.suppress(OSError):
-        if time.time() - lock.stat().st_mtime > PATIENCE:
-            lock.unlink()
+def _died(standard: Standard) -> Recorded:
+    return Recorded(standard, 2, (f"{standard.label}: the process that checked it died",))
 
 
 # --- reading

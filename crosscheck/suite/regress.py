@@ -4,30 +4,20 @@ from __future__ import annotations
 
 import datetime
 import fnmatch
-import os
 import subprocess
 from collections import Counter
-from collections.abc import Callable, Iterator, Sequence
-from concurrent.futures import ProcessPoolExecutor, as_completed
-from concurrent.futures.process import BrokenProcessPool
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 
 from crosscheck import check
 from crosscheck.compare.differences import Difference
+from crosscheck.frame.reader import sources
 from crosscheck.problems import Problem, UnusableInput
 from crosscheck.suite.accepted import Accepted, read_accepted
-from crosscheck.suite.beside import (
-    Expectation,
-    accepted_path,
-    claim_name,
-    claims_beside,
-    expectation,
-    frames_below,
-    record_path,
-    stem,
-)
-from crosscheck.suite.record import against_record, read_record
+from crosscheck.suite.beside import Expectation, Standard, expectation, frames_below, standards
+from crosscheck.suite.record import against_record, compare_tables, read_record, table_scales
+from crosscheck.suite.spread import spread
 
 STATES = (
     "held", "moved", "disagree", "undecided", "claim deleted", "record older than the frame", "never on record",
@@ -50,13 +40,17 @@ class ClaimOutcome:
 class FrameOutcome:
     """One frame. state: of STATES. says: why. differences: what moved or disagrees. accepted: with their entries."""
 
-    file: str
+    standard: Standard
     state: str
     says: str = ""
     differences: tuple[Difference, ...] = ()
     claims: tuple[ClaimOutcome, ...] = ()
     accepted: tuple[tuple[Difference, Accepted], ...] = ()
     compared: int = 0
+
+    @property
+    def label(self) -> str:
+        return self.standard.label
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,39 +76,37 @@ class SuiteOutcome:
 # --- one frame
 
 
-def check_frame(path: str, today: datetime.date | None = None) -> FrameOutcome:
-    """The outcome of one frame file; never raises."""
+def check_frame(standard: Standard, today: datetime.date | None = None) -> FrameOutcome:
+    """The outcome of one standard frame; never raises."""
     try:
-        return _check(Path(path), today or datetime.date.today())
+        return _check(standard, today or datetime.date.today())
     except UnusableInput as error:
-        return FrameOutcome(path, "unreadable", "; ".join(str(p) for p in error.problems[:3]))
+        return FrameOutcome(standard, "unreadable", "; ".join(str(p) for p in error.problems[:3]))
     except Exception as error:  # noqa: BLE001 - one frame's crash must not cost the others
-        return FrameOutcome(path, "crashed", f"{type(error).__name__}: {error}")
+        return FrameOutcome(standard, "crashed", f"{type(error).__name__}: {error}")
 
 
-def _check(path: Path, today: datetime.date) -> FrameOutcome:
-    frame = check.read(path)
+def _check(standard: Standard, today: datetime.date) -> FrameOutcome:
+    frame = check.read(standard.path, standard.variant)
     result = check.ask(frame)
-    file = path.as_posix()
-    claims, found, accepted = _claims(path, result, today)
+    claims, found, accepted = _claims(standard, result, today)
     if result.verdict != "agree":
         differences = tuple(d for j in result.judgements.values() for d in j.differences)
         state = "disagree" if result.verdict == "disagree" else "undecided"
-        return FrameOutcome(file, state, "the opinions do not agree with each other", differences, claims)
+        return FrameOutcome(standard, state, "the opinions do not agree with each other", differences, claims)
     bad = [c for c in claims if not c.held]
     if bad:
         state = "undecided" if all(c.verdict == "undecided" for c in bad) else "disagree"
         says = "; ".join(f"{c.file}: {c.says}" for c in bad)
-        return FrameOutcome(file, state, says, tuple(found), claims, accepted)
-    target = record_path(path)
-    if not target.exists():
-        return FrameOutcome(file, "never on record", "no values on record", (), claims, accepted)
-    record = read_record(target)
+        return FrameOutcome(standard, state, says, tuple(found), claims, accepted)
+    if not standard.record.exists():
+        return FrameOutcome(standard, "never on record", "no values on record", (), claims, accepted)
+    record = read_record(standard.record)
     moved, compared = against_record(result, record)
-    gone = [c for c in record.now.facts.get("claims", []) if not path.with_name(c).exists()]
-    older = record.now.facts["frame_sha256"] != frame.sha256
+    gone = [c for c in record.now.facts.get("claims", []) if not standard.path.with_name(c).exists()]
+    older = record.now.facts["frame_sha256"] != frame.content
     state, says = _state(bool(moved), older, gone, len(moved), compared)
-    return FrameOutcome(file, state, says, tuple(moved), claims, accepted, compared)
+    return FrameOutcome(standard, state, says, tuple(moved), claims, accepted, compared)
 
 
 def _state(moved: bool, older: bool, gone: Sequence[str], count: int, compared: int) -> tuple[str, str]:
@@ -131,14 +123,14 @@ def _state(moved: bool, older: bool, gone: Sequence[str], count: int, compared: 
 
 
 def _claims(
-    path: Path, result: check.Opinions, today: datetime.date
+    standard: Standard, result: check.Opinions, today: datetime.date
 ) -> tuple[tuple[ClaimOutcome, ...], list[Difference], tuple[tuple[Difference, Accepted], ...]]:
     """Every claim beside the frame; the differences of those that did not hold; and what was accepted."""
-    entries = read_accepted(accepted_path(path))
+    entries = read_accepted(standard.accepted)
     outcomes, found = [], []
     accepted: list[tuple[Difference, Accepted]] = []
-    for claim in claims_beside(path):
-        outcome, differences, lived_with = _claim(path, claim, result, entries, today)
+    for claim in standard.claims():
+        outcome, differences, lived_with = _claim(standard, claim, result, entries, today)
         outcomes.append(outcome)
         accepted += lived_with
         if not outcome.held:
@@ -147,21 +139,24 @@ def _claims(
 
 
 def _claim(
-    path: Path, claim: Path, result: check.Opinions, entries: tuple[Accepted, ...], today: datetime.date
+    standard: Standard, claim: Path, result: check.Opinions, entries: tuple[Accepted, ...], today: datetime.date
 ) -> tuple[ClaimOutcome, list[Difference], list[tuple[Difference, Accepted]]]:
     from crosscheck.claims import FrameNames, ReadingOptions, read_claim
 
+    expected = expectation(claim)
     try:
         reading = read_claim(str(claim), FrameNames.of(result.frame), ReadingOptions())
-        verified = check.verify(result.frame, reading, opinions=result)
+        # Nobody asks here what would explain a difference, unless the claim says what should.
+        named = expected is not None and bool(expected.kind)
+        verified = check.verify(result.frame, reading, opinions=result, suspects=named)
     except UnusableInput as error:
         says = f"cannot be read: {error.problems[0]}"
         return ClaimOutcome(claim.name, False, "unreadable", says), [], []
     differences = [d for c in verified.cases for d in c.differences]
-    name = claim_name(path, claim)
+    name = standard.claim_name(claim)
     lived_with = [(d, e) for d in differences for e in entries if e.covers(name, d, today)]
     left = [d for d in differences if not any(d is known for known, _ in lived_with)]
-    held, says = _held(verified, expectation(claim), left, len(lived_with))
+    held, says = _held(verified, expected, left, len(lived_with))
     return ClaimOutcome(claim.name, held, verified.verdict, says), left, lived_with
 
 
@@ -175,21 +170,16 @@ def _held(
     if verified.verdict != "disagree":
         return False, f"{verified.verdict}, expected to disagree"
     first = verified.suspects[0] if verified.suspects else None
-    if expected.kind and (first is None or not _as_expected(first, expected)):
-        said = f"{first.kind} {' '.join(first.where)}".strip() if first else "none"
-        return False, f"disagrees, but the first suspect is {said} and not {expected.kind} {expected.where}".strip()
+    if expected.kind and (first is None or not expected.meets(first.kind, first.where)):
+        said = f"{first.kind} {', '.join(first.where)}".strip() if first else "none"
+        return False, f"disagrees, but the first suspect is {said} and not {expected}"
     return True, "disagrees as expected"
-
-
-def _as_expected(suspect: object, expected: Expectation) -> bool:
-    kind, where = getattr(suspect, "kind", ""), getattr(suspect, "where", ())
-    return kind == expected.kind and (not expected.where or set(expected.where.replace(",", " ").split()) <= set(where))
 
 
 # --- a whole set
 
 
-def chosen(paths: Sequence[Path], only: str | None = None, since: str | None = None) -> list[Path]:
+def chosen(paths: Sequence[Path], only: str | None = None, since: str | None = None) -> list[Standard]:
     """Frames below the paths, of those named like `only`, and changed since the git revision `since`.
 
     Raises UnusableInput for a path that does not exist or a revision that git does not know.
@@ -198,25 +188,47 @@ def chosen(paths: Sequence[Path], only: str | None = None, since: str | None = N
     if missing:
         advice = "name a folder or a frame file"
         raise UnusableInput(Problem(str(p), None, "", "does not exist", advice) for p in missing)
-    frames = list(frames_below(paths))
+    frames = [s for path in frames_below(paths) for s in standards(path)]
     if only is not None:
-        frames = [f for f in frames if fnmatch.fnmatch(stem(f), only) or only in stem(f)]
-    if since is not None:
-        frames = [f for f in frames if _changed(f, since)]
+        frames = [f for f in frames if fnmatch.fnmatch(f.stem, only) or only in f.stem]
+    if since is not None and frames:
+        changed = _Changes(since)
+        frames = [f for f in frames if changed.touch(f)]
     return frames
 
 
-def _changed(frame: Path, revision: str) -> bool:
-    """Whether the frame or what lies beside it differs from the revision, or is not known to git."""
-    names = [f"{stem(frame)}.toml", f"{stem(frame)}.*"]
-    said = [_git(frame.parent, ["diff", "--name-only", revision, "--", *names])]
-    said.append(_git(frame.parent, ["ls-files", "--others", "--exclude-standard", "--", *names]))
-    return any(text.strip() for text in said)
+class _Changes:
+    """What differs from a git revision or is not known to git; asked once a folder."""
+
+    def __init__(self, revision: str) -> None:
+        self.revision = revision
+        self._below: dict[Path, frozenset[Path]] = {}
+
+    def touch(self, standard: Standard) -> bool:
+        """Whether the frame file, a table it draws on, or what lies beside it has changed."""
+        folder = standard.path.parent.resolve()
+        if folder not in self._below:
+            self._below[folder] = self._ask(folder)
+        changed = self._below[folder]
+        if any(source.resolve() in changed for source in sources(standard.path)):
+            return True
+        beside = {folder / p.name for p in (standard.record, standard.accepted, *standard.claims())}
+        # A claim or record that is gone has changed too, and only git still knows its name.
+        start = f"{standard.stem}."
+        gone = (p for p in changed if p.parent == folder and p.name.startswith(start) and not p.exists())
+        return bool(beside & changed) or any(gone)
+
+    def _ask(self, folder: Path) -> frozenset[Path]:
+        top = Path(_git(folder, ["rev-parse", "--show-toplevel"]).strip())
+        names = _git(folder, ["diff", "--name-only", "-z", self.revision, "--", "."])
+        fresh = _git(folder, ["ls-files", "--others", "--exclude-standard", "--full-name", "-z", "--", "."])
+        return frozenset((top / name).resolve() for name in (names + fresh).split("\0") if name)
 
 
 def _git(folder: Path, arguments: list[str]) -> str:
     try:
-        done = subprocess.run(["git", "-C", str(folder), *arguments], capture_output=True, text=True, check=False)
+        words = ["git", "-C", str(folder), *arguments]
+        done = subprocess.run(words, capture_output=True, text=True, encoding="utf-8", errors="replace", check=False)
     except OSError as error:
         raise UnusableInput([Problem("", None, "--changed-since", f"git cannot be run ({error})")]) from None
     if done.returncode != 0:
@@ -226,80 +238,52 @@ def _git(folder: Path, arguments: list[str]) -> str:
 
 
 def run(
-    frames: Sequence[Path], looked_in: Sequence[Path], progress: Callable[[FrameOutcome], None] | None = None,
+    frames: Sequence[Standard], looked_in: Sequence[Path], progress: Callable[[FrameOutcome], None] | None = None,
     workers: int | None = None,
 ) -> SuiteOutcome:  # fmt: skip
     """Check the frames on all cores."""
-    paths = [f.as_posix() for f in frames]
     outcomes: list[FrameOutcome] = []
-    for outcome in _outcomes(paths, workers or min(os.cpu_count() or 1, len(paths))):
+    for outcome in spread(check_frame, frames, _died, workers):
         outcomes.append(outcome)
         if progress is not None:
             progress(outcome)
-    order = {p: k for k, p in enumerate(paths)}
-    outcomes.sort(key=lambda o: order[o.file])
+    order = {standard: k for k, standard in enumerate(frames)}
+    outcomes.sort(key=lambda o: order[o.standard])
     return SuiteOutcome(tuple(outcomes), tuple(p.as_posix() for p in looked_in))
 
 
-def _outcomes(paths: list[str], workers: int) -> Iterator[FrameOutcome]:
-    if workers <= 1 or len(paths) < 4:
-        # Not worth starting processes for, unless one dies: then it takes this process with it, as it would anybody's.
-        yield from map(check_frame, paths)
-        return
-    done: set[str] = set()
-    try:
-        with ProcessPoolExecutor(workers) as pool:
-            waiting = {pool.submit(check_frame, p): p for p in paths}
-            for future in as_completed(waiting):
-                outcome = future.result()
-                done.add(waiting[future])
-                yield outcome
-    except BrokenProcessPool:
-        # A worker died and took the pool along: the frames not yet done are tried one a process, to find the one.
-        for path in paths:
-            if path not in done:
-                yield _alone(path)
-
-
-def _alone(path: str) -> FrameOutcome:
-    try:
-        with ProcessPoolExecutor(1) as pool:
-            return pool.submit(check_frame, path).result()
-    except BrokenProcessPool:
-        return FrameOutcome(path, "crashed", "the process that checked it died")
+def _died(standard: Standard) -> FrameOutcome:
+    return FrameOutcome(standard, "crashed", "the process that checked it died")
 
 
 # --- two sets
 
 
-def against(frames: Sequence[Path], roots: Sequence[Path], other: Path) -> SuiteOutcome:
+def against(frames: Sequence[Standard], roots: Sequence[Path], other: Path) -> SuiteOutcome:
     """Values on record of each frame against those of the same frame below `other`: what moved between two sets."""
     outcomes = []
     for frame in frames:
-        root = next((r for r in roots if r.is_dir() and frame.is_relative_to(r)), frame.parent)
-        twin = other / frame.relative_to(root)
+        root = next((r for r in roots if r.is_dir() and frame.path.is_relative_to(r)), frame.path.parent)
+        twin = Standard(other / frame.path.relative_to(root), frame.variant)
         outcomes.append(_against_one(frame, twin))
     return SuiteOutcome(tuple(outcomes), tuple(p.as_posix() for p in (*roots, other)))
 
 
-def _against_one(frame: Path, twin: Path) -> FrameOutcome:
-    file = frame.as_posix()
-    ours, theirs = record_path(frame), record_path(twin)
+def _against_one(frame: Standard, twin: Standard) -> FrameOutcome:
+    ours, theirs = frame.record, twin.record
     if not ours.exists() or not theirs.exists():
         which = " and ".join(p.as_posix() for p in (ours, theirs) if not p.exists())
-        return FrameOutcome(file, "never on record", f"no values on record at {which}")
+        return FrameOutcome(frame, "never on record", f"no values on record at {which}")
     try:
-        found, compared = _compare_records(frame, ours, theirs)
+        found, compared = _compare_records(ours, theirs)
     except UnusableInput as error:
-        return FrameOutcome(file, "unreadable", "; ".join(str(p) for p in error.problems[:3]))
+        return FrameOutcome(frame, "unreadable", "; ".join(str(p) for p in error.problems[:3]))
     state = "moved" if found else "held" if compared else "undecided"
     says = f"{len(found):,} of {compared:,} values moved" if found else f"{compared:,} values hold"
-    return FrameOutcome(file, state, says, tuple(found), compared=compared)
+    return FrameOutcome(frame, state, says, tuple(found), compared=compared)
 
 
-def _compare_records(frame: Path, ours: Path, theirs: Path) -> tuple[list[Difference], int]:
-    from crosscheck.suite.record import compare_tables, table_scales
-
+def _compare_records(ours: Path, theirs: Path) -> tuple[list[Difference], int]:
     here, there = read_record(ours).now, read_record(theirs).now
     found: list[Difference] = []
     compared = 0
