@@ -21,7 +21,7 @@ TELLS = 0.02
 
 
 def further_result(sweep: Sweep, one: Weighed, other: Weighed) -> str:
-    """"; the moment of B-C at B (12.3 against 4.1) would tell", or what is known where nothing would."""
+    """ "; the moment of B-C at B (12.3 against 4.1) would tell", or what is known where nothing would."""
     name = sweep.seen.names[0]
     frame = sweep.frame
     a, b = (_results(sweep, w, name) for w in (one, other))

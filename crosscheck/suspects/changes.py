@@ -83,9 +83,16 @@ def with_factors(frame: Frame, name: str, factors: Mapping[str, float]) -> Frame
 AMOUNTS = ("force", "couple", "x", "y", "rotation", "first", "last", "mean", "difference", "too_long", "factor")
 
 
+def altered(load: Load, **fields: Any) -> Load:
+    """The load with some fields replaced, whatever kind it is."""
+    anything: Any = load
+    changed: Load = replace(anything, **fields)
+    return changed
+
+
 def scaled(load: Load, factor: float) -> Load:
     """The load times a factor."""
-    return replace(load, **{a: factor * getattr(load, a) for a in AMOUNTS if hasattr(load, a)})
+    return altered(load, **{a: factor * getattr(load, a) for a in AMOUNTS if hasattr(load, a)})
 
 
 def with_support(frame: Frame, joint: str, support: Support | None) -> Frame:
@@ -131,8 +138,7 @@ def without_member(frame: Frame, name: str) -> Frame:
     """The frame without a member and its loads."""
     members = {n: m for n, m in frame.members.items() if n != name}
     cases = {
-        n: replace(c, loads=tuple(q for q in c.loads if getattr(q, "member", None) != name))
-        for n, c in frame.cases.items()
+        n: replace(c, loads=tuple(q for q in c.loads if getattr(q, "member", None) != name)) for n, c in frame.cases.items()
     }
     return replace(frame, members=members, cases=cases)
 
@@ -179,7 +185,7 @@ def _length(frame: Frame, member: str) -> float:
 
 
 def with_analysis(frame: Frame, **fields: Any) -> Frame:
-    """The frame idealised otherwise."""
+    """The frame idealised otherwise; fields: axial, shear."""
     return replace(frame, analysis=replace(frame.analysis, **fields))
 
 
@@ -207,7 +213,7 @@ def of_case(closed: ClosedClaim, case: str, other: str) -> ClosedClaim:
 
 def kind_of(s: Support) -> str:
     """A support in words."""
-    holds = tuple(k == HELD for k in (s.x, s.y, s.rotation))
+    holds = s.x == HELD, s.y == HELD, s.rotation == HELD
     loose = all(k in (FREE, HELD) for k in (s.x, s.y, s.rotation))
     return _KINDS.get(holds, "sprung") if loose else "sprung"
 

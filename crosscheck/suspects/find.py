@@ -40,14 +40,24 @@ class Findings:
 
 
 def find(
-    frame: Frame, opinions: Opinions, closed: ClosedClaim, claims: Sequence[CaseClaim], tolerance: Tolerance, limit: int = 10
+    frame: Frame,
+    opinions: Opinions,
+    closed: ClosedClaim,
+    claims: Sequence[CaseClaim],
+    tolerance: Tolerance,
+    limit: int = 10,
 ) -> tuple[Suspect, ...]:
     """The suspects alone; see search()."""
     return search(frame, opinions, closed, claims, tolerance, limit).suspects
 
 
 def search(
-    frame: Frame, opinions: Opinions, closed: ClosedClaim, claims: Sequence[CaseClaim], tolerance: Tolerance, limit: int = 10
+    frame: Frame,
+    opinions: Opinions,
+    closed: ClosedClaim,
+    claims: Sequence[CaseClaim],
+    tolerance: Tolerance,
+    limit: int = 10,
 ) -> Findings:
     """Suspects for a claim on whose values the verdict is disagree."""
     if frame.analysis.order == 2:
@@ -57,8 +67,14 @@ def search(
         return Findings((), "no opinion gives what could be compared")
     names = tuple(c.case for c in claims if c.case in answer.cases and c.compared)
     left = {id(v) for c in claims for v, _ in c.not_compared}
-    seen = observe(frame, answer, names, [v for v in closed.values if id(v) not in left], tolerance,
-                   {n: opinions.judgements[n].scales for n in names})
+    seen = observe(
+        frame,
+        answer,
+        names,
+        [v for v in closed.values if id(v) not in left],
+        tolerance,
+        {n: opinions.judgements[n].scales for n in names},
+    )
     if not len(seen.value):
         return Findings((), "no value could be compared")
     if not (np.abs(seen.residual) > seen.allowed).any():

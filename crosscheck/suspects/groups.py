@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import partial
 
 import numpy as np
 
 from crosscheck.frame.model import Floats, Frame, Ints, SelfWeight
-from crosscheck.suspects.changes import Change, with_material_factor, with_section_factors
+from crosscheck.suspects.changes import Change, with_material_factor, with_member, with_section_factors
 from crosscheck.suspects.members import COMMON, GRID, ROUNDS, SPAN_OF_FACTORS
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.suspect import Family, Option, named
@@ -162,5 +162,7 @@ def _swap_delta(screen: Screen, group: Group, other: str) -> Floats | None:
 
 
 def _given(frame: Frame, table: str, name: str, other: str) -> Frame:
-    members = {n: replace(m, **{table: other}) if getattr(m, table) == name else m for n, m in frame.members.items()}
-    return replace(frame, members=members)
+    mine = [n for n, m in frame.members.items() if getattr(m, table) == name]
+    for member in mine:
+        frame = with_member(frame, member, **{table: other})
+    return frame

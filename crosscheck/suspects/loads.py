@@ -27,7 +27,7 @@ from crosscheck.frame.model import (
     Spread,
     Temperature,
 )
-from crosscheck.suspects.changes import Change, scaled, with_factors, with_load
+from crosscheck.suspects.changes import Change, altered, scaled, with_factors, with_load
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.suspect import Option, named
 
@@ -132,10 +132,10 @@ def _moves(frame: Frame, case: str) -> Iterator[_Move]:
         for k in places:
             yield from _elsewhere(frame, case, k, where)
     if len(entries) > 1:
-        where = tuple(f"{case}[{e}]" for e in entries)
+        every = tuple(f"{case}[{e}]" for e in entries)
         turned: dict[int, tuple[Load, ...]] = {k: (scaled(q, -1.0),) for k, q in enumerate(loads)}
-        yield _Move(case, turned, where, f"all loads of {case} were reversed", REVERSED)
-        yield _Move(case, dict.fromkeys(range(len(loads)), ()), where, f"all loads of {case} were left out", LEFT_OUT + 0.3)
+        yield _Move(case, turned, every, f"all loads of {case} were reversed", REVERSED)
+        yield _Move(case, dict.fromkeys(range(len(loads)), ()), every, f"all loads of {case} were left out", LEFT_OUT + 0.3)
 
 
 def _what(frame: Frame, loads: list[Load]) -> str:
@@ -160,18 +160,18 @@ def _variants_of_entry(loads: list[Load]) -> Iterator[tuple[list[tuple[Load, ...
             if isinstance(first, JointForce) and isinstance(direction, str):
                 continue
             if direction != first.direction and not _opposite(direction, first.direction):
-                yield [(replace(q, direction=direction),) for q in loads], f"acted {word}", TURNED  # type: ignore[call-arg]
+                yield [(altered(q, direction=direction),) for q in loads], f"acted {word}", TURNED
     if isinstance(first, Spread) and not isinstance(first.direction, str):
-        new = [(replace(q, projection=not q.projection),) for q in loads if isinstance(q, Spread)]
-        yield new, f"was taken per {'length' if first.projection else 'projection'}", PROJECTION
+        turned: list[tuple[Load, ...]] = [(altered(q, projection=not first.projection),) for q in loads]
+        yield turned, f"was taken per {'length' if first.projection else 'projection'}", PROJECTION
     if isinstance(first, Temperature) and first.mean and first.difference:
         both = [q for q in loads if isinstance(q, Temperature)]
-        yield [(replace(q, mean=0.0),) for q in both], "had no mean rise", TURNED
-        yield [(replace(q, difference=0.0),) for q in both], "had no difference", TURNED
+        yield [(altered(q, mean=0.0),) for q in both], "had no mean rise", TURNED
+        yield [(altered(q, difference=0.0),) for q in both], "had no difference", TURNED
     if isinstance(first, Settlement):
         for axis in ("x", "y", "rotation"):
             if getattr(first, axis):
-                yield [(replace(q, **{axis: 0.0}),) for q in loads], f"had no {axis} part", TURNED  # type: ignore[call-arg]
+                yield [(altered(q, **{axis: 0.0}),) for q in loads], f"had no {axis} part", TURNED
 
 
 def _opposite(one: object, other: object) -> bool:
@@ -250,7 +250,7 @@ def _on_member(frame: Frame, load: Load, member: str) -> Load:
         return replace(load, member=member, start=start, end=end)
     if isinstance(load, (PointForce, PointCouple)):
         return replace(load, member=member, at=min(load.at, new))
-    return replace(load, member=member)  # type: ignore[call-arg]
+    return altered(load, member=member)
 
 
 # --- factors ---
@@ -347,3 +347,10 @@ def _fitted_factors(
         f = float(f"{1 + float(whole @ (r * w)) / float(whole @ whole):.3g}")
         out.append(({c: f * g for c, g in now.items()}, f"all of {name} was {f:g} times as large", OTHER_FACTOR))
     return out
+
+
+def every_load_option(frame: Frame) -> Iterator[Change]:
+    """Each load change that is weighed, for those who would try them one by one."""
+    for case in frame.cases:
+        for move in _moves(frame, case):
+            yield Change(partial(with_load, case=move.case, index=move.index), loads_only=True)

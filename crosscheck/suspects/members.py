@@ -93,7 +93,9 @@ def _fixed(frame: Frame, m: int) -> Iterator[_Trial]:
     for q in frame.sections.values():
         stretch = q.A / s.A if q.A and s.A else 1.0
         if q.name != s.name:
-            yield _Trial(m, q.I / s.I, stretch, own, "stiffness", f"{label} was given section {q.name}", OTHER_SECTION, q.name)
+            yield _Trial(
+                m, q.I / s.I, stretch, own, "stiffness", f"{label} was given section {q.name}", OTHER_SECTION, q.name
+            )
 
 
 def _connections(now: float) -> Iterator[tuple[float, str, float]]:
@@ -188,3 +190,11 @@ def _heavy(frame: Frame, m: int, what: str, p: float) -> Option:
     name = list(frame.members)[m]
     where = (named(frame, "member", name),)
     return Option("stiffness", where, f"{trial.says} (and weight)", Change(_change(trial, name)), FITTED, fitted=1)
+
+
+def every_member_option(frame: Frame) -> Iterator[Change]:
+    """Each fixed member change that is weighed, for those who would try them one by one."""
+    names = list(frame.members)
+    for m in range(len(names)):
+        for trial in _fixed(frame, m):
+            yield Change(_change(trial, names[m]))

@@ -107,9 +107,7 @@ def observe(
     value = np.where(extreme == 2, np.abs(value), value)
     half = np.array([v.half_digit for v in kept], dtype=float)
     nil = np.zeros(len(kept))
-    seen = Observation(
-        frame, names, tuple(kept), case, places, extreme, value, nil, half, nil, stations(frame)
-    )
+    seen = Observation(frame, names, tuple(kept), case, places, extreme, value, nil, half, nil, stations(frame))
     _choose_sides(seen, answer)
     said = seen.read(answer)
     tolerated = _allowed(seen, answer, said, tolerance, scales)

@@ -19,7 +19,13 @@ from crosscheck.suspects.changes import Change, with_values
 from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.suspect import Option, named
 
-FORCE = {"lbf for kip": 1e3, "N for kN": 1e3, "kip for kN": 4.4482216152605, "tonne for kN": 9.80665, "lbf for N": 4.4482216152605}
+FORCE = {
+    "lbf for kip": 1e3,
+    "N for kN": 1e3,
+    "kip for kN": 4.4482216152605,
+    "tonne for kN": 9.80665,
+    "lbf for N": 4.4482216152605,
+}
 LENGTH = {"m for mm": 1e3, "m for cm": 1e2, "cm for mm": 10.0, "ft for in": 12.0, "m for ft": 1 / 0.3048, "in for cm": 2.54,
           "m for in": 1 / 0.0254, "in for mm": 25.4}  # fmt: skip
 ANGLE = {"rad for degrees": 180 / math.pi, "rad for mrad": 1e3}
@@ -45,7 +51,9 @@ def _replaced(seen: Observation, rows: Ints, new: Floats, kind: str, where: Iter
         halves = seen.half.copy()
         halves[rows] = half
     values = {seen.values[k]: float(v) for k, v in zip(rows.tolist(), np.atleast_1d(new).tolist(), strict=True)}
-    return Option(kind, tuple(where), says, Change(claim=partial(with_values, new=values)), cost, claimed=claimed, half=halves)
+    return Option(
+        kind, tuple(where), says, Change(claim=partial(with_values, new=values)), cost, claimed=claimed, half=halves
+    )
 
 
 def _places(seen: Observation, rows: Ints) -> tuple[str, ...]:
@@ -130,7 +138,15 @@ def _signs(seen: Observation) -> Iterator[Option]:
                 continue
             # A sign is no evidence where nothing large changes by it.
             if len(rows) < len(seen.values) and np.any(np.abs(seen.residual[rows]) > seen.allowed[rows]):
-                yield _replaced(seen, rows, -seen.value[rows], "signs", _sign_where(seen, keys, rows), _sign_words(seen, keys, rows), cost)
+                yield _replaced(
+                    seen,
+                    rows,
+                    -seen.value[rows],
+                    "signs",
+                    _sign_where(seen, keys, rows),
+                    _sign_words(seen, keys, rows),
+                    cost,
+                )
 
 
 def _sign_where(seen: Observation, keys: tuple[str, ...], rows: Ints) -> tuple[str, ...]:
@@ -176,23 +192,28 @@ def _rows(seen: Observation) -> Iterator[Option]:
         if a[1] == b[1] and table[a].keys() == table[b].keys():
             yield _swapped(seen, table, a, b)
     members = {key[2] for key in wrong}
-    for a, b in combinations(sorted(str(m) for m in members if m is not None), 2):
-        option = _members_swapped(seen, table, a, b)
+    for one, two in combinations(sorted(str(m) for m in members if m is not None), 2):
+        option = _members_swapped(seen, table, one, two)
         if option is not None:
             yield option
     yield from _shifted(seen, table, wrong)
     if len(members) == 1 and None not in members:
         rows = np.array([k for key in wrong for k in table[key].values()])
-        yield _replaced(seen, rows, seen.said[rows], "transcription", _places(seen, rows[:1]),
-                        f"only the values of {_places(seen, rows[:1])[0]} stand against all the others", LONE_ROW)  # fmt: skip
+        where = _places(seen, rows[:1])
+        says = f"only the values of {where[0]} stand against all the others"
+        yield _replaced(seen, rows, seen.said[rows], "transcription", where, says, LONE_ROW)
 
 
-def _swapped(seen: Observation, table: dict[tuple[object, ...], dict[str, int]], a: tuple[object, ...], b: tuple[object, ...]) -> Option:
+def _swapped(
+    seen: Observation, table: dict[tuple[object, ...], dict[str, int]], a: tuple[object, ...], b: tuple[object, ...]
+) -> Option:
     one, two = np.array([table[a][q] for q in table[a]]), np.array([table[b][q] for q in table[a]])
     rows = np.concatenate([one, two])
     new = np.concatenate([seen.value[two], seen.value[one]])
     says = f"the rows of {_row_words(seen, int(one[0]))} and {_row_words(seen, int(two[0]))} were swapped"
-    return _replaced(seen, rows, new, "transcription", _places(seen, rows), says, SWAP, np.concatenate([seen.half[two], seen.half[one]]))
+    return _replaced(
+        seen, rows, new, "transcription", _places(seen, rows), says, SWAP, np.concatenate([seen.half[two], seen.half[one]])
+    )
 
 
 def _members_swapped(seen: Observation, table: dict[tuple[object, ...], dict[str, int]], a: str, b: str) -> Option | None:
@@ -244,11 +265,14 @@ def _columns_swapped(seen: Observation) -> Iterator[Option]:
                 continue
             a, b = np.array(both).T
             new = np.concatenate([seen.value[b], seen.value[a]])
-            yield _replaced(seen, np.concatenate([a, b]), new, "transcription", (), f"columns {one} and {two} were swapped", SWAP,
-                            np.concatenate([seen.half[b], seen.half[a]]))  # fmt: skip
+            half = np.concatenate([seen.half[b], seen.half[a]])
+            says = f"columns {one} and {two} were swapped"
+            yield _replaced(seen, np.concatenate([a, b]), new, "transcription", (), says, SWAP, half)
 
 
-def _lone_row(seen: Observation, table: dict[tuple[object, ...], dict[str, int]], key: tuple[object, ...]) -> Iterator[Option]:
+def _lone_row(
+    seen: Observation, table: dict[tuple[object, ...], dict[str, int]], key: tuple[object, ...]
+) -> Iterator[Option]:
     """The one row that disagrees: another's row in its place, or against everything else."""
     own = table[key]
     rows = np.array(list(own.values()))
@@ -277,11 +301,15 @@ def _values(seen: Observation) -> Iterator[Option]:
         v, row = seen.values[k], np.array([k])
         where, what = _places(seen, row), f"{v.quantity} of {_row_words(seen, k)}"
         for new in _transposed(v, float(seen.value[k])):
-            yield _replaced(seen, row, np.array([new]), "transcription", where, f"digits of the {what} were transposed", DIGITS)
+            yield _replaced(
+                seen, row, np.array([new]), "transcription", where, f"digits of the {what} were transposed", DIGITS
+            )
         for power in (-3, -2, -1, 1, 2, 3):
             factor = 10.0**power
             says = f"the decimal point of the {what} slipped by {abs(power)}"
-            yield _replaced(seen, row, seen.value[row] * factor, "transcription", where, says, SLIP, seen.half[row] * factor)
+            yield _replaced(
+                seen, row, seen.value[row] * factor, "transcription", where, says, SLIP, seen.half[row] * factor
+            )
         yield _replaced(seen, row, -seen.value[row], "signs", where, f"the {what} has the other sign", ONE_SIGN)
     if len(bad) == 1:
         k = int(bad[0])

@@ -125,7 +125,7 @@ class Screen:
         out = 0.0
         for square, cross, whole in grams:
             out = out + whole - np.einsum("bi,bij,bj->b", cross, np.linalg.pinv(square, rcond=1e-10, hermitian=True), cross)
-        return np.maximum(out, 0.0)
+        return np.asarray(np.maximum(out, 0.0))
 
     def delta_of(self, effects: Floats, block: int, actions: Sequence[Floats]) -> Floats:
         """(n,) change of the values by actions (3,) a case in one block."""

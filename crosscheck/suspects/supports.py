@@ -132,3 +132,10 @@ def _fit_spring(
         low, high = np.log(best / scale) - step, np.log(best / scale) + step
         delta = screen.delta_of(screen.effects.reaction, j, [a[k] for a in actions])
     return float(best), delta
+
+
+def every_support_option(frame: Frame) -> Iterator[Change]:
+    """Each fixed support change that is weighed, for those who would try them one by one."""
+    for joint in frame.joints:
+        for stiffness, _, _ in _kinds(frame, joint):
+            yield Change(partial(_applied, joint=joint, stiffness=stiffness))

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import replace
 from functools import partial
+from typing import Any
 
 from crosscheck.frame.model import HELD, Frame, Temperature
 from crosscheck.suspects.changes import (
@@ -39,8 +40,14 @@ def _idealisations(frame: Frame) -> Iterator[Option]:
         ({"axial": new_axial}, says_axial, IDEALISED), ({"shear": new_shear}, says_shear, IDEALISED),
         ({"axial": new_axial, "shear": new_shear}, f"{says_axial} and {says_shear}", IDEALISED + 0.5),
     ):  # fmt: skip
-        if usable(with_analysis(frame, **fields)):
-            yield Option("idealisation", (), says, Change(partial(with_analysis, **fields)), cost)
+        change = partial(_analysed, fields=fields)
+        if usable(change(frame)):
+            yield Option("idealisation", (), says, Change(change), cost)
+
+
+def _analysed(frame: Frame, fields: Mapping[str, str]) -> Frame:
+    whole: dict[str, Any] = dict(fields)
+    return with_analysis(frame, **whole)
 
 
 def _zones(frame: Frame) -> Iterator[Option]:
@@ -66,7 +73,8 @@ def _angles(frame: Frame) -> Iterator[Option]:
         if (s.x, s.y) == (HELD, HELD) or s.x == s.y:
             continue
         label = named(frame, "joint", joint)
-        for angle, says in ((0.0, "was not turned"), (-s.angle, "was turned the other way"), (s.angle + 90, "was turned a further 90 degrees")):
+        angles = ((0.0, "was not turned"), (-s.angle, "was turned the other way"), (s.angle + 90, "was turned by 90 more"))
+        for angle, says in angles:
             if abs(angle - s.angle) > 1e-9:
                 change = Change(partial(with_support, joint=joint, support=replace(s, angle=angle)))
                 yield Option("support", (label,), f"the support at {label} {says}", change, ANGLE)

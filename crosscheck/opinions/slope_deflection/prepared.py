@@ -18,7 +18,7 @@ import numpy as np
 import scipy.sparse as sp
 
 from crosscheck.answer import Answer, CaseAnswer, Undetermined
-from crosscheck.frame.loads import LoadTable, load_table
+from crosscheck.frame.loads import LoadTable, direction_cosines, load_table
 from crosscheck.frame.model import (
     FREE,
     HELD,
@@ -385,23 +385,27 @@ class Prepared:
         return out
 
     def _on_joints(self, loads: Sequence[Load], onto: Floats, moved: Floats) -> None:
-        blank = replace(self.frame)
+        """Forces on joints and settlements, column by column, along the supports' axes."""
+        directly = np.zeros_like(onto)
         for k, load in enumerate(loads):
             if not isinstance(load, (JointForce, JointCouple, Settlement)):
                 continue
-            joint = self.frame.joint_index[load.joint]
+            at = 3 * self.frame.joint_index[load.joint]
             if isinstance(load, Settlement):
-                moved[3 * joint : 3 * joint + 3, k] = load.x, load.y, load.rotation
-                continue
-            table = _one_case(blank, (load,))
-            onto[:, k] = self._axes @ table.joint.ravel()
+                moved[at : at + 3, k] = load.x, load.y, load.rotation
+            elif isinstance(load, JointForce):
+                directly[at : at + 2, k] = load.force * np.array(direction_cosines(load.direction))
+            else:
+                directly[at + 2, k] = load.couple
+        onto += self._axes @ directly
 
     def _on_members(self, loads: Sequence[Load], place: Ints, places: Places, onto: Floats, out: Floats) -> None:
         members = list(self.frame.members.values())
         of = np.array([self.frame.member_index[load.member] for load in loads])  # type: ignore[union-attr]
         copies = {str(k): replace(members[m], name=str(k)) for k, m in enumerate(of.tolist())}
         bench = replace(self.frame, members=copies, combinations={})
-        case = tuple(replace(load, member=str(k)) for k, load in enumerate(loads))  # type: ignore[call-arg]
+        each_load: list[Any] = list(loads)
+        case = tuple(replace(load, member=str(k)) for k, load in enumerate(each_load))
         table = _one_case(bench, case)
         fixed = fixed_ends(bench, table, self.system.coefficients.stiffness[of])
         rigid = self.system.rigid[of]
