@@ -70,6 +70,7 @@ def _parser() -> argparse.ArgumentParser:
     commands = parser.add_subparsers(dest="command", metavar="COMMAND")
     _add_opinions(commands)
     _add_verify(commands)
+    _add_inspect(commands)
     _add_record(commands)
     _add_regress(commands)
     _add_draft(commands)
@@ -108,6 +109,15 @@ def _add_verify(commands: Any) -> None:
     command.add_argument("--suspect", metavar="N", type=int, help="compare the claim with what suspect N supposes")
     command.add_argument("--show-reading", action="store_true", help="print the table as understood; compare nothing")
     command.set_defaults(run=run_verify)
+
+
+def _add_inspect(commands: Any) -> None:
+    command = commands.add_parser("inspect", help="what a reviewer would ask about the model before any results")
+    command.add_argument("frame", metavar="FRAME", help="frame file (TOML)")
+    command.add_argument("--sway", metavar="RATIO", type=float, default=300, help="height over movement (usual: 300)")
+    command.add_argument("--deflection", metavar="RATIO", type=float, default=250, help="span over deflection (250)")
+    command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
+    command.set_defaults(run=run_inspect)
 
 
 def _add_record(commands: Any) -> None:
@@ -205,6 +215,29 @@ def run_verify(args: argparse.Namespace) -> int:
 
     _give(args, document, report)
     return EXIT[result.verdict]
+
+
+def run_inspect(args: argparse.Namespace) -> int:
+    """`crosscheck inspect FRAME`: 0 nothing serious, 1 serious, 2 unusable."""
+    from crosscheck import check
+    from crosscheck.review.finding import Limits
+    from crosscheck.review.inspect import inspect, subject_of
+
+    subject = subject_of(check.read(args.frame), Limits(sway=args.sway, deflection=args.deflection))
+    findings = inspect(subject)
+
+    def document() -> dict[str, Any]:
+        from crosscheck.report.review import review_document
+
+        return review_document(subject, findings)
+
+    def report() -> RenderableType:
+        from crosscheck.report.review import review_report
+
+        return review_report(subject, findings)
+
+    _give(args, document, report)
+    return 1 if any(f.grade == "serious" for f in findings) else 0
 
 
 def run_record(args: argparse.Namespace) -> int:

@@ -105,22 +105,18 @@ def _opinions_sentence(result: Opinions) -> str:
         return f"{_spoke(result)} agree in {words.counted(count, 'value')} of {cases}."
     if result.verdict == "undecided":
         few = [j.case for j in judged if len(j.spoke) < 2]
-        return f"Fewer than two opinions speak for {_some(few)}." if few else "Nothing could be compared."
+        return f"Fewer than two opinions speak for {words.some(few)}." if few else "Nothing could be compared."
     bad = [j for j in judged if j.differences]
     dissenters = {j.dissenter for j in bad}
     lone = dissenters.pop() if len(dissenters) == 1 else None
     who = f" {lone} stands alone against the others." if lone else ""
     many = words.counted(sum(len(j.differences) for j in bad), "value")
-    return f"The opinions differ in {many} of {_some([j.case for j in bad])}.{who}"
+    return f"The opinions differ in {many} of {words.some([j.case for j in bad])}.{who}"
 
 
 def _spoke(result: Opinions) -> str:
     names = list(result.answers)
     return f"{', '.join(names[:-1])} and {names[-1]}" if len(names) > 1 else "".join(names)
-
-
-def _some(names: Sequence[str], most: int = 4) -> str:
-    return ", ".join(names) if len(names) <= most else f"{', '.join(names[:most])} and {len(names) - most} more"
 
 
 def undetermined_lines(result: Opinions) -> list[str]:
@@ -129,14 +125,14 @@ def undetermined_lines(result: Opinions) -> list[str]:
     members, joints = list(frame.members), list(frame.joints)
     lines = []
     if none.axial.any():
-        which = _some([members[k] for k in np.flatnonzero(none.axial)])
+        which = words.some([members[k] for k in np.flatnonzero(none.axial)])
         lines.append(f"Undetermined (axially rigid): axial force of {which}")
     loose = [joints[k] for k in np.flatnonzero(none.joints.any(axis=1))]
     if loose:
-        lines.append(f"Undetermined (nothing resists it): rotation or movement of joint {_some(loose)}")
+        lines.append(f"Undetermined (nothing resists it): rotation or movement of joint {words.some(loose)}")
     pulls = [joints[k] for k in np.flatnonzero(none.reactions.any(axis=1))]
     if pulls:
-        lines.append(f"Undetermined (axially rigid): reactions at {_some(pulls)}")
+        lines.append(f"Undetermined (axially rigid): reactions at {words.some(pulls)}")
     return lines
 
 
@@ -151,7 +147,7 @@ def _frame_facts(frame: Frame) -> list[tuple[str, str]]:
 
 def _opinions_facts(result: Opinions) -> list[tuple[str, str]]:
     rows = _frame_facts(result.frame)
-    rows.append(("cases", _some(result.names, 8)))
+    rows.append(("cases", words.some(result.names, 8)))
     rows += _opinion_rows(result)
     own = f"{OWN.relative:g} of the larger value, or {OWN.floor:g} of the case's largest of its kind"
     rows.append(("allowed", f"{own}; ten times that where the library is one of the two"))
@@ -315,7 +311,7 @@ def verify_report(result: Verification) -> RenderableType:
 def _claim_sentence(result: Verification) -> str:
     compared, of = sum(c.compared for c in result.cases), sum(c.of for c in result.cases)
     differ = sum(len(c.differences) for c in result.cases)
-    which = _some(result.closed.cases) or "no case"
+    which = words.some(result.closed.cases) or "no case"
     if result.verdict == "agree":
         return f"The claim agrees in the {words.counted(compared, 'value')} it gives, of {of:,} ({which})."
     if result.verdict == "disagree" and differ:
@@ -354,7 +350,7 @@ def _suspect_lines(result: Verification) -> list[RenderableType]:
 def _claim_facts(result: Verification) -> list[tuple[str, str]]:
     c, rows = result.closed, _frame_facts(result.opinions.frame)
     rows.insert(1, ("claim", f"{c.file or 'text'}, {words.counted(c.rows, 'row')}, sha256 {c.sha256[:12]}"))
-    rows.append(("case", _some(c.cases) or "none"))
+    rows.append(("case", words.some(c.cases) or "none"))
     rows.append(("allowed", allowed_words(result)))
     rows += [("units", f"{quantity}: {taken}") for quantity, taken in _grouped(c.units)]
     rows += [("signs", f"{quantity}: {taken}") for quantity, taken in _grouped(c.signs)]
@@ -418,7 +414,7 @@ def _not_compared(result: Verification) -> list[RenderableType]:
         lines.append(f"{of - compared:,} of the frame's {of:,} values are not in the claim or were not judged")
     others = [n for n in result.opinions.frame.names if n not in closed.cases]
     if others:
-        lines.append(f"cases the claim does not speak of: {_some(others)}")
+        lines.append(f"cases the claim does not speak of: {words.some(others)}")
     return [heading("Not compared"), _notes(lines)] if lines else []
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 
 from crosscheck.compare.differences import Difference, Place
 from crosscheck.frame.model import Frame
@@ -101,6 +102,12 @@ def idealisation(frame: Frame) -> str:
 def opinions_value(d: Difference) -> float | None:
     """The opinions' value beside a claim's: the first that gives one."""
     return next((v for o, v in d.values.items() if o != "claim" and v is not None), None)
+
+
+def some(names: Sequence[str], most: int = 4) -> str:
+    """Names in a sentence, the first few of many."""
+    names = list(names)
+    return ", ".join(names) if len(names) <= most else f"{', '.join(names[:most])} and {len(names) - most} more"
 
 
 def counted(n: int, one: str, many: str = "") -> str:
