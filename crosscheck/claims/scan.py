@@ -117,6 +117,8 @@ class _Scanner:
         if body.strip().lower().startswith("expect:"):
             self.out.expect = body.strip()[7:].strip()
             return "expect", ""
+        if body is not text and body.rstrip().endswith((".", "!", "?")):
+            return "note", ""  # a sentence is neither a heading nor a head
         separator, cells = cells_of(body)
         filled = [c.text for c in cells if c.text]
         numbers = sum(is_number(t) for t in filled)
@@ -142,6 +144,8 @@ class _Scanner:
             assert self.table
             self.table.heads.append((number, text))
             return "head", "units"
+        if (label := self._case_in(text)) and self.names.case(label):
+            return None  # "Load case: sway_right" is no head, though "right" and "case" are words of heads
         if numbers > _end_numbers(filled) or not self._says_columns(text, filled, separator):
             return None
         if self._head_is_open() and len(self.table.heads) < 3:  # type: ignore[union-attr]
@@ -271,7 +275,7 @@ class _Scanner:
             return self._named_row(number, text, filled)
         if _TOTAL.match(filled[0]) and not self._knows(filled[0]):
             return "total", ""
-        if _DATE.search(text) and not self._fits(filled):
+        if _DATE.search(text) and not self._fits(filled) and not self._knows(filled[0]):
             return "remark", "a date, a page or the like"
         words = [t for t in filled if not is_number(t) and not self._knows(t) and len(re.sub(r"\W", "", t)) > 1]
         if len(words) > max(2, numbers):
