@@ -246,7 +246,7 @@ def claimed_arrays(frame: Frame, closed: ClosedClaim, name: str) -> tuple[CaseAn
             end = 0 if frame.members[str(v.member)].joint_from == v.joint else 1
             index: tuple[int, ...] = (frame.member_index[str(v.member)], end, END_COLUMN[v.quantity])
             tables = values.ends, half.ends
-        elif v.kind == "reaction" and v.joint in frame.supports:
+        elif v.kind == "reaction":
             index = (frame.joint_index[str(v.joint)], REACTION_COLUMN[v.quantity])
             tables = values.reactions, half.reactions
         elif v.kind == "displacement":
