@@ -7,7 +7,8 @@ did not make. Mistakes are drawn here from their own small functions, not from t
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterator
+import time
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, replace
 from random import Random
 
@@ -17,6 +18,7 @@ from crosscheck import check
 from crosscheck.answer import Answer, CaseAnswer, Silent
 from crosscheck.compare.claim import ClaimComparison
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
+from crosscheck.compare.differences import worst
 from crosscheck.compare.opinions import Comparison
 from crosscheck.compare.tolerance import CLAIM
 from crosscheck.frame.kinematics import study
@@ -38,6 +40,8 @@ from crosscheck.frame.model import (
 )
 from crosscheck.opinions import moment_distribution, slope_deflection
 from crosscheck.problems import UnusableInput
+from crosscheck.suspects import Suspect, search
+from tests.random_frames import random_frame
 
 END_NAMES, JOINT_NAMES, PULL_NAMES = ("axial", "shear", "moment"), ("dx", "dy", "rotation"), ("fx", "fy", "moment")
 EFFECT = 0.03
@@ -82,14 +86,14 @@ def claim_values(
     return case_values(frame, answer.cases[name], under, digits, fixed, only)
 
 
-def case_values(
-    frame: Frame, c: CaseAnswer, under: str, digits: int, fixed: bool, only: str = "all"
-) -> list[ClaimedValue]:
+def case_values(frame: Frame, c: CaseAnswer, under: str, digits: int, fixed: bool, only: str = "all") -> list[ClaimedValue]:
     """One case's results as a claim."""
     out: list[ClaimedValue] = []
     line = 0
 
-    def add(kind: str, names: tuple[str, ...], values: np.ndarray, peaks: np.ndarray, member: str | None, joint: str) -> None:
+    def add(
+        kind: str, names: tuple[str, ...], values: np.ndarray, peaks: np.ndarray, member: str | None, joint: str
+    ) -> None:
         nonlocal line
         line += 1
         for q, v, peak in zip(names, values.tolist(), peaks.tolist(), strict=True):
@@ -165,7 +169,9 @@ def _supports(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
         for kind in ((HELD, HELD, HELD), (HELD, HELD, FREE), (FREE, HELD, FREE), (HELD, FREE, FREE)):
             if kind != (s.x, s.y, s.rotation):
                 x, y, t = kind
-                yield Mistake("support", "another kind", (joint,), _put(frame, "supports", joint, replace(s, x=x, y=y, rotation=t)))
+                yield Mistake(
+                    "support", "another kind", (joint,), _put(frame, "supports", joint, replace(s, x=x, y=y, rotation=t))
+                )
         gone = {n: q for n, q in frame.supports.items() if n != joint}
         yield Mistake("support", "missing", (joint,), replace(frame, supports=gone))
         for axis in ("x", "y", "rotation"):
@@ -187,7 +193,9 @@ def _units_of_springs(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
             k = getattr(s, axis)
             if 0 < k < HELD:
                 f = r.choice([1e3, 1e-3])
-                yield Mistake("support", "spring by a unit", (joint,), _put(frame, "supports", joint, replace(s, **{axis: k * f})))
+                yield Mistake(
+                    "support", "spring by a unit", (joint,), _put(frame, "supports", joint, replace(s, **{axis: k * f}))
+                )
 
 
 def _ends(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
@@ -195,16 +203,27 @@ def _ends(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
         for field in ("turn_from", "turn_to"):
             now = getattr(m, field)
             if now != FREE:
-                yield Mistake("end release", "hinge added", (name,), _put(frame, "members", name, replace(m, **{field: FREE})))
+                yield Mistake(
+                    "end release", "hinge added", (name,), _put(frame, "members", name, replace(m, **{field: FREE}))
+                )
             if now != HELD:
-                yield Mistake("end release", "hinge or spring left out", (name,), _put(frame, "members", name, replace(m, **{field: HELD})))
+                yield Mistake(
+                    "end release",
+                    "hinge or spring left out",
+                    (name,),
+                    _put(frame, "members", name, replace(m, **{field: HELD})),
+                )
             if now == HELD and r.random() < 0.3:
                 t, k = frame.member_table, frame.member_index[name]
                 spring = float(t.E[k] * t.I[k] / t.length[k]) * math.exp(r.uniform(-1, 2))
-                yield Mistake("end release", "semi-rigid", (name,), _put(frame, "members", name, replace(m, **{field: spring})))
+                yield Mistake(
+                    "end release", "semi-rigid", (name,), _put(frame, "members", name, replace(m, **{field: spring}))
+                )
             if 0 < now < HELD:
                 spring = now * r.choice([1e3, 1e-3])
-                yield Mistake("end release", "spring by a unit", (name,), _put(frame, "members", name, replace(m, **{field: spring})))
+                yield Mistake(
+                    "end release", "spring by a unit", (name,), _put(frame, "members", name, replace(m, **{field: spring}))
+                )
 
 
 def _stiffness(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
@@ -214,20 +233,37 @@ def _stiffness(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
         s = frame.sections[m.section]
         f = factor()
         own = replace(s, name="own", I=s.I * f)
-        yield Mistake("stiffness", "EI of a member", (name,), _put(_put(frame, "sections", "own", own), "members", name, replace(m, section="own")))
+        yield Mistake(
+            "stiffness",
+            "EI of a member",
+            (name,),
+            _put(_put(frame, "sections", "own", own), "members", name, replace(m, section="own")),
+        )
         if elastic and s.A:
             own = replace(s, name="own", A=s.A * factor())
-            yield Mistake("stiffness", "EA of a member", (name,), _put(_put(frame, "sections", "own", own), "members", name, replace(m, section="own")))
+            yield Mistake(
+                "stiffness",
+                "EA of a member",
+                (name,),
+                _put(_put(frame, "sections", "own", own), "members", name, replace(m, section="own")),
+            )
         for other in frame.sections:
             if other != m.section:
-                yield Mistake("stiffness", "another section", (name,), _put(frame, "members", name, replace(m, section=other)))
+                yield Mistake(
+                    "stiffness", "another section", (name,), _put(frame, "members", name, replace(m, section=other))
+                )
     for name in {m.section for m in frame.members.values()}:
         s = frame.sections[name]
         yield Mistake("stiffness", "EI of a section", (name,), _put(frame, "sections", name, replace(s, I=s.I * factor())))
     for name in {m.material for m in frame.members.values()}:
         t = frame.materials[name]
         f = factor()
-        yield Mistake("stiffness", "E of a material", (name,), _put(frame, "materials", name, replace(t, E=t.E * f, G=None if t.G is None else t.G * f)))
+        yield Mistake(
+            "stiffness",
+            "E of a material",
+            (name,),
+            _put(frame, "materials", name, replace(t, E=t.E * f, G=None if t.G is None else t.G * f)),
+        )
 
 
 # --- loads -----------------------------------------------------------------------------------------
@@ -253,12 +289,24 @@ def _loads(frame: Frame, claimed: str, r: Random) -> Iterator[Mistake]:
         for entry in dict.fromkeys(q.entry for q in loads):
             mine = [q for q in loads if q.entry == entry]
             where = (f"{case}[{entry}]",)
-            word = {SelfWeight: "self weight ", Settlement: "settlement ", Temperature: "temperature ", Misfit: "misfit "}.get(type(mine[0]), "")
+            word = {
+                SelfWeight: "self weight ",
+                Settlement: "settlement ",
+                Temperature: "temperature ",
+                Misfit: "misfit ",
+            }.get(type(mine[0]), "")
             yield Mistake("load", f"{word}left out", where, _with(frame, case, [q for q in loads if q.entry != entry]))
             yield Mistake("load", f"{word}in twice", where, _with(frame, case, loads + mine))
-            yield Mistake("load", f"{word}reversed", where, _with(frame, case, [times(q, -1) if q.entry == entry else q for q in loads]))
+            yield Mistake(
+                "load",
+                f"{word}reversed",
+                where,
+                _with(frame, case, [times(q, -1) if q.entry == entry else q for q in loads]),
+            )
             if len(mine) > 1:
-                yield Mistake("load", "one of a run left out", where, _with(frame, case, [q for q in loads if q is not mine[0]]))
+                yield Mistake(
+                    "load", "one of a run left out", where, _with(frame, case, [q for q in loads if q is not mine[0]])
+                )
             for k, load in enumerate(loads):
                 if load is mine[0] and isinstance(load, (PointForce, Spread, JointForce)):
                     yield from _directions(frame, case, loads, entry, load, where, r)
@@ -268,7 +316,9 @@ def _directions(frame, case, loads, entry, load, where, r):  # type: ignore[no-u
     options = [0.0, 270.0, 90.0] + ([] if isinstance(load, JointForce) else ["across"])
     new = r.choice([d for d in options if d != load.direction])
     sort = "local for global" if "across" in (new, load.direction) else "another direction"
-    yield Mistake("load", sort, where, _with(frame, case, [replace(q, direction=new) if q.entry == entry else q for q in loads]))
+    yield Mistake(
+        "load", sort, where, _with(frame, case, [replace(q, direction=new) if q.entry == entry else q for q in loads])
+    )
     if isinstance(load, Spread) and not isinstance(load.direction, str):
         flipped = [replace(q, projection=not q.projection) if q.entry == entry else q for q in loads]
         yield Mistake("load", "length for projection", where, _with(frame, case, flipped))
@@ -286,7 +336,9 @@ def _positions(frame: Frame, claimed: str, r: Random) -> Iterator[Mistake]:
             if isinstance(load, (PointForce, PointCouple, Spread)):
                 length = float(frame.member_table.length[frame.member_index[load.member]])
                 if isinstance(load, Spread):
-                    new = replace(load, first=load.last, last=load.first, start=max(length - load.end, 0.0), end=length - load.start)
+                    new = replace(
+                        load, first=load.last, last=load.first, start=max(length - load.end, 0.0), end=length - load.start
+                    )
                     if load.start > 0.01 * length or load.end < 0.99 * length:
                         yield Mistake("load", "whole for part", where, swapped(replace(load, start=0.0, end=length)))
                 else:
@@ -382,7 +434,9 @@ def _idealisation(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
         if on.sum() >= 2 and supported[t.ends[on]].all():
             share = r.choice([0.1, 0.15, 0.2, 0.3])
             where = (list(frame.joints)[j],)
-            yield Mistake("idealisation", "redistributed", where, frame, adjust=lambda f, a, n, j=j, s=share: _less(f, a, n, j, s))
+            yield Mistake(
+                "idealisation", "redistributed", where, frame, adjust=lambda f, a, n, j=j, s=share: _less(f, a, n, j, s)
+            )
 
 
 def _at_faces(frame: Frame, answer: Answer, name: str) -> CaseAnswer:
@@ -429,17 +483,23 @@ def _pastes(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
 
 def _changed(values: list[ClaimedValue], k: int, value: float, half: float | None = None) -> list[ClaimedValue]:
     out = list(values)
+    if k < 0:
+        return out
     out[k] = replace(out[k], value=value, half_digit=out[k].half_digit if half is None else half)
     return out
 
 
 def _unit(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
-    quantity, f = r.choice([("moment", 1e3), ("moment", 1e-3), ("shear", 1e3), ("axial", 1e-3), ("rotation", 180 / math.pi)])
+    quantity, f = r.choice(
+        [("moment", 1e3), ("moment", 1e-3), ("shear", 1e3), ("axial", 1e-3), ("rotation", 180 / math.pi)]
+    )
     return [replace(v, value=v.value * f, half_digit=v.half_digit * f) if v.quantity == quantity else v for v in values]
 
 
 def _swap(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
     lines = sorted({v.line for v in values if v.kind == "end"})
+    if len(lines) < 2:
+        return values
     a, b = r.sample(lines, 2)
     of = {n: {v.quantity: v for v in values if v.line == n} for n in (a, b)}
     if of[a].keys() != of[b].keys():
@@ -453,12 +513,16 @@ def _swap(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
 
 
 def _large(values: list[ClaimedValue], r: Random) -> int:
-    peak = max(abs(v.value) for v in values if v.kind == "end" and v.quantity == "moment")
-    return r.choice([k for k, v in enumerate(values) if v.kind == "end" and v.quantity == "moment" and abs(v.value) > 0.2 * peak])
+    """Index of one of the larger end moments; -1 where there is none."""
+    peak = max((abs(v.value) for v in values if v.kind == "end" and v.quantity == "moment"), default=0.0)
+    large = [k for k, v in enumerate(values) if v.kind == "end" and v.quantity == "moment" and abs(v.value) > 0.2 * peak]
+    return r.choice(large) if large else -1
 
 
 def _transpose(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
     k = _large(values, r)
+    if k < 0:
+        return values
     v = values[k]
     unit = 2 * v.half_digit
     digits = str(round(abs(v.value) / unit))
@@ -480,3 +544,153 @@ def _one_sign(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
 
 def _member_signs(values: list[ClaimedValue], name: str) -> list[ClaimedValue]:
     return [replace(v, value=-v.value) if v.member == name and v.quantity in ("moment", "shear") else v for v in values]
+
+
+# --- running it --------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class Record:
+    """One mistake tried. rank: of the first right suspect, 0 for none. first: the first three suspects, in words."""
+
+    seed: int
+    kind: str
+    sort: str
+    where: tuple[str, ...]
+    verdict: str
+    rank: int
+    count: int
+    first: tuple[str, ...]
+    explains: float
+    seconds: float
+
+
+def drawn(seed: int, per: int, digits: int | None = 4, only: str = "all", choose: Callable[[Mistake], bool] | None = None
+          ) -> Iterator[tuple[Frame, str, Mistake, check.Opinions, list[ClaimedValue]]]:  # fmt: skip
+    """The claims of one random frame, `per` of them, every sort of mistake once before any comes twice.
+
+    digits: None for full precision. only: as claim_values.
+    """
+    r = Random(seed)
+    try:
+        frame = random_frame(seed)
+    except (ArithmeticError, RuntimeWarning, AssertionError):
+        return
+    case = r.choice(frame.names)
+    try:
+        opinions = opinions_on(frame, (case,))
+    except UnusableInput:
+        return
+    base = opinions.answers["slope-deflection"].cases[case]
+    peak = float(np.abs(np.nan_to_num(base.ends[:, :, 2])).max(initial=0.0))
+    order = sorted(enumerate(mistakes(frame, case, r)), key=lambda km: km[0])
+    seen: dict[str, int] = {}
+    ranked = []
+    for _, m in order:
+        seen[m.sort] = seen.get(m.sort, 0) + 1
+        ranked.append((seen[m.sort], len(ranked), m))
+    taken = 0
+    for _, _, mistake in sorted(ranked, key=lambda x: x[:2]):
+        if taken == per:
+            return
+        if choose is not None and not choose(mistake):
+            continue
+        values = claimed(frame, mistake, case, digits, seed % 2 == 0, only)
+        if values and peak and _effect(frame, base, values) >= EFFECT * peak:
+            taken += 1
+            yield frame, case, mistake, opinions, values
+
+
+def claimed(frame: Frame, mistake: Mistake, case: str, digits: int | None, fixed: bool, only: str) -> list[ClaimedValue]:
+    """What the other analysis printed; nothing where it could not be made."""
+    other = frame if mistake.frame is None else mistake.frame
+    name = mistake.name or case
+    answer = solved(other, (name,))
+    if answer is None or name not in answer.cases:
+        return []
+    result = answer.cases[name] if mistake.adjust is None else mistake.adjust(other, answer, name)
+    values = case_values(other, result, case, 12 if digits is None else digits, fixed and digits is not None, only)
+    return values if mistake.paste is None else mistake.paste(values)
+
+
+def _effect(frame: Frame, base: CaseAnswer, values: list[ClaimedValue]) -> float:
+    """The largest change of an end moment."""
+    off = [0.0]
+    for v in values:
+        if v.kind == "end" and v.quantity == "moment" and v.member in frame.members:
+            end = 0 if frame.members[v.member].joint_from == v.joint else 1
+            off.append(abs(v.value - base.ends[frame.member_index[v.member], end, 2]))
+    return max(off)
+
+
+def tried(
+    frame: Frame, case: str, mistake: Mistake, opinions: check.Opinions, values: list[ClaimedValue], seed: int
+) -> Record:
+    """Judge the claim and look for suspects."""
+    closed = closed_claim(values)
+    claims = judged(frame, opinions, closed)
+    start = time.process_time()
+    found = search(frame, opinions, closed, claims, CLAIM) if any(c.verdict == "disagree" for c in claims) else None
+    spent = time.process_time() - start
+    suspects = found.suspects if found else ()
+    rank = next((k + 1 for k, s in enumerate(suspects) if right(frame, case, mistake, s, closed)), 0)
+    says = tuple(f"{s.kind} {s.where}: {s.says}" for s in suspects[:3])
+    verdict = worst([c.verdict for c in claims])
+    return Record(seed, mistake.kind, mistake.sort, mistake.where, verdict, rank, len(suspects), says,
+                  suspects[0].explains if suspects else 0.0, spent)  # fmt: skip
+
+
+def right(frame: Frame, case: str, mistake: Mistake, suspect: Suspect, closed: ClosedClaim) -> bool:
+    """The true mistake (kind, and a place of it), or one whose results, by moment distribution, the claim cannot tell."""
+    if suspect.kind == mistake.kind and (not mistake.where or set(mistake.where) & set(suspect.where)):
+        return True
+    changed, claim = suspect.change.apply(frame, closed)
+    name = claim.cases[0]
+    answer = solved(changed, (name,))
+    if answer is None:
+        return False
+    table = {
+        (v.kind, v.quantity, v.member, v.joint): v.value for v in case_values(changed, answer.cases[name], name, 15, False)
+    }
+    at_faces = any(v.kind == "span" for v in claim.values)
+    if at_faces:
+        return False
+    for v in claim.values:
+        there = table.get((v.kind, v.quantity, v.member, v.joint))
+        if there is not None and abs(there - v.value) > 1.06 * v.half_digit + 1e-6 * abs(v.value):
+            return False
+    return True
+
+
+def run(seeds: Iterable[int], per: int, digits: int | None = 4, only: str = "all") -> Iterator[Record]:
+    for seed in seeds:
+        for frame, case, mistake, opinions, values in drawn(seed, per, digits, only):
+            yield tried(frame, case, mistake, opinions, values, seed)
+
+
+def table(records: list[Record]) -> str:
+    """Per kind and sort: how many, called disagree, right first, right among the first three, none named."""
+    rows: dict[tuple[str, str], list[Record]] = {}
+    for record in records:
+        rows.setdefault((record.kind, record.sort), []).append(record)
+    lines = [f"{'kind':15}{'sort':28}{'tried':>6}{'disagree':>9}{'first':>6}{'three':>6}{'none':>6}"]
+    for (kind, sort), mine in [*sorted(rows.items()), (("all", ""), records)]:
+        judged_ = [x for x in mine if x.verdict == "disagree"]
+        first, three = sum(x.rank == 1 for x in judged_), sum(0 < x.rank <= 3 for x in judged_)
+        none = sum(x.count == 0 for x in judged_)
+        lines.append(f"{kind:15}{sort:28}{len(mine):6}{len(judged_):9}{first:6}{three:6}{none:6}")
+    return "\n".join(lines)
+
+
+if __name__ == "__main__":
+    import sys
+
+    first, last, each = map(int, sys.argv[1:4])
+    what = sys.argv[4] if len(sys.argv) > 4 else "all"
+    done: list[Record] = []
+    for got in run(range(first, last), each, only=what):
+        done.append(got)
+        if got.rank != 1:
+            print(got, flush=True)
+    print(table(done))
+    print(f"{len({x.seed for x in done})} frames, {sum(x.seconds for x in done) / max(len(done), 1):.3f} s each")

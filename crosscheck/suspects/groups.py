@@ -120,10 +120,10 @@ def _fit(screen: Screen, group: Group) -> Option | None:
         grid = np.exp(np.linspace(low, high, GRID if turn == 0 else 9))
         left = screen.left(np.column_stack([_group_delta(screen, group, float(g)) for g in grid]))
         k = int(np.argmin(np.where(np.isfinite(left), left, np.inf)))
-        if not left[k] <= 0.5 * screen.total:
-            return None
         step = (high - low) / (len(grid) - 1)
         low, high = np.log(grid[k]) - step, np.log(grid[k]) + step
+    if not left[k] <= 0.5 * screen.total:
+        return None
     tidy = float(f"{grid[k]:.2g}")
     left_tidy = screen.left(_group_delta(screen, group, tidy)[:, None])[0]
     p = tidy if left_tidy <= max(1.2 * left[k], len(screen.residual)) else float(grid[k])

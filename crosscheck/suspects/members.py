@@ -146,10 +146,12 @@ def _fit(screen: Screen, m: int, family: str) -> tuple[float, _Trial, list[Float
         trials = [_member_trial(screen.frame, m, family, float(g)) for g in grid]
         left, actions = _weigh(screen, trials)
         k = int(np.argmin(left))
-        if not np.isfinite(left[k]) or left[k] > 0.5 * screen.total:
+        if not np.isfinite(left[k]):
             return None
         step = (high - low) / (GRID - 1)
         low, high = np.log(grid[k]) - step, np.log(grid[k]) + step
+    if left[k] > 0.5 * screen.total:
+        return None
     tidy = float(f"{grid[k]:.2g}")
     rounded = [_member_trial(screen.frame, m, family, tidy)]
     left_tidy, actions_tidy = _weigh(screen, rounded)

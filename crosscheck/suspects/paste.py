@@ -100,7 +100,8 @@ def _units(seen: Observation) -> Iterator[Option]:
 
 def _unit(seen: Observation, rows: Ints, what: str, table: dict[str, float] | None = None) -> Iterator[Option]:
     """Unit ratios near the one that the values show."""
-    large = rows[(np.abs(seen.said[rows]) > seen.allowed[rows]) & (seen.value[rows] != 0)]
+    size = np.abs(seen.said[rows])
+    large = rows[(size > 0.01 * size.max()) & (seen.value[rows] != 0)]
     if not len(large):
         return
     ratio = float(np.median(seen.said[large] / seen.value[large]))

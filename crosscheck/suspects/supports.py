@@ -126,12 +126,12 @@ def _fit_spring(
         actions = [screen.base.support_actions(name, block, wanted) for name in screen.seen.names]
         left = screen.left_by(screen.support_grams, block, actions)
         k = int(np.argmin(left))
-        if not np.isfinite(left[k]) or left[k] > 0.5 * screen.total:
+        if not np.isfinite(left[k]):
             return None
         best, step = trial[k], (high - low) / 24
         low, high = np.log(best / scale) - step, np.log(best / scale) + step
         delta = screen.delta_of(screen.effects.reaction, j, [a[k] for a in actions])
-    return float(best), delta
+    return None if left[k] > 0.5 * screen.total else (float(best), delta)
 
 
 def every_support_option(frame: Frame) -> Iterator[Change]:

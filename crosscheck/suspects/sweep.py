@@ -86,11 +86,11 @@ class Sweep:
         said = seen.said if said is None else said
         claimed = seen.value if option.claimed is None else option.claimed
         half = seen.half if option.half is None else option.half
-        before = float(((seen.residual / seen.allowed) ** 2).sum())
         left = claimed - said
-        lost = ~np.isfinite(left)
-        left = np.where(lost, seen.residual, left)
-        after = float(((left / seen.allowed) ** 2).sum())
+        left = np.where(np.isfinite(left), left, seen.residual)
+        # Rounding of the printout is no difference: neither before nor after.
+        before = float(((np.maximum(np.abs(seen.residual) - seen.half, 0.0) / seen.allowed) ** 2).sum())
+        after = float(((np.maximum(np.abs(left) - half, 0.0) / seen.allowed) ** 2).sum())
         meets = seen.meets + 1.05 * np.maximum(half - seen.half, 0.0)
         noise = np.maximum(half, seen.noise)
         return Weighed(
