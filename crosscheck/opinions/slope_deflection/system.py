@@ -27,6 +27,8 @@ PENALTY = 1e6
 """Elongation stiffness of an axially rigid member in units of the frame's largest 12 EI/l^3."""
 ROUNDS = 12
 """Most rounds of correction; three to five are usual."""
+FEWEST = 4
+"""After so many rounds, corrections that no longer halve are rounding noise and end the rounds too."""
 STILL = 1e-15
 """Corrections below this share of the displacements end the rounds."""
 
@@ -96,24 +98,27 @@ class System:
         """Correct displacements and member forces until the joints balance and rigid members keep their lengths."""
         rigid_rows = 3 * np.flatnonzero(self.rigid) + 2
         penalty = self.member_stiffness.diagonal()[rigid_rows][:, None]
-        stretch = stretch[self.rigid]
         # The first axial force of a rigid member is penalty times the elongation that the held displacements ask for.
-        forces[rigid_rows] -= penalty * stretch
+        forces[rigid_rows] -= penalty * stretch[self.rigid]
+        longer = (self.deformation @ shift)[rigid_rows] - stretch[self.rigid]
         last = np.inf
         # Corrections are judged by the largest displacement so far: the final ones may be nothing but rounding noise.
         reach = np.abs(shift).max(axis=0, initial=0.0)
-        for _ in range(ROUNDS):
+        for done in range(1, ROUNDS + 1):
             residual = outer - self.deformation.T @ forces - self.spring[:, None] * shift
             step = np.zeros_like(shift)
             step[self.free] = self.correct(residual[self.free])
             shift = shift + step
-            forces = forces + self.member_stiffness @ (self.deformation @ step)
+            bent = self.deformation @ step
+            forces = forces + self.member_stiffness @ bent
             reach = np.maximum(reach, np.abs(shift).max(axis=0, initial=0.0))
             size = _largest_share(step, reach)
-            if size <= STILL or (size >= last / 2 and size <= 1e-12):
+            if size <= STILL or (done >= FEWEST and size >= last / 2):
                 break
             last = size
-            forces[rigid_rows] += penalty * ((self.deformation @ shift)[rigid_rows] - stretch)
+            # Elongations are summed from the corrections: from the displacements they would be rounding, times penalty.
+            longer = longer + bent[rigid_rows]
+            forces[rigid_rows] += penalty * longer
         return forces, shift
 
     def _joint_loads(self, table: LoadTable, fixed: FixedEnds) -> Floats:
