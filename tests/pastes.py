@@ -17,16 +17,19 @@ from typing import Any
 
 import numpy as np
 
-from crosscheck import check
+from crosscheck.answer import Answer
 from crosscheck.claims.decode import decode
 from crosscheck.claims.read import read_claim_text
 from crosscheck.claims.reading import FrameNames, ReadingOptions
 from crosscheck.compare.claim import ClaimComparison
 from crosscheck.compare.closing import close
 from crosscheck.compare.differences import worst
+from crosscheck.compare.opinions import CaseJudgement, Comparison
 from crosscheck.compare.tolerance import CLAIM
+from crosscheck.frame.kinematics import study
 from crosscheck.frame.model import Frame
 from crosscheck.frame.reader import read_frame_text
+from crosscheck.opinions import moment_distribution, slope_deflection
 
 FRAMES = 30
 
@@ -129,7 +132,9 @@ class Known:
     """A frame with its opinions."""
 
     frame: Frame
-    opinions: check.Opinions
+    answers: dict[str, Answer]
+    judgements: dict[str, CaseJudgement]
+    comparison: ClaimComparison
 
     @property
     def names(self) -> FrameNames:
@@ -139,7 +144,12 @@ class Known:
 @lru_cache(maxsize=None)
 def known(k: int) -> Known:
     frame = read_frame_text(frame_text(k), f"frame{k}.toml")
-    return Known(frame, check.ask(frame))
+    found = study(frame)
+    answers = {"slope-deflection": slope_deflection.opine(frame, found), "moment-distribution": moment_distribution.opine(frame, found)}
+    assert all(isinstance(a, Answer) for a in answers.values())
+    comparison = Comparison(frame, answers)
+    judgements = {name: comparison.judge(name) for name in frame.names}
+    return Known(frame, answers, judgements, ClaimComparison(frame, {"slope-deflection": answers["slope-deflection"]}, judgements, CLAIM))
 
 
 # --- what a paste looks like
@@ -246,9 +256,9 @@ def number(value: float, decimals: int, writing: str, unit: str = "") -> str:
     """One number as `writing` has it; NaN as a dash."""
     if not np.isfinite(value):
         return "-"
-    value = round(value, decimals) + 0.0
     if writing == "exponent":
-        return f"{value:.{max(3, min(decimals + 2, 7))}E}"
+        return f"{value + 0.0:.{max(3, min(decimals + 2, 7))}E}"
+    value = round(value, decimals) + 0.0
     text = f"{abs(value):,.{decimals}f}" if writing == "thousands" else f"{abs(value):.{decimals}f}"
     negative = value < 0
     if writing == "decimal comma":
@@ -278,7 +288,7 @@ class Maker:
         self.spec, self.plant = spec, plant
         self.known = known(spec.frame)
         self.frame, self.r = self.known.frame, Random(f"make {spec.seed}")
-        self.answer = self.known.opinions.answers["slope-deflection"]
+        self.answer = self.known.answers["slope-deflection"]
         f, self.F, a, arm, d, self.D, t, self.T = UNITS[spec.units]
         self.unit_words = {"force": f, "moment": (f + a if len(f) <= 2 else f"{f} {a}"), "length": d, "angle": t, "arm": a}
         self.scale = {"force": self.F, "moment": self.F * arm, "length": self.D, "angle": self.T, "arm": arm}
@@ -601,8 +611,8 @@ def judge(paste: Paste) -> Outcome:
     """The verdict on the paste, as `verify` gives it where the opinions agree."""
     k = known(paste.spec.frame)
     reading = read_claim_text(decode(paste.data), k.names, paste.options)
-    closed = close(reading, k.frame, k.opinions.answers, paste.case, CLAIM)
-    cases = ClaimComparison(k.frame, k.opinions.answers, k.opinions.judgements, CLAIM).judge(closed)
+    closed = close(reading, k.frame, k.answers, paste.case, CLAIM)
+    cases = k.comparison.judge(closed)
     verdicts = [c.verdict for c in cases]
     if closed.undecided or closed.foreign or not cases:
         verdicts.append("undecided")
@@ -621,12 +631,12 @@ def _coarse(outcome: Outcome) -> int:
 
 
 def main() -> None:
-    count = int(sys.argv[1]) if len(sys.argv) > 1 else 300
+    first, count = (int(sys.argv[2]), int(sys.argv[1])) if len(sys.argv) > 2 and sys.argv[2].isdigit() else (0, int(sys.argv[1]))
     verbose = "-v" in sys.argv
     right: Counter[str] = Counter()
     drawn: Counter[str] = Counter()
     verdicts: Counter[str] = Counter()
-    for seed in range(count):
+    for seed in range(first, first + count):
         paste = make(seed)
         outcome = judge(paste)
         ok = is_right(paste, outcome)

@@ -6,15 +6,16 @@ rows stand in line, position decides; else the count of words.
 
 from __future__ import annotations
 
+import re
 from collections import Counter
-from collections.abc import Callable
 from dataclasses import dataclass, field
+from itertools import combinations
 
 from crosscheck.claims.names import Names, without_prefix
 from crosscheck.claims.numbers import is_blank
 from crosscheck.claims.scan import RawTable, is_number
 from crosscheck.claims.split import Cell, Separator, join_units, separator_of, split, wide_cells
-from crosscheck.claims.words import RESULT_NOUNS, Head, head_of, is_header_word, unit_of
+from crosscheck.claims.words import Head, head_of, is_header_word, unit_of
 
 Row = list[str]
 
@@ -109,11 +110,15 @@ def join_names(cells: list[Cell], names: Names) -> list[Cell]:
     return out
 
 
+_DASHES = ("-", "\u2013", "\u2212", "\u2014", "to", "->", "\u2192", "/")
+
+
 def _name_size(cells: list[Cell], k: int, names: Names) -> int:
     """How many cells from k make one name."""
     for size in (4, 3, 2):
         part = cells[k : k + size]
-        if len(part) < size or is_number(part[-1].text) and is_number(part[0].text):
+        dashed = size == 3 and part[1:2] and part[1].text in _DASHES
+        if len(part) < size or is_number(part[-1].text) and is_number(part[0].text) and not dashed:
             continue
         text = " ".join(c.text for c in part)
         gap = max(b.start - a.end for a, b in zip(part, part[1:], strict=False))
@@ -128,8 +133,7 @@ def _is_one_name(text: str, part: list[Cell], names: Names) -> bool:
     if len(part) == 2:
         bare = {without_prefix(text, kind) for kind in ("member", "joint", "case")}
         return part[1].text in bare or (part[1].text.lstrip("#:.") in bare)
-    middle = [c.text for c in part[1:-1]]
-    dashed = any(m in ("-", "\u2013", "\u2212", "\u2014", "to", "->", "\u2192", "/") for m in middle)
+    dashed = any(c.text in _DASHES for c in part[1:-1])
     return dashed and names.member(text) is not None
 
 
@@ -141,9 +145,10 @@ def _by_blanks(table: RawTable, rows: list[list[Cell]], columns: tuple[str, ...]
     full = [r for r in rows if len(r) == width]
     spans = [(min(r[j].start for r in full), max(r[j].end for r in full)) for j in range(width)]
     aligned = all(a[1] <= b[0] for a, b in zip(spans, spans[1:], strict=False))
+    seen = [{r[j].text for r in full if not is_number(r[j].text)} for j in range(width)]
     grid = Grid([])
     for k, (cells, (line, text)) in enumerate(zip(rows, table.rows, strict=True)):
-        row = _placed(cells, spans, aligned)
+        row = _placed(cells, spans, aligned) if aligned or len(cells) == width else _by_kind(cells, seen)
         if row is None:
             grid.odd.append((line, text, f"{len(cells)} cells in a table of {width} columns"))
             continue
@@ -171,6 +176,29 @@ def _placed(cells: list[Cell], spans: list[tuple[int, int]], aligned: bool) -> R
     return [""] * (width - len(cells)) + [c.text for c in cells]
 
 
+def _by_kind(cells: list[Cell], seen: list[set[str]]) -> Row | None:
+    """A row that lacks cells and does not stand in line: they are missing where the others then look as in full rows.
+
+    seen: the words found in each column of the full rows (none in columns of numbers).
+    """
+    lacking = len(seen) - len(cells)
+    if not 0 < lacking <= 2 or not cells:
+        return None
+
+    def likeness(row: Row) -> float:
+        return sum(
+            0.0 if not text else 2.0 if text in words else 0.5 if bool(words) != is_number(text) else -1.0
+            for text, words in zip(row, seen, strict=True)
+        )
+
+    texts = [c.text for c in cells]
+    rows: list[Row] = []
+    for gaps in combinations(range(len(seen)), lacking):
+        rest = iter(texts)
+        rows.append(["" if j in gaps else next(rest) for j in range(len(seen))])
+    return max(rows, key=likeness)
+
+
 def _nearest(cell: Cell, spans: list[tuple[int, int]]) -> int:
     """The column that the cell overlaps most, else the one it is nearest to."""
 
@@ -184,78 +212,64 @@ def _nearest(cell: Cell, spans: list[tuple[int, int]]) -> int:
 def _blank_heads(table: RawTable, spans: list[tuple[int, int]], aligned: bool) -> list[Head]:
     """Heads of the columns: by wide gaps, by words, by position; the first way that understands the most."""
     width = len(spans)
-    if not table.heads:
-        return [Head("")] * width
-    best: list[Head] = []
-    for way in (_by_wide, _by_words, _by_single_words, _by_words_with_ends, _by_place):
-        stacked = [""] * width
+    best: list[Head] = [Head("")] * width
+    for way in (_by_wide, _by_words, _by_place):
+        stacked: Row | None = [""] * width
         for depth, (_, text) in enumerate(table.heads):
-            units = wide_or_single(text)
-            row = _under(units, spans, aligned) if depth and _all_units([c.text for c in units]) else way(text, spans, aligned, depth < len(table.heads) - 1)
-            if row is None:
+            group = depth + 1 < len(table.heads) and not _is_units_line(table.heads[depth + 1][1])
+            units = depth > 0 and _is_units_line(text)
+            row = _placed(_units_of(text), spans, aligned) if units else way(text, spans, aligned, group)
+            if row is None or stacked is None:
+                stacked = None
                 break
             stacked = [_put_together(a, b) for a, b in zip(stacked, row, strict=True)]
-        else:
-            heads = [head_of(t) for t in stacked]
-            if _understood(heads) > _understood(best):
-                best = heads
-    return best or [Head("")] * width
+        heads = [head_of(t) for t in stacked] if stacked else []
+        if heads and _understood(heads) >= width:
+            return heads
+        if _understood(heads) > _understood(best):
+            best = heads
+    return best
 
 
-def wide_or_single(text: str) -> list[Cell]:
-    """Cells of a line of units."""
-    wide = wide_cells(text)
-    return wide if all(unit_of(c.text.strip("[](){}")) for c in wide) else split(text, "blank")
+def _is_units_line(text: str) -> bool:
+    return _all_units([c.text for c in _units_of(text)])
 
 
-def _under(cells: list[Cell], spans: list[tuple[int, int]], aligned: bool) -> Row | None:
-    """A line of units under the heads: by place, or the last columns where the rows do not stand in line."""
-    if len(cells) > len(spans):
-        return None
-    return _placed(cells, spans, aligned)
+def _units_of(text: str) -> list[Cell]:
+    """The cells of a line of units, in brackets or not."""
+    return [Cell(m.start(), m.end(), m.group()) for m in re.finditer(r"\[[^\]]*\]|\([^)]*\)|\S+", text)]
 
 
 def _understood(heads: list[Head]) -> float:
-    return sum(bool(h.noun) + 0.1 * bool(h.unit or h.end is not None) for h in heads)
+    return sum(_worth(h) for h in heads)
 
 
 def _by_wide(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
     cells = wide_cells(text)
     if len(cells) == len(spans):
         return [c.text for c in cells]
-    return _under_groups(cells, spans) if group and aligned else _fewer(cells, spans, aligned)
+    if group:
+        return _under_groups(cells, spans) if aligned and len(cells) > 1 else None
+    return _placed(cells, spans, aligned) if aligned and 1 < len(cells) < len(spans) else None
 
 
 def _by_words(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
-    return _by_count(_phrases(split(text, "blank"), _belongs), spans, aligned, group)
-
-
-def _by_single_words(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
-    return _by_count(_phrases(split(text, "blank"), _is_units_of), spans, aligned, group)
-
-
-def _by_words_with_ends(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
-    return _by_count(_phrases(split(text, "blank"), _belongs_or_end), spans, aligned, group)
-
-
-def _by_count(words: list[Cell], spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
-    if len(words) == len(spans):
-        return [c.text for c in words]
-    return None if group else _fewer(words, spans, aligned)
-
-
-def _fewer(cells: list[Cell], spans: list[tuple[int, int]], aligned: bool) -> Row | None:
-    """One head fewer than columns: a printed index stands unnamed on the left (or position tells which lacks a head)."""
-    if aligned and 0 < len(cells) < len(spans):
-        return _placed(cells, spans, aligned)
-    return [""] + [c.text for c in cells] if len(cells) == len(spans) - 1 else None
+    """The words as they group best into one head a column; or into one fewer, where a printed index has no head."""
+    words = tuple(text.split())
+    if group or len(words) > 60 or len(spans) > 40:
+        return None
+    whole, fewer = _grouped(words, len(spans)), _grouped(words, len(spans) - 1)
+    if fewer and (not whole or fewer[0] > whole[0] + 0.5):
+        return ["", *fewer[1]]
+    return list(whole[1]) if whole else None
 
 
 def _by_place(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
     if not aligned:
         return None
     if group:
-        return _under_groups(wide_cells(text), spans)
+        cells = wide_cells(text)
+        return _under_groups(cells, spans) if len(cells) > 1 else None
     row = [""] * len(spans)
     for cell in split(text, "blank"):
         j = _nearest(cell, spans)
@@ -266,8 +280,6 @@ def _by_place(text: str, spans: list[tuple[int, int]], aligned: bool, group: boo
 def _under_groups(cells: list[Cell], spans: list[tuple[int, int]]) -> Row | None:
     """A head line whose cells stand over several columns: each column takes the group whose middle is nearest, or the last
     one that begins at or before it where groups begin in line with their first column."""
-    if not cells:
-        return None
     begins = all(any(abs(c.start - s) <= 2 for s, _ in spans) for c in cells)
     row = []
     for start, end in spans:
@@ -280,44 +292,46 @@ def _under_groups(cells: list[Cell], spans: list[tuple[int, int]]) -> Row | None
     return row
 
 
-def _phrases(words: list[Cell], belongs: Callable[[str, str], bool]) -> list[Cell]:
-    """Head words that belong together: a unit to what stands before it, "load" to "case", "axial" to "force"."""
-    out: list[Cell] = []
-    for word in words:
-        last = out[-1] if out else None
-        if last and belongs(last.text, word.text):
-            out[-1] = Cell(last.start, word.end, f"{last.text} {word.text}")
-        else:
-            out.append(word)
-    return out
+# -- words to heads
+
+MOST_WORDS = 5
+"""Words that one head may have."""
+_NAMING = frozenset({"member", "joint", "end", "case", "station", "which"})
+_GIVING = frozenset({"N", "V", "M", "D", "T", "w"})
 
 
-_PAIRS = {
-    "load": {"case", "combination", "comb", "comb.", "combo", "no.", "no"}, "axial": {"force", "load"},
-    "shear": {"force"}, "bending": {"moment"}, "end": {"moment", "node", "joint", "shear"}, "start": {"node", "joint"},
-    "normal": {"force"}, "member": {"no", "no.", "end", "name", "id"}, "joint": {"no", "no.", "name", "i", "j", "id"},
-    "node": {"no", "no.", "name", "i", "j", "id"}, "max": {"m", "n", "v", "moment", "shear", "axial"},
-    "min": {"m", "n", "v", "moment", "shear", "axial"}, "force": {"x", "y", "z"}, "moment": {"x", "y", "z"},
-    "from": {"node", "joint"}, "to": {"node", "joint"}, "beam": {"no", "no."}, "element": {"no", "no.", "id"},
-    "rotation": {"x", "y", "z"}, "support": {"node", "joint", "reaction"}, "output": {"case"},
-}  # fmt: skip
+def _grouped(words: tuple[str, ...], width: int) -> tuple[float, tuple[str, ...]] | None:
+    """The words in order as `width` heads that together say the most; None where they cannot be."""
+    if width < 1 or not width <= len(words) <= MOST_WORDS * width:
+        return None
+    best: list[dict[int, tuple[float, tuple[str, ...]]]] = [{} for _ in range(len(words) + 1)]
+    best[0][0] = (0.0, ())
+    for k in range(1, len(words) + 1):
+        for size in range(1, min(MOST_WORDS, k) + 1):
+            text = " ".join(words[k - size : k])
+            worth = _group_worth(words[k - size : k], text)
+            for count, (value, heads) in best[k - size].items():
+                if count < width and (count + 1 not in best[k] or best[k][count + 1][0] < value + worth - 1e-9):
+                    best[k][count + 1] = (value + worth, (*heads, text))
+    return best[-1].get(width)
 
 
-def _belongs(before: str, word: str) -> bool:
-    return _is_units_of(before, word) or word.lower() in _PAIRS.get(before.lower().split()[-1], set())
+def _worth(head: Head) -> float:
+    """How much a head says."""
+    if head.noun:
+        return 1.0 + 0.1 * bool(head.unit) + 0.05 * bool(head.which or head.end is not None)
+    return 0.3 if head.which or head.end is not None else 0.0
 
 
-_END_WORDS = frozenset({"i", "j", "1", "2", "start", "end", "a", "b", "from", "to", "left", "right"})
-
-
-def _belongs_or_end(before: str, word: str) -> bool:
-    """Also the end of the member to its result ("N i (kN)")."""
-    head = head_of(before)
-    return _belongs(before, word) or (word.lower() in _END_WORDS and head.noun in RESULT_NOUNS and head.end is None)
-
-
-def _is_units_of(before: str, word: str) -> bool:
-    bare = word.strip("[](){},")
-    if word[:1] in "[({" and (unit_of(bare) or bare in ("i", "j", "x", "y", "z")):
-        return True
-    return "[" in before and "]" not in before or "(" in before and ")" not in before
+def _group_worth(words: tuple[str, ...], text: str) -> float:
+    """A head that holds two columns' words is worth less, and so is a unit alone."""
+    if len(words) == 1 and unit_of(text.strip("[](){}")) and text[:1] in "[({":
+        return -0.5
+    head = head_of(text)
+    nouns = [head_of(w).noun for w in words if not unit_of(w.strip("[](){}"))]
+    naming, giving = ({n for n in nouns if n in kind} for kind in (_NAMING, _GIVING))
+    crowd = max(0, len(naming) - 1) + max(0, len(giving) - 1) + bool(naming - {"end", "joint"} and giving)
+    axes = len({a for w in words if (a := head_of(w).axis) and head_of(w).noun == "x"})
+    given = bool({"joint", "end"} & naming and (giving or {"F", "R"} & set(nouns)))
+    lost = bool(head.which and head.noun in _NAMING)
+    return _worth(head) - 0.6 * crowd - 0.6 * max(0, axes - 1) - 0.3 * given - 0.5 * lost

@@ -173,7 +173,9 @@ def _kind(heads: list[Head], roles: list[Role], table: RawTable) -> tuple[str, s
     if echo := _echo_kind(heads, names_of, heading, nouns):
         return echo, ""
     of_member = "member" in names_of or {"start joint", "end joint"} <= names_of or any(table.blocks)
-    station = "station" in names_of or ("x" in nouns and bool(forces) and not re.search("react|displ", heading))
+    axes = [h.axis for h in heads if h.noun == "x"]
+    along = axes == ["x"] and bool(forces) and (of_member or "joint" not in names_of)
+    station = "station" in names_of or (along and not re.search("react|displ", heading))
     if _moves(heads, nouns, heading) and not (of_member and station):
         return ("displacement", "") if "joint" in names_of else ("", "displacements of what is not said")
     if station and (of_member or nouns & {"N", "V"} or "M" in nouns):

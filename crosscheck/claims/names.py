@@ -22,7 +22,8 @@ _PAIR = re.compile(r"\s*(?:-+>?|\u2192|/|\bto\b|:|\.\.|,|~|_)\s*|\s+")
 
 def plain(text: str) -> str:
     """Letters and digits of a name in one case; zeros before a number dropped ("M03" is "m3")."""
-    return re.sub(r"(?<![0-9.])0+(?=[0-9])", "", re.sub(r"[^\w.+']|_", "", _DASH.sub("-", text).casefold()))
+    tidy = re.sub(r"(?<=\d)[^\w.]+(?=\d)", "~", _DASH.sub("-", text).casefold())  # "1-2" is not "12"
+    return re.sub(r"(?<![0-9.])0+(?=[0-9])", "", re.sub(r"[^\w.+'~]|_", "", tidy))
 
 
 def without_prefix(text: str, kind: str) -> str:
@@ -52,8 +53,8 @@ class _Book:
                 if key:
                     self.levels[level].setdefault(key, []).append(name)
 
-    def find(self, text: str) -> str | None:
-        """The one name that `text` may mean, or None."""
+    def find(self, text: str, number_alone: bool = True) -> str | None:
+        """The one name that `text` may mean, or None. `number_alone`: "3" may mean "m3"."""
         text = text.strip().strip("\"'`*")
         for writing in (text, plain(text)):
             if writing in self.given:
@@ -63,6 +64,8 @@ class _Book:
         for writing in dict.fromkeys((text, without_prefix(text, self.kind))):
             if found := self._only(0, plain(writing)):
                 return found
+        if not number_alone:
+            return None
         bare = without_prefix(text, self.kind)
         # "m3" may be the frame's "3", and "3" its "m3", but never "c3" its "b3".
         return self._only(1, _core(bare)) if self._same_letters(bare) else None
@@ -130,7 +133,9 @@ class Names:
         if text.strip() in self.frame.members or plain(text) in self._members.given or text in self._members.given:
             name = self._members.find(text)
             return MemberHit(name, self._run(name, text)) if name else None
-        # The two joints of "B - A" say more than the letters: they say which way the paste's member runs.
+        # The two joints of "B - A" say which way the paste's member runs; but a name as it stands goes first.
+        if name := self._members.find(text, number_alone=False):
+            return MemberHit(name, self._run(name, text))
         if hit := self._pair(text):
             return hit
         name = self._members.find(text)

@@ -13,7 +13,7 @@ from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Mean
 from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.reading import Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
-from crosscheck.claims.scan import RawTable, Scan, scan
+from crosscheck.claims.scan import RawTable, Scan, cells_of, is_number, scan
 from crosscheck.claims.stated import Stated, stated_in, with_options
 from crosscheck.claims.words import Size, unit_of
 from crosscheck.frame.units import Dimension
@@ -155,7 +155,8 @@ class _Reader:
         rows = [(line, text, meaning.why) for line, text in raw.rows]
         self.odd += rows
         self._trace(rows)
-        if raw.heads:
+        busy = [text for _, text in raw.rows if sum(is_number(c.text) for c in cells_of(text)[1]) >= 2]
+        if raw.heads or len(busy) >= 2:
             self.undecided.append(
                 f"the table at line {raw.rows[0][0]} cannot be understood ({meaning.why}); "
                 "say what its columns are with --columns"

@@ -182,7 +182,7 @@ class _Scanner:
             return False
         if _UNITS_SENTENCE.search(text):
             return False
-        groups = [filled]
+        groups = [[t for t in filled if not is_number(t)]]
         if separator == "blank":
             groups.append([c.text for c in wide_cells(text)])
         for cells in groups:
@@ -191,7 +191,7 @@ class _Scanner:
             results = sum(h.noun in RESULT_NOUNS or h.noun in ("x", "E", "I", "A") or bool(h.which) for h in heads)
             units = sum(unit_of(c.strip("[](){}")) is not None for c in cells)
             if known >= 2 and known + units >= 0.6 * len(cells) and (results or known == len(cells) > 1):
-                return separator != "blank" or len(cells) == len(filled) or known >= 2
+                return True
         return False
 
     # -- headings

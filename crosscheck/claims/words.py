@@ -146,6 +146,8 @@ def _head(text: str) -> Head:
         return Head(text, "station", share=True)
     if re.fullmatch(r"l\s*/\s*c", tidy.strip()):
         return Head(text, "case")
+    if tidy.strip() == "at":
+        return Head(text, "end")
     if unit and unit.text == "%":
         share, unit = True, None
     head = _from_tokens(text, re.findall(r"[a-z]+\d*(?:max|min)?|\d+|[+-]", tidy))

@@ -104,13 +104,13 @@ class _Closer:
         for f in fitted:
             if id(f) not in open_choices or sure_to_fail:
                 values += self._values(f, entries, cases, meant)
-        notes += [_sureness(f) for f in fitted if id(f) not in open_choices]
         closed = self.result(cases, notes, undecided)
         return replace(
             closed,
             values=tuple(sorted(values, key=lambda v: v.line)),
             units=_units_said(fitted, entries, self.frame),
-            signs=_signs_said(fitted, meant),
+            signs={key: meant.words(f) for key, f in _by_key(fitted)},
+            fits={key: _fits(f) for key, f in _by_key(fitted)},
             reversed_load=meant.reversed_load,
         )
 
@@ -280,11 +280,10 @@ def _signs_at_odds(f: Fitted) -> str:
     )
 
 
-def _sureness(f: Fitted) -> str:
+def _fits(f: Fitted) -> tuple[int, int]:
+    """How many of the values that can tell a sign fit, and how many there are."""
     telling = f.taken.telling
-    right = int((telling & ~f.taken.bad).sum())
-    where = {"end": "member ends", "span": "along members", "extreme": "extremes"}.get(f.batch.kind, f.batch.kind + "s")
-    return f"{f.batch.quantity} ({where}): {f.taken.convention.words}; {right} of {int(telling.sum())} telling values fit"
+    return int((telling & ~f.taken.bad).sum()), int(telling.sum())
 
 
 def _to_frame(
@@ -313,11 +312,10 @@ def _to_frame(
 
 def _units_said(fitted: list[Fitted], entries: list[Entry], frame: Frame) -> dict[str, str]:
     out: dict[str, str] = {}
-    for f in fitted:
+    for key, f in _by_key(fitted):
         stated = {str(e.unit.text) for k in f.batch.entry.tolist() if (e := entries[k]).unit}
         found = f.taken.unit.text if f.taken.unit and np.isnan(f.batch.factor).any() else ""
         said = [*sorted(stated), *([f"{found} ({'assumed' if f.taken.unit and f.taken.unit.own else 'by fit'})"] if found else [])]
-        key = f.batch.quantity if f.batch.quantity not in out else f"{f.batch.kind} {f.batch.quantity}"
         out[key] = ", ".join(said) or unit_name(frame.units, _dimension(f.batch.quantity))
     return out
 
@@ -328,9 +326,9 @@ def _dimension(quantity: str) -> Dimension:
     return MOMENT if quantity == "moment" else LENGTH
 
 
-def _signs_said(fitted: list[Fitted], meant: Senses) -> dict[str, str]:
-    out: dict[str, str] = {}
+def _by_key(fitted: list[Fitted]) -> list[tuple[str, Fitted]]:
+    """Batches by what reports call them: the quantity, with its kind where an earlier one has that name."""
+    out: dict[str, Fitted] = {}
     for f in fitted:
-        key = f.batch.quantity if f.batch.quantity not in out else f"{f.batch.kind} {f.batch.quantity}"
-        out[key] = meant.words(f)
-    return out
+        out[f.batch.quantity if f.batch.quantity not in out else f"{f.batch.kind} {f.batch.quantity}"] = f
+    return list(out.items())

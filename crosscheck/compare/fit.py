@@ -41,6 +41,11 @@ class Choice:
     def fits(self) -> bool:
         return not bool(self.bad.any())
 
+    @property
+    def rank(self) -> tuple[bool, float]:
+        """Smaller is better: what fits before what does not, then by how many values it fits or how near it is."""
+        return (False, -float(self.telling.sum())) if self.fits else (True, self.distance)
+
 
 @dataclass(slots=True)
 class Fitted:
@@ -72,12 +77,6 @@ class Fitter:
         return [trial.fitted(picked.get(id(trial))) for trial in tables]
 
 
-@dataclass(frozen=True, slots=True)
-class _Best:
-    choice: Choice
-    rank: tuple[bool, float]
-
-
 class _Trial:
     """One batch against every convention, unit by unit, each worked out once."""
 
@@ -85,7 +84,7 @@ class _Trial:
         self.batch, self.tolerance = batch, fitter.tolerance
         self.open = bool(np.isnan(batch.factor).any())
         self.conventions = conventions(batch)
-        self.expected = [expected(batch, fitter.references, c) for c in self.conventions]
+        self.expected = _expected(batch, fitter.references, self.conventions)
         self.scale, self.unsupported = _scales(batch, fitter.references)
         self._known: dict[float, list[Choice]] = {}
 
@@ -99,14 +98,12 @@ class _Trial:
             ]
         return self._known[key]
 
-    def best(self, unit: UnitChoice | None) -> _Best:
+    def best(self, unit: UnitChoice | None) -> Choice:
         choices = self.choices(unit)
-        ranks = [(not c.fits, 0.0 if c.fits else c.distance) for c in choices]
-        k = min(range(len(choices)), key=lambda k: (ranks[k], k))
-        return _Best(choices[k], ranks[k])
+        return min(choices, key=lambda c: c.rank)  # the first of equals: the plainest
 
     def fitted(self, unit: UnitChoice | None) -> Fitted:
-        return Fitted(self.batch, self.choices(unit), self.best(unit).choice)
+        return Fitted(self.batch, self.choices(unit), self.best(unit))
 
     def _choice(
         self, unit: UnitChoice | None, convention: Convention, said: Floats, value: Floats, half: Floats
@@ -124,8 +121,18 @@ class _Trial:
         telling = known & ((np.abs(said) > may) | (np.abs(value) > may))
         total = np.abs(value) + np.abs(said)
         share = np.where(telling & (total > 0), apart / np.where(total > 0, total, 1.0), 0.0)
-        distance = float(share.sum() / max(1, int(telling.sum())))
+        # A value that this unit would make too coarse to judge speaks against the unit.
+        coarse = np.isfinite(said) & ~known
+        distance = float((share.sum() + coarse.sum()) / max(1, int(telling.sum() + coarse.sum())))
         return Choice(unit, convention, bad, telling, known & (size_apart > may), distance)
+
+
+def _expected(batch: Batch, references: list[Reference], tried: list[Convention]) -> list[Floats]:
+    """What the opinion says in every convention; the two signs of one are each other's negative, but for extremes."""
+    if batch.kind == "extreme":
+        return [expected(batch, references, c) for c in tried]
+    straight = {(c.form, c.rule): expected(batch, references, c) for c in tried if c.sign == 1}
+    return [c.sign * straight[c.form, c.rule] for c in tried]
 
 
 def _nearer(said: Floats, value: Floats) -> Floats:

@@ -173,8 +173,7 @@ def _expected_in(batch: Batch, reference: Reference, convention: Convention) -> 
     if batch.kind == "span":
         x = distance(batch, reference.frame, r)
         sides = [reference.along(batch.member, x, side)[:, column] for side in (-1, 1)]
-        both: Floats = s * turned[:, None] * np.column_stack(sides)
-        return both
+        return np.asarray(s * turned[:, None] * np.column_stack(sides), dtype=float)
     if batch.kind == "extreme":
         most = reference.extremes[batch.member, :, column]
         return _extreme(batch.extreme, most, s * turned)[:, None]

@@ -70,8 +70,7 @@ def narrowed(f: Fitted, signs: Mapping[str, str]) -> Fitted:
     kept = [c for c in f.choices if _allows(f, c.convention, signs)]
     if not kept:
         return f
-    best = min(range(len(kept)), key=lambda k: (not kept[k].fits, 0.0 if kept[k].fits else kept[k].distance, k))
-    return Fitted(f.batch, kept, kept[best])
+    return Fitted(f.batch, kept, min(kept, key=lambda c: c.rank))
 
 
 def _stated(f: Fitted, signs: Mapping[str, str]) -> str | None:
