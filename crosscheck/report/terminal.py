@@ -27,6 +27,7 @@ from crosscheck.problems import UnusableInput
 from crosscheck.report import words
 
 MOST_DIFFERENCES = 15
+MOST_MISFITS = 8
 MOST_ROWS = 60
 VERDICT_STYLE: dict[Verdict, str] = {"agree": "bold", "disagree": "bold reverse", "undecided": "bold underline"}
 
@@ -36,6 +37,17 @@ def console(file: IO[str] | None = None) -> Console:
     return Console(file=file, highlight=False, emoji=False, markup=False)
 
 
+def show(report: RenderableType, file: IO[str] | None = None) -> None:
+    """Print a report; where it goes to a file or a pipe, without the blanks that pad a terminal's lines."""
+    out = console(file)
+    if out.is_terminal:
+        out.print(report)
+        return
+    with out.capture() as captured:
+        out.print(report)
+    out.file.write("".join(f"{line.rstrip()}\n" for line in captured.get().splitlines()))
+
+
 # --- small parts
 
 
@@ -43,22 +55,33 @@ def heading(text: str) -> Text:
     return Text(f"\n{text}", style="bold")
 
 
+UNBROKEN = 16
+"""Names up to this long are never broken over lines; numbers never are, however long."""
+
+
 def table(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> RenderableType:
-    """A plain table; columns as (head, "left" or "right")."""
-    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="underline", show_edge=False)
-    for head, side in columns:
-        table.add_column(head, justify="right" if side == "right" else "left", overflow="fold")
+    """A plain table; columns as (head, "left" or "right"). Right-hand columns are numbers."""
+    rows = list(rows)
+    made = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="underline", show_edge=False)
+    for k, (head, side) in enumerate(columns):
+        longest = max((len(row[k]) for row in rows), default=0)
+        if side == "right":
+            made.add_column(head, justify="right", no_wrap=True, min_width=longest)
+        else:
+            made.add_column(head, overflow="fold", min_width=min(longest, UNBROKEN))
     for row in rows:
-        table.add_row(*[Text(cell) for cell in row])
-    return Padding(table, (0, 0, 0, 2), expand=False)
+        made.add_row(*[Text(cell) for cell in row])
+    return Padding(made, (0, 0, 0, 2), expand=False)
 
 
 def _facts(rows: Iterable[tuple[str, str]]) -> RenderableType:
     table = Table(box=None, show_header=False, pad_edge=False, padding=(0, 2, 0, 0))
     table.add_column(no_wrap=True)
     table.add_column(overflow="fold")
+    before = None
     for name, text in rows:
-        table.add_row(Text(name, style="dim"), Text(text))
+        table.add_row(Text("" if name == before else name, style="dim"), Text(text))
+        before = name
     return Padding(table, (0, 0, 0, 2), expand=False)
 
 
@@ -196,7 +219,7 @@ def _results(result: Opinions, name: str) -> list[RenderableType]:
     parts: list[RenderableType] = [heading(f"{name}: results {whose}")]
     parts += [_end_table(result.frame, answer, name), *more(2 * len(result.frame.members), MOST_ROWS)]
     parts += [Text(""), _along_table(result.frame, answer, name), *more(len(result.frame.members), MOST_ROWS)]
-    parts += [Text(""), _joint_table(result.frame, answer, name), *more(len(result.frame.joints), MOST_ROWS)]
+    parts += [Text(""), _joint_table(result, answer, name), *more(len(result.frame.joints), MOST_ROWS)]
     parts += [Text(""), _reaction_table(result.frame, answer, name)]
     return parts
 
@@ -248,8 +271,11 @@ def _at(value: float, x: float, scale: float) -> tuple[str, str]:
     return words.number(float(value), scale), f"{x:.4g}"
 
 
-def _joint_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
+def _joint_table(result: Opinions, answer: Answer, name: str) -> RenderableType:
+    frame, scales = result.frame, result.judgements[name].scales
     moves = answer.cases[name].joints
+    noise = words.NOISE * np.array([scales.of(q) for q in ("dx", "dy", "rotation")])
+    moves = np.where(np.abs(moves) <= noise, 0.0, moves)
     scale = [_largest(moves[:, c]) for c in range(3)]
     rows = [
         (joint, *[words.number(float(moves[k, c]), scale[c]) for c in range(3)])
@@ -325,8 +351,10 @@ def _claim_sentence(result: Verification) -> str:
 def _beside(result: Verification) -> list[str]:
     lines = list(result.grounds)
     unsafe = sum(d.unsafe for c in result.cases for d in c.differences)
+    differ = sum(len(c.differences) for c in result.cases)
     if unsafe:
-        lines.append(f"In {unsafe:,} of them the claim is smaller than the opinions: the unsafe side more often.")
+        which = "The claim is" if unsafe == 1 and differ == 1 else f"In {unsafe:,} of them the claim is"
+        lines.append(f"{which} smaller than the opinions: the unsafe side more often.")
     by_floor = sum(c.by_floor for c in result.cases)
     if by_floor:
         few = words.counted(by_floor, "value agrees", "values agree")
@@ -350,10 +378,10 @@ def _suspect_lines(result: Verification) -> list[RenderableType]:
 def _claim_facts(result: Verification) -> list[tuple[str, str]]:
     c, rows = result.closed, _frame_facts(result.opinions.frame)
     rows.insert(1, ("claim", f"{c.file or 'text'}, {words.counted(c.rows, 'row')}, sha256 {c.sha256[:12]}"))
-    rows.append(("case", words.some(c.cases) or "none"))
+    rows.append(("cases" if len(c.cases) > 1 else "case", words.some(c.cases) or "none"))
     rows.append(("allowed", allowed_words(result)))
     rows += [("units", f"{quantity}: {taken}") for quantity, taken in _grouped(c.units)]
-    rows += [("signs", f"{quantity}: {taken}") for quantity, taken in _grouped(c.signs)]
+    rows += [("signs", f"{quantity}: {taken}; {_fit_words(c.fits.get(quantity))}") for quantity, taken in c.signs.items()]
     rows += [("reading", note) for note in c.notes]
     return rows + _opinion_rows(result.opinions)
 
@@ -364,6 +392,12 @@ def _grouped(taken: dict[str, str]) -> list[tuple[str, str]]:
     for quantity, text in taken.items():
         groups.setdefault(text, []).append(quantity)
     return [(", ".join(quantities), text) for text, quantities in groups.items()]
+
+
+def _fit_words(fits: tuple[int, int] | None) -> str:
+    """How surely a sign is known: by the values that are large enough to tell it."""
+    right, telling = fits or (0, 0)
+    return f"{right:,} of {telling:,} fit" if telling else "no value is large enough to tell"
 
 
 def allowed_words(result: Verification) -> str:
@@ -387,10 +421,10 @@ def _claim_differences(
         rows.append((
             words.place(d.place), d.place.quantity,
             _with_face(frame, d, claim, ours), _with_face(frame, d, ours, claim),
-            words.short(d.difference), words.short(d.allowed), d.note or side,
+            words.short(d.difference), words.short(d.allowed), d.note or side, str(d.line or ""),
         ))  # fmt: skip
     columns = [("place", "left"), ("quantity", "left"), ("claim", "right"), ("opinions", "right"),
-               ("differ by", "right"), ("allowed", "right"), ("", "left")]  # fmt: skip
+               ("differ by", "right"), ("allowed", "right"), ("", "left"), ("line", "right")]  # fmt: skip
     title = f"Differences in {case}: {len(differences):,} of {compared:,} values, unsafe side first, then worst first"
     return [heading(title), table(columns, rows), *more(len(differences), MOST_DIFFERENCES)]
 
@@ -419,10 +453,10 @@ def _not_compared(result: Verification) -> list[RenderableType]:
 
 
 def _audit_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]:
-    return [*_statics_lines(audit), *_compatibility_lines(frame, audit)]
+    return [*_statics_lines(frame, audit), *_compatibility_lines(frame, audit)]
 
 
-def _statics_lines(audit: CaseAudit) -> list[RenderableType]:
+def _statics_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]:
     judged = [s for s in audit.statics if s.ok is not None]
     failing = [s for s in judged if not s.ok]
     left = len(audit.statics) - len(judged)
@@ -435,10 +469,12 @@ def _statics_lines(audit: CaseAudit) -> list[RenderableType]:
         return [heading(title), _notes([f"all {count} hold to the printed rounding{unjudged}"])]
     failing.sort(key=lambda s: -abs(s.residual) / (s.allowed or 1.0))
     rows = [
-        (s.check, s.where or "whole frame", s.component, words.short(s.residual), words.short(s.allowed))
+        (s.check, s.where or "whole frame", s.component, words.short(s.residual), words.short(s.allowed),
+         words.unit_of(frame, "moment" if s.component == "moment" else "fx"))
         for s in failing[:MOST_DIFFERENCES]
-    ]
-    columns = [("balance", "left"), ("where", "left"), ("of", "left"), ("left over", "right"), ("allowed", "right")]
+    ]  # fmt: skip
+    columns = [("balance", "left"), ("where", "left"), ("of", "left"), ("left over", "right"), ("allowed", "right"),
+               ("", "left")]  # fmt: skip
     parts = [heading(title), _notes([f"{len(failing):,} of {count} fail{unjudged}"]), table(columns, rows)]
     return [*parts, *more(len(failing), MOST_DIFFERENCES)]
 
@@ -454,15 +490,20 @@ def _compatibility_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]
         failing.sort(key=lambda c: -abs(c.rotation - c.expected) / (c.allowed or 1.0))
         rows = [
             (c.kind, c.member or c.where, (c.where if c.member else c.direction), words.short(c.rotation),
-             words.short(c.expected), words.short(c.allowed))
-            for c in failing[:MOST_DIFFERENCES]
+             words.short(c.rotation - c.expected), words.short(c.allowed), _deformation_unit(frame, c))
+            for c in failing[:MOST_MISFITS]
         ]  # fmt: skip
         columns = [("what", "left"), ("of", "left"), ("at", "left"), ("by the claim", "right"),
-                   ("what fits the rest", "right"), ("allowed", "right")]  # fmt: skip
-        parts += [table(columns, rows), *more(len(failing), MOST_DIFFERENCES)]
+                   ("misfit", "right"), ("allowed", "right"), ("", "left")]  # fmt: skip
+        parts += [table(columns, rows), *more(len(failing), MOST_MISFITS)]
     if audit.bound is not None:
         parts.append(_notes([_bound_words(frame, audit.bound)]))
     return parts
+
+
+def _deformation_unit(frame: Frame, c: Any) -> str:
+    turns = c.kind == "end rotation" or c.direction == "rotation"
+    return words.unit_of(frame, "rotation" if turns else "dx")
 
 
 def _bound_words(frame: Frame, bound: Any) -> str:
