@@ -64,7 +64,7 @@ def table(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> 
     rows = list(rows)
     made = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="underline", show_edge=False)
     for k, (head, side) in enumerate(columns):
-        longest = max((len(row[k]) for row in rows), default=0)
+        longest = max(len(text) for text in (*head.splitlines(), "", *(row[k] for row in rows)))
         if side == "right":
             made.add_column(head, justify="right", no_wrap=True, min_width=longest)
         else:
@@ -261,7 +261,7 @@ def _along_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
             *_at(moments.min(), x[low], scale[0]), words.tension_face(frame, title, moments.min(), scale[0]),
             *_at(values[bend, 3], x[bend], scale[1]),
         ))  # fmt: skip
-    columns = [("member", "left"), ("greatest moment", "right"), ("at x", "right"), ("tension", "left"),
+    columns = [("member", "left"), ("greatest\nmoment", "right"), ("at x", "right"), ("tension", "left"),
                ("least", "right"), ("at x", "right"), ("tension", "left"),
                ("across", "right"), ("at x", "right")]  # fmt: skip
     return table(columns, rows)
@@ -417,14 +417,14 @@ def _claim_differences(
     rows = []
     for d in differences[:MOST_DIFFERENCES]:
         claim, ours = d.values.get("claim"), words.opinions_value(d)
-        side = "claim low" if d.unsafe else "claim high"
+        side = "low" if d.unsafe else "high"
         rows.append((
             words.place(d.place), d.place.quantity,
             _with_face(frame, d, claim, ours), _with_face(frame, d, ours, claim),
             words.short(d.difference), words.short(d.allowed), d.note or side, str(d.line or ""),
         ))  # fmt: skip
     columns = [("place", "left"), ("quantity", "left"), ("claim", "right"), ("opinions", "right"),
-               ("differ by", "right"), ("allowed", "right"), ("", "left"), ("line", "right")]  # fmt: skip
+               ("differ by", "right"), ("allowed", "right"), ("claim is", "left"), ("line", "right")]  # fmt: skip
     title = f"Differences in {case}: {len(differences):,} of {compared:,} values, unsafe side first, then worst first"
     return [heading(title), table(columns, rows), *more(len(differences), MOST_DIFFERENCES)]
 
