@@ -175,11 +175,11 @@ def _plain(value: float) -> float | None:
 
 def extremes(answer: Answer, name: str, at: Stations) -> Floats:
     """(m, 2, 4) least and greatest value along each member of axial, shear, moment, across; NaN where not given."""
+    if answer.spans.sampled:
+        return np.full((len(at.start) - 1, 2, 4), np.nan)
     member, x, side = with_turning_points(answer, name, at)
     values = answer.spans.along(name, member, x, side)
     start = np.searchsorted(member, np.arange(len(at.start) - 1))
-    if answer.spans.sampled:
-        return np.full((len(start), 2, 4), np.nan)
     return np.stack([np.minimum.reduceat(values, start), np.maximum.reduceat(values, start)], axis=1)
 
 

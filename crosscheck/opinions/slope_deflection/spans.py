@@ -13,7 +13,11 @@ from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.frame.stations import Stations, stations
 from crosscheck.opinions.slope_deflection.members import SplitLoads, load_moments, split_loads, thermal_curvature
 
-HALVINGS = 60
+HALVINGS = 50
+SIXTHS = (1.0 - np.cos(np.pi * np.arange(6) / 5)) / 2
+"""Places of a piece from which a polynomial of degree five is known best (Chebyshev's, ends included)."""
+TO_POWERS = np.linalg.inv(np.vander(SIXTHS, increasing=True))
+"""From the values there to the coefficients of powers."""
 
 
 class LoadRuns:
@@ -187,21 +191,31 @@ class ClosedFormSpans:
         return found
 
     def _level_places(self, name: str, member: Ints, a: Floats, b: Floats) -> tuple[Ints, Floats]:
-        """Where the member's slope changes sign within a piece, by halving."""
-        step = 1e-4 * (b - a)
-        low, high = a, b
+        """Where the member's slope changes sign within a piece, by halving.
 
-        def slope(x: Floats) -> Floats:
-            return self._across(name, member, x + step) - self._across(name, member, x - step)
-
-        rising, falling = slope(low + step), slope(high - step)
-        change = np.signbit(rising) != np.signbit(falling)
-        member, low, high, step, rising = member[change], low[change], high[change], step[change], rising[change]
-        for _ in range(HALVINGS if len(member) else 0):
+        Loads are linear between stations, so the deflection there is a polynomial of degree five: six values give it.
+        """
+        places = a[:, None] + (b - a)[:, None] * SIXTHS
+        across = self._across(name, np.repeat(member, len(SIXTHS)), places.ravel()).reshape(places.shape)
+        # Less the first value: a member that moves as a whole must not cost digits of how it bends.
+        slope = ((across - across[:, :1]) @ TO_POWERS.T)[:, 1:] * np.arange(1.0, len(SIXTHS))
+        rising = np.signbit(slope[:, 0])
+        change = rising != np.signbit(slope.sum(axis=1))
+        member, a, b, slope, rising = member[change], a[change], b[change], slope[change], rising[change]
+        low, high = np.zeros(len(a)), np.ones(len(a))
+        for _ in range(HALVINGS if len(a) else 0):
             middle = (low + high) / 2
-            same = np.signbit(slope(middle)) == np.signbit(rising)
+            same = np.signbit(_horner(slope, middle)) == rising
             low, high = np.where(same, middle, low), np.where(same, high, middle)
-        return member, (low + high) / 2
+        return member, a + (b - a) * (low + high) / 2
+
+
+def _horner(coefficients: Floats, at: Floats) -> Floats:
+    """(n,) values of n polynomials, coefficients (n, k) from the constant up, each at its own place."""
+    value = np.zeros(len(at))
+    for column in coefficients.T[::-1]:
+        value = value * at + column
+    return value
 
 
 def _pairs(member: Ints, load_member: Ints) -> tuple[Ints, Ints]:
