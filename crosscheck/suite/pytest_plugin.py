@@ -2,11 +2,12 @@
 
 Ids are the frame's name, "record" or "opinions", and each claim's file name, so that -k, -x, --lf, JUnit output and
 pytest-xdist work on them. A failure shows crosscheck's own words and not an assertion of floats. Folders that hold
-crosscheck frames are recognised by the frame file itself: a TOML file with joints or a grid, and members.
+crosscheck frames are recognised by the frame file itself: a TOML file with members, a grid or tables beside it.
 """
 
 from __future__ import annotations
 
+import tomllib
 from collections.abc import Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -29,13 +30,18 @@ def pytest_collect_file(parent: pytest.Collector, file_path: Path) -> pytest.Col
 
 
 def _looks_like_a_frame(path: Path) -> bool:
-    """Told from other TOML files (pyproject.toml, say) by the heads of its tables, without parsing it."""
+    """Told from other TOML files (pyproject.toml, say) by its tables, or what looks like their heads."""
     try:
-        lines = path.read_text(encoding="utf-8-sig", errors="replace").splitlines()
+        text = path.read_text(encoding="utf-8-sig", errors="replace")
     except OSError:
         return False
-    heads = {line.split("]")[0].strip(" [").split(".")[0] for line in lines if line.lstrip().startswith("[")}
-    return "grid" in heads or {"joints", "members"} <= heads
+    if "members" not in text and "grid" not in text:
+        return False
+    try:
+        tables = set(tomllib.loads(text))
+    except (ValueError, RecursionError):
+        tables = {line.strip(" []") for line in text.splitlines() if line.startswith("[")}
+    return "grid" in tables or "members" in tables or {"tables", "sections"} <= tables
 
 
 class FrameFile(pytest.File):
