@@ -131,25 +131,42 @@ def chosen_names(frame: Frame, case: str | None) -> tuple[str, ...] | None:
 
 def verify(
     frame: Frame, reading: Reading, case: str | None = None, relative: float | None = None,
-    opinions: Opinions | None = None, suspects: bool = True,
+    opinions: Opinions | None = None, suspects: bool = True, every_case: bool = True,
 ) -> Verification:  # fmt: skip
     """Judge a reading of a claim. `relative`: the claim's relative tolerance as a fraction, else the frame's.
 
-    suspects: whether to look for what would explain a difference.
+    opinions: where they are at hand already. suspects: whether to look for what would explain a difference.
+    every_case: whether the opinions are asked for cases that the claim does not speak of, too.
     """
     from crosscheck.compare.closing import close
 
     chosen_names(frame, case)
-    opinions = ask(frame) if opinions is None else opinions
+    if opinions is None:
+        opinions = ask(frame, chosen_names(frame, case) if every_case else cases_needed(frame, reading, case))
     tolerance = claim_tolerance(frame.analysis.tolerance if relative is None else relative)
     closed = close(reading, frame, opinions.answers, case, tolerance)
     cases = ClaimComparison(frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
     audits = tuple(_audit(frame, opinions, closed, name) for name in closed.cases)
     verdict, grounds = _verdict(opinions, closed, cases, audits)
-    found, why = _suspects(opinions, closed, cases, tolerance) if suspects and verdict == "disagree" else ((), "")
+    found: tuple[Suspect, ...] = ()
+    why = ""
+    if suspects and verdict == "disagree":
+        # Another case pasted by mistake is among the suspects, so all cases are needed now.
+        whole = opinions if opinions.names == frame.names else ask(frame)
+        found, why = _suspects(whole, closed, cases, tolerance)
     return Verification(
         opinions, closed, tolerance, tuple(cases), audits, found, verdict, tuple(grounds), closed.undecided, why
     )
+
+
+def cases_needed(frame: Frame, reading: Reading, case: str | None) -> tuple[str, ...] | None:
+    """The cases that a reading names, where it names one for every value; None (all) where some must be found by fit."""
+    if case is not None:
+        return chosen_names(frame, case)
+    named = {entry.case for entry in reading.entries}
+    if not named or None in named:
+        return None
+    return tuple(name for name in frame.names if name in named)
 
 
 def _suspects(

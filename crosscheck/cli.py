@@ -199,7 +199,7 @@ def run_verify(args: argparse.Namespace) -> int:
         for row in show_reading(reading):
             print(row)
         return 0
-    result = check.verify(frame, reading, args.case, relative)
+    result = check.verify(frame, reading, args.case, relative, every_case=bool(args.json))
     if args.suspect is not None:
         result = check.as_suspected(result, args.suspect)
 
@@ -388,9 +388,9 @@ def _give(
     if args.json:
         _write_json(args.json, document())
     if args.json != "-":
-        from crosscheck.report.terminal import console
+        from crosscheck.report.terminal import show
 
-        console().print(report())
+        show(report())
 
 
 def _write_json(path: str, document: dict[str, Any]) -> None:
