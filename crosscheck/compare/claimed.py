@@ -14,8 +14,8 @@ class ClaimedValue:
     """One claimed value, in the frame's units and sign convention.
 
     kind: "end" (end action: axial, shear, moment at `joint` of `member`), "span" (value at distance `at` of `member`),
-      "reaction" (fx, fy, moment at `joint`), "displacement" (dx, dy, rotation at `joint`), "extreme" (largest or smallest value along `member`,
-      or of all members or joints where `member` and `joint` are None).
+      "reaction" (fx, fy, moment at `joint`), "displacement" (dx, dy, rotation at `joint`), "extreme" (largest or
+      smallest value along `member`, or of all members or joints where `member` and `joint` are None).
     value, half_digit: the value and half a unit of its last printed digit, carried through the unit change.
     extreme: for kind "extreme" which one: "max", "min" or "size" (largest magnitude).
     line: line of the claim it stands on; printed: the text as printed.
@@ -39,7 +39,9 @@ class ClosedClaim:
     """What the claim says once understood, and how it was understood.
 
     cases: the case or combination names it speaks of. units, signs: what was taken, by quantity, in words.
-    notes: choices and how sure they are, one sentence each. not_understood: (line, text, why) of every row not used.
+    fits: by the keys of signs, how many of the telling values (large enough to tell a sign by) fit, and of how many.
+    notes: choices in the reading and what followed from them, one sentence each.
+    not_understood: (line, text, why) of every row not used.
     foreign: rows for members or joints that the frame lacks; they prevent "agree".
     undecided: reasons why it cannot be judged, each with the choice that would settle it; empty when it can.
     reversed_load: member forces, reactions and displacements are all reversed together.
@@ -52,6 +54,7 @@ class ClosedClaim:
     values: tuple[ClaimedValue, ...]
     units: dict[str, str] = field(default_factory=dict)
     signs: dict[str, str] = field(default_factory=dict)
+    fits: dict[str, tuple[int, int]] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
     not_understood: tuple[tuple[int, str, str], ...] = ()
     foreign: tuple[tuple[int, str, str], ...] = ()

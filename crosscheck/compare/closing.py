@@ -12,6 +12,7 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from crosscheck.answer import Answer
+from crosscheck.claims.numbers import parse_number
 from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.fit import Choice, Fitted, Fitter
@@ -39,6 +40,29 @@ def close(
     if not answers:
         return closer.result((), [], ["no opinion speaks for this frame"])
     entries, notes = _of_case(reading, case)
+    if any(e.comma_open for e in entries):
+        return _by_comma(closer, entries, notes, case)
+    return _close_case(closer, entries, notes, case)
+
+
+def _by_comma(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
+    """Commas that may stand before decimals or thousands are taken as what fits; both fitting come to the same."""
+    grouped = [_as_thousands(e) for e in entries]
+    for tried, word in ((entries, "decimals"), (grouped, "thousands")):
+        closed = _close_case(closer, tried, [*notes, f"commas are taken to stand before {word}, by fit"], case)
+        if closed.cases and not closed.undecided and not any(closer.bad[n] for n in closed.cases):
+            return closed
+    reason = "commas may stand before decimals or before thousands; print one number with both marks, or with a point"
+    return closer.result((), notes, [reason])
+
+
+def _as_thousands(e: Entry) -> Entry:
+    number = parse_number(e.number.printed, decimal_comma=False)
+    return replace(e, number=number) if e.comma_open and number else e
+
+
+def _close_case(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
+    frame, answers = closer.frame, closer.answers
     if case is not None:
         return closer.close([replace(e, case=case) for e in entries], notes)
     if all(e.case is not None for e in entries):
@@ -233,8 +257,8 @@ def _same_whichever(f: Fitted) -> bool:
 
 
 def _form_unfixed(f: Fitted) -> str:
-    """Another kind of convention that fewer than three values speak against. The plain kind needs none, and members that run as
-    in the frame need none against other directions."""
+    """Another kind of convention that fewer than three values speak against. The plain kind needs none, and members that
+    run as in the frame need none against other directions."""
     plain, mine = f.choices[0].convention, f.taken.convention
     for other in f.choices:
         c = other.convention
@@ -265,8 +289,8 @@ def _open_and_telling(f: Fitted) -> int:
 
 
 def _signs_at_odds(f: Fitted) -> str:
-    """All sizes right and several members with the other sign: the convention is not understood, which is not an error of one
-    member."""
+    """All sizes right and several members with the other sign: the convention is not understood, which is not an error
+    of one member."""
     batch, bad = f.batch, f.taken.bad
     if batch.kind in ("reaction", "displacement") or f.taken.sizes_bad.any():
         return ""
@@ -315,7 +339,8 @@ def _units_said(fitted: list[Fitted], entries: list[Entry], frame: Frame) -> dic
     for key, f in _by_key(fitted):
         stated = {str(e.unit.text) for k in f.batch.entry.tolist() if (e := entries[k]).unit}
         found = f.taken.unit.text if f.taken.unit and np.isnan(f.batch.factor).any() else ""
-        said = [*sorted(stated), *([f"{found} ({'assumed' if f.taken.unit and f.taken.unit.own else 'by fit'})"] if found else [])]
+        how = "assumed" if f.taken.unit and f.taken.unit.own else "by fit"
+        said = [*sorted(stated), *([f"{found} ({how})"] if found else [])]
         out[key] = ", ".join(said) or unit_name(frame.units, _dimension(f.batch.quantity))
     return out
 

@@ -74,7 +74,7 @@ def table(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> 
     return Padding(made, (0, 0, 0, 2), expand=False)
 
 
-def _facts(rows: Iterable[tuple[str, str]]) -> RenderableType:
+def facts(rows: Iterable[tuple[str, str]]) -> RenderableType:
     table = Table(box=None, show_header=False, pad_edge=False, padding=(0, 2, 0, 0))
     table.add_column(no_wrap=True)
     table.add_column(overflow="fold")
@@ -108,7 +108,7 @@ def opinions_report(result: Opinions, working: Sequence[tuple[str, Sequence[Work
     """What `crosscheck opinions` prints."""
     parts: list[RenderableType] = [_verdict_line(result.verdict, _opinions_sentence(result)), *_warnings(result.frame)]
     parts += [Text(line) for line in undetermined_lines(result)]
-    parts += [heading("How it was compared"), _facts(_opinions_facts(result))]
+    parts += [heading("How it was compared"), facts(_opinions_facts(result))]
     for judged in result.judgements.values():
         parts += _opinion_differences(result.frame, judged)
     for name in result.names:
@@ -321,7 +321,7 @@ def verify_report(result: Verification) -> RenderableType:
     parts += _warnings(opinions.frame)
     parts += [Text(line) for line in undetermined_lines(opinions)]
     parts += _suspect_lines(result)
-    parts += [heading("How it was compared"), _facts(_claim_facts(result))]
+    parts += [heading("How it was compared"), facts(_claim_facts(result))]
     for judged in opinions.judgements.values():
         if judged.case in result.closed.cases:
             parts += _opinion_differences(opinions.frame, judged)
