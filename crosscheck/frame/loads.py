@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -63,6 +64,7 @@ class LoadTable:
     misfit: Floats
 
 
+@lru_cache(maxsize=256)
 def direction_cosines(direction: Direction) -> tuple[float, float]:
     """Global unit vector of an angle in degrees; whole quarter turns are exact."""
     assert not isinstance(direction, str)
