@@ -111,18 +111,19 @@ def case_scales(
 
 def full_restraint(frame: Frame, table: LoadTable) -> Scales:
     """The size of what temperature, misfit and settlement impose, and of what they would cause in members held fast:
-    EA times the strain (axially elastic), EI times the curvature, 6 EI / L^2 and 4 EI / L times the movement."""
+    EA times the strain or movement / L (axially elastic), EI times the curvature, 6 EI / L^2 and 4 EI / L times the movement."""
     t = frame.member_table
     stiffness = t.E * t.I
     bend = np.where(table.difference != 0.0, np.abs(table.difference) * t.alpha / t.depth, 0.0)
     longer = np.where(table.mean != 0.0, np.abs(table.mean) * t.alpha * t.length, 0.0) + np.abs(table.misfit)
     moved = max(_largest(longer), _largest(table.settlement[:, :2]))
     turned = _largest(table.settlement[:, 2])
-    axial = np.where(longer > 0.0, t.E * t.A * longer / t.length, 0.0) if frame.analysis.axial == "elastic" else 0.0
+    strain = (longer + _largest(table.settlement[:, :2])) / t.length
+    axial = np.where(strain > 0.0, t.E * t.A * strain, 0.0) if frame.analysis.axial == "elastic" else np.zeros(1)
     moments = stiffness * (bend + 6.0 * moved / t.length**2 + 4.0 * turned / t.length)
     longest = float(t.length.max(initial=0.0))
     displacements = moved + turned * longest + _largest(bend) * longest**2
-    return Scales(_largest(np.asarray(axial)), _largest(moments), displacements, turned)
+    return Scales(_largest(axial), _largest(moments), displacements, turned)
 
 
 def _span_flexibility(frame: Frame) -> float:
