@@ -213,6 +213,7 @@ class Paste:
     case: str | None
     values: int
     planted: str = ""
+    fixed: bool = True
 
 
 def draw(seed: int) -> Spec:
@@ -295,6 +296,20 @@ class Maker:
         self.values = 0
         self.planted = ""
         self.planting = -1
+        self.telling: Counter[tuple[str, int]] = Counter()
+
+    def tell(self, case: str, quantity: str, values: Any, place: int = 0) -> None:
+        """Counts values large enough to tell a sign or a unit by; values between surely and surely not count as doubtful."""
+        scale = self.known.judgements[case].scales.of(quantity.split()[-1])
+        sizes = np.abs(np.atleast_1d(np.asarray(values, dtype=float))) / scale
+        self.telling[quantity, place] += int((sizes > 0.012).sum())
+        self.telling[quantity + " doubtful", place] += int(((sizes > 0.0004) & (sizes <= 0.012)).sum())
+
+    @property
+    def fixed(self) -> bool:
+        """Do at least three values fix every choice, quantity by quantity and end by end (or none needs to be)?"""
+        return all(n >= 3 or n == 0 and not self.telling[q + " doubtful", place]
+                   for (q, place), n in self.telling.items() if not q.endswith("doubtful"))  # fmt: skip
 
     def word(self, key: str) -> str:
         return HEADS[key][self.spec.vocabulary[key] % len(HEADS[key])]
@@ -331,6 +346,9 @@ class Maker:
         ends = ends[::-1] if back else ends
         r = -1 if back else 1
         tension, shear, moment = ends[:, 0], r * ends[:, 1], ends[:, 2]
+        for q, quantity in enumerate(("axial", "shear", "moment")):
+            for place in (0, 1):
+                self.tell(case, quantity, ends[place, q], place)
         out = np.column_stack([
             s["axial"] * (tension if s["axial form"] == "internal" else tension * [-1, 1]),
             s["shear"] * (shear if s["shear form"] == "action" else shear * [1, -1]),
@@ -350,6 +368,8 @@ class Maker:
         at = length - x if back else x
         side = np.where(x == 0, 1, -1) * (-1 if back else 1)
         values = self.answer.spans.along(case, np.full(5, m), at, side)[:, :3].copy()
+        for q, quantity in enumerate(("axial", "shear", "moment")):
+            self.tell(case, quantity, values[:, q])
         values *= [s["axial"], s["shear"], s["moment"] * (-1 if back else 1)]
         values[:, :2] = self.in_units(values[:, :2], "force")
         values[:, 2] = self.in_units(values[:, 2], "moment")
@@ -367,6 +387,8 @@ class Maker:
         ])  # fmt: skip
         values = values * [s["axial"], s["shear"], s["moment"] * (-1 if self._backwards(name) else 1)]
         out = np.array([values.max(axis=0), values.min(axis=0)])
+        for q, quantity in enumerate(("axial", "shear", "moment")):
+            self.tell(case, quantity, out[:, q])
         out[:, :2] = self.in_units(out[:, :2], "force")
         out[:, 2] = self.in_units(out[:, 2], "moment")
         return out
@@ -420,6 +442,8 @@ class Maker:
         rows = []
         for name in self.frame.supports:
             fx, fy, m = self.answer.cases[case].reactions[self.frame.joint_index[name]]
+            for quantity, value in (("fx", fx), ("fy", fy), ("reaction moment", m)):
+                self.tell(case, quantity, value)
             forces = self.in_units([s["support"] * fx, s["support"] * s["down"] * fy], "force")
             moment = self.in_units(s["support"] * s["turn"] * m, "moment")
             rows.append([self.joint(name), *forces, float(moment)])
@@ -431,6 +455,8 @@ class Maker:
         rows = []
         for name in self.frame.joints:
             dx, dy, t = self.answer.cases[case].joints[self.frame.joint_index[name]]
+            for quantity, value in (("dx", dx), ("dy", dy), ("rotation", t)):
+                self.tell(case, quantity, value)
             moves = self.in_units([dx, s["down"] * dy], "length")
             rows.append([self.joint(name), *moves, float(self.in_units(s["turn"] * t, "angle"))])
         return heads, rows
@@ -574,7 +600,7 @@ def make(seed: int, plant: str = "") -> Paste:
     except UnicodeEncodeError:
         data = text.encode("utf-8")
     case = cases[0] if spec.cases == "option" else None
-    return Paste(spec, data, ReadingOptions(), case, maker.values, maker.planted)
+    return Paste(spec, data, ReadingOptions(), case, maker.values, maker.planted, maker.fixed)
 
 
 def _worth(spec: Spec, cases: list[str], count: int) -> int:
@@ -630,31 +656,56 @@ def _coarse(outcome: Outcome) -> int:
     return sum(1 for c in outcome.comparisons for _, why in c.not_compared)
 
 
-def main() -> None:
-    first, count = (int(sys.argv[2]), int(sys.argv[1])) if len(sys.argv) > 2 and sys.argv[2].isdigit() else (0, int(sys.argv[1]))
-    verbose = "-v" in sys.argv
-    right: Counter[str] = Counter()
-    drawn: Counter[str] = Counter()
-    verdicts: Counter[str] = Counter()
-    for seed in range(first, first + count):
+PLANTS = ("sign", "tenth", "more", "ten")
+
+
+@dataclass
+class Tally:
+    """Counts of many pastes: right and drawn by property (of those that three values fix), verdicts of all."""
+
+    right: Counter[str] = field(default_factory=Counter)
+    drawn: Counter[str] = field(default_factory=Counter)
+    verdicts: Counter[str] = field(default_factory=Counter)
+    planted: Counter[str] = field(default_factory=Counter)
+    failures: list[str] = field(default_factory=list)
+
+    def add(self, seed: int, plant: bool) -> None:
         paste = make(seed)
         outcome = judge(paste)
         ok = is_right(paste, outcome)
-        keys = [f"layout {paste.spec.layout}", f"separator {paste.spec.separator}", f"writing {paste.spec.writing}",
-                f"heads {paste.spec.heads}", f"cases {paste.spec.cases}", f"names {paste.spec.names}",
-                f"units {paste.spec.units}", f"encoding {paste.spec.encoding}", f"noise {paste.spec.noise}",
-                f"spatial {paste.spec.spatial}"]  # fmt: skip
-        for key in keys:
-            drawn[key] += 1
-            right[key] += ok
-        verdicts["right" if ok else f"not right: {outcome.verdict}"] += 1
-        if verbose and not ok:
-            print(seed, outcome.verdict, f"{outcome.compared}/{paste.values}", paste.spec.layout, paste.spec.separator,
-                  paste.spec.writing, paste.spec.heads, paste.spec.cases, paste.spec.names, outcome.closed.undecided[:2],
-                  outcome.closed.foreign[:1], outcome.closed.not_understood[:1])  # fmt: skip
-    print(dict(verdicts))
-    for key in sorted(drawn):
-        print(f"{key:<28} {right[key]:>5} of {drawn[key]:>5}")
+        s = paste.spec
+        told = "fixed" if paste.fixed else "not fixed by three values"
+        self.verdicts[f"{told}: {'right' if ok else outcome.verdict + ' (not right)'}"] += 1
+        if paste.fixed:
+            for key in (f"layout {s.layout}", f"separator {s.separator}", f"writing {s.writing}", f"heads {s.heads}",
+                        f"cases {s.cases}", f"names {s.names}", f"units {s.units}", f"encoding {s.encoding}",
+                        f"noise {s.noise}", f"spatial {s.spatial}"):  # fmt: skip
+                self.drawn[key] += 1
+                self.right[key] += ok
+        if not ok and (paste.fixed or outcome.verdict != "undecided"):
+            self.failures.append(
+                f"{seed} {outcome.verdict} {outcome.compared}/{paste.values} {s.layout}, {s.separator}, {s.writing}, {s.heads}, "
+                f"{s.cases}, {s.names}: {outcome.closed.undecided[:2]} {outcome.closed.not_understood[:1]}"
+            )
+        if plant and ok:
+            kind = PLANTS[seed % len(PLANTS)]
+            wrong = make(seed, kind)
+            found = judge(wrong).verdict
+            self.planted[found] += 1
+            if found == "agree":
+                self.failures.append(f"{seed} planted {kind} {wrong.planted} absorbed: {s.layout}, {s.separator}, {s.cases}")
+
+
+def main() -> None:
+    count = int(sys.argv[1]) if len(sys.argv) > 1 else 300
+    first = int(sys.argv[2]) if len(sys.argv) > 2 else 0
+    tally = Tally()
+    for seed in range(first, first + count):
+        tally.add(seed, plant=True)
+    print("\n".join(tally.failures))
+    for key in sorted(tally.drawn):
+        print(f"{key:<28} {tally.right[key]:>5} of {tally.drawn[key]:>5}")
+    print(dict(tally.verdicts), "planted:", dict(tally.planted), sep="\n")
 
 
 if __name__ == "__main__":

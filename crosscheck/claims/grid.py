@@ -297,6 +297,7 @@ def _under_groups(cells: list[Cell], spans: list[tuple[int, int]]) -> Row | None
 MOST_WORDS = 5
 """Words that one head may have."""
 _NAMING = frozenset({"member", "joint", "end", "case", "station", "which"})
+_GENERIC = frozenset({"force", "forces", "reaction", "displacement", "disp", "disp.", "load", "bending"})
 _GIVING = frozenset({"N", "V", "M", "D", "T", "w"})
 
 
@@ -332,6 +333,8 @@ def _group_worth(words: tuple[str, ...], text: str) -> float:
     naming, giving = ({n for n in nouns if n in kind} for kind in (_NAMING, _GIVING))
     crowd = max(0, len(naming) - 1) + max(0, len(giving) - 1) + bool(naming - {"end", "joint"} and giving)
     axes = len({a for w in words if (a := head_of(w).axis) and head_of(w).noun == "x"})
-    given = bool({"joint", "end"} & naming and (giving or {"F", "R"} & set(nouns)))
+    given = bool({"joint", "end"} & naming and (giving or {"F", "R", "x"} & set(nouns)))
     lost = bool(head.which and head.noun in _NAMING)
-    return _worth(head) - 0.6 * crowd - 0.6 * max(0, axes - 1) - 0.3 * given - 0.5 * lost
+    bare = len(words) == 1 and (head.noun == "x" and head.axis != "x" or text.lower() in _GENERIC)
+    again = len(nouns) > len(set(nouns)) and bool(set(nouns) & {"F", "R", "D"})
+    return _worth(head) - 0.6 * crowd - 0.6 * max(0, axes - 1) - 0.3 * given - 0.5 * lost - 0.3 * bare - 0.4 * again

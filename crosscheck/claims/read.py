@@ -47,6 +47,9 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
     reader = _Reader(names, options, stated, scanned)
     for raw in scanned.tables:
         if raw.rows:
+            reader.commas = reader.commas or commas_are_decimal(_numbers_of(raw))
+    for raw in scanned.tables:
+        if raw.rows:
             reader.table(raw)
     if not reader.entries and not reader.foreign and not reader.undecided:
         refuse(file or "claim", *_nothing(scanned, reader))
@@ -74,6 +77,10 @@ def _nothing(scanned: Scan, reader: _Reader) -> tuple[str, str]:
         f"no results were recognised in its {rows} rows of numbers{why}" if rows else "it holds no results",
         "give a table with heads such as Member, End, N, V, M, or say what the columns are with --columns",
     )
+
+
+def _numbers_of(raw: RawTable) -> Iterator[str]:
+    return (c.text for _, text in raw.rows for c in cells_of(text)[1] if is_number(c.text))
 
 
 @dataclass(slots=True)
@@ -119,6 +126,8 @@ class _Reader:
     foreign: list[tuple[int, str, str]] = field(default_factory=list)
     notes: list[str] = field(default_factory=list)
     undecided: list[str] = field(default_factory=list)
+    commas: bool | None = False
+    """Does any table of the paste show that its commas stand before decimals? A table that cannot tell follows it."""
 
     def table(self, raw: RawTable) -> None:
         """Reads one table into entries; what cannot be used is noted by line."""
@@ -169,16 +178,15 @@ class _Reader:
     def _rows(self, number: int, raw: RawTable, grid: Grid, meaning: Meaning) -> Iterator[Entry]:
         values = [k for k, r in enumerate(meaning.roles) if r.name in ("value", "station")]
         comma = commas_are_decimal(row[k] for row in grid.rows for k in values)
-        if comma is None:
-            self.undecided.append(
-                f"table {number}: the comma may stand before decimals or thousands; write one number with both, or a point"
-            )
+        unsure = comma is None and not self.commas
+        comma = self.commas is not False if comma is None else comma
         carried = _Carried()
         for row, line, kept in zip(grid.rows, grid.lines, grid.kept, strict=True):
             text = raw.rows[kept][1]
             try:
                 place = self._place(row, meaning, carried, raw, raw.blocks[kept], bool(comma))
-                yield from self._entries(number, line, text, row, meaning, place, bool(comma))
+                for entry in self._entries(number, line, text, row, meaning, place, bool(comma)):
+                    yield replace(entry, comma_open=True) if unsure else entry
             except _Misread as why:
                 (self.foreign if why.foreign else self.odd).append((line, text.strip()[:200], str(why)))
                 self._trace([(line, text, str(why))])

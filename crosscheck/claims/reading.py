@@ -100,6 +100,8 @@ class Entry:
     extreme: str | None = None
     axes: str = ""
     face: bool = False
+    comma_open: bool = False
+    """The number's comma may stand before decimals (as read) or thousands."""
 
 
 @dataclass(frozen=True, slots=True)

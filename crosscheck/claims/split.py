@@ -57,10 +57,14 @@ def _comma_parts(line: str) -> bool:
     inside = len(re.findall(r"\d,\d", line))
     tokens = line.split()
     if commas == inside and (len(tokens) > 1 or commas == 1):
-        return False
+        return any("," in t and not _is_number(t) for t in tokens)
     gaps = len(re.findall(r"\S {2,}\S", line))
     spaced = len(re.findall(r"\S {2,}(?=\S)", re.sub(r", +", ",", line)))
     return not (gaps and spaced > commas)
+
+
+def _is_number(text: str) -> bool:
+    return parse_number(text) is not None or parse_number(text, decimal_comma=True) is not None
 
 
 def split(line: str, separator: Separator) -> list[Cell]:
