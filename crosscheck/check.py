@@ -29,6 +29,7 @@ if TYPE_CHECKING:
     from crosscheck.audit.compatibility import CompatibilityFindings
     from crosscheck.audit.statics import StaticCheck
     from crosscheck.claims.reading import Reading
+    from crosscheck.compare.printouts import Moved
     from crosscheck.suspects import Suspect
 
 OPINIONS = {
@@ -167,6 +168,27 @@ def cases_needed(frame: Frame, reading: Reading, case: str | None) -> tuple[str,
     if not named or None in named:
         return None
     return tuple(name for name in frame.names if name in named)
+
+
+@dataclass(frozen=True, slots=True)
+class TwoPrintouts:
+    """Two printouts of one frame: each beside the opinions, and what moved between them."""
+
+    first: Verification
+    second: Verification
+    moved: Moved
+
+
+def compare_printouts(
+    frame: Frame, first: Reading, second: Reading, case: str | None = None, relative: float | None = None
+) -> TwoPrintouts:
+    """What moved between two printouts; nobody asks here what would explain a difference from the opinions."""
+    from crosscheck.compare.printouts import between
+
+    opinions = ask(frame)
+    one = verify(frame, first, case, relative, opinions=opinions, suspects=False)
+    other = verify(frame, second, case, relative, opinions=opinions, suspects=False)
+    return TwoPrintouts(one, other, between(frame, one.closed, other.closed))
 
 
 def _suspects(

@@ -17,6 +17,8 @@ from crosscheck import __version__
 if TYPE_CHECKING:
     from rich.console import RenderableType
 
+    from crosscheck.check import TwoPrintouts
+
 EXIT = {"agree": 0, "disagree": 1, "undecided": 3}
 UNUSABLE = 2
 
@@ -107,6 +109,8 @@ def _add_verify(commands: Any) -> None:
     command.add_argument("--value", metavar="TEXT", action="append", default=[],
                          help='a value in words, "B2 max 412 kNm"; may be repeated')  # fmt: skip
     command.add_argument("--suspect", metavar="N", type=int, help="compare the claim with what suspect N supposes")
+    command.add_argument("--against", metavar="OTHER", help="another printout of the same frame instead of the "
+                         "opinions: what moved between the two, by their printed rounding")  # fmt: skip
     command.add_argument("--show-reading", action="store_true", help="print the table as understood; compare nothing")
     command.set_defaults(run=run_verify)
 
@@ -179,6 +183,8 @@ def run_opinions(args: argparse.Namespace) -> int:
 
 def run_verify(args: argparse.Namespace) -> int:
     """`crosscheck verify FRAME CLAIM`."""
+    from dataclasses import replace
+
     from crosscheck import check
     from crosscheck.claims import ReadingOptions, read_claim
     from crosscheck.claims.reading import FrameNames
@@ -187,6 +193,9 @@ def run_verify(args: argparse.Namespace) -> int:
     if args.claim is None and not args.value:
         advice = "name a file, or - for standard input, or --value"
         raise UnusableInput([Problem("", None, "CLAIM", "no claim given", advice)])
+    if args.against is not None and (args.against == "-" or args.claim is None):
+        says, advice = "compares two printouts, each a file (the first may be -)", "name CLAIM and --against OTHER"
+        raise UnusableInput([Problem("", None, "--against", says, advice)])
     relative = _percent(args.tolerance)
     frame = _frame(args)
     options = ReadingOptions(
@@ -199,6 +208,9 @@ def run_verify(args: argparse.Namespace) -> int:
         for row in show_reading(reading):
             print(row)
         return 0
+    if args.against is not None:
+        other = read_claim(args.against, FrameNames.of(frame), replace(options, values=()))
+        return _two_printouts(args, check.compare_printouts(frame, reading, other, args.case, relative))
     result = check.verify(frame, reading, args.case, relative, every_case=bool(args.json))
     if args.suspect is not None:
         result = check.as_suspected(result, args.suspect)
@@ -215,6 +227,23 @@ def run_verify(args: argparse.Namespace) -> int:
 
     _give(args, document, report)
     return EXIT[result.verdict]
+
+
+def _two_printouts(args: argparse.Namespace, result: TwoPrintouts) -> int:
+    """`crosscheck verify FRAME CLAIM --against OTHER`: 0 nothing moved, 1 something did, 3 undecided."""
+
+    def document() -> dict[str, Any]:
+        from crosscheck.report.printouts import printouts_document
+
+        return printouts_document(result)
+
+    def report() -> RenderableType:
+        from crosscheck.report.printouts import printouts_report
+
+        return printouts_report(result)
+
+    _give(args, document, report)
+    return EXIT[result.moved.verdict]
 
 
 def run_inspect(args: argparse.Namespace) -> int:
