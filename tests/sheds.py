@@ -49,11 +49,11 @@ strength = { dead = 1.35, wind = 1.5 }
 """
 
 
-def claim_text(frame_path: Path, case: str = "dead", digits: int = 5) -> str:
+def claim_text(frame_path: Path, case: str = "dead", digits: int = 5, variant: str = "") -> str:
     """A right claim for a case of a frame file: member ends and reactions by the first opinion, rounded."""
     from crosscheck import check
 
-    frame = check.read(frame_path)
+    frame = check.read(frame_path, variant)
     answer = check.ask(frame, (case,)).answers["slope-deflection"].cases[case]
     units = f"{frame.units.force}", f"{frame.units.force}{frame.units.length}"
     lines = [f"Load case: {case}", "", f"member,joint,axial ({units[0]}),shear ({units[0]}),moment ({units[1]})"]

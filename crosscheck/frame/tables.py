@@ -207,7 +207,7 @@ def read_sheet(
     file = (FilePath(check.file).parent / name).as_posix()
     rows = _split(check, text, file, path)
     if not rows:
-        check.note_at((file, None), path, "the table is empty", "give a row of heads, and rows below it")
+        check.note_at((file, 1), path, "the table is empty", "give a row of heads, and rows below it")
         return None
     (line, cells), *below = rows
     heads = _heads(check, cells, (file, line), path, None if known is None else frozenset(known), tuple(needed))
