@@ -9,6 +9,7 @@ import math
 import re
 from collections.abc import Iterable
 from dataclasses import dataclass
+from functools import lru_cache
 
 _DASHES = str.maketrans(dict.fromkeys("−‐‑‒–—﹣－", "-") | {"\uff0b": "+"})
 _SPACES = "\u00a0\u2007\u2009\u200a\u202f"
@@ -35,6 +36,7 @@ def is_blank(text: str) -> bool:
     return text.strip().lower() in _BLANKS
 
 
+@lru_cache(maxsize=4096)  # each cell is asked for several times: is it a row, what are its columns, what is its value
 def parse_number(text: str, decimal_comma: bool = False) -> Number | None:
     """The number that `text` begins with, or None where it is none; what follows it is left in `tail`."""
     printed = text.strip()
