@@ -10,14 +10,16 @@ import numpy as np
 
 from crosscheck.frame.model import Floats, Frame, Ints, SelfWeight
 from crosscheck.suspects.changes import Change, with_material_factor, with_member, with_section_factors
-from crosscheck.suspects.members import COMMON, GRID, ROUNDS, SPAN_OF_FACTORS
+from crosscheck.suspects.members import COMMON, SPAN_OF_FACTORS
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.suspect import Family, Option, named
 
 SECTION, MATERIAL, FITTED, SWAPPED = 0.5, 0.6, 1.1, 0.6
 MOST_TOGETHER = 60
 """Members changed together without solving again; for more a new solution is quicker."""
-STARTS = (0.15, 0.5, 2.0, 7.0)
+COARSE = 15
+"""Factors looked at first."""
+STARTS = (0.8, 0.4, 2.0, 0.12, 7.0)
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,19 +117,19 @@ def _option(screen: Screen, group: Group, p: float, cost: float, fitted: int = 0
 
 
 def _fit(screen: Screen, group: Group) -> Option | None:
-    low, high = np.log(SPAN_OF_FACTORS[0]), np.log(SPAN_OF_FACTORS[1])
-    for turn in range(ROUNDS + 1):
-        grid = np.exp(np.linspace(low, high, GRID if turn == 0 else 9))
-        left = screen.left(np.column_stack([_group_delta(screen, group, float(g)) for g in grid]))
-        k = int(np.argmin(np.where(np.isfinite(left), left, np.inf)))
-        step = (high - low) / (len(grid) - 1)
-        low, high = np.log(grid[k]) - step, np.log(grid[k]) + step
-    if not left[k] <= 0.5 * screen.total:
+    """The factor that fits best; None where it leaves half of the misfit over."""
+
+    def delta(p: float) -> Floats:
+        return _group_delta(screen, group, p)
+
+    grid = np.geomspace(*SPAN_OF_FACTORS, COARSE)
+    left = screen.left(np.column_stack([delta(float(g)) for g in grid]))
+    p = screen.refined(delta, float(grid[int(np.argmin(np.where(np.isfinite(left), left, np.inf)))]))
+    tidy = float(f"{p:.2g}")
+    best, rounded = screen.left(np.column_stack([delta(p), delta(tidy)]))
+    if not best <= 0.5 * screen.total:
         return None
-    tidy = float(f"{grid[k]:.2g}")
-    left_tidy = screen.left(_group_delta(screen, group, tidy)[:, None])[0]
-    p = tidy if left_tidy <= max(1.2 * left[k], len(screen.residual)) else float(grid[k])
-    return _option(screen, group, p, FITTED, 1)
+    return _option(screen, group, tidy if rounded <= max(1.2 * best, 0.5 * len(screen.residual)) else p, FITTED, 1)
 
 
 def _swapped(screen: Screen) -> Iterator[Option]:

@@ -114,7 +114,7 @@ def _connections(now: float) -> Iterator[tuple[float, str, float]]:
 # --- fitted ---
 
 SPAN_OF_FACTORS = (0.02, 50.0)
-GRID, ROUNDS, KEPT = 25, 4, 8
+GRID, KEPT = 25, 8
 
 
 def _fits(screen: Screen) -> Iterator[Option]:
@@ -140,24 +140,26 @@ def _fits(screen: Screen) -> Iterator[Option]:
 
 
 def _fit(screen: Screen, m: int, family: str) -> tuple[float, _Trial, list[Floats]] | None:
-    low, high = np.log(SPAN_OF_FACTORS[0]), np.log(SPAN_OF_FACTORS[1])
-    for _ in range(ROUNDS):
-        grid = np.exp(np.linspace(low, high, GRID))
-        trials = [_member_trial(screen.frame, m, family, float(g)) for g in grid]
-        left, actions = _weigh(screen, trials)
-        k = int(np.argmin(left))
-        if not np.isfinite(left[k]):
-            return None
-        step = (high - low) / (GRID - 1)
-        low, high = np.log(grid[k]) - step, np.log(grid[k]) + step
-    if left[k] > 0.5 * screen.total:
+    """What is left over, the member change with the factor that fits best, and its actions; None where it fits badly."""
+
+    def trial(p: float) -> _Trial:
+        return _member_trial(screen.frame, m, family, p)
+
+    def delta(p: float) -> Floats:
+        return screen.delta_of(screen.effects.member, m, [a[0] for a in _weigh(screen, [trial(p)])[1]])
+
+    grid = np.geomspace(*SPAN_OF_FACTORS, GRID)
+    left, _ = _weigh(screen, [trial(float(g)) for g in grid])
+    if not np.isfinite(left).any():
         return None
-    tidy = float(f"{grid[k]:.2g}")
-    rounded = [_member_trial(screen.frame, m, family, tidy)]
-    left_tidy, actions_tidy = _weigh(screen, rounded)
-    if left_tidy[0] <= max(1.2 * left[k], len(screen.residual)):
-        return float(left_tidy[0]), rounded[0], [a[0] for a in actions_tidy]
-    return float(left[k]), trials[k], [a[k] for a in actions]
+    p = screen.refined(delta, float(grid[int(np.argmin(left))]))
+    tidy = float(f"{p:.2g}")
+    both = [trial(tidy), trial(p)]
+    left, actions = _weigh(screen, both)
+    if not left[1] <= 0.5 * screen.total:
+        return None
+    k = 0 if left[0] <= max(1.2 * left[1], 0.5 * len(screen.residual)) else 1
+    return float(left[k]), both[k], [a[k] for a in actions]
 
 
 def _member_trial(frame: Frame, m: int, family: str, p: float) -> _Trial:
@@ -184,7 +186,7 @@ def heavy_families(frame: Frame) -> Iterator[Family]:
         return
     for m in range(len(frame.members)):
         for what in ("EA", "EI and EA"):
-            yield Family(partial(_heavy, frame, m, what), (0.15, 0.5, 2.0, 7.0), members=(m,))
+            yield Family(partial(_heavy, frame, m, what), (0.8, 0.4, 2.0, 0.12, 7.0), members=(m,))
 
 
 def _heavy(frame: Frame, m: int, what: str, p: float) -> Option:

@@ -20,16 +20,17 @@ from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.suspect import Option, named
 
 FORCE = {
-    "lbf for kip": 1e3,
-    "N for kN": 1e3,
-    "kip for kN": 4.4482216152605,
-    "tonne for kN": 9.80665,
-    "lbf for N": 4.4482216152605,
-}
-LENGTH = {"m for mm": 1e3, "m for cm": 1e2, "cm for mm": 10.0, "ft for in": 12.0, "m for ft": 1 / 0.3048, "in for cm": 2.54,
-          "m for in": 1 / 0.0254, "in for mm": 25.4}  # fmt: skip
-ANGLE = {"rad for degrees": 180 / math.pi, "rad for mrad": 1e3}
-MOMENT = {"kN m for N mm": 1e6, "kip ft for kN m": 1.3558179483314}
+    "kip taken for lbf": 1e3, "kN taken for N": 1e3, "kip taken for kN": 4.4482216152605, "tonnes taken for kN": 9.80665,
+    "MN taken for N": 1e6, "lbf taken for N": 4.4482216152605,
+}  # fmt: skip
+LENGTH = {
+    "m taken for mm": 1e3, "m taken for cm": 1e2, "cm taken for mm": 10.0, "ft taken for in": 12.0,
+    "m taken for ft": 1 / 0.3048,
+    "in taken for cm": 2.54, "m taken for in": 1 / 0.0254, "in taken for mm": 25.4,
+}  # fmt: skip
+ANGLE = {"rad taken for degrees": 180 / math.pi, "rad taken for mrad": 1e3}
+MOMENT = {"kN m taken for N mm": 1e6, "kip ft taken for kN m": 1.3558179483314, "kip ft taken for lbf in": 12e3}
+"""What a value must be multiplied by where one unit was taken for another; the other way round, divided by."""
 UNIT, SIGN, MEMBER_SIGN, ONE_SIGN, SWAP, DIGITS, SLIP, LONE, LONE_ROW = 0.3, 0.3, 0.4, 0.7, 0.6, 0.5, 0.4, 2.2, 2.6
 FEW_ROWS, FEW_VALUES = 14, 4
 
@@ -105,14 +106,23 @@ def _unit(seen: Observation, rows: Ints, what: str, table: dict[str, float] | No
     if not len(large):
         return
     ratio = float(np.median(seen.said[large] / seen.value[large]))
-    for words, size in (table or _ratios(what)).items():
-        for factor in (size, 1 / size):
+    where = _places(seen, rows)
+    for factor, words in _near(ratio, table or _ratios(what)).items():
+        says = f"{what} stands in another unit: {words}"
+        yield _replaced(seen, rows, seen.value[rows] * factor, "units", where if len(where) < 2 else (), says,
+                        UNIT, seen.half[rows] * factor)  # fmt: skip
+
+
+def _near(ratio: float, table: dict[str, float]) -> dict[float, str]:
+    """Unit factors within a twentieth of the ratio, with what each may come from."""
+    found: dict[float, str] = {}
+    for words, size in table.items():
+        one, other = words.split(" taken for ")
+        for factor, text in ((size, words), (1 / size, f"{other} taken for {one}")):
             if abs(ratio / factor - 1) < 0.05:
-                text = words if factor == size else " for ".join(reversed(words.split(" for ")))
-                says = f"{what} stands in another unit ({factor:.6g} times: {text}?)"
-                where = _places(seen, rows)
-                yield _replaced(seen, rows, seen.value[rows] * factor, "units", where if len(where) < 2 else (), says,
-                                UNIT, seen.half[rows] * factor)  # fmt: skip
+                key = float(f"{factor:.9g}")
+                found[key] = f"{found[key]}, or {text}" if key in found else text
+    return found
 
 
 def _ratios(quantity: str) -> dict[str, float]:

@@ -7,18 +7,22 @@ r'r - r'Q (Q'Q)^-1 Q'r, so places that cannot explain the difference fall out be
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from functools import cached_property
 
 import numpy as np
 
 from crosscheck.frame.loads import case_factors
-from crosscheck.frame.model import Floats, Frame, Ints, Load
+from crosscheck.frame.model import Floats, Ints, Load
 from crosscheck.opinions.slope_deflection.prepared import DISPLACEMENT, END, REACTION, SPAN, Places, Prepared
 from crosscheck.suspects.observation import EXTREME, Observation
 
 MOST_ROWS = 4000
 """Values used to weigh changes; of a larger claim the worst and an even sample of the rest."""
+
+
+NUDGE = 1e-4
+"""Relative step for slopes of what is fitted."""
 
 
 class Screen:
@@ -134,6 +138,25 @@ class Screen:
             out[part] = effects[part, 3 * block : 3 * block + 3] @ x
         return out
 
+    def refined(self, delta_at: Callable[[float], Floats], p: float) -> float:
+        """The positive number near p whose change of the values fits best: Gauss-Newton steps on its logarithm."""
+        w, best, least = self.weight, p, np.inf
+        for _ in range(8):
+            delta = delta_at(p)
+            left = float(((w * (self.residual - delta)) ** 2).sum())
+            if not left < least:
+                return best
+            best, least = p, left
+            slope = w * (delta_at(p * (1 + NUDGE)) - delta) / NUDGE
+            size = float(slope @ slope)
+            if not size > 0 or not np.isfinite(size):
+                return best
+            step = float(np.clip(slope @ (w * (self.residual - delta)) / size, -0.5, 0.5))
+            p = p * float(np.exp(step))
+            if abs(step) < 1e-9:
+                return p
+        return best
+
     # --- loads ---
 
     def load_deltas(self, loads: Sequence[Load]) -> Floats:
@@ -172,7 +195,3 @@ class Screen:
                     r = r - q @ np.linalg.lstsq(q, r, rcond=1e-10)[0]
             left += float(r @ r)
         return left
-
-
-def frame_of(screen: Screen) -> Frame:
-    return screen.frame

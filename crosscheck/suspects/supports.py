@@ -39,6 +39,9 @@ def support_options(screen: Screen) -> Iterator[Option]:
     good = np.all([np.isfinite(a).all(axis=1) for a in actions], axis=0)
     left = screen.left_by(screen.support_grams, block, [np.nan_to_num(a) for a in actions])
     names = list(frame.joints)
+    for k in np.flatnonzero(~good).tolist():
+        if names[joints[k]] in frame.supports:
+            yield _option(frame, names[joints[k]], wanted[k], texts[k], costs[k], None)
     for k in np.argsort(np.where(good, left, np.inf))[:60].tolist():
         if good[k]:
             delta = screen.delta_of(screen.effects.reaction, joints[k], [a[k] for a in actions])
@@ -78,7 +81,7 @@ def _with(own: tuple[float, float, float], axis: int, value: float) -> tuple[flo
     return new[0], new[1], new[2]
 
 
-def _option(frame: Frame, joint: str, stiffness: Floats, says: str, cost: float, delta: Floats, fitted: int = 0) -> Option:
+def _option(frame: Frame, joint: str, stiffness: Floats, says: str, cost: float, delta: Floats | None, fitted: int = 0) -> Option:
     change = Change(partial(_applied, joint=joint, stiffness=tuple(stiffness.tolist())))
     return Option("support", (named(frame, "joint", joint),), says, change, cost, delta, fitted=fitted)
 
@@ -96,11 +99,11 @@ def _springs(screen: Screen) -> Iterator[Option]:
     for joint, support in frame.supports.items():
         j = frame.joint_index[joint]
         own = (support.x, support.y, support.rotation)
-        _, scale = screen.base._support_response
+        stiff = screen.base.support_stiffness[j]
         for axis in range(3):
             if own[axis] == FREE:
                 continue
-            fitted = _fit_spring(screen, j, own, axis, float(scale[j, axis]))
+            fitted = _fit_spring(screen, j, own, axis, float(stiff[axis]))
             if fitted is None:
                 continue
             k, delta = fitted
@@ -117,21 +120,24 @@ def _fit_spring(
     screen: Screen, j: int, own: tuple[float, float, float], axis: int, scale: float
 ) -> tuple[float, Floats] | None:
     """The stiffness that leaves least over, and its effect; None where it improves little."""
-    low, high = np.log(1e-3), np.log(1e3)
-    best = np.nan
-    for _ in range(4):
-        trial = np.exp(np.linspace(low, high, 25)) * scale
-        wanted = np.array([_with(own, axis, float(k)) for k in trial])
-        block = np.full(len(trial), j)
-        actions = [screen.base.support_actions(name, block, wanted) for name in screen.seen.names]
-        left = screen.left_by(screen.support_grams, block, actions)
-        k = int(np.argmin(left))
-        if not np.isfinite(left[k]):
-            return None
-        best, step = trial[k], (high - low) / 24
-        low, high = np.log(best / scale) - step, np.log(best / scale) + step
-        delta = screen.delta_of(screen.effects.reaction, j, [a[k] for a in actions])
-    return None if left[k] > 0.5 * screen.total else (float(best), delta)
+
+    def actions(stiffness: Floats) -> list[Floats]:
+        wanted = np.array([_with(own, axis, float(k)) for k in stiffness])
+        return [screen.base.support_actions(n, np.full(len(wanted), j), wanted) for n in screen.seen.names]
+
+    def delta(k: float) -> Floats:
+        return screen.delta_of(screen.effects.reaction, j, [a[0] for a in actions(np.array([k]))])
+
+    grid = np.logspace(-5, 5, 41) * scale
+    left = screen.left_by(screen.support_grams, np.full(len(grid), j), [np.nan_to_num(a) for a in actions(grid)])
+    k = screen.refined(delta, float(grid[int(np.argmin(left))]))
+    tidy = float(f"{k:.3g}")
+    found, rounded = delta(k), delta(tidy)
+    if not screen.left(found[:, None])[0] <= 0.5 * screen.total:
+        return None
+    if screen.left(rounded[:, None])[0] <= max(1.2 * screen.left(found[:, None])[0], 0.5 * len(found)):
+        return tidy, rounded
+    return k, found
 
 
 def every_support_option(frame: Frame) -> Iterator[Change]:

@@ -35,7 +35,7 @@ UNFIT, STEEPNESS = 3.0, 2.0
 PER_NUMBER = 0.2
 CONFIRMED = 16
 PROMISE = 0.5
-"""A family whose best start leaves more than this share over is not fitted further."""
+"""A family that leaves more than this share over after two steps is not fitted further."""
 RIVALS = 4.0
 """Places are searched where the least misfit they can leave is within this factor of rounding, or among the best."""
 PLACES = 6
@@ -217,11 +217,9 @@ class Sweep:
         nil = self.weigh(Option("", (), "", family.at(family.starts[0]).change, 0.0))
         points = [(0.0, nil), *((float(at(p)), w) for p, w in tried)]
         points.sort(key=lambda pw: pw[1].rough)
-        if points[0][1].rough > np.sqrt(PROMISE) * nil.rough and family.logarithmic:
-            return None
-        for _ in range(6):
+        for turn in range(7):
             step = self._secant(points)
-            if step is None:
+            if step is None or (turn == 2 and points[0][1].rough > np.sqrt(PROMISE) * nil.rough):
                 break
             found = self.solve(family.at(back(step)))
             if found is None:

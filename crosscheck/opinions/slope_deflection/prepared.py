@@ -43,6 +43,8 @@ SINGULAR_PIVOT = 1e-13
 """A pivot below this share of its own diagonal entry is a movement without resistance."""
 SINGULAR_CHANGE = 1e-9
 """A change that leaves less than this share of the stiffness makes a mechanism."""
+FOLLOWS = 1e-6
+"""Share of an imposed movement that axially rigid members may fail to follow by rounding alone."""
 STIFFER = 1e9
 """Stiffness factor that stands for a rigid one when load rotations are parted into what bends and what does not."""
 
@@ -94,6 +96,7 @@ class Prepared:
         self.free = self.system.free
         self.B = self.system.deformation.tocsr()
         self.Bf = self.B[:, self.free].tocsc()
+        self.Bf_rows = self.Bf.tocsr()
         self.D = self.system.member_stiffness
         self._states: dict[str, Solution] = {}
         self._turns: dict[str, tuple[Floats, Floats]] = {}
@@ -171,26 +174,29 @@ class Prepared:
     def _restrained(self) -> Bools:
         return np.asarray(self.frame.support_table.stiffness.ravel() != FREE)
 
+    @cached_property
+    def _unit(self) -> tuple[Floats, Floats]:
+        """(3 j, 3 j) displacements and (3 m, 3 j) member forces of a unit force in each direction that is free, and of a
+        unit movement of each that is held; corrected in rounds, so that axially rigid members keep their lengths."""
+        size, system = 3 * len(self.frame.joints), self.system
+        outer, shift = np.zeros((size, size)), np.zeros((size, size))
+        outer[self.free, self.free] = 1.0
+        held = np.flatnonzero(system.held)
+        shift[held, held] = 1.0
+        forces = np.asarray(self.D @ (self.B @ shift))
+        forces, shift = system._settle(forces, shift, outer, np.zeros((len(self.frame.members), size)))
+        return shift, forces
+
     def effects(self, places: Places) -> Effects:
         """Unit effects at the places (for values along a member: axial, shear and moment only)."""
-        forces, moves = self._readers(places)
-        held = np.flatnonzero(self.system.held)
-        whole = (forces @ self.D @ self.B + moves).tocsc()
-        right = whole[:, self.free].T.toarray()
-        n, size = len(places.kind), 3 * len(self.frame.joints)
-        force = np.zeros((n, size))
-        if len(self.free):
-            force[:, self.free] = self.system.correct(right).T
-        a = force[:, self.free]
-        coupling = (self.Bf.T @ self.D @ self.B[:, held]).tocsc()
-        force[:, held] = whole[:, held].toarray() - (coupling.T @ a.T).T
-        member = forces.toarray() - (self.Bf @ a.T).T
+        from_forces, from_moves = self._readers(places)
+        shift, forces = self._unit
+        force = np.asarray(from_forces @ forces + from_moves @ shift)
+        member = from_forces.toarray() - (self.Bf @ force[:, self.free].T).T
         reaction = force.copy()
         rows = np.flatnonzero(places.kind == REACTION)
-        hidden = self._axes.T.tocsr()[3 * places.joint[rows] + places.column[rows]] @ sp.diags(
-            (~self._restrained).astype(float)
-        )
-        reaction[rows] += hidden.toarray()
+        turned = self._axes.T.tocsr()[3 * places.joint[rows] + places.column[rows]]
+        reaction[rows] += (turned @ sp.diags((~self._restrained).astype(float))).toarray()
         return Effects(force, reaction, np.asarray(member))
 
     def _readers(self, p: Places) -> tuple[Any, Any]:
@@ -219,15 +225,11 @@ class Prepared:
     def _own(self) -> Floats:
         """(m, 3, 3) deformation of each member under its own self-balanced actions, the rest of the frame included."""
         m = len(self.frame.members)
+        moved = np.asarray(self.Bf @ self._unit[0][np.ix_(self.free, self.free)])
         out = np.zeros((m, 3, 3))
-        if not len(self.free):
-            return out
-        for first in range(0, m, 200):
-            rows = self.Bf[3 * first : 3 * min(first + 200, m)]
-            moved = self.system.correct(rows.T.toarray())
-            product = rows @ moved
-            for k in range(rows.shape[0] // 3):
-                out[first + k] = product[3 * k : 3 * k + 3, 3 * k : 3 * k + 3]
+        for k in range(m):
+            rows = slice(3 * k, 3 * k + 3)
+            out[k] = (self.Bf_rows[rows] @ moved[rows].T).T
         return out
 
     @cached_property
@@ -273,8 +275,9 @@ class Prepared:
     def _shared(self, member: tuple[int, ...]) -> Floats:
         """(3 n, 3 n) deformations of some members under their own and each other's self-balanced actions."""
         if member not in self._shared_by:
-            rows = self.Bf.tocsr()[(3 * np.array(member)[:, None] + np.arange(3)).ravel()]
-            self._shared_by[member] = np.asarray(rows @ self.system.correct(rows.T.toarray()))
+            rows = self.Bf_rows[(3 * np.array(member)[:, None] + np.arange(3)).ravel()]
+            moved = self._unit[0][np.ix_(self.free, self.free)]
+            self._shared_by[member] = np.asarray(rows @ (rows @ moved).T)
         return self._shared_by[member]
 
     def _changed_members(
@@ -305,32 +308,30 @@ class Prepared:
     def _support_response(self) -> tuple[Floats, Floats]:
         """(j, 3, 3) response of each joint's three directions to actions there, and (j, 3) its scale: displacement to
         force where not held, reaction to movement where held."""
-        j = len(self.frame.joints)
-        out, scale = np.zeros((j, 3, 3)), np.ones((j, 3))
-        held = self.system.held
-        position = np.full(3 * j, -1)
-        position[self.free] = np.arange(len(self.free))
-        stiffness = (self.B.T @ self.D @ self.B).tocsr()
-        for first in range(0, j, 100):
-            dofs = np.arange(3 * first, 3 * min(first + 100, j))
-            right = np.zeros((len(self.free), len(dofs)))
-            mine = position[dofs] >= 0
-            right[position[dofs[mine]], np.flatnonzero(mine)] = 1.0
-            fixed = np.flatnonzero(held[dofs])
-            if len(fixed):
-                right[:, fixed] = -stiffness[:, dofs[fixed]][self.free].toarray()
-            moved = np.zeros((3 * j, len(dofs)))
-            if len(self.free):
-                moved[self.free] = self.system.correct(right)
-            moved[dofs[fixed], fixed] = 1.0
-            pull = stiffness[dofs] @ moved
-            said = np.where(held[dofs][:, None], pull, moved[dofs])
-            for k in range(len(dofs) // 3):
-                out[first + k] = said[3 * k : 3 * k + 3, 3 * k : 3 * k + 3]
-        diagonal = np.einsum("jii->ji", out)
-        own = stiffness.diagonal().reshape(-1, 3)
-        scale = np.where(held.reshape(-1, 3), own, diagonal)
+        j, held = len(self.frame.joints), self.system.held
+        shift, forces = self._unit
+        whole = np.where(held[:, None], self.B.T @ forces, shift).reshape(j, 3, j, 3)
+        out = whole[np.arange(j), :, np.arange(j)]
+        own = (self.B.T @ self.D @ self.B).diagonal().reshape(-1, 3)
+        scale = np.where(held.reshape(-1, 3), own, np.einsum("jii->ji", out))
         return out, np.where(scale > 0, scale, 1.0)
+
+    @cached_property
+    def support_stiffness(self) -> Floats:
+        """(j, 3) how stiffly the frame resists a movement in each direction of each joint's support axes; at least tiny."""
+        response, scale = self._support_response
+        own = np.abs(np.einsum("jii->ji", response))
+        stiff = np.where(self.system.held.reshape(-1, 3), own, 1 / np.where(own > 0, own, np.inf))
+        return np.asarray(np.where(stiff > 0, stiff, scale))
+
+    @cached_property
+    def _stuck(self) -> Bools:
+        """(3 j,) held directions along which axially rigid members let nothing move: their release changes nothing."""
+        rigid = 3 * np.flatnonzero(self.system.rigid) + 2
+        longer = np.abs(self.B[rigid] @ self._unit[0])
+        length = float(self.frame.member_table.length.max(initial=1.0))
+        unit = np.tile([1.0, 1.0, length], len(self.frame.joints))
+        return np.asarray(self.system.held & (longer.max(axis=0, initial=0.0) > FOLLOWS * unit))
 
     def support_actions(self, name: str, joint: Ints, stiffness: Floats) -> Floats:
         """(n, 3) actions along a joint's support axes that stand for its support having `stiffness` (n, 3) instead.
@@ -345,6 +346,10 @@ class Prepared:
         pull = (self._axes @ self._pull(name).ravel()).reshape(-1, 3)[joint]
         matrix, right = np.zeros((len(joint), 3, 3)), np.zeros((len(joint), 3))
         stays = held & (stiffness == HELD) | (~held & (stiffness == old))
+        stuck = self._stuck.reshape(-1, 3)[joint] & ~stays
+        # Two such directions together may let the joint move between them: not to be told from each alone.
+        astray = stuck.sum(axis=1) > 1
+        stays |= stuck
         finite = np.where(np.isinf(stiffness), 0.0, stiffness)
         unit = np.eye(3)
         for i in range(3):
@@ -359,7 +364,9 @@ class Prepared:
             right[:, i] += np.where(stopped, (settled[:, i] - moved[:, i]) / size, 0.0)
             matrix[:, i] += np.where(changed[:, None], unit[i] + up[:, None] * response[:, i], 0.0)
             right[:, i] += np.where(changed, -up * (moved[:, i] - settled[:, i]), 0.0)
-        return _solved(matrix, right)
+        actions = _solved(matrix, right)
+        actions[astray] = np.nan
+        return actions
 
     # --- loads ---
 
