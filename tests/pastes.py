@@ -521,12 +521,13 @@ class Maker:
     def _cells(self, heads: list[tuple[str, str]], rows: list[list[Any]]) -> list[list[str]]:
         s = self.spec
         kinds = [k for _, k in heads]
-        decimals = {}
+        decimals, largest = {}, {}
         for j, kind in enumerate(kinds):
             if kind:
                 same = [i for i, k in enumerate(kinds) if k == kind]
                 column = np.array([_plain(row[i]) for row in rows for i in same], dtype=float)
                 decimals[j] = decimals_for(column, s.digits)
+                largest[j] = float(np.nanmax(np.abs(column), initial=0.0))
         out = []
         for row in rows:
             line = []
@@ -536,7 +537,7 @@ class Maker:
                     continue
                 value = _plain(cell)
                 if not isinstance(cell, tuple) and np.isfinite(value):
-                    value = self._maybe_plant(value, decimals[j])
+                    value = self._maybe_plant(value, largest[j])
                     self.values += 1
                 unit = self.unit_words[kinds[j]] if " " not in self.unit_words[kinds[j]] else ""
                 at_exponent = "fixed" if isinstance(cell, tuple) and s.writing == "exponent" else s.writing
@@ -545,7 +546,7 @@ class Maker:
             out.append(line)
         return out
 
-    def _maybe_plant(self, value: float, decimals: int) -> float:
+    def _maybe_plant(self, value: float, largest: float) -> float:
         """The one error of this paste: another sign, a digit dropped, or a size far beyond tolerance."""
         if not self.plant or self.values != self.planting:
             return value
@@ -607,22 +608,15 @@ def _worth(spec: Spec, cases: list[str], count: int) -> int:
     """A value large enough that an error in it lies beyond tolerance: the one drawn, or the next that is."""
 
     class Sizes(Maker):
-        found: list[float] = []  # noqa: RUF012
-
-        def _maybe_plant(self, value: float, decimals: int) -> float:
-            self.sizes.append((abs(round(value, decimals)), decimals))
+        def _maybe_plant(self, value: float, largest: float) -> float:
+            shares.append(abs(value) / largest if largest else 0.0)
             return value
 
-    sizes = Sizes(spec)
-    sizes.sizes = []  # type: ignore[attr-defined]
-    sizes.text(cases)
-    found = sizes.sizes  # type: ignore[attr-defined]
+    shares: list[float] = []
+    Sizes(spec).text(cases)
     start = Random(f"plant {spec.seed}").randrange(count)
-    for k in range(count):
-        size, decimals = found[(start + k) % count]
-        if size * 10.0**decimals >= 0.3 * 10 ** (spec.digits - 1):
-            return (start + k) % count
-    return start
+    order = [(start + k) % count for k in range(count)]
+    return next(k for k in order if shares[k] >= 0.3)
 
 
 @dataclass(frozen=True)

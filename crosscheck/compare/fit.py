@@ -27,7 +27,8 @@ class Choice:
     """A unit and a convention, and how the batch fits them.
 
     bad: (n,) beyond what is allowed. telling: (n,) judged at all and large enough to tell a sign or a unit by.
-    distance: mean over telling values of |claim - opinion| / (|claim| + |opinion|), 0 (all right) to 1 (all wrong).
+    misses: sum over telling values of |claim - opinion| / (|claim| + |opinion|), and 1 for each that this unit makes too coarse
+      to judge; about 0 where all is right. Units are chosen by it and not by what fits: a huge unit leaves nothing to judge.
     """
 
     unit: UnitChoice | None
@@ -35,7 +36,7 @@ class Choice:
     bad: Bools
     telling: Bools
     sizes_bad: Bools
-    distance: float
+    misses: float
 
     @property
     def fits(self) -> bool:
@@ -43,8 +44,8 @@ class Choice:
 
     @property
     def rank(self) -> tuple[bool, float]:
-        """Smaller is better: what fits before what does not, then by how many values it fits or how near it is."""
-        return (False, -float(self.telling.sum())) if self.fits else (True, self.distance)
+        """Smaller is better: what fits before what does not, then by how many values it fits or how little it misses."""
+        return (False, -float(self.telling.sum())) if self.fits else (True, self.misses)
 
 
 @dataclass(slots=True)
@@ -73,7 +74,7 @@ class Fitter:
         for trial in tables:
             if trial.open and id(trial) not in picked:
                 lengths = angle_choices() if trial.batch.quantity == "rotation" else length_choices(self.units)
-                picked[id(trial)] = min(lengths, key=lambda u: (*trial.best(u).rank, not u.own))
+                picked[id(trial)] = min(lengths, key=lambda u: (trial.best(u).misses, not u.own))
         return [trial.fitted(picked.get(id(trial))) for trial in tables]
 
 
@@ -123,8 +124,8 @@ class _Trial:
         share = np.where(telling & (total > 0), apart / np.where(total > 0, total, 1.0), 0.0)
         # A value that this unit would make too coarse to judge speaks against the unit.
         coarse = np.isfinite(said) & ~known
-        distance = float((share.sum() + coarse.sum()) / max(1, int(telling.sum() + coarse.sum())))
-        return Choice(unit, convention, bad, telling, known & (size_apart > may), distance)
+        misses = float(share.sum() + coarse.sum())
+        return Choice(unit, convention, bad, telling, known & (size_apart > may), misses)
 
 
 def _expected(batch: Batch, references: list[Reference], tried: list[Convention]) -> list[Floats]:
@@ -167,14 +168,14 @@ def _scales(batch: Batch, references: list[Reference]) -> tuple[Floats, Bools]:
 def _one_system(
     trials: list[_Trial], forces: list[UnitChoice], arms: list[UnitChoice]
 ) -> dict[int, UnitChoice | None]:
-    """The unit of force and of length in moments under which most fits, the frame's own before others."""
+    """The unit of force and of length in moments under which least is missed, the frame's own before others."""
     turning = [t for t in trials if t.batch.quantity == "moment"]
     pushing = [t for t in trials if t.batch.quantity != "moment"]
 
-    def cost(pair: tuple[UnitChoice, UnitChoice]) -> tuple[int, float, int]:
+    def cost(pair: tuple[UnitChoice, UnitChoice]) -> tuple[float, int]:
         force, arm = pair
-        ranks = [t.best(force).rank for t in pushing] + [t.best(_moment_unit(force, arm)).rank for t in turning]
-        return sum(r[0] for r in ranks), sum(r[1] for r in ranks), (not force.own) + (not arm.own)
+        units = [(t, force) for t in pushing] + [(t, _moment_unit(force, arm)) for t in turning]
+        return sum(t.best(u).misses for t, u in units), (not force.own) + (not arm.own)
 
     pairs = product(forces, arms if turning else arms[:1])
     force, arm = min(pairs, key=cost)
