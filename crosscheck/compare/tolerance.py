@@ -111,7 +111,8 @@ def case_scales(
 
 def full_restraint(frame: Frame, table: LoadTable) -> Scales:
     """The size of what temperature, misfit and settlement impose, and of what they would cause in members held fast:
-    EA times the strain or movement / L (axially elastic), EI times the curvature, 6 EI / L^2 and 4 EI / L times the movement."""
+    EA times the strain or movement / L (axially elastic), EI times the curvature, 6 EI / L^2 and 4 EI / L times the
+    movement."""
     t = frame.member_table
     stiffness = t.E * t.I
     bend = np.where(table.difference != 0.0, np.abs(table.difference) * t.alpha / t.depth, 0.0)
