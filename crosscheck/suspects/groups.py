@@ -124,12 +124,8 @@ def _fit(screen: Screen, group: Group) -> Option | None:
 
     grid = np.geomspace(*SPAN_OF_FACTORS, COARSE)
     left = screen.left(np.column_stack([delta(float(g)) for g in grid]))
-    p = screen.refined(delta, float(grid[int(np.argmin(np.where(np.isfinite(left), left, np.inf)))]))
-    tidy = float(f"{p:.2g}")
-    best, rounded = screen.left(np.column_stack([delta(p), delta(tidy)]))
-    if not best <= 0.5 * screen.total:
-        return None
-    return _option(screen, group, tidy if rounded <= max(1.2 * best, 0.5 * len(screen.residual)) else p, FITTED, 1)
+    p = screen.fitted(delta, float(grid[int(np.argmin(np.where(np.isfinite(left), left, np.inf)))]))
+    return _option(screen, group, p, FITTED, 1) if screen.left(delta(p)[:, None])[0] <= 0.5 * screen.total else None
 
 
 def _swapped(screen: Screen) -> Iterator[Option]:

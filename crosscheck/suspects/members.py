@@ -152,14 +152,9 @@ def _fit(screen: Screen, m: int, family: str) -> tuple[float, _Trial, list[Float
     left, _ = _weigh(screen, [trial(float(g)) for g in grid])
     if not np.isfinite(left).any():
         return None
-    p = screen.refined(delta, float(grid[int(np.argmin(left))]))
-    tidy = float(f"{p:.2g}")
-    both = [trial(tidy), trial(p)]
-    left, actions = _weigh(screen, both)
-    if not left[1] <= 0.5 * screen.total:
-        return None
-    k = 0 if left[0] <= max(1.2 * left[1], 0.5 * len(screen.residual)) else 1
-    return float(left[k]), both[k], [a[k] for a in actions]
+    found = trial(screen.fitted(delta, float(grid[int(np.argmin(left))])))
+    left, actions = _weigh(screen, [found])
+    return (float(left[0]), found, [a[0] for a in actions]) if left[0] <= 0.5 * screen.total else None
 
 
 def _member_trial(frame: Frame, m: int, family: str, p: float) -> _Trial:

@@ -138,20 +138,40 @@ class Screen:
             out[part] = effects[part, 3 * block : 3 * block + 3] @ x
         return out
 
-    def refined(self, delta_at: Callable[[float], Floats], p: float) -> float:
-        """The positive number near p whose change of the values fits best: Gauss-Newton steps on its logarithm."""
-        w, best, least = self.weight, p, np.inf
+    def fitted(self, delta_at: Callable[[float], Floats], p: float) -> float:
+        """The positive number near p whose change of the values fits best, rounded where a round one does as well.
+
+        Fitted once in units of noise and once of the printed rounding alone; the second holds if it meets every value.
+        """
+        p = self._refined(delta_at, p, self.weight)
+        sharp = self._refined(delta_at, p, 1 / self.seen.meets[self.rows])
+        p = sharp if self.meets(delta_at(sharp)) else p
+        best = self.left(delta_at(p)[:, None])[0]
+        for digits in (2, 3, 4):
+            tidy = float(f"{p:.{digits}g}")
+            delta = delta_at(tidy)
+            if self.meets(delta) or self.left(delta[:, None])[0] <= 1.1 * best:
+                return tidy
+        return p
+
+    def meets(self, delta: Floats) -> bool:
+        """Whether a change of the values leaves every one within its printed rounding."""
+        return bool((np.abs(self.residual - delta) <= self.seen.meets[self.rows]).all())
+
+    def _refined(self, delta_at: Callable[[float], Floats], p: float, weight: Floats) -> float:
+        """Gauss-Newton steps on the number's logarithm."""
+        best, least = p, np.inf
         for _ in range(8):
             delta = delta_at(p)
-            left = float(((w * (self.residual - delta)) ** 2).sum())
+            left = float(((weight * (self.residual - delta)) ** 2).sum())
             if not left < least:
                 return best
             best, least = p, left
-            slope = w * (delta_at(p * (1 + NUDGE)) - delta) / NUDGE
+            slope = weight * (delta_at(p * (1 + NUDGE)) - delta) / NUDGE
             size = float(slope @ slope)
             if not size > 0 or not np.isfinite(size):
                 return best
-            step = float(np.clip(slope @ (w * (self.residual - delta)) / size, -0.5, 0.5))
+            step = float(np.clip(slope @ (weight * (self.residual - delta)) / size, -0.5, 0.5))
             p = p * float(np.exp(step))
             if abs(step) < 1e-9:
                 return p

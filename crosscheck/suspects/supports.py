@@ -81,7 +81,9 @@ def _with(own: tuple[float, float, float], axis: int, value: float) -> tuple[flo
     return new[0], new[1], new[2]
 
 
-def _option(frame: Frame, joint: str, stiffness: Floats, says: str, cost: float, delta: Floats | None, fitted: int = 0) -> Option:
+def _option(
+    frame: Frame, joint: str, stiffness: Floats, says: str, cost: float, delta: Floats | None, fitted: int = 0
+) -> Option:
     change = Change(partial(_applied, joint=joint, stiffness=tuple(stiffness.tolist())))
     return Option("support", (named(frame, "joint", joint),), says, change, cost, delta, fitted=fitted)
 
@@ -108,9 +110,7 @@ def _springs(screen: Screen) -> Iterator[Option]:
                 continue
             k, delta = fitted
             label = named(frame, "joint", joint)
-            says = f"{label} gave way along {AXES[axis]} like a spring of {k:.4g}" if axis < 2 else (
-                f"{label} turned like a spring of {k:.4g}"
-            )  # fmt: skip
+            says = f"{label} {f'gave way along {AXES[axis]}' if axis < 2 else 'turned'} like a spring of {k:.4g}"
             if own[axis] != HELD:
                 says = f"the {AXES[axis]} spring at {label} had a stiffness of {k:.4g} ({k / own[axis]:.4g} times)"
             yield _option(frame, joint, np.array(_with(own, axis, k)), says, SPRUNG, delta, 1)
@@ -130,14 +130,12 @@ def _fit_spring(
 
     grid = np.logspace(-5, 5, 41) * scale
     left = screen.left_by(screen.support_grams, np.full(len(grid), j), [np.nan_to_num(a) for a in actions(grid)])
-    k = screen.refined(delta, float(grid[int(np.argmin(left))]))
-    tidy = float(f"{k:.3g}")
-    found, rounded = delta(k), delta(tidy)
-    if not screen.left(found[:, None])[0] <= 0.5 * screen.total:
+    start = float(grid[int(np.argmin(left))])
+    if not np.isfinite(left).any():
         return None
-    if screen.left(rounded[:, None])[0] <= max(1.2 * screen.left(found[:, None])[0], 0.5 * len(found)):
-        return tidy, rounded
-    return k, found
+    k = screen.fitted(delta, start)
+    found = delta(k)
+    return (k, found) if screen.left(found[:, None])[0] <= 0.5 * screen.total else None
 
 
 def every_support_option(frame: Frame) -> Iterator[Change]:
