@@ -21,7 +21,7 @@ from crosscheck.frame.stations import stations
 from crosscheck.opinions.moment_distribution import holding, opine, working
 from crosscheck.opinions.moment_distribution.distribution import Distribution, conjugate
 from crosscheck.opinions.moment_distribution.members import members
-from crosscheck.opinions.moment_distribution.opinion import distribute
+from crosscheck.opinions.moment_distribution.process import distribute
 from crosscheck.opinions.moment_distribution.spans import _unit_roots
 from crosscheck.opinions.moment_distribution.sways import sways
 from crosscheck.problems import UnusableInput

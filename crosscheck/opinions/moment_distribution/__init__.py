@@ -10,7 +10,8 @@
 Shares no mechanics with the other opinions: formulas that stand there too are meant to stand twice.
 """
 
-from crosscheck.opinions.moment_distribution.opinion import NAME, opine
+from crosscheck.opinions.moment_distribution.opinion import opine
+from crosscheck.opinions.moment_distribution.process import NAME
 from crosscheck.opinions.moment_distribution.working import working
 
 __all__ = ["NAME", "opine", "working"]

@@ -32,7 +32,7 @@ class Pieces:
     Each member begins and ends with an empty piece, so that the values just before a load at x = 0 and just after one
     at the far end, which are the end actions, have a place too. intensity_along, intensity_across: (p, 2) value at
     the start and rate of change along the member. inner: on the flexible part, and not empty. face: (m, 2) the last
-    piece before the flexible part and the first one behind it.
+    piece before the flexible part and the first one behind it. couple: clockwise couples at the start of each.
     """
 
     member: Ints
@@ -46,6 +46,7 @@ class Pieces:
     along: Floats
     shear: Floats
     moment: Floats
+    couple: Floats
 
     def along_at(self, piece: Ints, s: Floats) -> Floats:
         """Sum of loads along local x at distance s from the start of each piece; `piece` and s broadcast together."""
@@ -81,13 +82,15 @@ class Pieces:
         )
 
 
-def cut(table: MemberTable, loads: LoadTable) -> Pieces:
-    """Cut every member at every place of change of this case and run the sums along."""
+def cut(table: MemberTable, loads: LoadTable, further: tuple[Ints, Floats] | None = None) -> Pieces:
+    """Cut every member at every place of change of this case, and at `further` ones (members and distances), and run
+    the sums along."""
     count = len(table.length)
     every = np.arange(count)
-    owner = np.concatenate([np.tile(every, 4), loads.point_member, loads.line_member, loads.line_member])
+    more, more_x = further or (np.zeros(0, dtype=np.int64), np.zeros(0))
+    owner = np.concatenate([np.tile(every, 4), loads.point_member, loads.line_member, loads.line_member, more])
     marks = (np.zeros(count), table.zone[:, 0], table.length - table.zone[:, 1], table.length)
-    x = np.concatenate([*marks, loads.point_at, loads.line_start, loads.line_end])
+    x = np.concatenate([*marks, loads.point_at, loads.line_start, loads.line_end, more_x])
     place, break_member, break_x = _distinct(owner, x)
     # Break i of member k starts piece i + k + 1: each member before it, and this one, has one piece more than breaks.
     starting = place + owner + 1
@@ -100,11 +103,11 @@ def cut(table: MemberTable, loads: LoadTable) -> Pieces:
     size = end - start
     p, q = len(loads.point_member), len(loads.line_member)
     at_mark, at_point = starting[: 4 * count].reshape(4, count), starting[4 * count : 4 * count + p]
-    line_from, line_to = starting[4 * count + p : 4 * count + p + q], starting[4 * count + p + q :]
+    line_from, line_to = starting[4 * count + p :][:q], starting[4 * count + p + q :][:q]
     face = np.column_stack([at_mark[1] - 1, at_mark[2]])
     inner = (size > 0) & (np.arange(len(member)) > face[member, 0]) & (np.arange(len(member)) < face[member, 1])
     along, across = _intensities(loads, line_from, line_to, start, end)
-    pieces = Pieces(member, start, size, inner, first, face, along, across, *np.zeros((3, len(member))))
+    pieces = Pieces(member, start, size, inner, first, face, along, across, *np.zeros((4, len(member))))
     return _run(pieces, loads, at_point)
 
 
@@ -150,7 +153,7 @@ def _run(pieces: Pieces, loads: LoadTable, at_point: Ints) -> Pieces:
         summed(at_point, v, count) for v in (loads.point_along, loads.point_across, loads.point_couple)
     ]
     along, shear, moment = jumps
-    pieces = replace(pieces, along=along, shear=shear, moment=moment)
+    pieces = replace(pieces, along=along, shear=shear, moment=moment, couple=moment.copy())
     number = np.diff(pieces.first)
     for step in range(1, int(number.max(initial=0))):
         here = pieces.first[:-1][number > step] + step

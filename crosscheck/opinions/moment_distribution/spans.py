@@ -54,7 +54,7 @@ class MemberSpans:
         bent = self._of(name)
         pieces = bent.pieces
         member, x = np.asarray(member), np.asarray(x, dtype=float)
-        piece = _piece_at(pieces, member, x, np.asarray(side))
+        piece = piece_at(pieces, member, x, np.asarray(side))
         s = np.clip(x - pieces.start[piece], 0.0, pieces.size[piece])
         return np.column_stack([
             -pieces.along_at(piece, s),
@@ -156,7 +156,7 @@ def _slope_terms(m: Members, bent: Bent, piece: Ints) -> Floats:
     ])  # fmt: skip
 
 
-def _piece_at(pieces: Pieces, member: Ints, x: Floats, side: Ints) -> Ints:
+def piece_at(pieces: Pieces, member: Ints, x: Floats, side: Ints) -> Ints:
     """(n,) the piece that ends at or holds x (side -1), or begins at or holds it (side +1).
 
     Places are found to the rounding of x / length, the same that places loads on marks (frame/loads.py).

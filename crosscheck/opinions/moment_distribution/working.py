@@ -11,7 +11,7 @@ from crosscheck.answer import WorkTable
 from crosscheck.frame.kinematics import Study
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.opinions.moment_distribution.holding import FEW, Held, start, unbalanced
-from crosscheck.opinions.moment_distribution.opinion import Process, distribute
+from crosscheck.opinions.moment_distribution.process import Process, distribute
 
 NOTHING = 1e-12
 """Share of the largest moment below which a table says zero."""

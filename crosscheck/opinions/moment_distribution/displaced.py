@@ -1,0 +1,288 @@
+"""Distribution on the displaced frame, the axial forces taken as known: stiffness and carry-over are those under them.
+
+The joints are held, released one at a time in turn, there and back, each passing on what it carries over; the sways are
+let go by their holding forces. As long as the frame is stable under these axial forces its stiffness is positive
+definite, and then releasing one joint at a time is sure to settle (L. Seidel 1874), which releasing all at once
+is not: near the buckling of held joints a carry-over passes on more than it takes. What a round leaves over is finished by
+conjugate gradients, each step one more round (M. Hestenes and E. Stiefel 1952).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from scipy import sparse
+from scipy.linalg import LinAlgError, cholesky
+from scipy.sparse.linalg import splu
+
+from crosscheck.frame.loads import LoadTable
+from crosscheck.frame.model import HELD, Floats
+from crosscheck.opinions.moment_distribution.distribution import conjugate
+from crosscheck.opinions.moment_distribution.holding import Held
+from crosscheck.opinions.moment_distribution.pieces import Pieces, summed
+from crosscheck.opinions.moment_distribution.stretches import Bowed
+
+SETTLED = 4e-15
+"""Unbalanced share of the largest force or moment at which joints and sways count as balanced."""
+STUCK = 1e-11
+"""Unbalanced share at which a pass that no longer helps is the last."""
+LEAVE = 1e-9
+"""Share of what is unbalanced that one pass may leave; the next pass takes it up."""
+MOST_PASSES = 16
+DENSE = 400
+"""Up to so many rotations and sways a full table is quicker than a sparse one."""
+
+
+@dataclass(frozen=True)
+class Acting:
+    """One case: `couple` (j,) on joints, `force` (2j,) on joints along their own axes, with the sum of its loads at
+    each member's `to` end; across, along: (m,) those sums, along local +y and +x."""
+
+    couple: Floats
+    force: Floats
+    across: Floats
+    along: Floats
+
+
+@dataclass(slots=True)
+class Position:
+    """Where the frame has come to: rotation (j,), move (2j,) along own axes; and, summed up from the corrections,
+    axial (m,) force of the elastic members at the `from` end, push (2j,) and twist (j,) of support springs."""
+
+    rotation: Floats
+    move: Floats
+    axial: Floats
+    push: Floats
+    twist: Floats
+
+    def copy(self) -> Position:
+        return Position(*(getattr(self, name).copy() for name in self.__slots__))
+
+
+@dataclass(frozen=True, slots=True)
+class Round:
+    """One pass: steps of the corrections, and the unbalanced moment and holding force before it."""
+
+    steps: int
+    moment: float
+    force: float
+
+
+def acting(held: Held, loads: LoadTable, pieces: Pieces) -> Acting:
+    """What acts on the joints, and the sums of the members' loads."""
+    t = held.members.table
+    along, across = pieces.along[pieces.last], pieces.shear[pieces.last]
+    force = loads.joint[:, :2].copy()
+    to, joints = t.ends[:, 1], len(force)
+    force[:, 0] += summed(to, along * t.cos - across * t.sin, joints)
+    force[:, 1] += summed(to, along * t.sin + across * t.cos, joints)
+    return Acting(loads.joint[:, 2], held.sways.own_axes(force[:, :, None])[:, 0], across, along)
+
+
+@dataclass(frozen=True)
+class Displaced:
+    """A frame under axial forces taken as known; `joint` numbers below are those of `held`."""
+
+    held: Held
+    bowed: Bowed
+
+    @cached_property
+    def chords(self) -> Any:
+        """(m, q) sparse: chord rotation per unit sway."""
+        s = self.held.sways
+        return sparse.csr_array(s.turn[:, s.free] @ s.shape)
+
+    @cached_property
+    def joints(self) -> Any:
+        """(r, r) sparse: moments that hold the turning joints per rotation."""
+        held, k = self.held, self.bowed.stiffness
+        count = len(held.frame.joints)
+        a, b = held.ends.T
+        rows = np.concatenate([a, b, a, b, np.arange(count)])
+        columns = np.concatenate([a, b, b, a, np.arange(count)])
+        values = np.concatenate([k[:, 0, 0], k[:, 1, 1], k[:, 0, 1], k[:, 1, 0], held.rotation_spring])
+        whole = sparse.csr_array((values, (rows, columns)), shape=(count, count))
+        return sparse.csr_array(whole[held.turning][:, held.turning])
+
+    @cached_property
+    def sideways(self) -> Any:
+        """(r, q) sparse: moment that holds each turning joint per unit sway."""
+        held = self.held
+        members = np.repeat(np.arange(len(held.ends)), 2)
+        values = self.bowed.stiffness[:, :2, 2].ravel()
+        shape = (len(held.frame.joints), len(held.ends))
+        by_member = sparse.csr_array((values, (held.ends.ravel(), members)), shape=shape)
+        return sparse.csr_array(by_member[held.turning] @ self.chords)
+
+    @cached_property
+    def sways(self) -> Any:
+        """(q, q) sparse: holding forces per unit sway with every rotation held."""
+        s = self.held.sways
+        stretch = s.stretch[:, s.free] @ s.shape
+        axial, ground = sparse.diags_array(self.held.members.axial), sparse.diags_array(s.ground[s.free])
+        turned = sparse.diags_array(self.bowed.stiffness[:, 2, 2])
+        return sparse.csc_array(
+            self.chords.T @ turned @ self.chords + stretch.T @ axial @ stretch + s.shape.T @ ground @ s.shape
+        )
+
+    @cached_property
+    def whole(self) -> Any:
+        """(r + q, r + q) sparse: moments on the joints and holding forces per rotation and per unit sway."""
+        return sparse.csr_array(
+            sparse.block_array([[self.joints, self.sideways], [self.sideways.T, self.sways]])
+        )
+
+    @cached_property
+    def scaled(self) -> Any:
+        """`whole` with ones along its diagonal, or None where that is not positive."""
+        own = self.whole.diagonal()
+        if np.any(own <= 0):
+            return None
+        scale = sparse.diags_array(1 / np.sqrt(own))
+        return sparse.csc_array(scale @ self.whole @ scale)
+
+    @cached_property
+    def stable(self) -> bool:
+        """No member buckled between held ends, and no joint or sway that gives way when let go."""
+        if self.bowed.buckled.any() or self.scaled is None:
+            return False
+        return not self.scaled.shape[0] or _positive(self.scaled)
+
+    @cached_property
+    def turns(self) -> Any:
+        """Factorised lower triangle of `joints`: the joints released one at a time, in their order."""
+        return _in_order(self.joints)
+
+    def release(self, moment: Floats) -> Floats:
+        """(r, 1) rotations when the joints are released one at a time there and back, starting at these moments."""
+        if not moment.size:
+            return moment
+        forth = self.turns.solve(moment)
+        return np.asarray(self.turns.solve(self.joints.diagonal()[:, None] * forth, trans="T"))
+
+    @cached_property
+    def holding(self) -> Any:
+        """Factorised `sways`."""
+        return splu(self.sways, permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True})
+
+    def correct(self, moment: Floats, force: Floats, leave: float) -> tuple[Floats, Floats, int]:
+        """Rotations (r,) and sways (q,) that take what is unbalanced but for the share `leave`, and the steps."""
+        r = len(moment)
+        left = np.concatenate([moment, force])[:, None]
+        arm = float(self.held.members.table.length.mean())
+        most = np.abs(moment).max(initial=0.0) + arm * np.abs(force).max(initial=0.0)
+        goal = leave * np.repeat([most, most / arm], [r, len(force)])[:, None]
+        hold = self.holding.solve if len(force) else np.asarray
+        found, steps = conjugate(
+            lambda x: np.asarray(self.whole @ x),
+            lambda x: np.vstack([self.release(x[:r]), hold(x[r:])]),
+            left, goal, 4 * len(left) + 100,
+        )  # fmt: skip
+        return found[:r, 0], found[r:, 0], steps
+
+    def movements(self, position: Position) -> Floats:
+        """(m, 3) clockwise rotations of the members' joints and chords."""
+        turned = position.rotation[self.held.ends]
+        return np.column_stack([turned, self.held.sways.turn @ position.move])
+
+    def moments(self, position: Position) -> Floats:
+        """(m, 3) clockwise moments on the ends at the joints, and length * shear at the `from` end."""
+        b = self.bowed
+        return np.asarray(np.einsum("mij,mj->mi", b.stiffness, self.movements(position)) + b.fixed)
+
+    def joint_moments(self, case: Acting, position: Position, ends: Floats) -> Floats:
+        """(j,) clockwise moments left over on the joints, supports that hold apart."""
+        return np.asarray(case.couple + position.twist - self.held.gather @ ends[:, :2].ravel())
+
+    def joint_forces(self, case: Acting, position: Position, ends: Floats) -> Floats:
+        """(2j,) forces left over on the joints along their own axes, supports that hold apart."""
+        s = self.held.sways
+        return np.asarray(case.force + position.push - s.turn.T @ ends[:, 2] - s.stretch.T @ position.axial)
+
+    def settle(self, case: Acting, position: Position) -> tuple[list[Round], float]:
+        """Correct `position`, pass after pass; the passes, and the share left unbalanced."""
+        trace: list[Round] = []
+        s, share = self.held.sways, np.inf
+        while True:
+            ends = self.moments(position)
+            moment = self.joint_moments(case, position, ends)[self.held.turning]
+            force = s.shape.T @ self.joint_forces(case, position, ends)[s.free]
+            size_moment, size_force = self._sizes(case, position, ends)
+            before = share
+            share = max(_share(moment, size_moment), _share(force, size_force))
+            done = share <= SETTLED or (len(trace) > 1 and share > 0.25 * before and share < STUCK)
+            if done or len(trace) == MOST_PASSES or share > 1e6 * min(before, 1.0):
+                return trace, share
+            leave = float(np.clip(0.1 * SETTLED / share, LEAVE, 0.01))
+            turned, swayed, steps = self.correct(moment, force, leave)
+            trace.append(Round(steps, _largest(moment), _largest(force)))
+            self._apply(position, turned, swayed)
+
+    def _sizes(self, case: Acting, position: Position, ends: Floats) -> tuple[float, float]:
+        """What moments and forces at the joints are sums of."""
+        length = self.held.members.table.length
+        force = _largest(ends[:, 2] / length) + sum(map(_largest, (case.force, position.push, position.axial)))
+        moment = _largest(ends[:, :2]) + _largest(case.couple)
+        return moment + force * _largest(length), force
+
+    def _apply(self, position: Position, turned: Floats, swayed: Floats) -> None:
+        held, s = self.held, self.held.sways
+        rotation, move = np.zeros_like(position.rotation), np.zeros_like(position.move)
+        rotation[held.turning] = turned
+        move[s.free] = s.shape @ swayed
+        position.rotation += rotation
+        position.move += move
+        position.axial += held.members.axial * (s.stretch @ move)
+        position.push -= s.ground * move
+        position.twist -= held.rotation_spring * rotation
+
+    def axial(self, case: Acting, position: Position) -> Floats:
+        """(m,) axial forces at the `from` ends in this position; those of rigid members from the balance of the
+        joints."""
+        s, found = self.held.sways, position.axial.copy()
+        if len(s.basic):
+            force = self.joint_forces(case, position, self.moments(position))[s.free]
+            found[s.basic] = s.balance(force[:, None])[:, 0]
+        return found
+
+    def reactions(self, case: Acting, position: Position, axial: Floats) -> Floats:
+        """(j, 3) on the frame, global axes: what held supports add to balance their joint, and the springs' own
+        forces."""
+        ends = self.moments(position)
+        whole = Position(position.rotation, position.move, axial, position.push, position.twist)
+        support = self.held.frame.support_table.stiffness
+        force = self.joint_forces(case, whole, ends).reshape(-1, 2)
+        own = np.where(support[:, :2] == HELD, -force, position.push.reshape(-1, 2))
+        moment = np.where(support[:, 2] == HELD, -self.joint_moments(case, whole, ends), position.twist)
+        forces = self.held.sways.global_axes(own.reshape(-1, 1))[:, :, 0]
+        return np.column_stack([forces, moment])
+
+
+def _in_order(matrix: Any) -> Any:
+    """The lower triangle of a sparse matrix made ready to solve row after row."""
+    lower = sparse.csc_array(sparse.tril(matrix))
+    return splu(lower, permc_spec="NATURAL", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
+
+
+def _positive(matrix: Any) -> bool:
+    """Whether a symmetric matrix of unit diagonal is positive definite: whether every joint and sway, let go after
+    the others before it, still resists."""
+    if matrix.shape[0] <= DENSE:
+        try:
+            cholesky(matrix.toarray(), check_finite=False)
+        except LinAlgError:
+            return False
+        return True
+    factor = splu(matrix, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
+    return bool(np.array_equal(factor.perm_r, factor.perm_c) and np.all(factor.U.diagonal() > 0))
+
+
+def _largest(values: Floats) -> float:
+    return float(np.abs(values).max(initial=0.0))
+
+
+def _share(left: Floats, size: float) -> float:
+    return _largest(left) / size if size > 0 else 0.0

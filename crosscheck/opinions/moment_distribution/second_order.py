@@ -1,0 +1,209 @@
+"""The answer in second order: distribution on the displaced frame, repeated until the axial forces settle.
+
+Each repetition takes the axial forces as known, distributes on the frame that they soften or stiffen, and finds the
+axial forces that the displaced frame has. Where these go is foreseen from how the last few repetitions answered
+(D. G. Anderson 1965). The first repetition takes those of first order.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from crosscheck.answer import Answer, CaseAnswer, Silent
+from crosscheck.frame.kinematics import Study
+from crosscheck.frame.loads import load_table
+from crosscheck.frame.model import Floats, Frame
+from crosscheck.opinions.moment_distribution.bent_spans import Bent, BentSpans, bend
+from crosscheck.opinions.moment_distribution.critical import Growing, critical_factor, growing
+from crosscheck.opinions.moment_distribution.displaced import Acting, Displaced, Position, Round, acting
+from crosscheck.opinions.moment_distribution.process import GIVEN_UP, NAME, Process, distribute
+from crosscheck.opinions.moment_distribution.stretches import AGAIN, REACH, Axial, Division, bow, divide, parts_needed
+
+SETTLED = 1e-12
+"""Change of axial force, as a share of the case's largest force, at which the repetitions end."""
+NEARLY = 1e-9
+"""Share at which they may end where they no longer help."""
+MOST = 60
+"""Repetitions."""
+MEMORY = 8
+"""Repetitions that the next axial forces are foreseen from."""
+HALVINGS = 30
+"""How often a step may be halved that leads to where the frame is not stable."""
+
+
+@dataclass(frozen=True)
+class Repetition:
+    """Axial forces' change as a share of the largest force, and the passes of the distribution."""
+
+    change: float
+    rounds: list[Round]
+
+
+@dataclass(frozen=True)
+class Settled:
+    """One case in balance on the displaced frame."""
+
+    displaced: Displaced
+    case: Acting
+    position: Position
+    axial: Floats
+    trace: list[Repetition]
+
+
+class NotSettled(Exception):
+    """The case has no answer; the message says why."""
+
+
+def opine_displaced(frame: Frame, study: Study, names: Sequence[str] | None) -> Answer | Silent:
+    """Answer in second order for these load cases and combinations (None: all); see opinion.opine."""
+    chosen = frame.names if names is None else tuple(names)
+    try:
+        first = distribute(frame, chosen)
+    except (RuntimeError, np.linalg.LinAlgError):
+        return Silent(NAME, "the frame's sways have no stiffness that holds them, so no holding forces exist")
+    cases: dict[str, CaseAnswer] = {}
+    bent: dict[str, Bent] = {}
+    silent: dict[str, str] = {}
+    for column, name in enumerate(chosen):
+        try:
+            settled = settle_case(first, column)
+        except NotSettled as why:
+            silent[name] = str(why)
+            continue
+        cases[name] = _case_answer(settled, study)
+        bent[name] = _bent(settled)
+    return Answer(NAME, cases, study.undetermined, BentSpans(frame, bent, study.undetermined.axial), silent)
+
+
+def critical_load_factor(frame: Frame, name: str) -> float:
+    """By how much the first-order axial forces of a case must grow, all in proportion, for the frame to lose its
+    stability; infinite where it never does."""
+    first = distribute(frame, (name,))
+    return critical_factor(growing(first.held, load_table(frame, name), first.state.axial[:, 0]))
+
+
+def settle_case(first: Process, column: int) -> Settled:
+    """Repeat the distribution of one case until its axial forces settle.
+
+    Raises NotSettled past the critical load, and where nothing settles.
+    """
+    name, frame = first.names[column], first.held.frame
+    if first.left[column] > GIVEN_UP:
+        raise NotSettled(f"the first-order distribution did not settle: {first.left[column]:.1e} is left unbalanced")
+    loads, axial = load_table(frame, name), first.state.axial[:, column].copy()
+    grown = growing(first.held, loads, axial)
+    if not grown.stable(1.0):
+        raise NotSettled(f"past its critical load: the critical load factor is {critical_factor(grown):.2g}")
+    position = Position(*(
+        part[:, column].copy()
+        for part in (first.state.rotation, first.state.move, first.state.axial, first.state.push, first.state.twist)
+    ))  # fmt: skip
+    position.axial[first.held.members.rigid] = 0.0
+    return _repeat(grown, acting(first.held, loads, grown.pieces), position)
+
+
+class Ahead:
+    """Foresees where repetitions lead from the last few: the mixture of them that leaves the least change."""
+
+    def __init__(self) -> None:
+        self.taken: list[Floats] = []
+        self.found: list[Floats] = []
+
+    def next(self, taken: Floats, found: Floats) -> Floats:
+        self.taken, self.found = [*self.taken[-MEMORY:], taken], [*self.found[-MEMORY:], found]
+        change = np.array([f - t for t, f in zip(self.taken, self.found, strict=True)]).T
+        if change.shape[1] == 1:
+            return found
+        steps = np.diff(change, axis=1)
+        share = np.linalg.lstsq(steps, change[:, -1], rcond=1e-12)[0]
+        return np.asarray(found - np.diff(np.array(self.found).T, axis=1) @ share)
+
+
+def _repeat(grown: Growing, case: Acting, position: Position) -> Settled:
+    frame_at = _Frames(grown)
+    axial, ahead, trace = grown.axial, Ahead(), []
+    best, since = np.inf, 0
+    displaced = frame_at(axial)
+    for _ in range(MOST):
+        rounds, left = displaced.settle(case, position)
+        if left > GIVEN_UP:
+            raise NotSettled(f"the distribution did not settle: {left:.1e} of the largest is left unbalanced")
+        found = displaced.axial(case, position)
+        size = max(_largest(found), _largest(case.force), _largest(position.push)) or 1.0
+        change = _largest(found - axial) / size
+        trace.append(Repetition(change, rounds))
+        since = 0 if change < 0.5 * best else since + 1
+        best = min(best, change)
+        if change <= SETTLED or (change <= NEARLY and since > 3):
+            return Settled(displaced, case, position, found, trace)
+        wanted = ahead.next(axial, found)
+        for _ in range(HALVINGS):
+            displaced = frame_at(wanted)
+            if displaced.stable:
+                break
+            wanted = (wanted + axial) / 2
+        else:
+            raise NotSettled(NO_BALANCE)
+        axial = wanted
+    raise NotSettled(NO_BALANCE)
+
+
+NO_BALANCE = (
+    "no stable balance was found on the displaced frame: its axial forces grow as it gives way, though those of "
+    "first order alone leave it stable"
+)
+
+
+class _Frames:
+    """The frame under changing axial forces, cut afresh only when they have grown."""
+
+    def __init__(self, grown: Growing) -> None:
+        self.grown = grown
+        self.division: Division | None = None
+        self.parts = np.zeros(0, dtype=np.int64)
+
+    def __call__(self, axial: Floats) -> Displaced:
+        m = self.grown.held.members
+        parts, sheared = parts_needed(m, self.grown.pieces, axial)
+        if self.division is None or np.any(parts * REACH > np.maximum(self.parts, 1) * AGAIN):
+            self.parts = parts
+            self.division = divide(m, self.grown.loads, parts)
+        displaced = Displaced(self.grown.held, bow(m, self.division, Axial(axial)))
+        if sheared:
+            displaced.bowed.buckled[:] += 1
+        return displaced
+
+
+def _case_answer(settled: Settled, study: Study) -> CaseAnswer:
+    held, case, undetermined = settled.displaced.held, settled.case, study.undetermined
+    length = held.members.table.length
+    moments = settled.displaced.moments(settled.position)
+    ends = np.empty((len(length), 2, 3))
+    ends[:, 0, 0] = settled.axial
+    ends[:, 1, 0] = settled.axial - case.along
+    ends[:, 0, 1] = moments[:, 2] / length
+    ends[:, 1, 1] = -ends[:, 0, 1] - case.across
+    ends[:, :, 2] = moments[:, :2]
+    ends[undetermined.axial, :, 0] = np.nan
+    move = held.sways.global_axes(settled.position.move[:, None])[:, :, 0]
+    joints = np.column_stack([move, settled.position.rotation])
+    joints[undetermined.joints] = np.nan
+    reactions = settled.displaced.reactions(case, settled.position, settled.axial)
+    reactions[undetermined.reactions] = np.nan
+    return CaseAnswer(ends, joints, reactions)
+
+
+def _bent(settled: Settled) -> Bent:
+    held, t = settled.displaced.held, settled.displaced.held.members.table
+    move = held.sways.global_axes(settled.position.move[:, None])[:, :, 0][t.ends]
+    offset = move[:, :, 1] * t.cos[:, None] - move[:, :, 0] * t.sin[:, None]
+    ends = settled.displaced.moments(settled.position)
+    ends[:, 2] /= t.length
+    return bend(held.members, settled.displaced.bowed, settled.displaced.movements(settled.position), offset, ends)
+
+
+def _largest(values: Floats) -> float:
+    return float(np.abs(values).max(initial=0.0))
