@@ -144,7 +144,9 @@ def _by_blanks(table: RawTable, rows: list[list[Cell]], columns: tuple[str, ...]
     width = max([width, *wider])
     full = [r for r in rows if len(r) == width]
     spans = [(min(r[j].start for r in full), max(r[j].end for r in full)) for j in range(width)]
-    aligned = all(a[1] <= b[0] for a, b in zip(spans, spans[1:], strict=False))
+    # Rows parted by one blank each may seem to stand in line by chance.
+    wide = any(b.start - a.end > 1 for r in full for a, b in zip(r, r[1:], strict=False))
+    aligned = wide and all(a[1] <= b[0] for a, b in zip(spans, spans[1:], strict=False))
     seen = [{r[j].text for r in full if not is_number(r[j].text)} for j in range(width)]
     grid = Grid([])
     for k, (cells, (line, text)) in enumerate(zip(rows, table.rows, strict=True)):
@@ -214,16 +216,16 @@ def _blank_heads(table: RawTable, spans: list[tuple[int, int]], aligned: bool) -
     width = len(spans)
     best: list[Head] = [Head("")] * width
     for way in (_by_wide, _by_words, _by_place):
-        stacked: Row | None = [""] * width
+        stacked: Row = [""] * width
         for depth, (_, text) in enumerate(table.heads):
             group = depth + 1 < len(table.heads) and not _is_units_line(table.heads[depth + 1][1])
             units = depth > 0 and _is_units_line(text)
-            row = _placed(_units_of(text), spans, aligned) if units else way(text, spans, aligned, group)
-            if row is None or stacked is None:
-                stacked = None
+            row = _units_under(stacked, text, spans, aligned) if units else way(text, spans, aligned, group)
+            if row is None:
+                stacked = []
                 break
             stacked = [_put_together(a, b) for a, b in zip(stacked, row, strict=True)]
-        heads = [head_of(t) for t in stacked] if stacked else []
+        heads = [head_of(t) for t in stacked]
         if heads and _understood(heads) >= width:
             return heads
         if _understood(heads) > _understood(best):
@@ -233,6 +235,18 @@ def _blank_heads(table: RawTable, spans: list[tuple[int, int]], aligned: bool) -
 
 def _is_units_line(text: str) -> bool:
     return _all_units([c.text for c in _units_of(text)])
+
+
+def _units_under(heads: Row, text: str, spans: list[tuple[int, int]], aligned: bool) -> Row | None:
+    """A line of units under its heads: in order where it has one for every head that takes one, else by place."""
+    units = _units_of(text)
+    takers = [k for k, h in enumerate(heads) if head_of(h).noun not in (*_NAMING - {"station"}, "")]
+    if len(units) != len(takers):
+        return _placed(units, spans, aligned)
+    row = [""] * len(heads)
+    for k, unit in zip(takers, units, strict=True):
+        row[k] = unit.text
+    return row
 
 
 def _units_of(text: str) -> list[Cell]:
@@ -329,12 +343,15 @@ def _group_worth(words: tuple[str, ...], text: str) -> float:
     if len(words) == 1 and unit_of(text.strip("[](){}")) and text[:1] in "[({":
         return -0.5
     head = head_of(text)
-    nouns = [head_of(w).noun for w in words if not unit_of(w.strip("[](){}"))]
+    # "end" behind a result is the end of the member, not a column of ends.
+    telling = [w for k, w in enumerate(words) if not unit_of(w.strip("[](){}")) and not (k and w.lower() == "end")]
+    nouns = [head_of(w).noun for w in telling]
     naming, giving = ({n for n in nouns if n in kind} for kind in (_NAMING, _GIVING))
-    crowd = max(0, len(naming) - 1) + max(0, len(giving) - 1) + bool(naming - {"end", "joint"} and giving)
+    crowd = max(0, len(naming) - 1) + max(0, len(giving) - 1) + bool(naming - {"end", "joint"} and (giving or set(nouns) & {"F", "R", "x"}))
     axes = len({a for w in words if (a := head_of(w).axis) and head_of(w).noun == "x"})
     given = bool({"joint", "end"} & naming and (giving or {"F", "R", "x"} & set(nouns)))
     lost = bool(head.which and head.noun in _NAMING)
     bare = len(words) == 1 and (head.noun == "x" and head.axis != "x" or text.lower() in _GENERIC)
+    inside = any(w[-1:] in "])" and unit_of(w.strip("[](){}")) for w in words[:-1]) or bool("x" in nouns and giving & {"N", "V"})
     again = len(nouns) > len(set(nouns)) and bool(set(nouns) & {"F", "R", "D"})
-    return _worth(head) - 0.6 * crowd - 0.6 * max(0, axes - 1) - 0.3 * given - 0.5 * lost - 0.3 * bare - 0.4 * again
+    return _worth(head) - 0.6 * crowd - 0.6 * max(0, axes - 1) - 0.3 * given - 0.5 * lost - 0.3 * bare - 0.4 * again - 0.6 * inside

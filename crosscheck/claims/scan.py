@@ -146,6 +146,9 @@ class _Scanner:
             return "head", "units"
         if (label := self._case_in(text)) and self.names.case(label):
             return None  # "Load case: sway_right" is no head, though "right" and "case" are words of heads
+        if separator == "blank":
+            filled = text.split()
+            numbers = sum(is_number(t) for t in filled)
         if numbers > _end_numbers(filled) or not self._says_columns(text, filled, separator):
             return None
         if self._head_is_open() and len(self.table.heads) < 3:  # type: ignore[union-attr]

@@ -95,7 +95,7 @@ def join_units(cells: list[Cell]) -> list[Cell]:
     out: list[Cell] = []
     for cell in cells:
         last = out[-1] if out else None
-        if last and _takes_unit(last.text, cell.text):
+        if last and cell.start - last.end <= 1 and _takes_unit(last.text, cell.text):
             out[-1] = Cell(last.start, cell.end, f"{last.text} {cell.text}")
         else:
             out.append(cell)
