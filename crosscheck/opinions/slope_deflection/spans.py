@@ -16,6 +16,8 @@ from crosscheck.opinions.slope_deflection.members import SplitLoads, load_moment
 HALVINGS = 50
 SIXTHS = (1.0 - np.cos(np.pi * np.arange(6) / 5)) / 2
 """Places of a piece from which a polynomial of degree five is known best (Chebyshev's, ends included)."""
+PARTS = np.linspace(1e-4, 1.0 - 1e-4, 9)
+"""Between these the slope is looked at for a change of sign. At the very ends it may be zero, and its sign rounding."""
 TO_POWERS = np.linalg.inv(np.vander(SIXTHS, increasing=True))
 """From the values there to the coefficients of powers."""
 
@@ -199,15 +201,14 @@ class ClosedFormSpans:
         across = self._across(name, np.repeat(member, len(SIXTHS)), places.ravel()).reshape(places.shape)
         # Less the first value: a member that moves as a whole must not cost digits of how it bends.
         slope = ((across - across[:, :1]) @ TO_POWERS.T)[:, 1:] * np.arange(1.0, len(SIXTHS))
-        rising = np.signbit(slope[:, 0])
-        change = rising != np.signbit(slope.sum(axis=1))
-        member, a, b, slope, rising = member[change], a[change], b[change], slope[change], rising[change]
-        low, high = np.zeros(len(a)), np.ones(len(a))
-        for _ in range(HALVINGS if len(a) else 0):
+        falls = np.signbit(slope @ np.vander(PARTS, slope.shape[1], increasing=True).T)
+        piece, part = np.nonzero(falls[:, 1:] != falls[:, :-1])
+        slope, falling, low, high = slope[piece], falls[piece, part], PARTS[part], PARTS[part + 1]
+        for _ in range(HALVINGS if len(piece) else 0):
             middle = (low + high) / 2
-            same = np.signbit(_horner(slope, middle)) == rising
+            same = np.signbit(_horner(slope, middle)) == falling
             low, high = np.where(same, middle, low), np.where(same, high, middle)
-        return member, a + (b - a) * (low + high) / 2
+        return member[piece], a[piece] + (b - a)[piece] * (low + high) / 2
 
 
 def _horner(coefficients: Floats, at: Floats) -> Floats:
