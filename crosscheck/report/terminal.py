@@ -106,9 +106,9 @@ def _warnings(frame: Frame) -> list[RenderableType]:
 
 def opinions_report(result: Opinions, working: Sequence[tuple[str, Sequence[WorkTable]]] = ()) -> RenderableType:
     """What `crosscheck opinions` prints."""
-    parts: list[RenderableType] = [_verdict_line(result.verdict, _opinions_sentence(result)), *_warnings(result.frame)]
+    parts: list[RenderableType] = [_verdict_line(result.verdict, opinions_sentence(result)), *_warnings(result.frame)]
     parts += [Text(line) for line in undetermined_lines(result)]
-    parts += [heading("How it was compared"), facts(_opinions_facts(result))]
+    parts += [heading("How it was compared"), facts(opinions_facts(result))]
     for judged in result.judgements.values():
         parts += _opinion_differences(result.frame, judged)
     for name in result.names:
@@ -120,7 +120,7 @@ def opinions_report(result: Opinions, working: Sequence[tuple[str, Sequence[Work
     return Group(*parts)
 
 
-def _opinions_sentence(result: Opinions) -> str:
+def opinions_sentence(result: Opinions) -> str:
     judged = list(result.judgements.values())
     count = sum(j.compared for j in judged)
     cases = words.counted(len(judged), "case")
@@ -168,7 +168,7 @@ def _frame_facts(frame: Frame) -> list[tuple[str, str]]:
     ]  # fmt: skip
 
 
-def _opinions_facts(result: Opinions) -> list[tuple[str, str]]:
+def opinions_facts(result: Opinions) -> list[tuple[str, str]]:
     rows = _frame_facts(result.frame)
     rows.append(("cases", words.some(result.names, 8)))
     rows += _opinion_rows(result)
@@ -316,12 +316,12 @@ def _work_cell(cell: str | float | None, scale: float) -> str:
 def verify_report(result: Verification) -> RenderableType:
     """What `crosscheck verify` prints."""
     opinions = result.opinions
-    parts: list[RenderableType] = [_verdict_line(result.verdict, _claim_sentence(result))]
-    parts += [Text(f"  {line}") for line in _beside(result)]
+    parts: list[RenderableType] = [_verdict_line(result.verdict, claim_sentence(result))]
+    parts += [Text(f"  {line}") for line in beside(result)]
     parts += _warnings(opinions.frame)
     parts += [Text(line) for line in undetermined_lines(opinions)]
     parts += _suspect_lines(result)
-    parts += [heading("How it was compared"), facts(_claim_facts(result))]
+    parts += [heading("How it was compared"), facts(claim_facts(result))]
     for judged in opinions.judgements.values():
         if judged.case in result.closed.cases:
             parts += _opinion_differences(opinions.frame, judged)
@@ -334,7 +334,7 @@ def verify_report(result: Verification) -> RenderableType:
     return Group(*parts)
 
 
-def _claim_sentence(result: Verification) -> str:
+def claim_sentence(result: Verification) -> str:
     compared, of = sum(c.compared for c in result.cases), sum(c.of for c in result.cases)
     differ = sum(len(c.differences) for c in result.cases)
     which = words.some(result.closed.cases) or "no case"
@@ -348,7 +348,7 @@ def _claim_sentence(result: Verification) -> str:
     return f"The claim cannot be judged surely ({words.counted(compared, 'value')} compared, of {of:,})."
 
 
-def _beside(result: Verification) -> list[str]:
+def beside(result: Verification) -> list[str]:
     lines = list(result.grounds)
     unsafe = sum(d.unsafe for c in result.cases for d in c.differences)
     differ = sum(len(c.differences) for c in result.cases)
@@ -375,7 +375,7 @@ def _suspect_lines(result: Verification) -> list[RenderableType]:
     return [*parts, _notes([*ties, "--suspect N compares the claim with the frame or claim so changed"])]
 
 
-def _claim_facts(result: Verification) -> list[tuple[str, str]]:
+def claim_facts(result: Verification) -> list[tuple[str, str]]:
     c, rows = result.closed, _frame_facts(result.opinions.frame)
     rows.insert(1, ("claim", f"{c.file or 'text'}, {words.counted(c.rows, 'row')}, sha256 {c.sha256[:12]}"))
     rows.append(("cases" if len(c.cases) > 1 else "case", words.some(c.cases) or "none"))
@@ -420,7 +420,7 @@ def _claim_differences(
         side = "low" if d.unsafe else "high"
         rows.append((
             words.place(d.place), d.place.quantity,
-            _with_face(frame, d, claim, ours), _with_face(frame, d, ours, claim),
+            with_face(frame, d, claim, ours), with_face(frame, d, ours, claim),
             words.short(d.difference), words.short(d.allowed), d.note or side, str(d.line or ""),
         ))  # fmt: skip
     columns = [("place", "left"), ("quantity", "left"), ("claim", "right"), ("opinions", "right"),
@@ -429,12 +429,18 @@ def _claim_differences(
     return [heading(title), table(columns, rows), *more(len(differences), MOST_DIFFERENCES)]
 
 
-def _with_face(frame: Frame, d: Difference, value: float | None, beside: float | None) -> str:
+def with_face(frame: Frame, d: Difference, value: float | None, beside: float | None) -> str:
     face = words.face_of(frame, d.place, value)
     return words.number(value, beside) + (f" {face}" if face else "")
 
 
 def _not_compared(result: Verification) -> list[RenderableType]:
+    lines = not_compared_lines(result)
+    return [heading("Not compared"), _notes(lines)] if lines else []
+
+
+def not_compared_lines(result: Verification) -> list[str]:
+    """What the verdict does not rest on, one sentence each."""
     closed = result.closed
     lines = []
     reasons = Counter(why for c in result.cases for _, why in c.not_compared)
@@ -449,7 +455,7 @@ def _not_compared(result: Verification) -> list[RenderableType]:
     others = [n for n in result.opinions.frame.names if n not in closed.cases]
     if others:
         lines.append(f"cases the claim does not speak of: {words.some(others)}")
-    return [heading("Not compared"), _notes(lines)] if lines else []
+    return lines
 
 
 def _audit_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]:
@@ -490,23 +496,23 @@ def _compatibility_lines(frame: Frame, audit: CaseAudit) -> list[RenderableType]
         failing.sort(key=lambda c: -abs(c.rotation - c.expected) / (c.allowed or 1.0))
         rows = [
             (c.kind, c.member or c.where, (c.where if c.member else c.direction), words.short(c.rotation),
-             words.short(c.rotation - c.expected), words.short(c.allowed), _deformation_unit(frame, c))
+             words.short(c.rotation - c.expected), words.short(c.allowed), deformation_unit(frame, c))
             for c in failing[:MOST_MISFITS]
         ]  # fmt: skip
         columns = [("what", "left"), ("of", "left"), ("at", "left"), ("by the claim", "right"),
                    ("misfit", "right"), ("allowed", "right"), ("", "left")]  # fmt: skip
         parts += [table(columns, rows), *more(len(failing), MOST_MISFITS)]
     if audit.bound is not None:
-        parts.append(_notes([_bound_words(frame, audit.bound)]))
+        parts.append(_notes([bound_words(frame, audit.bound)]))
     return parts
 
 
-def _deformation_unit(frame: Frame, c: Any) -> str:
+def deformation_unit(frame: Frame, c: Any) -> str:
     turns = c.kind == "end rotation" or c.direction == "rotation"
     return words.unit_of(frame, "rotation" if turns else "dx")
 
 
-def _bound_words(frame: Frame, bound: Any) -> str:
+def bound_words(frame: Frame, bound: Any) -> str:
     if isinstance(bound, str):
         return bound
     m, end = np.unravel_index(int(np.nanargmax(bound.moment)), bound.moment.shape)
