@@ -321,3 +321,16 @@ def workings(opinions: Opinions) -> list[tuple[str, list[WorkTable]]]:
                 tables = module.working(opinions.frame, opinions.study, name)
                 out.append((f"Working of {opinion}, {name}", tables))
     return out
+
+
+QUICK = 300
+"""Most members for which critical load factors are worked out unasked."""
+
+
+def critical_factors(frame: Frame, names: Sequence[str] | None = None) -> dict[str, float]:
+    """Critical load factor of each case and combination (or of `names`), exact by stability functions; infinite where
+    nothing is compressed. Empty for a frame of more than QUICK members, and where there is no case."""
+    if len(frame.members) > QUICK or not frame.names:
+        return {}
+    found: dict[str, float] = importlib.import_module(OPINIONS["slope-deflection"]).critical_factors(frame, names)
+    return found

@@ -13,18 +13,44 @@ NEAR = 0.05
 """Metres: joints closer than this without being one place, or joints this near a member that they do not belong to."""
 HAND = 0.12
 """Metres, a hand's breadth: a coordinate this near a line or level that others keep was probably meant to be on it."""
+MOST_CROSSED = 2000
+"""Most members among which crossings are looked for: every pair is looked at."""
 
 
 def mechanisms(subject: Subject) -> Iterator[Finding]:
-    """Can the frame move without resistance? It has no answer then; look at the supports and hinges of what moves."""
+    """Can the frame, or a part of it, move without resistance?
+
+    Why: it has no answer then; a program that gives one gives numerical noise.
+    Look at: supports and hinges of the joints named, and whether a member or a bracing is missing.
+    Example: a portal with pinned feet and a hinge at each end of its beam sways freely.
+    Source: statics; kinematic matrix of rigid bodies (Pellegrino and Calladine 1986).
+    """
     for motion in subject.motions:
         size = np.hypot(motion.joints[:, 0], motion.joints[:, 1]) + np.abs(motion.joints[:, 2])
         names = [name for name, s in zip(subject.frame.joints, size, strict=True) if s > 1e-6 * size.max()]
         yield Finding("serious", tuple(names), f"{motion.says}; it has no answer until something stops this")
 
 
+def unusable(subject: Subject) -> Iterator[Finding]:
+    """Is there a load or an imposed movement that the frame cannot answer?
+
+    Why: nothing resists it, or axially rigid members cannot follow it; no analysis of this model exists.
+    Look at: what the message names; axial = "elastic" is often the remedy for temperatures and settlements.
+    Example: a beam between two held supports, axially rigid, and heated.
+    Source: kinematics.
+    """
+    for problem in subject.refused:
+        yield Finding("serious", (problem.key,) if problem.key else (), str(problem))
+
+
 def loose_joints(subject: Subject) -> Iterator[Finding]:
-    """Does any joint belong to no member? It takes no part; look for a member that should end there."""
+    """Does any joint belong to no member?
+
+    Why: it takes no part in the frame, and neither does a load or a support on it.
+    Look at: a member that should end there, and has another joint's name.
+    Example: joints B and D defined, the beam drawn from B to C, D forgotten.
+    Source: common practice.
+    """
     for joint, members in subject.members_at.items():
         if not members:
             says = f"joint {joint} belongs to no member; is a member missing, or the joint left over?"
@@ -32,19 +58,23 @@ def loose_joints(subject: Subject) -> Iterator[Finding]:
 
 
 def near_joints(subject: Subject) -> Iterator[Finding]:
-    """Do two joints lie nearly at one place without a member between them? Probably one joint was meant, and what ends
-    at the two is not connected."""
+    """Do two joints lie nearly at one place with nothing between them?
+
+    Why: what ends at the two is not connected, although it looks so on every drawing.
+    Look at: the coordinates of both; members that should end at one of them.
+    Example: a beam from B2 = (0, 3.500) and a column top at B1 = (0, 3.501).
+    Source: common practice (50 mm).
+    """
     frame = subject.frame
     names, xy = list(frame.joints), frame.xy
     linked = {frozenset((m.joint_from, m.joint_to)) for m in frame.members.values()}
     for i, j in close_pairs(xy, NEAR * subject.metre):
-        if frozenset((names[i], names[j])) not in linked:
-            gap = float(np.hypot(*(xy[i] - xy[j]))) / subject.metre
-            yield Finding(
-                "check", (names[i], names[j]),
-                f"joints {names[i]} and {names[j]} lie {1000 * gap:.3g} mm apart and nothing connects them; were they "
-                "meant to be one joint?",
-            )  # fmt: skip
+        pair = names[i], names[j]
+        if frozenset(pair) in linked or not all(subject.members_at[n] for n in pair):
+            continue
+        gap = 1000 * float(np.hypot(*(xy[i] - xy[j]))) / subject.metre
+        where = f"lie {gap:.3g} mm apart" if gap > 1e-6 else "lie at one place"
+        yield Finding("check", pair, f"joints {pair[0]} and {pair[1]} {where} and nothing connects them: one joint?")
 
 
 def close_pairs(xy: np.ndarray, reach: float) -> list[tuple[int, int]]:
@@ -55,34 +85,42 @@ def close_pairs(xy: np.ndarray, reach: float) -> list[tuple[int, int]]:
 
 
 def touching(subject: Subject) -> Iterator[Finding]:
-    """Does a joint lie on a member that does not end there? What meets at the joint is not connected to the member;
-    divide the member at it, or say that it passes by."""
+    """Does a joint with members of its own lie on a member that does not end there?
+
+    Why: what meets at the joint is not connected to the member that it touches.
+    Look at: the member; divide it at the joint, unless the two pass by each other.
+    Example: a beam drawn in one from A to C over a column whose top is B.
+    Source: common practice (50 mm).
+    """
     frame, t = subject.frame, subject.frame.member_table
     joints = list(frame.joints)
+    margin = NEAR * subject.metre
     for k, name in enumerate(frame.members):
-        start = frame.xy[t.ends[k, 0]]
-        run = frame.xy - start
+        run = frame.xy - frame.xy[t.ends[k, 0]]
         along = run[:, 0] * t.cos[k] + run[:, 1] * t.sin[k]
         off = np.abs(run[:, 1] * t.cos[k] - run[:, 0] * t.sin[k])
-        margin = NEAR * subject.metre
         on = (off < margin) & (along > margin) & (along < t.length[k] - margin)
-        for j in np.flatnonzero(on):
-            if subject.members_at[joints[j]]:
-                yield Finding(
-                    "serious", (joints[j], name),
-                    f"joint {joints[j]} lies on member {name}, which does not end there: what meets at {joints[j]} is not "
-                    f"connected to {name}; divide {name} at it if it should be",
-                )  # fmt: skip
+        touched = [joints[j] for j in np.flatnonzero(on) if subject.members_at[joints[j]]]
+        if touched:
+            lie = f"joint {touched[0]} lies" if len(touched) == 1 else f"joints {listed(touched)} lie"
+            says = f"{lie} on member {name}, which does not end there: nothing connects them; divide {name} there"
+            yield Finding("serious", (*touched, name), says)
 
 
 def crossing(subject: Subject) -> Iterator[Finding]:
-    """Do members cross without a joint? They pass by each other in this model; crossed bracing usually does, beams and
-    columns usually don't."""
+    """Do members cross without a joint?
+
+    Why: they pass by each other in this model.
+    Look at: whether they meet in the structure. Crossed bracing usually does not, beams and columns usually do.
+    Example: a column drawn in one from foot to roof through a floor beam.
+    Source: common practice; a note where both are hinged at both ends, as bracing is.
+    """
     frame, t = subject.frame, subject.frame.member_table
     names = list(frame.members)
-    if len(names) > 2000:
+    if len(names) > MOST_CROSSED:
         return
     start, run = frame.xy[t.ends[:, 0]], np.column_stack([t.cos, t.sin]) * t.length[:, None]
+    hinged = (t.turn == FREE).all(axis=1)
     for i in range(len(names)):
         others = np.arange(i + 1, len(names))
         cross = run[i, 0] * run[others, 1] - run[i, 1] * run[others, 0]
@@ -90,17 +128,21 @@ def crossing(subject: Subject) -> Iterator[Finding]:
         with np.errstate(divide="ignore", invalid="ignore"):
             a = (gap[:, 0] * run[others, 1] - gap[:, 1] * run[others, 0]) / cross
             b = (gap[:, 0] * run[i, 1] - gap[:, 1] * run[i, 0]) / cross
-        inside = (a > 0.01) & (a < 0.99) & (b > 0.01) & (b < 0.99)
-        for j in others[inside]:
-            pinned = all((t.turn[k] == FREE).all() for k in (i, j))
+        for j in others[(a > 0.01) & (a < 0.99) & (b > 0.01) & (b < 0.99)]:
             yield Finding(
-                "note" if pinned else "check", (names[i], names[j]),
+                "note" if hinged[i] and hinged[j] else "check", (names[i], names[j]),
                 f"members {names[i]} and {names[j]} cross without a joint and pass by each other in this model",
             )  # fmt: skip
 
 
 def doubled(subject: Subject) -> Iterator[Finding]:
-    """Do two members join the same two joints? Their stiffness adds; probably one was entered twice."""
+    """Do two members join the same two joints?
+
+    Why: their stiffness adds up, and so does their weight.
+    Look at: the list of members; one was probably entered twice.
+    Example: "A-B" and, a page later, "B-A".
+    Source: common practice.
+    """
     seen: dict[frozenset[str], list[str]] = {}
     for m in subject.frame.members.values():
         seen.setdefault(frozenset((m.joint_from, m.joint_to)), []).append(m.name)
@@ -111,23 +153,34 @@ def doubled(subject: Subject) -> Iterator[Finding]:
 
 
 def idle_supports(subject: Subject) -> Iterator[Finding]:
-    """Does a support hold nothing? One with every direction free, at a joint without members, or without reaction."""
+    """Does a support hold nothing?
+
+    Why: it was meant to; the frame is softer, or the load goes elsewhere, than somebody thinks.
+    Look at: its directions, and the joint it stands at.
+    Example: a support at joint D, while the column ends at joint D2 in the same place.
+    Source: common practice.
+    """
     frame = subject.frame
     for name, support in frame.supports.items():
         if support.x == support.y == support.rotation == FREE:
             yield Finding("check", (name,), f"the support at {name} is free in every direction and holds nothing")
         elif not subject.members_at[name]:
             yield Finding("check", (name,), f"the support at {name} holds a joint that belongs to no member")
-        elif subject.answer is not None and frame.cases:
-            pulls = [subject.answer.cases[c].reactions[frame.joint_index[name]] for c in subject.answer.cases]
-            largest = max(float(np.nanmax(np.abs(a.reactions), initial=0.0)) for a in subject.answer.cases.values())
-            if pulls and np.nanmax(np.abs(pulls), initial=0.0) <= 1e-9 * largest:
+        elif subject.solved:
+            pulls = [case.reactions[frame.joint_index[name]] for case in subject.solved.values()]
+            largest = max(float(np.nanmax(np.abs(a.reactions), initial=0.0)) for a in subject.solved.values())
+            if not np.isnan(pulls).any() and np.abs(pulls).max() <= 1e-9 * largest:
                 yield Finding("note", (name,), f"the support at {name} has no reaction in any case")
 
 
 def off_line(subject: Subject) -> Iterator[Finding]:
-    """Is a joint a hand's breadth off a line or level that others keep? Probably a slip in one coordinate; a real jog is
-    drawn as one."""
+    """Is a joint a hand's breadth off a line or a level that others keep?
+
+    Why: one coordinate has probably slipped; a real jog is drawn as one.
+    Look at: the joint's coordinates beside those of the line.
+    Example: four column tops at 3.60, 3.60, 3.06, 3.60 are told by the level; at 3.60, 3.60, 3.56, 3.60 by this.
+    Source: common practice (120 mm, and three joints that keep the line).
+    """
     frame = subject.frame
     names = list(frame.joints)
     for axis, word in ((0, "line x"), (1, "level y")):
@@ -145,64 +198,3 @@ def off_line(subject: Subject) -> Iterator[Finding]:
                     f"joint {joint} is {1000 * abs(value - line):.3g} mm off {word} = {line:.6g} m, which "
                     f"{int(counts[distinct == line][0])} other joints keep",
                 )  # fmt: skip
-
-
-def symmetry(subject: Subject) -> Iterator[Finding]:
-    """Is the frame symmetrical but for a little? Loads, supports or sections that just miss it are often slips."""
-    pairs = mirrored(subject)
-    if pairs is None:
-        return
-    frame = subject.frame
-    for a, b in pairs["members"]:
-        sections = frame.members[a].section, frame.members[b].section
-        if sections[0] != sections[1]:
-            says = f"the frame is symmetrical, but {a} has section {sections[0]} and {b} {sections[1]}"
-            yield Finding("check", (a, b), says)
-    for a, b in pairs["joints"]:
-        one, two = frame.supports.get(a), frame.supports.get(b)
-        if (one is None) != (two is None) or (one and two and (one.y, one.rotation) != (two.y, two.rotation)):
-            yield Finding("note", (a, b), f"the frame is symmetrical, but the supports at {a} and {b} differ")
-    yield from _loads_that_miss(subject, pairs["members"])
-
-
-def _loads_that_miss(subject: Subject, members: list[tuple[str, str]]) -> Iterator[Finding]:
-    frame = subject.frame
-    for case, table in subject.tables.items():
-        weight = np.zeros(len(frame.members))
-        span = table.line_end - table.line_start
-        np.add.at(weight, table.line_member, np.abs(table.line_across.mean(axis=1)) * span)
-        for a, b in members:
-            one, two = weight[frame.member_index[a]], weight[frame.member_index[b]]
-            if one and two and 1e-6 < abs(one - two) / max(one, two) <= 0.12:
-                yield Finding(
-                    "check", (a, b),
-                    f"the frame is symmetrical, but in case {case} {a} and {b} carry loads that differ by "
-                    f"{100 * abs(one - two) / max(one, two):.2g}%",
-                )  # fmt: skip
-
-
-def mirrored(subject: Subject) -> dict[str, list[tuple[str, str]]] | None:
-    """Pairs of joints and members that mirror each other about the frame's vertical middle line; None where the
-    geometry is not symmetrical."""
-    frame = subject.frame
-    xy = frame.xy
-    middle = (xy[:, 0].min() + xy[:, 0].max()) / 2
-    place = {(round(x / subject.metre, 6), round(y / subject.metre, 6)): name
-             for name, (x, y) in zip(frame.joints, xy.tolist(), strict=True)}  # fmt: skip
-    twin = {}
-    for name, (x, y) in zip(frame.joints, xy.tolist(), strict=True):
-        other = place.get((round((2 * middle - x) / subject.metre, 6), round(y / subject.metre, 6)))
-        if other is None:
-            return None
-        twin[name] = other
-    ends = {frozenset((m.joint_from, m.joint_to)): m.name for m in frame.members.values()}
-    members = []
-    for m in frame.members.values():
-        other = ends.get(frozenset((twin[m.joint_from], twin[m.joint_to])))
-        if other is None:
-            return None
-        if m.name < other:
-            members.append((m.name, other))
-    return {"joints": [(a, b) for a, b in twin.items() if a < b], "members": members}
-
-

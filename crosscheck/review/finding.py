@@ -9,10 +9,11 @@ from typing import Literal
 
 import numpy as np
 
-from crosscheck.answer import Answer
+from crosscheck.answer import Answer, CaseAnswer
 from crosscheck.frame.kinematics import Motion, Study
 from crosscheck.frame.loads import LoadTable, load_table
-from crosscheck.frame.model import Floats, Frame
+from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.problems import Problem
 
 Grade = Literal["serious", "check", "note"]
 RANK: dict[Grade, int] = {"serious": 0, "check": 1, "note": 2}
@@ -35,7 +36,7 @@ class Limits:
 class Finding:
     """grade: serious, check or note. where: joints, members, sections, materials, load entries or case names.
 
-    says: what was found, why it matters and what to look at. check: the name of the check, for tests and explanations.
+    says: what was found and what to look at. check: name of the check, whose docstring says why it matters.
     """
 
     grade: Grade
@@ -48,7 +49,8 @@ class Finding:
 class Subject:
     """A frame under review. motions: its mechanisms; study and answer are None where it has any, or cannot be solved.
 
-    critical: critical load factor of each case, empty where not worked out.
+    refused: why it cannot be solved, where it is no mechanism. critical: exact critical load factor of each case, empty
+    where not worked out. storeys: the storey formula's estimate of it, for frames with storeys.
     """
 
     frame: Frame
@@ -56,7 +58,14 @@ class Subject:
     study: Study | None = None
     answer: Answer | None = None
     critical: Mapping[str, float] = field(default_factory=dict)
+    storeys: Mapping[str, float] = field(default_factory=dict)
     limits: Limits = field(default_factory=Limits)
+    refused: tuple[Problem, ...] = ()
+
+    @cached_property
+    def solved(self) -> Mapping[str, CaseAnswer]:
+        """Answers by case and combination; empty where there are none."""
+        return self.answer.cases if self.answer is not None else {}
 
     @cached_property
     def tables(self) -> dict[str, LoadTable]:
@@ -75,7 +84,7 @@ class Subject:
     @cached_property
     def extent(self) -> float:
         """Largest dimension of the frame."""
-        return float(np.ptp(self.frame.xy, axis=0).max(initial=0.0))
+        return float(np.ptp(self.frame.xy, axis=0).max(initial=0.0)) if self.frame.joints else 0.0
 
     @cached_property
     def metre(self) -> float:
@@ -95,35 +104,62 @@ class Subject:
 
     def total(self, case: str) -> Floats:
         """fx, fy and clockwise moment about the origin of a load case's forces and couples."""
-        return load_total(self.frame, self.tables[case])
+        return self._totals[case]
+
+    @cached_property
+    def _totals(self) -> dict[str, Floats]:
+        return {name: load_total(self.frame, table) for name, table in self.tables.items()}
 
 
 Check = Callable[[Subject], Iterator[Finding]]
 
 
+@dataclass(frozen=True, slots=True)
+class GlobalLoads:
+    """Forces as resultants in global axes, flat (n,): member index (-1 on a joint), place, components."""
+
+    member: Ints
+    x: Floats
+    y: Floats
+    fx: Floats
+    fy: Floats
+
+
+def global_loads(frame: Frame, table: LoadTable) -> GlobalLoads:
+    """Every force of a load table. A trapezoid counts as two triangles, each acting at its own third point."""
+    t, xy = frame.member_table, frame.xy
+    span = table.line_end - table.line_start
+    member, at, along, across = [table.point_member], [table.point_at], [table.point_along], [table.point_across]
+    for end, share in ((0, 1 / 3), (1, 2 / 3)):
+        member.append(table.line_member)
+        at.append(table.line_start + share * span)
+        along.append(table.line_along[:, end] * span / 2)
+        across.append(table.line_across[:, end] * span / 2)
+    m, s, a, b = (np.concatenate(parts) for parts in (member, at, along, across))
+    cos, sin, start = t.cos[m], t.sin[m], xy[t.ends[m, 0]].reshape(-1, 2)
+    on_joints = np.full(len(xy), -1, dtype=np.int64)
+    return GlobalLoads(
+        member=np.concatenate([on_joints, m]),
+        x=np.concatenate([xy[:, 0], start[:, 0] + s * cos]),
+        y=np.concatenate([xy[:, 1], start[:, 1] + s * sin]),
+        fx=np.concatenate([table.joint[:, 0], a * cos - b * sin]),
+        fy=np.concatenate([table.joint[:, 1], a * sin + b * cos]),
+    )
+
+
 def load_total(frame: Frame, table: LoadTable) -> Floats:
     """(3,) fx, fy and clockwise moment about the origin of all forces and couples of a load table."""
-    t, xy = frame.member_table, frame.xy
-    fx, fy = table.joint[:, 0], table.joint[:, 1]
-    total = np.array([fx.sum(), fy.sum(), (fx * xy[:, 1] - fy * xy[:, 0]).sum() + table.joint[:, 2].sum()])
-    rows = [(table.point_member, table.point_at, table.point_along, table.point_across)]
-    span = table.line_end - table.line_start
-    for along, across in ((table.line_along, table.line_across),):
-        # A trapezoid as two triangles, each acting at its own third point.
-        for end, share in ((0, 1 / 3), (1, 2 / 3)):
-            at = table.line_start + share * span
-            rows.append((table.line_member, at, along[:, end] * span / 2, across[:, end] * span / 2))
-    for member, at, along, across in rows:
-        c, s = t.cos[member], t.sin[member]
-        start = xy[t.ends[member, 0]]
-        x, y = start[:, 0] + at * c, start[:, 1] + at * s
-        gx, gy = along * c - across * s, along * s + across * c
-        total += [gx.sum(), gy.sum(), (gx * y - gy * x).sum()]
-    total[2] += table.point_couple.sum()
-    return total
+    loads = global_loads(frame, table)
+    couples = table.joint[:, 2].sum() + table.point_couple.sum()
+    return np.array([loads.fx.sum(), loads.fy.sum(), (loads.fx * loads.y - loads.fy * loads.x).sum() + couples])
 
 
 def listed(names: list[str] | tuple[str, ...], most: int = 5) -> str:
     """Names in a sentence."""
     names = list(names)
     return ", ".join(names) if len(names) <= most else f"{', '.join(names[:most])} and {len(names) - most} more"
+
+
+def and_more(count: int, of: str = "case") -> str:
+    """What follows the worst of several: " (and in 3 more cases)"."""
+    return f" (and in {count:,} more {of}{'s' if count > 1 else ''})" if count > 0 else ""

@@ -3,47 +3,79 @@
 from __future__ import annotations
 
 import importlib
+import inspect as python
+from dataclasses import dataclass
 
+from crosscheck.answer import Answer
+from crosscheck.check import critical_factors
 from crosscheck.frame.kinematics import mechanisms, study
 from crosscheck.frame.model import Frame
 from crosscheck.problems import UnusableInput
-from crosscheck.review import behaviour, connection, loading, stiffness
+from crosscheck.review import behaviour, combinations, connection, loading, properties, stability, stiffness, symmetry
 from crosscheck.review.finding import RANK, Check, Finding, Limits, Subject
+from crosscheck.review.storeys import OPINION, storey_factors
 
 CHECKS: tuple[Check, ...] = (
-    connection.mechanisms, connection.loose_joints, connection.near_joints, connection.touching, connection.crossing,
-    connection.doubled, connection.idle_supports, connection.off_line, connection.symmetry,
-    stiffness.moduli, stiffness.sections, stiffness.weak_axis, stiffness.shear_areas, stiffness.members,
-    stiffness.springs, stiffness.conditioning, stiffness.fixed_feet,
-    loading.empty_cases, loading.totals, loading.expected, loading.odd_directions, loading.unloaded_span,
-    loading.unused_cases, loading.twice, loading.opposing_winds, loading.uplift_combination,
+    connection.mechanisms, connection.unusable, connection.loose_joints, connection.near_joints, connection.touching,
+    connection.crossing, connection.doubled, connection.idle_supports, connection.off_line,
+    symmetry.mirrored_sections, symmetry.mirrored_supports, symmetry.mirrored_loads,
+    properties.moduli, properties.weights, properties.sections, properties.slenderness, properties.weak_axis,
+    properties.shear_areas,
+    stiffness.short_members, stiffness.members, stiffness.springs, stiffness.conditioning, stiffness.fixed_feet,
+    loading.empty_cases, loading.totals, loading.expected, loading.upward_case, loading.odd_directions, loading.odd_sizes,
+    loading.doubled_loads, loading.unloaded_span,
+    combinations.unused_cases, combinations.twice, combinations.opposing_winds, combinations.uplift_combination,
+    combinations.light_factors,
     behaviour.sway, behaviour.deflection, behaviour.uplift, behaviour.thrust, behaviour.locked_temperature,
-    behaviour.second_order, behaviour.undetermined, behaviour.said_by_the_reader,
+    stability.second_order, stability.critical_factors, behaviour.undetermined, behaviour.said_by_the_reader,
 )  # fmt: skip
-QUICK = 300
-"""Most members for which critical load factors are worked out unasked."""
-OPINION = "crosscheck.opinions.slope_deflection"
+
+
+@dataclass(frozen=True, slots=True)
+class Explanation:
+    """What a check asks, from its docstring: the question, then (label, text) of why, look at, example and source."""
+
+    check: str
+    asks: str
+    parts: tuple[tuple[str, str], ...]
+
+
+def explained(check: Check) -> Explanation:
+    """The docstring of a check taken apart."""
+    asks, *lines = (python.getdoc(check) or "").splitlines()
+    parts: list[tuple[str, str]] = []
+    for line in lines:
+        label, colon, text = line.partition(":")
+        if colon and label in ("Why", "Look at", "Example", "Source"):
+            parts.append((label, text.strip()))
+        elif parts and line.strip():
+            parts[-1] = (parts[-1][0], f"{parts[-1][1]} {line.strip()}")
+    return Explanation(check.__name__, asks, tuple(parts))
+
+
+def explanations() -> dict[str, Explanation]:
+    """Every check by name, in the order they are made."""
+    return {check.__name__: explained(check) for check in CHECKS}
 
 
 def subject_of(frame: Frame, limits: Limits | None = None) -> Subject:
-    """The frame with its mechanisms or, where it has none, its first-order answer and critical load factors."""
+    """The frame with its mechanisms or, where it has none, its answer and critical load factors."""
     limits = limits or Limits()
-    motions = tuple(mechanisms(frame))
+    motions = tuple(mechanisms(frame)) if frame.members else ()
     if motions:
         return Subject(frame, motions, limits=limits)
     try:
         found = study(frame)
-    except UnusableInput:
-        return Subject(frame, limits=limits)
-    opinion = importlib.import_module(OPINION)
-    answer = opinion.opine(frame, found) if frame.cases else None
-    critical = opinion.critical_factors(frame) if len(frame.members) <= QUICK and frame.cases else {}
-    return Subject(frame, (), found, answer, critical, limits)
+        answer = importlib.import_module(OPINION).opine(frame, found) if frame.cases else None
+    except UnusableInput as error:
+        return Subject(frame, limits=limits, refused=error.problems)
+    if not isinstance(answer, Answer):
+        return Subject(frame, (), found, limits=limits)
+    critical = critical_factors(frame)
+    return Subject(frame, (), found, answer, critical, storey_factors(frame, found, answer.cases), limits)
 
 
 def inspect(subject: Subject) -> list[Finding]:
     """Every finding, gravest first, in the order of the checks."""
-    found = [
-        Finding(f.grade, f.where, f.says, check.__name__) for check in CHECKS for f in check(subject)
-    ]
+    found = [Finding(f.grade, f.where, f.says, check.__name__) for check in CHECKS for f in check(subject)]
     return sorted(found, key=lambda f: RANK[f.grade])
