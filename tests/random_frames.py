@@ -36,6 +36,7 @@ FEATURES = {
     "support springs": 0.25,
     "turned supports": 0.35,
     "support above": 0.15,
+    "loose joint": 0.06,
     # loads
     "joint force": 0.5,
     "joint couple": 0.3,
@@ -50,7 +51,7 @@ FEATURES = {
     "across": 0.3,
     "along": 0.25,
     "at an angle": 0.3,
-    "on a zone or end": 0.35,
+    "on a zone or end": 0.45,
     "mean temperature": 0.08,
     "temperature difference": 0.08,
     "misfit": 0.08,
@@ -321,6 +322,8 @@ def _joint_names(s: Sketch) -> None:
     for name, (x, y) in zip(s.names, s.geometry.joints, strict=True):
         key = f'"{name}"' if s.has("quoted names") else name
         s.lines.append(f"{key} = [{s.write(x, 'length')}, {s.write(y, 'length')}]")
+    if s.has("loose joint"):
+        s.lines.append("alone = [-3, 2]")
 
 
 def _members(s: Sketch, used: list[tuple[int, int]]) -> None:
@@ -429,6 +432,9 @@ def _direction(s: Sketch, on_member: bool) -> str:
 def _on_members(s: Sketch) -> tuple[str, int]:
     """`member = ...` or `members = [...]`, and one of them (for distances)."""
     m = s.random.randrange(len(s.keys))
+    zoned = [k for k, zones in s.zones.items() if any(zones)]
+    if zoned and s.has("on a zone or end"):
+        m = s.random.choice(zoned)
     if s.has("several at once") and s.random.random() < 0.4 and len(s.keys) > 1:
         others = s.random.sample([k for k in range(len(s.keys)) if k != m], k=min(2, len(s.keys) - 1))
         shortest = min([m, *others], key=s.length)
@@ -448,7 +454,10 @@ def _place(s: Sketch, m: int) -> str:
     """A distance along the member; sometimes at its end or on its rigid zone."""
     length, (z0, z1) = s.length(m), s.zones[m]
     if s.has("on a zone or end") and s.random.random() < 0.5:
-        x = s.random.choice([0.0, length, z0, length - z1, z0 / 2.0, length - z1 / 2.0])
+        marks = [0.0, length]
+        marks += [z0, z0 / 2.0] * 2 if z0 else []
+        marks += [length - z1, length - z1 / 2.0] * 2 if z1 else []
+        x = s.random.choice(marks)
         return repr(x / UNITS[s.units][1]) if x != length else '"100%"'
     return s.distance(s.random.uniform(0.05, 0.95) * length, m)
 
@@ -461,7 +470,10 @@ def _stretch(s: Sketch, m: int) -> str:
     start, end = sorted([s.random.uniform(0.0, 0.9) * length, s.random.uniform(0.1, 1.0) * length])
     if end - start < 0.05 * length:
         start, end = 0.2 * length, 0.7 * length
-    texts = [f", start = {s.distance(start, m)}", f", end = {s.distance(end, m)}"]
+    # Both in one writing: a share and a length mean different places on members of different lengths.
+    shares = s.has("percent distances") and s.random.random() < 0.6
+    written = [f'"{round(100.0 * x / length, 3)}%"' if shares else s.write(x, "length") for x in (start, end)]
+    texts = [f", start = {written[0]}", f", end = {written[1]}"]
     if s.random.random() < 0.3:
         texts.pop(s.random.randrange(2))
     return "".join(texts)
@@ -664,6 +676,8 @@ def features_of(frame: Frame, text: str) -> set[str]:
     found |= {"axial by default"} if not frame.analysis.axial_stated else set()
     found |= {"combinations"} if frame.combinations else set()
     found |= {"several cases"} if len(frame.cases) > 1 else set()
+    found |= {"case without load"} if any(not case.loads for case in frame.cases.values()) else set()
+    found |= {"loose joint"} if "alone" in frame.joints else set()
     if any(f < 0 for c in frame.combinations.values() for f in c.factors.values()):
         found.add("negative factors")
     if any(f'{unit}"' in text.split("[joints]")[1] for kind in WRITINGS.values() for unit in kind):

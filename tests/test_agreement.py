@@ -32,7 +32,7 @@ ROWS = {
     "several cases", "combinations", "negative factors", "expected", "loads on several members",
     "loads on several joints", "percent distances", "unit strings", "members named", "density by mass",
     "density by weight", "nu", "G", "tolerance", "units kN m", "units N mm", "units N m", "units kip ft",
-    "units kip in", "units lbf in",
+    "units kip in", "units lbf in", "loose joint", "case without load",
 }  # fmt: skip
 """What the 500 frames must use between them, by features_of's names."""
 

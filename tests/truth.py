@@ -334,12 +334,12 @@ class Truth:
     def _factor(self) -> None:
         self.unknown_scale, self.row_scale = self._scales()
         scaled = self.matrix * self.unknown_scale / self.row_scale[:, None]
-        # Two rounds of balancing: the largest entry of every row and column is one.
+        # Rounds of balancing: the largest entry of every row and column is one (a loose joint's are all zero).
         for _ in range(4):
-            rows = np.maximum(np.abs(scaled).max(axis=1), 1e-300)
+            rows = _largest_or_one(scaled, axis=1)
             self.row_scale *= rows
             scaled /= rows[:, None]
-            columns = np.maximum(np.abs(scaled).max(axis=0), 1e-300)
+            columns = _largest_or_one(scaled, axis=0)
             self.unknown_scale /= columns
             scaled /= columns
         self.scaled = scaled
@@ -457,6 +457,11 @@ class Truth:
                 roots = [float(r.real) for r in slope.roots() if abs(r.imag) < 1e-6 and abs(r.real) <= 1]
                 places += [middle + half * r for r in roots]
         return places
+
+
+def _largest_or_one(matrix: Array, axis: int) -> Array:
+    largest: Array = np.abs(matrix).max(axis=axis)
+    return np.where(largest > 0.0, largest, 1.0)
 
 
 def _numbering(frame: Frame) -> list[tuple[str, int]]:
