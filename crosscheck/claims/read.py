@@ -14,6 +14,7 @@ from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.reading import Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
 from crosscheck.claims.scan import RawTable, Scan, cells_of, is_number, scan
+from crosscheck.claims.sentences import entries_told
 from crosscheck.claims.stated import Stated, stated_in, with_options
 from crosscheck.claims.words import Size, unit_of
 from crosscheck.frame.units import Dimension
@@ -23,11 +24,13 @@ MOST_TRACED = 2000
 
 
 def read_claim(
-    path_or_dash: str | Path, frame_names: FrameNames, options: ReadingOptions | None = None
+    path_or_dash: str | Path | None, frame_names: FrameNames, options: ReadingOptions | None = None
 ) -> Reading:
     """Reads the claim in a file, or "-" for standard input. Raises UnusableInput where it cannot be opened or decoded, or
     holds no results at all."""
     options = options or ReadingOptions()
+    if path_or_dash is None:  # values in words alone
+        return read_claim_text("", frame_names, options)
     file, digest, text = read_source(path_or_dash, options.sheet)
     return _read(text, frame_names, options, file, digest)
 
@@ -51,6 +54,10 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
     for raw in scanned.tables:
         if raw.rows:
             reader.table(raw)
+    for line, sentence, case in scanned.sentences:
+        reader.sentence(line, sentence, case)
+    for sentence in options.values:
+        reader.value(sentence, file)
     if not reader.entries and not reader.foreign and not reader.undecided:
         refuse(file or "claim", *_nothing(scanned, reader))
     return Reading(
@@ -159,6 +166,21 @@ class _Reader:
                 f"{len(rows)} rows from line {rows[0][0]} do not say which end of the member they are for; "
                 "name the joint or the end, or say what the columns are with --columns"
             )
+
+    def sentence(self, line: int, text: str, case: str | None) -> None:
+        """Values in words on a line of the paste."""
+        entries, odd = entries_told(text, line, len(self.tables) + 1, self.names)
+        self.entries += [replace(e, case=e.case or case) for e in entries]
+        rows = [(line, text.strip()[:200], why) for why in odd]
+        self.odd += rows
+        self._trace(rows)
+
+    def value(self, text: str, file: str) -> None:
+        """A value given by the user in words. Raises UnusableInput where it is not understood."""
+        entries, odd = entries_told(text, 0, len(self.tables) + 1, self.names)
+        if odd or not entries:
+            refuse("", f'--value "{text}" is not understood{": " + odd[0] if odd else ""}', 'write it like "B2 max 412 kNm"')
+        self.entries += entries
 
     def _unused(self, raw: RawTable, meaning: Meaning) -> None:
         rows = [(line, text, meaning.why) for line, text in raw.rows]

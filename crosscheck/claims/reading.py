@@ -100,6 +100,8 @@ class Entry:
     extreme: str | None = None
     axes: str = ""
     face: bool = False
+    sense: str = ""
+    """From words: "size" where no direction is said, "said" where one is (the sign is then no open choice)."""
     comma_open: bool = False
     """The number's comma may stand before decimals (as read) or thousands."""
 

@@ -11,6 +11,7 @@ from dataclasses import dataclass, field
 from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import parse_number
 from crosscheck.claims.reading import LineTrace
+from crosscheck.claims.sentences import looks_told
 from crosscheck.claims.split import Cell, Separator, is_rule, join_units, separator_of, split, wide_cells
 from crosscheck.claims.words import RESULT_NOUNS, head_of, is_header_word, unit_of
 
@@ -61,6 +62,8 @@ class Scan:
     trace: dict[int, LineTrace] = field(default_factory=dict)
     headings: list[tuple[int, str]] = field(default_factory=list)
     remarks: list[tuple[int, str]] = field(default_factory=list)
+    sentences: list[tuple[int, str, str | None]] = field(default_factory=list)
+    """Lines with values in words, and the case whose heading they stand under."""
     unknown_cases: list[str] = field(default_factory=list)
     expect: str = ""
 
@@ -123,7 +126,8 @@ class _Scanner:
         filled = [c.text for c in cells if c.text]
         numbers = sum(is_number(t) for t in filled)
         return (
-            self._head(number, body, filled, numbers, separator)
+            self._sentence(number, body, filled)
+            or self._head(number, body, filled, numbers, separator)
             or self._heading_of_case(number, body, filled, numbers)
             or self._heading_of_member(body, filled, numbers)
             or self._row(number, body, filled, numbers)
@@ -272,6 +276,19 @@ class _Scanner:
         return "heading", ""
 
     # -- rows
+
+    def _sentence(self, number: int, text: str, filled: list[str]) -> tuple[str, str] | None:
+        """Values in words: not under a table's head, where a row may have units in its cells."""
+        if (self.table is not None and self.table.heads and self._may_follow(filled)) or len(text) > 500:
+            return None
+        if not looks_told(text):
+            return None
+        self.out.sentences.append((number, text, self.case))
+        return "values in words", ""
+
+    def _may_follow(self, filled: list[str]) -> bool:
+        assert self.table
+        return self._fits(filled) if self.table.rows else self._knows(filled[0])
 
     def _row(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
         if not numbers:

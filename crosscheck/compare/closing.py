@@ -164,6 +164,7 @@ class _Closer:
         sign, joints, at = _to_frame(batch, choice, self.frame)
         factor = np.where(np.isnan(batch.factor), choice.unit.factor if choice.unit else 1.0, batch.factor)
         value, half = batch.value * factor * sign, batch.half * factor
+        value = np.where(batch.unsigned, np.abs(value) * choice.side, value)
         out = []
         for k, index in enumerate(batch.entry.tolist()):
             e = entries[index]
@@ -188,10 +189,10 @@ def _turned(extreme: str | None, sign: float) -> str | None:
 
 def _batches(entries: list[Entry], frame: Frame, cases: tuple[str, ...]) -> list[Batch]:
     """Entries by kind and quantity: what one convention and one unit must hold for."""
-    groups: dict[tuple[str, str], list[int]] = {}
+    groups: dict[tuple[str, str, str, bool], list[int]] = {}
     for k, e in enumerate(entries):
-        groups.setdefault((e.kind, e.quantity), []).append(k)
-    return [_batch(kind, quantity, where, entries, frame, cases) for (kind, quantity), where in groups.items()]
+        groups.setdefault((e.kind, e.quantity, e.sense, e.kind == "extreme" and e.joint is not None), []).append(k)
+    return [_batch(key[0], key[1], where, entries, frame, cases) for key, where in groups.items()]
 
 
 def _batch(
@@ -212,6 +213,7 @@ def _batch(
         end=ints(e.end for e in mine), place=ints(e.place for e in mine), run=ints(e.run for e in mine),
         at=np.array(at), at_share=np.array([e.at_share for e in mine]),
         extreme=ints(_EXTREME.get(e.extreme or "size", 0) for e in mine),
+        unsigned=np.array([e.sense == "size" or e.extreme == "size" for e in mine]), said=mine[0].sense == "said",
         value=np.array([e.number.value for e in mine]), half=np.array([e.number.half for e in mine]),
         factor=np.array([_factor(e, frame) for e in mine]), entry=np.array(where, dtype=np.int64),
     )  # fmt: skip
@@ -331,7 +333,7 @@ def _to_frame(
     if batch.quantity in ("moment", "across"):
         sign = sign * r
     at = distance(batch, frame, r).tolist() if batch.kind == "span" else [None] * len(sign)
-    return sign, [None] * len(sign), at
+    return sign, [names[j] if j >= 0 else None for j in batch.joint.tolist()], at
 
 
 def _units_said(fitted: list[Fitted], entries: list[Entry], frame: Frame) -> dict[str, str]:

@@ -14,7 +14,7 @@ import numpy as np
 from crosscheck.compare.fit_conventions import Batch, Convention, conventions, expected
 from crosscheck.compare.fit_units import UnitChoice, angle_choices, arm_choices, force_choices, length_choices
 from crosscheck.compare.fit_values import Reference
-from crosscheck.compare.tolerance import COARSE, Tolerance, allowed
+from crosscheck.compare.tolerance import COARSE, LEAST_SHARE, Tolerance, allowed
 from crosscheck.frame.model import Bools, Floats, Units
 
 UNSUPPORTED = 1e-6
@@ -37,6 +37,8 @@ class Choice:
     telling: Bools
     sizes_bad: Bools
     misses: float
+    side: Floats
+    """(n,) sign of what the opinion says, for sizes: they are compared without theirs."""
 
     @property
     def fits(self) -> bool:
@@ -109,8 +111,9 @@ class _Trial:
     def _choice(
         self, unit: UnitChoice | None, convention: Convention, said: Floats, value: Floats, half: Floats
     ) -> Choice:
-        if self.batch.kind == "extreme":
-            value = np.where(self.batch.extreme == 0, np.abs(value), value)
+        side = np.where(said[:, 0] < 0, -1.0, 1.0) * convention.sign
+        value = np.where(self.batch.unsigned, np.abs(value), value)
+        said = np.where(self.batch.unsigned[:, None], np.abs(said), said)
         sizes = np.abs(said)
         said = _nearer(said, value)
         may = np.where(self.unsupported, np.maximum(half, UNSUPPORTED * self.scale),
@@ -125,7 +128,7 @@ class _Trial:
         # A value that this unit would make too coarse to judge speaks against the unit.
         coarse = np.isfinite(said) & ~known
         misses = float(share.sum() + coarse.sum())
-        return Choice(unit, convention, bad, telling, known & (size_apart > may), misses)
+        return Choice(unit, convention, bad, telling, known & (size_apart > may), misses, side)
 
 
 def _expected(batch: Batch, references: list[Reference], tried: list[Convention]) -> list[Floats]:
@@ -151,7 +154,9 @@ def _scales(batch: Batch, references: list[Reference]) -> tuple[Floats, Bools]:
     unsupported = np.zeros(len(batch.value), dtype=bool)
     for k, reference in enumerate(references):
         mine = batch.case == k
-        if batch.kind in ("reaction", "displacement"):
+        if batch.kind == "extreme":
+            scale[mine] = _extreme_scale(batch, mine, reference)
+        elif batch.kind in ("reaction", "displacement"):
             joint = batch.joint[mine]
             scale[mine] = reference.joint_scale(batch.quantity, batch.kind)[joint]
             if batch.kind == "reaction":
@@ -163,6 +168,16 @@ def _scales(batch: Batch, references: list[Reference]) -> tuple[Floats, Bools]:
         whole = np.array([r.scales.of(batch.quantity) for r in references])
         scale = np.where(unsupported, whole[batch.case], scale)
     return scale, unsupported
+
+
+def _extreme_scale(batch: Batch, mine: Bools, reference: Reference) -> Floats:
+    """The member's or joint's own scale; of an extreme over all of them its own size."""
+    member, joint = batch.member[mine], batch.joint[mine]
+    most = np.abs(reference.extremes_of(batch.quantity, member, joint)).max(axis=1)
+    out: Floats = np.maximum(np.nan_to_num(most), LEAST_SHARE * reference.scales.of(batch.quantity))
+    if (member >= 0).any():
+        out[member >= 0] = reference.member_scale(batch.quantity)[member[member >= 0]]
+    return out
 
 
 def _one_system(

@@ -65,7 +65,7 @@ class Batch:
 
     member, joint: indices, -1 for none. end, place: 0, 1 or -1 (not said). run: +1, -1 or 0. at: distance from the paste's
     start in the frame's length, or a share of the member's length where at_share. extreme: 1 max, -1 min, 0 size.
-    case: index into `cases`. value, half: as printed. factor: to the frame's units, NaN where no unit is stated.
+    unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value, half: as printed. factor: to the frame's units, NaN where no unit is stated.
     """
 
     kind: str
@@ -80,6 +80,8 @@ class Batch:
     at: Floats
     at_share: Bools
     extreme: Ints
+    unsigned: Bools
+    said: bool
     value: Floats
     half: Floats
     factor: Floats
@@ -88,13 +90,15 @@ class Batch:
 
 def conventions(batch: Batch) -> list[Convention]:
     """Every convention the batch may be printed in, the plainest first."""
+    if batch.said:
+        return [Convention("", 1, "frame", WORDS[batch.kind, batch.quantity, ""][0])]
     family = "along" if batch.kind in ("span", "extreme") else batch.kind
     forms = _FORMS.get((batch.kind, batch.quantity), ("internal",) if family == "along" else ("",))
     out = []
     for form in forms:
         for rule in _rules(batch, form):
             for k, sign in enumerate((1, -1)):
-                words = WORDS[family, batch.quantity, form][k]
+                words = WORDS.get((family, batch.quantity, form), ("as printed", "reversed"))[k]
                 out.append(Convention(form, sign, rule, ", ".join(w for w in (words, RULE_WORDS[rule]) if w)))
     return out
 
@@ -156,9 +160,12 @@ def expected(batch: Batch, references: list[Reference], convention: Convention) 
     return out
 
 
+_PLAIN_FIELDS = ("kind", "quantity", "cases", "said")
+
+
 def _part(batch: Batch, mine: Ints) -> Batch:
-    arrays = {n: getattr(batch, n)[mine] for n in Batch.__dataclass_fields__ if n not in ("kind", "quantity", "cases")}
-    return Batch(batch.kind, batch.quantity, batch.cases, **arrays)
+    arrays = {n: getattr(batch, n)[mine] for n in Batch.__dataclass_fields__ if n not in _PLAIN_FIELDS}
+    return Batch(kind=batch.kind, quantity=batch.quantity, cases=batch.cases, said=batch.said, **arrays)
 
 
 def _expected_in(batch: Batch, reference: Reference, convention: Convention) -> Floats:
@@ -168,14 +175,14 @@ def _expected_in(batch: Batch, reference: Reference, convention: Convention) -> 
         out: Floats = s * values[batch.joint, joint_column(batch.quantity)][:, None]
         return out
     end, place, r = placed(batch, reference.frame, convention.rule)
-    column = COLUMN[batch.quantity]
+    column = COLUMN.get(batch.quantity, 0)
     turned = r if batch.quantity in ("moment", "across") else np.ones_like(r)
     if batch.kind == "span":
         x = distance(batch, reference.frame, r)
         sides = [reference.along(batch.member, x, side)[:, column] for side in (-1, 1)]
         return np.asarray(s * turned[:, None] * np.column_stack(sides), dtype=float)
     if batch.kind == "extreme":
-        most = reference.extremes[batch.member, :, column]
+        most = reference.extremes_of(batch.quantity, batch.member, batch.joint)
         return _extreme(batch.extreme, most, s * turned)[:, None]
     acting: Floats = reference.result.ends[batch.member, end, column]
     if batch.quantity == "shear":

@@ -103,7 +103,7 @@ def _allows(f: Fitted, convention: Convention, signs: Mapping[str, str]) -> bool
 
 def senses(fitted: list[Fitted], signs: Mapping[str, str]) -> Senses:
     """Explains the signs taken by as few turns as can be, and counts what fixes each."""
-    stated = frozenset(id(f) for f in fitted if _stated(f, signs) is not None)
+    stated = frozenset(id(f) for f in fitted if f.batch.said or _stated(f, signs) is not None)
     sure = {id(f): s for f in fitted if (s := _sign(f)) is not None}
     best = min(product((False, True), repeat=4), key=lambda flags: _cost(fitted, sure, dict(zip(TURNS, flags, strict=True))))
     turns = frozenset(t for t, on in zip(TURNS, best, strict=True) if on)

@@ -51,6 +51,20 @@ class Reference:
         """(m, 2, 4) smallest and largest value along each member."""
         return extremes(self.answer, self.case, stations(self.frame))
 
+    def extremes_of(self, quantity: str, member: Ints, joint: Ints) -> Floats:
+        """(n, 2) smallest and largest value along a member, at a joint, or (both -1) of all there are."""
+        at_joints = quantity in ("dx", "dy", "rotation", "fx", "fy")
+        table = self.result.reactions if quantity in ("fx", "fy", "moment") else self.result.joints
+        values = table[:, joint_column(quantity)] if at_joints or quantity == "moment" else np.zeros(0)
+        along = values[:, None].repeat(2, axis=1) if at_joints else self.extremes[:, :, COLUMN[quantity]]
+        whole = np.array([np.nanmin(along[:, 0], initial=np.inf), np.nanmax(along[:, 1], initial=-np.inf)])
+        out = np.tile(np.where(np.isfinite(whole), whole, np.nan), (len(member), 1))
+        if not at_joints:
+            out[member >= 0] = along[member[member >= 0]]
+        if len(values):
+            out[joint >= 0] = values[joint[joint >= 0], None]
+        return out
+
     @cached_property
     def _largest(self) -> Floats:
         """(m, 4) largest magnitude along each member and at its ends."""
