@@ -307,7 +307,7 @@ def _loads(frame: Frame, claimed: str, r: Random) -> Iterator[Mistake]:
                 yield Mistake(
                     "load", "one of a run left out", where, _with(frame, case, [q for q in loads if q is not mine[0]])
                 )
-            for k, load in enumerate(loads):
+            for load in loads:
                 if load is mine[0] and isinstance(load, (PointForce, Spread, JointForce)):
                     yield from _directions(frame, case, loads, entry, load, where, r)
 
@@ -402,10 +402,11 @@ def _geometry(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
         new = replace(j, x=j.x + by) if r.random() < 0.5 else replace(j, y=j.y + by)
         yield Mistake("geometry", "joint elsewhere", (name,), _relength(frame, _put(frame, "joints", name, new)))
     for name, m in frame.members.items():
-        gone = replace(
-            frame, members={n: q for n, q in frame.members.items() if n != name},
-            cases={n: replace(c, loads=tuple(q for q in c.loads if getattr(q, "member", "") != name)) for n, c in frame.cases.items()},
-        )  # fmt: skip
+        cases = {
+            n: replace(c, loads=tuple(q for q in c.loads if getattr(q, "member", "") != name))
+            for n, c in frame.cases.items()
+        }
+        gone = replace(frame, members={n: q for n, q in frame.members.items() if n != name}, cases=cases)
         yield Mistake("geometry", "member missing", (name,), gone)
         away = np.hypot(*(frame.xy - frame.xy[frame.joint_index[m.joint_to]]).T)
         near = [list(frame.joints)[k] for k in np.argsort(away)[1:4]]
@@ -472,7 +473,8 @@ def _pastes(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
     seed = r.random()
     members = list(frame.members)
     for kind, sort, do in (
-        ("units", "units of a column", _unit), ("transcription", "rows swapped", _swap), ("transcription", "digits transposed", _transpose),
+        ("units", "units of a column", _unit), ("transcription", "rows swapped", _swap),
+        ("transcription", "digits transposed", _transpose),
         ("transcription", "decimal slip", _slip), ("signs", "sign of one value", _one_sign),
     ):  # fmt: skip
         yield Mistake(kind, sort, (), paste=lambda v, do=do: do(v, Random(seed)))
@@ -688,9 +690,11 @@ if __name__ == "__main__":
     first, last, each = map(int, sys.argv[1:4])
     what = sys.argv[4] if len(sys.argv) > 4 else "all"
     done: list[Record] = []
-    for got in run(range(first, last), each, only=what):
-        done.append(got)
-        if got.rank != 1:
-            print(got, flush=True)
-    print(table(done))
+    try:
+        for got in run(range(first, last), each, only=what):
+            done.append(got)
+            if got.rank != 1:
+                print(got, flush=True)
+    finally:
+        print(table(done))
     print(f"{len({x.seed for x in done})} frames, {sum(x.seconds for x in done) / max(len(done), 1):.3f} s each")

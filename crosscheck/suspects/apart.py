@@ -11,7 +11,6 @@ from crosscheck.compare.opinions import END_QUANTITIES, JOINT_QUANTITIES, REACTI
 from crosscheck.compare.tolerance import case_scales
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Frame
-from crosscheck.opinions.slope_deflection.prepared import prepared
 
 if TYPE_CHECKING:
     from crosscheck.suspects.sweep import Sweep, Weighed
@@ -60,11 +59,7 @@ def _results(sweep: Sweep, w: Weighed, name: str) -> CaseAnswer | None:
 
 def _solved(sweep: Sweep, w: Weighed, name: str) -> CaseAnswer | None:
     change = w.option.change
-    try:
-        if change.frame is None:
-            return sweep.answer.cases[name]
-        changed = change.frame(sweep.frame)
-        source = sweep.base.answer([name], changed) if change.loads_only else prepared(changed).answer([name])
-        return source.cases[name]
-    except ArithmeticError:
-        return None
+    if change.frame is None:
+        return sweep.answer.cases[name]
+    source = sweep.answer_to(change.frame(sweep.frame), (name,), change.loads_only)
+    return source.cases[name] if source is not None else None

@@ -60,8 +60,6 @@ def search(
     limit: int = 10,
 ) -> Findings:
     """Suspects for a claim on whose values the verdict is disagree."""
-    if frame.analysis.order == 2:
-        return Findings((), "suspects are sought in first order only")
     answer = _spokesman(opinions)
     if answer is None:
         return Findings((), "no opinion gives what could be compared")
@@ -121,7 +119,7 @@ def _confirmed(sweep: Sweep, weighed: Weighed) -> Weighed | None:
     option = weighed.option
     if option.change.frame is None or option.change.loads_only:
         return weighed
-    if option.delta is not None:
+    if option.delta is not None and not sweep.slow:
         again = sweep.solve(option)
         if again is None:
             return None

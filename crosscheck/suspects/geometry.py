@@ -9,13 +9,10 @@ import numpy as np
 
 from crosscheck.frame.model import Frame
 from crosscheck.suspects.changes import Change, with_ends, with_joint, without_member
-from crosscheck.suspects.suspect import Family, Option, named
+from crosscheck.suspects.suspect import Family, Option, Placed, named
 
 MISSING, JOINED, MOVED, SWAPPED = 0.5, 0.8, 1.0, 0.8
 NEAR = 6
-
-Placed = tuple[Option, tuple[int, ...], tuple[int, ...]]
-"""An option with the joints and members (indices) that it is confined to."""
 
 
 def geometry_options(frame: Frame) -> Iterator[Placed]:

@@ -316,6 +316,8 @@ def case_options(screen: Screen) -> Iterator[Option]:
     """Factors left out or applied twice, and factors that fit, for every claimed case."""
     seen, rows = screen.seen, screen.rows
     wanted = {c for n in seen.names for c in case_factors(screen.frame, n)}
+    if not wanted:
+        return
     answer = screen.base.answer(sorted(wanted))
     alone = {case: seen.read(answer, (case,) * len(seen.names))[rows] for case in wanted}
     for k, name in enumerate(seen.names):

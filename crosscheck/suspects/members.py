@@ -8,10 +8,10 @@ from functools import partial
 
 import numpy as np
 
-from crosscheck.frame.model import FREE, HELD, Floats, Frame, SelfWeight
+from crosscheck.frame.model import FREE, HELD, Floats, Frame, SelfWeight, Temperature
 from crosscheck.suspects.changes import Change, with_member, with_member_factors
 from crosscheck.suspects.screen import Screen
-from crosscheck.suspects.suspect import Family, Option, named
+from crosscheck.suspects.suspect import Family, Option, Placed, named
 
 COMMON = (0.5, 0.7, 0.35, 0.25, 0.1, 2.0, 10.0, 0.01, 100.0, 1e-4)
 """Factors that mistakes of stiffness often have: cracked sections, halves, decimal slips, units."""
@@ -189,6 +189,20 @@ def _heavy(frame: Frame, m: int, what: str, p: float) -> Option:
     name = list(frame.members)[m]
     where = (named(frame, "member", name),)
     return Option("stiffness", where, f"{trial.says} (and weight)", Change(_change(trial, name)), FITTED, fitted=1)
+
+
+def section_options(frame: Frame) -> Iterator[Placed]:
+    """A member given another section where weight, depth or shear area change along: to be solved again."""
+    thermal = any(isinstance(q, (SelfWeight, Temperature)) for c in frame.cases.values() for q in c.loads)
+    if not thermal and frame.analysis.shear == "rigid":
+        return
+    for m, member in enumerate(frame.members.values()):
+        label = named(frame, "member", member.name)
+        for other in frame.sections:
+            if other != member.section:
+                change = Change(partial(with_member, name=member.name, section=other))
+                says = f"{label} was given section {other}"
+                yield Option("stiffness", (label,), says, change, OTHER_SECTION), (), (m,)
 
 
 def every_member_option(frame: Frame) -> Iterator[Change]:

@@ -61,6 +61,10 @@ class Family:
     members: tuple[int, ...] | None = None
 
 
+Placed = tuple[Option, tuple[int, ...], tuple[int, ...]]
+"""An option with the joints and members (indices) that it is confined to."""
+
+
 def named(frame: Frame, kind: str, name: str) -> str:
     """A name as `where` says it: with its kind in front where the bare name would be two things."""
     tables = (frame.joints, frame.members, frame.sections, frame.materials)

@@ -7,7 +7,7 @@ equals by how few and how common the mistakes are.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import partial
 
@@ -15,14 +15,17 @@ import numpy as np
 
 from crosscheck.answer import Answer, CaseAnswer
 from crosscheck.compare.claimed import ClosedClaim
+from crosscheck.frame.kinematics import study
 from crosscheck.frame.model import Floats, Frame
+from crosscheck.opinions import slope_deflection
 from crosscheck.opinions.slope_deflection.prepared import Prepared, prepared
+from crosscheck.problems import UnusableInput
 from crosscheck.suspects.adjusted import adjusted
 from crosscheck.suspects.changes import Change, of_case, usable
 from crosscheck.suspects.geometry import geometry_families, geometry_options
 from crosscheck.suspects.groups import group_options, large_families
 from crosscheck.suspects.loads import case_options, load_options
-from crosscheck.suspects.members import heavy_families, member_options
+from crosscheck.suspects.members import heavy_families, member_options, section_options
 from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.screen import Screen
@@ -34,6 +37,8 @@ UNFIT, STEEPNESS = 3.0, 2.0
 """What not fitting to the printed precision costs, and how steeply the misfit counts after that."""
 PER_NUMBER = 0.2
 CONFIRMED = 16
+SLOW_FEW = 6
+"""Options solved again in second order, the most likely by a forecast of first order."""
 PROMISE = 0.5
 """A family that leaves more than this share over after two steps is not fitted further."""
 RIVALS = 4.0
@@ -79,6 +84,11 @@ class Sweep:
         self.results: dict[int, CaseAnswer | None] = {}
         self._least: dict[tuple[tuple[int, ...], tuple[int, ...]], float] = {}
 
+    @property
+    def slow(self) -> bool:
+        """In second order another solution costs a hundred times one of first order: few are tried."""
+        return self.frame.analysis.order == 2
+
     # --- weighing ---
 
     def weigh(self, option: Option, said: Floats | None = None) -> Weighed:
@@ -116,19 +126,27 @@ class Sweep:
             return self.weigh(option)
         changed = option.change.frame(self.frame)
         names = self.seen.names
+        answer = self.answer_to(changed, names, option.change.loads_only)
+        if answer is None:
+            return None
+        said = self._read(answer, changed, names)
+        return None if not np.isfinite(said).all() else self.weigh(option, said)
+
+    def answer_to(self, changed: Frame, names: Sequence[str], loads_only: bool) -> Answer | None:
+        """The changed frame's results; None where it can move, lacks a number or is past a critical load."""
         self.solved += 1
         with np.errstate(all="ignore"):
             try:
-                if option.change.loads_only:
-                    answer = self.base.answer(names, changed)
-                elif not usable(changed):
+                if not usable(changed):
                     return None
-                else:
-                    answer = prepared(changed).answer(names)
-            except (ArithmeticError, np.linalg.LinAlgError):
+                if changed.analysis.order == 2:
+                    answer = slope_deflection.opine(changed, study(changed), names)
+                    return answer if isinstance(answer, Answer) and all(n in answer.cases for n in names) else None
+                if loads_only and self.frame.analysis.order == 1:
+                    return self.base.answer(names, changed)
+                return prepared(changed).answer(names)
+            except (ArithmeticError, np.linalg.LinAlgError, UnusableInput):
                 return None
-            said = self._read(answer, changed, names)
-        return None if not np.isfinite(said).all() else self.weigh(option, said)
 
     def _read(self, answer: Answer, changed: Frame, names: tuple[str, ...]) -> Floats:
         seen = self.seen
@@ -142,14 +160,15 @@ class Sweep:
         """Every single mistake worth telling, best first."""
         quick = [self.weigh(o) for o in paste_options(self.seen)]
         told = [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
-        if not self.seen.linear.all():
+        if not self.seen.linear.all() or self.frame.analysis.order == 2:
+            # Foretold in part, or to first order: the most likely are solved again.
             told.sort(key=lambda w: w.rough)
-            told = [w for o in told[: 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
+            told = [w for o in told[: SLOW_FEW if self.slow else 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
         quick += told
         quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
         quick += adjusted(self)
         quick.sort(key=lambda w: w.score)
-        if not (quick and quick[0].fits):
+        if not self.slow and not (quick and quick[0].fits):
             quick += self._solved(self._near_geometry())
             for family in (*large_families(self.frame), *self._near_families()):
                 found = self.fit(family)
@@ -176,7 +195,10 @@ class Sweep:
                 if other == name:
                     continue
                 names = tuple(other if n == name else n for n in seen.names)
-                said = np.where(seen.case == k, seen.read(self.base.answer((other,)), names), seen.said)
+                answer = self.answer_to(self.frame, (other,), True)
+                if answer is None:
+                    continue
+                said = np.where(seen.case == k, seen.read(answer, names), seen.said)
                 option = Option("load case", (), f"the results of {other} stand under {name}",
                                 Change(claim=partial(of_case, case=name, other=other)), 0.2)  # fmt: skip
                 if np.isfinite(said).all():
@@ -187,7 +209,7 @@ class Sweep:
         return [w for o in options if (w := self.solve(o)) is not None]
 
     def _near_geometry(self) -> Iterator[Option]:
-        for option, joints, members in geometry_options(self.frame):
+        for option, joints, members in (*section_options(self.frame), *geometry_options(self.frame)):
             if self._promising(joints, members):
                 yield option
 
@@ -257,6 +279,8 @@ class Sweep:
     def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
         """Two mistakes together, begun from the singles that explain most."""
         out: list[Weighed] = []
+        if self.slow:
+            return out
         begin = sorted((w for w in singles if w.explains > 0.05), key=lambda w: w.rough)[:first]
         for one in begin:
             out += self._second(one)
@@ -280,12 +304,19 @@ class Sweep:
         for two in best[:8]:
             if two.option.where == option.where and two.option.kind == option.kind:
                 continue
+            if not all(self._known(where) for where in two.option.where):
+                continue
             both = Option(
                 option.kind, tuple(dict.fromkeys((*option.where, *two.option.where))),
                 f"{option.says}, and {two.option.says}", option.change.then(two.option.change),
                 PAIR + option.cost + two.option.cost, claimed=two.claimed, fitted=option.fitted + two.option.fitted,
             )  # fmt: skip
             yield self.weigh(both, two.said)
+
+    def _known(self, where: str) -> bool:
+        """Whether a place is one of the frame as stated, and not a section made for the first mistake."""
+        made = (f"{m.section} of {m.name}" for m in self.frame.members.values())
+        return where in self.frame.sections or where not in made
 
     def cheap_singles(self) -> list[Weighed]:
         """Singles without the searches that solve again many times."""

@@ -22,13 +22,18 @@ IDEALISED, ZONES, ANGLE, ONE_ZONE = 0.3, 0.4, 0.6, 0.7
 
 
 def whole_options(frame: Frame) -> Iterator[Option]:
-    """The fixed ones."""
+    """The fixed ones; in second order, where another solution is slow, the idealisation alone."""
     yield from _idealisations(frame)
+    if frame.analysis.order == 2:
+        return
     yield from _zones(frame)
     yield from _angles(frame)
 
 
 # --- idealisation ---
+
+
+ORDERS = {1: "the analysis was of second order", 2: "the analysis was of first order"}
 
 
 def _idealisations(frame: Frame) -> Iterator[Option]:
@@ -38,6 +43,7 @@ def _idealisations(frame: Frame) -> Iterator[Option]:
     says_shear = "shear deformation was left out" if shear == "elastic" else "shear deformation was counted"
     for fields, says, cost in (
         ({"axial": new_axial}, says_axial, IDEALISED), ({"shear": new_shear}, says_shear, IDEALISED),
+        ({"order": 3 - frame.analysis.order}, ORDERS[frame.analysis.order], IDEALISED),
         ({"axial": new_axial, "shear": new_shear}, f"{says_axial} and {says_shear}", IDEALISED + 0.5),
     ):  # fmt: skip
         change = partial(_analysed, fields=fields)
@@ -45,7 +51,7 @@ def _idealisations(frame: Frame) -> Iterator[Option]:
             yield Option("idealisation", (), says, Change(change), cost)
 
 
-def _analysed(frame: Frame, fields: Mapping[str, str]) -> Frame:
+def _analysed(frame: Frame, fields: Mapping[str, Any]) -> Frame:
     whole: dict[str, Any] = dict(fields)
     return with_analysis(frame, **whole)
 

@@ -33,12 +33,10 @@ from crosscheck.frame.model import (
 from crosscheck.opinions import slope_deflection
 from crosscheck.opinions.slope_deflection.prepared import prepared
 from crosscheck.suspects import search
-from crosscheck.suspects.groups import group_options
 from crosscheck.suspects.loads import every_load_option
 from crosscheck.suspects.members import every_member_option
 from crosscheck.suspects.supports import every_support_option
-from crosscheck.suspects.screen import Screen
-from tests.corpus import claim_values, closed_claim, judged, opinions_on, CLAIM
+from tests.corpus import CLAIM, claim_values, closed_claim, judged, opinions_on
 
 SIZES = {12: (2, 2), 100: (4, 11), 400: (7, 27)}
 """Bays and storeys of a grid with about so many members."""
@@ -61,7 +59,8 @@ def grid(bays: int, storeys: int) -> Frame:
     pushes = [JointForce(len(beams) + k, name(0, k), 10.0, 0.0) for k in range(1, storeys + 1)]
     return Frame(
         title=f"{bays} by {storeys}", units=Units("kN", "m", 1000.0, 1.0), materials={"steel": Material("steel", 210e6)},
-        sections={"column": Section("column", 2e-4, 1e-2), "beam": Section("beam", 3e-4, 9e-3)}, joints=joints, members=members,
+        sections={"column": Section("column", 2e-4, 1e-2), "beam": Section("beam", 3e-4, 9e-3)},
+        joints=joints, members=members,
         supports={name(i, 0): Support(name(i, 0), HELD, HELD, HELD) for i in range(bays + 1)},
         cases={"all": LoadCase("all", (*loads, *pushes))},
     )  # fmt: skip
