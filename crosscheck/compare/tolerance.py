@@ -121,10 +121,11 @@ def full_restraint(frame: Frame, table: LoadTable) -> Scales:
     turned = _largest(table.settlement[:, 2])
     strain = (longer + _largest(table.settlement[:, :2])) / t.length
     axial = np.where(strain > 0.0, t.E * t.A * strain, 0.0) if frame.analysis.axial == "elastic" else np.zeros(1)
-    moments = stiffness * (bend + 6.0 * moved / t.length**2 + 4.0 * turned / t.length)
+    moments = _largest(stiffness * (bend + 6.0 * moved / t.length**2 + 4.0 * turned / t.length))
     longest = float(t.length.max(initial=0.0))
     displacements = moved + turned * longest + _largest(bend) * longest**2
-    return Scales(_largest(axial), _largest(moments), displacements, turned)
+    forces = max(_largest(axial), moments / longest if longest else 0.0)
+    return Scales(forces, moments, displacements, turned)
 
 
 def _span_flexibility(frame: Frame) -> float:
