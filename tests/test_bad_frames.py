@@ -246,7 +246,7 @@ CASES = [
     bad('axial = "elastic"', 'axial = "stiff"', 'none of "elastic", "rigid"', "analysis.axial"),
     bad('A = "53.8 cm^2"\n', 'A = "53.8 cm"\n', "is a length, not an area", "sections.post.A"),
     bad('shear = "elastic"', 'sheer = "elastic"', 'did you mean "shear"', "analysis.sheer"),
-    bad("order = 1", "order = 2", "order = 2 is not read yet", "analysis.order"),
+    bad("order = 1", "order = 3", "order is 1 or 2", "analysis.order"),
     bad("order = 1", "order = true", "order is 1 or 2", "analysis.order"),
     bad('tolerance = "1%"', "tolerance = 0", "not between 0 and 100 per cent", "analysis.tolerance"),
     bad('tolerance = "1%"', 'tolerance = "1 m"', "is a length, not a percentage", "analysis.tolerance"),
@@ -427,8 +427,9 @@ def test_another_idealisation_is_checked_like_a_stated_one() -> None:
         "  { self_weight = 1.0 },\n", ""))  # fmt: skip
     with pytest.raises(UnusableInput, match="has no A, which axial"):
         with_analysis(frame, axial="elastic")
-    with pytest.raises(UnusableInput, match="order = 2 is not read yet"):
-        with_analysis(frame, order=2)
+    with pytest.raises(UnusableInput, match="order is 1 or 2"):
+        with_analysis(frame, order=3)
+    assert with_analysis(frame, order=2).analysis.order == 2
     with pytest.raises(UnusableInput, match='"stiff" is not "rigid" or "elastic"'):
         with_analysis(frame, shear="stiff")
     assert any("AXIALLY RIGID" in warning for warning in frame.warnings)

@@ -420,7 +420,6 @@ UNUSABLE = {
         with_load('{ joint = "D", settlement = { x = 0.01 } }'), ('axial = "elastic"',)),
     "a couple where nothing resists it": (
         with_load('{ joint = "B", couple = 3 }', ALL_HINGED), ("B", "couple")),
-    "second order": (PORTAL + "[analysis]\norder = 2\n", ("order",)),
     "a stepped member": (PORTAL.replace('section = "post"', 'profile = [["post", "100%"]]', 1), ("profile",)),
     "a tapered member": (PORTAL.replace('section = "post"', 'taper = ["post", "post"]', 1), ("taper",)),
     "one way": (PORTAL.replace('"steel" }\n', '"steel", only = "tension" }\n', 1), ("only",)),

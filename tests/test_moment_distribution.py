@@ -6,12 +6,11 @@ Closed forms are from memory of common tables (fixed-end moments, stiffness and 
 from __future__ import annotations
 
 import math
-from dataclasses import replace
 
 import numpy as np
 import pytest
 
-from crosscheck.answer import ACROSS, Answer, Silent
+from crosscheck.answer import ACROSS, Answer
 from crosscheck.compare.tolerance import Scales, case_scales
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.loads import load_table
@@ -452,13 +451,6 @@ def test_imposed_length_that_a_rigid_frame_cannot_follow_is_refused() -> None:
         study(frame)
     with pytest.raises(UnusableInput, match="A-B"):
         opine(frame, study(beam("")))
-
-
-def test_second_order_is_not_spoken_for() -> None:
-    frame = beam("")
-    frame = replace(frame, analysis=replace(frame.analysis, order=2))
-    given = opine(frame, study(frame))
-    assert isinstance(given, Silent) and "first order" in given.why
 
 
 def test_only_the_cases_asked_for() -> None:

@@ -52,8 +52,8 @@ class Motion:
 def study(frame: Frame) -> Study:
     """Study the frame for all its cases.
 
-    Raises MechanismFound where it can move freely, and UnusableInput where a load meets no resistance or an axially
-    rigid frame cannot follow an imposed change of length.
+    Raises MechanismFound where it can move freely, and UnusableInput where a load meets no resistance, an axially
+    rigid frame cannot follow an imposed change of length, or second order needs an axial force that it leaves open.
     """
     found = mechanisms(frame)
     if found:
@@ -66,6 +66,7 @@ def study(frame: Frame) -> Study:
         table = load_table(frame, name)
         problems += _unresisted(frame, name, table, turning, loose)
         problems += redundancy.unfollowed(name, table)
+    problems += _open_in_second_order(frame, redundancy, axial)
     if problems:
         raise UnusableInput(problems)
     joints = loose.copy()
@@ -359,6 +360,22 @@ class AxialRedundancy:
             return self._null
         return self.project(np.random.default_rng(1).standard_normal((len(self.rigid), 3)))
 
+    def sway_samples(self) -> Floats:
+        """(3j, k) joint displacements in global axes, of size one, that change no rigid member's length and move every
+        joint that can move so."""
+        moves = np.random.default_rng(2).standard_normal((self.free.shape[1], 3))
+        if self._null is not None:
+            _, values, right = np.linalg.svd(self.free.toarray(), full_matrices=True)
+            rank = int(np.sum(values > SINGULAR * max(float(values.max(initial=0.0)), 1e-300)))
+            moves = right[rank:].T
+        else:
+            # As in `project`: what changes a length shrinks with each pass, the rest stays.
+            for _ in range(4):
+                moves = self._shift * self._factor.solve(moves)
+        whole = np.zeros((len(self.held), moves.shape[1]))
+        whole[~self.held] = moves
+        return np.asarray(support_axes(self.frame).T @ whole)
+
     def members(self) -> Bools:
         """(m,): True where the axial force is undetermined."""
         if not self.rigid.any():
@@ -397,6 +414,49 @@ class AxialRedundancy:
         )
         line = self.frame.lines.get(f"loads.{name}")
         return [Problem(self.frame.file, line, f"loads.{name}", says, 'use axial = "elastic"')]
+
+
+# --- axial forces that second order needs ------------------------------------------------------------
+
+
+def _open_in_second_order(frame: Frame, redundancy: AxialRedundancy, axial: Bools) -> list[Problem]:
+    """A problem where members that bend or turn have an undetermined axial force: its moment would be anybody's guess."""
+    if frame.analysis.order != 2 or not axial.any():
+        return []
+    open_ones = np.flatnonzero(axial & ~_straight_and_still(frame, redundancy))
+    if len(open_ones) == 0:
+        return []
+    names = list(frame.members)
+    says = (
+        f"in second order the axial force of {_listed([names[k] for k in open_ones])} matters, and an axially rigid frame "
+        "leaves it undetermined"
+    )
+    line = frame.lines.get("analysis.order")
+    return [Problem(frame.file, line, "analysis.order", says, 'use axial = "elastic"')]
+
+
+def _straight_and_still(frame: Frame, redundancy: AxialRedundancy) -> Bools:
+    """(m,): members whose chord no sway or settlement turns, whose ends no joint turns and which no load bends."""
+    t, support = frame.member_table, frame.support_table
+    gripped = connected(frame) | (t.zone > 0.0)
+    turns = (gripped & (support.stiffness[t.ends, 2] != HELD)).any(axis=1)
+    sways = np.abs(_chord_turns(frame, redundancy.sway_samples())).max(axis=1, initial=0.0) > 1e-7
+    moved = turns | sways
+    for name in frame.cases:
+        table = load_table(frame, name)
+        moved |= table.difference != 0.0
+        moved[table.point_member[(table.point_across != 0.0) | (table.point_couple != 0.0)]] = True
+        moved[table.line_member[(table.line_across != 0.0).any(axis=1)]] = True
+        moved |= (table.settlement[t.ends] != 0.0).any(axis=(1, 2))
+    return np.asarray(~moved)
+
+
+def _chord_turns(frame: Frame, moves: Floats) -> Floats:
+    """(m, k) clockwise chord rotation times length of every member under joint displacements (3j, k), global axes."""
+    t = frame.member_table
+    by_joint = moves.reshape(len(frame.joints), 3, -1)
+    apart = by_joint[t.ends[:, 1]] - by_joint[t.ends[:, 0]]
+    return np.asarray(t.sin[:, None] * apart[:, 0] - t.cos[:, None] * apart[:, 1])
 
 
 # --- loads that nothing resists --------------------------------------------------------------------

@@ -14,7 +14,7 @@ Named = TypeVar("Named", bound=str)
 Fault = tuple[Path, str, str]
 """Where, what is wrong, what would be right."""
 
-ORDERS = (1,)
+ORDERS = (1, 2)
 """Orders of theory that are read."""
 
 AXIAL: tuple[Literal["elastic", "rigid"], ...] = ("elastic", "rigid")
@@ -35,9 +35,7 @@ def used_materials(frame: Frame) -> list[Material]:
 
 def order_fault(order: object) -> str:
     """Why an `order` cannot be used, or ""."""
-    if type(order) is int and order in ORDERS:
-        return ""
-    return "order = 2 is not read yet" if type(order) is int and order == 2 else "order is 1 or 2"
+    return "" if type(order) is int and order in ORDERS else "order is 1 or 2"
 
 
 def default_axial(frame: Frame) -> tuple[Literal["elastic", "rigid"], str]:

@@ -96,7 +96,7 @@ def settle_case(first: Process, column: int) -> Settled:
     loads, axial = load_table(frame, name), first.state.axial[:, column].copy()
     grown = growing(first.held, loads, axial)
     if not grown.stable(1.0):
-        raise NotSettled(f"past its critical load: the critical load factor is {critical_factor(grown):.2g}")
+        raise NotSettled(f"past its critical load: the critical load factor is {critical_factor(grown):.4g}")
     position = Position(*(
         part[:, column].copy()
         for part in (first.state.rotation, first.state.move, first.state.axial, first.state.push, first.state.twist)
