@@ -12,6 +12,7 @@ from crosscheck.claims.grid import Grid, grid_of
 from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Meaning, Role, dimension_of, meaning_of
 from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
+from crosscheck.claims.readfile import checked
 from crosscheck.claims.reading import Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
 from crosscheck.claims.scan import RawTable, Scan, cells_of, is_number, scan
 from crosscheck.claims.sentences import entries_told
@@ -44,6 +45,7 @@ def read_claim_text(
 
 
 def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str, digest: str) -> Reading:
+    options = checked(options, frame_names)
     names = Names(frame_names, options.members, options.joints, options.cases)
     scanned = scan(lines_of(text), names)
     stated = with_options(stated_in(scanned), options)

@@ -52,7 +52,8 @@ class ReadingOptions:
     units: "kN m" for the whole paste, or quantity to unit ({"moment": "kN mm", "displacement": "mm"}).
     columns: heads to use in place of (or in want of) the paste's own, in order: ("member", "joint", "N", "V", "M").
     signs: quantity to convention in words ({"moment": "anticlockwise", "axial": "compression"}).
-    members, joints, cases: the paste's name to the frame's. file: a reading file (TOML) that states all these.
+    members, joints, cases: the paste's name to the frame's. parts: a member of the frame to the elements
+      that the paste divides it into, in order. file: a reading file (TOML) that states all these.
     values: further values in words ("B2 max 412 kNm"). sheet: of a spreadsheet. face: values stand at the face.
     """
 
@@ -62,7 +63,8 @@ class ReadingOptions:
     members: Mapping[str, str] = field(default_factory=dict)
     joints: Mapping[str, str] = field(default_factory=dict)
     cases: Mapping[str, str] = field(default_factory=dict)
-    file: Path | None = None
+    parts: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    file: str | Path | None = None
     values: tuple[str, ...] = ()
     sheet: str | None = None
     face: bool | None = None

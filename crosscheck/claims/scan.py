@@ -281,14 +281,16 @@ class _Scanner:
         """Values in words: not under a table's head, where a row may have units in its cells."""
         if (self.table is not None and self.table.heads and self._may_follow(filled)) or len(text) > 500:
             return None
-        if not looks_told(text):
+        if separator_of(text) in ("tab", "bar") and len(filled) > 2:
+            return None
+        if 0 < _end_numbers(text.split()) or not looks_told(text):
             return None
         self.out.sentences.append((number, text, self.case))
         return "values in words", ""
 
     def _may_follow(self, filled: list[str]) -> bool:
         assert self.table
-        return self._fits(filled) if self.table.rows else self._knows(filled[0])
+        return self._fits(filled, named=False) if self.table.rows else any(self._knows(t) for t in filled[:3])
 
     def _row(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
         if not numbers:
@@ -318,9 +320,9 @@ class _Scanner:
     def _knows(self, text: str) -> bool:
         return self.names.member(text) is not None or self.names.joint(text) is not None
 
-    def _fits(self, filled: list[str]) -> bool:
+    def _fits(self, filled: list[str], named: bool = True) -> bool:
         """Does the line have about as many cells as the table's rows?"""
         if self.table is None or not self.table.rows:
             return False
         last = [c for c in cells_of(self.table.rows[-1][1])[1] if c.text]
-        return abs(len(last) - len(filled)) <= 1 and (self._knows(filled[0]) or is_number(filled[0]))
+        return abs(len(last) - len(filled)) <= 1 and (not named or self._knows(filled[0]) or is_number(filled[0]))

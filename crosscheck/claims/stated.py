@@ -93,17 +93,35 @@ def units_of(text: str) -> list[Size]:
     return [u for p in parts if (u := unit_of(p))]
 
 
+def parsed_units(
+    units: str | Mapping[str, str] | None,
+) -> tuple[dict[str, Size], dict[Dimension, Size], list[str]]:
+    """(by quantity, by dimension, parts not understood) of units stated by the user: "kN m", "moment kN mm, displacement mm"."""
+    by_quantity: dict[str, Size] = {}
+    system: dict[Dimension, Size] = {}
+    odd: list[str] = []
+    if isinstance(units, Mapping):
+        units = ", ".join(f"{word} {text}" for word, text in units.items())
+    for part in (units or "").split(","):
+        word, _, rest = part.strip().partition(" ")
+        quantities = QUANTITY_WORDS.get(word.lower().rstrip(":="), ())
+        unit = unit_of(rest.removeprefix("=").removeprefix("in ").strip()) if quantities else None
+        bare = [] if quantities else units_of(part)
+        if unit:
+            by_quantity |= dict.fromkeys(quantities, unit)
+        elif bare and len(bare) == len(part.split()):
+            system |= {u.dimension: u for u in bare}
+        elif not quantities and (whole := unit_of(part)):
+            system[whole.dimension] = whole
+        elif part.strip():
+            odd.append(part.strip())
+    return by_quantity, system, odd
+
+
 def with_options(stated: Stated, options: ReadingOptions) -> Stated:
     """What the user states goes before what the paste states in words (not before units in heads)."""
-    units = options.units
-    if isinstance(units, str):
-        for unit in units_of(units):
-            stated.system[unit.dimension] = unit
-    elif isinstance(units, Mapping):
-        for word, text in units.items():
-            unit_or_none = unit_of(text)
-            for quantity in QUANTITY_WORDS.get(word.lower(), (word,)):
-                if unit_or_none:
-                    stated.units[quantity] = unit_or_none
+    by_quantity, system, _ = parsed_units(options.units)
+    stated.units.update(by_quantity)
+    stated.system.update(system)
     stated.signs.update(options.signs)
     return stated

@@ -13,7 +13,6 @@ from dataclasses import dataclass, field, replace
 from itertools import product
 
 from crosscheck.compare.fit import Choice, Fitted
-from crosscheck.compare.fit_conventions import Convention
 
 FIXED_BY = 3
 TURNS = ("turn", "support", "down", "left")
@@ -29,10 +28,6 @@ _TURNED_BY: dict[tuple[str, str], tuple[str, ...]] = {
 }  # fmt: skip
 GROUPS = {"end": "member forces", "span": "member forces", "extreme": "member forces", "reaction": "reactions",
           "displacement": "displacements"}  # fmt: skip
-_STATED = {
-    "anticlockwise": ("action", -1), "counterclockwise": ("action", -1), "clockwise": ("action", 1),
-    "sagging": ("internal", 1), "hogging": ("internal", -1),
-}  # fmt: skip
 
 
 @dataclass(slots=True)
@@ -65,45 +60,51 @@ class Senses:
 
 def narrowed(f: Fitted, signs: Mapping[str, str]) -> Fitted:
     """Only the conventions that the paste or the user states, where it states any for this quantity."""
-    if _stated(f, signs) is None:
-        return f
-    kept = [c for c in f.choices if _allows(f, c.convention, signs)]
-    if not kept:
-        return f
-    return Fitted(f.batch, kept, min(kept, key=lambda c: c.rank))
+    form, sign, rule = _stated(f, signs)
+    kept = [
+        c for c in f.choices
+        if (form is None or c.convention.form == form) and (sign is None or c.convention.sign == sign)
+        and (rule is None or c.convention.rule in (rule, "frame" if len({o.convention.rule for o in f.choices}) == 1 else rule))
+    ]  # fmt: skip
+    return Fitted(f.batch, kept, min(kept, key=lambda c: c.rank)) if kept else f
 
 
-def _stated(f: Fitted, signs: Mapping[str, str]) -> str | None:
-    """The stated convention in words, or None."""
+_RULES = {"as the frame": "frame", "reversed": "reversed", "rightward": "rightward", "leftward": "leftward",
+          "downward": "downward"}  # fmt: skip
+_NEGATIVE = re.compile(r"support|ground|foundation|revers|compress|down|left|negative|anti|hogging")
+
+
+def _stated(f: Fitted, signs: Mapping[str, str]) -> tuple[str | None, int | None, str | None]:
+    """(form, sign, rule of direction) as stated, None for what is not."""
     kind, quantity = f.batch.kind, f.batch.quantity
-    if kind == "reaction":
-        return signs.get("reactions") or (signs.get(quantity) if quantity != "moment" else None)
-    if kind == "displacement":
-        return signs.get(quantity) or (signs.get("displacements"))
-    return signs.get(quantity)
+    rule = _RULES.get(signs.get("members", ""))
+    if kind in ("reaction", "displacement"):
+        return None, _joint_sign(kind, quantity, signs), None
+    said = signs.get(quantity, "")
+    if not said or (kind != "end" and "clockwise" in said):  # "clockwise" says nothing of values along a member
+        return None, None, rule
+    sign = -1 if _NEGATIVE.search(said) else 1
+    if kind != "end":
+        return None, sign, rule
+    if quantity == "moment":
+        return "internal" if re.search("sagging|hogging", said) else "action", sign, rule
+    return "action" if "action" in said else "internal", sign, rule
 
 
-def _allows(f: Fitted, convention: Convention, signs: Mapping[str, str]) -> bool:
-    said = str(_stated(f, signs)).lower()
-    if f.batch.kind == "reaction":
-        wanted = -1 if re.search("support|ground|foundation|revers", said) else 1
-        return convention.sign == wanted
-    if f.batch.quantity == "axial":
-        wanted = -1 if "compress" in said else 1
-        return convention.sign == wanted and convention.form == "internal"
-    if f.batch.quantity == "moment":
-        word = re.sub(r"[\s-]", "", said)
-        for name, (form, sign) in _STATED.items():
-            if word.startswith(name):
-                return convention.sign == sign and (convention.form == form or f.batch.kind != "end" and form == "internal")
-    if re.search(r"\b(down|left|revers|negative|anti)", said):
-        return convention.sign == -1
-    return convention.sign == 1
+def _joint_sign(kind: str, quantity: str, signs: Mapping[str, str]) -> int | None:
+    """Sign of a reaction or displacement: of its own direction and, for reactions, of what it acts on."""
+    own = signs.get("reaction moment" if (kind, quantity) == ("reaction", "moment") else quantity)
+    if own is None and quantity in ("fy", "dy"):
+        own = signs.get("vertical")
+    on = signs.get("reactions") if kind == "reaction" else None
+    if own is None and (on is None or quantity == "moment"):
+        return None
+    return (-1 if own and _NEGATIVE.search(own) else 1) * (-1 if on and _NEGATIVE.search(on) else 1)
 
 
 def senses(fitted: list[Fitted], signs: Mapping[str, str]) -> Senses:
     """Explains the signs taken by as few turns as can be, and counts what fixes each."""
-    stated = frozenset(id(f) for f in fitted if f.batch.said or _stated(f, signs) is not None)
+    stated = frozenset(id(f) for f in fitted if f.batch.said or _stated(f, signs)[1] is not None)
     sure = {id(f): s for f in fitted if (s := _sign(f)) is not None}
     best = min(product((False, True), repeat=4), key=lambda flags: _cost(fitted, sure, dict(zip(TURNS, flags, strict=True))))
     turns = frozenset(t for t, on in zip(TURNS, best, strict=True) if on)
