@@ -11,7 +11,7 @@ import hashlib
 import re
 import sys
 from pathlib import Path
-from typing import NoReturn
+from typing import Literal, NoReturn
 
 from crosscheck.problems import Problem, UnusableInput
 
@@ -83,8 +83,9 @@ def _spreadsheet(path: Path, sheet: str | None) -> str:
     """Every sheet (or the one named) as lines with tabs; the sheet's name stands in a line of its own above."""
     import pandas as pd
 
+    engine: Literal["openpyxl"] | None = "openpyxl" if path.suffix.lower() in (".xlsx", ".xlsm") else None
     try:
-        sheets = pd.read_excel(path, sheet_name=None, header=None, dtype=object)
+        sheets = pd.read_excel(path, sheet_name=None, header=None, dtype=object, engine=engine)
     except ImportError:
         refuse(str(path), "spreadsheet files need pandas with its excel extra", 'pip install "pandas[excel]"')
     except Exception as error:  # every reader behind pandas raises errors of its own kind

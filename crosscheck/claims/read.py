@@ -60,7 +60,7 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
         reader.sentence(line, sentence, case)
     for sentence in options.values:
         reader.value(sentence, file)
-    if not reader.entries and not reader.foreign and not reader.undecided:
+    if not reader.entries and not reader.foreign and not reader.undecided and not scanned.unknown_cases:
         refuse(file or "claim", *_nothing(scanned, reader))
     return Reading(
         file=file,

@@ -243,7 +243,7 @@ def _open(fitted: list[Fitted], meant: Senses) -> dict[int, str]:
         if f.taken.fits:
             why = meant.unfixed.get(id(f), "") or _form_unfixed(f) or _unit_unfixed(f, fitted)
         else:
-            why = _signs_at_odds(f)
+            why = "" if meant.stated(f) else _signs_at_odds(f)
         if why:
             out[id(f)] = why
     total = sum(int(f.taken.telling.sum()) for f in fitted)

@@ -61,10 +61,11 @@ class Senses:
 def narrowed(f: Fitted, signs: Mapping[str, str]) -> Fitted:
     """Only the conventions that the paste or the user states, where it states any for this quantity."""
     form, sign, rule = _stated(f, signs)
+    rules = {c.convention.rule for c in f.choices}
+    rule = rule if rule in rules else None  # where directions do not matter, one rule stands for all
     kept = [
         c for c in f.choices
-        if (form is None or c.convention.form == form) and (sign is None or c.convention.sign == sign)
-        and (rule is None or c.convention.rule in (rule, "frame" if len({o.convention.rule for o in f.choices}) == 1 else rule))
+        if form in (None, c.convention.form) and sign in (None, c.convention.sign) and rule in (None, c.convention.rule)
     ]  # fmt: skip
     return Fitted(f.batch, kept, min(kept, key=lambda c: c.rank)) if kept else f
 
