@@ -11,12 +11,13 @@ import time
 from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, replace
 from random import Random
+from typing import Any
 
 import numpy as np
 
 from crosscheck import check
 from crosscheck.answer import Answer, CaseAnswer, Silent
-from crosscheck.compare.claim import ClaimComparison
+from crosscheck.compare.claim import CaseClaim, ClaimComparison
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.differences import worst
 from crosscheck.compare.opinions import Comparison
@@ -142,8 +143,20 @@ def closed_claim(values: list[ClaimedValue]) -> ClosedClaim:
     return ClosedClaim("", "", len({v.line for v in values}), tuple(dict.fromkeys(v.case for v in values)), tuple(values))
 
 
-def judged(frame: Frame, opinions: check.Opinions, closed: ClosedClaim):  # type: ignore[no-untyped-def]
-    return ClaimComparison(frame, opinions.answers, opinions.judgements, CLAIM).judge(closed)
+class _Comparison(ClaimComparison):
+    """Keeps what the opinions say: finding extremes for each claim anew is slow."""
+
+    kept: dict[tuple[int, str], tuple[Answer, Any]] = {}
+
+    def _known(self, answer: Answer, case: str) -> Any:
+        key = (id(answer), case)
+        if key not in self.kept or self.kept[key][0] is not answer:
+            self.kept[key] = (answer, super()._known(answer, case))
+        return self.kept[key][1]
+
+
+def judged(frame: Frame, opinions: check.Opinions, closed: ClosedClaim) -> list[CaseClaim]:
+    return _Comparison(frame, opinions.answers, opinions.judgements, CLAIM).judge(closed)
 
 
 # --- mistakes of the frame ---------------------------------------------------------------------------

@@ -13,10 +13,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from crosscheck.answer import CaseAnswer
+from crosscheck.answer import CaseAnswer, Spans
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
+from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Floats, Frame
-from crosscheck.opinions.slope_deflection.prepared import END
+from crosscheck.opinions.slope_deflection.prepared import END, ForceSpans
 from crosscheck.suspects.changes import Change, with_values
 from crosscheck.suspects.suspect import Option, named
 
@@ -102,16 +103,15 @@ def _effect(sweep: Sweep, joints: list[int]) -> Floats:
     """(n,) what taking all of the moments off at these joints adds to the values, joint displacements left alone."""
     seen, frame = sweep.seen, sweep.frame
     cases = {n: _taken_off(frame, sweep.answer.cases[n], joints) for n in seen.names}
-    spans = replace_cases(sweep, cases)
+    spans = _spans_over(sweep, cases)
     changed = replace(sweep.answer, cases=cases, spans=spans)
     return seen.read(changed) - seen.said
 
 
-def replace_cases(sweep: Sweep, cases: dict[str, CaseAnswer]):  # type: ignore[no-untyped-def]
-    """Spans over other end actions; the spans as they are where they cannot be had."""
-    spans = sweep.answer.spans
-    tables = getattr(spans, "tables", None)
-    return type(spans)(sweep.frame, tables, cases, sweep.answer.undetermined) if tables else spans  # type: ignore[call-arg]
+def _spans_over(sweep: Sweep, cases: dict[str, CaseAnswer]) -> Spans:
+    """Values along the members over other end actions; as they are in second order, where statics alone gives none."""
+    tables = {name: load_table(sweep.frame, name) for name in cases}
+    return sweep.answer.spans if sweep.slow else ForceSpans(sweep.frame, tables, cases, sweep.answer.undetermined)
 
 
 def _taken_off(frame: Frame, case: CaseAnswer, joints: list[int]) -> CaseAnswer:

@@ -17,7 +17,7 @@ from crosscheck.frame.model import Frame
 from crosscheck.opinions.slope_deflection.prepared import prepared
 from crosscheck.problems import UnusableInput
 from crosscheck.suspects.observation import observe
-from crosscheck.suspects.suspect import Suspect
+from crosscheck.suspects.suspect import Option, Suspect
 from crosscheck.suspects.sweep import Sweep, Weighed
 
 if TYPE_CHECKING:
@@ -103,11 +103,19 @@ def _told(sweep: Sweep, ranked: list[Weighed], limit: int) -> list[Suspect]:
         if key in said or not _enough(weighed):
             continue
         said.add(key)
+        if option.fitted and any(_stands_for(k, option) for k in kept):
+            continue
         confirmed = _confirmed(sweep, weighed)
         if confirmed is not None and _enough(confirmed):
             kept.append(confirmed)
     kept.sort(key=lambda w: w.score)
     return [_suspect(sweep, kept, w) for w in kept]
+
+
+def _stands_for(plain: Weighed, fitted: Option) -> bool:
+    """Whether something with no number to fit explains the same place already: a spring of next to nothing is a hinge."""
+    o = plain.option
+    return plain.fits and not o.fitted and (o.kind, o.where) == (fitted.kind, fitted.where)
 
 
 def _enough(w: Weighed) -> bool:

@@ -175,7 +175,7 @@ def _variants_of_entry(loads: list[Load]) -> Iterator[tuple[list[tuple[Load, ...
 
 
 def _opposite(one: object, other: object) -> bool:
-    return not isinstance(one, str) and not isinstance(other, str) and abs((float(one) - float(other)) % 360) == 180  # type: ignore[arg-type]
+    return isinstance(one, float) and isinstance(other, float) and abs((one - other) % 360) == 180
 
 
 def _elsewhere(frame: Frame, case: str, k: int, where: tuple[str, ...]) -> Iterator[_Move]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from functools import partial
 
@@ -61,7 +61,7 @@ def _option(screen: Screen, t: _Trial, actions: list[Floats], fitted: int = 0) -
     return Option(t.kind, where, t.says, Change(_change(t, name)), t.cost, delta, fitted=fitted)
 
 
-def _change(t: _Trial, name: str):  # type: ignore[no-untyped-def]
+def _change(t: _Trial, name: str) -> Callable[[Frame], Frame]:
     if t.section:
         return partial(with_member, name=name, section=t.section)
     if t.kind == "stiffness":

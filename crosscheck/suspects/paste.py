@@ -103,7 +103,8 @@ def _unit(seen: Observation, rows: Ints, what: str, table: dict[str, float] | No
     """Unit ratios near the one that the values show."""
     size = np.abs(seen.said[rows])
     large = rows[(size > 0.01 * size.max()) & (seen.value[rows] != 0)]
-    if not len(large):
+    # One value alone is no column.
+    if len(large) < min(2, len(seen.value)):
         return
     ratio = float(np.median(seen.said[large] / seen.value[large]))
     where = _places(seen, rows)

@@ -12,9 +12,10 @@ from functools import cached_property
 
 import numpy as np
 
+from crosscheck.answer import Answer
 from crosscheck.frame.loads import case_factors
 from crosscheck.frame.model import Floats, Ints, Load
-from crosscheck.opinions.slope_deflection.prepared import DISPLACEMENT, END, REACTION, SPAN, Places, Prepared
+from crosscheck.opinions.slope_deflection.prepared import DISPLACEMENT, END, REACTION, SPAN, Effects, Places, Prepared
 from crosscheck.suspects.observation import EXTREME, Observation
 
 MOST_ROWS = 4000
@@ -80,12 +81,16 @@ class Screen:
         return k, place, sign * seen.said[k], sign * seen.value[k]
 
     @cached_property
-    def _answer(self):  # type: ignore[no-untyped-def]
+    def _answer(self) -> Answer:
         return self.base.answer(self.seen.names)
 
     @cached_property
-    def effects(self):  # type: ignore[no-untyped-def]
+    def effects(self) -> Effects:
         return self.base.effects(self.places)
+
+    @cached_property
+    def stretches(self) -> Floats:
+        return self.base.stretch_effects(self.places)
 
     @cached_property
     def total(self) -> float:
@@ -206,7 +211,8 @@ class Screen:
         left = 0.0
         for part in self.parts:
             keep = part[~drop[part]]
-            q = self.effects.force[np.ix_(keep, columns)] * self.weight[keep, None]
+            q = np.hstack([self.effects.force[np.ix_(keep, columns)], self.stretches[np.ix_(keep, list(members))]])
+            q *= self.weight[keep, None]
             r = self.weight[keep] * self.residual[keep]
             if len(keep):
                 size = np.abs(q).max(axis=0, initial=0.0)

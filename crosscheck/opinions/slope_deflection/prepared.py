@@ -199,6 +199,17 @@ class Prepared:
         reaction[rows] += (turned @ sp.diags((~self._restrained).astype(float))).toarray()
         return Effects(force, reaction, np.asarray(member))
 
+    def stretch_effects(self, places: Places) -> Floats:
+        """(n, m) effect on the places of a unit elongation imposed on each axially rigid member; nil for elastic ones,
+        where a pair of forces on its joints does the same."""
+        m, size = len(self.frame.members), 3 * len(self.frame.joints)
+        if not self.system.rigid.any():
+            return np.zeros((len(places.kind), m))
+        nil, unit = np.zeros((size, m)), np.diag(self.system.rigid.astype(float))
+        forces, shift = self.system._settle(np.zeros((3 * m, m)), nil.copy(), nil, unit)
+        from_forces, from_moves = self._readers(places)
+        return np.asarray(from_forces @ forces + from_moves @ shift)
+
     def _readers(self, p: Places) -> tuple[Any, Any]:
         """(n, 3 m) and (n, 3 j): the places' values from member forces and from displacements in the supports' axes."""
         m, j, n = len(self.frame.members), len(self.frame.joints), len(p.kind)
