@@ -79,9 +79,13 @@ def _parser() -> argparse.ArgumentParser:
     return parser
 
 
-def _add_common(command: argparse.ArgumentParser) -> None:
+def _add_frame(command: argparse.ArgumentParser) -> None:
     command.add_argument("frame", metavar="FRAME", help="frame file (TOML)")
     command.add_argument("--variant", metavar="NAME", default="", help="which frame of a [family]")
+
+
+def _add_common(command: argparse.ArgumentParser) -> None:
+    _add_frame(command)
     command.add_argument("--case", metavar="NAME", help="one load case or combination only")
     command.add_argument("--axial", choices=("elastic", "rigid"), help="instead of what the frame file says")
     command.add_argument("--shear", choices=("rigid", "elastic"), help="instead of what the frame file says")
@@ -117,7 +121,7 @@ def _add_verify(commands: Any) -> None:
 
 def _add_inspect(commands: Any) -> None:
     command = commands.add_parser("inspect", help="what a reviewer would ask about the model before any results")
-    command.add_argument("frame", metavar="FRAME", help="frame file (TOML)")
+    _add_frame(command)
     command.add_argument("--sway", metavar="RATIO", type=float, default=300, help="height over movement (usual: 300)")
     command.add_argument("--deflection", metavar="RATIO", type=float, default=250, help="span over deflection (250)")
     command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
@@ -252,7 +256,7 @@ def run_inspect(args: argparse.Namespace) -> int:
     from crosscheck.review.finding import Limits
     from crosscheck.review.inspect import inspect, subject_of
 
-    subject = subject_of(check.read(args.frame), Limits(sway=args.sway, deflection=args.deflection))
+    subject = subject_of(check.read(args.frame, args.variant), Limits(sway=args.sway, deflection=args.deflection))
     findings = inspect(subject)
 
     def document() -> dict[str, Any]:
