@@ -215,6 +215,12 @@ def test_a_family_is_every_combination_of_its_parameters(tmp_path: Path) -> None
     assert (spread.first, spread.last) == (8.5, 4.25)
 
 
+def test_a_name_may_be_stated(tmp_path: Path) -> None:
+    text = FAMILY.replace("pitch = [10, 15]", 'pitch = [10, 15]\nname = "Span {span}, pitch {pitch}"')
+    path = write_family(tmp_path, text.replace('load = "8.5', 'eaves = "4.2 m"\nridge = "{eaves + rise}"\nload = "8.5'))
+    assert variants(path)[0] == "Span-6m-pitch-10"
+
+
 def test_rows_of_a_table_make_a_family(tmp_path: Path) -> None:
     text = FAMILY.replace('span = "6 to 12 m by 2"\npitch = [10, 15]', 'rows = "sizes.csv"')
     path = write_family(tmp_path, text)

@@ -3,12 +3,13 @@
     [family]
     span = "6 to 12 m by 2"          # a range, or a list: [6, 8, 10, 12], ["6 m", "8 m"], ["deep", "light"]
     pitch = [10, 15]                 # every span with every pitch: eight frames
-    rise = "{span / 2 * tan(pitch)}" # what follows from those above it
+    eaves = "4.2 m"
+    ridge = "{eaves + span / 2 * tan(pitch)}"   # what follows from those above it
     name = "span {span} pitch {pitch}"   # of each frame; left out: span-6m-pitch-10
 
     [joints]
-    C = ["{span / 2}", 5.5]
-    D = ["{span}", 4]
+    B = [0, "{eaves}"]
+    C = ["{span / 2}", "{ridge}"]
 
 A placeholder in braces stands anywhere in a text of the file (or a cell of its tables) and holds a parameter or plain
 arithmetic on parameters (crosscheck/frame/arithmetic.py); a text that is one placeholder becomes its number. Units are
