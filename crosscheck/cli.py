@@ -34,6 +34,7 @@ examples:
 def main(argv: Sequence[str] | None = None) -> int:
     """Run the command line; returns the exit status."""
     args = _parser().parse_args(argv)
+    args.given = tuple(sys.argv[1:] if argv is None else argv)
     if args.command is None:
         _parser().print_help()
         return UNUSABLE
@@ -93,10 +94,19 @@ def _add_common(command: argparse.ArgumentParser) -> None:
     command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
 
 
+def _add_report(command: argparse.ArgumentParser) -> None:
+    command.add_argument("--report", metavar="PATH", help="write the check record, a page to read, sign and file "
+                         "(PATH.html, or PATH.pdf)")  # fmt: skip
+    command.add_argument("--about", metavar="KEY=TEXT", action="append", default=[],
+                         help="what the record says about itself: job, calculation, revision, originator, drawings, "
+                         "program, program_version, remarks; or a TOML file of these; may be repeated")  # fmt: skip
+
+
 def _add_opinions(commands: Any) -> None:
     command = commands.add_parser("opinions", help="three opinions on a frame, and where they disagree")
     _add_common(command)
     command.add_argument("--working", action="store_true", help="print equations and distribution to follow by hand")
+    _add_report(command)
     command.set_defaults(run=run_opinions)
 
 
@@ -116,6 +126,9 @@ def _add_verify(commands: Any) -> None:
     command.add_argument("--against", metavar="OTHER", help="another printout of the same frame instead of the "
                          "opinions: what moved between the two, by their printed rounding")  # fmt: skip
     command.add_argument("--show-reading", action="store_true", help="print the table as understood; compare nothing")
+    _add_report(command)
+    command.add_argument("--reason", metavar="TEXT", default="", help="why the frame has changed since a claim was "
+                         "checked against it; stands in the check log FRAME.log.jsonl")  # fmt: skip
     command.set_defaults(run=run_verify)
 
 
@@ -169,7 +182,10 @@ def run_opinions(args: argparse.Namespace) -> int:
     from crosscheck import check
 
     frame = _frame(args)
+    filing = _filing(args)
     result = check.ask(frame, check.chosen_names(frame, args.case))
+    if filing is not None:
+        filing.opinions(result)
 
     def document() -> dict[str, Any]:
         from crosscheck.report.document import opinions_document
@@ -200,8 +216,14 @@ def run_verify(args: argparse.Namespace) -> int:
     if args.against is not None and (args.against == "-" or args.claim is None):
         says, advice = "compares two printouts, each a file (the first may be -)", "name CLAIM and --against OTHER"
         raise UnusableInput([Problem("", None, "--against", says, advice)])
+    if args.report and (args.against is not None or args.suspect is not None or args.show_reading):
+        says, advice = "is of one claim and the frame as stated", "leave out --against, --suspect and --show-reading"
+        raise UnusableInput([Problem("", None, "--report", says, advice)])
     relative = _percent(args.tolerance)
     frame = _frame(args)
+    filing = _filing(args)
+    if filing is not None:
+        filing.ask_for_reason(frame)
     options = ReadingOptions(
         units=args.units, columns=_parts(args.columns), file=args.reading, values=tuple(args.value), sheet=args.sheet
     )
@@ -218,6 +240,8 @@ def run_verify(args: argparse.Namespace) -> int:
     result = check.verify(frame, reading, args.case, relative, every_case=bool(args.json))
     if args.suspect is not None:
         result = check.as_suspected(result, args.suspect)
+    if filing is not None:
+        filing.verification(result, reading)
 
     def document() -> dict[str, Any]:
         from crosscheck.report.document import verification_document
@@ -393,6 +417,15 @@ def _frame(args: argparse.Namespace) -> Any:
     from crosscheck.frame.needs import with_analysis
 
     return with_analysis(frame, args.axial, args.shear, args.order)
+
+
+def _filing(args: argparse.Namespace) -> Any:
+    """What writes the record that --report asks for, its options checked before any work; None where none is asked for."""
+    if not args.report:
+        return None
+    from crosscheck.report.filing import Filing
+
+    return Filing.asked(args.report, args.about, getattr(args, "reason", ""), args.given)
 
 
 def _percent(text: str | None) -> float | None:

@@ -112,3 +112,28 @@ def some(names: Sequence[str], most: int = 4) -> str:
 
 def counted(n: int, one: str, many: str = "") -> str:
     return f"{n:,} {one if n == 1 else many or one + 's'}"
+
+
+_DIRECTING = {
+    *range(0x200B, 0x2010), *range(0x202A, 0x202F), *range(0x2060, 0x2070), 0x061C, 0xFEFF, 0x00AD,
+}  # fmt: skip
+"""Characters that show nothing and turn or hide what stands beside them."""
+
+
+def visible(text: str, most: int = 0) -> str:
+    """Text of a file or a paste as it may stand in a report: what would turn or hide its neighbours is named instead,
+    and what is longer than `most` (0: any length) is cut in the middle, its ends being what tells names apart."""
+    if not text.isprintable() or any(ord(c) in _DIRECTING for c in text):
+        text = "".join(_shown(c) for c in text)
+    if most and len(text) > most:
+        head = (most - 1) // 2
+        text = f"{text[:head]}…{text[len(text) - (most - 1 - head):]}"
+    return text
+
+
+def _shown(c: str) -> str:
+    code = ord(c)
+    if c in "\n\t":
+        return c
+    hidden = code < 32 or 127 <= code < 160 or code in _DIRECTING or 0xD800 <= code < 0xE000
+    return f"[U+{code:04X}]" if hidden else c

@@ -29,6 +29,7 @@ from typing import Any
 import numpy as np
 
 from crosscheck.frame.model import FREE, HELD, Floats, Frame
+from crosscheck.opinions.library.deferred import drawing_deferred
 from crosscheck.opinions.library.mesh import Mesh
 
 STIFFER = 1e-8
@@ -102,8 +103,9 @@ class _Feeder:
     """Builds one system. Node numbers are ours; `ids` gives the library's."""
 
     def __init__(self, frame: Frame, mesh: Mesh, force: Floats, line: Floats, EI: Floats, EA: Floats) -> None:
-        from anastruct.fem.system import SystemElements
-        from anastruct.vertex import Vertex
+        with drawing_deferred():
+            from anastruct.fem.system import SystemElements
+            from anastruct.vertex import Vertex
 
         self.frame, self.mesh, self.line, self.EI, self.EA = frame, mesh, line, EI, EA
         self.force: dict[int, Floats] = dict(enumerate(force.copy()))

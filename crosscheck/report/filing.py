@@ -1,0 +1,94 @@
+"""Writing a record where it was asked for, and the check log beside the frame."""
+
+from __future__ import annotations
+
+import datetime
+import shlex
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from crosscheck import __version__, log
+from crosscheck.check import Opinions, Verification
+from crosscheck.claims.reading import Reading
+from crosscheck.files import replace_text
+from crosscheck.frame.model import Frame
+from crosscheck.problems import Problem, UnusableInput
+from crosscheck.report import words
+
+if TYPE_CHECKING:
+    from crosscheck.report.record import Circumstances, Record
+    from crosscheck.review.finding import Finding
+
+ENDINGS = (".html", ".htm", ".pdf")
+
+
+@dataclass(frozen=True, slots=True)
+class Filing:
+    """One record to be written: to `path`, with what is said about it, by the `command` given at `when`."""
+
+    path: Path
+    about: dict[str, str]
+    reason: str
+    command: str
+    when: datetime.datetime
+
+    @staticmethod
+    def asked(path: str, about: Sequence[str], reason: str, given: Sequence[str]) -> Filing:
+        """From the command line. Raises UnusableInput for a path or an --about that cannot be."""
+        from crosscheck.report.record import read_about
+
+        target = Path(path)
+        if target.suffix.lower() not in ENDINGS:
+            says = "is no page's name"
+            raise UnusableInput([Problem(path, None, "--report", says, "a name that ends in .html or .pdf")])
+        if not target.parent.is_dir():
+            says, advice = "lies in a folder that is not there", f"make {target.parent}"
+            raise UnusableInput([Problem(path, None, "--report", says, advice)])
+        command = shlex.join(["crosscheck", *given])
+        return Filing(target, read_about(about), reason, command, datetime.datetime.now(datetime.UTC))
+
+    def ask_for_reason(self, frame: Frame) -> None:
+        """Raises UnusableInput where the frame has changed since a claim was seen and --reason says nothing."""
+        log.ask_for_reason(log.read_log(log.log_path(frame)), frame, self.reason)
+
+    def opinions(self, result: Opinions) -> None:
+        from crosscheck.report.record import opinions_record
+
+        self._write(opinions_record(result, self._around(result.frame)))
+
+    def verification(self, result: Verification, reading: Reading) -> None:
+        """The record of a check, after its entry in the log."""
+        from crosscheck.report.record import verify_record
+
+        frame = result.opinions.frame
+        history = log.append(log.log_path(frame), self._entry(result)) if frame.file else ()
+        self._write(verify_record(result, self._around(frame, reading, history)))
+
+    def _entry(self, result: Verification) -> log.Entry:
+        frame, claim = result.opinions.frame, result.closed
+        return log.Entry(
+            self.when.isoformat(timespec="seconds"), __version__, frame.variant, frame.sha256, frame.content, claim.file,
+            claim.sha256, f"{words.idealisation(frame)}; {100 * result.tolerance.relative:g}%", result.verdict,
+            sum(c.compared for c in result.cases), sum(c.of for c in result.cases), self.reason,
+        )  # fmt: skip
+
+    def _around(
+        self, frame: Frame, reading: Reading | None = None, history: tuple[log.Entry, ...] = ()
+    ) -> Circumstances:
+        from crosscheck.report.record import Circumstances
+
+        return Circumstances(self.command, self.when, self.about, review(frame), history, reading)
+
+    def _write(self, record: Record) -> None:
+        from crosscheck.report.page import page
+
+        replace_text(self.path, page(record))
+
+
+def review(frame: Frame) -> tuple[Finding, ...]:
+    """What a reviewer would ask about the model."""
+    from crosscheck.review.inspect import inspect, subject_of
+
+    return tuple(inspect(subject_of(frame)))

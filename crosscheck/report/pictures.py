@@ -1,0 +1,252 @@
+"""Pictures of a check: the frame, its loads, and each case's results with the claim laid over the opinions.
+
+Opinions are a solid line over light hatching, the claim hollow squares and a broken line, differences ringed numbers:
+none of it needs colour. Moments stand on the tension side.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from matplotlib.figure import Figure
+
+from crosscheck.answer import ACROSS, AXIAL, MOMENT, SHEAR, Answer
+from crosscheck.compare.claimed import ClaimedValue
+from crosscheck.compare.differences import Difference
+from crosscheck.compare.opinions import with_turning_points
+from crosscheck.frame.loads import load_table
+from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.frame.stations import stations
+from crosscheck.report import words
+from crosscheck.report.sketch import GREY, NAMED, Sketch
+
+COLUMN = {"moment": MOMENT, "shear": SHEAR, "axial": AXIAL}
+TALL = 2.6
+"""Units that the largest value of a diagram is drawn."""
+NUMBERED = 40
+"""Most ringed numbers in one drawing."""
+
+
+@dataclass(frozen=True, slots=True)
+class Picture:
+    """A figure with its caption; `says` is for those who cannot see it."""
+
+    figure: Figure
+    caption: str
+    says: str
+
+
+def frame_picture(frame: Frame, marked: Sequence[tuple[int, Difference]] = (), names: Sequence[str] = ()) -> Picture:
+    """The frame with supports, hinges, dimensions and names; `marked`: (number, difference) ringed where each stands."""
+    sketch = Sketch(frame, (4.2, 2.6, 4.4, 2.6))
+    sketch.dimensions()
+    sketch.members()
+    sketch.connections()
+    sketch.supports()
+    sketch.names(names)
+    rest = _ring(sketch, marked)
+    caption = f"Distances in {frame.units.length}. Open ring: hinge; barred ring: semi-rigid end; thick: rigid zone."
+    if marked:
+        caption += " Ringed: places that differ, each by its first number in the table of differences."
+    if rest:
+        caption += f" {words.counted(rest, 'further place')} not ringed."
+    return Picture(sketch.figure, caption, f"Drawing of the frame {frame.title}")
+
+
+def loads_picture(frame: Frame, name: str) -> Picture:
+    """The loads of a case or combination, factors applied."""
+    sketch = Sketch(frame, (3.6, 3.0, 3.4, 3.6))
+    sketch.members()
+    sketch.connections()
+    sketch.supports()
+    sketch.loads(load_table(frame, name))
+    force, length = frame.units.force, frame.units.length
+    caption = f"Loads of {name}, factors applied: {force}, {force}/{length} along members, couples {force} {length}."
+    return Picture(sketch.figure, caption, f"Loads of {name}")
+
+
+class CasePictures:
+    """The pictures of one case. values: the claim's values of the case, empty where there is no claim."""
+
+    def __init__(
+        self, frame: Frame, answer: Answer, name: str, values: Sequence[ClaimedValue] = (),
+        marked: Sequence[tuple[int, Difference]] = (),
+    ) -> None:  # fmt: skip
+        self.frame, self.answer, self.name, self.values, self.marked = frame, answer, name, values, marked
+        self.member, self.x, side = with_turning_points(answer, name, stations(frame))
+        self.along = answer.spans.along(name, self.member, self.x, side)
+        self.start: Ints = np.searchsorted(self.member, np.arange(len(frame.members) + 1))
+
+    def all(self) -> list[Picture]:
+        """Moment, shear, axial and deflected shape."""
+        return [*(self.diagram(q) for q in COLUMN), self.deflected()]
+
+    def diagram(self, quantity: str) -> Picture:
+        """One quantity along the members."""
+        frame, sketch = self.frame, Sketch(self.frame)
+        column = COLUMN[quantity]
+        value = self.along[:, column]
+        peak = float(np.abs(value[np.isfinite(value)]).max(initial=0.0))
+        claimed = self._claimed_ends(quantity)
+        peak = max([peak, *(abs(v) for v in claimed.values())])
+        # Moment on the tension side: a sagging one stretches the local -y face.
+        scale = (-1.0 if quantity == "moment" else 1.0) * TALL * sketch.unit / (peak or 1.0)
+        sketch.members(1.2)
+        self._opinions(sketch, value, scale, peak)
+        drawn = self._claim(sketch, quantity, value, claimed, scale)
+        sketch.supports()
+        places = [(k, d) for k, d in self.marked if d.place.quantity == quantity and d.place.member]
+        rest = _ring(sketch, places)
+        says = f"{quantity} of {self.name} on the frame {frame.title}"
+        return Picture(sketch.figure, self._caption(quantity, drawn, rest), says)
+
+    def _opinions(self, sketch: Sketch, value: Floats, scale: float, peak: float) -> None:
+        outlines, ribs = [], []
+        small = len(self.frame.members) <= NAMED
+        for m in range(len(self.frame.members)):
+            part = slice(int(self.start[m]), int(self.start[m + 1]))
+            v = value[part]
+            if not np.isfinite(v).all():
+                at = sketch.along(m, 0.5 * self.frame.member_table.length[m])
+                if small:
+                    sketch.text(at, "?", 8.0)
+                continue
+            if np.abs(v).max(initial=0.0) <= 1e-6 * peak:
+                continue
+            foot, top = sketch.along(m, self.x[part]), sketch.along(m, self.x[part], scale * v)
+            outlines.append(np.concatenate([foot[:1], top, foot[-1:]]))
+            ribs += [np.array(pair) for pair in zip(foot[1:-1], top[1:-1], strict=True)]
+            if small:
+                self._figures(sketch, m, self.x[part], v, scale, peak)
+        sketch.lines(ribs, 0.35, ink="#9a9a9a")
+        sketch.lines(outlines, 1.0)
+
+    def _figures(self, sketch: Sketch, m: int, x: Floats, v: Floats, scale: float, peak: float) -> None:
+        """The ends' values, and the largest between them where it stands out."""
+        chosen = {0: 0.06, len(v) - 1: -0.06}
+        inner = int(np.argmax(np.abs(v)))
+        if abs(v[inner]) > 1.15 * max(abs(v[0]), abs(v[-1])):
+            chosen[inner] = 0.0
+        elif abs(v[0] - v[-1]) <= 1e-3 * peak:
+            chosen = {len(v) // 2: 0.0}
+        for k, shift in chosen.items():
+            if abs(v[k]) > 0.01 * peak:
+                at = float(x[k] + shift * self.frame.member_table.length[m])
+                lift = np.sign(scale * v[k]) * 0.45 * sketch.unit
+                sketch.text(sketch.along(m, at, float(scale * v[k] + lift)), words.number(float(v[k]), peak), 6.4)
+
+    def _claimed_ends(self, quantity: str) -> dict[tuple[int, int], float]:
+        """Claimed end values by member and end, in the sense of a diagram."""
+        out = {}
+        for v in self.values:
+            if v.kind == "end" and v.quantity == quantity:
+                m = self.frame.member_index[str(v.member)]
+                end = 0 if self.frame.members[str(v.member)].joint_from == v.joint else 1
+                # End actions act on the member; along it both moment and shear are counted from the `from` end.
+                out[m, end] = v.value if end == 0 or quantity == "axial" else -v.value
+        return out
+
+    def _claim(
+        self, sketch: Sketch, quantity: str, value: Floats, ends: Mapping[tuple[int, int], float], scale: float
+    ) -> bool:
+        lines = []
+        length = self.frame.member_table.length
+        for (m, end), v in ends.items():
+            sketch.square(sketch.along(m, 0.0 if end == 0 else float(length[m]), scale * v))
+            if end == 0 and (m, 1) in ends:
+                part = slice(int(self.start[m]), int(self.start[m + 1]))
+                own, x = value[part], self.x[part]
+                # By statics: with the same loads within the member, curves with other ends differ by a straight line.
+                other = own + (v - own[0]) + (x / length[m]) * ((ends[m, 1] - own[-1]) - (v - own[0]))
+                if np.isfinite(other).all():
+                    lines.append(sketch.along(m, x, scale * other))
+        for value_at in self.values:
+            if value_at.kind == "span" and value_at.quantity == quantity and value_at.at is not None:
+                m = self.frame.member_index[str(value_at.member)]
+                sketch.square(sketch.along(m, value_at.at, scale * value_at.value))
+                ends = {**ends, (m, 2): value_at.value}
+        sketch.lines(lines, 1.1, (0, (4, 2)))
+        return bool(ends)
+
+    def _caption(self, quantity: str, claim: bool, rest: int) -> str:
+        unit = words.unit_of(self.frame, quantity)
+        side = {"moment": "on the tension side", "shear": "positive on the member's left hand, from end to end",
+                "axial": "tension on the member's left hand, compression on its right"}[quantity]  # fmt: skip
+        text = f"{quantity.capitalize()} of {self.name}, {unit}, {side}. Solid line: {self.answer.opinion}."
+        if claim:
+            text += " Squares: the claim; broken line: between them with this frame's own loads."
+        elif self.values:
+            text += " The claim gives none."
+        if len(self.frame.members) > NAMED:
+            text += f" Values stand in the tables (more than {NAMED} members)."
+        return text + (f" {words.counted(rest, 'further place')} not ringed." if rest else "")
+
+    def deflected(self) -> Picture:
+        """The displaced frame, its displacements drawn many times their size."""
+        sketch = Sketch(self.frame)
+        moves = self.answer.cases[self.name].joints[:, :2]
+        across = self.along[:, ACROSS]
+        most = float(np.abs(np.nan_to_num(np.concatenate([moves.ravel(), across]))).max(initial=0.0))
+        times = 1.8 * sketch.unit / most if most > 0 else 1.0
+        sketch.lines(sketch.xy[sketch.table.ends], 0.7, (0, (1, 2)), GREY)
+        sketch.supports()
+        sketch.lines([self._shape(sketch, m, moves, across, times) for m in range(len(self.frame.members))], 1.4)
+        claimed: dict[str, Floats] = {}
+        for v in self.values:
+            if v.kind == "displacement" and v.quantity in ("dx", "dy"):
+                claimed.setdefault(str(v.joint), np.full(2, np.nan))[int(v.quantity == "dy")] = v.value
+        for joint, move in claimed.items():
+            k = self.frame.joint_index[joint]
+            sketch.square(sketch.xy[k] + times * np.where(np.isfinite(move), move, np.nan_to_num(moves[k])))
+        rest = _ring(sketch, [(k, d) for k, d in self.marked if d.place.of == "joints"])
+        text = f"Deflected shape of {self.name}, displacements {times:,.3g} times their size, by {self.answer.opinion}."
+        if self.values:
+            text += " Squares: joints where the claim puts them." if claimed else " The claim gives no displacements."
+        return Picture(sketch.figure, text + (f" {words.counted(rest, 'further place')} not ringed." if rest else ""),
+                       f"Deflected shape of {self.name}")  # fmt: skip
+
+    def _shape(self, sketch: Sketch, m: int, moves: Floats, across: Floats, times: float) -> Floats:
+        """(n, 2) of a member: across as the opinion gives it, along it in proportion between its ends."""
+        t = self.frame.member_table
+        part = slice(int(self.start[m]), int(self.start[m + 1]))
+        x, own = self.x[part], across[part]
+        ends = np.nan_to_num(moves[t.ends[m]])
+        along = ends @ np.array([t.cos[m], t.sin[m]])
+        side = ends @ np.array([-t.sin[m], t.cos[m]])
+        straight = side[0] + (side[1] - side[0]) * x / t.length[m]
+        own = np.where(np.isfinite(own), own, straight)
+        # A case whose stations were left out by the opinion is drawn straight between its joints.
+        return sketch.along(m, x + times * (along[0] + (along[1] - along[0]) * x / t.length[m]), times * own)
+
+
+def _ring(sketch: Sketch, marked: Sequence[tuple[int, Difference]]) -> int:
+    """Ring the places of numbered differences, one ring a place; returns how many found no room."""
+    frame = sketch.frame
+    taken: list[Floats] = []
+    left = 0
+    for number, d in marked:
+        p = d.place
+        if p.member:
+            m = frame.member_index[p.member]
+            length = float(frame.member_table.length[m])
+            inset = min(1.6 * sketch.unit, 0.3 * length)
+            x = p.at if p.at is not None else length / 2
+            if p.joint:
+                x = inset if frame.members[p.member].joint_from == p.joint else length - inset
+            at = sketch.along(m, x, -0.95 * sketch.unit)
+        elif p.joint:
+            beside = (-1.3, 0.9) if p.of == "joints" else (1.7, -1.5)
+            at = sketch.xy[frame.joint_index[p.joint]] + sketch.unit * np.array(beside)
+        else:
+            continue
+        apart = [float(np.hypot(*(at - other))) for other in taken]
+        if any(d < 0.1 * sketch.unit for d in apart):
+            continue  # the place has its ring
+        if any(d < 1.3 * sketch.unit for d in apart) or len(taken) >= NUMBERED:
+            left += 1
+            continue
+        taken.append(at)
+        sketch.number(at, number)
+    return left

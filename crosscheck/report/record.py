@@ -1,0 +1,514 @@
+"""The check record: what a reviewer reads, signs off against and files, as plain content before it is a page.
+
+Sections of facts, sentences, tables, pictures and verbatim text, in the order a reviewer asks for them. The HTML page
+and the PDF are set from the same content; nothing here computes.
+"""
+
+from __future__ import annotations
+
+import datetime
+import hashlib
+import tomllib
+from collections import Counter
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field
+from functools import cached_property
+from itertools import combinations
+from pathlib import Path
+
+import numpy as np
+
+from crosscheck import __version__
+from crosscheck.answer import Answer
+from crosscheck.check import OPINIONS, CaseAudit, Opinions, Verification
+from crosscheck.claims.reading import Reading
+from crosscheck.compare.differences import Difference
+from crosscheck.frame.model import Frame
+from crosscheck.log import Entry
+from crosscheck.problems import Problem, UnusableInput, nearest
+from crosscheck.report import terminal, words
+from crosscheck.report.pictures import CasePictures, Picture, frame_picture, loads_picture
+from crosscheck.review.finding import Finding
+
+MOST_ROWS = 6000
+"""Rows of result tables in one record; the JSON document has them all."""
+MOST_PICTURED = 6
+"""Cases with pictures in one record."""
+SHARED = {
+    ("slope-deflection", "moment-distribution"):
+        "the frame file and its reader; directions and places of loads; the list of what is a mechanism or undetermined; "
+        "numpy, scipy's sparse factorisation",
+    ("slope-deflection", "library"):
+        "the frame file and its reader; directions and places of loads; the list of what is undetermined; numpy",
+    ("moment-distribution", "library"):
+        "the frame file and its reader; directions and places of loads; the list of what is undetermined; numpy",
+}  # fmt: skip
+"""What each pair of opinions still shares (README, What the opinions share)."""
+ABOUT = {
+    "job": "Job",
+    "calculation": "Calculation number",
+    "revision": "Revision",
+    "originator": "Originator",
+    "drawings": "Drawings and their revisions",
+    "program": "The other program",
+    "program_version": "Its version",
+    "remarks": "Remarks",
+}
+"""Free text about the check: key of `--about` and what it stands for."""
+MARK = "\u2610"  # an empty box, to be ticked by hand
+
+
+# --- content
+
+
+@dataclass(frozen=True, slots=True)
+class Facts:
+    """Label and text, side by side."""
+
+    rows: tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Says:
+    """Sentences, one a line."""
+
+    lines: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Grid:
+    """A table: columns as (head, "left" or "right"). `blank`: columns to be filled in by hand."""
+
+    caption: str
+    columns: tuple[tuple[str, str], ...]
+    rows: tuple[tuple[str, ...], ...]
+    blank: tuple[int, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Verbatim:
+    """A text as it stands, line by line."""
+
+    title: str
+    lines: tuple[str, ...]
+
+
+Block = Facts | Says | Grid | Picture | Verbatim
+
+
+@dataclass(frozen=True, slots=True)
+class Section:
+    title: str
+    blocks: tuple[Block, ...]
+
+
+@dataclass(frozen=True, eq=False)
+class Record:
+    """A whole record. verdict: one word; sentence: what it means; open: why it is not for acceptance, empty where it is.
+
+    links: text of a table's cell to the address of the record that it stands for.
+    """
+
+    title: str
+    subject: str
+    verdict: str
+    sentence: str
+    open: tuple[str, ...]
+    sections: tuple[Section, ...]
+    when: str
+    links: Mapping[str, str] = field(default_factory=dict)
+
+    def link(self, text: str) -> str:
+        """Where a cell of a table leads to, "" for nowhere."""
+        return self.links.get(text, "")
+
+    @cached_property
+    def checksum(self) -> str:
+        """sha256 of all its words and numbers, the same in every form it is written in."""
+        said = repr((self.title, self.subject, self.verdict, self.sentence, self.open, self.when))
+        said += "".join(repr((s.title, [_words(b) for b in s.blocks])) for s in self.sections)
+        return hashlib.sha256(said.encode("utf-8", "backslashreplace")).hexdigest()
+
+
+def _words(block: Block) -> str:
+    return block.caption if isinstance(block, Picture) else repr(block)
+
+
+@dataclass(frozen=True, slots=True)
+class Circumstances:
+    """What the findings do not hold: how, when and for whom the check was made.
+
+    findings: what the review of the model says. history: the check log, this check last.
+    """
+
+    command: str = ""
+    when: datetime.datetime = field(default_factory=lambda: datetime.datetime.now(datetime.UTC))
+    about: Mapping[str, str] = field(default_factory=dict)
+    findings: tuple[Finding, ...] = ()
+    history: tuple[Entry, ...] = ()
+    reading: Reading | None = None
+
+
+def read_about(given: Iterable[str]) -> dict[str, str]:
+    """Free text from `--about`: each either KEY=TEXT or a TOML file of such keys. Raises UnusableInput."""
+    about: dict[str, str] = {}
+    problems = []
+    for item in given:
+        key, equals, text = item.partition("=")
+        pairs = [(key.strip(), text.strip())] if equals and key.strip() in ABOUT else list(_about_file(item).items())
+        for name, value in pairs:
+            if name in ABOUT:
+                about[name] = str(value)
+            else:
+                advice = nearest(name, ABOUT) or f"known: {', '.join(ABOUT)}"
+                problems.append(Problem(item, None, name, "is nothing that a record says about itself", advice))
+    if problems:
+        raise UnusableInput(problems)
+    return about
+
+
+def _about_file(path: str) -> dict[str, object]:
+    try:
+        return tomllib.loads(Path(path).read_text(encoding="utf-8-sig"))
+    except (OSError, ValueError) as error:
+        advice = f"KEY=TEXT, or a TOML file with keys {', '.join(ABOUT)}"
+        raise UnusableInput([Problem(path, None, "--about", f"cannot be read ({error})", advice)]) from None
+
+
+# --- records
+
+
+def verify_record(result: Verification, around: Circumstances) -> Record:
+    """The record of `crosscheck verify`."""
+    opinions = result.opinions
+    frame = opinions.frame
+    names = [n for n in result.closed.cases if n in opinions.names]
+    numbered = _numbered(d for c in result.cases for d in c.differences)
+    sections = [
+        _checked(frame, terminal.claim_facts(result), around),
+        _drawing(frame, numbered),
+        _suspects(result),
+        _differences(frame, numbered, "Differences between the claim and the opinions", claim=True),
+        _differences(frame, _own_differences(opinions), "Differences between the opinions", claim=False),
+        Section("Audit of the claim", tuple(b for audit in result.audits for b in _audit(frame, audit))),
+        *(_case(opinions, name, result, numbered) for name in names[:MOST_PICTURED]),
+        *_tables(opinions, names),
+        Section("Not compared", (Says(tuple(terminal.not_compared_lines(result)) or ("Nothing was left out.",)),)),
+        *_closing(opinions, around, numbered),
+    ]
+    sentence = " ".join([terminal.claim_sentence(result), *map(_sentence, terminal.beside(result))])
+    questions = [*result.undecided, *frame.warnings]
+    return _record(
+        "Check record", frame, result.verdict, sentence, _open(result.verdict, around, questions), sections, around
+    )
+
+
+def opinions_record(result: Opinions, around: Circumstances) -> Record:
+    """The record of `crosscheck opinions`."""
+    frame = result.frame
+    numbered = _own_differences(result)
+    sections = [
+        _checked(frame, terminal.opinions_facts(result), around),
+        _drawing(frame, numbered),
+        _differences(frame, numbered, "Differences between the opinions", claim=False),
+        *(_case(result, name, None, numbered) for name in result.names[:MOST_PICTURED]),
+        *_tables(result, list(result.names)),
+        Section("Not compared", (Says(tuple(terminal.undetermined_lines(result)) or ("Nothing was left out.",)),)),
+        *_closing(result, around, numbered),
+    ]
+    return _record(
+        "Record of opinions", frame, result.verdict, terminal.opinions_sentence(result),
+        _open(result.verdict, around, frame.warnings), sections, around,
+    )  # fmt: skip
+
+
+def _record(
+    title: str, frame: Frame, verdict: str, sentence: str, still: tuple[str, ...], sections: Iterable[Section],
+    around: Circumstances,
+) -> Record:  # fmt: skip
+    kept = tuple(s for s in sections if s.blocks)
+    return Record(title, frame.title or frame.file, verdict, sentence, still, kept, _moment(around.when))
+
+
+def _moment(when: datetime.datetime) -> str:
+    return f"{when:%Y-%m-%d %H:%M} UTC"
+
+
+def _sentence(text: str) -> str:
+    return f"{text[:1].upper()}{text[1:]}{'' if text.endswith('.') else '.'}"
+
+
+def _open(verdict: str, around: Circumstances, questions: Sequence[str]) -> tuple[str, ...]:
+    """Why the record is not for acceptance: a verdict other than agree, a serious finding, a question left open."""
+    reasons = [] if verdict == "agree" else [f"the verdict is {verdict}"]
+    serious = sum(f.grade == "serious" for f in around.findings)
+    reasons += [words.counted(serious, "serious finding in the model", "serious findings in the model")] if serious else []
+    return (*reasons, *(questions if verdict != "agree" else ()))
+
+
+def _numbered(differences: Iterable[Difference]) -> list[tuple[int, Difference]]:
+    return list(enumerate(differences, 1))
+
+
+def _own_differences(result: Opinions) -> list[tuple[int, Difference]]:
+    return _numbered(d for j in result.judgements.values() for d in j.differences)
+
+
+# --- sections
+
+
+def _checked(frame: Frame, facts: Sequence[tuple[str, str]], around: Circumstances) -> Section:
+    """What was checked, against what, by which methods and to which tolerance."""
+    rows = [(label, around.about[key]) for key, label in ABOUT.items() if around.about.get(key)]
+    rows += [*facts, ("frame sha256", frame.sha256)]
+    if around.reading is not None:
+        rows.append(("claim sha256", around.reading.sha256))
+    versions = f"crosscheck {__version__}, numpy {np.__version__}, {_version('scipy')}, {_version('anastruct')}"
+    rows += [("versions", versions), ("date", _moment(around.when))]
+    rows += [("command", around.command)] if around.command else []
+    blocks: list[Block] = [Facts(tuple(rows))]
+    notes = [f"Note: {w}" for w in frame.warnings]
+    return Section("What was checked", (*blocks, *([Says(tuple(notes))] if notes else [])))
+
+
+def _version(package: str) -> str:
+    from importlib.metadata import version
+
+    return f"{package} {version(package)}"
+
+
+def _drawing(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Section:
+    named = [n for _, d in numbered for n in (d.place.member, d.place.joint) if n]
+    return Section("The frame", (frame_picture(frame, numbered, named),))
+
+
+def _suspects(result: Verification) -> Section:
+    if not result.suspects:
+        return Section("Suspects", (Says((_sentence(result.no_suspects),)),) if result.no_suspects else ())
+    rows = [
+        (str(k), s.kind, words.some(s.where) or "-", s.says, f"{100 * s.explains:.4g}%", "yes" if s.fits else "no")
+        for k, s in enumerate(result.suspects, 1)
+    ]
+    columns = (("no.", "right"), ("kind", "left"), ("where", "left"), ("what would explain it", "left"),
+               ("explains", "right"), ("to the printed rounding", "left"))  # fmt: skip
+    caption = "Single mistakes that would explain the difference, best first. Each is a hypothesis, not a finding."
+    ties = [f"Suspect {k} ties with: {tie}" for k, s in enumerate(result.suspects[:1], 1) for tie in s.tied_with]
+    return Section("Suspects", (Grid(caption, columns, tuple(rows)), *([Says(tuple(ties))] if ties else [])))
+
+
+def _differences(frame: Frame, numbered: Sequence[tuple[int, Difference]], title: str, claim: bool) -> Section:
+    if not numbered:
+        return Section(title, (Says(("None.",)),) if claim else ())
+    return Section(title, (_claim_grid(frame, numbered) if claim else _own_grid(numbered),))
+
+
+def _claim_grid(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Grid:
+    rows = []
+    for k, d in numbered:
+        claim, ours = d.values.get("claim"), words.opinions_value(d)
+        side = "low" if d.unsafe else "high"
+        rows.append((
+            str(k), d.place.case, words.place(d.place), f"{d.place.quantity}, {words.unit_of(frame, d.place.quantity)}",
+            terminal.with_face(frame, d, claim, ours), terminal.with_face(frame, d, ours, claim),
+            words.short(d.difference), words.short(d.allowed), d.note or side, str(d.line or ""), "",
+        ))  # fmt: skip
+    columns = (("no.", "right"), ("case", "left"), ("place", "left"), ("quantity", "left"), ("claim", "right"),
+               ("opinions", "right"), ("differ by", "right"), ("allowed", "right"), ("claim is", "left"),
+               ("line", "right"), ("disposition, initials", "left"))  # fmt: skip
+    caption = "Unsafe side first, then worst first; in the frame's units and signs. Line: of the claim."
+    return Grid(caption, columns, tuple(rows), (10,))
+
+
+def _own_grid(numbered: Sequence[tuple[int, Difference]]) -> Grid:
+    names = [n for n in OPINIONS if any(n in d.values for _, d in numbered)]
+    rows = tuple(
+        (str(k), d.place.case, words.place(d.place), d.place.quantity, *(words.number(d.values.get(n)) for n in names),
+         words.short(d.difference), words.short(d.allowed), "")
+        for k, d in numbered
+    )  # fmt: skip
+    columns = (("no.", "right"), ("case", "left"), ("place", "left"), ("quantity", "left"), *((n, "right") for n in names),
+               ("differ by", "right"), ("allowed", "right"), ("disposition, initials", "left"))  # fmt: skip
+    return Grid("Worst first.", columns, rows, (len(columns) - 1,))
+
+
+def _audit(frame: Frame, audit: CaseAudit) -> list[Block]:
+    """Statics and compatibility of one case: what held in a sentence, what failed in a table."""
+    judged = [s for s in audit.statics if s.ok is not None]
+    failing = sorted((s for s in judged if not s.ok), key=lambda s: -abs(s.residual) / (s.allowed or 1.0))
+    held = f"{len(judged) - len(failing):,} of {words.counted(len(judged), 'balance')} hold to the printed rounding"
+    left = len(audit.statics) - len(judged)
+    lines = [f"Statics, {audit.case}: {held}" + (f"; {left:,} could not be judged" if left else "") + "."]
+    blocks: list[Block] = [Says(tuple(lines))]
+    if failing:
+        rows = tuple(
+            (s.check, s.where or "whole frame", s.component, words.short(s.residual), words.short(s.allowed),
+             words.unit_of(frame, "moment" if s.component == "moment" else "fx"))
+            for s in failing
+        )  # fmt: skip
+        columns = (("balance", "left"), ("where", "left"), ("of", "left"), ("left over", "right"), ("allowed", "right"),
+                   ("unit", "left"))  # fmt: skip
+        blocks.append(Grid(f"Balances of {audit.case} that fail, worst first.", columns, rows))
+    return blocks + _compatibility(frame, audit)
+
+
+def _compatibility(frame: Frame, audit: CaseAudit) -> list[Block]:
+    found = audit.compatibility
+    if found is None:
+        return [Says((f"Compatibility, {audit.case}: not judged.",))]
+    lines = [f"Compatibility, {audit.case}: {found.says}", *(f"Not judged: {line}" for line in found.not_judged)]
+    lines += [terminal.bound_words(frame, audit.bound)] if audit.bound is not None else []
+    blocks: list[Block] = [Says(tuple(map(_sentence, lines)))]
+    failing = [c for c in found.checks if not c.ok]
+    failing.sort(key=lambda c: -abs(c.rotation - c.expected) / (c.allowed or 1.0))
+    if failing:
+        rows = tuple(
+            (c.kind, c.member or c.where, c.where if c.member else c.direction, words.short(c.rotation),
+             words.short(c.rotation - c.expected), words.short(c.allowed), terminal.deformation_unit(frame, c))
+            for c in failing
+        )  # fmt: skip
+        columns = (("what", "left"), ("of", "left"), ("at", "left"), ("by the claim", "right"), ("misfit", "right"),
+                   ("allowed", "right"), ("unit", "left"))  # fmt: skip
+        blocks.append(Grid(f"Deformations of {audit.case} that do not fit together, worst first.", columns, rows))
+    return blocks
+
+
+def _case(
+    opinions: Opinions, name: str, result: Verification | None, numbered: Sequence[tuple[int, Difference]]
+) -> Section:
+    """Pictures of one case."""
+    answer = _speaker(opinions, name)
+    if answer is None:
+        return Section(f"Pictures: {name}", (Says((f"No opinion speaks for {name}.",)),))
+    values = [v for v in result.closed.values if v.case == name] if result else []
+    marked = [(k, d) for k, d in numbered if d.place.case == name]
+    drawn = CasePictures(opinions.frame, answer, name, values, marked).all()
+    return Section(f"Pictures: {name}", (loads_picture(opinions.frame, name), *drawn))
+
+
+def _speaker(opinions: Opinions, name: str) -> Answer | None:
+    return next((a for a in opinions.answers.values() if name in a.cases), None)
+
+
+def _tables(opinions: Opinions, names: Sequence[str]) -> list[Section]:
+    """Results by case, as many as there is room for."""
+    frame = opinions.frame
+    each = 2 * len(frame.members) + len(frame.joints) + len(frame.supports)
+    room = max(1, MOST_ROWS // max(each, 1))
+    sections = [Section(f"Results: {n}", tuple(_results(opinions, n))) for n in names[:room]]
+    left = [f"Pictures of {words.some(names[MOST_PICTURED:])} are left out."] if len(names) > MOST_PICTURED else []
+    left += [f"Results of {words.some(names[room:])} are left out; --json gives them."] if len(names) > room else []
+    return [*sections, *([Section("Left out of this record", (Says(tuple(left)),))] if left else [])]
+
+
+def _results(opinions: Opinions, name: str) -> list[Block]:
+    answer = _speaker(opinions, name)
+    if answer is None:
+        return []
+    frame, case = opinions.frame, answer.cases[name]
+    whose = "as agreed" if opinions.judgements[name].verdict == "agree" else f"by {answer.opinion}"
+    scale = [_largest(case.ends[:, :, k]) for k in range(3)]
+    ends = tuple(
+        (m.name, joint, *(words.number(float(case.ends[k, end, c]), scale[c]) for c in range(3)),
+         words.end_face(frame, m.name, joint, float(case.ends[k, end, 2]), scale[2]))
+        for k, m in enumerate(frame.members.values())
+        for end, joint in ((0, m.joint_from), (1, m.joint_to))
+    )  # fmt: skip
+    move = [_largest(case.joints[:, c]) for c in range(3)]
+    pull = [_largest(case.reactions[:, :2])] * 2 + [_largest(case.reactions[:, 2])]
+    joints = tuple((j, *_numbers(case.joints[k], move)) for k, j in enumerate(frame.joints))
+    supports = tuple((j, *_numbers(case.reactions[frame.joint_index[j]], pull)) for j in frame.supports)
+    return [
+        Grid(f"End actions {whose}: axial tension positive, shear along local y, moment clockwise.",
+             (("member", "left"), ("at", "left"), *_heads(frame, ("axial", "shear", "moment")), ("tension", "left")), ends),
+        Grid("Displacements.", (("joint", "left"), *_heads(frame, ("dx", "dy", "rotation"))), joints),
+        Grid("Reactions on the frame.", (("support", "left"), *_heads(frame, ("fx", "fy", "moment"))), supports),
+    ]  # fmt: skip
+
+
+def _numbers(row: np.ndarray, scale: Sequence[float]) -> list[str]:
+    return [words.number(float(v), s) for v, s in zip(row, scale, strict=True)]
+
+
+def _heads(frame: Frame, quantities: Iterable[str]) -> list[tuple[str, str]]:
+    return [(f"{q}, {words.unit_of(frame, q)}", "right") for q in quantities]
+
+
+def _largest(values: np.ndarray) -> float:
+    finite = np.abs(values[np.isfinite(values)])
+    return float(finite.max(initial=0.0))
+
+
+def _closing(
+    opinions: Opinions, around: Circumstances, numbered: Sequence[tuple[int, Difference]]
+) -> list[Section]:
+    """Independence, the model's review, the log, cautions, sign-off and the texts themselves."""
+    spoke = [n for n in OPINIONS if n in opinions.answers]
+    pairs = tuple((f"{a}, {b}", SHARED[a, b]) for a, b in combinations(spoke, 2))
+    caption = "Opinions that share an error agree in it. What each pair shares:"
+    shares = Grid(caption, (("pair", "left"), ("shares", "left")), pairs)
+    return [
+        Section("Independence", (shares,) if pairs else (Says(("One opinion alone spoke.",)),)),
+        review_section(around.findings),
+        log_section(around.history),
+        Section("Cautions", (Says((*words.CAUTIONS, "A suspect is a hypothesis; several mistakes may look like one.")),)),
+        sign_off(len(numbered), around.findings),
+        verbatim(opinions.frame, around.reading),
+    ]
+
+
+def review_section(findings: Sequence[Finding]) -> Section:
+    """What `inspect` says of the model, each finding with room for what becomes of it."""
+    rows = tuple((f.grade, words.some(f.where) or "frame", f.says, "") for f in findings)
+    columns = (("grade", "left"), ("where", "left"), ("finding", "left"), ("disposition, initials", "left"))
+    counts = Counter(f.grade for f in findings)
+    caption = ", ".join(f"{counts[g]:,} {g}" for g in ("serious", "check", "note"))
+    return Section("Review of the model", (Grid(f"Before any results: {caption}.", columns, rows, (3,)),) if rows else ())
+
+
+def log_section(history: Sequence[Entry]) -> Section:
+    """Every earlier check of this frame, so that one tuned until it agreed can be seen."""
+    rows = tuple(
+        (e.when, e.claim or "-", e.claim_sha256[:12], e.frame_sha256[:12], e.settings, e.verdict, e.reason or "-")
+        for e in history
+    )
+    columns = (("when", "left"), ("claim", "left"), ("claim sha256", "left"), ("frame sha256", "left"),
+               ("settings", "left"), ("verdict", "left"), ("reason for a change", "left"))  # fmt: skip
+    caption = f"{words.counted(len(rows), 'check')} with a record, this one last."
+    return Section("Log of checks", (Grid(caption, columns, rows),) if rows else ())
+
+
+def sign_off(differences: int, findings: Sequence[Finding]) -> Section:
+    """Room for the checker, the reviewer and what they decide."""
+    open_ = differences + sum(f.grade != "note" for f in findings)
+    people = Grid("", (("", "left"), ("name", "left"), ("signature", "left"), ("date", "left"), ("remarks", "left")),
+                  tuple((who, "", "", "", "") for who in ("Checker", "Reviewer")), (1, 2, 3, 4))  # fmt: skip
+    choices = tuple(f"{MARK} {text}" for text in (
+        "accepted as it stands", "accepted with the dispositions noted", "returned: claim to be corrected",
+        "returned: frame file to be corrected",
+    ))  # fmt: skip
+    what = words.counted(open_, "difference or finding", "differences and findings")
+    says = f"{what} to be disposed of and initialled above."
+    return Section("Sign-off", (people, Says(choices), Says((says,) if open_ else ())))
+
+
+def verbatim(frame: Frame, reading: Reading | None) -> Section:
+    """The frame file, the tables beside it and the claim, as they were read."""
+    blocks = [Verbatim(f"Frame: {frame.file or 'text'}", _file_lines(Path(frame.file), frame.sha256))] if frame.file else []
+    if frame.file:
+        from crosscheck.frame.reader import sources
+
+        blocks += [Verbatim(f"Beside it: {p.name}", _file_lines(p)) for p in sources(Path(frame.file))[1:]]
+    if reading is not None:
+        title = f"Claim: {reading.file or 'text'}"
+        blocks.append(Verbatim(title, tuple(t.text.rstrip("\r\n") for t in reading.trace)))
+    return Section("Frame and claim, verbatim", tuple(blocks))
+
+
+def _file_lines(path: Path, sha256: str = "") -> tuple[str, ...]:
+    try:
+        data = path.read_bytes()
+    except OSError as error:
+        return (f"(cannot be read any more: {error.strerror})",)
+    changed = sha256 and hashlib.sha256(data).hexdigest() != sha256
+    note = ["(the file has changed since it was read)"] if changed else []
+    return (*note, *data.decode("utf-8-sig", "replace").splitlines())

@@ -1,0 +1,361 @@
+"""Drawings of a frame by matplotlib, in ink alone: members, supports, hinges, loads, names and dimensions.
+
+Nothing here relies on colour: what must stand apart differs in line, in shape or by a number in a ring. Sizes of signs
+are in `unit`, about the height of two letters in the frame's own length, so that a drawing looks alike at any scale.
+"""
+
+from __future__ import annotations
+
+import io
+import math
+import re
+import warnings
+from collections.abc import Iterable, Sequence
+from typing import Any
+
+import matplotlib
+import numpy as np
+from matplotlib.figure import Figure
+from matplotlib.patches import Circle, PathPatch, Polygon
+from matplotlib.path import Path
+
+from crosscheck.frame.loads import LoadTable
+from crosscheck.frame.model import FREE, HELD, Floats, Frame, Support
+from crosscheck.report import words
+
+WIDTH = 7.1
+"""Inches: the text width of A4 and Letter with their usual margins."""
+LEAST, MOST = 1.9, 6.6
+"""Heights of a drawing in inches."""
+INK, GREY = "#111111", "#595959"
+NAMED = 60
+"""Most members whose names stand in a drawing; beyond that only marked places are named."""
+DIMENSIONED = 12
+"""Most distances in one chain of dimensions."""
+
+
+class Sketch:
+    """A drawing of one frame on its own figure. `loose`: room around it, in units."""
+
+    def __init__(self, frame: Frame, room: tuple[float, float, float, float] = (3.0, 3.0, 3.0, 3.0)) -> None:
+        self.frame, self.xy, self.table = frame, frame.xy, frame.member_table
+        low, high = self.xy.min(axis=0), self.xy.max(axis=0)
+        size = np.maximum(high - low, 1e-9 * max(float(np.ptp(self.xy)), 1.0))
+        # 30 units go into the width of the page, or 26 into the greatest height, whichever is tighter.
+        left, right, below, above = room
+        self.unit = max(size[0] / (34 - left - right), size[1] / (31 - below - above), 1e-12)
+        self.low = low - self.unit * np.array([left, below])
+        self.high = high + self.unit * np.array([right, above])
+        span = self.high - self.low
+        height = min(max(WIDTH * span[1] / span[0], LEAST), MOST)
+        self._tips: list[Floats] = []
+        self.figure = Figure(figsize=(WIDTH, height))
+        self.axes = self.figure.add_axes((0.0, 0.0, 1.0, 1.0))
+        self.axes.set_axis_off()
+        self.axes.set_aspect("equal")
+        self.axes.set_xlim(self.low[0], self.high[0])
+        self.axes.set_ylim(self.low[1], self.high[1])
+
+    # --- ink
+
+    def lines(self, paths: Iterable[Any], width: float = 0.8, style: Any = "solid", ink: str = INK) -> None:
+        # One path for them all: a picture of 400 members stays small.
+        drawn = [Path(np.asarray(p, dtype=float)) for p in paths]
+        if drawn:
+            self._ink(Path.make_compound_path(*drawn), "none", ink, width, style)
+
+    def heads(self, ink: str = INK) -> None:
+        """The arrow heads gathered so far."""
+        if self._tips:
+            self._ink(Path.make_compound_path(*(Path(tip, closed=True) for tip in self._tips)), ink, ink, 0.2)
+            self._tips.clear()
+
+    def _ink(self, path: Path, fill: str, ink: str, width: float, style: Any = "solid") -> None:
+        self.axes.add_patch(PathPatch(path, facecolor=fill, edgecolor=ink, linewidth=width, linestyle=style,
+                                      clip_on=False, capstyle="butt", joinstyle="round"))  # fmt: skip
+
+    def area(self, corners: Any, fill: str = "none", ink: str = INK, width: float = 0.6) -> None:
+        self.axes.add_patch(Polygon(np.asarray(corners), closed=True, facecolor=fill, edgecolor=ink, linewidth=width,
+                                    clip_on=False))  # fmt: skip
+
+    def ring(self, at: Any, radius: float, fill: str = "white", width: float = 0.8) -> None:
+        self.axes.add_patch(Circle((float(at[0]), float(at[1])), radius * self.unit, facecolor=fill, edgecolor=INK,
+                                   linewidth=width, clip_on=False, zorder=3))  # fmt: skip
+
+    def square(self, at: Any, half: float = 0.22) -> None:
+        x, y = float(at[0]), float(at[1])
+        h = half * self.unit
+        self.axes.add_patch(Polygon([(x - h, y - h), (x + h, y - h), (x + h, y + h), (x - h, y + h)], closed=True,
+                                    facecolor="white", edgecolor=INK, linewidth=0.8, clip_on=False, zorder=3))  # fmt: skip
+
+    def text(self, at: Any, says: str, size: float = 7.5, turn: float = 0.0, across: str = "center",
+             up: str = "center", ink: str = INK, weight: str = "normal", slant: str = "normal") -> None:  # fmt: skip
+        self.axes.text(float(at[0]), float(at[1]), words.visible(says, 28), fontsize=size, rotation=turn, ha=across,
+                       va=up, color=ink, parse_math=False, fontweight=weight, fontstyle=slant,
+                       rotation_mode="anchor", zorder=4)  # fmt: skip
+
+    def number(self, at: Any, count: int) -> None:
+        """A ringed number that stands in a table too."""
+        self.ring(at, 0.62, width=1.1)
+        self.text(at, str(count), 7.0, up="center_baseline", weight="bold")
+
+    # --- the frame
+
+    def along(self, m: int, x: Floats | float, offset: Floats | float = 0.0) -> Floats:
+        """(n, 2) places at distances x along member m, moved `offset` along local y."""
+        t = self.table
+        start = self.xy[t.ends[m, 0]]
+        x, offset = np.broadcast_arrays(np.asarray(x, dtype=float), np.asarray(offset, dtype=float))
+        return np.stack([start[0] + x * t.cos[m] - offset * t.sin[m], start[1] + x * t.sin[m] + offset * t.cos[m]],
+                        axis=-1)  # fmt: skip
+
+    def members(self, width: float = 1.6, ink: str = INK) -> None:
+        self.lines(self.xy[self.table.ends], width, ink=ink)
+        zones = [self.along(m, np.array([0.0, z[0]])) for m, z in enumerate(self.table.zone) if z[0] > 0]
+        zones += [self.along(m, np.array([self.table.length[m] - z[1], self.table.length[m]]))
+                  for m, z in enumerate(self.table.zone) if z[1] > 0]  # fmt: skip
+        if zones:
+            self.lines(zones, 2.6 * width, ink=ink)
+
+    def connections(self) -> None:
+        """Hinges as open rings near their joint, semi-rigid ends as rings with a bar through them."""
+        t = self.table
+        for m, end in np.argwhere(np.isfinite(t.turn)).tolist():
+            away = t.zone[m, end] + min(0.45 * self.unit, 0.2 * t.clear[m])
+            at = self.along(m, away if end == 0 else t.length[m] - away)
+            self.ring(at, 0.2)
+            if t.turn[m, end] != FREE:
+                across = 0.36 * self.unit * np.array([-t.sin[m], t.cos[m]])
+                self.lines([[at - across, at + across]], 1.0)
+
+    def supports(self) -> None:
+        for support in self.frame.supports.values():
+            self._support(support)
+
+    def _support(self, s: Support) -> None:
+        k = self.frame.joint_index[s.joint]
+        turn = math.radians(s.angle)
+        own = np.array([[math.cos(turn), math.sin(turn)], [-math.sin(turn), math.cos(turn)]])
+        away = self._outward(k)
+        held = s.x, s.y, s.rotation
+        if held[2] == HELD and HELD in held[:2]:
+            out = self._snapped(away)
+            self._wall(self.xy[k], out, 1.1)
+        elif held[0] != FREE and held[1] != FREE:
+            self._foot(self.xy[k], -own[1] if away @ -own[1] > -0.5 else own[1], rolls=False)
+        else:
+            for axis in (0, 1):
+                if held[axis] != FREE:
+                    self._foot(self.xy[k], -own[axis] if away @ -own[axis] > -0.5 else own[axis], rolls=True)
+        for axis, name in enumerate(("x", "y", "turn")):
+            if held[axis] not in (HELD, FREE):
+                out = self._snapped(away)
+                self.text(self.xy[k] + self.unit * (1.5 + 0.8 * axis) * out, f"spring {name}", 6.5, slant="italic")
+
+    def _outward(self, k: int) -> Floats:
+        """A unit vector away from the members at a joint; down where they leave no side free."""
+        ends = self.table.ends
+        others = np.concatenate([self.xy[ends[ends[:, 0] == k, 1]], self.xy[ends[ends[:, 1] == k, 0]]])
+        if not len(others):
+            return np.array([0.0, -1.0])
+        run = others - self.xy[k]
+        mean = (run / np.linalg.norm(run, axis=1)[:, None]).mean(axis=0)
+        size = float(np.linalg.norm(mean))
+        return -mean / size if size > 0.2 else np.array([0.0, -1.0])
+
+    @staticmethod
+    def _snapped(v: Floats) -> Floats:
+        return np.array([0.0, math.copysign(1.0, v[1])]) if abs(v[1]) >= 0.6 else np.array([math.copysign(1.0, v[0]), 0.0])
+
+    def _wall(self, at: Floats, out: Floats, half: float) -> None:
+        side = np.array([-out[1], out[0]])
+        u = self.unit
+        self.lines([[at - half * u * side, at + half * u * side]], 1.4)
+        ticks = [at + u * (f * side) for f in np.linspace(-half + 0.2, half, 6)]
+        self.lines([[p, p + u * (0.42 * out - 0.3 * side)] for p in ticks], 0.6)
+
+    def _foot(self, at: Floats, out: Floats, rolls: bool) -> None:
+        side, u = np.array([-out[1], out[0]]), self.unit
+        base = at + 0.95 * u * out
+        self.area([at, base - 0.6 * u * side, base + 0.6 * u * side], "white", width=1.0)
+        self._wall(base + (0.28 * u * out if rolls else 0.0), out, 0.9)
+
+    def names(self, marked: Sequence[str] = ()) -> None:
+        """Joints upright beside them, members in italics along them; only what is marked in a large frame."""
+        many = len(self.frame.members) > NAMED
+        for k, joint in enumerate(self.frame.joints):
+            if not many or joint in marked:
+                out = self._free_side(k)
+                if joint in self.frame.supports:  # clear of the support's own sign
+                    out = out + np.array([0.45, 0.55]) * np.sign(out + 1e-9)
+                self.text(self.xy[k] + 0.95 * self.unit * out, joint, 7.5, weight="bold")
+        for m, name in enumerate(self.frame.members):
+            if not many or name in marked:
+                self.beside(m, 0.5, name)
+
+    def beside(self, m: int, share: float, says: str, side: float = 1.0, size: float = 6.8) -> None:
+        """Words along a member, upright for the reader, on its left (or right) hand."""
+        t = self.table
+        turn = math.degrees(math.atan2(t.sin[m], t.cos[m]))
+        at = self.along(m, share * t.length[m], side * 0.5 * self.unit)
+        readable = turn - 180 if turn > 90.001 else turn + 180 if turn <= -90.001 else turn
+        self.text(at, says, size, readable, ink=GREY, slant="italic")
+
+    def _free_side(self, k: int) -> Floats:
+        """The widest gap between the members at a joint, so that its name crosses none."""
+        ends = self.table.ends
+        others = np.concatenate([self.xy[ends[ends[:, 0] == k, 1]], self.xy[ends[ends[:, 1] == k, 0]]]) - self.xy[k]
+        if not len(others):
+            return np.array([0.7, 0.7])
+        angles = np.sort(np.arctan2(others[:, 1], others[:, 0]))
+        if list(self.frame.joints)[k] in self.frame.supports:
+            out = self._snapped(self._outward(k))
+            angles = np.sort(np.append(angles, math.atan2(out[1], out[0])))
+        gaps = np.diff(np.append(angles, angles[0] + 2 * math.pi))
+        best = int(np.argmax(np.round(gaps, 6)))
+        middle = angles[best] + gaps[best] / 2
+        return np.array([math.cos(middle), math.sin(middle)])
+
+    def dimensions(self) -> None:
+        """Chains of distances below and to the left, with slashes for ticks."""
+        for axis in (0, 1):
+            marks = _distinct(self.xy[:, axis], 0.4 * self.unit)
+            if 2 <= len(marks) <= DIMENSIONED + 1:
+                self._chain(marks, axis)
+
+    def _chain(self, marks: Floats, axis: int) -> None:
+        u = self.unit
+        level = self.low[1 - axis] + 0.9 * u
+
+        def place(v: float, off: float = 0.0) -> Floats:
+            return np.array([v, level + off]) if axis == 0 else np.array([level + off, v])
+
+        slash = 0.3 * u * np.array([1.0, 1.0])
+        self.lines([[place(marks[0] - 0.4 * u), place(marks[-1] + 0.4 * u)]], 0.5, ink=GREY)
+        self.lines([[place(v) - slash, place(v) + slash] for v in marks], 0.9)
+        for a, b in zip(marks[:-1], marks[1:], strict=True):
+            off = 0.5 * u if axis == 0 else -0.5 * u
+            self.text(place((a + b) / 2, off), f"{b - a:.4g}", 6.8, 90.0 * axis)
+
+    # --- loads
+
+    def loads(self, table: LoadTable) -> None:
+        """Every load of a case: arrows for forces, bands for spread loads, arcs for couples, words for the rest."""
+        self._bands(table)
+        self._arrows(table)
+        self._imposed(table)
+        self.heads()
+
+    def _bands(self, loads: LoadTable) -> None:
+        t = self.table
+        most = max(float(np.abs(np.hypot(loads.line_along, loads.line_across)).max(initial=0.0)), 1e-300)
+        done: dict[int, float] = {}
+        for q, m in enumerate(loads.line_member.tolist()):
+            along, across = loads.line_along[q], loads.line_across[q]
+            size = np.hypot(along, across)
+            if size.max() <= 1e-9 * most:
+                continue
+            k = int(size.argmax())
+            way = np.array([along[k] * t.cos[m] - across[k] * t.sin[m], along[k] * t.sin[m] + across[k] * t.cos[m]])
+            way /= size[k]
+            base = done.get(m, 0.0)
+            x = np.linspace(loads.line_start[q], loads.line_end[q], 7)
+            share = np.interp(x, x[[0, -1]], size if along @ along[[k, k]] + across @ across[[k, k]] >= 0 else size)
+            tall = self.unit * (0.25 + 0.75 * share / most)
+            lies_along = abs(way[0] * t.cos[m] + way[1] * t.sin[m]) > 0.999
+            foot = self.along(m, x)
+            if lies_along:
+                foot = self.along(m, x, -(base + 0.35 * self.unit))
+                self.lines([[p - 0.4 * self.unit * way, p + 0.1 * self.unit * way] for p in foot], 0.5, ink=GREY)
+            else:
+                foot = foot - (base + 0.12 * self.unit) * way
+                top = foot - tall[:, None] * way
+                self.area([*foot, *top[::-1]], ink=GREY, width=0.5)
+                self.lines(list(zip(top, foot, strict=True)), 0.4, ink=GREY)
+                for p in foot:
+                    self._head(p, way, 0.2)
+            done[m] = base + float(tall.max()) + 0.15 * self.unit
+            ends = [words.number(float(v)) for v in size]
+            self.text(self.along(m, float(x[3 if ends[0] == ends[1] else 2])) - (done[m] + 0.35 * self.unit) * way,
+                      ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}", 6.5)  # fmt: skip
+
+    def _arrows(self, loads: LoadTable) -> None:
+        t = self.table
+        forces = [(self.xy[k], row[:2], row[2]) for k, row in enumerate(loads.joint) if np.any(row)]
+        for p, m in enumerate(loads.point_member.tolist()):
+            a, b = loads.point_along[p], loads.point_across[p]
+            force = np.array([a * t.cos[m] - b * t.sin[m], a * t.sin[m] + b * t.cos[m]])
+            forces.append((self.along(m, float(loads.point_at[p])), force, loads.point_couple[p]))
+        for at, force, couple in forces:
+            size = float(np.hypot(*force))
+            if size > 0:
+                way = force / size
+                tail = at - 2.0 * self.unit * way
+                self.lines([[tail, at]], 1.2)
+                self._head(at, way, 0.45)
+                self.text(tail - 0.45 * self.unit * way, words.number(size), 7.0)
+            if couple:
+                self._arc(at, float(couple))
+
+    def _head(self, tip: Floats, way: Floats, size: float) -> None:
+        side = np.array([-way[1], way[0]])
+        back = tip - size * self.unit * way
+        half = 0.35 * size * self.unit * side
+        self._tips.append(np.array([tip, back + half, back - half, tip]))
+
+    def _arc(self, at: Floats, couple: float) -> None:
+        """Three quarters of a turn, clockwise where positive."""
+        turn = np.radians(np.linspace(225, -45, 25))
+        if couple < 0:
+            turn = math.pi - turn
+        path = at + 0.8 * self.unit * np.column_stack([np.cos(turn), np.sin(turn)])
+        self.lines([path], 1.0)
+        way = (path[-1] - path[-2]) / np.linalg.norm(path[-1] - path[-2])
+        self._head(path[-1] + 0.15 * self.unit * way, way, 0.4)
+        self.text(at + self.unit * np.array([1.2, 1.0]), f"{words.number(abs(couple))}", 7.0)
+
+    def _imposed(self, loads: LoadTable) -> None:
+        for k, row in enumerate(loads.settlement):
+            if np.any(row):
+                parts = [f"{n} {words.number(float(v))}" for n, v in zip(("x", "y", "turn"), row, strict=True) if v]
+                self.text(self.xy[k] + self.unit * np.array([0.0, -2.0]), f"moved {', '.join(parts)}", 6.5)
+        for m in range(len(self.table.length)):
+            said = [f"{sign}{words.number(float(v[m]))}{unit}" for sign, v, unit in (
+                ("T ", loads.mean, "°"), ("ΔT ", loads.difference, "°"), ("long ", loads.misfit, "")) if v[m]]  # fmt: skip
+            if said:
+                self.beside(m, 0.5, ", ".join(said), side=-1.0)
+
+
+def _distinct(values: Floats, near: float) -> Floats:
+    values = np.sort(values)
+    return np.asarray(values[np.concatenate([[True], np.diff(values) > near])])
+
+
+_IDENTITY = re.compile(r' id="(?:figure|axes|patch|text|line2d|LineCollection|matplotlib\.axis|xtick|ytick)_\d+"')
+_NEEDLESS = (
+    re.compile(r"<defs>\s*<style[^>]*>.*?</style>\s*</defs>", re.DOTALL),  # it would speak for the whole page
+    re.compile(r"<!--.*?-->", re.DOTALL),
+    re.compile(r" font-family: [^;\"]*;"),  # the page's own letters
+    re.compile(r"</?g>"),
+    re.compile(r"^\s+", re.MULTILINE),
+)
+_UNSAID = ("Date", "Creator", "Format", "Type")
+_NUMBER = re.compile(r"(\d+\.\d\d)\d+")
+
+
+def svg(figure: Figure, title: str, salt: str) -> str:
+    """The figure as an SVG element to stand in a page: text as text, the same ids for the same picture."""
+    out = io.StringIO()
+    with matplotlib.rc_context({"svg.fonttype": "none", "svg.hashsalt": salt}), warnings.catch_warnings():
+        # Letters that matplotlib's own font lacks are measured roughly; the reader's browser draws them.
+        warnings.filterwarnings("ignore", message="Glyph")
+        figure.savefig(out, format="svg", transparent=True, metadata=dict.fromkeys(_UNSAID))
+    text = out.getvalue()
+    text = _IDENTITY.sub("", text[text.index("<svg") :])
+    for needless in _NEEDLESS:
+        text = needless.sub("", text)
+    text = _NUMBER.sub(r"\1", text)
+    from markupsafe import escape
+
+    head = f'<svg role="img" aria-label="{escape(words.visible(title))}"'
+    return re.sub(r'^<svg[^>]*?( viewBox="[^"]*")[^>]*>', lambda m: f"{head}{m.group(1)}>", text, count=1)
