@@ -138,6 +138,7 @@ def _add_inspect(commands: Any) -> None:
     command.add_argument("--sway", metavar="RATIO", type=float, default=300, help="height over movement (usual: 300)")
     command.add_argument("--deflection", metavar="RATIO", type=float, default=250, help="span over deflection (250)")
     command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
+    _add_report(command)
     command.set_defaults(run=run_inspect)
 
 
@@ -158,6 +159,7 @@ def _add_regress(commands: Any) -> None:
     command.add_argument("--against", metavar="DIR", help="another set's values on record instead: what moved between")
     command.add_argument("--junit", metavar="PATH", help="also write a JUnit XML file")
     command.add_argument("--json", metavar="PATH", help="write the outcome as JSON (- for standard output alone)")
+    _add_report(command)
     command.set_defaults(run=run_regress)
 
 
@@ -280,8 +282,11 @@ def run_inspect(args: argparse.Namespace) -> int:
     from crosscheck.review.finding import Limits
     from crosscheck.review.inspect import inspect, subject_of
 
+    filing = _filing(args)
     subject = subject_of(check.read(args.frame, args.variant), Limits(sway=args.sway, deflection=args.deflection))
     findings = inspect(subject)
+    if filing is not None:
+        filing.inspection(subject, findings)
 
     def document() -> dict[str, Any]:
         from crosscheck.report.review import review_document
@@ -328,6 +333,7 @@ def run_regress(args: argparse.Namespace) -> int:
 
     from crosscheck.suite import regress
 
+    filing = _filing(args)
     roots = [Path(p) for p in args.path] or [Path()]
     frames = regress.chosen(roots, args.only, args.changed_since)
     other = _folder(args.against) if args.against else None
@@ -336,6 +342,8 @@ def run_regress(args: argparse.Namespace) -> int:
     else:
         with _progress(len(frames)) as advance:
             outcome = regress.run(frames, roots, advance)
+    if filing is not None:
+        filing.suite(outcome)
     if args.junit:
         from crosscheck.files import replace_text
         from crosscheck.report.suite import junit

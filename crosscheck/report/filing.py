@@ -19,9 +19,11 @@ from crosscheck.report import words
 
 if TYPE_CHECKING:
     from crosscheck.report.record import Circumstances, Record
-    from crosscheck.review.finding import Finding
+    from crosscheck.review.finding import Finding, Subject
+    from crosscheck.suite.regress import SuiteOutcome
 
-ENDINGS = (".html", ".htm", ".pdf")
+PDF = ".pdf"
+ENDINGS = (".html", ".htm", PDF)
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,6 +68,24 @@ class Filing:
         history = log.append(log.log_path(frame), self._entry(result)) if frame.file else ()
         self._write(verify_record(result, self._around(frame, reading, history)))
 
+    def inspection(self, subject: Subject, findings: Sequence[Finding]) -> None:
+        from crosscheck.report.record import Circumstances, inspect_record
+
+        self._write(inspect_record(subject, findings, Circumstances(self.command, self.when, self.about)))
+
+    def suite(self, outcome: SuiteOutcome) -> None:
+        """The overview, and a page for each frame in a folder beside it."""
+        from crosscheck.report.record import Circumstances
+        from crosscheck.report.suite_record import suite_records
+
+        folder = self.path.with_suffix(".frames")
+        overview, pages = suite_records(outcome, Circumstances(self.command, self.when, self.about), folder.name)
+        if self.path.suffix.lower() != PDF:
+            make_folder(folder)
+            for address, record in pages.items():
+                self._write(record, self.path.parent / address)
+        self._write(overview)
+
     def _entry(self, result: Verification) -> log.Entry:
         frame, claim = result.opinions.frame, result.closed
         return log.Entry(
@@ -81,10 +101,18 @@ class Filing:
 
         return Circumstances(self.command, self.when, self.about, review(frame), history, reading)
 
-    def _write(self, record: Record) -> None:
+    def _write(self, record: Record, path: Path | None = None) -> None:
         from crosscheck.report.page import page
 
-        replace_text(self.path, page(record))
+        replace_text(path or self.path, page(record))
+
+
+def make_folder(folder: Path) -> None:
+    """Make a folder that may be there already. Raises UnusableInput."""
+    try:
+        folder.mkdir(exist_ok=True)
+    except OSError as error:
+        raise UnusableInput([Problem(str(folder), None, "--report", f"cannot be made ({error.strerror})")]) from None
 
 
 def review(frame: Frame) -> tuple[Finding, ...]:

@@ -14,7 +14,7 @@ from matplotlib.figure import Figure
 
 from crosscheck.answer import ACROSS, AXIAL, MOMENT, SHEAR, Answer
 from crosscheck.compare.claimed import ClaimedValue
-from crosscheck.compare.differences import Difference
+from crosscheck.compare.differences import Place
 from crosscheck.compare.opinions import with_turning_points
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Floats, Frame, Ints
@@ -38,8 +38,8 @@ class Picture:
     says: str
 
 
-def frame_picture(frame: Frame, marked: Sequence[tuple[int, Difference]] = (), names: Sequence[str] = ()) -> Picture:
-    """The frame with supports, hinges, dimensions and names; `marked`: (number, difference) ringed where each stands."""
+def frame_picture(frame: Frame, marked: Sequence[tuple[int, Place]] = (), names: Sequence[str] = ()) -> Picture:
+    """The frame with supports, hinges, dimensions and names; `marked`: (number, place) to ring."""
     sketch = Sketch(frame, (4.2, 2.6, 4.4, 2.6))
     sketch.dimensions()
     sketch.members()
@@ -49,10 +49,18 @@ def frame_picture(frame: Frame, marked: Sequence[tuple[int, Difference]] = (), n
     rest = _ring(sketch, marked)
     caption = f"Distances in {frame.units.length}. Open ring: hinge; barred ring: semi-rigid end; thick: rigid zone."
     if marked:
-        caption += " Ringed: places that differ, each by its first number in the table of differences."
+        caption += " Ringed: the places in question, each by its first number in the table."
     if rest:
         caption += f" {words.counted(rest, 'further place')} not ringed."
     return Picture(sketch.figure, caption, f"Drawing of the frame {frame.title}")
+
+
+def small_picture(frame: Frame, caption: str) -> Picture:
+    """The frame without words, to be known by its outline."""
+    sketch = Sketch(frame, (1.0, 1.6, 1.6, 1.0))
+    sketch.members(3.0)
+    sketch.supports()
+    return Picture(sketch.figure, caption, f"Outline of the frame {frame.title}")
 
 
 def loads_picture(frame: Frame, name: str) -> Picture:
@@ -72,7 +80,7 @@ class CasePictures:
 
     def __init__(
         self, frame: Frame, answer: Answer, name: str, values: Sequence[ClaimedValue] = (),
-        marked: Sequence[tuple[int, Difference]] = (),
+        marked: Sequence[tuple[int, Place]] = (),
     ) -> None:  # fmt: skip
         self.frame, self.answer, self.name, self.values, self.marked = frame, answer, name, values, marked
         self.member, self.x, side = with_turning_points(answer, name, stations(frame))
@@ -97,7 +105,7 @@ class CasePictures:
         self._opinions(sketch, value, scale, peak)
         drawn = self._claim(sketch, quantity, value, claimed, scale)
         sketch.supports()
-        places = [(k, d) for k, d in self.marked if d.place.quantity == quantity and d.place.member]
+        places = [(k, p) for k, p in self.marked if p.quantity == quantity and p.member]
         rest = _ring(sketch, places)
         says = f"{quantity} of {self.name} on the frame {frame.title}"
         return Picture(sketch.figure, self._caption(quantity, drawn, rest), says)
@@ -200,7 +208,7 @@ class CasePictures:
         for joint, move in claimed.items():
             k = self.frame.joint_index[joint]
             sketch.square(sketch.xy[k] + times * np.where(np.isfinite(move), move, np.nan_to_num(moves[k])))
-        rest = _ring(sketch, [(k, d) for k, d in self.marked if d.place.of == "joints"])
+        rest = _ring(sketch, [(k, p) for k, p in self.marked if p.of == "joints"])
         text = f"Deflected shape of {self.name}, displacements {times:,.3g} times their size, by {self.answer.opinion}."
         if self.values:
             text += " Squares: joints where the claim puts them." if claimed else " The claim gives no displacements."
@@ -221,13 +229,12 @@ class CasePictures:
         return sketch.along(m, x + times * (along[0] + (along[1] - along[0]) * x / t.length[m]), times * own)
 
 
-def _ring(sketch: Sketch, marked: Sequence[tuple[int, Difference]]) -> int:
+def _ring(sketch: Sketch, marked: Sequence[tuple[int, Place]]) -> int:
     """Ring the places of numbered differences, one ring a place; returns how many found no room."""
     frame = sketch.frame
     taken: list[Floats] = []
     left = 0
-    for number, d in marked:
-        p = d.place
+    for number, p in marked:
         if p.member:
             m = frame.member_index[p.member]
             length = float(frame.member_table.length[m])

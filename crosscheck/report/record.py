@@ -10,7 +10,7 @@ import datetime
 import hashlib
 import tomllib
 from collections import Counter
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 from itertools import combinations
@@ -22,13 +22,13 @@ from crosscheck import __version__
 from crosscheck.answer import Answer
 from crosscheck.check import OPINIONS, CaseAudit, Opinions, Verification
 from crosscheck.claims.reading import Reading
-from crosscheck.compare.differences import Difference
+from crosscheck.compare.differences import Difference, Place
 from crosscheck.frame.model import Frame
 from crosscheck.log import Entry
 from crosscheck.problems import Problem, UnusableInput, nearest
 from crosscheck.report import terminal, words
 from crosscheck.report.pictures import CasePictures, Picture, frame_picture, loads_picture
-from crosscheck.review.finding import Finding
+from crosscheck.review.finding import Finding, Subject
 
 MOST_ROWS = 6000
 """Rows of result tables in one record; the JSON document has them all."""
@@ -93,7 +93,14 @@ class Verbatim:
     lines: tuple[str, ...]
 
 
-Block = Facts | Says | Grid | Picture | Verbatim
+@dataclass(frozen=True, slots=True)
+class Gallery:
+    """Small pictures side by side; their captions lead where Record.links says."""
+
+    pictures: tuple[Picture, ...]
+
+
+Block = Facts | Says | Grid | Picture | Gallery | Verbatim
 
 
 @dataclass(frozen=True, slots=True)
@@ -131,6 +138,8 @@ class Record:
 
 
 def _words(block: Block) -> str:
+    if isinstance(block, Gallery):
+        return "".join(p.caption for p in block.pictures)
     return block.caption if isinstance(block, Picture) else repr(block)
 
 
@@ -222,15 +231,54 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
     )  # fmt: skip
 
 
+def inspect_record(subject: Subject, findings: Sequence[Finding], around: Circumstances) -> Record:
+    """The record of `crosscheck inspect`."""
+    frame = subject.frame
+    totals = tuple(
+        (name, *(words.number(float(v), float(np.abs(subject.total(name)[:2]).max())) for v in subject.total(name)[:2]))
+        for name in frame.cases
+    )
+    pictured = list(frame.cases)[:MOST_PICTURED] if frame.members else []
+    sections = [
+        _checked(frame, terminal.frame_facts(frame), around),
+        _drawn(frame, [(k, p) for k, f in enumerate(findings, 1) for p in _places(frame, f)]),
+        review_section(findings),
+        Section("Loads", (Grid("What each load case adds up to.", (("case", "left"), *_heads(frame, ("fx", "fy"))), totals),
+                          *(loads_picture(frame, name) for name in pictured))),
+        Section("Cautions", (Says(words.CAUTIONS),)),
+        sign_off(0, findings),
+        verbatim(frame, None),
+    ]  # fmt: skip
+    serious = sum(f.grade == "serious" for f in findings)
+    verdict = words.counted(serious, "serious finding") if serious else "nothing serious"
+    asked = sum(f.grade == "check" for f in findings)
+    notes = len(findings) - serious - asked
+    sentence = f"{words.counted(asked, 'finding')} to be looked at, {words.counted(notes, 'note')}."
+    still = (words.counted(serious, "serious finding"),) if serious else ()
+    return _record("Review of the model", frame, verdict, sentence, still, sections, around)
+
+
+def _places(frame: Frame, finding: Finding) -> Iterator[Place]:
+    """The joints and members that a finding names; notes stand in the table alone."""
+    if finding.grade == "note":
+        return
+    for name in finding.where:
+        kind, _, rest = name.partition(" ")
+        if kind != "member" and (name in frame.joints or rest in frame.joints):
+            yield Place("", "joints", "", joint=name if name in frame.joints else rest)
+        elif name in frame.members or rest in frame.members:
+            yield Place("", "spans", "", member=name if name in frame.members else rest)
+
+
 def _record(
     title: str, frame: Frame, verdict: str, sentence: str, still: tuple[str, ...], sections: Iterable[Section],
     around: Circumstances,
 ) -> Record:  # fmt: skip
     kept = tuple(s for s in sections if s.blocks)
-    return Record(title, frame.title or frame.file, verdict, sentence, still, kept, _moment(around.when))
+    return Record(title, frame.title or frame.file, verdict, sentence, still, kept, moment(around.when))
 
 
-def _moment(when: datetime.datetime) -> str:
+def moment(when: datetime.datetime) -> str:
     return f"{when:%Y-%m-%d %H:%M} UTC"
 
 
@@ -264,7 +312,7 @@ def _checked(frame: Frame, facts: Sequence[tuple[str, str]], around: Circumstanc
     if around.reading is not None:
         rows.append(("claim sha256", around.reading.sha256))
     versions = f"crosscheck {__version__}, numpy {np.__version__}, {_version('scipy')}, {_version('anastruct')}"
-    rows += [("versions", versions), ("date", _moment(around.when))]
+    rows += [("versions", versions), ("date", moment(around.when))]
     rows += [("command", around.command)] if around.command else []
     blocks: list[Block] = [Facts(tuple(rows))]
     notes = [f"Note: {w}" for w in frame.warnings]
@@ -278,8 +326,12 @@ def _version(package: str) -> str:
 
 
 def _drawing(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Section:
-    named = [n for _, d in numbered for n in (d.place.member, d.place.joint) if n]
-    return Section("The frame", (frame_picture(frame, numbered, named),))
+    return _drawn(frame, [(k, d.place) for k, d in numbered])
+
+
+def _drawn(frame: Frame, places: Sequence[tuple[int, Place]]) -> Section:
+    named = [n for _, p in places for n in (p.member, p.joint) if n]
+    return Section("The frame", (frame_picture(frame, places, named),) if frame.members else ())
 
 
 def _suspects(result: Verification) -> Section:
@@ -380,7 +432,7 @@ def _case(
     if answer is None:
         return Section(f"Pictures: {name}", (Says((f"No opinion speaks for {name}.",)),))
     values = [v for v in result.closed.values if v.case == name] if result else []
-    marked = [(k, d) for k, d in numbered if d.place.case == name]
+    marked = [(k, d.place) for k, d in numbered if d.place.case == name]
     drawn = CasePictures(opinions.frame, answer, name, values, marked).all()
     return Section(f"Pictures: {name}", (loads_picture(opinions.frame, name), *drawn))
 
@@ -458,11 +510,12 @@ def _closing(
 
 def review_section(findings: Sequence[Finding]) -> Section:
     """What `inspect` says of the model, each finding with room for what becomes of it."""
-    rows = tuple((f.grade, words.some(f.where) or "frame", f.says, "") for f in findings)
-    columns = (("grade", "left"), ("where", "left"), ("finding", "left"), ("disposition, initials", "left"))
+    rows = tuple((str(k), f.grade, words.some(f.where) or "frame", f.says, "") for k, f in enumerate(findings, 1))
+    columns = (("no.", "right"), ("grade", "left"), ("where", "left"), ("finding", "left"),
+               ("disposition, initials", "left"))  # fmt: skip
     counts = Counter(f.grade for f in findings)
     caption = ", ".join(f"{counts[g]:,} {g}" for g in ("serious", "check", "note"))
-    return Section("Review of the model", (Grid(f"Before any results: {caption}.", columns, rows, (3,)),) if rows else ())
+    return Section("Review of the model", (Grid(f"Before any results: {caption}.", columns, rows, (4,)),) if rows else ())
 
 
 def log_section(history: Sequence[Entry]) -> Section:

@@ -159,7 +159,7 @@ def undetermined_lines(result: Opinions) -> list[str]:
     return lines
 
 
-def _frame_facts(frame: Frame) -> list[tuple[str, str]]:
+def frame_facts(frame: Frame) -> list[tuple[str, str]]:
     return [
         ("frame", f"{frame.title or '(no title)'}  [{frame.file or 'text'}, sha256 {frame.sha256[:12]}]"),
         ("size", f"{words.counted(len(frame.joints), 'joint')}, {words.counted(len(frame.members), 'member')}, "
@@ -169,7 +169,7 @@ def _frame_facts(frame: Frame) -> list[tuple[str, str]]:
 
 
 def opinions_facts(result: Opinions) -> list[tuple[str, str]]:
-    rows = _frame_facts(result.frame)
+    rows = frame_facts(result.frame)
     rows.append(("cases", words.some(result.names, 8)))
     rows += _opinion_rows(result)
     own = f"{OWN.relative:g} of the larger value, or {OWN.floor:g} of the case's largest of its kind"
@@ -376,7 +376,7 @@ def _suspect_lines(result: Verification) -> list[RenderableType]:
 
 
 def claim_facts(result: Verification) -> list[tuple[str, str]]:
-    c, rows = result.closed, _frame_facts(result.opinions.frame)
+    c, rows = result.closed, frame_facts(result.opinions.frame)
     rows.insert(1, ("claim", f"{c.file or 'text'}, {words.counted(c.rows, 'row')}, sha256 {c.sha256[:12]}"))
     rows.append(("cases" if len(c.cases) > 1 else "case", words.some(c.cases) or "none"))
     rows.append(("allowed", allowed_words(result)))
