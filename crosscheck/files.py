@@ -25,14 +25,19 @@ def replace_text(path: str | Path, text: str) -> None:
 
     Raises UnusableInput where the folder cannot be written to.
     """
+    replace_bytes(path, text.encode("utf-8"))
+
+
+def replace_bytes(path: str | Path, data: bytes) -> None:
+    """The same for bytes as they stand."""
     target = Path(path)
     try:
         handle, name = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name}.", suffix=PART)
     except OSError as error:
         raise _cannot(target, error) from None
     try:
-        with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as out:
-            out.write(text)
+        with os.fdopen(handle, "wb") as out:
+            out.write(data)
             out.flush()
             os.fsync(out.fileno())
         _usual_mode(name)

@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 from crosscheck import __version__, log
 from crosscheck.check import Opinions, Verification
 from crosscheck.claims.reading import Reading
-from crosscheck.files import replace_text
+from crosscheck.files import replace_bytes, replace_text
 from crosscheck.frame.model import Frame
 from crosscheck.problems import Problem, UnusableInput
 from crosscheck.report import words
@@ -102,9 +102,15 @@ class Filing:
         return Circumstances(self.command, self.when, self.about, review(frame), history, reading)
 
     def _write(self, record: Record, path: Path | None = None) -> None:
-        from crosscheck.report.page import page
+        target = path or self.path
+        if target.suffix.lower() == PDF:
+            from crosscheck.report.paper import paper
 
-        replace_text(path or self.path, page(record))
+            replace_bytes(target, paper(record))
+        else:
+            from crosscheck.report.page import page
+
+            replace_text(target, page(record))
 
 
 def make_folder(folder: Path) -> None:

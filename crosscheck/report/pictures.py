@@ -40,7 +40,7 @@ class Picture:
 
 def frame_picture(frame: Frame, marked: Sequence[tuple[int, Place]] = (), names: Sequence[str] = ()) -> Picture:
     """The frame with supports, hinges, dimensions and names; `marked`: (number, place) to ring."""
-    sketch = Sketch(frame, (4.2, 2.6, 4.4, 2.6))
+    sketch = Sketch(frame, (4.2, 2.6, 5.2, 2.6))
     sketch.dimensions()
     sketch.members()
     sketch.connections()

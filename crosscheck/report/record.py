@@ -55,7 +55,7 @@ ABOUT = {
     "remarks": "Remarks",
 }
 """Free text about the check: key of `--about` and what it stands for."""
-MARK = "\u2610"  # an empty box, to be ticked by hand
+MARK = "\u25a1"  # an empty box, to be ticked by hand
 
 
 # --- content

@@ -250,6 +250,7 @@ class Sketch:
         t = self.table
         most = max(float(np.abs(np.hypot(loads.line_along, loads.line_across)).max(initial=0.0)), 1e-300)
         done: dict[int, float] = {}
+        count: dict[int, int] = {}
         for q, m in enumerate(loads.line_member.tolist()):
             along, across = loads.line_along[q], loads.line_across[q]
             size = np.hypot(along, across)
@@ -260,7 +261,7 @@ class Sketch:
             way /= size[k]
             base = done.get(m, 0.0)
             x = np.linspace(loads.line_start[q], loads.line_end[q], 7)
-            share = np.interp(x, x[[0, -1]], size if along @ along[[k, k]] + across @ across[[k, k]] >= 0 else size)
+            share = np.interp(x, x[[0, -1]], size)
             tall = self.unit * (0.25 + 0.75 * share / most)
             lies_along = abs(way[0] * t.cos[m] + way[1] * t.sin[m]) > 0.999
             foot = self.along(m, x)
@@ -274,9 +275,11 @@ class Sketch:
                 self.lines(list(zip(top, foot, strict=True)), 0.4, ink=GREY)
                 for p in foot:
                     self._head(p, way, 0.2)
+            count[m] = count.get(m, -1) + 1
             done[m] = base + float(tall.max()) + 0.15 * self.unit
             ends = [words.number(float(v)) for v in size]
-            self.text(self.along(m, float(x[3 if ends[0] == ends[1] else 2])) - (done[m] + 0.35 * self.unit) * way,
+            # Bands upon one another are told apart by figures that do not stand in one line.
+            self.text(self.along(m, float(x[(3, 1, 5, 2, 4)[count[m] % 5]])) - (done[m] + 0.35 * self.unit) * way,
                       ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}", 6.5)  # fmt: skip
 
     def _arrows(self, loads: LoadTable) -> None:
