@@ -8,13 +8,13 @@ axial forces that the displaced frame has. Where these go is foreseen from how t
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from crosscheck.answer import Answer, CaseAnswer, Silent
 from crosscheck.frame.kinematics import Study
-from crosscheck.frame.loads import load_table
+from crosscheck.frame.loads import LoadTable, load_table
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.opinions.moment_distribution.bent_spans import Bent, BentSpans, bend
 from crosscheck.opinions.moment_distribution.critical import Growing, critical_factor, growing
@@ -26,8 +26,17 @@ SETTLED = 1e-12
 """Change of axial force, as a share of the case's largest force, at which the repetitions end."""
 NEARLY = 1e-9
 """Share at which they may end where they no longer help."""
-MOST = 60
+MOST = 40
 """Repetitions."""
+VAIN = 8
+"""So many repetitions that bring the change no lower are given up."""
+FIRST_STEP, LEAST_STEP = 0.25, 1 / 64
+"""Shares of the load that are brought on at once."""
+GROWING = (
+    "joint", "settlement", "point_along", "point_across", "point_couple", "line_along", "line_across", "mean",
+    "difference", "misfit",
+)  # fmt: skip
+"""Fields of a LoadTable that grow with the load."""
 MEMORY = 8
 """Repetitions that the next axial forces are foreseen from."""
 HALVINGS = 30
@@ -86,7 +95,8 @@ def critical_load_factor(frame: Frame, name: str) -> float:
 
 
 def settle_case(first: Process, column: int) -> Settled:
-    """Repeat the distribution of one case until its axial forces settle.
+    """Repeat the distribution of one case until its axial forces settle; where they do not for the whole load at once,
+    bring it on by steps.
 
     Raises NotSettled past the critical load, and where nothing settles.
     """
@@ -98,11 +108,57 @@ def settle_case(first: Process, column: int) -> Settled:
     if not grown.stable(1.0):
         raise NotSettled(f"past its critical load: the critical load factor is {critical_factor(grown):.4g}")
     position = Position(*(
-        part[:, column].copy()
+        part[:, column]
         for part in (first.state.rotation, first.state.move, first.state.axial, first.state.push, first.state.twist)
-    ))  # fmt: skip
+    )).scaled(1.0)  # fmt: skip
     position.axial[first.held.members.rigid] = 0.0
-    return _repeat(grown, acting(first.held, loads, grown.pieces), position)
+    whole = Start(grown, position)
+    try:
+        return _repeat(whole, axial)
+    except NotSettled:
+        return _by_steps(whole)
+
+
+@dataclass(frozen=True)
+class Start:
+    """A case under its first-order axial forces, in its first-order position."""
+
+    grown: Growing
+    position: Position
+
+    def share(self, part: float) -> Start:
+        """The same for a part of the load."""
+        g = self.grown
+        return Start(growing(g.held, part_of(g.loads, part), part * g.axial), self.position.scaled(part))
+
+
+def part_of(loads: LoadTable, part: float) -> LoadTable:
+    """The same loads, all times `part`."""
+    return replace(loads, **{name: part * getattr(loads, name) for name in GROWING})
+
+
+def _by_steps(whole: Start) -> Settled:
+    """Bring the load on by steps, each starting from axial forces that the last two point to."""
+    reached, step = 0.0, FIRST_STEP
+    before, here = (0.0, 0.0 * whole.grown.axial), (0.0, 0.0 * whole.grown.axial)
+    while True:
+        part = min(1.0, reached + step)
+        guess = part * whole.grown.axial
+        if reached:
+            guess = here[1] + (here[1] - before[1]) * ((part - here[0]) / (here[0] - before[0]))
+        try:
+            settled = _repeat(whole.share(part) if part < 1.0 else whole, guess)
+        except NotSettled:
+            step /= 2
+            if step < LEAST_STEP:
+                raise NotSettled(
+                    "past its critical load: as the frame gives way its axial forces change, and no stable balance "
+                    f"was found beyond {reached:.2g} of the load"
+                ) from None
+            continue
+        if part == 1.0:
+            return settled
+        before, here, reached, step = here, (part, settled.axial), part, 1.5 * step
 
 
 class Ahead:
@@ -122,11 +178,15 @@ class Ahead:
         return np.asarray(found - np.diff(np.array(self.found).T, axis=1) @ share)
 
 
-def _repeat(grown: Growing, case: Acting, position: Position) -> Settled:
-    frame_at = _Frames(grown)
-    axial, ahead, trace = grown.axial, Ahead(), []
+def _repeat(start: Start, axial: Floats) -> Settled:
+    """Repeat from these axial forces (m,) on. Raises NotSettled."""
+    frame_at, position = _Frames(start.grown), start.position.scaled(1.0)
+    case = acting(start.grown.held, start.grown.loads, start.grown.pieces)
+    ahead, trace = Ahead(), []
     best, since = np.inf, 0
     displaced = frame_at(axial)
+    if not displaced.stable:
+        raise NotSettled(NO_BALANCE)
     for _ in range(MOST):
         rounds, left = displaced.settle(case, position)
         if left > GIVEN_UP:
@@ -139,6 +199,8 @@ def _repeat(grown: Growing, case: Acting, position: Position) -> Settled:
         best = min(best, change)
         if change <= SETTLED or (change <= NEARLY and since > 3):
             return Settled(displaced, case, position, found, trace)
+        if since > VAIN:
+            break
         wanted = ahead.next(axial, found)
         for _ in range(HALVINGS):
             displaced = frame_at(wanted)
@@ -151,10 +213,7 @@ def _repeat(grown: Growing, case: Acting, position: Position) -> Settled:
     raise NotSettled(NO_BALANCE)
 
 
-NO_BALANCE = (
-    "no stable balance was found on the displaced frame: its axial forces grow as it gives way, though those of "
-    "first order alone leave it stable"
-)
+NO_BALANCE = "no stable balance was found on the displaced frame"
 
 
 class _Frames:
