@@ -16,8 +16,7 @@ from scipy.optimize import brentq
 
 from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import Floats
-from crosscheck.opinions.moment_distribution.displaced import DENSE, Displaced
-from crosscheck.opinions.moment_distribution.holding import Held
+from crosscheck.opinions.moment_distribution.displaced import DENSE, Displaced, Freedom
 from crosscheck.opinions.moment_distribution.pieces import Pieces, cut
 from crosscheck.opinions.moment_distribution.stretches import Axial, bow, divide, parts_needed
 
@@ -33,19 +32,19 @@ NOTHING = 1e-12
 class Growing:
     """A case whose first-order axial forces (m,) at the `from` ends grow, the loads along the members with them."""
 
-    held: Held
+    freedom: Freedom
     loads: LoadTable
     pieces: Pieces
     axial: Floats
 
     def at(self, factor: float) -> Displaced | None:
         """The frame under `factor` times its axial forces; None where a member shears off."""
-        m = self.held.members
+        m = self.freedom.held.members
         parts, sheared = parts_needed(m, self.pieces, self.axial, factor)
         if sheared:
             return None
         division = divide(m, self.loads, parts)
-        return Displaced(self.held, bow(m, division, Axial(factor * self.axial, factor)))
+        return Displaced(self.freedom, bow(m, division, Axial(factor * self.axial, factor)))
 
     def stable(self, factor: float) -> bool:
         displaced = self.at(factor)
@@ -61,8 +60,8 @@ class Growing:
         return bool(force.size and force.min() < -NOTHING * np.abs(force).max())
 
 
-def growing(held: Held, loads: LoadTable, axial: Floats) -> Growing:
-    return Growing(held, loads, cut(held.members.table, loads), axial)
+def growing(freedom: Freedom, loads: LoadTable, axial: Floats) -> Growing:
+    return Growing(freedom, loads, cut(freedom.held.members.table, loads), axial)
 
 
 def critical_factor(case: Growing) -> float:
@@ -107,7 +106,6 @@ def _smooth(case: Growing, low: float, high: float) -> bool:
 def _least(case: Growing, factor: float) -> float:
     """The smallest eigenvalue of the distribution's stiffness, the joints' and sways' own stiffness without axial force
     counting as 1."""
-    at, free = case.at(factor), case.at(0.0)
-    assert at is not None and free is not None
-    scale = 1 / np.sqrt(free.whole.diagonal())
+    at, scale = case.at(factor), 1 / np.sqrt(case.freedom.start)
+    assert at is not None
     return float(eigvalsh(scale[:, None] * at.whole.toarray() * scale, subset_by_index=[0, 0])[0])

@@ -84,73 +84,81 @@ def acting(held: Held, loads: LoadTable, pieces: Pieces) -> Acting:
 
 
 @dataclass(frozen=True)
-class Displaced:
-    """A frame under axial forces taken as known; `joint` numbers below are those of `held`."""
+class Freedom:
+    """What can move, whatever the axial forces: r rotations of the turning joints, and q sways behind them."""
 
     held: Held
+
+    @property
+    def rotations(self) -> int:
+        return len(self.held.turning)
+
+    @cached_property
+    def spread(self) -> Any:
+        """(3m, r + q) sparse: clockwise rotations of every member's two joints and chord per rotation and sway."""
+        held, s = self.held, self.held.sways
+        members, joints = held.ends.shape[0], len(held.frame.joints)
+        rows = 3 * np.repeat(np.arange(members), 2) + np.tile([0, 1], members)
+        turned = sparse.csr_array((np.ones(2 * members), (rows, held.ends.ravel())), shape=(3 * members, joints))
+        to_chord = (np.ones(members), (3 * np.arange(members) + 2, np.arange(members)))
+        chord = sparse.csr_array(to_chord, shape=(3 * members, members)) @ (s.turn[:, s.free] @ s.shape)
+        return sparse.csr_array(sparse.hstack([turned[:, held.turning], chord]))
+
+    @cached_property
+    def constant(self) -> Any:
+        """(r + q, r + q) sparse: what rotation and translation springs and the members' lengths resist."""
+        held, s = self.held, self.held.sways
+        stretch = s.stretch[:, s.free] @ s.shape
+        axial, ground = sparse.diags_array(held.members.axial), sparse.diags_array(s.ground[s.free])
+        sways = stretch.T @ axial @ stretch + s.shape.T @ ground @ s.shape
+        joints = sparse.diags_array(held.rotation_spring[held.turning])
+        return sparse.csr_array(sparse.block_diag([joints, sways]))
+
+    @cached_property
+    def start(self) -> Floats:
+        """(r + q,) the members' own stiffness without axial force and what is constant, one unknown at a time."""
+        k = self.held.members.joint
+        whole = np.zeros((len(k), 3, 3))
+        whole[:, :2, :2], whole[:, :2, 2], whole[:, 2, :2] = k, -k.sum(axis=2), -k.sum(axis=1)
+        whole[:, 2, 2] = k.sum(axis=(1, 2))
+        return np.asarray(self.assembled(whole).diagonal())
+
+    def assembled(self, stiffness: Floats) -> Any:
+        """(r + q, r + q) sparse: moments and holding forces per rotation and sway, from the members' (m, 3, 3)."""
+        m = len(stiffness)
+        blocks = sparse.bsr_array((stiffness, np.arange(m), np.arange(m + 1)), shape=(3 * m, 3 * m))
+        return sparse.csr_array(self.spread.T @ (blocks @ self.spread) + self.constant)
+
+
+@dataclass(frozen=True)
+class Displaced:
+    """A frame under axial forces taken as known; moments and holding forces stand in the order of `freedom`."""
+
+    freedom: Freedom
     bowed: Bowed
 
-    @cached_property
-    def chords(self) -> Any:
-        """(m, q) sparse: chord rotation per unit sway."""
-        s = self.held.sways
-        return sparse.csr_array(s.turn[:, s.free] @ s.shape)
-
-    @cached_property
-    def joints(self) -> Any:
-        """(r, r) sparse: moments that hold the turning joints per rotation."""
-        held, k = self.held, self.bowed.stiffness
-        count = len(held.frame.joints)
-        a, b = held.ends.T
-        rows = np.concatenate([a, b, a, b, np.arange(count)])
-        columns = np.concatenate([a, b, b, a, np.arange(count)])
-        values = np.concatenate([k[:, 0, 0], k[:, 1, 1], k[:, 0, 1], k[:, 1, 0], held.rotation_spring])
-        whole = sparse.csr_array((values, (rows, columns)), shape=(count, count))
-        return sparse.csr_array(whole[held.turning][:, held.turning])
-
-    @cached_property
-    def sideways(self) -> Any:
-        """(r, q) sparse: moment that holds each turning joint per unit sway."""
-        held = self.held
-        members = np.repeat(np.arange(len(held.ends)), 2)
-        values = self.bowed.stiffness[:, :2, 2].ravel()
-        shape = (len(held.frame.joints), len(held.ends))
-        by_member = sparse.csr_array((values, (held.ends.ravel(), members)), shape=shape)
-        return sparse.csr_array(by_member[held.turning] @ self.chords)
-
-    @cached_property
-    def sways(self) -> Any:
-        """(q, q) sparse: holding forces per unit sway with every rotation held."""
-        s = self.held.sways
-        stretch = s.stretch[:, s.free] @ s.shape
-        axial, ground = sparse.diags_array(self.held.members.axial), sparse.diags_array(s.ground[s.free])
-        turned = sparse.diags_array(self.bowed.stiffness[:, 2, 2])
-        return sparse.csc_array(
-            self.chords.T @ turned @ self.chords + stretch.T @ axial @ stretch + s.shape.T @ ground @ s.shape
-        )
+    @property
+    def held(self) -> Held:
+        return self.freedom.held
 
     @cached_property
     def whole(self) -> Any:
         """(r + q, r + q) sparse: moments on the joints and holding forces per rotation and per unit sway."""
-        return sparse.csr_array(
-            sparse.block_array([[self.joints, self.sideways], [self.sideways.T, self.sways]])
-        )
+        return self.freedom.assembled(self.bowed.stiffness)
 
     @cached_property
-    def scaled(self) -> Any:
-        """`whole` with ones along its diagonal, or None where that is not positive."""
-        own = self.whole.diagonal()
-        if np.any(own <= 0):
-            return None
-        scale = sparse.diags_array(1 / np.sqrt(own))
-        return sparse.csc_array(scale @ self.whole @ scale)
+    def joints(self) -> Any:
+        """(r, r) sparse: moments that hold the turning joints per rotation."""
+        r = self.freedom.rotations
+        return sparse.csr_array(self.whole[:r, :r])
 
     @cached_property
     def stable(self) -> bool:
-        """No member buckled between held ends, and no joint or sway that gives way when let go."""
-        if self.bowed.buckled.any() or self.scaled is None:
+        """No member buckled between held ends, and no joint or sway that gives way when let go after others."""
+        if self.bowed.buckled.any():
             return False
-        return not self.scaled.shape[0] or _positive(self.scaled)
+        own = self.whole.diagonal()
+        return bool(np.all(own > 0)) and (not len(own) or _positive(self.whole, own))
 
     @cached_property
     def turns(self) -> Any:
@@ -162,12 +170,19 @@ class Displaced:
         if not moment.size:
             return moment
         forth = self.turns.solve(moment)
-        return np.asarray(self.turns.solve(self.joints.diagonal()[:, None] * forth, trans="T"))
+        return np.asarray(self.turns.solve(self.own[:, None] * forth, trans="T"))
+
+    @cached_property
+    def own(self) -> Floats:
+        """(r,) sum of the stiffnesses that meet at each turning joint."""
+        return np.asarray(self.joints.diagonal())
 
     @cached_property
     def holding(self) -> Any:
-        """Factorised `sways`."""
-        return splu(self.sways, permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True})
+        """Factorised holding forces per unit sway, every rotation held."""
+        r = self.freedom.rotations
+        sways = sparse.csc_array(self.whole[r:, r:])
+        return splu(sways, permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True})
 
     def correct(self, moment: Floats, force: Floats, leave: float) -> tuple[Floats, Floats, int]:
         """Rotations (r,) and sways (q,) that take what is unbalanced but for the share `leave`, and the steps."""
@@ -268,16 +283,18 @@ def _in_order(matrix: Any) -> Any:
     return splu(lower, permc_spec="NATURAL", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
 
 
-def _positive(matrix: Any) -> bool:
-    """Whether a symmetric matrix of unit diagonal is positive definite: whether every joint and sway, let go after
-    the others before it, still resists."""
-    if matrix.shape[0] <= DENSE:
+def _positive(matrix: Any, own: Floats) -> bool:
+    """Whether a symmetric matrix of positive diagonal `own` is positive definite: whether every joint and sway, let go
+    after the others before it, still resists."""
+    scale = 1 / np.sqrt(own)
+    if len(own) <= DENSE:
         try:
-            cholesky(matrix.toarray(), check_finite=False)
+            cholesky(scale[:, None] * matrix.toarray() * scale, check_finite=False)
         except LinAlgError:
             return False
         return True
-    factor = splu(matrix, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
+    scaled = sparse.csc_array(sparse.diags_array(scale) @ matrix @ sparse.diags_array(scale))
+    factor = splu(scaled, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
     return bool(np.array_equal(factor.perm_r, factor.perm_c) and np.all(factor.U.diagonal() > 0))
 
 

@@ -18,7 +18,14 @@ from crosscheck.frame.loads import LoadTable, load_table
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.opinions.moment_distribution.bent_spans import Bent, BentSpans, bend
 from crosscheck.opinions.moment_distribution.critical import Growing, critical_factor, growing
-from crosscheck.opinions.moment_distribution.displaced import Acting, Displaced, Position, Round, acting
+from crosscheck.opinions.moment_distribution.displaced import (
+    Acting,
+    Displaced,
+    Freedom,
+    Position,
+    Round,
+    acting,
+)
 from crosscheck.opinions.moment_distribution.process import GIVEN_UP, NAME, Process, distribute
 from crosscheck.opinions.moment_distribution.stretches import AGAIN, REACH, Axial, Division, bow, divide, parts_needed
 
@@ -73,12 +80,13 @@ def opine_displaced(frame: Frame, study: Study, names: Sequence[str] | None) -> 
         first = distribute(frame, chosen)
     except (RuntimeError, np.linalg.LinAlgError):
         return Silent(NAME, "the frame's sways have no stiffness that holds them, so no holding forces exist")
+    freedom = Freedom(first.held)
     cases: dict[str, CaseAnswer] = {}
     bent: dict[str, Bent] = {}
     silent: dict[str, str] = {}
     for column, name in enumerate(chosen):
         try:
-            settled = settle_case(first, column)
+            settled = settle_case(first, freedom, column)
         except NotSettled as why:
             silent[name] = str(why)
             continue
@@ -91,10 +99,10 @@ def critical_load_factor(frame: Frame, name: str) -> float:
     """By how much the first-order axial forces of a case must grow, all in proportion, for the frame to lose its
     stability; infinite where it never does."""
     first = distribute(frame, (name,))
-    return critical_factor(growing(first.held, load_table(frame, name), first.state.axial[:, 0]))
+    return critical_factor(growing(Freedom(first.held), load_table(frame, name), first.state.axial[:, 0]))
 
 
-def settle_case(first: Process, column: int) -> Settled:
+def settle_case(first: Process, freedom: Freedom, column: int) -> Settled:
     """Repeat the distribution of one case until its axial forces settle; where they do not for the whole load at once,
     bring it on by steps.
 
@@ -104,7 +112,7 @@ def settle_case(first: Process, column: int) -> Settled:
     if first.left[column] > GIVEN_UP:
         raise NotSettled(f"the first-order distribution did not settle: {first.left[column]:.1e} is left unbalanced")
     loads, axial = load_table(frame, name), first.state.axial[:, column].copy()
-    grown = growing(first.held, loads, axial)
+    grown = growing(freedom, loads, axial)
     if not grown.stable(1.0):
         raise NotSettled(f"past its critical load: the critical load factor is {critical_factor(grown):.4g}")
     position = Position(*(
@@ -129,7 +137,7 @@ class Start:
     def share(self, part: float) -> Start:
         """The same for a part of the load."""
         g = self.grown
-        return Start(growing(g.held, part_of(g.loads, part), part * g.axial), self.position.scaled(part))
+        return Start(growing(g.freedom, part_of(g.loads, part), part * g.axial), self.position.scaled(part))
 
 
 def part_of(loads: LoadTable, part: float) -> LoadTable:
@@ -181,7 +189,7 @@ class Ahead:
 def _repeat(start: Start, axial: Floats) -> Settled:
     """Repeat from these axial forces (m,) on. Raises NotSettled."""
     frame_at, position = _Frames(start.grown), start.position.scaled(1.0)
-    case = acting(start.grown.held, start.grown.loads, start.grown.pieces)
+    case = acting(start.grown.freedom.held, start.grown.loads, start.grown.pieces)
     ahead, trace = Ahead(), []
     best, since = np.inf, 0
     displaced = frame_at(axial)
@@ -225,12 +233,12 @@ class _Frames:
         self.parts = np.zeros(0, dtype=np.int64)
 
     def __call__(self, axial: Floats) -> Displaced:
-        m = self.grown.held.members
+        m = self.grown.freedom.held.members
         parts, sheared = parts_needed(m, self.grown.pieces, axial)
         if self.division is None or np.any(parts * REACH > np.maximum(self.parts, 1) * AGAIN):
             self.parts = parts
             self.division = divide(m, self.grown.loads, parts)
-        displaced = Displaced(self.grown.held, bow(m, self.division, Axial(axial)))
+        displaced = Displaced(self.grown.freedom, bow(m, self.division, Axial(axial)))
         if sheared:
             displaced.bowed.buckled[:] += 1
         return displaced
