@@ -175,9 +175,6 @@ class ClaimComparison:
             return
         unsupported = v.kind == "reaction" and v.joint not in self.frame.supports
         scale = scales.of(v.quantity) if unsupported else self._scale(v, known, scales)
-        if v.half_digit > COARSE * scale and not unsupported:
-            tally.left.append((v, "printed too coarsely to judge"))
-            return
         reference = next(iter(given.values()))
         claimed = abs(v.value) if v.extreme == "size" else v.value
         reference = abs(reference) if v.extreme == "size" else reference
@@ -186,6 +183,10 @@ class ClaimComparison:
             may = max(v.half_digit, ZERO * scale)
         else:
             may = float(allowed(claimed, reference, self.tolerance, scale, v.half_digit))
+            # A whole digit off, no coarse printing explains: that much can be judged, and is never passed over in silence.
+            if v.half_digit > COARSE * scale and apart <= max(may, 2 * v.half_digit):
+                tally.left.append((v, "printed too coarsely to judge"))
+                return
         tally.compared += 1
         if apart <= may:
             relative = max(self.tolerance.relative * max(abs(claimed), abs(reference)), v.half_digit)
