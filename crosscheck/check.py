@@ -325,12 +325,15 @@ def workings(opinions: Opinions) -> list[tuple[str, list[WorkTable]]]:
 
 QUICK = 300
 """Most members for which critical load factors are worked out unasked."""
+FAR = 100.0
+"""Critical load factors above this are as good as none."""
 
 
 def critical_factors(frame: Frame, names: Sequence[str] | None = None) -> dict[str, float]:
-    """Critical load factor of each case and combination (or of `names`), exact by stability functions; infinite where
-    nothing is compressed. Empty for a frame of more than QUICK members, and where there is no case."""
+    """Critical load factor of each case and combination (or of `names`) by stability functions, to three digits;
+    infinite above FAR. Empty for a frame of more than QUICK members, and where there is no case."""
     if len(frame.members) > QUICK or not frame.names:
         return {}
-    found: dict[str, float] = importlib.import_module(OPINIONS["slope-deflection"]).critical_factors(frame, names)
+    module = importlib.import_module(OPINIONS["slope-deflection"])
+    found: dict[str, float] = module.critical_factors(frame, names, FAR)
     return found

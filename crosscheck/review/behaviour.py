@@ -40,7 +40,9 @@ def sway(subject: Subject) -> Iterator[Finding]:
         move = f"{1000 * share * height / subject.metre:.3g} mm sideways, 1/{1 / share:.0f} of its height"
         says = f"in {case} joint {joint} moves {move}{and_more(len({f[1] for f in over}) - 1)}"
         limit = f"1/{subject.limits.sway:g} is a usual limit (common practice)"
-        yield Finding("check", (joint, case), f"{says}; {limit}")
+        joints = [list(subject.frame.joints)[f[2]] for f in over]
+        where = dict.fromkeys([joint, case, *joints, *(f[1] for f in over)])
+        yield Finding("check", tuple(where), f"{says}; {limit}")
 
 
 def column_chains(subject: Subject) -> dict[int, int]:

@@ -58,8 +58,8 @@ def explanations() -> dict[str, Explanation]:
     return {check.__name__: explained(check) for check in CHECKS}
 
 
-def subject_of(frame: Frame, limits: Limits | None = None) -> Subject:
-    """The frame with its mechanisms or, where it has none, its answer and critical load factors."""
+def subject_of(frame: Frame, limits: Limits | None = None, stability: bool = True) -> Subject:
+    """The frame with its mechanisms or, where it has none, its answer and (`stability`) critical load factors."""
     limits = limits or Limits()
     motions = tuple(mechanisms(frame)) if frame.members else ()
     if motions:
@@ -71,8 +71,9 @@ def subject_of(frame: Frame, limits: Limits | None = None) -> Subject:
         return Subject(frame, limits=limits, refused=error.problems)
     if not isinstance(answer, Answer):
         return Subject(frame, (), found, limits=limits)
-    critical = critical_factors(frame)
-    return Subject(frame, (), found, answer, critical, storey_factors(frame, found, answer.cases), limits)
+    critical = critical_factors(frame) if stability else {}
+    rough = storey_factors(frame, found, answer.cases) if stability else {}
+    return Subject(frame, (), found, answer, critical, rough, limits)
 
 
 def inspect(subject: Subject) -> list[Finding]:

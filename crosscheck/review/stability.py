@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator
 
+from crosscheck.check import FAR
 from crosscheck.review.finding import Finding, Subject, and_more, listed
 
 
@@ -51,9 +52,11 @@ def critical_factors(subject: Subject) -> Iterator[Finding]:
     """
     finite = sorted((f, c) for c, f in subject.critical.items() if math.isfinite(f))
     if finite:
-        parts = [f"{c} {_factor(subject, c)}" for f, c in finite[:4]]
-        left = f" and {len(finite) - 4} higher" if len(finite) > 4 else ""
-        says = f"critical load factors, least first: {listed(parts)}{left}"
+        left = len(subject.critical) - len(finite[:4])
+        says = f"critical load factors, least first: {listed([f'{c} {_factor(subject, c)}' for _, c in finite[:4]])}"
+        says += f"; {left} higher" if left else ""
         if any(c in subject.storeys for _, c in finite[:4]):
             says += "; the storey formula (EN 1993-1-1 5.2.1) may be up to 21.6% on the unsafe side"
         yield Finding("note", (), says)
+    elif subject.critical:
+        yield Finding("note", (), f"critical load factors are {FAR:g} and more in every case")

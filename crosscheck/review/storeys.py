@@ -43,7 +43,8 @@ class Storey:
 
 
 def storeys_of(frame: Frame) -> tuple[Storey, ...]:
-    """Storeys from the ground up; empty where the frame has none: no plumb columns, or columns that pass a level."""
+    """Storeys from the ground up; empty where the frame has none: no plumb columns, columns that pass a level, or lowest
+    columns without support (the posts of a truss)."""
     t, y = frame.member_table, frame.xy[:, 1]
     columns = np.flatnonzero(np.abs(t.sin) >= PLUMB)
     if not len(columns):
@@ -63,7 +64,8 @@ def storeys_of(frame: Frame) -> tuple[Storey, ...]:
         lower = [int(t.ends[k, int(np.argmin(y[t.ends[k]]))]) for k in own]
         columns_left_to_right, passing = tuple(map(int, own)), tuple(map(int, crossing))
         out.append(Storey(float(bottom), float(top), columns_left_to_right, passing, tuple(upper), tuple(lower)))
-    return tuple(out)
+    names = list(frame.joints)
+    return tuple(out) if all(names[j] in frame.supports for j in out[0].feet) else ()
 
 
 def _distinct(values: Floats, grain: float) -> list[float]:

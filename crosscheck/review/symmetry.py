@@ -86,8 +86,14 @@ def mirrored_supports(subject: Subject) -> Iterator[Finding]:
 
 
 def _feet(subject: Subject, *joints: str) -> bool:
-    columns = set(subject.columns)
-    return all(columns & set(subject.members_at[j]) for j in joints)
+    """Do columns stand on all these joints, and end there?"""
+    frame, columns = subject.frame, set(subject.columns)
+    for joint in joints:
+        standing = columns & set(subject.members_at[joint])
+        ends = [frame.members[n] for n in standing]
+        if not standing or any(frame.joints[j].y < frame.joints[joint].y for m in ends for j in (m.joint_from, m.joint_to)):
+            return False
+    return True
 
 
 def _grip(support: Support) -> str:
@@ -134,7 +140,8 @@ def _gap(a: Floats, b: Floats) -> float:
 
 
 def mirror_of(subject: Subject) -> Mirror | None:
-    """The frame's own mirror image, None where joints and members are not symmetrical."""
+    """The frame's own mirror image, None where joints and members are not symmetrical. Diagonals hinged at both ends are
+    left out: bracing stands in one bay of many frames."""
     frame = subject.frame
     if not frame.joints:
         return None
@@ -152,7 +159,9 @@ def mirror_of(subject: Subject) -> Mirror | None:
     ends = {frozenset((m.joint_from, m.joint_to)): m.name for m in frame.members.values()}
     order = {name: k for k, name in enumerate(frame.members)}
     members = []
-    for m in frame.members.values():
+    t = frame.member_table
+    bracing = (t.turn == FREE).all(axis=1) & (np.abs(t.sin) > 0.05) & (np.abs(t.cos) > 0.05)
+    for m in (m for m, out in zip(frame.members.values(), bracing, strict=True) if not out):
         other = ends.get(frozenset((twin[m.joint_from], twin[m.joint_to])))
         if other is None:
             return None

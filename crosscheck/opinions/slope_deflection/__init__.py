@@ -24,6 +24,8 @@ from crosscheck.opinions.slope_deflection.spans import ClosedFormSpans
 from crosscheck.opinions.slope_deflection.system import System
 
 NAME = "slope-deflection"
+THREE_DIGITS = 5e-4
+"""Relative width to which a critical load factor is found where three digits will do."""
 
 
 def opine(frame: Frame, study: Study, names: Sequence[str] | None = None) -> Answer | Silent:
@@ -57,16 +59,20 @@ def _second_order(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer:
     return Answer(NAME, cases, study.undetermined, DisplacedSpans(frame, tables, cases, states), silent)
 
 
-def critical_factors(frame: Frame, names: Sequence[str] | None = None) -> dict[str, float]:
+def critical_factors(frame: Frame, names: Sequence[str] | None = None, beyond: float | None = None) -> dict[str, float]:
     """Critical load factor of each case and combination: the least factor on its first-order axial forces at which the
-    frame or a member in it buckles; inf where nothing is compressed enough."""
-    from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
+    frame or a member in it buckles; inf where nothing is compressed enough.
+
+    beyond: where given, factors above it are inf as well and those below are found to three digits, which is quick.
+    """
+    from crosscheck.opinions.slope_deflection.second_order import BEYOND, EXACT, CaseInSecondOrder
 
     names = frame.names if names is None else tuple(names)
     factors = {}
     for name in names:
         case = CaseInSecondOrder(frame, load_table(frame, name))
-        factors[name] = case.critical_factor(case.first_order())
+        close, most = (EXACT, BEYOND) if beyond is None else (THREE_DIGITS, beyond)
+        factors[name] = case.critical_factor(case.first_order(), close, most)
     return factors
 
 

@@ -26,6 +26,8 @@ from crosscheck.opinions.slope_deflection.system import PENALTY, gathered, suppo
 SETTLED = 1e-12
 """Largest change of an axial force, as a share of the largest, at which the iteration ends."""
 MOST_ROUNDS = 200
+EXACT = 1e-11
+"""Relative width to which a critical load factor is found unless a rougher one will do."""
 BEYOND = 1e7
 """Critical load factors above this are reported as none."""
 
@@ -96,19 +98,20 @@ class CaseInSecondOrder:
                 return state
         raise PastCritical("its axial forces do not settle on the displaced frame: too near its critical load")
 
-    def critical_factor(self, pulls: Floats) -> float:
+    def critical_factor(self, pulls: Floats, close: float = EXACT, beyond: float = BEYOND) -> float:
         """Smallest factor on the first-order axial forces at which the frame, or a member in it, buckles; inf for none.
 
-        `pulls` are the axial forces at the `from` joints; along loads scale with them.
+        `pulls` are the axial forces at the `from` joints; along loads scale with them. close: relative width to which it
+        is found. beyond: the largest factor looked for; inf above it.
         """
-        if not self._compressed(pulls):
+        if not self._compressed(pulls) or beyond < BEYOND and not self._buckled(beyond, pulls):
             return float("inf")
         low, high = 0.0, 1.0
         while not self._buckled(high, pulls):
             low, high = high, high * 2.0
-            if high > BEYOND:
+            if high > beyond:
                 return float("inf")
-        while high - low > 1e-11 * high:
+        while high - low > close * high:
             middle = (low + high) / 2
             low, high = (low, middle) if self._buckled(middle, pulls) else (middle, high)
         return (low + high) / 2
