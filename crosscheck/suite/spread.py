@@ -19,7 +19,11 @@ FEW = 4
 """Fewer items than this are not worth starting processes for."""
 AHEAD = 4
 """Items handed out in advance for each worker, so that the waiting list does not grow with the set."""
-PRELOAD = ["crosscheck.suite.regress", "crosscheck.claims", "crosscheck.compare.closing"]
+PRELOAD = [
+    "crosscheck.suite.regress", "crosscheck.frame.reader", "crosscheck.claims", "crosscheck.compare.closing",
+    "crosscheck.opinions.slope_deflection", "crosscheck.opinions.moment_distribution", "crosscheck.opinions.library",
+    "anastruct.fem.system",
+]  # fmt: skip
 """Imported once, by the process that the workers are forked from."""
 
 
