@@ -18,6 +18,7 @@ from crosscheck.claims.split import Cell, Separator, join_units, separator_of, s
 from crosscheck.claims.words import Head, head_of, is_header_word, unit_of
 
 Row = list[str]
+MOST_COLUMNS = 40
 
 
 @dataclass(slots=True)
@@ -184,7 +185,7 @@ def _by_kind(cells: list[Cell], seen: list[set[str]]) -> Row | None:
     seen: the words found in each column of the full rows (none in columns of numbers).
     """
     lacking = len(seen) - len(cells)
-    if not 0 < lacking <= 2 or not cells:
+    if not 0 < lacking <= 2 or not cells or len(seen) > MOST_COLUMNS:
         return None
 
     def likeness(row: Row) -> float:
@@ -270,7 +271,7 @@ def _by_wide(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool
 def _by_words(text: str, spans: list[tuple[int, int]], aligned: bool, group: bool) -> Row | None:
     """The words as they group best into one head a column; or into one fewer, where a printed index has no head."""
     words = tuple(text.split())
-    if group or len(words) > 60 or len(spans) > 40:
+    if group or len(words) > 2 * MOST_COLUMNS or len(spans) > MOST_COLUMNS:
         return None
     whole, fewer = _grouped(words, len(spans)), _grouped(words, len(spans) - 1)
     if fewer and (not whole or fewer[0] > whole[0] + 0.5):

@@ -16,20 +16,28 @@ _PREFIXES = {
     "joint": r"joints?|jo?i?n?t|nodes?|nod|nd|points?|pt|supports?|supp?|at|no|nr",
     "case": r"load\s*cases?|load\s*combinations?|cases?|combinations?|combos?|comb?|lc|load|loading|results? for|no|nr",
 }
+MOST_KEPT = 20_000
+"""Writings whose names are kept in mind: noise must not fill the memory."""
+_BETWEEN_DIGITS = re.compile(r"(?<=\d)[^\w.]+(?=\d)")
+_SEPARATING = re.compile(r"[^\w.+'~]|_")
+_LEADING_ZEROS = re.compile(r"(?<![0-9.])0+(?=[0-9])")
+_PREFIX = {kind: re.compile(rf"(?:{words})\b[\s.:#_-]*(?=\S)", re.IGNORECASE) for kind, words in _PREFIXES.items()}
 _DASH = re.compile(r"[\u2010-\u2015\u2212]")
 _PAIR = re.compile(r"\s*(?:-+>?|\u2192|/|\bto\b|:|\.\.|,|~|_)\s*|\s+")
 
 
 def plain(text: str) -> str:
     """Letters and digits of a name in one case; zeros before a number dropped ("M03" is "m3")."""
-    tidy = re.sub(r"(?<=\d)[^\w.]+(?=\d)", "~", _DASH.sub("-", text).casefold())  # "1-2" is not "12"
-    return re.sub(r"(?<![0-9.])0+(?=[0-9])", "", re.sub(r"[^\w.+'~]|_", "", tidy))
+    if text.isalpha():
+        return text.casefold()
+    tidy = _BETWEEN_DIGITS.sub("~", _DASH.sub("-", text).casefold())  # "1-2" is not "12"
+    return _LEADING_ZEROS.sub("", _SEPARATING.sub("", tidy))
 
 
 def without_prefix(text: str, kind: str) -> str:
     """The name without a word such as "member" or "node no." before it."""
     tidy = " ".join(text.split())
-    while found := re.match(rf"(?:{_PREFIXES[kind]})\b[\s.:#_-]*(?=\S)", tidy, re.IGNORECASE):
+    while found := _PREFIX[kind].match(tidy):
         tidy = tidy[found.end() :]
     return tidy.strip(" .:#")
 
@@ -47,6 +55,8 @@ class _Book:
         self.kind = kind
         self.names = frozenset(names)
         self.given = {plain(k): v for k, v in given.items()} | dict(given)
+        self.longest = 40 + 2 * max(map(len, (*self.names, *given)), default=0)
+        self._found: dict[tuple[str, bool], str | None] = {}
         self.levels: list[dict[str, list[str]]] = [{}, {}]
         for name in self.names:
             for level, key in enumerate((plain(name), _core(name))):
@@ -55,6 +65,16 @@ class _Book:
 
     def find(self, text: str, number_alone: bool = True) -> str | None:
         """The one name that `text` may mean, or None. `number_alone`: "3" may mean "m3"."""
+        if len(text) > self.longest:
+            return None
+        key = (text, number_alone)
+        if key not in self._found:
+            if len(self._found) > MOST_KEPT:
+                self._found.clear()
+            self._found[key] = self._find(text, number_alone)
+        return self._found[key]
+
+    def _find(self, text: str, number_alone: bool) -> str | None:
         text = text.strip().strip("\"'`*")
         for writing in (text, plain(text)):
             if writing in self.given:
@@ -125,7 +145,11 @@ class Names:
         return None
 
     def member(self, text: str) -> MemberHit | None:
+        if len(text) > self._members.longest:
+            return None
         if text not in self._known:
+            if len(self._known) > MOST_KEPT:
+                self._known.clear()
             self._known[text] = self._find_member(text)
         return self._known[text]
 

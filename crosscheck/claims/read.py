@@ -237,6 +237,8 @@ class _Reader:
     def _case(self, cells: Mapping[str, str], carried: _Carried, raw: RawTable) -> str | None:
         if "case" not in cells:
             if raw.case_label and raw.case is None:
+                if raw.case_label not in self.scanned.unknown_cases:
+                    self.scanned.unknown_cases.append(raw.case_label)
                 raise _Misread(f'load case "{raw.case_label}" is not one of the frame')
             return raw.case
         carried.case = cells["case"] or carried.case

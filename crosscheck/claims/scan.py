@@ -15,6 +15,7 @@ from crosscheck.claims.sentences import looks_told
 from crosscheck.claims.split import Cell, Separator, is_rule, join_units, separator_of, split, wide_cells
 from crosscheck.claims.words import RESULT_NOUNS, head_of, is_header_word, unit_of
 
+LONGEST_HEADING = 300
 LONGEST_LINE = 20_000
 """Characters: a longer line is no row of a table, and reading it must not take long."""
 _CASE = re.compile(
@@ -22,6 +23,7 @@ _CASE = re.compile(
     r"(?:\s*(?:no|nr|number|name)\b\.?)?[\s:#=.\u2013-]*(.+)",
     re.IGNORECASE,
 )
+_CASE_LABEL = re.compile(r"\W*(?:load\s*(?:case|combination|comb)|lc|case|comb(?:o|ination)?)\b\W*\w", re.IGNORECASE)
 _MEMBER = re.compile(r"(?:members?|memb|mbr|beams?|elements?|elem|bars?|rods?|columns?)\b[\s:#=.]*(\S.*)", re.IGNORECASE)
 _TOTAL = re.compile(r"(?:sum|totals?|sigma|\u03a3|\u2211|sub-?total|resultant|average|mean|applied|check)\b|[\u03a3\u2211]", re.I)
 _ABOUT_A_MEMBER = re.compile(r"\b(?:from|to|length|section|l\s*=|between)\b", re.IGNORECASE)
@@ -34,6 +36,9 @@ _UNITS_SENTENCE = re.compile(
     r"^\W*(?:all\s+)?units?\b|\b(?:forces?|moments?|displacements?|deflections?|rotations?|lengths?|reactions?|values|results)\s+"
     r"(?:are\s+)?(?:given\s+)?in\s+\S",
     re.IGNORECASE,
+)
+_TELLING = re.compile(
+    r"case|comb|lc|load|result|unit|positive|negative|kn|kip|\bin\b|mm|reaction|displ|force|moment|member|joint|node", re.IGNORECASE
 )
 _DATE = re.compile(
     r"\b\d{1,4}[-/.]\d{1,2}[-/.]\d{1,4}\b|\b\d{1,2}:\d{2}\b|\bpage\b|\bsheet\b|\bprinted\b|\bversion\b|\brev(?:ision)?\b"
@@ -75,10 +80,28 @@ def cells_of(line: str) -> tuple[Separator, list[Cell]]:
     return separator, (join_units(cells) if separator == "blank" else cells)
 
 
+def _names_columns(cells: list[str]) -> bool:
+    """Are most of the cells known as heads, and is a result among them?"""
+    known = [h for c in cells if is_header_word(c) and (h := head_of(c))]
+    if len(known) < 2:
+        return False
+    units = sum(unit_of(c.strip("[](){}")) is not None for c in cells)
+    results = any(h.noun in RESULT_NOUNS or h.noun in ("x", "E", "I", "A") or h.which for h in known)
+    return len(known) + units >= 0.6 * len(cells) and (results or len(known) == len(cells))
+
+
 def _end_numbers(filled: list[str]) -> int:
     """How many cells are a 1 or 2 behind a result's symbol ("N 1"): ends of members in a head."""
     pairs = zip(filled, filled[1:], strict=False)
     return sum(b in ("1", "2") and head_of(a).noun in RESULT_NOUNS for a, b in pairs)
+
+
+def is_prose(text: str) -> bool:
+    """A line of many words and no figures that says nothing of columns, cases, units or signs."""
+    if len(text) < 25 or any(c.isdigit() for c in text) or "\t" in text or "|" in text:
+        return False
+    words = re.split(r"[\s,;:.()]+", text.lower())
+    return len(words) > 5 and not _TELLING.search(text) and sum(is_header_word(w) for w in words) < 2
 
 
 def is_number(text: str) -> bool:
@@ -122,6 +145,8 @@ class _Scanner:
             return "expect", ""
         if body is not text and body.rstrip().endswith((".", "!", "?")):
             return "note", ""  # a sentence is neither a heading nor a head
+        if is_prose(body):
+            return "remark", ""
         separator, cells = cells_of(body)
         filled = [c.text for c in cells if c.text]
         numbers = sum(is_number(t) for t in filled)
@@ -148,13 +173,13 @@ class _Scanner:
             assert self.table
             self.table.heads.append((number, text))
             return "head", "units"
-        if (label := self._case_in(text)) and self.names.case(label):
-            return None  # "Load case: sway_right" is no head, though "right" and "case" are words of heads
-        if separator == "blank":
+        if separator == "blank" and numbers:
             filled = text.split()
             numbers = sum(is_number(t) for t in filled)
         if numbers > _end_numbers(filled) or not self._says_columns(text, filled, separator):
             return None
+        if (label := self._case_in(text)) and self.names.case(label):
+            return None  # "Load case: sway_right" is no head, though "right" and "case" are words of heads
         if self._head_is_open() and len(self.table.heads) < 3:  # type: ignore[union-attr]
             assert self.table
             self.table.heads.append((number, text))
@@ -189,17 +214,9 @@ class _Scanner:
             return False
         if _UNITS_SENTENCE.search(text):
             return False
-        groups = [[t for t in filled if not is_number(t)]]
-        if separator == "blank":
-            groups.append([c.text for c in wide_cells(text)])
-        for cells in groups:
-            heads = [head_of(c) for c in cells]
-            known = sum(is_header_word(c) for c in cells)
-            results = sum(h.noun in RESULT_NOUNS or h.noun in ("x", "E", "I", "A") or bool(h.which) for h in heads)
-            units = sum(unit_of(c.strip("[](){}")) is not None for c in cells)
-            if known >= 2 and known + units >= 0.6 * len(cells) and (results or known == len(cells) > 1):
-                return True
-        return False
+        if _names_columns([t for t in filled if not is_number(t)]):
+            return True
+        return separator == "blank" and _names_columns([c.text for c in wide_cells(text)])
 
     # -- headings
 
@@ -210,16 +227,18 @@ class _Scanner:
         if label is None:
             return None
         name = self._resolve_case(label)
+        if name is None and (len(label) > 30 or not _CASE_LABEL.match(text.strip())):
+            return None
         if name is None and numbers and self.table is not None and self._fits(filled):
             return None
         self.case, self.case_label = name, label
-        if name is None and label not in self.out.unknown_cases:
-            self.out.unknown_cases.append(label)
         self._carry_on(number, text)
         return "heading", f"case {name}" if name else f'case "{label}" is not one of the frame'
 
     def _case_in(self, text: str) -> str | None:
         """The case that a heading names, or None where it names none."""
+        if len(text) > LONGEST_HEADING:
+            return None
         tidy = " ".join(text.replace("\t", " ").strip().strip("*|[](){}\"'").split())
         if found := _CASE.match(tidy):
             return found.group(1).strip(" .:*\"'|")
@@ -242,10 +261,12 @@ class _Scanner:
         return None
 
     def _heading_of_member(self, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
+        if len(filled) > 6:
+            return None
         tidy = " ".join(text.strip().strip("*|").split())
         found = _MEMBER.fullmatch(tidy)
         label = found.group(1).strip(" :.") if found else tidy.rstrip(":").strip()
-        if len(filled) > 6 or (not found and (numbers or not text.rstrip().endswith(":"))):
+        if not found and (numbers or not text.rstrip().endswith(":")):
             return None
         if len(filled) > 2 and (separator_of(text) != "blank" or numbers and not _ABOUT_A_MEMBER.search(tidy)):
             return None

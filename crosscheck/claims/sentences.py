@@ -51,6 +51,8 @@ class _Told:
 
 def looks_told(text: str) -> bool:
     """Is the line a sentence with values in it, rather than a row of a table?"""
+    if not any(c.isdigit() for c in text):
+        return False
     told = list(_told(text))
     return bool(told) and all(t.unit and t.unit.dimension in _BY_DIMENSION for t in told) and any(
         _MOST.search(t.words) or any(re.search(p, t.words, re.IGNORECASE) for q, p in _WORDS.items() if q != "fy")

@@ -96,15 +96,16 @@ _BRACKETS = re.compile(r"[\[({<]([^\[\](){}<>]*)[\])}>]")
 _STRAY = re.compile(r"(?:^|[\s,;:/]|\bin\s)([^\s,;:]{1,12})\s*$")
 _FIT = frozenset({FORCE, LENGTH, MOMENT, ANGLE, Dimension(mass=1), Dimension(mass=1, length=1)})
 _SCALED = re.compile(r"^(?:x|\*|\u00d7)?\s*(?:1e|10\^?|10\*\*)([+-]?\d+)\s*[*\u00b7\s]?\s*(.+)$")
+_MAY_BE_UNIT = re.compile(r"(?!.*[A-Za-z]{9})[\w%\u00b0\u00b5\u00d7(/*^-][^,;:!?]*$")
 _NOT_UNITS = frozenset(["i", "j", "a", "b", "g", "x", "y", "z", "e", "f", "n", "m", "k", "c", "t", "h", "in"])
 """Bare letters that a head means as symbols, not as units."""
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=16384)
 def unit_of(text: str) -> Size | None:
     """The unit written in `text` if it can belong to a result, else None. Masses count as their weight."""
     text = text.strip().strip(".")
-    if not text or len(text) > LONGEST:
+    if not text or len(text) > LONGEST or not _MAY_BE_UNIT.match(text):
         return None
     if text == "%":
         return Size("%", Dimension(), 0.01)
@@ -130,13 +131,10 @@ def _tonnes(text: str) -> str:
     return re.sub(r"\bton(?:ne)?s?(?:f|\b)", "tf", text)
 
 
+@lru_cache(maxsize=8192)
 def head_of(text: str) -> Head:
     """A column head taken apart; noun "" where nothing in it is known."""
-    return _head(" ".join(text.split()))
-
-
-@lru_cache(maxsize=8192)
-def _head(text: str) -> Head:
+    text = " ".join(text.split())
     if len(text) > 80:
         return Head(text)
     bare, unit = _without_unit(text)
