@@ -17,7 +17,7 @@ from crosscheck import __version__
 if TYPE_CHECKING:
     from rich.console import RenderableType
 
-    from crosscheck.check import TwoPrintouts
+    from crosscheck.check import Opinions, TwoPrintouts
 
 EXIT = {"agree": 0, "disagree": 1, "undecided": 3}
 UNUSABLE = 2
@@ -91,6 +91,7 @@ def _add_common(command: argparse.ArgumentParser) -> None:
     command.add_argument("--axial", choices=("elastic", "rigid"), help="instead of what the frame file says")
     command.add_argument("--shear", choices=("rigid", "elastic"), help="instead of what the frame file says")
     command.add_argument("--order", type=int, choices=(1, 2), help="instead of what the frame file says")
+    command.add_argument("--idealisations", action="store_true", help="axial, shear and order the other way, side by side")
     command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
 
 
@@ -197,7 +198,7 @@ def run_opinions(args: argparse.Namespace) -> int:
     def report() -> RenderableType:
         from crosscheck.report.terminal import opinions_report
 
-        return opinions_report(result, check.workings(result) if args.working else ())
+        return opinions_report(result, check.workings(result) if args.working else (), *_effects(args, result))
 
     _give(args, document, report)
     return EXIT[result.verdict]
@@ -253,10 +254,23 @@ def run_verify(args: argparse.Namespace) -> int:
     def report() -> RenderableType:
         from crosscheck.report.terminal import verify_report
 
-        return verify_report(result)
+        return verify_report(result, *_effects(args, result.opinions))
 
     _give(args, document, report)
     return EXIT[result.verdict]
+
+
+def _effects(args: argparse.Namespace, result: Opinions) -> tuple[str, list[RenderableType]]:
+    """The line on the critical load factor, and what the idealisation does to the results where that is asked for."""
+    from crosscheck import check
+    from crosscheck.idealisations import key_values, variants
+    from crosscheck.report.effects import critical_line, idealisations_table
+
+    line = critical_line(result.frame, check.critical_factors(result.frame, result.names))
+    if not args.idealisations:
+        return line, []
+    found = variants(result.frame, result.names)
+    return line, [idealisations_table(result.frame, found, key_values(result.frame, found))]
 
 
 def _two_printouts(args: argparse.Namespace, result: TwoPrintouts) -> int:

@@ -104,10 +104,14 @@ def _warnings(frame: Frame) -> list[RenderableType]:
 # --- opinions
 
 
-def opinions_report(result: Opinions, working: Sequence[tuple[str, Sequence[WorkTable]]] = ()) -> RenderableType:
-    """What `crosscheck opinions` prints."""
+def opinions_report(
+    result: Opinions, working: Sequence[tuple[str, Sequence[WorkTable]]] = (), critical: str = "",
+    effects: Sequence[RenderableType] = (),
+) -> RenderableType:  # fmt: skip
+    """What `crosscheck opinions` prints. critical: a line on the critical load factor; effects: of the idealisation."""
     parts: list[RenderableType] = [_verdict_line(result.verdict, opinions_sentence(result)), *_warnings(result.frame)]
-    parts += [Text(line) for line in undetermined_lines(result)]
+    parts += [Text(line) for line in (*undetermined_lines(result), critical) if line]
+    parts += effects
     parts += [heading("How it was compared"), facts(opinions_facts(result))]
     for judged in result.judgements.values():
         parts += _opinion_differences(result.frame, judged)
@@ -313,13 +317,15 @@ def _work_cell(cell: str | float | None, scale: float) -> str:
 # --- verify
 
 
-def verify_report(result: Verification) -> RenderableType:
-    """What `crosscheck verify` prints."""
+def verify_report(
+    result: Verification, critical: str = "", effects: Sequence[RenderableType] = ()
+) -> RenderableType:
+    """What `crosscheck verify` prints; critical and effects as in opinions_report."""
     opinions = result.opinions
     parts: list[RenderableType] = [_verdict_line(result.verdict, claim_sentence(result))]
     parts += [Text(f"  {line}") for line in beside(result)]
     parts += _warnings(opinions.frame)
-    parts += [Text(line) for line in undetermined_lines(opinions)]
+    parts += [Text(line) for line in (*undetermined_lines(opinions), critical) if line]
     parts += _suspect_lines(result)
     parts += [heading("How it was compared"), facts(claim_facts(result))]
     for judged in opinions.judgements.values():
@@ -327,6 +333,7 @@ def verify_report(result: Verification) -> RenderableType:
             parts += _opinion_differences(opinions.frame, judged)
     for case in result.cases:
         parts += _claim_differences(opinions.frame, case.case, case.differences, case.compared)
+    parts += effects
     parts += _not_compared(result)
     for audit in result.audits:
         parts += _audit_lines(opinions.frame, audit)
