@@ -72,6 +72,8 @@ def loads_picture(frame: Frame, name: str) -> Picture:
     sketch.loads(load_table(frame, name))
     force, length = frame.units.force, frame.units.length
     caption = f"Loads of {name}, factors applied: {force}, {force}/{length} along members, couples {force} {length}."
+    if not sketch.small:
+        caption += f" Figures of spread loads are left out (more than {NAMED} members)."
     return Picture(sketch.figure, caption, f"Loads of {name}")
 
 
@@ -112,7 +114,7 @@ class CasePictures:
 
     def _opinions(self, sketch: Sketch, value: Floats, scale: float, peak: float) -> None:
         outlines, ribs = [], []
-        small = len(self.frame.members) <= NAMED
+        small = sketch.small
         for m in range(len(self.frame.members)):
             part = slice(int(self.start[m]), int(self.start[m + 1]))
             v = value[part]
@@ -125,8 +127,8 @@ class CasePictures:
                 continue
             foot, top = sketch.along(m, self.x[part]), sketch.along(m, self.x[part], scale * v)
             outlines.append(np.concatenate([foot[:1], top, foot[-1:]]))
-            ribs += [np.array(pair) for pair in zip(foot[1:-1], top[1:-1], strict=True)]
             if small:
+                ribs += [np.array(pair) for pair in zip(foot[1:-1], top[1:-1], strict=True)]
                 self._figures(sketch, m, self.x[part], v, scale, peak)
         sketch.lines(ribs, 0.35, ink="#9a9a9a")
         sketch.lines(outlines, 1.0)
@@ -161,8 +163,8 @@ class CasePictures:
     ) -> bool:
         lines = []
         length = self.frame.member_table.length
+        squares = [sketch.along(m, 0.0 if end == 0 else float(length[m]), scale * v) for (m, end), v in ends.items()]
         for (m, end), v in ends.items():
-            sketch.square(sketch.along(m, 0.0 if end == 0 else float(length[m]), scale * v))
             if end == 0 and (m, 1) in ends:
                 part = slice(int(self.start[m]), int(self.start[m + 1]))
                 own, x = value[part], self.x[part]
@@ -173,10 +175,10 @@ class CasePictures:
         for value_at in self.values:
             if value_at.kind == "span" and value_at.quantity == quantity and value_at.at is not None:
                 m = self.frame.member_index[str(value_at.member)]
-                sketch.square(sketch.along(m, value_at.at, scale * value_at.value))
-                ends = {**ends, (m, 2): value_at.value}
+                squares.append(sketch.along(m, value_at.at, scale * value_at.value))
         sketch.lines(lines, 1.1, (0, (4, 2)))
-        return bool(ends)
+        sketch.squares(squares)
+        return bool(squares)
 
     def _caption(self, quantity: str, claim: bool, rest: int) -> str:
         unit = words.unit_of(self.frame, quantity)
@@ -205,9 +207,8 @@ class CasePictures:
         for v in self.values:
             if v.kind == "displacement" and v.quantity in ("dx", "dy"):
                 claimed.setdefault(str(v.joint), np.full(2, np.nan))[int(v.quantity == "dy")] = v.value
-        for joint, move in claimed.items():
-            k = self.frame.joint_index[joint]
-            sketch.square(sketch.xy[k] + times * np.where(np.isfinite(move), move, np.nan_to_num(moves[k])))
+        at = [(self.frame.joint_index[joint], move) for joint, move in claimed.items()]
+        sketch.squares([sketch.xy[k] + times * np.where(np.isfinite(v), v, np.nan_to_num(moves[k])) for k, v in at])
         rest = _ring(sketch, [(k, p) for k, p in self.marked if p.of == "joints"])
         text = f"Deflected shape of {self.name}, displacements {times:,.3g} times their size, by {self.answer.opinion}."
         if self.values:

@@ -32,8 +32,10 @@ from crosscheck.review.finding import Finding, Subject
 
 MOST_ROWS = 6000
 """Rows of result tables in one record; the JSON document has them all."""
-MOST_PICTURED = 6
-"""Cases with pictures in one record."""
+MOST_MISFITS = 40
+"""Rows of one table of the audit: one slip is felt in many places."""
+MOST_PICTURED, MOST_DRAWN = 6, 1200
+"""Cases with pictures in one record, and members drawn in them all."""
 SHARED = {
     ("slope-deflection", "moment-distribution"):
         "the frame file and its reader; directions and places of loads; the list of what is a mechanism or undetermined; "
@@ -200,7 +202,7 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
         _differences(frame, numbered, "Differences between the claim and the opinions", claim=True),
         _differences(frame, _own_differences(opinions), "Differences between the opinions", claim=False),
         Section("Audit of the claim", tuple(b for audit in result.audits for b in _audit(frame, audit))),
-        *(_case(opinions, name, result, numbered) for name in names[:MOST_PICTURED]),
+        *(_case(opinions, name, result, numbered) for name in names[: _pictured(frame)]),
         *_tables(opinions, names),
         Section("Not compared", (Says(tuple(terminal.not_compared_lines(result)) or ("Nothing was left out.",)),)),
         *_closing(opinions, around, numbered),
@@ -220,7 +222,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
         _checked(frame, terminal.opinions_facts(result), around),
         _drawing(frame, numbered),
         _differences(frame, numbered, "Differences between the opinions", claim=False),
-        *(_case(result, name, None, numbered) for name in result.names[:MOST_PICTURED]),
+        *(_case(result, name, None, numbered) for name in result.names[: _pictured(frame)]),
         *_tables(result, list(result.names)),
         Section("Not compared", (Says(tuple(terminal.undetermined_lines(result)) or ("Nothing was left out.",)),)),
         *_closing(result, around, numbered),
@@ -238,7 +240,7 @@ def inspect_record(subject: Subject, findings: Sequence[Finding], around: Circum
         (name, *(words.number(float(v), float(np.abs(subject.total(name)[:2]).max())) for v in subject.total(name)[:2]))
         for name in frame.cases
     )
-    pictured = list(frame.cases)[:MOST_PICTURED] if frame.members else []
+    pictured = list(frame.cases)[: _pictured(frame)] if frame.members else []
     sections = [
         _checked(frame, terminal.frame_facts(frame), around),
         _drawn(frame, [(k, p) for k, f in enumerate(findings, 1) for p in _places(frame, f)]),
@@ -292,6 +294,13 @@ def _open(verdict: str, around: Circumstances, questions: Sequence[str]) -> tupl
     serious = sum(f.grade == "serious" for f in around.findings)
     reasons += [words.counted(serious, "serious finding in the model", "serious findings in the model")] if serious else []
     return (*reasons, *(questions if verdict != "agree" else ()))
+
+
+def _pictured(frame: Frame) -> int:
+    """How many cases have pictures: fewer for a large frame."""
+    return max(1, min(MOST_MISFITS = 40
+"""Rows of one table of the audit: one slip is felt in many places."""
+MOST_PICTURED, MOST_DRAWN // max(len(frame.members), 1)))
 
 
 def _numbered(differences: Iterable[Difference]) -> list[tuple[int, Difference]]:
@@ -395,12 +404,16 @@ def _audit(frame: Frame, audit: CaseAudit) -> list[Block]:
         rows = tuple(
             (s.check, s.where or "whole frame", s.component, words.short(s.residual), words.short(s.allowed),
              words.unit_of(frame, "moment" if s.component == "moment" else "fx"))
-            for s in failing
+            for s in failing[:MOST_MISFITS]
         )  # fmt: skip
         columns = (("balance", "left"), ("where", "left"), ("of", "left"), ("left over", "right"), ("allowed", "right"),
                    ("unit", "left"))  # fmt: skip
-        blocks.append(Grid(f"Balances of {audit.case} that fail, worst first.", columns, rows))
+        blocks.append(Grid(f"Balances of {audit.case} that fail, worst first{_first(len(failing))}.", columns, rows))
     return blocks + _compatibility(frame, audit)
+
+
+def _first(count: int) -> str:
+    return f", the first {MOST_MISFITS} of {count:,}" if count > MOST_MISFITS else ""
 
 
 def _compatibility(frame: Frame, audit: CaseAudit) -> list[Block]:
@@ -416,11 +429,12 @@ def _compatibility(frame: Frame, audit: CaseAudit) -> list[Block]:
         rows = tuple(
             (c.kind, c.member or c.where, c.where if c.member else c.direction, words.short(c.rotation),
              words.short(c.rotation - c.expected), words.short(c.allowed), terminal.deformation_unit(frame, c))
-            for c in failing
+            for c in failing[:MOST_MISFITS]
         )  # fmt: skip
         columns = (("what", "left"), ("of", "left"), ("at", "left"), ("by the claim", "right"), ("misfit", "right"),
                    ("allowed", "right"), ("unit", "left"))  # fmt: skip
-        blocks.append(Grid(f"Deformations of {audit.case} that do not fit together, worst first.", columns, rows))
+        caption = f"Deformations of {audit.case} that do not fit together, worst first{_first(len(failing))}."
+        blocks.append(Grid(caption, columns, rows))
     return blocks
 
 
@@ -447,7 +461,8 @@ def _tables(opinions: Opinions, names: Sequence[str]) -> list[Section]:
     each = 2 * len(frame.members) + len(frame.joints) + len(frame.supports)
     room = max(1, MOST_ROWS // max(each, 1))
     sections = [Section(f"Results: {n}", tuple(_results(opinions, n))) for n in names[:room]]
-    left = [f"Pictures of {words.some(names[MOST_PICTURED:])} are left out."] if len(names) > MOST_PICTURED else []
+    pictured = _pictured(frame)
+    left = [f"Pictures of {words.some(names[pictured:])} are left out."] if len(names) > pictured else []
     left += [f"Results of {words.some(names[room:])} are left out; --json gives them."] if len(names) > room else []
     return [*sections, *([Section("Left out of this record", (Says(tuple(left)),))] if left else [])]
 

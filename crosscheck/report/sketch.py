@@ -10,6 +10,7 @@ import io
 import math
 import re
 import warnings
+from collections import Counter
 from collections.abc import Iterable, Sequence
 from typing import Any
 
@@ -48,6 +49,7 @@ class Sketch:
         self.high = high + self.unit * np.array([right, above])
         span = self.high - self.low
         height = min(max(WIDTH * span[1] / span[0], LEAST), MOST)
+        self.small = len(frame.members) <= NAMED
         self._tips: list[Floats] = []
         self.figure = Figure(figsize=(WIDTH, height))
         self.axes = self.figure.add_axes((0.0, 0.0, 1.0, 1.0))
@@ -70,8 +72,8 @@ class Sketch:
             self._ink(Path.make_compound_path(*(Path(tip, closed=True) for tip in self._tips)), ink, ink, 0.2)
             self._tips.clear()
 
-    def _ink(self, path: Path, fill: str, ink: str, width: float, style: Any = "solid") -> None:
-        self.axes.add_patch(PathPatch(path, facecolor=fill, edgecolor=ink, linewidth=width, linestyle=style,
+    def _ink(self, path: Path, fill: str, ink: str, width: float, style: Any = "solid", zorder: int = 1) -> None:
+        self.axes.add_patch(PathPatch(path, facecolor=fill, edgecolor=ink, linewidth=width, linestyle=style, zorder=zorder,
                                       clip_on=False, capstyle="butt", joinstyle="round"))  # fmt: skip
 
     def area(self, corners: Any, fill: str = "none", ink: str = INK, width: float = 0.6) -> None:
@@ -82,11 +84,12 @@ class Sketch:
         self.axes.add_patch(Circle((float(at[0]), float(at[1])), radius * self.unit, facecolor=fill, edgecolor=INK,
                                    linewidth=width, clip_on=False, zorder=3))  # fmt: skip
 
-    def square(self, at: Any, half: float = 0.22) -> None:
-        x, y = float(at[0]), float(at[1])
-        h = half * self.unit
-        self.axes.add_patch(Polygon([(x - h, y - h), (x + h, y - h), (x + h, y + h), (x - h, y + h)], closed=True,
-                                    facecolor="white", edgecolor=INK, linewidth=0.8, clip_on=False, zorder=3))  # fmt: skip
+    def squares(self, places: Sequence[Any], half: float = 0.22) -> None:
+        """Hollow squares about places."""
+        corners = half * self.unit * np.array([(-1, -1), (1, -1), (1, 1), (-1, 1), (-1, -1)])
+        paths = [Path(np.asarray(at, dtype=float) + corners, closed=True) for at in places]
+        if paths:
+            self._ink(Path.make_compound_path(*paths), "white", INK, 0.8, zorder=3)
 
     def text(self, at: Any, says: str, size: float = 7.5, turn: float = 0.0, across: str = "center",
              up: str = "center", ink: str = INK, weight: str = "normal", slant: str = "normal") -> None:  # fmt: skip
@@ -182,15 +185,14 @@ class Sketch:
 
     def names(self, marked: Sequence[str] = ()) -> None:
         """Joints upright beside them, members in italics along them; only what is marked in a large frame."""
-        many = len(self.frame.members) > NAMED
         for k, joint in enumerate(self.frame.joints):
-            if not many or joint in marked:
+            if self.small or joint in marked:
                 out = self._free_side(k)
                 if joint in self.frame.supports:  # clear of the support's own sign
                     out = out + np.array([0.45, 0.55]) * np.sign(out + 1e-9)
                 self.text(self.xy[k] + 0.95 * self.unit * out, joint, 7.5, weight="bold")
         for m, name in enumerate(self.frame.members):
-            if not many or name in marked:
+            if self.small or name in marked:
                 self.beside(m, 0.5, name)
 
     def beside(self, m: int, share: float, says: str, side: float = 1.0, size: float = 6.8) -> None:
@@ -247,40 +249,46 @@ class Sketch:
         self.heads()
 
     def _bands(self, loads: LoadTable) -> None:
-        t = self.table
-        most = max(float(np.abs(np.hypot(loads.line_along, loads.line_across)).max(initial=0.0)), 1e-300)
-        done: dict[int, float] = {}
-        count: dict[int, int] = {}
-        for q, m in enumerate(loads.line_member.tolist()):
-            along, across = loads.line_along[q], loads.line_across[q]
-            size = np.hypot(along, across)
-            if size.max() <= 1e-9 * most:
-                continue
-            k = int(size.argmax())
-            way = np.array([along[k] * t.cos[m] - across[k] * t.sin[m], along[k] * t.sin[m] + across[k] * t.cos[m]])
-            way /= size[k]
-            base = done.get(m, 0.0)
-            x = np.linspace(loads.line_start[q], loads.line_end[q], 7)
-            share = np.interp(x, x[[0, -1]], size)
-            tall = self.unit * (0.25 + 0.75 * share / most)
-            lies_along = abs(way[0] * t.cos[m] + way[1] * t.sin[m]) > 0.999
-            foot = self.along(m, x)
-            if lies_along:
-                foot = self.along(m, x, -(base + 0.35 * self.unit))
-                self.lines([[p - 0.4 * self.unit * way, p + 0.1 * self.unit * way] for p in foot], 0.5, ink=GREY)
-            else:
-                foot = foot - (base + 0.12 * self.unit) * way
-                top = foot - tall[:, None] * way
-                self.area([*foot, *top[::-1]], ink=GREY, width=0.5)
-                self.lines(list(zip(top, foot, strict=True)), 0.4, ink=GREY)
-                for p in foot:
-                    self._head(p, way, 0.2)
-            count[m] = count.get(m, -1) + 1
-            done[m] = base + float(tall.max()) + 0.15 * self.unit
-            ends = [words.number(float(v)) for v in size]
+        """Spread loads as bands on the side they come from, those on one member upon one another."""
+        size = np.hypot(loads.line_along, loads.line_across)
+        most = float(size.max(initial=0.0))
+        strokes: list[Floats] = []
+        height: dict[int, float] = {}
+        count: Counter[int] = Counter()
+        for q in np.flatnonzero(size.max(axis=1, initial=0.0) > 1e-9 * most).tolist():
+            m = int(loads.line_member[q])
+            strokes += self._band(loads, q, size[q], most, height, count[m])
+            count[m] += 1
+        self.lines(strokes, 0.45, ink=GREY)
+
+    def _band(
+        self, loads: LoadTable, q: int, size: Floats, most: float, height: dict[int, float], before: int
+    ) -> list[Floats]:
+        """Strokes of one band; `height` by member is what stands there already, and grows."""
+        t, u = self.table, self.unit
+        m, k = int(loads.line_member[q]), int(size.argmax())
+        cos, sin = float(t.cos[m]), float(t.sin[m])
+        along, across = loads.line_along[q, k] / size[k], loads.line_across[q, k] / size[k]
+        way = np.array([along * cos - across * sin, along * sin + across * cos])
+        x = np.linspace(loads.line_start[q], loads.line_end[q], 7 if self.small else 3)
+        tall = u * (0.25 + 0.75 * np.interp(x, x[[0, -1]], size) / most)
+        base = height.get(m, 0.0)
+        height[m] = base + float(tall.max()) + 0.15 * u
+        if abs(across) < 0.04:  # along the member: dashes beside it
+            foot = self.along(m, x, -(base + 0.35 * u))
+            strokes = [np.array([p - 0.4 * u * way, p + 0.1 * u * way]) for p in foot]
+        else:
+            foot = self.along(m, x) - (base + 0.12 * u) * way
+            top = foot - tall[:, None] * way
+            strokes = [np.array([*foot, *top[::-1], foot[0]]), *(np.array(pair) for pair in zip(top, foot, strict=True))]
+            for p in foot:
+                self._head(p, way, 0.2)
+        if self.small:
             # Bands upon one another are told apart by figures that do not stand in one line.
-            self.text(self.along(m, float(x[(3, 1, 5, 2, 4)[count[m] % 5]])) - (done[m] + 0.35 * self.unit) * way,
-                      ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}", 6.5)  # fmt: skip
+            at = self.along(m, float(x[(3, 1, 5, 2, 4)[before % 5]])) - (height[m] + 0.35 * u) * way
+            ends = [words.number(float(v)) for v in size]
+            self.text(at, ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}", 6.5)
+        return strokes
 
     def _arrows(self, loads: LoadTable) -> None:
         t = self.table
@@ -343,7 +351,8 @@ _NEEDLESS = (
     re.compile(r"^\s+", re.MULTILINE),
 )
 _UNSAID = ("Date", "Creator", "Format", "Type")
-_NUMBER = re.compile(r"(\d+\.\d\d)\d+")
+_PATH = re.compile(r' d="([^"]*)"')
+_NUMBER = re.compile(r"(\d+\.\d)\d+")
 
 
 def svg(figure: Figure, title: str, salt: str) -> str:
@@ -357,7 +366,8 @@ def svg(figure: Figure, title: str, salt: str) -> str:
     text = _IDENTITY.sub("", text[text.index("<svg") :])
     for needless in _NEEDLESS:
         text = needless.sub("", text)
-    text = _NUMBER.sub(r"\1", text)
+    # A tenth of a point is less than any line's width.
+    text = _PATH.sub(lambda m: f' d="{_NUMBER.sub(chr(92) + "1", " ".join(m[1].split()))}"', text)
     from markupsafe import escape
 
     head = f'<svg role="img" aria-label="{escape(words.visible(title))}"'
