@@ -5,7 +5,15 @@
     sways         the independent sways, from geometry
     distribution  release and carry over
     holding       holding forces and sway corrections, repeated until joints and sways balance
+    process       first order: the cases as columns of one process
     opinion       the answer; spans, values along the members; working, tables to follow by hand
+
+and in second order
+
+    stretches     the member under axial force: moment-area and Gauss's rule again, short stretches joined
+    displaced     release and carry over one joint at a time, the axial forces taken as known
+    critical      how far the axial forces can grow
+    second_order  repeated until the axial forces settle; bent_spans and displaced_working as above
 
 Shares no mechanics with the other opinions: formulas that stand there too are meant to stand twice.
 """

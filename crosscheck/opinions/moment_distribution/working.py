@@ -10,6 +10,7 @@ import numpy as np
 from crosscheck.answer import WorkTable
 from crosscheck.frame.kinematics import Study
 from crosscheck.frame.model import Floats, Frame
+from crosscheck.opinions.moment_distribution.displaced_working import by_joint, displaced_working
 from crosscheck.opinions.moment_distribution.holding import FEW, Held, start, unbalanced
 from crosscheck.opinions.moment_distribution.process import Process, distribute
 
@@ -32,6 +33,8 @@ def working(frame: Frame, study: Study, name: str) -> list[WorkTable]:
 
     Units are the frame's; moments clockwise on the member ends, rotations per radian.
     """
+    if frame.analysis.order == 2:
+        return displaced_working(frame, name)
     process = distribute(frame, (name,))
     hand = _Hand(process)
     tables = [_factors(hand), _fixed_ends(hand), _rounds(hand)]
@@ -120,10 +123,7 @@ class _Hand:
 
     def rows(self) -> list[tuple[str, str, int, int]]:
         """Joint, member, its index and end, joint by joint."""
-        members, joints = list(self.held.frame.members), list(self.held.frame.joints)
-        flat = self.held.ends.ravel()
-        order = np.argsort(flat, kind="stable")
-        return [(joints[flat[k]], members[k // 2], int(k // 2), int(k % 2)) for k in order]
+        return by_joint(self.held)
 
 
 def _factors(hand: _Hand) -> WorkTable:
