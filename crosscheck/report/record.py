@@ -298,9 +298,7 @@ def _open(verdict: str, around: Circumstances, questions: Sequence[str]) -> tupl
 
 def _pictured(frame: Frame) -> int:
     """How many cases have pictures: fewer for a large frame."""
-    return max(1, min(MOST_MISFITS = 40
-"""Rows of one table of the audit: one slip is felt in many places."""
-MOST_PICTURED, MOST_DRAWN // max(len(frame.members), 1)))
+    return max(1, min(MOST_PICTURED, MOST_DRAWN // max(len(frame.members), 1)))
 
 
 def _numbered(differences: Iterable[Difference]) -> list[tuple[int, Difference]]:
