@@ -247,7 +247,7 @@ FRAMES = {
 TURNED: dict[type[ast.operator], type[ast.operator]] = {
     ast.Add: ast.Sub, ast.Sub: ast.Add, ast.Mult: ast.Div, ast.Div: ast.Mult,
 }  # fmt: skip
-ASIDE = ("__init__.py", "working.py", "qualification.py", "scope.py")
+ASIDE = ("__init__.py", "working.py", "equations.py", "qualification.py", "scope.py")
 """Modules of an opinion without mechanics of its own results."""
 PLACES = 120
 """Most places altered in each opinion, in an order fixed by a seed."""

@@ -78,6 +78,6 @@ def critical_factors(frame: Frame, names: Sequence[str] | None = None, beyond: f
 
 def working(frame: Frame, study: Study, name: str) -> list[WorkTable]:
     """The slope-deflection equations of one case with their numbers, for a reader who follows by hand."""
-    from crosscheck.opinions.slope_deflection.working import equations
+    from crosscheck.opinions.slope_deflection.equations import equations
 
     return equations(frame, study, name)
