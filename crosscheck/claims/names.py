@@ -63,6 +63,11 @@ class _Book:
                 if key:
                     self.levels[level].setdefault(key, []).append(name)
 
+    def give(self, given: Mapping[str, str]) -> None:
+        """Further writings that stand for names."""
+        self.given |= {plain(k): v for k, v in given.items()} | dict(given)
+        self._found.clear()
+
     def find(self, text: str, number_alone: bool = True) -> str | None:
         """The one name that `text` may mean, or None. `number_alone`: "3" may mean "m3"."""
         if len(text) > self.longest:
@@ -105,10 +110,17 @@ class _Book:
 
 @dataclass(frozen=True, slots=True)
 class MemberHit:
-    """A member of the frame, and how the paste's runs: +1 as the frame's, -1 the other way, 0 not said."""
+    """A member of the frame, and how the paste's runs: +1 as the frame's, -1 the other way, 0 not said.
+
+    part: for a part of a member that the paste prints as a member of its own, the distances of its start and end from the
+      frame's `from` joint (NaN where it is not said where inside the member that is); else None.
+    ends: the paste's names of a part's joints, start first, where the paste gives them.
+    """
 
     name: str
     run: int
+    part: tuple[float, float] | None = None
+    ends: tuple[str, str] | None = None
 
 
 class Names:
@@ -129,6 +141,19 @@ class Names:
         for name, ends in frame.members.items():
             self._between.setdefault(ends, []).append(name)
         self._known: dict[str, MemberHit | None] = {}
+        self._learned: dict[str, MemberHit] = {}
+        self._inner: frozenset[str] = frozenset()
+
+    def learn(self, joints: Mapping[str, str], members: Mapping[str, MemberHit], inner: Iterable[str]) -> None:
+        """Takes over what the paste's own coordinates and member ends say of its names; it goes before likeness."""
+        self._joints.give(joints)
+        self._learned |= {plain(without_prefix(label, "member")): hit for label, hit in members.items()}
+        self._inner |= {plain(without_prefix(label, "joint")) for label in inner}
+        self._known.clear()
+
+    def is_inner(self, text: str) -> bool:
+        """Is it a joint of the paste that only divides a member of the frame?"""
+        return plain(without_prefix(text, "joint")) in self._inner
 
     def joint(self, text: str) -> str | None:
         return self._joints.find(text)
@@ -154,6 +179,8 @@ class Names:
         return self._known[text]
 
     def _find_member(self, text: str) -> MemberHit | None:
+        if self._learned and (known := self._learned.get(plain(without_prefix(text, "member")))):
+            return known
         if text.strip() in self.frame.members or plain(text) in self._members.given or text in self._members.given:
             name = self._members.find(text)
             return MemberHit(name, self._run(name, text)) if name else None

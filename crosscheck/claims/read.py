@@ -5,15 +5,17 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
+from math import hypot, isnan
 from pathlib import Path
 
 from crosscheck.claims.decode import lines_of, read_source, refuse
+from crosscheck.claims.echo import Echo, Piece, echo_facts, learn, pieces_stated
 from crosscheck.claims.grid import Grid, grid_of
 from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Meaning, Role, dimension_of, meaning_of
 from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.readfile import checked
-from crosscheck.claims.reading import Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
+from crosscheck.claims.reading import EchoFact, Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
 from crosscheck.claims.scan import RawTable, Scan, cells_of, is_number, scan
 from crosscheck.claims.sentences import entries_told
 from crosscheck.claims.stated import Stated, stated_in, with_options
@@ -53,13 +55,17 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
     for raw in scanned.tables:
         if raw.rows:
             reader.commas = reader.commas or commas_are_decimal(_numbers_of(raw))
-    for raw in scanned.tables:
-        if raw.rows:
-            reader.table(raw)
+    read = [reader.understood(raw) for raw in scanned.tables if raw.rows]
+    reader.learn(read)
+    for raw, grid, meaning in read:
+        reader.table(raw, grid, meaning)
     for line, sentence, case in scanned.sentences:
         reader.sentence(line, sentence, case)
     for sentence in options.values:
         reader.value(sentence, file)
+    if reader.left_inside:
+        whole = ", ".join(sorted(reader.left_inside))
+        reader.notes.append(f"values inside {whole} are not compared: it is not said where its parts meet")
     if not reader.entries and not reader.foreign and not reader.undecided and not scanned.unknown_cases:
         refuse(file or "claim", *_nothing(scanned, reader))
     return Reading(
@@ -73,7 +79,8 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
         foreign=tuple(reader.foreign),
         signs=stated.signs,
         notes=tuple(reader.notes),
-        undecided=tuple(dict.fromkeys(reader.undecided)),
+        undecided=tuple(dict.fromkeys([*reader.undecided, *reader.unread_said()])),
+        echo=tuple(reader.echo),
         unknown_cases=tuple(scanned.unknown_cases),
         expect=scanned.expect,
     )
@@ -123,6 +130,16 @@ class _Misread(Exception):
         self.foreign = foreign
 
 
+_Table = tuple[RawTable, Grid, Meaning]
+
+
+def _runs(piece: Piece) -> int:
+    """Which way a part runs, from what is known of its two ends."""
+    if piece.start < piece.end or piece.start == 0.0 or (isnan(piece.start) and piece.end > 0):
+        return 1
+    return -1 if piece.start > piece.end or piece.end == 0.0 or piece.start > 0 else 1
+
+
 @dataclass(slots=True)
 class _Reader:
     names: Names
@@ -132,18 +149,42 @@ class _Reader:
     entries: list[Entry] = field(default_factory=list)
     tables: list[TableRead] = field(default_factory=list)
     odd: list[tuple[int, str, str]] = field(default_factory=list)
+    unread: list[tuple[int, str]] = field(default_factory=list)
     foreign: list[tuple[int, str, str]] = field(default_factory=list)
     notes: list[str] = field(default_factory=list)
     undecided: list[str] = field(default_factory=list)
+    echo: list[EchoFact] = field(default_factory=list)
+    left_inside: set[str] = field(default_factory=set)
     commas: bool | None = False
     """Does any table of the paste show that its commas stand before decimals? A table that cannot tell follows it."""
 
-    def table(self, raw: RawTable) -> None:
-        """Reads one table into entries; what cannot be used is noted by line."""
+    def understood(self, raw: RawTable) -> _Table:
         grid = grid_of(raw, self.names, self.options.columns)
-        meaning = meaning_of(grid, raw, self.names)
+        return raw, grid, meaning_of(grid, raw, self.names)
+
+    def learn(self, read: list[_Table]) -> None:
+        """Names from the other model's own input, and from the reading file's lists of elements."""
+        echo = Echo()
+        for _, grid, meaning in read:
+            if meaning.kind.startswith("echo"):
+                echo.facts += echo_facts(meaning.kind, grid, meaning)
+        learn(echo, self.names)
+        ends = {f.where: tuple(str(f.value).split("\t")) for f in echo.facts if f.what == "member ends"}
+        hits = dict(echo.members)
+        for label, p in (echo.pieces | pieces_stated(self.options.parts, self.names)).items():
+            pair = ends.get(label)
+            hits[label] = MemberHit(p.member, _runs(p), (p.start, p.end), (pair[0], pair[1]) if pair else None)
+        self.names.learn(echo.joints, hits, echo.inner)
+        self.echo, self.notes = echo.facts, [*self.notes, *echo.notes]
+        if hits or echo.joints:
+            read[:] = [t if t[2].kind.startswith("echo") else self.understood(t[0]) for t in read]
+
+    def table(self, raw: RawTable, grid: Grid, meaning: Meaning) -> None:
+        """Reads one table into entries; what cannot be used is noted by line."""
         number = len(self.tables) + 1
         self.odd += grid.odd
+        if meaning.kind and not meaning.kind.startswith("echo"):
+            self.unread += [(line, why) for line, text, why in grid.odd if self._begins_with_a_name(text)]
         self._trace(grid.odd)
         columns = tuple((h.text, _says(r)) for h, r in zip(grid.heads, meaning.roles, strict=False))
         self.tables.append(
@@ -155,6 +196,18 @@ class _Reader:
             if meaning.why:
                 self.undecided.append(f"table {number}: {meaning.why}")
             self._keep(_in_order(list(self._rows(number, raw, grid, meaning))), raw)
+
+    def _begins_with_a_name(self, text: str) -> bool:
+        first = next((c.text for c in cells_of(text)[1] if c.text), "")
+        return self.names.member(first) is not None or self.names.joint(first) is not None
+
+    def unread_said(self) -> list[str]:
+        """Results that stand there and cannot be read keep a claim from agreeing; in a table that nobody can read they say nothing."""
+        if not self.unread or not self.entries:
+            return []
+        line, why = self.unread[0]
+        many = f"{len(self.unread)} results" if len(self.unread) > 1 else "a result"
+        return [f"{many} could not be read (line {line}: {why}); correct what is printed, or leave it empty"]
 
     def _keep(self, entries: list[Entry], raw: RawTable) -> None:
         """Entries of a table; end values whose end nothing tells are not understood."""
@@ -255,6 +308,8 @@ class _Reader:
         if is_blank(label):
             raise _Misread("no joint is named")
         name = self.names.joint(label)
+        if name is None and self.names.is_inner(label):
+            raise _Misread(f'"{label}" is no joint of the frame: it only divides a member')
         if name is None:
             raise _Misread(f'the frame has no joint "{label}"', foreign=True)
         return name
@@ -293,6 +348,9 @@ class _Reader:
         for label in (cells.get("joint", ""), cells.get("end", "")):
             if is_blank(label):
                 continue
+            if place.member.ends and plain(label) in (ends := [plain(e) for e in place.member.ends]):
+                place.place = ends.index(plain(label))
+                continue
             joint = self.names.joint(label)
             if joint in (first, last):
                 place.joint, place.end = joint, 0 if joint == first else 1
@@ -325,14 +383,17 @@ class _Reader:
             if number is None:
                 why = f'"{row[k]}" is not a number'
                 self.odd.append((line, text.strip()[:200], why))
+                self.unread.append((line, why))
                 self._trace([(line, text, why)])
                 continue
-            yield self._entry(table, line, role, number, unit, meaning, place, station)
+            entry = self._entry(table, line, role, number, unit, meaning, place, station)
+            if entry is not None:
+                yield entry
 
     def _entry(
         self, table: int, line: int, role: Role, number: Number, unit: Size | None, meaning: Meaning, place: _Place,
         station: Role | None,
-    ) -> Entry:  # fmt: skip
+    ) -> Entry | None:  # fmt: skip
         kind: Kind = "end" if meaning.kind == "ends" else meaning.kind  # type: ignore[assignment]
         entry = Entry(table, line, kind, role.quantity, number, unit, case=place.case, axes=role.axes)
         if place.member is None:
@@ -340,13 +401,40 @@ class _Reader:
         entry = replace(entry, member=place.member.name, run=place.member.run)
         if kind == "end":
             spot = role.end if role.end is not None else place.place
+            if place.member.part is not None:
+                return self._of_part(entry, spot, place.member)
             return _joined(replace(entry, end=place.end, place=spot), self.names)
+        if kind == "extreme" and place.member.part is not None:
+            raise _Misread("the largest value of a part of a member is not that of the member")
         if kind == "extreme":
             return replace(entry, extreme=role.which or place.which or "size")
         assert place.at is not None and station is not None
         unit = station.unit or (None if station.share else self.stated.unit("station"))
         at = place.at.value * (0.01 if station.share and "%" in (place.at.tail + str(station.unit)) else 1.0)
-        return replace(entry, at=at, at_unit=unit, at_share=station.share)
+        entry = replace(entry, at=at, at_unit=unit, at_share=station.share)
+        if place.member.part is not None:
+            start, end = place.member.part
+            if isnan(start) or isnan(end):
+                raise _Misread("it is not said where in its member this part lies")
+            entry = replace(entry, origin=start, reach=abs(end - start))
+        return entry
+
+    def _of_part(self, entry: Entry, spot: int | None, hit: MemberHit) -> Entry | None:
+        """An end value of a part: of the member's own end, or of a place inside it."""
+        if spot is None or hit.part is None:
+            raise _Misread("which end of the part is not said")
+        at = hit.part[spot]
+        if isnan(at):
+            self.left_inside.add(hit.name)
+            return None
+        entry = replace(entry, place=spot)
+        first, last = self.names.frame.members[hit.name]
+        (x0, y0), (x1, y1) = self.names.frame.xy[first], self.names.frame.xy[last]
+        length = hypot(x1 - x0, y1 - y0)
+        if at in (0.0, length) or abs(at - length) <= 1e-9 * length:
+            end = 0 if at == 0.0 else 1
+            return replace(entry, end=end, joint=(first, last)[end])
+        return replace(entry, end=spot if hit.run > 0 else 1 - spot, cut=at)
 
 
 def _suits(unit: Size, quantity: str) -> bool:

@@ -102,6 +102,12 @@ class Entry:
     extreme: str | None = None
     axes: str = ""
     face: bool = False
+    cut: float | None = None
+    """For an end value of a part of a member that ends inside it: the distance from the frame's `from` joint."""
+    origin: float | None = None
+    """For a value along a part of a member: the distance of the part's start from the frame's `from` joint."""
+    reach: float | None = None
+    """The part's length."""
     sense: str = ""
     """From words: "size" where no direction is said, "said" where one is (the sign is then no open choice)."""
     comma_open: bool = False

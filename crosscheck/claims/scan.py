@@ -9,7 +9,7 @@ import re
 from dataclasses import dataclass, field
 
 from crosscheck.claims.names import MemberHit, Names, plain
-from crosscheck.claims.numbers import parse_number
+from crosscheck.claims.numbers import is_blank, parse_number
 from crosscheck.claims.reading import LineTrace
 from crosscheck.claims.sentences import looks_told
 from crosscheck.claims.split import Cell, Separator, is_rule, join_units, separator_of, split, wide_cells
@@ -40,6 +40,8 @@ _UNITS_SENTENCE = re.compile(
 _TELLING = re.compile(
     r"case|comb|lc|load|result|unit|positive|negative|kn|kip|\bin\b|mm|reaction|displ|force|moment|member|joint|node", re.IGNORECASE
 )
+_SPOILT = re.compile(r"\d|\*\*|##|^#|^[+-]?(?:inf|infinity|overflow)$", re.IGNORECASE)
+"""What is left of a number that was printed too wide, divided by zero or mistyped."""
 _DATE = re.compile(
     r"\b\d{1,4}[-/.]\d{1,2}[-/.]\d{1,4}\b|\b\d{1,2}:\d{2}\b|\bpage\b|\bsheet\b|\bprinted\b|\bversion\b|\brev(?:ision)?\b"
     r"|\bdate\b|\bproject\b|\bjob\b|\bcopyright\b|\bfile\b|https?:|\bdtype\b|\bname:|\[\d+ rows x \d+ columns\]",
@@ -315,7 +317,7 @@ class _Scanner:
 
     def _row(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
         if not numbers:
-            return self._named_row(number, text, filled)
+            return self._named_row(number, text, filled) or self._spoilt_row(number, text, filled)
         if _TOTAL.match(filled[0]) and not self._knows(filled[0]):
             return "total", ""
         if _DATE.search(text) and not self._fits(filled) and not self._knows(filled[0]):
@@ -337,6 +339,21 @@ class _Scanner:
             self.block = hit
             return "heading", f"member {hit.name}"
         return None
+
+    def _spoilt_row(self, number: int, text: str, filled: list[str]) -> tuple[str, str] | None:
+        """A row all of whose values are spoilt ("*****", "inf", "37.8l4") must not be lost without a word."""
+        if self.table is None or len(filled) < 2 or not self._knows(filled[0]):
+            return None
+        like = (self.table.rows or self.table.heads or [(0, "")])[-1][1]
+        cells = [c.text for c in cells_of(like)[1] if c.text]
+        values = [t for t in filled[1:] if not self._knows(t) and not is_blank(t)]
+        if separator_of(like) != separator_of(text) or len(cells) != len(filled) or not all(map(_SPOILT.search, values)):
+            return None
+        if not values:
+            return None
+        self.table.rows.append((number, text))
+        self.table.blocks.append(self.block)
+        return "row", ""
 
     def _knows(self, text: str) -> bool:
         return self.names.member(text) is not None or self.names.joint(text) is not None

@@ -85,7 +85,8 @@ def _of_case(reading: Reading, case: str | None) -> tuple[list[Entry], list[str]
 def _by_fit(closer: _Closer, entries: list[Entry], names: list[str], notes: list[str]) -> ClosedClaim:
     """The one case that the values without a case fit; undecided where none or several do."""
     tried = {n: closer.close([replace(e, case=e.case or n) for e in entries], notes) for n in names}
-    fitting = [n for n, closed in tried.items() if not closer.bad[n] and not closed.undecided]
+    known = {*closer.result((), [], []).undecided}  # what is undecided in the reading itself, whichever case is meant
+    fitting = [n for n, closed in tried.items() if not closer.bad[n] and known.issuperset(closed.undecided)]
     if len(fitting) == 1:
         name = fitting[0]
         said = f'the claim names no case; "{name}" is the only one of {len(names)} that it fits'
@@ -168,9 +169,10 @@ class _Closer:
         out = []
         for k, index in enumerate(batch.entry.tolist()):
             e = entries[index]
+            kind = "span" if e.cut is not None else batch.kind
             out.append(
                 ClaimedValue(
-                    case=cases[int(batch.case[k])], kind=batch.kind,  # type: ignore[arg-type]
+                    case=cases[int(batch.case[k])], kind=kind,  # type: ignore[arg-type]
                     quantity=batch.quantity,  # type: ignore[arg-type]
                     member=e.member, joint=joints[k], at=at[k], value=float(value[k]), half_digit=float(half[k]),
                     line=e.line, printed=e.number.printed, extreme=_turned(e.extreme, float(sign[k])),  # type: ignore[arg-type]
@@ -213,6 +215,8 @@ def _batch(
         end=ints(e.end for e in mine), place=ints(e.place for e in mine), run=ints(e.run for e in mine),
         at=np.array(at), at_share=np.array([e.at_share for e in mine]),
         extreme=ints(_EXTREME.get(e.extreme or "size", 0) for e in mine),
+        cut=np.array([np.nan if e.cut is None else e.cut for e in mine]),
+        origin=np.array([np.nan if e.origin is None else e.origin for e in mine]),
         unsigned=np.array([e.sense == "size" or e.extreme == "size" for e in mine]), said=mine[0].sense == "said",
         value=np.array([e.number.value for e in mine]), half=np.array([e.number.half for e in mine]),
         factor=np.array([_factor(e, frame) for e in mine]), entry=np.array(where, dtype=np.int64),
@@ -329,7 +333,11 @@ def _to_frame(
         if c.form == ("action" if batch.quantity == "axial" else "internal"):
             at_start = -1 if batch.quantity == "axial" else 1
             sign = sign * np.where(place == 0, at_start, -at_start)
-        return sign, list(joints), [None] * len(sign)
+        inside = ~np.isnan(batch.cut)
+        if batch.quantity != "axial":  # on the face where a part ends, actions are values along the member, reversed at its end
+            sign = np.where(inside & (end == 1), -sign, sign)
+        named = [None if cut else j for j, cut in zip(joints, inside.tolist(), strict=True)]
+        return sign, named, [x if cut else None for x, cut in zip(batch.cut.tolist(), inside.tolist(), strict=True)]
     if batch.quantity in ("moment", "across"):
         sign = sign * r
     at = distance(batch, frame, r).tolist() if batch.kind == "span" else [None] * len(sign)

@@ -65,7 +65,8 @@ class Batch:
 
     member, joint: indices, -1 for none. end, place: 0, 1 or -1 (not said). run: +1, -1 or 0. at: distance from the paste's
     start in the frame's length, or a share of the member's length where at_share. extreme: 1 max, -1 min, 0 size.
-    unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value, half: as printed. factor: to the frame's units, NaN where no unit is stated.
+    cut: where inside its member a part of it ends; origin: where a part begins (NaN for whole members); both from the
+      frame's `from` joint. unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value, half: as printed. factor: to the frame's units, NaN where no unit is stated.
     """
 
     kind: str
@@ -80,6 +81,8 @@ class Batch:
     at: Floats
     at_share: Bools
     extreme: Ints
+    cut: Floats
+    origin: Floats
     unsigned: Bools
     said: bool
     value: Floats
@@ -146,7 +149,8 @@ def distance(batch: Batch, frame: Frame, r: Ints) -> Floats:
     """Distances from the frame's `from` joint, in the frame's length."""
     length = frame.member_table.length[batch.member]
     at = np.where(batch.at_share, batch.at * length, batch.at)
-    return np.where(r < 0, length - at, at)
+    whole = np.where(r < 0, length - at, at)
+    return np.where(np.isnan(batch.origin), whole, batch.origin + r * at)
 
 
 def expected(batch: Batch, references: list[Reference], convention: Convention) -> Floats:
@@ -184,7 +188,7 @@ def _expected_in(batch: Batch, reference: Reference, convention: Convention) -> 
     if batch.kind == "extreme":
         most = reference.extremes_of(batch.quantity, batch.member, batch.joint)
         return _extreme(batch.extreme, most, s * turned)[:, None]
-    acting: Floats = reference.result.ends[batch.member, end, column]
+    acting = _acting(batch, reference, end, column)
     if batch.quantity == "shear":
         acting = acting * r
     flips = convention.form == ("action" if batch.quantity == "axial" else "internal")
@@ -192,6 +196,18 @@ def _expected_in(batch: Batch, reference: Reference, convention: Convention) -> 
         at_start = -1 if batch.quantity == "axial" else 1
         acting = acting * np.where(place == 0, at_start, -at_start)
     return np.asarray(s * acting, dtype=float)[:, None]
+
+
+def _acting(batch: Batch, reference: Reference, end: Ints, column: int) -> Floats:
+    """(n,) end actions; of a part that ends inside its member those on its face there."""
+    acting: Floats = reference.result.ends[batch.member, end, column]
+    inside = np.flatnonzero(~np.isnan(batch.cut))
+    for side in (0, 1):
+        mine = inside[end[inside] == side]
+        if len(mine):
+            values = reference.along(batch.member[mine], batch.cut[mine], 1 if side == 0 else -1)[:, column]
+            acting[mine] = values if side == 0 or column == COLUMN["axial"] else -values
+    return acting
 
 
 def _extreme(which: Ints, most: Floats, sign: Ints) -> Floats:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
 from dataclasses import replace
 
 from crosscheck.claims.reading import Entry
@@ -30,13 +29,16 @@ def with_stations(entries: list[Entry], frame: Frame) -> list[Entry]:
     return out
 
 
-def _unit_of(entries: Iterable[Entry], frame: Frame) -> Size | None:
+def _unit_of(entries: list[Entry], frame: Frame) -> Size | None:
     """The unit, or None where the distances are shares of the length."""
     last: dict[str, float] = {}
     for e in entries:
         last[str(e.member)] = max(last.get(str(e.member), 0.0), float(e.at or 0.0))
     lengths = frame.member_table.length
     real = {m: float(lengths[frame.member_index[m]]) for m in last}
+    for e in entries:
+        if e.reach is not None:  # a part of a member: its stations end where it does
+            real[str(e.member)] = min(real[str(e.member)], e.reach)
     choices = length_choices(frame.units)
     scores = [_score(last, real, c.factor) for c in choices]
     share = _score(last, dict.fromkeys(last, 1.0), 1.0)
