@@ -138,6 +138,12 @@ def _add_inspect(commands: Any) -> None:
     _add_frame(command)
     command.add_argument("--sway", metavar="RATIO", type=float, default=300, help="height over movement (usual: 300)")
     command.add_argument("--deflection", metavar="RATIO", type=float, default=250, help="span over deflection (250)")
+    command.add_argument("--critical", metavar="FACTOR", type=float, default=10,
+                         help="critical load factor below which first order is questioned (usual: 10)")  # fmt: skip
+    command.add_argument("--explain", action="store_true", help="say of each finding why it matters and what to look at")
+    command.add_argument("--approximate", action="store_true",
+                         help="portal, cantilever and free-moment values beside the computed ones")  # fmt: skip
+    command.add_argument("--echo", metavar="FILE", help="compare the other model's own printed input (- for stdin)")
     command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
     _add_report(command)
     command.set_defaults(run=run_inspect)
@@ -293,24 +299,31 @@ def _two_printouts(args: argparse.Namespace, result: TwoPrintouts) -> int:
 def run_inspect(args: argparse.Namespace) -> int:
     """`crosscheck inspect FRAME`: 0 nothing serious, 1 serious, 2 unusable."""
     from crosscheck import check
+    from crosscheck.review.approximate import approximations
     from crosscheck.review.finding import Limits
-    from crosscheck.review.inspect import inspect, subject_of
+    from crosscheck.review.inspect import graded, inspect, subject_of
 
     filing = _filing(args)
-    subject = subject_of(check.read(args.frame, args.variant), Limits(sway=args.sway, deflection=args.deflection))
+    limits = Limits(sway=args.sway, deflection=args.deflection, critical=args.critical)
+    subject = subject_of(check.read(args.frame, args.variant), limits)
     findings = inspect(subject)
+    if args.echo:
+        from crosscheck.review.echo import echoed
+
+        findings = graded([*echoed(subject, args.echo), *findings])
+    rough = approximations(subject) if args.approximate else None
     if filing is not None:
         filing.inspection(subject, findings)
 
     def document() -> dict[str, Any]:
         from crosscheck.report.review import review_document
 
-        return review_document(subject, findings)
+        return review_document(subject, findings, rough)
 
     def report() -> RenderableType:
         from crosscheck.report.review import review_report
 
-        return review_report(subject, findings)
+        return review_report(subject, findings, args.explain, rough)
 
     _give(args, document, report)
     return 1 if any(f.grade == "serious" for f in findings) else 0

@@ -78,5 +78,9 @@ def subject_of(frame: Frame, limits: Limits | None = None, stability: bool = Tru
 
 def inspect(subject: Subject) -> list[Finding]:
     """Every finding, gravest first, in the order of the checks."""
-    found = [Finding(f.grade, f.where, f.says, check.__name__) for check in CHECKS for f in check(subject)]
-    return sorted(found, key=lambda f: RANK[f.grade])
+    return graded([Finding(f.grade, f.where, f.says, check.__name__) for check in CHECKS for f in check(subject)])
+
+
+def graded(findings: list[Finding]) -> list[Finding]:
+    """Gravest first, else in the order given."""
+    return sorted(findings, key=lambda f: RANK[f.grade])
