@@ -470,6 +470,7 @@ def _less(frame: Frame, answer: Answer, name: str, j: int, share: float) -> Case
     for m, end in np.argwhere(t.ends == j):
         gone = share * c.ends[m, end, 2]
         ends[m, end, 2] -= gone
+        reactions[j, 2] -= gone if frame.support_table.stiffness[j, 2] != FREE else 0.0
         up = gone / t.length[m]
         ends[m, 0, 1] += up
         ends[m, 1, 1] -= up

@@ -60,7 +60,7 @@ def _foretold(frame: Frame, group: Group) -> bool:
 
 
 def group_options(screen: Screen) -> Iterator[Option]:
-    """Common factors and other sections for each group, and the factor that fits best."""
+    """Common factors and other sections for each group."""
     frame = screen.frame
     for group in groups(frame):
         if not _foretold(frame, group):
@@ -68,10 +68,16 @@ def group_options(screen: Screen) -> Iterator[Option]:
         cost = SECTION if group.what == "EI" else MATERIAL
         for factor in COMMON:
             yield _option(screen, group, factor, cost)
-        fitted = _fit(screen, group)
-        if fitted is not None:
-            yield fitted
     yield from _swapped(screen)
+
+
+def group_fits(screen: Screen) -> Iterator[Option]:
+    """For each group the factor that fits best."""
+    for group in groups(screen.frame):
+        if _foretold(screen.frame, group):
+            found = _fit(screen, group)
+            if found is not None:
+                yield found
 
 
 def large_families(frame: Frame) -> Iterator[Family]:

@@ -35,14 +35,13 @@ class _Trial:
 
 
 def member_options(screen: Screen) -> Iterator[Option]:
-    """The best member changes, fixed ones and fitted ones, by what they leave over."""
+    """The best fixed member changes, by what they leave over."""
     frame = screen.frame
     fixed = [t for m in range(len(frame.members)) for t in _fixed(frame, m)]
     left, actions = _weigh(screen, fixed)
     for k in np.argsort(left)[:80].tolist():
         if np.isfinite(left[k]):
             yield _option(screen, fixed[k], [a[k] for a in actions])
-    yield from _fits(screen)
 
 
 def _weigh(screen: Screen, trials: list[_Trial]) -> tuple[Floats, list[Floats]]:
@@ -117,14 +116,14 @@ SPAN_OF_FACTORS = (0.02, 50.0)
 GRID, KEPT = 25, 8
 
 
-def _fits(screen: Screen) -> Iterator[Option]:
+def member_fits(screen: Screen) -> Iterator[Option]:
     """EI, EA, both, and the stiffness of either end connection, each fitted for the members that promise most."""
     frame = screen.frame
     least = screen.least(screen.member_grams)
     t = frame.member_table
     found: list[tuple[float, _Trial, list[Floats]]] = []
     for m in np.argsort(least)[:KEPT].tolist():
-        if least[m] > 0.5 * screen.total:
+        if least[m] > max(4.0 * len(screen.residual), 0.1 * screen.total):
             break
         for family in ("EI", "EA", "EI and EA", "from", "to"):
             if "EA" in family and frame.analysis.axial == "rigid":

@@ -46,7 +46,6 @@ def support_options(screen: Screen) -> Iterator[Option]:
         if good[k]:
             delta = screen.delta_of(screen.effects.reaction, joints[k], [a[k] for a in actions])
             yield _option(frame, names[joints[k]], wanted[k], texts[k], costs[k], delta)
-    yield from _springs(screen)
 
 
 def _current(frame: Frame, joint: str) -> Support:
@@ -95,7 +94,7 @@ def _applied(frame: Frame, joint: str, stiffness: tuple[float, float, float]) ->
     return with_support(frame, joint, replace(_current(frame, joint), x=x, y=y, rotation=rotation))
 
 
-def _springs(screen: Screen) -> Iterator[Option]:
+def support_fits(screen: Screen) -> Iterator[Option]:
     """A direction that gave way by a spring whose stiffness fits best: of those held, and of those sprung."""
     frame = screen.frame
     for joint, support in frame.supports.items():

@@ -23,15 +23,15 @@ from crosscheck.problems import UnusableInput
 from crosscheck.suspects.adjusted import adjusted
 from crosscheck.suspects.changes import Change, of_case, usable
 from crosscheck.suspects.geometry import geometry_families, geometry_options
-from crosscheck.suspects.groups import group_options, large_families
+from crosscheck.suspects.groups import group_fits, group_options, large_families
 from crosscheck.suspects.loads import case_options, load_options
-from crosscheck.suspects.members import heavy_families, member_options, section_options
+from crosscheck.suspects.members import heavy_families, member_fits, member_options, section_options
 from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.screen import Screen
-from crosscheck.suspects.supports import support_options
+from crosscheck.suspects.supports import support_fits, support_options
 from crosscheck.suspects.suspect import Family, Option
-from crosscheck.suspects.whole import temperature_options, whole_options
+from crosscheck.suspects.whole import other_order, temperature_options, whole_options
 
 UNFIT, STEEPNESS = 3.0, 2.0
 """What not fitting to the printed precision costs, and how steeply the misfit counts after that."""
@@ -159,7 +159,7 @@ class Sweep:
     def singles(self) -> list[Weighed]:
         """Every single mistake worth telling, best first."""
         quick = [self.weigh(o) for o in paste_options(self.seen)]
-        told = [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
+        told = self._told(quick)
         if not self.seen.linear.all() or self.frame.analysis.order == 2:
             # Foretold in part, or to first order: the most likely are solved again.
             told.sort(key=lambda w: w.rough)
@@ -168,6 +168,9 @@ class Sweep:
         quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
         quick += adjusted(self)
         quick.sort(key=lambda w: w.score)
+        if not (quick and quick[0].fits):
+            quick += self._solved(other_order(self.frame))
+            quick.sort(key=lambda w: w.score)
         if not self.slow and not (quick and quick[0].fits):
             quick += self._solved(self._near_geometry())
             for family in (*large_families(self.frame), *self._near_families()):
@@ -176,6 +179,13 @@ class Sweep:
                     quick.append(found)
         quick.sort(key=lambda w: w.score)
         return quick
+
+    def _told(self, already: list[Weighed]) -> list[Weighed]:
+        """Everything foretold; numbers are fitted only where nothing without one fits."""
+        told = [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
+        if not any(w.fits for w in (*already, *told)):
+            told += [w for o in self._fits() if (w := self.foretold(o)) is not None]
+        return told
 
     def _foretellable(self) -> Iterator[Option]:
         if not len(self.screen.rows):
@@ -186,6 +196,15 @@ class Sweep:
             yield from member_options(self.screen)
             yield from group_options(self.screen)
             yield from case_options(self.screen)
+
+    def _fits(self) -> Iterator[Option]:
+        """Options with a number that is fitted, foretold too."""
+        if not len(self.screen.rows):
+            return
+        with np.errstate(all="ignore"):
+            yield from support_fits(self.screen)
+            yield from member_fits(self.screen)
+            yield from group_fits(self.screen)
 
     def _other_cases(self) -> list[Weighed]:
         """Results of one case standing under the name of another."""
@@ -321,7 +340,7 @@ class Sweep:
     def cheap_singles(self) -> list[Weighed]:
         """Singles without the searches that solve again many times."""
         found = [self.weigh(o) for o in paste_options(self.seen)]
-        found += [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
+        found += self._told(found)
         found.sort(key=lambda w: w.score)
         if found and found[0].fits:
             return found

@@ -36,6 +36,14 @@ def whole_options(frame: Frame) -> Iterator[Option]:
 ORDERS = {1: "the analysis was of second order", 2: "the analysis was of first order"}
 
 
+def other_order(frame: Frame) -> Iterator[Option]:
+    """First order for second and the other way round: tried late, because second order is slow to solve."""
+    order = frame.analysis.order
+    change = partial(_analysed, fields={"order": 3 - order})
+    if usable(change(frame)):
+        yield Option("idealisation", (), ORDERS[order], Change(change), IDEALISED)
+
+
 def _idealisations(frame: Frame) -> Iterator[Option]:
     axial, shear = frame.analysis.axial, frame.analysis.shear
     new_axial, new_shear = ("rigid" if axial == "elastic" else "elastic"), ("rigid" if shear == "elastic" else "elastic")
@@ -43,7 +51,6 @@ def _idealisations(frame: Frame) -> Iterator[Option]:
     says_shear = "shear deformation was left out" if shear == "elastic" else "shear deformation was counted"
     for fields, says, cost in (
         ({"axial": new_axial}, says_axial, IDEALISED), ({"shear": new_shear}, says_shear, IDEALISED),
-        ({"order": 3 - frame.analysis.order}, ORDERS[frame.analysis.order], IDEALISED),
         ({"axial": new_axial, "shear": new_shear}, f"{says_axial} and {says_shear}", IDEALISED + 0.5),
     ):  # fmt: skip
         change = partial(_analysed, fields=fields)
