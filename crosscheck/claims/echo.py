@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -18,7 +18,7 @@ from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.reading import EchoFact, FrameNames
 from crosscheck.claims.words import Head, Size
-from crosscheck.frame.units import Dimension, UnitError, parse_unit
+from crosscheck.frame.units import FORCE, Dimension, UnitError, parse_unit
 
 CLOSE = 1e-3
 """Share of the frame's size within which two joints stand at one place: coordinates are printed to a few digits."""
@@ -61,7 +61,7 @@ def echo_facts(kind: str, grid: Grid, meaning: Meaning) -> Iterator[EchoFact]:
         if is_blank(where):
             continue
         if kind == "echo members" and len(ends) == 2:
-            yield EchoFact(line, "member ends", where, f"{row[ends[0]].strip()}\t{row[ends[1]].strip()}")
+            yield EchoFact(line, "member ends", where, f"{row[ends[0]].strip()}\t{row[ends[1]].strip()}", kind=kind)
         for k, head in enumerate(grid.heads):
             if k != named and k not in ends and (what := _what(kind, head)) and not is_blank(row[k]):
                 yield _fact(kind, line, what, where, row[k], head, comma)
@@ -70,14 +70,16 @@ def echo_facts(kind: str, grid: Grid, meaning: Meaning) -> Iterator[EchoFact]:
 def _fact(kind: str, line: int, what: str, where: str, cell: str, head: Head, comma: bool) -> EchoFact:
     number = parse_number(cell, comma)
     if kind == "echo supports" or number is None:
-        return EchoFact(line, what, where, cell.strip())
-    return EchoFact(line, what, where, number.value, number.half, _unit(head.text, what))
+        return EchoFact(line, what, where, cell.strip(), kind=kind)
+    return EchoFact(line, what, where, number.value, number.half, _unit(head.text, what), kind)
 
 
 def _what(kind: str, head: Head) -> str:
     """What a column of input holds: x, y, z, E, I, A, length, or a support's direction."""
     if kind == "echo joints":
         return head.axis if head.noun == "x" else ""
+    if kind == "echo totals":
+        return {"x": "x", "y": "y", "z": "y"}.get(head.axis, "") if head.noun in ("F", "x", "R") else ""
     if kind == "echo supports":
         if head.noun in ("T", "M"):
             return "rotation"
@@ -95,7 +97,59 @@ def _unit(text: str, what: str) -> Size | None:
     except UnitError:
         return None
     wanted = Dimension(force=1, length=-2) if what == "E" else Dimension(length=_POWERS.get(what, 1))
+    if unit.dimension == FORCE:  # totals of loads
+        wanted = FORCE
     return Size(unit.text, unit.dimension, float(unit.factor)) if unit.dimension == wanted else None
+
+
+# -- facts in the frame's names
+
+_HELD = frozenset({"1", "yes", "y", "true", "fixed", "fix", "held", "x", "rigid", "r", "restrained"})
+_FREE = frozenset({"0", "no", "n", "false", "free", "-", "f", "released"})
+_SUPPORTS = {"fix": "111", "encastr": "111", "clamp": "111", "built": "111", "pin": "110", "hing": "110", "roll": "010"}
+
+
+def in_our_names(echo: Echo, names: Names) -> list[EchoFact]:
+    """The facts as reviews compare them: "joint x", "joint y", "member ends" ("A to B"), "support" (held directions x, y,
+    rotation as "110"), "I", "A", "E", "total x", "total y"; of the frame's names where the paste's are known."""
+    out: list[EchoFact] = []
+    marks: dict[str, dict[str, EchoFact]] = {}
+    flat = not any(f.what == "y" and isinstance(f.value, float) and f.value for f in echo.facts)
+    upright = {"x": "joint x", "z" if flat and any(f.what == "z" for f in echo.facts) else "y": "joint y"}
+    for f in echo.facts:
+        joint = _ours(echo, names, f.where) or f.where
+        if f.kind == "echo joints":
+            if f.what in upright and f.where not in echo.inner:
+                out.append(replace(f, what=upright[f.what], where=joint))
+        elif f.kind == "echo supports":
+            marks.setdefault(joint, {})[f.what] = f
+        elif f.kind == "echo totals":
+            if f.what in ("x", "y"):
+                out.append(replace(f, what=f"total {f.what}", where=names.case(f.where) or f.where))
+        elif f.what == "member ends":
+            if f.where not in echo.pieces:
+                first, last = (_ours(echo, names, n) or n for n in _pair(f))
+                out.append(replace(f, where=_member(echo, names, f.where), value=f"{first} to {last}"))
+        elif f.what in ("I", "A", "E"):
+            out.append(replace(f, where=_member(echo, names, f.where)))
+    return out + [fact for joint, cells in marks.items() if (fact := _support(joint, cells))]
+
+
+def _member(echo: Echo, names: Names, label: str) -> str:
+    hit = echo.members.get(label) or names.member(label)
+    return hit.name if hit else label
+
+
+def _support(joint: str, cells: Mapping[str, EchoFact]) -> EchoFact | None:
+    """Held directions of a support from a word or from three marks; None where they are not understood."""
+    fact = next(iter(cells.values()))
+    if word := cells.get("support"):
+        flags = next((v for k, v in _SUPPORTS.items() if str(word.value).lower().startswith(k)), "")
+    else:
+        up = "y" if "y" in cells else "z"
+        said = [str(cells[k].value).lower() if k in cells else "" for k in ("x", up, "rotation")]
+        flags = "".join("1" if m in _HELD else "0" if m in _FREE else "?" for m in said)
+    return replace(fact, what="support", where=joint, value=flags) if flags and "?" not in flags else None
 
 
 # -- names by place

@@ -51,7 +51,7 @@ def meaning_of(grid: Grid, table: RawTable, names: Names) -> Meaning:
         return Meaning("", tuple(Role() for _ in grid.heads), "the heads do not match the columns below them")
     heads = _numbered(_filled(grid, table, names))
     roles = _named_roles(heads, grid, names)
-    kind, why = _kind(heads, roles, table)
+    kind, why = ("echo supports", "") if _restrains(grid, roles, table.heading) else _kind(heads, roles, table)
     if not kind:
         return Meaning("", tuple(roles), why)
     if kind.startswith("echo"):
@@ -164,6 +164,20 @@ def _which_or_case(role: Role, cells: list[str], names: Names) -> Role:
 
 # -- kind
 
+RESTRAINTS = frozenset(
+    {"fixed", "fix", "free", "held", "restrained", "yes", "no", "true", "false", "pinned", "roller", "encastre", "rigid", "released"}
+)
+
+
+def _restrains(grid: Grid, roles: list[Role], heading: str) -> bool:
+    """Does the table say which directions of joints are held, by words or by ones and zeros?"""
+    if not any(r.name == "joint" for r in roles):
+        return False
+    cells = [c.lower() for k, r in enumerate(roles) if not r.name for c in column(grid, k)]
+    told = re.search(r"support|restrain|fixit", heading, re.IGNORECASE) is not None
+    words = [c for c in cells if c in RESTRAINTS]
+    return bool(cells) and len(words) + (sum(c in ("0", "1") for c in cells) if told else 0) == len(cells)
+
 
 def _kind(heads: list[Head], roles: list[Role], table: RawTable) -> tuple[str, str]:
     heading = table.heading.lower()
@@ -203,6 +217,9 @@ def _moves(heads: list[Head], nouns: set[str], heading: str) -> bool:
 def _echo_kind(heads: list[Head], names_of: set[str], heading: str, nouns: set[str]) -> str:
     """Kind of a table of the other model's own input, "" where it is none."""
     results = nouns & {"N", "V", "M", "F", "R", "D", "T", "w"}
+    placed = {"joint", "member", "station"} & names_of or {"start joint", "end joint"} <= names_of
+    if "case" in names_of and not placed and results <= {"F", "M", "R"} and (results or "x" in nouns):
+        return "echo totals"
     if {"I", "A"} & nouns or "E" in nouns and not results:
         return "echo sections" if not results else ""
     if results and "coordinate" not in heading:

@@ -9,7 +9,7 @@ from math import hypot, isnan
 from pathlib import Path
 
 from crosscheck.claims.decode import lines_of, read_source, refuse
-from crosscheck.claims.echo import Echo, Piece, echo_facts, learn, pieces_stated
+from crosscheck.claims.echo import Echo, Piece, echo_facts, in_our_names, learn, pieces_stated
 from crosscheck.claims.grid import Grid, grid_of
 from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Meaning, Role, dimension_of, meaning_of
 from crosscheck.claims.names import MemberHit, Names, plain
@@ -175,7 +175,7 @@ class _Reader:
             pair = ends.get(label)
             hits[label] = MemberHit(p.member, _runs(p), (p.start, p.end), (pair[0], pair[1]) if pair else None)
         self.names.learn(echo.joints, hits, echo.inner)
-        self.echo, self.notes = echo.facts, [*self.notes, *echo.notes]
+        self.echo, self.notes = in_our_names(echo, self.names), [*self.notes, *echo.notes]
         if hits or echo.joints:
             read[:] = [t if t[2].kind.startswith("echo") else self.understood(t[0]) for t in read]
 

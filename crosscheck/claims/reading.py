@@ -147,6 +147,7 @@ class EchoFact:
     value: float | str
     half: float = 0.0
     unit: Size | None = None
+    kind: str = ""
 
 
 @dataclass(frozen=True, slots=True)

@@ -323,7 +323,7 @@ class _Scanner:
         if _DATE.search(text) and not self._fits(filled) and not self._knows(filled[0]):
             return "remark", "a date, a page or the like"
         words = [t for t in filled if not is_number(t) and not self._knows(t) and len(re.sub(r"\W", "", t)) > 1]
-        if len(words) > max(2, numbers):
+        if len(words) > max(2, numbers) and not self._under_heads(filled):
             self.out.remarks.append((number, text))
             return "remark", ""
         if self.table is None:
@@ -332,6 +332,12 @@ class _Scanner:
         self.table.rows.append((number, text))
         self.table.blocks.append(self.block)
         return "row", ""
+
+    def _under_heads(self, filled: list[str]) -> bool:
+        """Has the line as many cells as the table has heads?"""
+        if self.table is None or not self.table.heads:
+            return False
+        return len([c for c in cells_of(self.table.heads[0][1])[1] if c.text]) == len(filled)
 
     def _named_row(self, number: int, text: str, filled: list[str]) -> tuple[str, str] | None:
         """The first line of a block may hold the member's name alone, under the table's head."""
