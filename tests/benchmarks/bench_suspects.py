@@ -104,6 +104,28 @@ def changes(frame: Frame, opinions: check.Opinions, closed) -> tuple[int, float]
     return len(every), clock(solve) * len(every) / len(sample)
 
 
+def verify_against_opinions(size: int = 100) -> None:
+    """How long all of a verification takes beside the opinions alone: asking, judging the claim, auditing, suspects.
+
+    The opinions are asked as a command would: for the first time, the library's qualification included.
+    """
+    frame = grid(*SIZES[size])
+    foot = next(iter(frame.supports))
+    pinned = replace(frame, supports={**frame.supports, foot: Support(foot, HELD, HELD, FREE)})
+    closed = closed_claim(claim_values(pinned, slope_deflection.opine(pinned, study(pinned)), "all", "all", 4, True))
+    start = time.process_time()
+    opinions = check.ask(frame)
+    asked = time.process_time() - start
+    start = time.process_time()
+    claims = judged(frame, opinions, closed)
+    check._audit(frame, opinions, closed, "all")
+    search(frame, opinions, closed, claims, CLAIM)
+    rest = time.process_time() - start
+    whole = asked + rest
+    print(f"{len(frame.members)} members: opinions {asked:.2f} s, verify {whole:.2f} s: {whole / asked:.1f} times")
+
+
 if __name__ == "__main__":
     for wanted in [int(a) for a in sys.argv[1:]] or list(SIZES):
         one(wanted)
+    verify_against_opinions()
