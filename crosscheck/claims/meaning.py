@@ -34,6 +34,8 @@ class Role:
     unit: Size | None = None
     share: bool = False
     axes: str = ""
+    kind: str = ""
+    """Where it differs from the table's: displacements beside the reactions of the same joints."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -257,6 +259,11 @@ def dimension_of(quantity: str) -> object:
 def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tuple[list[Role], str]:
     roles = list(roles)
     heads = _sided(kind, heads)
+    if kind in ("end", "span", "extreme"):
+        # "u" and "w" alone: not said whether from the chord, along the member or in all; never compared.
+        heads = [Head(h.text) if h.noun in ("w", "D") and not h.axis and _LETTER.match(h.text) else h for h in heads]
+    if kind == "reaction" and any(h.noun == "D" for h in heads):
+        return _with_displacements(heads, roles, grid)
     if kind == "span" and not any(r.name == "station" for r in roles):
         k = next(k for k, h in enumerate(heads) if h.noun == "x")
         roles[k] = Role("station", unit=heads[k].unit, share=heads[k].share)
@@ -277,6 +284,18 @@ def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tupl
     if idle and not why:
         why = f"it is not clear what the column{'s' if len(idle) > 1 else ''} {', '.join(idle)} hold{'' if len(idle) > 1 else 's'}"
     return roles, why
+
+
+_LETTER = re.compile(r"[uvw](?:tot)?(?:max|min)?\b")
+
+
+def _with_displacements(heads: list[Head], roles: list[Role], grid: Grid) -> tuple[list[Role], str]:
+    """A table of joints that holds displacements beside reactions."""
+    moving = [h.noun in ("D", "T") for h in heads]
+    pulls, why = _values("reaction", [Head("") if m else h for h, m in zip(heads, moving, strict=True)], roles, grid)
+    moves, other = _values("displacement", [h if m else Head("") for h, m in zip(heads, moving, strict=True)], roles, grid)
+    moves = [replace(r, kind="displacement") if r.name == "value" else r for r in moves]
+    return [b if m else a for a, b, m in zip(pulls, moves, moving, strict=True)], why or other
 
 
 def _sided(kind: str, heads: list[Head]) -> list[Head]:

@@ -394,7 +394,7 @@ class _Reader:
         self, table: int, line: int, role: Role, number: Number, unit: Size | None, meaning: Meaning, place: _Place,
         station: Role | None,
     ) -> Entry | None:  # fmt: skip
-        kind: Kind = "end" if meaning.kind == "ends" else meaning.kind  # type: ignore[assignment]
+        kind: Kind = "end" if meaning.kind == "ends" else role.kind or meaning.kind  # type: ignore[assignment]
         entry = Entry(table, line, kind, role.quantity, number, unit, case=place.case, axes=role.axes)
         if place.member is None:
             return replace(entry, joint=place.joint)

@@ -14,6 +14,8 @@ _MARK = {"tab": "\t", "bar": "|", "semicolon": ";", "comma": ","}
 _BAR = str.maketrans({"\u2502": "|", "\u2503": "|", "\u2551": "|", "\u00a6": "|"})
 _BLANK = re.compile(r"[^\s]+")
 _WIDE = re.compile(r"\S+(?:[ \u00a0]\S+)*")
+_WORD = re.compile(r"\([^()\s]*,\s[^()\s]*\)|[^\s\u00a0]+(?:\u00a0[^\s\u00a0]+)*")
+"""A word, or a pair of numbers in brackets."""
 _RULE = re.compile(r"[\s\-=_+*~.|:#\u2500-\u257f\u2014\u2013<>]*")
 _GROUPED = re.compile(r"(?<=  )[+-]?[1-9]\d{0,2}(?: \d{3})+(?=[.,]\d)")
 
@@ -73,7 +75,7 @@ def split(line: str, separator: Separator) -> list[Cell]:
         line = line.translate(_BAR).replace("|", " ")
         if "  " in line.strip():  # only where wider gaps part the cells can one blank part thousands
             line = _GROUPED.sub(lambda m: m.group().replace(" ", "\u00a0"), line)
-        return [Cell(m.start(), m.end(), m.group()) for m in re.finditer(r"[^\s\u00a0]+(?:\u00a0[^\s\u00a0]+)*", line)]
+        return [Cell(m.start(), m.end(), m.group()) for m in _WORD.finditer(line)]
     if separator == "bar":
         body = line.translate(_BAR).strip()
         framed = body.startswith("|") and body.endswith("|") and len(body) > 1
@@ -82,7 +84,13 @@ def split(line: str, separator: Separator) -> list[Cell]:
         parts = next(csv.reader([line], delimiter=_MARK[separator], skipinitialspace=True), [])
     else:
         parts = line.rstrip("\r\n").split(_MARK[separator])
-    return [Cell(k, k, part.strip().strip("\"'`*")) for k, part in enumerate(parts)]
+    return [Cell(k, k, _bare(part.strip())) for k, part in enumerate(parts)]
+
+
+def _bare(text: str) -> str:
+    """Without quotes and marks of emphasis; asterisks alone stand for a number that was too wide, and stay."""
+    bare = text.strip("\"'`*")
+    return bare if bare or "**" not in text else text
 
 
 def wide_cells(line: str) -> list[Cell]:

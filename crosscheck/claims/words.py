@@ -137,6 +137,8 @@ def head_of(text: str) -> Head:
     text = " ".join(text.split())
     if len(text) > 80:
         return Head(text)
+    if property_head := _property(text):
+        return Head(text, property_head)
     bare, unit = _without_unit(text)
     tidy = unicodedata.normalize("NFKC", "".join(_GREEK.get(c, c) for c in bare)).lower()
     share = bool(re.search(r"\bx\s*/\s*l\b|%|\brel(ative)?\b|\bratio\b|\bfraction\b|\bxi\b", tidy))
@@ -150,6 +152,22 @@ def head_of(text: str) -> Head:
         share, unit = True, None
     head = _from_tokens(text, re.findall(r"[a-z]+\d*(?:max|min)?|\d+|[+-]", tidy))
     return replace(head, unit=unit, share=share and head.noun in ("station", "x"))
+
+
+_PROPERTY = re.compile(r"([IAE])[xyz]{0,2}\s*[\[(](.{1,12})[\])]")
+_PROPERTY_DIMENSION = {"I": Dimension(length=4), "A": Dimension(length=2), "E": Dimension(force=1, length=-2)}
+
+
+def _property(text: str) -> str:
+    """I, A or E where the head's unit shows that it is a second moment of area, an area or a modulus."""
+    found = _PROPERTY.fullmatch(text)
+    if not found:
+        return ""
+    try:
+        dimension = parse_unit(found.group(2)).dimension
+    except UnitError:
+        return ""
+    return found.group(1) if dimension == _PROPERTY_DIMENSION[found.group(1)] else ""
 
 
 def _without_unit(text: str) -> tuple[str, Size | None]:
