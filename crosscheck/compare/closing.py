@@ -17,7 +17,7 @@ from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.fit import Choice, Fitted, Fitter
 from crosscheck.compare.fit_conventions import Batch, distance, placed
-from crosscheck.compare.fit_signs import Senses, narrowed, senses
+from crosscheck.compare.fit_signs import Senses, narrowed, plain_where_loads_turn, senses
 from crosscheck.compare.fit_stations import with_stations
 from crosscheck.compare.fit_values import Reference
 from crosscheck.compare.tolerance import Tolerance
@@ -116,6 +116,7 @@ class _Closer:
         batches = _batches(entries, self.frame, cases)
         fitter = Fitter(self.frame.units, [self._reference(n) for n in cases if n not in silent], self.tolerance)
         fitted = [narrowed(f, self.reading.signs) for f in fitter.fit(batches)]
+        plain_where_loads_turn(fitted, self.reading.signs)
         meant = senses(fitted, self.reading.signs)
         open_choices = _open(fitted, meant)
         sure_to_fail = any(not f.taken.fits for f in fitted if id(f) not in open_choices)

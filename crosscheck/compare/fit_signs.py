@@ -70,6 +70,21 @@ def narrowed(f: Fitted, signs: Mapping[str, str]) -> Fitted:
     return Fitted(f.batch, kept, min(kept, key=lambda c: c.rank)) if kept else f
 
 
+def plain_where_loads_turn(fitted: list[Fitted], signs: Mapping[str, str]) -> None:
+    """Where nothing fits and both member forces and reactions (or displacements) come nearest with their signs reversed, a
+    load that acts the other way is likelier than so many conventions at once: the plain signs are taken, so that the
+    differences and the suspects are seen in them. The verdict is the same (Fitter: no choice fits)."""
+    loose = [f for f in fitted if not f.taken.fits and not f.batch.said and _stated(f, signs)[1] is None]
+    if any(f.taken.fits and f.taken.telling.any() and f.taken.convention.sign < 0 for f in fitted):
+        return
+    turned = [f for f in loose if f.taken.convention.sign < 0]
+    inner = any(f.batch.quantity in ("axial", "shear") for f in turned)
+    outer = any(f.batch.quantity in ("fx", "fy", "dx", "dy") for f in turned)
+    if inner and outer:
+        for f in turned:
+            f.taken = _opposite(f) or f.taken
+
+
 _RULES = {"as the frame": "frame", "reversed": "reversed", "rightward": "rightward", "leftward": "leftward",
           "downward": "downward"}  # fmt: skip
 _NEGATIVE = re.compile(r"support|ground|foundation|revers|compress|down|left|negative|anti|hogging")
