@@ -280,7 +280,7 @@ def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tupl
                 axes = "open" if heads[chosen].noun == "F" and heads[chosen].axis else ""
                 roles[chosen] = Role("value", quantity, end, which, heads[chosen].unit, axes=axes)
                 left -= set(found)
-    idle = [heads[k].text for k in sorted(left) if not roles[k].name and not _all_zero(column(grid, k))]
+    idle = [heads[k].text for k in sorted(left) if not roles[k].name and _any_number(column(grid, k))]
     if idle and not why:
         why = f"it is not clear what the column{'s' if len(idle) > 1 else ''} {', '.join(idle)} hold{'' if len(idle) > 1 else 's'}"
     return roles, why
@@ -327,7 +327,7 @@ def _in_plane(
     found: list[int], quantity: str, heads: list[Head], grid: Grid, roles: list[Role]
 ) -> tuple[int | None, str]:
     """Of the columns that may hold a quantity (y and z of a spatial table) the one that is not all zero."""
-    free = [k for k in found if not roles[k].name]
+    free = [k for k in found if not roles[k].name and any(is_number(c) for c in column(grid, k))]
     if len(free) <= 1:
         return (free[0] if free else None), ""
     busy = [k for k in free if not _all_zero(column(grid, k))]
@@ -343,3 +343,8 @@ def _all_zero(cells: list[str]) -> bool:
         if number is None or number.value != 0:
             return False
     return True
+
+
+def _any_number(cells: list[str]) -> bool:
+    """Does a column hold numbers that are not all zero?"""
+    return any(is_number(c) for c in cells) and not _all_zero(cells)

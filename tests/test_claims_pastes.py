@@ -1,0 +1,79 @@
+"""Right pastes in every dress are read right; planted errors are never absorbed (tests/pastes.py).
+
+A sample by default; CROSSCHECK_PASTES=4000 runs the first 4000 seeds (about 2,400 of them fixed by three values).
+"""
+
+from __future__ import annotations
+
+import os
+
+import pytest
+
+from tests.claim_frame import bent
+from tests.pastes import Tally, known, make, number
+
+SAMPLE = 60
+
+
+def test_pastes() -> None:
+    count = int(os.environ.get("CROSSCHECK_PASTES", SAMPLE))
+    tally = Tally()
+    for seed in range(count):
+        tally.add(seed, plant=seed % 3 == 0)
+    drawn = sum(tally.drawn[k] for k in tally.drawn if k.startswith("layout"))
+    right = sum(tally.right[k] for k in tally.right if k.startswith("layout"))
+    assert drawn >= 0.4 * count
+    assert right >= 0.98 * drawn, tally.failures
+    # What is not read right is undecided, never wrong: no right paste disagrees, and none agrees on half of its values.
+    wrong = {k: n for k, n in tally.verdicts.items() if "(not right)" in k and "undecided" not in k}
+    assert not wrong, tally.failures
+    assert tally.planted["agree"] == 0, tally.failures
+    assert sum(tally.planted.values()) >= 0.2 * count
+
+
+def test_the_generator_plants_what_it_says() -> None:
+    right, wrong = make(4), make(4, "more")
+    assert right.data != wrong.data
+    assert right.values == wrong.values
+    assert "->" in wrong.planted
+
+
+def test_thirty_frames_whose_opinions_agree() -> None:
+    for k in range(0, 30, 7):
+        assert all(j.verdict == "agree" for j in known(k).judgements.values()), known(k).frame.title
+
+
+@pytest.mark.parametrize(
+    ("writing", "text"),
+    [("fixed", "-1234.50"), ("thousands", "-1,234.50"), ("brackets", "(1234.50)"), ("trailing minus", "1234.50-"),
+     ("decimal comma", "-1234,50"), ("unicode minus", "\u22121234.50"), ("exponent", "-1.2345E+03")],
+)  # fmt: skip
+def test_number_writings(writing: str, text: str) -> None:
+    assert number(-1234.5, 2, writing) == text
+
+
+# --- pastes that must be undecided: fewer than three values fix a choice that is not the README's
+
+
+@pytest.mark.parametrize("quantity", ["M", "N", "V"])
+@pytest.mark.parametrize("count", [1, 2])
+def test_too_few_values_for_a_reversed_sign(quantity: str, count: int) -> None:
+    k = bent()
+    column = "NVM".index(quantity)
+    rows = [
+        f"{m.name}\t{j}\t{-k.answer.cases['dead'].ends[n, e, column]:.3f}"
+        for n, m in enumerate(k.frame.members.values()) for e, j in enumerate((m.joint_from, m.joint_to))
+    ]  # fmt: skip
+    unit = "kNm" if quantity == "M" else "kN"
+    verdict, closed, _ = k.judge(f"Load case: dead\nMember\tEnd\t{quantity} [{unit}]\n" + "\n".join(rows[2 : 2 + count]))
+    assert verdict == "undecided"
+    assert closed.undecided
+
+
+@pytest.mark.parametrize("count", [1, 2])
+def test_too_few_values_for_another_unit(count: int) -> None:
+    k = bent()
+    rows = [f"{j}\t{k.answer.cases['dead'].joints[k.frame.joint_index[j], 0] * 1000:.4f}" for j in ("B", "C", "E")][:count]
+    verdict, closed, _ = k.judge("Load case: dead\nDisplacements\nJoint\tdx\n" + "\n".join(rows))
+    assert verdict == "undecided"
+    assert any("--units" in why for why in closed.undecided)
