@@ -36,9 +36,9 @@ DIMENSIONED = 12
 
 
 class Sketch:
-    """A drawing of one frame on its own figure. `loose`: room around it, in units."""
+    """A drawing of one frame on its own figure. room: units left free at its left, right, below and above."""
 
-    def __init__(self, frame: Frame, room: tuple[float, float, float, float] = (3.0, 3.0, 3.0, 3.0)) -> None:
+    def __init__(self, frame: Frame, room: tuple[float, float, float, float] = (3.9, 3.9, 3.7, 3.7)) -> None:
         self.frame, self.xy, self.table = frame, frame.xy, frame.member_table
         low, high = self.xy.min(axis=0), self.xy.max(axis=0)
         size = np.maximum(high - low, 1e-9 * max(float(np.ptp(self.xy)), 1.0))
@@ -237,7 +237,8 @@ class Sketch:
         self.lines([[place(v) - slash, place(v) + slash] for v in marks], 0.9)
         for a, b in zip(marks[:-1], marks[1:], strict=True):
             off = 0.5 * u if axis == 0 else -0.5 * u
-            self.text(place((a + b) / 2, off), f"{b - a:.4g}", 6.8, 90.0 * axis)
+            if b - a > 0.9 * u:  # no room for its figure; the frame file has it
+                self.text(place((a + b) / 2, off), f"{b - a:.4g}", 6.8, 90.0 * axis)
 
     # --- loads
 
