@@ -29,7 +29,7 @@ from tests.random_frames import random_frame
 
 OWN = 1e-8
 BLOCKS, BLOCK, APART = 12, 25, 60
-"""300 frames: 25 from every 60 seeds on."""
+"""300 frames that have a balance: 25 from every 60 seeds on."""
 LOADED = "loaded"
 PAST = "past its critical load"
 
@@ -61,14 +61,11 @@ def loaded(seed: int) -> tuple[Frame, float] | None:
     return None
 
 
-def loaded_frames(first: int, count: int) -> Iterator[tuple[int, Frame, float]]:
+def loaded_frames(first: int) -> Iterator[tuple[int, Frame, float]]:
     for seed in range(first, first + APART):
         found = loaded(seed)
         if found is not None:
             yield (seed, *found)
-            count -= 1
-            if not count:
-                return
 
 
 def distributed(frame: Frame) -> Answer:
@@ -83,23 +80,31 @@ def distributed(frame: Frame) -> Answer:
 @pytest.mark.parametrize("block", range(BLOCKS))
 def test_opinions_agree_up_to_near_the_critical_load(block: int) -> None:
     """In ends, joints, reactions and stations. Where the axial forces change so much as the frame gives way that it has
-    no stable balance left, both say so."""
-    wrong, agreed = [], 0
-    for seed, frame, share in loaded_frames(APART * block, BLOCK):
+    no stable balance left, both say so. Slope-deflection now and then says so of a frame that has one (its axial forces
+    pass through an unstable state on the way there): then many elements must confirm what distribution gives."""
+    wrong, agreed, alone = [], 0, 0
+    for seed, frame, share in loaded_frames(APART * block):
         studied = study(frame)
         one, other = (o.opine(frame, studied, [LOADED]) for o in (slope_deflection, moment_distribution))
         assert isinstance(one, Answer) and isinstance(other, Answer)
-        silent = [a.silent.get(LOADED, "") for a in (one, other)]
-        if any(silent):
-            if not all(said.startswith(PAST) for said in silent):
-                wrong.append((seed, share, *silent))
-            continue
-        agreed += 1
-        difference, where = apart(frame, one, other, partial=True)
-        if difference > OWN:
-            wrong.append((seed, share, f"{difference:.1e} {where}"))
+        said = [a.silent.get(LOADED, "") for a in (one, other)]
+        if said[0].startswith(PAST) and not said[1]:
+            alone += 1
+            if not falls(frame, largest_error(frame, other, 4), largest_error(frame, other, 12)):
+                wrong.append((seed, share, said[0]))
+        elif any(said):
+            if not all(s.startswith(PAST) for s in said):
+                wrong.append((seed, share, *said))
+        else:
+            agreed += 1
+            difference, where = apart(frame, one, other, partial=True)
+            if difference > OWN:
+                wrong.append((seed, share, f"{difference:.1e} {where}"))
+        if agreed == BLOCK:
+            break
     assert wrong == []
-    assert agreed >= 0.7 * BLOCK
+    assert agreed == BLOCK
+    assert alone <= 0.2 * BLOCK
 
 
 # --- against many elements ---------------------------------------------------------------------------
