@@ -80,9 +80,11 @@ def deflection(subject: Subject) -> Iterator[Finding]:
     if subject.answer is None or subject.answer.spans.sampled:
         return
     worst: list[tuple[float, str, list[int], float]] = []
-    for chain in spans(subject):
-        for case in in_service(subject):
-            sag, length = _sag(subject, case, chain)
+    chains = spans(subject)
+    for case in in_service(subject):
+        across = _across(subject, case)
+        for chain in chains:
+            sag, length = _sag(subject, across, chain)
             worst.append((_share(sag, length), case, chain, length))
     over = sorted((w for w in worst if w[0] > 1 / subject.limits.deflection), key=lambda w: -w[0])
     if over:
@@ -120,20 +122,24 @@ def spans(subject: Subject) -> list[list[int]]:
 SHARES = np.linspace(0.0, 1.0, 21)
 
 
-def _sag(subject: Subject, case: str, chain: list[int]) -> tuple[float, float]:
+def _across(subject: Subject, case: str) -> Floats:
+    """(m, 21) displacement of every member across its axis at SHARES of its length, up or to the left."""
+    assert subject.answer is not None
+    t = subject.frame.member_table
+    member = np.repeat(np.arange(len(t.length)), len(SHARES))
+    side = np.where(np.tile(SHARES, len(t.length)) < 1, 1, -1)
+    x = (t.length[:, None] * SHARES).ravel()
+    across = subject.answer.spans.along(case, member, x, side)[:, 3].reshape(-1, len(SHARES))
+    return np.asarray(across * np.where(t.cos > 0, 1.0, -1.0)[:, None])
+
+
+def _sag(subject: Subject, across: Floats, chain: list[int]) -> tuple[float, float]:
     """Largest deflection of a chain of members against the line between its ends, and its span; of a free end against
     the direction in which the other end starts out, with twice the length."""
     frame, t = subject.frame, subject.frame.member_table
-    assert subject.answer is not None
-    places, moves = [], []
-    for k in chain:
-        x = t.length[k] * SHARES
-        across = subject.answer.spans.along(case, np.full(len(x), k), x, np.where(SHARES < 1, 1, -1))[:, 3]
-        sign = 1.0 if t.cos[k] > 0 else -1.0
-        offset = frame.xy[t.ends[k, 0], 0] + x * t.cos[k]
-        places.append(offset / abs(t.cos[k]))
-        moves.append(sign * across)
-    at, move = np.concatenate(places), np.concatenate(moves)
+    start = frame.xy[t.ends[chain, 0], 0] / np.abs(t.cos[chain])
+    at = (start[:, None] + (t.length * np.sign(t.cos))[chain, None] * SHARES).ravel()
+    move = np.concatenate([across[k] for k in chain])
     order = np.argsort(at, kind="stable")
     at, move = at[order] - at[order[0]], move[order]
     length = float(at[-1])

@@ -204,10 +204,11 @@ def unloaded_span(subject: Subject) -> Iterator[Finding]:
     """
     names = list(subject.frame.members)
     loaded = {name: _loaded(subject, name) for name in subject.frame.cases}
+    long = [run for run in runs(subject) if len(run) >= 3]
     for name, here in loaded.items():
-        for run in runs(subject):
+        for run in long:
             bare = [m for m in run if m not in here]
-            if len(run) < 3 or len(bare) != 1:
+            if len(bare) != 1:
                 continue
             pattern = any(bare[0] in other and not set(run) <= other for case, other in loaded.items() if case != name)
             says = f"in {name} the span {names[bare[0]]} carries no load while the other {len(run) - 1} of its run do"

@@ -78,7 +78,8 @@ def mirrored_supports(subject: Subject) -> Iterator[Finding]:
         if one is None or two is None:
             bare, held = (a, b) if one is None else (b, a)
             says = f"the frame is symmetrical, but {bare} has no support while {held}, which mirrors it, has"
-            yield Finding("check" if _feet(subject, a, b) else "note", (a, b), says)
+            if _feet(subject, a, b):
+                yield Finding("check", (a, b), says)
         elif (one.y, one.rotation) != (two.y, two.rotation):
             odd = _feet(subject, a, b) and _grip(one) != _grip(two)
             says = f"the frame is symmetrical, but the supports at {a} and {b} differ"
