@@ -114,8 +114,9 @@ CHECKED = (0, 5, 9, 14, 15, 16, 17, 23, 25, 30, 32, 33, 35)
 
 def falls(frame: Frame, coarse: float, fine: float) -> bool:
     """Whether the error falls as it should from 4 to 12 elements: with the fourth power of their length (81 times), or
-    the second with shear strain (9 times); less where loads cut the elements unevenly."""
-    return fine < coarse / (5 if frame.analysis.shear == "elastic" else 12)
+    the second with shear strain (9 times); less where loads cut the elements unevenly. Nothing can fall where the
+    members hardly bend between their joints and both are exact but for rounding."""
+    return max(coarse, fine) < 1e-8 or fine < coarse / (5 if frame.analysis.shear == "elastic" else 12)
 
 
 def largest_error(frame: Frame, answer: Answer, parts: int) -> float:
