@@ -6,6 +6,7 @@ import json
 import re
 import shutil
 import subprocess
+import sys
 from collections.abc import Iterator
 from html.parser import HTMLParser
 from itertools import pairwise
@@ -292,6 +293,23 @@ def test_what_pairs_share_is_what_the_readme_says() -> None:
         said = list(stated.values())[-1] if shares == "the same" else re.sub(r" \(`[^)]*\)", "", shares)
         stated[tuple(pair.replace("moment d", "moment-d").split(", "))] = said
     assert stated == SHARED
+
+
+def test_a_check_without_a_record_loads_no_drawing_and_no_template_engine() -> None:
+    """anastruct's own import of matplotlib waits until it draws, and then works (opinions/library/deferred.py)."""
+    code = (
+        "import sys\n"
+        "from crosscheck import cli\n"
+        f"assert cli.main(['opinions', {str(ROOT / 'cases' / 'shed.toml')!r}]) == 0\n"
+        "assert 'anastruct' in sys.modules\n"
+        "assert not {'matplotlib', 'jinja2', 'PIL'} & set(sys.modules)\n"
+        "from anastruct.fem.plotter import mpl\n"
+        "import matplotlib.pyplot\n"
+        "assert mpl.plt.figure is matplotlib.pyplot.figure\n"
+        "assert mpl.matplotlib.colors.is_color_like('k')\n"
+    )
+    done = subprocess.run([sys.executable, "-W", "error", "-c", code], capture_output=True, text=True, timeout=120)
+    assert done.returncode == 0, done.stderr
 
 
 def test_visible_names_what_hides() -> None:
