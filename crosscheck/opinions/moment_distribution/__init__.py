@@ -20,6 +20,7 @@ Shares no mechanics with the other opinions: formulas that stand there too are m
 
 from crosscheck.opinions.moment_distribution.opinion import opine
 from crosscheck.opinions.moment_distribution.process import NAME
+from crosscheck.opinions.moment_distribution.second_order import critical_load_factor
 from crosscheck.opinions.moment_distribution.working import working
 
-__all__ = ["NAME", "opine", "working"]
+__all__ = ["NAME", "critical_load_factor", "opine", "working"]
