@@ -80,6 +80,11 @@ class Screen:
         }  # fmt: skip
         return k, place, sign * seen.said[k], sign * seen.value[k]
 
+    @property
+    def partial(self) -> bool:
+        """Whether some values have no forecast."""
+        return int(self.seen.linear[self.rows].sum()) < len(self.seen.value)
+
     @cached_property
     def _answer(self) -> Answer:
         return self.base.answer(self.seen.names)

@@ -109,15 +109,16 @@ class Sweep:
         )  # fmt: skip
 
     def foretold(self, option: Option) -> Weighed | None:
-        """By its delta where it has one, else by solving; places that are not linear are left as they were."""
+        """By its delta where it has one, else by solving; places without a forecast count as met."""
         if option.delta is None:
             return self.solve(option)
         if not np.isfinite(option.delta).all():
             return None
-        said = self.seen.said.copy()
         rows = self.screen.rows
         direct = self.seen.linear[rows]
-        said[rows[direct]] += option.delta[direct]
+        # Places of which no forecast is made tell neither for nor against.
+        said = self.seen.value.copy()
+        said[rows[direct]] = self.seen.said[rows[direct]] + option.delta[direct]
         return self.weigh(option, said)
 
     def solve(self, option: Option) -> Weighed | None:
@@ -160,7 +161,7 @@ class Sweep:
         """Every single mistake worth telling, best first."""
         quick = [self.weigh(o) for o in paste_options(self.seen)]
         told = self._told(quick)
-        if not self.seen.linear.all() or self.frame.analysis.order == 2:
+        if self.screen.partial or self.slow:
             # Foretold in part, or to first order: the most likely are solved again.
             told.sort(key=lambda w: w.rough)
             told = [w for o in told[: SLOW_FEW if self.slow else 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
