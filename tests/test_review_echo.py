@@ -100,6 +100,19 @@ def test_a_joint_the_frame_lacks_is_said() -> None:
     assert [(f.grade, f.where) for f in told if f.grade != "note"] == [("check", ("Z9",))]
 
 
+def test_results_in_the_same_paste_are_no_input() -> None:
+    results = """
+Joint displacements
+Joint  UX       UY       RZ
+A      0        0        0
+B      0.0121   -0.0001  0.0013
+
+Support,Fx,Fy,M
+A,-1.2,30.4,0.0
+"""
+    assert found(ECHO + results) == found(ECHO)
+
+
 def test_command(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     frame, echo = tmp_path / "portal.toml", tmp_path / "input.txt"
     frame.write_text(SOUND["portal"], encoding="utf-8")

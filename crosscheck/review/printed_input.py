@@ -23,8 +23,8 @@ ROLES = {
     "member": r"members?|elements?|beams?|bars?|elem|(member|element|beam|bar) (no|nr|name|id|label)",
     "start": r"start|from|i|(start|from|first|i) ?(joint|node|end)|(joint|node) ?(i|1|a|start|from)|end ?(i|1|a)",
     "last": r"end|to|j|(end|to|last|second|j) ?(joint|node|end)|(joint|node) ?(j|2|b|end|to)|end ?(j|2|b)",
-    "x": r"x|x ?coord(inate)?|ux|dx|tx", "y": r"y|y ?coord(inate)?|uy|dy|ty", "z": r"z|z ?coord(inate)?|uz|dz|tz",
-    "turn": r"r|rot|rotation|rz|ry|mz|rotz|phi|theta",
+    "x": r"x|x ?coord(inate)?|ux|tx", "y": r"y|y ?coord(inate)?|uy|ty", "z": r"z|z ?coord(inate)?|uz|tz",
+    "turn": r"r|rot|rotation|rz|ry|mz|rotz",
     "type": r"type|condition|fixity|restraint|kind|support type",
     "section": r"sections?|profile|property|section (name|no|id)", "material": r"materials?|material (name|no|id)",
     "I": r"i|iy|iz|ix|ixx|iyy|izz|inertia|second moment( of area)?|moment of inertia",
@@ -59,15 +59,17 @@ def echo_of(text: str, frame_names: FrameNames) -> tuple[EchoFact, ...]:
     lines = lines_of(text)
     comma = bool(commas_are_decimal(cell for line in lines for cell in _cells(line)))
     heads: list[str] = []
-    out: list[EchoFact] = []
+    tables: list[list[list[EchoFact]]] = []
     for number, line in enumerate(lines, 1):
         if _roles(fresh := _head_cells(line)):
             heads = fresh
+            tables.append([])
             continue
         row = _fitted(line, len(heads))
         if heads and row:
-            out += _facts(number, heads, _roles(heads), row, names, comma)
-    return tuple(out)
+            tables[-1].append(list(_facts(number, heads, _roles(heads), row, names, comma)))
+    # Supports are told row by row or not at all: a table of displacements has zeros in some of its rows only.
+    return tuple(f for rows in tables for facts in rows for f in facts if f.what != "support" or all(rows))
 
 
 def _cells(line: str) -> list[str]:
