@@ -292,7 +292,7 @@ def _sentence(frame: Frame, names: list[str], move: Floats, moving: Ints) -> str
     subject = "the frame can sway" if set(groups) <= {"right", "left"} else "the frame can move"
     if len(groups) == 1 and len(moving) == len(joined):
         word = next(iter(groups))
-        return f"nothing holds the frame: every joint moves {word} together"
+        return f"nothing holds the frame: every joint ({_listed(groups[word])}) moves {word} together"
     return f"{subject}: " + ", ".join(
         f"{_listed(group)} {'moves' if len(group) == 1 else 'move'} {word}{' together' if len(group) > 1 else ''}"
         for word, group in groups.items()
