@@ -18,7 +18,7 @@ from crosscheck.claims.readfile import checked
 from crosscheck.claims.reading import EchoFact, Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
 from crosscheck.claims.scan import RawTable, Scan, cells_of, is_number, scan
 from crosscheck.claims.sentences import entries_told
-from crosscheck.claims.stated import Stated, stated_in, with_options
+from crosscheck.claims.stated import Stated, stated_in, states_face, with_options
 from crosscheck.claims.words import Size, unit_of
 from crosscheck.frame.units import Dimension
 
@@ -83,6 +83,7 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
         echo=tuple(reader.echo),
         unknown_cases=tuple(scanned.unknown_cases),
         expect=scanned.expect,
+        face=options.face if options.face is not None else states_face(scanned),
     )
 
 

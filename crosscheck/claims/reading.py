@@ -153,7 +153,8 @@ class EchoFact:
 @dataclass(frozen=True, slots=True)
 class Reading:
     """A claim as read. `rows` counts rows of results. `signs`: quantity to stated convention. `undecided`: choices in the
-    reading itself that could not be made, each with what would settle it. `expect`: the first line's "# expect:"."""
+    reading itself that could not be made, each with what would settle it. `expect`: the first line's
+    "# expect:". `face`: end values are stated to stand at the face of rigid zones."""
 
     file: str
     sha256: str
@@ -169,3 +170,4 @@ class Reading:
     echo: tuple[EchoFact, ...] = ()
     unknown_cases: tuple[str, ...] = ()
     expect: str = ""
+    face: bool = False

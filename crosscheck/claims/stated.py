@@ -74,6 +74,14 @@ def stated_in(scan: Scan) -> Stated:
     return out
 
 
+_FACE = re.compile(r"\b(?:at|to) (?:the )?faces?\b|\bface of (?:the )?(?:supports?|columns?|joints?|walls?)\b", re.IGNORECASE)
+
+
+def states_face(scan: Scan) -> bool:
+    """Do headings or remarks say that end values stand at the face of supports or columns?"""
+    return any(_FACE.search(text[:500]) for _, text in [*scan.headings, *scan.remarks])
+
+
 def _units_in(text: str, out: Stated) -> None:
     """ "Units: kN, m", "forces in kN, moments in kNm", "[kN, kNm]"."""
     for word, unit_text in re.findall(r"([A-Za-z]+)\s*(?:\bin\b|:|=)?\s*[\[(]?\s*([A-Za-z]+(?:[ .*\u00b7-]?[a-z]+)?)\b", text):

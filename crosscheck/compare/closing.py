@@ -12,7 +12,6 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from crosscheck.answer import Answer
-from crosscheck.claims.numbers import parse_number
 from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.fit import Choice, Fitted, Fitter
@@ -20,6 +19,7 @@ from crosscheck.compare.fit_conventions import Batch, distance, placed
 from crosscheck.compare.fit_signs import Senses, narrowed, plain_where_loads_turn, senses
 from crosscheck.compare.fit_stations import with_stations
 from crosscheck.compare.fit_values import Reference
+from crosscheck.compare.fit_variants import variants
 from crosscheck.compare.tolerance import Tolerance
 from crosscheck.frame.model import Frame
 from crosscheck.frame.units import FORCE, LENGTH, MOMENT, Dimension, unit_name
@@ -40,25 +40,18 @@ def close(
     if not answers:
         return closer.result((), [], ["no opinion speaks for this frame"])
     entries, notes = _of_case(reading, case)
-    if any(e.comma_open for e in entries):
-        return _by_comma(closer, entries, notes, case)
-    return _close_case(closer, entries, notes, case)
-
-
-def _by_comma(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
-    """Commas that may stand before decimals or thousands are taken as what fits; both fitting come to the same."""
-    grouped = [_as_thousands(e) for e in entries]
-    for tried, word in ((entries, "decimals"), (grouped, "thousands")):
-        closed = _close_case(closer, tried, [*notes, f"commas are taken to stand before {word}, by fit"], case)
-        if closed.cases and not closed.undecided and not any(closer.bad[n] for n in closed.cases):
+    ways: list[tuple[int, ClosedClaim]] = []
+    for tried, said in variants(entries, frame, reading.face):
+        closed = _close_case(closer, tried, [*notes, said] if said else notes, case)
+        if closer.sure(closed):
             return closed
-    reason = "commas may stand before decimals or before thousands; print one number with both marks, or with a point"
-    return closer.result((), notes, [reason])
-
-
-def _as_thousands(e: Entry) -> Entry:
-    number = parse_number(e.number.printed, decimal_comma=False)
-    return replace(e, number=number) if e.comma_open and number else e
+        ways.append((sum(closer.bad[n] for n in closed.cases), closed))
+    if any(e.comma_open for e in entries):
+        reason = "commas may stand before decimals or before thousands; print one number with both marks, or with a point"
+        return closer.result((), notes, [reason])
+    plain, best = ways[0], min(ways, key=lambda way: way[0])
+    # Another way than the plain one must explain at least three values, and most of what does not fit.
+    return best[1] if best[1].cases and plain[0] - best[0] >= FIXED_BY and 2 * best[0] < plain[0] else plain[1]
 
 
 def _close_case(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
@@ -102,11 +95,16 @@ class _Closer:
     frame: Frame
     answers: Mapping[str, Answer]
     tolerance: Tolerance
-    bad: dict[str, bool] = field(default_factory=dict)
+    bad: dict[str, int] = field(default_factory=dict)
     _references: dict[str, Reference] = field(default_factory=dict)
 
+    def sure(self, closed: ClosedClaim) -> bool:
+        """Does everything fit, and is nothing open but what the reading itself leaves open?"""
+        known = {*self.result((), [], []).undecided}
+        return bool(closed.cases) and not any(self.bad[n] for n in closed.cases) and known.issuperset(closed.undecided)
+
     def close(self, entries: list[Entry], notes: Iterable[str]) -> ClosedClaim:
-        """Every entry has its case by now. Notes in `bad`, under the first open case, whether any value is beyond reach."""
+        """Every entry has its case by now. Counts in `bad` the values that fit no choice."""
         notes = list(notes)
         cases = tuple(n for n in self.frame.names if any(e.case == n for e in entries))
         silent = [n for n in cases if not any(n in a.cases for a in self.answers.values())]
@@ -121,7 +119,7 @@ class _Closer:
         open_choices = _open(fitted, meant)
         sure_to_fail = any(not f.taken.fits for f in fitted if id(f) not in open_choices)
         for name in cases:
-            self.bad[name] = any(not f.taken.fits for f in fitted)
+            self.bad[name] = sum(int(f.taken.bad.sum()) for f in fitted)
         if sure_to_fail:
             notes += [f"{why}; it disagrees whichever is meant" for why in open_choices.values()]
         else:

@@ -1,0 +1,100 @@
+"""Other ways to take what is printed, tried where the plain one does not fit: commas before thousands, end forces in global
+axes, end values at the face of rigid zones. Each is one way for the whole claim, and it is said when one is taken.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import replace
+from math import cos, sin
+
+import numpy as np
+
+from crosscheck.claims.numbers import Number, parse_number
+from crosscheck.claims.reading import Entry
+from crosscheck.frame.model import Frame
+
+Variant = tuple[list[Entry], str]
+"""Entries and what is said of them ("" for the plain way)."""
+
+
+def variants(entries: list[Entry], frame: Frame, face: bool) -> Iterator[Variant]:
+    """The plain way first. face: the paste states that its end values stand at the face."""
+    plain = at_face(entries, frame) if face else entries
+    yield plain, "end values stand at the face of rigid zones, as stated" if face else ""
+    if any(e.comma_open for e in entries):
+        yield [_as_thousands(e) for e in plain], "commas are taken to stand before thousands, by fit"
+        return
+    if any(e.axes == "open" and e.kind == "end" for e in entries):
+        turned = in_member_axes(entries, frame)
+        if turned is not None:
+            yield turned, "end forces Fx, Fy are in global axes, by fit"
+    if not face and any(e.kind == "end" and _zone(e, frame) for e in entries):
+        yield at_face(entries, frame), "end values stand at the face of rigid zones, by fit"
+
+
+def _as_thousands(e: Entry) -> Entry:
+    number = parse_number(e.number.printed, decimal_comma=False)
+    return replace(e, number=number) if e.comma_open and number else e
+
+
+def _end(e: Entry) -> int | None:
+    """The frame's end of an end value; where only the paste's is known, members run as in the frame."""
+    return e.end if e.end is not None else e.place
+
+
+def _zone(e: Entry, frame: Frame) -> float:
+    """Length of the rigid zone at the end of the member that the value is for."""
+    if e.member is None or e.cut is not None or (end := _end(e)) is None:
+        return 0.0
+    member = frame.members[e.member]
+    return member.rigid_from if end == 0 else member.rigid_to
+
+
+def at_face(entries: list[Entry], frame: Frame) -> list[Entry]:
+    """End values taken at the face of the rigid zone there."""
+    out = []
+    for e in entries:
+        zone = _zone(e, frame) if e.kind == "end" else 0.0
+        if zone:
+            end = _end(e)
+            length = float(frame.member_table.length[frame.member_index[str(e.member)]])
+            e = replace(e, end=end, place=end if e.place is None else e.place, cut=zone if end == 0 else length - zone)
+        out.append(e)
+    return out
+
+
+def in_member_axes(entries: list[Entry], frame: Frame) -> list[Entry] | None:
+    """End forces along global x and y turned into the member's axes: axial (tension positive) and shear (along local y).
+
+    None where a row gives one of the two alone.
+    """
+    pairs: dict[tuple[int, str | None, int | None], dict[str, Entry]] = {}
+    for e in entries:
+        if e.axes == "open" and e.kind == "end":
+            pairs.setdefault((e.line, e.member, _end(e)), {})[e.quantity] = e
+    if any(set(p) != {"axial", "shear"} or end is None for (_, _, end), p in pairs.items()):
+        return None
+    out = [e for e in entries if not (e.axes == "open" and e.kind == "end")]
+    for (_, member, end), pair in pairs.items():
+        assert end is not None
+        m = frame.member_index[str(member)]
+        angle = float(np.arctan2(frame.member_table.sin[m], frame.member_table.cos[m]))
+        out += _turned(pair["axial"], pair["shear"], angle, end)
+    return out
+
+
+def _turned(along_x: Entry, along_y: Entry, angle: float, end: int) -> list[Entry]:
+    """Both components with their rounding carried through; printed as the pair."""
+    x, y = along_x.number, along_y.number
+    c, s = cos(angle), sin(angle)
+    printed = f"{x.printed}, {y.printed}"
+    half = [abs(c) * x.half + abs(s) * y.half, abs(s) * x.half + abs(c) * y.half]
+    outward = -1.0 if end == 0 else 1.0  # tension pulls a member's start back and its end forward
+    axial = Number(outward * (c * x.value + s * y.value), half[0], printed)
+    shear = Number(-s * x.value + c * y.value, half[1], printed)
+    place = {"end": end, "place": end, "run": 1}
+    return [
+        replace(along_x, number=axial, quantity="axial", axes="", **place),  # type: ignore[arg-type]
+        replace(along_y, number=shear, quantity="shear", axes="", **place),  # type: ignore[arg-type]
+    ]

@@ -1,0 +1,95 @@
+"""End forces in global axes and end values at the face of rigid zones: found by fit for a whole claim, never for one value."""
+
+from __future__ import annotations
+
+from functools import lru_cache
+
+import numpy as np
+import pytest
+
+from tests.claim_frame import BENT, Known, bent
+
+
+def global_ends(k: Known, case: str = "dead", sign: float = 1.0, wrong: str = "") -> str:
+    """Forces on members along global x and y, and anticlockwise moments."""
+    t = k.frame.member_table
+    rows = ["Member\tNode\tFx [kN]\tFy [kN]\tMz [kNm]"]
+    for m, member in enumerate(k.frame.members.values()):
+        for e, joint in enumerate((member.joint_from, member.joint_to)):
+            n, v, mm = k.answer.cases[case].ends[m, e]
+            along = n if e else -n
+            x, y = along * t.cos[m] - v * t.sin[m], along * t.sin[m] + v * t.cos[m]
+            x *= 1.2 if wrong == f"{member.name} {joint}" else 1.0
+            rows.append(f"{member.name}\t{joint}\t{sign * x:.4f}\t{sign * y:.4f}\t{-sign * mm:.4f}")
+    return f"Load case: {case}\n" + "\n".join(rows) + "\n"
+
+
+@pytest.mark.parametrize("sign", [1.0, -1.0])
+def test_global_axes(sign: float) -> None:
+    k = bent()
+    verdict, closed, cases = k.judge(global_ends(k, sign=sign))
+    assert verdict == "agree", closed
+    assert cases[0].compared == 30
+    assert any("global axes" in note for note in closed.notes)
+
+
+def test_one_wrong_force_in_global_axes_is_found_at_its_place() -> None:
+    k = bent()
+    verdict, closed, cases = k.judge(global_ends(k, wrong="A-B A"))
+    assert verdict == "disagree"
+    assert any("global axes" in note for note in closed.notes)
+    assert {(d.place.member, d.place.joint) for d in cases[0].differences} == {("A-B", "A")}
+
+
+@lru_cache(maxsize=1)
+def zoned() -> Known:
+    text = BENT.replace('rafter = { from = "B", to = "C",', 'rafter = { from = "B", to = "C", rigid_from = 0.3, rigid_to = 0.25,')
+    return Known(text.replace('"C-E" = {', '"C-E" = { rigid_from = 0.25, rigid_to = 0.3,'))
+
+
+def face_ends(k: Known, case: str = "dead", factor: float = 1.0) -> str:
+    """End moments at the faces of the rigid zones, anticlockwise."""
+    rows = ["Member\tNode\tM [kNm]"]
+    for m, member in enumerate(k.frame.members.values()):
+        length = k.frame.member_table.length[m]
+        for e, joint in enumerate((member.joint_from, member.joint_to)):
+            x = member.rigid_from if e == 0 else length - member.rigid_to
+            value = k.answer.spans.along(case, np.array([m]), np.array([x]), np.array([1 if e == 0 else -1]))[0, 2]
+            value *= factor if (member.name, e) == ("rafter", 0) else 1.0
+            rows.append(f"{member.name}\t{joint}\t{-(value if e == 0 else -value):.4f}")
+    return f"Load case: {case}\n" + "\n".join(rows) + "\n"
+
+
+def test_values_at_the_face_are_recognised_and_compared_there() -> None:
+    k = zoned()
+    verdict, closed, cases = k.judge(face_ends(k))
+    assert verdict == "agree", closed
+    assert cases[0].compared == 10
+    assert any("face of rigid zones, by fit" in note for note in closed.notes)
+    assert sum(v.kind == "span" for v in closed.values) == 4
+
+
+def test_values_stated_to_be_at_the_face() -> None:
+    k = zoned()
+    verdict, closed, _ = k.judge("Moments at the face of columns\n" + face_ends(k))
+    assert verdict == "agree", closed
+    assert any("as stated" in note for note in closed.notes)
+    assert k.judge(face_ends(k), face=False)[0] == "agree"
+    assert k.judge("Moments at the face of columns\n" + k.ends("dead"), case="dead")[0] == "disagree"
+
+
+def test_one_value_at_the_face_among_others_at_the_joint_is_a_finding() -> None:
+    k = zoned()
+    rows = k.ends("dead").splitlines()
+    rows[3] = rows[3].rsplit("\t", 1)[0] + "\t" + f"{-float(face_ends(k).splitlines()[4].split()[-1]):.3f}"
+    verdict, closed, cases = k.judge("Load case: dead\n" + "\n".join(rows))
+    assert verdict == "disagree"
+    assert [(d.place.member, d.place.joint, d.place.quantity) for d in cases[0].differences] == [("rafter", "B", "moment")]
+    assert not any("face" in note for note in closed.notes)
+
+
+def test_an_error_at_the_face_is_found() -> None:
+    k = zoned()
+    verdict, _, cases = k.judge(face_ends(k, factor=1.3))
+    assert verdict == "disagree"
+    assert len(cases[0].differences) == 1
