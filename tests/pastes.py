@@ -1,6 +1,7 @@
 """A generator of pastes: right results of thirty frames, printed in the ways that people's analyses print them.
 
-Every paste is drawn from a seed: layout, separator, number writing, units, signs, names, heads, noise, encoding and cases are
+Every paste is drawn from a seed: layout, separator, number writing, units, signs, names, heads, noise, encoding and
+cases are
 each drawn on their own. The sign formulas stand here a second time on purpose: nothing of crosscheck.claims or
 crosscheck.compare makes a paste. Run `python -m tests.pastes 2000` for the figures by layout.
 """
@@ -11,7 +12,7 @@ import sys
 from collections import Counter
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from functools import lru_cache
+from functools import cache
 from random import Random
 from typing import Any
 
@@ -54,7 +55,9 @@ def frame_text(k: int) -> str:
         keys.append(key)
         out.append(f'"{key}" = {{ from = "{names[a]}", to = "{names[b]}", section = "s", material = "s" }}')
     out.append("[supports]")
-    out += [f'"{names[j]}" = "{"fixed" if shape in ("grid", "portals") or n == 0 else "pinned"}"' for n, j in enumerate(feet)]
+    out += [
+        f'"{names[j]}" = "{"fixed" if shape in ("grid", "portals") or n == 0 else "pinned"}"' for n, j in enumerate(feet)
+    ]
     out += ["[loads.dead]", "apply = ["]
     out += [f'  {{ member = "{keys[m]}", uniform = "{r.uniform(8, 20):.2f} kN/m", direction = "down" }},' for m in roofs]
     out += [f'  {{ member = "{keys[roofs[0]]}", force = "{r.uniform(15, 30):.1f} kN", at = "35%", direction = "down" }},']
@@ -91,7 +94,16 @@ def _portals(r: Random) -> tuple[Any, ...]:
 
 
 def _gable(r: Random) -> tuple[Any, ...]:
-    joints = {0: (0, 0), 1: (0, 4), 2: (5, round(r.uniform(5, 6.5), 2)), 3: (10, 4), 4: (10, 0), 5: (15, 5.2), 6: (20, 4), 7: (20, 0)}
+    joints = {
+        0: (0, 0),
+        1: (0, 4),
+        2: (5, round(r.uniform(5, 6.5), 2)),
+        3: (10, 4),
+        4: (10, 0),
+        5: (15, 5.2),
+        6: (20, 4),
+        7: (20, 0),
+    }
     return joints, [(0, 1), (1, 2), (2, 3), (4, 3), (3, 5), (5, 6), (6, 7)], [0, 4, 7], [1, 2, 4, 5]
 
 
@@ -141,15 +153,23 @@ class Known:
         return FrameNames.of(self.frame)
 
 
-@lru_cache(maxsize=None)
+@cache
 def known(k: int) -> Known:
     frame = read_frame_text(frame_text(k), f"frame{k}.toml")
     found = study(frame)
-    answers = {"slope-deflection": slope_deflection.opine(frame, found), "moment-distribution": moment_distribution.opine(frame, found)}
+    answers = {
+        "slope-deflection": slope_deflection.opine(frame, found),
+        "moment-distribution": moment_distribution.opine(frame, found),
+    }
     assert all(isinstance(a, Answer) for a in answers.values())
     comparison = Comparison(frame, answers)
     judgements = {name: comparison.judge(name) for name in frame.names}
-    return Known(frame, answers, judgements, ClaimComparison(frame, {"slope-deflection": answers["slope-deflection"]}, judgements, CLAIM))
+    return Known(
+        frame,
+        answers,
+        judgements,
+        ClaimComparison(frame, {"slope-deflection": answers["slope-deflection"]}, judgements, CLAIM),
+    )
 
 
 # --- what a paste looks like
@@ -299,7 +319,8 @@ class Maker:
         self.telling: Counter[tuple[str, int]] = Counter()
 
     def tell(self, case: str, quantity: str, values: Any, place: int = 0) -> None:
-        """Counts values large enough to tell a sign or a unit by; values between surely and surely not count as doubtful."""
+        """Counts values large enough to tell a sign or a unit by; values between surely and surely not count as
+        doubtful."""
         scale = self.known.judgements[case].scales.of(quantity.split()[-1])
         sizes = np.abs(np.atleast_1d(np.asarray(values, dtype=float))) / scale
         self.telling[quantity, place] += int((sizes > 0.012).sum())
@@ -438,7 +459,12 @@ class Maker:
 
     def reaction_table(self, case: str) -> tuple[list[tuple[str, str]], list[list[Any]]]:
         s = self.spec.signs
-        heads = [(self.word("joint"), ""), (self.word("fx"), "force"), (self.word("fy"), "force"), (self.word("rm"), "moment")]
+        heads = [
+            (self.word("joint"), ""),
+            (self.word("fx"), "force"),
+            (self.word("fy"), "force"),
+            (self.word("rm"), "moment"),
+        ]
         rows = []
         for name in self.frame.supports:
             fx, fy, m = self.answer.cases[case].reactions[self.frame.joint_index[name]]
@@ -451,7 +477,12 @@ class Maker:
 
     def displacement_table(self, case: str) -> tuple[list[tuple[str, str]], list[list[Any]]]:
         s = self.spec.signs
-        heads = [(self.word("joint"), ""), (self.word("dx"), "length"), (self.word("dy"), "length"), (self.word("rot"), "angle")]
+        heads = [
+            (self.word("joint"), ""),
+            (self.word("dx"), "length"),
+            (self.word("dy"), "length"),
+            (self.word("rot"), "angle"),
+        ]
         rows = []
         for name in self.frame.joints:
             dx, dy, t = self.answer.cases[case].joints[self.frame.joint_index[name]]
@@ -470,7 +501,8 @@ class Maker:
             out += [f"Analysis of frame {s.frame}", "Printed 2024-05-17 10:32   page 1", ""]
         if s.heads == "units stated":
             w = self.unit_words
-            out += [f"Forces in {w['force']}, moments in {w['moment']}, displacements in {w['length']}, rotations in {w['angle']}, "
+            out += [f"Forces in {w['force']}, moments in {w['moment']}, displacements in {w['length']}, "
+                    f"rotations in {w['angle']}, "
                     f"distances in {w['arm']}", ""]  # fmt: skip
         makers = {"member": self.member_table, "reactions": self.reaction_table, "displacements": self.displacement_table}
         titles = {
@@ -568,7 +600,8 @@ class Maker:
         separator = self.spec.separator
         if separator == "aligned":
             widths = [max(len(line[j]) for line in lines) + 2 for j in range(len(lines[0]))]
-            return ["".join(c.ljust(w) if j == 0 else c.rjust(w) for j, (c, w) in enumerate(zip(line, widths, strict=True))).rstrip()
+            return ["".join(c.ljust(w) if j == 0 else c.rjust(w) for j, (c, w) in enumerate(zip(line, widths,
+            strict=True))).rstrip()
                     for line in lines]  # fmt: skip
         if separator == "single blanks":
             return [" ".join(c for c in line if c) for line in lines]
@@ -678,7 +711,8 @@ class Tally:
                 self.right[key] += ok
         if not ok and (paste.fixed or outcome.verdict != "undecided"):
             self.failures.append(
-                f"{seed} {outcome.verdict} {outcome.compared}/{paste.values} {s.layout}, {s.separator}, {s.writing}, {s.heads}, "
+                f"{seed} {outcome.verdict} {outcome.compared}/{paste.values} {s.layout}, {s.separator}, {s.writing}, "
+                f"{s.heads}, "
                 f"{s.cases}, {s.names}: {outcome.closed.undecided[:2]} {outcome.closed.not_understood[:1]}"
             )
         if plant and ok:
@@ -687,7 +721,9 @@ class Tally:
             found = judge(wrong).verdict
             self.planted[found] += 1
             if found == "agree":
-                self.failures.append(f"{seed} planted {kind} {wrong.planted} absorbed: {s.layout}, {s.separator}, {s.cases}")
+                self.failures.append(
+                    f"{seed} planted {kind} {wrong.planted} absorbed: {s.layout}, {s.separator}, {s.cases}"
+                )
 
 
 def main() -> None:

@@ -20,10 +20,12 @@ from tests.claim_frame import Known, bent
 @pytest.mark.parametrize(
     ("text", "comma", "value", "half"),
     [
-        ("12.30", False, 12.3, 0.005), ("-4", False, -4, 0.5), ("\u22124,5", True, -4.5, 0.05), ("(12.3)", False, -12.3, 0.05),
+        ("12.30", False, 12.3, 0.005), ("-4", False, -4, 0.5), ("\u22124,5", True, -4.5, 0.05), ("(12.3)", False,
+        -12.3, 0.05),
         ("1,234.5", False, 1234.5, 0.05), ("1.234,5", True, 1234.5, 0.05), ("12.3-", False, -12.3, 0.05),
         ("1'234.5", False, 1234.5, 0.05), ("1\u202f234.5", False, 1234.5, 0.05), ("1.25E+03", False, 1250, 5),
-        ("1.2\u00d710^3", False, 1200, 50), ("+0.5", False, 0.5, 0.05), ("7.5 kN", False, 7.5, 0.05), ("2d-3", False, 0.002, 5e-4),
+        ("1.2\u00d710^3", False, 1200, 50), ("+0.5", False, 0.5, 0.05), ("7.5 kN", False, 7.5, 0.05), ("2d-3", False,
+        0.002, 5e-4),
     ],
 )  # fmt: skip
 def test_numbers(text: str, comma: bool, value: float, half: float) -> None:
@@ -53,22 +55,34 @@ def test_what_a_comma_means(texts: list[str], decimal: bool | None) -> None:
 @pytest.mark.parametrize(
     ("text", "noun", "axis", "end", "which", "unit"),
     [
-        ("Axial force N (kN)", "N", "", None, "", "kN"), ("Moment, kNm", "M", "", None, "", "kNm"), ("M_i", "M", "", 0, "", None),
-        ("max M [kN m]", "M", "", None, "max", "kN m"), ("\u03b8z", "T", "z", None, "", None), ("Start node", "joint", "", 0, "", None),
+        ("Axial force N (kN)", "N", "", None, "", "kN"), ("Moment, kNm", "M", "", None, "", "kNm"), ("M_i", "M", "",
+        0, "", None),
+        ("max M [kN m]", "M", "", None, "max", "kN m"), ("\u03b8z", "T", "z", None, "", None), ("Start node", "joint",
+        "", 0, "", None),
         ("Load case", "case", "", None, "", None), ("L/C", "case", "", None, "", None), ("Fx kN", "F", "x", None, "", "kN"),
-        ("Shear force end", "V", "", 1, "", None), ("Dist. (mm)", "station", "", None, "", "mm"), ("Colour", "", "", None, "", None),
-        ("phi_z (mrad)", "T", "z", None, "", "mrad"), ("Horizontal", "x", "x", None, "", None), ("Nmin", "N", "", None, "min", None),
+        ("Shear force end", "V", "", 1, "", None), ("Dist. (mm)", "station", "", None, "", "mm"), ("Colour", "", "",
+        None, "", None),
+        ("phi_z (mrad)", "T", "z", None, "", "mrad"), ("Horizontal", "x", "x", None, "", None), ("Nmin", "N", "",
+        None, "min", None),
     ],
 )  # fmt: skip
 def test_heads(text: str, noun: str, axis: str, end: int | None, which: str, unit: str | None) -> None:
     head = head_of(text)
-    assert (head.noun, head.axis, head.end, head.which, head.unit.text if head.unit else None) == (noun, axis, end, which, unit)
+    assert (head.noun, head.axis, head.end, head.which, head.unit.text if head.unit else None) == (
+        noun,
+        axis,
+        end,
+        which,
+        unit,
+    )
 
 
 @pytest.mark.parametrize(
     ("text", "name", "run"),
-    [("A-B", "A-B", 1), ("a - b", "A-B", 1), ("B-A", "A-B", -1), ("Member A-B", "A-B", 1), ("B\u2013C", "rafter", 1), ("AB", "A-B", 1),
-     ("C to B", "rafter", -1), ("RAFTER", "rafter", 0), ("Beam: rafter", "rafter", 0), ("A-C", None, 0), ("nonsense", None, 0)],
+    [("A-B", "A-B", 1), ("a - b", "A-B", 1), ("B-A", "A-B", -1), ("Member A-B", "A-B", 1), ("B\u2013C", "rafter", 1),
+    ("AB", "A-B", 1),
+     ("C to B", "rafter", -1), ("RAFTER", "rafter", 0), ("Beam: rafter", "rafter", 0), ("A-C", None, 0), ("nonsense",
+     None, 0)],
 )  # fmt: skip
 def test_member_names(text: str, name: str | None, run: int) -> None:
     hit = Names(FrameNames.of(bent().frame)).member(text)
@@ -77,7 +91,7 @@ def test_member_names(text: str, name: str | None, run: int) -> None:
 
 def test_numbers_are_never_run_together() -> None:
     """Between "1-2" and "12" no forgiveness may stand."""
-    names = FrameNames(members={"1": ("1", "2"), "12": ("4", "5")}, xy={k: (0, 0) for k in "1245"}, cases=("dead",))
+    names = FrameNames(members={"1": ("1", "2"), "12": ("4", "5")}, xy=dict.fromkeys("1245", (0, 0)), cases=("dead",))
     assert Names(names).member("1 - 2") is not None
     assert Names(names).member("1 - 2").name == "1"  # type: ignore[union-attr]
     assert Names(names).member("Member 12").name == "12"  # type: ignore[union-attr]
@@ -87,7 +101,8 @@ def test_numbers_are_never_run_together() -> None:
 
 
 def whole(k: Known, case: str = "dead", sep: str = "\t", **turned: float) -> str:
-    return f"Load case: {case}\n" + k.ends(case, sep=sep, **turned) + "\n" + k.reactions(case, sep=sep) + "\n" + k.displacements(case, sep=sep)  # fmt: skip
+    return f"Load case: {case}\n" + k.ends(case, sep=sep, **turned) + "\n" + k.reactions(case,
+    sep=sep) + "\n" + k.displacements(case, sep=sep)  # fmt: skip
 
 
 @pytest.mark.parametrize("sep", ["\t", ";", ",", "   ", " | "])
@@ -99,7 +114,8 @@ def test_separators(sep: str) -> None:
 
 @pytest.mark.parametrize(
     ("turned", "quantity", "words"),
-    [({"moment": -1.0}, "moment", "anticlockwise"), ({"axial": -1.0}, "axial", "compression"), ({"shear": -1.0}, "shear", "against")],
+    [({"moment": -1.0}, "moment", "anticlockwise"), ({"axial": -1.0}, "axial", "compression"), ({"shear": -1.0},
+    "shear", "against")],
 )  # fmt: skip
 def test_one_quantity_reversed_is_a_convention(turned: dict[str, float], quantity: str, words: str) -> None:
     k = bent()
@@ -339,7 +355,8 @@ def test_show_reading_names_every_column_and_line() -> None:
 def test_a_reading_file_states_what_the_paste_does_not(tmp_path: Path) -> None:
     k = bent()
     path = tmp_path / "office.toml"
-    path.write_text('[members]\n"1" = "A-B"\n"2" = "rafter"\n"3" = "D-C"\n"4" = "C-E"\n"5" = "E-F"\n[cases]\n"LC7" = "dead"\n'
+    path.write_text('[members]\n"1" = "A-B"\n"2" = "rafter"\n"3" = "D-C"\n"4" = "C-E"\n"5" = "E-F"\n'
+                    '[cases]\n"LC7" = "dead"\n'
                     '[signs]\nmoment = "anticlockwise"\n', encoding="utf-8")  # fmt: skip
     text = "LC7\n" + k.ends("dead", moment=-1)
     for number, name in enumerate(("A-B", "rafter", "D-C", "C-E", "E-F"), 1):

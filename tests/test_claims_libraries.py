@@ -1,4 +1,5 @@
-"""Results as a general-purpose library prints them, pasted as they are: pandas tables of anastruct's results, and arrays."""
+"""Results as a general-purpose library prints them, pasted as they are: pandas tables of anastruct's results, and
+arrays."""
 
 from __future__ import annotations
 

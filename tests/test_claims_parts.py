@@ -100,7 +100,9 @@ def test_the_reading_file_puts_elements_together() -> None:
         else:
             rows += [f"{label}\ti\t1.0", f"{label}\tj\t2.0"]
     whole = {"101": "A-B", "105": "D-C", "106": "C-E", "107": "E-F"}
-    verdict, closed, _ = k.judge("Load case: dead\n" + "\n".join(rows), members=whole, parts={"rafter": ("102", "103", "104")})
+    verdict, closed, _ = k.judge(
+        "Load case: dead\n" + "\n".join(rows), members=whole, parts={"rafter": ("102", "103", "104")}
+    )
     assert verdict == "agree", (closed.undecided, closed.foreign)
     assert len(closed.values) == 10
 

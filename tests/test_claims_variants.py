@@ -1,4 +1,5 @@
-"""End forces in global axes and end values at the face of rigid zones: found by fit for a whole claim, never for one value."""
+"""End forces in global axes and end values at the face of rigid zones: found by fit for a whole claim, never for one
+value."""
 
 from __future__ import annotations
 
@@ -43,7 +44,9 @@ def test_one_wrong_force_in_global_axes_is_found_at_its_place() -> None:
 
 @lru_cache(maxsize=1)
 def zoned() -> Known:
-    text = BENT.replace('rafter = { from = "B", to = "C",', 'rafter = { from = "B", to = "C", rigid_from = 0.3, rigid_to = 0.25,')
+    text = BENT.replace(
+        'rafter = { from = "B", to = "C",', 'rafter = { from = "B", to = "C", rigid_from = 0.3, rigid_to = 0.25,'
+    )
     return Known(text.replace('"C-E" = {', '"C-E" = { rigid_from = 0.25, rigid_to = 0.3,'))
 
 

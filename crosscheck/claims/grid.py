@@ -349,11 +349,26 @@ def _group_worth(words: tuple[str, ...], text: str) -> float:
     if len(nouns) > 1 and words[-1].lower() == "end" and nouns[-2] in _GIVING | {"F"}:
         nouns.pop()
     naming, giving = ({n for n in nouns if n in kind} for kind in (_NAMING, _GIVING))
-    crowd = max(0, len(naming) - 1) + max(0, len(giving) - 1) + bool(naming - {"end", "joint"} and (giving or set(nouns) & {"F", "R", "x"}))
+    crowd = (
+        max(0, len(naming) - 1)
+        + max(0, len(giving) - 1)
+        + bool(naming - {"end", "joint"} and (giving or set(nouns) & {"F", "R", "x"}))
+    )
     axes = len({a for w in words if (a := head_of(w).axis) and head_of(w).noun == "x"})
     given = bool({"joint", "end"} & naming and (giving or {"F", "R", "x"} & set(nouns)))
     lost = bool(head.which and head.noun in _NAMING)
     bare = len(words) == 1 and (head.noun == "x" and head.axis != "x" or text.lower() in _GENERIC)
-    inside = any(w[-1:] in "])" and unit_of(w.strip("[](){}")) for w in words[:-1]) or bool("x" in nouns and giving & {"N", "V"})
+    inside = any(w[-1:] in "])" and unit_of(w.strip("[](){}")) for w in words[:-1]) or bool(
+        "x" in nouns and giving & {"N", "V"}
+    )
     again = len(nouns) > len(set(nouns)) and bool(set(nouns) & {"F", "R", "D"}) or bool(nouns[:1] == ["F"] and giving)
-    return _worth(head) - 0.6 * crowd - 0.6 * max(0, axes - 1) - 0.3 * given - 0.5 * lost - 0.3 * bare - 0.4 * again - 0.6 * inside
+    return (
+        _worth(head)
+        - 0.6 * crowd
+        - 0.6 * max(0, axes - 1)
+        - 0.3 * given
+        - 0.5 * lost
+        - 0.3 * bare
+        - 0.4 * again
+        - 0.6 * inside
+    )

@@ -82,9 +82,9 @@ def _filled(grid: Grid, table: RawTable, names: Names) -> list[Head]:
         if head.noun not in ("", "id") or head.which:
             continue
         cells = column(grid, k)
-        if head.noun == "" and head.end is None and k == 0 and _is_index(cells) and len(heads) > 2:
-            if any(h.noun in ("member", "joint", "id") for h in heads):
-                continue
+        named_beside = len(heads) > 2 and any(h.noun in ("member", "joint", "id") for h in heads)
+        if head.noun == "" and head.end is None and k == 0 and named_beside and _is_index(cells):
+            continue
         noun = _noun_of_cells(cells, names, member_wanted and bool(results & {"N", "V", "w"}))
         if head.noun == "id" and not noun:
             noun = "member" if results & {"N", "V", "w"} or re.search("element|member", table.heading, re.I) else "joint"
@@ -126,9 +126,7 @@ def _numbered(heads: list[Head]) -> list[Head]:
     if not axes:
         return heads
     if axes <= {"1", "2"} and "1" in axes:
-        return [
-            replace(h, axis="", end=int(h.axis) - 1) if h.axis in ("1", "2") else h for h in heads
-        ]
+        return [replace(h, axis="", end=int(h.axis) - 1) if h.axis in ("1", "2") else h for h in heads]
     return [replace(h, axis=NUMBERED_AXIS.get(h.axis, h.axis)) for h in heads]
 
 
@@ -167,7 +165,22 @@ def _which_or_case(role: Role, cells: list[str], names: Names) -> Role:
 # -- kind
 
 RESTRAINTS = frozenset(
-    {"fixed", "fix", "free", "held", "restrained", "yes", "no", "true", "false", "pinned", "roller", "encastre", "rigid", "released"}
+    {
+        "fixed",
+        "fix",
+        "free",
+        "held",
+        "restrained",
+        "yes",
+        "no",
+        "true",
+        "false",
+        "pinned",
+        "roller",
+        "encastre",
+        "rigid",
+        "released",
+    }
 )
 
 
@@ -282,7 +295,8 @@ def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tupl
                 left -= set(found)
     idle = [heads[k].text for k in sorted(left) if not roles[k].name and _any_number(column(grid, k))]
     if idle and not why:
-        why = f"it is not clear what the column{'s' if len(idle) > 1 else ''} {', '.join(idle)} hold{'' if len(idle) > 1 else 's'}"
+        one = len(idle) == 1
+        why = f"it is not clear what the column{'' if one else 's'} {', '.join(idle)} hold{'s' if one else ''}"
     return roles, why
 
 
@@ -323,9 +337,7 @@ def _misfit(unit: Size | None, quantity: str) -> bool:
     return unit.dimension != _DIMENSIONS[quantity]
 
 
-def _in_plane(
-    found: list[int], quantity: str, heads: list[Head], grid: Grid, roles: list[Role]
-) -> tuple[int | None, str]:
+def _in_plane(found: list[int], quantity: str, heads: list[Head], grid: Grid, roles: list[Role]) -> tuple[int | None, str]:
     """Of the columns that may hold a quantity (y and z of a spatial table) the one that is not all zero."""
     free = [k for k in found if not roles[k].name and any(is_number(c) for c in column(grid, k))]
     if len(free) <= 1:

@@ -26,9 +26,7 @@ MOST_TRACED = 2000
 """Lines not understood that are kept: more of them say no more."""
 
 
-def read_claim(
-    path_or_dash: str | Path | None, frame_names: FrameNames, options: ReadingOptions | None = None
-) -> Reading:
+def read_claim(path_or_dash: str | Path | None, frame_names: FrameNames, options: ReadingOptions | None = None) -> Reading:
     """Reads the claim in a file, or "-" for standard input. Raises UnusableInput where it cannot be opened or decoded, or
     holds no results at all."""
     options = options or ReadingOptions()
@@ -38,9 +36,7 @@ def read_claim(
     return _read(text, frame_names, options, file, digest)
 
 
-def read_claim_text(
-    text: str, frame_names: FrameNames, options: ReadingOptions | None = None, file: str = ""
-) -> Reading:
+def read_claim_text(text: str, frame_names: FrameNames, options: ReadingOptions | None = None, file: str = "") -> Reading:
     """Reads a claim that is already text. Raises UnusableInput where it holds no results at all."""
     digest = hashlib.sha256(text.encode("utf-8", errors="replace")).hexdigest()
     return _read(text, frame_names, options or ReadingOptions(), file, digest)
@@ -188,9 +184,7 @@ class _Reader:
             self.unread += [(line, why) for line, text, why in grid.odd if self._begins_with_a_name(text)]
         self._trace(grid.odd)
         columns = tuple((h.text, _says(r)) for h, r in zip(grid.heads, meaning.roles, strict=False))
-        self.tables.append(
-            TableRead(number, raw.heading, meaning.kind, columns, len(grid.rows), raw.rows[0][0], raw.case)
-        )
+        self.tables.append(TableRead(number, raw.heading, meaning.kind, columns, len(grid.rows), raw.rows[0][0], raw.case))
         if not meaning.kind:
             self._unused(raw, meaning)
         elif not meaning.kind.startswith("echo"):
@@ -203,7 +197,8 @@ class _Reader:
         return self.names.member(first) is not None or self.names.joint(first) is not None
 
     def unread_said(self) -> list[str]:
-        """Results that stand there and cannot be read keep a claim from agreeing; in a table that nobody can read they say nothing."""
+        """Results that stand there and cannot be read keep a claim from agreeing; in a table that nobody can read
+        they say nothing."""
         if not self.unread or not self.entries:
             return []
         line, why = self.unread[0]
@@ -235,7 +230,9 @@ class _Reader:
         """A value given by the user in words. Raises UnusableInput where it is not understood."""
         entries, odd = entries_told(text, 0, len(self.tables) + 1, self.names)
         if odd or not entries:
-            refuse("", f'--value "{text}" is not understood{": " + odd[0] if odd else ""}', 'write it like "B2 max 412 kNm"')
+            refuse(
+                "", f'--value "{text}" is not understood{": " + odd[0] if odd else ""}', 'write it like "B2 max 412 kNm"'
+            )
         self.entries += entries
 
     def _unused(self, raw: RawTable, meaning: Meaning) -> None:
@@ -467,9 +464,7 @@ def _in_order(entries: list[Entry]) -> list[Entry]:
             seen.append(e.line)
     if any(len(seen) != 2 for seen in lines.values()):
         return entries
-    return [
-        e if e.place is not None else replace(e, place=lines[e.case, e.member].index(e.line)) for e in entries
-    ]
+    return [e if e.place is not None else replace(e, place=lines[e.case, e.member].index(e.line)) for e in entries]
 
 
 def _says(role: Role) -> str:
@@ -483,4 +478,3 @@ def _says(role: Role) -> str:
 
 
 __all__ = ["read_claim", "read_claim_text"]
-

@@ -1,19 +1,19 @@
 """The reading file: what a paste leaves unsaid, stated once in TOML and kept beside the frame or for the whole office.
 
-    units = "kN m"                                  # or [units] moment = "kN mm", displacement = "mm"
-    columns = ["member", "joint", "N", "V", "M"]    # heads, in order, of the tables that have as many columns
-    face = true                                     # values stand at the face of rigid zones
-    [signs]                                         # moment, axial, shear, reactions, dx, dy, rotation
-    moment = "anticlockwise"                        # or clockwise, sagging, hogging
-    axial = "compression"                           # what is positive
-    reactions = "on the support"
-    [members]                                       # the paste's name = the frame's
-    "12" = "B-C"
-    rafter = ["4", "5", "6"]                        # a member of the frame = the elements it was divided into, in order
-    [joints]
-    "101" = "A"
-    [cases]
-    "LC1" = "dead"
+units = "kN m"                                  # or [units] moment = "kN mm", displacement = "mm"
+columns = ["member", "joint", "N", "V", "M"]    # heads, in order, of the tables that have as many columns
+face = true                                     # values stand at the face of rigid zones
+[signs]                                         # moment, axial, shear, reactions, dx, dy, rotation
+moment = "anticlockwise"                        # or clockwise, sagging, hogging
+axial = "compression"                           # what is positive
+reactions = "on the support"
+[members]                                       # the paste's name = the frame's
+"12" = "B-C"
+rafter = ["4", "5", "6"]                        # a member of the frame = the elements it was divided into, in order
+[joints]
+"101" = "A"
+[cases]
+"LC1" = "dead"
 """
 
 from __future__ import annotations
@@ -91,7 +91,9 @@ def _from_file(path: Path, names: FrameNames, problems: list[Problem]) -> dict[s
     out: dict[str, Any] = {}
     for key, value in data.items():
         if key not in KEYS:
-            problems.append(Problem(file, None, key, "no such key in a reading file", nearest(key, KEYS) or ", ".join(KEYS)))
+            problems.append(
+                Problem(file, None, key, "no such key in a reading file", nearest(key, KEYS) or ", ".join(KEYS))
+            )
         else:
             out.update(_entry(key, value, file, names, problems))
     return out
@@ -146,4 +148,3 @@ def _names(
         else:
             one[theirs] = ours
     return {key: one, "parts": parts} if parts else {key: one}
-

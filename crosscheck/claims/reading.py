@@ -126,7 +126,8 @@ class LineTrace:
 
 @dataclass(frozen=True, slots=True)
 class TableRead:
-    """A table as understood: its kind ("end", ..., "echo ..."), column heads and what each was taken for, and how many rows."""
+    """A table as understood: its kind ("end", ..., "echo ..."), column heads and what each was taken for, and how
+    many rows."""
 
     number: int
     heading: str

@@ -25,7 +25,9 @@ _CASE = re.compile(
 )
 _CASE_LABEL = re.compile(r"\W*(?:load\s*(?:case|combination|comb)|lc|case|comb(?:o|ination)?)\b\W*\w", re.IGNORECASE)
 _MEMBER = re.compile(r"(?:members?|memb|mbr|beams?|elements?|elem|bars?|rods?|columns?)\b[\s:#=.]*(\S.*)", re.IGNORECASE)
-_TOTAL = re.compile(r"(?:sum|totals?|sigma|\u03a3|\u2211|sub-?total|resultant|average|mean|applied|check)\b|[\u03a3\u2211]", re.I)
+_TOTAL = re.compile(
+    r"(?:sum|totals?|sigma|\u03a3|\u2211|sub-?total|resultant|average|mean|applied|check)\b|[\u03a3\u2211]", re.I
+)
 _ABOUT_A_MEMBER = re.compile(r"\b(?:from|to|length|section|l\s*=|between)\b", re.IGNORECASE)
 _TITLE = re.compile(
     r"\b(?:forces|reactions|displacements|moments|results|rotations|deflections|actions|translations|values|coordinates"
@@ -38,7 +40,8 @@ _UNITS_SENTENCE = re.compile(
     re.IGNORECASE,
 )
 _TELLING = re.compile(
-    r"case|comb|lc|load|result|unit|positive|negative|kn|kip|\bin\b|mm|reaction|displ|force|moment|member|joint|node", re.IGNORECASE
+    r"case|comb|lc|load|result|unit|positive|negative|kn|kip|\bin\b|mm|reaction|displ|force|moment|member|joint|node",
+    re.IGNORECASE,
 )
 _SPOILT = re.compile(r"\d|\*\*|##|^#|^[+-]?(?:inf|infinity|overflow)$", re.IGNORECASE)
 """What is left of a number that was printed too wide, divided by zero or mistyped."""
@@ -186,15 +189,19 @@ class _Scanner:
             assert self.table
             self.table.heads.append((number, text))
             return "head", "second line"
-        if self.table and self.table.rows and plain(text) in {plain(t) for _, t in self.table.heads}:
-            if all(h in self.table.heading for h in self.heading):
-                self.heading = []
-                return "head", "repeated"
+        if self.table and self.table.rows and self._repeats(text, self.table):
+            self.heading = []
+            return "head", "repeated"
         if self.table is not None and self.table.rows and self.table.blocks[-1] is self.block:
             self.block = None  # the heading of a member holds for the table below it
         self.table = self._fresh([(number, text)], " / ".join(self.heading))
         self.heading = []
         return "head", ""
+
+    def _repeats(self, text: str, table: RawTable) -> bool:
+        """The head of the page before, under no heading that was not there before."""
+        same = plain(text) in {plain(t) for _, t in table.heads}
+        return same and all(h in table.heading for h in self.heading)
 
     def _fresh(self, heads: list[tuple[int, str]], heading: str) -> RawTable:
         table = RawTable(heads, heading, case=self.case, case_label=self.case_label)
@@ -306,7 +313,7 @@ class _Scanner:
             return None
         if separator_of(text) in ("tab", "bar") and len(filled) > 2:
             return None
-        if 0 < _end_numbers(text.split()) or not looks_told(text):
+        if _end_numbers(text.split()) > 0 or not looks_told(text):
             return None
         self.out.sentences.append((number, text, self.case))
         return "values in words", ""

@@ -1,6 +1,7 @@
 """Values in words, as an e-mail or --value gives them: "B2 max 412 kNm, roof sway 18 mm".
 
-Each part with a number is read for what it is of (a member, a joint, or the whole frame), which quantity, and whether it is a
+Each part with a number is read for what it is of (a member, a joint, or the whole frame), which quantity, and whether
+it is a
 largest value. A value without a stated direction is a size: it is compared without its sign.
 """
 
@@ -160,7 +161,8 @@ def _places(words: str, names: Names) -> tuple[MemberHit | None, str | None, str
 
 def _is_common(token: str) -> bool:
     """Words of a sentence that are no names though they may look like one ("a", "M", "V", "in")."""
-    return token.lower() in {"a", "in", "at", "is", "of", "to", "the", "max", "min", "and", "for", "on", "i", "up", "under"} and (
+    return token.lower() in {"a", "in", "at", "is", "of", "to", "the", "max", "min", "and", "for", "on", "i", "up",
+    "under"} and (
         not token.isupper() or len(token) > 1
     ) or token in ("M", "V", "N", "R", "H")  # fmt: skip
 
@@ -168,7 +170,9 @@ def _is_common(token: str) -> bool:
 def _quantity(told: _Told, member: MemberHit | None, joint: str | None) -> str | None:
     """The quantity that the words name among those that the unit allows; the unit alone where only one fits."""
     allowed = _BY_DIMENSION.get(told.unit.dimension, ()) if told.unit else tuple(_WORDS)
-    named = [q for q in _WORDS if q in allowed and re.search(_WORDS[q], told.words, re.IGNORECASE if q not in _LETTERS else 0)]
+    named = [
+        q for q in _WORDS if q in allowed and re.search(_WORDS[q], told.words, re.IGNORECASE if q not in _LETTERS else 0)
+    ]
     named = named or [q for q in _WORDS if q in allowed and re.search(_WORDS[q], told.words, re.IGNORECASE)]
     if "across" in named and len(named) > 1:
         named.remove("across")

@@ -27,13 +27,17 @@ QUANTITY_WORDS = {
 _SENSES = (
     (r"(?:anti|counter)[ -]?clockwise\s*(?:is\s*|=\s*)?(?:taken\s*)?(?:as\s*)?(?:\+|positive)|\bccw\s*(?:\+|positive)",
      "moment", "anticlockwise"),
-    (r"(?<!anti)(?<!anti-)(?<!counter)(?<!counter-)(?<!counter )\bclockwise\s*(?:is\s*|=\s*)?(?:\+|positive)|\bcw\s*(?:\+|positive)",
+    (r"(?<!anti)(?<!anti-)(?<!counter)(?<!counter-)(?<!counter )\bclockwise\s*(?:is\s*|=\s*)?(?:\+|positive)"
+     r"|\bcw\s*(?:\+|positive)",
      "moment", "clockwise"),
-    (r"sagging\s*(?:moments?\s*)?(?:is\s*|are\s*|=\s*)?(?:\+|positive)|hogging\s*(?:is\s*|=\s*)?(?:-|negative)", "moment", "sagging"),
-    (r"hogging\s*(?:moments?\s*)?(?:is\s*|are\s*|=\s*)?(?:\+|positive)|sagging\s*(?:is\s*|=\s*)?(?:-|negative)", "moment", "hogging"),
+    (r"sagging\s*(?:moments?\s*)?(?:is\s*|are\s*|=\s*)?(?:\+|positive)|hogging\s*(?:is\s*|=\s*)?(?:-|negative)",
+    "moment", "sagging"),
+    (r"hogging\s*(?:moments?\s*)?(?:is\s*|are\s*|=\s*)?(?:\+|positive)|sagging\s*(?:is\s*|=\s*)?(?:-|negative)",
+    "moment", "hogging"),
     (r"compression\s*(?:is\s*|=\s*)?(?:\+|positive)|tension\s*(?:is\s*|=\s*)?(?:-|negative)", "axial", "compression"),
     (r"tension\s*(?:is\s*|=\s*)?(?:\+|positive)|compression\s*(?:is\s*|=\s*)?(?:-|negative)", "axial", "tension"),
-    (r"reactions?\b.{0,20}\bon the (?:supports?|foundations?|ground)|forces on (?:supports?|foundations?)", "reactions", "on the support"),
+    (r"reactions?\b.{0,20}\bon the (?:supports?|foundations?|ground)|forces on (?:supports?|foundations?)",
+    "reactions", "on the support"),
     (r"reactions?\b.{0,20}\bon the (?:frame|structure)", "reactions", "on the frame"),
     (r"\bdown(?:wards?)?\s*(?:is\s*|=\s*)?(?:\+|positive)", "vertical", "down"),
 )  # fmt: skip
@@ -74,7 +78,9 @@ def stated_in(scan: Scan) -> Stated:
     return out
 
 
-_FACE = re.compile(r"\b(?:at|to) (?:the )?faces?\b|\bface of (?:the )?(?:supports?|columns?|joints?|walls?)\b", re.IGNORECASE)
+_FACE = re.compile(
+    r"\b(?:at|to) (?:the )?faces?\b|\bface of (?:the )?(?:supports?|columns?|joints?|walls?)\b", re.IGNORECASE
+)
 
 
 def states_face(scan: Scan) -> bool:
@@ -84,7 +90,9 @@ def states_face(scan: Scan) -> bool:
 
 def _units_in(text: str, out: Stated) -> None:
     """ "Units: kN, m", "forces in kN, moments in kNm", "[kN, kNm]"."""
-    for word, unit_text in re.findall(r"([A-Za-z]+)\s*(?:\bin\b|:|=)?\s*[\[(]?\s*([A-Za-z]+(?:[ .*\u00b7-]?[a-z]+)?)\b", text):
+    for word, unit_text in re.findall(
+        r"([A-Za-z]+)\s*(?:\bin\b|:|=)?\s*[\[(]?\s*([A-Za-z]+(?:[ .*\u00b7-]?[a-z]+)?)\b", text
+    ):
         unit = unit_of(unit_text) or unit_of(unit_text.split()[0])
         if word.lower() in QUANTITY_WORDS and unit and unit.dimension != Dimension():
             for quantity in QUANTITY_WORDS[word.lower()]:
@@ -104,7 +112,8 @@ def units_of(text: str) -> list[Size]:
 def parsed_units(
     units: str | Mapping[str, str] | None,
 ) -> tuple[dict[str, Size], dict[Dimension, Size], list[str]]:
-    """(by quantity, by dimension, parts not understood) of units stated by the user: "kN m", "moment kN mm, displacement mm"."""
+    """(by quantity, by dimension, parts not understood) of units stated by the user: "kN m", "moment kN mm,
+    displacement mm"."""
     by_quantity: dict[str, Size] = {}
     system: dict[Dimension, Size] = {}
     odd: list[str] = []

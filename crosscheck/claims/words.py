@@ -207,7 +207,21 @@ def _from_tokens(text: str, tokens: list[str]) -> Head:
             noun = "case"
         elif token == "id" and not noun:
             noun = "id"
-        elif token in ("no", "number", "name", "label", "nr", "force", "value", "at", "of", "the", "and", "global", "local"):
+        elif token in (
+            "no",
+            "number",
+            "name",
+            "label",
+            "nr",
+            "force",
+            "value",
+            "at",
+            "of",
+            "the",
+            "and",
+            "global",
+            "local",
+        ):
             continue
         else:
             symbol = _from_symbol(text, token)
@@ -226,7 +240,9 @@ def _from_tokens(text: str, tokens: list[str]) -> Head:
 def _from_symbol(text: str, token: str) -> Head:
     """A symbol such as n, fx, mz, m3, vmax, mi, m1, mij; a 1 or 2 may be an end or an axis: the table decides."""
     if token in ("e", "a", "i", "l"):
-        return Head(text, {"e": "E", "a": "A", "i": "I", "l": "length"}[token]) if text.strip()[:1].isupper() else Head(text)
+        return (
+            Head(text, {"e": "E", "a": "A", "i": "I", "l": "length"}[token]) if text.strip()[:1].isupper() else Head(text)
+        )
     found = _SYMBOL.fullmatch(token)
     if not found:
         return Head(text)

@@ -156,9 +156,7 @@ class _Closer:
             undecided=tuple(dict.fromkeys([*r.undecided, *unknown, *undecided])),
         )  # fmt: skip
 
-    def _values(
-        self, fitted: Fitted, entries: list[Entry], cases: tuple[str, ...], meant: Senses
-    ) -> list[ClaimedValue]:
+    def _values(self, fitted: Fitted, entries: list[Entry], cases: tuple[str, ...], meant: Senses) -> list[ClaimedValue]:
         """The batch in the frame's own units and signs."""
         batch, choice = fitted.batch, meant.shown(fitted)
         sign, joints, at = _to_frame(batch, choice, self.frame)
@@ -171,10 +169,17 @@ class _Closer:
             kind = "span" if e.cut is not None else batch.kind
             out.append(
                 ClaimedValue(
-                    case=cases[int(batch.case[k])], kind=kind,  # type: ignore[arg-type]
+                    case=cases[int(batch.case[k])],
+                    kind=kind,  # type: ignore[arg-type]
                     quantity=batch.quantity,  # type: ignore[arg-type]
-                    member=e.member, joint=joints[k], at=at[k], value=float(value[k]), half_digit=float(half[k]),
-                    line=e.line, printed=e.number.printed, extreme=_turned(e.extreme, float(sign[k])),  # type: ignore[arg-type]
+                    member=e.member,
+                    joint=joints[k],
+                    at=at[k],
+                    value=float(value[k]),
+                    half_digit=float(half[k]),
+                    line=e.line,
+                    printed=e.number.printed,
+                    extreme=_turned(e.extreme, float(sign[k])),  # type: ignore[arg-type]
                 )  # fmt: skip
             )
         return out
@@ -196,9 +201,7 @@ def _batches(entries: list[Entry], frame: Frame, cases: tuple[str, ...]) -> list
     return [_batch(key[0], key[1], where, entries, frame, cases) for key, where in groups.items()]
 
 
-def _batch(
-    kind: str, quantity: str, where: list[int], entries: list[Entry], frame: Frame, cases: tuple[str, ...]
-) -> Batch:
+def _batch(kind: str, quantity: str, where: list[int], entries: list[Entry], frame: Frame, cases: tuple[str, ...]) -> Batch:
     mine = [entries[k] for k in where]
     spoken = {n: k for k, n in enumerate(cases)}
     at = [_at(e, frame) for e in mine]
@@ -315,9 +318,7 @@ def _fits(f: Fitted) -> tuple[int, int]:
     return int((telling & ~f.taken.bad).sum()), int(telling.sum())
 
 
-def _to_frame(
-    batch: Batch, choice: Choice, frame: Frame
-) -> tuple[np.ndarray, list[str | None], list[float | None]]:
+def _to_frame(batch: Batch, choice: Choice, frame: Frame) -> tuple[np.ndarray, list[str | None], list[float | None]]:
     """(n,) factor that turns a printed value's sign into the frame's, joints, and distances from the `from` joint."""
     names = list(frame.joints)
     c = choice.convention
@@ -333,7 +334,9 @@ def _to_frame(
             at_start = -1 if batch.quantity == "axial" else 1
             sign = sign * np.where(place == 0, at_start, -at_start)
         inside = ~np.isnan(batch.cut)
-        if batch.quantity != "axial":  # on the face where a part ends, actions are values along the member, reversed at its end
+        if (
+            batch.quantity != "axial"
+        ):  # on the face where a part ends, actions are values along the member, reversed at its end
             sign = np.where(inside & (end == 1), -sign, sign)
         named = [None if cut else j for j, cut in zip(joints, inside.tolist(), strict=True)]
         return sign, named, [x if cut else None for x, cut in zip(batch.cut.tolist(), inside.tolist(), strict=True)]

@@ -1,6 +1,7 @@
 """Finding the convention and the unit that a claim is printed in, for each kind and quantity, by what fits the opinions.
 
-A value is bad in a choice when it lies further from the opinion than is allowed. A choice in which no value is bad fits. Where
+A value is bad in a choice when it lies further from the opinion than is allowed. A choice in which no value is bad
+fits. Where
 no choice fits, every choice gives the same verdict (disagree), and the nearest is taken to show the differences in.
 """
 
@@ -27,8 +28,10 @@ class Choice:
     """A unit and a convention, and how the batch fits them.
 
     bad: (n,) beyond what is allowed. telling: (n,) judged at all and large enough to tell a sign or a unit by.
-    misses: sum over telling values of |claim - opinion| / (|claim| + |opinion|), and 1 for each that this unit makes too coarse
-      to judge; about 0 where all is right. Units are chosen by it and not by what fits: a huge unit leaves nothing to judge.
+    misses: sum over telling values of |claim - opinion| / (|claim| + |opinion|), and 1 for each that this unit makes
+    too coarse
+      to judge; about 0 where all is right. Units are chosen by it and not by what fits: a huge unit leaves nothing to
+      judge.
     """
 
     unit: UnitChoice | None
@@ -108,9 +111,7 @@ class _Trial:
     def fitted(self, unit: UnitChoice | None) -> Fitted:
         return Fitted(self.batch, self.choices(unit), self.best(unit))
 
-    def _choice(
-        self, unit: UnitChoice | None, convention: Convention, said: Floats, value: Floats, half: Floats
-    ) -> Choice:
+    def _choice(self, unit: UnitChoice | None, convention: Convention, said: Floats, value: Floats, half: Floats) -> Choice:
         side = np.where(said[:, 0] < 0, -1.0, 1.0) * convention.sign
         value = np.where(self.batch.unsigned, np.abs(value), value)
         said = np.where(self.batch.unsigned[:, None], np.abs(said), said)
@@ -180,9 +181,7 @@ def _extreme_scale(batch: Batch, mine: Bools, reference: Reference) -> Floats:
     return out
 
 
-def _one_system(
-    trials: list[_Trial], forces: list[UnitChoice], arms: list[UnitChoice]
-) -> dict[int, UnitChoice | None]:
+def _one_system(trials: list[_Trial], forces: list[UnitChoice], arms: list[UnitChoice]) -> dict[int, UnitChoice | None]:
     """The unit of force and of length in moments under which least is missed, the frame's own before others."""
     turning = [t for t in trials if t.batch.quantity == "moment"]
     pushing = [t for t in trials if t.batch.quantity != "moment"]

@@ -1,9 +1,11 @@
 """The conventions of sign and direction in which results are printed, and what an opinion's values would read in each.
 
-Every convention is one rule for all members of a table. `place` is the paste's own start (0) or end (1) of a member, `end` the
+Every convention is one rule for all members of a table. `place` is the paste's own start (0) or end (1) of a member,
+`end` the
 frame's. With T the tension, V the shear along local +y and M the clockwise moment on the member's end:
     axial    tension: T             action along the paste's x: -T at its start, T at its end
-    shear    action along y: r V    internal: r V at the start, -r V at the end     (r = 1, or -1 where the paste's runs back)
+    shear    action along y: r V    internal: r V at the start, -r V at the end     (r = 1, or -1 where the paste's
+    runs back)
     moment   clockwise: M           internal, sagging: M at the start, -M at the end
 and each of them reversed. Values along a member: T, V, r M (sagging) and r times the displacement across, or reversed.
 """
@@ -18,7 +20,8 @@ from crosscheck.compare.fit_values import COLUMN, Reference, joint_column
 from crosscheck.frame.model import Bools, Floats, Frame, Ints
 
 RULES = ("frame", "rows", "reversed", "rightward", "leftward", "downward")
-"""How members run of which the paste does not say: as in the frame, the first row first, all the other way, towards growing x
+"""How members run of which the paste does not say: as in the frame, the first row first, all the other way, towards
+growing x
 (upright ones upward), towards falling x, and towards growing x with upright ones downward."""
 RULE_WORDS = {
     "frame": "", "rows": "members run from the row that stands first", "reversed": "members run the other way",
@@ -66,7 +69,8 @@ class Batch:
     member, joint: indices, -1 for none. end, place: 0, 1 or -1 (not said). run: +1, -1 or 0. at: distance from the paste's
     start in the frame's length, or a share of the member's length where at_share. extreme: 1 max, -1 min, 0 size.
     cut: where inside its member a part of it ends; origin: where a part begins (NaN for whole members); both from the
-      frame's `from` joint. unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value, half: as printed. factor: to the frame's units, NaN where no unit is stated.
+      frame's `from` joint. unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value,
+      half: as printed. factor: to the frame's units, NaN where no unit is stated.
     """
 
     kind: str
@@ -154,7 +158,8 @@ def distance(batch: Batch, frame: Frame, r: Ints) -> Floats:
 
 
 def expected(batch: Batch, references: list[Reference], convention: Convention) -> Floats:
-    """(n, k) what the opinion's value reads in this convention, in the frame's units; k = 2 where a value along a member may
+    """(n, k) what the opinion's value reads in this convention, in the frame's units; k = 2 where a value along a
+    member may
     stand on either side of a jump, else 1."""
     out = np.full((len(batch.value), 2 if batch.kind == "span" else 1), np.nan)
     for k, reference in enumerate(references):

@@ -122,7 +122,9 @@ def senses(fitted: list[Fitted], signs: Mapping[str, str]) -> Senses:
     """Explains the signs taken by as few turns as can be, and counts what fixes each."""
     stated = frozenset(id(f) for f in fitted if f.batch.said or _stated(f, signs)[1] is not None)
     sure = {id(f): s for f in fitted if (s := _sign(f)) is not None}
-    best = min(product((False, True), repeat=4), key=lambda flags: _cost(fitted, sure, dict(zip(TURNS, flags, strict=True))))
+    best = min(
+        product((False, True), repeat=4), key=lambda flags: _cost(fitted, sure, dict(zip(TURNS, flags, strict=True)))
+    )
     turns = frozenset(t for t, on in zip(TURNS, best, strict=True) if on)
     out = Senses(turns, stated_ids=stated)
     odd = [f for f in fitted if id(f) in sure and sure[id(f)] != _predicted(f, turns)]
@@ -166,7 +168,8 @@ def _sign(f: Fitted) -> int | None:
 def _opposite(f: Fitted) -> Choice | None:
     c = f.taken.convention
     return next(
-        (o for o in f.choices if (o.convention.form, o.convention.rule, o.convention.sign) == (c.form, c.rule, -c.sign)), None
+        (o for o in f.choices if (o.convention.form, o.convention.rule, o.convention.sign) == (c.form, c.rule, -c.sign)),
+        None,
     )
 
 
