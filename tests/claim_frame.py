@@ -44,8 +44,10 @@ A = "fixed"
 D = "fixed"
 F = "fixed"
 [loads.dead]
-apply = [{ members = ["rafter", "C-E"], uniform = 8.5, direction = "down" }, { joint = "B", force = 9, direction =
-"right" }]
+apply = [
+  { members = ["rafter", "C-E"], uniform = 8.5, direction = "down" },
+  { joint = "B", force = 9, direction = "right" },
+]
 [loads.wind]
 apply = [{ joint = "B", force = 22, direction = "right" }, { member = "E-F", uniform = 3, direction = "left" }]
 """
