@@ -96,3 +96,21 @@ def test_an_error_at_the_face_is_found() -> None:
     verdict, _, cases = k.judge(face_ends(k, factor=1.3))
     assert verdict == "disagree"
     assert len(cases[0].differences) == 1
+
+
+def test_reactions_along_a_turned_supports_own_axes() -> None:
+    """A support at 30 degrees: its reaction along its own axes has no part along the free one."""
+    turned = '{ x = "held", y = "held", rotation = "held", angle = 30 }'
+    k = Known(BENT.replace('D = "fixed"', f"D = {turned}").replace('F = "fixed"', f"F = {turned}"))
+    rows = ["Joint\tFx [kN]\tFy [kN]"]
+    c, s = np.cos(np.pi / 6), np.sin(np.pi / 6)
+    for joint in k.frame.supports:
+        fx, fy, _ = k.answer.cases["dead"].reactions[k.frame.joint_index[joint]]
+        own = (fx, fy) if joint == "A" else (c * fx + s * fy, c * fy - s * fx)
+        rows.append(f"{joint}\t{own[0]:.4f}\t{own[1]:.4f}")
+    verdict, closed, cases = k.judge("Load case: dead\n" + "\n".join(rows))
+    assert verdict == "agree", closed
+    assert any("support's own axes" in note for note in closed.notes)
+    assert cases[0].compared == 6
+    wrong = "\n".join(rows).replace(rows[3].split("\t")[2], "99.0000")
+    assert k.judge(f"Load case: dead\n{wrong}")[0] == "disagree"

@@ -101,7 +101,6 @@ class Entry:
     case: str | None = None
     extreme: str | None = None
     axes: str = ""
-    face: bool = False
     cut: float | None = None
     """For an end value of a part of a member that ends inside it: the distance from the frame's `from` joint."""
     origin: float | None = None

@@ -334,9 +334,7 @@ def _to_frame(batch: Batch, choice: Choice, frame: Frame) -> tuple[np.ndarray, l
             at_start = -1 if batch.quantity == "axial" else 1
             sign = sign * np.where(place == 0, at_start, -at_start)
         inside = ~np.isnan(batch.cut)
-        if (
-            batch.quantity != "axial"
-        ):  # on the face where a part ends, actions are values along the member, reversed at its end
+        if batch.quantity != "axial":  # where a part ends, its actions are values along the member, reversed at its end
             sign = np.where(inside & (end == 1), -sign, sign)
         named = [None if cut else j for j, cut in zip(joints, inside.tolist(), strict=True)]
         return sign, named, [x if cut else None for x, cut in zip(batch.cut.tolist(), inside.tolist(), strict=True)]

@@ -47,6 +47,8 @@ class Senses:
         return id(f) in self.stated_ids
 
     def words(self, f: Fitted) -> str:
+        if f.batch.unsigned.all():
+            return "sizes alone"
         c = self.shown(f).convention
         if f.batch.kind != "reaction":
             return c.words

@@ -1,12 +1,13 @@
 """Other ways to take what is printed, tried where the plain one does not fit: commas before thousands, end forces in global
-axes, end values at the face of rigid zones. Each is one way for the whole claim, and it is said when one is taken.
+axes, reactions along the axes of turned supports, end values at the face of rigid zones. Each is one way for the whole
+claim, and it is said when one is taken.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import replace
-from math import cos, sin
+from math import cos, radians, sin
 
 import numpy as np
 
@@ -29,6 +30,10 @@ def variants(entries: list[Entry], frame: Frame, face: bool) -> Iterator[Variant
         turned = in_member_axes(entries, frame)
         if turned is not None:
             yield turned, "end forces Fx, Fy are in global axes, by fit"
+    if any(e.kind == "reaction" and _tilt(e, frame) for e in entries):
+        tilted = in_global_axes(entries, frame)
+        if tilted is not None:
+            yield tilted, "reactions at turned supports are along the support's own axes, by fit"
     if not face and any(e.kind == "end" and _zone(e, frame) for e in entries):
         yield at_face(entries, frame), "end values stand at the face of rigid zones, by fit"
 
@@ -81,6 +86,31 @@ def in_member_axes(entries: list[Entry], frame: Frame) -> list[Entry] | None:
         m = frame.member_index[str(member)]
         angle = float(np.arctan2(frame.member_table.sin[m], frame.member_table.cos[m]))
         out += _turned(pair["axial"], pair["shear"], angle, end)
+    return out
+
+
+def _tilt(e: Entry, frame: Frame) -> float:
+    """Angle of the support that a reaction force stands at, in radians; 0 where it is not turned."""
+    support = frame.supports.get(e.joint or "")
+    return radians(support.angle) if support and e.quantity in ("fx", "fy") else 0.0
+
+
+def in_global_axes(entries: list[Entry], frame: Frame) -> list[Entry] | None:
+    """Reactions given along the axes of turned supports, in global axes; None where a row gives one of the two alone."""
+    pairs: dict[tuple[int, str | None], dict[str, Entry]] = {}
+    for e in entries:
+        if e.kind == "reaction" and _tilt(e, frame):
+            pairs.setdefault((e.line, e.joint), {})[e.quantity] = e
+    if any(set(p) != {"fx", "fy"} for p in pairs.values()):
+        return None
+    out = [e for e in entries if not (e.kind == "reaction" and _tilt(e, frame))]
+    for pair in pairs.values():
+        a, b, angle = pair["fx"].number, pair["fy"].number, _tilt(pair["fx"], frame)
+        c, s = cos(angle), sin(angle)
+        printed = f"{a.printed}, {b.printed}"
+        x = Number(c * a.value - s * b.value, abs(c) * a.half + abs(s) * b.half, printed)
+        y = Number(s * a.value + c * b.value, abs(s) * a.half + abs(c) * b.half, printed)
+        out += [replace(pair["fx"], number=x), replace(pair["fy"], number=y)]
     return out
 
 
