@@ -8,6 +8,7 @@ proportion; the pivots of the whole matrix count how many critical loads lie bel
 
 from __future__ import annotations
 
+import copy
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -28,6 +29,8 @@ SETTLED = 1e-12
 MOST_ROUNDS = 200
 EXACT = 1e-11
 """Relative width to which a critical load factor is found unless a rougher one will do."""
+SOFTER = 10.0
+"""How many times softer the rigid members of the second try are."""
 BEYOND = 1e7
 """Critical load factors above this are reported as none."""
 
@@ -106,6 +109,17 @@ class CaseInSecondOrder:
         """
         if not self._compressed(pulls) or beyond < BEYOND and not self._buckled(beyond, pulls):
             return float("inf")
+        stiff = self._least_factor(pulls, close, beyond)
+        if close > EXACT or not self.rigid.any():
+            return stiff
+        # A rigid member stands in the pivots as a stiff one, which lowers the factor by as much as it is soft: the limit
+        # of no softness follows from two (Richardson).
+        softer = copy.copy(self)
+        softer.stretch_stiffness = np.where(self.rigid, self.stretch_stiffness / SOFTER, self.stretch_stiffness)
+        return stiff + (stiff - softer._least_factor(pulls, close, beyond)) / (SOFTER - 1.0)
+
+    def _least_factor(self, pulls: Floats, close: float, beyond: float) -> float:
+        """The same for the stiffness that the members have here."""
         low, high = 0.0, 1.0
         while not self._buckled(high, pulls):
             low, high = high, high * 2.0
