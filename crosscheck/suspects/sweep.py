@@ -184,7 +184,7 @@ class Sweep:
     def _told(self, already: list[Weighed]) -> list[Weighed]:
         """Everything foretold; numbers are fitted only where nothing without one fits."""
         told = [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
-        if not any(w.fits for w in (*already, *told)):
+        if self.screen.partial or not any(w.fits for w in (*already, *told)):
             told += [w for o in self._fits() if (w := self.foretold(o)) is not None]
         return told
 
