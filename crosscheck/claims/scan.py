@@ -28,7 +28,8 @@ _MEMBER = re.compile(r"(?:members?|memb|mbr|beams?|elements?|elem|bars?|rods?|co
 _TOTAL = re.compile(
     r"(?:sum|totals?|sigma|\u03a3|\u2211|sub-?total|resultant|average|mean|applied|check)\b|[\u03a3\u2211]", re.I
 )
-_ABOUT_A_MEMBER = re.compile(r"\b(?:from|to|length|section|l\s*=|between)\b", re.IGNORECASE)
+_ABOUT_A_MEMBER = re.compile(r"\b(?:from|to|length|section|between)\b|\bl\s*=", re.IGNORECASE)
+_AFTER_NAME = re.compile(r"[,(;]|\s(?:from|length|section)\b|\sl\s*=", re.IGNORECASE)
 _TITLE = re.compile(
     r"\b(?:forces|reactions|displacements|moments|results|rotations|deflections|actions|translations|values|coordinates"
     r"|summary|properties|table)\b",
@@ -281,7 +282,7 @@ class _Scanner:
             return None
         hit = self.names.member(label)
         if hit is None:
-            first = re.split(r"[,(;]|\s(?:from|length|section|l\s*=)\b", label, maxsplit=1)[0].strip(" :.")
+            first = _AFTER_NAME.split(label, maxsplit=1)[0].strip(" :.")
             hit = self.names.member(first) if first else None
         if hit is None:
             return None
@@ -313,7 +314,7 @@ class _Scanner:
             return None
         if separator_of(text) in ("tab", "bar") and len(filled) > 2:
             return None
-        if _end_numbers(text.split()) > 0 or not looks_told(text):
+        if _end_numbers(text.split()) > 0 or not looks_told(text, self.names):
             return None
         self.out.sentences.append((number, text, self.case))
         return "values in words", ""

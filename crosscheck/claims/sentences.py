@@ -50,11 +50,39 @@ class _Told:
     words: str
 
 
-def looks_told(text: str) -> bool:
+_END_SYMBOL = re.compile(
+    r"(?<![A-Za-z0-9])(?P<letter>[MVNQ])(?:_|\s?\(|\s)?\{?"
+    r"(?P<first>[A-Za-z0-9']{1,6}?)[-,]?(?P<last>[A-Za-z0-9']{1,6})[)}]?"
+    r"\s*(?:[=:]|\s)\s*(?P<number>[+\-\u2212]?\d+(?:[.,]\d+)?(?:[eE][+-]?\d+)?-?)\s*(?P<unit>[A-Za-z]+(?:[ .*\u00b7-]?m+\b)?)?"
+)
+_LETTERS_OF = {"M": "moment", "V": "shear", "Q": "shear", "N": "axial"}
+
+
+def _end_symbols(text: str, names: Names) -> Iterator[tuple[str, str, str, Number, Size | None]]:
+    """End actions in the notation of hand methods: "M_AB = -12.4", the action on member AB at A. (quantity, member,
+    joint, ...)"""
+    for m in _END_SYMBOL.finditer(text):
+        joined = m.group("first") + m.group("last")
+        if joined.isdigit() and "_" not in m.group():
+            continue  # "N12" is rather a joint's name
+        for k in range(1, len(joined)):
+            first, last = names.joint(joined[:k]), names.joint(joined[k:])
+            hit = names.between(first, last) if first and last else None
+            number = parse_number(m.group("number"), "," in m.group("number"))
+            if hit and first and number:
+                yield _LETTERS_OF[m.group("letter")], hit.name, first, number, _unit(m.group("unit"))
+                break
+
+
+def looks_told(text: str, names: Names) -> bool:
     """Is the line a sentence with values in it, rather than a row of a table?"""
     if not any(c.isdigit() for c in text):
         return False
+    if any(True for _ in _end_symbols(text, names)):
+        return True
     told = list(_told(text))
+    if len(told) == 1 and told[0].unit and told[0].unit.dimension == MOMENT and _places(told[0].words, names)[0]:
+        return True
     return bool(told) and all(t.unit and t.unit.dimension in _BY_DIMENSION for t in told) and any(
         _MOST.search(t.words) or any(re.search(p, t.words, re.IGNORECASE) for q, p in _WORDS.items() if q != "fy")
         or "reaction" in t.words.lower()
@@ -83,6 +111,11 @@ def entries_told(text: str, line: int, table: int, names: Names) -> tuple[list[E
     """The values of a sentence, and of each part that was not understood why."""
     out: list[Entry] = []
     odd: list[str] = []
+    for quantity, member, joint, number, unit in _end_symbols(text, names):
+        end = names.frame.members[member].index(joint)
+        out.append(Entry(table, line, "end", quantity, number, unit, member=member, joint=joint, end=end))
+    if out:
+        return out, odd
     for told in _told(text):
         entry, why = _entry(told, line, table, names, out[-1] if out else None)
         if entry:
@@ -95,6 +128,8 @@ def entries_told(text: str, line: int, table: int, names: Names) -> tuple[list[E
 def _entry(told: _Told, line: int, table: int, names: Names, before: Entry | None) -> tuple[Entry | None, str]:
     """What one value is. Without a name of its own it is of the member or joint before it, or of the whole frame."""
     member, joint, case = _places(told.words, names)
+    if member is None and joint is None and before is not None and before.line == line:
+        joint = before.joint if before.kind != "end" else None  # "Rx at A 7 kN, Ry 28 kN"
     quantity = _quantity(told, member, joint)
     if quantity is None:
         return None, f'it is not said which quantity {told.number.printed} is ("{told.words.strip()[:60]}")'
@@ -117,7 +152,8 @@ def _entry(told: _Told, line: int, table: int, names: Names, before: Entry | Non
             return replace(blank, kind="end", member=member.name, end=end, joint=joint, extreme=None), ""
         if member is None and joint is not None and sense == "moment":
             return replace(blank, joint=joint), ""
-        return replace(blank, member=member.name if member else None, extreme="size"), ""
+        whole = member.name if member else before.member if before is not None and joint is None else None
+        return replace(blank, member=whole, extreme="size"), ""
     return replace(blank, joint=joint), ""
 
 

@@ -91,7 +91,7 @@ def states_face(scan: Scan) -> bool:
 def _units_in(text: str, out: Stated) -> None:
     """ "Units: kN, m", "forces in kN, moments in kNm", "[kN, kNm]"."""
     for word, unit_text in re.findall(
-        r"([A-Za-z]+)\s*(?:\bin\b|:|=)?\s*[\[(]?\s*([A-Za-z]+(?:[ .*\u00b7-]?[a-z]+)?)\b", text
+        r"([A-Za-z]+)\s*(?:\bin\b|:|=|,)?\s*[\[(]?\s*([A-Za-z]+(?:[ .*\u00b7-]?[a-z]+)?)\b", text
     ):
         unit = unit_of(unit_text) or unit_of(unit_text.split()[0])
         if word.lower() in QUANTITY_WORDS and unit and unit.dimension != Dimension():

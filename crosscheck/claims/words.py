@@ -89,7 +89,7 @@ _SYMBOL_NOUNS = {
     "rx": "R", "h": "F", "sf": "V", "bm": "M",
 }  # fmt: skip
 _SYMBOL = re.compile(
-    r"(rot|theta|phi|th|disp|trans|delta|del|bm|sf|[nvqmfprdutwhs])([xyz]?)(\d{0,2})(max|min|abs|start|end|from|to|ij|ji|[ijab]?)"
+    r"(rot|theta|phi|th|disp|trans|delta|del|bm|sf|[nvqmfprdutwhs])([xyz]?)(\d{0,2})(max|min|abs|start|end|from|to|ij|ji|ab|ba|[ijab]?)"
 )
 _NUMBERED_AXIS = {"1": "x", "2": "y", "3": "z", "11": "x", "22": "y", "33": "z"}
 _BRACKETS = re.compile(r"[\[({<]([^\[\](){}<>]*)[\])}>]")
@@ -228,6 +228,8 @@ def _from_tokens(text: str, tokens: list[str]) -> Head:
             if symbol.noun and (not noun or noun in ("end", "F", "R", "joint", "support")):
                 noun, axis = (noun if noun == "R" and symbol.noun == "F" else symbol.noun), symbol.axis or axis
                 end, which = (symbol.end if symbol.end is not None else end), which or symbol.which
+            elif token in ("ab", "ij", "ba", "ji") and noun in RESULT_NOUNS:
+                end = 0 if token in ("ab", "ij") else 1
             elif token in ("1", "a"):
                 end = 0 if noun else end
             elif token in ("2", "b"):
@@ -250,7 +252,20 @@ def _from_symbol(text: str, token: str) -> Head:
     noun = _SYMBOL_NOUNS[letter]
     if letter == "h":
         axis = axis or "x"
-    end = {"i": 0, "start": 0, "from": 0, "a": 0, "ij": 0, "j": 1, "end": 1, "to": 1, "b": 1, "ji": 1}.get(tail)
+    end = {
+        "i": 0,
+        "start": 0,
+        "from": 0,
+        "a": 0,
+        "ij": 0,
+        "ab": 0,
+        "ba": 1,
+        "j": 1,
+        "end": 1,
+        "to": 1,
+        "b": 1,
+        "ji": 1,
+    }.get(tail)
     which = {"max": "max", "min": "min", "abs": "size"}.get(tail, "")
     if number in _NUMBERED_AXIS and not axis:
         axis = number  # kept as a number until the table is known
