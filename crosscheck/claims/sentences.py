@@ -53,7 +53,8 @@ class _Told:
 _END_SYMBOL = re.compile(
     r"(?<![A-Za-z0-9])(?P<letter>[MVNQ])(?:_|\s?\(|\s)?\{?"
     r"(?P<first>[A-Za-z0-9']{1,6}?)[-,]?(?P<last>[A-Za-z0-9']{1,6})[)}]?"
-    r"\s*(?:[=:]|\s)\s*(?P<number>[+\-\u2212]?\d+(?:[.,]\d+)?(?:[eE][+-]?\d+)?-?)\s*(?P<unit>[A-Za-z]+(?:[ .*\u00b7-]?m+\b)?)?"
+    r"\s*(?:[=:]|\s)\s*(?P<number>[+\-\u2212]?\d+(?:[.,]\d+)?(?:[eE][+-]?\d+)?-?)\s*"
+    r"(?P<unit>[A-Za-z]+(?:[ .*\u00b7-]?m+\b)?)?"
 )
 _LETTERS_OF = {"M": "moment", "V": "shear", "Q": "shear", "N": "axial"}
 
