@@ -12,7 +12,7 @@ import pytest
 from tests.claim_frame import bent
 from tests.pastes import Tally, known, make, number
 
-SAMPLE = 60
+SAMPLE = 45
 
 
 def test_pastes() -> None:

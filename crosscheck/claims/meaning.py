@@ -23,6 +23,9 @@ WHICH_WORDS = {
 }  # fmt: skip
 
 
+MOST_HEADS = 200
+
+
 @dataclass(frozen=True, slots=True)
 class Role:
     """What a column is for: "" (not used), member, joint, start joint, end joint, end, case, station, which, value."""
@@ -49,6 +52,8 @@ class Meaning:
 
 def meaning_of(grid: Grid, table: RawTable, names: Names) -> Meaning:
     """Kind and roles of the columns of one table."""
+    if len(grid.heads) > MOST_HEADS:
+        return Meaning("", tuple(Role() for _ in grid.heads), "it has too many columns")
     if table.heads and grid.heads and not any(h.text for h in grid.heads):
         return Meaning("", tuple(Role() for _ in grid.heads), "the heads do not match the columns below them")
     heads = _numbered(_filled(grid, table, names))
