@@ -37,8 +37,8 @@ from tests.corpus import (
 from tests.random_frames import random_frame
 
 FULL = os.environ.get("CROSSCHECK_CORPUS") == "full"
-SEEDS = range(300, 375) if FULL else range(304, 307)
-PER_FRAME = 22 if FULL else 8
+SEEDS = range(300, 342) if FULL else range(304, 307)
+PER_FRAME = 40 if FULL else 8
 
 
 def _observed(frame: Frame, digits: int = 6) -> tuple[Observation, Screen]:
