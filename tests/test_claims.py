@@ -46,7 +46,20 @@ def test_not_numbers(text: str) -> None:
      (["12,345", "7"], False), (["12,345", "6,789"], None), (["5"], False)],
 )  # fmt: skip
 def test_what_a_comma_means(texts: list[str], decimal: bool | None) -> None:
-    assert commas_are_decimal(texts) is decimal
+    assert commas_are_decimal([texts]) is decimal
+
+
+def test_whole_numbers_tell_of_their_own_column_alone() -> None:
+    """Moments without decimals beside forces with three: the forces' comma is not that of thousands."""
+    assert commas_are_decimal([["5,468", "-5,837"], ["275", "1018"]]) is None
+    assert commas_are_decimal([["5,468", "-5,837"], ["0,275"]]) is True
+    k = bent()
+    text = "Load case: dead\n" + k.reactions("dead").replace(".", ",")
+    rows = [";".join([*r.split("\t")[:3], str(round(float(r.split("\t")[3].replace(",",
+    ".")) * 100))]) if r[:2] in ("A\t", "D\t", "F\t")
+            else r.replace("\t", ";").replace("kNm", "kN cm") for r in text.splitlines()]  # fmt: skip
+    verdict, closed, cases = k.judge("\n".join(rows))
+    assert (verdict, cases[0].compared) == ("agree", 9), closed
 
 
 # --- heads and names

@@ -13,7 +13,7 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from crosscheck.claims.grid import Grid
-from crosscheck.claims.meaning import Meaning
+from crosscheck.claims.meaning import Meaning, column
 from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.reading import EchoFact, FrameNames
@@ -54,7 +54,7 @@ class Echo:
 def echo_facts(kind: str, grid: Grid, meaning: Meaning) -> Iterator[EchoFact]:
     """The facts that a table of input states, one a cell."""
     named = next((k for k, r in enumerate(meaning.roles) if r.name in ("joint", "member", "case")), 0)
-    comma = bool(commas_are_decimal(c for row in grid.rows for k, c in enumerate(row) if k != named))
+    comma = bool(commas_are_decimal(column(grid, k) for k in range(len(grid.heads)) if k != named))
     ends = [k for k, r in enumerate(meaning.roles) if r.name in ("start joint", "end joint")]
     for row, line in zip(grid.rows, grid.lines, strict=True):
         where = row[named].strip()

@@ -10,6 +10,7 @@ import re
 from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import lru_cache
+from typing import Literal
 
 _DASHES = str.maketrans(dict.fromkeys("−‐‑‒–—﹣－", "-") | {"\uff0b": "+"})
 _SPACES = "\u00a0\u2007\u2009\u200a\u202f"
@@ -78,23 +79,36 @@ def _one_point(digits: str, decimal_comma: bool) -> str | None:
     return "".join(groups) + ("." + part if part else "")
 
 
-def commas_are_decimal(texts: Iterable[str]) -> bool | None:
-    """Does a comma stand before the decimals, told from all numbers of a table; None where nothing tells."""
+CommaUse = Literal["none", "decimals", "thousands", "unsure"]
+
+
+def comma_use(texts: Iterable[str]) -> CommaUse:
+    """What commas stand for in one column of numbers."""
     unsure = whole = False
     for text in texts:
         body = _GROUP.sub("", text)
         commas, points = body.count(","), body.count(".")
         if not commas:
             if points == 1 and not re.search(r"\d\.\d{3}(?!\d)", body):
-                return False
+                return "thousands"
             whole = whole or (not points and any(c in "123456789" for c in body))
             continue
         if points:
-            return body.rfind(",") > body.rfind(".")
+            return "decimals" if body.rfind(",") > body.rfind(".") else "thousands"
         if commas > 1:
-            return False
+            return "thousands"
         if not re.fullmatch(r"\D*[1-9]\d{0,2},\d{3}(?!\d)\D*", body):
-            return True
+            return "decimals"
         unsure = True
-    # Decimals are printed to a fixed number of places: whole numbers beside "12,345" say that its comma parts thousands.
-    return None if unsure and not whole else False
+    if not unsure:
+        return "none"
+    # A column's decimals have one number of places: whole numbers beside "12,345" say that its comma parts thousands.
+    return "thousands" if whole else "unsure"
+
+
+def commas_are_decimal(columns: Iterable[Iterable[str]]) -> bool | None:
+    """Does a comma stand before the decimals, told from all columns of a table; None where nothing tells."""
+    uses = {comma_use(column) for column in columns}
+    if "decimals" in uses:
+        return True
+    return None if "unsure" in uses and "thousands" not in uses else False

@@ -11,7 +11,7 @@ from pathlib import Path
 from crosscheck.claims.decode import lines_of, read_source, refuse
 from crosscheck.claims.echo import Echo, Piece, echo_facts, in_our_names, learn, pieces_stated
 from crosscheck.claims.grid import Grid, grid_of
-from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Meaning, Role, dimension_of, meaning_of
+from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Meaning, Role, column, dimension_of, meaning_of
 from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.readfile import checked
@@ -48,11 +48,9 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
     scanned = scan(lines_of(text), names)
     stated = with_options(stated_in(scanned), options)
     reader = _Reader(names, options, stated, scanned)
-    for raw in scanned.tables:
-        if raw.rows:
-            reader.commas = reader.commas or commas_are_decimal(_numbers_of(raw))
     read = [reader.understood(raw) for raw in scanned.tables if raw.rows]
     reader.learn(read)
+    reader.commas = any(commas_are_decimal(_numbers(grid)) for _, grid, _ in read)
     for raw, grid, meaning in read:
         reader.table(raw, grid, meaning)
     for line, sentence, case in scanned.sentences:
@@ -92,8 +90,9 @@ def _nothing(scanned: Scan, reader: _Reader) -> tuple[str, str]:
     )
 
 
-def _numbers_of(raw: RawTable) -> Iterator[str]:
-    return (c.text for _, text in raw.rows for c in cells_of(text)[1] if is_number(c.text))
+def _numbers(grid: Grid) -> Iterator[list[str]]:
+    """The numbers of each column."""
+    return ([c for c in column(grid, k) if is_number(c)] for k in range(len(grid.heads)))
 
 
 @dataclass(slots=True)
@@ -152,7 +151,7 @@ class _Reader:
     undecided: list[str] = field(default_factory=list)
     echo: list[EchoFact] = field(default_factory=list)
     left_inside: set[str] = field(default_factory=set)
-    commas: bool | None = False
+    commas: bool = False
     """Does any table of the paste show that its commas stand before decimals? A table that cannot tell follows it."""
 
     def understood(self, raw: RawTable) -> _Table:
@@ -252,9 +251,9 @@ class _Reader:
 
     def _rows(self, number: int, raw: RawTable, grid: Grid, meaning: Meaning) -> Iterator[Entry]:
         values = [k for k, r in enumerate(meaning.roles) if r.name in ("value", "station")]
-        comma = commas_are_decimal(row[k] for row in grid.rows for k in values)
+        comma = commas_are_decimal(column(grid, k) for k in values)
         unsure = comma is None and not self.commas
-        comma = self.commas is not False if comma is None else comma
+        comma = True if comma is None else comma
         carried = _Carried()
         for row, line, kept in zip(grid.rows, grid.lines, grid.kept, strict=True):
             text = raw.rows[kept][1]

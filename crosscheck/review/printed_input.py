@@ -57,7 +57,7 @@ def echo_of(text: str, frame_names: FrameNames) -> tuple[EchoFact, ...]:
     """Every fact of a text, in its order."""
     names = Names(frame_names, {}, {}, {})
     lines = lines_of(text)
-    comma = bool(commas_are_decimal(cell for line in lines for cell in _cells(line)))
+    comma = bool(commas_are_decimal([[cell for line in lines for cell in _cells(line)]]))
     heads: list[str] = []
     tables: list[list[list[EchoFact]]] = []
     for number, line in enumerate(lines, 1):
