@@ -321,7 +321,10 @@ class _Scanner:
 
     def _may_follow(self, filled: list[str]) -> bool:
         assert self.table
-        return self._fits(filled, named=False) if self.table.rows else any(self._knows(t) for t in filled[:3])
+        if not self.table.rows:
+            return any(self._knows(t) for t in filled[:3])
+        last = [c.text for c in cells_of(self.table.rows[-1][1])[1]]
+        return sum(map(is_number, last)) == sum(map(is_number, filled)) or self._fits(filled, named=False)
 
     def _row(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
         if not numbers:

@@ -75,6 +75,12 @@ def _end_symbols(text: str, names: Names) -> Iterator[tuple[str, str, str, Numbe
                 break
 
 
+def _is_one_moment(told: _Told, names: Names) -> bool:
+    """One moment of one member, and no other number: "A-B at A  12.4 kNm"."""
+    alone = not _VALUE.search(told.words)
+    return alone and told.unit is not None and told.unit.dimension == MOMENT and _places(told.words, names)[0] is not None
+
+
 def looks_told(text: str, names: Names) -> bool:
     """Is the line a sentence with values in it, rather than a row of a table?"""
     if not any(c.isdigit() for c in text):
@@ -82,7 +88,7 @@ def looks_told(text: str, names: Names) -> bool:
     if any(True for _ in _end_symbols(text, names)):
         return True
     told = list(_told(text))
-    if len(told) == 1 and told[0].unit and told[0].unit.dimension == MOMENT and _places(told[0].words, names)[0]:
+    if len(told) == 1 and _is_one_moment(told[0], names):
         return True
     return bool(told) and all(t.unit and t.unit.dimension in _BY_DIMENSION for t in told) and any(
         _MOST.search(t.words) or any(re.search(p, t.words, re.IGNORECASE) for q, p in _WORDS.items() if q != "fy")
