@@ -9,7 +9,7 @@ proportion; the pivots of the whole matrix count how many critical loads lie bel
 from __future__ import annotations
 
 import copy
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, replace
 from functools import cached_property
 from typing import Any
 
@@ -26,7 +26,10 @@ from crosscheck.opinions.slope_deflection.system import PENALTY, gathered, suppo
 
 SETTLED = 1e-12
 """Largest change of an axial force, as a share of the largest, at which the iteration ends."""
-MOST_ROUNDS = 200
+MOST_ROUNDS = 60
+MIXED = 5
+"""States before the last that are mixed into the next."""
+LEAST_STEP = 1 / 64
 EXACT = 1e-11
 """Relative width to which a critical load factor is found unless a rougher one will do."""
 SOFTER = 10.0
@@ -79,27 +82,58 @@ class CaseInSecondOrder:
 
     def first_order(self) -> Floats:
         """(m,) axial forces at the `from` joints on the undisplaced frame, along loads included."""
-        return self.pulls(self.equations(np.zeros(len(self.frame.members))).solve(None).axial)
+        return self.pulls(self._undisplaced().solve(None).axial)
+
+    def _undisplaced(self) -> Equations:
+        """The equations without any effect of axial forces, those of along loads included."""
+        return self.equations(np.zeros(len(self.frame.members))).scaled(0.0)
 
     # --- equilibrium
 
     def solve(self) -> State:
-        """Iterate the axial forces. Raises PastCritical where the case is past its critical load or does not settle."""
-        first = self.equations(np.zeros(len(self.frame.members)))
-        state = first.solve(None)
+        """Iterate the axial forces. Raises PastCritical where the case is past its critical load or finds no balance."""
+        state = self._undisplaced().solve(None)
         factor = self.critical_factor(self.pulls(state.axial))
         if factor <= 1.0:
             raise PastCritical(f"past its critical load: the critical load factor is {factor:.4g}")
+        return self._settled(state.axial) or self._by_steps(state.axial)
+
+    def _settled(self, axial: Floats) -> State | None:
+        """The state whose axial forces, put into its own equations, come out again; None where none is found or it is not
+        stable. Successive states are mixed (D. G. Anderson, J. ACM 12 (1965), 547-560)."""
+        tried: list[Floats] = []
+        came: list[Floats] = []
         for _ in range(MOST_ROUNDS):
-            equations = self.equations(self.pulls(state.axial))
-            if equations.negative_pivots:
-                raise PastCritical("past its critical load: no stable equilibrium on the displaced frame")
-            fresh = equations.solve(state)
-            change = np.abs(fresh.axial - state.axial).max(initial=0.0)
-            state = fresh
-            if change <= SETTLED * max(np.abs(fresh.axial).max(initial=0.0), 1e-300):
+            equations = self.equations(self.pulls(axial))
+            try:
+                state = equations.solve(None)
+            except RuntimeError:  # exactly singular on the way
+                return None
+            change = np.abs(state.axial - axial).max(initial=0.0)
+            if not np.isfinite(change):
+                return None
+            if change <= SETTLED * max(np.abs(state.axial).max(initial=0.0), 1e-300):
+                return None if equations.negative_pivots else state
+            tried, came = [*tried[-MIXED:], axial], [*came[-MIXED:], state.axial]
+            axial = _mixed(tried, came)
+        return None
+
+    def _by_steps(self, first: Floats) -> State:
+        """Bring the loads on by steps where all at once do not settle. Raises PastCritical where no balance is found."""
+        reached, step = 0.0, 0.25
+        axial = first
+        while True:
+            share = min(1.0, reached + step)
+            part = self if share == 1.0 else CaseInSecondOrder(self.frame, _share(self.table, share))
+            state = part._settled(axial * (share / (reached or 1.0)))
+            if state is not None and share == 1.0:
                 return state
-        raise PastCritical("its axial forces do not settle on the displaced frame: too near its critical load")
+            if state is not None:
+                reached, step, axial = share, step * 1.5, state.axial
+                continue
+            step /= 2
+            if step < LEAST_STEP:
+                raise PastCritical(f"past its critical load: no stable balance beyond {reached:.2g} of the load")
 
     def critical_factor(self, pulls: Floats, close: float = EXACT, beyond: float = BEYOND) -> float:
         """Smallest factor on the first-order axial forces at which the frame, or a member in it, buckles; inf for none.
@@ -323,10 +357,24 @@ class Equations:
         return np.asarray(out + self.nodes.T @ on_nodes)
 
 
+def _mixed(tried: list[Floats], came: list[Floats]) -> Floats:
+    """The mixture of what came that would have changed least, by least squares on the changes."""
+    if len(tried) == 1:
+        return came[0]
+    change = np.stack([c - t for t, c in zip(tried, came, strict=True)], axis=1)
+    steps = np.diff(change, axis=1)
+    weight = np.linalg.lstsq(steps, change[:, -1], rcond=1e-12)[0]
+    return np.asarray(came[-1] - np.diff(np.stack(came, axis=1), axis=1) @ weight)
+
+
+def _share(table: LoadTable, share: float) -> LoadTable:
+    """A share of all loads, imposed movements and temperatures."""
+    kept = ("point_member", "point_at", "line_member", "line_start", "line_end")
+    return replace(table, **{f.name: getattr(table, f.name) * share for f in fields(table) if f.name not in kept})
+
+
 def _scaled_along(table: LoadTable, factor: float) -> LoadTable:
     """The table with its loads along members times `factor`: axial forces scale in proportion everywhere."""
-    from dataclasses import replace
-
     return replace(table, point_along=table.point_along * factor, line_along=table.line_along * factor)
 
 
