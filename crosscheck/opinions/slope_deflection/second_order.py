@@ -27,6 +27,8 @@ from crosscheck.opinions.slope_deflection.system import PENALTY, gathered, suppo
 SETTLED = 1e-12
 """Largest change of an axial force, as a share of the largest, at which the iteration ends."""
 MOST_ROUNDS = 60
+PATIENCE = 15
+"""Rounds after which axial forces that still change by a hundredth are given up."""
 MIXED = 5
 """States before the last that are mixed into the next."""
 LEAST_STEP = 1 / 64
@@ -103,16 +105,17 @@ class CaseInSecondOrder:
         stable. Successive states are mixed (D. G. Anderson, J. ACM 12 (1965), 547-560)."""
         tried: list[Floats] = []
         came: list[Floats] = []
-        for _ in range(MOST_ROUNDS):
+        for turn in range(MOST_ROUNDS):
             equations = self.equations(self.pulls(axial))
             try:
                 state = equations.solve(None)
             except RuntimeError:  # exactly singular on the way
                 return None
             change = np.abs(state.axial - axial).max(initial=0.0)
-            if not np.isfinite(change):
+            size = max(np.abs(state.axial).max(initial=0.0), 1e-300)
+            if not np.isfinite(change) or (turn >= PATIENCE and change > 0.01 * size):
                 return None
-            if change <= SETTLED * max(np.abs(state.axial).max(initial=0.0), 1e-300):
+            if change <= SETTLED * size:
                 return None if equations.negative_pivots else state
             tried, came = [*tried[-MIXED:], axial], [*came[-MIXED:], state.axial]
             axial = _mixed(tried, came)
