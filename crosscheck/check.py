@@ -75,7 +75,8 @@ class Verification:
     """A claim judged against the opinions.
 
     grounds: why the verdict is what it is, one sentence each. undecided: the choices that would settle it.
-    no_suspects: why none is named, where the claim disagrees.
+    no_suspects: why none is named, where the claim disagrees. facts: how the other model's own input, where the paste
+    holds it, differs from the frame.
     """
 
     opinions: Opinions
@@ -88,6 +89,7 @@ class Verification:
     grounds: tuple[str, ...] = ()
     undecided: tuple[str, ...] = field(default=())
     no_suspects: str = ""
+    facts: tuple[str, ...] = ()
 
 
 def ask(frame: Frame, names: Sequence[str] | None = None) -> Opinions:
@@ -156,8 +158,19 @@ def verify(
         whole = opinions if opinions.names == frame.names else ask(frame)
         found, why = _suspects(whole, closed, cases, tolerance)
     return Verification(
-        opinions, closed, tolerance, tuple(cases), audits, found, verdict, tuple(grounds), closed.undecided, why
+        opinions, closed, tolerance, tuple(cases), audits, found, verdict, tuple(grounds), closed.undecided, why,
+        printed_input(frame, reading),
     )
+
+
+def printed_input(frame: Frame, reading: Reading) -> tuple[str, ...]:
+    """How the other model's own input, as the paste holds it, differs from the frame: facts, said before any suspect."""
+    if not reading.echo:
+        return ()
+    from crosscheck.review.echo import compared
+    from crosscheck.review.finding import Subject
+
+    return tuple(f.says for f in compared(Subject(frame), reading.echo) if f.grade == "serious")
 
 
 def cases_needed(frame: Frame, reading: Reading, case: str | None) -> tuple[str, ...] | None:

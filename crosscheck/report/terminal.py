@@ -326,6 +326,8 @@ def verify_report(
     parts += [Text(f"  {line}") for line in beside(result)]
     parts += _warnings(opinions.frame)
     parts += [Text(line) for line in (*undetermined_lines(opinions), critical) if line]
+    if result.facts:
+        parts += [heading("Printed input that differs from the frame"), _notes(result.facts)]
     parts += _suspect_lines(result)
     parts += [heading("How it was compared"), facts(claim_facts(result))]
     for judged in opinions.judgements.values():
