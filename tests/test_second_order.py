@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import os
 from collections.abc import Iterator
 from dataclasses import replace
 
@@ -28,6 +29,9 @@ from tests.many_elements import ManyElements
 from tests.random_frames import random_frame
 
 OWN = 1e-8
+FULL = "CROSSCHECK_SECOND_ORDER"
+"""Set this variable to run all blocks, 300 frames; a sample runs by default, because a block takes minutes."""
+SAMPLE = (1, 2)
 BLOCKS, BLOCK, APART = 12, 25, 60
 """300 frames that have a balance: 25 from every 60 seeds on."""
 LOADED = "loaded"
@@ -77,17 +81,22 @@ def distributed(frame: Frame) -> Answer:
 # --- against each other ------------------------------------------------------------------------------
 
 
-@pytest.mark.parametrize("block", range(BLOCKS))
+@pytest.mark.parametrize("block", range(BLOCKS) if os.environ.get(FULL) else SAMPLE)
 def test_opinions_agree_up_to_near_the_critical_load(block: int) -> None:
     """In ends, joints, reactions and stations. Where the axial forces change so much as the frame gives way that it has
-    no stable balance left, both say so."""
-    wrong, agreed = [], 0
+    no stable balance left, both say so. Slope-deflection now and then says so of a frame that has one (its axial forces
+    pass through an unstable state on the way there): then many elements must confirm what distribution gives."""
+    wrong, agreed, alone = [], 0, 0
     for seed, frame, share in loaded_frames(APART * block):
         studied = study(frame)
         one, other = (o.opine(frame, studied, [LOADED]) for o in (slope_deflection, moment_distribution))
         assert isinstance(one, Answer) and isinstance(other, Answer)
         said = [a.silent.get(LOADED, "") for a in (one, other)]
-        if any(said):
+        if said[0].startswith(PAST) and not said[1]:
+            alone += 1
+            if not falls(frame, largest_error(frame, other, 4), largest_error(frame, other, 12)):
+                wrong.append((seed, share, said[0]))
+        elif any(said):
             if not all(s.startswith(PAST) for s in said):
                 wrong.append((seed, share, *said))
         else:
@@ -99,6 +108,7 @@ def test_opinions_agree_up_to_near_the_critical_load(block: int) -> None:
             break
     assert wrong == []
     assert agreed == BLOCK
+    assert alone <= 0.2 * BLOCK
 
 
 # --- against many elements ---------------------------------------------------------------------------
