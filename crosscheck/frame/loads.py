@@ -1,7 +1,8 @@
 """The loads of a case or combination as plain arrays in member and joint axes: geometry, no mechanics.
 
 Shared by every opinion and the audit, and listed as shared in the README. It turns directions into local components,
-spreads projected loads over the member's length and adds self weight; it moves no load and integrates none.
+spreads projected loads over the member's length, adds self weight and what leans with the downward load; it moves no
+load and integrates none, but for the weight of a tapered piece, which it lays out as short straight loads.
 """
 
 from __future__ import annotations
@@ -19,7 +20,9 @@ from crosscheck.frame.model import (
     Ints,
     JointCouple,
     JointForce,
+    Lean,
     Load,
+    LoadCase,
     Misfit,
     PointCouple,
     PointForce,
@@ -27,6 +30,7 @@ from crosscheck.frame.model import (
     Settlement,
     Spread,
     Temperature,
+    Variation,
 )
 
 SNAP = 1e-9
@@ -90,6 +94,11 @@ def case_factors(frame: Frame, name: str) -> dict[str, float]:
     return {name: 1.0} if name in frame.cases else frame.combinations[name].factors
 
 
+def leans(frame: Frame, name: str) -> bool:
+    """Whether the combination has a lean of its own: it is then more than the sum of its cases."""
+    return name in frame.combinations and frame.combinations[name].lean != 0.0
+
+
 class _Collector:
     """Gathers one table's rows; plain lists, because appending to arrays is quadratic."""
 
@@ -99,18 +108,62 @@ class _Collector:
         self.cos, self.sin = self.table.cos.tolist(), self.table.sin.tolist()
         self.joint = np.zeros((len(frame.joints), 3))
         self.settlement = np.zeros((len(frame.joints), 3))
+        self.joint_loads: list[tuple[int, float]] = []
         self.points: list[tuple[int, float, float, float, float]] = []
         self.lines: list[tuple[int, float, float, float, float, float, float]] = []
         self.strains = np.zeros((3, len(frame.members)))
-        self.self_weight = 0.0
+        self.weights: list[float] = []
+        self.sideways_weight = 0.0
+
+    def add_case(self, case: LoadCase, factor: float) -> None:
+        """Every load of the case, factored, and what leans with them by the case's own word."""
+        here = self._mark()
+        for load in case.loads:
+            self.add(load, factor)
+        share = sum(load.share for load in case.loads if isinstance(load, Lean))
+        if share:
+            self.lean(share, here, 1.0 if factor >= 0.0 else -1.0)
+
+    def _mark(self) -> tuple[int, int, int, int]:
+        return len(self.joint_loads), len(self.points), len(self.lines), len(self.weights)
+
+    def lean(self, share: float, since: tuple[int, int, int, int] = (0, 0, 0, 0), sense: float = 1.0) -> None:
+        """Add `share` of every downward load since the mark, sideways where it acts. With `sense` -1 the loads stand
+        turned round by a negative factor, and so does what leans with them."""
+        joints, points, lines, weights = since
+        for joint, up in self.joint_loads[joints:]:
+            self.joint[joint, 0] += share * sense * max(0.0, -sense * up)
+        for m, at, along, across, _ in self.points[points:]:
+            up = along * self.sin[m] + across * self.cos[m]
+            side = share * sense * max(0.0, -sense * up)
+            if side:
+                self.points.append((m, at, side * self.cos[m], -side * self.sin[m], 0.0))
+        for row in self.lines[lines:]:
+            self._lean_line(share * sense, sense, row)
+        self.sideways_weight += share * sense * sum(max(0.0, sense * w) for w in self.weights[weights:])
+
+    def _lean_line(
+        self, share: float, sense: float, row: tuple[int, float, float, float, float, float, float]
+    ) -> None:
+        """The part of a line load that acts down, sideways; a load that changes its sense is parted there."""
+        m, start, end, along_1, along_2, across_1, across_2 = row
+        c, s = self.cos[m], self.sin[m]
+        down_1, down_2 = -sense * (along_1 * s + across_1 * c), -sense * (along_2 * s + across_2 * c)
+        if max(down_1, down_2) <= 0.0:
+            return
+        if min(down_1, down_2) < 0.0:
+            nil = start + (end - start) * down_1 / (down_1 - down_2)
+            start, end = (start, nil) if down_1 > 0.0 else (nil, end)
+        a, b = share * max(0.0, down_1), share * max(0.0, down_2)
+        self.lines.append((m, start, end, a * c, b * c, -a * s, -b * s))
 
     def add(self, load: Load, factor: float) -> None:
         match load:
             case JointForce():
                 dx, dy = direction_cosines(load.direction)
-                self.joint[self.frame.joint_index[load.joint], :2] += (
-                    factor * load.force * dx, factor * load.force * dy,
-                )  # fmt: skip
+                k = self.frame.joint_index[load.joint]
+                self.joint[k, :2] += factor * load.force * dx, factor * load.force * dy
+                self.joint_loads.append((k, factor * load.force * dy))
             case JointCouple():
                 self.joint[self.frame.joint_index[load.joint], 2] += factor * load.couple
             case Settlement():
@@ -132,7 +185,9 @@ class _Collector:
             case Misfit():
                 self.strains[2, self.frame.member_index[load.member]] += factor * load.too_long
             case SelfWeight():
-                self.self_weight += factor * load.factor
+                self.weights.append(factor * load.factor)
+            case Lean():
+                pass  # of the whole case: `add_case`
 
     def _spread(self, load: Spread, factor: float) -> None:
         m = self.frame.member_index[load.member]
@@ -147,13 +202,8 @@ class _Collector:
         t = self.table
         points = np.array(self.points, dtype=float).reshape(-1, 5)
         lines = np.array(self.lines, dtype=float).reshape(-1, 7)
-        if self.self_weight:
-            w = self.self_weight * t.weight * t.A
-            m = np.arange(len(w), dtype=float)
-            lines = np.concatenate([
-                lines,
-                np.column_stack([m, np.zeros_like(m), t.length, -w * t.sin, -w * t.sin, -w * t.cos, -w * t.cos]),
-            ])  # fmt: skip
+        if sum(self.weights) or self.sideways_weight:
+            lines = np.concatenate([lines, self._weight_lines(sum(self.weights), self.sideways_weight)])
         member, line_member = points[:, 0].astype(np.int64), lines[:, 0].astype(np.int64)
         return LoadTable(
             joint=self.joint,
@@ -174,6 +224,45 @@ class _Collector:
         )
 
 
+    def _weight_lines(self, down: float, right: float) -> Floats:
+        """(q, 7) rows of self weight: `down` times it down and `right` times it to the right."""
+        t, v = self.table, self.frame.variation
+        plain = np.flatnonzero(~t.varying)
+        w = t.own_weight[plain]
+        rows = [(plain, np.zeros(len(plain)), t.length[plain], w, w)]
+        if len(v.member):
+            rows.append(piece_weights(v))
+        member, start, end, first, last = (np.concatenate(column) for column in zip(*rows, strict=True))
+        c, s = t.cos[member], t.sin[member]
+        along, across = right * c - down * s, -right * s - down * c
+        return np.column_stack([member, start, end, first * along, last * along, first * across, last * across])
+
+
+WEIGHT_PARTS = 16
+"""Straight loads that stand for the weight of one tapered piece: right to about 1e-9 of its effects."""
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(8)
+
+
+def piece_weights(v: Variation) -> tuple[Ints, Floats, Floats, Floats, Floats]:
+    """Weight per length of stepped and tapered members as straight loads: member, start, end, and intensity at both.
+
+    A prismatic piece makes one. A tapered one makes WEIGHT_PARTS, each of the total and first moment of its true weight.
+    """
+    parts = np.where(v.power[:, 1] == 0.0, 1, WEIGHT_PARTS)
+    row = np.repeat(np.arange(len(parts)), parts)
+    number = np.arange(len(row)) - np.repeat(np.cumsum(parts) - parts, parts)
+    size = ((v.end - v.start) / parts)[row]
+    start = v.start[row] + number * size
+    nodes = start[:, None] + size[:, None] * (_NODES + 1) / 2
+    depth = v.depth[row, :1] + np.diff(v.depth, axis=1)[row] * (nodes - v.start[row, None]) / (v.end - v.start)[row, None]
+    ratio = np.where(v.power[row, 1:2] != 0.0, depth / v.depth[row, :1], 1.0)
+    weight = v.weight[row, :1] * ratio ** v.power[row, 1:2]
+    mean = weight @ _WEIGHTS / 2
+    rise = 3 * (weight * _NODES) @ _WEIGHTS / 2
+    end = np.where(number == parts[row] - 1, v.end[row], start + size)
+    return v.member[row], start, end, mean - rise, mean + rise
+
+
 def snap(length: Floats, zone: Floats, at: Floats) -> Floats:
     """Distances moved onto a member's end or zone face where they miss it by rounding alone. All (n,), zone (n, 2)."""
     at = at.copy()
@@ -187,6 +276,7 @@ def load_table(frame: Frame, name: str) -> LoadTable:
     """Every load of the case or combination `name`, factored, as arrays."""
     collector = _Collector(frame)
     for case, factor in case_factors(frame, name).items():
-        for load in frame.cases[case].loads:
-            collector.add(load, factor)
+        collector.add_case(frame.cases[case], factor)
+    if leans(frame, name):
+        collector.lean(frame.combinations[name].lean)
     return collector.done()

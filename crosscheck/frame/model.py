@@ -10,16 +10,19 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import Literal
 
 import numpy as np
-from numpy.typing import NDArray
 
-Floats = NDArray[np.float64]
-Ints = NDArray[np.int64]
-Bools = NDArray[np.bool_]
+from crosscheck.frame.properties import Bools as Bools
+from crosscheck.frame.properties import Floats as Floats
+from crosscheck.frame.properties import Ints as Ints
+from crosscheck.frame.properties import MemberTable as MemberTable
+from crosscheck.frame.properties import SupportTable as SupportTable
+from crosscheck.frame.properties import Variation as Variation
+from crosscheck.frame.properties import member_table, variation
 
 HELD = math.inf
 """A support direction that cannot move, or an end connection that cannot turn."""
@@ -70,12 +73,28 @@ class Joint:
 
 
 @dataclass(frozen=True, slots=True)
+class Piece:
+    """A part of a stepped or tapered member, up to the share `until` of its length from joint to joint.
+
+    Its depth goes straight from that of section `first` to that of `last`, and I, A and shear area follow the power of
+    the depth that fits both; a plain step has the same section twice.
+    """
+
+    first: str
+    last: str
+    until: float
+
+
+@dataclass(frozen=True, slots=True)
 class Member:
     """A straight member between two joints.
 
     turn_from, turn_to: rotational stiffness of the end connection (moment per radian): HELD for a rigid end, FREE for
     a hinge, otherwise a spring. rigid_from, rigid_to: lengths of the rigid end zones. From the joint inward come the
     rigid zone, then the connection, then the flexible part.
+    pieces: of a stepped or tapered member, from joint to joint; `section` is then that of its longest piece.
+    axial: "rigid" where this member keeps its length whatever the frame's idealisation. only: the one sense in which a
+    one-way member works; working the other way it carries no axial force of its own stretch.
     """
 
     name: str
@@ -87,17 +106,35 @@ class Member:
     turn_to: float = HELD
     rigid_from: float = 0.0
     rigid_to: float = 0.0
+    pieces: tuple[Piece, ...] = ()
+    axial: Literal["", "rigid"] = ""
+    only: Literal["", "tension", "compression"] = ""
 
 
 @dataclass(frozen=True, slots=True)
 class Support:
-    """HELD, FREE or a stiffness along each of the support's own axes; `angle` (degrees) turns them."""
+    """HELD, FREE or a stiffness along each of the support's own axes; `angle` (degrees) turns them.
+
+    x_only, y_only: "push" where that direction is HELD but can only push the frame along + of its axis (up, for y), and
+    lets go otherwise; "pull" where it can only pull it along - of the axis.
+    """
 
     joint: str
     x: float
     y: float
     rotation: float
     angle: float = 0.0
+    x_only: Literal["", "push", "pull"] = ""
+    y_only: Literal["", "push", "pull"] = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Tie:
+    """Joints that move together along `direction` (degrees counter-clockwise from x); it resists nothing else."""
+
+    name: str
+    joints: tuple[str, ...]
+    direction: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -196,27 +233,88 @@ class SelfWeight:
     factor: float
 
 
+@dataclass(frozen=True, slots=True)
+class Lean:
+    """`share` of all downward load of the same case, sideways (right positive) where that load acts."""
+
+    entry: int
+    share: float
+
+
 Load = (
-    JointForce | JointCouple | Settlement | PointForce | PointCouple | Spread | Temperature | Misfit | SelfWeight
+    JointForce | JointCouple | Settlement | PointForce | PointCouple | Spread | Temperature | Misfit | SelfWeight | Lean
 )
 """`entry` is the index in the case's `apply` list: dead[0] is entry 0 of case dead. One entry may make several."""
 
 
 @dataclass(frozen=True, slots=True)
 class LoadCase:
-    """expected: what the take-down says the case adds up to, by direction word ("down": force)."""
+    """expected: what the take-down says the case adds up to, by direction word ("down": force).
+
+    arranged: name of the case of which this is an arrangement of a load pattern; "" for a case as stated.
+    """
 
     name: str
     loads: tuple[Load, ...]
     expected: dict[str, float] = field(default_factory=dict)
+    arranged: str = ""
 
 
 @dataclass(frozen=True, slots=True)
 class Combination:
-    """factors: load case name to factor."""
+    """factors: load case name to factor. stiffness: name of its state of stiffness, "" for the frame as stated.
+
+    order: its own order of theory, None for the analysis' own. lean: share of its downward load that acts sideways.
+    stated: name of the combination of the file of which this is one of several, for arrangements and either-or cases.
+    """
 
     name: str
     factors: dict[str, float]
+    stiffness: str = ""
+    order: Literal[1, 2] | None = None
+    lean: float = 0.0
+    stated: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class StiffnessState:
+    """Factors on stiffness by name of member, section, material or support, and then by property.
+
+    members: I, A, shear_area, E, G, spring_from, spring_to; sections: I, A, shear_area; materials: E, G; supports: x, y,
+    rotation. A member's own factor replaces that of its section or material. A factor on E alone is on G too. Self
+    weight and temperature keep the stated sections.
+    """
+
+    name: str
+    members: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+    sections: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+    materials: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+    supports: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class Pattern:
+    """How a load case may lie on its spans (each some members): arrangements "all", "alternate", "adjacent"."""
+
+    case: str
+    spans: tuple[tuple[str, ...], ...]
+    arrangements: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Envelope:
+    """Extremes over these cases and combinations, arrangements and alternatives included."""
+
+    name: str
+    names: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Included:
+    """A file of sections and materials that the frame file names, as named there, and its checksum."""
+
+    file: str
+    sha256: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -233,43 +331,6 @@ class Analysis:
     tolerance: float = 0.01
 
 
-@dataclass(frozen=True, slots=True)
-class MemberTable:
-    """Members as columns in the frame's member order; NaN where a property is not stated.
-
-    ends: (m, 2) joint indices. turn and zone: (m, 2) end connection stiffness and rigid zone length, `from` end first.
-    length: joint to joint; clear: between the zones. cos, sin: direction of local x in global axes.
-    """
-
-    ends: Ints
-    length: Floats
-    clear: Floats
-    cos: Floats
-    sin: Floats
-    turn: Floats
-    zone: Floats
-    E: Floats
-    G: Floats
-    I: Floats  # noqa: E741
-    A: Floats
-    shear_area: Floats
-    depth: Floats
-    alpha: Floats
-    weight: Floats
-
-
-@dataclass(frozen=True, slots=True)
-class SupportTable:
-    """Supports as columns by joint (every joint; FREE where it has none).
-
-    stiffness: (j, 3) along the support's own x, y and rotation: HELD, FREE or a stiffness. cos, sin: (j,) its angle.
-    """
-
-    stiffness: Floats
-    cos: Floats
-    sin: Floats
-
-
 @dataclass(frozen=True, eq=False)
 class Frame:
     """A whole frame file. Dicts keep the file's order; array indices everywhere follow that order."""
@@ -284,6 +345,17 @@ class Frame:
     cases: dict[str, LoadCase]
     combinations: dict[str, Combination] = field(default_factory=dict)
     analysis: Analysis = field(default_factory=Analysis)
+    states: Mapping[str, StiffnessState] = field(default_factory=dict)
+    patterns: Mapping[str, Pattern] = field(default_factory=dict)
+    exclusive: tuple[tuple[str, ...], ...] = ()
+    envelopes: Mapping[str, Envelope] = field(default_factory=dict)
+    ties: Mapping[str, Tie] = field(default_factory=dict)
+    includes: tuple[Included, ...] = ()
+    state: str = ""
+    """The state of stiffness that the tables are of; "" for the frame as stated."""
+    out_members: frozenset[str] = frozenset()
+    out_supports: frozenset[tuple[str, str]] = frozenset()
+    """One-way members, and one-way support directions (joint, "x" or "y"), that are taken out in the tables."""
     file: str = ""
     sha256: str = ""
     content: str = ""
@@ -312,29 +384,39 @@ class Frame:
         """(j, 2) joint coordinates."""
         return np.array([(j.x, j.y) for j in self.joints.values()], dtype=float).reshape(-1, 2)
 
+    def under(self, name: str) -> Frame:
+        """The frame as a case or combination has it: its state of stiffness, its order of theory. The loads are those
+        of `name` still; what differs from this frame is the same for all names of one state and order."""
+        combination = self.combinations.get(name)
+        if combination is None:
+            return self if not self.state else self._in_state("", self.analysis.order)
+        return self._in_state(combination.stiffness, combination.order or self.analysis.order)
+
+    def _in_state(self, state: str, order: Literal[1, 2]) -> Frame:
+        if (state, order) == (self.state, self.analysis.order):
+            return self
+        known = self._situations
+        if (state, order) not in known:
+            known[state, order] = replace(self, state=state, analysis=replace(self.analysis, order=order))
+        return known[state, order]
+
+    @cached_property
+    def _situations(self) -> dict[tuple[str, int], Frame]:
+        return {}
+
+    @cached_property
+    def one_way(self) -> bool:
+        """Whether any member or support works one way only."""
+        return any(m.only for m in self.members.values()) or any(s.x_only or s.y_only for s in self.supports.values())
+
     @cached_property
     def member_table(self) -> MemberTable:
-        members = list(self.members.values())
-        index = self.joint_index
-        ends = np.array([(index[m.joint_from], index[m.joint_to]) for m in members], dtype=np.int64).reshape(-1, 2)
-        run = self.xy[ends[:, 1]] - self.xy[ends[:, 0]]
-        length = np.hypot(run[:, 0], run[:, 1])
-        zone = np.array([(m.rigid_from, m.rigid_to) for m in members], dtype=float).reshape(-1, 2)
-        section_rows = {s.name: (s.I, s.A, s.shear_area, s.depth) for s in self.sections.values()}
-        material_rows = {t.name: (t.E, t.G, t.alpha, t.weight) for t in self.materials.values()}
-        s = np.array([section_rows[m.section] for m in members], dtype=float).reshape(-1, 4)
-        t = np.array([material_rows[m.material] for m in members], dtype=float).reshape(-1, 4)
-        return MemberTable(
-            ends=ends,
-            length=length,
-            clear=length - zone.sum(axis=1),
-            cos=run[:, 0] / length,
-            sin=run[:, 1] / length,
-            turn=np.array([(m.turn_from, m.turn_to) for m in members], dtype=float).reshape(-1, 2),
-            zone=zone,
-            E=t[:, 0], G=t[:, 1], alpha=t[:, 2], weight=t[:, 3],
-            I=s[:, 0], A=s[:, 1], shear_area=s[:, 2], depth=s[:, 3],
-        )  # fmt: skip
+        return member_table(self)
+
+    @cached_property
+    def variation(self) -> Variation:
+        """True sections of the stepped and tapered members."""
+        return variation(self)
 
     @cached_property
     def support_table(self) -> SupportTable:
@@ -342,10 +424,17 @@ class Frame:
         angle = np.zeros(len(self.joints))
         for support in self.supports.values():
             k = self.joint_index[support.joint]
-            stiffness[k] = support.x, support.y, support.rotation
+            stiffness[k] = self._support_stiffness(support)
             angle[k] = support.angle
         cos, sin = np.cos(np.radians(angle)), np.sin(np.radians(angle))
         # Quarter turns are exact: a support at 90 degrees must not leak 1e-17 of a held direction into a free one.
         quarter = np.isclose(angle % 90, 0, rtol=0, atol=1e-12) | np.isclose(angle % 90, 90, rtol=0, atol=1e-12)
         cos, sin = np.where(quarter, np.round(cos), cos), np.where(quarter, np.round(sin), sin)
         return SupportTable(stiffness=stiffness, cos=cos, sin=sin)
+
+    def _support_stiffness(self, support: Support) -> tuple[float, float, float]:
+        """With the factors of the state, and without what is taken out."""
+        factors = self.states[self.state].supports.get(support.joint, {}) if self.state else {}
+        x = FREE if (support.joint, "x") in self.out_supports else support.x
+        y = FREE if (support.joint, "y") in self.out_supports else support.y
+        return x * factors.get("x", 1.0), y * factors.get("y", 1.0), support.rotation * factors.get("rotation", 1.0)
