@@ -218,6 +218,42 @@ def pieces(frame: Frame, table: LoadTable, division: Division) -> Pieces:
     return Pieces(stiffness, fixed, series, lead, piece_bend)
 
 
+GAUSS_POINTS, GAUSS_WEIGHTS = (0.5 * (a + b) for a, b in zip(np.polynomial.legendre.leggauss(10), (1.0, 0.0), strict=True))
+
+
+def start_rows(division: Division, pieces: Pieces) -> Floats:
+    """(p, 5, 5): a piece's start values v/l, b, M l/EI, V l2/EI and 1 from its end displacements v1, th1, v2, th2 and 1."""
+    length, bend = division.piece_length, pieces.bend
+    rows = np.zeros((len(length), 5, 5))
+    rows[:, 0, 0], rows[:, 1, 1], rows[:, 4, 4] = 1.0 / length, -1.0, 1.0
+    ends = np.concatenate([pieces.stiffness, pieces.fixed[:, :, None]], axis=2)
+    rows[:, 2] = ends[:, 1] * (length / bend)[:, None]
+    rows[:, 3] = ends[:, 0] * (length**2 / bend)[:, None]
+    return rows
+
+
+def softening(division: Division, pieces: Pieces, nodes: Floats, more: Floats) -> Floats:
+    """(p, 4) change of the end forces V1, M1, V2, M2 of every piece, its ends where they are, as its axial force grows.
+
+    more: (s, c) coefficients in powers of xi of what the axial force grows by on every stretch. The virtual work of the
+    axial force on the slope gives the integral of more * v' * v_i', v_i for a unit displacement of the end alone: the
+    change of the curve itself does no work (stationary potential).
+    """
+    d = division
+    y = np.concatenate([nodes[d.left], nodes[d.left + 1], np.ones((len(d.left), 1))], axis=1)
+    own = pieces.lead @ start_rows(d, pieces)[d.piece]
+    powers = GAUSS_POINTS[:, None] ** np.arange(TERMS)
+    by_start = np.einsum("gk,skc->sgc", powers, pieces.series[:, :, 3])
+    slopes = by_start[:, :, :4] @ own
+    slopes[:, :, 4] += by_start[:, :, 4]
+    whole = np.einsum("sgc,sc->sg", slopes, y[d.piece])
+    grown = more @ powers[:, : more.shape[1]].T
+    rows = np.einsum("sg,sgi->si", whole * grown * GAUSS_WEIGHTS * d.length[:, None], slopes[:, :, :4])
+    out = np.zeros((len(d.left), 4))
+    np.add.at(out, d.piece, rows)
+    return out
+
+
 def _joined(division: Division, through: Floats, bend: Floats) -> tuple[Floats, Floats]:
     """Start values of every stretch and end values of every piece from the piece's start values, (s, 4, 5), (p, 4, 5).
 

@@ -24,14 +24,6 @@ from crosscheck.opinions.slope_deflection.members import FixedEnds, coefficients
 from crosscheck.opinions.slope_deflection.spans import LoadRuns
 from crosscheck.opinions.slope_deflection.system import PENALTY, gathered, support_axes
 
-SETTLED = 1e-12
-"""Largest change of an axial force, as a share of the largest, at which the iteration ends."""
-MOST_ROUNDS = 60
-PATIENCE = 15
-"""Rounds after which axial forces that still change by a hundredth are given up."""
-MIXED = 5
-"""States before the last that are mixed into the next."""
-LEAST_STEP = 1 / 64
 EXACT = 1e-11
 """Relative width to which a critical load factor is found unless a rougher one will do."""
 SOFTER = 10.0
@@ -84,59 +76,17 @@ class CaseInSecondOrder:
 
     def first_order(self) -> Floats:
         """(m,) axial forces at the `from` joints on the undisplaced frame, along loads included."""
-        return self.pulls(self._undisplaced().solve(None).axial)
+        return self.pulls(self.undisplaced().solve().axial)
 
-    def _undisplaced(self) -> Equations:
+    def undisplaced(self) -> Equations:
         """The equations without any effect of axial forces, those of along loads included."""
         return self.equations(np.zeros(len(self.frame.members))).scaled(0.0)
 
-    # --- equilibrium
+    def share(self, part: float) -> CaseInSecondOrder:
+        """The same case under a part of its loads, imposed movements and temperatures."""
+        return CaseInSecondOrder(self.frame, _share(self.table, part))
 
-    def solve(self) -> State:
-        """Iterate the axial forces. Raises PastCritical where the case is past its critical load or finds no balance."""
-        state = self._undisplaced().solve(None)
-        factor = self.critical_factor(self.pulls(state.axial))
-        if factor <= 1.0:
-            raise PastCritical(f"past its critical load: the critical load factor is {factor:.4g}")
-        return self._settled(state.axial) or self._by_steps(state.axial)
-
-    def _settled(self, axial: Floats) -> State | None:
-        """The state whose axial forces, put into its own equations, come out again; None where none is found or it is not
-        stable. Successive states are mixed (D. G. Anderson, J. ACM 12 (1965), 547-560)."""
-        tried: list[Floats] = []
-        came: list[Floats] = []
-        for turn in range(MOST_ROUNDS):
-            equations = self.equations(self.pulls(axial))
-            try:
-                state = equations.solve(None)
-            except RuntimeError:  # exactly singular on the way
-                return None
-            change = np.abs(state.axial - axial).max(initial=0.0)
-            size = max(np.abs(state.axial).max(initial=0.0), 1e-300)
-            if not np.isfinite(change) or (turn >= PATIENCE and change > 0.01 * size):
-                return None
-            if change <= SETTLED * size:
-                return None if equations.negative_pivots else state
-            tried, came = [*tried[-MIXED:], axial], [*came[-MIXED:], state.axial]
-            axial = _mixed(tried, came)
-        return None
-
-    def _by_steps(self, first: Floats) -> State:
-        """Bring the loads on by steps where all at once do not settle. Raises PastCritical where no balance is found."""
-        reached, step = 0.0, 0.25
-        axial = first
-        while True:
-            share = min(1.0, reached + step)
-            part = self if share == 1.0 else CaseInSecondOrder(self.frame, _share(self.table, share))
-            state = part._settled(axial * (share / (reached or 1.0)))
-            if state is not None and share == 1.0:
-                return state
-            if state is not None:
-                reached, step, axial = share, step * 1.5, state.axial
-                continue
-            step /= 2
-            if step < LEAST_STEP:
-                raise PastCritical(f"past its critical load: no stable balance beyond {reached:.2g} of the load")
+    # --- critical load
 
     def critical_factor(self, pulls: Floats, close: float = EXACT, beyond: float = BEYOND) -> float:
         """Smallest factor on the first-order axial forces at which the frame, or a member in it, buckles; inf for none.
@@ -144,7 +94,7 @@ class CaseInSecondOrder:
         `pulls` are the axial forces at the `from` joints; along loads scale with them. close: relative width to which it
         is found. beyond: the largest factor looked for; inf above it.
         """
-        if not self._compressed(pulls) or beyond < BEYOND and not self._buckled(beyond, pulls):
+        if not self._compressed(pulls) or beyond < BEYOND and not self.buckled(beyond, pulls):
             return float("inf")
         stiff = self._least_factor(pulls, close, beyond)
         if close > EXACT or not self.rigid.any():
@@ -158,13 +108,13 @@ class CaseInSecondOrder:
     def _least_factor(self, pulls: Floats, close: float, beyond: float) -> float:
         """The same for the stiffness that the members have here."""
         low, high = 0.0, 1.0
-        while not self._buckled(high, pulls):
+        while not self.buckled(high, pulls):
             low, high = high, high * 2.0
             if high > beyond:
                 return float("inf")
         while high - low > close * high:
             middle = (low + high) / 2
-            low, high = (low, middle) if self._buckled(middle, pulls) else (middle, high)
+            low, high = (low, middle) if self.buckled(middle, pulls) else (middle, high)
         return (low + high) / 2
 
     def _compressed(self, pulls: Floats) -> bool:
@@ -175,7 +125,8 @@ class CaseInSecondOrder:
                 for share in (0.0, 0.25, 0.5, 0.75, 1.0)]  # fmt: skip
         return bool(np.min(ends) < -1e-12 * largest)
 
-    def _buckled(self, factor: float, pulls: Floats) -> bool:
+    def buckled(self, factor: float, pulls: Floats) -> bool:
+        """Whether the frame or a member in it buckles below `factor` times these axial forces at the `from` joints."""
         return self.equations(pulls).scaled(factor).negative_pivots > 0
 
     # --- results
@@ -263,9 +214,13 @@ class Equations:
         own = np.zeros(self.nodes.shape[1])
         supports = self.frame.support_table.stiffness.ravel()
         own[: len(supports)] = np.where(np.isinf(supports), 0.0, supports)
-        zone = zone_pulls(self.frame, self.runs, self._factor * self._pulls)
-        np.add.at(own, 3 * self.frame.member_table.ends + 2, zone)
+        np.add.at(own, 3 * self.frame.member_table.ends + 2, self.zone_pulls)
         return self.nodes.T @ block @ self.nodes + springs.T @ sp.diags(stiffness) @ springs + sp.diags(own)
+
+    @cached_property
+    def zone_pulls(self) -> Floats:
+        """(m, 2) integral of the axial force over each rigid zone."""
+        return zone_pulls(self.frame, self.runs, self._factor * self._pulls)
 
     @cached_property
     def held(self) -> np.ndarray:
@@ -273,7 +228,7 @@ class Equations:
         return np.concatenate([supports, np.zeros(self.nodes.shape[1] - len(supports), dtype=bool)])
 
     @cached_property
-    def _reduced(self) -> tuple[Sparse, Ints]:
+    def reduced(self) -> tuple[Sparse, Ints]:
         matrix = self.bending + self.stretch.T @ sp.diags(self.case.stretch_stiffness) @ self.stretch
         used = np.asarray(abs(matrix).sum(axis=0)).ravel() != 0.0
         free = np.flatnonzero(~self.held & used)
@@ -283,7 +238,7 @@ class Equations:
     def _factorised(self) -> Any:
         from scipy.sparse.linalg import splu
 
-        matrix, _ = self._reduced
+        matrix, _ = self.reduced
         # Symmetric scaling keeps the signs of the pivots and makes translations and rotations alike.
         scale = 1.0 / np.sqrt(np.abs(matrix.diagonal()).clip(1e-300))
         scaled = (sp.diags(scale) @ matrix @ sp.diags(scale)).tocsc()
@@ -293,7 +248,7 @@ class Equations:
     @cached_property
     def negative_pivots(self) -> int:
         """How many critical loads lie below these axial forces (pieces are too short to buckle on their own)."""
-        if len(self._reduced[1]) == 0:
+        if len(self.reduced[1]) == 0:
             return 0
         try:
             factor, _ = self._factorised
@@ -301,26 +256,32 @@ class Equations:
             return 1
         return int(np.sum(factor.U.diagonal() < 0.0))
 
-    def _correct(self, residual: Floats) -> Floats:
-        factor, scale = self._factorised
-        return np.asarray(scale * factor.solve(scale * residual))
+    @property
+    def free(self) -> Ints:
+        """Unknowns that can move and are resisted."""
+        return self.reduced[1]
 
-    def solve(self, before: State | None) -> State:
+    def correct(self, residual: Floats) -> Floats:
+        """(n,) displacements that take up forces (n,) on the unknowns."""
+        step = np.zeros_like(residual)
+        if len(self.free):
+            factor, scale = self._factorised
+            step[self.free] = scale * factor.solve(scale * residual[self.free])
+        return step
+
+    def solve(self) -> State:
         """Displacements and axial forces; axially rigid members keep their lengths by corrected multipliers."""
         case, d = self.case, self.division
-        free = self._reduced[1]
         shift = np.zeros(self.nodes.shape[1])
         settled = np.where(self.held[: case.table.settlement.size], case.table.settlement.ravel(), 0.0)
         shift[: len(settled)] = settled
         outer = self._loads()
-        axial = self._start(shift, before)
+        axial = case.stretch_stiffness * (self.stretch @ shift - case.fixed.stretch)
         stiff, stretch = case.stretch_stiffness, case.fixed.stretch
         last = np.inf
         for _ in range(20):
             residual = outer - self.bending @ shift - self.stretch.T @ axial
-            step = np.zeros_like(shift)
-            if len(free):
-                step[free] = self._correct(residual[free])
+            step = self.correct(residual)
             shift = shift + step
             axial = axial + stiff * (self.stretch @ step)
             size = np.abs(step).max(initial=0.0) / max(np.abs(shift).max(initial=0.0), 1e-300)
@@ -332,14 +293,6 @@ class Equations:
         joints = 3 * len(self.frame.joints)
         nodes = (self.nodes @ shift).reshape(-1, 2)
         return State(d, self.pieces, nodes, axial, shift[:joints], shift[2:joints:3])
-
-    def _start(self, shift: Floats, before: State | None) -> Floats:
-        """Axial forces that go with the held displacements; those of the state before for axially rigid members."""
-        case = self.case
-        elastic = case.stretch_stiffness * (self.stretch @ shift - case.fixed.stretch)
-        if before is None:
-            return np.asarray(elastic)
-        return np.where(case.rigid, before.axial, elastic)
 
     def _loads(self) -> Floats:
         """(n,) generalised forces: joint loads, what zones and along loads bring to the joints, loads on nodes, and the
@@ -358,16 +311,6 @@ class Equations:
         on_nodes = np.stack([d.force, d.couple], axis=1).ravel()
         np.subtract.at(on_nodes, 2 * d.left[:, None] + np.arange(4), self.pieces.fixed)
         return np.asarray(out + self.nodes.T @ on_nodes)
-
-
-def _mixed(tried: list[Floats], came: list[Floats]) -> Floats:
-    """The mixture of what came that would have changed least, by least squares on the changes."""
-    if len(tried) == 1:
-        return came[0]
-    change = np.stack([c - t for t, c in zip(tried, came, strict=True)], axis=1)
-    steps = np.diff(change, axis=1)
-    weight = np.linalg.lstsq(steps, change[:, -1], rcond=1e-12)[0]
-    return np.asarray(came[-1] - np.diff(np.stack(came, axis=1), axis=1) @ weight)
 
 
 def _share(table: LoadTable, share: float) -> LoadTable:
