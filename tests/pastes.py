@@ -431,7 +431,8 @@ class Maker:
                 rows += [[label if layout == "ends" or k == 0 else "", self.joint(j), *keep(v[k])]
                          for k, j in enumerate(joints)]  # fmt: skip
             elif layout == "both":
-                rows.append([label, *keep(self.end_values(case, name)[0]), *keep(self.end_values(case, name)[1])])
+                v = self.end_values(case, name)
+                rows.append([label, *keep(v[0]), *keep(v[1])])
             elif layout == "stations":
                 x, v = self.stations(case, name)
                 rows += [[label, ("at", x[k]), *keep(v[k])] for k in range(len(x))]

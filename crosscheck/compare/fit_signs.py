@@ -124,23 +124,41 @@ def senses(fitted: list[Fitted], signs: Mapping[str, str]) -> Senses:
     """Explains the signs taken by as few turns as can be, and counts what fixes each."""
     stated = frozenset(id(f) for f in fitted if f.batch.said or _stated(f, signs)[1] is not None)
     sure = {id(f): s for f in fitted if (s := _sign(f)) is not None}
-    best = min(
-        product((False, True), repeat=4), key=lambda flags: _cost(fitted, sure, dict(zip(TURNS, flags, strict=True)))
-    )
-    turns = frozenset(t for t, on in zip(TURNS, best, strict=True) if on)
-    out = Senses(turns, stated_ids=stated)
+    turns, cost = _explained(fitted, sure)
+    out = Senses(turns, _unfixed(fitted, sure, turns, stated), stated_ids=stated)
+    for f in fitted:
+        if id(f) in sure and _turned_by(f) and id(f) not in stated | out.unfixed.keys() and _against(f) < FIXED_BY:
+            other = sure | {id(f): -sure[id(f)]}
+            flipped, less = _explained(fitted, other)
+            if less[0] <= cost[0] and id(f) not in _unfixed(fitted, other, flipped, stated):
+                out.unfixed[id(f)] = _too_few(f)
+    return _with_reversed_load(fitted, sure, out)
+
+
+def _explained(fitted: list[Fitted], sure: Mapping[int, int]) -> tuple[frozenset[str], tuple[int, int]]:
+    """The fewest turns that explain the signs, and what they cost."""
+    every = [dict(zip(TURNS, flags, strict=True)) for flags in product((False, True), repeat=4)]
+    cost, _, best = min((_cost(fitted, sure, flags), k, flags) for k, flags in enumerate(every))
+    return frozenset(t for t, on in best.items() if on), cost
+
+
+def _unfixed(
+    fitted: list[Fitted], sure: Mapping[int, int], turns: frozenset[str], stated: frozenset[int]
+) -> dict[int, str]:
+    """Why the sign of a batch is not fixed, by its id: the turn that explains it, or its own sign, has too few values."""
+    out: dict[int, str] = {}
     odd = [f for f in fitted if id(f) in sure and sure[id(f)] != _predicted(f, turns)]
     for turn in sorted(turns):
         touched = [f for f in fitted if id(f) in sure and f not in odd and turn in _turned_by(f)]
         if sum(_against(f) for f in touched) < FIXED_BY and not any(id(f) in stated for f in touched):
             for f in touched:
-                out.unfixed[id(f)] = f"too few values fix that {TURN_WORDS[turn]}; state it with signs in a reading file"
-    for f in odd:
-        if _against(f) < FIXED_BY and id(f) not in stated:
-            out.unfixed[id(f)] = (
-                f"{f.batch.quantity} fits with its sign reversed, but too few values fix that; state it in a reading file"
-            )
-    return _with_reversed_load(fitted, sure, out)
+                out[id(f)] = f"too few values fix that {TURN_WORDS[turn]}; state it with signs in a reading file"
+    return out | {id(f): _too_few(f) for f in odd if _against(f) < FIXED_BY and id(f) not in stated}
+
+
+def _too_few(f: Fitted) -> str:
+    what = "reaction moment" if (f.batch.kind, f.batch.quantity) == ("reaction", "moment") else f.batch.quantity
+    return f"too few values fix the sign of {what} beside the other signs of the claim; state it in a reading file"
 
 
 def _turned_by(f: Fitted) -> tuple[str, ...]:
