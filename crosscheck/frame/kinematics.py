@@ -18,7 +18,7 @@ import numpy as np
 import scipy.sparse as sp
 
 from crosscheck.answer import Undetermined
-from crosscheck.frame.loads import LoadTable, load_table
+from crosscheck.frame.loads import LoadTable, direction_cosines, load_table
 from crosscheck.frame.model import HELD, Bools, Floats, Frame, Ints
 from crosscheck.problems import MechanismFound, Problem, UnusableInput
 
@@ -60,8 +60,8 @@ def study(frame: Frame) -> Study:
         raise MechanismFound(Problem(frame.file, None, "", motion.says, ADVICE) for motion in found)
     turning, loose = free_rotations(frame), loose_freedoms(frame)
     redundancy = AxialRedundancy(frame)
-    axial = redundancy.members()
-    problems: list[Problem] = []
+    axial, reactions = redundancy.members(), redundancy.reactions()
+    problems = _one_way_unknown(frame, reactions)
     for name in frame.cases:
         table = load_table(frame, name)
         problems += _unresisted(frame, name, table, turning, loose)
@@ -71,7 +71,7 @@ def study(frame: Frame) -> Study:
         raise UnusableInput(problems)
     joints = loose.copy()
     joints[turning, 2] = True
-    return Study(Undetermined(axial=axial, joints=joints, reactions=redundancy.reactions()))
+    return Study(Undetermined(axial=axial, joints=joints, reactions=reactions))
 
 
 # --- bodies and mechanisms -------------------------------------------------------------------------
@@ -109,10 +109,14 @@ def loose_freedoms(frame: Frame) -> Bools:
 def bodies(frame: Frame) -> Ints:
     """(j,): number of the rigid body that each joint belongs to; joints linked by ends that transmit moment are one."""
     t, joints = frame.member_table, len(frame.joints)
-    stiff = connected(frame).all(axis=1)
-    i, j = t.ends[stiff].T
+    i, j = t.ends[_one_body(frame)].T
     graph = sp.coo_matrix((np.ones(len(i)), (i, j)), shape=(joints, joints))
     return np.asarray(sp.csgraph.connected_components(graph, directed=False)[1], dtype=np.int64)
+
+
+def _one_body(frame: Frame) -> Bools:
+    """(m,): members that make one rigid body of their joints: stiff at both ends, and not free to change length."""
+    return np.asarray(connected(frame).all(axis=1) & ~frame.member_table.slack)
 
 
 def mechanisms(frame: Frame) -> list[Motion]:
@@ -158,12 +162,12 @@ def _body_unknowns(frame: Frame, body: Ints) -> Ints:
 def _constraints(frame: Frame, scale: float) -> Sparse:
     """(rows, 3j): what no mechanism may do: stretch a member, turn one against a stiff end, move a support."""
     joints = len(frame.joints)
-    stiff = connected(frame)
-    hinged = np.flatnonzero(~stiff.all(axis=1))
-    one = np.flatnonzero(stiff.sum(axis=1) == 1)
-    stretch = elongations(frame)[hinged]
-    turn = _end_rotations(frame, one, np.argmax(stiff[one], axis=1), scale)
-    return sp.vstack([_rotation_scaled(stretch, scale, joints), turn, _support_rows(frame)]).tocsr()
+    between = ~_one_body(frame)
+    stretch = elongations(frame)[np.flatnonzero(between & ~frame.member_table.slack)]
+    member, end = np.nonzero(connected(frame) & between[:, None])
+    turn = _end_rotations(frame, member, end, scale)
+    lengths = _rotation_scaled(sp.vstack([stretch, tied(frame)]), scale, joints)
+    return sp.vstack([lengths, turn, _support_rows(frame)]).tocsr()
 
 
 def _rotation_scaled(matrix: Sparse, scale: float, joints: int) -> Sparse:
@@ -181,6 +185,22 @@ def elongations(frame: Frame) -> Sparse:
     cols = np.concatenate([i, i + 1, j, j + 1])
     data = np.concatenate([-t.cos, -t.sin, t.cos, t.sin])
     return sp.csr_matrix((data, (rows, cols)), shape=(len(m), 3 * len(frame.joints)))
+
+
+def tied(frame: Frame) -> Sparse:
+    """(t, 3j): how much further than its first joint each further joint of every tie moves along the tie's direction,
+    from joint displacements dx, dy, rotation; zero in every possible movement."""
+    rows: list[tuple[int, int, float]] = []
+    count = 0
+    for tie in frame.ties.values():
+        first, *others = (3 * frame.joint_index[joint] for joint in tie.joints)
+        for axis, part in enumerate(direction_cosines(tie.direction)):
+            for k, other in enumerate(others):
+                rows += [(count + k, first + axis, -part), (count + k, other + axis, part)]
+        count += len(others)
+    row, column, data = np.array(rows, dtype=float).reshape(-1, 3).T
+    shape = (count, 3 * len(frame.joints))
+    return sp.csr_matrix((data, (row.astype(np.int64), column.astype(np.int64))), shape=shape)
 
 
 def _end_rotations(frame: Frame, members: Ints, end: Ints, scale: float) -> Sparse:
@@ -309,7 +329,8 @@ def _listed(names: list[str], most: int = 6) -> str:
 
 
 class AxialRedundancy:
-    """The self-stress of the axially rigid members: axial forces that load no joint (left null space of elongations).
+    """The self-stress of the axially rigid members and the ties: forces in them that load no joint (left null space of
+    what they forbid). Rows are those of the rigid members, and then of the ties.
 
     Small frames use a dense decomposition; large ones project random vectors with a sparse factor. Either way it
     depends on geometry and supports alone, never on a load case.
@@ -317,14 +338,16 @@ class AxialRedundancy:
 
     def __init__(self, frame: Frame) -> None:
         self.frame = frame
-        rigid = frame.analysis.axial == "rigid"
-        self.rigid = np.full(len(frame.members), rigid)
-        if rigid:
+        self.rigid = frame.member_table.rigid
+        self.rows = np.flatnonzero(self.rigid)
+        self.any = bool(self.rigid.any() or frame.ties)
+        if self.any:
             self._prepare()
 
     def _prepare(self) -> None:
         frame = self.frame
-        self.turned = elongations(frame) @ support_axes(frame).T
+        kept = sp.vstack([elongations(frame)[self.rows], tied(frame)])
+        self.turned = (kept @ support_axes(frame).T).tocsr()
         self.held = frame.support_table.stiffness.ravel() == HELD
         self.free = self.turned[:, np.flatnonzero(~self.held)].tocsc()
         self._null: Floats | None = None
@@ -339,13 +362,13 @@ class AxialRedundancy:
             self._factor = splu((normal + sp.identity(normal.shape[0], format="csc") * self._shift).tocsc())
 
     def _dense_null(self) -> Floats:
-        """(m, k) orthonormal self-stresses."""
+        """(rows, k) orthonormal self-stresses."""
         left, values, _ = np.linalg.svd(self.free.toarray(), full_matrices=True)
         rank = int(np.sum(values > SINGULAR * max(float(values.max(initial=0.0)), 1e-300)))
         return np.asarray(left[:, rank:])
 
     def project(self, lengths: Floats) -> Floats:
-        """The part of member elongations (m, k) that no displacement of the joints can produce."""
+        """The part of the rows' elongations (rows, k) that no displacement of the joints can produce."""
         if self._null is not None:
             return np.asarray(self._null @ (self._null.T @ lengths))
         # Each pass leaves the unreachable part alone and shrinks the reachable one by shift / (value**2 + shift).
@@ -355,10 +378,10 @@ class AxialRedundancy:
         return np.asarray(rest)
 
     def _samples(self) -> Floats:
-        """(m, k) self-stresses that together load every member that any self-stress loads."""
+        """(rows, k) self-stresses that together load every row that any self-stress loads."""
         if self._null is not None:
             return self._null
-        return self.project(np.random.default_rng(1).standard_normal((len(self.rigid), 3)))
+        return self.project(np.random.default_rng(1).standard_normal((self.free.shape[0], 3)))
 
     def sway_samples(self) -> Floats:
         """(3j, k) joint displacements in global axes, of size one, that change no rigid member's length and move every
@@ -378,14 +401,16 @@ class AxialRedundancy:
 
     def members(self) -> Bools:
         """(m,): True where the axial force is undetermined."""
-        if not self.rigid.any():
-            return self.rigid
-        return np.asarray(np.abs(self._samples()).max(axis=1, initial=0.0) > 1e-7)
+        found = np.zeros(len(self.rigid), dtype=bool)
+        if self.any:
+            loaded = np.abs(self._samples()).max(axis=1, initial=0.0) > 1e-7
+            found[self.rows] = loaded[: len(self.rows)]
+        return found
 
     def reactions(self) -> Bools:
         """(j, 3): True where a reaction (global axes) is undetermined."""
         joints = len(self.frame.joints)
-        if not self.rigid.any():
+        if not self.any:
             return np.zeros((joints, 3), dtype=bool)
         along = self.turned.T @ self._samples()
         along[~self.held] = 0.0
@@ -393,13 +418,15 @@ class AxialRedundancy:
         return np.asarray((np.abs(globally).max(axis=1, initial=0.0) > 1e-7).reshape(joints, 3))
 
     def unfollowed(self, name: str, table: LoadTable) -> list[Problem]:
-        """Problems of a case whose temperatures, misfits or settlements the axially rigid frame cannot follow."""
-        if not self.rigid.any():
+        """Problems of a case whose temperatures, misfits or settlements the axially rigid members or ties cannot
+        follow."""
+        if not self.any:
             return []
         t = self.frame.member_table
         heat = np.where(table.mean != 0.0, table.mean * t.alpha * t.clear, 0.0)
         moved = np.where(self.held, table.settlement.ravel(), 0.0)
-        imposed = heat + table.misfit - self.turned @ moved
+        imposed = -(self.turned @ moved)
+        imposed[: len(self.rows)] += (heat + table.misfit)[self.rows]
         size = float(np.abs(imposed).max(initial=0.0))
         if size == 0.0:
             return []
@@ -407,13 +434,19 @@ class AxialRedundancy:
         stuck = np.flatnonzero(rest > FOLLOWS * size)
         if len(stuck) == 0:
             return []
-        names = list(self.frame.members)
-        says = (
-            f"an axially rigid frame cannot follow the temperature, misfit or settlement of case {name}: "
-            f"it would change the length of {_listed([names[k] for k in stuck])}"
-        )
+        members, rigid = list(self.frame.members), len(self.rows)
+        names = [members[self.rows[k]] for k in stuck[stuck < rigid]]
         line = self.frame.lines.get(f"loads.{name}")
-        return [Problem(self.frame.file, line, f"loads.{name}", says, 'use axial = "elastic"')]
+        place = self.frame.file, line, f"loads.{name}"
+        if not names:
+            says = f"the ties cannot follow the settlement of case {name}: it would part joints that move together"
+            return [Problem(*place, says, "leave the tie or the settlement out")]
+        whose = "axially rigid members" if self.frame.analysis.axial == "elastic" else "an axially rigid frame"
+        says = (
+            f"{whose} cannot follow the temperature, misfit or settlement of case {name}: "
+            f"it would change the length of {_listed(names)}"
+        )
+        return [Problem(*place, says, 'use axial = "elastic"')]
 
 
 # --- axial forces that second order needs ------------------------------------------------------------
@@ -457,6 +490,21 @@ def _chord_turns(frame: Frame, moves: Floats) -> Floats:
     by_joint = moves.reshape(len(frame.joints), 3, -1)
     apart = by_joint[t.ends[:, 1]] - by_joint[t.ends[:, 0]]
     return np.asarray(t.sin[:, None] * apart[:, 0] - t.cos[:, None] * apart[:, 1])
+
+
+# --- one-way supports whose reaction nobody knows ----------------------------------------------------
+
+
+def _one_way_unknown(frame: Frame, reactions: Bools) -> list[Problem]:
+    """A problem for each one-way support whose reaction is undetermined: nobody can say whether it works."""
+    problems = []
+    for support in frame.supports.values():
+        one_way = support.x_only or support.y_only
+        if one_way and reactions[frame.joint_index[support.joint], :2].any():
+            says = f"the axially rigid frame leaves the reaction of the one-way support at {support.joint} undetermined"
+            place = f"supports.{support.joint}"
+            problems.append(Problem(frame.file, frame.lines.get(place), place, says, 'use axial = "elastic"'))
+    return problems
 
 
 # --- loads that nothing resists --------------------------------------------------------------------
