@@ -21,7 +21,7 @@ from crosscheck.compare.claim import CaseClaim, ClaimComparison
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.differences import worst
 from crosscheck.compare.opinions import Comparison
-from crosscheck.compare.tolerance import CLAIM
+from crosscheck.compare.tolerance import CLAIM, LEAST_SHARE
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.model import (
     FREE,
@@ -30,6 +30,8 @@ from crosscheck.frame.model import (
     JointCouple,
     JointForce,
     Load,
+    LoadCase,
+    Member,
     Misfit,
     PointCouple,
     PointForce,
@@ -47,6 +49,12 @@ from tests.random_frames import random_frame
 END_NAMES, JOINT_NAMES, PULL_NAMES = ("axial", "shear", "moment"), ("dx", "dy", "rotation"), ("fx", "fy", "moment")
 EFFECT = 0.03
 """Least change of an end moment, as a share of the peak, for a mistake to count."""
+FAINT = LEAST_SHARE * CLAIM.floor
+"""Share of the case's scale of moments (force times the longest member among them: DESIGN.md section 6) below which no two
+moments are ever called different. Where all moments of a case are that faint (a truss whose joints happen to be rigid, or
+rounding noise about nil), 3% of their peak is below it: such mistakes are counted by `faint`, and not among the corpus."""
+NEAR_CRITICAL = 5.0
+"""Critical load factor that the loads of some frames are brought to, so that effects of second order are seen."""
 
 
 @dataclass(frozen=True)
@@ -64,7 +72,7 @@ class Mistake:
     frame: Frame | None = None
     paste: Callable[[list[ClaimedValue]], list[ClaimedValue]] | None = None
     name: str | None = None
-    adjust: Callable[[Frame, Answer, str], CaseAnswer] | None = None
+    adjust: Callable[[Frame, Answer, str], CaseAnswer | None] | None = None
 
 
 # --- printing --------------------------------------------------------------------------------------
@@ -442,6 +450,11 @@ def _idealisation(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
         bare = {n: replace(m, rigid_from=0.0, rigid_to=0.0) for n, m in frame.members.items()}
         yield Mistake("idealisation", "end zones", (), replace(frame, members=bare))
         yield Mistake("idealisation", "face values", (), frame, adjust=_at_faces)
+    else:
+        yield Mistake("idealisation", "extra end zones", (), replace(frame, members=_with_zones(frame, r)))
+    new = replace(a, order=3 - a.order)
+    yield Mistake("idealisation", "order", (), replace(frame, analysis=new))
+    yield Mistake("idealisation", "sway alone", (), frame, adjust=_sway_alone)
     supported = np.array([n in frame.supports for n in frame.joints])
     for j in np.flatnonzero(supported):
         on = (t.ends == j).any(axis=1)
@@ -451,6 +464,58 @@ def _idealisation(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
             yield Mistake(
                 "idealisation", "redistributed", where, frame, adjust=lambda f, a, n, j=j, s=share: _less(f, a, n, j, s)
             )
+
+
+def _with_zones(frame: Frame, r: Random) -> dict[str, Member]:
+    """One length of rigid zone at every stiff end that meets another member at an angle."""
+    t = frame.member_table
+    by = r.uniform(0.04, 0.12) * float(t.length.min())
+    out = {}
+    for m, member in enumerate(frame.members.values()):
+        skew = np.abs(t.cos[m] * t.sin - t.sin[m] * t.cos) > 0.3
+        meets = [bool((skew & (t.ends == j).any(axis=1)).any()) for j in t.ends[m]]
+        near, far = (by if met and stiff else 0.0 for met, stiff in zip(meets, t.turn[m] != FREE, strict=True))
+        out[member.name] = replace(member, rigid_from=near, rigid_to=far)
+    return out
+
+
+def _sway_alone(frame: Frame, answer: Answer, name: str) -> CaseAnswer | None:
+    """Second-order effect of sway alone, by first-order solutions with pairs of forces in place of it. None where they
+    do not settle, or nothing sways."""
+    if frame.analysis.order == 2:
+        frame = replace(frame, analysis=replace(frame.analysis, order=1))
+        answer = solved(frame, (name,)) or answer
+    t, c = frame.member_table, answer.cases[name]
+    pull = np.zeros(len(t.length))
+    for _ in range(60):
+        apart = c.joints[t.ends[:, 1]] - c.joints[t.ends[:, 0]]
+        new = c.ends[:, :, 0].mean(axis=1) * (t.cos * apart[:, 1] - t.sin * apart[:, 0]) / t.length
+        if not np.isfinite(new).all():
+            return None
+        if np.abs(new - pull).max() <= 1e-8 * np.abs(new).max():
+            ends = c.ends.copy()
+            ends[:, 0, 1] -= pull
+            ends[:, 1, 1] += pull
+            return replace(c, ends=ends)
+        pull = new
+        again = solved(_pushed(frame, name, pull), (name,))
+        if again is None:
+            return None
+        c = again.cases[name]
+    return None
+
+
+def _pushed(frame: Frame, name: str, pull: np.ndarray) -> Frame:
+    """The frame with forces across each member's two ends added to a case, or to a combination by a case of its own."""
+    forces: list[Load] = []
+    for m, (member, p) in enumerate(zip(frame.members.values(), pull.tolist(), strict=True)):
+        across = math.degrees(math.atan2(frame.member_table.sin[m], frame.member_table.cos[m])) + 90.0
+        forces += [JointForce(99, member.joint_from, p, across), JointForce(99, member.joint_to, -p, across)]
+    if name in frame.cases:
+        return _with(frame, name, [*frame.cases[name].loads, *forces])
+    combination = frame.combinations[name]
+    frame = _put(frame, "cases", "pulls", LoadCase("pulls", tuple(forces)))
+    return _put(frame, "combinations", name, replace(combination, factors={**combination.factors, "pulls": 1.0}))
 
 
 def _at_faces(frame: Frame, answer: Answer, name: str) -> CaseAnswer:
@@ -487,7 +552,8 @@ def _pastes(frame: Frame, case: str, r: Random) -> Iterator[Mistake]:
     seed = r.random()
     members = list(frame.members)
     for kind, sort, do in (
-        ("units", "units of a column", _unit), ("transcription", "rows swapped", _swap),
+        ("units", "units of a column", _unit), ("units", "units everywhere", _unit_everywhere),
+        ("transcription", "rows swapped", _swap),
         ("transcription", "digits transposed", _transpose),
         ("transcription", "decimal slip", _slip), ("signs", "sign of one value", _one_sign),
     ):  # fmt: skip
@@ -510,6 +576,15 @@ def _unit(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
         [("moment", 1e3), ("moment", 1e-3), ("shear", 1e3), ("axial", 1e-3), ("rotation", 180 / math.pi)]
     )
     return [replace(v, value=v.value * f, half_digit=v.half_digit * f) if v.quantity == quantity else v for v in values]
+
+
+def _unit_everywhere(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
+    """One unit of force and one of length taken for others throughout."""
+    force, length = r.choice([(1e3, 1e3), (1e-3, 1e-3), (1e3, 1.0), (4.4482216152605, 0.3048), (1 / 4.4482216152605, 12.0)])
+    factor = {"moment": force * length, "dx": length, "dy": length, "rotation": 1.0}
+    return [
+        replace(v, value=v.value * f, half_digit=v.half_digit * f) for v in values for f in [factor.get(v.quantity, force)]
+    ]
 
 
 def _swap(values: list[ClaimedValue], r: Random) -> list[ClaimedValue]:
@@ -588,15 +663,10 @@ def drawn(seed: int, per: int, digits: int | None = 4, only: str = "all", choose
     digits: None for full precision. only: as claim_values.
     """
     r = Random(seed)
-    try:
-        frame = random_frame(seed)
-    except (ArithmeticError, RuntimeWarning, AssertionError):
+    found = corpus_frame(seed, r)
+    if found is None:
         return
-    case = r.choice(frame.names)
-    try:
-        opinions = opinions_on(frame, (case,))
-    except UnusableInput:
-        return
+    frame, case, opinions = found
     base = opinions.answers["slope-deflection"].cases[case]
     peak = float(np.abs(np.nan_to_num(base.ends[:, :, 2])).max(initial=0.0))
     order = sorted(enumerate(mistakes(frame, case, r)), key=lambda km: km[0])
@@ -612,9 +682,38 @@ def drawn(seed: int, per: int, digits: int | None = 4, only: str = "all", choose
         if choose is not None and not choose(mistake):
             continue
         values = claimed(frame, mistake, case, digits, seed % 2 == 0, only)
-        if values and peak and _effect(frame, base, values) >= EFFECT * peak:
+        least = max(EFFECT * peak, FAINT * opinions.judgements[case].scales.moments)
+        if values and peak and _effect(frame, base, values) >= least:
             taken += 1
             yield frame, case, mistake, opinions, values
+
+
+def corpus_frame(seed: int, r: Random) -> tuple[Frame, str, check.Opinions] | None:
+    """A random frame, one of its cases and slope-deflection's opinion on it; None where a seed gives none.
+
+    Of every ten, the loads of two are brought near the critical, and one of these is of second order.
+    """
+    try:
+        frame = random_frame(seed)
+    except (ArithmeticError, RuntimeWarning, AssertionError):
+        return None
+    case = r.choice(frame.names)
+    try:
+        if seed % 10 in (2, 7):
+            frame = _near_critical(frame, case, 2 if seed % 10 == 7 else 1)
+        return frame, case, opinions_on(frame, (case,))
+    except (UnusableInput, AssertionError):
+        return None
+
+
+def _near_critical(frame: Frame, case: str, order: int) -> Frame:
+    """The frame with all loads scaled so that the case's critical load factor is NEAR_CRITICAL; as it is where none is."""
+    factor = slope_deflection.critical_factors(frame, (case,), 1e6).get(case, math.inf)
+    if not math.isfinite(factor):
+        return frame
+    f = factor / NEAR_CRITICAL
+    cases = {n: replace(c, loads=tuple(times(q, f) for q in c.loads)) for n, c in frame.cases.items()}
+    return replace(frame, cases=cases, analysis=replace(frame.analysis, order=order))
 
 
 def claimed(frame: Frame, mistake: Mistake, case: str, digits: int | None, fixed: bool, only: str) -> list[ClaimedValue]:
@@ -625,6 +724,8 @@ def claimed(frame: Frame, mistake: Mistake, case: str, digits: int | None, fixed
     if answer is None or name not in answer.cases:
         return []
     result = answer.cases[name] if mistake.adjust is None else mistake.adjust(other, answer, name)
+    if result is None:
+        return []
     values = case_values(other, result, case, 12 if digits is None else digits, fixed and digits is not None, only)
     return values if mistake.paste is None else mistake.paste(values)
 

@@ -59,6 +59,8 @@ def _results(sweep: Sweep, w: Weighed, name: str) -> CaseAnswer | None:
 
 def _solved(sweep: Sweep, w: Weighed, name: str) -> CaseAnswer | None:
     change = w.option.change
+    if w.option.answer is not None:
+        return w.option.answer.cases[name]
     if change.frame is None:
         return sweep.answer.cases[name]
     source = sweep.answer_to(change.frame(sweep.frame), (name,), change.loads_only)

@@ -31,6 +31,8 @@ LENGTH = {
 ANGLE = {"rad taken for degrees": 180 / math.pi, "rad taken for mrad": 1e3}
 MOMENT = {"kN m taken for N mm": 1e6, "kip ft taken for kN m": 1.3558179483314, "kip ft taken for lbf in": 12e3}
 """What a value must be multiplied by where one unit was taken for another; the other way round, divided by."""
+POWERS = {"moment": (1, 1), "dx": (0, 1), "dy": (0, 1), "across": (0, 1), "rotation": (0, 0)}
+"""Powers of force and of length in a quantity's unit; (1, 0) in all others."""
 UNIT, SIGN, MEMBER_SIGN, ONE_SIGN, SWAP, DIGITS, SLIP, LONE, LONE_ROW = 0.3, 0.3, 0.4, 0.7, 0.6, 0.5, 0.4, 2.2, 2.6
 FEW_ROWS, FEW_VALUES = 14, 4
 
@@ -97,6 +99,38 @@ def _units(seen: Observation) -> Iterator[Option]:
     moves = np.array([k for k, v in enumerate(seen.values) if v.quantity in ("dx", "dy", "across")])
     if len(moves):
         yield from _unit(seen, moves, "all displacements", LENGTH)
+    yield from _systems(seen)
+
+
+def _systems(seen: Observation) -> Iterator[Option]:
+    """One unit of length, or one of force and one of length, taken for others throughout."""
+    power = np.array([POWERS.get(v.quantity, (1, 0)) for v in seen.values])
+    force, length = (_log_ratio(seen, power, column) for column in (0, 1))
+    if length is None:
+        return
+    forces = {1.0: "", **_near(np.exp(force), FORCE)} if force is not None else {1.0: ""}
+    for f, force_words in forces.items():
+        for g, length_words in _near(np.exp(length), LENGTH).items():
+            factor = f ** power[:, 0] * g ** power[:, 1]
+            words = " and ".join(w for w in (force_words, length_words) if w)
+            every = np.arange(len(seen.value))
+            yield _replaced(seen, every, seen.value * factor, "units", (), f"all values stand in other units: {words}",
+                            UNIT, seen.half * factor)  # fmt: skip
+
+
+def _log_ratio(seen: Observation, power: Ints, column: int) -> float | None:
+    """Logarithm of what one unit of force (column 0) or length (1) must be multiplied by, from the larger values; None
+    where the claim does not tell."""
+    size = np.abs(seen.said)
+    logs: dict[tuple[int, int], float] = {}
+    for f, g in ((1, 0), (1, 1), (0, 1)):
+        rows = np.flatnonzero((power == (f, g)).all(axis=1))
+        rows = rows[(size[rows] > 0.01 * size[rows].max(initial=0.0)) & (seen.value[rows] != 0)]
+        if len(rows) >= 2:
+            logs[f, g] = float(np.median(np.log(np.abs(seen.said[rows] / seen.value[rows]))))
+    if column == 0:
+        return logs.get((1, 0), logs[1, 1] - logs[0, 1] if (1, 1) in logs and (0, 1) in logs else None)
+    return logs.get((0, 1), logs[1, 1] - logs[1, 0] if (1, 1) in logs and (1, 0) in logs else None)
 
 
 def _unit(seen: Observation, rows: Ints, what: str, table: dict[str, float] | None = None) -> Iterator[Option]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass, field
 
+from crosscheck.answer import Answer
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.suspects.changes import Change
 
@@ -34,6 +35,7 @@ class Option:
     cost: how unusual the mistake is: 0 for the commonest, 1 for one e times rarer. delta: (n,) what it adds to the
     model's values at the linear places, where foretold; None where the frame must be solved again. claimed, half: (n,)
     the claim's values and half digits where the change is to the claim. fitted: numbers chosen to fit.
+    answer: the results so explained, where no frame has them.
     """
 
     kind: str
@@ -45,6 +47,7 @@ class Option:
     claimed: Floats | None = None
     half: Floats | None = None
     fitted: int = 0
+    answer: Answer | None = None
 
 
 @dataclass(frozen=True, slots=True)

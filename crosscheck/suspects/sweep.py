@@ -21,7 +21,7 @@ from crosscheck.opinions import slope_deflection
 from crosscheck.opinions.slope_deflection.prepared import Prepared, prepared
 from crosscheck.problems import UnusableInput
 from crosscheck.suspects.adjusted import adjusted
-from crosscheck.suspects.changes import Change, of_case, usable
+from crosscheck.suspects.changes import Change, of_case, usable, with_values
 from crosscheck.suspects.geometry import geometry_families, geometry_options
 from crosscheck.suspects.groups import group_fits, group_options, large_families
 from crosscheck.suspects.loads import case_options, load_options
@@ -32,6 +32,7 @@ from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.supports import support_fits, support_options
 from crosscheck.suspects.suspect import Family, Option
 from crosscheck.suspects.whole import other_order, temperature_options, whole_options
+from crosscheck.suspects.zones import zone_families
 
 UNFIT, STEEPNESS = 3.0, 2.0
 """What not fitting to the printed precision costs, and how steeply the misfit counts after that."""
@@ -44,6 +45,12 @@ PROMISE = 0.5
 RIVALS = 4.0
 """Places are searched where the least misfit they can leave is within this factor of rounding, or among the best."""
 PLACES = 6
+SWAY = 0.4
+SWAY_ALONE = {
+    1: "the second-order effect of sway was counted, without the members' own",
+    2: "the second-order effect of sway alone was counted, without the members' own",
+}
+"""By the frame's own order."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -170,7 +177,7 @@ class Sweep:
         quick += adjusted(self)
         quick.sort(key=lambda w: w.score)
         if not (quick and quick[0].fits):
-            quick += self._solved(other_order(self.frame))
+            quick += self._solved(other_order(self.frame)) + self._sway_alone()
             quick.sort(key=lambda w: w.score)
         if not self.slow and not (quick and quick[0].fits):
             quick += self._solved(self._near_geometry())
@@ -225,6 +232,24 @@ class Sweep:
                     out.append(self.weigh(option, said))
         return out
 
+    def _sway_alone(self) -> list[Weighed]:
+        """Second-order effect of sway without the members' own: no idealisation of the frame file, so that the claim is
+        what changes."""
+        seen = self.seen
+        if study(self.frame).undetermined.axial.any():
+            return []
+        with np.errstate(all="ignore"):
+            answer = self.base.sway_answer(seen.names)
+        said = None if answer is None else seen.read(answer)
+        if answer is None or said is None or not np.isfinite(said).all():
+            return []
+        self.solved += 1
+        effect = said - seen.said
+        new = {v: float(a) for v, a in zip(seen.values, seen.value - effect, strict=True)}
+        change = Change(claim=partial(with_values, new=new))
+        says = SWAY_ALONE[self.frame.analysis.order]
+        return [self.weigh(Option("idealisation", (), says, change, SWAY, answer=answer), said)]
+
     def _solved(self, options: Iterable[Option]) -> list[Weighed]:
         return [w for o in options if (w := self.solve(o)) is not None]
 
@@ -234,8 +259,8 @@ class Sweep:
                 yield option
 
     def _near_families(self) -> Iterator[Family]:
-        for family in (*geometry_families(self.frame), *heavy_families(self.frame)):
-            if self._promising(family.joints or (), family.members or ()):
+        for family in (*geometry_families(self.frame), *heavy_families(self.frame), *zone_families(self.frame)):
+            if family.members is None or self._promising(family.joints or (), family.members):
                 yield family
 
     def _promising(self, joints: tuple[int, ...], members: tuple[int, ...]) -> bool:

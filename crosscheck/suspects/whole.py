@@ -13,12 +13,12 @@ from crosscheck.suspects.changes import (
     usable,
     with_analysis,
     with_load,
-    with_member,
     with_support,
 )
 from crosscheck.suspects.suspect import Option, named
+from crosscheck.suspects.zones import zone_options
 
-IDEALISED, ZONES, ANGLE, ONE_ZONE = 0.3, 0.4, 0.6, 0.7
+IDEALISED, ANGLE = 0.3, 0.6
 
 
 def whole_options(frame: Frame) -> Iterator[Option]:
@@ -26,7 +26,7 @@ def whole_options(frame: Frame) -> Iterator[Option]:
     yield from _idealisations(frame)
     if frame.analysis.order == 2:
         return
-    yield from _zones(frame)
+    yield from zone_options(frame)
     yield from _angles(frame)
 
 
@@ -61,23 +61,6 @@ def _idealisations(frame: Frame) -> Iterator[Option]:
 def _analysed(frame: Frame, fields: Mapping[str, Any]) -> Frame:
     whole: dict[str, Any] = dict(fields)
     return with_analysis(frame, **whole)
-
-
-def _zones(frame: Frame) -> Iterator[Option]:
-    zoned = [m for m in frame.members.values() if m.rigid_from or m.rigid_to]
-    if not zoned:
-        return
-    where = tuple(named(frame, "member", m.name) for m in zoned) if len(zoned) == 1 else ()
-    yield Option("idealisation", where, "rigid end zones were left out", Change(_no_zones), ZONES)
-    for m in zoned:
-        if len(zoned) > 1:
-            change = Change(partial(with_member, name=m.name, rigid_from=0.0, rigid_to=0.0))
-            label = named(frame, "member", m.name)
-            yield Option("idealisation", (label,), f"the rigid end zones of {label} were left out", change, ONE_ZONE)
-
-
-def _no_zones(frame: Frame) -> Frame:
-    return replace(frame, members={n: replace(m, rigid_from=0.0, rigid_to=0.0) for n, m in frame.members.items()})
 
 
 def _angles(frame: Frame) -> Iterator[Option]:

@@ -45,6 +45,8 @@ SINGULAR_CHANGE = 1e-9
 """A change that leaves less than this share of the stiffness makes a mechanism."""
 FOLLOWS = 1e-6
 """Share of an imposed movement that axially rigid members may fail to follow by rounding alone."""
+SWAYS, SETTLED = 300, 1e-11
+"""Most rounds for the effect of sway, and the share of the largest pull by which the last may differ."""
 STIFFER = 1e9
 """Stiffness factor that stands for a rigid one when load rotations are parted into what bends and what does not."""
 
@@ -85,6 +87,24 @@ class ForceSpans(ClosedFormSpans):
         s = self._stations
         found = self._shear_places(name, s.member[left], s.x[left], s.x[right])
         return np.concatenate([m for m, _ in found]), np.concatenate([x for _, x in found])
+
+
+class SwaySpans(ForceSpans):
+    """Values along members whose chords alone are displaced: moments as of the chord, shear along the undisplaced axis.
+
+    less: by case (m,) what the axial force takes off the shear of a turned chord.
+    """
+
+    def __init__(self, frame: Frame, tables: dict[str, LoadTable], cases: dict[str, CaseAnswer], none: Undetermined,
+                 less: dict[str, Floats]) -> None:  # fmt: skip
+        super().__init__(frame, tables, cases, none)
+        self.less = less
+
+    def along(self, name: str, member: Ints, x: Floats, side: Ints) -> Floats:
+        """(n, 4) as of every opinion's spans."""
+        values = np.array(super().along(name, member, x, side))
+        values[:, 1] -= self.less[name][member]
+        return values
 
 
 class Prepared:
@@ -130,6 +150,61 @@ class Prepared:
         cases = {name: solution.case_answer(k, none) for k, name in enumerate(names)}
         spans = ClosedFormSpans if deflections else ForceSpans
         return Answer("slope-deflection", cases, none, spans(source, dict(zip(names, tables, strict=True)), cases, none))
+
+    def sway_answer(self, names: Sequence[str]) -> Answer | None:
+        """Results with the second-order effect of sway alone: axial forces act on chords that turn, not on members that
+        bend. None where that does not settle: near or past the load at which the frame sways away.
+
+        A chord of length L whose ends have moved apart by d across it needs N d / L more shear. It is put on the joints
+        as loads, found again from the displacements until these stand (E. Rosenblueth 1965; S. E. Wood, D. Beaulieu and
+        P. F. Adams 1976; from memory), and taken off the members' shears in the end.
+        """
+        tables = [load_table(self.frame, name) for name in names]
+        pull = np.zeros((len(self.frame.members), len(names)))
+        reach = 0.0
+        for _ in range(SWAYS):
+            solution = self.system.solve([self._pulled(t, p) for t, p in zip(tables, pull.T, strict=True)])
+            new = self._chord_pulls(solution)
+            reach = max(reach, float(np.abs(new).max(initial=0.0)))
+            still = float(np.abs(new - pull).max(initial=0.0)) <= SETTLED * reach
+            pull = new
+            if still:
+                return self._swayed(names, tables, solution, pull)
+            if not np.isfinite(reach):
+                return None
+        return None
+
+    def _chord_pulls(self, solution: Solution) -> Floats:
+        """(m, cases) mean axial force of the two ends times the turn of the chord, counter-clockwise."""
+        t = self.frame.member_table
+        moved = (self._axes.T @ solution.shift).reshape(-1, 3, solution.shift.shape[1])
+        apart = moved[t.ends[:, 1]] - moved[t.ends[:, 0]]
+        across = -t.sin[:, None] * apart[:, 0] + t.cos[:, None] * apart[:, 1]
+        cases = [solution.case_answer(k, self._all_determined) for k in range(solution.shift.shape[1])]
+        axial = np.stack([c.ends[:, :, 0].mean(axis=1) for c in cases], axis=1)
+        return np.asarray(axial * across / t.length[:, None])
+
+    def _pulled(self, table: LoadTable, pull: Floats) -> LoadTable:
+        """The loads with what turned chords do to the joints; pull: (m,)."""
+        t = self.frame.member_table
+        joint = table.joint.copy()
+        across = np.column_stack([-t.sin, t.cos]) * pull[:, None]
+        np.add.at(joint[:, :2], t.ends[:, 0], across)
+        np.add.at(joint[:, :2], t.ends[:, 1], -across)
+        return replace(table, joint=joint)
+
+    def _swayed(self, names: Sequence[str], tables: list[LoadTable], solution: Solution, pull: Floats) -> Answer:
+        none = self._all_determined
+        chord = {name: solution.case_answer(k, none) for k, name in enumerate(names)}
+        less = {name: pull[:, k] for k, name in enumerate(names)}
+        shear = np.array([-1.0, 1.0])
+        cases = {}
+        for name, c in chord.items():
+            ends = c.ends.copy()
+            ends[:, :, 1] += less[name][:, None] * shear
+            cases[name] = replace(c, ends=ends)
+        spans = SwaySpans(self.frame, dict(zip(names, tables, strict=True)), chord, none, less)
+        return Answer("slope-deflection", cases, none, spans)
 
     @cached_property
     def _all_determined(self) -> Undetermined:
@@ -184,7 +259,7 @@ class Prepared:
         held = np.flatnonzero(system.held)
         shift[held, held] = 1.0
         forces = np.asarray(self.D @ (self.B @ shift))
-        forces, shift = system._settle(forces, shift, outer, np.zeros((len(self.frame.members), size)))
+        forces, shift, _ = system._settle(forces, shift, outer, np.zeros((len(self.frame.members), size)))
         return shift, forces
 
     def effects(self, places: Places) -> Effects:
@@ -206,7 +281,7 @@ class Prepared:
         if not self.system.rigid.any():
             return np.zeros((len(places.kind), m))
         nil, unit = np.zeros((size, m)), np.diag(self.system.rigid.astype(float))
-        forces, shift = self.system._settle(np.zeros((3 * m, m)), nil.copy(), nil, unit)
+        forces, shift, _ = self.system._settle(np.zeros((3 * m, m)), nil.copy(), nil, unit)
         from_forces, from_moves = self._readers(places)
         return np.asarray(from_forces @ forces + from_moves @ shift)
 
