@@ -54,6 +54,13 @@ class Opinions:
     def verdict(self) -> Verdict:
         return opinions_verdict(list(self.judgements.values()))
 
+    @property
+    def warnings(self) -> tuple[str, ...]:
+        """What can be questioned about the frame but used, and whether it lies at the limits of precision."""
+        from crosscheck.review.spread import warnings
+
+        return (*self.frame.warnings, *warnings(self.frame))
+
 
 AUDITED = 1000
 """Most members for which compatibility is judged; statics is judged always."""

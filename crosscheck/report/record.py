@@ -115,7 +115,8 @@ class Section:
 class Record:
     """A whole record. verdict: one word; sentence: what it means; open: why it is not for acceptance, empty where it is.
 
-    links: text of a table's cell to the address of the record that it stands for.
+    links: text of a table's cell to the address of the record that it stands for. gist: what stands right below the
+    verdict, for whoever reads no further.
     """
 
     title: str
@@ -126,6 +127,7 @@ class Record:
     sections: tuple[Section, ...]
     when: str
     links: Mapping[str, str] = field(default_factory=dict)
+    gist: tuple[tuple[str, str], ...] = ()
 
     def link(self, text: str) -> str:
         """Where a cell of a table leads to, "" for nowhere."""
@@ -134,7 +136,7 @@ class Record:
     @cached_property
     def checksum(self) -> str:
         """sha256 of all its words and numbers, the same in every form it is written in."""
-        said = repr((self.title, self.subject, self.verdict, self.sentence, self.open, self.when))
+        said = repr((self.title, self.subject, self.verdict, self.sentence, self.gist, self.open, self.when))
         said += "".join(repr((s.title, [_words(b) for b in s.blocks])) for s in self.sections)
         return hashlib.sha256(said.encode("utf-8", "backslashreplace")).hexdigest()
 
@@ -196,7 +198,7 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
     names = [n for n in result.closed.cases if n in opinions.names]
     numbered = _numbered(d for c in result.cases for d in c.differences)
     sections = [
-        _checked(frame, terminal.claim_facts(result), around),
+        _checked(frame, terminal.claim_facts(result), around, opinions.warnings),
         _drawing(frame, numbered),
         _suspects(result),
         _differences(frame, numbered, "Differences between the claim and the opinions", claim=True),
@@ -208,7 +210,7 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
         *_closing(opinions, around, numbered),
     ]
     sentence = " ".join([terminal.claim_sentence(result), *map(_sentence, terminal.beside(result))])
-    questions = [*result.undecided, *frame.warnings]
+    questions = [*result.undecided, *opinions.warnings]
     return _record(
         "Check record", frame, result.verdict, sentence, _open(result.verdict, around, questions), sections, around
     )
@@ -219,7 +221,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
     frame = result.frame
     numbered = _own_differences(result)
     sections = [
-        _checked(frame, terminal.opinions_facts(result), around),
+        _checked(frame, terminal.opinions_facts(result), around, result.warnings),
         _drawing(frame, numbered),
         _differences(frame, numbered, "Differences between the opinions", claim=False),
         *(_case(result, name, None, numbered) for name in result.names[: _pictured(frame)]),
@@ -229,7 +231,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
     ]
     return _record(
         "Record of opinions", frame, result.verdict, terminal.opinions_sentence(result),
-        _open(result.verdict, around, frame.warnings), sections, around,
+        _open(result.verdict, around, result.warnings), sections, around,
     )  # fmt: skip
 
 
@@ -242,7 +244,7 @@ def inspect_record(subject: Subject, findings: Sequence[Finding], around: Circum
     )
     pictured = list(frame.cases)[: _pictured(frame)] if frame.members else []
     sections = [
-        _checked(frame, terminal.frame_facts(frame), around),
+        _checked(frame, terminal.frame_facts(frame), around, frame.warnings),
         _drawn(frame, [(k, p) for k, f in enumerate(findings, 1) for p in _places(frame, f)]),
         review_section(findings),
         Section("Loads", (Grid("What each load case adds up to.", (("case", "left"), *_heads(frame, ("fx", "fy"))), totals),
@@ -312,7 +314,9 @@ def _own_differences(result: Opinions) -> list[tuple[int, Difference]]:
 # --- sections
 
 
-def _checked(frame: Frame, facts: Sequence[tuple[str, str]], around: Circumstances) -> Section:
+def _checked(
+    frame: Frame, facts: Sequence[tuple[str, str]], around: Circumstances, warnings: Sequence[str]
+) -> Section:
     """What was checked, against what, by which methods and to which tolerance."""
     rows = [(label, around.about[key]) for key, label in ABOUT.items() if around.about.get(key)]
     rows += [*facts, ("frame sha256", frame.sha256)]
@@ -322,7 +326,7 @@ def _checked(frame: Frame, facts: Sequence[tuple[str, str]], around: Circumstanc
     rows += [("versions", versions), ("date", moment(around.when))]
     rows += [("command", around.command)] if around.command else []
     blocks: list[Block] = [Facts(tuple(rows))]
-    notes = [f"Note: {w}" for w in frame.warnings]
+    notes = [f"Note: {w}" for w in warnings]
     return Section("What was checked", (*blocks, *([Says(tuple(notes))] if notes else [])))
 
 

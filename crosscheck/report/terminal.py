@@ -97,8 +97,8 @@ def cautions() -> RenderableType:
     return Group(heading("Cautions"), _notes(words.CAUTIONS))
 
 
-def _warnings(frame: Frame) -> list[RenderableType]:
-    return [Text(f"Note: {w}", style="bold") for w in frame.warnings]
+def _warnings(opinions: Opinions) -> list[RenderableType]:
+    return [Text(f"Note: {w}", style="bold") for w in opinions.warnings]
 
 
 # --- opinions
@@ -109,7 +109,7 @@ def opinions_report(
     effects: Sequence[RenderableType] = (),
 ) -> RenderableType:  # fmt: skip
     """What `crosscheck opinions` prints. critical: a line on the critical load factor; effects: of the idealisation."""
-    parts: list[RenderableType] = [_verdict_line(result.verdict, opinions_sentence(result)), *_warnings(result.frame)]
+    parts: list[RenderableType] = [_verdict_line(result.verdict, opinions_sentence(result)), *_warnings(result)]
     parts += [Text(line) for line in (*undetermined_lines(result), critical) if line]
     parts += effects
     parts += [heading("How it was compared"), facts(opinions_facts(result))]
@@ -324,7 +324,7 @@ def verify_report(
     opinions = result.opinions
     parts: list[RenderableType] = [_verdict_line(result.verdict, claim_sentence(result))]
     parts += [Text(f"  {line}") for line in beside(result)]
-    parts += _warnings(opinions.frame)
+    parts += _warnings(opinions)
     parts += [Text(line) for line in (*undetermined_lines(opinions), critical) if line]
     if result.facts:
         parts += [heading("Printed input that differs from the frame"), _notes(result.facts)]

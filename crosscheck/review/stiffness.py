@@ -8,6 +8,7 @@ import numpy as np
 
 from crosscheck.frame.model import FREE, HELD, Floats
 from crosscheck.review.finding import Finding, Subject
+from crosscheck.review.spread import member_spread
 
 NEIGHBOURS = 1000.0
 """Ratio of stiffness to the neighbours' beyond which one of them is probably a slip."""
@@ -122,23 +123,11 @@ def conditioning(subject: Subject) -> Iterator[Finding]:
     Source: numerical analysis (the ratio of extreme stiffnesses bounds the condition number from below); six are
       ordinary, more than nine are said.
     """
-    t = subject.frame.member_table
-    if not len(t.length):
-        return
-    bars = (t.turn == FREE).all(axis=1)
-    bend = np.where(bars, np.nan, 12 * t.E * t.I / t.clear**3)
-    stretch = t.E * t.A / t.clear if subject.frame.analysis.axial == "elastic" else np.full(len(bend), np.nan)
-    values = np.concatenate([bend, stretch])
-    if not np.isfinite(values).any():
-        return
-    high, low = int(np.nanargmax(values)), int(np.nanargmin(values))
-    digits = float(np.log10(values[high] / values[low]))
-    if digits > 9:
-        names = list(subject.frame.members)
-        stiff, soft = names[high % len(names)], names[low % len(names)]
-        cost = f"about {digits:.0f} of 16 digits are lost in solving"
-        says = f"stiffnesses from {soft} to {stiff} differ by 10^{digits:.0f}: {cost}"
-        yield Finding("check", (stiff, soft), says)
+    found = member_spread(subject.frame)
+    if found is not None and found.digits > 9:
+        cost = f"about {found.digits:.0f} of 16 digits are lost in solving"
+        says = f"stiffnesses from {found.soft} to {found.stiff} differ by 10^{found.digits:.0f}: {cost}"
+        yield Finding("check", (found.stiff, found.soft), says)
 
 
 def fixed_feet(subject: Subject) -> Iterator[Finding]:

@@ -24,6 +24,8 @@ from crosscheck.opinions.slope_deflection.spans import ClosedFormSpans
 from crosscheck.opinions.slope_deflection.system import System
 
 NAME = "slope-deflection"
+GIVEN_UP = 1e-9
+"""Share of the largest that the last round may still change; a case beyond it gets no answer."""
 THREE_DIGITS = 5e-4
 """Relative width to which a critical load factor is found where three digits will do."""
 
@@ -34,14 +36,23 @@ def opine(frame: Frame, study: Study, names: Sequence[str] | None = None) -> Ans
     if frame.analysis.order == 2:
         return _second_order(frame, study, names)
     tables = [load_table(frame, name) for name in names]
-    solution = System(frame).solve(tables)
-    cases = {name: solution.case_answer(k, study.undetermined) for k, name in enumerate(names)}
-    spans = ClosedFormSpans(frame, dict(zip(names, tables, strict=True)), cases, study.undetermined)
-    return Answer(NAME, cases, study.undetermined, spans)
+    try:
+        solution = System(frame).solve(tables)
+    except RuntimeError:  # SuperLU: exactly singular, though the geometry is no mechanism
+        return Silent(NAME, "the equations cannot be solved in 16 digits: stiffnesses lie too far apart")
+    silent = {
+        name: f"the equations did not settle: the last round still changed {left:.1e} of the largest"
+        for name, left in zip(names, solution.unsettled.tolist(), strict=True)
+        if not left <= GIVEN_UP
+    }
+    cases = {name: solution.case_answer(k, study.undetermined) for k, name in enumerate(names) if name not in silent}
+    given = {name: table for name, table in zip(names, tables, strict=True) if name in cases}
+    return Answer(NAME, cases, study.undetermined, ClosedFormSpans(frame, given, cases, study.undetermined), silent)
 
 
 def _second_order(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer:
     """Case by case, because the stiffness knows the axial forces; a case past its critical load is named, not given."""
+    from crosscheck.opinions.slope_deflection.balance import balance
     from crosscheck.opinions.slope_deflection.displaced_spans import DisplacedSpans
     from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder, PastCritical
 
@@ -50,7 +61,7 @@ def _second_order(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer:
         table = load_table(frame, name)
         case = CaseInSecondOrder(frame, table)
         try:
-            states[name] = case.solve()
+            states[name] = balance(case)
         except PastCritical as past:
             silent[name] = str(past)
             continue

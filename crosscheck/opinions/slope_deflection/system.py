@@ -25,10 +25,12 @@ from crosscheck.opinions.slope_deflection.members import Coefficients, FixedEnds
 
 PENALTY = 1e6
 """Elongation stiffness of an axially rigid member in units of the frame's largest 12 EI/l^3."""
-ROUNDS = 12
+ROUNDS = 40
 """Most rounds of correction; three to five are usual."""
 FEWEST = 4
 """After so many rounds, corrections that no longer halve are rounding noise and end the rounds too."""
+TRACE = 1e-6
+"""Share of the largest 12 EI/l^3 times the largest displacement that counts as an action where there is none larger."""
 STILL = 1e-15
 """Corrections below this share of the displacements end the rounds."""
 
@@ -46,6 +48,8 @@ class System:
         stiffness = frame.support_table.stiffness.ravel()
         self.held = stiffness == HELD
         self.spring = np.where(self.held, 0.0, stiffness)
+        t = frame.member_table
+        self.stiffest = float((12 * t.E * t.I / t.clear**3).max())
         self.member_stiffness = self._member_stiffness()
         matrix = (self.deformation.T @ self.member_stiffness @ self.deformation + sp.diags(self.spring)).tocsc()
         # A rotation that nothing resists, or a joint that nothing joins, has no equation.
@@ -55,10 +59,8 @@ class System:
 
     def _member_stiffness(self) -> Sparse:
         """(3m, 3m) moments at the faces and axial force of every member from its three deformations."""
-        t = self.frame.member_table
         k = self.coefficients.stiffness
-        stiffest = float((12 * t.E * t.I / t.clear**3).max())
-        axial = np.where(self.rigid, PENALTY * stiffest, self.coefficients.axial)
+        axial = np.where(self.rigid, PENALTY * self.stiffest, self.coefficients.axial)
         m = 3 * np.arange(len(axial))
         rows = np.concatenate([m, m, m + 1, m + 1, m + 2])
         cols = np.concatenate([m, m + 1, m, m + 1, m + 2])
@@ -91,11 +93,15 @@ class System:
         outer = np.stack([self._joint_loads(t, f) for t, f in zip(tables, fixed, strict=True)], axis=1)
         outer = outer.reshape(3 * joints, count) + self.spring[:, None] * moved
         forces = start.reshape(3 * members, count) + self.member_stiffness @ (self.deformation @ shift)
-        forces, shift = self._settle(forces, shift, outer, stretch)
-        return Solution(self, tables, fixed, forces.reshape(members, 3, count), shift)
+        forces, shift, unsettled = self._settle(forces, shift, outer, stretch)
+        return Solution(self, tables, fixed, forces.reshape(members, 3, count), shift, unsettled)
 
-    def _settle(self, forces: Floats, shift: Floats, outer: Floats, stretch: Floats) -> tuple[Floats, Floats]:
-        """Correct displacements and member forces until the joints balance and rigid members keep their lengths."""
+    def _settle(self, forces: Floats, shift: Floats, outer: Floats, stretch: Floats) -> tuple[Floats, Floats, Floats]:
+        """Correct displacements and member forces until the joints balance and rigid members keep their lengths.
+
+        The third result is what the last round still changed, (cases,): in displacements as a share of the largest, or
+        in axial forces of rigid members as a share of the largest action, whichever is more.
+        """
         rigid_rows = 3 * np.flatnonzero(self.rigid) + 2
         penalty = self.member_stiffness.diagonal()[rigid_rows][:, None]
         # The first axial force of a rigid member is penalty times the elongation that the held displacements ask for.
@@ -112,14 +118,25 @@ class System:
             bent = self.deformation @ step
             forces = forces + self.member_stiffness @ bent
             reach = np.maximum(reach, np.abs(shift).max(axis=0, initial=0.0))
-            size = _largest_share(step, reach)
+            shares = _shares(step, reach)
+            size = float(shares.max(initial=0.0))
             if size <= STILL or (done >= FEWEST and size >= last / 2):
                 break
             last = size
             # Elongations are summed from the corrections: from the displacements they would be rounding, times penalty.
             longer = longer + bent[rigid_rows]
             forces[rigid_rows] += penalty * longer
-        return forces, shift
+        # What the next round would add to the axial forces of rigid members.
+        pulled = penalty * np.abs(longer + bent[rigid_rows])
+        return forces, shift, np.maximum(shares, _shares(pulled, self._action_size(forces, reach)))
+
+    def _action_size(self, forces: Floats, reach: Floats) -> Floats:
+        """(cases,) the largest axial force, or moment over length, of any member; no less than a trace of what moving by
+        `reach` would take, because a determinate frame that settles has no actions but rounding noise."""
+        by_member = np.abs(forces).reshape(-1, 3, forces.shape[1])
+        by_member[:, :2] /= self.frame.member_table.clear[:, None, None]
+        trace = TRACE * self.stiffest * reach
+        return np.asarray(np.maximum(by_member.max(axis=(0, 1), initial=0.0), trace))
 
     def _joint_loads(self, table: LoadTable, fixed: FixedEnds) -> Floats:
         """(3j,) forces on the joints along their support axes: those applied, and those that the members' loads bring
@@ -132,13 +149,14 @@ class System:
 @dataclass(frozen=True, slots=True)
 class Solution:
     """forces: (m, 3, cases) moments at the faces and axial force without the fixed-end part of along loads;
-    shift: (3j, cases) displacements along the support axes."""
+    shift: (3j, cases) displacements along the support axes; unsettled: (cases,) share that the last round still changed."""
 
     system: System
     tables: list[LoadTable]
     fixed: list[FixedEnds]
     forces: Floats
     shift: Floats
+    unsettled: Floats
 
     def case_answer(self, k: int, undetermined: Undetermined) -> CaseAnswer:
         """The k-th case as everybody sees it, undetermined values as NaN."""
@@ -155,10 +173,10 @@ class Solution:
         return CaseAnswer(ends, joints, reactions)
 
 
-def _largest_share(step: Floats, reach: Floats) -> float:
-    """Largest correction (n, cases) of any case as a share of that case's reach (cases,)."""
+def _shares(step: Floats, reach: Floats) -> Floats:
+    """(cases,) largest correction (n, cases) of each case as a share of that case's reach (cases,)."""
     size = np.abs(step).max(axis=0, initial=0.0)
-    return float(np.max(size / np.where(reach > 0.0, reach, 1.0), initial=0.0))
+    return np.asarray(size / np.where(reach > 0.0, reach, 1.0))
 
 
 def deformations(frame: Frame) -> Sparse:
