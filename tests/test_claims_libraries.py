@@ -1,10 +1,13 @@
-"""Results as a general-purpose library prints them, pasted as they are: pandas tables of anastruct's results, and
-arrays."""
+"""Results as general-purpose libraries print them, pasted as they are: pandas tables of anastruct's results, arrays, and
+printouts of three other libraries kept in tests/printouts (print_again.py there says how they were made and by which
+versions)."""
 
 from __future__ import annotations
 
+import re
 import warnings
 from functools import lru_cache
+from pathlib import Path
 
 import numpy as np
 import pandas as pd
@@ -114,3 +117,48 @@ def test_a_numpy_matrix_with_columns_stated() -> None:
     verdict, closed, cases = k.judge(text, columns=("member", "joint", "N", "V", "M"), units="kN m")
     assert verdict == "agree", (closed.undecided, closed.not_understood)
     assert cases[0].compared == 30
+
+
+# --- printouts of other libraries, as they are
+
+PRINTOUTS = Path(__file__).parent / "printouts"
+VALUES = {  # values compared in each: (bent, beam, storeys)
+    "calfem nodes.txt": (27, 33, 36), "calfem elements.txt": (75, 75, 150),
+    "pynite nodes.txt": (36, 31, 54), "pynite end forces.txt": (30, 30, 60), "pynite extremes.txt": (30, 30, 60),
+    "pynite stations.csv": (75, 75, 150),
+    "opensees tables.txt": (66, 61, 114), "opensees global forces.csv": (30, 30, 60),
+}  # fmt: skip
+FRAMES = ("bent", "beam", "storeys")
+CASES = [(frame, kind, counts[k]) for kind, counts in VALUES.items() for k, frame in enumerate(FRAMES)]
+
+
+@lru_cache(maxsize=3)
+def kept(frame: str) -> Known:
+    return Known((PRINTOUTS / f"{frame}.toml").read_text(encoding="utf-8"))
+
+
+@pytest.mark.parametrize(("frame", "kind", "values"), CASES)
+def test_printouts_of_other_libraries(frame: str, kind: str, values: int) -> None:
+    text = (PRINTOUTS / f"{frame}.{kind}").read_text(encoding="utf-8")
+    verdict, closed, cases = kept(frame).judge(text)
+    assert verdict == "agree", (closed.undecided, closed.not_understood, closed.foreign)
+    assert cases[0].compared == values
+    assert not closed.not_understood
+
+
+@pytest.mark.parametrize(("frame", "kind", "values"), CASES)
+def test_one_spoiled_value_of_a_printout_is_not_agreed_to(frame: str, kind: str, values: int) -> None:
+    """The largest of the last three values on the last line that has one that counts."""
+    text = (PRINTOUTS / f"{frame}.{kind}").read_text(encoding="utf-8")
+    values_of = {t: re.findall(r"-?\d+\.\d+(?:e[+-]\d+)?", t)[-3:] for t in text.splitlines()}
+    line = next(t for t in reversed(values_of) if any(abs(float(v)) > 0.1 for v in values_of[t]))
+    printed = max(values_of[line], key=lambda t: abs(float(t)))
+    wrong = f"{float(printed) * 1.4:.6g}".rjust(len(printed))
+    assert kept(frame).judge(text.replace(line, line.replace(printed, wrong)))[0] != "agree"
+
+
+@pytest.mark.parametrize("frame", FRAMES)
+def test_lists_of_a_library_that_name_no_columns_are_undecided(frame: str) -> None:
+    verdict, closed, _ = kept(frame).judge((PRINTOUTS / f"{frame}.opensees print.txt").read_text(encoding="utf-8"))
+    assert verdict == "undecided"
+    assert "say what its columns are" in closed.undecided[0]

@@ -39,10 +39,20 @@ def grid_of(table: RawTable, names: Names, columns: tuple[str, ...] = ()) -> Gri
         return Grid([])
     separator = Counter(separator_of(text) for _, text in table.rows).most_common(1)[0][0]
     if separator == "blank":
-        rows = [join_names(join_units(split(text, separator)), names) for _, text in table.rows]
-        return _by_blanks(table, rows, columns)
+        return _by_blanks(table, _blank_rows(table, names), columns)
     rows = [split(text, separator) for _, text in table.rows]
     return _by_marks(table, rows, separator, columns)
+
+
+def _blank_rows(table: RawTable, names: Names) -> list[list[Cell]]:
+    """Cells of rows parted by blanks. A blank parts thousands only where rows are not of one length without: "1 125.620" may
+    be a name and its value."""
+
+    def rows(grouped: bool) -> list[list[Cell]]:
+        return [join_names(join_units(split(text, "blank", grouped)), names) for _, text in table.rows]
+
+    plain = rows(grouped=False)
+    return plain if len({len(r) for r in plain}) == 1 else rows(grouped=True)
 
 
 # -- tabs, bars, semicolons, commas

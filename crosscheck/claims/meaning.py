@@ -56,7 +56,7 @@ def meaning_of(grid: Grid, table: RawTable, names: Names) -> Meaning:
         return Meaning("", tuple(Role() for _ in grid.heads), "it has too many columns")
     if table.heads and grid.heads and not any(h.text for h in grid.heads):
         return Meaning("", tuple(Role() for _ in grid.heads), "the heads do not match the columns below them")
-    heads = _numbered(_filled(grid, table, names))
+    heads = _turning_told(_numbered(_filled(grid, table, names)))
     roles = _named_roles(heads, grid, names)
     kind, why = ("echo supports", "") if _restrains(grid, roles, table.heading) else _kind(heads, roles, table)
     if not kind:
@@ -210,6 +210,8 @@ def _kind(heads: list[Head], roles: list[Role], table: RawTable) -> tuple[str, s
     axes = [h.axis for h in heads if h.noun == "x"]
     along = axes == ["x"] and bool(forces) and (of_member or "joint" not in names_of)
     station = "station" in names_of or (along and not re.search("react|displ", heading))
+    if "joint" in names_of and not of_member and _pulls_too(heads):
+        return "reaction", ""
     if _moves(heads, nouns, heading) and not (of_member and station):
         return ("displacement", "") if "joint" in names_of else ("", "displacements of what is not said")
     if station and (of_member or nouns & {"N", "V"} or "M" in nouns):
@@ -315,6 +317,21 @@ def _with_displacements(heads: list[Head], roles: list[Role], grid: Grid) -> tup
     moves, other = _values("displacement", [h if m else Head("") for h, m in zip(heads, moving, strict=True)], roles, grid)
     moves = [replace(r, kind="displacement") if r.name == "value" else r for r in moves]
     return [b if m else a for a, b, m in zip(pulls, moves, moving, strict=True)], why or other
+
+
+def _turning_told(heads: list[Head]) -> list[Head]:
+    """ "ux uy rz Rx Ry Mz": the r that follows displacements and stands apart from the reactions turns."""
+    pulls = [k for k, h in enumerate(heads) if h.noun in ("R", "F")]
+    after = [k for k in pulls if k and heads[k - 1].noun == "D" and heads[k].noun == "R" and heads[k].axis in ("y", "z")]
+    if len(after) != 1 or len(pulls) < 3 or not _pulls_too(heads):
+        return heads
+    return [replace(h, noun="T") if k == after[0] else h for k, h in enumerate(heads)]
+
+
+def _pulls_too(heads: list[Head]) -> bool:
+    """Do reactions stand beside displacements?"""
+    axes = {h.axis for h in heads if h.noun in ("R", "F")}
+    return {"D", "M"} <= {h.noun for h in heads} and "x" in axes and len(axes) > 1
 
 
 def _sided(kind: str, heads: list[Head]) -> list[Head]:

@@ -21,6 +21,7 @@ MOST_KEPT = 20_000
 _BETWEEN_DIGITS = re.compile(r"(?<=\d)[^\w.]+(?=\d)")
 _SEPARATING = re.compile(r"[^\w.+'~]|_")
 _LEADING_ZEROS = re.compile(r"(?<![0-9.])0+(?=[0-9])")
+_NUMBERED = re.compile(r"\d{1,9}\.\d{0,12}(?:e[+-]?0?\d)?", re.IGNORECASE | re.ASCII)
 _PREFIX = {kind: re.compile(rf"(?:{words})\b[\s.:#_-]*(?=\S)", re.IGNORECASE) for kind, words in _PREFIXES.items()}
 _DASH = re.compile(r"[\u2010-\u2015\u2212]")
 _PAIR = re.compile(r"\s*(?:-+>?|\u2192|/|\bto\b|:|\.\.|,|~|_)\s*|\s+")
@@ -89,6 +90,8 @@ class _Book:
         for writing in dict.fromkeys((text, without_prefix(text, self.kind))):
             if found := self._only(0, plain(writing)):
                 return found
+        if _NUMBERED.fullmatch(text) and float(text).is_integer() and (found := self._only(0, str(int(float(text))))):
+            return found  # an array of decimals prints joint 2 as "2.0" or "2.0000e+00"
         if not number_alone:
             return None
         bare = without_prefix(text, self.kind)

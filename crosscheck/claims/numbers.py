@@ -59,7 +59,9 @@ def parse_number(text: str, decimal_comma: bool = False) -> Number | None:
     except ValueError:
         return None
     decimals = len(plain.partition(".")[2])
-    half = 0.5 * 10.0 ** (exponent - decimals) if abs(exponent - decimals) < 300 else 0.0
+    # "0.0000e+00" is zero itself: with an exponent of its own, no other number is rounded to it.
+    exact = value == 0 and power is not None
+    half = 0.0 if exact else 0.5 * 10.0 ** (exponent - decimals) if abs(exponent - decimals) < 300 else 0.0
     if not math.isfinite(value) or not math.isfinite(half):
         return None
     if negative or sign == "-" or trailing:

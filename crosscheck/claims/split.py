@@ -69,11 +69,12 @@ def _is_number(text: str) -> bool:
     return parse_number(text) is not None or parse_number(text, decimal_comma=True) is not None
 
 
-def split(line: str, separator: Separator) -> list[Cell]:
-    """Cells of the line. Blanks: one cell a word, names and units still to be put together."""
+def split(line: str, separator: Separator, grouped: bool = True) -> list[Cell]:
+    """Cells of the line. Blanks: one cell a word, names and units still to be put together; `grouped`: a blank may part
+    thousands."""
     if separator == "blank":
         line = line.translate(_BAR).replace("|", " ")
-        if "  " in line.strip():  # only where wider gaps part the cells can one blank part thousands
+        if grouped and "  " in line.strip():  # only where wider gaps part the cells can one blank part thousands
             line = _GROUPED.sub(lambda m: m.group().replace(" ", "\u00a0"), line)
         return [Cell(m.start(), m.end(), m.group()) for m in _WORD.finditer(line)]
     if separator == "bar":

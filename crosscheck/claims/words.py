@@ -53,7 +53,7 @@ _NOUN_WORDS = {
     "N": "axial normal thrust ax axl",
     "w": "deflection deflections defl sag",
     "D": "displacement displacements disp displ displs translation translations trans movement movements sway drift",
-    "R": "reaction reactions react reac rct",
+    "R": "reaction reactions react reac rct rxn rxns",
     "case": "case cases lc loadcase combination combinations combo comb combn loading lcase loadcomb loadcombination ldc",
     "which": "extreme extremes envelope env type kind maxmin",
     "station": "station stations sta stn dist distance loc location pos position abscissa offset",
@@ -86,11 +86,13 @@ _GREEK = {"θ": "theta", "φ": "phi", "ϕ": "phi", "δ": "d", "∆": "d", "ξ": 
 _SYMBOL_NOUNS = {
     "n": "N", "v": "V", "q": "V", "m": "M", "f": "F", "p": "F", "r": "R", "d": "D", "u": "D", "t": "M", "rot": "T",
     "theta": "T", "phi": "T", "th": "T", "w": "w", "disp": "D", "trans": "D", "del": "D", "delta": "D", "s": "V",
-    "rx": "R", "h": "F", "sf": "V", "bm": "M",
+    "rx": "R", "rxn": "R", "reac": "R", "h": "F", "sf": "V", "bm": "M",
 }  # fmt: skip
 _SYMBOL = re.compile(
-    r"(rot|theta|phi|th|disp|trans|delta|del|bm|sf|[nvqmfprdutwhs])([xyz]?)(\d{0,2})(max|min|abs|start|end|from|to|ij|ji|ab|ba|[ijab]?)"
+    r"(rot|theta|phi|th|rxn|reac|disp|trans|delta|del|bm|sf|[nvqmfprdutwhs])([xyz]?)(\d{0,2})(max|min|abs|start|end|from|to|ij|ji|ab|ba|[ijab]?)"
 )
+_CAMEL = re.compile(r"(?<=[a-z]{2})(?=[A-Z])")
+"""Words written together: "RxnFX", "AxialForce"."""
 _NUMBERED_AXIS = {"1": "x", "2": "y", "3": "z", "11": "x", "22": "y", "33": "z"}
 _BRACKETS = re.compile(r"[\[({<]([^\[\](){}<>]*)[\])}>]")
 _STRAY = re.compile(r"(?:^|[\s,;:/]|\bin\s)([^\s,;:]{1,12})\s*$")
@@ -140,6 +142,7 @@ def head_of(text: str) -> Head:
     if property_head := _property(text):
         return Head(text, property_head)
     bare, unit = _without_unit(text)
+    bare = _CAMEL.sub(" ", bare)
     tidy = unicodedata.normalize("NFKC", "".join(_GREEK.get(c, c) for c in bare)).lower()
     share = bool(re.search(r"\bx\s*/\s*l\b|%|\brel(ative)?\b|\bratio\b|\bfraction\b|\bxi\b", tidy))
     if re.fullmatch(r"x\s*/\s*l(ength)?", tidy.strip()):

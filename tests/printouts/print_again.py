@@ -168,7 +168,7 @@ def print_pynite(name: str) -> None:
     table = PrettyTable(["Member", "Node", "Axial", "Shear Fy", "Moment Mz"])
     table.float_format = ".3"
     for m in model.members.values():
-        F = m.F(combo).ravel()
+        F = m.f(combo).ravel()
         table.add_row([m.name, m.i_node.name, float(F[0]), float(F[1]), float(F[5])])
         table.add_row([m.name, m.j_node.name, float(F[6]), float(F[7]), float(F[11])])
     (HERE / f"{name}.pynite end forces.txt").write_text(f"{table}\n", encoding="utf-8")
