@@ -28,6 +28,7 @@ from crosscheck.frame.model import (
     Joint,
     JointCouple,
     JointForce,
+    Lean,
     Load,
     LoadCase,
     Member,
@@ -123,7 +124,7 @@ class LoadReader:
         if action is None:
             return []
         self.check.only(table, {*_TARGETS.get(on, ()), *action.does, *action.needs, *action.takes}, path,
-                        action.what, "entry")  # fmt: skip
+                        action.what)  # fmt: skip
         for key in action.needs:
             if key not in table:
                 self.check.note(path, f"{key} is missing for {action.what}", action.advice.get(key, f"give {key}"))
@@ -132,14 +133,11 @@ class LoadReader:
 
     def _target(self, table: Table, path: Path) -> str:
         """"joint", "member" or "frame"; "" with a fault noted where it is not clear."""
-        found = [key for key in ("joint", "joints", "member", "members", "self_weight") if key in table]
+        found = [key for key in _ON if key in table]
         if len(found) == 1:
             return _ON[found[0]]
         if not found:
-            if "lean" not in table:
-                self.check.note(path, "the entry does not say what it acts on", "give joint, member or self_weight")
-            else:
-                self.check.only(table, (), path, "a load", "entry")
+            self.check.note(path, "the entry does not say what it acts on", "give joint, member or self_weight")
         else:
             self.check.note(path, f"{' and '.join(found)} in one entry", "make one entry of each")
         return ""
@@ -392,6 +390,10 @@ def _self_weight(e: _Entry, _: list[str]) -> list[Load]:
     return [SelfWeight(e.index, e.number("self_weight", A_NUMBER))]
 
 
+def _lean(e: _Entry, _: list[str]) -> list[Load]:
+    return [Lean(e.index, e.check.share(e.table["lean"], (*e.path, "lean")))]
+
+
 _ADVICE = {
     "direction": 'give direction = "down", say',
     "at": 'give at, the distance from the member\'s first joint, such as "2.5 m" or "40%"',
@@ -411,10 +413,14 @@ _ACTIONS: dict[str, tuple[_Action, ...]] = {
         _Action(("temperature", "difference"), (), (), "a temperature", _temperature, _ADVICE),
         _Action(("misfit",), (), (), "a misfit", _misfit, _ADVICE),
     ),
-    "frame": (_Action(("self_weight",), (), (), "self weight", _self_weight, _ADVICE),),
+    "frame": (
+        _Action(("self_weight",), (), (), "self weight", _self_weight, _ADVICE),
+        _Action(("lean",), (), (), "a lean", _lean, _ADVICE),
+    ),
 }  # fmt: skip
 _TARGETS = {"joint": ("joint", "joints"), "member": ("member", "members")}
-_ON = {"joint": "joint", "joints": "joint", "member": "member", "members": "member", "self_weight": "frame"}
+_ON = {"joint": "joint", "joints": "joint", "member": "member", "members": "member", "self_weight": "frame",
+       "lean": "frame"}  # fmt: skip
 ENTRY_KEYS = {*_ON, *(k for a in _ACTIONS.values() for x in a for k in (*x.does, *x.needs, *x.takes))}
 
 

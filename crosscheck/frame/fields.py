@@ -44,22 +44,6 @@ FEW = 8
 MOST_SUGGESTIONS = 20
 """Names for which the nearest valid one is looked up in one file: each costs a walk over all the valid names."""
 
-LATER: dict[str, dict[str, str]] = {
-    "file": {
-        "stiffness": "states of stiffness", "patterns": "load patterns", "exclusive": "either-or load cases",
-        "envelopes": "envelopes", "ties": "ties", "include": "included files",
-    },
-    "loads": {"exclusive": "either-or load cases"},
-    "member": {
-        "profile": "stepped members", "taper": "tapered members", "axial": "single rigid members",
-        "only": "one-way members",
-    },
-    "entry": {"lean": "leans"},
-    "combination": {"stiffness": "states of stiffness", "order": "orders by combination", "lean": "leans"},
-}  # fmt: skip
-"""Keys of the grammar that this version does not read yet, by place, and what to call them."""
-
-
 @dataclass(frozen=True, slots=True)
 class Kind:
     """What a number must be. bare: what a number without a unit means ("" where it must have one).
@@ -189,6 +173,12 @@ class Checker:
         bare = text.rstrip().removesuffix("%")
         return self.number(bare, A_PERCENTAGE, path) / 100
 
+    def share(self, value: object, path: Path) -> float:
+        """A share as a plain number, or as a percentage: 0.005 or "0.5%"."""
+        if isinstance(value, str) and value.rstrip().endswith("%"):
+            return self.percentage(value, path)
+        return self.number(value, A_NUMBER, path)
+
     # Words, tables and keys --------------------------------------------------------------------------------------
 
     def word(self, value: object, words: Collection[str], path: Path) -> str:
@@ -223,15 +213,10 @@ class Checker:
         self.note(path, f"{shown(value)} is not a table", f"write {such_as}, say")
         return None
 
-    def only(self, table: Table, keys: Collection[str], path: Path, what: str, place: str = "") -> None:
-        """Note every key of `table` that is not among `keys`; what a later version reads is refused by name."""
-        if all(key in keys for key in table):
-            return
-        later = LATER.get(place, {})
+    def only(self, table: Table, keys: Collection[str], path: Path, what: str) -> None:
+        """Note every key of `table` that is not among `keys`."""
         for key in table:
-            if key in later:
-                self.note((*path, key), f"{later[key]} are not read yet", "leave this out")
-            elif key not in keys:
+            if key not in keys:
                 listed = "known are " + ", ".join(sorted(keys))
                 self.note((*path, key), f"unknown key in {what}", self.near(key, keys) or listed)
 

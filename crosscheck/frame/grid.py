@@ -82,7 +82,7 @@ def read_grid(check: Checker, value: object, known: Known) -> Grid:
     table = check.table(value, PATH, '[grid] with bays = ["3 x 6 m"] and storeys = [4.5, 3.6]')
     if table is None:
         return Grid(whole=False)
-    check.only(table, GRID_KEYS, PATH, "the grid", "grid")
+    check.only(table, GRID_KEYS, PATH, "the grid")
     bays, storeys = _spacing(check, table, "bays"), _spacing(check, table, "storeys")
     if not bays or not storeys:
         return Grid(whole=False)
@@ -153,7 +153,7 @@ class _Expansion:
             table = self.check.table(entry, path, '{ section = "post", material = "steel" }')
             if table is None:
                 continue
-            self.check.only(table, TRAIT_KEYS | where.keys(), path, f"the {key} of a grid", "member")
+            self.check.only(table, TRAIT_KEYS | where.keys(), path, f"the {key} of a grid")
             across, up = (self._chosen(table, axis, places, path) for axis, places in where.items())
             yield _Rule(across, up, read_traits(self.check, table, path, self.known))
 

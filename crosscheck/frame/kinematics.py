@@ -30,6 +30,15 @@ FOLLOWS = 1e-9
 ADVICE = "give it a support, a stiff joint or a member that stops this"
 DENSE = 500
 """Up to this many unknowns a dense decomposition is quick; above it sparse inverse iteration is used."""
+FEW_BARS = 60
+"""Up to so many axially rigid members or free displacements, self-stresses are found densely at once; up to DENSE where
+the sparse way does not settle."""
+SHIFT = 1e-12
+"""What is added to the normal matrix of elongations, as a share of its diagonal, so that it can be factorised."""
+PASSES = 8
+"""Most passes of a projection with that factor; two or three are usual."""
+STILL = 1e-10
+"""Share of the lengths below which a pass that changes them no further has settled; rounding stays below."""
 
 Sparse = Any  # scipy.sparse matrices: their types differ between scipy releases
 
@@ -332,8 +341,8 @@ class AxialRedundancy:
     """The self-stress of the axially rigid members and the ties: forces in them that load no joint (left null space of
     what they forbid). Rows are those of the rigid members, and then of the ties.
 
-    Small frames use a dense decomposition; large ones project random vectors with a sparse factor. Either way it
-    depends on geometry and supports alone, never on a load case.
+    Small frames use a dense decomposition; larger ones project random vectors with a sparse factor, and fall back on the
+    dense one where that does not settle. Either way it depends on geometry and supports alone, never on a load case.
     """
 
     def __init__(self, frame: Frame) -> None:
@@ -352,14 +361,16 @@ class AxialRedundancy:
         self.free = self.turned[:, np.flatnonzero(~self.held)].tocsc()
         self._null: Floats | None = None
         self._factor: Any = None
-        if min(self.free.shape) <= DENSE:
+        if min(self.free.shape) <= FEW_BARS:
             self._null = self._dense_null()
         else:
             from scipy.sparse.linalg import splu
 
             normal = (self.free.T @ self.free).tocsc()
-            self._shift = 1e-9 * float(normal.diagonal().max())
-            self._factor = splu((normal + sp.identity(normal.shape[0], format="csc") * self._shift).tocsc())
+            self._shift = SHIFT * float(normal.diagonal().max())
+            shifted = (normal + sp.identity(normal.shape[0], format="csc") * self._shift).tocsc()
+            options = {"SymmetricMode": True}
+            self._factor = splu(shifted, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options=options)
 
     def _dense_null(self) -> Floats:
         """(rows, k) orthonormal self-stresses."""
@@ -369,13 +380,24 @@ class AxialRedundancy:
 
     def project(self, lengths: Floats) -> Floats:
         """The part of the rows' elongations (rows, k) that no displacement of the joints can produce."""
-        if self._null is not None:
-            return np.asarray(self._null @ (self._null.T @ lengths))
-        # Each pass leaves the unreachable part alone and shrinks the reachable one by shift / (value**2 + shift).
+        if self._null is None:
+            rest, settled = self._projected(lengths)
+            if settled or min(self.free.shape) > DENSE:
+                return rest
+            self._null = self._dense_null()
+        return np.asarray(self._null @ (self._null.T @ lengths))
+
+    def _projected(self, lengths: Floats) -> tuple[Floats, bool]:
+        """The same by the sparse factor, and whether it settled. Each pass leaves the unreachable part alone and shrinks
+        the reachable one by shift / (value**2 + shift), value being a singular value: weak ones are slow."""
         rest = lengths
-        for _ in range(4):
-            rest = rest - self.free @ self._factor.solve(self.free.T @ rest)
-        return np.asarray(rest)
+        size = float(np.abs(lengths).max(initial=0.0))
+        for _ in range(PASSES):
+            step = self.free @ self._factor.solve(self.free.T @ rest)
+            rest = rest - step
+            if np.abs(step).max(initial=0.0) <= STILL * size:
+                return np.asarray(rest), True
+        return np.asarray(rest), False
 
     def _samples(self) -> Floats:
         """(rows, k) self-stresses that together load every row that any self-stress loads."""

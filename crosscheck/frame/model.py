@@ -351,6 +351,8 @@ class Frame:
     envelopes: Mapping[str, Envelope] = field(default_factory=dict)
     ties: Mapping[str, Tie] = field(default_factory=dict)
     includes: tuple[Included, ...] = ()
+    parted: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    """Combinations as stated that name cases which exclude each other, and those cases: each is parted into several."""
     state: str = ""
     """The state of stiffness that the tables are of; "" for the frame as stated."""
     out_members: frozenset[str] = frozenset()
@@ -370,6 +372,15 @@ class Frame:
     def names(self) -> tuple[str, ...]:
         """Every load case and then every combination: what results are given for."""
         return (*self.cases, *self.combinations)
+
+    def meant(self, name: str) -> tuple[str, ...]:
+        """The cases and combinations that a name stands for: itself, all that a stated combination became, or those of
+        an envelope; none where there is no such name."""
+        if name in self.cases or name in self.combinations:
+            return (name,)
+        if name in self.envelopes:
+            return self.envelopes[name].names
+        return tuple(one.name for one in self.combinations.values() if one.stated == name)
 
     @cached_property
     def joint_index(self) -> dict[str, int]:

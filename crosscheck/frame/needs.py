@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import replace
 from typing import Literal, TypeVar
 
 from crosscheck.frame.locate import Path, dotted
-from crosscheck.frame.model import Analysis, Frame, Material, Section, SelfWeight, Temperature
+from crosscheck.frame.model import Analysis, Frame, Material, Member, Section, SelfWeight, Temperature
+from crosscheck.frame.pieces import unfit
 from crosscheck.problems import Problem, UnusableInput, nearest
 
 Named = TypeVar("Named", bound=str)
@@ -21,9 +22,11 @@ AXIAL: tuple[Literal["elastic", "rigid"], ...] = ("elastic", "rigid")
 SHEAR: tuple[Literal["rigid", "elastic"], ...] = ("rigid", "elastic")
 
 
-def used_sections(frame: Frame) -> list[Section]:
-    """Sections that a member has, in the file's order."""
-    used = {member.section for member in frame.members.values()}
+def used_sections(frame: Frame, members: Iterable[Member] | None = None) -> list[Section]:
+    """Sections that a member (or one of `members`) has, in the file's order."""
+    used: set[str] = set()
+    for member in frame.members.values() if members is None else members:
+        used |= {member.section, *(name for p in member.pieces for name in (p.first, p.last))}
     return [section for section in frame.sections.values() if section.name in used]
 
 
@@ -40,7 +43,7 @@ def order_fault(order: object) -> str:
 
 def default_axial(frame: Frame) -> tuple[Literal["elastic", "rigid"], str]:
     """Elastic when every section used has A; else rigid, with the warning that says so."""
-    without = [f'"{section.name}"' for section in used_sections(frame) if section.A is None]
+    without = [f'"{section.name}"' for section in used_sections(frame, _stretching(frame)) if section.A is None]
     if not without:
         return "elastic", ""
     sections = f"section {without[0]} has" if len(without) == 1 else f"sections {', '.join(without[:12])} have"
@@ -50,18 +53,26 @@ def default_axial(frame: Frame) -> tuple[Literal["elastic", "rigid"], str]:
     )  # fmt: skip
 
 
+def _stretching(frame: Frame) -> list[Member]:
+    """Members that are not rigid by their own word."""
+    return [member for member in frame.members.values() if not member.axial]
+
+
 def unmet(frame: Frame) -> Iterator[Fault]:
     """Everything that the frame's idealisation and loads need and its sections and materials do not state."""
     yield from _idealisation(frame)
+    yield from _one_way(frame)
+    yield from _tapers(frame)
     yield from _self_weight(frame)
     yield from _temperatures(frame)
 
 
 def _idealisation(frame: Frame) -> Iterator[Fault]:
     analysis = frame.analysis
-    for section in used_sections(frame):
+    for section in used_sections(frame, _stretching(frame)):
         if analysis.axial == "elastic" and section.A is None:
             yield _section(section, 'has no A, which axial = "elastic" needs', 'give A, or set axial = "rigid"')
+    for section in used_sections(frame):
         if analysis.shear == "elastic" and section.shear_area is None:
             says = 'has no shear_area, which shear = "elastic" needs'
             yield _section(section, says, 'give shear_area, or set shear = "rigid"')
@@ -69,6 +80,22 @@ def _idealisation(frame: Frame) -> Iterator[Fault]:
         if analysis.shear == "elastic" and material.G is None:
             says = 'has neither G nor nu, and shear = "elastic" needs one'
             yield _material(material, says, 'give nu = 0.3, say, or set shear = "rigid"')
+
+
+def _one_way(frame: Frame) -> Iterator[Fault]:
+    """A rigid member cannot be said to work by its stretch."""
+    for member in frame.members.values():
+        if member.only and (member.axial or frame.analysis.axial == "rigid"):
+            instead = "leave its axial out" if member.axial else 'give A everywhere and set axial = "elastic"'
+            yield ("members", member.name), f'works in {member.only} only, and an axially rigid member cannot', instead
+
+
+def _tapers(frame: Frame) -> Iterator[Fault]:
+    for member in frame.members.values():
+        for piece in member.pieces:
+            says, instead = unfit(piece, frame.sections)
+            if says:
+                yield ("members", member.name), says, instead
 
 
 def _self_weight(frame: Frame) -> Iterator[Fault]:
@@ -98,11 +125,12 @@ def _temperatures(frame: Frame) -> Iterator[Fault]:
 
 def _temperature(frame: Frame, load: Temperature) -> Iterator[tuple[str, str]]:
     member = frame.members[load.member]
-    material, section = frame.materials.get(member.material), frame.sections.get(member.section)
+    material = frame.materials.get(member.material)
     if material and material.alpha is None:
         yield f'material "{material.name}" has no alpha, which a temperature needs', 'give alpha = "12e-6 /K", say'
-    if section and load.difference and section.depth is None:
-        yield f'section "{section.name}" has no depth, which a temperature difference needs', "give depth"
+    for section in used_sections(frame, [member]) if load.difference else []:
+        if section.depth is None:
+            yield f'section "{section.name}" has no depth, which a temperature difference needs', "give depth"
 
 
 def _section(section: Section, says: str, instead: str) -> Fault:

@@ -19,6 +19,7 @@ from typing import Literal
 
 from crosscheck.frame.apply import LoadReader, Places
 from crosscheck.frame.arithmetic import Value
+from crosscheck.frame.combining import combined
 from crosscheck.frame.family import of_variant, read_family
 from crosscheck.frame.fields import (
     A_DENSITY,
@@ -36,17 +37,19 @@ from crosscheck.frame.fields import (
     shown,
 )
 from crosscheck.frame.grid import Grid, read_grid
+from crosscheck.frame.include import included_names, nameable, with_includes
 from crosscheck.frame.locate import Lines, Path
 from crosscheck.frame.model import (
     Analysis,
-    Combination,
     Frame,
+    Included,
     Joint,
     LoadCase,
     Material,
     Member,
     Section,
     Support,
+    Tie,
     Units,
 )
 from crosscheck.frame.needs import AXIAL, SHEAR, default_axial, order_fault, unmet
@@ -57,15 +60,18 @@ from crosscheck.frame.parts import (
     Known,
     Traits,
     read_support,
+    read_ties,
     read_traits,
 )
+from crosscheck.frame.pieces import longest, read_pieces
+from crosscheck.frame.states import Things, read_states
 from crosscheck.frame.tables import inside, sheet_names, with_tables
 from crosscheck.frame.units import Scale, UnitError, frame_units
 from crosscheck.problems import Problem, UnusableInput
 
 FILE_KEYS = (
-    "title", "units", "materials", "sections", "joints", "members", "supports", "grid", "loads", "combinations",
-    "analysis", "tables", "family",
+    "title", "units", "materials", "sections", "joints", "members", "supports", "ties", "grid", "loads", "patterns",
+    "exclusive", "stiffness", "combinations", "envelopes", "analysis", "include", "tables", "family",
 )  # fmt: skip
 NO_UNITS = Units("kN", "m", 1e3, 1.0)
 """Taken where a file states none that can be read, which is a fault."""
@@ -108,13 +114,14 @@ def variants(path: FilePath) -> tuple[str, ...]:
 
 
 def sources(path: FilePath) -> list[FilePath]:
-    """The frame file and the tables beside it that it draws on, as far as they can be known."""
+    """The frame file and the tables and files that it draws on, as far as they can be known."""
     try:
         text = _decoded(_bytes(path), str(path))
-        data = _parsed(text, str(path)) if "tables" in text or "rows" in text else {}
+        data = _parsed(text, str(path)) if any(key in text for key in ("tables", "rows", "include")) else {}
     except (OSError, ValueError, UnusableInput):
         data = {}
-    return [path, *(path.parent / name for name in sheet_names(data) if inside(path.parent, name))]
+    sheets = [path.parent / name for name in sheet_names(data) if inside(path.parent, name)]
+    return [path, *sheets, *(path.parent / name for name in included_names(data) if nameable(name))]
 
 
 def _bytes(path: FilePath) -> bytes:
@@ -207,6 +214,7 @@ class _FrameReader:
     def __init__(self, data: Table, text: str, file: str, sha256: str) -> None:
         self.data, self.text, self.file, self.sha256 = data, text, file, sha256
         self.content = self.variant = ""
+        self.includes: tuple[Included, ...] = ()
         self.lines = Lines(text)
         units, fault = self._units()
         self.units = units
@@ -232,6 +240,9 @@ class _FrameReader:
         sums: list[str] = []
         if "tables" in self.data:
             self.data, sums = with_tables(self.check, self.data, folder)
+        if "include" in self.data:
+            self.data, self.includes = with_includes(self.check, self.data, folder)
+            sums = [*sums, *(one.sha256 for one in self.includes)]
         self.content = _checksum(self.text, sums)
         if "family" in self.data:
             self._choose(read_family(self.check, self.data["family"], folder), variant)
@@ -246,7 +257,8 @@ class _FrameReader:
         if family and variant in family:
             self.variant = variant
             self.data = of_variant(self.check, self.data, variant, family)
-            self.content = _checksum(json.dumps(self.data, sort_keys=True, default=str), [])
+            sums = [one.sha256 for one in self.includes]
+            self.content = _checksum(json.dumps(self.data, sort_keys=True, default=str), sums)
         elif family:
             says = f"there is no variant {shown(variant)}" if variant else f"the file makes {len(family)} frames"
             few = ", ".join(list(family)[:FEW]) + (", ..." if len(family) > FEW else "")
@@ -261,7 +273,7 @@ class _FrameReader:
     def frame(self) -> Frame:
         """Everything read and checked. Raises UnusableInput."""
         check = self.check
-        check.only(self.data, FILE_KEYS, (), "a frame file", "file")
+        check.only(self.data, FILE_KEYS, (), "a frame file")
         self._tables_there()
         materials = {name: self._material(name, value) for name, value in self._entries("materials")}
         sections = {name: self._section(name, value) for name, value in self._entries("sections")}
@@ -271,11 +283,16 @@ class _FrameReader:
         members = self._members(grid, joints, known)
         supports = self._supports(grid, joints)
         places = self._places(grid, joints, members, supports)
-        cases = self._cases(places)
+        stated = self._cases(places)
+        states = read_states(check, self.data.get("stiffness", {}), self._things(members, known, supports, grid))
+        valid = members if places.members_known else None
+        made = combined(check, self.data, stated, valid, grid.member_groups, states)
         frame = Frame(
             title=self._title(), units=self.units, materials=materials, sections=sections, joints=joints,
-            members=members, supports=supports, cases=cases, combinations=self._combinations(cases),
-            analysis=Analysis(), file=self.file, sha256=self.sha256, content=self.content, variant=self.variant,
+            members=members, supports=supports, cases=made.cases, combinations=made.combinations,
+            analysis=Analysis(), states=states, patterns=made.patterns, exclusive=made.exclusive,
+            envelopes=made.envelopes, ties=self._ties(places), includes=self.includes, parted=made.parted,
+            file=self.file, sha256=self.sha256, content=self.content, variant=self.variant,
             lines=self.lines,
         )  # fmt: skip
         return self._settled(frame, places)
@@ -398,16 +415,21 @@ class _FrameReader:
         table = self.check.table(value, path, '{ section = "post", material = "steel" }')
         if table is None:
             return Traits().member(name, "", "")
-        self.check.only(table, MEMBER_KEYS, path, "a member", "member")
+        self.check.only(table, MEMBER_KEYS, path, "a member")
         traits = read_traits(self.check, table, path, known)
         start, end, base = grid.members.get(name, ("", "", Traits()))
         if name not in grid.members or "from" in table or "to" in table:
             start, end = self._ends(name, table, path, joints)
         traits = traits.over(base)
-        for key in ("section", "material"):
-            if getattr(traits, key) is None:
-                self.check.note(path, f"{key} is missing", f"give {key}, the name of one in [{key}s]")
-        return traits.member(name, start, end)
+        member = traits.member(name, start, end)
+        if "profile" in table or "taper" in table:
+            pieces = read_pieces(self.check, table, path, known, _length(member, joints or {}))
+            member = replace(member, pieces=pieces, section=longest(pieces) if pieces else "")
+        elif traits.section is None:
+            self.check.note(path, "section is missing", "give section, the name of one in [sections]")
+        if traits.material is None:
+            self.check.note(path, "material is missing", "give material, the name of one in [materials]")
+        return member
 
     def _ends(self, name: str, table: Table, path: Path, joints: Mapping[str, Joint] | None) -> tuple[str, str]:
         """The joints of a member, stated or from its key; ("", "") with the fault noted where they are not clear."""
@@ -499,38 +521,23 @@ class _FrameReader:
         if table is None:
             return {}
         loads = LoadReader(self.check, places)
-        later = {key: value for key, value in table.items() if key == "exclusive" and not isinstance(value, dict)}
-        self.check.only(later, (), ("loads",), "[loads]", "loads")
-        return {name: loads.case(name, value) for name, value in table.items() if name not in later}
+        # A list called exclusive is the groups of cases that exclude each other, no case.
+        return {
+            name: loads.case(name, value)
+            for name, value in table.items()
+            if name != "exclusive" or isinstance(value, dict)
+        }
 
-    def _combinations(self, cases: Mapping[str, LoadCase]) -> dict[str, Combination]:
-        return {name: self._combination(name, value, cases) for name, value in self._entries("combinations")}
+    def _things(
+        self, members: Mapping[str, Member], known: Known, supports: Mapping[str, Support], grid: Grid
+    ) -> Things:
+        """What the names of a state of stiffness may mean."""
+        valid = members if members and grid.whole else None
+        return Things(valid, known.sections, known.materials, supports, grid.member_groups)
 
-    def _combination(self, name: str, value: object, cases: Mapping[str, LoadCase]) -> Combination:
-        path: Path = ("combinations", name)
-        self.check.usable_name(name, path, "combination")
-        if name in cases:
-            self.check.note(path, "a load case has this name too", "give the combination a name of its own")
-        table = self.check.table(value, path, "{ dead = 1.35 }")
-        if table is None:
-            return Combination(name, {})
-        if not table:
-            self.check.note(path, "combines nothing", "give factors by load case, such as { dead = 1.35 }")
-        stated = {key: factor for key, factor in table.items() if key in cases}
-        self._not_cases(table, stated, cases, path)
-        return Combination(name, {key: self.check.number(v, A_NUMBER, (*path, key)) for key, v in stated.items()})
-
-    def _not_cases(self, table: Table, stated: Table, cases: Mapping[str, LoadCase], path: Path) -> None:
-        """Notes every key of a combination that names no load case."""
-        others = {key: value for key, value in table.items() if key not in stated}
-        later = {key: value for key, value in others.items() if key in ("stiffness", "order", "lean")}
-        self.check.only(later, (), path, "a combination", "combination")
-        combinations = self.data.get("combinations")
-        for key in others.keys() - later.keys():
-            if isinstance(combinations, dict) and key in combinations:
-                self.check.note((*path, key), "is a combination, not a load case", "combine load cases only")
-            else:
-                self.check.note((*path, key), f"there is no load case {shown(key)}", self.check.near(key, cases))
+    def _ties(self, places: Places) -> dict[str, Tie]:
+        joints = places.joints if places.joints_known else None
+        return read_ties(self.check, self.data.get("ties", {}), joints, places.joint_groups, places.loose)
 
     def _analysis(self, default: Literal["elastic", "rigid"]) -> Analysis:
         table = self.check.table(self.data.get("analysis", {}), ("analysis",), '[analysis] with axial = "elastic"')
