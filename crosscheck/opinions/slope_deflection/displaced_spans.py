@@ -13,8 +13,8 @@ from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import Bools, Floats, Frame, Ints
 from crosscheck.frame.stations import Stations, stations
 from crosscheck.opinions.slope_deflection.division import TERMS
+from crosscheck.opinions.slope_deflection.parting import LoadRuns
 from crosscheck.opinions.slope_deflection.second_order import State, integral_of_pull
-from crosscheck.opinions.slope_deflection.spans import LoadRuns
 
 HALVINGS = 50
 DIVISIONS = 4

@@ -22,8 +22,8 @@ import numpy as np
 
 from crosscheck.frame.loads import SNAP, LoadTable
 from crosscheck.frame.model import Floats, Frame, Ints
-from crosscheck.opinions.slope_deflection.members import SplitLoads, split_loads, thermal_curvature
-from crosscheck.opinions.slope_deflection.spans import LoadRuns
+from crosscheck.opinions.slope_deflection.members import thermal_curvature
+from crosscheck.opinions.slope_deflection.parting import LoadRuns, SplitLoads, split_loads
 
 TERMS = 34
 LONGEST = 1.5

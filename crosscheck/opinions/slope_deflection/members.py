@@ -13,6 +13,7 @@ import numpy as np
 
 from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.opinions.slope_deflection.parting import SplitLoads, load_moments, split_loads
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,67 +53,6 @@ def coefficients(frame: Frame) -> Coefficients:
     rigid = frame.analysis.axial == "rigid"
     axial = np.full_like(s, np.nan) if rigid else t.E * t.A / t.clear
     return Coefficients(stiffness, axial)
-
-
-@dataclass(frozen=True, slots=True)
-class SplitLoads:
-    """A case's loads divided at the faces of the rigid zones, as flat rows.
-
-    place: 0 on the `from` zone, 1 on the flexible part, 2 on the `to` zone. at, start, end: from the `from` joint.
-    Lines: intensity `mean` at the middle and `slope` per length, each (rows, 2) for along and across.
-    """
-
-    point_member: Ints
-    point_place: Ints
-    point_at: Floats
-    point_force: Floats
-    point_couple: Floats
-    line_member: Ints
-    line_place: Ints
-    line_start: Floats
-    line_end: Floats
-    line_mean: Floats
-    line_slope: Floats
-
-
-def split_loads(frame: Frame, table: LoadTable) -> SplitLoads:
-    """Divide the loads of a case at the faces of the rigid zones."""
-    t = frame.member_table
-    m, at = table.point_member, table.point_at
-    place = np.where(at < t.zone[m, 0], 0, np.where(at > t.length[m] - t.zone[m, 1], 2, 1))
-    q = table.line_member
-    faces = np.column_stack([np.zeros(len(q)), t.zone[q, 0], t.length[q] - t.zone[q, 1], t.length[q]])
-    rows = [_clip_lines(table, faces[:, k], faces[:, k + 1], k) for k in range(3)]
-    member, part, start, end, mean, slope = (np.concatenate(column) for column in zip(*rows, strict=True))
-    return SplitLoads(
-        m, place, at, np.column_stack([table.point_along, table.point_across]), table.point_couple,
-        member, part, start, end, mean, slope,
-    )  # fmt: skip
-
-
-def _clip_lines(
-    table: LoadTable, lower: Floats, upper: Floats, place: int
-) -> tuple[Ints, Ints, Floats, Floats, Floats, Floats]:
-    start, end = np.maximum(table.line_start, lower), np.minimum(table.line_end, upper)
-    keep = end > start
-    run = (table.line_end - table.line_start)[keep, None]
-    first = np.stack([table.line_along[keep, 0], table.line_across[keep, 0]], axis=1)
-    last = np.stack([table.line_along[keep, 1], table.line_across[keep, 1]], axis=1)
-    slope = (last - first) / run
-    middle = 0.5 * (start + end)[keep, None] - table.line_start[keep, None]
-    member = table.line_member[keep]
-    return member, np.full(len(member), place), start[keep], end[keep], first + slope * middle, slope
-
-
-def load_moments(mean: Floats, slope: Floats, middle: Floats, half: Floats) -> tuple[Floats, Floats, Floats, Floats]:
-    """Integrals of w, w x, w x^2 and w x^3 over a linear load of middle intensity `mean` and gradient `slope` on
-    middle - half to middle + half. Centred, so that a narrow load loses no digits."""
-    h2 = half * half
-    zeroth = 2 * half * mean
-    first = 2 * half * (mean * middle + slope * h2 / 3)
-    second = 2 * half * (mean * (middle**2 + h2 / 3) + 2 * slope * middle * h2 / 3)
-    third = 2 * half * (mean * (middle**3 + middle * h2) + slope * (middle**2 * h2 + h2 * h2 / 5))
-    return zeroth, first, second, third
 
 
 @dataclass(frozen=True, slots=True)

@@ -21,7 +21,7 @@ from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import FREE, HELD, Floats, Frame, Ints
 from crosscheck.opinions.slope_deflection.division import Division, Pieces, divide, pieces
 from crosscheck.opinions.slope_deflection.members import FixedEnds, coefficients, fixed_ends
-from crosscheck.opinions.slope_deflection.spans import LoadRuns
+from crosscheck.opinions.slope_deflection.parting import LoadRuns
 from crosscheck.opinions.slope_deflection.system import PENALTY, gathered, support_axes
 
 EXACT = 1e-11

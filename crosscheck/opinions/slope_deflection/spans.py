@@ -11,7 +11,8 @@ from crosscheck.answer import CaseAnswer, Undetermined
 from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.frame.stations import Stations, stations
-from crosscheck.opinions.slope_deflection.members import SplitLoads, load_moments, split_loads, thermal_curvature
+from crosscheck.opinions.slope_deflection.members import thermal_curvature
+from crosscheck.opinions.slope_deflection.parting import LoadRuns as LoadRuns
 
 HALVINGS = 50
 SIXTHS = (1.0 - np.cos(np.pi * np.arange(6) / 5)) / 2
@@ -20,69 +21,6 @@ PARTS = np.linspace(1e-4, 1.0 - 1e-4, 9)
 """Between these the slope is looked at for a change of sign. At the very ends it may be zero, and its sign rounding."""
 TO_POWERS = np.linalg.inv(np.vander(SIXTHS, increasing=True))
 """From the values there to the coefficients of powers."""
-
-
-class LoadRuns:
-    """What the loads of one case add up to from each member's `from` joint to a place: power sums past each load."""
-
-    def __init__(self, frame: Frame, table: LoadTable) -> None:
-        self.frame, self.table = frame, table
-        self._split: SplitLoads = split_loads(frame, table)
-
-    def sums(self, member: Ints, x: Floats, side: Ints) -> tuple[Floats, Floats, Floats]:
-        """(n,) each: minus the along forces, the across forces, and the sagging moment about the place of across forces
-        and couples, of all loads before x (or at x where side is +1)."""
-        table = self.table
-        axial, shear, moment = np.zeros(len(x)), np.zeros(len(x)), np.zeros(len(x))
-        point, load = _pairs(member, table.point_member)
-        past = x[point] - table.point_at[load]
-        acts = (past > 0) | ((past == 0) & (side[point] > 0))
-        point, load, past = point[acts], load[acts], past[acts]
-        np.add.at(axial, point, -table.point_along[load])
-        np.add.at(shear, point, table.point_across[load])
-        np.add.at(moment, point, table.point_across[load] * past + table.point_couple[load])
-        point, zeroth_along, zeroth, first, _ = self._line_effects(member, x)
-        np.add.at(axial, point, -zeroth_along)
-        np.add.at(shear, point, zeroth)
-        np.add.at(moment, point, first)
-        return axial, shear, moment
-
-    def bends(self, member: Ints, x: Floats) -> tuple[Floats, Floats]:
-        """(n,) each, of loads on the flexible part before x: the double integral of their moment, and the integral of
-        their across force."""
-        table = self.table
-        area, pull = np.zeros(len(x)), np.zeros(len(x))
-        point, load = _pairs(member, table.point_member)
-        past = x[point] - table.point_at[load]
-        acts = (past > 0) & (self._split.point_place[load] == 1)
-        point, load, past = point[acts], load[acts], past[acts]
-        force, couple = table.point_across[load], table.point_couple[load]
-        np.add.at(area, point, force * past**3 / 6 + couple * past**2 / 2)
-        np.add.at(pull, point, force * past)
-        point, _, _, first, third = self._line_effects(member, x, flexible=True)
-        np.add.at(area, point, third / 6)
-        np.add.at(pull, point, first)
-        return area, pull
-
-    def _line_effects(
-        self, member: Ints, x: Floats, flexible: bool = False
-    ) -> tuple[Ints, Floats, Floats, Floats, Floats]:
-        """For pairs of a place and a line load begun before it: the place, the along force, and the integrals of
-        w, w d and w d^3 over the part before it, d being the distance back from the place."""
-        t = self._split
-        rows = np.flatnonzero(t.line_place == 1) if flexible else np.arange(len(t.line_member))
-        point, pick = _pairs(member, t.line_member[rows])
-        load = rows[pick]
-        begun = x[point] > t.line_start[load]
-        point, load = point[begun], load[begun]
-        start, end = t.line_start[load], np.minimum(t.line_end[load], x[point])
-        back, half = x[point] - (start + end) / 2, (end - start) / 2
-        # Middle intensity of the part before the place; distance runs backwards, hence the turned gradient.
-        shifted = (start + end) / 2 - (t.line_start[load] + t.line_end[load]) / 2
-        mean = t.line_mean[load] + t.line_slope[load] * shifted[:, None]
-        along = 2 * half * mean[:, 0]
-        zeroth, first, _, third = load_moments(mean[:, 1], -t.line_slope[load, 1], back, half)
-        return point, along, zeroth, first, third
 
 
 class ClosedFormSpans:
@@ -217,14 +155,3 @@ def _horner(coefficients: Floats, at: Floats) -> Floats:
     for column in coefficients.T[::-1]:
         value = value * at + column
     return value
-
-
-def _pairs(member: Ints, load_member: Ints) -> tuple[Ints, Ints]:
-    """Every pair of a place and a load on the same member, as indices into both."""
-    order = np.argsort(load_member, kind="stable")
-    ordered = load_member[order]
-    first, last = np.searchsorted(ordered, member), np.searchsorted(ordered, member, side="right")
-    count = last - first
-    place = np.repeat(np.arange(len(member)), count)
-    offset = np.arange(int(count.sum())) - np.repeat(np.cumsum(count) - count, count)
-    return place, order[np.repeat(first, count) + offset]
