@@ -19,7 +19,7 @@ def page(record: Record) -> str:
     count = iter(range(10_000))
 
     def drawn(picture: Picture) -> Markup:
-        return Markup(svg(picture.figure, picture.says, f"picture {next(count)}"))  # noqa: S704 - matplotlib escapes text
+        return Markup(svg(picture.sketch.figure(), picture.says, f"picture {next(count)}"))  # noqa: S704 - matplotlib escapes text
 
     return str(_template().render(record=record, kind=_kind, drawn=drawn, anchor=_anchor))
 

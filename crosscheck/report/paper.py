@@ -1,40 +1,143 @@
-"""The record as PDF: matplotlib's own pages, A4, set line by line; every drawing has a page of its own."""
+"""The record as PDF: matplotlib's own pages, A4, set line by line, drawings at their size among the words.
+
+A page of a record has some two hundred short texts. Each as a text of matplotlib's own would cost ten times the check
+of a large frame, most of it for measuring what here is measured already, so a page is one artist that writes them all.
+"""
 
 from __future__ import annotations
 
 import io
 import textwrap
 import warnings
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass, field
+from functools import cache
 from typing import Any
 
 import matplotlib
+from matplotlib.artist import Artist
 from matplotlib.backends.backend_pdf import PdfPages
+from matplotlib.collections import LineCollection
+from matplotlib.colors import to_rgb
 from matplotlib.figure import Figure
-from matplotlib.lines import Line2D
+from matplotlib.font_manager import FontProperties, findfont, get_font
+from matplotlib.ft2font import LoadFlags
 
 from crosscheck.report import words
 from crosscheck.report.pictures import Picture
 from crosscheck.report.record import Block, Facts, Gallery, Grid, Record, Says, Verbatim
+from crosscheck.report.sketch import Sketch
 
 PAGE = (8.27, 11.69)
 """A4 in inches; what stands on it fits Letter too when printed to its height."""
-LEFT, RIGHT, TOP, BOTTOM = 0.75, 7.55, 10.7, 0.95
+LEFT, RIGHT, TOP, BOTTOM = 0.75, 7.55, 10.95, 0.95
 LEADING = 1.32
-LETTER = 0.55
-"""Mean width of a letter in heights, on the wide side: nothing may run into its neighbour."""
-SERIF, MONO = "DejaVu Serif", "DejaVu Sans Mono"
+POINTS = 72.0
+INK, SOFT, HAIR, WATER = "#111111", "#565656", "#999999", "#efefef"
+ACROSS = 3
+"""Small drawings in a row."""
+GAP = 0.14
+"""Inches between columns."""
+
+
+@dataclass(frozen=True, slots=True)
+class Face:
+    """A letter: family, weight and slant."""
+
+    family: str = "DejaVu Serif"
+    weight: str = "normal"
+    slant: str = "normal"
+
+    def of(self, size: float) -> FontProperties:
+        return _properties(self, size)
+
+    def width(self, text: str, size: float) -> float:
+        """Inches that a line takes."""
+        advance = _advances(self)
+        return sum(map(advance, text)) * size / POINTS
+
+
+PLAIN, BOLD, ITALIC = Face(), Face(weight="bold"), Face(slant="italic")
+MONO = Face("DejaVu Sans Mono")
+
+
+@cache
+def _properties(face: Face, size: float) -> FontProperties:
+    style: Any = face.slant
+    return FontProperties(family=face.family, weight=face.weight, style=style, size=size)
+
+
+@cache
+def _advances(face: Face) -> Callable[[str], float]:
+    """A letter's width in heights, each looked up once."""
+    font = get_font(findfont(face.of(10.0)))
+
+    @cache
+    def advance(letter: str) -> float:
+        font.set_size(100.0, 72)
+        return float(font.load_char(ord(letter), flags=LoadFlags.NO_HINTING).linearHoriAdvance) / 65536 / 100
+
+    return advance
 
 
 def paper(record: Record) -> bytes:
     """The record as the bytes of a PDF file."""
-    setter = _Setter(record)
-    setter.head()
-    for number, section in enumerate(record.sections, 1):
-        setter.heading(f"{number}   {section.title}")
-        for block in section.blocks:
-            setter.block(block)
-    return setter.bound()
+    with warnings.catch_warnings():
+        warnings.filterwarnings("ignore", message="Glyph")
+        setter = _Setter(record)
+        setter.head()
+        for number, section in enumerate(record.sections, 1):
+            setter.heading(f"{number}   {section.title}")
+            for block in section.blocks:
+                setter.block(block)
+        return setter.bound()
+
+
+@dataclass(frozen=True, slots=True)
+class _Text:
+    """One line: its left end and baseline in inches."""
+
+    x: float
+    y: float
+    says: str
+    size: float
+    face: Face
+    ink: str
+
+
+@dataclass(slots=True)
+class _Page:
+    texts: list[_Text] = field(default_factory=list)
+    rules: list[tuple[float, float, float, float, float, str]] = field(default_factory=list)
+    drawings: list[tuple[Sketch, tuple[float, float, float, float]]] = field(default_factory=list)
+
+    def figure(self) -> Figure:
+        figure = Figure(figsize=PAGE)
+        figure.add_artist(_Lines(self.texts))
+        if self.rules:
+            ends = [[(x / PAGE[0], y / PAGE[1]), (u / PAGE[0], v / PAGE[1])] for x, y, u, v, _, _ in self.rules]
+            figure.add_artist(LineCollection(ends, linewidths=[r[4] for r in self.rules], transform=figure.transFigure,
+                                             colors=[r[5] for r in self.rules]))  # fmt: skip
+        for sketch, (x, y, wide, tall) in self.drawings:
+            sketch.on(figure, (x / PAGE[0], y / PAGE[1], wide / PAGE[0], tall / PAGE[1]))
+        return figure
+
+
+class _Lines(Artist):
+    """Every line of text of a page."""
+
+    def __init__(self, texts: Sequence[_Text]) -> None:
+        super().__init__()
+        self.texts = texts
+
+    def draw(self, renderer: Any) -> None:
+        for ink in dict.fromkeys(t.ink for t in self.texts):
+            gc = renderer.new_gc()
+            gc.set_foreground(to_rgb(ink))
+            for t in self.texts:
+                if t.ink == ink:
+                    renderer.draw_text(gc, t.x * POINTS, t.y * POINTS, t.says, t.face.of(t.size), 0.0)
+            gc.restore()
 
 
 class _Setter:
@@ -42,15 +145,15 @@ class _Setter:
 
     def __init__(self, record: Record) -> None:
         self.record = record
-        self.pages: list[Figure] = []
+        self.pages: list[_Page] = []
         self.y = 0.0
 
     @property
-    def page(self) -> Figure:
+    def page(self) -> _Page:
         return self.pages[-1]
 
-    def _fresh(self, figure: Figure | None = None) -> None:
-        self.pages.append(figure or Figure(figsize=PAGE))
+    def _fresh(self) -> None:
+        self.pages.append(_Page())
         self.y = TOP
 
     def _room(self, inches: float) -> bool:
@@ -60,43 +163,44 @@ class _Setter:
         self._fresh()
         return True
 
-    def _put(self, x: float, says: str, size: float, across: str = "left", **style: Any) -> None:
+    def _put(self, x: float, says: str, size: float, face: Face = PLAIN, ink: str = INK, right: bool = False) -> None:
         if says:
-            style.setdefault("family", SERIF)
-            self.page.text(x / PAGE[0], self.y / PAGE[1], says, fontsize=size, ha=across, va="baseline", parse_math=False,
-                           **style)  # fmt: skip
+            self.page.texts.append(_Text(x - face.width(says, size) if right else x, self.y, says, size, face, ink))
 
-    def _rule(self, width: float, up: float = 0.0, ink: str = "#111111") -> None:
-        y = (self.y + up) / PAGE[1]
-        self.page.add_artist(Line2D([LEFT / PAGE[0], RIGHT / PAGE[0]], [y, y], linewidth=width, color=ink))
+    def _rule(self, width: float, ink: str = INK, left: float = LEFT, right: float = RIGHT) -> None:
+        self.page.rules.append((left, self.y, right, self.y, width, ink))
 
-    def lines(self, says: str, size: float = 9.0, x: float = LEFT, **style: Any) -> None:
+    def lines(self, says: str, size: float = 9.0, x: float = LEFT, face: Face = PLAIN, ink: str = INK) -> None:
         """A paragraph."""
-        for line in wrapped(says, RIGHT - x, size):
+        for line in wrapped(says, RIGHT - x, size, face):
             self._room(_step(size))
             self.y -= _step(size)
-            self._put(x, line, size, **style)
+            self._put(x, line, size, face, ink)
 
     def head(self) -> None:
         r = self.record
         self._fresh()
-        self.lines(r.title.upper(), 8.0, color="#565656")
-        self.lines(r.subject, 15.0, weight="bold")
+        self.lines(r.title.upper(), 8.0, ink=SOFT)
+        self.lines(r.subject, 15.0, face=BOLD)
         self.y -= 0.15
         self._rule(1.5)
-        self.lines(r.verdict.upper(), 20.0, weight="bold")
+        self.y -= 0.06
+        self.lines(r.verdict.upper(), 20.0, face=BOLD)
         self.lines(r.sentence, 10.0)
+        if r.gist:
+            self.y -= 0.06
+            self.block(Facts(r.gist))
         if r.open:
             self.y -= 0.1
-            self.lines("NOT FOR ACCEPTANCE while this stands open:", 10.0, weight="bold")
+            self.lines("NOT FOR ACCEPTANCE while this stands open:", 10.0, face=BOLD)
             for reason in r.open:
                 self.lines(f"–  {reason}", 9.0)
 
     def heading(self, says: str) -> None:
-        self._room(0.9)
+        self._room(1.5)
         self.y -= 0.28
         self._rule(1.2)
-        self.lines(says, 12.0, weight="bold")
+        self.lines(says, 12.0, face=BOLD)
         self.y -= 0.06
 
     def block(self, block: Block) -> None:
@@ -114,40 +218,64 @@ class _Setter:
             case Picture():
                 self._picture(block)
             case Gallery():
-                for picture in block.pictures:
-                    self.lines(picture.caption)
+                self._gallery(block)
             case Verbatim():
                 self._verbatim(block)
 
     def _fact(self, label: str, text: str) -> None:
-        for k, line in enumerate(wrapped(text, RIGHT - LEFT - 1.7, 8.5)):
+        for k, line in enumerate(wrapped(text, RIGHT - LEFT - 1.9, 8.5)):
             self._room(_step(8.5))
             self.y -= _step(8.5)
-            self._put(LEFT, words.visible(label, 24) if k == 0 else "", 8.5, color="#565656")
-            self._put(LEFT + 1.7, line, 8.5)
+            self._put(LEFT, words.visible(label, 28) if k == 0 else "", 8.5, ink=SOFT)
+            self._put(LEFT + 1.9, line, 8.5)
 
     def _verbatim(self, block: Verbatim) -> None:
+        self._room(0.7)
         self.y -= 0.1
-        self.lines(block.title, 9.0, weight="bold")
+        self.lines(block.title, 9.0, face=BOLD)
         for number, text in enumerate(block.lines, 1):
-            for k, line in enumerate(wrapped(text, RIGHT - LEFT - 0.4, 6.5, 0.61, verbatim=True)):
+            for k, line in enumerate(verbatim_lines(text, RIGHT - LEFT - 0.4, 6.5)):
                 self._room(_step(6.5))
                 self.y -= _step(6.5)
-                self._put(LEFT + 0.25, str(number) if k == 0 else "", 6.0, "right", color="#565656")
-                self._put(LEFT + 0.4, line, 6.5, family=MONO)
+                # The number belongs to the line: one text for both.
+                self._put(LEFT, f"{number if k == 0 else '':>5}  {line}", 6.5, MONO)
+
+    # --- drawings
 
     def _picture(self, picture: Picture) -> None:
-        """The drawing's own figure becomes the page."""
-        figure = picture.figure
-        wide, tall = figure.get_size_inches()
-        share = min((RIGHT - LEFT) / wide, (TOP - BOTTOM - 1.0) / tall)
-        figure.set_size_inches(*PAGE)
-        wide, tall = wide * share, tall * share
-        figure.axes[0].set_position((LEFT / PAGE[0], (TOP - tall) / PAGE[1], wide / PAGE[0], tall / PAGE[1]))
-        self._fresh(figure)
-        self.y = TOP - tall - 0.1
-        self.lines(picture.caption, 9.0, style="italic")
-        self.y = BOTTOM  # what follows begins a page
+        """A drawing at its size with its caption below, both on one page."""
+        sketch = picture.sketch
+        share = min(1.0, (RIGHT - LEFT) / sketch.wide)
+        wide, tall = sketch.wide * share, sketch.tall * share
+        caption = len(wrapped(picture.caption, RIGHT - LEFT, 8.5)) * _step(8.5)
+        self._room(tall + caption + 0.1)
+        self._draw(sketch, LEFT, wide, tall)
+        self.lines(picture.caption, 8.5, face=ITALIC)
+        self.y -= 0.16
+
+    def _draw(self, sketch: Sketch, x: float, wide: float, tall: float) -> None:
+        self.y -= tall
+        self.page.drawings.append((sketch, (x, self.y, wide, tall)))
+
+    def _gallery(self, gallery: Gallery) -> None:
+        """Small drawings in rows, feet in one line."""
+        step = (RIGHT - LEFT) / ACROSS
+        for k in range(0, len(gallery.pictures), ACROSS):
+            self._room(1.75)
+            top = self.y
+            for column, picture in enumerate(gallery.pictures[k : k + ACROSS]):
+                sketch = picture.sketch
+                share = min((step - 0.3) / sketch.wide, 1.3 / sketch.tall)
+                self.y = top - 1.35 + sketch.tall * share
+                self._draw(sketch, LEFT + column * step, sketch.wide * share, sketch.tall * share)
+                self._caption(picture.caption, LEFT + column * step, step - 0.3)
+            self.y = top - 1.75
+
+    def _caption(self, says: str, x: float, width: float) -> None:
+        self._rule(0.4, HAIR, x, x + width)
+        for line in wrapped(says, width, 7.5)[:2]:
+            self.y -= _step(7.5)
+            self._put(x, line, 7.5)
 
     # --- tables
 
@@ -156,75 +284,110 @@ class _Setter:
         edges = [LEFT]
         for w in widths:
             edges.append(edges[-1] + w)
-        heads = [wrapped(head, w, size) for (head, _), w in zip(grid.columns, widths, strict=True)]
-        self._room(1.0)
+        heads = [wrapped(head, w - GAP, size, BOLD) for (head, _), w in zip(grid.columns, widths, strict=True)]
+        extra = 0.25 if len(grid.blank) > 2 else 0.0
+        self._room(1.0 + extra * len(grid.rows))
         self.y -= 0.08
         if grid.caption:
-            self.lines(grid.caption, 8.5, style="italic")
-        self._row(grid, edges, heads, size, weight="bold")
+            self.lines(grid.caption, 8.5, face=ITALIC)
+        self._row(grid, edges, heads, size, BOLD)
+        before = ""
         for row in grid.rows:
-            cells = [wrapped(cell, w, size) for cell, w in zip(row, widths, strict=True)]
-            tall = max(len(c) for c in cells) * _step(size) + 0.05 + (0.25 if len(grid.blank) > 2 else 0.0)
-            if self._room(tall):
-                self._row(grid, edges, heads, size, weight="bold")
-            self._row(grid, edges, cells, size, extra=0.25 if len(grid.blank) > 2 else 0.0)
+            cells = [wrapped(cell, w - GAP, size) for cell, w in zip(row, widths, strict=True)]
+            if self._room(max(len(c) for c in cells) * _step(size) + 0.05 + extra):
+                self._row(grid, edges, heads, size, BOLD)
+                before = ""
+            if row[0] == before:  # what a row is of is said once on a page
+                cells[0] = [""]
+            before = row[0]
+            self._row(grid, edges, cells, size, PLAIN, extra)
         self.y -= 0.1
 
     def _row(
-        self, grid: Grid, edges: Sequence[float], cells: Sequence[Sequence[str]], size: float, extra: float = 0.0,
-        **style: Any,
+        self, grid: Grid, edges: Sequence[float], cells: Sequence[Sequence[str]], size: float, face: Face,
+        extra: float = 0.0,
     ) -> None:  # fmt: skip
         top = self.y
         for (_, side), cell, left, right in zip(grid.columns, cells, edges[:-1], edges[1:], strict=True):
             self.y = top
             for line in cell:
                 self.y -= _step(size)
-                self._put(right - 0.08 if side == "right" else left, line, size, side, **style)
+                self._put(right - GAP if side == "right" else left, line, size, face, right=side == "right")
         self.y = top - max(len(c) for c in cells) * _step(size) - 0.05 - extra
-        self._rule(0.8 if style else 0.3, ink="#111111" if style else "#999999")
+        self._rule(0.8 if face is BOLD else 0.3, INK if face is BOLD else HAIR)
+        if face is PLAIN:
+            for k in grid.blank:  # room to write in is bounded, so that it is seen to be meant
+                self.page.rules.append((edges[k] - 0.05, top, edges[k] - 0.05, self.y, 0.3, HAIR))
 
     # --- the whole
 
     def bound(self) -> bytes:
         """Every page with its foot, in one file."""
         out = io.BytesIO()
-        with matplotlib.rc_context({"pdf.fonttype": 42, "pdf.compression": 6}), warnings.catch_warnings():
-            warnings.filterwarnings("ignore", message="Glyph")
-            with PdfPages(out, metadata={"Title": f"{self.record.title}: {words.visible(self.record.subject, 80)}",
-                                         "CreationDate": None}) as pdf:  # fmt: skip
+        with matplotlib.rc_context({"pdf.fonttype": 42, "pdf.compression": 6}):
+            title = f"{self.record.title}: {words.visible(self.record.subject, 80)}"
+            with PdfPages(out, metadata={"Title": title, "CreationDate": None}) as pdf:
                 for number, page in enumerate(self.pages, 1):
                     self._foot(page, number)
-                    pdf.savefig(page)
+                    figure = page.figure()
+                    if self.record.open:
+                        figure.text(0.5, 0.5, "NOT FOR ACCEPTANCE", fontsize=46, rotation=52, ha="center", va="center",
+                                    color=WATER, weight="bold", zorder=-10)  # fmt: skip
+                    pdf.savefig(figure)
         return out.getvalue()
 
-    def _foot(self, page: Figure, number: int) -> None:
-        y = 0.55 / PAGE[1]
-        style: dict[str, Any] = {"fontsize": 7, "family": SERIF, "va": "baseline", "parse_math": False}
-        page.text(LEFT / PAGE[0], y, f"crosscheck record {self.record.checksum[:32]}", ha="left", **style)
-        page.text(RIGHT / PAGE[0], y, f"page {number} of {len(self.pages)}", ha="right", **style)
-        if self.record.open:
-            page.text(0.5, 0.5, "NOT FOR ACCEPTANCE", fontsize=46, rotation=52, ha="center", va="center", color="#f0f0f0",
-                      weight="bold", zorder=-10)  # fmt: skip
+    def _foot(self, page: _Page, number: int) -> None:
+        y, says = 0.55, f"page {number} of {len(self.pages)}"
+        page.texts.append(_Text(LEFT, y, f"crosscheck record {self.record.checksum[:32]}", 7.0, PLAIN, INK))
+        page.texts.append(_Text(RIGHT - PLAIN.width(says, 7.0), y, says, 7.0, PLAIN, INK))
 
 
 def _step(size: float) -> float:
-    return LEADING * size / 72
+    return LEADING * size / POINTS
 
 
-def wrapped(text: str, width: float, size: float, letter: float = LETTER, verbatim: bool = False) -> list[str]:
-    """Lines of a text of `size` points that fit `width` inches; one empty line for none. verbatim: blanks are kept."""
-    most = max(int(width * 72 / (size * letter)), 2)
+def wrapped(text: str, width: float, size: float, face: Face = PLAIN) -> list[str]:
+    """Lines of a text of `size` points, none wider than `width` inches; one empty line for none. Words break only where
+    one alone is too wide."""
     lines: list[str] = []
     for part in words.visible(text).expandtabs(4).split("\n"):
-        lines += textwrap.wrap(part, most, drop_whitespace=not verbatim, replace_whitespace=False) or [""]
+        if face.width(part, size) <= width:
+            lines.append(part)
+        else:
+            lines += _broken(part, width, size, face)
     return lines
+
+
+def _broken(text: str, width: float, size: float, face: Face) -> Iterator[str]:
+    line = ""
+    for word in text.split():
+        longer = f"{line} {word}" if line else word
+        if face.width(longer, size) <= width:
+            line = longer
+            continue
+        if line:
+            yield line
+        line = word
+        while len(line) > 1 and face.width(line, size) > width:
+            fits = max(1, next((k for k in range(1, len(line)) if face.width(line[: k + 1], size) > width), len(line)))
+            yield line[:fits]
+            line = line[fits:]
+    yield line
+
+
+def verbatim_lines(text: str, width: float, size: float) -> list[str]:
+    """Lines of a text in letters of one width, its blanks kept."""
+    most = max(int(width / MONO.width("m", size)), 2)
+    parts = words.visible(text).expandtabs(4).split("\n")
+    return [line for part in parts
+            for line in textwrap.wrap(part, most, drop_whitespace=False, replace_whitespace=False) or [""]]  # fmt: skip
 
 
 def _fitted(grid: Grid) -> tuple[float, list[float]]:
     """Letter size and column widths in inches that fill the page: columns as wide as their words where there is room."""
     whole = RIGHT - LEFT
     for size in (8.0, 7.0, 6.0):
-        wants = [max(_lengths(grid, k)) * size * LETTER / 72 + 0.12 for k in range(len(grid.columns))]
+        wants = [_widest(grid, k, size) + GAP for k in range(len(grid.columns))]
         wants = [max(w, 1.1) if k in grid.blank else w for k, w in enumerate(wants)]
         if sum(wants) <= whole:
             spare = whole - sum(wants)
@@ -237,7 +400,7 @@ def _fitted(grid: Grid) -> tuple[float, list[float]]:
     return 6.0, [w * whole / sum(widths) for w in widths]
 
 
-def _lengths(grid: Grid, column: int) -> Iterator[int]:
-    """Of a column's cells; a head may stand in lines."""
-    yield max((len(word) for word in grid.columns[column][0].split()), default=1)
-    yield from (len(words.visible(row[column])) for row in grid.rows)
+def _widest(grid: Grid, column: int, size: float) -> float:
+    """Inches of a column's widest cell; a head may stand in lines."""
+    head = max((BOLD.width(word, size) for word in grid.columns[column][0].split()), default=0.1)
+    return max(head, *(PLAIN.width(words.visible(row[column]), size) for row in grid.rows), 0.1)

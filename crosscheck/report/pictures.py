@@ -10,7 +10,6 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from matplotlib.figure import Figure
 
 from crosscheck.answer import ACROSS, AXIAL, MOMENT, SHEAR, Answer
 from crosscheck.compare.claimed import ClaimedValue
@@ -31,9 +30,9 @@ NUMBERED = 40
 
 @dataclass(frozen=True, slots=True)
 class Picture:
-    """A figure with its caption; `says` is for those who cannot see it."""
+    """A drawing with its caption; `says` is for those who cannot see it."""
 
-    figure: Figure
+    sketch: Sketch
     caption: str
     says: str
 
@@ -52,7 +51,7 @@ def frame_picture(frame: Frame, marked: Sequence[tuple[int, Place]] = (), names:
         caption += " Ringed: the places in question, each by its first number in the table."
     if rest:
         caption += f" {words.counted(rest, 'further place')} not ringed."
-    return Picture(sketch.figure, caption, f"Drawing of the frame {frame.title}")
+    return Picture(sketch, caption, f"Drawing of the frame {frame.title}")
 
 
 def small_picture(frame: Frame, caption: str) -> Picture:
@@ -60,7 +59,7 @@ def small_picture(frame: Frame, caption: str) -> Picture:
     sketch = Sketch(frame, (1.0, 1.6, 1.6, 1.0))
     sketch.members(3.0)
     sketch.supports()
-    return Picture(sketch.figure, caption, f"Outline of the frame {frame.title}")
+    return Picture(sketch, caption, f"Outline of the frame {frame.title}")
 
 
 def loads_picture(frame: Frame, name: str) -> Picture:
@@ -74,7 +73,7 @@ def loads_picture(frame: Frame, name: str) -> Picture:
     caption = f"Loads of {name}, factors applied: {force}, {force}/{length} along members, couples {force} {length}."
     if not sketch.small:
         caption += f" Figures of spread loads are left out (more than {NAMED} members)."
-    return Picture(sketch.figure, caption, f"Loads of {name}")
+    return Picture(sketch, caption, f"Loads of {name}")
 
 
 class CasePictures:
@@ -110,7 +109,7 @@ class CasePictures:
         places = [(k, p) for k, p in self.marked if p.quantity == quantity and p.member]
         rest = _ring(sketch, places)
         says = f"{quantity} of {self.name} on the frame {frame.title}"
-        return Picture(sketch.figure, self._caption(quantity, drawn, rest), says)
+        return Picture(sketch, self._caption(quantity, drawn, rest), says)
 
     def _opinions(self, sketch: Sketch, value: Floats, scale: float, peak: float) -> None:
         outlines, ribs = [], []
@@ -213,7 +212,7 @@ class CasePictures:
         text = f"Deflected shape of {self.name}, displacements {times:,.3g} times their size, by {self.answer.opinion}."
         if self.values:
             text += " Squares: joints where the claim puts them." if claimed else " The claim gives no displacements."
-        return Picture(sketch.figure, text + (f" {words.counted(rest, 'further place')} not ringed." if rest else ""),
+        return Picture(sketch, text + (f" {words.counted(rest, 'further place')} not ringed." if rest else ""),
                        f"Deflected shape of {self.name}")  # fmt: skip
 
     def _shape(self, sketch: Sketch, m: int, moves: Floats, across: Floats, times: float) -> Floats:

@@ -11,11 +11,12 @@ import math
 import re
 import warnings
 from collections import Counter
-from collections.abc import Iterable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
 import matplotlib
 import numpy as np
+from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.patches import Circle, PathPatch, Polygon
 from matplotlib.path import Path
@@ -25,9 +26,13 @@ from crosscheck.frame.model import FREE, HELD, Floats, Frame, Support
 from crosscheck.report import words
 
 WIDTH = 7.1
-"""Inches: the text width of A4 and Letter with their usual margins."""
-LEAST, MOST = 1.9, 6.6
-"""Heights of a drawing in inches."""
+"""Inches: the text width of A4 and Letter with their usual margins. Drawings are printed at their size, never reduced,
+so that their figures can be read."""
+UNIT = WIDTH / 34
+"""Inches of a unit."""
+LEAST, MOST, TALLEST = 1.9, 4.0, 8.4
+"""Heights of a drawing in inches: two of MOST go on a page of A4 or Letter; a tall frame, or a high one of many
+members, has a page."""
 INK, GREY = "#111111", "#595959"
 NAMED = 60
 """Most members whose names stand in a drawing; beyond that only marked places are named."""
@@ -36,27 +41,47 @@ DIMENSIONED = 12
 
 
 class Sketch:
-    """A drawing of one frame on its own figure. room: units left free at its left, right, below and above."""
+    """A drawing of one frame, kept as a list of strokes until it is known on what page it goes.
+
+    room: units left free at its left, right, below and above. wide, tall: its size in inches.
+    """
 
     def __init__(self, frame: Frame, room: tuple[float, float, float, float] = (3.9, 3.9, 3.7, 3.7)) -> None:
         self.frame, self.xy, self.table = frame, frame.xy, frame.member_table
         low, high = self.xy.min(axis=0), self.xy.max(axis=0)
         size = np.maximum(high - low, 1e-9 * max(float(np.ptp(self.xy)), 1.0))
-        # 30 units go into the width of the page, or 26 into the greatest height, whichever is tighter.
         left, right, below, above = room
-        self.unit = max(size[0] / (34 - left - right), size[1] / (31 - below - above), 1e-12)
+        self.small = len(frame.members) <= NAMED
+        most = TALLEST if size[1] > (2.5 if self.small else 1.0) * size[0] else MOST
+        self.unit = max(size[0] / (WIDTH / UNIT - left - right), size[1] / (most / UNIT - below - above), 1e-12)
         self.low = low - self.unit * np.array([left, below])
         self.high = high + self.unit * np.array([right, above])
         span = self.high - self.low
-        height = min(max(WIDTH * span[1] / span[0], LEAST), MOST)
-        self.small = len(frame.members) <= NAMED
+        self.wide, self.tall = WIDTH, min(max(WIDTH * span[1] / span[0], LEAST), most)
         self._tips: list[Floats] = []
-        self.figure = Figure(figsize=(WIDTH, height))
-        self.axes = self.figure.add_axes((0.0, 0.0, 1.0, 1.0))
-        self.axes.set_axis_off()
-        self.axes.set_aspect("equal")
-        self.axes.set_xlim(self.low[0], self.high[0])
-        self.axes.set_ylim(self.low[1], self.high[1])
+        self._strokes: list[Callable[[Axes], object]] = []
+
+    # --- paper
+
+    def figure(self) -> Figure:
+        """The drawing on a figure of its own size."""
+        figure = Figure(figsize=(self.wide, self.tall))
+        self.on(figure, (0.0, 0.0, 1.0, 1.0))
+        return figure
+
+    def on(self, figure: Figure, place: tuple[float, float, float, float]) -> None:
+        """The drawing on part of a figure: left, bottom, width and height in shares of it."""
+        axes = figure.add_axes(place)
+        axes.set_axis_off()
+        axes.set_aspect("equal")
+        axes.set_xlim(self.low[0], self.high[0])
+        axes.set_ylim(self.low[1], self.high[1])
+        for stroke in self._strokes:
+            stroke(axes)
+
+    def _patch(self, kind: Callable[..., Any], *where: Any, **style: Any) -> None:
+        # As artists and not as patches, whose limits matplotlib would work out one by one.
+        self._strokes.append(lambda axes: axes.add_artist(kind(*where, clip_on=False, **style)))
 
     # --- ink
 
@@ -73,16 +98,15 @@ class Sketch:
             self._tips.clear()
 
     def _ink(self, path: Path, fill: str, ink: str, width: float, style: Any = "solid", zorder: int = 1) -> None:
-        self.axes.add_patch(PathPatch(path, facecolor=fill, edgecolor=ink, linewidth=width, linestyle=style, zorder=zorder,
-                                      clip_on=False, capstyle="butt", joinstyle="round"))  # fmt: skip
+        self._patch(PathPatch, path, facecolor=fill, edgecolor=ink, linewidth=width, linestyle=style, zorder=zorder,
+                    capstyle="butt", joinstyle="round")  # fmt: skip
 
     def area(self, corners: Any, fill: str = "none", ink: str = INK, width: float = 0.6) -> None:
-        self.axes.add_patch(Polygon(np.asarray(corners), closed=True, facecolor=fill, edgecolor=ink, linewidth=width,
-                                    clip_on=False))  # fmt: skip
+        self._patch(Polygon, np.asarray(corners), closed=True, facecolor=fill, edgecolor=ink, linewidth=width)
 
     def ring(self, at: Any, radius: float, fill: str = "white", width: float = 0.8) -> None:
-        self.axes.add_patch(Circle((float(at[0]), float(at[1])), radius * self.unit, facecolor=fill, edgecolor=INK,
-                                   linewidth=width, clip_on=False, zorder=3))  # fmt: skip
+        self._patch(Circle, (float(at[0]), float(at[1])), radius * self.unit, facecolor=fill, edgecolor=INK,
+                    linewidth=width, zorder=3)  # fmt: skip
 
     def squares(self, places: Sequence[Any], half: float = 0.22) -> None:
         """Hollow squares about places."""
@@ -93,9 +117,10 @@ class Sketch:
 
     def text(self, at: Any, says: str, size: float = 7.5, turn: float = 0.0, across: str = "center",
              up: str = "center", ink: str = INK, weight: str = "normal", slant: str = "normal") -> None:  # fmt: skip
-        self.axes.text(float(at[0]), float(at[1]), words.visible(says, 28), fontsize=size, rotation=turn, ha=across,
-                       va=up, color=ink, parse_math=False, fontweight=weight, fontstyle=slant,
-                       rotation_mode="anchor", zorder=4)  # fmt: skip
+        x, y, shown = float(at[0]), float(at[1]), words.visible(says, 28)
+        self._strokes.append(lambda axes: axes.text(
+            x, y, shown, fontsize=size, rotation=turn, ha=across, va=up, color=ink, parse_math=False,
+            fontweight=weight, fontstyle=slant, rotation_mode="anchor", zorder=4))  # fmt: skip
 
     def number(self, at: Any, count: int) -> None:
         """A ringed number that stands in a table too."""
