@@ -21,8 +21,8 @@ from crosscheck.opinions.moment_distribution.holding import (
     misfits,
     settle,
 )
-from crosscheck.opinions.moment_distribution.members import FixedEnds, fixed_ends
-from crosscheck.opinions.moment_distribution.pieces import cut, summed
+from crosscheck.opinions.moment_distribution.members import FixedEnds, cut_up, fixed_ends
+from crosscheck.opinions.moment_distribution.pieces import summed
 from crosscheck.problems import Problem, UnusableInput
 
 NAME = "moment-distribution"
@@ -47,7 +47,7 @@ def distribute(frame: Frame, names: tuple[str, ...]) -> Process:
     """Run the whole process for these cases at once."""
     held = hold(frame)
     tables = [load_table(frame, name) for name in names]
-    ends = tuple(fixed_ends(held.members, table, cut(frame.member_table, table)) for table in tables)
+    ends = tuple(fixed_ends(held.members, table, cut_up(held.members, table)) for table in tables)
     given = _given(held, tables, ends)
     state, trace, left = settle(held, given)
     _refuse_misfits(held, given, state, names)
@@ -70,11 +70,13 @@ def _given(held: Held, tables: Sequence[LoadTable], ends: Sequence[FixedEnds]) -
         for axis, part in enumerate((x, y)):
             force[:, axis, column] += summed(t.ends.ravel(), part.ravel(), joints)
     lengthening = _columns([e.lengthening for e in ends], len(t.length))
+    # A slack member's own loads are carried as if both its ends were held.
+    slack = m.held - m.axial
     return Given(
         couple=_columns([table.joint[:, 2] for table in tables], joints),
         force=held.sways.own_axes(force),
         fixed=np.stack([e.moment for e in ends], axis=-1) if ends else np.zeros((len(t.length), 2, 0)),
-        pull=-m.axial[:, None] * lengthening,
+        pull=-m.axial[:, None] * lengthening - slack[:, None] * _columns([e.by_loads for e in ends], len(t.length)),
         length=np.where(m.rigid[:, None], lengthening, 0.0),
         ground=_columns([table.settlement.ravel() for table in tables], 3 * joints),
     )

@@ -12,11 +12,14 @@ import numpy as np
 from crosscheck.answer import AXIAL, MOMENT, SHEAR, CaseAnswer
 from crosscheck.frame.loads import SNAP, load_table
 from crosscheck.frame.model import Floats, Frame, Ints
-from crosscheck.opinions.moment_distribution.members import Members, thermal_curvature
-from crosscheck.opinions.moment_distribution.pieces import NODES, WEIGHTS, Pieces, cut
+from crosscheck.opinions.moment_distribution.members import Members, cut_up, thermal_curvature
+from crosscheck.opinions.moment_distribution.pieces import Pieces
+from crosscheck.opinions.moment_distribution.varying import by_rule
 
 HALVINGS = 60
 """Halvings of an interval that holds one root: past the last digit."""
+LOOKS = np.linspace(0.0, 1.0, 9)
+"""Where a length of a stepped or tapered member is looked at for changes of the slope's sign; it bends little there."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,8 +76,12 @@ class MemberSpans:
         w, rate = pieces.intensity_across[real].T
         found.append(_roots(real, np.column_stack([pieces.shear[real], w, rate / 2]), pieces.size))
         found.append(_roots(real, np.column_stack([w, rate]), pieces.size))
-        bending = np.flatnonzero(pieces.inner)
+        some = self.members.varying
+        plain = pieces.inner if some is None else pieces.inner & ~some.where[pieces.member]
+        bending = np.flatnonzero(plain)
         found.append(_roots(bending, _slope_terms(self.members, bent, bending), pieces.size))
+        if some is not None:
+            found += _level_places(self.members, bent, np.flatnonzero(pieces.inner & some.where[pieces.member]))
         piece = np.concatenate([f[0] for f in found])
         x = pieces.start[piece] + np.concatenate([f[1] for f in found])
         member = pieces.member[piece]
@@ -92,7 +99,7 @@ def _bend(m: Members, frame: Frame, name: str, case: CaseAnswer) -> Bent:
     faces."""
     t, loads = m.table, load_table(frame, name)
     ends = case.ends
-    pieces = cut(t, loads).with_end_actions(ends[:, 0, AXIAL], ends[:, 0, SHEAR], ends[:, 0, MOMENT])
+    pieces = cut_up(m, loads).with_end_actions(ends[:, 0, AXIAL], ends[:, 0, SHEAR], ends[:, 0, MOMENT])
     curvature = thermal_curvature(t, loads)
     moved = case.joints[t.ends]
     end = moved[:, :, 1] * t.cos[:, None] - moved[:, :, 0] * t.sin[:, None]
@@ -120,14 +127,42 @@ def _gain(m: Members, bent: Bent, piece: Ints, s: Floats) -> tuple[Floats, Float
 
     Positive shear pushes the right-hand side of a cut down: shear strain is -shear / (G shear_area).
     """
-    k = bent.pieces.member[piece]
-    x = s[:, None] * NODES
-    moment, shear = bent.pieces.moment_at(piece[:, None], x), bent.pieces.shear_at(piece[:, None], x)
-    curvature = moment * m.bend[k, None] + bent.curvature[k, None]
-    weight = s[:, None] * WEIGHTS
-    turned = (curvature * weight).sum(axis=1)
-    lifted = ((curvature * (s[:, None] - x) - shear * m.slide[k, None]) * weight).sum(axis=1)
+    turned, lifted = np.empty(len(piece)), np.empty(len(piece))
+    for which, nodes, weights in by_rule(m.varying, bent.pieces.member[piece]):
+        p, reach = piece[which], s[which]
+        k = bent.pieces.member[p]
+        x = reach[:, None] * nodes
+        here = m.flexibility(bent.pieces, p, x)
+        moment, shear = bent.pieces.moment_at(p[:, None], x), bent.pieces.shear_at(p[:, None], x)
+        curvature = moment * here.bend + bent.curvature[k, None] * here.curl
+        weight = reach[:, None] * weights
+        turned[which] = (curvature * weight).sum(axis=1)
+        lifted[which] = ((curvature * (reach[:, None] - x) - shear * here.slide) * weight).sum(axis=1)
     return turned, bent.slope[piece] * s + lifted
+
+
+def _slope(m: Members, bent: Bent, piece: Ints, s: Floats) -> Floats:
+    """(n,) slope of the axis at distance s from the start of inner pieces, shear strain included."""
+    shear = bent.pieces.shear_at(piece, s)
+    by_shear = shear * m.flexibility(bent.pieces, piece, s[:, None]).slide[:, 0]
+    return np.asarray(bent.tilt[bent.pieces.member[piece]] + bent.slope[piece] + _gain(m, bent, piece, s)[0] - by_shear)
+
+
+def _level_places(m: Members, bent: Bent, piece: Ints) -> list[tuple[Ints, Floats]]:
+    """Pieces of stepped and tapered members, and distances from their start, where the axis is level; and the
+    starts of those where shear strain jumps."""
+    size = bent.pieces.size[piece]
+    at = np.stack([_slope(m, bent, piece, size * look) for look in LOOKS], axis=1)
+    row, column = np.nonzero(np.sign(at[:, :-1]) * np.sign(at[:, 1:]) < 0)
+    low, high, sign = LOOKS[column], LOOKS[column + 1], np.sign(at[row, column])
+    for _ in range(HALVINGS if len(row) else 0):
+        middle = (low + high) / 2
+        same = np.sign(_slope(m, bent, piece[row], size[row] * middle)) == sign
+        low, high = np.where(same, middle, low), np.where(same, high, middle)
+    after = piece[bent.pieces.inner[piece - 1]]
+    before = m.flexibility(bent.pieces, after - 1, bent.pieces.size[after - 1, None]).slide[:, 0]
+    jump = np.abs(m.flexibility(bent.pieces, after, np.zeros((len(after), 1))).slide[:, 0] - before) > 1e-9 * before
+    return [(piece[row], size[row] * (low + high) / 2), (after[jump], np.zeros(int(jump.sum())))]
 
 
 def _across(m: Members, bent: Bent, piece: Ints, s: Floats) -> Floats:
