@@ -261,7 +261,7 @@ class Displaced:
         s, found = self.held.sways, position.axial.copy()
         if len(s.basic):
             force = self.joint_forces(case, position, self.moments(position))[s.free]
-            found[s.basic] = s.balance(force[:, None])[:, 0]
+            found[s.rigid] = s.tensions(force[:, None])[0][:, 0]
         return found
 
     def reactions(self, case: Acting, position: Position, axial: Floats) -> Floats:

@@ -58,8 +58,8 @@ class Given:
 @dataclass(slots=True)
 class State:
     """The frame as corrected so far, (.., n): rotations (j, n), moves (2j, n) along own axes, end moments (m, 2, n)
-    on the members, axial force (m, n) at the `from` end, and support springs' forces (2j, n) and moments (j, n) on
-    the frame."""
+    on the members, axial force (m, n) at the `from` end, support springs' forces (2j, n) and moments (j, n) on the
+    frame, and forces of the ties (t, n), positive where they draw the first joint on."""
 
     rotation: Floats
     move: Floats
@@ -67,6 +67,7 @@ class State:
     axial: Floats
     push: Floats
     twist: Floats
+    tie: Floats
 
 
 @dataclass(frozen=True, slots=True)
@@ -220,27 +221,31 @@ def start(held: Held, given: Given) -> State:
     move = np.zeros((2 * joints, cases))
     move[s.held] = ground[:, :2].reshape(-1, cases)[s.held]
     if len(s.basic):
-        move[s.free[s.tied]] = s.tie(given.length[s.basic] - s.stretch[s.basic] @ move)
+        move[s.free[s.tied]] = s.tie((imposed(s, given) - s.bars @ move)[s.basic])
     state = State(
         rotation=np.zeros_like(rotation), move=np.zeros_like(move), moment=given.fixed.copy(),
         axial=given.pull.copy(), push=s.ground[:, None] * ground[:, :2].reshape(-1, cases),
-        twist=held.rotation_spring[:, None] * ground[:, 2],
+        twist=held.rotation_spring[:, None] * ground[:, 2], tie=np.zeros((s.together.shape[0], cases)),
     )  # fmt: skip
     add(held, state, np.arange(cases), rotation, move)
     state.axial[m.rigid] = 0.0
     return state
 
 
+def imposed(s: Sways, given: Given) -> Floats:
+    """(b, n) elongations imposed on the bars; ties have none."""
+    length = given.length[s.rigid]
+    return np.concatenate([length, np.zeros((s.together.shape[0], length.shape[1]))])
+
+
 def misfits(held: Held, given: Given, state: State) -> Bools:
-    """(m, n) redundant rigid members whose imposed length the others do not let them follow."""
+    """(b, n) redundant bars whose imposed elongation the others do not let them follow."""
     s = held.sways
-    off = np.zeros(given.length.shape, dtype=bool)
-    over = np.setdiff1d(s.bars, s.basic)
-    gap = np.abs(given.length[over] - s.stretch[over] @ state.move)
+    gap = np.abs(imposed(s, given) - s.bars @ state.move)
+    gap[s.basic] = 0.0
     size = np.abs(given.length).max(axis=0, initial=0.0) + np.abs(given.ground).max(axis=0, initial=0.0)
     size = size + 1e-6 * np.abs(state.move).max(axis=0, initial=0.0)
-    off[over] = gap > 1e-9 * size + 1e-300
-    return off
+    return np.asarray(gap > 1e-9 * size + 1e-300)
 
 
 def add(held: Held, state: State, cases: Ints, rotation: Floats, move: Floats) -> None:
@@ -276,6 +281,7 @@ def joint_forces(held: Held, given: Given, state: State, cases: Ints) -> Floats:
     return np.asarray(
         given.force[:, cases] + state.push[:, cases]
         + s.turn.T @ state.moment[:, :, cases].sum(axis=1) - s.stretch.T @ state.axial[:, cases]
+        - s.together.T @ state.tie[:, cases]
     )  # fmt: skip
 
 

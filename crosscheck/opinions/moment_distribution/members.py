@@ -61,8 +61,8 @@ class Members:
         k = pieces.member[piece]
         if self.varying is None or not self.varying.where[k].any():
             return Flexibility(self.bend[k, None], self.slide[k, None], self.stretch[k, None], np.ones((1, 1)))
-        found = Flexibility(*(np.broadcast_to(v[k, None], s.shape).copy() for v in (self.bend, self.slide, self.stretch)),
-                            np.ones(s.shape))
+        bend, slide, stretch = (np.repeat(v[k, None], s.shape[1], 1) for v in (self.bend, self.slide, self.stretch))
+        found = Flexibility(bend, slide, stretch, np.ones(s.shape))
         at = np.flatnonzero(self.varying.where[k])
         x = pieces.start[piece[at], None] + s[at]
         for whole, part in zip(found, self.varying.at(k[at], middles(pieces, piece[at]), x), strict=True):

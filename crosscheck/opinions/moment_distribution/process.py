@@ -89,12 +89,14 @@ def _columns(rows: Sequence[Floats], size: int) -> Floats:
 def _refuse_misfits(held: Held, given: Given, state: State, names: Sequence[str]) -> None:
     """Raise UnusableInput for imposed lengths that the axially rigid frame cannot follow, members named."""
     off = misfits(held, given, state)
-    members = list(held.frame.members)
+    s, members = held.sways, list(held.frame.members)
+    ties = [f"tie {tie.name}" for tie in held.frame.ties.values() for _ in tie.joints[1:]]
+    bars = [*(members[k] for k in s.rigid), *ties]
     problems = [
         Problem(
             held.frame.file, held.frame.lines.get(f"loads.{name}"), f"loads.{name}",
-            "the axially rigid frame cannot follow the lengths imposed on it at "
-            + ", ".join(members[k] for k in np.flatnonzero(off[:, column])),
+            "what keeps its length cannot follow what is imposed on it: "
+            + ", ".join(dict.fromkeys(bars[k] for k in np.flatnonzero(off[:, column]))),
             'axial = "elastic" would let the members give way',
         )
         for column, name in enumerate(names)
@@ -105,14 +107,14 @@ def _refuse_misfits(held: Held, given: Given, state: State, names: Sequence[str]
 
 
 def _balance_rigid_members(held: Held, given: Given, state: State) -> None:
-    """Axial forces of rigid members from the balance of the joints; redundant ones are left at zero.
+    """Forces of rigid members and ties from the balance of the joints; redundant ones are left at zero.
 
     Those that statics determines are the same whatever is put for the redundant ones.
     """
     s = held.sways
     if len(s.basic):
         every = np.arange(given.couple.shape[1])
-        state.axial[s.basic] = s.balance(joint_forces(held, given, state, every)[s.free])
+        state.axial[s.rigid], state.tie = s.tensions(joint_forces(held, given, state, every)[s.free])
 
 
 def case_answer(process: Process, column: int, undetermined: Undetermined) -> CaseAnswer:

@@ -2,10 +2,11 @@
 
 Elastic members let every joint move freely, and each free translation is a sway of its own. Axially rigid members tie
 the translations of their joints together. They are taken one after another, as bars are added to a pin-jointed
-structure: a bar that ties a translation not tied before joins the *skeleton*, the others are redundant. What is
-left untied are the sways (the classical degrees of freedom of sway). The skeleton is statically and kinematically
-determinate, so that one factorisation of it gives three things: the shape of each sway, the movements that imposed
-lengths make, and the axial forces that balance the joints.
+structure: a bar that ties a translation not tied before joins the *skeleton*, the others are redundant. Joints stated to
+move together along a direction are such bars between them, bars without a place of their own. What is left untied are
+the sways (the classical degrees of freedom of sway). The skeleton is statically and kinematically determinate, so that
+one factorisation of it gives three things: the shape of each sway, the movements that imposed lengths make, and the
+axial forces that balance the joints.
 
 Translations are along each joint's own axes: those of its support, global where it has none.
 """
@@ -20,6 +21,7 @@ import numpy as np
 from scipy import sparse
 from scipy.sparse.linalg import splu
 
+from crosscheck.frame.loads import direction_cosines
 from crosscheck.frame.model import HELD, Bools, Floats, Frame, Ints
 
 ROUNDING = 1e-14
@@ -33,21 +35,22 @@ PIVOT = 0.3
 @dataclass(frozen=True)
 class Sways:
     """stretch, turn: (m, 2j) sparse: elongation and clockwise chord rotation of each member per translation of a
-    joint.
+    joint. together: (t, 2j) sparse: how much further than the first joint of a tie another of its joints moves.
 
     free, held: which of the 2j translations (2 * joint + axis); loose joints are in neither. ground: (2j,) stiffness
-    of support springs. bars: the axially rigid members. basic: those in the skeleton; tied: positions in `free` that
-    they tie. shape: (f, q) sparse: the free translations in each unit sway.
+    of support springs. rigid: (k,) the axially rigid members; the bars are these and then the ties. basic: bars in the
+    skeleton; tied: positions in `free` that they tie. shape: (f, q) sparse: the free translations in each unit sway.
     """
 
     cos: Floats
     sin: Floats
     stretch: Any
     turn: Any
+    together: Any
     free: Ints
     held: Ints
     ground: Floats
-    bars: Ints
+    rigid: Ints
     basic: Ints
     tied: Ints
     shape: Any
@@ -58,13 +61,18 @@ class Sways:
         return np.setdiff1d(np.arange(len(self.free)), self.tied)
 
     @cached_property
+    def bars(self) -> Any:
+        """(b, 2j) sparse: elongation of each bar per translation of a joint."""
+        return _bars(self.stretch, self.rigid, self.together)
+
+    @cached_property
     def skeleton(self) -> Any:
         """Factorised (r, r) elongations of the skeleton's bars per tied translation; None without bars."""
         return splu(self._skeleton) if len(self.basic) else None
 
     @cached_property
     def _skeleton(self) -> Any:
-        return sparse.csc_array(self.stretch[self.basic][:, self.free[self.tied]])
+        return sparse.csc_array(self.bars[self.basic][:, self.free[self.tied]])
 
     def tie(self, lengths: Floats) -> Floats:
         """(r, n) tied translations that give the skeleton's bars these elongations, no sway moving."""
@@ -73,6 +81,14 @@ class Sways:
     def balance(self, forces: Floats) -> Floats:
         """(r, n) tensions in the skeleton's bars that take these forces (f, n) on the free translations."""
         return _refined(self.skeleton, self._skeleton.T, forces[self.tied], "T")
+
+    def tensions(self, forces: Floats) -> tuple[Floats, Floats]:
+        """(k, n) axial forces of the rigid members and (t, n) forces of the ties that take these forces (f, n) on the free
+        translations; redundant ones are left at zero."""
+        every = np.zeros((self.bars.shape[0], forces.shape[1]))
+        if len(self.basic):
+            every[self.basic] = self.balance(forces)
+        return every[: len(self.rigid)], every[len(self.rigid) :]
 
     def own_axes(self, xy: Floats) -> Floats:
         """Global (j, 2, n) vectors as (2j, n) in the joints' own axes."""
@@ -94,6 +110,7 @@ def sways(frame: Frame, rigid: Bools) -> Sways:
     across = np.column_stack([-t.sin, t.cos]) / t.length[:, None]
     stretch = _per_translation(frame, np.column_stack([t.cos, t.sin]), joints)
     turn = _per_translation(frame, -across, joints)
+    together = _together(frame)
     stiffness = support.stiffness[:, :2].ravel()
     joined = np.zeros(joints, dtype=bool)
     joined[t.ends.ravel()] = True
@@ -101,11 +118,36 @@ def sways(frame: Frame, rigid: Bools) -> Sways:
     free = np.flatnonzero(~held & (np.repeat(joined, 2) | (stiffness > 0)))
     bars = np.flatnonzero(rigid)
     meeting = np.bincount(t.ends[bars].ravel(), minlength=joints)[free // 2]
-    chosen, tied, shape = _skeleton_of(sparse.csr_array(stretch[bars][:, free]), meeting)
+    basic, tied, shape = _skeleton_of(sparse.csr_array(_bars(stretch, bars, together)[:, free]), meeting)
     return Sways(
-        cos=support.cos, sin=support.sin, stretch=stretch, turn=turn, free=free, held=np.flatnonzero(held),
-        ground=np.where(held, 0.0, stiffness), bars=bars, basic=bars[chosen], tied=tied, shape=shape,
+        cos=support.cos, sin=support.sin, stretch=stretch, turn=turn, together=together, free=free,
+        held=np.flatnonzero(held), ground=np.where(held, 0.0, stiffness), rigid=bars, basic=basic, tied=tied, shape=shape,
     )  # fmt: skip
+
+
+def _bars(stretch: Any, rigid: Ints, together: Any) -> Any:
+    return sparse.csr_array(sparse.vstack([stretch[rigid], together])) if together.shape[0] else stretch[rigid]
+
+
+def _together(frame: Frame) -> Any:
+    """(t, 2j) sparse, see Sways: a row for each joint of a tie after its first, in the joints' own axes."""
+    support = frame.support_table
+    rows: list[tuple[int, int, float]] = []
+    number = 0
+    for tie in frame.ties.values():
+        dx, dy = direction_cosines(tie.direction)
+        first, *others = (frame.joint_index[name] for name in tie.joints)
+        for other in others:
+            for joint, sign in ((first, -1.0), (other, 1.0)):
+                c, s = float(support.cos[joint]), float(support.sin[joint])
+                rows.append((number, 2 * joint, sign * (dx * c + dy * s)))
+                rows.append((number, 2 * joint + 1, sign * (dy * c - dx * s)))
+            number += 1
+    row, column, value = np.array(rows, dtype=float).reshape(-1, 3).T
+    where = (row.astype(np.int64), column.astype(np.int64))
+    matrix = sparse.csr_array((np.where(np.abs(value) > ROUNDING, value, 0.0), where), shape=(number, 2 * len(support.cos)))
+    matrix.eliminate_zeros()
+    return matrix
 
 
 def _per_translation(frame: Frame, direction: Floats, joints: int) -> Any:
