@@ -19,6 +19,7 @@ from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.frame.stations import stations
 from crosscheck.opinions import library, moment_distribution, slope_deflection
+from tests.exact import Exact
 from tests.random_frames import features_of, random_frame, random_frame_text
 from tests.truth import Truth
 
@@ -115,10 +116,10 @@ def _pairs(frame: Frame, name: str, one: Given, other: Given) -> dict[str, tuple
 
 
 def along(of: Given) -> Along:
-    if isinstance(of, Truth):
-        return of.along
-    assert isinstance(of, Answer)
-    return of.spans.along
+    if isinstance(of, Answer):
+        return of.spans.along
+    assert isinstance(of, Truth | Exact)
+    return of.along
 
 
 def _largest(

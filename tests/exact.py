@@ -62,9 +62,9 @@ def exact_root(square: Fraction) -> Fraction:
 
 def exact_direction(degrees: float) -> tuple[Fraction, Fraction]:
     """Cosine and sine of an angle that stands for a rational point of the unit circle. Raises NotRational."""
-    c = Fraction(math.cos(math.radians(degrees))).limit_denominator(1000)
-    s = Fraction(math.sin(math.radians(degrees))).limit_denominator(1000)
-    near = abs(float(c) - math.cos(math.radians(degrees))) < 1e-15 and abs(float(s) - math.sin(math.radians(degrees))) < 1e-15
+    cos, sin = math.cos(math.radians(degrees)), math.sin(math.radians(degrees))
+    c, s = Fraction(cos).limit_denominator(1000), Fraction(sin).limit_denominator(1000)
+    near = abs(float(c) - cos) < 1e-15 and abs(float(s) - sin) < 1e-15
     if c * c + s * s != 1 or not near:
         raise NotRational(f"{degrees} degrees has no rational cosine and sine")
     return c, s
@@ -109,7 +109,7 @@ class Exact:
         self.frame = frame
         self.members = list(frame.members.values())
         self.joints = list(frame.joints)
-        self.axes = {name: (UNIT, NOUGHT) for name in self.joints}
+        self.axes = dict.fromkeys(self.joints, (UNIT, NOUGHT))
         self.axes |= {s.joint: exact_direction(s.angle) for s in frame.supports.values()}
         self.held = [
             (s.joint, axis, stiffness)
@@ -378,7 +378,7 @@ class CannotFollow(Exception):
 def reduced(rows: list[Row], size: int) -> list[Row]:
     """Every unknown as an expression of the known (ONE) and of the unknowns that the rows leave open.
 
-    Gauss and Jordan, the shortest row first; exact, so that a pivot needs to be nothing but not nought. Raises CannotFollow.
+    Gauss and Jordan, the shortest row first; exact, so that any pivot but nought will do. Raises CannotFollow.
     """
     waiting = [dict(row) for row in rows if row]
     done: dict[int, Row] = {}

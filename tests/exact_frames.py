@@ -137,7 +137,8 @@ apply = [{ member = "B-C", uniform = 12, direction = "down" }, { joint = "B", fo
 [loads.q]
 apply = [{ member = "A-B", varying = [4, 1], direction = "right" }, { self_weight = 1 }]
 """),
-    "portal with a hinge": ("both", PORTAL.replace('"beam", material = "steel" }', '"beam", material = "steel", hinge = "to" }')
+    "portal with a hinge": ("both", PORTAL.replace(
+        '"beam", material = "steel" }', '"beam", material = "steel", hinge = "to" }')
                             + FEET + """
 [loads.q]
 apply = [{ member = "B-C", couple = 20, at = 6 }, { member = "D-C", force = 8, at = 1, direction = "left" }]
@@ -203,7 +204,10 @@ both = { snow = 1.5, wind = 0.9 }
     "gable with a tie": ("elastic", GABLE + '"B-D" = { section = "post", material = "timber", hinge = "both" }\n'
                          + '[supports]\nA = "pinned"\nE = "pinned"\n' + """
 [loads.q]
-apply = [{ member = "C-D", force = 25, at = "40%", direction = "down" }, { member = "B-D", uniform = 1, direction = "down" }]
+apply = [
+  { member = "C-D", force = 25, at = "40%", direction = "down" },
+  { member = "B-D", uniform = 1, direction = "down" },
+]
 """),
     "gable, loads along and across": ("both", GABLE + '[supports]\nA = "fixed"\nE = "fixed"\n' + """
 [loads.q]
@@ -270,7 +274,11 @@ D = [8, 6]
 A = "pinned"
 C = "pinned"
 [loads.q]
-apply = [{ joint = "B", force = 40, direction = "down" }, { member = "A-D", temperature = 20 }, { member = "B-D", misfit = 0.002 }]
+apply = [
+  { joint = "B", force = 40, direction = "down" },
+  { member = "A-D", temperature = 20 },
+  { member = "B-D", misfit = 0.002 },
+]
 """),
     "king post": ("both", """
 [joints]
@@ -288,7 +296,10 @@ D = [7.5, -4]
 A = "pinned"
 C = "roller"
 [loads.q]
-apply = [{ members = ["A-B", "B-C"], uniform = 6, direction = "down" }, { member = "B-C", force = 10, at = 3, direction = "down" }]
+apply = [
+  { members = ["A-B", "B-C"], uniform = 6, direction = "down" },
+  { member = "B-C", force = 10, at = 3, direction = "down" },
+]
 """),
 }  # fmt: skip
 """Name to (idealisations, the rest of the file)."""

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from crosscheck.frame.model import FREE, HELD, Floats, Frame
+from crosscheck.frame.model import FREE, Floats, Frame
 
 ELASTIC_LIMIT, RIGID_LIMIT = 10.0, 8.0
 """Powers of ten between stiffest and softest beyond which a check says so: axially elastic, and axially rigid."""
@@ -31,11 +31,16 @@ def member_spread(frame: Frame) -> Spread | None:
 
 
 def warnings(frame: Frame) -> tuple[str, ...]:
-    """What a check must say of a frame at the limits of its precision; soft support springs count as well."""
-    s = frame.support_table.stiffness[:, :2]
-    springs = np.where((s == FREE) | (s == HELD), np.nan, s).ravel()
+    """What a check must say of a frame at the limits of its precision.
+
+    Soft support springs count as well; stiff ones cost nothing, as measured, and the likes of 1e12 are written for held.
+    """
+    s = frame.support_table.stiffness[:, :2].ravel()
+    members = _members(frame)
+    stiffest = float(np.nan_to_num(members).max(initial=0.0))
+    springs = np.where((s == FREE) | (s >= stiffest), np.nan, s)
     names = [*frame.members, *frame.members, *(joint for joint in frame.joints for _ in range(2))]
-    found = _extremes(names, np.concatenate([_members(frame), springs]))
+    found = _extremes(names, np.concatenate([members, springs]))
     limit = ELASTIC_LIMIT if frame.analysis.axial == "elastic" else RIGID_LIMIT
     if found is None or found.digits <= limit:
         return ()
