@@ -79,7 +79,7 @@ BAD = [
     # --- columns and heads
     Bad("no heads", "\n".join(MOMENTS.splitlines()[1:]) + "\n", 2, ("--columns",)),
     Bad("no heads but columns stated", MOMENTS.partition("\n")[2], 0, (), ("--columns", "member, joint, M")),
-    Bad("no column of members", "Joint,M [kNm]\nA,17.475\nB,37.814\nC,36.066\n", 1, ("no support here",)),
+    Bad("no column of members", "Joint,M [kNm]\nA,17.475\nB,37.814\nC,36.066\n", 3, ("name the member",)),
     Bad("no column of ends", "Member,M [kNm]\nA-B,37.814\nB-C,-37.814\nC-D,-36.066\n", 3),
     Bad("two columns alike", "Member,Joint,M [kNm],M [kNm]\nA-B,A,17.475,37.814\nA-B,B,37.814,17.475\n", 3,
         ("more than one column",)),

@@ -9,7 +9,7 @@ import os
 
 import pytest
 
-from tests.claim_frame import bent
+from tests.claim_frame import BENT, Known, bent
 from tests.pastes import Tally, known, make, number
 
 SAMPLE = 45
@@ -77,3 +77,38 @@ def test_too_few_values_for_another_unit(count: int) -> None:
     verdict, closed, _ = k.judge("Load case: dead\nDisplacements\nJoint\tdx\n" + "\n".join(rows))
     assert verdict == "undecided"
     assert any("--units" in why for why in closed.undecided)
+
+
+# --- the sign of few values beside signs that others fix
+
+
+def _signed(moment: float, fy: float = 1.0) -> str:
+    """Reactions on the supports, rotations anticlockwise, and the only reaction moment turned by `moment`."""
+    k = one_foot()
+    c = k.answer.cases["dead"]
+    rows = ["Load case: dead", "Support reactions", "Joint\tFx [kN]\tFy [kN]\tMz [kNm]"]
+    for j in k.frame.supports:
+        x, y, m = c.reactions[k.frame.joint_index[j]]
+        rows.append(f"{j}\t{-x:.3f}\t{-fy * y:.3f}\t{moment * m:.3f}")
+    rows += ["Joint displacements", "Joint\tdx [mm]\tdy [mm]\trotation [mrad]"]
+    for j in k.frame.joints:
+        x, y, t = 1000 * c.joints[k.frame.joint_index[j]]
+        rows.append(f"{j}\t{x:.4f}\t{y:.4f}\t{-t:.4f}")
+    return "\n".join(rows)
+
+
+def one_foot() -> Known:
+    return Known(BENT.replace('D = "fixed"', 'D = "pinned"').replace('F = "fixed"', 'F = "pinned"'))
+
+
+def test_the_sign_of_one_reaction_moment_follows_from_the_other_signs() -> None:
+    """Reversed by acting on the support and again by being anticlockwise."""
+    verdict, closed, _ = one_foot().judge(_signed(moment=1.0))
+    assert verdict == "agree", closed.undecided
+    assert closed.signs["moment"] == "on the support, anticlockwise positive"
+
+
+def test_a_reversed_reaction_moment_is_no_convention_of_its_own() -> None:
+    verdict, closed, _ = one_foot().judge(_signed(moment=-1.0))
+    assert verdict == "undecided"
+    assert "sign of reaction moment" in closed.undecided[0]

@@ -114,3 +114,106 @@ def test_reactions_along_a_turned_supports_own_axes() -> None:
     assert cases[0].compared == 6
     wrong = "\n".join(rows).replace(rows[3].split("\t")[2], "99.0000")
     assert k.judge(f"Load case: dead\n{wrong}")[0] == "disagree"
+
+
+# --- moments at joints: reactions, or those of the members there
+
+
+@lru_cache(maxsize=1)
+def beam() -> Known:
+    return Known(SPANS)
+
+
+SPANS = """
+title = "Four spans and a cantilever"
+units = "kN m"
+[materials.s]
+E = "205 GPa"
+[sections.b]
+I = "21000 cm^4"
+A = "76 cm^2"
+[joints]
+A = [0, 0]
+B = [6, 0]
+C = [11.5, 0]
+D = [17, 0]
+E = [23.4, 0]
+F = [25, 0]
+[members]
+"A-B" = { section = "b", material = "s" }
+"B-C" = { section = "b", material = "s" }
+"D-C" = { section = "b", material = "s" }
+"D-E" = { section = "b", material = "s" }
+"E-F" = { section = "b", material = "s" }
+[supports]
+A = "fixed"
+B = "roller"
+C = "roller"
+D = "roller"
+E = "roller"
+[loads.floor]
+apply = [
+  { members = ["A-B", "B-C", "D-C", "D-E"], uniform = 14, direction = "down" },
+  { joint = "F", force = 16, direction = "down" },
+]
+"""
+
+
+def over_supports(joints: str, sign: float = 1.0, wrong: str = "", by: float = -1.0, head: str = "Support\tM [kNm]") -> str:
+    """Bending moments over the supports, sagging positive."""
+    k = beam()
+    x = {"A": ("A-B", 0.0, 1), "B": ("A-B", 6.0, -1), "C": ("B-C", 5.5, -1), "D": ("D-E", 0.0, 1), "E": ("D-E", 6.4, -1)}
+    rows = [head]
+    for joint in joints:
+        member, at, side = x[joint]
+        where = np.array([k.frame.member_index[member]]), np.array([at]), np.array([side])
+        value = sign * k.answer.spans.along("floor", *where)[0, 2] * (by if joint == wrong else 1.0)
+        rows.append(f"{joint}\t{value:.3f}")
+    return "\n".join(rows) + "\n"
+
+
+@pytest.mark.parametrize(("sign", "said"), [(1.0, "sagging"), (-1.0, "hogging")])
+def test_moments_over_supports_are_those_of_the_members(sign: float, said: str) -> None:
+    verdict, closed, cases = beam().judge(over_supports("ABCDE", sign))
+    assert verdict == "agree", closed
+    assert cases[0].compared == 5
+    assert said in closed.signs["moment"]
+    assert any("moments at joints are those of the members" in note for note in closed.notes)
+
+
+@pytest.mark.parametrize(
+    "text", [over_supports("BC"), over_supports("ABCDE", wrong="C"), over_supports("ABCDE", wrong="D", by=1.2)]
+)
+def test_moments_at_joints_that_fit_too_few_or_not_all_are_undecided(text: str) -> None:
+    verdict, closed, _ = beam().judge(text)
+    assert verdict == "undecided"
+    assert "name the member" in closed.undecided[0]
+
+
+def test_moments_under_the_word_reactions_are_reactions() -> None:
+    assert beam().judge("Reactions\n" + over_supports("ABCDE"))[0] == "disagree"
+    k = bent()
+    rows = [f"{j}\t{k.answer.cases['dead'].reactions[k.frame.joint_index[j], 2]:.3f}" for j in "ADF"]
+    text = "Load case: dead\nJoint\tM [kNm]\n" + "\n".join(rows)
+    assert k.judge(text)[0] == "agree"
+    assert k.judge(text.replace(rows[2], f"F\t{1.2 * float(rows[2][2:]):.3f}"))[0] == "undecided"
+    assert k.judge("Reactions\n" + text.replace(rows[2], f"F\t{1.2 * float(rows[2][2:]):.3f}"))[0] == "disagree"
+
+
+def test_a_moment_at_a_joint_in_words() -> None:
+    k = beam()
+    value = abs(float(over_supports("C").split()[-1]))
+    assert k.judge(f"the moment at C is {value:.2f} kNm")[0] == "agree"
+    assert k.judge(f"the moment at C is {1.2 * value:.2f} kNm")[0] == "disagree"
+    verdict, closed, _ = bent().judge("dead: the moment at C is 20 kNm")  # three members meet there
+    assert verdict == "undecided"
+    assert "which member's moment at C" in closed.undecided[0]
+
+
+def test_one_support_reaction_in_words_is_held_to_that_joint() -> None:
+    """The joint's own reaction is the scale, not what the joint moves by."""
+    k = bent()
+    fx, fy, _ = k.answer.cases["dead"].reactions[k.frame.joint_index["D"]]
+    assert k.judge(f"dead: Rx at D {abs(fx):.2f} kN, Ry {abs(fy):.2f} kN")[0] == "agree"
+    assert k.judge(f"dead: Rx at D {1.4 * abs(fx):.2f} kN")[0] == "disagree"
+    assert k.judge(f"dead: Ry at D {0.95 * abs(fy):.2f} kN")[0] == "disagree"

@@ -45,8 +45,8 @@ def grid_of(table: RawTable, names: Names, columns: tuple[str, ...] = ()) -> Gri
 
 
 def _blank_rows(table: RawTable, names: Names) -> list[list[Cell]]:
-    """Cells of rows parted by blanks. A blank parts thousands only where rows are not of one length without: "1 125.620" may
-    be a name and its value."""
+    """Cells of rows parted by blanks. A blank parts thousands only where rows are not of one length without: "1 125.620"
+    may be a name and its value."""
 
     def rows(grouped: bool) -> list[list[Cell]]:
         return [join_names(join_units(split(text, "blank", grouped)), names) for _, text in table.rows]

@@ -66,6 +66,8 @@ def meaning_of(grid: Grid, table: RawTable, names: Names) -> Meaning:
     roles, why = _values(kind, heads, roles, grid)
     if not any(r.name == "value" for r in roles):
         return Meaning("", tuple(roles), why or "no column of results was recognised")
+    if kind == "reaction":
+        roles = _open_moments(roles, grid, table)
     if kind == "end" and not any(r.name in ("joint", "end") for r in roles):
         kind = "ends" if any(r.name == "value" and r.end is not None for r in roles) else "end"
     return Meaning(kind, tuple(roles), why)
@@ -317,6 +319,14 @@ def _with_displacements(heads: list[Head], roles: list[Role], grid: Grid) -> tup
     moves, other = _values("displacement", [h if m else Head("") for h, m in zip(heads, moving, strict=True)], roles, grid)
     moves = [replace(r, kind="displacement") if r.name == "value" else r for r in moves]
     return [b if m else a for a, b, m in zip(pulls, moves, moving, strict=True)], why or other
+
+
+def _open_moments(roles: list[Role], grid: Grid, table: RawTable) -> list[Role]:
+    """Moments alone, at joints, may be reactions or the moments of the members there, unless reactions are spoken of."""
+    told = any(re.search("react|rxn|rct", t, re.IGNORECASE) for t in (table.heading, *(h.text for h in grid.heads)))
+    if told or {r.quantity for r in roles if r.name == "value"} != {"moment"}:
+        return roles
+    return [replace(r, axes="open") if r.name == "value" else r for r in roles]
 
 
 def _turning_told(heads: list[Head]) -> list[Head]:

@@ -57,6 +57,8 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
         reader.sentence(line, sentence, case)
     for sentence in options.values:
         reader.value(sentence, file)
+    if not reader.entries and reader.untold:
+        reader.undecided.append(reader.untold[0])
     if reader.left_inside:
         whole = ", ".join(sorted(reader.left_inside))
         reader.notes.append(f"values inside {whole} are not compared: it is not said where its parts meet")
@@ -84,8 +86,9 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
 def _nothing(scanned: Scan, reader: _Reader) -> tuple[str, str]:
     rows = sum(len(t.rows) for t in scanned.tables)
     why = f": {reader.odd[0][2]}" if reader.odd else ""
+    nothing = f"no results were recognised{why}" if why else "it holds no results"
     return (
-        f"no results were recognised in its {rows} rows of numbers{why}" if rows else "it holds no results",
+        f"no results were recognised in its {rows} rows of numbers{why}" if rows else nothing,
         "give a table with heads such as Member, End, N, V, M, or say what the columns are with --columns",
     )
 
@@ -151,6 +154,8 @@ class _Reader:
     undecided: list[str] = field(default_factory=list)
     echo: list[EchoFact] = field(default_factory=list)
     left_inside: set[str] = field(default_factory=set)
+    untold: list[str] = field(default_factory=list)
+    """Why values in words were not understood."""
     commas: bool = False
     """Does any table of the paste show that its commas stand before decimals? A table that cannot tell follows it."""
 
@@ -221,6 +226,7 @@ class _Reader:
         """Values in words on a line of the paste."""
         entries, odd = entries_told(text, line, len(self.tables) + 1, self.names)
         self.entries += [replace(e, case=e.case or case) for e in entries]
+        self.untold += odd
         rows = [(line, text.strip()[:200], why) for why in odd]
         self.odd += rows
         self._trace(rows)

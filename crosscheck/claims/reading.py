@@ -13,7 +13,7 @@ from typing import Literal
 
 from crosscheck.claims.numbers import Number
 from crosscheck.claims.words import Size
-from crosscheck.frame.model import Frame
+from crosscheck.frame.model import FREE, Frame
 
 Kind = Literal["end", "span", "reaction", "displacement", "extreme"]
 """What a value is (crosscheck.compare.claimed holds what becomes of it)."""
@@ -30,6 +30,8 @@ class FrameNames:
     xy: Mapping[str, tuple[float, float]]
     cases: tuple[str, ...]
     supports: frozenset[str] = frozenset()
+    turning: frozenset[str] = frozenset()
+    """Joints whose support holds or springs the rotation, so that a moment can react there."""
     force: float = 1000.0
     length: float = 1.0
 
@@ -40,6 +42,7 @@ class FrameNames:
             xy={j.name: (j.x, j.y) for j in frame.joints.values()},
             cases=frame.names,
             supports=frozenset(frame.supports),
+            turning=frozenset(s.joint for s in frame.supports.values() if s.rotation != FREE),
             force=frame.units.newton,
             length=frame.units.metre,
         )
@@ -75,7 +78,8 @@ class Entry:
     """One value read.
 
     table: number of its table, 1 for the first. kind, quantity: as in ClaimedValue; for forces whose axes the table
-      leaves open (member columns Fx, Fy) axial and shear are meant, and `axes` says "open".
+      leaves open (member columns Fx, Fy) axial and shear are meant, and `axes` says "open"; so it does for moments at
+      joints that may be reactions or moments of the members there.
     member, joint: names in the frame. end: the frame's end (0 from, 1 to) of an end value; place: the paste's (0 its
       start, 1 its end); run: +1 where the paste's member runs as the frame's, -1 where it runs the other way, 0 where
       the paste does not say. Either of end and place may be None while run is 0.

@@ -35,6 +35,7 @@ _WORDS = {
 _MOST = re.compile(r"\bmax(?:imum|\.)?\b|max\b|\bpeak\b|\blargest\b|\bgreatest\b|\bup to\b|\bmin(?:imum)?\b", re.IGNORECASE)
 _SENSE = {"up": ("fy", 1), "upward": ("fy", 1), "upwards": ("fy", 1), "down": ("fy", -1), "downward": ("fy", -1),
           "downwards": ("fy", -1), "right": ("fx", 1), "left": ("fx", -1)}  # fmt: skip
+_BEARING = re.compile(r"reaction|\b[RF]y\b", re.IGNORECASE)
 _MOVES = {"fx": "dx", "fy": "dy"}
 _BY_DIMENSION: dict[Dimension, tuple[str, ...]] = {
     FORCE: ("axial", "shear", "fx", "fy"), MOMENT: ("moment",), LENGTH: ("dx", "dy", "across"), ANGLE: ("rotation",),
@@ -92,7 +93,7 @@ def looks_told(text: str, names: Names) -> bool:
         return True
     return bool(told) and all(t.unit and t.unit.dimension in _BY_DIMENSION for t in told) and any(
         _MOST.search(t.words) or any(re.search(p, t.words, re.IGNORECASE) for q, p in _WORDS.items() if q != "fy")
-        or "reaction" in t.words.lower()
+        or _BEARING.search(t.words)
         for t in told
     )  # fmt: skip
 
@@ -158,10 +159,21 @@ def _entry(told: _Told, line: int, table: int, names: Names, before: Entry | Non
                 return None, f"{joint} is not an end of member {member.name}"
             return replace(blank, kind="end", member=member.name, end=end, joint=joint, extreme=None), ""
         if member is None and joint is not None and sense == "moment":
-            return replace(blank, joint=joint), ""
+            return _moment_at(joint, blank, names)
         whole = member.name if member else before.member if before is not None and joint is None else None
         return replace(blank, member=whole, extreme="size"), ""
     return replace(blank, joint=joint), ""
+
+
+def _moment_at(joint: str, blank: Entry, names: Names) -> tuple[Entry | None, str]:
+    """The moment at a joint: of the only member there, or of either of two where no moment can react; else a reaction."""
+    ends = [(name, pair.index(joint)) for name, pair in names.frame.members.items() if joint in pair]
+    held = joint in names.frame.turning
+    if len(ends) == 1 or len(ends) == 2 and not held:
+        return replace(blank, kind="end", member=ends[0][0], end=ends[0][1], joint=joint, extreme=None), ""
+    if held:
+        return replace(blank, joint=joint), ""
+    return None, f"it is not said which member's moment at {joint} the {blank.number.printed} are"
 
 
 def turned_by_word(told: _Told) -> bool:

@@ -150,7 +150,7 @@ class ClaimComparison:
         if v.quantity in JOINT_COLUMN:
             rows = slice(None) if v.joint is None else [self.frame.joint_index[v.joint]]
             values = known.joints[rows, JOINT_COLUMN[v.quantity]]
-        elif v.quantity in ("fx", "fy"):
+        elif v.quantity in ("fx", "fy") or v.joint is not None:
             rows = slice(None) if v.joint is None else [self.frame.joint_index[v.joint]]
             values = known.reactions[rows, REACTION_COLUMN[v.quantity]]
         else:
@@ -207,7 +207,8 @@ class ClaimComparison:
             ends = known.ends[self.frame.member_index[str(v.member)]][:, min(END_COLUMN[v.quantity], 2)]
             own = own if v.quantity == "across" else np.concatenate([own, ends])
         elif v.joint is not None:
-            table = known.reactions if v.kind == "reaction" else known.joints
+            reacts = KIND[v.quantity] in ("forces", "moments")
+            table = known.reactions if reacts else known.joints
             columns = (0, 1) if KIND[v.quantity] in ("forces", "displacements") else (2,)
             own = table[self.frame.joint_index[v.joint], columns]
         else:

@@ -19,7 +19,7 @@ from crosscheck.compare.fit_conventions import Batch, distance, placed
 from crosscheck.compare.fit_signs import Senses, narrowed, plain_where_loads_turn, senses
 from crosscheck.compare.fit_stations import with_stations
 from crosscheck.compare.fit_values import Reference
-from crosscheck.compare.fit_variants import variants
+from crosscheck.compare.fit_variants import open_moment, variants
 from crosscheck.compare.tolerance import Tolerance
 from crosscheck.frame.model import Frame
 from crosscheck.frame.units import FORCE, LENGTH, MOMENT, Dimension, unit_name
@@ -41,17 +41,34 @@ def close(
         return closer.result((), [], ["no opinion speaks for this frame"])
     entries, notes = _of_case(reading, case)
     ways: list[tuple[int, ClosedClaim]] = []
+    open_moments = any(open_moment(e) for e in entries)
     for tried, said in variants(entries, frame, reading.face):
         closed = _close_case(closer, tried, [*notes, said] if said else notes, case)
-        if closer.sure(closed):
+        # Moments of members are another way than reactions, which at least three values must speak against.
+        if closer.sure(closed) and not (open_moments and ways and ways[0][0] < FIXED_BY):
             return closed
         ways.append((sum(closer.bad[n] for n in closed.cases), closed))
+    if open_moments:
+        return _without_open_moments(closer, entries, notes, case)
     if any(e.comma_open for e in entries):
         reason = "commas may stand before decimals or before thousands; print one number with both marks, or with a point"
         return closer.result((), notes, [reason])
     plain, best = ways[0], min(ways, key=lambda way: way[0])
     # Another way than the plain one must explain at least three values, and most of what does not fit.
     return best[1] if best[1].cases and plain[0] - best[0] >= FIXED_BY and 2 * best[0] < plain[0] else plain[1]
+
+
+def _without_open_moments(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
+    """Judged on everything else: moments at joints fit neither as reactions nor surely as those of members."""
+    left = [e for e in entries if not open_moment(e)]
+    reason = (
+        'it is not said whether the moments at joints are reactions or those of members; '
+        'write "reactions" above them, or name the member'
+    )
+    if not left:
+        return closer.result((), notes, [reason])
+    closed = _close_case(closer, left, notes, case)
+    return replace(closed, undecided=(*closed.undecided, reason))
 
 
 def _close_case(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:

@@ -178,6 +178,9 @@ def _extreme_scale(batch: Batch, mine: Bools, reference: Reference) -> Floats:
     out: Floats = np.maximum(np.nan_to_num(most), LEAST_SHARE * reference.scales.of(batch.quantity))
     if (member >= 0).any():
         out[member >= 0] = reference.member_scale(batch.quantity)[member[member >= 0]]
+    elif (joint >= 0).any():
+        kind = "displacement" if batch.quantity in ("dx", "dy", "rotation") else "reaction"
+        out[joint >= 0] = reference.joint_scale(batch.quantity, kind)[joint[joint >= 0]]
     return out
 
 

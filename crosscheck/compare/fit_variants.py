@@ -13,6 +13,7 @@ import numpy as np
 
 from crosscheck.claims.numbers import Number, parse_number
 from crosscheck.claims.reading import Entry
+from crosscheck.compare.fit_conventions import member_runs
 from crosscheck.frame.model import Frame
 
 Variant = tuple[list[Entry], str]
@@ -30,6 +31,10 @@ def variants(entries: list[Entry], frame: Frame, face: bool) -> Iterator[Variant
         turned = in_member_axes(entries, frame)
         if turned is not None:
             yield turned, "end forces Fx, Fy are in global axes, by fit"
+    if any(open_moment(e) for e in entries):
+        of_members = moments_of_members(plain, frame)
+        if of_members is not None:
+            yield of_members, "moments at joints are those of the members there, by fit"
     if any(e.kind == "reaction" and _tilt(e, frame) for e in entries):
         tilted = in_global_axes(entries, frame)
         if tilted is not None:
@@ -86,6 +91,32 @@ def in_member_axes(entries: list[Entry], frame: Frame) -> list[Entry] | None:
         m = frame.member_index[str(member)]
         angle = float(np.arctan2(frame.member_table.sin[m], frame.member_table.cos[m]))
         out += _turned(pair["axial"], pair["shear"], angle, end)
+    return out
+
+
+def open_moment(e: Entry) -> bool:
+    """A moment at a joint that may be a reaction or that of a member there."""
+    return e.kind == "reaction" and e.quantity == "moment" and e.axes == "open"
+
+
+def moments_of_members(entries: list[Entry], frame: Frame) -> list[Entry] | None:
+    """Moments at joints taken as bending moments in the one or two members there, run to the right or upward; None where
+    more of them meet."""
+    at: dict[str, list[tuple[str, int]]] = {}
+    for m in frame.members.values():
+        for end, joint in enumerate((m.joint_from, m.joint_to)):
+            at.setdefault(joint, []).append((m.name, end))
+    out = []
+    for e in entries:
+        if open_moment(e):
+            members = at.get(str(e.joint), [])
+            if not 1 <= len(members) <= 2:
+                return None
+            name, end = members[0]
+            run = int(member_runs(frame, "rightward")[frame.member_index[name]])
+            share = float(end if run > 0 else 1 - end)
+            e = replace(e, kind="span", member=name, run=run, at=share, at_share=True, axes="")
+        out.append(e)
     return out
 
 

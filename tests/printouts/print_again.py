@@ -1,5 +1,5 @@
-"""How the printouts in this folder were made: three frames solved by other general-purpose finite element libraries, printed
-with those libraries' own means and with pandas, numpy and tabulate, as somebody who uses them would.
+"""How the printouts in this folder were made: three frames solved by other general-purpose libraries, printed with those
+libraries' own means and with pandas, numpy and tabulate, as somebody who uses them would.
 
 Not run by the tests, and none of these is a dependency. In an environment of its own:
 
