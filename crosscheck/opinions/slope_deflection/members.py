@@ -14,6 +14,7 @@ import numpy as np
 from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.opinions.slope_deflection.parting import SplitLoads, load_moments, split_loads
+from crosscheck.opinions.slope_deflection.varying import flexibility, simple_beam
 
 
 @dataclass(frozen=True, slots=True)
@@ -21,7 +22,7 @@ class Coefficients:
     """The generalised slope-deflection equation M = stiffness @ phi + FEM of every member.
 
     stiffness: (m, 2, 2) end moments (at the faces) from end rotations against the chord, force*length per radian.
-    axial: (m,) axial force per elongation, force/length; NaN where the member is axially rigid.
+    axial: (m,) axial force per elongation, force/length; NaN where the member is axially rigid, 0 where it is slack.
     """
 
     stiffness: Floats
@@ -33,26 +34,29 @@ def coefficients(frame: Frame) -> Coefficients:
 
     A simple beam under clockwise end moments turns by
         phi_1 = (l/3EI + 1/(G As l)) M_1 + (-l/6EI + 1/(G As l)) M_2
-    and a connection of stiffness k adds M/k. With g = k/(k + s), s = EI/l, which is 1 for a rigid end and 0 for a hinge,
-    the inverse is G (F G + (1 - G)/s)^-1: hinges need no separate formula. Plain ends give 4s and 2s, a far
-    hinge 3s.
+    (a stepped or tapered one as in varying.py) and a connection of stiffness k adds M/k. With g = k/(k + s), s = EI/l,
+    which is 1 for a rigid end and 0 for a hinge, the inverse is G (F G + (1 - G)/s)^-1: hinges need no separate formula,
+    and any other s gives the same. Plain ends give 4s and 2s, a far hinge 3s.
     """
     t = frame.member_table
     s = t.E * t.I / t.clear
     shear = s / (t.G * t.shear_area * t.clear) if frame.analysis.shear == "elastic" else np.zeros_like(s)
     grip = np.where(np.isinf(t.turn), 1.0, t.turn / (np.where(np.isinf(t.turn), 0.0, t.turn) + s[:, None]))
-    same, cross = 1.0 / 3.0 + shear, -1.0 / 6.0 + shear
+    near, cross, far, axial = 1.0 / 3.0 + shear, -1.0 / 6.0 + shear, 1.0 / 3.0 + shear, t.E * t.A / t.clear
+    if t.varying.any():
+        v = flexibility(frame)
+        for whole, own in ((near, v.near), (cross, v.cross), (far, v.far)):
+            whole[v.member] = own * s[v.member]
+        axial[v.member] = 1.0 / v.pull
     g1, g2 = grip[:, 0], grip[:, 1]
-    a11, a12 = same * g1 + 1.0 - g1, cross * g2
-    a21, a22 = cross * g1, same * g2 + 1.0 - g2
+    a11, a12 = near * g1 + 1.0 - g1, cross * g2
+    a21, a22 = cross * g1, far * g2 + 1.0 - g2
     scale = s / (a11 * a22 - a12 * a21)
     stiffness = np.empty((len(s), 2, 2))
     stiffness[:, 0, 0] = g1 * a22 * scale
     stiffness[:, 1, 1] = g2 * a11 * scale
     stiffness[:, 0, 1] = stiffness[:, 1, 0] = -g1 * a12 * scale
-    rigid = frame.analysis.axial == "rigid"
-    axial = np.full_like(s, np.nan) if rigid else t.E * t.A / t.clear
-    return Coefficients(stiffness, axial)
+    return Coefficients(stiffness, np.where(t.rigid, np.nan, np.where(t.slack, 0.0, axial)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -81,9 +85,12 @@ def fixed_ends(frame: Frame, table: LoadTable, stiffness: Floats) -> FixedEnds:
     +k l/2 and -k l/2; line loads by integrating the first. Forces cause no end rotation by shear.
     """
     loads = split_loads(frame, table)
-    turn = _rotations(frame, table, loads)
     between, axial = _flexible_totals(frame, loads)
+    turn = _rotations(frame, table, loads)
     t = frame.member_table
+    if t.varying.any():
+        turns, held = simple_beam(frame, table, between[:, 2])
+        turn, axial = np.where(t.varying[:, None], turns, turn), np.where(t.varying, held, axial)
     heat = np.where(table.mean != 0.0, table.mean * t.alpha * t.clear, 0.0)
     return FixedEnds(
         moments=-np.einsum("mij,mj->mi", stiffness, turn),
@@ -96,10 +103,17 @@ def fixed_ends(frame: Frame, table: LoadTable, stiffness: Floats) -> FixedEnds:
 
 def simple_beam_rotations(frame: Frame, table: LoadTable) -> Floats:
     """(m, 2) clockwise end rotations phi_0 of the members' flexible parts as simple beams under their loads."""
-    return _rotations(frame, table, split_loads(frame, table))
+    loads = split_loads(frame, table)
+    turn = _rotations(frame, table, loads)
+    varying = frame.member_table.varying
+    if not varying.any():
+        return turn
+    turns, _ = simple_beam(frame, table, _flexible_totals(frame, loads)[0][:, 2])
+    return np.where(varying[:, None], turns, turn)
 
 
 def _rotations(frame: Frame, table: LoadTable, loads: SplitLoads) -> Floats:
+    """Those of prismatic members, in closed form; rows of stepped and tapered ones mean nothing."""
     return _point_rotations(frame, loads) + _line_rotations(frame, loads) + _thermal_rotations(frame, table)
 
 
@@ -136,7 +150,7 @@ def _thermal_rotations(frame: Frame, table: LoadTable) -> Floats:
 
 
 def thermal_curvature(frame: Frame, table: LoadTable) -> Floats:
-    """(m,) free curvature, sagging positive (a warmer -y face lengthens), 1/length."""
+    """(m,) free curvature, sagging positive (a warmer -y face lengthens), 1/length; means nothing for a varying member."""
     t = frame.member_table
     return np.asarray(np.where(table.difference != 0.0, t.alpha * table.difference / t.depth, 0.0))
 

@@ -12,7 +12,8 @@ from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.frame.stations import Stations, stations
 from crosscheck.opinions.slope_deflection.members import thermal_curvature
-from crosscheck.opinions.slope_deflection.parting import LoadRuns as LoadRuns
+from crosscheck.opinions.slope_deflection.parting import LoadRuns
+from crosscheck.opinions.slope_deflection.varying import Bent
 
 HALVINGS = 50
 SIXTHS = (1.0 - np.cos(np.pi * np.arange(6) / 5)) / 2
@@ -42,7 +43,12 @@ class ClosedFormSpans:
         """Where shear passes zero, where it turns, and where the deflection turns, piece by piece between stations."""
         left, right = self._pieces
         member, a, b = self._stations.member[left], self._stations.x[left], self._stations.x[right]
-        found = [*self._shear_places(name, member, a, b), self._level_places(name, member, a, b)]
+        found = self._shear_places(name, member, a, b)
+        varying = self.frame.member_table.varying
+        plain = ~varying[member]
+        found.append(self._level_places(name, member[plain], a[plain], b[plain]))
+        if varying.any():
+            found.append(self._varying(name).level(self._lean(name)))
         return np.concatenate([m for m, _ in found]), np.concatenate([x for _, x in found])
 
     @cached_property
@@ -76,14 +82,21 @@ class ClosedFormSpans:
         face_1, face_2 = t.zone[member, 0], (t.length - t.zone[:, 1])[member]
         inside = np.clip(x, face_1, face_2)
         bent = self._bend(name, member, inside)
-        whole = self._bend(name, member, face_2)
         w1 = near[member] - np.nan_to_num(turn_near[member]) * face_1
-        w2 = far[member] + np.nan_to_num(turn_far[member]) * (t.length[member] - face_2)
-        # The chord and the slope at the `from` face: whatever makes the deflection at the `to` face come out right.
-        flexible = w1 + bent + (w2 - w1 - whole) * (inside - face_1) / t.clear[member]
+        flexible = w1 + bent + self._lean(name)[member] * (inside - face_1)
         zone_1 = near[member] - np.nan_to_num(turn_near[member]) * x
         zone_2 = far[member] + np.nan_to_num(turn_far[member]) * (t.length[member] - x)
         return np.where(x < face_1, zone_1, np.where(x > face_2, zone_2, flexible))
+
+    def _lean(self, name: str) -> Floats:
+        """(m,) slope at the `from` face, that of the chord included: whatever makes the deflection at the `to` face come
+        out right."""
+        t = self.frame.member_table
+        near, far, turn_near, turn_far = self._joint_moves(name)
+        whole = self._bend(name, np.arange(len(t.length)), t.length - t.zone[:, 1])
+        w1 = near - np.nan_to_num(turn_near) * t.zone[:, 0]
+        w2 = far + np.nan_to_num(turn_far) * t.zone[:, 1]
+        return np.asarray((w2 - w1 - whole) / t.clear)
 
     def _joint_moves(self, name: str) -> tuple[Floats, Floats, Floats, Floats]:
         """Displacement along local y and rotation of each member's two joints, all (m,)."""
@@ -102,7 +115,21 @@ class ClosedFormSpans:
         pull += shear_1[member] * d
         curve = thermal_curvature(self.frame, table)[member] * d**2 / 2
         shear = pull / (t.G * t.shear_area)[member] if self.frame.analysis.shear == "elastic" else 0.0
-        return np.asarray(area / (t.E * t.I)[member] + curve - shear)
+        bend = np.asarray(area / (t.E * t.I)[member] + curve - shear)
+        own = np.flatnonzero(t.varying[member])
+        if len(own):
+            bend[own] = self._varying(name).at(member[own], x[own])
+        return bend
+
+    def _varying(self, name: str) -> Bent:
+        """What the stepped and tapered members do between their faces."""
+        if name not in self._bents:
+            self._bents[name] = Bent(self.frame, self.tables[name], *self._face_actions(name))
+        return self._bents[name]
+
+    @cached_property
+    def _bents(self) -> dict[str, Bent]:
+        return {}
 
     def _face_actions(self, name: str) -> tuple[Floats, Floats]:
         """Shear and moment just inside the `from` zone, before any load at the face itself, (m,) each."""
