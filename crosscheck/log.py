@@ -10,6 +10,7 @@ import dataclasses
 import json
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -77,6 +78,12 @@ def changed(history: Sequence[Entry], frame: Frame) -> Entry | None:
     """The last check of this frame against a claim, where the frame has changed since."""
     own = [e for e in history if e.claim and e.variant == frame.variant]
     return own[-1] if own and own[-1].content != frame.content else None
+
+
+def reworked(history: Sequence[Entry]) -> int:
+    """How often the frame of the last entry was changed after a claim was first seen, each frame of a family apart."""
+    own = [e for e in history if e.claim and e.variant == history[-1].variant]
+    return sum(before.content != after.content for before, after in pairwise(own))
 
 
 def ask_for_reason(history: Sequence[Entry], frame: Frame, reason: str) -> None:

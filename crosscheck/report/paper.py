@@ -36,8 +36,8 @@ POINTS = 72.0
 INK, SOFT, HAIR, WATER = "#111111", "#565656", "#999999", "#efefef"
 ACROSS = 3
 """Small drawings in a row."""
-GAP = 0.14
-"""Inches between columns."""
+GAP, SPARE = 0.14, 0.35
+"""Inches between columns, and at most that much wider where there is room: what is far apart is not read together."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,7 +87,7 @@ def paper(record: Record) -> bytes:
         setter = _Setter(record)
         setter.head()
         for number, section in enumerate(record.sections, 1):
-            setter.heading(f"{number}   {section.title}")
+            setter.heading(f"{number}   {section.title}", section.blocks[0] if section.blocks else None)
             for block in section.blocks:
                 setter.block(block)
         return setter.bound()
@@ -181,6 +181,8 @@ class _Setter:
         r = self.record
         self._fresh()
         self.lines(r.title.upper(), 8.0, ink=SOFT)
+        filed = "; ".join(f"{label} {text}" for label, text in r.filed)
+        self._put(RIGHT, words.visible(f"{filed}; {r.when}" if filed else r.when, 90), 8.0, right=True)
         self.lines(r.subject, 15.0, face=BOLD)
         self.y -= 0.15
         self._rule(1.5)
@@ -196,12 +198,14 @@ class _Setter:
             for reason in r.open:
                 self.lines(f"–  {reason}", 9.0)
 
-    def heading(self, says: str) -> None:
-        self._room(1.5)
+    def heading(self, says: str, before: Block | None) -> None:
+        """A section's title, on the page on which what it stands `before` begins."""
+        self._room(0.6 + (self._height(before) if isinstance(before, Picture) else 1.0))
         self.y -= 0.28
         self._rule(1.2)
+        self.y -= 0.04
         self.lines(says, 12.0, face=BOLD)
-        self.y -= 0.06
+        self.y -= 0.08
 
     def block(self, block: Block) -> None:
         match block:
@@ -247,11 +251,16 @@ class _Setter:
         sketch = picture.sketch
         share = min(1.0, (RIGHT - LEFT) / sketch.wide)
         wide, tall = sketch.wide * share, sketch.tall * share
-        caption = len(wrapped(picture.caption, RIGHT - LEFT, 8.5)) * _step(8.5)
-        self._room(tall + caption + 0.1)
+        self._room(self._height(picture))
         self._draw(sketch, LEFT, wide, tall)
         self.lines(picture.caption, 8.5, face=ITALIC)
         self.y -= 0.16
+
+    @staticmethod
+    def _height(picture: Picture) -> float:
+        """Inches that a drawing takes with its caption."""
+        tall = picture.sketch.tall * min(1.0, (RIGHT - LEFT) / picture.sketch.wide)
+        return tall + len(wrapped(picture.caption, RIGHT - LEFT, 8.5, ITALIC)) * _step(8.5) + 0.1
 
     def _draw(self, sketch: Sketch, x: float, wide: float, tall: float) -> None:
         self.y -= tall
@@ -290,6 +299,7 @@ class _Setter:
         self.y -= 0.08
         if grid.caption:
             self.lines(grid.caption, 8.5, face=ITALIC)
+            self.y -= 0.05
         self._row(grid, edges, heads, size, BOLD)
         before = ""
         for row in grid.rows:
@@ -314,7 +324,7 @@ class _Setter:
                 self.y -= _step(size)
                 self._put(right - GAP if side == "right" else left, line, size, face, right=side == "right")
         self.y = top - max(len(c) for c in cells) * _step(size) - 0.05 - extra
-        self._rule(0.8 if face is BOLD else 0.3, INK if face is BOLD else HAIR)
+        self._rule(0.8 if face is BOLD else 0.3, INK if face is BOLD else HAIR, right=edges[-1])
         if face is PLAIN:
             for k in grid.blank:  # room to write in is bounded, so that it is seen to be meant
                 self.page.rules.append((edges[k] - 0.05, top, edges[k] - 0.05, self.y, 0.3, HAIR))
@@ -390,8 +400,8 @@ def _fitted(grid: Grid) -> tuple[float, list[float]]:
         wants = [_widest(grid, k, size) + GAP for k in range(len(grid.columns))]
         wants = [max(w, 1.1) if k in grid.blank else w for k, w in enumerate(wants)]
         if sum(wants) <= whole:
-            spare = whole - sum(wants)
-            return size, [w + spare / len(wants) for w in wants]
+            spare = (whole - sum(wants)) / len(wants)
+            return size, [w + (spare if grid.blank else min(spare, SPARE)) for w in wants]
     numbers = [side == "right" for _, side in grid.columns]
     fixed = sum(w for w, n in zip(wants, numbers, strict=True) if n)
     loose = sum(min(w, 2.5) for w, n in zip(wants, numbers, strict=True) if not n)

@@ -16,7 +16,7 @@ from crosscheck.compare.claimed import ClaimedValue
 from crosscheck.compare.differences import Place
 from crosscheck.compare.opinions import with_turning_points
 from crosscheck.frame.loads import load_table
-from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.frame.model import FREE, Floats, Frame, Ints
 from crosscheck.frame.stations import stations
 from crosscheck.report import words
 from crosscheck.report.sketch import GREY, NAMED, Sketch
@@ -44,14 +44,35 @@ def frame_picture(frame: Frame, marked: Sequence[tuple[int, Place]] = (), names:
     sketch.members()
     sketch.connections()
     sketch.supports()
+    sketch.one_way()
+    sketch.ties()
     sketch.names(names)
     rest = _ring(sketch, marked)
-    caption = f"Distances in {frame.units.length}. Open ring: hinge; barred ring: semi-rigid end; thick: rigid zone."
+    caption = f"Distances in {frame.units.length}. {_legend(frame)}".rstrip()
     if marked:
         caption += " Ringed: the places in question, each by its first number in the table."
     if rest:
         caption += f" {words.counted(rest, 'further place')} not ringed."
     return Picture(sketch, caption, f"Drawing of the frame {frame.title}")
+
+
+def _legend(frame: Frame) -> str:
+    """What the signs of this frame stand for, and no others."""
+    t, members = frame.member_table, frame.members.values()
+    ends = t.turn[np.isfinite(t.turn)]
+    signs = {
+        "open ring: hinge": bool((ends == FREE).any()),
+        "barred ring: semi-rigid end": bool((ends != FREE).any()),
+        "thick: rigid zone": bool((t.zone > 0).any()),
+        "outlined: stepped or tapered, depths to a scale of the member's own": any(m.pieces for m in members),
+        "arrow heads apart: works in tension only": any(m.only == "tension" for m in members),
+        "arrow heads together: works in compression only": any(m.only == "compression" for m in members),
+        "dotted with a double arrow: joints tied along it": bool(frame.ties),
+    }
+    shown = "; ".join(sign for sign, there in signs.items() if there)
+    rigid = [m.name for m in members if m.axial == "rigid"]
+    text = f"{shown[:1].upper()}{shown[1:]}." if shown else ""
+    return f"{text} Keep their length: {words.some(rigid)}." if rigid else text
 
 
 def small_picture(frame: Frame, caption: str) -> Picture:

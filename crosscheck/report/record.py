@@ -27,6 +27,7 @@ from crosscheck.frame.model import Frame
 from crosscheck.log import Entry
 from crosscheck.problems import Problem, UnusableInput, nearest
 from crosscheck.report import terminal, words
+from crosscheck.report.gist import opinions_gist, verify_gist
 from crosscheck.report.pictures import CasePictures, Picture, frame_picture, loads_picture
 from crosscheck.review.finding import Finding, Subject
 
@@ -57,6 +58,8 @@ ABOUT = {
     "remarks": "Remarks",
 }
 """Free text about the check: key of `--about` and what it stands for."""
+FILED = ("job", "calculation", "revision")
+"""What of it stands at the head of a record, where it is looked for in a file."""
 MARK = "\u25a1"  # an empty box, to be ticked by hand
 
 
@@ -116,7 +119,7 @@ class Record:
     """A whole record. verdict: one word; sentence: what it means; open: why it is not for acceptance, empty where it is.
 
     links: text of a table's cell to the address of the record that it stands for. gist: what stands right below the
-    verdict, for whoever reads no further.
+    verdict, for whoever reads no further. filed: what it is filed under.
     """
 
     title: str
@@ -128,6 +131,7 @@ class Record:
     when: str
     links: Mapping[str, str] = field(default_factory=dict)
     gist: tuple[tuple[str, str], ...] = ()
+    filed: tuple[tuple[str, str], ...] = ()
 
     def link(self, text: str) -> str:
         """Where a cell of a table leads to, "" for nowhere."""
@@ -136,7 +140,7 @@ class Record:
     @cached_property
     def checksum(self) -> str:
         """sha256 of all its words and numbers, the same in every form it is written in."""
-        said = repr((self.title, self.subject, self.verdict, self.sentence, self.gist, self.open, self.when))
+        said = repr((self.title, self.subject, self.verdict, self.sentence, self.gist, self.filed, self.open, self.when))
         said += "".join(repr((s.title, [_words(b) for b in s.blocks])) for s in self.sections)
         return hashlib.sha256(said.encode("utf-8", "backslashreplace")).hexdigest()
 
@@ -200,6 +204,7 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
     sections = [
         _checked(frame, terminal.claim_facts(result), around, opinions.warnings),
         _drawing(frame, numbered),
+        _printed_input(result),
         _suspects(result),
         _differences(frame, numbered, "Differences between the claim and the opinions", claim=True),
         _differences(frame, _own_differences(opinions), "Differences between the opinions", claim=False),
@@ -212,8 +217,9 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
     sentence = " ".join([terminal.claim_sentence(result), *map(_sentence, terminal.beside(result))])
     questions = [*result.undecided, *opinions.warnings]
     return _record(
-        "Check record", frame, result.verdict, sentence, _open(result.verdict, around, questions), sections, around
-    )
+        "Check record", frame, result.verdict, sentence, _open(result.verdict, around, questions), sections, around,
+        verify_gist(result, numbered, around.history, around.findings),
+    )  # fmt: skip
 
 
 def opinions_record(result: Opinions, around: Circumstances) -> Record:
@@ -232,6 +238,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
     return _record(
         "Record of opinions", frame, result.verdict, terminal.opinions_sentence(result),
         _open(result.verdict, around, result.warnings), sections, around,
+        opinions_gist(result, numbered, around.findings),
     )  # fmt: skip
 
 
@@ -276,10 +283,12 @@ def _places(frame: Frame, finding: Finding) -> Iterator[Place]:
 
 def _record(
     title: str, frame: Frame, verdict: str, sentence: str, still: tuple[str, ...], sections: Iterable[Section],
-    around: Circumstances,
+    around: Circumstances, gist: tuple[tuple[str, str], ...] = (),
 ) -> Record:  # fmt: skip
     kept = tuple(s for s in sections if s.blocks)
-    return Record(title, frame.title or frame.file, verdict, sentence, still, kept, moment(around.when))
+    filed = tuple((ABOUT[key], around.about[key]) for key in FILED if around.about.get(key))
+    return Record(title, frame.title or frame.file, verdict, sentence, still, kept, moment(around.when), gist=gist,
+                  filed=filed)  # fmt: skip
 
 
 def moment(when: datetime.datetime) -> str:
@@ -325,7 +334,7 @@ def _checked(
     versions = f"crosscheck {__version__}, numpy {np.__version__}, {_version('scipy')}, {_version('anastruct')}"
     rows += [("versions", versions), ("date", moment(around.when))]
     rows += [("command", around.command)] if around.command else []
-    blocks: list[Block] = [Facts(tuple(rows))]
+    blocks: list[Block] = [Facts(tuple((f"{label[:1].upper()}{label[1:]}", text) for label, text in rows))]
     notes = [f"Note: {w}" for w in warnings]
     return Section("What was checked", (*blocks, *([Says(tuple(notes))] if notes else [])))
 
@@ -343,6 +352,12 @@ def _drawing(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Sectio
 def _drawn(frame: Frame, places: Sequence[tuple[int, Place]]) -> Section:
     named = [n for _, p in places for n in (p.member, p.joint) if n]
     return Section("The frame", (frame_picture(frame, places, named),) if frame.members else ())
+
+
+def _printed_input(result: Verification) -> Section:
+    """Facts come before inference: what the other model was given, where the paste prints it."""
+    facts = tuple(_sentence(str(fact)) for fact in result.facts)
+    return Section("Printed input that differs from the frame", (Says(facts),) if facts else ())
 
 
 def _suspects(result: Verification) -> Section:

@@ -57,7 +57,8 @@ class Sketch:
         self.low = low - self.unit * np.array([left, below])
         self.high = high + self.unit * np.array([right, above])
         span = self.high - self.low
-        self.wide, self.tall = WIDTH, min(max(WIDTH * span[1] / span[0], LEAST), most)
+        self.wide = WIDTH
+        self.tall = float(min(max(WIDTH * span[1] / span[0], LEAST), most))
         self._tips: list[Floats] = []
         self._strokes: list[Callable[[Axes], object]] = []
 
@@ -144,6 +145,52 @@ class Sketch:
                   for m, z in enumerate(self.table.zone) if z[1] > 0]  # fmt: skip
         if zones:
             self.lines(zones, 2.6 * width, ink=ink)
+        self.lines([outline for m in range(len(self.table.length)) for outline in self._pieces(m)], 0.6, ink=ink)
+
+    def _pieces(self, m: int) -> list[Floats]:
+        """Outlines of the pieces of a stepped or tapered member, their depths to one scale along it."""
+        member = list(self.frame.members.values())[m]
+        ends = [(_depth(self.frame, p.first), _depth(self.frame, p.last)) for p in member.pieces]
+        scale = 0.42 * self.unit / max((d for pair in ends for d in pair), default=1.0)
+        outlines: list[Floats] = []
+        start = 0.0
+        for piece, (first, last) in zip(member.pieces, ends, strict=True):
+            x = float(self.table.length[m]) * np.array([start, piece.until, piece.until, start, start])
+            outlines.append(self.along(m, x, scale * np.array([first, last, -last, -first, first])))
+            start = piece.until
+        return outlines
+
+    def one_way(self) -> None:
+        """Arrow heads in the middle of members that only pull (apart) or only push (together), and words at supports."""
+        for m, member in enumerate(self.frame.members.values()):
+            if member.only:
+                way = np.array([self.table.cos[m], self.table.sin[m]])
+                apart = 1.0 if member.only == "tension" else -1.0
+                for side in (1.0, -1.0):
+                    tip = self.along(m, 0.5 * self.table.length[m] + side * (0.75 if apart > 0 else 0.3) * self.unit)
+                    self._head(tip, side * apart * way, 0.45)
+        self.heads()
+        for s in self.frame.supports.values():
+            k = self.frame.joint_index[s.joint]
+            for axis, only in (("x", s.x_only), ("y", s.y_only)):
+                if only:
+                    below = self.unit * np.array([0.0, -2.1])
+                    self.text(self.xy[k] + below, f"{axis}: {only} only", 6.5, slant="italic")
+
+    def ties(self) -> None:
+        """Joints that move together: a dotted line through them, and along which direction."""
+        for tie in self.frame.ties.values():
+            at = self.xy[[self.frame.joint_index[j] for j in tie.joints]]
+            self.lines([at], 1.5, (0, (0.6, 1.6)))
+            turn = math.radians(tie.direction)
+            way = np.array([math.cos(turn), math.sin(turn)])
+            aside = self.unit * np.array([way[1], -way[0]])
+            mark = 0.75 * at[0] + 0.25 * at[1] + 0.5 * aside
+            self.lines([[mark - 0.8 * self.unit * way, mark + 0.8 * self.unit * way]], 0.8)
+            for side in (1.0, -1.0):
+                self._head(mark + 0.95 * side * self.unit * way, side * way, 0.35)
+            self.heads()
+            self.text(mark + 0.55 * aside, f"tie {tie.name}", 6.5, slant="italic")
 
     def connections(self) -> None:
         """Hinges as open rings near their joint, semi-rigid ends as rings with a bar through them."""
@@ -361,6 +408,12 @@ class Sketch:
                 ("T ", loads.mean, "°"), ("ΔT ", loads.difference, "°"), ("long ", loads.misfit, "")) if v[m]]  # fmt: skip
             if said:
                 self.beside(m, 0.5, ", ".join(said), side=-1.0)
+
+
+def _depth(frame: Frame, name: str) -> float:
+    """How deep a section is drawn: its depth, or what grows with it where none is stated."""
+    section = frame.sections[name]
+    return section.depth if section.depth is not None else float(np.cbrt(section.I))
 
 
 def _distinct(values: Floats, near: float) -> Floats:
