@@ -7,7 +7,7 @@ cannot give, and for nothing else: `Answer.undetermined` says which values may b
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Protocol
 
@@ -83,6 +83,42 @@ class Silent:
 
     opinion: str
     why: str
+
+
+@dataclass(frozen=True, slots=True)
+class _SpansByName:
+    """Spans of several answers, each asked for the cases that are its own."""
+
+    by_name: Mapping[str, Spans]
+
+    @property
+    def sampled(self) -> bool:
+        return any(spans.sampled for spans in self.by_name.values())
+
+    def along(self, name: str, member: Ints, x: Floats, side: Ints) -> Floats:
+        return self.by_name[name].along(name, member, x, side)
+
+    def turning_points(self, name: str) -> tuple[Ints, Floats]:
+        return self.by_name[name].turning_points(name)
+
+
+def joined(parts: Sequence[tuple[tuple[str, ...], Answer | Silent]]) -> Answer | Silent:
+    """One answer from those to the same frame in several situations, each for its own names; an opinion that abstains
+    in one of them is silent on its names, and Silent where it abstains in all."""
+    given = [said for _, said in parts if isinstance(said, Answer)]
+    if len(parts) == 1 or not given:
+        return parts[0][1]
+    silent: dict[str, str] = {}
+    for names, said in parts:
+        silent |= dict.fromkeys(names, said.why) if isinstance(said, Silent) else said.silent
+    return Answer(
+        given[0].opinion,
+        {name: case for said in given for name, case in said.cases.items()},
+        given[0].undetermined,
+        _SpansByName({name: said.spans for said in given for name in said.cases}),
+        silent,
+        tuple(dict.fromkeys(note for said in given for note in said.notes)),
+    )
 
 
 @dataclass(frozen=True, slots=True)

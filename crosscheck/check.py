@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from crosscheck.answer import Answer, CaseAnswer, Silent, WorkTable
+from crosscheck.answer import Answer, CaseAnswer, Silent, WorkTable, joined
 from crosscheck.compare.claim import CaseClaim, ClaimComparison
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.compare.differences import Verdict, worst
@@ -83,7 +83,7 @@ class Verification:
 
     grounds: why the verdict is what it is, one sentence each. undecided: the choices that would settle it.
     no_suspects: why none is named, where the claim disagrees. facts: how the other model's own input, where the paste
-    holds it, differs from the frame.
+    holds it, differs from the frame; each with its kind (geometry, stiffness, support or load) and place.
     """
 
     opinions: Opinions
@@ -96,32 +96,45 @@ class Verification:
     grounds: tuple[str, ...] = ()
     undecided: tuple[str, ...] = field(default=())
     no_suspects: str = ""
-    facts: tuple[str, ...] = ()
+    facts: tuple[Finding, ...] = ()
 
 
-def ask(frame: Frame, names: Sequence[str] | None = None) -> Opinions:
+def ask(frame: Frame, names: Sequence[str] | None = None, any_size: bool = False) -> Opinions:
     """All opinions on the frame's load cases and combinations (or `names`).
+
+    any_size: whether the library is asked however large the frame is; it takes its time then.
 
     Raises UnusableInput (MechanismFound among them) where nobody could answer.
     """
-    found = study(frame)
     wanted = frame.names if names is None else tuple(names)
+    asked = [(plain, study(plain), group) for plain, group in situations(frame, wanted)]
     answers: dict[str, Answer] = {}
     silent: dict[str, Silent] = {}
     for name in OPINIONS:
-        said = _ask_one(name, frame, found, wanted)
+        said = joined([(group, _ask_one(name, plain, found, group, any_size)) for plain, found, group in asked])
         if isinstance(said, Silent):
             silent[name] = said
         else:
             answers[name] = said
     comparison = Comparison(frame, answers)
     judgements = {name: comparison.judge(name) for name in wanted}
-    return Opinions(frame, found, wanted, answers, silent, judgements)
+    return Opinions(frame, asked[0][1], wanted, answers, silent, judgements)
 
 
-def _ask_one(name: str, frame: Frame, found: Study, wanted: tuple[str, ...]) -> Answer | Silent:
+def situations(frame: Frame, names: Sequence[str]) -> list[tuple[Frame, tuple[str, ...]]]:
+    """The frame in each state of stiffness and order of theory that some of these cases and combinations have, with
+    those names; at least one."""
+    groups: dict[int, tuple[Frame, list[str]]] = {}
+    for name in names:
+        plain = frame.under(name)
+        groups.setdefault(id(plain), (plain, []))[1].append(name)
+    return [(plain, tuple(group)) for plain, group in groups.values()] or [(frame, ())]
+
+
+def _ask_one(name: str, frame: Frame, found: Study, wanted: tuple[str, ...], any_size: bool) -> Answer | Silent:
+    more = {"size_limit": None} if any_size and name == "library" else {}
     try:
-        said: Answer | Silent = importlib.import_module(OPINIONS[name]).opine(frame, found, wanted)
+        said: Answer | Silent = importlib.import_module(OPINIONS[name]).opine(frame, found, wanted, **more)
     except UnusableInput:
         raise
     except Exception as error:  # noqa: BLE001 - whatever it is, it silences this opinion alone and is said
@@ -130,29 +143,32 @@ def _ask_one(name: str, frame: Frame, found: Study, wanted: tuple[str, ...]) -> 
 
 
 def chosen_names(frame: Frame, case: str | None) -> tuple[str, ...] | None:
-    """The names to answer for: all, or the one asked for. Raises UnusableInput for an unknown one."""
+    """The names to answer for: all, or those that the one asked for means. Raises UnusableInput for an unknown one."""
     if case is None:
         return None
-    if case not in frame.names:
-        advice = nearest(case, frame.names) or f"known: {', '.join(frame.names) or 'none'}"
+    meant = frame.meant(case)
+    if not meant:
+        known = (*frame.names, *frame.envelopes)
+        advice = nearest(case, known) or f"known: {', '.join(known) or 'none'}"
         raise UnusableInput([Problem(frame.file, None, "--case", f'no load case or combination "{case}"', advice)])
-    return (case,)
+    return meant
 
 
 def verify(
     frame: Frame, reading: Reading, case: str | None = None, relative: float | None = None,
-    opinions: Opinions | None = None, suspects: bool = True, every_case: bool = True,
+    opinions: Opinions | None = None, suspects: bool = True, every_case: bool = True, any_size: bool = False,
 ) -> Verification:  # fmt: skip
     """Judge a reading of a claim. `relative`: the claim's relative tolerance as a fraction, else the frame's.
 
     opinions: where they are at hand already. suspects: whether to look for what would explain a difference.
-    every_case: whether the opinions are asked for cases that the claim does not speak of, too.
+    every_case: whether the opinions are asked for cases that the claim does not speak of, too. any_size: as for `ask`.
     """
     from crosscheck.compare.closing import close
 
     chosen_names(frame, case)
     if opinions is None:
-        opinions = ask(frame, chosen_names(frame, case) if every_case else cases_needed(frame, reading, case))
+        needed = chosen_names(frame, case) if every_case else cases_needed(frame, reading, case)
+        opinions = ask(frame, needed, any_size)
     tolerance = claim_tolerance(frame.analysis.tolerance if relative is None else relative)
     closed = close(reading, frame, opinions.answers, case, tolerance)
     cases = ClaimComparison(frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
@@ -170,14 +186,14 @@ def verify(
     )
 
 
-def printed_input(frame: Frame, reading: Reading) -> tuple[str, ...]:
+def printed_input(frame: Frame, reading: Reading) -> tuple[Finding, ...]:
     """How the other model's own input, as the paste holds it, differs from the frame: facts, said before any suspect."""
     if not reading.echo:
         return ()
     from crosscheck.review.echo import compared
     from crosscheck.review.finding import Subject
 
-    return tuple(f.says for f in compared(Subject(frame), reading.echo) if f.grade == "serious")
+    return tuple(f for f in compared(Subject(frame), reading.echo) if f.grade == "serious")
 
 
 def cases_needed(frame: Frame, reading: Reading, case: str | None) -> tuple[str, ...] | None:
@@ -282,6 +298,7 @@ def _audit(frame: Frame, opinions: Opinions, closed: ClosedClaim, name: str) -> 
     from crosscheck.audit.compatibility import compatibility
     from crosscheck.audit.statics import balance
 
+    frame = frame.under(name)
     values, half = claimed_arrays(frame, closed, name)
     done = balance(frame, name, values, half)
     if len(frame.members) > AUDITED or not np.isfinite(values.ends).any():
@@ -338,7 +355,7 @@ def workings(opinions: Opinions) -> list[tuple[str, list[WorkTable]]]:
         module = importlib.import_module(OPINIONS[opinion])
         for name in opinions.names:
             if opinion in opinions.answers and name in opinions.answers[opinion].cases:
-                tables = module.working(opinions.frame, opinions.study, name)
+                tables = module.working(opinions.frame.under(name), opinions.study, name)
                 out.append((f"Working of {opinion}, {name}", tables))
     return out
 
@@ -355,5 +372,7 @@ def critical_factors(frame: Frame, names: Sequence[str] | None = None) -> dict[s
     if len(frame.members) > QUICK or not frame.names:
         return {}
     module = importlib.import_module(OPINIONS["slope-deflection"])
-    found: dict[str, float] = module.critical_factors(frame, names, FAR)
+    found: dict[str, float] = {}
+    for plain, group in situations(frame, frame.names if names is None else names):
+        found |= module.critical_factors(plain, group, FAR)
     return found

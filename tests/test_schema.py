@@ -15,9 +15,11 @@ from crosscheck import check
 from crosscheck.claims import ReadingOptions, read_claim
 from crosscheck.claims.reading import FrameNames
 from crosscheck.frame.apply import CASE_KEYS, COMPASS, ENTRY_KEYS
+from crosscheck.frame.combining import ARRANGEMENTS, EXTRA_KEYS
 from crosscheck.frame.grid import GRID_KEYS
 from crosscheck.frame.parts import MATERIAL_KEYS, MEMBER_KEYS, SECTION_KEYS, SUPPORT_KEYS
 from crosscheck.frame.reader import ANALYSIS_KEYS, FILE_KEYS, read_frame_text
+from crosscheck.frame.states import KEYS as FACTORS
 from crosscheck.frame.tables import COLUMNS
 from crosscheck.problems import UnusableInput
 from crosscheck.report.document import dumps, opinions_document, verification_document
@@ -74,6 +76,10 @@ def test_the_schema_knows_exactly_the_readers_keys() -> None:
     assert set(top["loads"][each]["properties"]["expected"]["properties"]) == set(COMPASS)
     assert keys("analysis") == set(ANALYSIS_KEYS)
     assert keys("tables") == set(COLUMNS)
+    factors = {key for of_kind in FACTORS.values() for key in of_kind}
+    assert set(top["stiffness"][each][each]["properties"]) == factors
+    assert set(top["combinations"][each]["properties"]) == set(EXTRA_KEYS)
+    assert set(top["patterns"][each]["properties"]["arrangements"]["items"]["enum"]) == set(ARRANGEMENTS)
 
 
 SOUND = CASES.joinpath("kiosk.toml").read_text(encoding="utf-8")

@@ -120,7 +120,7 @@ def full_restraint(frame: Frame, table: LoadTable) -> Scales:
     moved = max(_largest(longer), _largest(table.settlement[:, :2]))
     turned = _largest(table.settlement[:, 2])
     strain = (longer + _largest(table.settlement[:, :2])) / t.length
-    axial = np.where(strain > 0.0, t.E * t.A * strain, 0.0) if frame.analysis.axial == "elastic" else np.zeros(1)
+    axial = np.where((strain > 0.0) & ~t.rigid, t.E * t.A * strain, 0.0)
     moments = _largest(stiffness * (bend + 6.0 * moved / t.length**2 + 4.0 * turned / t.length))
     longest = float(t.length.max(initial=0.0))
     displacements = moved + turned * longest + _largest(bend) * longest**2
