@@ -8,13 +8,14 @@ axial forces that the displaced frame has. Where these go is foreseen from how t
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 
 from crosscheck.answer import Answer, CaseAnswer, Silent
 from crosscheck.frame.kinematics import Study
-from crosscheck.frame.loads import LoadTable, load_table
+from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.opinions.moment_distribution.bent_spans import Bent, BentSpans, bend
 from crosscheck.opinions.moment_distribution.critical import Growing, critical_factor, growing
@@ -26,6 +27,7 @@ from crosscheck.opinions.moment_distribution.displaced import (
     Round,
     acting,
 )
+from crosscheck.opinions.moment_distribution.gradual import Answered, gradually
 from crosscheck.opinions.moment_distribution.process import GIVEN_UP, NAME, Process, distribute
 from crosscheck.opinions.moment_distribution.stretches import AGAIN, REACH, Axial, Division, bow, divide, parts_needed
 
@@ -37,15 +39,11 @@ MOST = 40
 """Repetitions."""
 VAIN = 8
 """So many repetitions that bring the change no lower are given up."""
-FIRST_STEP, LEAST_STEP = 0.25, 1 / 64
-"""Shares of the load that are brought on at once."""
-GROWING = (
-    "joint", "settlement", "point_along", "point_across", "point_couple", "line_along", "line_across", "mean",
-    "difference", "misfit",
-)  # fmt: skip
-"""Fields of a LoadTable that grow with the load."""
 MEMORY = 8
 """Repetitions that the next axial forces are foreseen from."""
+APART = 0.25
+"""Change of the axial forces from first order, as a share of them, up to which what settles is sure to be the balance that
+growing load leads to."""
 HALVINGS = 30
 """How often a step may be halved that leads to where the frame is not stable."""
 
@@ -103,8 +101,8 @@ def critical_load_factor(frame: Frame, name: str) -> float:
 
 
 def settle_case(first: Process, freedom: Freedom, column: int) -> Settled:
-    """Repeat the distribution of one case until its axial forces settle; where they do not for the whole load at once,
-    bring it on by steps.
+    """Repeat the distribution of one case until its axial forces settle; where they do not for the whole load at once, or
+    change much, bring it on gradually.
 
     Raises NotSettled past the critical load, and where nothing settles.
     """
@@ -122,9 +120,9 @@ def settle_case(first: Process, freedom: Freedom, column: int) -> Settled:
     position.axial[first.held.members.rigid] = 0.0
     whole = Start(grown, position)
     try:
-        return _repeat(whole, axial)
+        return _near(_repeat(whole, axial), axial)
     except NotSettled:
-        return _by_steps(whole)
+        return _gradually(whole)
 
 
 @dataclass(frozen=True)
@@ -134,39 +132,48 @@ class Start:
     grown: Growing
     position: Position
 
-    def share(self, part: float) -> Start:
-        """The same for a part of the load."""
-        g = self.grown
-        return Start(growing(g.freedom, part_of(g.loads, part), part * g.axial), self.position.scaled(part))
+
+def _near(settled: Settled, first: Floats) -> Settled:
+    """What settled, if its axial forces are not far from those of first order; else it may be another balance than the
+    one that growing load leads to. Raises NotSettled."""
+    rounding = NEARLY * max(_largest(settled.case.force), _largest(settled.position.push))
+    if _largest(settled.axial - first) > APART * _largest(first) + rounding:
+        raise NotSettled(NO_BALANCE)
+    return settled
 
 
-def part_of(loads: LoadTable, part: float) -> LoadTable:
-    """The same loads, all times `part`."""
-    return replace(loads, **{name: part * getattr(loads, name) for name in GROWING})
+def _gradually(whole: Start) -> Settled:
+    """The balance that growing load leads to. Raises NotSettled, saying beyond what share of it there is none."""
+    size = _largest(whole.grown.axial) or 1.0
+    most = gradually(partial(_answered, whole, size), whole.grown.axial / size)
+    if not most.whole:
+        raise NotSettled(GIVES_WAY.format(most.balance[-1]))
+    return _repeat(whole, most.balance[:-1] * size)
 
 
-def _by_steps(whole: Start) -> Settled:
-    """Bring the load on by steps, each starting from axial forces that the last two point to."""
-    reached, step = 0.0, FIRST_STEP
-    before, here = (0.0, 0.0 * whole.grown.axial), (0.0, 0.0 * whole.grown.axial)
-    while True:
-        part = min(1.0, reached + step)
-        guess = part * whole.grown.axial
-        if reached:
-            guess = here[1] + (here[1] - before[1]) * ((part - here[0]) / (here[0] - before[0]))
-        try:
-            settled = _repeat(whole.share(part) if part < 1.0 else whole, guess)
-        except NotSettled:
-            step /= 2
-            if step < LEAST_STEP:
-                raise NotSettled(
-                    "past its critical load: as the frame gives way its axial forces change, and no stable balance "
-                    f"was found beyond {reached:.2g} of the load"
-                ) from None
-            continue
-        if part == 1.0:
-            return settled
-        before, here, reached, step = here, (part, settled.axial), part, 1.5 * step
+def _answered(whole: Start, size: float, place: int, value: float) -> Answered:
+    """What a frame answers: axial forces as shares of `size` and, last, the share of the load, of which `value` is kept at
+    one place. The frame under axial forces taken as known answers in proportion to the load."""
+    frame_at, position = _Frames(whole.grown), whole.position.scaled(1.0)
+    case = acting(whole.grown.freedom.held, whole.grown.loads, whole.grown.pieces)
+
+    def answered(taken: Floats) -> Floats | None:
+        if not taken[-1] > 0.0:
+            return None
+        displaced = frame_at(taken[:-1] * size, float(taken[-1]))
+        if not displaced.stable or displaced.settle(case, position)[1] > GIVEN_UP:
+            return None
+        by_load = np.append(displaced.axial(case, position) / size, 1.0)
+        share = value / by_load[place] if by_load[place] else 0.0
+        return share * by_load if share > 0.0 else None
+
+    return answered
+
+
+GIVES_WAY = (
+    "past its critical load: as the frame gives way its axial forces change, and no stable balance was found beyond {:.4g} "
+    "of the load"
+)
 
 
 class Ahead:
@@ -232,13 +239,14 @@ class _Frames:
         self.division: Division | None = None
         self.parts = np.zeros(0, dtype=np.int64)
 
-    def __call__(self, axial: Floats) -> Displaced:
+    def __call__(self, axial: Floats, share: float = 1.0) -> Displaced:
+        """Under axial forces (m,) at the `from` ends, which change along the members by `share` of the loads there."""
         m = self.grown.freedom.held.members
-        parts, sheared = parts_needed(m, self.grown.pieces, axial)
+        parts, sheared = parts_needed(m, self.grown.pieces, axial / share, share)
         if self.division is None or np.any(parts * REACH > np.maximum(self.parts, 1) * AGAIN):
             self.parts = parts
             self.division = divide(m, self.grown.loads, parts)
-        displaced = Displaced(self.grown.freedom, bow(m, self.division, Axial(axial)))
+        displaced = Displaced(self.grown.freedom, bow(m, self.division, Axial(axial, share)))
         if sheared:
             displaced.bowed.buckled[:] += 1
         return displaced

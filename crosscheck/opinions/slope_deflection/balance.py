@@ -27,19 +27,21 @@ from crosscheck.opinions.slope_deflection.division import softening
 from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder, Equations, PastCritical, State
 
 SETTLED = 1e-12
-"""Largest change of an axial force, as a share of the largest, at which the iteration ends."""
+"""Largest change of an axial force, as a share of the largest force, at which the iteration ends."""
 ROUNDED = 1e-9
 """Share at which it ends too where a further round no longer halves it."""
 FOLLOWED = 1e-8
 """Share that is enough on the way along the path."""
 NEAR = 0.25
-"""Largest first step of an axial force, as a share of the largest, for which the path need not be followed."""
+"""Largest step of an axial force, as a share of the largest force, for which the path need not be followed."""
 SHRINKING = 0.25
 """Largest ratio of one step to the one before it there."""
 ROUNDS = 12
 ROUNDS_ON_PATH = 6
 LONGEST, FIRST, SHORTEST = 0.25, 0.125, 1e-7
 """Steps along the path: share of the load, or of the largest first-order axial force."""
+ASTRAY = 3.0
+"""So many steps from where it set out a search is given up."""
 PEAK = 1e-7
 """Share of the load to which the end of the path is found."""
 PEAK_ROUNDS = 30
@@ -74,8 +76,16 @@ class Trial:
 
     @property
     def off(self) -> float:
-        """The largest of it, as a share of the largest axial force."""
-        return _largest(self.gap) / max(_largest(self.state.axial), 1e-300)
+        """The largest of it, as a share of the largest force."""
+        return _largest(self.gap) / self.size
+
+    @cached_property
+    def size(self) -> float:
+        """The largest axial or shear force: axial forces that are rounding are measured by it."""
+        d, p = self.equations.division, self.equations.pieces
+        moved = np.concatenate([self.state.nodes[d.left], self.state.nodes[d.left + 1]], axis=1)
+        shear = np.einsum("pij,pj->pi", p.stiffness[:, ::2], moved) + p.fixed[:, ::2]
+        return max(_largest(self.state.axial), _largest(shear), 1e-300)
 
     @cached_property
     def stable(self) -> bool:
@@ -175,7 +185,7 @@ def _at_once(case: CaseInSecondOrder, first: Floats) -> State | None:
         if not trial.stable or trial.off > before * SHRINKING or trial.off > NEAR:
             return None
         step = trial.ahead(trial.gap)
-        if _largest(step) > NEAR * _largest(axial):
+        if _largest(step) > NEAR * trial.size:
             return None
         axial, before = axial + step, trial.off
     return None
@@ -233,7 +243,9 @@ class _Path:
         where none is found or the stiffness has lost its sign on the way."""
         at = here.at + step * here.direction
         for rounds in range(1, ROUNDS_ON_PATH + 1):
-            trial = _trial(self.case, float(at[-1]), at[:-1] * self.size) if at[-1] > 0.0 else None
+            if not (at[-1] > 0.0 and _largest(at - here.at) < ASTRAY * step):
+                return rounds, None
+            trial = _trial(self.case, float(at[-1]), at[:-1] * self.size)
             if trial is None or not trial.regular:
                 return rounds, None
             rate = trial.ahead(trial.by_load) / self.size
