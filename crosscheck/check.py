@@ -30,6 +30,7 @@ if TYPE_CHECKING:
     from crosscheck.audit.statics import StaticCheck
     from crosscheck.claims.reading import Reading
     from crosscheck.compare.printouts import Moved
+    from crosscheck.review.finding import Finding
     from crosscheck.suspects import Suspect
 
 OPINIONS = {

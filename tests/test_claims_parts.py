@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from crosscheck.check import printed_input
 from crosscheck.claims import FrameNames
 from tests.claim_frame import Known, bent
 
@@ -135,3 +136,15 @@ def test_the_other_models_input_becomes_facts_in_the_frames_names() -> None:
     assert ("member ends", "102") not in facts, "parts of a member are no members of another frame"
     assert not reading.undecided
     assert len(reading.entries) == 42
+
+
+def test_a_difference_of_the_printed_input_has_its_kind_and_place() -> None:
+    k = bent()
+    text = coordinates(k).replace("\t5.0000", "\t5.4000", 1)
+    text += "Supports\nNode\tX\tY\tRotation\n11\tfixed\tfixed\tfree\n14\tfixed\tfixed\tfixed\n16\tfixed\tfixed\tfixed\n\n"
+    text += "Sections\nSection\tI [cm4]\tA [cm2]\npost\t9250\t53.8\n\n"
+    text += "Load totals\nCase\tFx [kN]\tFy [kN]\ndead\t9.0\t-113.4\n\n"
+    found = printed_input(k.frame, k.read(text + connectivity(k) + element_ends(k, "dead")))
+    told = {(fact.kind, fact.where) for fact in found}
+    assert told == {("support", ("A",)), ("stiffness", ("post",)), ("load", ("dead",)), ("geometry", ("C",))}
+    assert str(found[0]).startswith("the other model has")

@@ -327,7 +327,7 @@ def verify_report(
     parts += _warnings(opinions)
     parts += [Text(line) for line in (*undetermined_lines(opinions), critical) if line]
     if result.facts:
-        parts += [heading("Printed input that differs from the frame"), _notes(result.facts)]
+        parts += [heading("Printed input that differs from the frame"), _notes(fact.says for fact in result.facts)]
     parts += _suspect_lines(result)
     parts += [heading("How it was compared"), facts(claim_facts(result))]
     for judged in opinions.judgements.values():

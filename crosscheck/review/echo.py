@@ -19,6 +19,11 @@ POWERS = {
     "joint x": (0, 1), "joint y": (0, 1), "I": (0, 4), "A": (0, 2), "E": (1, -2), "total x": (1, 0), "total y": (1, 0),
 }  # fmt: skip
 """Powers of force and length."""
+KINDS = {
+    "joint x": "geometry", "joint y": "geometry", "member ends": "geometry", "support": "support", "I": "stiffness",
+    "A": "stiffness", "E": "stiffness", "total x": "load", "total y": "load",
+}  # fmt: skip
+"""The kind of suspect that a difference in each would be."""
 LENGTHS = {"m": 1.0, "cm": 0.01, "mm": 0.001, "ft": 0.3048, "in": 0.0254}
 """Metres: units tried for coordinates and properties that state none."""
 
@@ -46,7 +51,7 @@ def compared(subject: Subject, facts: Sequence[EchoFact]) -> Iterator[Finding]:
             continue
         says = _difference(subject.frame, fact, ours, lengths.get(fact.what, 1.0))
         if says:
-            yield Finding("serious", (fact.where,), f"the other model has {says}", "echo")
+            yield Finding("serious", (fact.where,), f"the other model has {says}", "echo", KINDS[fact.what])
         else:
             agreed += 1
     for what, names in strange.items():
@@ -161,10 +166,17 @@ def _unit(frame: Frame, fact: EchoFact) -> str:
 
 
 def _missing(frame: Frame, facts: Sequence[EchoFact]) -> Iterator[Finding]:
-    """Supports, joints and members that the other model's tables leave out, where it prints such tables."""
+    """Supports, joints and members that the other model's tables leave out; members at a joint
+    that it leaves out are no news."""
+    gone: set[str] = set()
     for what, names in (("joint x", frame.joints), ("member ends", frame.members), ("support", frame.supports)):
         told = {f.where for f in facts if f.what == what}
         left = [n for n in names if n not in told] if told else []
+        if what == "joint x":
+            gone = set(left)
+        if what == "member ends":
+            left = [n for n in left if not gone & {frame.members[n].joint_from, frame.members[n].joint_to}]
         if left:
             word = {"joint x": "joint", "member ends": "member", "support": "support"}[what]
-            yield Finding("serious", tuple(left), f"the other model's input has no {word} {listed(left)}", "echo")
+            says = f"the other model's input has no {word} {listed(left)}"
+            yield Finding("serious", tuple(left), says, "echo", KINDS[what])

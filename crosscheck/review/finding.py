@@ -37,12 +37,17 @@ class Finding:
     """grade: serious, check or note. where: joints, members, sections, materials, load entries or case names.
 
     says: what was found and what to look at. check: name of the check, whose docstring says why it matters.
+    kind: what a difference of the other model's printed input is of: geometry, stiffness, support or load; "" elsewhere.
     """
 
     grade: Grade
     where: tuple[str, ...]
     says: str
     check: str = ""
+    kind: str = ""
+
+    def __str__(self) -> str:
+        return self.says
 
 
 @dataclass(frozen=True, eq=False)
