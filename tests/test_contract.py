@@ -491,8 +491,8 @@ def silence(monkeypatch: pytest.MonkeyPatch, *names: str) -> None:
     """Make these opinions abstain."""
     real = check._ask_one
 
-    def ask(name: str, frame: Frame, found: Any, wanted: tuple[str, ...]) -> Answer | Silent:
-        return Silent(name, "told to be silent") if name in names else real(name, frame, found, wanted)
+    def ask(name: str, *rest: Any) -> Answer | Silent:
+        return Silent(name, "told to be silent") if name in names else real(name, *rest)
 
     monkeypatch.setattr(check, "_ask_one", ask)
 
@@ -501,8 +501,8 @@ def mislead(monkeypatch: pytest.MonkeyPatch, name: str) -> None:
     """Make this opinion wrong in one end moment of every case."""
     real = check._ask_one
 
-    def ask(asked: str, frame: Frame, found: Any, wanted: tuple[str, ...]) -> Answer | Silent:
-        said = real(asked, frame, found, wanted)
+    def ask(asked: str, *rest: Any) -> Answer | Silent:
+        said = real(asked, *rest)
         if asked == name and isinstance(said, Answer):
             for case in said.cases.values():
                 case.ends[0, 1, 2] *= 1.001
