@@ -19,7 +19,6 @@ import pytest
 
 from crosscheck import check
 from crosscheck.answer import Answer, Silent
-from crosscheck.frame.model import Frame
 from tests.calls import CASES, ONE_CASE, PORTAL, POST, STEEL, THIN, call, claim_of, of_case, put
 
 # --- the JSON document, as a schema
