@@ -7,7 +7,8 @@ same B (virtual work), so one matrix serves any geometry, square or not.
 Axially rigid members keep the same sparse matrix: an elongation stiffness `penalty` takes the place of EA/l, and the
 axial force is corrected by penalty times what elongation remains until none does (method of multipliers, Hestenes 1969
 and Powell 1969). Moments and axial forces are accumulated from corrections, and the residual is formed from them and
-not from the matrix, so that joints balance to rounding.
+not from the matrix, so that joints balance to rounding. Ties are kept by the same means: how far their joints move apart
+along them is one more deformation that may not occur.
 """
 
 from __future__ import annotations
@@ -19,12 +20,14 @@ import numpy as np
 import scipy.sparse as sp
 
 from crosscheck.answer import CaseAnswer, Undetermined
-from crosscheck.frame.loads import LoadTable
+from crosscheck.frame.loads import LoadTable, direction_cosines
 from crosscheck.frame.model import FREE, HELD, Floats, Frame
 from crosscheck.opinions.slope_deflection.members import Coefficients, FixedEnds, coefficients, end_actions, fixed_ends
 
 PENALTY = 1e6
 """Elongation stiffness of an axially rigid member in units of the frame's largest 12 EI/l^3."""
+FIRM = 1e4
+"""The least it is in units of the largest EA/l of elastic members: each round of correction wins so much."""
 ROUNDS = 40
 """Most rounds of correction; three to five are usual."""
 FEWEST = 4
@@ -48,10 +51,18 @@ class System:
         stiffness = frame.support_table.stiffness.ravel()
         self.held = stiffness == HELD
         self.spring = np.where(self.held, 0.0, stiffness)
-        t = frame.member_table
-        self.stiffest = float((12 * t.E * t.I / t.clear**3).max())
+        self.stiffest = stiffest(frame)
+        self.penalty = penalty(frame, self.coefficients.axial)
         self.member_stiffness = self._member_stiffness()
-        matrix = (self.deformation.T @ self.member_stiffness @ self.deformation + sp.diags(self.spring)).tocsc()
+        self.ties = tie_rows(frame)
+        # With the ties, where there are any: every deformation that counts, and its stiffness.
+        self._every: Sparse = self.deformation
+        self._stiffness: Sparse = self.member_stiffness
+        if frame.ties:
+            self._every = sp.vstack([self.deformation, self.ties]).tocsr()
+            tied = self.penalty * sp.identity(self.ties.shape[0])
+            self._stiffness = sp.block_diag([self.member_stiffness, tied]).tocsr()
+        matrix = (self._every.T @ self._stiffness @ self._every + sp.diags(self.spring)).tocsc()
         # A rotation that nothing resists, or a joint that nothing joins, has no equation.
         self.free = np.flatnonzero(~self.held & (matrix.diagonal() != 0.0))
         self.matrix = matrix[self.free][:, self.free]
@@ -60,7 +71,7 @@ class System:
     def _member_stiffness(self) -> Sparse:
         """(3m, 3m) moments at the faces and axial force of every member from its three deformations."""
         k = self.coefficients.stiffness
-        axial = np.where(self.rigid, PENALTY * self.stiffest, self.coefficients.axial)
+        axial = np.where(self.rigid, self.penalty, self.coefficients.axial)
         m = 3 * np.arange(len(axial))
         rows = np.concatenate([m, m, m + 1, m + 1, m + 2])
         cols = np.concatenate([m, m + 1, m, m + 1, m + 2])
@@ -93,30 +104,41 @@ class System:
         outer = np.stack([self._joint_loads(t, f) for t, f in zip(tables, fixed, strict=True)], axis=1)
         outer = outer.reshape(3 * joints, count) + self.spring[:, None] * moved
         forces = start.reshape(3 * members, count) + self.member_stiffness @ (self.deformation @ shift)
-        forces, shift, unsettled = self._settle(forces, shift, outer, stretch)
-        return Solution(self, tables, fixed, forces.reshape(members, 3, count), shift, unsettled)
+        forces, shift, unsettled, ties = self._settled(forces, shift, outer, stretch)
+        return Solution(self, tables, fixed, forces.reshape(members, 3, count), shift, unsettled, ties)
 
     def _settle(self, forces: Floats, shift: Floats, outer: Floats, stretch: Floats) -> tuple[Floats, Floats, Floats]:
-        """Correct displacements and member forces until the joints balance and rigid members keep their lengths.
+        """The same as `_settled` where nobody asks for the forces of ties."""
+        return self._settled(forces, shift, outer, stretch)[:3]
+
+    def _settled(
+        self, forces: Floats, shift: Floats, outer: Floats, stretch: Floats
+    ) -> tuple[Floats, Floats, Floats, Floats]:
+        """Correct displacements and member forces (3m, cases) until the joints balance, rigid members keep their lengths
+        and tied joints move together.
 
         The third result is what the last round still changed, (cases,): in displacements as a share of the largest, or
-        in axial forces of rigid members as a share of the largest action, whichever is more.
+        in axial forces of rigid members as a share of the largest action, whichever is more. The fourth is the forces of
+        the ties.
         """
-        rigid_rows = 3 * np.flatnonzero(self.rigid) + 2
-        penalty = self.member_stiffness.diagonal()[rigid_rows][:, None]
+        members, tied = len(forces), self.ties.shape[0]
+        rigid_rows = np.concatenate([3 * np.flatnonzero(self.rigid) + 2, members + np.arange(tied)])
+        penalty, every = self.penalty, self._every
         # The first axial force of a rigid member is penalty times the elongation that the held displacements ask for.
-        forces[rigid_rows] -= penalty * stretch[self.rigid]
-        longer = (self.deformation @ shift)[rigid_rows] - stretch[self.rigid]
+        forces = np.concatenate([forces, penalty * (self.ties @ shift)])
+        asked = np.concatenate([stretch[self.rigid], np.zeros((tied, shift.shape[1]))])
+        forces[rigid_rows] -= penalty * asked
+        longer = (every @ shift)[rigid_rows] - asked
         last = np.inf
         # Corrections are judged by the largest displacement so far: the final ones may be nothing but rounding noise.
         reach = np.abs(shift).max(axis=0, initial=0.0)
         for done in range(1, ROUNDS + 1):
-            residual = outer - self.deformation.T @ forces - self.spring[:, None] * shift
+            residual = outer - every.T @ forces - self.spring[:, None] * shift
             step = np.zeros_like(shift)
             step[self.free] = self.correct(residual[self.free])
             shift = shift + step
-            bent = self.deformation @ step
-            forces = forces + self.member_stiffness @ bent
+            bent = every @ step
+            forces = forces + self._stiffness @ bent
             reach = np.maximum(reach, np.abs(shift).max(axis=0, initial=0.0))
             shares = _shares(step, reach)
             size = float(shares.max(initial=0.0))
@@ -128,7 +150,8 @@ class System:
             forces[rigid_rows] += penalty * longer
         # What the next round would add to the axial forces of rigid members.
         pulled = penalty * np.abs(longer + bent[rigid_rows])
-        return forces, shift, np.maximum(shares, _shares(pulled, self._action_size(forces, reach)))
+        unsettled = np.maximum(shares, _shares(pulled, self._action_size(forces[:members], reach)))
+        return forces[:members], shift, unsettled, forces[members:]
 
     def _action_size(self, forces: Floats, reach: Floats) -> Floats:
         """(cases,) the largest axial force, or moment over length, of any member; no less than a trace of what moving by
@@ -149,7 +172,8 @@ class System:
 @dataclass(frozen=True, slots=True)
 class Solution:
     """forces: (m, 3, cases) moments at the faces and axial force without the fixed-end part of along loads;
-    shift: (3j, cases) displacements along the support axes; unsettled: (cases,) share that the last round still changed."""
+    shift: (3j, cases) displacements along the support axes; unsettled: (cases,) share that the last round still changed;
+    ties: (t, cases) forces of the ties' further joints, that hold them back along the tie."""
 
     system: System
     tables: list[LoadTable]
@@ -157,13 +181,15 @@ class Solution:
     forces: Floats
     shift: Floats
     unsettled: Floats
+    ties: Floats
 
     def case_answer(self, k: int, undetermined: Undetermined) -> CaseAnswer:
         """The k-th case as everybody sees it, undetermined values as NaN."""
         frame, fixed = self.system.frame, self.fixed[k]
         ends = end_actions(frame, self.forces[:, :2, k], self.forces[:, 2, k] + fixed.axial, fixed)
         axes = support_axes(frame)
-        pull = (axes @ (gathered(frame, ends) - self.tables[k].joint).ravel()).reshape(-1, 3)
+        pull = axes @ (gathered(frame, ends) - self.tables[k].joint).ravel()
+        pull = (pull + self.system.ties.T @ self.ties[:, k]).reshape(-1, 3)
         pull[frame.support_table.stiffness == FREE] = 0.0
         reactions = (axes.T @ pull.ravel()).reshape(-1, 3)
         joints = (axes.T @ self.shift[:, k]).reshape(-1, 3)
@@ -177,6 +203,34 @@ def _shares(step: Floats, reach: Floats) -> Floats:
     """(cases,) largest correction (n, cases) of each case as a share of that case's reach (cases,)."""
     size = np.abs(step).max(axis=0, initial=0.0)
     return np.asarray(size / np.where(reach > 0.0, reach, 1.0))
+
+
+def stiffest(frame: Frame) -> float:
+    """The largest 12 EI/l^3 of any member: the measure of the frame's stiffness across."""
+    t = frame.member_table
+    return float((12 * t.E * t.I / t.clear**3).max())
+
+
+def penalty(frame: Frame, axial: Floats) -> float:
+    """Stiffness in place of EA/l of members that are axially rigid, and of ties. axial: (m,) EA/l, NaN where rigid."""
+    return max(PENALTY * stiffest(frame), FIRM * float(np.nanmax(axial, initial=0.0)))
+
+
+def tie_rows(frame: Frame) -> Sparse:
+    """(t, 3j): from joint displacements along the support axes to how much further than its tie's first joint each
+    further joint moves along the tie."""
+    rows: list[tuple[int, int, float]] = []
+    count = 0
+    for tie in frame.ties.values():
+        c, s = direction_cosines(tie.direction)
+        first, *others = (3 * frame.joint_index[joint] for joint in tie.joints)
+        for other in others:
+            rows += [(count, first, -c), (count, first + 1, -s), (count, other, c), (count, other + 1, s)]
+            count += 1
+    row, column, data = np.array(rows, dtype=float).reshape(-1, 3).T
+    shape = (count, 3 * len(frame.joints))
+    matrix = sp.csr_matrix((data, (row.astype(np.int64), column.astype(np.int64))), shape=shape)
+    return (matrix @ support_axes(frame).T).tocsr()
 
 
 def deformations(frame: Frame) -> Sparse:

@@ -70,16 +70,16 @@ def stretches(frame: Frame, table: LoadTable | None = None) -> Stretches:
     first = np.where(np.isfinite(v.depth[row, 0]), v.depth[row, 0], 1.0)
     here = first + run * (start - v.start[row])
     growth, ratio = run * length / here, here / first
-    inverse = [
+    bend, shear, pull = (
         _binomial(-p, growth) / (modulus * value * ratio**p)[:, None]
         for p, modulus, value in (
             (v.power[row, 0], t.E[member], v.I[row, 0]),
             (v.power[row, 2], t.G[member], v.shear_area[row, 0]),
             (v.power[row, 1], t.E[member], v.A[row, 0]),
         )
-    ]
+    )
     curve = t.alpha[member, None] * _binomial(np.full(len(row), -1.0), growth) / (v.depth[row, 0] * ratio)[:, None]
-    return Stretches(member, start, length, rank, *inverse, curve)
+    return Stretches(member, start, length, rank, bend, shear, pull, curve)
 
 
 def _cuts(frame: Frame, table: LoadTable | None) -> tuple[Ints, Floats]:
