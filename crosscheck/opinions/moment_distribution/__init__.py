@@ -1,11 +1,13 @@
 """The moment-distribution opinion: release and carry over, sway by holding the joints (H. Cross 1932).
 
     pieces        the loads of a case cut into pieces, and statics along them
+    varying       stepped and tapered members, cut into lengths for Gauss's rule
     members       stiffness, carry-over and fixed-end moments by moment-area and Gauss's rule
     sways         the independent sways, from geometry
     distribution  release and carry over
     holding       holding forces and sway corrections, repeated until joints and sways balance
     process       first order: the cases as columns of one process
+    one_way       which one-way members and supports work in a case
     opinion       the answer; spans, values along the members; working, tables to follow by hand
 
 and in second order

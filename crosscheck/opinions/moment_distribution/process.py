@@ -43,16 +43,21 @@ class Process:
     left: Floats
 
 
-def distribute(frame: Frame, names: tuple[str, ...]) -> Process:
-    """Run the whole process for these cases at once."""
-    held = hold(frame)
-    tables = [load_table(frame, name) for name in names]
-    ends = tuple(fixed_ends(held.members, table, cut_up(held.members, table)) for table in tables)
-    given = _given(held, tables, ends)
+def distribute(frame: Frame, names: tuple[str, ...], held: Held | None = None) -> Process:
+    """Run the whole process for these cases at once; `held`: the frame made ready, where it is so already."""
+    held = held or hold(frame)
+    given, ends = given_of(held, names)
     state, trace, left = settle(held, given)
     _refuse_misfits(held, given, state, names)
     _balance_rigid_members(held, given, state)
     return Process(held, names, ends, given, state, trace, left)
+
+
+def given_of(held: Held, names: Sequence[str]) -> tuple[Given, tuple[FixedEnds, ...]]:
+    """The cases as columns, and the fixed ends of each."""
+    tables = [load_table(held.frame, name) for name in names]
+    ends = tuple(fixed_ends(held.members, table, cut_up(held.members, table)) for table in tables)
+    return _given(held, tables, ends), ends
 
 
 def _given(held: Held, tables: Sequence[LoadTable], ends: Sequence[FixedEnds]) -> Given:
@@ -138,20 +143,22 @@ def case_answer(process: Process, column: int, undetermined: Undetermined) -> Ca
     return CaseAnswer(ends, joints, reactions)
 
 
-def _reactions(process: Process, column: int) -> Floats:
-    """(j, 3) on the frame, global axes: what held supports must add to balance their joint, and the springs' own
-    forces."""
+def own_reactions(process: Process, column: int) -> Floats:
+    """(2j,) forces on the frame along the supports' own axes: what held supports must add to balance their joint, and
+    the springs' own forces."""
     held, given, state = process.held, process.given, process.state
-    at = np.array([column])
-    support = held.frame.support_table.stiffness
-    own = np.where(
-        support[:, :2] == HELD,
-        -joint_forces(held, given, state, at).reshape(-1, 2),
-        state.push[:, column].reshape(-1, 2),
-    )
+    support = held.frame.support_table.stiffness[:, :2].ravel()
     # joint_forces counts the spring's push as acting; at a held direction there is none.
-    moment = np.where(
-        support[:, 2] == HELD, -joint_moments(held, given, state, at)[:, 0], state.twist[:, column]
+    return np.where(
+        support == HELD, -joint_forces(held, given, state, np.array([column]))[:, 0], state.push[:, column]
     )
-    forces = held.sways.global_axes(own.reshape(-1, 1))[:, :, 0]
+
+
+def _reactions(process: Process, column: int) -> Floats:
+    """(j, 3) on the frame, global axes."""
+    held, given, state = process.held, process.given, process.state
+    support = held.frame.support_table.stiffness[:, 2]
+    moments = joint_moments(held, given, state, np.array([column]))[:, 0]
+    moment = np.where(support == HELD, -moments, state.twist[:, column])
+    forces = held.sways.global_axes(own_reactions(process, column)[:, None])[:, :, 0]
     return np.column_stack([forces, moment])
