@@ -22,6 +22,10 @@ from crosscheck.audit.flexibility import BENDING, SHEAR_STRAIN, STRETCH
 from crosscheck.frame.model import FREE, HELD, Bools, Floats, Ints
 
 SUPPORT, END, LENGTH = "support", "end", "length"
+BOTH = "x and y"
+"""Direction of a support that gives way between its axes, because rigid members stop it along each of them."""
+STOPPED = 1e-6
+"""Elongation of rigid members by a unit movement beyond which they stop it."""
 BENDING_FACTOR, AXIAL_FACTOR, SHEAR_FACTOR, MODULUS = "EI", "EA", "shear stiffness", "E"
 STIFFEST = 100.0
 """The largest factor of stiffness of a whole section or material that is worth naming."""
@@ -39,9 +43,9 @@ class Signature:
 
     kind: "support" (one direction gives way), "end" (a member end turns against its joint), "length" (a member's
       elongation is off), "EI", "EA", "shear stiffness" (by a factor, of a member or of all of a section), "E" (of a
-      material: bending and axial together).
+      material, and with it G: bending, axial and shear together).
     of, where: "joint", "member", "section" or "material", and its name. joint: of an "end", its joint.
-    direction: of a "support" one of "x", "y", "rotation" in its own axes.
+    direction: of a "support" one of "x", "y", "rotation" in its own axes, or "x and y" (between the two).
     share: of the squared misfit it explains, 0 to 1. size: movement, rotation or stretch of the slip, or 1 - 1/factor.
     allowed: how large a size rounding alone could give; significant: size beyond that.
     fitted: what the claim goes with: the stiffness left (0: free, or a hinge), or the factor; NaN for "length".
@@ -206,7 +210,13 @@ def _supports(system: Fit, into: _Candidates) -> None:
     frame, g = system.frame, system.geometry
     m = len(frame.members)
     columns = g.matrix.tocsc()
-    blocked = _blocked(system)
+    blocked, together = _blocked(system)
+    for joint, (along, across) in together.items():
+        label = Signature(SUPPORT, "joint", list(frame.joints)[joint], 0, 0, 0, 0, direction=BOTH)
+        column = (along * columns[:, [3 * joint]] + across * columns[:, [3 * joint + 1]]).tocoo()
+        places = 3 * m + 3 * joint + np.arange(2)
+        reaction = _beyond(np.dot((along, across), system.forces[places]), system.rounding[places].sum())
+        into.add(label, column.row.astype(np.int64), column.data, reaction, 0.0)
     for joint, axis in zip(*np.nonzero(frame.support_table.stiffness != FREE), strict=True):
         place = 3 * int(joint) + int(axis)
         if blocked[place]:
@@ -223,15 +233,16 @@ def _supports(system: Fit, into: _Candidates) -> None:
             into.add(label, np.array([3 * m + place]), np.array([-1.0]), reaction, 1 / float(g.stiffness[place]))
 
 
-def _blocked(system: Fit) -> Bools:
-    """(3 j,) held directions that rigid members stop from moving even when freed.
+def _blocked(system: Fit) -> tuple[Bools, dict[int, tuple[float, float]]]:
+    """(3 j,) held directions that rigid members stop from moving even when freed; and by joint (index) the one direction
+    between x and y, along its own axes, that they leave where both are held and each alone is stopped.
 
     Where rigid members leave axial forces undetermined, some of their elongations repeat others and are not kept: a
     freed support may only move if all of them allow it.
     """
     blocked = np.zeros(system.geometry.matrix.shape[1], dtype=bool)
     if not system.lost_rows.shape[0]:
-        return blocked
+        return blocked, {}
     rigid = sparse.vstack([system.keep[np.flatnonzero(system.rigid)], system.lost_rows]) @ system.geometry.matrix
     rigid = rigid.tocsc()
     base = rigid[:, system.columns]
@@ -242,8 +253,17 @@ def _blocked(system: Fit) -> Bools:
     left = target.copy()
     for _ in range(3):
         left = left - base @ factors.solve(base.T @ left)
-    blocked[held] = np.abs(left).max(axis=0, initial=0.0) > 1e-6
-    return blocked
+    blocked[held] = np.abs(left).max(axis=0, initial=0.0) > STOPPED
+    together = {}
+    place = {int(h): k for k, h in enumerate(held)}
+    for joint in range(len(blocked) // 3):
+        x, y = 3 * joint, 3 * joint + 1
+        if blocked[x] and blocked[y]:
+            pair = left[:, [place[x], place[y]]]
+            _, _, direction = np.linalg.svd(pair.T @ pair)
+            if np.abs(pair @ direction[1]).max() <= STOPPED:
+                together[joint] = (float(direction[1, 0]), float(direction[1, 1]))
+    return blocked, together
 
 
 def _ends(system: Fit, into: _Candidates) -> None:
@@ -292,8 +312,8 @@ def _factors(system: Fit, into: _Candidates) -> None:
     for material in frame.materials:
         chosen = np.array([k for k, member in enumerate(members) if member.material == material], dtype=np.int64)
         if len(chosen):
-            both = part[BENDING] + part[STRETCH]
-            _factor(into, Signature(MODULUS, "material", material, 0, 0, 0, 0), chosen, both)
+            every = part[BENDING] + part[STRETCH] + part[SHEAR_STRAIN]
+            _factor(into, Signature(MODULUS, "material", material, 0, 0, 0, 0), chosen, every)
 
 
 def _factor(into: _Candidates, label: Signature, chosen: Ints, deformation: Floats) -> None:
