@@ -52,6 +52,11 @@ class Opinions:
     judgements: Mapping[str, CaseJudgement]
 
     @property
+    def envelopes(self) -> tuple[str, ...]:
+        """Envelopes of the frame all of whose cases and combinations were asked for."""
+        return tuple(e.name for e in self.frame.envelopes.values() if set(e.names) <= set(self.names))
+
+    @property
     def verdict(self) -> Verdict:
         return opinions_verdict(list(self.judgements.values()))
 

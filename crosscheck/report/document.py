@@ -12,7 +12,14 @@ import numpy as np
 from crosscheck.answer import Answer, CaseAnswer
 from crosscheck.check import CaseAudit, Opinions, Verification
 from crosscheck.compare.differences import Difference
-from crosscheck.compare.opinions import with_turning_points
+from crosscheck.compare.envelopes import NOBODY, Extremes, envelope, envelope_spans
+from crosscheck.compare.opinions import (
+    END_QUANTITIES,
+    JOINT_QUANTITIES,
+    REACTION_QUANTITIES,
+    SPAN_QUANTITIES,
+    with_turning_points,
+)
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.frame.stations import stations
 
@@ -74,7 +81,64 @@ def _opinions_part(result: Opinions) -> list[dict[str, Any]]:
 def _given(result: Opinions, answer: Answer) -> dict[str, Any]:
     why = "; ".join(f"{case}: {reason}" for case, reason in answer.silent.items()) or None
     results = {name: _case_part(result.frame, answer, name) for name in result.names if name in answer.cases}
-    return {"name": answer.opinion, "status": "given", "why": why, "results": results}
+    given: dict[str, Any] = {"name": answer.opinion, "status": "given", "why": why, "results": results}
+    envelopes = {name: part for name in result.envelopes if (part := _envelope_part(result.frame, answer, name))}
+    return given | ({"envelopes": envelopes} if envelopes else {})
+
+
+def _envelope_part(frame: Frame, answer: Answer, name: str) -> dict[str, Any] | None:
+    """Extremes with the case that governs each; null where no case has a value."""
+    found = envelope(frame, answer, name)
+    if found is None:
+        return None
+    ends = [
+        {"member": m.name, "joint": joint, "quantity": q, **_extreme_part(found.ends, found.names, (k, end, c))}
+        for k, m in enumerate(frame.members.values())
+        for end, joint in enumerate((m.joint_from, m.joint_to))
+        for c, q in enumerate(END_QUANTITIES)
+    ]
+    joints = [
+        {"joint": joint, "quantity": q, **_extreme_part(found.joints, found.names, (k, c))}
+        for k, joint in enumerate(frame.joints)
+        for c, q in enumerate(JOINT_QUANTITIES)
+    ]
+    reactions = [
+        {"joint": joint, "quantity": q, **_extreme_part(found.reactions, found.names, (frame.joint_index[joint], c))}
+        for joint in frame.supports
+        for c, q in enumerate(REACTION_QUANTITIES)
+    ]
+    spans = _envelope_spans(frame, answer, found.names)
+    of = {"of": list(found.names), "lacking": list(found.lacking)}
+    return of | {"member_ends": ends, "joints": joints, "reactions": reactions, "spans": spans}
+
+
+def _extreme_part(e: Extremes, names: tuple[str, ...], index: tuple[int, ...]) -> dict[str, Any]:
+    return {
+        "greatest": plain(float(e.greatest[index])), "greatest_by": _by(names, int(e.greatest_by[index])),
+        "least": plain(float(e.least[index])), "least_by": _by(names, int(e.least_by[index])),
+    }  # fmt: skip
+
+
+def _by(names: tuple[str, ...], index: int) -> str | None:
+    return None if index == NOBODY else names[index]
+
+
+def _envelope_spans(frame: Frame, answer: Answer, names: tuple[str, ...]) -> list[dict[str, Any]]:
+    found = envelope_spans(frame, answer, names)
+    e = found.values
+    parts = []
+    for k, member in enumerate(frame.members):
+        own = found.at.of(k)
+        part: dict[str, Any] = {"member": member, "x": found.at.x[own].tolist()}
+        for c, q in enumerate(SPAN_QUANTITIES):
+            part[q] = {
+                "greatest": _lists(e.greatest[own, c]),
+                "greatest_by": [_by(names, i) for i in e.greatest_by[own, c].tolist()],
+                "least": _lists(e.least[own, c]),
+                "least_by": [_by(names, i) for i in e.least_by[own, c].tolist()],
+            }
+        parts.append(part)
+    return parts
 
 
 def _case_part(frame: Frame, answer: Answer, name: str) -> dict[str, Any]:

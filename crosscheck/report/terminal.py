@@ -19,6 +19,7 @@ from rich.text import Text
 from crosscheck.answer import MOMENT, Answer, WorkTable
 from crosscheck.check import CaseAudit, Opinions, Verification
 from crosscheck.compare.differences import Difference, Verdict
+from crosscheck.compare.envelopes import NOBODY, Extremes, envelope
 from crosscheck.compare.opinions import CaseJudgement, with_turning_points
 from crosscheck.compare.tolerance import CLAIM, OWN
 from crosscheck.frame.model import Frame
@@ -117,6 +118,8 @@ def opinions_report(
         parts += _opinion_differences(result.frame, judged)
     for name in result.names:
         parts += _results(result, name)
+    for name in result.envelopes:
+        parts += _envelope(result, name)
     for title, tables in working:
         parts.append(heading(title))
         parts += [_work_table(t) for t in tables]
@@ -226,6 +229,44 @@ def _results(result: Opinions, name: str) -> list[RenderableType]:
     parts += [Text(""), _joint_table(result, answer, name), *more(len(result.frame.joints), MOST_ROWS)]
     parts += [Text(""), _reaction_table(result.frame, answer, name)]
     return parts
+
+
+def _envelope(result: Opinions, name: str) -> list[RenderableType]:
+    """Extremes of the first opinion that speaks for the envelope, with what governs each."""
+    frame = result.frame
+    given = [e for a in result.answers.values() if (e := envelope(frame, a, name))]
+    if not given:
+        return []
+    found = given[0]
+    parts: list[RenderableType] = [heading(f"Envelope {name}, of {words.counted(len(found.names), 'case')}")]
+    numbered = [f"{k + 1} {one}" for k, one in enumerate(found.names)]
+    parts.append(Text("Governing, by number: " + "; ".join(numbered)))
+    if found.lacking:
+        parts.append(Text(f"Not among them, because nobody speaks for it: {words.some(list(found.lacking))}", style="bold"))
+    members = list(frame.members.values())[: MOST_ROWS // 2]
+    places = [(m.name, joint) for m in members for joint in (m.joint_from, m.joint_to)]
+    columns = [("member", "left"), ("at", "left")]
+    for c, quantity in enumerate(("axial", "shear", "moment")):
+        cells = [_extreme_cells(found.ends, (k // 2, k % 2, c)) for k in range(len(places))]
+        rows = [(*place, *row) for place, row in zip(places, cells, strict=True)]
+        parts += [Text(""), table([*columns, *_extreme_heads(frame, quantity)], rows)]
+    parts += more(2 * len(frame.members), MOST_ROWS)
+    supports = list(frame.supports)[:MOST_ROWS]
+    for c, quantity in enumerate(("fx", "fy", "moment")):
+        rows = [(j, *_extreme_cells(found.reactions, (frame.joint_index[j], c))) for j in supports]
+        parts += [Text(""), table([("support", "left"), *_extreme_heads(frame, quantity)], rows)]
+    return parts
+
+
+def _extreme_heads(frame: Frame, quantity: str) -> list[tuple[str, str]]:
+    unit = words.unit_of(frame, quantity)
+    return [(f"{quantity}, {unit}\ngreatest", "right"), ("by", "right"), ("least", "right"), ("by", "right")]
+
+
+def _extreme_cells(e: Extremes, at: tuple[int, ...]) -> list[str]:
+    scale = max(_largest(e.greatest[..., at[-1]]), _largest(e.least[..., at[-1]]))
+    both = (e.greatest[at], e.greatest_by[at]), (e.least[at], e.least_by[at])
+    return [c for v, by in both for c in (words.number(float(v), scale), str(int(by) + 1) if by != NOBODY else "")]
 
 
 def _heads(frame: Frame, quantities: Iterable[str]) -> list[tuple[str, str]]:
