@@ -6,19 +6,20 @@ compatibility does not. Values at the face stand where the rigid zone meets the 
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import replace
 from functools import partial
 from typing import TYPE_CHECKING
 
 import numpy as np
 
-from crosscheck.answer import CaseAnswer, Spans
+from crosscheck.answer import CaseAnswer
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
-from crosscheck.frame.loads import load_table
-from crosscheck.frame.model import Floats, Frame
-from crosscheck.opinions.slope_deflection.prepared import END, ForceSpans
+from crosscheck.frame.loads import LoadTable, load_table
+from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.opinions.slope_deflection.prepared import END, REACTION, SPAN, ForceSpans
 from crosscheck.suspects.changes import Change, with_values
+from crosscheck.suspects.observation import EXTREME, Observation
 from crosscheck.suspects.suspect import Option, named
 
 if TYPE_CHECKING:
@@ -90,7 +91,8 @@ def _redistributed(sweep: Sweep) -> Iterator[Weighed]:
     ends = frame.member_table.ends
     inner = [j for j in range(len(frame.joints)) if (ends == j).sum() >= 2]
     names = list(frame.joints)
-    effects = {j: _effect(sweep, [j]) for j in inner}
+    tables = {name: load_table(frame, name) for name in seen.names}
+    effects = {j: _effect(sweep, j, tables) for j in inner}
     for j in inner:
         label = named(frame, "joint", names[j])
         yield from _share(sweep, effects[j], f"the moments at {label} were redistributed by", (label,))
@@ -99,24 +101,31 @@ def _redistributed(sweep: Sweep) -> Iterator[Weighed]:
         yield from _share(sweep, np.asarray(whole), "the moments at every inner joint were redistributed by", ())
 
 
-def _effect(sweep: Sweep, joints: list[int]) -> Floats:
-    """(n,) what taking all of the moments off at these joints adds to the values, joint displacements left alone."""
+def _effect(sweep: Sweep, joint: int, tables: Mapping[str, LoadTable]) -> Floats:
+    """(n,) what taking all of the moments off at a joint adds to the values, joint displacements left alone."""
     seen, frame = sweep.seen, sweep.frame
-    cases = {n: _taken_off(frame, sweep.answer.cases[n], joints) for n in seen.names}
-    spans = _spans_over(sweep, cases)
-    changed = replace(sweep.answer, cases=cases, spans=spans)
-    return seen.read(changed) - seen.said
+    cases = {n: _taken_off(frame, sweep.answer.cases[n], joint) for n in seen.names}
+    # In second order statics alone gives no values along the members: they are left as they are.
+    spans = sweep.answer.spans if sweep.slow else ForceSpans(frame, tables, cases, sweep.answer.undetermined)
+    rows = _touched(seen, joint)
+    out = np.zeros(len(seen.said))
+    out[rows] = seen.read(replace(sweep.answer, cases=cases, spans=spans), rows=rows)[rows] - seen.said[rows]
+    return out
 
 
-def _spans_over(sweep: Sweep, cases: dict[str, CaseAnswer]) -> Spans:
-    """Values along the members over other end actions; as they are in second order, where statics alone gives none."""
-    tables = {name: load_table(sweep.frame, name) for name in cases}
-    return sweep.answer.spans if sweep.slow else ForceSpans(sweep.frame, tables, cases, sweep.answer.undetermined)
+def _touched(seen: Observation, joint: int) -> Ints:
+    """Values on the members at a joint, reactions at their ends, and whatever is an extreme."""
+    p, ends = seen.places, seen.frame.member_table.ends
+    around = (ends == joint).any(axis=1)
+    at = np.zeros(len(seen.frame.joints), dtype=bool)
+    at[ends[around]] = True
+    on = around[p.member] & ((p.kind == END) | (p.kind == SPAN)) & (p.member >= 0)
+    return np.flatnonzero(on | (at[p.joint] & (p.kind == REACTION) & (p.joint >= 0)) | (p.kind == EXTREME))
 
 
-def _taken_off(frame: Frame, case: CaseAnswer, joints: list[int]) -> CaseAnswer:
+def _taken_off(frame: Frame, case: CaseAnswer, joint: int) -> CaseAnswer:
     t = frame.member_table
-    less = np.where(np.isin(t.ends, joints), -np.nan_to_num(case.ends[:, :, 2]), 0.0)
+    less = np.where(t.ends == joint, -np.nan_to_num(case.ends[:, :, 2]), 0.0)
     ends, reactions = case.ends.copy(), case.reactions.copy()
     shear = -less.sum(axis=1) / t.length
     ends[:, :, 2] += less

@@ -18,7 +18,7 @@ from crosscheck.opinions.slope_deflection.prepared import prepared
 from crosscheck.problems import UnusableInput
 from crosscheck.suspects.observation import observe
 from crosscheck.suspects.suspect import Option, Suspect
-from crosscheck.suspects.sweep import Sweep, Weighed
+from crosscheck.suspects.sweep import PLACES_UP_TO, Sweep, Weighed
 
 if TYPE_CHECKING:
     from crosscheck.check import Opinions
@@ -28,6 +28,11 @@ EXPLAINS_ENOUGH = 0.9
 NEAR = 4.0
 """How much worse in score than the first a suspect may be and still be named."""
 MOST_TIES = 5
+NOTHING_EXPLAINS = "nothing tried, alone or in pairs, explains the difference; start from statics and compatibility"
+PLACES_NOT_TRIED = (
+    f"no mistake of the paste, of a section or material, or of the whole frame explains the difference; in a frame of more "
+    f"than {PLACES_UP_TO} members its single members, joints and loads are not tried: start from statics"
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,7 +87,7 @@ def search(
     if not ranked or not ranked[0].within:
         ranked = sorted([*ranked, *sweep.pairs(ranked)], key=lambda w: w.score)
     told = _told(sweep, ranked, limit)
-    why = "" if told else "nothing tried, alone or in pairs, explains the difference; start from statics and compatibility"
+    why = "" if told else PLACES_NOT_TRIED if sweep.large else NOTHING_EXPLAINS
     return Findings(tuple(told), why, sweep.solved)
 
 

@@ -61,6 +61,10 @@ def load_options(screen: Screen) -> Iterator[Option]:
     moves = [move for case in frame.cases for move in _moves(frame, case)]
     if not moves:
         return
+    sample = screen.sample
+    if sample is not None:
+        rough = sample.left(_deltas(sample, moves))
+        moves = [moves[k] for k in np.argsort(rough)[: 3 * KEEP].tolist()]
     deltas = _deltas(screen, moves)
     for k in np.argsort(screen.left(deltas))[:KEEP].tolist():
         move = moves[k]

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -69,19 +70,27 @@ class Observation:
     def residual(self) -> Floats:
         return self.value - self.said
 
-    def read(self, answer: Answer, names: tuple[str, ...] | None = None) -> Floats:
-        """(n,) the values of another answer at the same places; `names` stand for the claim's cases, in their order."""
+    @cached_property
+    def off(self) -> Bools:
+        """(n,) which values are further off than allowed."""
+        return np.asarray(np.abs(self.residual) > self.allowed)
+
+    def read(self, answer: Answer, names: tuple[str, ...] | None = None, rows: Ints | None = None) -> Floats:
+        """(n,) the values of another answer at the same places; `names` stand for the claim's cases, in their order.
+
+        rows: the only ones wanted; the rest is NaN.
+        """
         out = np.full(len(self.value), np.nan)
+        wanted = np.arange(len(self.value)) if rows is None else rows
         for k, name in enumerate(self.names if names is None else names):
-            rows = np.flatnonzero(self.case == k)
-            if name in answer.cases and len(rows):
-                out[rows] = _read(self, answer, name, rows)
+            mine = wanted[self.case[wanted] == k]
+            if name in answer.cases and len(mine):
+                out[mine] = _read(self, answer, name, mine)
         return out
 
     def part(self, rows: Ints) -> Places:
         """The places of some rows."""
-        p = self.places
-        return Places(*(getattr(p, f)[rows] for f in Places.__dataclass_fields__))
+        return self.places.part(rows)
 
 
 def observe(

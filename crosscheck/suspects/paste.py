@@ -73,7 +73,7 @@ def _label(seen: Observation, v: ClaimedValue) -> str:
 
 
 def _bad(seen: Observation) -> Ints:
-    return np.flatnonzero(np.abs(seen.residual) > seen.allowed)
+    return np.flatnonzero(seen.off)
 
 
 def _groups(seen: Observation, *keys: str) -> Iterator[tuple[tuple[object, ...], Ints]]:
@@ -90,7 +90,7 @@ def _groups(seen: Observation, *keys: str) -> Iterator[tuple[tuple[object, ...],
 def _units(seen: Observation) -> Iterator[Option]:
     for keys in (("quantity",), ("kind", "quantity"), ("quantity", "case"), ("member", "quantity")):
         for key, rows in _groups(seen, *keys):
-            if keys[0] == "member" and (key[0] is None or len(rows) < 2):
+            if keys[0] == "member" and (key[0] is None or len(rows) < 2) or not seen.off[rows].any():
                 continue
             yield from _unit(seen, rows, str(seen.values[rows[0]].quantity))
     forces = np.array([k for k, v in enumerate(seen.values) if v.quantity not in ("dx", "dy", "across", "rotation")])
@@ -183,7 +183,7 @@ def _signs(seen: Observation) -> Iterator[Option]:
             if "joint" in keys and seen.values[rows[0]].kind not in ("reaction", "displacement"):
                 continue
             # A sign is no evidence where nothing large changes by it.
-            if len(rows) < len(seen.values) and np.any(np.abs(seen.residual[rows]) > seen.allowed[rows]):
+            if len(rows) < len(seen.values) and seen.off[rows].any():
                 yield _replaced(
                     seen,
                     rows,

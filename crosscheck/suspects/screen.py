@@ -7,6 +7,7 @@ r'r - r'Q (Q'Q)^-1 Q'r, so places that cannot explain the difference fall out be
 
 from __future__ import annotations
 
+import copy
 from collections.abc import Callable, Sequence
 from functools import cached_property
 
@@ -22,6 +23,8 @@ MOST_ROWS = 4000
 """Values used to weigh changes; of a larger claim the worst and an even sample of the rest."""
 
 
+SAMPLED = 400
+"""Values that tell which of very many changes are worth weighing on all: the worst, and an even sample of the rest."""
 NUDGE = 1e-4
 """Relative step for slopes of what is fitted."""
 
@@ -29,13 +32,31 @@ NUDGE = 1e-4
 class Screen:
     """The linear values of an observation, weighted, with the effects of unit actions on them."""
 
-    def __init__(self, seen: Observation, base: Prepared, answer_values: Floats | None = None) -> None:
+    def __init__(self, seen: Observation, base: Prepared) -> None:
         self.seen, self.base, self.frame = seen, base, seen.frame
         self.rows, self.places, said, value = self._linear_rows()
         self.residual = value - said
-        self.weight = 1 / seen.noise[self.rows]
-        self.case = seen.case[self.rows]
-        self.parts = [np.flatnonzero(self.case == k) for k in range(len(seen.names))]
+        self._of_rows()
+
+    def _of_rows(self) -> None:
+        self.weight = 1 / self.seen.noise[self.rows]
+        self.case = self.seen.case[self.rows]
+        self.parts = [np.flatnonzero(self.case == k) for k in range(len(self.seen.names))]
+
+    @cached_property
+    def sample(self) -> Screen | None:
+        """The same over a few of the values; None where there are not many more."""
+        if len(self.rows) < 2 * SAMPLED:
+            return None
+        worst = np.argsort(-np.abs(self.residual) * self.weight)[: SAMPLED // 2]
+        pick = np.union1d(worst, np.arange(0, len(self.rows), 2 * len(self.rows) // SAMPLED))
+        few = copy.copy(self)
+        few.__dict__.pop("factors", None)
+        few.rows, few.places = self.rows[pick], self.places.part(pick)
+        few.residual = self.residual[pick]
+        few.effects = self.effects.part(pick)
+        few._of_rows()
+        return few
 
     def _linear_rows(self) -> tuple[Ints, Places, Floats, Floats]:
         seen = self.seen

@@ -38,6 +38,9 @@ UNFIT, STEEPNESS = 3.0, 2.0
 """What not fitting to the printed precision costs, and how steeply the misfit counts after that."""
 PER_NUMBER = 0.2
 CONFIRMED = 16
+PLACES_UP_TO = 500
+"""Members of a frame whose every member, joint and load is weighed: memory goes with the square of them, half a gigabyte
+here. In a larger one only mistakes of the paste, of whole sections and materials and of the whole frame are tried."""
 SLOW_FEW = 6
 """Options solved again in second order, the most likely by a forecast of first order."""
 PROMISE = 0.5
@@ -95,6 +98,11 @@ class Sweep:
     def slow(self) -> bool:
         """In second order another solution costs a hundred times one of first order: few are tried."""
         return self.frame.analysis.order == 2
+
+    @property
+    def large(self) -> bool:
+        """Too large a frame for every place in it to be weighed."""
+        return len(self.frame.members) > PLACES_UP_TO
 
     # --- weighing ---
 
@@ -166,6 +174,8 @@ class Sweep:
 
     def singles(self) -> list[Weighed]:
         """Every single mistake worth telling, best first."""
+        if self.large:
+            return self._of_the_whole()
         quick = [self.weigh(o) for o in paste_options(self.seen)]
         told = self._told(quick)
         if self.screen.partial or self.slow:
@@ -188,10 +198,18 @@ class Sweep:
         quick.sort(key=lambda w: w.score)
         return quick
 
+    def _of_the_whole(self) -> list[Weighed]:
+        """Mistakes that are of no one place."""
+        found = [self.weigh(o) for o in paste_options(self.seen)]
+        found += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
+        if not self.slow and not any(w.fits for w in found):
+            found += [w for family in large_families(self.frame) if (w := self.fit(family)) is not None]
+        return sorted(found, key=lambda w: w.score)
+
     def _told(self, already: list[Weighed]) -> list[Weighed]:
         """Everything foretold; numbers are fitted only where nothing without one fits."""
         told = [w for o in self._foretellable() if (w := self.foretold(o)) is not None]
-        if self.screen.partial or not any(w.fits for w in (*already, *told)):
+        if self.screen.partial or not any(w.fits and not w.option.fitted for w in (*already, *told)):
             told += [w for o in self._fits() if (w := self.foretold(o)) is not None]
         return told
 
@@ -324,7 +342,7 @@ class Sweep:
     def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
         """Two mistakes together, begun from the singles that explain most."""
         out: list[Weighed] = []
-        if self.slow:
+        if self.slow or self.large:
             return out
         begin = sorted((w for w in singles if w.explains > 0.05), key=lambda w: w.rough)[:first]
         for one in begin:

@@ -64,6 +64,10 @@ class Places:
     x: Floats
     side: Ints
 
+    def part(self, rows: Ints) -> Places:
+        """Some of the places."""
+        return Places(*(getattr(self, f)[rows] for f in Places.__dataclass_fields__))
+
 
 @dataclass(frozen=True, eq=False)
 class Effects:
@@ -77,6 +81,10 @@ class Effects:
     force: Floats
     reaction: Floats
     member: Floats
+
+    def part(self, rows: Ints) -> Effects:
+        """The effects on some of the places."""
+        return Effects(self.force[rows], self.reaction[rows], self.member[rows])
 
 
 class ForceSpans(ClosedFormSpans):
@@ -469,8 +477,9 @@ class Prepared:
         if on:
             self._on_members([loads[k] for k in on], np.array(on), places, onto, out)
         free = ~self.system.held[:, None]
-        out += effects.force @ np.where(free, onto, moved)
-        out += effects.reaction @ np.where(free, self.system.spring[:, None] * moved, 0.0)
+        out += _by_few(effects.force, np.where(free, onto, moved))
+        if moved.any():
+            out += _by_few(effects.reaction, np.where(free, self.system.spring[:, None] * moved, 0.0))
         rows = np.flatnonzero(places.kind == REACTION)
         turned = self._axes.T.tocsr()[3 * places.joint[rows] + places.column[rows]]
         # A force that goes straight into a held direction; one beside it in a free direction reacts nowhere here.
@@ -542,6 +551,11 @@ class Prepared:
 def prepared(frame: Frame) -> Prepared:
     """The frame with its matrix factorised. Raises ArithmeticError where it can move freely."""
     return Prepared(frame)
+
+
+def _by_few(effects: Floats, loads: Floats) -> Floats:
+    """effects (n, d) times loads (d, k) of which each column has few entries: a load touches two joints."""
+    return np.asarray((sp.csr_matrix(loads.T) @ effects.T).T)
 
 
 def _gathered_each(frame: Frame, ends: Floats) -> Floats:
