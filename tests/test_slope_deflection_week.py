@@ -304,3 +304,153 @@ def test_deflection_turns_where_its_slope_is_zero() -> None:
         crossings = dense[1:-1][slope[1:] != slope[:-1]]
         assert all(np.abs(x - place).min() < 2e-3 for place in crossings)
         assert len(crossings)
+
+# --- ties and single rigid members ---------------------------------------------------------------------
+
+SHED = """
+units = "kN m"
+[materials.m]
+E = "210 GPa"
+alpha = 12e-6
+[sections.s]
+I = "8000 cm^4"
+A = "60 cm^2"
+[sections.stiff]
+I = 1e-4
+A = {area}
+[joints]
+A = [0, 0]
+B = [0, 4]
+C = [6, 4]
+D = [6, 0]
+E = [12, 4]
+F = [12, 0]
+G = [3, 5.5]
+[members]
+AB = {{ from = "A", to = "B", material = "m", section = "s", hinge = "from" }}
+BG = {{ from = "B", to = "G", material = "m", section = "s" }}
+GC = {{ from = "G", to = "C", material = "m", section = "s"{own} }}
+DC = {{ from = "D", to = "C", material = "m", section = "s" }}
+CE = {{ from = "C", to = "E", material = "m", section = "s", hinge = "both" }}
+FE = {{ from = "F", to = "E", material = "m", section = "s", spring_from = 3000 }}
+{bars}
+[supports]
+A = "fixed"
+D = "fixed"
+F = {{ x = "held", y = 40000, rotation = "held" }}
+{more}
+[loads.roof]
+apply = [{{ members = ["BG", "GC"], uniform = 11, direction = "down" }}, {{ member = "GC", force = 4, at = 1, direction = "along" }}]
+[loads.wind]
+apply = [{{ member = "AB", uniform = 5, direction = "right" }}, {{ joint = "E", force = 3, direction = 200 }}]
+[loads.warm]
+apply = [{{ member = "BG", temperature = 30 }}, {{ joint = "D", settlement = {{ x = 0.002, y = -0.004 }} }}]
+[analysis]
+axial = "elastic"
+"""
+
+
+def shed(area: float = 1.0, bars: str = "", more: str = "", own: str = "") -> Frame:
+    return read_frame_text(SHED.format(area=area, bars=bars, more=more, own=own))
+
+
+def everything(frame: Frame, name: str, of: Frame) -> tuple[Floats, Floats, Floats]:
+    """End actions, displacements and reactions of the members and joints of `of`."""
+    case = opinion(frame).cases[name]
+    return case.ends[: len(of.members)], case.joints[: len(of.joints)], case.reactions[: len(of.joints)]
+
+
+def close(one: tuple[Floats, ...], other: tuple[Floats, ...], share: float) -> None:
+    for a, b in zip(one, other, strict=True):
+        np.testing.assert_allclose(a, b, rtol=0, atol=share * np.abs(b).max())
+
+
+def of_no_give(build: dict[float, Frame], name: str, of: Frame) -> tuple[Floats, ...]:
+    """What bars of ever larger area tend to: from two areas, what goes with 1/area taken out."""
+    (small, soft), (large, hard) = build.items()
+    one, other = everything(soft, name, of), everything(hard, name, of)
+    return tuple(b + (b - a) / (large / small - 1.0) for a, b in zip(one, other, strict=True))
+
+
+@pytest.mark.parametrize("name", ["roof", "wind", "warm"])
+def test_a_tie_is_a_bar_that_does_not_give(name: str) -> None:
+    """Hinged bars of 1e3 and 1e4 times the columns' area, extrapolated; a bar between B and C takes the tie's force."""
+    bars = 'T1 = { from = "B", to = "C", material = "m", section = "stiff", hinge = "both" }'
+    tied = shed(more='[ties]\nroof = { joints = ["B", "C"], direction = "x" }')
+    expected = of_no_give({area: shed(area, bars) for area in (6.0, 60.0)}, name, tied)
+    close(everything(tied, name, tied), expected, 1e-8)
+    moves = opinion(tied).cases[name].joints
+    np.testing.assert_allclose(moves[1, 0], moves[2, 0], rtol=0, atol=1e-15 * np.abs(moves[:, :2]).max() * 10)
+
+
+def test_a_tie_at_an_angle_to_a_support() -> None:
+    """G tied to the held foot D along the line between them: a bar from D to G that does not give; D's reaction lacks what
+    the tie brings to it."""
+    angle = float(np.degrees(np.arctan2(5.5, -3.0)))
+    tied = shed(more=f'[ties]\nprop = {{ joints = ["D", "G"], direction = {angle!r} }}')
+    bars = 'T1 = { from = "D", to = "G", material = "m", section = "stiff", hinge = "both" }'
+    for name in tied.cases:
+        expected = of_no_give({area: shed(area, bars) for area in (6.0, 60.0)}, name, tied)
+        close(everything(tied, name, tied), expected, 1e-8)
+
+
+@pytest.mark.parametrize("name", ["roof", "wind", "warm"])
+def test_one_member_axially_rigid(name: str) -> None:
+    """Against the same member of 1e3 and 1e4 times the area, extrapolated. Loads along it are among the loads."""
+    rigid = shed(own=', axial = "rigid"')
+    given = everything(rigid, name, rigid)
+    built = {area: shed(area) for area in (6.0, 60.0)}
+    stiff = {}
+    for area, frame in built.items():
+        section = replace(frame.sections["s"], name="stiff", A=area)
+        members = {**frame.members, "GC": replace(frame.members["GC"], section="stiff")}
+        stiff[area] = replace(frame, sections={**frame.sections, "stiff": section}, members=members)
+    close(given, of_no_give(stiff, name, rigid), 1e-8)
+    t, moves = rigid.member_table, opinion(rigid).cases[name].joints
+    k = rigid.member_index["GC"]
+    apart = moves[t.ends[k, 1], :2] - moves[t.ends[k, 0], :2]
+    longer = apart @ [t.cos[k], t.sin[k]]
+    assert abs(longer) <= 1e-14 * np.abs(moves[:, :2]).max()
+
+
+def test_ties_of_an_axially_rigid_frame() -> None:
+    """Two rigid portals side by side, tied at their beams: both sway alike, the storey shear is shared by stiffness."""
+    text = """
+units = "kN m"
+[materials.m]
+E = "30 GPa"
+[sections.s]
+I = 0.001
+[joints]
+A = [0, 0]
+B = [0, 3]
+C = [5, 3]
+D = [5, 0]
+E = [8, 0]
+F = [8, 4]
+[members]
+AB = { from = "A", to = "B", material = "m", section = "s" }
+BC = { from = "B", to = "C", material = "m", section = "s" }
+CD = { from = "C", to = "D", material = "m", section = "s" }
+EF = { from = "E", to = "F", material = "m", section = "s" }
+[supports]
+A = "fixed"
+D = "fixed"
+E = "fixed"
+[ties]
+roof = { joints = ["B", "C", "F"], direction = "x" }
+[loads.wind]
+apply = [{ joint = "F", force = 10, direction = "right" }]
+[analysis]
+axial = "rigid"
+"""
+    frame = read_frame_text(text)
+    given = opinion(frame)
+    moves, reactions = given.cases["wind"].joints, given.cases["wind"].reactions
+    np.testing.assert_allclose(moves[[1, 2, 5], 0], moves[1, 0], rtol=1e-13)
+    # A free-standing post takes 3 EI/h3 per unit sway.
+    post = 3 * 30e6 * 0.001 / 4**3 * moves[5, 0]
+    assert reactions[4, 0] == pytest.approx(-post, rel=1e-12)
+    assert np.nansum(reactions[:, 0]) == pytest.approx(-10, rel=1e-12)
+    # B and C are tied and joined by a rigid beam: what goes through which is nobody's knowledge.
+    assert given.undetermined.axial.tolist() == [False, True, False, False]
