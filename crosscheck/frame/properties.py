@@ -186,6 +186,8 @@ def _times(value: float | None, factor: float | None) -> float:
 def _own_factors(frame: Frame, factors: Factors, s: Floats, t: Floats, turn: Floats) -> None:
     """Put the factors of single members in place of those of their section or material."""
     for name, own in factors.items():
+        if name not in frame.members:  # a frame tried without that member
+            continue
         k, member = frame.member_index[name], frame.members[name]
         section, material = frame.sections[member.section], frame.materials[member.material]
         for column, key in enumerate(PROPERTIES):
