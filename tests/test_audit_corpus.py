@@ -37,7 +37,8 @@ Place = tuple[str, str, str]
 
 @dataclass(frozen=True)
 class Planted:
-    """One mistake and its claim. softer: what gives way more than in the frame; stiffer: what is held and was free."""
+    """One mistake and its claim. softer: what gives way more than in the frame; stiffer: what is held and was free;
+    purely: whether nothing gives way less."""
 
     seed: int
     frame: Frame
@@ -48,6 +49,7 @@ class Planted:
     half: CaseAnswer
     softer: tuple[Place, ...]
     stiffer: tuple[Place, ...]
+    purely: bool
 
     @property
     def found(self) -> CompatibilityFindings:
@@ -84,8 +86,9 @@ def planted(seed: int, sorts: tuple[str, ...], digits: int | None = None) -> Ite
         changes = [*changed_supports(frame, mistake.frame), *changed_ends(frame, mistake.frame)]
         softer = tuple(place for place, now, then in changes if then < now)
         stiffer = tuple(place for place, now, then in changes if now == FREE < then)
+        purely = all(then < now for _, now, then in changes)
         arrays = claimed_arrays(frame, closed_claim(values), case)
-        yield Planted(seed, frame, case, mistake, opinions, *arrays, softer, stiffer)
+        yield Planted(seed, frame, case, mistake, opinions, *arrays, softer, stiffer, purely)
 
 
 def own_signatures(p: Planted, table: SignatureTable) -> list[int]:
@@ -131,7 +134,7 @@ def softer_mistakes() -> tuple[Planted, ...]:
     found = [p for seed in SEEDS for p in planted(seed, SOFTER)]
     return tuple(
         p for p in found
-        if not p.stiffer and (p.softer or p.mistake.sort in FACTORED)
+        if p.purely and (p.softer or p.mistake.sort in FACTORED)
         and not (p.mistake.sort == "EA of a member" and weighs(p.frame))
     )  # fmt: skip
 
