@@ -26,6 +26,7 @@ from crosscheck.opinions.slope_deflection.system import System
 NAME = "slope-deflection"
 GIVEN_UP = 1e-9
 """Share of the largest that the last round may still change; a case beyond it gets no answer."""
+TOO_FAR_APART = "the equations cannot be solved in 16 digits: stiffnesses lie too far apart"
 THREE_DIGITS = 5e-4
 """Relative width to which a critical load factor is found where three digits will do."""
 
@@ -35,11 +36,13 @@ def opine(frame: Frame, study: Study, names: Sequence[str] | None = None) -> Ans
     names = frame.names if names is None else tuple(names)
     if frame.analysis.order == 2:
         return _second_order(frame, study, names)
+    if frame.one_way:
+        return _one_way(frame, study, names)
     tables = [load_table(frame, name) for name in names]
     try:
         solution = System(frame).solve(tables)
     except RuntimeError:  # SuperLU: exactly singular, though the geometry is no mechanism
-        return Silent(NAME, "the equations cannot be solved in 16 digits: stiffnesses lie too far apart")
+        return Silent(NAME, TOO_FAR_APART)
     silent = {
         name: f"the equations did not settle: the last round still changed {left:.1e} of the largest"
         for name, left in zip(names, solution.unsettled.tolist(), strict=True)
@@ -48,6 +51,25 @@ def opine(frame: Frame, study: Study, names: Sequence[str] | None = None) -> Ans
     cases = {name: solution.case_answer(k, study.undetermined) for k, name in enumerate(names) if name not in silent}
     given = {name: table for name, table in zip(names, tables, strict=True) if name in cases}
     return Answer(NAME, cases, study.undetermined, ClosedFormSpans(frame, given, cases, study.undetermined), silent)
+
+
+def _one_way(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer | Silent:
+    """Case by case, each with the parts that work under it: nothing may be superposed."""
+    from crosscheck.opinions.slope_deflection.one_way import OneWay
+
+    cases, tables, silent = {}, {}, {}
+    try:
+        one_way = OneWay(frame)
+        for name in names:
+            settled = one_way.settled(name)
+            if settled is None:
+                silent[name] = one_way.none_found
+                continue
+            cases[name] = settled.solution.case_answer(0, study.undetermined)
+            tables[name] = settled.solution.tables[0]
+    except RuntimeError:
+        return Silent(NAME, TOO_FAR_APART)
+    return Answer(NAME, cases, study.undetermined, ClosedFormSpans(frame, tables, cases, study.undetermined), silent)
 
 
 def _second_order(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer:
