@@ -37,7 +37,9 @@ def opine(
 
 def _size_reason(frame: Frame, limit: int | None) -> str:
     count = len(frame.members)
-    return f"{count} members are more than the {limit} it is asked for" if limit is not None and count > limit else ""
+    if limit is None or count <= limit:
+        return ""
+    return f"{count} members are more than the {limit} it is asked for unless --ask-library says so"
 
 
 def _speak(frame: Frame, study: Study, tables: dict[str, LoadTable]) -> Answer | Silent:

@@ -12,6 +12,13 @@ FRAME_LIMITS: tuple[tuple[Callable[[Frame, Undetermined], bool], str], ...] = (
     (lambda f, u: f.analysis.order != 1, "its second-order analysis is wrong for members that are not vertical"),
     (lambda f, u: f.analysis.shear != "rigid", "it knows no shear deformation"),
     (lambda f, u: bool((f.member_table.zone > 0.0).any()), "it knows no rigid end zones"),
+    (lambda f, u: bool(f.member_table.varying.any()), "it is not given stepped or tapered members"),
+    (lambda f, u: f.one_way, "it is not given one-way members or supports"),
+    (lambda f, u: bool(f.ties), "it knows no joints that are tied to move together"),
+    (
+        lambda f, u: bool(f.member_table.rigid.any() and not f.member_table.rigid.all()),
+        "it is not given axially rigid members among elastic ones",
+    ),
     (
         lambda f, u: bool(u.axial.any()),
         "axially rigid members leave axial forces undetermined, for which it would give an arbitrary split",

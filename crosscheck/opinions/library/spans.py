@@ -14,7 +14,7 @@ from typing import ClassVar
 import numpy as np
 
 from crosscheck.frame.loads import LoadTable
-from crosscheck.frame.model import FREE, HELD, Analysis, Floats, Frame, Ints, Joint, Member, Section, Support
+from crosscheck.frame.model import FREE, HELD, Analysis, Floats, Frame, Ints, Joint, Material, Member, Section, Support
 from crosscheck.opinions.library.model import Unfit
 from crosscheck.opinions.library.results import Solved, along, solve_once
 
@@ -69,6 +69,7 @@ def alone(frame: Frame, table: LoadTable, ends: Floats, m: int) -> tuple[Frame, 
     section = Section(source.section, I=float(t.I[m]), A=1e3 * float(t.I[m]) / length**2)
     beam = replace(
         frame, sections={source.section: section}, combinations={}, analysis=Analysis(axial="elastic"),
+        materials={source.material: Material(source.material, float(t.E[m]))}, states={}, state="", ties={},
         joints={"from": Joint("from", 0.0, 0.0), "to": Joint("to", length, 0.0)},
         members={member: Member(member, "from", "to", source.section, source.material)},
         supports={"from": Support("from", HELD, HELD, FREE), "to": Support("to", FREE, HELD, FREE)},
