@@ -28,7 +28,7 @@ def verify_gist(
     rows += [("First suspect", f"{s.kind}: {s.says}; it explains {100 * s.explains:.4g}%")
              for s in result.suspects[:1]]  # fmt: skip
     if result.suspects and result.suspects[0].tied_with:
-        rows.append(("", f"no better than {words.some(result.suspects[0].tied_with)}"))
+        rows.append(("or as well", words.some(result.suspects[0].tied_with)))
     rows += [("Balance of the claim", says) for says in _statics(result)]
     if result.tolerance.relative != CLAIM.relative:
         asked, usual = 100 * result.tolerance.relative, 100 * CLAIM.relative

@@ -26,11 +26,13 @@ from matplotlib.ft2font import LoadFlags
 from crosscheck.report import words
 from crosscheck.report.pictures import Picture
 from crosscheck.report.record import Block, Facts, Gallery, Grid, Record, Says, Verbatim
-from crosscheck.report.sketch import Sketch
+from crosscheck.report.sketch import HALF, Sketch
 
 PAGE = (8.27, 11.69)
 """A4 in inches; what stands on it fits Letter too when printed to its height."""
 LEFT, RIGHT, TOP, BOTTOM = 0.75, 7.55, 10.95, 0.95
+MIDDLE = RIGHT - 3.32
+"""Where the second of two narrow drawings begins."""
 LEADING = 1.32
 POINTS = 72.0
 INK, SOFT, HAIR, WATER = "#111111", "#565656", "#999999", "#efefef"
@@ -147,6 +149,8 @@ class _Setter:
         self.record = record
         self.pages: list[_Page] = []
         self.y = 0.0
+        self.left: tuple[int, float, float] | None = None
+        """Page, top and foot of a narrow drawing that has room for another at its right."""
 
     @property
     def page(self) -> _Page:
@@ -200,6 +204,7 @@ class _Setter:
 
     def heading(self, says: str, before: Block | None) -> None:
         """A section's title, on the page on which what it stands `before` begins."""
+        self.left = None
         self._room(0.6 + (self._height(before) if isinstance(before, Picture) else 1.0))
         self.y -= 0.28
         self._rule(1.2)
@@ -208,6 +213,8 @@ class _Setter:
         self.y -= 0.08
 
     def block(self, block: Block) -> None:
+        if not isinstance(block, Picture):
+            self.left = None
         match block:
             case Facts():
                 before = ""
@@ -247,20 +254,34 @@ class _Setter:
     # --- drawings
 
     def _picture(self, picture: Picture) -> None:
-        """A drawing at its size with its caption below, both on one page."""
-        sketch = picture.sketch
-        share = min(1.0, (RIGHT - LEFT) / sketch.wide)
-        wide, tall = sketch.wide * share, sketch.tall * share
-        self._room(self._height(picture))
-        self._draw(sketch, LEFT, wide, tall)
-        self.lines(picture.caption, 8.5, face=ITALIC)
+        """A drawing at its size with its caption below, both on one page; narrow ones two by two."""
+        before, self.left = self.left, None
+        if picture.sketch.wide > HALF:
+            self._room(self._height(picture))
+            self._drawn(picture, LEFT)
+        elif before is not None and before[0] == len(self.pages) and before[1] - self._height(picture) >= BOTTOM:
+            self.y = before[1]
+            self._drawn(picture, MIDDLE)
+            self.y = min(self.y, before[2])
+        else:
+            self._room(self._height(picture))
+            top = self.y
+            self._drawn(picture, LEFT)
+            self.left = len(self.pages), top, self.y
+
+    def _drawn(self, picture: Picture, x: float) -> None:
+        sketch, wide, tall = picture.sketch, *_size(picture.sketch)
+        self._draw(sketch, x, wide, tall)
+        for line in wrapped(picture.caption, wide, 8.5, ITALIC):
+            self.y -= _step(8.5)
+            self._put(x, line, 8.5, ITALIC)
         self.y -= 0.16
 
     @staticmethod
     def _height(picture: Picture) -> float:
         """Inches that a drawing takes with its caption."""
-        tall = picture.sketch.tall * min(1.0, (RIGHT - LEFT) / picture.sketch.wide)
-        return tall + len(wrapped(picture.caption, RIGHT - LEFT, 8.5, ITALIC)) * _step(8.5) + 0.1
+        wide, tall = _size(picture.sketch)
+        return tall + len(wrapped(picture.caption, wide, 8.5, ITALIC)) * _step(8.5) + 0.1
 
     def _draw(self, sketch: Sketch, x: float, wide: float, tall: float) -> None:
         self.y -= tall
@@ -352,6 +373,12 @@ class _Setter:
         page.texts.append(_Text(RIGHT - PLAIN.width(says, 7.0), y, says, 7.0, PLAIN, INK))
 
 
+def _size(sketch: Sketch) -> tuple[float, float]:
+    """Width and height in inches of a drawing on these pages."""
+    share = min(1.0, (RIGHT - LEFT) / sketch.wide)
+    return sketch.wide * share, sketch.tall * share
+
+
 def _step(size: float) -> float:
     return LEADING * size / POINTS
 
@@ -370,7 +397,7 @@ def wrapped(text: str, width: float, size: float, face: Face = PLAIN) -> list[st
 
 def _broken(text: str, width: float, size: float, face: Face) -> Iterator[str]:
     line = ""
-    for word in text.split():
+    for word in text.split(" "):  # and not at the blanks that keep a unit together
         longer = f"{line} {word}" if line else word
         if face.width(longer, size) <= width:
             line = longer
@@ -412,5 +439,5 @@ def _fitted(grid: Grid) -> tuple[float, list[float]]:
 
 def _widest(grid: Grid, column: int, size: float) -> float:
     """Inches of a column's widest cell; a head may stand in lines."""
-    head = max((BOLD.width(word, size) for word in grid.columns[column][0].split()), default=0.1)
+    head = max((BOLD.width(word, size) for word in grid.columns[column][0].split(" ")), default=0.1)
     return max(head, *(PLAIN.width(words.visible(row[column]), size) for row in grid.rows), 0.1)

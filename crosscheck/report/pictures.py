@@ -6,7 +6,7 @@ none of it needs colour. Moments stand on the tension side.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -19,7 +19,7 @@ from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import FREE, Floats, Frame, Ints
 from crosscheck.frame.stations import stations
 from crosscheck.report import words
-from crosscheck.report.sketch import GREY, NAMED, Sketch
+from crosscheck.report.sketch import GREY, HALF, NAMED, RING, UNIT, Sketch
 
 COLUMN = {"moment": MOMENT, "shear": SHEAR, "axial": AXIAL}
 TALL = 2.6
@@ -36,10 +36,15 @@ class Picture:
     caption: str
     says: str
 
+    @property
+    def narrow(self) -> bool:
+        """Whether two stand side by side."""
+        return self.sketch.wide <= HALF
+
 
 def frame_picture(frame: Frame, marked: Sequence[tuple[int, Place]] = (), names: Sequence[str] = ()) -> Picture:
     """The frame with supports, hinges, dimensions and names; `marked`: (number, place) to ring."""
-    sketch = Sketch(frame, (4.2, 2.6, 5.2, 2.6))
+    sketch = Sketch(frame, (6.4, 5.6))
     sketch.dimensions()
     sketch.members()
     sketch.connections()
@@ -77,7 +82,7 @@ def _legend(frame: Frame) -> str:
 
 def small_picture(frame: Frame, caption: str) -> Picture:
     """The frame without words, to be known by its outline."""
-    sketch = Sketch(frame, (1.0, 1.6, 1.6, 1.0))
+    sketch = Sketch(frame, (2.0, 2.6))
     sketch.members(3.0)
     sketch.supports()
     return Picture(sketch, caption, f"Outline of the frame {frame.title}")
@@ -85,7 +90,7 @@ def small_picture(frame: Frame, caption: str) -> Picture:
 
 def loads_picture(frame: Frame, name: str) -> Picture:
     """The loads of a case or combination, factors applied."""
-    sketch = Sketch(frame, (3.6, 3.0, 3.4, 3.6))
+    sketch = Sketch(frame, (6.0, 4.6))
     sketch.members()
     sketch.connections()
     sketch.supports()
@@ -154,18 +159,24 @@ class CasePictures:
         sketch.lines(outlines, 1.0)
 
     def _figures(self, sketch: Sketch, m: int, x: Floats, v: Floats, scale: float, peak: float) -> None:
-        """The ends' values, and the largest between them where it stands out."""
-        chosen = {0: 0.06, len(v) - 1: -0.06}
+        """The ends' values, and the largest between them where it stands out; none upon another."""
+        chosen = {0: 1.0, len(v) - 1: -1.0}
         inner = int(np.argmax(np.abs(v)))
         if abs(v[inner]) > 1.15 * max(abs(v[0]), abs(v[-1])):
             chosen[inner] = 0.0
         elif abs(v[0] - v[-1]) <= 1e-3 * peak:
             chosen = {len(v) // 2: 0.0}
-        for k, shift in chosen.items():
-            if abs(v[k]) > 0.01 * peak:
-                at = float(x[k] + shift * self.frame.member_table.length[m])
-                lift = np.sign(scale * v[k]) * 0.45 * sketch.unit
-                sketch.text(sketch.along(m, at, float(scale * v[k] + lift)), words.number(float(v[k]), peak), 6.4)
+        length = float(self.frame.member_table.length[m])
+        for k, inward in chosen.items():
+            if abs(v[k]) <= 0.01 * peak:
+                continue
+            says = words.number(float(v[k]), peak)
+            lift = np.sign(scale * v[k]) * 0.45 * sketch.unit
+            for shift in (0.06, 0.12, 0.18, 0.0):
+                at = sketch.along(m, float(x[k] + inward * shift * length), float(scale * v[k] + lift))
+                if not sketch.crossed(at, says, 6.4):
+                    sketch.text(at, says, 6.4)
+                    break
 
     def _claimed_ends(self, quantity: str) -> dict[tuple[int, int], float]:
         """Claimed end values by member and end, in the sense of a diagram."""
@@ -215,7 +226,7 @@ class CasePictures:
 
     def deflected(self) -> Picture:
         """The displaced frame, its displacements drawn many times their size."""
-        sketch = Sketch(self.frame)
+        sketch = Sketch(self.frame, (6.0, 3.4))
         moves = self.answer.cases[self.name].joints[:, :2]
         across = self.along[:, ACROSS]
         most = float(np.abs(np.nan_to_num(np.concatenate([moves.ravel(), across]))).max(initial=0.0))
@@ -252,29 +263,35 @@ class CasePictures:
 
 def _ring(sketch: Sketch, marked: Sequence[tuple[int, Place]]) -> int:
     """Ring the places of numbered differences, one ring a place; returns how many found no room."""
-    frame = sketch.frame
-    taken: list[Floats] = []
+    done: set[tuple[str | None, str | None, float | None, bool]] = set()
     left = 0
     for number, p in marked:
-        if p.member:
-            m = frame.member_index[p.member]
-            length = float(frame.member_table.length[m])
-            inset = min(1.6 * sketch.unit, 0.3 * length)
-            x = p.at if p.at is not None else length / 2
-            if p.joint:
-                x = inset if frame.members[p.member].joint_from == p.joint else length - inset
-            at = sketch.along(m, x, -0.95 * sketch.unit)
-        elif p.joint:
-            beside = (-1.3, 0.9) if p.of == "joints" else (1.7, -1.5)
-            at = sketch.xy[frame.joint_index[p.joint]] + sketch.unit * np.array(beside)
-        else:
-            continue
-        apart = [float(np.hypot(*(at - other))) for other in taken]
-        if any(d < 0.1 * sketch.unit for d in apart):
+        place = p.member, p.joint, p.at, p.of == "reactions"
+        if place in done or not (p.member or p.joint):
             continue  # the place has its ring
-        if any(d < 1.3 * sketch.unit for d in apart) or len(taken) >= NUMBERED:
+        done.add(place)
+        at = next((a for a in _beside(sketch, p) if not sketch.crossed(a, "", 1.15 * RING * UNIT * 72)), None)
+        if at is None or len(done) - left > NUMBERED:
             left += 1
             continue
-        taken.append(at)
         sketch.number(at, number)
     return left
+
+
+def _beside(sketch: Sketch, p: Place) -> Iterator[Floats]:
+    """Where the ring of a place may stand, the best first."""
+    frame, unit = sketch.frame, sketch.unit
+    if not p.member:
+        k = frame.joint_index[str(p.joint)]
+        aside = ((-1.3, 0.9), (1.3, 0.9), (-1.3, -0.9), (0.0, 1.6)) if p.of == "joints" else (
+            (1.7, -1.5), (-1.7, -1.5), (2.4, -0.6), (-2.4, -0.6))  # fmt: skip
+        yield from (sketch.xy[k] + unit * np.array(a) for a in aside)
+        return
+    m = frame.member_index[p.member]
+    length = float(frame.member_table.length[m])
+    for share in (1.6, 2.2, 2.9, 3.6):
+        inset = min(share * unit, 0.45 * length)
+        x = p.at if p.at is not None else length / 2
+        if p.joint:
+            x = inset if frame.members[p.member].joint_from == p.joint else length - inset
+        yield from (sketch.along(m, x, side * 0.95 * unit) for side in (-1.0, 1.0))

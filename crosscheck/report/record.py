@@ -53,8 +53,8 @@ ABOUT = {
     "revision": "Revision",
     "originator": "Originator",
     "drawings": "Drawings and their revisions",
-    "program": "The other program",
-    "program_version": "Its version",
+    "program": "Other program",
+    "program_version": "Other program's version",
     "remarks": "Remarks",
 }
 """Free text about the check: key of `--about` and what it stands for."""
@@ -385,8 +385,9 @@ def _claim_grid(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Gri
     for k, d in numbered:
         claim, ours = d.values.get("claim"), words.opinions_value(d)
         side = "low" if d.unsafe else "high"
+        quantity = f"{d.place.quantity}, {_together(words.unit_of(frame, d.place.quantity))}"
         rows.append((
-            str(k), d.place.case, words.place(d.place), f"{d.place.quantity}, {words.unit_of(frame, d.place.quantity)}",
+            str(k), d.place.case, words.place(d.place), quantity,
             terminal.with_face(frame, d, claim, ours), terminal.with_face(frame, d, ours, claim),
             words.short(d.difference), words.short(d.allowed), d.note or side, str(d.line or ""), "",
         ))  # fmt: skip
@@ -514,7 +515,12 @@ def _numbers(row: np.ndarray, scale: Sequence[float]) -> list[str]:
 
 
 def _heads(frame: Frame, quantities: Iterable[str]) -> list[tuple[str, str]]:
-    return [(f"{q}, {words.unit_of(frame, q)}", "right") for q in quantities]
+    return [(f"{q}, {_together(words.unit_of(frame, q))}", "right") for q in quantities]
+
+
+def _together(unit: str) -> str:
+    """A unit that no line's end parts."""
+    return unit.replace(" ", "\u00a0")
 
 
 def _largest(values: np.ndarray) -> float:
@@ -553,9 +559,10 @@ def review_section(findings: Sequence[Finding]) -> Section:
 def log_section(history: Sequence[Entry]) -> Section:
     """Every earlier check of this frame, so that one tuned until it agreed can be seen."""
     rows = tuple(
-        (e.when, e.claim or "-", e.claim_sha256[:12], e.frame_sha256[:12], e.settings, e.verdict, e.reason or "-")
+        (e.when[:16].replace("T", " "), Path(e.claim).name or "-", e.claim_sha256[:12], e.frame_sha256[:12], e.settings,
+         e.verdict, e.reason or "-")
         for e in history
-    )
+    )  # fmt: skip
     columns = (("when", "left"), ("claim", "left"), ("claim sha256", "left"), ("frame sha256", "left"),
                ("settings", "left"), ("verdict", "left"), ("reason for a change", "left"))  # fmt: skip
     caption = f"{words.counted(len(rows), 'check')} with a record, this one last."

@@ -28,12 +28,18 @@ from crosscheck.report import words
 WIDTH = 7.1
 """Inches: the text width of A4 and Letter with their usual margins. Drawings are printed at their size, never reduced,
 so that their figures can be read."""
+HALF = 3.45
+"""Inches: two drawings side by side."""
 UNIT = WIDTH / 34
 """Inches of a unit."""
-LEAST, MOST, TALLEST = 1.9, 4.0, 8.4
-"""Heights of a drawing in inches: two of MOST go on a page of A4 or Letter; a tall frame, or a high one of many
+MOST, TALLEST = 3.9, 8.4
+"""Heights of a drawing in inches, about: two of MOST go on a page of A4 or Letter; a tall frame, or a high one of many
 members, has a page."""
+LETTER, MARGIN = 0.58, 0.35
+"""Width of a letter in heights, and units left free around a drawing."""
 INK, GREY = "#111111", "#595959"
+RING = 1.2
+"""Units across a ringed number."""
 NAMED = 60
 """Most members whose names stand in a drawing; beyond that only marked places are named."""
 DIMENSIONED = 12
@@ -43,24 +49,63 @@ DIMENSIONED = 12
 class Sketch:
     """A drawing of one frame, kept as a list of strokes until it is known on what page it goes.
 
-    room: units left free at its left, right, below and above. wide, tall: its size in inches.
+    room: units expected left and right, and above and below together, of what stands around the frame; the drawing
+    reaches as far as its strokes do. Places are in the frame's lengths.
     """
 
-    def __init__(self, frame: Frame, room: tuple[float, float, float, float] = (3.9, 3.9, 3.7, 3.7)) -> None:
+    def __init__(self, frame: Frame, room: tuple[float, float] = (7.0, 4.6)) -> None:
         self.frame, self.xy, self.table = frame, frame.xy, frame.member_table
-        low, high = self.xy.min(axis=0), self.xy.max(axis=0)
-        size = np.maximum(high - low, 1e-9 * max(float(np.ptp(self.xy)), 1.0))
-        left, right, below, above = room
+        self.low, self.high = self.xy.min(axis=0), self.xy.max(axis=0)
+        size = np.maximum(self.high - self.low, 1e-9 * max(float(np.ptp(self.xy)), 1.0))
         self.small = len(frame.members) <= NAMED
         most = TALLEST if size[1] > (2.5 if self.small else 1.0) * size[0] else MOST
-        self.unit = max(size[0] / (WIDTH / UNIT - left - right), size[1] / (most / UNIT - below - above), 1e-12)
-        self.low = low - self.unit * np.array([left, below])
-        self.high = high + self.unit * np.array([right, above])
-        span = self.high - self.low
-        self.wide = WIDTH
-        self.tall = float(min(max(WIDTH * span[1] / span[0], LEAST), most))
+        self.unit = max(size[0] / (WIDTH / UNIT - room[0]), size[1] / (most / UNIT - room[1]), 1e-12)
+        self.feet = self.low.copy()
         self._tips: list[Floats] = []
+        self._boxes: list[Floats] = []
         self._strokes: list[Callable[[Axes], object]] = []
+
+    # --- extent
+
+    def _reach(self, points: Any) -> None:
+        """The drawing extends to these places."""
+        points = np.asarray(points, dtype=float).reshape(-1, 2)
+        self.low = np.minimum(self.low, points.min(axis=0))
+        self.high = np.maximum(self.high, points.max(axis=0))
+
+    @property
+    def window(self) -> tuple[Floats, Floats]:
+        """Lower left and upper right corner of the drawing, a page's width apart at least, or half of it."""
+        low, high = self.low - MARGIN * self.unit, self.high + MARGIN * self.unit
+        spare = np.array([max(self.wide / UNIT * self.unit - (high - low)[0], 0.0), 0.0])
+        return low - spare / 2, high + spare / 2
+
+    @property
+    def wide(self) -> float:
+        """Inches: of the page, or of half of it where that is enough."""
+        need = ((self.high - self.low)[0] / self.unit + 2 * MARGIN) * UNIT
+        return HALF if need <= HALF else WIDTH
+
+    @property
+    def tall(self) -> float:
+        """Inches."""
+        low, high = self.window
+        return float(self.wide * (high - low)[1] / (high - low)[0])
+
+    def crossed(self, at: Any, says: str, size: float, turn: float = 0.0) -> bool:
+        """Whether a text would stand upon another text or a ring."""
+        box = self._box(at, says, size, turn)
+        return any(bool((box[0] < b[1]).all() and (b[0] < box[1]).all()) for b in self._boxes)
+
+    def _box(self, at: Any, says: str, size: float, turn: float = 0.0, across: str = "center") -> Floats:
+        """Lower left and upper right corner of a text, or of a ring of `size` points across where it says nothing."""
+        inch = self.unit / UNIT
+        half = np.array([len(says) * LETTER if says else 1.0, 1.0]) * size / 72 * inch / 2
+        c, s = abs(math.cos(math.radians(turn))), abs(math.sin(math.radians(turn)))
+        half = np.array([c * half[0] + s * half[1], s * half[0] + c * half[1]])
+        shift = {"left": half[0], "right": -half[0]}.get(across, 0.0)
+        at = np.asarray(at, dtype=float) + np.array([shift, 0.0])
+        return np.stack([at - half, at + half])
 
     # --- paper
 
@@ -75,8 +120,9 @@ class Sketch:
         axes = figure.add_axes(place)
         axes.set_axis_off()
         axes.set_aspect("equal")
-        axes.set_xlim(self.low[0], self.high[0])
-        axes.set_ylim(self.low[1], self.high[1])
+        low, high = self.window
+        axes.set_xlim(low[0], high[0])
+        axes.set_ylim(low[1], high[1])
         for stroke in self._strokes:
             stroke(axes)
 
@@ -90,6 +136,7 @@ class Sketch:
         # One path for them all: a picture of 400 members stays small.
         drawn = [Path(np.asarray(p, dtype=float)) for p in paths]
         if drawn:
+            self._reach(np.concatenate([p.vertices for p in drawn]))
             self._ink(Path.make_compound_path(*drawn), "none", ink, width, style)
 
     def heads(self, ink: str = INK) -> None:
@@ -103,9 +150,11 @@ class Sketch:
                     capstyle="butt", joinstyle="round")  # fmt: skip
 
     def area(self, corners: Any, fill: str = "none", ink: str = INK, width: float = 0.6) -> None:
+        self._reach(corners)
         self._patch(Polygon, np.asarray(corners), closed=True, facecolor=fill, edgecolor=ink, linewidth=width)
 
     def ring(self, at: Any, radius: float, fill: str = "white", width: float = 0.8) -> None:
+        self._reach([np.asarray(at) - radius * self.unit, np.asarray(at) + radius * self.unit])
         self._patch(Circle, (float(at[0]), float(at[1])), radius * self.unit, facecolor=fill, edgecolor=INK,
                     linewidth=width, zorder=3)  # fmt: skip
 
@@ -114,19 +163,23 @@ class Sketch:
         corners = half * self.unit * np.array([(-1, -1), (1, -1), (1, 1), (-1, 1), (-1, -1)])
         paths = [Path(np.asarray(at, dtype=float) + corners, closed=True) for at in places]
         if paths:
+            self._reach(np.concatenate([p.vertices for p in paths]))
             self._ink(Path.make_compound_path(*paths), "white", INK, 0.8, zorder=3)
 
     def text(self, at: Any, says: str, size: float = 7.5, turn: float = 0.0, across: str = "center",
              up: str = "center", ink: str = INK, weight: str = "normal", slant: str = "normal") -> None:  # fmt: skip
         x, y, shown = float(at[0]), float(at[1]), words.visible(says, 28)
+        self._boxes.append(self._box(at, shown, size, turn, across))
+        self._reach(self._boxes[-1])
         self._strokes.append(lambda axes: axes.text(
             x, y, shown, fontsize=size, rotation=turn, ha=across, va=up, color=ink, parse_math=False,
             fontweight=weight, fontstyle=slant, rotation_mode="anchor", zorder=4))  # fmt: skip
 
     def number(self, at: Any, count: int) -> None:
         """A ringed number that stands in a table too."""
-        self.ring(at, 0.62, width=1.1)
+        self.ring(at, RING / 2, width=1.1)
         self.text(at, str(count), 7.0, up="center_baseline", weight="bold")
+        self._boxes[-1] = self._box(at, "", RING * UNIT * 72)
 
     # --- the frame
 
@@ -299,7 +352,7 @@ class Sketch:
 
     def _chain(self, marks: Floats, axis: int) -> None:
         u = self.unit
-        level = self.low[1 - axis] + 0.9 * u
+        level = self.feet[1 - axis] - 2.9 * u
 
         def place(v: float, off: float = 0.0) -> Floats:
             return np.array([v, level + off]) if axis == 0 else np.array([level + off, v])
@@ -358,9 +411,11 @@ class Sketch:
                 self._head(p, way, 0.2)
         if self.small:
             # Bands upon one another are told apart by figures that do not stand in one line.
-            at = self.along(m, float(x[(3, 1, 5, 2, 4)[before % 5]])) - (height[m] + 0.35 * u) * way
             ends = [words.number(float(v)) for v in size]
-            self.text(at, ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}", 6.5)
+            says = ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
+            spots = [self.along(m, float(x[k])) - (height[m] + 0.35 * u) * way for k in (3, 1, 5, 2, 4)]
+            spots = [*spots[before % 5 :], *spots[: before % 5]]
+            self.text(next((at for at in spots if not self.crossed(at, says, 6.5)), spots[0]), says, 6.5)
         return strokes
 
     def _arrows(self, loads: LoadTable) -> None:
