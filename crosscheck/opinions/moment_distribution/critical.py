@@ -17,7 +17,8 @@ from scipy.optimize import brentq
 from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import Floats
 from crosscheck.opinions.moment_distribution.displaced import DENSE, Displaced, Freedom
-from crosscheck.opinions.moment_distribution.pieces import Pieces, cut
+from crosscheck.opinions.moment_distribution.members import cut_up
+from crosscheck.opinions.moment_distribution.pieces import Pieces
 from crosscheck.opinions.moment_distribution.stretches import Axial, bow, divide, parts_needed
 
 CLOSE = 1e-10
@@ -61,7 +62,7 @@ class Growing:
 
 
 def growing(freedom: Freedom, loads: LoadTable, axial: Floats) -> Growing:
-    return Growing(freedom, loads, cut(freedom.held.members.table, loads), axial)
+    return Growing(freedom, loads, cut_up(freedom.held.members, loads), axial)
 
 
 def critical_factor(case: Growing) -> float:

@@ -255,23 +255,29 @@ class Displaced:
         position.push -= s.ground * move
         position.twist -= held.rotation_spring * rotation
 
-    def axial(self, case: Acting, position: Position) -> Floats:
-        """(m,) axial forces at the `from` ends in this position; those of rigid members from the balance of the
-        joints."""
+    def tensions(self, case: Acting, position: Position) -> tuple[Floats, Floats]:
+        """(m,) axial forces at the `from` ends in this position, those of rigid members from the balance of the joints; and
+        (t,) forces of the ties from it."""
         s, found = self.held.sways, position.axial.copy()
-        if len(s.basic):
-            force = self.joint_forces(case, position, self.moments(position))[s.free]
-            found[s.rigid] = s.tensions(force[:, None])[0][:, 0]
-        return found
+        if not len(s.basic):
+            return found, np.zeros(s.together.shape[0])
+        force = self.joint_forces(case, position, self.moments(position))[s.free]
+        rigid, tie = s.tensions(force[:, None])
+        found[s.rigid] = rigid[:, 0]
+        return found, tie[:, 0]
 
-    def reactions(self, case: Acting, position: Position, axial: Floats) -> Floats:
+    def axial(self, case: Acting, position: Position) -> Floats:
+        """(m,) axial forces at the `from` ends in this position."""
+        return self.tensions(case, position)[0]
+
+    def reactions(self, case: Acting, position: Position) -> Floats:
         """(j, 3) on the frame, global axes: what held supports add to balance their joint, and the springs' own
         forces."""
-        ends = self.moments(position)
+        ends, (axial, tie) = self.moments(position), self.tensions(case, position)
         whole = Position(position.rotation, position.move, axial, position.push, position.twist)
         support = self.held.frame.support_table.stiffness
-        force = self.joint_forces(case, whole, ends).reshape(-1, 2)
-        own = np.where(support[:, :2] == HELD, -force, position.push.reshape(-1, 2))
+        left = self.joint_forces(case, whole, ends) - self.held.sways.together.T @ tie
+        own = np.where(support[:, :2] == HELD, -left.reshape(-1, 2), position.push.reshape(-1, 2))
         moment = np.where(support[:, 2] == HELD, -self.joint_moments(case, whole, ends), position.twist)
         forces = self.held.sways.global_axes(own.reshape(-1, 1))[:, :, 0]
         return np.column_stack([forces, moment])

@@ -266,7 +266,7 @@ def _case_answer(settled: Settled, study: Study) -> CaseAnswer:
     move = held.sways.global_axes(settled.position.move[:, None])[:, :, 0]
     joints = np.column_stack([move, settled.position.rotation])
     joints[undetermined.joints] = np.nan
-    reactions = settled.displaced.reactions(case, settled.position, settled.axial)
+    reactions = settled.displaced.reactions(case, settled.position)
     reactions[undetermined.reactions] = np.nan
     return CaseAnswer(ends, joints, reactions)
 

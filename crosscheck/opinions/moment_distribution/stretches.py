@@ -9,7 +9,7 @@ positive, both along the undisplaced member,
 (S. Timoshenko and J. Gere, "Theory of Elastic Stability", 1961, chapters 1 and 2; F. Engesser 1891.) The flexible part
 is cut at every place where a load changes, and further into *stretches*, short against the length over which the axial
 force bends the axis. On each piece the slope y' at Gauss's points is what its own integrals make it: as many linear
-equations as points, whatever way N varies along. A stretch passes start values on from piece to piece; stretches are
+equations as points, whatever way N and EI vary along. A stretch passes start values on from piece to piece; stretches are
 joined to members by letting the places between them go one after another. Where such a place gives way of its own
 accord the member buckles between its held ends (W. H. Wittrick and F. W. Williams 1971: the count of these).
 
@@ -19,16 +19,17 @@ Inside here turns are counter-clockwise along local y; at the ends of stretches 
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 
 from crosscheck.frame.loads import LoadTable
 from crosscheck.frame.model import FREE, HELD, Floats, Ints
-from crosscheck.opinions.moment_distribution.members import Members, thermal_curvature
+from crosscheck.opinions.moment_distribution.members import Members, cut_up, thermal_curvature
 from crosscheck.opinions.moment_distribution.pieces import NODES as FEW_NODES
 from crosscheck.opinions.moment_distribution.pieces import WEIGHTS as FEW_WEIGHTS
-from crosscheck.opinions.moment_distribution.pieces import Pieces, cut
+from crosscheck.opinions.moment_distribution.pieces import Pieces
 
 COUNT = 12
 """Gauss's points on a piece."""
@@ -82,7 +83,7 @@ def divide(m: Members, loads: LoadTable, parts: Ints) -> Division:
     first = np.append(0, np.cumsum(parts)).astype(np.int64)
     member = np.repeat(np.arange(len(parts)), parts - 1)
     number = np.arange(len(member)) - np.repeat(np.cumsum(parts - 1) - (parts - 1), parts - 1) + 1
-    pieces = cut(t, loads, (member, t.zone[member, 0] + t.clear[member] * (number / parts[member])))
+    pieces = cut_up(m, loads, (member, t.zone[member, 0] + t.clear[member] * (number / parts[member])))
     inner = np.flatnonzero(pieces.inner)
     k = pieces.member[inner]
     share = (pieces.start[inner] + pieces.size[inner] / 2 - t.zone[k, 0]) / t.clear[k]
@@ -99,11 +100,12 @@ def parts_needed(m: Members, pieces: Pieces, axial: Floats, scale: float = 1.0) 
     k = pieces.member[real]
     ends = pieces.size[real, None] * np.array([0.0, 0.5, 1.0])
     force = scale * (axial[k, None] - pieces.along_at(real[:, None], ends))
-    stiff = 1 + force * m.slide[k, None]
+    here = m.flexibility(pieces, real, ends)
+    stiff = 1 + force * here.slide
     if np.any(stiff <= 0):
         return np.ones(len(t.length), dtype=np.int64), True
     bent = np.zeros(len(t.length))
-    np.maximum.at(bent, k, np.max(np.abs(force) / stiff, axis=1) * m.bend[k])
+    np.maximum.at(bent, k, np.max(np.abs(force) / stiff * here.bend, axis=1))
     return np.clip(np.ceil(np.sqrt(bent) * t.clear / REACH), 1, MOST).astype(np.int64), False
 
 
@@ -175,17 +177,67 @@ def bow(m: Members, division: Division, axial: Axial) -> Bowed:
 
 def _passages(m: Members, d: Division, axial: Axial) -> tuple[Floats, Floats]:
     """Slopes at Gauss's points of each piece, and what passes over it; see Bowed."""
-    p, pieces = d.inner, d.pieces
-    k, h = pieces.member[p], pieces.size[p]
+    slope, passage = np.empty((len(d.inner), COUNT, 4)), np.empty((len(d.inner), 3, 4))
+    some, member = m.varying, d.pieces.member[d.inner]
+    changing = np.zeros(len(member), dtype=bool) if some is None else some.where[member]
+    for which, turning in ((~changing, _constant), (changing, _changing)):
+        if which.any():
+            slope[which], passage[which] = _passages_of(m, d, axial, d.inner[which], turning)
+    return slope, passage
+
+
+@dataclass(frozen=True, slots=True)
+class Turning:
+    """How pieces (n,) turn, at Gauss's points of each (n, COUNT) and over the whole: `gained`, `end_gained` per gain of
+    moment at the points, integrated twice; by a moment and by a shear of 1; by temperature."""
+
+    gained: Floats
+    by_moment: Floats
+    by_shear: Floats
+    by_heat: Floats
+    end_gained: Floats
+    end_by_moment: Floats
+    end_by_heat: Floats
+    slide: Floats
+
+
+def _constant(m: Members, d: Division, p: Ints) -> Turning:
+    """Pieces of prismatic members."""
+    k, h = d.pieces.member[p], d.pieces.size[p]
+    bend = (m.bend[k] * h * h)[:, None]
+    heat = d.curvature[k] * h
+    return Turning(
+        bend[:, :, None] * TWICE, bend * NODES / h[:, None], bend * NODES**2 / 2, heat[:, None] * NODES,
+        bend * (WEIGHTS * (1 - NODES)), m.bend[k] * h, heat, m.slide[k][:, None],
+    )  # fmt: skip
+
+
+def _changing(m: Members, d: Division, p: Ints) -> Turning:
+    """Pieces of stepped and tapered members: 1/EI at every point counts for itself."""
+    k, h = d.pieces.member[p], d.pieces.size[p, None]
+    s = h * NODES
+    here = m.flexibility(d.pieces, p, s)
+    heat = d.curvature[k, None] * here.curl
+    return Turning(
+        (h * h)[:, :, None] * (RUN @ (here.bend[:, :, None] * RUN)), h * (here.bend @ RUN.T), h * ((here.bend * s) @ RUN.T),
+        h * (heat @ RUN.T), h * h * ((WEIGHTS * here.bend) @ RUN), h[:, 0] * (here.bend @ WEIGHTS),
+        h[:, 0] * (heat @ WEIGHTS), here.slide,
+    )  # fmt: skip
+
+
+def _passages_of(
+    m: Members, d: Division, axial: Axial, p: Ints, turning: Callable[[Members, Division, Ints], Turning]
+) -> tuple[Floats, Floats]:
+    pieces, h = d.pieces, d.pieces.size[p]
     s = h[:, None] * NODES
     pull, sums = axial.at(pieces, p[:, None], s), pieces.shear_at(p[:, None], s)
-    bend, slide = (m.bend[k] * h * h)[:, None], m.slide[k][:, None]
-    left = np.eye(COUNT) * (1 + pull * slide)[:, :, None] - bend[:, :, None] * (TWICE * pull[:, None, :])
+    t = turning(m, d, p)
+    left = np.eye(COUNT) * (1 + pull * t.slide)[:, :, None] - t.gained * pull[:, None, :]
     right = np.stack([
         np.ones_like(s),
-        bend * NODES / h[:, None],
-        bend * NODES**2 / 2 - slide,
-        bend * (sums @ TWICE.T) - slide * sums + d.curvature[k][:, None] * s,
+        t.by_moment,
+        t.by_shear - t.slide,
+        np.einsum("pnc,pc->pn", t.gained, sums) - t.slide * sums + t.by_heat,
     ], axis=2)  # fmt: skip
     slope = np.linalg.solve(left, right)
     # What the moment gains at each point: shear at the `from` end, the loads' and the axial force's part.
@@ -193,10 +245,10 @@ def _passages(m: Members, d: Division, axial: Axial) -> tuple[Floats, Floats]:
     gain[:, :, 2] += 1.0
     gain[:, :, 3] += sums
     passage = np.empty((len(p), 3, 4))
-    passage[:, 0] = bend * np.einsum("n,pnc->pc", WEIGHTS * (1 - NODES), gain)
+    passage[:, 0] = np.einsum("pn,pnc->pc", t.end_gained, gain)
     passage[:, 0, 0] += 1.0
-    passage[:, 0, 1] += m.bend[k] * h
-    passage[:, 0, 3] += d.curvature[k] * h
+    passage[:, 0, 1] += t.end_by_moment
+    passage[:, 0, 3] += t.end_by_heat
     passage[:, 1] = h[:, None] * np.einsum("n,pnc->pc", WEIGHTS, gain)
     passage[:, 1, 1] += 1.0
     passage[:, 2] = h[:, None] * np.einsum("n,pnc->pc", WEIGHTS, slope)
