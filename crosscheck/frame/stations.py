@@ -10,7 +10,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from crosscheck.frame.loads import SNAP, LoadTable, load_table
+from crosscheck.frame.loads import SNAP, LoadTable, leans, load_table
 from crosscheck.frame.model import Floats, Frame, Ints
 
 TENTHS = np.arange(11) / 10.0
@@ -35,7 +35,8 @@ class Stations:
 def stations(frame: Frame, tables: list[LoadTable] | None = None) -> Stations:
     """The stations of every member, from the loads of all cases (or of the given tables)."""
     if tables is None:
-        tables = [load_table(frame, name) for name in frame.cases]
+        # A combination with a lean of its own has loads that none of its cases has.
+        tables = [load_table(frame, name) for name in frame.names if name in frame.cases or leans(frame, name)]
     t = frame.member_table
     count = len(t.length)
     every = np.arange(count)
