@@ -661,3 +661,21 @@ def test_loads_along_a_slack_member_are_carried_as_between_held_ends() -> None:
         ends[sense] = opinion(frame).cases["rod"].ends[frame.member_index["AE"], :, 0]
     np.testing.assert_allclose(ends["left"], (3 * 0.6, -3 * 0.4), rtol=1e-12)
     assert ends["right"].min() > 10.0
+
+
+# --- working ---------------------------------------------------------------------------------------------
+
+
+def test_working_shows_carry_over_and_parts_out() -> None:
+    """The taper's printed constants again; the rods and supports that are out under wind."""
+    text = BEAM.replace("[joints]", "[sections.e]\nI = 3.375\ndepth = 1.5\n[joints]")
+    frame = read_frame_text(text.format(profile='taper = ["c", "e"]', points=""))
+    tables = {t.heading: t for t in slope_deflection.working(frame, study(frame), "uniform")}
+    row = tables["Stepped and tapered members"].rows[0]
+    printed = 5.45957994, 0.67576076, 10.03405486, 0.36768485
+    np.testing.assert_allclose(np.array(row[4:], dtype=float), printed, rtol=0, atol=0.51e-8)
+    parts = slope_deflection.working(rack(), study(rack()), "wind")[0]
+    assert parts.rows == (
+        ("AE", "works"), ("DB", "out"), ("BF", "works"), ("EC", "works"), ("support D in y", "works"),
+        ("support G in y", "out"),
+    )  # fmt: skip

@@ -8,8 +8,9 @@ from crosscheck.answer import WorkTable
 from crosscheck.frame.kinematics import Study
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import HELD, Floats, Frame
-from crosscheck.opinions.slope_deflection.members import fixed_ends
+from crosscheck.opinions.slope_deflection.one_way import OneWay, Part, Settled
 from crosscheck.opinions.slope_deflection.system import Solution, System
+from crosscheck.opinions.slope_deflection.varying import flexibility
 
 MOST_TERMS = 10
 """Terms printed of one joint equation; a longer one says how many more there are."""
@@ -17,12 +18,21 @@ MOST_TERMS = 10
 
 def equations(frame: Frame, study: Study, name: str) -> list[WorkTable]:
     """Members, slope-deflection equations, joint equations, their solution and the end moments of case `name`."""
-    system = System(frame)
-    table = load_table(frame, name)
-    solution = system.solve([table])
-    fixed = fixed_ends(frame, table, system.coefficients.stiffness).moments
+    if frame.one_way:
+        one_way = OneWay(frame)
+        settled = one_way.settled(name)
+        if settled is None:
+            return []
+        first = [_one_way_parts(one_way.parts, settled)]
+        frame, system, solution = settled.frame, settled.system, settled.solution
+    else:
+        first, system = [], System(frame)
+        solution = system.solve([load_table(frame, name)])
+    fixed = solution.fixed[0].moments
     return [
+        *first,
         _members(frame, system, fixed),
+        *([_varying(frame, system)] if frame.member_table.varying.any() else []),
         _slope_deflection(frame, system, fixed),
         _joint_equations(frame, system, solution),
         _unknowns(frame, system, solution),
@@ -37,13 +47,38 @@ def _members(frame: Frame, system: System, fixed: Floats) -> WorkTable:
         (name, s[m], k[m, 0, 0] / s[m], k[m, 0, 1] / s[m], k[m, 1, 1] / s[m], fixed[m, 0], fixed[m, 1])
         for m, name in enumerate(frame.members)
     )
-    remarks = (
+    remarks: tuple[str, ...] = (
         "s = EI / l with l between the rigid zones; a and b multiply s: 4 and 2 for a plain member, 3 at the stiff "
         "end of one hinged at the other",
         "FEM: fixed-end moments at the faces, clockwise on the member positive",
     )
+    if t.varying.any():
+        remarks = (*remarks, "I of a stepped or tapered member is its mean here; a and b hold what differs from that")
     columns = ("member", "s = EI/l", "a from", "b", "a to", "FEM from", "FEM to")
     return WorkTable("Members: stiffness and fixed-end moments", columns, rows, remarks)
+
+
+def _one_way_parts(parts: tuple[Part, ...], settled: Settled) -> WorkTable:
+    rows = tuple((part.says, "out" if out else "works") for part, out in zip(parts, settled.out.tolist(), strict=True))
+    remarks = ("what follows holds for this state alone: a part that is out carries nothing of its own",)
+    return WorkTable("One-way members and supports in this case", ("part", "state"), rows, remarks)
+
+
+def _varying(frame: Frame, system: System) -> WorkTable:
+    """Flexibilities of stepped and tapered members as simple beams; stiffness and carry-over with their connections."""
+    names, k, v = list(frame.members), system.coefficients.stiffness, flexibility(frame)
+    rows = []
+    for m, *turns in zip(v.member.tolist(), v.near.tolist(), v.cross.tolist(), v.far.tolist(), strict=True):
+        near, cross, far = float(k[m, 0, 0]), float(k[m, 0, 1]), float(k[m, 1, 1])
+        over = [cross / own if own else None for own in (near, far)]
+        rows.append((names[m], *turns, near, over[0], far, over[1]))
+    remarks = (
+        "f: end rotations of the simple beam per end moment, by integrals of (1 - x/l)^2/EI, -(1 - x/l)(x/l)/EI and "
+        "(x/l)^2/EI between the faces, shear flexibility added where it counts",
+        "k: end moment per rotation of that end, the other one held; c: carry-over to the other end",
+    )
+    columns = ("member", "f11", "f12", "f22", "k from", "c from", "k to", "c to")
+    return WorkTable("Stepped and tapered members", columns, tuple(rows), remarks)
 
 
 def _slope_deflection(frame: Frame, system: System, fixed: Floats) -> WorkTable:
@@ -77,6 +112,8 @@ def _joint_equations(frame: Frame, system: System, solution: Solution) -> WorkTa
             "Members are axially rigid: a large coefficient stands for their length being kept, corrected in rounds "
             "until no elongation remains"
         )
+    if frame.ties:
+        remarks.append("Joints are tied: a large coefficient stands for their moving together, corrected in the same way")
     return WorkTable("Joint and translation equations", ("equation", "sum"), tuple(rows), tuple(remarks))
 
 
