@@ -15,7 +15,7 @@ and in second order
     stretches     the member under axial force: moment-area and Gauss's rule again, short stretches joined
     displaced     release and carry over one joint at a time, the axial forces taken as known
     critical      how far the axial forces can grow
-    second_order  repeated until the axial forces settle; bent_spans and displaced_working as above
+    second_order  repeated until the axial forces settle; bent_spans, one_way_displaced, displaced_working as above
 
 Shares no mechanics with the other opinions: formulas that stand there too are meant to stand twice.
 """

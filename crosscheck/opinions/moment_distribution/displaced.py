@@ -270,16 +270,21 @@ class Displaced:
         """(m,) axial forces at the `from` ends in this position."""
         return self.tensions(case, position)[0]
 
-    def reactions(self, case: Acting, position: Position) -> Floats:
-        """(j, 3) on the frame, global axes: what held supports add to balance their joint, and the springs' own
-        forces."""
-        ends, (axial, tie) = self.moments(position), self.tensions(case, position)
+    def own_reactions(self, case: Acting, position: Position) -> Floats:
+        """(2j,) forces on the frame along the supports' own axes: what held ones add to balance their joint, and the
+        springs' own."""
+        axial, tie = self.tensions(case, position)
         whole = Position(position.rotation, position.move, axial, position.push, position.twist)
-        support = self.held.frame.support_table.stiffness
-        left = self.joint_forces(case, whole, ends) - self.held.sways.together.T @ tie
-        own = np.where(support[:, :2] == HELD, -left.reshape(-1, 2), position.push.reshape(-1, 2))
-        moment = np.where(support[:, 2] == HELD, -self.joint_moments(case, whole, ends), position.twist)
-        forces = self.held.sways.global_axes(own.reshape(-1, 1))[:, :, 0]
+        left = self.joint_forces(case, whole, self.moments(position)) - self.held.sways.together.T @ tie
+        support = self.held.frame.support_table.stiffness[:, :2].ravel()
+        return np.where(support == HELD, -left, position.push)
+
+    def reactions(self, case: Acting, position: Position) -> Floats:
+        """(j, 3) on the frame, global axes."""
+        left = self.joint_moments(case, position, self.moments(position))
+        support = self.held.frame.support_table.stiffness[:, 2]
+        moment = np.where(support == HELD, -left, position.twist)
+        forces = self.held.sways.global_axes(self.own_reactions(case, position)[:, None])[:, :, 0]
         return np.column_stack([forces, moment])
 
 

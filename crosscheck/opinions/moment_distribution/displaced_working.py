@@ -8,6 +8,7 @@ from crosscheck.answer import WorkTable
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.opinions.moment_distribution.displaced import Freedom
 from crosscheck.opinions.moment_distribution.holding import Held
+from crosscheck.opinions.moment_distribution.one_way_displaced import SecondOrder
 from crosscheck.opinions.moment_distribution.process import distribute
 from crosscheck.opinions.moment_distribution.second_order import NotSettled, Settled, settle_case
 
@@ -18,12 +19,18 @@ NOTHING = 1e-12
 
 def displaced_working(frame: Frame, name: str) -> list[WorkTable]:
     """The last distribution of one case, and how it was come to; why there is none where there is none."""
-    first = distribute(frame, (name,))
     try:
-        settled = settle_case(first, Freedom(first.held), 0)
+        settled = _settled(frame, name)
     except NotSettled as why:
         return [WorkTable("Second order", (), (), (str(why),))]
-    return [_repetitions(settled), _factors(settled), _moments(settled)]
+    return [*taken_out(settled.displaced.held.frame), _repetitions(settled), _factors(settled), _moments(settled)]
+
+
+def _settled(frame: Frame, name: str) -> Settled:
+    if frame.one_way:
+        return SecondOrder(frame).settled(name)
+    first = distribute(frame, (name,))
+    return settle_case(first, Freedom(first.held), 0)
 
 
 def by_joint(held: Held) -> list[tuple[str, str, int, int]]:
@@ -32,6 +39,16 @@ def by_joint(held: Held) -> list[tuple[str, str, int, int]]:
     flat = held.ends.ravel()
     order = np.argsort(flat, kind="stable")
     return [(joints[flat[k]], members[k // 2], int(k // 2), int(k % 2)) for k in order]
+
+
+def taken_out(frame: Frame) -> list[WorkTable]:
+    """Which one-way members and supports do not work in this state of the frame; nothing where it has none."""
+    if not frame.one_way:
+        return []
+    rows: list[Row] = [(name, "slack") for name in frame.members if name in frame.out_members]
+    rows += [(f"support {joint}", f"free along its {axis}") for joint, axis in sorted(frame.out_supports)]
+    remark = () if rows else ("all of them work",)
+    return [WorkTable("One-way members and supports that do not work here", ("part", "is"), tuple(rows), remark)]
 
 
 def _repetitions(settled: Settled) -> WorkTable:

@@ -74,11 +74,10 @@ class Parts:
         which = f"; {', '.join(self.names[k] for k in sorted(wrong))} would not settle" if wrong else ""
         return f"no settled state of the one-way members and supports was found{which}"
 
-    @property
-    def start(self) -> Out:
-        """What is taken out of the frame as it stands."""
-        members = [self.frame.member_index[name] for name in self.frame.out_members]
-        places = [2 * self.frame.joint_index[joint] + "xy".index(axis) for joint, axis in self.frame.out_supports]
+    def out_of(self, state: Frame) -> Out:
+        """What is taken out of a state of the frame."""
+        members = [state.member_index[name] for name in state.out_members]
+        places = [2 * state.joint_index[joint] + "xy".index(axis) for joint, axis in state.out_supports]
         outside = np.concatenate([np.isin(self.member, members), np.isin(self.place, places)])
         return frozenset(np.flatnonzero(outside).tolist())
 
@@ -116,8 +115,9 @@ class Judged(Generic[Found]):
 Tried = Callable[[Out], Judged[Found]]
 
 
-def search(parts: Parts, judge: Tried[Found]) -> Judged[Found]:
-    """A settled state, or the one with the least parts that are wrong of those that stand."""
+def search(parts: Parts, judge: Tried[Found], start: Out, few: int = FEW) -> Judged[Found]:
+    """A settled state, or the one with the least parts that are wrong of those that stand; up to `few` parts are tried in
+    every way."""
     seen: dict[Out, Judged[Found]] = {}
 
     def tried(out: Out) -> Judged[Found]:
@@ -125,15 +125,13 @@ def search(parts: Parts, judge: Tried[Found]) -> Judged[Found]:
             seen[out] = judge(out)
         return seen[out]
 
-    for walk in (_worst_first, _in_order, _every_way):
-        found = walk(parts, tried, seen)
-        if found is not None:
-            return found
-    return min(seen.values(), key=lambda judged: (judged.found is None, len(judged.wrong)))
+    found = _worst_first(start, tried, seen) or _in_order(start, tried)
+    if found is None and len(parts.names) <= few:
+        found = _every_way(len(parts.names), tried)
+    return found or min(seen.values(), key=lambda judged: (judged.found is None, len(judged.wrong)))
 
 
-def _worst_first(parts: Parts, tried: Tried[Found], seen: dict[Out, Judged[Found]]) -> Judged[Found] | None:
-    out = parts.start
+def _worst_first(out: Out, tried: Tried[Found], seen: dict[Out, Judged[Found]]) -> Judged[Found] | None:
     for _ in range(MOST):
         judged = tried(out)
         if judged.settled:
@@ -145,9 +143,8 @@ def _worst_first(parts: Parts, tried: Tried[Found], seen: dict[Out, Judged[Found
     return None
 
 
-def _in_order(parts: Parts, tried: Tried[Found], _: dict[Out, Judged[Found]]) -> Judged[Found] | None:
-    out = parts.start
-    for _step in range(MOST):
+def _in_order(out: Out, tried: Tried[Found]) -> Judged[Found] | None:
+    for _ in range(MOST):
         judged = tried(out)
         if judged.settled:
             return judged
@@ -157,11 +154,9 @@ def _in_order(parts: Parts, tried: Tried[Found], _: dict[Out, Judged[Found]]) ->
     return None
 
 
-def _every_way(parts: Parts, tried: Tried[Found], _: dict[Out, Judged[Found]]) -> Judged[Found] | None:
-    if len(parts.names) > FEW:
-        return None
-    for count in range(len(parts.names) + 1):
-        for out in combinations(range(len(parts.names)), count):
+def _every_way(parts: int, tried: Tried[Found]) -> Judged[Found] | None:
+    for count in range(parts + 1):
+        for out in combinations(range(parts), count):
             judged = tried(frozenset(out))
             if judged.settled:
                 return judged
@@ -198,18 +193,19 @@ class FirstOrder:
 
     def settled(self, name: str) -> Judged[Process]:
         """The case in its settled state, or in one where least is wrong."""
-        return search(self.parts, lambda out: self.judge(out, name))
+        return search(self.parts, lambda out: self.judge(out, name), self.parts.out_of(self.parts.frame))
 
     def judge(self, out: Out, name: str) -> Judged[Process]:
         held, loose = self.at(out)
         if loose is not None:
-            return Judged(self._put_back(out, held, loose, name), None)
+            return Judged(self.put_back(out, held, loose, name), None)
         process = distribute(held.frame, (name,), held)
         if process.left[0] > GIVEN_UP:
             return Judged(tuple(sorted(out)), None)
-        return Judged(self._wrong(out, process), process)
+        return Judged(self.wrong(out, process), process)
 
-    def _wrong(self, out: Out, process: Process) -> tuple[int, ...]:
+    def wrong(self, out: Out, process: Process) -> tuple[int, ...]:
+        """The parts that work the wrong way in a state that stands, worst first."""
         held, state, end = process.held, process.state, process.ends[0]
         reaction = own_reactions(process, 0)
         stretched = state.axial[:, 0] + held.members.held * end.by_loads
@@ -226,7 +222,7 @@ class FirstOrder:
         apart = np.concatenate([longer[self.parts.member], (ground - move)[self.parts.place]])
         return np.asarray(self.parts.sense * apart)
 
-    def _put_back(self, out: Out, held: Held, loose: Floats, name: str) -> tuple[int, ...]:
+    def put_back(self, out: Out, held: Held, loose: Floats, name: str) -> tuple[int, ...]:
         """What the frame closes when it moves as its loads make it, worst first; then what its free movement moves."""
         given, end = given_of(held, (name,))
         first = start(held, given)

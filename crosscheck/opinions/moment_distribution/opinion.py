@@ -11,6 +11,7 @@ from crosscheck.frame.kinematics import Study
 from crosscheck.frame.model import Frame
 from crosscheck.opinions.moment_distribution.members import members
 from crosscheck.opinions.moment_distribution.one_way import FirstOrder
+from crosscheck.opinions.moment_distribution.one_way_displaced import SecondOrder
 from crosscheck.opinions.moment_distribution.process import GIVEN_UP, NAME, case_answer, distribute
 from crosscheck.opinions.moment_distribution.second_order import opine_displaced
 from crosscheck.opinions.moment_distribution.spans import MemberSpans
@@ -22,7 +23,7 @@ def opine(frame: Frame, study: Study, names: Sequence[str] | None = None) -> Ans
     Raises UnusableInput where an axially rigid frame cannot follow an imposed length or settlement.
     """
     if frame.analysis.order == 2:
-        return opine_displaced(frame, study, names)
+        return opine_displaced(frame, study, names, SecondOrder(frame).settled if frame.one_way else None)
     chosen = frame.names if names is None else tuple(names)
     if frame.one_way:
         return _opine_one_way(frame, study, chosen)

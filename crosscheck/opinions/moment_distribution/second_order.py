@@ -7,7 +7,7 @@ axial forces that the displaced frame has. Where these go is foreseen from how t
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import partial
 
@@ -28,6 +28,7 @@ from crosscheck.opinions.moment_distribution.displaced import (
     acting,
 )
 from crosscheck.opinions.moment_distribution.gradual import Answered, gradually
+from crosscheck.opinions.moment_distribution.one_way import settled_process
 from crosscheck.opinions.moment_distribution.process import GIVEN_UP, NAME, Process, distribute
 from crosscheck.opinions.moment_distribution.stretches import AGAIN, REACH, Axial, Division, bow, divide, parts_needed
 
@@ -41,7 +42,7 @@ VAIN = 8
 """So many repetitions that bring the change no lower are given up."""
 MEMORY = 8
 """Repetitions that the next axial forces are foreseen from."""
-APART = 0.25
+APART = 0.5
 """Change of the axial forces from first order, as a share of them, up to which what settles is sure to be the balance that
 growing load leads to."""
 HALVINGS = 30
@@ -71,20 +72,22 @@ class NotSettled(Exception):
     """The case has no answer; the message says why."""
 
 
-def opine_displaced(frame: Frame, study: Study, names: Sequence[str] | None) -> Answer | Silent:
-    """Answer in second order for these load cases and combinations (None: all); see opinion.opine."""
+def opine_displaced(
+    frame: Frame, study: Study, names: Sequence[str] | None, settle: Callable[[str], Settled] | None = None
+) -> Answer | Silent:
+    """Answer in second order for these load cases and combinations (None: all); see opinion.opine. `settle` settles a case
+    where it is not to be settled on the frame as it is."""
     chosen = frame.names if names is None else tuple(names)
     try:
-        first = distribute(frame, chosen)
+        settle = settle or _on_the_frame(frame, chosen)
     except (RuntimeError, np.linalg.LinAlgError):
         return Silent(NAME, "the frame's sways have no stiffness that holds them, so no holding forces exist")
-    freedom = Freedom(first.held)
     cases: dict[str, CaseAnswer] = {}
     bent: dict[str, Bent] = {}
     silent: dict[str, str] = {}
-    for column, name in enumerate(chosen):
+    for name in chosen:
         try:
-            settled = settle_case(first, freedom, column)
+            settled = settle(name)
         except NotSettled as why:
             silent[name] = str(why)
             continue
@@ -93,10 +96,20 @@ def opine_displaced(frame: Frame, study: Study, names: Sequence[str] | None) -> 
     return Answer(NAME, cases, study.undetermined, BentSpans(frame, bent, study.undetermined.axial), silent)
 
 
+def _on_the_frame(frame: Frame, names: tuple[str, ...]) -> Callable[[str], Settled]:
+    """What settles each of these cases."""
+    first = distribute(frame, names)
+    freedom = Freedom(first.held)
+    return lambda name: settle_case(first, freedom, names.index(name))
+
+
 def critical_load_factor(frame: Frame, name: str) -> float:
     """By how much the first-order axial forces of a case must grow, all in proportion, for the frame to lose its
-    stability; infinite where it never does."""
-    first = distribute(frame, (name,))
+    stability; infinite where it never does. One-way members and supports are as first order has them; NaN where it finds
+    no settled state of them."""
+    first = settled_process(frame, name)
+    if isinstance(first, str):
+        return np.nan
     return critical_factor(growing(Freedom(first.held), load_table(frame, name), first.state.axial[:, 0]))
 
 

@@ -10,7 +10,7 @@ import numpy as np
 from crosscheck.answer import WorkTable
 from crosscheck.frame.kinematics import Study
 from crosscheck.frame.model import Floats, Frame
-from crosscheck.opinions.moment_distribution.displaced_working import by_joint, displaced_working
+from crosscheck.opinions.moment_distribution.displaced_working import by_joint, displaced_working, taken_out
 from crosscheck.opinions.moment_distribution.holding import FEW, Held, start, unbalanced
 from crosscheck.opinions.moment_distribution.one_way import settled_process
 from crosscheck.opinions.moment_distribution.process import Process
@@ -40,7 +40,7 @@ def working(frame: Frame, study: Study, name: str) -> list[WorkTable]:
     if isinstance(process, str):
         return [WorkTable("One-way members and supports", (), (), (process,))]
     hand = _Hand(process)
-    tables = [*_taken_out(process), _factors(hand), _fixed_ends(hand), _rounds(hand)]
+    tables = [*taken_out(process.held.frame), _factors(hand), _fixed_ends(hand), _rounds(hand)]
     if process.held.sways.shape.shape[1]:
         tables.append(_sways(hand))
     return [*tables, _final(hand), _passes(process)]
@@ -127,17 +127,6 @@ class _Hand:
     def rows(self) -> list[tuple[str, str, int, int]]:
         """Joint, member, its index and end, joint by joint."""
         return by_joint(self.held)
-
-
-def _taken_out(process: Process) -> list[WorkTable]:
-    """Which one-way members and supports do not work in this case; nothing where the frame has none."""
-    frame = process.held.frame
-    if not frame.one_way:
-        return []
-    rows: list[Row] = [(name, "slack") for name in frame.members if name in frame.out_members]
-    rows += [(f"support {joint}", f"free along its {axis}") for joint, axis in sorted(frame.out_supports)]
-    remark = () if rows else ("all of them work",)
-    return [WorkTable("One-way members and supports that do not work here", ("part", "is"), tuple(rows), remark)]
 
 
 def _factors(hand: _Hand) -> WorkTable:
