@@ -1,8 +1,9 @@
 """A generator of pastes: right results of thirty frames, printed in the ways that people's analyses print them.
 
-Every paste is drawn from a seed: layout, separator, number writing, units, signs, names, heads, noise, encoding and
-cases are
-each drawn on their own. The sign formulas stand here a second time on purpose: nothing of crosscheck.claims or
+Every paste is drawn from a seed: layout, separator, number writing, units, signs, names, heads, noise, encoding, cases and
+what is special (tables of the other model's input beside the results, members divided into elements with other numbers, end
+forces in global axes, end values at the face of rigid zones) are each drawn on their own. The sign
+formulas stand here a second time on purpose: nothing of crosscheck.claims or
 crosscheck.compare makes a paste. Run `python -m tests.pastes 2000` for the figures by layout.
 """
 
@@ -12,168 +13,24 @@ import sys
 from collections import Counter
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from functools import cache
 from random import Random
 from typing import Any
 
 import numpy as np
 
-from crosscheck.answer import Answer
 from crosscheck.claims.decode import decode
 from crosscheck.claims.read import read_claim_text
-from crosscheck.claims.reading import FrameNames, ReadingOptions
-from crosscheck.compare.claim import ClaimComparison
+from crosscheck.claims.reading import ReadingOptions
 from crosscheck.compare.closing import close
 from crosscheck.compare.differences import worst
-from crosscheck.compare.opinions import CaseJudgement, Comparison
 from crosscheck.compare.tolerance import CLAIM
-from crosscheck.frame.kinematics import study
-from crosscheck.frame.model import Frame
-from crosscheck.frame.reader import read_frame_text
-from crosscheck.opinions import moment_distribution, slope_deflection
-
-FRAMES = 30
-
-# --- thirty frames
-
-
-def frame_text(k: int) -> str:
-    """Frame k as a file: portals, grids, gables, beams and trusses with enough members and supports to fix any sign."""
-    r = Random(f"frame {k}")
-    shape = ("grid", "grid", "gable", "beam", "truss", "portals")[k % 6]
-    joints, members, feet, roofs = _SHAPES[shape](r)
-    style = k % 4
-    names = {j: _joint_name(n, style) for n, j in enumerate(joints)}
-    out = [f'title = "Frame {k}"', f'units = "{("kN m", "kN m", "N mm", "kip ft")[k % 4]}"', "[materials.s]"]
-    out += ['E = "210 GPa"', "[sections.s]", 'I = "12000 cm^4"', 'A = "60 cm^2"', "[joints]"]
-    unit = {0: "m", 1: "m", 2: "m", 3: "m"}[k % 4]
-    out += [f'"{names[j]}" = ["{x} {unit}", "{y} {unit}"]' for j, (x, y) in joints.items()]
-    out.append("[members]")
-    keys = []
-    for n, (a, b) in enumerate(members):
-        key = _member_name(n, names[a], names[b], style)
-        keys.append(key)
-        out.append(f'"{key}" = {{ from = "{names[a]}", to = "{names[b]}", section = "s", material = "s" }}')
-    out.append("[supports]")
-    out += [
-        f'"{names[j]}" = "{"fixed" if shape in ("grid", "portals") or n == 0 else "pinned"}"' for n, j in enumerate(feet)
-    ]
-    out += ["[loads.dead]", "apply = ["]
-    out += [f'  {{ member = "{keys[m]}", uniform = "{r.uniform(8, 20):.2f} kN/m", direction = "down" }},' for m in roofs]
-    out += [f'  {{ member = "{keys[roofs[0]]}", force = "{r.uniform(15, 30):.1f} kN", at = "35%", direction = "down" }},']
-    free = [j for j in joints if j not in feet]
-    out += ["]", "[loads.wind]", "apply = ["]
-    out += [f'  {{ joint = "{names[j]}", force = "{r.uniform(8, 25):.1f} kN", direction = {r.choice([0, 0, 20, 160])} }},'
-            for j in (r.sample(free, min(3, len(free))) if free else [])]  # fmt: skip
-    out += [f'  {{ member = "{keys[0]}", uniform = "{r.uniform(3, 6):.2f} kN/m", direction = "across" }},']
-    out += [f'  {{ member = "{keys[-1]}", force = "{r.uniform(5, 9):.2f} kN", at = "60%", direction = -60 }},', "]"]
-    if k % 3 == 0:
-        out += ["[combinations]", "strength = { dead = 1.35, wind = 1.5 }"]
-    return "\n".join(out) + "\n"
-
-
-def _grid(r: Random) -> tuple[Any, ...]:
-    bays, storeys = r.choice([2, 3]), r.choice([1, 2])
-    joints, members, roofs = {}, [], []
-    for i in range(bays + 1):
-        for s in range(storeys + 1):
-            joints[i, s] = (round(i * 5.5 + r.uniform(-0.3, 0.3), 2), round(s * 3.4, 2))
-    for i in range(bays + 1):
-        members += [((i, s), (i, s + 1)) for s in range(storeys)]
-    for s in range(1, storeys + 1):
-        for i in range(bays):
-            roofs.append(len(members))
-            members.append(((i, s), (i + 1, s)))
-    return joints, members, [(i, 0) for i in range(bays + 1)], roofs
-
-
-def _portals(r: Random) -> tuple[Any, ...]:
-    joints = {j: (round(x + r.uniform(-0.2, 0.2), 2), y) for j, (x, y) in
-              {0: (0, 0), 1: (0, 4), 2: (6, 4.5), 3: (6, 0), 4: (11, 4), 5: (11, 0.5)}.items()}  # fmt: skip
-    return joints, [(0, 1), (1, 2), (3, 2), (2, 4), (4, 5)], [0, 3, 5], [1, 3]
-
-
-def _gable(r: Random) -> tuple[Any, ...]:
-    joints = {
-        0: (0, 0),
-        1: (0, 4),
-        2: (5, round(r.uniform(5, 6.5), 2)),
-        3: (10, 4),
-        4: (10, 0),
-        5: (15, 5.2),
-        6: (20, 4),
-        7: (20, 0),
-    }
-    return joints, [(0, 1), (1, 2), (2, 3), (4, 3), (3, 5), (5, 6), (6, 7)], [0, 4, 7], [1, 2, 4, 5]
-
-
-def _beam(r: Random) -> tuple[Any, ...]:
-    spans = r.choice([3, 4, 5])
-    x = np.cumsum([0, *[round(r.uniform(4, 7), 1) for _ in range(spans)]])
-    joints = {i: (round(float(x[i]), 2), 0) for i in range(spans + 1)}
-    joints[spans + 1] = (round(float(x[-1]) + 1.5, 2), round(r.uniform(0.5, 1.5), 2))
-    members = [(i, i + 1) for i in range(spans + 1)]
-    return joints, members, list(range(spans + 1)), list(range(spans))
-
-
-def _truss(r: Random) -> tuple[Any, ...]:
-    n = r.choice([3, 4])
-    h = round(r.uniform(1.8, 2.6), 2)
-    joints: dict[Any, Any] = {("b", i): (3 * i, 0) for i in range(n + 1)} | {("t", i): (3 * i + 1.5, h) for i in range(n)}
-    members = [(("b", i), ("b", i + 1)) for i in range(n)] + [(("t", i), ("t", i + 1)) for i in range(n - 1)]
-    for i in range(n):
-        members += [(("b", i), ("t", i)), (("t", i), ("b", i + 1))]
-    return joints, members, [("b", 0), ("b", n), ("b", 1)], [n, n + 1]
-
-
-_SHAPES: dict[str, Callable[[Random], tuple[Any, ...]]] = {
-    "grid": _grid, "portals": _portals, "gable": _gable, "beam": _beam, "truss": _truss,
-}  # fmt: skip
-
-
-def _joint_name(n: int, style: int) -> str:
-    return ("ABCDEFGHJKLMNPQRSTUVW"[n], str(n + 1), f"N{n + 1}", f"J{n + 1:02d}")[style]
-
-
-def _member_name(n: int, a: str, b: str, style: int) -> str:
-    return (f"{a}-{b}", str(n + 1), f"M{n + 1}", f"B{n + 1}")[style]
-
-
-@dataclass(frozen=True)
-class Known:
-    """A frame with its opinions."""
-
-    frame: Frame
-    answers: dict[str, Answer]
-    judgements: dict[str, CaseJudgement]
-    comparison: ClaimComparison
-
-    @property
-    def names(self) -> FrameNames:
-        return FrameNames.of(self.frame)
-
-
-@cache
-def known(k: int) -> Known:
-    frame = read_frame_text(frame_text(k), f"frame{k}.toml")
-    found = study(frame)
-    answers = {
-        "slope-deflection": slope_deflection.opine(frame, found),
-        "moment-distribution": moment_distribution.opine(frame, found),
-    }
-    assert all(isinstance(a, Answer) for a in answers.values())
-    comparison = Comparison(frame, answers)
-    judgements = {name: comparison.judge(name) for name in frame.names}
-    return Known(
-        frame,
-        answers,
-        judgements,
-        ClaimComparison(frame, {"slope-deflection": answers["slope-deflection"]}, judgements, CLAIM),
-    )
-
+from crosscheck.review.echo import compared
+from crosscheck.review.finding import Subject
+from tests.pastes_frames import FRAMES, ZONED, known
 
 # --- what a paste looks like
 
+SPECIAL = ("", "", "", "", "echo", "divided", "global", "face")
 LAYOUTS = ("ends", "both", "stations", "block", "extremes")
 SEPARATORS = ("tab", "aligned", "single blanks", "comma", "semicolon", "bar")
 WRITINGS = ("fixed", "exponent", "thousands", "unicode minus", "trailing minus", "brackets", "decimal comma", "units stuck")
@@ -223,6 +80,23 @@ class Spec:
     signs: dict[str, Any]
     vocabulary: dict[str, int] = field(default_factory=dict)
     digits: int = 5
+    special: str = ""
+
+
+@dataclass(frozen=True)
+class Element:
+    """What the paste prints as one member: the part of a member of the frame from `start` to `end` (distances from its
+    `from` joint; end < start where it runs back), and the paste's names of it and of its joints."""
+
+    label: str
+    member: str
+    start: float
+    end: float
+    joints: tuple[str, str]
+
+    @property
+    def runs(self) -> int:
+        return 1 if self.end > self.start else -1
 
 
 @dataclass
@@ -256,17 +130,24 @@ def draw(seed: int) -> Spec:
     same = r.randrange(8)
     for key in ("dx", "dy", "rot"):
         vocabulary[key] = same
+    names = r.choice(("same", "same", "lower", "prefixed", "pair"))
+    special = Random(f"special {seed}").choice(SPECIAL)
+    if special == "face" and frame not in ZONED or special in ("global", "face") and layout in ("stations", "extremes"):
+        special = ""
+    if special == "divided":
+        layout = "ends" if layout == "extremes" else layout
+        names = "same" if names in ("pair", "lower") else names
     return Spec(
         seed, frame, layout, separator, writing, heads, r.choice(list(UNITS)),
         r.choice(("heading", "column", "option", "several headings", "several column")),
         r.choice(("utf-8", "utf-8-sig", "utf-16", "latin-1", "crlf")), r.random() < 0.6,
-        r.choice(("same", "same", "lower", "prefixed", "pair")), r.random() < 0.15, tables,
+        names, r.random() < 0.15, tables,
         {
             "axial": r.choice((1, 1, -1)), "axial form": r.choice(("internal", "internal", "action")),
             "shear": r.choice((1, -1)), "shear form": r.choice(("internal", "action")),
             "moment": r.choice((1, -1)), "moment form": r.choice(("internal", "action")),
             "support": r.choice((1, 1, -1)), "turn": r.choice((1, -1)), "down": r.choice((1, 1, 1, -1)),
-        }, vocabulary, r.choice((4, 5, 6)),
+        }, vocabulary, r.choice((4, 5, 6)), special,
     )  # fmt: skip
 
 
@@ -313,6 +194,9 @@ class Maker:
         f, self.F, a, arm, d, self.D, t, self.T = UNITS[spec.units]
         self.unit_words = {"force": f, "moment": (f + a if len(f) <= 2 else f"{f} {a}"), "length": d, "angle": t, "arm": a}
         self.scale = {"force": self.F, "moment": self.F * arm, "length": self.D, "angle": self.T, "arm": arm}
+        inches = a in ("ft", "in")
+        self.unit_words |= {"I": "in4" if inches else "cm4", "A": "in2" if inches else "cm2"}
+        self.small = 0.0254 if inches else 0.01
         self.values = 0
         self.planted = ""
         self.planting = -1
@@ -343,7 +227,7 @@ class Maker:
 
     # -- names
 
-    def member(self, name: str, last: bool = False) -> str:
+    def member(self, name: str) -> str:
         m = self.frame.members[name]
         return {
             "same": name, "lower": name.lower(), "prefixed": f"Member {name}",
@@ -355,43 +239,93 @@ class Maker:
         return self.spec.names == "pair" and Random(f"{self.spec.seed} {name}").random() < 0.4
 
     def joint(self, name: str) -> str:
+        if self.spec.special == "divided":
+            return self._numbered(101 + self.frame.joint_index[name])
         return {"same": name, "lower": name.lower(), "prefixed": f"Node {name}", "pair": name}[self.spec.names]
+
+    def _numbered(self, number: int) -> str:
+        return f"Node {number}" if self.spec.names == "prefixed" else str(number)
+
+    def elements(self) -> list[Element]:
+        """What the paste prints as its members."""
+        if self.spec.special == "divided":
+            return [e for e, _ in self._divided()]
+        out = []
+        for m, member in enumerate(self.frame.members.values()):
+            length = float(self.frame.member_table.length[m])
+            at, joints = [0.0, length], (self.joint(member.joint_from), self.joint(member.joint_to))
+            if self.spec.special == "face":
+                at = [member.rigid_from, length - member.rigid_to]
+            if self._backwards(member.name):
+                at, joints = at[::-1], joints[::-1]
+            out.append(Element(self.member(member.name), member.name, at[0], at[1], joints))
+        return out
+
+    def _divided(self) -> list[tuple[Element, tuple[tuple[str, float], ...]]]:
+        """Elements, each with the joints that only divide its member (name and share of the length)."""
+        r, out, inner = Random(f"divided {self.spec.seed}"), [], 200
+        for m, member in enumerate(self.frame.members.values()):
+            length = float(self.frame.member_table.length[m])
+            shares = sorted(r.choice((0.25, 0.4, 0.5, 0.7)) + 0.01 * k for k in range(r.choice((0, 0, 1, 2))))
+            names = [self._numbered(inner + k) for k in range(len(shares))]
+            inner += len(shares)
+            places = list(zip([0.0, *shares, 1.0], [self.joint(member.joint_from), *names, self.joint(member.joint_to)],
+                              strict=True))  # fmt: skip
+            for k, ((a, first), (b, last)) in enumerate(zip(places, places[1:], strict=False)):
+                label = str(len(out) + 1)
+                e = Element(f"Element {label}" if self.spec.names == "prefixed" else label, member.name, a * length,
+                            b * length, (first, last))  # fmt: skip
+                if r.random() < 0.2:
+                    e = Element(e.label, e.member, e.end, e.start, (last, first))
+                out.append((e, tuple(zip(names, shares, strict=True)) if k == 0 else ()))
+        return out
 
     # -- member values in the paste's conventions: place 0 is the paste's start
 
-    def end_values(self, case: str, name: str) -> np.ndarray:
+    def _on_faces(self, case: str, e: Element) -> np.ndarray:
+        """(2, 3) tension, shear along the frame's local y and clockwise moment on the element's start and end."""
+        m = self.frame.member_index[e.member]
+        if self.spec.special not in ("divided", "face"):
+            return self.answer.cases[case].ends[m, :: e.runs].copy()
+        out = []
+        for x, side in ((e.start, e.runs), (e.end, -e.runs)):
+            n, v, mm = self.answer.spans.along(case, np.array([m]), np.array([x]), np.array([side]))[0, :3]
+            out.append([n, side * v, side * mm])
+        return np.array(out)
+
+    def end_values(self, case: str, e: Element) -> np.ndarray:
         """(2, 3) at the paste's start and end: axial, shear, moment as printed, in the paste's units."""
-        s = self.spec.signs
-        ends = self.answer.cases[case].ends[self.frame.member_index[name]]
-        back = self._backwards(name)
-        ends = ends[::-1] if back else ends
-        r = -1 if back else 1
-        tension, shear, moment = ends[:, 0], r * ends[:, 1], ends[:, 2]
+        s, ends = self.spec.signs, self._on_faces(case, e)
         for q, quantity in enumerate(("axial", "shear", "moment")):
             for place in (0, 1):
                 self.tell(case, quantity, ends[place, q], place)
+        tension, shear, moment = ends[:, 0], e.runs * ends[:, 1], ends[:, 2]
         out = np.column_stack([
             s["axial"] * (tension if s["axial form"] == "internal" else tension * [-1, 1]),
             s["shear"] * (shear if s["shear form"] == "action" else shear * [1, -1]),
             s["moment"] * (moment if s["moment form"] == "action" else moment * [1, -1]),
         ])  # fmt: skip
+        if self.spec.special == "global":
+            m = self.frame.member_index[e.member]
+            cos, sin = self.frame.member_table.cos[m], self.frame.member_table.sin[m]
+            along = tension * [-e.runs, e.runs]
+            out[:, 0] = s["shear"] * (along * cos - ends[:, 1] * sin)
+            out[:, 1] = s["shear"] * (along * sin + ends[:, 1] * cos)
+            out[:, 2] = s["moment"] * moment
         out[:, :2] = self.in_units(out[:, :2], "force")
         out[:, 2] = self.in_units(out[:, 2], "moment")
         return out
 
-    def stations(self, case: str, name: str) -> tuple[np.ndarray, np.ndarray]:
+    def stations(self, case: str, e: Element) -> tuple[np.ndarray, np.ndarray]:
         """(5,) distances and (5, 3) N, V, M along the paste's member."""
         s = self.spec.signs
-        m = self.frame.member_index[name]
-        length = float(self.frame.member_table.length[m])
-        x = np.array([0, 0.2, 0.5, 0.75, 1.0]) * length
-        back = self._backwards(name)
-        at = length - x if back else x
-        side = np.where(x == 0, 1, -1) * (-1 if back else 1)
-        values = self.answer.spans.along(case, np.full(5, m), at, side)[:, :3].copy()
+        m = self.frame.member_index[e.member]
+        x = np.array([0, 0.2, 0.5, 0.75, 1.0]) * abs(e.end - e.start)
+        side = np.where(x == 0, 1, -1) * e.runs
+        values = self.answer.spans.along(case, np.full(5, m), e.start + e.runs * x, side)[:, :3].copy()
         for q, quantity in enumerate(("axial", "shear", "moment")):
             self.tell(case, quantity, values[:, q])
-        values *= [s["axial"], s["shear"], s["moment"] * (-1 if back else 1)]
+        values *= [s["axial"], s["shear"], s["moment"] * e.runs]
         values[:, :2] = self.in_units(values[:, :2], "force")
         values[:, 2] = self.in_units(values[:, 2], "moment")
         return self.in_units(x, "arm"), values
@@ -419,26 +353,23 @@ class Maker:
     def member_table(self, case: str) -> tuple[list[tuple[str, str]], list[list[Any]]]:
         layout = self.spec.layout
         forces = [(self.word("axial"), "force"), (self.word("shear"), "force"), (self.word("moment"), "moment")]
+        if self.spec.special == "global":
+            forces = [(h, u) for h, (_, u) in zip(("Fx", "Fy", "Mz"), forces, strict=True)]
         forces, keep = self._spatial(forces)
         rows: list[list[Any]] = []
-        for name in self.frame.members:
-            m = self.frame.members[name]
-            joints = [m.joint_from, m.joint_to]
-            joints = joints[::-1] if self._backwards(name) else joints
-            label = self.member(name)
+        for e in self.elements():
             if layout in ("ends", "block"):
-                v = self.end_values(case, name)
-                rows += [[label if layout == "ends" or k == 0 else "", self.joint(j), *keep(v[k])]
-                         for k, j in enumerate(joints)]  # fmt: skip
+                v = self.end_values(case, e)
+                rows += [[e.label if layout == "ends" or k == 0 else "", j, *keep(v[k])] for k, j in enumerate(e.joints)]
             elif layout == "both":
-                v = self.end_values(case, name)
-                rows.append([label, *keep(v[0]), *keep(v[1])])
+                v = self.end_values(case, e)
+                rows.append([e.label, *keep(v[0]), *keep(v[1])])
             elif layout == "stations":
-                x, v = self.stations(case, name)
-                rows += [[label, ("at", x[k]), *keep(v[k])] for k in range(len(x))]
+                x, v = self.stations(case, e)
+                rows += [[e.label, ("at", x[k]), *keep(v[k])] for k in range(len(x))]
             else:
-                v = self.extremes(case, name)
-                rows.append([label, *[value for q in range(3) for value in (v[0, q], v[1, q])]])
+                v = self.extremes(case, e.member)
+                rows.append([e.label, *[value for q in range(3) for value in (v[0, q], v[1, q])]])
         heads = {
             "ends": [(self.word("member"), ""), (self.word("end"), ""), *forces],
             "block": [(self.word("member"), ""), (self.word("end"), ""), *forces],
@@ -493,6 +424,38 @@ class Maker:
             rows.append([self.joint(name), *moves, float(self.in_units(s["turn"] * t, "angle"))])
         return heads, rows
 
+    # -- the other model's own input: cells marked "echo" are no results
+
+    def echo_tables(self) -> list[str]:
+        joints = {self.joint(j.name): (j.x, j.y) for j in self.frame.joints.values()}
+        if self.spec.special == "divided":
+            for e, inner in self._divided():
+                m = self.frame.members[e.member]
+                a, b = (np.array([self.frame.joints[j].x, self.frame.joints[j].y]) for j in (m.joint_from, m.joint_to))
+                joints |= {name: tuple(a + share * (b - a)) for name, share in inner}
+        places = self.in_units(list(joints.values()), "arm")
+        rows: list[list[Any]] = [[n, ("echo", x), ("echo", y)] for n, (x, y) in zip(joints, places, strict=True)]
+        out = self.table("Joint coordinates", [(self.word("joint"), ""), ("X", "arm"), ("Y", "arm")], rows)
+        ends = (("Start node", "End node"), ("Node i", "Node j"), ("From", "To"))[self.spec.seed % 3]
+        heads = [(self.word("member"), ""), *[(h, "") for h in ends]]
+        out += self.table("Members", heads, [[e.label, *e.joints] for e in self.elements()])
+        if self.spec.special == "divided":
+            return out
+        metre = self.frame.units.metre
+        held = ("fixed", "free") if self.spec.seed % 2 else ("1", "0")
+        rows = [[self.joint(j), *[held[0 if v else 1] for v in (s.x, s.y, s.rotation)]] for j, s in
+                self.frame.supports.items()]  # fmt: skip
+        heads = [(self.word("joint"), ""), *[(h, "") for h in ("X", "Y", "Rotation")]]
+        out += self.table("Supports", heads, rows)
+        rows = [[x.name, ("echo", x.I * (metre / self.small) ** 4), ("echo", x.A * (metre / self.small) ** 2)]
+                for x in self.frame.sections.values()]  # fmt: skip
+        out += self.table("Sections", [("Section", ""), ("I", "I"), ("A", "A")], rows)
+        rows = []
+        for case in self.frame.cases:
+            total = -self.in_units(self.answer.cases[case].reactions[:, :2].sum(axis=0), "force")
+            rows.append([case, *[("echo", v) for v in total]])
+        return out + self.table("Load totals", [("Case", ""), ("Fx", "force"), ("Fy", "force")], rows)
+
     # -- text
 
     def text(self, cases: list[str]) -> str:
@@ -505,6 +468,10 @@ class Maker:
             out += [f"Forces in {w['force']}, moments in {w['moment']}, displacements in {w['length']}, "
                     f"rotations in {w['angle']}, "
                     f"distances in {w['arm']}", ""]  # fmt: skip
+        if s.special == "face" and s.seed % 2:
+            out += ["Forces at the face of supports", ""]
+        if s.special in ("echo", "divided"):
+            out += self.echo_tables()
         makers = {"member": self.member_table, "reactions": self.reaction_table, "displacements": self.displacement_table}
         titles = {
             "member": {"ends": "Member end forces", "both": "Member end forces", "block": "Member end forces",
@@ -574,7 +541,7 @@ class Maker:
                     self.values += 1
                 unit = self.unit_words[kinds[j]] if " " not in self.unit_words[kinds[j]] else ""
                 at_exponent = "fixed" if isinstance(cell, tuple) and s.writing == "exponent" else s.writing
-                places = decimals[j] if not (isinstance(cell, tuple) and cell[0] == "at") else decimals[j] + 2
+                places = decimals[j] if not (isinstance(cell, tuple) and cell[0] != "zero") else decimals[j] + 2
                 line.append(number(value, places, at_exponent, unit if s.heads != "units stated" else ""))
             out.append(line)
         return out
@@ -659,6 +626,7 @@ class Outcome:
     compared: int
     closed: Any
     comparisons: Any
+    facts: tuple[str, ...] = ()
 
 
 def judge(paste: Paste) -> Outcome:
@@ -667,17 +635,18 @@ def judge(paste: Paste) -> Outcome:
     reading = read_claim_text(decode(paste.data), k.names, paste.options)
     closed = close(reading, k.frame, k.answers, paste.case, CLAIM)
     cases = k.comparison.judge(closed)
+    facts = [f for f in compared(Subject(k.frame), reading.echo) if f.grade == "serious"] if reading.echo else []
     verdicts = [c.verdict for c in cases]
     if closed.undecided or closed.foreign or not cases:
         verdicts.append("undecided")
     if closed.reversed_load:
         verdicts.append("disagree")
-    return Outcome(worst(verdicts), sum(c.compared for c in cases), closed, cases)
+    return Outcome(worst(verdicts), sum(c.compared for c in cases), closed, cases, tuple(map(str, facts)))
 
 
 def is_right(paste: Paste, outcome: Outcome) -> bool:
-    """Every printed value read, compared and found to agree."""
-    return outcome.verdict == "agree" and outcome.compared + _coarse(outcome) == paste.values
+    """Every printed value read, compared and found to agree, and every table of input that of the frame."""
+    return not outcome.facts and outcome.verdict == "agree" and outcome.compared + _coarse(outcome) == paste.values
 
 
 def _coarse(outcome: Outcome) -> int:
@@ -707,14 +676,15 @@ class Tally:
         if paste.fixed:
             for key in (f"layout {s.layout}", f"separator {s.separator}", f"writing {s.writing}", f"heads {s.heads}",
                         f"cases {s.cases}", f"names {s.names}", f"units {s.units}", f"encoding {s.encoding}",
-                        f"noise {s.noise}", f"spatial {s.spatial}"):  # fmt: skip
+                        f"noise {s.noise}", f"spatial {s.spatial}", f"special {s.special or 'none'}"):  # fmt: skip
                 self.drawn[key] += 1
                 self.right[key] += ok
         if not ok and (paste.fixed or outcome.verdict != "undecided"):
             self.failures.append(
                 f"{seed} {outcome.verdict} {outcome.compared}/{paste.values} {s.layout}, {s.separator}, {s.writing}, "
                 f"{s.heads}, "
-                f"{s.cases}, {s.names}: {outcome.closed.undecided[:2]} {outcome.closed.not_understood[:1]}"
+                f"{s.cases}, {s.names}, {s.special}: {outcome.closed.undecided[:2]} {outcome.closed.not_understood[:1]} "
+                f"{outcome.facts[:2]}"
             )
         if plant and ok:
             kind = PLANTS[seed % len(PLANTS)]

@@ -130,9 +130,22 @@ def in_our_names(echo: Echo, names: Names) -> list[EchoFact]:
             if f.where not in echo.pieces:
                 first, last = (_ours(echo, names, n) or n for n in _pair(f))
                 out.append(replace(f, where=_member(echo, names, f.where), value=f"{first} to {last}"))
+            elif whole := _whole(echo, names, f):
+                out.append(whole)
         elif f.what in ("I", "A", "E"):
             out.append(replace(f, where=_member(echo, names, f.where)))
     return out + [fact for joint, cells in marks.items() if (fact := _support(joint, cells))]
+
+
+def _whole(echo: Echo, names: Names, fact: EchoFact) -> EchoFact | None:
+    """The ends of a divided member, told once: by its first piece, where its pieces reach both of its ends."""
+    member = echo.pieces[fact.where].member
+    pieces = [(label, p) for label, p in echo.pieces.items() if p.member == member]
+    reached = {s for _, p in pieces for s in (p.start, p.end)}
+    length = _length(names.frame, member)
+    if fact.where != pieces[0][0] or 0.0 not in reached or not any(abs(s - length) <= CLOSE * length for s in reached):
+        return None
+    return replace(fact, where=member, value=" to ".join(names.frame.members[member]))
 
 
 def _member(echo: Echo, names: Names, label: str) -> str:

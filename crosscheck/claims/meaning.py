@@ -58,7 +58,7 @@ def meaning_of(grid: Grid, table: RawTable, names: Names) -> Meaning:
         return Meaning("", tuple(Role() for _ in grid.heads), "the heads do not match the columns below them")
     heads = _turning_told(_numbered(_filled(grid, table, names)))
     roles = _named_roles(heads, grid, names)
-    kind, why = ("echo supports", "") if _restrains(grid, roles, table.heading) else _kind(heads, roles, table)
+    kind, why = ("echo supports", "") if _restrains(grid, roles, table.heading, names) else _kind(heads, roles, table)
     if not kind:
         return Meaning("", tuple(roles), why)
     if kind.startswith("echo"):
@@ -146,7 +146,7 @@ def _named_roles(heads: list[Head], grid: Grid, names: Names) -> list[Role]:
     bare_ends = [k for k, h in enumerate(heads) if h.noun == "" and h.end is not None and not h.which]
     for k in bare_ends:
         cells = column(grid, k)
-        if _share(cells, lambda t: names.joint(t) is not None) >= 0.6:
+        if _share(cells, lambda t: names.joint(t) is not None) >= 0.6 or _connects(heads):
             joints.append(k)
     pair = len(joints) == 2
     for position, k in enumerate(sorted(joints)):
@@ -160,6 +160,12 @@ def _named_roles(heads: list[Head], grid: Grid, names: Names) -> list[Role]:
         if head.noun == "station" and not any(r.name == "station" for r in roles):
             roles[k] = Role("station", unit=head.unit, share=head.share)
     return [_which_or_case(r, column(grid, k), names) for k, r in enumerate(roles)]
+
+
+def _connects(heads: list[Head]) -> bool:
+    """ "Member, From, To" and no results: the joints that members join, whatever they are called."""
+    ends = sorted(h.end for h in heads if h.noun == "" and h.end is not None and not h.which)
+    return ends == [0, 1] and any(h.noun == "member" for h in heads) and not any(h.noun in RESULT_NOUNS for h in heads)
 
 
 def _which_or_case(role: Role, cells: list[str], names: Names) -> Role:
@@ -191,12 +197,14 @@ RESTRAINTS = frozenset(
 )
 
 
-def _restrains(grid: Grid, roles: list[Role], heading: str) -> bool:
+def _restrains(grid: Grid, roles: list[Role], heading: str, names: Names) -> bool:
     """Does the table say which directions of joints are held, by words or by ones and zeros?"""
     if not any(r.name == "joint" for r in roles):
         return False
     cells = [c.lower() for k, r in enumerate(roles) if not r.name for c in column(grid, k)]
-    told = re.search(r"support|restrain|fixit", heading, re.IGNORECASE) is not None
+    told = re.search(r"support|restrain|fixit", heading, re.IGNORECASE) is not None or "1" in cells and all(
+        names.joint(c) in names.frame.supports for k, r in enumerate(roles) if r.name == "joint" for c in column(grid, k)
+    )
     words = [c for c in cells if c in RESTRAINTS]
     return bool(cells) and len(words) + (sum(c in ("0", "1") for c in cells) if told else 0) == len(cells)
 

@@ -146,10 +146,13 @@ class Names:
         self._known: dict[str, MemberHit | None] = {}
         self._learned: dict[str, MemberHit] = {}
         self._inner: frozenset[str] = frozenset()
+        self._other_numbers = False
 
     def learn(self, joints: Mapping[str, str], members: Mapping[str, MemberHit], inner: Iterable[str]) -> None:
         """Takes over what the paste's own coordinates and member ends say of its names; it goes before likeness."""
         self._joints.give(joints)
+        # Where joints have other numbers and nothing is said of members, a member's number means nothing either.
+        self._other_numbers |= bool(joints) and not members
         self._learned |= {plain(without_prefix(label, "member")): hit for label, hit in members.items()}
         self._inner |= {plain(without_prefix(label, "joint")) for label in inner}
         self._known.clear()
@@ -184,7 +187,10 @@ class Names:
     def _find_member(self, text: str) -> MemberHit | None:
         if self._learned and (known := self._learned.get(plain(without_prefix(text, "member")))):
             return known
-        if text.strip() in self.frame.members or plain(text) in self._members.given or text in self._members.given:
+        given = plain(text) in self._members.given or text in self._members.given
+        if self._other_numbers and not given and _core(without_prefix(text, "member")):
+            return None
+        if text.strip() in self.frame.members or given:
             name = self._members.find(text)
             return MemberHit(name, self._run(name, text)) if name else None
         # The two joints of "B - A" say which way the paste's member runs; but a name as it stands goes first.

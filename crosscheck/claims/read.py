@@ -413,8 +413,9 @@ class _Reader:
             return replace(entry, extreme=role.which or place.which or "size")
         assert place.at is not None and station is not None
         unit = station.unit or (None if station.share else self.stated.unit("station"))
-        at = place.at.value * (0.01 if station.share and "%" in (place.at.tail + str(station.unit)) else 1.0)
-        entry = replace(entry, at=at, at_unit=unit, at_share=station.share)
+        percent = 0.01 if station.share and "%" in (place.at.tail + str(station.unit)) else 1.0
+        at, half = place.at.value * percent, place.at.half * percent
+        entry = replace(entry, at=at, at_unit=unit, at_share=station.share, at_half=half)
         if place.member.part is not None:
             start, end = place.member.part
             if isnan(start) or isnan(end):

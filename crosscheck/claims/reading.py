@@ -102,6 +102,8 @@ class Entry:
     at: float | None = None
     at_unit: Size | None = None
     at_share: bool = False
+    at_half: float = 0.0
+    """Half a unit of the last digit of `at`, as `at` is given."""
     case: str | None = None
     extreme: str | None = None
     axes: str = ""

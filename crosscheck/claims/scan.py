@@ -8,7 +8,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass, field
 
-from crosscheck.claims.names import MemberHit, Names, plain
+from crosscheck.claims.names import MemberHit, Names, plain, without_prefix
 from crosscheck.claims.numbers import is_blank, parse_number
 from crosscheck.claims.reading import LineTrace
 from crosscheck.claims.sentences import looks_told
@@ -102,6 +102,27 @@ def _end_numbers(filled: list[str]) -> int:
     return sum(b in ("1", "2") and head_of(a).noun in RESULT_NOUNS for a, b in pairs)
 
 
+def _with_prefixes(words: list[str]) -> list[str]:
+    """Words such as "Member" or "Node" put to the names behind them."""
+    out: list[str] = []
+    for word in words:
+        if out and "" in {without_prefix(f"{out[-1]} x", kind).removesuffix("x") for kind in ("member", "joint")}:
+            out[-1] = f"{out[-1]} {word}"
+        else:
+            out.append(word)
+    return out
+
+
+def _joins(head: str) -> bool:
+    """Do the heads say which joints members join, and nothing of results?"""
+    separator, cells = cells_of(head)
+    texts = [c.text for c in cells if c.text]
+    wide = [c.text for c in wide_cells(head)]
+    heads = [head_of(t) for t in (wide if separator == "blank" and len(wide) > 2 else texts)]
+    nouns, ends = {h.noun for h in heads}, {h.end for h in heads}
+    return "member" in nouns and {0, 1} <= ends and not nouns & {*RESULT_NOUNS, "case", "station", "which", "x"}
+
+
 def is_prose(text: str) -> bool:
     """A line of many words and no figures that says nothing of columns, cases, units or signs."""
     if len(text) < 25 or any(c.isdigit() for c in text) or "\t" in text or "|" in text:
@@ -158,6 +179,7 @@ class _Scanner:
         numbers = sum(is_number(t) for t in filled)
         return (
             self._sentence(number, body, filled)
+            or self._joining_row(number, body, filled, separator)
             or self._head(number, body, filled, numbers, separator)
             or self._heading_of_case(number, body, filled, numbers)
             or self._heading_of_member(body, filled, numbers)
@@ -231,7 +253,7 @@ class _Scanner:
     # -- headings
 
     def _heading_of_case(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
-        if numbers > 1 and len(filled) > 3:
+        if numbers > 1 and len(filled) > 3 or numbers and self._under_cases(filled):
             return None
         label = self._case_in(text)
         if label is None:
@@ -349,6 +371,30 @@ class _Scanner:
         if self.table is None or not self.table.heads:
             return False
         return len([c for c in cells_of(self.table.heads[0][1])[1] if c.text]) == len(filled)
+
+    def _under_cases(self, filled: list[str]) -> bool:
+        """Is it a row of a table whose first column names the case?"""
+        if self.table is None or not self.table.heads or not self._under_heads(filled):
+            return False
+        return head_of(next((c.text for c in cells_of(self.table.heads[0][1])[1] if c.text), "")).noun == "case"
+
+    def _joining_row(self, number: int, text: str, filled: list[str], separator: Separator) -> tuple[str, str] | None:
+        """A row of names alone, under heads that say which joints a member joins."""
+        if self.table is None or not self.table.heads or self.heading or not _joins(self.table.heads[0][1]):
+            return None
+        head = self.table.heads[0][1]
+        heads = [c.text for c in cells_of(head)[1] if c.text]
+        if separator != separator_of(head):
+            return None
+        if separator == "blank":
+            filled, heads = [c.text for c in wide_cells(text)], [c.text for c in wide_cells(head)]
+            if len(filled) < 3 and all(map(self._knows, words := _with_prefixes(text.split()))):  # single blanks
+                filled, heads = words, ["", "", ""]
+        if len(filled) != len(heads) or plain(text) == plain(head) or self._is_units(filled):
+            return None
+        self.table.rows.append((number, text))
+        self.table.blocks.append(None)
+        return "row", ""
 
     def _named_row(self, number: int, text: str, filled: list[str]) -> tuple[str, str] | None:
         """The first line of a block may hold the member's name alone, under the table's head."""

@@ -221,7 +221,7 @@ def _batches(entries: list[Entry], frame: Frame, cases: tuple[str, ...]) -> list
 def _batch(kind: str, quantity: str, where: list[int], entries: list[Entry], frame: Frame, cases: tuple[str, ...]) -> Batch:
     mine = [entries[k] for k in where]
     spoken = {n: k for k, n in enumerate(cases)}
-    at = [_at(e, frame) for e in mine]
+    at = [(_at(e, e.at, frame), _at(e, e.at_half, frame)) for e in mine]
 
     def ints(values: Iterable[int | None]) -> np.ndarray:
         return np.array([-1 if v is None else v for v in values], dtype=np.int64)
@@ -232,7 +232,8 @@ def _batch(kind: str, quantity: str, where: list[int], entries: list[Entry], fra
         member=ints(frame.member_index[e.member] if e.member else None for e in mine),
         joint=ints(frame.joint_index[e.joint] if e.joint else None for e in mine),
         end=ints(e.end for e in mine), place=ints(e.place for e in mine), run=ints(e.run for e in mine),
-        at=np.array(at), at_share=np.array([e.at_share for e in mine]),
+        at=np.array([x for x, _ in at]), at_half=np.array([half for _, half in at]),
+        at_share=np.array([e.at_share for e in mine]),
         extreme=ints(_EXTREME.get(e.extreme or "size", 0) for e in mine),
         cut=np.array([np.nan if e.cut is None else e.cut for e in mine]),
         origin=np.array([np.nan if e.origin is None else e.origin for e in mine]),
@@ -242,10 +243,11 @@ def _batch(kind: str, quantity: str, where: list[int], entries: list[Entry], fra
     )  # fmt: skip
 
 
-def _at(e: Entry, frame: Frame) -> float:
-    if e.at is None:
+def _at(e: Entry, at: float | None, frame: Frame) -> float:
+    """A distance of the entry in the frame's length, or as a share of its member's."""
+    if at is None:
         return 0.0
-    return e.at if e.at_unit is None or e.at_share else e.at * e.at_unit.factor / frame.units.metre
+    return at if e.at_unit is None or e.at_share else at * e.at_unit.factor / frame.units.metre
 
 
 def _factor(e: Entry, frame: Frame) -> float:

@@ -16,6 +16,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from crosscheck.compare.fit_stations import at_jumps
 from crosscheck.compare.fit_values import COLUMN, Reference, joint_column
 from crosscheck.frame.model import Bools, Floats, Frame, Ints
 
@@ -67,7 +68,8 @@ class Batch:
     """All values of one kind and quantity of a claim, as arrays (n,).
 
     member, joint: indices, -1 for none. end, place: 0, 1 or -1 (not said). run: +1, -1 or 0. at: distance from the paste's
-    start in the frame's length, or a share of the member's length where at_share. extreme: 1 max, -1 min, 0 size.
+    start in the frame's length, or a share of the member's length where at_share; at_half: half its last printed digit.
+    extreme: 1 max, -1 min, 0 size.
     cut: where inside its member a part of it ends; origin: where a part begins (NaN for whole members); both from the
       frame's `from` joint. unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value,
       half: as printed. factor: to the frame's units, NaN where no unit is stated.
@@ -83,6 +85,7 @@ class Batch:
     place: Ints
     run: Ints
     at: Floats
+    at_half: Floats
     at_share: Bools
     extreme: Ints
     cut: Floats
@@ -152,9 +155,11 @@ def placed(batch: Batch, frame: Frame, rule: str) -> tuple[Ints, Ints, Ints]:
 def distance(batch: Batch, frame: Frame, r: Ints) -> Floats:
     """Distances from the frame's `from` joint, in the frame's length."""
     length = frame.member_table.length[batch.member]
-    at = np.where(batch.at_share, batch.at * length, batch.at)
+    unit = np.where(batch.at_share, length, 1.0)
+    at = batch.at * unit
     whole = np.where(r < 0, length - at, at)
-    return np.where(np.isnan(batch.origin), whole, batch.origin + r * at)
+    x = np.where(np.isnan(batch.origin), whole, batch.origin + r * at)
+    return at_jumps(frame, batch.member, x, batch.at_half * unit)
 
 
 def expected(batch: Batch, references: list[Reference], convention: Convention) -> Floats:

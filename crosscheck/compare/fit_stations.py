@@ -1,17 +1,46 @@
-"""The unit of distances along members that a paste does not state: the one in which most members end where they should."""
+"""Distances along members: the unit that a paste does not state is the one in which most members end where they should, and
+a distance that its printed digits cannot tell from a point load stands at it."""
 
 from __future__ import annotations
 
 from dataclasses import replace
+from functools import lru_cache
+
+import numpy as np
 
 from crosscheck.claims.reading import Entry
 from crosscheck.claims.words import Size
 from crosscheck.compare.fit_units import length_choices
-from crosscheck.frame.model import Frame
+from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.frame.stations import stations
 from crosscheck.frame.units import LENGTH
 
 CLOSE = 0.01
 """Share of a member's length within which the last station counts as standing at its end."""
+
+
+ROUNDED = 1e-4
+"""Share of a member's length by which places are off because coordinates are printed to a few digits."""
+
+
+@lru_cache(maxsize=8)
+def _jumps(frame: Frame) -> dict[int, Floats]:
+    """Distances of point loads and couples, by member."""
+    s = stations(frame)
+    twice = np.flatnonzero((s.member[1:] == s.member[:-1]) & (s.x[1:] == s.x[:-1]))
+    return {int(m): s.x[twice[s.member[twice] == m]] for m in np.unique(s.member[twice])}
+
+
+def at_jumps(frame: Frame, member: Ints, x: Floats, half: Floats) -> Floats:
+    """(n,) distances, those that may be meant at a point load put there: results are looked up on both its sides."""
+    out = x.copy()
+    for m, places in _jumps(frame).items():
+        mine = np.flatnonzero(member == m)
+        if len(mine):
+            nearest = places[np.abs(places[None, :] - x[mine, None]).argmin(axis=1)]
+            near = half[mine] + ROUNDED * frame.member_table.length[m]
+            out[mine] = np.where(np.abs(nearest - x[mine]) <= near, nearest, x[mine])
+    return out
 
 
 def with_stations(entries: list[Entry], frame: Frame) -> list[Entry]:
@@ -31,14 +60,13 @@ def with_stations(entries: list[Entry], frame: Frame) -> list[Entry]:
 
 def _unit_of(entries: list[Entry], frame: Frame) -> Size | None:
     """The unit, or None where the distances are shares of the length."""
-    last: dict[str, float] = {}
-    for e in entries:
-        last[str(e.member)] = max(last.get(str(e.member), 0.0), float(e.at or 0.0))
+    last: dict[tuple[str, float | None], float] = {}
+    real: dict[tuple[str, float | None], float] = {}
     lengths = frame.member_table.length
-    real = {m: float(lengths[frame.member_index[m]]) for m in last}
     for e in entries:
-        if e.reach is not None:  # a part of a member: its stations end where it does
-            real[str(e.member)] = min(real[str(e.member)], e.reach)
+        part = str(e.member), e.origin  # a part of a member: its stations end where it does
+        last[part] = max(last.get(part, 0.0), float(e.at or 0.0))
+        real[part] = float(lengths[frame.member_index[part[0]]]) if e.reach is None else e.reach
     choices = length_choices(frame.units)
     scores = [_score(last, real, c.factor) for c in choices]
     share = _score(last, dict.fromkeys(last, 1.0), 1.0)
@@ -48,7 +76,9 @@ def _unit_of(entries: list[Entry], frame: Frame) -> Size | None:
     return Size(choices[best].text, LENGTH, choices[best].factor * frame.units.metre)
 
 
-def _score(last: dict[str, float], real: dict[str, float], factor: float) -> float:
+def _score(
+    last: dict[tuple[str, float | None], float], real: dict[tuple[str, float | None], float], factor: float
+) -> float:
     """Members whose last station stands at their end; one that lies beyond the end counts against the unit."""
     ratios = [x * factor / real[m] for m, x in last.items()]
     ending = sum(abs(r - 1.0) <= CLOSE for r in ratios)

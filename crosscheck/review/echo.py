@@ -24,6 +24,8 @@ KINDS = {
     "A": "stiffness", "E": "stiffness", "total x": "load", "total y": "load",
 }  # fmt: skip
 """The kind of suspect that a difference in each would be."""
+FORCES = {"N": 1.0, "kN": 1e3, "MN": 1e6, "kgf": 9.80665, "lbf": 4.4482216152605, "kip": 4448.2216152605}
+"""Newtons: units tried for load totals that state none."""
 LENGTHS = {"m": 1.0, "cm": 0.01, "mm": 0.001, "ft": 0.3048, "in": 0.0254}
 """Metres: units tried for coordinates and properties that state none."""
 
@@ -43,13 +45,13 @@ def compared(subject: Subject, facts: Sequence[EchoFact]) -> Iterator[Finding]:
         facts = [replace(f, value=-f.value) if f.what == "total y" and not isinstance(f.value, str) else f for f in facts]
     agreed = 0
     strange: dict[str, list[str]] = {}
-    lengths = {what: _length_unit(subject, facts, what) for what in POWERS}
+    sizes = {what: _size_unstated(subject, facts, what) for what in POWERS}
     for fact in facts:
         ours = _ours(subject, fact)
         if ours is None:
             strange.setdefault(fact.what.split(" ")[0], []).append(fact.where)
             continue
-        says = _difference(subject.frame, fact, ours, lengths.get(fact.what, 1.0))
+        says = _difference(subject.frame, fact, ours, sizes.get(fact.what, 1.0))
         if says:
             yield Finding("serious", (fact.where,), f"the other model has {says}", "echo", KINDS[fact.what])
         else:
@@ -109,32 +111,32 @@ def _flag(stiffness: float) -> str:
     return "1" if stiffness == HELD else "0" if stiffness == FREE else "s"
 
 
-def _scale(frame: Frame, fact: EchoFact, length: float) -> float:
-    """The frame's own units in one unit of the fact's number."""
+def _scale(frame: Frame, fact: EchoFact, size: float) -> float:
+    """The frame's own units in one unit of the fact's number; size: of the unit that it does not state, in N and m."""
     force_power, length_power = POWERS[fact.what]
     own = frame.units.newton**force_power * frame.units.metre**length_power
-    if fact.unit is not None:
-        return float(fact.unit.factor) / own
-    return float(frame.units.newton**force_power * length**length_power) / own
+    return float(fact.unit.factor if fact.unit is not None else size) / own
 
 
-def _length_unit(subject: Subject, facts: Sequence[EchoFact], what: str) -> float:
-    """Metres in the length unit of facts that state none: of the usual ones that in which most are the frame's."""
+def _size_unstated(subject: Subject, facts: Sequence[EchoFact], what: str) -> float:
+    """Size in N and m of the unit of facts that state none: of the usual ones that in which most are the frame's."""
     mine = [(f, _ours(subject, f)) for f in facts if f.what == what and f.unit is None]
     frame = subject.frame
-    units = [frame.units.metre, *LENGTHS.values()]
+    force_power, length_power = POWERS[what]
+    forces = [frame.units.newton, *(FORCES.values() if (force_power, length_power) == (1, 0) else ())]
+    lengths = [frame.units.metre, *(LENGTHS.values() if length_power else ())]
 
-    def fits(unit: float) -> int:
-        return sum(isinstance(o, float) and not _difference(frame, f, o, unit) for f, o in mine)
+    def fits(size: float) -> int:
+        return sum(isinstance(o, float) and not _difference(frame, f, o, size) for f, o in mine)
 
-    return max(units, key=fits)
+    return max((force**force_power * length**length_power for force in forces for length in lengths), key=fits)
 
 
-def _difference(frame: Frame, fact: EchoFact, ours: float | str, length: float) -> str:
+def _difference(frame: Frame, fact: EchoFact, ours: float | str, size: float) -> str:
     """The difference in words, "" for none."""
     if isinstance(fact.value, str) or isinstance(ours, str):
         return _other_words(fact, str(ours))
-    scale = _scale(frame, fact, length)
+    scale = _scale(frame, fact, size)
     theirs, half = fact.value * scale, fact.half * scale
     if math.isclose(theirs, ours, rel_tol=SAME, abs_tol=max(half * (1 + 1e-9), 1e-12)):
         return ""
