@@ -16,6 +16,8 @@ from crosscheck.opinions.slope_deflection.parting import LoadRuns
 from crosscheck.opinions.slope_deflection.varying import Bent
 
 HALVINGS = 50
+AT_ONCE = 16_384
+"""Pieces between stations in which level places are looked for at once."""
 SIXTHS = (1.0 - np.cos(np.pi * np.arange(6) / 5)) / 2
 """Places of a piece from which a polynomial of degree five is known best (Chebyshev's, ends included)."""
 PARTS = np.linspace(1e-4, 1.0 - 1e-4, 9)
@@ -45,8 +47,11 @@ class ClosedFormSpans:
         member, a, b = self._stations.member[left], self._stations.x[left], self._stations.x[right]
         found = self._shear_places(name, member, a, b)
         varying = self.frame.member_table.varying
-        plain = ~varying[member]
-        found.append(self._level_places(name, member[plain], a[plain], b[plain]))
+        plain = np.flatnonzero(~varying[member])
+        # Part by part of a large frame: all at once would be most of the memory that a check needs.
+        for first in range(0, len(plain), AT_ONCE):
+            part = plain[first : first + AT_ONCE]
+            found.append(self._level_places(name, member[part], a[part], b[part]))
         if varying.any():
             found.append(self._varying(name).level(self._lean(name)))
         return np.concatenate([m for m, _ in found]), np.concatenate([x for _, x in found])
@@ -91,12 +96,18 @@ class ClosedFormSpans:
     def _lean(self, name: str) -> Floats:
         """(m,) slope at the `from` face, that of the chord included: whatever makes the deflection at the `to` face come
         out right."""
-        t = self.frame.member_table
-        near, far, turn_near, turn_far = self._joint_moves(name)
-        whole = self._bend(name, np.arange(len(t.length)), t.length - t.zone[:, 1])
-        w1 = near - np.nan_to_num(turn_near) * t.zone[:, 0]
-        w2 = far + np.nan_to_num(turn_far) * t.zone[:, 1]
-        return np.asarray((w2 - w1 - whole) / t.clear)
+        if name not in self._leans:
+            t = self.frame.member_table
+            near, far, turn_near, turn_far = self._joint_moves(name)
+            whole = self._bend(name, np.arange(len(t.length)), t.length - t.zone[:, 1])
+            w1 = near - np.nan_to_num(turn_near) * t.zone[:, 0]
+            w2 = far + np.nan_to_num(turn_far) * t.zone[:, 1]
+            self._leans[name] = (w2 - w1 - whole) / t.clear
+        return self._leans[name]
+
+    @cached_property
+    def _leans(self) -> dict[str, Floats]:
+        return {}
 
     def _joint_moves(self, name: str) -> tuple[Floats, Floats, Floats, Floats]:
         """Displacement along local y and rotation of each member's two joints, all (m,)."""
