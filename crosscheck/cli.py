@@ -13,22 +13,77 @@ from collections.abc import Callable, Iterator, Sequence
 from typing import TYPE_CHECKING, Any
 
 from crosscheck import __version__
+from crosscheck.waiting import waiting
 
 if TYPE_CHECKING:
     from rich.console import RenderableType
 
-    from crosscheck.check import Opinions, TwoPrintouts
+    from crosscheck.check import Opinions
+    from crosscheck.claims.reading import Reading
 
 EXIT = {"agree": 0, "disagree": 1, "undecided": 3}
 UNUSABLE = 2
 
-EXAMPLES = """\
+EXAMPLES = {
+    "": """\
 examples:
   crosscheck draft --bays 6,6 --storeys 3.5,3.2 > hall.toml     a frame file to start from
   crosscheck opinions hall.toml                                 what three methods make of it
   crosscheck verify hall.toml hall.claim.txt                    is the pasted table right?
   crosscheck verify hall.toml - --case wind < paste.txt         the same from standard input
-"""
+each command says more, with examples: crosscheck verify --help
+""",
+    "opinions": """\
+examples:
+  crosscheck opinions hall.toml                      every case and combination
+  crosscheck opinions hall.toml --case wind --working    with the equations, by hand
+  crosscheck opinions hall.toml --axial rigid        as hand methods have it
+  crosscheck opinions hall.toml --report hall.html   a page to read, sign and file
+exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided
+""",
+    "verify": """\
+examples:
+  crosscheck verify hall.toml hall.claim.txt         the claim beside the opinions
+  crosscheck verify hall.toml - --case wind < mail.txt   pasted, of one case
+  crosscheck verify hall.toml --value "B2 max 412 kNm"   one value out of a mail
+  crosscheck verify hall.toml r.csv --show-reading   how the table is understood
+  crosscheck verify hall.toml r.csv --units "kN mm"  what it does not say itself
+  crosscheck verify hall.toml r.csv --suspect 1      as the first suspect supposes
+  crosscheck verify hall.toml new.csv --against old.csv  what moved between two
+  crosscheck verify hall.toml r.csv --report hall.pdf --about job="Quay 4"
+  crosscheck verify hall.toml r.csv --quiet && echo right    in a script
+exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided
+""",
+    "inspect": """\
+examples:
+  crosscheck inspect hall.toml                       before any results
+  crosscheck inspect hall.toml --explain             why each finding matters
+  crosscheck inspect hall.toml --approximate         hand methods beside it
+  crosscheck inspect hall.toml --echo input.txt      against the other's input
+exit status: 0 nothing serious, 1 something serious, 2 unusable input
+""",
+    "record": """\
+examples:
+  crosscheck record hall.toml --reason "checked against drawing S-04 rev C"
+  crosscheck record frames/ --only "hall*" --reason "sections of 2026"
+exit status: 0 on record, 1 refused, 2 unusable input
+""",
+    "regress": """\
+examples:
+  crosscheck regress frames/                         all of an office's frames
+  crosscheck regress --changed-since origin/main     what a change has touched
+  crosscheck regress frames/ --report week.html      an overview to look through
+  crosscheck regress frames/ --quiet --junit out.xml in a build
+exit status: 0 all held, 1 anything else, 2 no frame found or none readable
+""",
+    "draft": """\
+examples:
+  crosscheck draft > shed.toml                       blank, every table explained
+  crosscheck draft --bays "2 x 6, 7.5" --storeys "4.2, 3.5" --output hall.toml
+  crosscheck draft --bays "20 ft" --storeys "12 ft" --units "kip ft" --feet pinned
+""",
+}
+"""What --help shows below the options, by command."""
 
 
 def main(argv: Sequence[str] | None = None) -> int:
@@ -66,7 +121,7 @@ def _plain_text_out() -> None:
 
 def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
-        prog="crosscheck", epilog=EXAMPLES, formatter_class=argparse.RawDescriptionHelpFormatter,
+        prog="crosscheck", epilog=EXAMPLES[""], formatter_class=argparse.RawDescriptionHelpFormatter,
         description="An independent second and third opinion on plane-frame results from somebody else's analysis.",
     )  # fmt: skip
     parser.add_argument("--version", action="version", version=f"crosscheck {__version__}")
@@ -80,17 +135,32 @@ def _parser() -> argparse.ArgumentParser:
     return parser
 
 
+def _command(commands: Any, name: str, says: str) -> argparse.ArgumentParser:
+    made: argparse.ArgumentParser = commands.add_parser(
+        name, help=says, description=f"{says[:1].upper()}{says[1:]}.", epilog=EXAMPLES[name],
+        formatter_class=argparse.RawDescriptionHelpFormatter,
+    )  # fmt: skip
+    return made
+
+
 def _add_frame(command: argparse.ArgumentParser) -> None:
     command.add_argument("frame", metavar="FRAME", help="frame file (TOML)")
     command.add_argument("--variant", metavar="NAME", default="", help="which frame of a [family]")
 
 
+def _add_quiet(command: argparse.ArgumentParser) -> None:
+    command.add_argument("-q", "--quiet", action="store_true", help="print the verdict's line alone")
+
+
 def _add_common(command: argparse.ArgumentParser) -> None:
     _add_frame(command)
+    _add_quiet(command)
     command.add_argument("--case", metavar="NAME", help="one load case or combination only")
     command.add_argument("--axial", choices=("elastic", "rigid"), help="instead of what the frame file says")
     command.add_argument("--shear", choices=("rigid", "elastic"), help="instead of what the frame file says")
     command.add_argument("--order", type=int, choices=(1, 2), help="instead of what the frame file says")
+    command.add_argument("--ask-library", action="store_true", help="ask the library however large the frame is; it "
+                         "abstains from large ones otherwise, because it is slow with them")  # fmt: skip
     command.add_argument("--idealisations", action="store_true", help="axial, shear and order the other way, side by side")
     command.add_argument("--json", metavar="PATH", help="write the findings as JSON (- for standard output alone)")
 
@@ -104,7 +174,7 @@ def _add_report(command: argparse.ArgumentParser) -> None:
 
 
 def _add_opinions(commands: Any) -> None:
-    command = commands.add_parser("opinions", help="three opinions on a frame, and where they disagree")
+    command = _command(commands, "opinions", "three opinions on a frame, and where they disagree")
     _add_common(command)
     command.add_argument("--working", action="store_true", help="print equations and distribution to follow by hand")
     _add_report(command)
@@ -112,7 +182,7 @@ def _add_opinions(commands: Any) -> None:
 
 
 def _add_verify(commands: Any) -> None:
-    command = commands.add_parser("verify", help="a pasted table of results against the opinions")
+    command = _command(commands, "verify", "a pasted table of results against the opinions")
     _add_common(command)
     command.add_argument("claim", metavar="CLAIM", nargs="?", help="file of pasted results, or - for standard input")
     command.add_argument("--tolerance", metavar="PERCENT", help="relative tolerance of the claim in percent (usual: 1)")
@@ -134,8 +204,9 @@ def _add_verify(commands: Any) -> None:
 
 
 def _add_inspect(commands: Any) -> None:
-    command = commands.add_parser("inspect", help="what a reviewer would ask about the model before any results")
+    command = _command(commands, "inspect", "what a reviewer would ask about the model before any results")
     _add_frame(command)
+    _add_quiet(command)
     command.add_argument("--sway", metavar="RATIO", type=float, default=300, help="height over movement (usual: 300)")
     command.add_argument("--deflection", metavar="RATIO", type=float, default=250, help="span over deflection (250)")
     command.add_argument("--critical", metavar="FACTOR", type=float, default=10,
@@ -150,17 +221,19 @@ def _add_inspect(commands: Any) -> None:
 
 
 def _add_record(commands: Any) -> None:
-    command = commands.add_parser("record", help="put today's agreed values on record")
+    command = _command(commands, "record", "put today's agreed values on record")
     command.add_argument("frame", metavar="FRAME", nargs="+", help="frame file, or a folder of them")
     command.add_argument("--reason", required=True, metavar="TEXT", help="why these values go on record")
     command.add_argument("--only", metavar="NAME", help="frames with this in their name (* and ? stand for anything)")
+    command.add_argument("-q", "--quiet", action="store_true", help="say nothing of what went on record")
     command.add_argument("--json", metavar="PATH", help="say what was recorded as JSON (- for stdout)")
     command.set_defaults(run=run_record)
 
 
 def _add_regress(commands: Any) -> None:
-    command = commands.add_parser("regress", help="standard frames against their values on record and their claims")
+    command = _command(commands, "regress", "standard frames against their values on record and their claims")
     command.add_argument("path", metavar="PATH", nargs="*", help="folders or frame files (default: this folder)")
+    _add_quiet(command)
     command.add_argument("--only", metavar="NAME", help="frames with this in their name (* and ? stand for anything)")
     command.add_argument("--changed-since", metavar="REVISION", help="frames changed since a git revision")
     command.add_argument("--against", metavar="DIR", help="another set's values on record instead: what moved between")
@@ -171,7 +244,7 @@ def _add_regress(commands: Any) -> None:
 
 
 def _add_draft(commands: Any) -> None:
-    command = commands.add_parser("draft", help="write a frame file to start from: blank, or a regular grid")
+    command = _command(commands, "draft", "write a frame file to start from: blank, or a regular grid")
     command.add_argument("--bays", metavar="WIDTHS", help='bay widths from the left: "6, 6, 7.5" or "3 x 6 m"')
     command.add_argument("--storeys", metavar="HEIGHTS", help='storey heights from the ground: "4.2, 2 x 3.5 m"')
     command.add_argument("--feet", default="fixed", metavar="WORD", help="column feet: fixed or pinned")
@@ -192,9 +265,11 @@ def run_opinions(args: argparse.Namespace) -> int:
 
     frame = _frame(args)
     filing = _filing(args)
-    result = check.ask(frame, check.chosen_names(frame, args.case))
+    with waiting("asking the opinions"):
+        result = check.ask(frame, check.chosen_names(frame, args.case), args.ask_library)
     if filing is not None:
-        filing.opinions(result)
+        with waiting("writing the record"):
+            filing.opinions(result)
 
     def document() -> dict[str, Any]:
         from crosscheck.report.document import opinions_document
@@ -212,31 +287,16 @@ def run_opinions(args: argparse.Namespace) -> int:
 
 def run_verify(args: argparse.Namespace) -> int:
     """`crosscheck verify FRAME CLAIM`."""
-    from dataclasses import replace
-
     from crosscheck import check
-    from crosscheck.claims import ReadingOptions, read_claim
-    from crosscheck.claims.reading import FrameNames
-    from crosscheck.problems import Problem, UnusableInput
 
-    if args.claim is None and not args.value:
-        advice = "name a file, or - for standard input, or --value"
-        raise UnusableInput([Problem("", None, "CLAIM", "no claim given", advice)])
-    if args.against is not None and (args.against == "-" or args.claim is None):
-        says, advice = "compares two printouts, each a file (the first may be -)", "name CLAIM and --against OTHER"
-        raise UnusableInput([Problem("", None, "--against", says, advice)])
-    if args.report and (args.against is not None or args.suspect is not None or args.show_reading):
-        says, advice = "is of one claim and the frame as stated", "leave out --against, --suspect and --show-reading"
-        raise UnusableInput([Problem("", None, "--report", says, advice)])
+    _refuse_together(args)
     relative = _percent(args.tolerance)
     frame = _frame(args)
     filing = _filing(args)
     if filing is not None:
         filing.ask_for_reason(frame)
-    options = ReadingOptions(
-        units=args.units, columns=_parts(args.columns), file=args.reading, values=tuple(args.value), sheet=args.sheet
-    )
-    reading = read_claim(args.claim, FrameNames.of(frame), options)
+    with waiting("reading the claim"):
+        reading = _reading(args, frame, args.claim, args.value)
     if args.show_reading:
         from crosscheck.claims import show_reading
 
@@ -244,13 +304,16 @@ def run_verify(args: argparse.Namespace) -> int:
             print(row)
         return 0
     if args.against is not None:
-        other = read_claim(args.against, FrameNames.of(frame), replace(options, values=()))
-        return _two_printouts(args, check.compare_printouts(frame, reading, other, args.case, relative))
-    result = check.verify(frame, reading, args.case, relative, every_case=bool(args.json))
-    if args.suspect is not None:
-        result = check.as_suspected(result, args.suspect)
+        return _two_printouts(args, frame, reading, relative, filing)
+    with waiting("asking the opinions and comparing"):
+        stated = check.verify(
+            frame, reading, args.case, relative, every_case=bool(args.json), any_size=args.ask_library
+        )
+        changed = check.as_suspected(stated, args.suspect) if args.suspect is not None else None
     if filing is not None:
-        filing.verification(result, reading)
+        with waiting("writing the record"):
+            filing.verification(stated, reading, args.suspect or 0, changed)
+    result = changed or stated
 
     def document() -> dict[str, Any]:
         from crosscheck.report.document import verification_document
@@ -266,6 +329,31 @@ def run_verify(args: argparse.Namespace) -> int:
     return EXIT[result.verdict]
 
 
+def _refuse_together(args: argparse.Namespace) -> None:
+    """Raises UnusableInput for options of `verify` that cannot stand together, or where there is no claim."""
+    from crosscheck.problems import Problem, UnusableInput
+
+    if args.claim is None and not args.value:
+        advice = "name a file, or - for standard input, or --value"
+        raise UnusableInput([Problem("", None, "CLAIM", "no claim given", advice)])
+    if args.against is not None and (args.against == "-" or args.claim is None):
+        says, advice = "compares two printouts, each a file (the first may be -)", "name CLAIM and --against OTHER"
+        raise UnusableInput([Problem("", None, "--against", says, advice)])
+    if args.report and args.show_reading:
+        says, advice = "is of a comparison, and --show-reading compares nothing", "leave out one of them"
+        raise UnusableInput([Problem("", None, "--report", says, advice)])
+
+
+def _reading(args: argparse.Namespace, frame: Any, path: str | None, values: Sequence[str]) -> Reading:
+    from crosscheck.claims import ReadingOptions, read_claim
+    from crosscheck.claims.reading import FrameNames
+
+    options = ReadingOptions(
+        units=args.units, columns=_parts(args.columns), file=args.reading, values=tuple(values), sheet=args.sheet
+    )
+    return read_claim(path, FrameNames.of(frame), options)
+
+
 def _effects(args: argparse.Namespace, result: Opinions) -> tuple[str, list[RenderableType]]:
     """The line on the critical load factor, and what the idealisation does to the results where that is asked for."""
     from crosscheck import check
@@ -279,8 +367,18 @@ def _effects(args: argparse.Namespace, result: Opinions) -> tuple[str, list[Rend
     return line, [idealisations_table(result.frame, found, key_values(result.frame, found))]
 
 
-def _two_printouts(args: argparse.Namespace, result: TwoPrintouts) -> int:
+def _two_printouts(
+    args: argparse.Namespace, frame: Any, first: Reading, relative: float | None, filing: Any
+) -> int:
     """`crosscheck verify FRAME CLAIM --against OTHER`: 0 nothing moved, 1 something did, 3 undecided."""
+    from crosscheck import check
+
+    second = _reading(args, frame, args.against, ())
+    with waiting("asking the opinions and comparing"):
+        result = check.compare_printouts(frame, first, second, args.case, relative)
+    if filing is not None:
+        with waiting("writing the record"):
+            filing.printouts(result, (first, second))
 
     def document() -> dict[str, Any]:
         from crosscheck.report.printouts import printouts_document
@@ -305,15 +403,17 @@ def run_inspect(args: argparse.Namespace) -> int:
 
     filing = _filing(args)
     limits = Limits(sway=args.sway, deflection=args.deflection, critical=args.critical)
-    subject = subject_of(check.read(args.frame, args.variant), limits)
-    findings = inspect(subject)
+    with waiting("looking at the model"):
+        subject = subject_of(check.read(args.frame, args.variant), limits)
+        findings = inspect(subject)
     if args.echo:
         from crosscheck.review.echo import echoed
 
         findings = graded([*echoed(subject, args.echo), *findings])
     rough = approximations(subject) if args.approximate else None
     if filing is not None:
-        filing.inspection(subject, findings)
+        with waiting("writing the record"):
+            filing.inspection(subject, findings)
 
     def document() -> dict[str, Any]:
         from crosscheck.report.review import review_document
@@ -349,7 +449,7 @@ def run_record(args: argparse.Namespace) -> int:
     for o in outcomes:
         if o.status:
             print("\n".join(f"crosscheck: {line}" for line in o.says), file=sys.stderr)
-        elif args.json != "-":
+        elif args.json != "-" and not args.quiet:
             print(f"on record: {o.standard.record.as_posix()}")
     return max(o.status for o in outcomes)
 
@@ -370,7 +470,8 @@ def run_regress(args: argparse.Namespace) -> int:
         with _progress(len(frames)) as advance:
             outcome = regress.run(frames, roots, advance)
     if filing is not None:
-        filing.suite(outcome)
+        with waiting("writing the records"):
+            filing.suite(outcome)
     if args.junit:
         from crosscheck.files import replace_text
         from crosscheck.report.suite import junit
@@ -485,13 +586,16 @@ def _parts(text: str | None) -> tuple[str, ...]:
 def _give(
     args: argparse.Namespace, document: Callable[[], dict[str, Any]], report: Callable[[], RenderableType]
 ) -> None:
-    """Print the report and write the JSON document; with `--json -` nothing but JSON goes to standard output."""
+    """Print the report and write the JSON document; with `--json -` nothing but JSON goes to standard output, and with
+    --quiet the verdict alone."""
     if args.json:
         _write_json(args.json, document())
     if args.json != "-":
-        from crosscheck.report.terminal import show
+        from crosscheck.report.terminal import headline, show
 
-        show(report())
+        with waiting("setting the report"):
+            text = report()
+        show(headline(text) if args.quiet else text)
 
 
 def _write_json(path: str, document: dict[str, Any]) -> None:
