@@ -62,6 +62,11 @@ def stretches(frame: Frame, table: LoadTable | None = None) -> Stretches:
     inner = np.flatnonzero((member[1:] == member[:-1]) & (x[1:] > x[:-1]))
     member, start, length = member[inner], x[inner], x[inner + 1] - x[inner]
     rank = np.arange(len(member)) - np.searchsorted(member, member)
+    return Stretches(member, start, length, rank, *property_series(frame, member, start, length))
+
+
+def property_series(frame: Frame, member: Ints, start: Floats, length: Floats) -> tuple[Floats, Floats, Floats, Floats]:
+    """(s, TERMS) coefficients of 1/EI, 1/(G As), 1/(EA) and alpha/depth on parts of varying members that no cut divides."""
     t, v = frame.member_table, frame.variation
     row = np.searchsorted(_key(frame, v.member, v.start), _key(frame, member, start + length / 2), side="right") - 1
     run = (v.depth[row, 1] - v.depth[row, 0]) / (v.end - v.start)[row]
@@ -79,15 +84,33 @@ def stretches(frame: Frame, table: LoadTable | None = None) -> Stretches:
         )
     )
     curve = t.alpha[member, None] * _binomial(np.full(len(row), -1.0), growth) / (v.depth[row, 0] * ratio)[:, None]
-    return Stretches(member, start, length, rank, bend, shear, pull, curve)
+    return bend, shear, pull, curve
+
+
+def softest(frame: Frame) -> tuple[Floats, Floats]:
+    """(m,) the largest 1/EI and 1/(G As) on the flexible part of each varying member; 0 of others."""
+    s = stretches(frame)
+    found = np.zeros((2, len(frame.members)))
+    for row, series in zip(found, (s.bend, s.shear), strict=True):
+        np.maximum.at(row, s.member, np.maximum(series[:, 0], series.sum(axis=1)))
+    return found[0], found[1]
+
+
+def property_cuts(frame: Frame) -> tuple[Ints, Floats]:
+    """Members and distances, within the faces, of where pieces meet and where a property has changed enough."""
+    t, v = frame.member_table, frame.variation
+    piece, x = _piece_cuts(frame)
+    member = v.member[piece]
+    inside = (x > t.zone[member, 0]) & (x < (t.length - t.zone[:, 1])[member])
+    return member[inside], x[inside]
 
 
 def _cuts(frame: Frame, table: LoadTable | None) -> tuple[Ints, Floats]:
     """Members and distances of all cuts on the flexible parts, sorted."""
-    t, v = frame.member_table, frame.variation
+    t = frame.member_table
     own = np.flatnonzero(t.varying)
-    piece, x = _piece_cuts(frame)
-    members, places = [own, own, v.member[piece]], [t.zone[own, 0], (t.length - t.zone[:, 1])[own], x]
+    member, x = property_cuts(frame)
+    members, places = [own, own, member], [t.zone[own, 0], (t.length - t.zone[:, 1])[own], x]
     if table is not None:
         marks = np.concatenate([table.point_member, table.line_member, table.line_member])
         on = t.varying[marks]
