@@ -15,9 +15,10 @@ from crosscheck import check
 from crosscheck.claims import FrameNames, read_claim, read_claim_text
 from crosscheck.claims.reading import Reading
 from crosscheck.cli import main
+from crosscheck.suite.beside import frames_below
 from tests.make_cases import CASES, CLAIMS
 
-FRAMES = sorted(path.stem for path in CASES.glob("*.toml") if "." not in path.stem)
+FRAMES = sorted(path.stem for path in frames_below([CASES]))
 FILES = sorted(path.name for path in CASES.glob("*.claim.*"))
 
 

@@ -2,21 +2,26 @@
 
 from __future__ import annotations
 
+import io
 import os
 import re
+import shlex
 import subprocess
 import sys
+import time
 from pathlib import Path
 
 import pytest
 
 from crosscheck import __version__
-from crosscheck.cli import main
+from crosscheck.cli import _parser, main
+from crosscheck.suite.beside import frames_below
+from crosscheck.waiting import WIDTH, waiting
 from tests.calls import CASES, ONE_CASE, PORTAL, Call, call, claim_of, of_case, put
 
 COMMANDS = ("opinions", "verify", "inspect", "record", "regress", "draft")
 CLAIMS = sorted(path.name for path in CASES.glob("*.claim.*"))
-FRAMES = sorted(path for path in CASES.glob("*.toml") if "." not in path.stem)
+FRAMES = list(frames_below([CASES]))
 
 
 def frame_beside(claim: str) -> Path:
@@ -77,6 +82,45 @@ def test_a_suspect_by_number(tmp_path: Path) -> None:
     for number in ("0", "99", "-1"):
         done = call("verify", frame, "-", f"--suspect={number}", stdin=wrong)
         assert done.status == 2 and "--suspect" in done.err
+
+
+def test_quiet_prints_the_verdict_alone(tmp_path: Path) -> None:
+    frame = put(tmp_path, ONE_CASE)
+    for argv in (("opinions", frame), ("verify", frame, put(tmp_path, wrong_claim(frame), "c.csv")), ("inspect", frame)):
+        loud, quiet = call(*argv, width=200), call(*argv, "--quiet", width=200)
+        assert (quiet.status, quiet.err) == (loud.status, loud.err)
+        assert quiet.out.splitlines() == loud.out.splitlines()[:1]
+    assert call("opinions", frame, "--quiet", "--json", "-").document["verdict"] == "agree"
+
+
+class Terminal(io.StringIO):
+    def isatty(self) -> bool:
+        return True
+
+
+def test_what_takes_long_says_so_on_a_terminal_and_wipes_it() -> None:
+    terminal, pipe = Terminal(), io.StringIO()
+    for stream in (terminal, pipe):
+        with waiting("asking the opinions", stream, patience=0.01):
+            time.sleep(0.1)
+    assert "asking the opinions ... 0 s" in terminal.getvalue()
+    assert terminal.getvalue().split("\r")[-2:] == [" " * WIDTH, ""]
+    assert pipe.getvalue() == ""
+    soon = Terminal()
+    with waiting("asking the opinions", soon):
+        pass
+    assert soon.getvalue() == ""
+
+
+def test_help_teaches_by_example(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Every example is one that its command understands."""
+    monkeypatch.chdir(tmp_path)
+    for command in COMMANDS:
+        shown = re.findall(rf"^  (crosscheck {command} .*?)(?:   *[a-z].*)?$", call(command, "--help").out, re.MULTILINE)
+        assert len(shown) >= 2, command
+        for line in shown:
+            given = shlex.split(re.split(r" [<>&]", line)[0])[1:]
+            assert vars(_parser().parse_args(given))["command"] == command, line
 
 
 def test_show_reading_compares_nothing(tmp_path: Path) -> None:

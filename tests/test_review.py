@@ -9,9 +9,10 @@ import pytest
 
 from crosscheck import check
 from crosscheck.review.inspect import CHECKS, explanations, inspect, subject_of
+from crosscheck.suite.beside import frames_below
 from tests.slips import SLIPS, SOUND, Slip, Slipped, every_slip, sound
 
-CASES = sorted(p for p in Path("cases").glob("*.toml") if not p.name.endswith(".record.toml"))
+CASES = list(frames_below([Path("cases")]))
 CORPUS = list(every_slip())
 
 

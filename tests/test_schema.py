@@ -25,6 +25,7 @@ from crosscheck.problems import UnusableInput
 from crosscheck.report.document import dumps, opinions_document, verification_document
 from crosscheck.report.review import review_document
 from crosscheck.review.inspect import inspect, subject_of
+from crosscheck.suite.beside import frames_below
 from tests.random_frames import random_frame_text
 
 CASES = Path(__file__).parent.parent / "cases"
@@ -44,7 +45,7 @@ def faults(validator: Draft202012Validator, data: Any) -> list[str]:
     return [f"{'/'.join(map(str, e.absolute_path))}: {e.message}" for e in validator.iter_errors(data)]
 
 
-@pytest.mark.parametrize("path", sorted(p for p in CASES.glob("*.toml") if p.stem.count(".") == 0), ids=lambda p: p.stem)
+@pytest.mark.parametrize("path", list(frames_below([CASES])), ids=lambda p: p.stem)
 def test_every_demonstration_frame_keeps_the_schema(path: Path) -> None:
     assert faults(FRAME, tomllib.loads(path.read_text(encoding="utf-8"))) == []
 

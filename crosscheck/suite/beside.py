@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import os
 import re
+import tomllib
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
@@ -85,6 +86,20 @@ def is_frame(path: Path) -> bool:
     return path.name.endswith(".toml") and not path.name.endswith(OURS) and not path.name.startswith(".")
 
 
+def is_office_file(path: Path) -> bool:
+    """A file of sections and materials that frames include, and nothing else; one that cannot be read is none."""
+    from crosscheck.frame.include import KEYS
+
+    try:
+        text = path.read_text(encoding="utf-8-sig")
+        if any(word in text for word in ("[joints", "[grid", "[tables", "[members")):
+            return False  # the usual frame, told without parsing
+        data = tomllib.loads(text)
+    except (OSError, ValueError, RecursionError):
+        return False
+    return bool(data.keys() & {"sections", "materials"}) and data.keys() <= {*KEYS}
+
+
 def standards(path: Path) -> list[Standard]:
     """The frames of a file: itself, or every frame of the family that it makes."""
     from crosscheck.frame.reader import variants
@@ -99,6 +114,8 @@ def frames_below(paths: Iterable[Path]) -> Iterator[Path]:
     for path in paths:
         inside = [path] if path.is_file() else [p for p in path.rglob("*.toml") if is_frame(p) and not _hidden(p, path)]
         for p in inside:
+            if path.is_dir() and is_office_file(p):
+                continue
             if p.resolve() not in seen:
                 seen.add(p.resolve())
                 found.append(p)
