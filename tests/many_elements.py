@@ -1,10 +1,10 @@
 """Second order by many short elements: the tests' own check, made of nothing that the opinions are made of.
 
-Every flexible part is cut at its loads and into `parts` elements more; an element has the cubic of first order (with
-shear strain, J. S. Przemieniecki, "Theory of Matrix Structural Analysis", 1968, sections 5.6 and 15.2) and the consistent
-geometric matrix of its own, varying axial force. All unknowns are in one dense matrix; nothing is condensed. The axial
-forces are put in again until they stay. Its error falls with the fourth power of the elements' length, with shear strain
-with the second (the strain is constant in an element).
+Every flexible part is cut at its loads and between them, into `parts` elements or more; an element has the cubic of
+first order (with shear strain, J. S. Przemieniecki, "Theory of Matrix Structural Analysis", 1968, sections 5.6 and 15.2)
+and the consistent geometric matrix of its own, varying axial force. All unknowns are in one dense matrix; nothing is
+condensed. The axial forces are put in again until they stay. Its error falls with the fourth power of the elements'
+length, with shear strain with the second (the strain is constant in an element).
 
 Unknowns: dx, dy and counter-clockwise turn of every joint; for every member the turns of the faces behind hinges and
 springs, and y and turn (local) of the places within.
@@ -53,12 +53,17 @@ class ManyElements:
     def _breaks(self, k: int) -> Floats:
         t, loads = self.t, self.loads
         low, high = t.zone[k, 0], t.length[k] - t.zone[k, 1]
-        x = np.concatenate([
-            np.linspace(low, high, self.parts + 1), loads.point_at[loads.point_member == k],
+        marks = np.concatenate([
+            [low, high], loads.point_at[loads.point_member == k],
             loads.line_start[loads.line_member == k], loads.line_end[loads.line_member == k],
         ])  # fmt: skip
-        x = np.sort(x[(x >= low) & (x <= high)])
-        return x[np.append(True, np.diff(x) > 1e-7 * t.length[k])]
+        marks = np.sort(marks[(marks >= low) & (marks <= high)])
+        marks = marks[np.append(True, np.diff(marks) > 1e-7 * t.length[k])]
+        # Cuts of their own between any two loads: one hard by a load would make an element so short that its stiffness
+        # drowns the others', and where loads act along a member the axial force is in a short part of it alone.
+        cuts = np.ceil(self.parts * np.sqrt(np.diff(marks) / (high - low))).astype(np.int64)
+        inner = [np.linspace(a, b, n + 1)[:-1] for a, b, n in zip(marks[:-1], marks[1:], cuts, strict=True)]
+        return np.concatenate([*inner, marks[-1:]])
 
     def _number(self) -> None:
         self.places = [self._breaks(k) for k in range(len(self.t.length))]

@@ -20,7 +20,7 @@ from crosscheck.frame.model import Floats
 
 LOAD = -1
 """Place of the share of the load."""
-FIRST, LONGEST, SHORTEST = 0.125, 0.25, 1e-7
+FIRST, LONGEST, SHORTEST = 0.2, 0.4, 1e-7
 """Steps of what changes fastest."""
 STEPS = 300
 CLOSE = 1e-7
@@ -34,6 +34,8 @@ ENOUGH = 1e-9
 """Change at which values count as unchanged."""
 WIDE = 0.3
 """Share of a step by which a balance may lie apart from where the step leads."""
+CLOSE_BY = 0.01
+"""So near it may lie in any case: the way may bend sharply."""
 SMALL = 1e-6
 """Change by which it is tried out how answers change."""
 LEAVE = 1e-3
@@ -65,7 +67,7 @@ def gradually(prescribed: Prescribed, first: Floats) -> Greatest:
     for _ in range(STEPS):
         place = LOAD if abs(way[LOAD]) >= _largest(way) else int(np.argmax(np.abs(way)))
         onward = way * (step / abs(way[place]))
-        answer = unchanged(prescribed(place, (here + onward)[place]), here + onward, WIDE * step)
+        answer = unchanged(prescribed(place, (here + onward)[place]), here + onward, max(WIDE * step, CLOSE_BY))
         if answer is None:
             step, grows = step / 2, False
             if step < SHORTEST:
@@ -74,7 +76,7 @@ def gradually(prescribed: Prescribed, first: Floats) -> Greatest:
         ahead, rounds = answer
         if ahead[-1] >= 1.0:
             guess = here + (ahead - here) * ((1.0 - here[-1]) / (ahead[-1] - here[-1]))
-            answer = unchanged(prescribed(LOAD, 1.0), guess, WIDE * step)
+            answer = unchanged(prescribed(LOAD, 1.0), guess, max(WIDE * step, CLOSE_BY))
             if answer is not None:
                 return Greatest(answer[0], True)
             step, grows = step / 2, False

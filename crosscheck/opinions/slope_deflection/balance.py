@@ -32,13 +32,13 @@ ROUNDED = 1e-9
 """Share at which it ends too where a further round no longer halves it."""
 FOLLOWED = 1e-8
 """Share that is enough on the way along the path."""
-NEAR = 0.25
+NEAR = 0.5
 """Largest step of an axial force, as a share of the largest force, for which the path need not be followed."""
 SHRINKING = 0.25
 """Largest ratio of one step to the one before it there."""
 ROUNDS = 12
 ROUNDS_ON_PATH = 6
-LONGEST, FIRST, SHORTEST = 0.25, 0.125, 1e-7
+LONGEST, FIRST, SHORTEST = 0.4, 0.2, 1e-7
 """Steps along the path: share of the load, or of the largest first-order axial force."""
 ASTRAY = 3.0
 """So many steps from where it set out a search is given up."""
