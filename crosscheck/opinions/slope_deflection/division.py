@@ -6,12 +6,13 @@ axis:
 
     M' = V + N v'      V' = w      b' = M/EI + k      (1 + N/(G As)) v' = b - V/(G As)
 
-(Engesser 1891 for the last: shear strain = (V + N v')/(G As)). The solution is a power series in x over the stretch's
-length. Stretches follow one another by transfer, which a very short one cannot spoil; pieces are joined by stiffness, which
-a large axial force cannot spoil. Pieces are short enough that thirty terms leave nothing and that none can buckle
-between clamped ends, so that the signs of the pivots of the whole matrix count every critical load (W. H. Wittrick and
-F. W. Williams, "A general algorithm for computing natural frequencies of elastic structures", Q. J. Mech. Appl. Math. 24
-(1971), 263-284).
+(Engesser 1891 for the last: shear strain = (V + N v')/(G As)). On stretches of stepped and tapered members 1/EI, 1/(G As)
+and k are power series themselves (varying.py), and the EI by which values are scaled is a constant of the member. The
+solution is a power series in x over the stretch's length. Stretches follow one another by transfer, which a very short one
+cannot spoil; pieces are joined by stiffness, which a large axial force cannot spoil. Pieces are short enough that thirty
+terms leave nothing and that none can buckle between clamped ends, so that the signs of the pivots of the whole matrix count
+every critical load (W. H. Wittrick and F. W. Williams, "A general algorithm for computing natural frequencies of elastic
+structures", Q. J. Mech. Appl. Math. 24 (1971), 263-284).
 """
 
 from __future__ import annotations
@@ -24,6 +25,7 @@ from crosscheck.frame.loads import SNAP, LoadTable
 from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.opinions.slope_deflection.members import thermal_curvature
 from crosscheck.opinions.slope_deflection.parting import LoadRuns, SplitLoads, split_loads
+from crosscheck.opinions.slope_deflection.varying import property_cuts, property_series, softest
 
 TERMS = 34
 LONGEST = 1.5
@@ -93,10 +95,12 @@ def _nodes(frame: Frame, runs: LoadRuns, loads: SplitLoads, pulls: Floats) -> tu
     on_stretch = np.abs([pulls[m] + axial for axial, _, _ in _three(runs, m, a, b)]).max(axis=0)
     largest = np.zeros(len(t.length))
     np.maximum.at(largest, m, on_stretch)
-    bend = t.E * t.I
+    bend, soft = 1.0 / (t.E * t.I), 1.0 / (t.G * t.shear_area)
+    if t.varying.any():
+        bend, soft = (np.where(t.varying, own, of) for own, of in zip(softest(frame), (bend, soft), strict=True))
     # With shear flexibility a piece behaves as if its bending stiffness were smaller.
-    soft = bend / (t.G * t.shear_area) if frame.analysis.shear == "elastic" else np.zeros(len(bend))
-    parts = np.ceil(np.sqrt(largest * (t.clear**2 + 10 * soft) / bend) / LONGEST).clip(1).astype(np.int64)
+    more = 10 * soft if frame.analysis.shear == "elastic" else 0.0
+    parts = np.ceil(np.sqrt(largest * (t.clear**2 * bend + more)) / LONGEST).clip(1).astype(np.int64)
     owner = np.repeat(np.arange(len(parts)), parts + 1)
     step = np.arange(len(owner)) - np.repeat(np.cumsum(parts + 1) - (parts + 1), parts + 1)
     x = t.zone[owner, 0] + t.clear[owner] * step / parts[owner]
@@ -105,13 +109,14 @@ def _nodes(frame: Frame, runs: LoadRuns, loads: SplitLoads, pulls: Floats) -> tu
 
 
 def _breaks(frame: Frame, loads: SplitLoads) -> tuple[Ints, Floats]:
-    """Faces, point loads and ends of line loads on the flexible parts, sorted, each once."""
+    """Faces, point loads, ends of line loads and cuts of varying members on the flexible parts, sorted, each once."""
     t = frame.member_table
     every = np.arange(len(t.length))
     points, lines = loads.point_place == 1, loads.line_place == 1
-    member = np.concatenate([every, every, loads.point_member[points], *[loads.line_member[lines]] * 2])
+    cut_member, cuts = property_cuts(frame) if t.varying.any() else (every[:0], t.length[:0])
+    member = np.concatenate([every, every, loads.point_member[points], *[loads.line_member[lines]] * 2, cut_member])
     x = np.concatenate([
-        t.zone[:, 0], t.length - t.zone[:, 1], loads.point_at[points], loads.line_start[lines], loads.line_end[lines],
+        t.zone[:, 0], t.length - t.zone[:, 1], loads.point_at[points], loads.line_start[lines], loads.line_end[lines], cuts,
     ])  # fmt: skip
     order = np.lexsort((x, member))
     member, x = member[order], x[order]
@@ -210,6 +215,9 @@ def pieces(frame: Frame, table: LoadTable, division: Division) -> Pieces:
     load = division.load * (length**3 / bend)[:, None]
     curve = thermal_curvature(frame, table)[m] * length
     series, end_shear = _series(axial, load, curve, soft)
+    own = np.flatnonzero(t.varying[m])
+    if len(own):
+        series[own], end_shear[own] = _varying_series(frame, table, division, own, axial[own], load[own])
     through = series.sum(axis=1)
     through[:, 3] = end_shear
     lead, whole = _joined(division, through, bend)
@@ -304,6 +312,52 @@ def _series(axial: Floats, load: Floats, curve: Floats, soft: Floats) -> tuple[F
         if k == 0:
             series[:, 1, 1, 4] += curve
     return series, shear.sum(axis=1)
+
+
+def _varying_series(
+    frame: Frame, table: LoadTable, division: Division, rows: Ints, axial: Floats, load: Floats
+) -> tuple[Floats, Floats]:
+    """The same as `_series` on the stretches `rows` of varying members, for scaled axial forces and loads."""
+    t, m, length = frame.member_table, division.member[rows], division.length[rows]
+    scale = (t.E * t.I)[m]
+    bend, shear, _, curve = property_series(frame, m, division.start[rows], length)
+    give = bend * scale[:, None]
+    hot = np.where(table.difference[m] != 0.0, table.difference[m] * length, 0.0)
+    curve = np.where(hot[:, None] != 0.0, curve * hot[:, None], 0.0)
+    soft = shear * (scale / length**2)[:, None] if frame.analysis.shear == "elastic" else np.zeros_like(give)
+    lost = _product(soft, axial)
+    force = np.zeros((len(rows), TERMS, 5))
+    force[:, 0, 3] = 1.0
+    force[:, 1, 4], force[:, 2, 4] = load[:, 0], load[:, 1] / 2
+    series = np.zeros((len(rows), TERMS, 4, 5))
+    for k in range(3):
+        series[:, 0, k, k] = 1.0
+    for k in range(TERMS):
+        slope = series[:, k, 1] - _term(soft, force, k) - _term(lost[:, 1:], series[:, :, 3], k - 1)
+        series[:, k, 3] = slope / (1.0 + lost[:, :1])
+        if k + 1 == TERMS:
+            break
+        series[:, k + 1, 0] = series[:, k, 3] / (k + 1)
+        series[:, k + 1, 1] = _term(give, series[:, :, 2], k) / (k + 1)
+        series[:, k + 1, 1, 4] += curve[:, k] / (k + 1)
+        series[:, k + 1, 2] = (force[:, k] + _term(axial, series[:, :, 3], k)) / (k + 1)
+    return series, force.sum(axis=1)
+
+
+def _product(one: Floats, other: Floats) -> Floats:
+    """(s, TERMS) coefficients of a series times a polynomial."""
+    out = np.zeros_like(one)
+    for k, column in enumerate(other.T):
+        out[:, k:] += one[:, : one.shape[1] - k] * column[:, None]
+    return out
+
+
+def _term(factor: Floats, series: Floats, k: int) -> Floats:
+    """(s, 5): the coefficient of xi**k in the product of (s, n) and (s, TERMS, 5)."""
+    last = min(k + 1, factor.shape[1])
+    if last <= 0:
+        return np.zeros((len(factor), series.shape[2]))
+    return np.asarray(np.einsum("sj,sjc->sc", factor[:, :last], series[:, k - last + 1 : k + 1][:, ::-1]))
 
 
 def _stiffness(end: Floats, bend: Floats, length: Floats) -> tuple[Floats, Floats]:
