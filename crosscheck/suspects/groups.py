@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 
 import numpy as np
@@ -131,7 +131,9 @@ def _fit(screen: Screen, group: Group) -> Option | None:
     grid = np.geomspace(*SPAN_OF_FACTORS, COARSE)
     left = screen.left(np.column_stack([delta(float(g)) for g in grid]))
     p = screen.fitted(delta, float(grid[int(np.argmin(np.where(np.isfinite(left), left, np.inf)))]))
-    return _option(screen, group, p, FITTED, 1) if screen.left(delta(p)[:, None])[0] <= 0.5 * screen.total else None
+    if screen.left(delta(p)[:, None])[0] > 0.5 * screen.total:
+        return None
+    return replace(_option(screen, group, p, FITTED, 1), again=(partial(_at, screen.frame, group), p))
 
 
 def _swapped(screen: Screen) -> Iterator[Option]:

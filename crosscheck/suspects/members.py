@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 
 import numpy as np
@@ -53,9 +53,11 @@ def _weigh(screen: Screen, trials: list[_Trial]) -> tuple[Floats, list[Floats]]:
 
 
 def _option(screen: Screen, t: _Trial, actions: list[Floats], fitted: int = 0) -> Option:
-    frame = screen.frame
+    return _plain(screen.frame, t, screen.delta_of(screen.effects.member, t.member, actions), fitted)
+
+
+def _plain(frame: Frame, t: _Trial, delta: Floats | None, fitted: int) -> Option:
     name = list(frame.members)[t.member]
-    delta = screen.delta_of(screen.effects.member, t.member, actions)
     where = (named(frame, "member", name),)
     return Option(t.kind, where, t.says, Change(_change(t, name)), t.cost, delta, fitted=fitted)
 
@@ -120,26 +122,22 @@ def member_fits(screen: Screen) -> Iterator[Option]:
     """EI, EA, both, and the stiffness of either end connection, each fitted for the members that promise most."""
     frame = screen.frame
     least = screen.least(screen.member_grams)
-    t = frame.member_table
-    found: list[tuple[float, _Trial, list[Floats]]] = []
+    found: list[tuple[float, Option]] = []
     for m in np.argsort(least)[:KEPT].tolist():
         if least[m] > max(4.0 * len(screen.residual), 0.1 * screen.total):
             break
         for family in ("EI", "EA", "EI and EA", "from", "to"):
             if "EA" in family and frame.analysis.axial == "rigid":
                 continue
-            end = ("from", "to").index(family) if family in ("from", "to") else -1
-            if end >= 0 and t.turn[m, end] == FREE and t.zone[m, end] == 0 and False:
-                continue
             got = _fit(screen, m, family)
             if got is not None:
                 found.append(got)
-    for _, trial, actions in sorted(found, key=lambda f: f[0]):
-        yield _option(screen, trial, actions, 1)
+    for _, option in sorted(found, key=lambda f: f[0]):
+        yield option
 
 
-def _fit(screen: Screen, m: int, family: str) -> tuple[float, _Trial, list[Floats]] | None:
-    """What is left over, the member change with the factor that fits best, and its actions; None where it fits badly."""
+def _fit(screen: Screen, m: int, family: str) -> tuple[float, Option] | None:
+    """What is left over, and the member change with the factor that fits best; None where it fits badly."""
 
     def trial(p: float) -> _Trial:
         return _member_trial(screen.frame, m, family, p)
@@ -151,9 +149,16 @@ def _fit(screen: Screen, m: int, family: str) -> tuple[float, _Trial, list[Float
     left, _ = _weigh(screen, [trial(float(g)) for g in grid])
     if not np.isfinite(left).any():
         return None
-    found = trial(screen.fitted(delta, float(grid[int(np.argmin(left))])))
-    left, actions = _weigh(screen, [found])
-    return (float(left[0]), found, [a[0] for a in actions]) if left[0] <= 0.5 * screen.total else None
+    p = screen.fitted(delta, float(grid[int(np.argmin(left))]))
+    left, actions = _weigh(screen, [trial(p)])
+    option = _option(screen, trial(p), [a[0] for a in actions], 1)
+    again = (partial(_solved_again, screen.frame, m, family), p)
+    return (float(left[0]), replace(option, again=again)) if left[0] <= 0.5 * screen.total else None
+
+
+def _solved_again(frame: Frame, m: int, family: str, p: float) -> Option:
+    """The same change with another number, not foretold."""
+    return _plain(frame, _member_trial(frame, m, family, p), None, 1)
 
 
 def _member_trial(frame: Frame, m: int, family: str, p: float) -> _Trial:

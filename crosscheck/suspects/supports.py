@@ -108,11 +108,16 @@ def support_fits(screen: Screen) -> Iterator[Option]:
             if fitted is None:
                 continue
             k, delta = fitted
-            label = named(frame, "joint", joint)
-            says = f"{label} {f'gave way along {AXES[axis]}' if axis < 2 else 'turned'} like a spring of {k:.4g}"
-            if own[axis] != HELD:
-                says = f"the {AXES[axis]} spring at {label} had a stiffness of {k:.4g} ({k / own[axis]:.4g} times)"
-            yield _option(frame, joint, np.array(_with(own, axis, k)), says, SPRUNG, delta, 1)
+            at = partial(_sprung, frame, joint, own, axis)
+            yield replace(at(k), delta=delta, again=(at, k))
+
+
+def _sprung(frame: Frame, joint: str, own: tuple[float, float, float], axis: int, k: float) -> Option:
+    label = named(frame, "joint", joint)
+    says = f"{label} {f'gave way along {AXES[axis]}' if axis < 2 else 'turned'} like a spring of {k:.4g}"
+    if own[axis] != HELD:
+        says = f"the {AXES[axis]} spring at {label} had a stiffness of {k:.4g} ({k / own[axis]:.4g} times)"
+    return _option(frame, joint, np.array(_with(own, axis, k)), says, SPRUNG, None, 1)
 
 
 def _fit_spring(

@@ -35,7 +35,8 @@ class Option:
     cost: how unusual the mistake is: 0 for the commonest, 1 for one e times rarer. delta: (n,) what it adds to the
     model's values at the linear places, where foretold; None where the frame must be solved again. claimed, half: (n,)
     the claim's values and half digits where the change is to the claim. fitted: numbers chosen to fit.
-    answer: the results so explained, where no frame has them.
+    answer: the results so explained, where no frame has them. again: what `at` of a number gives the option for that
+    number, and the number it has, where another kind of solution must fit it anew.
     """
 
     kind: str
@@ -48,6 +49,7 @@ class Option:
     half: Floats | None = None
     fitted: int = 0
     answer: Answer | None = None
+    again: tuple[Callable[[float], Option], float] | None = None
 
 
 @dataclass(frozen=True, slots=True)

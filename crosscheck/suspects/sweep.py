@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import partial
+from heapq import nsmallest
 
 import numpy as np
 
@@ -41,13 +42,15 @@ CONFIRMED = 16
 PLACES_UP_TO = 500
 """Members of a frame whose every member, joint and load is weighed: memory goes with the square of them, half a gigabyte
 here. In a larger one only mistakes of the paste, of whole sections and materials and of the whole frame are tried."""
-SLOW_FEW = 6
-"""Options solved again in second order, the most likely by a forecast of first order."""
+MOST_KEPT = 40
+"""Of the mistakes of the paste in a large frame, how many are kept: each holds as many values as the claim."""
+SLOW_FEW, SLOW_FITS = 24, 4
+"""Options solved again, and numbers fitted, in second order: the most likely by a forecast of first order."""
 PROMISE = 0.5
 """A family that leaves more than this share over after two steps is not fitted further."""
-RIVALS = 4.0
-"""Places are searched where the least misfit they can leave is within this factor of rounding, or among the best."""
-PLACES = 6
+RIVALS, MOST_SHARE, STAND_IN_SHARE = 4.0, 0.02, 0.3
+"""Places are searched where the least misfit they can leave is within the first of these times rounding, or within the
+second's share of the whole misfit; the third's where first order stands in for second."""
 SWAY = 0.4
 SWAY_ALONE = {
     1: "the second-order effect of sway was counted, without the members' own",
@@ -86,8 +89,11 @@ class Weighed:
 class Sweep:
     """One observation and everything tried on it."""
 
-    def __init__(self, seen: Observation, closed: ClosedClaim, base: Prepared, answer: Answer) -> None:
-        self.seen, self.closed, self.base, self.answer = seen, closed, base, answer
+    def __init__(
+        self, seen: Observation, closed: ClosedClaim, base: Prepared, answer: Answer, stand_in: bool = False
+    ) -> None:
+        """stand_in: whether it foretells another sweep, that of the same frame in second order."""
+        self.seen, self.closed, self.base, self.answer, self.stand_in = seen, closed, base, answer, stand_in
         self.frame: Frame = seen.frame
         self.screen = Screen(seen, base)
         self.solved = 0
@@ -177,16 +183,16 @@ class Sweep:
         if self.large:
             return self._of_the_whole()
         quick = [self.weigh(o) for o in paste_options(self.seen)]
-        told = self._told(quick)
-        if self.screen.partial or self.slow:
-            # Foretold in part, or to first order: the most likely are solved again.
+        told = [] if self.slow else self._told(quick)
+        if self.screen.partial and not self.slow:
+            # Foretold in part: the most likely are solved again.
             told.sort(key=lambda w: w.rough)
-            told = [w for o in told[: SLOW_FEW if self.slow else 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
+            told = [w for o in told[: 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
         quick += told
         quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
         quick += adjusted(self)
         quick.sort(key=lambda w: w.score)
-        if not (quick and quick[0].fits):
+        if not (quick and quick[0].fits) and not self.stand_in:
             quick += self._solved(other_order(self.frame)) + self._sway_alone()
             quick.sort(key=lambda w: w.score)
         if not self.slow and not (quick and quick[0].fits):
@@ -195,12 +201,34 @@ class Sweep:
                 found = self.fit(family)
                 if found is not None:
                     quick.append(found)
+        if self.slow:
+            quick += self._by_first_order()
         quick.sort(key=lambda w: w.score)
         return quick
 
+    def _by_first_order(self) -> list[Weighed]:
+        """In second order: what explains the same differences from a frame of first order, the most likely solved again,
+        and what has a number fitted anew."""
+        seen = self.seen
+        frame = replace(self.frame, analysis=replace(self.frame.analysis, order=1))
+        base = prepared(frame)
+        answer = base.answer(seen.names)
+        said = seen.read(answer)
+        inner = Sweep(replace(seen, frame=frame, said=said, value=said + seen.residual), self.closed, base, answer, True)
+        ranked = [w.option for w in inner.singles() if w.option.change.frame is not None and w.option.claimed is None]
+        ranked = list({(o.where, o.says): o for o in ranked}.values())[:SLOW_FEW]
+        found = sorted(self._solved(ranked), key=lambda w: w.rough)
+        if not any(w.fits for w in found):
+            for w in found[:SLOW_FITS]:
+                if w.option.again is not None:
+                    at, p = w.option.again
+                    better = self.fit(Family(at, (p, 1.1 * p), p > 0))
+                    found += [better] if better is not None else []
+        return found
+
     def _of_the_whole(self) -> list[Weighed]:
         """Mistakes that are of no one place."""
-        found = [self.weigh(o) for o in paste_options(self.seen)]
+        found = nsmallest(MOST_KEPT, map(self.weigh, paste_options(self.seen)), key=lambda w: w.score)
         found += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
         if not self.slow and not any(w.fits for w in found):
             found += [w for family in large_families(self.frame) if (w := self.fit(family)) is not None]
@@ -288,7 +316,8 @@ class Sweep:
         key = (joints, members)
         if key not in self._least:
             self._least[key] = self.screen.place_left(joints, members)
-        return self._least[key] <= max(RIVALS * len(self.screen.rows), 0.02 * self.screen.total)
+        share = STAND_IN_SHARE if self.stand_in else MOST_SHARE
+        return self._least[key] <= max(RIVALS * len(self.screen.rows), share * self.screen.total)
 
     # --- fitting one number by solving again ---
 
@@ -317,10 +346,11 @@ class Sweep:
         if best is nil:
             return None
         for digits in (2, 3):
-            tidy = self.solve(family.at(float(f"{back(best_at):.{digits}g}")))
+            number = float(f"{back(best_at):.{digits}g}")
+            tidy = self.solve(family.at(number))
             if tidy is not None and (tidy.rough <= max(1.1 * best.rough, 0.75) or (tidy.fits and not best.fits)):
-                return tidy
-        return best
+                return replace(tidy, option=replace(tidy.option, again=(family.at, number)))
+        return replace(best, option=replace(best.option, again=(family.at, back(best_at))))
 
     def _secant(self, points: list[tuple[float, Weighed]]) -> float | None:
         """The next number by Gauss-Newton with the slope between the best two."""
