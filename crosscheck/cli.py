@@ -36,19 +36,19 @@ each command says more, with examples: crosscheck verify --help
     "opinions": """\
 examples:
   crosscheck opinions hall.toml                      every case and combination
-  crosscheck opinions hall.toml --case wind --working    with the equations, by hand
+  crosscheck opinions hall.toml --case wind --working  with the equations
   crosscheck opinions hall.toml --axial rigid        as hand methods have it
-  crosscheck opinions hall.toml --report hall.html   a page to read, sign and file
+  crosscheck opinions hall.toml --report hall.html   a page to read and sign
 exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided
 """,
     "verify": """\
 examples:
-  crosscheck verify hall.toml hall.claim.txt         the claim beside the opinions
+  crosscheck verify hall.toml hall.claim.txt         a claim and the opinions
   crosscheck verify hall.toml - --case wind < mail.txt   pasted, of one case
   crosscheck verify hall.toml --value "B2 max 412 kNm"   one value out of a mail
   crosscheck verify hall.toml r.csv --show-reading   how the table is understood
   crosscheck verify hall.toml r.csv --units "kN mm"  what it does not say itself
-  crosscheck verify hall.toml r.csv --suspect 1      as the first suspect supposes
+  crosscheck verify hall.toml r.csv --suspect 1      as suspect 1 supposes
   crosscheck verify hall.toml new.csv --against old.csv  what moved between two
   crosscheck verify hall.toml r.csv --report hall.pdf --about job="Quay 4"
   crosscheck verify hall.toml r.csv --quiet && echo right    in a script
@@ -73,14 +73,14 @@ examples:
   crosscheck regress frames/                         all of an office's frames
   crosscheck regress --changed-since origin/main     what a change has touched
   crosscheck regress frames/ --report week.html      an overview to look through
-  crosscheck regress frames/ --quiet --junit out.xml in a build
+  crosscheck regress frames/ -q --junit out.xml      in a build
 exit status: 0 all held, 1 anything else, 2 no frame found or none readable
 """,
     "draft": """\
 examples:
-  crosscheck draft > shed.toml                       blank, every table explained
+  crosscheck draft > shed.toml                       blank, with remarks
   crosscheck draft --bays "2 x 6, 7.5" --storeys "4.2, 3.5" --output hall.toml
-  crosscheck draft --bays "20 ft" --storeys "12 ft" --units "kip ft" --feet pinned
+  crosscheck draft --bays "20" --storeys "12" --units "kip ft" --feet pinned
 """,
 }
 """What --help shows below the options, by command."""

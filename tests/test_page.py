@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import html
 import json
 import re
 import shutil
@@ -229,6 +230,73 @@ def test_a_mechanism_has_a_record_of_inspection(folder: Path) -> None:
     assert "NOT FOR ACCEPTANCE" in folder.joinpath("i.html").read_text(encoding="utf-8")
 
 
+def test_what_must_not_be_missed_stands_below_the_verdict(folder: Path) -> None:
+    frame = FRAME + '[loads.wind]\napply = [{ joint = "B", force = 2, direction = "right" }]\n'
+    folder.joinpath("f.toml").write_text(frame, encoding="utf-8")
+    text = verified(folder, "bad.csv", "--case", "dead", "--tolerance", "2")[1]
+    gist = Page(text[text.index('class="facts gist"') : text.index("NOT FOR ACCEPTANCE</b>")]).text
+    for said in ("First difference", "A-B at B, moment in dead: claim", "First suspect", "transcription", "fail",
+                 "2%, NOT the usual 1%", "Not spoken of", "wind: this record says nothing of them"):  # fmt: skip
+        assert said in gist, said
+
+
+def test_the_record_of_a_suspect_is_for_no_acceptance_and_the_log_keeps_what_was_stated(folder: Path) -> None:
+    text = verified(folder, "bad.csv", "--suspect", "1")[1]
+    page = Page(text)
+    assert "Check record, as a suspect supposes" in page.text
+    assert "all below is of the frame and claim so changed" in page.text
+    assert "it supposes a mistake that nobody has confirmed" in page.text
+    assert "NOT FOR ACCEPTANCE" in page.text
+    assert [e.verdict for e in log.read_log(folder / "f.log.jsonl")] == ["disagree"]
+
+
+def test_two_printouts_have_a_record(folder: Path) -> None:
+    status, text = verified(folder, "good.csv", "--against", str(folder / "bad.csv"))
+    page = Page(text)
+    assert status == 1
+    assert re.search(r"<strong>moved</strong>", text)
+    for said in ("MOVED: 1 of the", "Furthest beyond the printed rounding first", "bad.csv", "A-B at B", "Against: "):
+        assert said in page.text, said
+    assert "NOT FOR ACCEPTANCE" in page.text
+    same = verified(folder, "good.csv", "--against", str(folder / "good.csv"))[1]
+    assert "NOT FOR ACCEPTANCE" not in same and "NOTHING MOVED" in same
+
+
+def test_a_serious_finding_stands_in_the_way_of_a_claim_that_agrees(folder: Path) -> None:
+    frame = FRAME.replace("[loads.dead]", '[loads.dead]\nexpected = { down = "900 kN" }')
+    folder.joinpath("f.toml").write_text(frame, encoding="utf-8")
+    status, text = verified(folder, "good.csv")
+    assert status == 0
+    assert "NOT FOR ACCEPTANCE" in text
+    assert "1 serious finding in the model" in Page(text).text
+
+
+def test_printed_input_that_differs_stands_before_the_suspects(folder: Path) -> None:
+    told = "Joint\tX [m]\tY [m]\nA\t0\t0\nB\t0\t4\nC\t6\t4.5\nD\t6\t0\n\nLoad case: dead\n"
+    path = folder / "good.csv"
+    path.write_text(told + path.read_text(encoding="utf-8").replace(",", "\t"), encoding="utf-8")
+    text = verified(folder, "good.csv")[1]
+    page = Page(text)
+    assert "Printed input that differs from the frame" in page.text
+    assert "geometry" in page.text[page.text.index("Facts, not hypotheses.") :]
+    assert "NOT FOR ACCEPTANCE" in page.text
+
+
+def test_all_that_the_week_adds_is_drawn(folder: Path) -> None:
+    deep = '[sections.deep]\nI = "20000 cm^4"\nA = "80 cm^2"\ndepth = "400 mm"\n'
+    cable = 'cable = { from = "A", to = "C", section = "post", material = "steel", hinge = "both", only = "tension" }\n'
+    tie = '[ties]\neaves = { joints = ["B", "C"], direction = "x" }\n'
+    taper = 'taper = ["post", "deep"], material = "steel", hinge'
+    frame = FRAME.replace('section = "post", material = "steel", hinge', taper)
+    frame = frame.replace('A = "53.8 cm^2"', 'A = "53.8 cm^2"\ndepth = "300 mm"')
+    frame = frame.replace("[joints]", f"{deep}[joints]").replace("[supports]", f"{cable}{tie}[supports]")
+    folder.joinpath("f.toml").write_text(frame, encoding="utf-8")
+    assert cli.main(["inspect", str(folder / "f.toml"), "--report", str(folder / "i.html")]) in (0, 1)
+    page = Page(folder.joinpath("i.html").read_text(encoding="utf-8"))
+    for said in ("stepped or tapered", "works in tension only", "tied along it", "tie eaves"):
+        assert said in page.text, said
+
+
 # --- the log
 
 
@@ -265,7 +333,8 @@ def test_a_damaged_log_is_not_written_over(folder: Path) -> None:
     [
         ("--report", "page.txt"),
         ("--report", "nowhere/page.html"),
-        ("--report", "p.html", "--suspect", "1"),
+        ("--report", "p.html", "--suspect", "7"),
+        ("--report", "p.html", "--show-reading"),
         ("--report", "p.html", "--about", "jobb=1"),
     ],
 )
@@ -351,6 +420,29 @@ def test_a_browser_finds_nothing_to_complain_of(folder: Path, browser: str, widt
     dumped = _chromium(browser, folder, f"--window-size={width},900", "--dump-dom", page="probe.html").stdout
     wide, window = re.search(r"<title>(\d+)/(\d+)</title>", dumped).groups()  # type: ignore[union-attr]
     assert int(wide) <= int(window)
+
+
+@pytest.mark.parametrize("millimetres", [177, 183])  # between the margins of A4 and of Letter
+def test_no_table_is_cut_in_print(folder: Path, browser: str, millimetres: int) -> None:
+    """At the width of the paper no table and no text is wider than its place, a table's head comes again on every page, and
+    no row is parted over two."""
+    verified(folder, "bad.csv")
+    text = folder.joinpath("p.html").read_text(encoding="utf-8")
+    text = re.sub(r"<meta http-equiv[^>]*>", "", text).replace("@media print", "@media all")
+    measure = (
+        "<script>const cut = [...document.querySelectorAll('.table, figure, pre, header, dl')].filter(e => e.scrollWidth > "
+        "e.clientWidth + 1).map(e => e.tagName + e.className);"
+        "const is = (q, k, v) => [...document.querySelectorAll(q)].every(e => getComputedStyle(e)[k] == v);"
+        "const kept = is('thead', 'display', 'table-header-group') && is('tr', 'breakInside', 'avoid') && is('figure', "
+        "'breakInside', 'avoid') && is('h2', 'breakAfter', 'avoid');"
+        "document.title = JSON.stringify([cut, kept, document.querySelectorAll('tr').length])</script>"
+    )
+    wide = f"<style>body {{ width: {millimetres}mm; }}</style>"
+    folder.joinpath("probe.html").write_text(text.replace("</body>", wide + measure + "</body>"), encoding="utf-8")
+    dumped = _chromium(browser, folder, "--window-size=1200,900", "--dump-dom", page="probe.html").stdout
+    cut, kept, rows = json.loads(html.unescape(re.search(r"<title>(.*?)</title>", dumped)[1]))  # type: ignore[index]
+    assert cut == []
+    assert kept and rows > 20
 
 
 def test_a_browser_prints_it(folder: Path, browser: str) -> None:

@@ -5,12 +5,12 @@ from __future__ import annotations
 import datetime
 import shlex
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from crosscheck import __version__, log
-from crosscheck.check import Opinions, Verification
+from crosscheck.check import Opinions, TwoPrintouts, Verification
 from crosscheck.claims.reading import Reading
 from crosscheck.files import replace_bytes, replace_text
 from crosscheck.frame.model import Frame
@@ -60,13 +60,26 @@ class Filing:
 
         self._write(opinions_record(result, self._around(result.frame)))
 
-    def verification(self, result: Verification, reading: Reading) -> None:
-        """The record of a check, after its entry in the log."""
+    def verification(
+        self, stated: Verification, reading: Reading, suspect: int = 0, changed: Verification | None = None
+    ) -> None:
+        """The record of a check, after its entry in the log.
+
+        stated: of frame and claim as stated, what the log keeps. changed: as `suspect` (from 1) supposes, where the record
+        is of that.
+        """
         from crosscheck.report.record import verify_record
 
-        frame = result.opinions.frame
-        history = log.append(log.log_path(frame), self._entry(result)) if frame.file else ()
-        self._write(verify_record(result, self._around(frame, reading, history)))
+        frame = stated.opinions.frame
+        history = log.append(log.log_path(frame), self._entry(stated)) if frame.file else ()
+        supposed = f"suspect {suspect}: {stated.suspects[suspect - 1].says}" if changed is not None else ""
+        self._write(verify_record(changed or stated, replace(self._around(frame, reading, history), supposed=supposed)))
+
+    def printouts(self, result: TwoPrintouts, readings: tuple[Reading, Reading]) -> None:
+        from crosscheck.report.printouts_record import printouts_record
+
+        around = self._around(result.first.opinions.frame, readings[0])
+        self._write(printouts_record(result, readings, around))
 
     def inspection(self, subject: Subject, findings: Sequence[Finding]) -> None:
         from crosscheck.report.record import Circumstances, inspect_record
@@ -79,11 +92,11 @@ class Filing:
         from crosscheck.report.suite_record import suite_records
 
         folder = self.path.with_suffix(".frames")
-        overview, pages = suite_records(outcome, Circumstances(self.command, self.when, self.about), folder.name)
-        if self.path.suffix.lower() != PDF:
-            make_folder(folder)
-            for address, record in pages.items():
-                self._write(record, self.path.parent / address)
+        around = Circumstances(self.command, self.when, self.about)
+        overview, pages = suite_records(outcome, around, folder.name, self.path.suffix.lower())
+        make_folder(folder)
+        for address, record in pages.items():
+            self._write(record, self.path.parent / address)
         self._write(overview)
 
     def _entry(self, result: Verification) -> log.Entry:

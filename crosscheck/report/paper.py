@@ -105,6 +105,7 @@ class _Text:
     size: float
     face: Face
     ink: str
+    leads: str = ""
 
 
 @dataclass(slots=True)
@@ -138,6 +139,7 @@ class _Lines(Artist):
             gc.set_foreground(to_rgb(ink))
             for t in self.texts:
                 if t.ink == ink:
+                    gc.set_url(t.leads or None)
                     renderer.draw_text(gc, t.x * POINTS, t.y * POINTS, t.says, t.face.of(t.size), 0.0)
             gc.restore()
 
@@ -167,9 +169,12 @@ class _Setter:
         self._fresh()
         return True
 
-    def _put(self, x: float, says: str, size: float, face: Face = PLAIN, ink: str = INK, right: bool = False) -> None:
+    def _put(
+        self, x: float, says: str, size: float, face: Face = PLAIN, ink: str = INK, right: bool = False, leads: str = ""
+    ) -> None:
         if says:
-            self.page.texts.append(_Text(x - face.width(says, size) if right else x, self.y, says, size, face, ink))
+            left = x - face.width(says, size) if right else x
+            self.page.texts.append(_Text(left, self.y, says, size, face, ink, leads))
 
     def _rule(self, width: float, ink: str = INK, left: float = LEFT, right: float = RIGHT) -> None:
         self.page.rules.append((left, self.y, right, self.y, width, ink))
@@ -305,7 +310,7 @@ class _Setter:
         self._rule(0.4, HAIR, x, x + width)
         for line in wrapped(says, width, 7.5)[:2]:
             self.y -= _step(7.5)
-            self._put(x, line, 7.5)
+            self._put(x, line, 7.5, leads=self.record.link(says))
 
     # --- tables
 
@@ -331,19 +336,21 @@ class _Setter:
             if row[0] == before:  # what a row is of is said once on a page
                 cells[0] = [""]
             before = row[0]
-            self._row(grid, edges, cells, size, PLAIN, extra)
+            self._row(grid, edges, cells, size, PLAIN, extra, self.record.link(row[0]))
         self.y -= 0.1
 
     def _row(
         self, grid: Grid, edges: Sequence[float], cells: Sequence[Sequence[str]], size: float, face: Face,
-        extra: float = 0.0,
+        extra: float = 0.0, leads: str = "",
     ) -> None:  # fmt: skip
+        """leads: where its first cell leads to."""
         top = self.y
         for (_, side), cell, left, right in zip(grid.columns, cells, edges[:-1], edges[1:], strict=True):
             self.y = top
             for line in cell:
                 self.y -= _step(size)
-                self._put(right - GAP if side == "right" else left, line, size, face, right=side == "right")
+                address = leads if left == edges[0] else ""
+                self._put(right - GAP if side == "right" else left, line, size, face, right=side == "right", leads=address)
         self.y = top - max(len(c) for c in cells) * _step(size) - 0.05 - extra
         self._rule(0.8 if face is BOLD else 0.3, INK if face is BOLD else HAIR, right=edges[-1])
         if face is PLAIN:

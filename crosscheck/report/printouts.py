@@ -22,9 +22,9 @@ MOST_PLACES = 6
 def printouts_report(result: TwoPrintouts) -> RenderableType:
     """What `crosscheck verify FRAME CLAIM --against OTHER` prints."""
     moved, frame = result.moved, result.first.opinions.frame
-    parts: list[RenderableType] = [Text(_sentence(result), style=VERDICT_STYLE[moved.verdict])]
+    parts: list[RenderableType] = [Text(printouts_sentence(result), style=VERDICT_STYLE[moved.verdict])]
     parts += [Text(f"  {why}") for why in moved.undecided]
-    parts += [heading("How they were compared"), facts(_facts(result))]
+    parts += [heading("How they were compared"), facts(printouts_facts(result))]
     for case in dict.fromkeys(d.place.case for d in moved.differences):
         parts += _case(frame, case, [d for d in moved.differences if d.place.case == case])
     for name, places in ((FIRST, moved.only_first), (SECOND, moved.only_second)):
@@ -35,7 +35,7 @@ def printouts_report(result: TwoPrintouts) -> RenderableType:
     return Group(*parts)
 
 
-def _sentence(result: TwoPrintouts) -> str:
+def printouts_sentence(result: TwoPrintouts) -> str:
     moved = result.moved
     count = words.counted(moved.compared, "value")
     if moved.verdict == "disagree":
@@ -45,7 +45,7 @@ def _sentence(result: TwoPrintouts) -> str:
     return "UNDECIDED: the two printouts cannot be compared surely enough"
 
 
-def _facts(result: TwoPrintouts) -> list[tuple[str, str]]:
+def printouts_facts(result: TwoPrintouts) -> list[tuple[str, str]]:
     rows = [(name, f"{_file(result, name)}; {_beside(v)}") for name, v in _sides(result)]
     return [*rows, ("allowed", "half a unit of the last printed digit of the one, and of the other; no percentage")]
 

@@ -155,7 +155,8 @@ def _words(block: Block) -> str:
 class Circumstances:
     """What the findings do not hold: how, when and for whom the check was made.
 
-    findings: what the review of the model says. history: the check log, this check last.
+    findings: what the review of the model says. history: the check log, this check last. supposed: what the suspect says
+    whose change the check was made with, "" for frame and claim as stated.
     """
 
     command: str = ""
@@ -164,6 +165,7 @@ class Circumstances:
     findings: tuple[Finding, ...] = ()
     history: tuple[Entry, ...] = ()
     reading: Reading | None = None
+    supposed: str = ""
 
 
 def read_about(given: Iterable[str]) -> dict[str, str]:
@@ -202,7 +204,7 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
     names = [n for n in result.closed.cases if n in opinions.names]
     numbered = _numbered(d for c in result.cases for d in c.differences)
     sections = [
-        _checked(frame, terminal.claim_facts(result), around, opinions.warnings),
+        checked(frame, terminal.claim_facts(result), around, opinions.warnings),
         _drawing(frame, numbered),
         _printed_input(result),
         _suspects(result),
@@ -216,10 +218,13 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
     ]
     sentence = " ".join([terminal.claim_sentence(result), *map(_sentence, terminal.beside(result))])
     questions = [*result.undecided, *opinions.warnings]
-    return _record(
-        "Check record", frame, result.verdict, sentence, _open(result.verdict, around, questions), sections, around,
-        verify_gist(result, numbered, around.history, around.findings),
-    )  # fmt: skip
+    still = _open(result.verdict, around, questions, result.facts)
+    gist = verify_gist(result, numbered, around.history, around.findings)
+    if around.supposed:
+        still = ("it supposes a mistake that nobody has confirmed", *still)
+        gist = (("Supposed", f"{around.supposed}; all below is of the frame and claim so changed"), *gist)
+    title = "Check record, as a suspect supposes" if around.supposed else "Check record"
+    return file_record(title, frame, result.verdict, sentence, still, sections, around, gist)
 
 
 def opinions_record(result: Opinions, around: Circumstances) -> Record:
@@ -227,7 +232,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
     frame = result.frame
     numbered = _own_differences(result)
     sections = [
-        _checked(frame, terminal.opinions_facts(result), around, result.warnings),
+        checked(frame, terminal.opinions_facts(result), around, result.warnings),
         _drawing(frame, numbered),
         _differences(frame, numbered, "Differences between the opinions", claim=False),
         *(_case(result, name, None, numbered) for name in result.names[: _pictured(frame)]),
@@ -235,7 +240,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
         Section("Not compared", (Says(tuple(terminal.undetermined_lines(result)) or ("Nothing was left out.",)),)),
         *_closing(result, around, numbered),
     ]
-    return _record(
+    return file_record(
         "Record of opinions", frame, result.verdict, terminal.opinions_sentence(result),
         _open(result.verdict, around, result.warnings), sections, around,
         opinions_gist(result, numbered, around.findings),
@@ -251,8 +256,8 @@ def inspect_record(subject: Subject, findings: Sequence[Finding], around: Circum
     )
     pictured = list(frame.cases)[: _pictured(frame)] if frame.members else []
     sections = [
-        _checked(frame, terminal.frame_facts(frame), around, frame.warnings),
-        _drawn(frame, [(k, p) for k, f in enumerate(findings, 1) for p in _places(frame, f)]),
+        checked(frame, terminal.frame_facts(frame), around, frame.warnings),
+        drawn(frame, [(k, p) for k, f in enumerate(findings, 1) for p in _places(frame, f)]),
         review_section(findings),
         Section("Loads", (Grid("What each load case adds up to.", (("case", "left"), *_heads(frame, ("fx", "fy"))), totals),
                           *(loads_picture(frame, name) for name in pictured))),
@@ -266,7 +271,7 @@ def inspect_record(subject: Subject, findings: Sequence[Finding], around: Circum
     notes = len(findings) - serious - asked
     sentence = f"{words.counted(asked, 'finding')} to be looked at, {words.counted(notes, 'note')}."
     still = (words.counted(serious, "serious finding"),) if serious else ()
-    return _record("Review of the model", frame, verdict, sentence, still, sections, around)
+    return file_record("Review of the model", frame, verdict, sentence, still, sections, around)
 
 
 def _places(frame: Frame, finding: Finding) -> Iterator[Place]:
@@ -281,7 +286,7 @@ def _places(frame: Frame, finding: Finding) -> Iterator[Place]:
             yield Place("", "spans", "", member=name if name in frame.members else rest)
 
 
-def _record(
+def file_record(
     title: str, frame: Frame, verdict: str, sentence: str, still: tuple[str, ...], sections: Iterable[Section],
     around: Circumstances, gist: tuple[tuple[str, str], ...] = (),
 ) -> Record:  # fmt: skip
@@ -299,9 +304,13 @@ def _sentence(text: str) -> str:
     return f"{text[:1].upper()}{text[1:]}{'' if text.endswith('.') else '.'}"
 
 
-def _open(verdict: str, around: Circumstances, questions: Sequence[str]) -> tuple[str, ...]:
-    """Why the record is not for acceptance: a verdict other than agree, a serious finding, a question left open."""
+def _open(
+    verdict: str, around: Circumstances, questions: Sequence[str], facts: Sequence[Finding] = ()
+) -> tuple[str, ...]:
+    """Why the record is not for acceptance: a verdict other than agree, a serious finding, printed input that differs, a
+    question left open."""
     reasons = [] if verdict == "agree" else [f"the verdict is {verdict}"]
+    reasons += [f"{words.counted(len(facts), 'fact')} of the printed input against the frame"] if facts else []
     serious = sum(f.grade == "serious" for f in around.findings)
     reasons += [words.counted(serious, "serious finding in the model", "serious findings in the model")] if serious else []
     return (*reasons, *(questions if verdict != "agree" else ()))
@@ -323,7 +332,7 @@ def _own_differences(result: Opinions) -> list[tuple[int, Difference]]:
 # --- sections
 
 
-def _checked(
+def checked(
     frame: Frame, facts: Sequence[tuple[str, str]], around: Circumstances, warnings: Sequence[str]
 ) -> Section:
     """What was checked, against what, by which methods and to which tolerance."""
@@ -346,18 +355,20 @@ def _version(package: str) -> str:
 
 
 def _drawing(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Section:
-    return _drawn(frame, [(k, d.place) for k, d in numbered])
+    return drawn(frame, [(k, d.place) for k, d in numbered])
 
 
-def _drawn(frame: Frame, places: Sequence[tuple[int, Place]]) -> Section:
+def drawn(frame: Frame, places: Sequence[tuple[int, Place]]) -> Section:
     named = [n for _, p in places for n in (p.member, p.joint) if n]
     return Section("The frame", (frame_picture(frame, places, named),) if frame.members else ())
 
 
 def _printed_input(result: Verification) -> Section:
     """Facts come before inference: what the other model was given, where the paste prints it."""
-    facts = tuple(_sentence(str(fact)) for fact in result.facts)
-    return Section("Printed input that differs from the frame", (Says(facts),) if facts else ())
+    rows = tuple((f.kind or "-", words.some(f.where) or "-", f.says) for f in result.facts)
+    columns = (("kind", "left"), ("where", "left"), ("what the paste prints", "left"))
+    title = "Printed input that differs from the frame"
+    return Section(title, (Grid("Facts, not hypotheses.", columns, rows),) if rows else ())
 
 
 def _suspects(result: Verification) -> Section:
@@ -589,11 +600,20 @@ def verbatim(frame: Frame, reading: Reading | None) -> Section:
     if frame.file:
         from crosscheck.frame.reader import sources
 
-        blocks += [Verbatim(f"Beside it: {p.name}", _file_lines(p)) for p in sources(Path(frame.file))[1:]]
+        blocks += [_file_beside(path) for path in sources(Path(frame.file))[1:]]
     if reading is not None:
         title = f"Claim: {reading.file or 'text'}"
         blocks.append(Verbatim(title, tuple(t.text.rstrip("\r\n") for t in reading.trace)))
     return Section("Frame and claim, verbatim", tuple(blocks))
+
+
+def _file_beside(path: Path) -> Verbatim:
+    """A table or an office file that the frame was read with, under its checksum."""
+    try:
+        checksum = hashlib.sha256(path.read_bytes()).hexdigest()
+    except OSError:
+        checksum = "unknown"
+    return Verbatim(f"Beside it: {path.name}, sha256 {checksum}", _file_lines(path))
 
 
 def _file_lines(path: Path, sha256: str = "") -> tuple[str, ...]:

@@ -26,10 +26,12 @@ from crosscheck.report.record import (
 from crosscheck.suite.regress import FrameOutcome, SuiteOutcome
 
 
-def suite_records(outcome: SuiteOutcome, around: Circumstances, folder: str) -> tuple[Record, Mapping[str, Record]]:
+def suite_records(
+    outcome: SuiteOutcome, around: Circumstances, folder: str, ending: str = ".html"
+) -> tuple[Record, Mapping[str, Record]]:
     """The overview, and by their addresses below `folder` the records it leads to."""
     frames = [_frame(f) for f in outcome.frames]
-    addresses = [f"{folder}/{k:03d}-{_plain(f.label)}.html" for k, f in enumerate(outcome.frames, 1)]
+    addresses = [f"{folder}/{k:03d}-{_plain(f.label)}{ending}" for k, f in enumerate(outcome.frames, 1)]
     together = zip(addresses, outcome.frames, frames, strict=True)
     pages = {address: _frame_record(f, frame, around) for address, f, frame in together}
     links = {f.label: address for f, address in zip(outcome.frames, addresses, strict=True)}

@@ -49,6 +49,11 @@ def show(report: RenderableType, file: IO[str] | None = None) -> None:
     out.file.write("".join(f"{line.rstrip()}\n" for line in captured.get().splitlines()))
 
 
+def headline(report: RenderableType) -> RenderableType:
+    """The first line of a report: its verdict."""
+    return report.renderables[0] if isinstance(report, Group) else report
+
+
 # --- small parts
 
 
