@@ -9,13 +9,13 @@ import resource
 import signal
 import sys
 import time
+import warnings
 from collections import Counter
 from collections.abc import Callable, Sequence
 from contextlib import redirect_stderr, redirect_stdout
 from dataclasses import dataclass
 from pathlib import Path
 
-import numpy as np
 import pytest
 
 from crosscheck.answer import Answer
@@ -36,6 +36,8 @@ MODULES = {"slope-deflection": slope_deflection, "moment-distribution": moment_d
 BECAME = {
     1: "by comparison", 2: "by comparison, another idealisation", 3: "fell silent, aloud", 5: "not installed",
 }  # fmt: skip
+PLAIN = ("--assert=plain", "-W", "ignore::pytest.PytestAssertRewriteWarning")
+"""The package is imported before pytest sees it, which it warns of."""
 OTHERWISE = 4
 """Frames of cases/ asked under each other idealisation."""
 SURVIVED, DISAGREES, DISAGREES_OTHERWISE, SILENT, FAILED, NOT_INSTALLED = range(6)
@@ -84,6 +86,7 @@ def _otherwise(frame: Frame, kind: str) -> Frame | None:
 
 def compared(room: Room, heard: list[Heard]) -> int:
     """What `crosscheck opinions` makes of the altered opinion: all others as they were."""
+    warnings.simplefilter("ignore")
     for one in heard:
         before = one.found
         if room.opinion not in before.answers:
@@ -109,7 +112,7 @@ def compared(room: Room, heard: list[Heard]) -> int:
 def tested(tests: Sequence[str]) -> int:
     with redirect_stdout(io.StringIO()), redirect_stderr(io.StringIO()):
         for test in tests:
-            status = pytest.main([*test.split(), "-x", "-q", "-p", "no:cacheprovider", "--no-header", "--tb=no"])
+            status = pytest.main([*test.split(), "-x", "-q", "-p", "no:cacheprovider", "--tb=no", *PLAIN])
             if status != 0:
                 return FAILED
     return SURVIVED
@@ -146,7 +149,7 @@ def warm(room: Room) -> None:
     """Import and collect everything once, so that each child finds it done."""
     with redirect_stdout(io.StringIO()), redirect_stderr(io.StringIO()):
         every = dict.fromkeys(test for tests in room.tests.values() for test in tests)
-        pytest.main([*{test.split()[0] for test in every}, "--collect-only", "-q", "-p", "no:cacheprovider"])
+        pytest.main([*{test.split()[0] for test in every}, "--collect-only", "-q", "-p", "no:cacheprovider", *PLAIN])
     exact = sys.modules.get("tests.test_exact")
     for title in exact.FRAMES if exact else ():
         exact.solved(title)  # type: ignore[union-attr]
@@ -191,7 +194,6 @@ def _became(room: Room, heard: list[Heard], mutant: Mutant) -> str:
         install(mutant, ROOT)
         return tested(room.who_notices(Path(mutant.file).stem))
 
-    np.seterr(all="ignore")
     status = in_a_fork(first)
     if status == SURVIVED:
         return "by the tests" if in_a_fork(second) == FAILED else "survived"
