@@ -12,7 +12,7 @@ from __future__ import annotations
 import sys
 from collections import Counter
 from collections.abc import Callable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from random import Random
 from typing import Any
 
@@ -21,9 +21,11 @@ import numpy as np
 from crosscheck.claims.decode import decode
 from crosscheck.claims.read import read_claim_text
 from crosscheck.claims.reading import ReadingOptions
+from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.compare.closing import close
 from crosscheck.compare.differences import worst
 from crosscheck.compare.tolerance import CLAIM
+from crosscheck.problems import UnusableInput
 from crosscheck.review.echo import compared
 from crosscheck.review.finding import Subject
 from tests.pastes_frames import FRAMES, ZONED, known
@@ -632,7 +634,10 @@ class Outcome:
 def judge(paste: Paste) -> Outcome:
     """The verdict on the paste, as `verify` gives it where the opinions agree."""
     k = known(paste.spec.frame)
-    reading = read_claim_text(decode(paste.data), k.names, paste.options)
+    try:
+        reading = read_claim_text(decode(paste.data), k.names, paste.options)
+    except UnusableInput as refused:
+        return Outcome("refused", 0, replace(EMPTY, undecided=(str(refused),)), ())
     closed = close(reading, k.frame, k.answers, paste.case, CLAIM)
     cases = k.comparison.judge(closed)
     facts = [f for f in compared(Subject(k.frame), reading.echo) if f.grade == "serious"] if reading.echo else []
@@ -653,6 +658,7 @@ def _coarse(outcome: Outcome) -> int:
     return sum(1 for c in outcome.comparisons for _, why in c.not_compared)
 
 
+EMPTY = ClosedClaim("", "", 0, (), ())
 PLANTS = ("sign", "tenth", "more", "ten")
 
 

@@ -390,7 +390,7 @@ class _Scanner:
             filled, heads = [c.text for c in wide_cells(text)], [c.text for c in wide_cells(head)]
             if len(filled) < 3 and all(map(self._knows, words := _with_prefixes(text.split()))):  # single blanks
                 filled, heads = words, ["", "", ""]
-        if len(filled) != len(heads) or plain(text) == plain(head) or self._is_units(filled):
+        if len(filled) != len(heads) or len(filled) < 3 or plain(text) == plain(head) or self._is_units(filled):
             return None
         self.table.rows.append((number, text))
         self.table.blocks.append(None)

@@ -16,7 +16,7 @@ _BLANK = re.compile(r"[^\s]+")
 _WIDE = re.compile(r"\S+(?:[ \u00a0]\S+)*")
 _WORD = re.compile(r"\([^()\s]*,\s[^()\s]*\)|[^\s\u00a0]+(?:\u00a0[^\s\u00a0]+)*")
 """A word, or a pair of numbers in brackets."""
-_RULE = re.compile(r"[\s\-=_+*~.|:#\u2500-\u257f\u2014\u2013<>]*")
+_RULE = re.compile(r"[\s\-=_+*~.,;|:#\u2500-\u257f\u2014\u2013<>]*")
 _GROUPED = re.compile(r"(?<=  )[+-]?[1-9]\d{0,2}(?: \d{3})+(?=[.,]\d)")
 
 

@@ -26,6 +26,8 @@ from crosscheck.frame.units import FORCE, LENGTH, MOMENT, Dimension, unit_name
 
 FIXED_BY = 3
 """Values above tolerance that must fix a choice."""
+_NO_CASE = 1_000_000
+"""Counts for the values that do not fit where no case is found at all."""
 _EXTREME = {"max": 1, "min": -1, "size": 0}
 
 
@@ -41,19 +43,26 @@ def close(
         return closer.result((), [], ["no opinion speaks for this frame"])
     entries, notes = _of_case(reading, case)
     ways: list[tuple[int, ClosedClaim]] = []
+    ways_said: list[str] = []
     open_moments = any(open_moment(e) for e in entries)
     for tried, said in variants(entries, frame, reading.face):
         closed = _close_case(closer, tried, [*notes, said] if said else notes, case)
-        # Moments of members are another way than reactions, which at least three values must speak against.
-        if closer.sure(closed) and not (open_moments and ways and ways[0][0] < FIXED_BY):
+        # At least three values must speak against the plain way where another is taken.
+        if closer.sure(closed) and not (ways and ways[0][0] < FIXED_BY):
             return closed
-        ways.append((sum(closer.bad[n] for n in closed.cases), closed))
+        ways.append((sum(closer.bad[n] for n in closed.cases) if closed.cases else _NO_CASE, closed))
+        ways_said.append(said.removesuffix(", by fit"))
     if open_moments:
         return _without_open_moments(closer, entries, notes, case)
     if any(e.comma_open for e in entries):
         reason = "commas may stand before decimals or before thousands; print one number with both marks, or with a point"
         return closer.result((), notes, [reason])
     plain, best = ways[0], min(ways, key=lambda way: way[0])
+    if best[1].cases and best[0] == 0 < plain[0] < FIXED_BY:
+        few = f"{plain[0]} value{'' if plain[0] == 1 else 's'}"
+        tells = "tells" if plain[0] == 1 else "tell"
+        reason = f"it fits where {ways_said[ways.index(best)]}, but only {few} {tells} that; state it"
+        return closer.result(plain[1].cases, notes, [reason])
     # Another way than the plain one must explain at least three values, and most of what does not fit.
     return best[1] if best[1].cases and plain[0] - best[0] >= FIXED_BY and 2 * best[0] < plain[0] else plain[1]
 

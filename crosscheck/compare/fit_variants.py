@@ -22,13 +22,18 @@ Variant = tuple[list[Entry], str]
 
 def variants(entries: list[Entry], frame: Frame, face: bool) -> Iterator[Variant]:
     """The plain way first. face: the paste states that its end values stand at the face."""
+    yield from _other_ways(entries, frame, face)
+    if any(e.comma_open for e in entries):
+        for tried, said in _other_ways([_as_thousands(e) for e in entries], frame, face):
+            yield tried, "; ".join(t for t in ("commas are taken to stand before thousands, by fit", said) if t)
+
+
+def _other_ways(entries: list[Entry], frame: Frame, face: bool) -> Iterator[Variant]:
+    """What does not depend on what commas stand for."""
     plain = at_face(entries, frame) if face else entries
     yield plain, "end values stand at the face of rigid zones, as stated" if face else ""
-    if any(e.comma_open for e in entries):
-        yield [_as_thousands(e) for e in plain], "commas are taken to stand before thousands, by fit"
-        return
     if any(e.axes == "open" and e.kind == "end" for e in entries):
-        turned = in_member_axes(entries, frame)
+        turned = in_member_axes(plain, frame)
         if turned is not None:
             yield turned, "end forces Fx, Fy are in global axes, by fit"
     if any(open_moment(e) for e in entries):

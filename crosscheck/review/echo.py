@@ -129,7 +129,7 @@ def _size_unstated(subject: Subject, facts: Sequence[EchoFact], what: str) -> fl
     def fits(size: float) -> int:
         return sum(isinstance(o, float) and not _difference(frame, f, o, size) for f, o in mine)
 
-    return max((force**force_power * length**length_power for force in forces for length in lengths), key=fits)
+    return max((float(f**force_power * m**length_power) for f in forces for m in lengths), key=fits)
 
 
 def _difference(frame: Frame, fact: EchoFact, ours: float | str, size: float) -> str:
