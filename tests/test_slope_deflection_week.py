@@ -679,3 +679,60 @@ def test_working_shows_carry_over_and_parts_out() -> None:
         ("AE", "works"), ("DB", "out"), ("BF", "works"), ("EC", "works"), ("support D in y", "works"),
         ("support G in y", "out"),
     )  # fmt: skip
+
+
+# --- second order ----------------------------------------------------------------------------------------
+
+LEANING = """
+units = "kN m"
+[materials.m]
+E = "200 GPa"
+[sections.s]
+I = 1e-5
+A = 1e-3
+[joints]
+A = [0, 0]
+B = [0, 3]
+C = [5, 0]
+D = [5, 3]
+[members]
+AB = { from = "A", to = "B", section = "s", material = "m" }
+CD = { from = "C", to = "D", section = "s", material = "m", hinge = "both" }
+[supports]
+A = "fixed"
+C = "pinned"
+[ties]
+top = { joints = ["B", "D"], direction = "x" }
+[loads.push]
+apply = [
+  { joint = "B", force = 100, direction = "down" }, { joint = "D", force = 150, direction = "down" },
+  { joint = "D", force = 4, direction = "right" },
+]
+[analysis]
+order = 2
+axial = "AXIAL"
+"""
+
+
+@pytest.mark.parametrize("axial", ["rigid", "elastic"])
+def test_a_leaning_column_tied_to_a_cantilever(axial: str) -> None:
+    """Cantilever with P at its top, which a hinged column under Q leans against through the tie: with u2 = P h2/EI and
+    g = tan u/u - 1 the top moves by H h g/P / (1 - g Q/P), and the frame buckles where g = P/Q (from the differential
+    equation of the column; S. P. Timoshenko and J. M. Gere 1961 for the cantilever)."""
+    frame = read_frame_text(LEANING.replace("AXIAL", axial))
+    P, Q, H, h, EI = 100.0, 150.0, 4.0, 3.0, 2000.0
+
+    def g(factor: float) -> float:
+        u = np.sqrt(factor * P * h * h / EI)
+        return float(np.tan(u) / u - 1.0)
+
+    case = opinion(frame).cases["push"]
+    top = H * h * g(1.0) / P / (1.0 - g(1.0) * Q / P)
+    np.testing.assert_allclose(case.joints[[1, 3], 0], top, rtol=1e-10)
+    np.testing.assert_allclose(case.reactions[[0, 2], 0], (-(H + Q * top / h), Q * top / h), rtol=1e-10)
+    assert case.reactions[0, 2] == pytest.approx(-(P * top + (H + Q * top / h) * h), rel=1e-10)
+    low, high = 0.1, 0.999 * (np.pi / 2) ** 2 * EI / (P * h * h)
+    for _ in range(60):
+        middle = (low + high) / 2
+        low, high = (middle, high) if g(middle) < P / Q else (low, middle)
+    assert slope_deflection.critical_factors(frame)["push"] == pytest.approx(low, rel=1e-9)

@@ -22,7 +22,7 @@ from crosscheck.frame.model import FREE, HELD, Floats, Frame, Ints
 from crosscheck.opinions.slope_deflection.division import Division, Pieces, divide, pieces
 from crosscheck.opinions.slope_deflection.members import FixedEnds, coefficients, fixed_ends
 from crosscheck.opinions.slope_deflection.parting import LoadRuns
-from crosscheck.opinions.slope_deflection.system import PENALTY, gathered, support_axes
+from crosscheck.opinions.slope_deflection.system import gathered, penalty, support_axes, tie_rows
 
 EXACT = 1e-11
 """Relative width to which a critical load factor is found unless a rougher one will do."""
@@ -41,7 +41,8 @@ class PastCritical(Exception):
 @dataclass(frozen=True, slots=True)
 class State:
     """A solved state: pieces and their displacements, (k, 2) local-y displacement and clockwise rotation of every node,
-    member axial forces (m,) at the face without the fixed-end part, joint displacements (3j,) along support axes."""
+    member axial forces (m,) at the face without the fixed-end part, joint displacements (3j,) along support axes, forces of
+    the ties (t,)."""
 
     division: Division
     pieces: Pieces
@@ -49,6 +50,7 @@ class State:
     axial: Floats
     shift: Floats
     rotations: Floats
+    ties: Floats
 
 
 class CaseInSecondOrder:
@@ -58,9 +60,9 @@ class CaseInSecondOrder:
         self.frame, self.table = frame, table
         k = coefficients(frame)
         self.rigid = np.isnan(k.axial)
-        t = frame.member_table
-        stiffest = float((12 * t.E * t.I / t.clear**3).max())
-        self.stretch_stiffness = np.where(self.rigid, PENALTY * stiffest, k.axial)
+        self.firm = penalty(frame, k.axial)
+        self.stretch_stiffness = np.where(self.rigid, self.firm, k.axial)
+        self.ties = tie_rows(frame)
         self.fixed: FixedEnds = fixed_ends(frame, table, k.stiffness)
         self.axes = support_axes(frame)
         self.runs = LoadRuns(frame, table)
@@ -97,12 +99,13 @@ class CaseInSecondOrder:
         if not self._compressed(pulls) or beyond < BEYOND and not self.buckled(beyond, pulls):
             return float("inf")
         stiff = self._least_factor(pulls, close, beyond)
-        if close > EXACT or not self.rigid.any():
+        if close > EXACT or not (self.rigid.any() or self.frame.ties):
             return stiff
         # A rigid member stands in the pivots as a stiff one, which lowers the factor by as much as it is soft: the limit
         # of no softness follows from two (Richardson).
         softer = copy.copy(self)
-        softer.stretch_stiffness = np.where(self.rigid, self.stretch_stiffness / SOFTER, self.stretch_stiffness)
+        softer.firm = self.firm / SOFTER
+        softer.stretch_stiffness = np.where(self.rigid, softer.firm, self.stretch_stiffness)
         return stiff + (stiff - softer._least_factor(pulls, close, beyond)) / (SOFTER - 1.0)
 
     def _least_factor(self, pulls: Floats, close: float, beyond: float) -> float:
@@ -135,7 +138,8 @@ class CaseInSecondOrder:
         """End actions at the joints on the displaced frame, displacements and reactions."""
         frame = self.frame
         ends = self.end_actions(state)
-        pull = (self.axes @ (gathered(frame, ends) - self.table.joint).ravel()).reshape(-1, 3)
+        pull = self.axes @ (gathered(frame, ends) - self.table.joint).ravel()
+        pull = (pull + self.ties.T @ state.ties).reshape(-1, 3)
         pull[frame.support_table.stiffness == FREE] = 0.0
         reactions = (self.axes.T @ pull.ravel()).reshape(-1, 3)
         joints = (self.axes.T @ state.shift).reshape(-1, 3)
@@ -201,6 +205,12 @@ class Equations:
         return sp.hstack([matrix, sp.csr_matrix((len(m), extra))]).tocsr()
 
     @cached_property
+    def ties(self) -> Sparse:
+        """(t, n): how far tied joints are apart along their tie; its force keeps its direction."""
+        rows = self.case.ties
+        return sp.hstack([rows, sp.csr_matrix((rows.shape[0], self.nodes.shape[1] - rows.shape[1]))]).tocsr()
+
+    @cached_property
     def bending(self) -> Sparse:
         """(n, n): pieces, connections, rigid zones under axial force and support springs."""
         d, k = self.division, self.pieces.stiffness
@@ -230,6 +240,8 @@ class Equations:
     @cached_property
     def reduced(self) -> tuple[Sparse, Ints]:
         matrix = self.bending + self.stretch.T @ sp.diags(self.case.stretch_stiffness) @ self.stretch
+        if self.frame.ties:
+            matrix = matrix + self.case.firm * (self.ties.T @ self.ties)
         used = np.asarray(abs(matrix).sum(axis=0)).ravel() != 0.0
         free = np.flatnonzero(~self.held & used)
         return matrix.tocsc()[free][:, free], free
@@ -278,21 +290,24 @@ class Equations:
         outer = self._loads()
         axial = case.stretch_stiffness * (self.stretch @ shift - case.fixed.stretch)
         stiff, stretch = case.stretch_stiffness, case.fixed.stretch
+        tied = case.firm * (self.ties @ shift)
         last = np.inf
         for _ in range(20):
-            residual = outer - self.bending @ shift - self.stretch.T @ axial
+            residual = outer - self.bending @ shift - self.stretch.T @ axial - self.ties.T @ tied
             step = self.correct(residual)
             shift = shift + step
             axial = axial + stiff * (self.stretch @ step)
+            tied = tied + case.firm * (self.ties @ step)
             size = np.abs(step).max(initial=0.0) / max(np.abs(shift).max(initial=0.0), 1e-300)
             if size <= 1e-15 or (size >= last / 2 and size <= 1e-11):
                 break
             last = size
             left_over = self.stretch @ shift - stretch
             axial = np.where(case.rigid, axial + stiff * left_over, axial)
+            tied = tied + case.firm * (self.ties @ shift)
         joints = 3 * len(self.frame.joints)
         nodes = (self.nodes @ shift).reshape(-1, 2)
-        return State(d, self.pieces, nodes, axial, shift[:joints], shift[2:joints:3])
+        return State(d, self.pieces, nodes, axial, shift[:joints], shift[2:joints:3], tied)
 
     def _loads(self) -> Floats:
         """(n,) generalised forces: joint loads, what zones and along loads bring to the joints, loads on nodes, and the
