@@ -78,7 +78,7 @@ class Results:
 
     @classmethod
     def of(cls, text: str, printing: Printing) -> Results:
-        frame = read_frame_text(text)
+        frame = read_frame_text(text, folder=CASES)
         opinions = ask(frame)
         assert opinions.verdict == "agree"
         return cls(frame, opinions.answers["slope-deflection"], printing)
