@@ -210,6 +210,7 @@ def _claim_part(result: Verification) -> dict[str, Any]:
         "signs": dict(c.signs),
         "not_understood": [{"line": line, "text": text, "why": why} for line, text, why in c.not_understood],
         "coverage": {"compared": sum(k.compared for k in result.cases), "of": sum(k.of for k in result.cases)},
+        "facts": [{"kind": f.kind, "where": list(f.where), "says": f.says} for f in result.facts],
     }
 
 
