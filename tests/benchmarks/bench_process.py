@@ -1,18 +1,17 @@
 """Whole processes: `crosscheck verify` on the largest demonstration frame, and `crosscheck --help`.
 
-Run by `python tests/benchmarks/bench_process.py`. Each is timed in turn with the process that only imports what it
-stands on, the best of several; compiled modules are kept, as after any installation by pip, and the first round (which
-compiles) does not count. Exits 1 where a limit is passed.
+Run by `python -m tests.benchmarks.bench_process`. Processor time of each, in turn with the process that only imports what
+it stands on, the best of several; compiled modules are kept, as after any installation by pip, and the first round
+(which compiles) does not count. Exits 1 where a limit is passed.
 """
 
 from __future__ import annotations
 
 import os
-import subprocess
-import sys
 import tempfile
-import time
 from pathlib import Path
+
+from tests.benchmarks.timing import HEAD, Row, least_spent, show, spent
 
 ROUNDS = 9
 CASES = Path(__file__).parents[2] / "cases"
@@ -32,33 +31,28 @@ def right_claim(name: str) -> Path:
     return next(path for path in sorted(CASES.glob(f"{name}.claim.*")))
 
 
-def seconds(arguments: list[str], environment: dict[str, str]) -> float:
-    start = time.perf_counter()
-    done = subprocess.run([sys.executable, *arguments], env=environment, capture_output=True, check=False)
-    took = time.perf_counter() - start
-    assert done.returncode == 0, done.stderr.decode("utf-8", "replace")
-    return took
-
-
-def compare(one: list[str], other: list[str], environment: dict[str, str]) -> tuple[float, float]:
-    """Best time of each, both run in turn so that neighbours on the machine slow both alike."""
-    times = [(seconds(one, environment), seconds(other, environment)) for _ in range(ROUNDS + 1)][1:]
-    return min(t[0] for t in times), min(t[1] for t in times)
-
-
-def main() -> int:
+def rows() -> list[Row]:
     name = largest_frame()
     with tempfile.TemporaryDirectory() as kept:
         environment = {k: v for k, v in os.environ.items() if k != "PYTHONDONTWRITEBYTECODE"}
         environment |= {"PYTHONPYCACHEPREFIX": kept, "OPENBLAS_NUM_THREADS": "1"}
         verify = ["-m", "crosscheck", "verify", str(CASES / f"{name}.toml"), str(right_claim(name))]
-        rows = [
-            (f"verify {name}", compare(verify, ["-c", IMPORTS], environment), VERIFY_LIMIT),
-            ("--help", compare(["-m", "crosscheck", "--help"], ["-c", HELP_IMPORTS], environment), HELP_LIMIT),
-        ]
-    for title, (mine, imports), limit in rows:
-        print(f"{title:<16}{mine:7.3f} s   imports alone {imports:7.3f} s   ratio {mine / imports:5.2f} (limit {limit:g})")
-    return int(any(mine > limit * imports for _, (mine, imports), limit in rows))
+        commands = {
+            "verify": verify, "imports": ["-c", IMPORTS], "help": ["-m", "crosscheck", "--help"],
+            "help imports": ["-c", HELP_IMPORTS],
+        }  # fmt: skip
+        for words in commands.values():  # compiles
+            spent(words, environment=environment)
+        took = {name: s.processor for name, s in least_spent(commands, ROUNDS, environment=environment).items()}
+    return [
+        Row(f"4  crosscheck verify {name} / bare imports", took["verify"], took["imports"], VERIFY_LIMIT),
+        Row("4  crosscheck --help / its imports", took["help"], took["help imports"], HELP_LIMIT),
+    ]
+
+
+def main() -> int:
+    print(HEAD)
+    return show(rows())
 
 
 if __name__ == "__main__":

@@ -9,16 +9,15 @@ busy with other things the clock says little; processor time, printed beside it,
 
 from __future__ import annotations
 
-import os
 import statistics
-import subprocess
 import sys
 import tempfile
-import time
 from pathlib import Path
 
+from tests.benchmarks.timing import HEAD, Row, Spent, show, spent
+
 FRAMES, SAMPLE = 1000, 10
-LIMIT = 20.0
+LIMIT, FLAT = 20.0, 1.1
 
 FRAME = """\
 title = "Portal {n}"
@@ -60,58 +59,48 @@ def write_frames(folder: Path, count: int) -> None:
         (folder / f"portal{n:04d}.toml").write_text(text, encoding="utf-8")
 
 
-def run(*words: str) -> tuple[float, float]:
-    """Seconds by the clock, and of processor time, of one `crosscheck` command, which must succeed. Processor time is
-    that of the command's own process: a single frame is checked in it."""
-    import resource  # not on Windows, where the frames of this module serve in tests all the same
-
-    start, spent = time.perf_counter(), resource.getrusage(resource.RUSAGE_CHILDREN).ru_utime
-    subprocess.run([sys.executable, "-m", "crosscheck", *words], stdout=subprocess.DEVNULL, check=True)
-    return time.perf_counter() - start, resource.getrusage(resource.RUSAGE_CHILDREN).ru_utime - spent
-
-
 MEMORY = """\
-import resource, sys
+import sys
 from pathlib import Path
 from crosscheck.suite.regress import chosen, run
 frames = chosen([Path(sys.argv[1])])[: int(sys.argv[2])]
 assert run(frames, [], workers=1).exit_status == 0
-used = resource.getrusage(resource.RUSAGE_SELF)
-print(used.ru_maxrss / 1024, used.ru_utime)
 """
 
 
-def one_process(folder: Path, count: int) -> tuple[float, float]:
-    """MB at most, and seconds of processor time, of one process for the first `count` frames."""
-    words = [sys.executable, "-c", MEMORY, str(folder), str(count)]
-    megabytes, seconds = subprocess.run(words, capture_output=True, text=True, check=True).stdout.split()
-    return float(megabytes), float(seconds)
+def one_process(folder: Path, count: int) -> Spent:
+    """What one process took that checked the first `count` frames."""
+    return spent(["-c", MEMORY, str(folder), str(count)])
 
 
-def started_each(folder: Path, numbers: range) -> list[tuple[float, float]]:
-    return [run("regress", str(folder / f"portal{n:04d}.toml")) for n in numbers]
+def started_each(folder: Path, numbers: range) -> list[Spent]:
+    return [spent(["-m", "crosscheck", "regress", str(folder / f"portal{n:04d}.toml")]) for n in numbers]
 
 
-def main() -> None:
-    count = int(sys.argv[1]) if len(sys.argv) > 1 else FRAMES
-    os.environ["OPENBLAS_NUM_THREADS"] = "1"
+def rows(count: int = FRAMES) -> list[Row]:
+    """Ratios by the clock on all cores and by processor time, and memory of a fifth of the frames and of all."""
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         write_frames(folder, count)
-        recording, _ = run("record", str(folder), "--reason", "first issue")
-        print(f"record {count} frames: {recording:.1f} s, {1000 * recording / count:.1f} ms a frame")
+        spent(["-m", "crosscheck", "record", str(folder), "--reason", "first issue"])
         single = started_each(folder, range(SAMPLE // 2))
-        whole, _ = run("regress", str(folder))
+        whole = spent(["-m", "crosscheck", "regress", str(folder)])
         single += started_each(folder, range(SAMPLE // 2, SAMPLE))
-        each, spent = (statistics.median(times) for times in zip(*single, strict=True))
-        print(f"regress {count} frames on {os.cpu_count()} cores: {whole:.1f} s, {1000 * whole / count:.1f} ms a frame")
-        print(f"starting the program for each: {each:.2f} s a frame (median of {len(single)})")
-        print(f"ratio {each * count / whole:.1f} (limit {LIMIT:g})")
-        (few, _), (many, together) = one_process(folder, count // 5), one_process(folder, count)
-        print(f"processor time: {spent:.2f} s a frame started for each, {1000 * together / count:.0f} ms in one run; "
-              f"ratio on two idle cores {2 * spent * count / together:.1f} (limit {LIMIT:g})")  # fmt: skip
-        print(f"memory: {few:.0f} MB for {count // 5} frames, {many:.0f} MB for {count}")
+        few, many = one_process(folder, count // 5), one_process(folder, count)
+    clock = statistics.median(s.clock for s in single) * count
+    processor = statistics.median(s.processor for s in single) * count
+    return [
+        Row(f"   {count:,} frames, the program started for each / one run, by the clock", clock, whole.clock, LIMIT, True),
+        Row("   the same by processor time", processor, whole.processor, LIMIT / 2, True),
+        Row("   the same by processor time of two idle cores", 2 * processor, whole.processor, LIMIT, True),
+        Row(f"   memory for {count:,} frames / for {count // 5:,}", many.megabytes, few.megabytes, FLAT, unit="MB"),
+    ]
+
+
+def main() -> int:
+    print(HEAD)
+    return show(rows(int(sys.argv[1]) if len(sys.argv) > 1 else FRAMES))
 
 
 if __name__ == "__main__":
-    main()
+    raise SystemExit(main())

@@ -4,7 +4,19 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-from crosscheck.frame.model import HELD, Frame, Joint, JointForce, LoadCase, Material, Member, Section, Spread, Support, Units
+from crosscheck.frame.model import (
+    HELD,
+    Frame,
+    Joint,
+    JointForce,
+    LoadCase,
+    Material,
+    Member,
+    Section,
+    Spread,
+    Support,
+    Units,
+)
 
 SIZES = {36: (4, 4), 420: (10, 20), 984: (20, 24), 2050: (20, 50), 10_100: (50, 100), 49_952: (111, 224)}
 """Members: bays and storeys."""
