@@ -112,7 +112,7 @@ def _systems(seen: Observation) -> Iterator[Option]:
     for f, force_words in forces.items():
         for g, length_words in _near(np.exp(length), LENGTH).items():
             factor = f ** power[:, 0] * g ** power[:, 1]
-            words = " and ".join(w for w in (force_words, length_words) if w)
+            words = "; ".join(w for w in (force_words, length_words) if w)
             every = np.arange(len(seen.value))
             yield _replaced(seen, every, seen.value * factor, "units", (), f"all values stand in other units: {words}",
                             UNIT, seen.half * factor)  # fmt: skip

@@ -45,8 +45,9 @@ SINGULAR_CHANGE = 1e-9
 """A change that leaves less than this share of the stiffness makes a mechanism."""
 FOLLOWS = 1e-6
 """Share of an imposed movement that axially rigid members may fail to follow by rounding alone."""
-SWAYS, SETTLED = 300, 1e-11
-"""Most rounds for the effect of sway, and the share of the largest pull by which the last may differ."""
+SWAYS, SETTLED, RUNAWAY = 300, 1e-11, 1e3
+"""Most rounds for the effect of sway, the share of the largest pull by which the last may differ, and how many times the
+first a pull may become: more would be within a thousandth of the critical load."""
 STIFFER = 1e9
 """Stiffness factor that stands for a rigid one when load rotations are parted into what bends and what does not."""
 
@@ -169,7 +170,7 @@ class Prepared:
         """
         tables = [load_table(self.frame, name) for name in names]
         pull = np.zeros((len(self.frame.members), len(names)))
-        reach = 0.0
+        reach, first = 0.0, np.inf
         for _ in range(SWAYS):
             solution = self.system.solve([self._pulled(t, p) for t, p in zip(tables, pull.T, strict=True)])
             new = self._chord_pulls(solution)
@@ -178,7 +179,8 @@ class Prepared:
             pull = new
             if still:
                 return self._swayed(names, tables, solution, pull)
-            if not np.isfinite(reach):
+            first = min(first, reach or np.inf)
+            if reach > RUNAWAY * first:
                 return None
         return None
 
