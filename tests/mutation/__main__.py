@@ -11,7 +11,7 @@ def main(arguments: list[str]) -> int:
         print("this system cannot fork: run it on Linux or macOS")
         return 2
     os.environ["OPENBLAS_NUM_THREADS"] = os.environ["OMP_NUM_THREADS"] = "1"
-    os.nice(10)
+    os.nice(int(os.environ.get("NICE", "10")))
     from tests.mutation.rooms import ROOMS, ROOT
     from tests.mutation.run import examine
 
