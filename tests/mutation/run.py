@@ -55,7 +55,7 @@ class Heard:
 
 
 def demonstrations() -> list[Heard]:
-    """Every frame of cases/ (but the largest) as stated, smallest first; then some with another idealisation that they can stand."""
+    """Frames of cases/ as stated, smallest first; then some with another idealisation that they can stand."""
     recorded = sorted((ROOT / "cases").glob("*.record.toml"))
     frames = [read_frame(p.with_name(p.name.removesuffix(".record.toml") + ".toml")) for p in recorded]
     frames = sorted((f for f in frames if len(f.members) <= MOST), key=lambda f: len(f.members) * len(f.names))
