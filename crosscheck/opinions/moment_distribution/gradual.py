@@ -20,7 +20,7 @@ from crosscheck.frame.model import Floats
 
 LOAD = -1
 """Place of the share of the load."""
-FIRST, LONGEST, SHORTEST = 0.2, 0.4, 1e-7
+FIRST, LONGEST, SHORTEST = 0.125, 0.25, 1e-7
 """Steps of what changes fastest."""
 STEPS = 300
 CLOSE = 1e-7
@@ -36,6 +36,8 @@ WIDE = 0.3
 """Share of a step by which a balance may lie apart from where the step leads."""
 CLOSE_BY = 0.01
 """So near it may lie in any case: the way may bend sharply."""
+BESIDE = 1e-6
+"""Share of a step by which a balance between two may lie outside."""
 SMALL = 1e-6
 """Change by which it is tried out how answers change."""
 LEAVE = 1e-3
@@ -74,19 +76,32 @@ def gradually(prescribed: Prescribed, first: Floats) -> Greatest:
                 break
             continue
         ahead, rounds = answer
-        if ahead[-1] >= 1.0:
-            guess = here + (ahead - here) * ((1.0 - here[-1]) / (ahead[-1] - here[-1]))
-            answer = unchanged(prescribed(LOAD, 1.0), guess, max(WIDE * step, CLOSE_BY))
-            if answer is not None:
-                return Greatest(answer[0], True)
+        falls = ahead[-1] < min(here[-1], 1.0)
+        top = _vertex(prescribed, place, [before, here, ahead]) if falls else ahead
+        if top[-1] >= 1.0:
+            whole = _whole(prescribed, place, here, top, falls)
+            if whole is not None:
+                return Greatest(whole, True)
             step, grows = step / 2, False
             continue
-        if ahead[-1] < here[-1]:
-            return Greatest(_vertex(prescribed, place, [before, here, ahead]), False)
+        if falls:
+            return Greatest(top, False)
         step = min(LONGEST, 1.5 * step) if grows and rounds <= FEW else step
         before, here, grows = here, ahead, True
         way = here - before
     return Greatest(here, False)
+
+
+def _whole(prescribed: Prescribed, place: int, here: Floats, top: Floats, falls: bool) -> Floats | None:
+    """The balance under the whole load between two with less and more; None where none is found there. Towards the greatest
+    load (`falls`) the load grows as a parabola does."""
+    part = (1.0 - here[LOAD]) / (top[LOAD] - here[LOAD])
+    part = 1.0 - float(np.sqrt(1.0 - part)) if falls else part
+    answer = unchanged(prescribed(LOAD, 1.0), here + part * (top - here))
+    if answer is None:
+        return None
+    reached = (answer[0] - here)[place] / (top - here)[place]
+    return answer[0] if -BESIDE <= reached <= 1.0 + BESIDE else None
 
 
 def _vertex(prescribed: Prescribed, place: int, three: list[Floats]) -> Floats:

@@ -42,7 +42,7 @@ VAIN = 8
 """So many repetitions that bring the change no lower are given up."""
 MEMORY = 8
 """Repetitions that the next axial forces are foreseen from."""
-APART = 0.5
+APART = 0.1
 """Change of the axial forces from first order, as a share of them, up to which what settles is sure to be the balance that
 growing load leads to."""
 HALVINGS = 30
