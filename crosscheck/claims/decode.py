@@ -13,6 +13,7 @@ import sys
 from pathlib import Path
 from typing import Literal, NoReturn
 
+from crosscheck.claims.sizes import TooLarge, check_spreadsheet, limited
 from crosscheck.problems import Problem, UnusableInput
 
 SPREADSHEETS = (".xlsx", ".xlsm", ".xls", ".ods")
@@ -70,9 +71,16 @@ def read_source(path_or_dash: str | Path, sheet: str | None = None) -> tuple[str
     """(file as given, SHA-256 of its bytes, text). "-" is standard input. Raises UnusableInput."""
     file = str(path_or_dash)
     try:
-        data = sys.stdin.buffer.read() if file == "-" else Path(file).read_bytes()
-    except OSError as error:
-        refuse(file, f"the claim cannot be opened ({(error.strerror or str(error)).lower()})", "give a readable file")
+        if file == "-":
+            data = limited(sys.stdin.buffer)
+        else:
+            with Path(file).open("rb") as stream:
+                data = limited(stream)
+    except TooLarge as error:
+        refuse(file, f"the claim is {error}", "give the results alone")
+    except (OSError, ValueError) as error:
+        reason = (getattr(error, "strerror", None) or str(error)).lower()
+        refuse(file, f"the claim cannot be opened ({reason})", "give a readable file")
     digest = hashlib.sha256(data).hexdigest()
     if Path(file).suffix.lower() in SPREADSHEETS:
         return file, digest, _spreadsheet(Path(file), sheet)
@@ -83,6 +91,12 @@ def _spreadsheet(path: Path, sheet: str | None) -> str:
     """Every sheet (or the one named) as lines with tabs; the sheet's name stands in a line of its own above."""
     import pandas as pd
 
+    try:
+        check_spreadsheet(path)
+    except TooLarge as error:
+        refuse(str(path), f"the spreadsheet holds {error}", "give the results alone, or save them as .csv")
+    except Exception as error:  # noqa: BLE001 - a damaged archive: whatever zipfile makes of it
+        refuse(str(path), f"the spreadsheet cannot be read ({type(error).__name__})", "save it as .xlsx or .csv")
     engine: Literal["openpyxl"] | None = "openpyxl" if path.suffix.lower() in (".xlsx", ".xlsm") else None
     try:
         sheets = pd.read_excel(path, sheet_name=None, header=None, dtype=object, engine=engine)

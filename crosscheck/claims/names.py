@@ -49,6 +49,14 @@ def _core(name: str) -> str:
     return found.group(1) if found else ""
 
 
+def _last(text: str) -> str:
+    """The last letter or digit: two writings of one name share it, which spares most of a long text a closer look."""
+    for c in reversed(text):
+        if c.isalnum():
+            return c.casefold()[-1]
+    return ""
+
+
 class _Book:
     """Names of one kind under their forgiven writings."""
 
@@ -58,6 +66,7 @@ class _Book:
         self.given = {plain(k): v for k, v in given.items()} | dict(given)
         self.longest = 40 + 2 * max(map(len, (*self.names, *given)), default=0)
         self._found: dict[tuple[str, bool], str | None] = {}
+        self.lasts = {_last(name) for name in (*self.names, *given)}
         self.levels: list[dict[str, list[str]]] = [{}, {}]
         for name in self.names:
             for level, key in enumerate((plain(name), _core(name))):
@@ -67,11 +76,12 @@ class _Book:
     def give(self, given: Mapping[str, str]) -> None:
         """Further writings that stand for names."""
         self.given |= {plain(k): v for k, v in given.items()} | dict(given)
+        self.lasts |= {_last(name) for name in given}
         self._found.clear()
 
     def find(self, text: str, number_alone: bool = True) -> str | None:
         """The one name that `text` may mean, or None. `number_alone`: "3" may mean "m3"."""
-        if len(text) > self.longest:
+        if len(text) > self.longest or _last(text) not in self.lasts and not text[:1].isdigit():
             return None
         key = (text, number_alone)
         if key not in self._found:
@@ -144,6 +154,7 @@ class Names:
         for name, ends in frame.members.items():
             self._between.setdefault(ends, []).append(name)
         self._known: dict[str, MemberHit | None] = {}
+        self._lasts = self._members.lasts | self._joints.lasts
         self._learned: dict[str, MemberHit] = {}
         self._inner: frozenset[str] = frozenset()
         self._other_numbers = False
@@ -154,6 +165,7 @@ class Names:
         # Where joints have other numbers and nothing is said of members, a member's number means nothing either.
         self._other_numbers |= bool(joints) and not members
         self._learned |= {plain(without_prefix(label, "member")): hit for label, hit in members.items()}
+        self._lasts |= self._joints.lasts | {_last(label) for label in members}
         self._inner |= {plain(without_prefix(label, "joint")) for label in inner}
         self._known.clear()
 
@@ -176,7 +188,7 @@ class Names:
         return None
 
     def member(self, text: str) -> MemberHit | None:
-        if len(text) > self._members.longest:
+        if len(text) > self._members.longest or _last(text) not in self._lasts and not text[:1].isdigit():
             return None
         if text not in self._known:
             if len(self._known) > MOST_KEPT:

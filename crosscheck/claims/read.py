@@ -398,30 +398,37 @@ class _Reader:
         station: Role | None,
     ) -> Entry | None:  # fmt: skip
         kind: Kind = "end" if meaning.kind == "ends" else role.kind or meaning.kind  # type: ignore[assignment]
-        entry = Entry(table, line, kind, role.quantity, number, unit, case=place.case, axes=role.axes)
-        if place.member is None:
-            return replace(entry, joint=place.joint)
-        entry = replace(entry, member=place.member.name, run=place.member.run)
+        hit = place.member
+        if hit is None:
+            return Entry(table, line, kind, role.quantity, number, unit, joint=place.joint, case=place.case, axes=role.axes)
         if kind == "end":
             spot = role.end if role.end is not None else place.place
-            if place.member.part is not None:
-                return self._of_part(entry, spot, place.member)
-            return _joined(replace(entry, end=place.end, place=spot), self.names)
-        if kind == "extreme" and place.member.part is not None:
+            end, spot, run = _joined(place.end, spot, hit.run) if hit.part is None else (None, spot, hit.run)
+            joint = None if end is None else self.names.frame.members[hit.name][end]
+            entry = Entry(
+                table, line, kind, role.quantity, number, unit, hit.name, joint, end, spot, run, case=place.case,
+                axes=role.axes,
+            )  # fmt: skip
+            return entry if hit.part is None else self._of_part(entry, spot, hit)
+        if kind == "extreme" and hit.part is not None:
             raise _Misread("the largest value of a part of a member is not that of the member")
         if kind == "extreme":
-            return replace(entry, extreme=role.which or place.which or "size")
+            which = role.which or place.which or "size"
+            return Entry(
+                table, line, kind, role.quantity, number, unit, hit.name, run=hit.run, case=place.case, extreme=which,
+                axes=role.axes,
+            )  # fmt: skip
         assert place.at is not None and station is not None
-        unit = station.unit or (None if station.share else self.stated.unit("station"))
+        at_unit = station.unit or (None if station.share else self.stated.unit("station"))
         percent = 0.01 if station.share and "%" in (place.at.tail + str(station.unit)) else 1.0
-        at, half = place.at.value * percent, place.at.half * percent
-        entry = replace(entry, at=at, at_unit=unit, at_share=station.share, at_half=half)
-        if place.member.part is not None:
-            start, end = place.member.part
-            if isnan(start) or isnan(end):
-                raise _Misread("it is not said where in its member this part lies")
-            entry = replace(entry, origin=start, reach=abs(end - start))
-        return entry
+        start, stop = hit.part or (None, None)
+        if start is not None and stop is not None and (isnan(start) or isnan(stop)):
+            raise _Misread("it is not said where in its member this part lies")
+        return Entry(
+            table, line, kind, role.quantity, number, unit, hit.name, run=hit.run, case=place.case, axes=role.axes,
+            at=place.at.value * percent, at_half=place.at.half * percent, at_unit=at_unit, at_share=station.share,
+            origin=start, reach=None if start is None or stop is None else abs(stop - start),
+        )  # fmt: skip
 
     def _of_part(self, entry: Entry, spot: int | None, hit: MemberHit) -> Entry | None:
         """An end value of a part: of the member's own end, or of a place inside it."""
@@ -445,17 +452,15 @@ def _suits(unit: Size, quantity: str) -> bool:
     return unit.dimension == dimension_of(quantity) or (quantity == "rotation" and unit.dimension == Dimension())
 
 
-def _joined(entry: Entry, names: Names) -> Entry:
-    """The frame's end and the paste's, one from the other where the paste says which way its member runs."""
-    if entry.run and entry.end is None and entry.place is not None:
-        entry = replace(entry, end=entry.place if entry.run > 0 else 1 - entry.place)
-    elif entry.run and entry.place is None and entry.end is not None:
-        entry = replace(entry, place=entry.end if entry.run > 0 else 1 - entry.end)
-    elif not entry.run and entry.end is not None and entry.place is not None:
-        entry = replace(entry, run=1 if entry.end == entry.place else -1)
-    if entry.end is not None and entry.member:
-        entry = replace(entry, joint=names.frame.members[entry.member][entry.end])
-    return entry
+def _joined(end: int | None, place: int | None, run: int) -> tuple[int | None, int | None, int]:
+    """The frame's end, the paste's and the run, each from the others where the paste says two of them."""
+    if run and end is None and place is not None:
+        return (place if run > 0 else 1 - place), place, run
+    if run and place is None and end is not None:
+        return end, (end if run > 0 else 1 - end), run
+    if not run and end is not None and place is not None:
+        return end, place, 1 if end == place else -1
+    return end, place, run
 
 
 def _in_order(entries: list[Entry]) -> list[Entry]:

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass, field
+from functools import lru_cache
 
 from crosscheck.claims.names import MemberHit, Names, plain, without_prefix
 from crosscheck.claims.numbers import is_blank, parse_number
@@ -44,6 +45,8 @@ _TELLING = re.compile(
     r"case|comb|lc|load|result|unit|positive|negative|kn|kip|\bin\b|mm|reaction|displ|force|moment|member|joint|node",
     re.IGNORECASE,
 )
+_DIGIT = re.compile(r"\d")
+_WORDS = re.compile(r"[\s,;:.()]+")
 _SPOILT = re.compile(r"\d|\*\*|##|^#|^[+-]?(?:inf|infinity|overflow)$", re.IGNORECASE)
 """What is left of a number that was printed too wide, divided by zero or mistyped."""
 _DATE = re.compile(
@@ -79,6 +82,7 @@ class Scan:
     expect: str = ""
 
 
+@lru_cache(maxsize=256)  # a line is asked for once as itself, and again as the row above the next
 def cells_of(line: str) -> tuple[Separator, list[Cell]]:
     """The line's separator and cells; units put to their numbers."""
     separator = separator_of(line)
@@ -113,6 +117,7 @@ def _with_prefixes(words: list[str]) -> list[str]:
     return out
 
 
+@lru_cache(maxsize=64)
 def _joins(head: str) -> bool:
     """Do the heads say which joints members join, and nothing of results?"""
     separator, cells = cells_of(head)
@@ -125,10 +130,10 @@ def _joins(head: str) -> bool:
 
 def is_prose(text: str) -> bool:
     """A line of many words and no figures that says nothing of columns, cases, units or signs."""
-    if len(text) < 25 or any(c.isdigit() for c in text) or "\t" in text or "|" in text:
+    if len(text) < 25 or "\t" in text or "|" in text or _DIGIT.search(text) or _TELLING.search(text):
         return False
-    words = re.split(r"[\s,;:.()]+", text.lower())
-    return len(words) > 5 and not _TELLING.search(text) and sum(is_header_word(w) for w in words) < 2
+    words = _WORDS.split(text.lower())
+    return len(words) > 5 and sum(map(is_header_word, words)) < 2
 
 
 def is_number(text: str) -> bool:

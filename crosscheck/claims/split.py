@@ -13,6 +13,7 @@ Separator = Literal["tab", "bar", "semicolon", "comma", "blank"]
 _MARK = {"tab": "\t", "bar": "|", "semicolon": ";", "comma": ","}
 _BAR = str.maketrans({"\u2502": "|", "\u2503": "|", "\u2551": "|", "\u00a6": "|"})
 _BLANK = re.compile(r"[^\s]+")
+_DIGIT = re.compile(r"\d")
 _WIDE = re.compile(r"\S+(?:[ \u00a0]\S+)*")
 _WORD = re.compile(r"\([^()\s]*,\s[^()\s]*\)|[^\s\u00a0]+(?:\u00a0[^\s\u00a0]+)*")
 """A word, or a pair of numbers in brackets."""
@@ -76,7 +77,7 @@ def split(line: str, separator: Separator, grouped: bool = True) -> list[Cell]:
         line = line.translate(_BAR).replace("|", " ")
         if grouped and "  " in line.strip():  # only where wider gaps part the cells can one blank part thousands
             line = _GROUPED.sub(lambda m: m.group().replace(" ", "\u00a0"), line)
-        return [Cell(m.start(), m.end(), m.group()) for m in _WORD.finditer(line)]
+        return [Cell(*m.span(), m.group()) for m in _WORD.finditer(line)]
     if separator == "bar":
         body = line.translate(_BAR).strip()
         framed = body.startswith("|") and body.endswith("|") and len(body) > 1
@@ -104,7 +105,7 @@ def join_units(cells: list[Cell]) -> list[Cell]:
     out: list[Cell] = []
     for cell in cells:
         last = out[-1] if out else None
-        if last and cell.start - last.end <= 1 and _takes_unit(last.text, cell.text):
+        if last and _DIGIT.search(last.text) and cell.start - last.end <= 1 and _takes_unit(last.text, cell.text):
             out[-1] = Cell(last.start, cell.end, f"{last.text} {cell.text}")
         else:
             out.append(cell)

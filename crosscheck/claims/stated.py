@@ -71,6 +71,8 @@ def stated_in(scan: Scan) -> Stated:
     out = Stated()
     for _, text in [*scan.headings, *scan.remarks]:
         short = text[:500]
+        if not _STATING.search(short):
+            continue
         for pattern, quantity, sense in _SENSES:
             if re.search(pattern, short, re.IGNORECASE):
                 out.signs.setdefault(quantity, sense)
@@ -78,6 +80,13 @@ def stated_in(scan: Scan) -> Stated:
     return out
 
 
+_STATING = re.compile(
+    r"positive|negative|[+=\-\[(]|\bunits?\b|reaction|support|foundation|"
+    r"forces?|moments?|shear|axial|displacements?|deflections?|translations?|rotations?|lengths?|distances?|station|"
+    r"\b(?:fx|fy|dx|dy|across)\b",
+    re.IGNORECASE,
+)
+"""Without any of these words a line states neither units nor signs."""
 _FACE = re.compile(
     r"\b(?:at|to) (?:the )?faces?\b|\bface of (?:the )?(?:supports?|columns?|joints?|walls?)\b", re.IGNORECASE
 )

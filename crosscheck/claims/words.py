@@ -278,6 +278,7 @@ def _from_symbol(text: str, token: str) -> Head:
 NUMBERED_AXIS = _NUMBERED_AXIS
 
 
+@lru_cache(maxsize=16384)
 def is_header_word(text: str) -> bool:
     """Does the cell say what stands below it?"""
     head = head_of(text)
