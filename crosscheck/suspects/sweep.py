@@ -196,15 +196,17 @@ class Sweep:
             quick += self._solved(other_order(self.frame)) + self._sway_alone()
             quick.sort(key=lambda w: w.score)
         if not self.slow and not (quick and quick[0].fits):
-            quick += self._solved(self._near_geometry())
-            for family in (*large_families(self.frame), *self._near_families()):
-                found = self.fit(family)
-                if found is not None:
-                    quick.append(found)
+            # What whole sections and materials explain is found soonest, and then nothing is looked for near places.
+            quick += self._fitted(large_families(self.frame))
+            if not any(w.fits for w in quick):
+                quick += self._solved(self._near_geometry()) + self._fitted(self._near_families())
         if self.slow:
             quick += self._by_first_order()
         quick.sort(key=lambda w: w.score)
         return quick
+
+    def _fitted(self, families: Iterable[Family]) -> list[Weighed]:
+        return [w for family in families if (w := self.fit(family)) is not None]
 
     def _by_first_order(self) -> list[Weighed]:
         """In second order: what explains the same differences from a frame of first order, the most likely solved again,
@@ -231,7 +233,7 @@ class Sweep:
         found = nsmallest(MOST_KEPT, map(self.weigh, paste_options(self.seen)), key=lambda w: w.score)
         found += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
         if not self.slow and not any(w.fits for w in found):
-            found += [w for family in large_families(self.frame) if (w := self.fit(family)) is not None]
+            found += self._fitted(large_families(self.frame))
         return sorted(found, key=lambda w: w.score)
 
     def _told(self, already: list[Weighed]) -> list[Weighed]:
@@ -331,30 +333,35 @@ class Sweep:
         nil = self.weigh(Option("", (), "", family.at(family.starts[0]).change, 0.0))
         points = [(0.0, nil), *((float(at(p)), w) for p, w in tried)]
         points.sort(key=lambda pw: pw[1].rough)
+        last = points[0]
         for turn in range(7):
-            step = self._secant(points)
+            step = self._secant(points, last)
             if step is None or (turn == 2 and points[0][1].rough > np.sqrt(PROMISE) * nil.rough):
                 break
             found = self.solve(family.at(back(step)))
             if found is None:
                 break
-            points.append((step, found))
+            last = (step, found)
+            points.append(last)
             points.sort(key=lambda pw: pw[1].rough)
             if points[0][1].fits and points[0][1].rough < 1.0:
                 break
         best_at, best = points[0]
         if best is nil:
             return None
-        for digits in (2, 3):
+        for digits in (2, 3, 4):
             number = float(f"{back(best_at):.{digits}g}")
             tidy = self.solve(family.at(number))
-            if tidy is not None and (tidy.rough <= max(1.1 * best.rough, 0.75) or (tidy.fits and not best.fits)):
+            # A rounder number must not cost the fit of a single value.
+            if tidy is not None and (tidy.fits or (not best.fits and tidy.rough <= max(1.1 * best.rough, 0.75))):
                 return replace(tidy, option=replace(tidy.option, again=(family.at, number)))
         return replace(best, option=replace(best.option, again=(family.at, back(best_at))))
 
-    def _secant(self, points: list[tuple[float, Weighed]]) -> float | None:
-        """The next number by Gauss-Newton with the slope between the best two."""
-        (a, one), (b, two) = points[0], min(points[1:], key=lambda pw: abs(pw[0] - points[0][0]))
+    def _secant(self, points: list[tuple[float, Weighed]], last: tuple[float, Weighed]) -> float | None:
+        """The next number by Gauss-Newton, with the slope from the best to the last where that was worse, else to the
+        nearest."""
+        a, one = points[0]
+        b, two = min(points[1:], key=lambda pw: abs(pw[0] - a)) if last is points[0] else last
         if a == b:
             return None
         w = 1 / self.seen.noise
