@@ -2,7 +2,8 @@
 
 Each repetition takes the axial forces as known, distributes on the frame that they soften or stiffen, and finds the
 axial forces that the displaced frame has. Where these go is foreseen from how the last few repetitions answered
-(D. G. Anderson 1965). The first repetition takes those of first order.
+(D. G. Anderson 1965). The first repetition takes those of first order. Where they change much from there the load is
+brought on gradually instead (gradual.py), so that the answer is the balance that growing load leads to.
 """
 
 from __future__ import annotations

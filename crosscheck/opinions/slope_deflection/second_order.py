@@ -1,8 +1,8 @@
 """Second order: equilibrium on the displaced frame, one case at a time.
 
 The same joint equations, with every member divided into pieces whose slope-deflection coefficients know the axial force
-(division.py). Division points have an equation of moments and one of forces across, as joints have. Axial forces are those
-of the solution before, until they no longer change. The critical load factor scales the first-order axial forces in
+(division.py). Division points have an equation of moments and one of forces across, as joints have. Here axial forces are
+taken as known; balance.py finds those that come out as they were put in. The critical load factor scales the first-order axial forces in
 proportion; the pivots of the whole matrix count how many critical loads lie below a factor (Wittrick and Williams 1971).
 """
 
@@ -137,9 +137,7 @@ class CaseInSecondOrder:
     def case_answer(self, state: State, undetermined: Undetermined) -> CaseAnswer:
         """End actions at the joints on the displaced frame, displacements and reactions."""
         frame = self.frame
-        ends = self.end_actions(state)
-        pull = self.axes @ (gathered(frame, ends) - self.table.joint).ravel()
-        pull = (pull + self.ties.T @ state.ties).reshape(-1, 3)
+        ends, pull = self.end_actions(state), self.held(state)
         pull[frame.support_table.stiffness == FREE] = 0.0
         reactions = (self.axes.T @ pull.ravel()).reshape(-1, 3)
         joints = (self.axes.T @ state.shift).reshape(-1, 3)
@@ -147,6 +145,11 @@ class CaseInSecondOrder:
         joints[undetermined.joints] = np.nan
         reactions[undetermined.reactions] = np.nan
         return CaseAnswer(ends, joints, reactions)
+
+    def held(self, state: State) -> Floats:
+        """(j, 3) what holds each joint along its support's axes; rounding where nothing does."""
+        pull = self.axes @ (gathered(self.frame, self.end_actions(state)) - self.table.joint).ravel()
+        return np.asarray((pull + self.ties.T @ state.ties).reshape(-1, 3))
 
     def end_actions(self, state: State) -> Floats:
         """(m, 2, 3): the pieces at the faces, less loads there, then the statics of the displaced rigid zones."""
