@@ -46,6 +46,8 @@ MOST_KEPT = 40
 """Of the mistakes of the paste in a large frame, how many are kept: each holds as many values as the claim."""
 SLOW_FEW, SLOW_FITS = 24, 4
 """Options solved again, and numbers fitted, in second order: the most likely by a forecast of first order."""
+TURNS = 14
+"""Most steps of a fit that solves again."""
 PROMISE = 0.5
 """A family that leaves more than this share over after two steps is not fitted further."""
 RIVALS, MOST_SHARE, STAND_IN_SHARE = 4.0, 0.02, 0.3
@@ -334,7 +336,7 @@ class Sweep:
         points = [(0.0, nil), *((float(at(p)), w) for p, w in tried)]
         points.sort(key=lambda pw: pw[1].rough)
         last = points[0]
-        for turn in range(7):
+        for turn in range(TURNS):
             step = self._secant(points, last)
             if step is None or (turn == 2 and points[0][1].rough > np.sqrt(PROMISE) * nil.rough):
                 break
