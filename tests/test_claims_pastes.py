@@ -11,6 +11,7 @@ import pytest
 
 from tests.claim_frame import BENT, Known, bent
 from tests.pastes import Tally, known, make, number
+from tests.pastes_undecided import RECIPES, pastes, verdict
 
 SAMPLE = 45
 
@@ -77,6 +78,17 @@ def test_too_few_values_for_another_unit(count: int) -> None:
     verdict, closed, _ = k.judge("Load case: dead\nDisplacements\nJoint\tdx\n" + "\n".join(rows))
     assert verdict == "undecided"
     assert any("--units" in why for why in closed.undecided)
+
+
+@pytest.mark.parametrize("name", sorted(RECIPES))
+def test_pastes_that_leave_a_choice_open_are_undecided(name: str) -> None:
+    """Every recipe on five of the thirty frames, or on all of them with CROSSCHECK_PASTES."""
+    frames = range(30) if "CROSSCHECK_PASTES" in os.environ else range(2, 30, 6 if name != "two cases fit" else 5)
+    made = [(k, text) for k, text in pastes(name, frames)]
+    assert made
+    for k, text in made:
+        found, why = verdict(known(k), text)
+        assert found == "undecided", (k, why)
 
 
 # --- the sign of few values beside signs that others fix
