@@ -44,8 +44,9 @@ PLACES_UP_TO = 500
 here. In a larger one only mistakes of the paste, of whole sections and materials and of the whole frame are tried."""
 MOST_KEPT = 40
 """Of the mistakes of the paste in a large frame, how many are kept: each holds as many values as the claim."""
-SLOW_FEW, SLOW_FITS = 24, 4
-"""Options solved again, and numbers fitted, in second order: the most likely by a forecast of first order."""
+SLOW_FEW, SLOW_FITS, SLOW_PLACES = 24, 4, 2
+"""Options solved again, and numbers fitted, in second order: the most likely by a forecast of first order; and the places
+of which all is tried."""
 TURNS = 14
 """Most steps of a fit that solves again."""
 PROMISE = 0.5
@@ -220,8 +221,11 @@ class Sweep:
         said = seen.read(answer)
         inner = Sweep(replace(seen, frame=frame, said=said, value=said + seen.residual), self.closed, base, answer, True)
         ranked = [w.option for w in inner.singles() if w.option.change.frame is not None and w.option.claimed is None]
-        ranked = list({(o.where, o.says): o for o in ranked}.values())[:SLOW_FEW]
-        found = sorted(self._solved(ranked), key=lambda w: w.rough)
+        ranked = list({(o.where, o.says): o for o in ranked}.values())
+        # What softens a frame near its critical load does far more than first order foretells.
+        places = {o.where for o in ranked[:SLOW_PLACES]}
+        beside = [o for o in ranked[SLOW_FEW:] if o.where in places and not o.fitted][:SLOW_FEW]
+        found = sorted(self._solved([*ranked[:SLOW_FEW], *beside]), key=lambda w: w.rough)
         if not any(w.fits for w in found):
             for w in found[:SLOW_FITS]:
                 if w.option.again is not None:
