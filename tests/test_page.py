@@ -437,11 +437,15 @@ def test_no_table_is_cut_in_print(folder: Path, browser: str, millimetres: int) 
         "'breakInside', 'avoid') && is('h2', 'breakAfter', 'avoid');"
         "document.title = JSON.stringify([cut, kept, document.querySelectorAll('tr').length])</script>"
     )
-    wide = f"<style>body {{ width: {millimetres}mm; }}</style>"
-    folder.joinpath("probe.html").write_text(text.replace("</body>", wide + measure + "</body>"), encoding="utf-8")
-    dumped = _chromium(browser, folder, "--window-size=1200,900", "--dump-dom", page="probe.html").stdout
-    cut, kept, rows = json.loads(html.unescape(re.search(r"<title>(.*?)</title>", dumped)[1]))  # type: ignore[index]
+    found = []
+    for width in (millimetres, 40):  # nothing fits 40 mm: the measure can fail
+        wide = f"<style>body {{ width: {width}mm; }}</style>"
+        folder.joinpath("probe.html").write_text(text.replace("</body>", wide + measure + "</body>"), encoding="utf-8")
+        dumped = _chromium(browser, folder, "--window-size=1200,900", "--dump-dom", page="probe.html").stdout
+        found.append(json.loads(html.unescape(re.search(r"<title>(.*?)</title>", dumped)[1])))  # type: ignore[index]
+    (cut, kept, rows), (narrow, _, _) = found
     assert cut == []
+    assert narrow
     assert kept and rows > 20
 
 

@@ -16,7 +16,7 @@ from crosscheck.compare.claimed import ClaimedValue
 from crosscheck.compare.differences import Place
 from crosscheck.compare.opinions import with_turning_points
 from crosscheck.frame.loads import load_table
-from crosscheck.frame.model import FREE, Floats, Frame, Ints
+from crosscheck.frame.model import FREE, HELD, Floats, Frame, Ints
 from crosscheck.frame.stations import stations
 from crosscheck.report import words
 from crosscheck.report.sketch import GREY, HALF, NAMED, RING, UNIT, Sketch
@@ -24,6 +24,8 @@ from crosscheck.report.sketch import GREY, HALF, NAMED, RING, UNIT, Sketch
 COLUMN = {"moment": MOMENT, "shear": SHEAR, "axial": AXIAL}
 TALL = 2.6
 """Units that the largest value of a diagram is drawn."""
+BEYOND = 2.5
+"""Of the opinions' largest value: further than that no claimed one is drawn, lest the opinions shrink to nothing."""
 NUMBERED = 40
 """Most ringed numbers in one drawing."""
 
@@ -69,6 +71,8 @@ def _legend(frame: Frame) -> str:
         "open ring: hinge": bool((ends == FREE).any()),
         "barred ring: semi-rigid end": bool((ends != FREE).any()),
         "thick: rigid zone": bool((t.zone > 0).any()),
+        "zigzag: spring": any(v not in (FREE, HELD) for s in frame.supports.values() for v in (s.x, s.y)),
+        "spiral: spring against turning": any(s.rotation not in (FREE, HELD) for s in frame.supports.values()),
         "outlined: stepped or tapered, depths to a scale of the member's own": any(m.pieces for m in members),
         "arrow heads apart: works in tension only": any(m.only == "tension" for m in members),
         "arrow heads together: works in compression only": any(m.only == "compression" for m in members),
@@ -125,6 +129,9 @@ class CasePictures:
         value = self.along[:, column]
         peak = float(np.abs(value[np.isfinite(value)]).max(initial=0.0))
         claimed = self._claimed_ends(quantity)
+        most = BEYOND * peak if peak else max((abs(v) for v in claimed.values()), default=0.0)
+        beyond = any(abs(v) > most for v in claimed.values())
+        claimed = {place: min(max(v, -most), most) for place, v in claimed.items()}
         peak = max([peak, *(abs(v) for v in claimed.values())])
         # Moment on the tension side: a sagging one stretches the local -y face.
         scale = (-1.0 if quantity == "moment" else 1.0) * TALL * sketch.unit / (peak or 1.0)
@@ -135,7 +142,8 @@ class CasePictures:
         places = [(k, p) for k, p in self.marked if p.quantity == quantity and p.member]
         rest = _ring(sketch, places)
         says = f"{quantity} of {self.name} on the frame {frame.title}"
-        return Picture(sketch, self._caption(quantity, drawn, rest), says)
+        far = f" Claimed values beyond {BEYOND:g} times the largest of the opinions are drawn there." if beyond else ""
+        return Picture(sketch, self._caption(quantity, drawn, rest) + far, says)
 
     def _opinions(self, sketch: Sketch, value: Floats, scale: float, peak: float) -> None:
         outlines, ribs = [], []

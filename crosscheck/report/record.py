@@ -210,7 +210,7 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
         _suspects(result),
         _differences(frame, numbered, "Differences between the claim and the opinions", claim=True),
         _differences(frame, _own_differences(opinions), "Differences between the opinions", claim=False),
-        Section("Audit of the claim", tuple(b for audit in result.audits for b in _audit(frame, audit))),
+        Section("Audit of the claim", _audits(frame, result.audits)),
         *(_case(opinions, name, result, numbered) for name in names[: _pictured(frame)]),
         *_tables(opinions, names),
         Section("Not compared", (Says(tuple(terminal.not_compared_lines(result)) or ("Nothing was left out.",)),)),
@@ -419,6 +419,14 @@ def _own_grid(numbered: Sequence[tuple[int, Difference]]) -> Grid:
     columns = (("no.", "right"), ("case", "left"), ("place", "left"), ("quantity", "left"), *((n, "right") for n in names),
                ("differ by", "right"), ("allowed", "right"), ("disposition, initials", "left"))  # fmt: skip
     return Grid("Worst first.", columns, rows, (len(columns) - 1,))
+
+
+def _audits(frame: Frame, audits: Sequence[CaseAudit]) -> tuple[Block, ...]:
+    """Every case of which something could be judged, and in one sentence those of which nothing could."""
+    silent = [a.case for a in audits if a.compatibility is None and all(s.ok is None for s in a.statics)]
+    says = f"The claim does not give enough to judge statics or compatibility of {words.some(silent)}."
+    blocks = [b for audit in audits if audit.case not in silent for b in _audit(frame, audit)]
+    return (*blocks, *([Says((says,))] if silent else []))
 
 
 def _audit(frame: Frame, audit: CaseAudit) -> list[Block]:

@@ -269,16 +269,17 @@ class Sketch:
         if held[2] == HELD and HELD in held[:2]:
             out = self._snapped(away)
             self._wall(self.xy[k], out, 1.1)
-        elif held[0] != FREE and held[1] != FREE:
+        elif held[0] == HELD and held[1] == HELD:
             self._foot(self.xy[k], -own[1] if away @ -own[1] > -0.5 else own[1], rolls=False)
         else:
             for axis in (0, 1):
-                if held[axis] != FREE:
-                    self._foot(self.xy[k], -own[axis] if away @ -own[axis] > -0.5 else own[axis], rolls=True)
-        for axis, name in enumerate(("x", "y", "turn")):
-            if held[axis] not in (HELD, FREE):
-                out = self._snapped(away)
-                self.text(self.xy[k] + self.unit * (1.5 + 0.8 * axis) * out, f"spring {name}", 6.5, slant="italic")
+                out = -own[axis] if away @ -own[axis] > -0.5 else own[axis]
+                if held[axis] == HELD:
+                    self._foot(self.xy[k], out, rolls=True)
+                elif held[axis] != FREE:
+                    self._coil(self.xy[k], out)
+        if held[2] not in (HELD, FREE):
+            self._spiral(self.xy[k])
 
     def _outward(self, k: int) -> Floats:
         """A unit vector away from the members at a joint; down where they leave no side free."""
@@ -299,32 +300,57 @@ class Sketch:
         side = np.array([-out[1], out[0]])
         u = self.unit
         self.lines([[at - half * u * side, at + half * u * side]], 1.4)
+        corners = np.stack([at - half * u * side, at + half * u * side + 0.42 * u * out])
+        self._boxes.append(np.stack([corners.min(axis=0), corners.max(axis=0)]))
         ticks = [at + u * (f * side) for f in np.linspace(-half + 0.2, half, 6)]
         self.lines([[p, p + u * (0.42 * out - 0.3 * side)] for p in ticks], 0.6)
 
     def _foot(self, at: Floats, out: Floats, rolls: bool) -> None:
         side, u = np.array([-out[1], out[0]]), self.unit
         base = at + 0.95 * u * out
-        self.area([at, base - 0.6 * u * side, base + 0.6 * u * side], "white", width=1.0)
+        corners = np.stack([at, base - 0.6 * u * side, base + 0.6 * u * side])
+        self.area(corners, "white", width=1.0)
+        self._boxes.append(np.stack([corners.min(axis=0), corners.max(axis=0)]))
         self._wall(base + (0.28 * u * out if rolls else 0.0), out, 0.9)
+
+    def _coil(self, at: Floats, out: Floats) -> None:
+        """A spring that pushes and pulls along `out`, and what it stands on."""
+        side, u = np.array([-out[1], out[0]]), self.unit
+        turns = [(0.25 + 0.12 * k, (0.28, -0.28)[k % 2]) for k in range(6)]
+        path = [at, at + 0.2 * u * out, *(at + u * (a * out + b * side) for a, b in turns), at + 0.95 * u * out,
+                at + 1.1 * u * out]  # fmt: skip
+        self.lines([path], 0.9)
+        self._wall(at + 1.1 * u * out, out, 0.7)
+
+    def _spiral(self, at: Floats) -> None:
+        """A spring that resists turning."""
+        turn = np.linspace(-0.5 * math.pi, 3.0 * math.pi, 60)
+        grow = self.unit * np.linspace(0.2, 0.62, 60)
+        self.lines([at + np.column_stack([grow * np.cos(turn), grow * np.sin(turn)])], 0.8)
 
     def names(self, marked: Sequence[str] = ()) -> None:
         """Joints upright beside them, members in italics along them; only what is marked in a large frame."""
         for k, joint in enumerate(self.frame.joints):
             if self.small or joint in marked:
-                out = self._free_side(k)
-                if joint in self.frame.supports:  # clear of the support's own sign
-                    out = out + np.array([0.45, 0.55]) * np.sign(out + 1e-9)
-                self.text(self.xy[k] + 0.95 * self.unit * out, joint, 7.5, weight="bold")
+                self.text(self._clear(k, joint), joint, 7.5, weight="bold")
         for m, name in enumerate(self.frame.members):
             if self.small or name in marked:
                 self.beside(m, 0.5, name)
+
+    def _clear(self, k: int, says: str) -> Floats:
+        """Where a joint's name stands: in the widest gap between its members, else where it is on nothing else."""
+        out = self._free_side(k)
+        turns = [math.radians(t) for t in (0, 25, -25, 50, -50, 90, -90, 130, -130, 180)]
+        ways = [np.array([[math.cos(t), -math.sin(t)], [math.sin(t), math.cos(t)]]) @ out for t in turns]
+        spots = [self.xy[k] + far * self.unit * way for far in (0.95, 1.4) for way in ways]
+        return next((s for s in spots if not self.crossed(s, says, 9.0)), spots[0])
 
     def beside(self, m: int, share: float, says: str, side: float = 1.0, size: float = 6.8) -> None:
         """Words along a member, upright for the reader, on its left (or right) hand."""
         t = self.table
         turn = math.degrees(math.atan2(t.sin[m], t.cos[m]))
-        at = self.along(m, share * t.length[m], side * 0.5 * self.unit)
+        deep = bool(list(self.frame.members.values())[m].pieces)
+        at = self.along(m, share * t.length[m], side * (0.85 if deep else 0.5) * self.unit)
         readable = turn - 180 if turn > 90.001 else turn + 180 if turn <= -90.001 else turn
         self.text(at, says, size, readable, ink=GREY, slant="italic")
 
@@ -432,7 +458,9 @@ class Sketch:
                 tail = at - 2.0 * self.unit * way
                 self.lines([[tail, at]], 1.2)
                 self._head(at, way, 0.45)
-                self.text(tail - 0.45 * self.unit * way, words.number(size), 7.0)
+                says, side = words.number(size), np.array([-way[1], way[0]])
+                spots = [tail - self.unit * (a * way - b * side) for a, b in ((0.45, 0), (1.1, 0), (0, 1.5), (0, -1.5))]
+                self.text(next((s for s in spots if not self.crossed(s, says, 7.0)), spots[0]), says, 7.0)
             if couple:
                 self._arc(at, float(couple))
 

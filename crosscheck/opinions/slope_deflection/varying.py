@@ -92,7 +92,8 @@ def softest(frame: Frame) -> tuple[Floats, Floats]:
     s = stretches(frame)
     found = np.zeros((2, len(frame.members)))
     for row, series in zip(found, (s.bend, s.shear), strict=True):
-        np.maximum.at(row, s.member, np.maximum(series[:, 0], series.sum(axis=1)))
+        with np.errstate(invalid="ignore"):  # a property that no section states
+            np.maximum.at(row, s.member, np.maximum(series[:, 0], series.sum(axis=1)))
     return found[0], found[1]
 
 
