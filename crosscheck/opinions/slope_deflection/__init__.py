@@ -14,7 +14,8 @@ Minnesota Studies in Engineering 1 (1915); textbook accounts of the slope-deflec
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
+from typing import TYPE_CHECKING
 
 from crosscheck.answer import Answer, Silent, WorkTable
 from crosscheck.frame.kinematics import Study
@@ -22,6 +23,9 @@ from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Frame
 from crosscheck.opinions.slope_deflection.spans import ClosedFormSpans
 from crosscheck.opinions.slope_deflection.system import System
+
+if TYPE_CHECKING:
+    from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder, State
 
 NAME = "slope-deflection"
 GIVEN_UP = 1e-9
@@ -74,22 +78,36 @@ def _one_way(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer | Sil
 
 def _second_order(frame: Frame, study: Study, names: tuple[str, ...]) -> Answer:
     """Case by case, because the stiffness knows the axial forces; a case past its critical load is named, not given."""
-    from crosscheck.opinions.slope_deflection.balance import balance
     from crosscheck.opinions.slope_deflection.displaced_spans import DisplacedSpans
-    from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder, PastCritical
 
     tables, cases, states, silent = {}, {}, {}, {}
-    for name in names:
-        table = load_table(frame, name)
-        case = CaseInSecondOrder(frame, table)
-        try:
-            states[name] = balance(case)
-        except PastCritical as past:
-            silent[name] = str(past)
+    for name, found in _balanced(frame, names):
+        if isinstance(found, str):
+            silent[name] = found
             continue
-        tables[name] = table
+        case, states[name] = found
+        tables[name] = case.table
         cases[name] = case.case_answer(states[name], study.undetermined)
     return Answer(NAME, cases, study.undetermined, DisplacedSpans(frame, tables, cases, states), silent)
+
+
+def _balanced(frame: Frame, names: tuple[str, ...]) -> Iterator[tuple[str, tuple[CaseInSecondOrder, State] | str]]:
+    """Every case with its balance on the displaced frame, or why it has none."""
+    from crosscheck.opinions.slope_deflection.balance import balance
+    from crosscheck.opinions.slope_deflection.displaced_one_way import DisplacedOneWay
+    from crosscheck.opinions.slope_deflection.one_way import OneWay
+    from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder, PastCritical
+
+    one_way = DisplacedOneWay(OneWay(frame)) if frame.one_way else None
+    for name in names:
+        if one_way is not None:
+            yield name, one_way.settled(name)
+            continue
+        case = CaseInSecondOrder(frame, load_table(frame, name))
+        try:
+            yield name, (case, balance(case))
+        except PastCritical as past:
+            yield name, str(past)
 
 
 def critical_factors(frame: Frame, names: Sequence[str] | None = None, beyond: float | None = None) -> dict[str, float]:
@@ -97,13 +115,19 @@ def critical_factors(frame: Frame, names: Sequence[str] | None = None, beyond: f
     frame or a member in it buckles; inf where nothing is compressed enough.
 
     beyond: where given, factors above it are inf as well and those below are found to three digits, which is quick.
+    A frame with one-way parts has those of the state that each case settles in; a case that settles in none is left out.
     """
+    from crosscheck.opinions.slope_deflection.one_way import OneWay
     from crosscheck.opinions.slope_deflection.second_order import BEYOND, EXACT, CaseInSecondOrder
 
     names = frame.names if names is None else tuple(names)
+    one_way = OneWay(frame) if frame.one_way else None
     factors = {}
     for name in names:
-        case = CaseInSecondOrder(frame, load_table(frame, name))
+        settled = one_way.settled(name) if one_way else None
+        if one_way and settled is None:
+            continue
+        case = CaseInSecondOrder(settled.frame if settled else frame, load_table(frame, name))
         close, most = (EXACT, BEYOND) if beyond is None else (THREE_DIGITS, beyond)
         factors[name] = case.critical_factor(case.first_order(), close, most)
     return factors

@@ -35,7 +35,7 @@ NOTHING = 1e-11
 FREE_PIVOT = 1e-13
 """A pivot below this share of its own diagonal entry is a movement without resistance."""
 FURTHER = 20
-"""States tried beyond the first, and as many again for every part."""
+"""States tried for every part, and once as many more."""
 MOST = 8
 """Parts named where no state was found."""
 NONE_FOUND = "no settled state of the one-way members and supports was found"
@@ -111,10 +111,10 @@ class OneWay:
     def settled(self, name: str) -> Settled | None:
         """The state that case `name` settles in; None where none was found."""
         table = load_table(self.frame, name)
-        return search(self._first(table), lambda out: self._judged(table, out))
+        return search(self.first(table), lambda out: self._judged(table, out))
 
     def _judged(self, table: LoadTable, out: Bools) -> tuple[Settled, Bools] | None:
-        system = self._system(out)
+        system = self.system(out)
         if system is None:
             return None
         found = Settled(system.frame, system, system.solve([table]), out)
@@ -124,16 +124,16 @@ class OneWay:
 
     # --- the first guess: complementary pivoting
 
-    def _first(self, table: LoadTable) -> Bools:
+    def first(self, table: LoadTable) -> Bools:
         """Which parts the linear complementarity problem takes out; none where it has no solution."""
         none = np.zeros(len(self.parts), dtype=bool)
         still = self.whole.solve([table])
-        forces, _, scale, reach = self._measured(still)
+        forces, _, scale, size = self._measured(still)
         forces = np.where(np.abs(forces) <= NOISE * scale, 0.0, forces)
         gaps = complementary(self.influence, forces)
         if gaps is None:
             return none
-        return np.asarray(gaps > NOISE * max(reach, float(gaps.max(initial=0.0))))
+        return np.asarray(gaps > NOISE * max(size, float(gaps.max(initial=0.0))))
 
     @cached_property
     def influence(self) -> Floats:
@@ -153,33 +153,35 @@ class OneWay:
     # --- what a solution says of the parts
 
     def _forces(self, solution: Solution, k: int) -> Floats:
-        """(parts,) force of each in the sense in which it works."""
-        pull = reactions(solution, k)
-        return np.array([
-            part.sense * (solution.forces[part.member, 2, k] if part.member >= 0 else pull[part.joint, part.axis])
-            for part in self.parts
-        ])  # fmt: skip
+        return self.working(solution.forces[:, 2, k], reactions(solution, k))
 
     def _measured(self, solution: Solution) -> tuple[Floats, Floats, float, float]:
-        """Forces and gaps (parts,) in the sense in which each part works or lets go, and the scales of both."""
-        t, table = self.frame.member_table, solution.tables[0]
-        shift = solution.shift[:, 0]
+        """Forces and gaps of the parts and the scales of both, of a solution's only case."""
+        t, table, shift = self.frame.member_table, solution.tables[0], solution.shift[:, 0]
         longer = (solution.system.deformation @ shift)[2::3] - solution.fixed[0].stretch
+        actions = np.abs(solution.forces[:, :, 0])
+        actions[:, :2] /= t.clear[:, None]
+        others = np.abs(solution.fixed[0].between[:, :2]), np.abs(table.joint[:, :2])
+        scale = float(max(values.max() for values in (actions, *others)))
+        return self._forces(solution, 0), self.gaps(longer, shift, table), scale, reach(shift, table)
+
+    def working(self, axial: Floats, pull: Floats) -> Floats:
+        """(parts,) force of each in the sense in which it works, from axial forces of stretch (m,) and from what holds
+        each joint along its support's axes (j, 3)."""
+        return np.array([
+            part.sense * (axial[part.member] if part.member >= 0 else pull[part.joint, part.axis]) for part in self.parts
+        ])  # fmt: skip
+
+    def gaps(self, longer: Floats, shift: Floats, table: LoadTable) -> Floats:
+        """(parts,) gap of each, from the members' elongations beyond what temperature and misfit would give them (m,) and
+        displacements along the supports' axes (3j,)."""
         moved = (shift - table.settlement.ravel()).reshape(-1, 3)
-        gaps = np.array([
+        return np.array([
             part.sense * (-longer[part.member] if part.member >= 0 else moved[part.joint, part.axis])
             for part in self.parts
         ])  # fmt: skip
-        by_member = np.abs(solution.forces[:, :, 0])
-        ends = np.abs(solution.fixed[0].between[:, :2]).max(initial=0.0)
-        largest = max(
-            float(by_member[:, 2].max()), float((by_member[:, :2].max(axis=1) / t.clear).max()), float(ends),
-            float(np.abs(table.joint[:, :2]).max()),
-        )  # fmt: skip
-        reach = max(float(np.abs(moved[:, :2]).max()), float(np.abs(shift.reshape(-1, 3)[:, :2]).max()))
-        return self._forces(solution, 0), gaps, largest, reach
 
-    def _system(self, out: Bools) -> System | None:
+    def system(self, out: Bools) -> System | None:
         """The equations without the parts `out`, factorised once; None where the frame could then move freely."""
         key = out.tobytes()
         if key not in self._systems:
@@ -188,21 +190,31 @@ class OneWay:
         return self._systems[key]
 
 
-def wrong(forces: Floats, gaps: Floats, scale: float, reach: float, out: Bools) -> Bools:
-    """(parts,): parts in place that would have to work the wrong way, and parts out that would work."""
-    return np.asarray(np.where(out, gaps < -NOISE * reach, forces < -NOISE * scale))
+def wrong(forces: Floats, gaps: Floats, scale: float, size: float, out: Bools) -> Bools:
+    """(parts,): parts in place that would have to work the wrong way, and parts out that would work. scale, size: what
+    forces and gaps are small against."""
+    return np.asarray(np.where(out, gaps < -NOISE * size, forces < -NOISE * scale))
 
 
-def search(first: Bools, judged: Callable[[Bools], tuple[Found, Bools] | None]) -> Found | None:
+def reach(shift: Floats, table: LoadTable) -> float:
+    """The largest movement of any joint, settlements included."""
+    moved = np.abs(np.stack([shift, table.settlement.ravel()])).reshape(2, -1, 3)
+    return float(moved[:, :, :2].max())
+
+
+def search(
+    first: Bools, judged: Callable[[Bools], tuple[Found, Bools] | None], most: int | None = None
+) -> Found | None:
     """The first settled state from a guess on: all parts that are wrong are changed at once and, where that leads back to
     a state known already, one alone, the first of them first (K. G. Murty 1974, least index). Of a state that cannot stand,
     one of the parts taken out is put back.
 
-    judged: of the parts out, what it finds and which parts are wrong; None where the frame cannot stand so.
+    judged: of the parts out, what it finds and which parts are wrong; None where the frame cannot stand so. most: how
+    many states are tried, by default FURTHER for every part.
     """
     known: set[bytes] = set()
     out: Bools | None = first
-    for _ in range(FURTHER * (1 + len(first))):
+    for _ in range(most or FURTHER * (1 + len(first))):
         if out is None:
             return None
         known.add(out.tobytes())
