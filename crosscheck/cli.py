@@ -99,16 +99,30 @@ def main(argv: Sequence[str] | None = None) -> int:
     from crosscheck.problems import UnusableInput
 
     try:
-        return int(args.run(args))
+        status = int(args.run(args))
+        # Here and not when the interpreter ends, where a full disk would be told as another exit status.
+        sys.stdout.flush()
+        return status
     except UnusableInput as error:
         return _refuse(args, error)
     except BrokenPipeError:
         # The reader of a pipe went away (`| head`): not an error of ours, and nothing can be printed any more.
         sys.stderr.close()
         return UNUSABLE
+    except OSError as error:
+        print(f"crosscheck: {error.filename or 'standard output'}: {error.strerror or error}", file=sys.stderr)
+        _write_no_more()
+        return UNUSABLE
     except KeyboardInterrupt:
         print("stopped", file=sys.stderr)
         return UNUSABLE
+
+
+def _write_no_more() -> None:
+    """What is left in standard output's buffer goes nowhere: the interpreter would fail on it again at its end."""
+    with contextlib.suppress(OSError, ValueError):
+        nowhere = os.open(os.devnull, os.O_WRONLY)
+        os.dup2(nowhere, sys.stdout.fileno())
 
 
 def _plain_text_out() -> None:

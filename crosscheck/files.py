@@ -29,8 +29,11 @@ def replace_text(path: str | Path, text: str) -> None:
 
 
 def replace_bytes(path: str | Path, data: bytes) -> None:
-    """The same for bytes as they stand."""
+    """The same for bytes as they stand. A device or a pipe is written to as it is: there is nothing to keep whole."""
     target = Path(path)
+    if target.exists() and not target.is_file() and not target.is_dir():
+        _write_to(target, data)
+        return
     try:
         handle, name = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name}.", suffix=PART)
     except OSError as error:
@@ -46,6 +49,14 @@ def replace_bytes(path: str | Path, data: bytes) -> None:
         raise _cannot(target, error) from None
     finally:
         Path(name).unlink(missing_ok=True)
+
+
+def _write_to(device: Path, data: bytes) -> None:
+    try:
+        with device.open("wb") as out:
+            out.write(data)
+    except OSError as error:
+        raise _cannot(device, error) from None
 
 
 def _replace(new: Path, target: Path) -> None:
@@ -132,14 +143,18 @@ def _let_go(handle: int, lock: Path) -> None:
 def write_new(path: str | Path, text: str) -> None:
     """Write a file that must not exist yet. Raises UnusableInput where it does or cannot be written."""
     target = Path(path)
+    begun = False
     try:
         with target.open("x", encoding="utf-8", newline="\n") as out:
+            begun = True
             out.write(text)
     except FileExistsError:
         raise UnusableInput(
             [Problem(str(target), None, "", "exists already and is not overwritten", "choose another name")]
         ) from None
     except OSError as error:
+        if begun:  # a full disk: half a file is worse than none
+            target.unlink(missing_ok=True)
         raise _cannot(target, error) from None
 
 
