@@ -217,3 +217,21 @@ def test_one_support_reaction_in_words_is_held_to_that_joint() -> None:
     assert k.judge(f"dead: Rx at D {abs(fx):.2f} kN, Ry {abs(fy):.2f} kN")[0] == "agree"
     assert k.judge(f"dead: Rx at D {1.4 * abs(fx):.2f} kN")[0] == "disagree"
     assert k.judge(f"dead: Ry at D {0.95 * abs(fy):.2f} kN")[0] == "disagree"
+
+
+# --- stations at a point load
+
+
+def test_a_station_printed_at_a_point_load_may_be_of_either_side() -> None:
+    """At a third of 6.4 m the printed 2.133 lies beside the load; shear before it and after it are both right."""
+    load = "  { member = \"D-E\", force = 40, at = 2.13333333, direction = \"down\" },\n"
+    k = Known(SPANS.replace("  { joint = \"F\"", load + "  { joint = \"F\""))
+    m = k.frame.member_index["D-E"]
+    for side in (-1, 1):
+        rows = ["Member\tx [m]\tV [kN]"]
+        for x, s in ((0.0, 1), (2.13333333, side), (4.0, 1), (6.4, -1)):
+            v = k.answer.spans.along("floor", np.array([m]), np.array([x]), np.array([s]))[0, 1]
+            rows.append(f"D-E\t{x:.3f}\t{v:.3f}")
+        assert k.judge("\n".join(rows))[0] == "agree"
+    middle = rows[2].split("\t")
+    assert k.judge("\n".join([*rows[:2], f"D-E\t2.133\t{float(middle[2]) + 20:.3f}", *rows[3:]]))[0] == "disagree"

@@ -24,22 +24,32 @@ ROUNDED = 1e-4
 
 
 @lru_cache(maxsize=8)
-def _jumps(frame: Frame) -> dict[int, Floats]:
-    """Distances of point loads and couples, by member."""
+def _jumps(frame: Frame) -> tuple[Ints, Floats, Floats]:
+    """Point loads and couples along members: member, distance, and both as one number that sorts them."""
     s = stations(frame)
     twice = np.flatnonzero((s.member[1:] == s.member[:-1]) & (s.x[1:] == s.x[:-1]))
-    return {int(m): s.x[twice[s.member[twice] == m]] for m in np.unique(s.member[twice])}
+    member, x = s.member[twice], s.x[twice]
+    return member, x, _in_order(frame, member, x)
+
+
+def _in_order(frame: Frame, member: Ints, x: Floats) -> Floats:
+    """(n,) numbers that grow by member and, within it, by distance."""
+    order: Floats = member + 0.9 * np.clip(np.nan_to_num(x) / frame.member_table.length[member], 0.0, 1.0)
+    return order
 
 
 def at_jumps(frame: Frame, member: Ints, x: Floats, half: Floats) -> Floats:
     """(n,) distances, those that may be meant at a point load put there: results are looked up on both its sides."""
+    jump_member, jump_x, order = _jumps(frame)
     out = x.copy()
-    for m, places in _jumps(frame).items():
-        mine = np.flatnonzero(member == m)
-        if len(mine):
-            nearest = places[np.abs(places[None, :] - x[mine, None]).argmin(axis=1)]
-            near = half[mine] + ROUNDED * frame.member_table.length[m]
-            out[mine] = np.where(np.abs(nearest - x[mine]) <= near, nearest, x[mine])
+    if not len(order):
+        return out
+    near = half + ROUNDED * frame.member_table.length[member]
+    after = np.searchsorted(order, _in_order(frame, member, x))
+    for index in (np.clip(after - 1, 0, len(order) - 1), np.clip(after, 0, len(order) - 1)):
+        apart = np.where(jump_member[index] == member, np.abs(jump_x[index] - x), np.inf)
+        better = apart <= np.minimum(near, np.where(out == x, np.inf, np.abs(out - x)))
+        out = np.where(better, jump_x[index], out)
     return out
 
 
