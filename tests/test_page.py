@@ -223,6 +223,13 @@ def test_inspect_and_regress_have_records_too(folder: Path) -> None:
     assert "NOT FOR ACCEPTANCE" in overview.text
 
 
+def test_regress_writes_pdf_too_and_leads_to_a_record_for_each_frame(folder: Path) -> None:
+    assert cli.main(["regress", str(folder), "--report", str(folder / "r.pdf")]) == 1
+    leads = re.findall(rb"/URI \((r\.frames/[^)]*\.pdf)\)", folder.joinpath("r.pdf").read_bytes())
+    assert len(set(leads)) == 1
+    assert folder.joinpath(leads[0].decode()).read_bytes().startswith(b"%PDF-")
+
+
 def test_a_mechanism_has_a_record_of_inspection(folder: Path) -> None:
     folder.joinpath("f.toml").write_text(FRAME.replace('A = "fixed"', 'A = "roller"').replace('"pinned"', '"roller"'),
                                          encoding="utf-8")  # fmt: skip

@@ -18,7 +18,7 @@ import matplotlib
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.patches import Circle, PathPatch, Polygon
+from matplotlib.patches import Circle, Patch, PathPatch, Polygon
 from matplotlib.path import Path
 
 from crosscheck.frame.loads import LoadTable
@@ -35,6 +35,8 @@ UNIT = WIDTH / 34
 MOST, TALLEST = 3.9, 8.4
 """Heights of a drawing in inches, about: two of MOST go on a page of A4 or Letter; a tall frame, or a high one of many
 members, has a page."""
+SMALL = 0.8
+"""Share of its size below which a drawing's lines are drawn thinner, too."""
 LETTER, MARGIN = 0.58, 0.35
 """Width of a letter in heights, and units left free around a drawing."""
 INK, GREY = "#111111", "#595959"
@@ -125,6 +127,10 @@ class Sketch:
         axes.set_ylim(low[1], high[1])
         for stroke in self._strokes:
             stroke(axes)
+        share = place[2] * figure.get_size_inches()[0] / self.wide
+        if share < SMALL:  # lines that kept their width would run into each other
+            for patch in axes.findobj(Patch):
+                patch.set_linewidth(share * patch.get_linewidth())
 
     def _patch(self, kind: Callable[..., Any], *where: Any, **style: Any) -> None:
         # As artists and not as patches, whose limits matplotlib would work out one by one.
