@@ -91,8 +91,8 @@ def rows(count: int = FRAMES) -> list[Row]:
     processor = statistics.median(s.processor for s in single) * count
     return [
         Row(f"   {count:,} frames, the program started for each / one run, by the clock", clock, whole.clock, LIMIT, True),
-        Row("   the same by processor time", processor, whole.processor, LIMIT / 2, True),
-        Row("   the same by processor time of two idle cores", 2 * processor, whole.processor, LIMIT, True),
+        Row("   the same by processor time, one process", processor, many.processor, LIMIT / 2, True),
+        Row("   the same by processor time, what two idle cores would do", 2 * processor, many.processor, LIMIT, True),
         Row(f"   memory for {count:,} frames / for {count // 5:,}", many.megabytes, few.megabytes, FLAT, unit="MB"),
     ]
 
