@@ -15,13 +15,14 @@ from typing import Any
 import numpy as np
 import pytest
 from scipy.integrate import quad
+from scipy.optimize import brentq
 
 from crosscheck.answer import ACROSS, Answer, CaseAnswer
 from crosscheck.frame.kinematics import mechanisms, study
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import FREE, Floats, Frame, JointForce, LoadCase, Piece, Section
 from crosscheck.frame.reader import read_frame_text
-from crosscheck.opinions.moment_distribution import opine, working
+from crosscheck.opinions.moment_distribution import critical_load_factor, opine, working
 from crosscheck.problems import UnusableInput
 
 HEAD = """
@@ -815,3 +816,173 @@ def test_one_way_parts_settle_as_the_best_of_all_states_does() -> None:
     counts = np.array([unsettled_and_settled(seed) for seed in SEEDS]).sum(axis=0)
     assert counts[0] > 40
     assert counts[1] > 5
+
+
+# --- second order -----------------------------------------------------------------------------------
+
+
+def second(frame: Frame) -> Frame:
+    return replace(frame, analysis=replace(frame.analysis, order=2))
+
+
+TOP, BASE = 2.0, 5.0
+"""Distances of a tapered column's ends from the point to which it tapers."""
+
+
+def tapered_column(power: int, load: str) -> Frame:
+    """Free at the thin top A, fixed at the base B; I = 1 at the top, growing with a power of the depth."""
+    return second(
+        frame_of(
+            f"""
+            [sections.top]
+            I = 1.0
+            depth = {TOP}
+            [sections.base]
+            I = {(BASE / TOP) ** power}
+            depth = {BASE}
+            [joints]
+            A = [0, {BASE - TOP}]
+            B = [0, 0]
+            [members]
+            "A-B" = {{ taper = ["top", "base"], material = "m" }}
+            [supports]
+            B = "fixed"
+            [loads.case]
+            apply = [{load}]
+            """
+        )
+    )
+
+
+@pytest.mark.parametrize("power", [2, 4])
+def test_critical_load_of_tapered_columns(power: int) -> None:
+    """I = (x/a)^2 and (x/a)^4: E I y'' + P y = 0 has the solutions sqrt(x) sin(n ln(x/a)), n^2 = P a^2/EI - 1/4, and
+    x sin(b (1/a - 1/x)), b^2 = P a^4/EI; y' = 0 at the base (S. Timoshenko and J. Gere, "Theory of Elastic Stability",
+    1961, section 2.14 from memory, worked out here)."""
+    run = math.log(BASE / TOP)
+    if power == 2:
+        n = brentq(lambda n: math.tan(n * run) + 2 * n, 0.5001 * math.pi / run, 0.9999 * math.pi / run, xtol=1e-14)
+        exact = (n * n + 0.25) / TOP**2
+    else:
+        turn = 1 / TOP - 1 / BASE
+        b = brentq(lambda b: math.tan(b * turn) + b / BASE, 0.5001 * math.pi / turn, 0.9999 * math.pi / turn, xtol=1e-14)
+        exact = b * b / TOP**4
+    frame = tapered_column(power, '{ joint = "A", force = 1, direction = "down" }')
+    assert critical_load_factor(frame, "case") == pytest.approx(exact, rel=2e-10)
+
+
+@pytest.mark.parametrize("share", [-2.0, 0.2, 0.6, 0.95])
+def test_tapered_column_that_sways(share: float) -> None:
+    """I = (x/a)^4 under P, a share of the critical load, and a sideways H: y = C x sin t(x) - H (x - a)/P with
+    t = b (1/a - 1/x); by y' = 0 at the base C (sin t + b/x cos t) = H/P. Tension has sinh and cosh."""
+    turn = 1 / TOP - 1 / BASE
+    root = brentq(lambda b: math.tan(b * turn) + b / BASE, 0.5001 * math.pi / turn, 0.9999 * math.pi / turn, xtol=1e-14)
+    b, h = root * math.sqrt(abs(share)), 0.1
+    p = math.copysign(b * b / TOP**4, share)
+    sin, cos = (math.sin, math.cos) if p > 0 else (math.sinh, math.cosh)
+    c = h / p / (sin(b * turn) + b / BASE * cos(b * turn))
+    exact = abs(c * BASE * sin(b * turn) - h * (BASE - TOP) / p)
+    loads = f'{{ joint = "A", force = {p!r}, direction = "down" }}, {{ joint = "A", force = {h}, direction = "right" }}'
+    case = case_of(tapered_column(4, loads))
+    assert case.joints[0, 0] == pytest.approx(exact, rel=1e-10)
+    assert case.reactions[1, 2] == pytest.approx(-(h * (BASE - TOP) + p * exact), rel=1e-10)
+
+
+PRESSED = (
+    SHED.replace("uniform = 1.5", "uniform = 0.015").replace("force = 2,", "force = 0.02,").replace(
+        "couple = 3 }", 'couple = 0.03 },\n{ joints = ["B", "C"], force = 0.05, direction = "down" }')
+)  # fmt: skip
+
+
+@pytest.mark.parametrize("axial", ["rigid", "elastic"])
+@pytest.mark.parametrize("shear", ["rigid", "elastic"])
+def test_steps_and_tapers_in_second_order(axial: str, shear: str) -> None:
+    """As in first order: steps are their parts joined, to rounding; tapers what ever finer steps come to, by the square."""
+    steps = second(frame_of(PRESSED % (STEPS, STEPS), axial, shear))
+    assert difference(steps, 1) < 1e-11
+    parts = cut_into_members(cut_into_members(steps, "B-C", 1)[0], "C-D", 1)[0]
+    factor = critical_load_factor(steps, "case")
+    assert 4 < factor < 8
+    assert critical_load_factor(parts, "case") == pytest.approx(factor, rel=1e-9)
+    tapers = second(frame_of(PRESSED % (TAPER, TAPER), axial, shear))
+    errors = np.array([difference(tapers, parts) for parts in (20, 40, 80)])
+    assert errors[:-1] / errors[1:] == pytest.approx(4.0, rel=0.03)
+
+
+def test_a_leaning_post_tied_to_a_column() -> None:
+    """The post's load P leans on the column through the tie: it sways by H / (3EI/h^3 - P/g), h and g their heights."""
+    load = (
+        'apply = [{ joint = "B", force = 0.01, direction = "right" }, { joint = "D", force = 0.02, direction = "down" }]'
+    )
+    body = LEGS.replace('apply = [{ joint = "B", force = 7, direction = "right" }]', load).replace(
+        '"C-D" = { section = "stiff", material = "m" }', '"C-D" = { section = "stiff", material = "m", hinge = "from" }'
+    )  # fmt: skip
+    stiffness = 3 / 4**3 - 0.02 / 3
+    for axial in ("rigid", "elastic"):
+        case = given(second(frame_of(body, axial))).cases["case"]
+        moved = 0.01 / stiffness
+        assert case.joints[[1, 3], 0] == pytest.approx([moved, moved], rel=1e-11)
+        assert case.reactions[2, 0] == pytest.approx(0.02 * moved / 3, rel=1e-10)
+        assert case.reactions[0, 0] == pytest.approx(-0.01 - 0.02 * moved / 3, rel=1e-10)
+
+
+def test_ties_are_bars_in_second_order() -> None:
+    body = LEGS.replace("D = [5, 3]", "D = [5, 4]").replace(
+        'direction = "right" }]', 'direction = "right" }, { joints = ["B", "D"], force = 0.05, direction = "down" }]'
+    ).replace("force = 7", "force = 0.02")  # fmt: skip
+    tied = second(frame_of(body, "elastic"))
+    bar = second(
+        frame_of(
+            body.replace('[ties]\nroof = { joints = ["B", "D"], direction = "x" }', "").replace(
+                "[supports]", '"B-D" = { section = "s", material = "m", hinge = "both", axial = "rigid" }\n[supports]'
+            ),
+            "elastic",
+        )
+    )
+    one, two = case_of(tied), case_of(bar)
+    assert two.ends[:2] == pytest.approx(one.ends, abs=1e-12)
+    assert two.joints == pytest.approx(one.joints, abs=1e-10)
+    assert two.reactions == pytest.approx(one.reactions, abs=1e-12)
+
+
+def test_members_rigid_by_their_own_word_in_second_order() -> None:
+    text = PRESSED % (TAPER, 'section = "light"')
+    every = text.replace('material = "m"', 'material = "m", axial = "rigid"')
+    one, two = case_of(second(frame_of(text, "rigid"))), case_of(second(frame_of(every, "elastic")))
+    assert np.array_equal(one.ends, two.ends)
+    assert np.array_equal(one.joints, two.joints, equal_nan=True)
+
+
+def pressed_rack(seed: int) -> Frame:
+    """A rack of braces that bend enough not to buckle."""
+    frame = rack(Random(seed))
+    return second(replace(frame, sections={**frame.sections, "t": replace(frame.sections["t"], I=4e3)}))
+
+
+def second_order_states(seed: int) -> tuple[int, int]:
+    """As `unsettled_and_settled`, in second order: cases held to every state, and those that are silent."""
+    frame = pressed_rack(seed)
+    if mechanisms(frame):
+        return 0, 0
+    parts, answer = parts_of(frame), given(frame)
+    for name in frame.cases:
+        found = []
+        for out in states(parts):
+            state = without(frame, out)
+            if mechanisms(state):
+                continue
+            plain = given(state)
+            if name in plain.cases and settles(frame, state, plain.cases[name], name, parts, out):
+                found.append(plain.cases[name])
+        assert (name in answer.cases) == bool(found), (seed, name)
+        if found:
+            size = np.nanmax(np.abs(answer.cases[name].joints))
+            assert min(float(np.nanmax(np.abs(c.joints - answer.cases[name].joints))) for c in found) <= 1e-8 * size
+    return len(answer.cases), len(answer.silent)
+
+
+def test_one_way_parts_in_second_order() -> None:
+    seeds = [seed for seed in range(24) if 0 < len(parts_of(rack(Random(seed)))) <= 3]
+    counts = np.array([second_order_states(seed) for seed in seeds]).sum(axis=0)
+    assert counts[0] > 8
+    assert counts[1] >= 2

@@ -99,8 +99,17 @@ class BentSpans:
             low, high = np.where(same, middle, low), np.where(same, high, middle)
         piece = real[row]
         member, x = pieces.member[piece], pieces.start[piece] + pieces.size[piece] * (low + high) / 2
+        kinked = _kinks(pieces, real, at[2])
+        member, x = np.concatenate([member, pieces.member[kinked]]), np.concatenate([x, pieces.start[kinked]])
         order = np.lexsort((x, member))
         return member[order], x[order]
+
+
+def _kinks(pieces: Pieces, real: Ints, slope: Floats) -> Ints:
+    """Pieces at whose start the slope (n, k) along the `real` ones jumps from one sign to the other: shear strain at a
+    step."""
+    turned = (slope[:-1, -1] * slope[1:, 0] < 0) & (pieces.member[real[1:]] == pieces.member[real[:-1]])
+    return np.asarray(real[1:][turned])
 
 
 def bend(m: Members, bowed: Bowed, movements: Floats, offset: Floats, ends: Floats) -> Bent:
