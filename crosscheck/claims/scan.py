@@ -45,6 +45,7 @@ _TELLING = re.compile(
     r"case|comb|lc|load|result|unit|positive|negative|kn|kip|\bin\b|mm|reaction|displ|force|moment|member|joint|node",
     re.IGNORECASE,
 )
+_DASHES = frozenset("-\u2013\u2212")
 _DIGIT = re.compile(r"\d")
 _WORDS = re.compile(r"[\s,;:.()]+")
 _SPOILT = re.compile(r"\d|\*\*|##|^#|^[+-]?(?:inf|infinity|overflow)$", re.IGNORECASE)
@@ -107,14 +108,18 @@ def _end_numbers(filled: list[str]) -> int:
 
 
 def _with_prefixes(words: list[str]) -> list[str]:
-    """Words such as "Member" or "Node" put to the names behind them."""
+    """Words such as "Member" or "Node" put to the names behind them, and pairs such as "B - A" together."""
     out: list[str] = []
     for word in words:
-        if out and "" in {without_prefix(f"{out[-1]} x", kind).removesuffix("x") for kind in ("member", "joint")}:
+        if out and (word in _DASHES or out[-1][-1:] in _DASHES or _is_prefix(out[-1])):
             out[-1] = f"{out[-1]} {word}"
         else:
             out.append(word)
     return out
+
+
+def _is_prefix(word: str) -> bool:
+    return any(without_prefix(f"{word} x", kind) == "x" for kind in ("member", "joint"))
 
 
 @lru_cache(maxsize=64)

@@ -15,6 +15,8 @@ from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.frame.stations import stations
 from crosscheck.frame.units import LENGTH
 
+_Part = tuple[str, float | None, float | None, int]
+"""A member, and of a part of it where it begins, how far it reaches and which way it runs."""
 CLOSE = 0.01
 """Share of a member's length within which the last station counts as standing at its end."""
 
@@ -70,11 +72,11 @@ def with_stations(entries: list[Entry], frame: Frame) -> list[Entry]:
 
 def _unit_of(entries: list[Entry], frame: Frame) -> Size | None:
     """The unit, or None where the distances are shares of the length."""
-    last: dict[tuple[str, float | None], float] = {}
-    real: dict[tuple[str, float | None], float] = {}
+    last: dict[_Part, float] = {}
+    real: dict[_Part, float] = {}
     lengths = frame.member_table.length
     for e in entries:
-        part = str(e.member), e.origin  # a part of a member: its stations end where it does
+        part = str(e.member), e.origin, e.reach, e.run  # a part of a member: its stations end where it does
         last[part] = max(last.get(part, 0.0), float(e.at or 0.0))
         real[part] = float(lengths[frame.member_index[part[0]]]) if e.reach is None else e.reach
     choices = length_choices(frame.units)
@@ -86,9 +88,7 @@ def _unit_of(entries: list[Entry], frame: Frame) -> Size | None:
     return Size(choices[best].text, LENGTH, choices[best].factor * frame.units.metre)
 
 
-def _score(
-    last: dict[tuple[str, float | None], float], real: dict[tuple[str, float | None], float], factor: float
-) -> float:
+def _score(last: dict[_Part, float], real: dict[_Part, float], factor: float) -> float:
     """Members whose last station stands at their end; one that lies beyond the end counts against the unit."""
     ratios = [x * factor / real[m] for m, x in last.items()]
     ending = sum(abs(r - 1.0) <= CLOSE for r in ratios)
