@@ -25,6 +25,9 @@ class Room:
     seed: int
     tests: Mapping[str, tuple[str, ...]]
     opinion: str = ""
+    second_order: frozenset[str] = frozenset()
+    unheard: frozenset[str] = frozenset()
+    """Modules that only second order runs, and those that no opinion's answer comes from (working, suspects)."""
 
     @property
     def modules(self) -> list[Path]:
@@ -46,7 +49,8 @@ ROOMS = {
             "balance": (*SECOND_ORDER, *WEEK), "varying": WEEK, "one_way": WEEK, "parting": WEEK,
             "*": ("tests/test_exact.py", "tests/published/test_published.py", "tests/test_mutants.py"),
         },
-        "slope-deflection",
+        "slope-deflection", frozenset({"second_order", "division", "displaced_spans", "balance"}),
+        frozenset({"prepared", "equations", "one_way", "parting"}),
     ),
     "moment_distribution": Room(
         "crosscheck/opinions/moment_distribution", 200, 2,
@@ -57,6 +61,8 @@ ROOMS = {
             "*": ("tests/test_exact.py", "tests/test_moment_distribution.py", "tests/test_mutants.py"),
         },
         "moment-distribution",
+        frozenset({"second_order", "bent_spans", "displaced", "critical", "stretches", "gradual"}),
+        frozenset({"working", "displaced_working", "one_way"}),
     ),
     "library": Room(
         "crosscheck/opinions/library", 200, 3,

@@ -86,6 +86,15 @@ def _otherwise(frame: Frame, kind: str) -> Frame | None:
         return None
 
 
+def within_reach(room: Room, heard: list[Heard], module: str) -> list[Heard]:
+    """The demonstrations in which a module has any part."""
+    if module in room.unheard:
+        return []
+    if module in room.second_order:
+        return [h for h in heard if h.found.frame.analysis.order == 2]
+    return [h for h in heard if h.found.frame.analysis.order == 1]
+
+
 def compared(room: Room, heard: list[Heard]) -> int:
     """What `crosscheck opinions` makes of the altered opinion: all others as they were."""
     warnings.simplefilter("ignore")
@@ -185,16 +194,18 @@ def examine(name: str, count: int, seed: int) -> list[Mutant]:
 
 
 def _became(room: Room, heard: list[Heard], mutant: Mutant) -> str:
+    module = Path(mutant.file).stem
+
     def first() -> int:
         try:
             install(mutant, ROOT)
         except LookupError:
             return NOT_INSTALLED
-        return compared(room, heard) if room.opinion else SURVIVED
+        return compared(room, within_reach(room, heard, module)) if room.opinion else SURVIVED
 
     def second() -> int:
         install(mutant, ROOT)
-        return tested(room.who_notices(Path(mutant.file).stem))
+        return tested(room.who_notices(module))
 
     status = in_a_fork(first)
     if status == SURVIVED:
