@@ -181,12 +181,17 @@ class OneWay:
             for part in self.parts
         ])  # fmt: skip
 
+    def _parted(self, system: System) -> bool:
+        """Whether what is out leaves a joint without anything that resists it in a direction."""
+        lost = system.diagonal <= FREE_PIVOT * self.whole.diagonal
+        return bool(np.any(lost & ~system.held & (self.whole.diagonal != 0.0)))
+
     def system(self, out: Bools) -> System | None:
         """The equations without the parts `out`, factorised once; None where the frame could then move freely."""
         key = out.tobytes()
         if key not in self._systems:
             system = System(without(self.frame, self.parts, out)) if out.any() else self.whole
-            self._systems[key] = system if stands(system) else None
+            self._systems[key] = system if stands(system) and not self._parted(system) else None
         return self._systems[key]
 
 

@@ -34,6 +34,8 @@ FEWEST = 4
 """After so many rounds, corrections that no longer halve are rounding noise and end the rounds too."""
 TRACE = 1e-6
 """Share of the largest 12 EI/l^3 times the largest displacement that counts as an action where there is none larger."""
+UNMOVED = 1e-9
+"""Displacements below this share of the largest force over the largest stiffness are none."""
 STILL = 1e-15
 """Corrections below this share of the displacements end the rounds."""
 
@@ -64,7 +66,8 @@ class System:
             self._stiffness = sp.block_diag([self.member_stiffness, tied]).tocsr()
         matrix = (self._every.T @ self._stiffness @ self._every + sp.diags(self.spring)).tocsc()
         # A rotation that nothing resists, or a joint that nothing joins, has no equation.
-        self.free = np.flatnonzero(~self.held & (matrix.diagonal() != 0.0))
+        self.diagonal: Floats = matrix.diagonal()
+        self.free = np.flatnonzero(~self.held & (self.diagonal != 0.0))
         self.matrix = matrix[self.free][:, self.free]
         self._factor: Any = None
 
@@ -130,8 +133,11 @@ class System:
         forces[rigid_rows] -= penalty * asked
         longer = (every @ shift)[rigid_rows] - asked
         last = np.inf
-        # Corrections are judged by the largest displacement so far: the final ones may be nothing but rounding noise.
-        reach = np.abs(shift).max(axis=0, initial=0.0)
+        # Corrections are judged by the largest displacement so far: the final ones may be nothing but rounding noise. Where
+        # loads go straight into supports every displacement is.
+        loads = np.abs(outer).reshape(-1, 3, outer.shape[1])[:, :2].max(axis=(0, 1), initial=0.0)
+        least = UNMOVED * np.maximum(loads, self._largest_elastic(forces)) / self._stiffest_way
+        reach = np.maximum(np.abs(shift).max(axis=0, initial=0.0), least)
         for done in range(1, ROUNDS + 1):
             residual = outer - every.T @ forces - self.spring[:, None] * shift
             step = np.zeros_like(shift)
@@ -150,8 +156,20 @@ class System:
             forces[rigid_rows] += penalty * longer
         # What the next round would add to the axial forces of rigid members.
         pulled = penalty * np.abs(longer + bent[rigid_rows])
-        unsettled = np.maximum(shares, _shares(pulled, self._action_size(forces[:members], reach)))
+        unsettled = np.maximum(shares, _shares(pulled, np.maximum(self._action_size(forces[:members], reach), loads)))
         return forces[:members], shift, unsettled, forces[members:]
+
+    def _largest_elastic(self, forces: Floats) -> Floats:
+        """(cases,) the largest moment over length, or axial force of an elastic member."""
+        by_member = np.abs(forces[: 3 * len(self.rigid)]).reshape(-1, 3, forces.shape[1])
+        by_member[:, :2] /= self.frame.member_table.clear[:, None, None]
+        by_member[self.rigid, 2] = 0.0
+        return np.asarray(by_member.max(axis=(0, 1), initial=0.0))
+
+    @property
+    def _stiffest_way(self) -> float:
+        """The largest stiffness of any joint against moving."""
+        return float(self.diagonal.reshape(-1, 3)[:, :2].max(initial=0.0)) or 1.0
 
     def _action_size(self, forces: Floats, reach: Floats) -> Floats:
         """(cases,) the largest axial force, or moment over length, of any member; no less than a trace of what moving by
