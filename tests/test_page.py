@@ -211,6 +211,16 @@ def test_a_pdf_is_written_where_the_path_says_so(folder: Path) -> None:
     assert len(re.findall(rb"/Type /Page\b", data)) > 6
 
 
+def test_letters_of_any_script_are_written_on_paper(folder: Path) -> None:
+    """What the plain letters of every reader lack stands in letters of its own, and what those lack costs no page."""
+    with folder.joinpath("bad.csv").open("a", encoding="utf-8") as out:
+        out.write(f"\n\u039a\u03cc\u03bc\u03b2\u03bf\u03c2 \u6f22\u5b57 {HOSTILE},A,1,2,3\n")
+    path = folder / "p.pdf"
+    cli.main(["verify", str(folder / "f.toml"), str(folder / "bad.csv"), "--report", str(path)])
+    fonts = set(re.findall(rb"/BaseFont /([A-Za-z-]+\+)?([A-Za-z-]+)", path.read_bytes()))
+    assert {name for _, name in fonts} >= {b"Courier", b"DejaVuSansMono", b"DejaVuSerif"}
+
+
 def test_inspect_and_regress_have_records_too(folder: Path) -> None:
     assert cli.main(["inspect", str(folder / "f.toml"), "--report", str(folder / "i.html")]) == 0
     page = Page(folder.joinpath("i.html").read_text(encoding="utf-8"))

@@ -10,7 +10,7 @@ import io
 import textwrap
 import warnings
 from collections.abc import Callable, Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cache
 from typing import Any
 
@@ -60,7 +60,11 @@ class Face:
 
 
 PLAIN, BOLD, ITALIC = Face(), Face(weight="bold"), Face(slant="italic")
-MONO = Face("DejaVu Sans Mono")
+MONO, HEAVY = Face("DejaVu Sans Mono"), Face("DejaVu Sans Mono", "bold")
+COURIER = {MONO: Face("Courier", "medium"), HEAVY: Face("Courier", "bold")}
+"""As wide as the letters they stand for."""
+TYPED, LONG = 7.0, 150
+"""Size of letters of one width in a table, and the most rows of one in other letters."""
 
 
 @cache
@@ -134,14 +138,31 @@ class _Lines(Artist):
         self.texts = texts
 
     def draw(self, renderer: Any) -> None:
-        for ink in dict.fromkeys(t.ink for t in self.texts):
+        typed = [t for t in self.texts if _is_typed(t)]
+        self._write(renderer, [t for t in self.texts if not _is_typed(t)])
+        # Letters that every PDF reader has need no layout of glyph after glyph: a twentieth of the time, and this is
+        # most of what stands in a record.
+        with matplotlib.rc_context({"pdf.use14corefonts": True}):
+            self._write(renderer, [replace(t, face=COURIER[t.face]) for t in typed])
+
+    @staticmethod
+    def _write(renderer: Any, texts: Sequence[_Text]) -> None:
+        for ink in dict.fromkeys(t.ink for t in texts):
             gc = renderer.new_gc()
             gc.set_foreground(to_rgb(ink))
-            for t in self.texts:
+            for t in texts:
                 if t.ink == ink:
                     gc.set_url(t.leads or None)
                     renderer.draw_text(gc, t.x * POINTS, t.y * POINTS, t.says, t.face.of(t.size), 0.0)
             gc.restore()
+
+
+def _is_typed(t: _Text) -> bool:
+    """Whether a text can stand in the letters of one width that every reader of PDF has."""
+    try:
+        return t.face in COURIER and bool(t.says.encode("cp1252"))
+    except UnicodeEncodeError:
+        return False
 
 
 class _Setter:
@@ -315,6 +336,10 @@ class _Setter:
     # --- tables
 
     def _grid(self, grid: Grid) -> None:
+        lines = _typed(grid) if len(grid.rows) > LONG and not grid.blank else []
+        if lines:
+            self._long(grid.caption, lines[0], lines[1:])
+            return
         size, widths = _fitted(grid)
         edges = [LEFT]
         for w in widths:
@@ -338,6 +363,25 @@ class _Setter:
             before = row[0]
             self._row(grid, edges, cells, size, PLAIN, extra, self.record.link(row[0]))
         self.y -= 0.1
+
+    def _long(self, caption: str, head: str, rows: Sequence[str]) -> None:
+        """A table of very many rows in letters of one width, a rule below every fourth: one text a row."""
+        self._room(1.0)
+        self.y -= 0.08
+        self.lines(caption, 8.5, face=ITALIC)
+        self._line(head, HEAVY)
+        for k, row in enumerate(rows, 1):
+            if self._room(_step(TYPED)):
+                self._line(head, HEAVY)
+            self._line(row, MONO, k % 4 == 0)
+        self.y -= 0.1
+
+    def _line(self, says: str, face: Face, ruled: bool = True) -> None:
+        self.y -= _step(TYPED)
+        self._put(LEFT, says, TYPED, face)
+        if ruled:
+            self.y -= 0.04
+            self._rule(0.8 if face is HEAVY else 0.3, INK if face is HEAVY else HAIR)
 
     def _row(
         self, grid: Grid, edges: Sequence[float], cells: Sequence[Sequence[str]], size: float, face: Face,
@@ -425,6 +469,17 @@ def verbatim_lines(text: str, width: float, size: float) -> list[str]:
     parts = words.visible(text).expandtabs(4).split("\n")
     return [line for part in parts
             for line in textwrap.wrap(part, most, drop_whitespace=False, replace_whitespace=False) or [""]]  # fmt: skip
+
+
+def _typed(grid: Grid) -> list[str]:
+    """A table's head and rows as lines of letters of one width; none where they are too wide for the page."""
+    cells = [[words.visible(c) for c in row] for row in ([head for head, _ in grid.columns], *grid.rows)]
+    wide = [max(map(len, column)) for column in zip(*cells, strict=True)]
+    inches = (sum(wide) + 3 * (len(wide) - 1)) * MONO.width("m", TYPED)
+    if inches > RIGHT - LEFT or any("\n" in cell for row in cells for cell in row):
+        return []
+    right = [side == "right" for _, side in grid.columns]
+    return ["   ".join(c.rjust(w) if r else c.ljust(w) for c, w, r in zip(row, wide, right, strict=True)) for row in cells]
 
 
 def _fitted(grid: Grid) -> tuple[float, list[float]]:

@@ -1,7 +1,7 @@
 """Every benchmark of speed and memory with a limit, as one table of ratios: `python -m tests.benchmarks [PART ...]`.
 
-Parts: sizes, distribution, cases, library, process, commands, suite; all of them where none is named (a few minutes). All
-times are processor time, pairs run in turn, the best of several; a ratio by the clock says so. Exits 1 where a limit is
+Parts: sizes, distribution, cases, library, process, commands, suite, report; all of them where none is named (a few
+minutes). All times are processor time, pairs run in turn, the best of several; a ratio by the clock says so. Exits 1 where a limit is
 not held.
 """
 
@@ -12,7 +12,7 @@ import sys
 
 os.environ["OPENBLAS_NUM_THREADS"] = "1"  # before numpy is imported: threads would count twice as processor time
 
-from tests.benchmarks import bench_commands, bench_process, bench_size, bench_suite
+from tests.benchmarks import bench_commands, bench_process, bench_report, bench_size, bench_suite
 from tests.benchmarks.timing import HEAD, show
 
 PARTS = {
@@ -23,6 +23,7 @@ PARTS = {
     "process": bench_process.rows,
     "commands": bench_commands.rows,
     "suite": bench_suite.rows,
+    "report": bench_report.rows,
 }
 
 

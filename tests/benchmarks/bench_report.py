@@ -1,7 +1,7 @@
 """The record of a check beside the check itself: 399 members, an HTML page and a PDF, a claim that is right.
 
-Run by `python -m tests.benchmarks.bench_report`. Processor time of whole commands, in turn, the best of several. A right claim
-is the harder case: a wrong one costs the check more and the record no more. Exits 1 where a limit is passed.
+Run by `python -m tests.benchmarks.bench_report`. Processor time of whole commands, in turn, the best of several. A right
+claim is the harder case: a wrong one costs the check more and the record no more. Exits 1 where a limit is passed.
 """
 
 from __future__ import annotations
