@@ -38,6 +38,8 @@ WHICH_WAY: dict[object, str] = {
 LEFT_OUT, TWICE, REVERSED, PART_LEFT_OUT, TURNED, PROJECTION, OTHER_END, WHOLE, ELSEWHERE, FACTOR = (
     0.1, 0.3, 0.2, 0.3, 0.5, 0.4, 0.5, 0.6, 0.7, 0.8,
 )  # fmt: skip
+TURNED_TOO = 0.5
+"""What a fitted factor that also turns the load round costs beside."""
 NEAREST = 8
 """Other members or joints that a load is tried on, in a frame with more than MANY of them."""
 MANY = 40
@@ -289,7 +291,8 @@ def _factors_of_entries(screen: Screen) -> Iterator[Option]:
         index: dict[int, tuple[Load, ...]] = {p: (scaled(loads[p], used),) for p in move.index}
         says = f"{_what(frame, [loads[p] for p in move.index])} was {used:.4g} times as large"
         change = Change(partial(with_load, case=move.case, index=index), loads_only=True)
-        yield Option("load", move.where, says, change, move.cost, (1 - used) * gone[:, k], fitted=1)
+        cost = move.cost + (TURNED_TOO if used < 0 else 0.0)
+        yield Option("load", move.where, says, change, cost, (1 - used) * gone[:, k], fitted=1)
 
 
 # --- load cases and combinations ---
