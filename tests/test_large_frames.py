@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
 import scipy.sparse.linalg as linalg
 
-from crosscheck.check import ask
+from crosscheck.check import Verification, ask, read, verify
+from crosscheck.claims import FrameNames, read_claim_text
+from crosscheck.frame.draft import draft_grid
 from crosscheck.frame.kinematics import AxialRedundancy, study
 from crosscheck.frame.model import (
     HELD,
@@ -25,6 +28,7 @@ from crosscheck.frame.model import (
 )
 from crosscheck.opinions import slope_deflection
 from tests.benchmarks.frames import regular
+from tests.sheds import claim_text
 
 
 def braced_tower(panels: int, crossed: int | None = None) -> Frame:
@@ -92,3 +96,32 @@ def test_a_frame_of_2050_members_has_two_opinions() -> None:
     assert said.verdict == "agree"
     assert said.judgements["case 0"].spoke == ("slope-deflection", "moment-distribution")
     assert "members are more than" in said.silent["library"].why
+
+
+def test_the_library_speaks_of_large_frames_when_asked() -> None:
+    said = ask(regular(420), any_size=True)
+    assert said.judgements["case 0"].spoke == ("slope-deflection", "moment-distribution", "library")
+    assert said.verdict == "agree"
+
+
+def test_suspects_of_a_large_frame(tmp_path: Path) -> None:
+    """558 members: a section wrong throughout is found; a single place is not looked for, and that is said."""
+    path = tmp_path / "large.toml"
+    text = draft_grid(("15 x 6",), ("18 x 3.5",))
+    soft, elsewhere = tmp_path / "soft.toml", tmp_path / "elsewhere.toml"
+    pushed = text.replace("[loads.imposed]", '[loads.push]\napply = [{ joint = "A9", force = 900, direction = "right" }]\n'
+                         "\n[loads.imposed]")  # fmt: skip
+    path.write_text(pushed, encoding="utf-8")
+    soft.write_text(pushed.replace("23130 cm^4", "11565 cm^4"), encoding="utf-8")
+    elsewhere.write_text(pushed.replace('joint = "A9"', 'joint = "C7"'), encoding="utf-8")
+    frame = read(path)
+    assert len(frame.members) == 558
+    whole = _verified(frame, claim_text(soft))
+    assert whole.suspects[0].where == ("girder",) and "0.5 times its EI" in whole.suspects[0].says
+    place = _verified(frame, claim_text(elsewhere, case="push"))
+    assert place.verdict == "disagree"
+    assert not place.suspects and "single members, joints and loads are not tried" in place.no_suspects
+
+
+def _verified(frame: Frame, claim: str) -> Verification:
+    return verify(frame, read_claim_text(claim, FrameNames.of(frame)))
