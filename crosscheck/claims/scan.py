@@ -93,6 +93,7 @@ def cells_of(line: str) -> tuple[Separator, list[Cell]]:
 
 def _names_columns(cells: list[str]) -> bool:
     """Are most of the cells known as heads, and is a result among them?"""
+    cells = [c for c in cells if c.lower().strip(".:") not in ("no", "nr", "number")]  # of "Member no."
     known = [h for c in cells if is_header_word(c) and (h := head_of(c))]
     if len(known) < 2:
         return False
