@@ -18,7 +18,8 @@ import pytest
 from crosscheck import cli, log
 from crosscheck.problems import UnusableInput
 from crosscheck.report import words
-from crosscheck.report.record import ABOUT, SHARED, read_about
+from crosscheck.report.about import ABOUT, read_about
+from crosscheck.report.closing import SHARED
 from crosscheck.report.sketch import GREY, INK
 
 ROOT = Path(__file__).parent.parent

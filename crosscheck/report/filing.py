@@ -18,7 +18,8 @@ from crosscheck.problems import Problem, UnusableInput
 from crosscheck.report import words
 
 if TYPE_CHECKING:
-    from crosscheck.report.record import Circumstances, Record
+    from crosscheck.report.about import Circumstances
+    from crosscheck.report.content import Record
     from crosscheck.review.finding import Finding, Subject
     from crosscheck.suite.regress import SuiteOutcome
 
@@ -39,7 +40,7 @@ class Filing:
     @staticmethod
     def asked(path: str, about: Sequence[str], reason: str, given: Sequence[str]) -> Filing:
         """From the command line. Raises UnusableInput for a path or an --about that cannot be."""
-        from crosscheck.report.record import read_about
+        from crosscheck.report.about import read_about
 
         target = Path(path)
         if target.suffix.lower() not in ENDINGS:
@@ -82,13 +83,14 @@ class Filing:
         self._write(printouts_record(result, readings, around))
 
     def inspection(self, subject: Subject, findings: Sequence[Finding]) -> None:
-        from crosscheck.report.record import Circumstances, inspect_record
+        from crosscheck.report.about import Circumstances
+        from crosscheck.report.record import inspect_record
 
         self._write(inspect_record(subject, findings, Circumstances(self.command, self.when, self.about)))
 
     def suite(self, outcome: SuiteOutcome) -> None:
         """The overview, and a page for each frame in a folder beside it."""
-        from crosscheck.report.record import Circumstances
+        from crosscheck.report.about import Circumstances
         from crosscheck.report.suite_record import suite_records
 
         folder = self.path.with_suffix(".frames")
@@ -110,7 +112,7 @@ class Filing:
     def _around(
         self, frame: Frame, reading: Reading | None = None, history: tuple[log.Entry, ...] = ()
     ) -> Circumstances:
-        from crosscheck.report.record import Circumstances
+        from crosscheck.report.about import Circumstances
 
         return Circumstances(self.command, self.when, self.about, review(frame), history, reading)
 

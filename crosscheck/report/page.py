@@ -7,8 +7,8 @@ from pathlib import Path
 from typing import Any
 
 from crosscheck.report import words
+from crosscheck.report.content import Block, Record
 from crosscheck.report.pictures import Picture
-from crosscheck.report.record import Block, Record
 from crosscheck.report.sketch import svg
 
 

@@ -24,8 +24,8 @@ from matplotlib.font_manager import FontProperties, findfont, get_font
 from matplotlib.ft2font import LoadFlags
 
 from crosscheck.report import words
+from crosscheck.report.content import Block, Facts, Gallery, Grid, Record, Says, Verbatim
 from crosscheck.report.pictures import Picture
-from crosscheck.report.record import Block, Facts, Gallery, Grid, Record, Says, Verbatim
 from crosscheck.report.sketch import HALF, Sketch
 
 PAGE = (8.27, 11.69)

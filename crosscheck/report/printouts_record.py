@@ -10,20 +10,11 @@ from crosscheck.compare.differences import Difference, Place
 from crosscheck.compare.printouts import FIRST, SECOND
 from crosscheck.frame.model import Frame
 from crosscheck.report import terminal, words
+from crosscheck.report.about import Circumstances
+from crosscheck.report.closing import sign_off, verbatim
+from crosscheck.report.content import Grid, Record, Says, Section, Verbatim
 from crosscheck.report.printouts import printouts_facts, printouts_sentence
-from crosscheck.report.record import (
-    Circumstances,
-    Grid,
-    Record,
-    Says,
-    Section,
-    Verbatim,
-    checked,
-    drawn,
-    file_record,
-    sign_off,
-    verbatim,
-)
+from crosscheck.report.record import checked, drawn, file_record
 
 
 def printouts_record(result: TwoPrintouts, readings: tuple[Reading, Reading], around: Circumstances) -> Record:

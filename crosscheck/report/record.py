@@ -1,34 +1,27 @@
 """The check record: what a reviewer reads, signs off against and files, as plain content before it is a page.
 
-Sections of facts, sentences, tables, pictures and verbatim text, in the order a reviewer asks for them. The HTML page
-and the PDF are set from the same content; nothing here computes.
+Its parts stand in the order a reviewer asks for them. The HTML page and the PDF are set from the same content; nothing
+here computes.
 """
 
 from __future__ import annotations
 
 import datetime
-import hashlib
-import tomllib
-from collections import Counter
-from collections.abc import Iterable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
-from functools import cached_property
-from itertools import combinations
-from pathlib import Path
+from collections.abc import Iterable, Iterator, Sequence
 
 import numpy as np
 
 from crosscheck import __version__
 from crosscheck.answer import Answer
 from crosscheck.check import OPINIONS, CaseAudit, Opinions, Verification
-from crosscheck.claims.reading import Reading
 from crosscheck.compare.differences import Difference, Place
 from crosscheck.frame.model import Frame
-from crosscheck.log import Entry
-from crosscheck.problems import Problem, UnusableInput, nearest
 from crosscheck.report import terminal, words
+from crosscheck.report.about import ABOUT, FILED, Circumstances
+from crosscheck.report.closing import closing_sections, review_section, sign_off, verbatim
+from crosscheck.report.content import Block, Facts, Grid, Record, Says, Section
 from crosscheck.report.gist import opinions_gist, verify_gist
-from crosscheck.report.pictures import CasePictures, Picture, frame_picture, loads_picture
+from crosscheck.report.pictures import CasePictures, frame_picture, loads_picture
 from crosscheck.review.finding import Finding, Subject
 
 MOST_ROWS = 6000
@@ -37,164 +30,6 @@ MOST_MISFITS = 40
 """Rows of one table of the audit: one slip is felt in many places."""
 MOST_PICTURED, MOST_DRAWN = 6, 1200
 """Cases with pictures in one record, and members drawn in them all."""
-SHARED = {
-    ("slope-deflection", "moment-distribution"):
-        "the frame file and its reader; directions and places of loads; the list of what is a mechanism or undetermined; "
-        "numpy, scipy's sparse factorisation",
-    ("slope-deflection", "library"):
-        "the frame file and its reader; directions and places of loads; the list of what is undetermined; numpy",
-    ("moment-distribution", "library"):
-        "the frame file and its reader; directions and places of loads; the list of what is undetermined; numpy",
-}  # fmt: skip
-"""What each pair of opinions still shares (README, What the opinions share)."""
-ABOUT = {
-    "job": "Job",
-    "calculation": "Calculation number",
-    "revision": "Revision",
-    "originator": "Originator",
-    "drawings": "Drawings and their revisions",
-    "program": "Other program",
-    "program_version": "Other program's version",
-    "remarks": "Remarks",
-}
-"""Free text about the check: key of `--about` and what it stands for."""
-FILED = ("job", "calculation", "revision")
-"""What of it stands at the head of a record, where it is looked for in a file."""
-MARK = "\u25a1"  # an empty box, to be ticked by hand
-
-
-# --- content
-
-
-@dataclass(frozen=True, slots=True)
-class Facts:
-    """Label and text, side by side."""
-
-    rows: tuple[tuple[str, str], ...]
-
-
-@dataclass(frozen=True, slots=True)
-class Says:
-    """Sentences, one a line."""
-
-    lines: tuple[str, ...]
-
-
-@dataclass(frozen=True, slots=True)
-class Grid:
-    """A table: columns as (head, "left" or "right"). `blank`: columns to be filled in by hand."""
-
-    caption: str
-    columns: tuple[tuple[str, str], ...]
-    rows: tuple[tuple[str, ...], ...]
-    blank: tuple[int, ...] = ()
-
-
-@dataclass(frozen=True, slots=True)
-class Verbatim:
-    """A text as it stands, line by line."""
-
-    title: str
-    lines: tuple[str, ...]
-
-
-@dataclass(frozen=True, slots=True)
-class Gallery:
-    """Small pictures side by side; their captions lead where Record.links says."""
-
-    pictures: tuple[Picture, ...]
-
-
-Block = Facts | Says | Grid | Picture | Gallery | Verbatim
-
-
-@dataclass(frozen=True, slots=True)
-class Section:
-    title: str
-    blocks: tuple[Block, ...]
-
-
-@dataclass(frozen=True, eq=False)
-class Record:
-    """A whole record. verdict: one word; sentence: what it means; open: why it is not for acceptance, empty where it is.
-
-    links: text of a table's cell to the address of the record that it stands for. gist: what stands right below the
-    verdict, for whoever reads no further. filed: what it is filed under.
-    """
-
-    title: str
-    subject: str
-    verdict: str
-    sentence: str
-    open: tuple[str, ...]
-    sections: tuple[Section, ...]
-    when: str
-    links: Mapping[str, str] = field(default_factory=dict)
-    gist: tuple[tuple[str, str], ...] = ()
-    filed: tuple[tuple[str, str], ...] = ()
-
-    def link(self, text: str) -> str:
-        """Where a cell of a table leads to, "" for nowhere."""
-        return self.links.get(text, "")
-
-    @cached_property
-    def checksum(self) -> str:
-        """sha256 of all its words and numbers, the same in every form it is written in."""
-        said = repr((self.title, self.subject, self.verdict, self.sentence, self.gist, self.filed, self.open, self.when))
-        said += "".join(repr((s.title, [_words(b) for b in s.blocks])) for s in self.sections)
-        return hashlib.sha256(said.encode("utf-8", "backslashreplace")).hexdigest()
-
-
-def _words(block: Block) -> str:
-    if isinstance(block, Gallery):
-        return "".join(p.caption for p in block.pictures)
-    return block.caption if isinstance(block, Picture) else repr(block)
-
-
-@dataclass(frozen=True, slots=True)
-class Circumstances:
-    """What the findings do not hold: how, when and for whom the check was made.
-
-    findings: what the review of the model says. history: the check log, this check last. supposed: what the suspect says
-    whose change the check was made with, "" for frame and claim as stated.
-    """
-
-    command: str = ""
-    when: datetime.datetime = field(default_factory=lambda: datetime.datetime.now(datetime.UTC))
-    about: Mapping[str, str] = field(default_factory=dict)
-    findings: tuple[Finding, ...] = ()
-    history: tuple[Entry, ...] = ()
-    reading: Reading | None = None
-    supposed: str = ""
-
-
-def read_about(given: Iterable[str]) -> dict[str, str]:
-    """Free text from `--about`: each either KEY=TEXT or a TOML file of such keys. Raises UnusableInput."""
-    about: dict[str, str] = {}
-    problems = []
-    for item in given:
-        key, equals, text = item.partition("=")
-        pairs = [(key.strip(), text.strip())] if equals and key.strip() in ABOUT else list(_about_file(item).items())
-        for name, value in pairs:
-            if name in ABOUT:
-                about[name] = str(value)
-            else:
-                advice = nearest(name, ABOUT) or f"known: {', '.join(ABOUT)}"
-                problems.append(Problem(item, None, name, "is nothing that a record says about itself", advice))
-    if problems:
-        raise UnusableInput(problems)
-    return about
-
-
-def _about_file(path: str) -> dict[str, object]:
-    try:
-        return tomllib.loads(Path(path).read_text(encoding="utf-8-sig"))
-    except (OSError, ValueError) as error:
-        advice = f"KEY=TEXT, or a TOML file with keys {', '.join(ABOUT)}"
-        raise UnusableInput([Problem(path, None, "--about", f"cannot be read ({error})", advice)]) from None
-
-
-# --- records
 
 
 def verify_record(result: Verification, around: Circumstances) -> Record:
@@ -214,7 +49,7 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
         *(_case(opinions, name, result, numbered) for name in names[: _pictured(frame)]),
         *_tables(opinions, names),
         Section("Not compared", (Says(tuple(terminal.not_compared_lines(result)) or ("Nothing was left out.",)),)),
-        *_closing(opinions, around, numbered),
+        *closing_sections(opinions, around, numbered),
     ]
     sentence = " ".join([terminal.claim_sentence(result), *map(_sentence, terminal.beside(result))])
     questions = [*result.undecided, *opinions.warnings]
@@ -238,7 +73,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
         *(_case(result, name, None, numbered) for name in result.names[: _pictured(frame)]),
         *_tables(result, list(result.names)),
         Section("Not compared", (Says(tuple(terminal.undetermined_lines(result)) or ("Nothing was left out.",)),)),
-        *_closing(result, around, numbered),
+        *closing_sections(result, around, numbered),
     ]
     return file_record(
         "Record of opinions", frame, result.verdict, terminal.opinions_sentence(result),
@@ -545,90 +380,3 @@ def _together(unit: str) -> str:
 def _largest(values: np.ndarray) -> float:
     finite = np.abs(values[np.isfinite(values)])
     return float(finite.max(initial=0.0))
-
-
-def _closing(
-    opinions: Opinions, around: Circumstances, numbered: Sequence[tuple[int, Difference]]
-) -> list[Section]:
-    """Independence, the model's review, the log, cautions, sign-off and the texts themselves."""
-    spoke = [n for n in OPINIONS if n in opinions.answers]
-    pairs = tuple((f"{a}, {b}", SHARED[a, b]) for a, b in combinations(spoke, 2))
-    caption = "Opinions that share an error agree in it. What each pair shares:"
-    shares = Grid(caption, (("pair", "left"), ("shares", "left")), pairs)
-    return [
-        Section("Independence", (shares,) if pairs else (Says(("One opinion alone spoke.",)),)),
-        review_section(around.findings),
-        log_section(around.history),
-        Section("Cautions", (Says((*words.CAUTIONS, "A suspect is a hypothesis; several mistakes may look like one.")),)),
-        sign_off(len(numbered), around.findings),
-        verbatim(opinions.frame, around.reading),
-    ]
-
-
-def review_section(findings: Sequence[Finding]) -> Section:
-    """What `inspect` says of the model, each finding with room for what becomes of it."""
-    rows = tuple((str(k), f.grade, words.some(f.where) or "frame", f.says, "") for k, f in enumerate(findings, 1))
-    columns = (("no.", "right"), ("grade", "left"), ("where", "left"), ("finding", "left"),
-               ("disposition, initials", "left"))  # fmt: skip
-    counts = Counter(f.grade for f in findings)
-    caption = ", ".join(f"{counts[g]:,} {g}" for g in ("serious", "check", "note"))
-    return Section("Review of the model", (Grid(f"Before any results: {caption}.", columns, rows, (4,)),) if rows else ())
-
-
-def log_section(history: Sequence[Entry]) -> Section:
-    """Every earlier check of this frame, so that one tuned until it agreed can be seen."""
-    rows = tuple(
-        (e.when[:16].replace("T", " "), Path(e.claim).name or "-", e.claim_sha256[:12], e.frame_sha256[:12], e.settings,
-         e.verdict, e.reason or "-")
-        for e in history
-    )  # fmt: skip
-    columns = (("when", "left"), ("claim", "left"), ("claim sha256", "left"), ("frame sha256", "left"),
-               ("settings", "left"), ("verdict", "left"), ("reason for a change", "left"))  # fmt: skip
-    caption = f"{words.counted(len(rows), 'check')} with a record, this one last."
-    return Section("Log of checks", (Grid(caption, columns, rows),) if rows else ())
-
-
-def sign_off(differences: int, findings: Sequence[Finding]) -> Section:
-    """Room for the checker, the reviewer and what they decide."""
-    open_ = differences + sum(f.grade != "note" for f in findings)
-    people = Grid("", (("", "left"), ("name", "left"), ("signature", "left"), ("date", "left"), ("remarks", "left")),
-                  tuple((who, "", "", "", "") for who in ("Checker", "Reviewer")), (1, 2, 3, 4))  # fmt: skip
-    choices = tuple(f"{MARK} {text}" for text in (
-        "accepted as it stands", "accepted with the dispositions noted", "returned: claim to be corrected",
-        "returned: frame file to be corrected",
-    ))  # fmt: skip
-    what = words.counted(open_, "difference or finding", "differences and findings")
-    says = f"{what} to be disposed of and initialled above."
-    return Section("Sign-off", (people, Says(choices), Says((says,) if open_ else ())))
-
-
-def verbatim(frame: Frame, reading: Reading | None) -> Section:
-    """The frame file, the tables beside it and the claim, as they were read."""
-    blocks = [Verbatim(f"Frame: {frame.file or 'text'}", _file_lines(Path(frame.file), frame.sha256))] if frame.file else []
-    if frame.file:
-        from crosscheck.frame.reader import sources
-
-        blocks += [_file_beside(path) for path in sources(Path(frame.file))[1:]]
-    if reading is not None:
-        title = f"Claim: {reading.file or 'text'}"
-        blocks.append(Verbatim(title, tuple(t.text.rstrip("\r\n") for t in reading.trace)))
-    return Section("Frame and claim, verbatim", tuple(blocks))
-
-
-def _file_beside(path: Path) -> Verbatim:
-    """A table or an office file that the frame was read with, under its checksum."""
-    try:
-        checksum = hashlib.sha256(path.read_bytes()).hexdigest()
-    except OSError:
-        checksum = "unknown"
-    return Verbatim(f"Beside it: {path.name}, sha256 {checksum}", _file_lines(path))
-
-
-def _file_lines(path: Path, sha256: str = "") -> tuple[str, ...]:
-    try:
-        data = path.read_bytes()
-    except OSError as error:
-        return (f"(cannot be read any more: {error.strerror})",)
-    changed = sha256 and hashlib.sha256(data).hexdigest() != sha256
-    note = ["(the file has changed since it was read)"] if changed else []
-    return (*note, *data.decode("utf-8-sig", "replace").splitlines())

@@ -10,19 +10,11 @@ from crosscheck.compare.differences import Difference
 from crosscheck.frame.model import Frame
 from crosscheck.problems import UnusableInput
 from crosscheck.report import words
+from crosscheck.report.about import Circumstances
+from crosscheck.report.closing import verbatim
+from crosscheck.report.content import Block, Facts, Gallery, Grid, Record, Says, Section
 from crosscheck.report.pictures import frame_picture, small_picture
-from crosscheck.report.record import (
-    Block,
-    Circumstances,
-    Facts,
-    Gallery,
-    Grid,
-    Record,
-    Says,
-    Section,
-    moment,
-    verbatim,
-)
+from crosscheck.report.record import moment
 from crosscheck.suite.regress import FrameOutcome, SuiteOutcome
 
 

@@ -1,8 +1,8 @@
 """Every benchmark of speed and memory with a limit, as one table of ratios: `python -m tests.benchmarks [PART ...]`.
 
 Parts: sizes, distribution, cases, library, process, commands, suite, report; all of them where none is named (a few
-minutes). All times are processor time, pairs run in turn, the best of several; a ratio by the clock says so. Exits 1 where a limit is
-not held.
+minutes). All times are processor time, pairs run in turn, the best of several; a ratio by the clock says so. Exits 1
+where a limit is not held.
 """
 
 from __future__ import annotations
