@@ -736,3 +736,128 @@ def test_a_leaning_column_tied_to_a_cantilever(axial: str) -> None:
         middle = (low + high) / 2
         low, high = (middle, high) if g(middle) < P / Q else (low, middle)
     assert slope_deflection.critical_factors(frame)["push"] == pytest.approx(low, rel=1e-9)
+
+
+MAST = """
+units = "kN m"
+[materials.m]
+E = 1000
+[sections.top]
+I = 2
+depth = 1
+[sections.foot]
+I = 8
+depth = 2
+[joints]
+A = [0, 0]
+B = [0, 3]
+[members]
+AB = { from = "A", to = "B", material = "m", taper = ["foot", "top"] }
+[supports]
+A = "fixed"
+[loads.load]
+apply = [{ joint = "B", force = 300, direction = "down" }, { joint = "B", force = 7, direction = "right" }]
+[analysis]
+order = 2
+axial = "rigid"
+"""
+
+
+def test_a_mast_whose_stiffness_falls_with_the_square_of_the_depth() -> None:
+    """EI = EI1 (x/a)^2, x from where the taper would end, a = 3 at the top and b = 6 at the foot: y is sqrt(x/a) sin(k ln
+    x/a) less H (x - a)/P with k2 = P a2/EI1 - 1/4; buckling at tan(k ln b/a) = -2 k (Timoshenko and Gere 1961, columns
+    with varying section; worked out here)."""
+    frame = read_frame_text(MAST)
+    a, b, EI, P, H = 3.0, 6.0, 2000.0, 300.0, 7.0
+    k = np.sqrt(P * a * a / EI - 0.25)
+    end = k * np.log(b / a)
+    f = np.sqrt(b / a) * np.sin(end)
+    slope = (0.5 * np.sin(end) + k * np.cos(end)) / np.sqrt(a * b)
+    top = H / P * (f / slope - (b - a))
+    case = opinion(frame).cases["load"]
+    assert case.joints[1, 0] == pytest.approx(top, rel=1e-11)
+    assert case.reactions[0, 2] == pytest.approx(-(H * 3 + P * top), rel=1e-11)
+    low, high = np.pi / 2 / np.log(2), np.pi / np.log(2)
+    for _ in range(60):
+        middle = (low + high) / 2
+        low, high = (middle, high) if np.tan(middle * np.log(2)) < -2 * middle else (low, middle)
+    factor = (low**2 + 0.25) * EI / a**2 / P
+    assert slope_deflection.critical_factors(frame)["load"] == pytest.approx(factor, rel=1e-9)
+
+
+HEAVY = """[loads.heavy]
+apply = [
+  { joint = "B", force = 6000, direction = "down" }, { joint = "C", force = 4500, direction = "down" },
+  { joint = "B", force = 50, direction = "right" }, { member = "AB", uniform = 9, direction = "right" },
+  { self_weight = 1 },
+]
+[analysis]
+order = 2
+"""
+
+
+def test_second_order_of_tapers_against_their_division() -> None:
+    """Semi-rigid foot, rigid zones, shear by Engesser, axial force that varies: three divisions, what goes with the square
+    and the fourth power of the pieces' number taken out; values along the beam by the same."""
+    frame = read_frame_text(BENT.replace("[analysis]\n", HEAVY))
+    exact = at_joints(frame, "heavy")
+    one, two, three = (at_joints(divided(frame, parts), "heavy", frame) for parts in (8, 16, 32))
+    half = len(exact) // 2
+    scale = np.where(np.arange(len(exact)) < half, np.abs(exact[:half]).max(), np.abs(exact[half:]).max())
+    errors = [np.abs((p - exact) / scale).max() for p in (one, two, three)]
+    assert errors[1] / errors[2] == pytest.approx(4.0, rel=0.03)
+    assert np.abs(((4 * three - two) / 3 - exact) / scale).max() < 1e-5
+    assert np.abs(((64 * three - 20 * two + one) / 45 - exact) / scale).max() < 1e-7
+    first = replace(frame, analysis=replace(frame.analysis, order=1))
+    assert np.abs((at_joints(first, "heavy") - exact) / scale).max() > 0.1
+
+
+def test_values_along_a_taper_in_second_order_balance() -> None:
+    """On the displaced taper the moment's gradient is the shear and axial force times slope; ends meet the end actions."""
+    frame = read_frame_text(BENT.replace("[analysis]\n", HEAVY))
+    given = opinion(frame)
+    case, k = given.cases["heavy"], frame.member_index["AB"]
+    length = frame.member_table.length[k]
+    x = np.linspace(0.0, length, 2001)
+    side = np.ones(len(x), dtype=np.int64)
+    side[-1] = -1
+    axial, shear, moment, across = given.spans.along("heavy", np.full(len(x), k), x, side).T
+    assert moment[0] == pytest.approx(case.ends[k, 0, 2], rel=1e-10)
+    assert -moment[-1] == pytest.approx(case.ends[k, 1, 2], rel=1e-10)
+    load = np.concatenate([[0.0], np.cumsum((shear[1:] + shear[:-1]) / 2 * np.diff(x))])
+    pull = np.concatenate([[0.0], np.cumsum((axial[1:] + axial[:-1]) / 2 * np.diff(across))])
+    np.testing.assert_allclose(moment - moment[0], load + pull, atol=2e-6 * np.abs(moment).max())
+
+
+def test_one_way_parts_in_second_order() -> None:
+    """The state found is settled by its own results, and its results are those of the plain frame without what is out."""
+    frame = read_frame_text(RACK + "order = 2\n")
+    given = opinion(frame)
+    checked = 0
+    for out, plain in states(frame):
+        if out not in ((False, True, False, False, False, True), (True, False, True, True, False, True)):
+            continue
+        other = opinion(plain)
+        for name in ("wind", "back", "other"):
+            if name in other.cases and settled(frame, plain, out, name, other):
+                checked += 1
+                force = np.abs(other.cases[name].ends[:, :, :2]).max()
+                np.testing.assert_allclose(given.cases[name].ends, other.cases[name].ends, rtol=0, atol=1e-10 * force)
+    assert checked == 3
+    assert set(given.silent) == {"up", "both"}
+    assert all(said.startswith("past its critical load") for said in given.silent.values())
+
+
+def test_one_member_axially_rigid_in_second_order() -> None:
+    """Against the same member of 1e3 and 1e4 times the area, extrapolated."""
+    rigid = shed(own=', axial = "rigid"')
+    second = replace(rigid.analysis, order=2)
+    rigid = replace(rigid, analysis=second)
+    stiff = {}
+    for area in (6.0, 60.0):
+        frame = shed(area)
+        section = replace(frame.sections["s"], name="stiff", A=area)
+        members = {**frame.members, "GC": replace(frame.members["GC"], section="stiff")}
+        stiff[area] = replace(frame, sections={**frame.sections, "stiff": section}, members=members, analysis=second)
+    for name in rigid.cases:
+        close(everything(rigid, name, rigid), of_no_give(stiff, name, rigid), 1e-8)
