@@ -2,8 +2,9 @@
 
 The same joint equations, with every member divided into pieces whose slope-deflection coefficients know the axial force
 (division.py). Division points have an equation of moments and one of forces across, as joints have. Here axial forces are
-taken as known; balance.py finds those that come out as they were put in. The critical load factor scales the first-order axial forces in
-proportion; the pivots of the whole matrix count how many critical loads lie below a factor (Wittrick and Williams 1971).
+taken as known; balance.py finds those that come out as they were put in. The critical load factor scales the first-order
+axial forces in proportion; the pivots of the whole matrix count how many critical loads lie below a factor (Wittrick and
+Williams 1971).
 """
 
 from __future__ import annotations
