@@ -13,6 +13,7 @@ from crosscheck.frame.model import (
     HELD,
     Frame,
     Load,
+    Member,
     PointCouple,
     PointForce,
     Spread,
@@ -51,7 +52,7 @@ def _chained(first: Callable[[Any], Any] | None, second: Callable[[Any], Any] | 
     return lambda thing: second(first(thing))
 
 
-KEPT = ("member_table", "support_table", "joint_index", "member_index", "xy", "names")
+KEPT = ("member_table", "variation", "support_table", "joint_index", "member_index", "xy", "names")
 
 
 def with_loads(frame: Frame, case: str, loads: tuple[Load, ...]) -> Frame:
@@ -105,16 +106,38 @@ def with_support(frame: Frame, joint: str, support: Support | None) -> Frame:
 
 
 def with_member(frame: Frame, name: str, **fields: Any) -> Frame:
-    """The frame with some fields of a member replaced."""
+    """The frame with some fields of a member replaced; given a section, it is no longer stepped or tapered."""
+    if "section" in fields:
+        fields = {"pieces": (), **fields}
     return replace(frame, members={**frame.members, name: replace(frame.members[name], **fields)})
 
 
 def with_member_factors(frame: Frame, name: str, bending: float, stretching: float) -> Frame:
-    """The frame with one member's EI and EA times factors, by a section of its own."""
+    """The frame with one member's EI and EA times factors, by sections of its own, which keep what the frame's states of
+    stiffness do to those that they stand for."""
     member = frame.members[name]
-    own = f"{member.section} of {name}"
-    section = _factored(frame, member.section, bending, stretching, own)
-    return replace(with_member(frame, name, section=own), sections={**frame.sections, own: section})
+    own = {s: f"{s} of {name}" for s in sections_of(member)}
+    sections = {new: _factored(frame, s, bending, stretching, new) for s, new in own.items()}
+    pieces = tuple(replace(p, first=own[p.first], last=own[p.last]) for p in member.pieces)
+    states = {n: replace(s, sections=_as_before(s.sections, own)) for n, s in frame.states.items()}
+    changed = with_member(frame, name, section=own[member.section], pieces=pieces)
+    return replace(changed, sections={**frame.sections, **sections}, states=states)
+
+
+def _as_before(factors: Mapping[str, Mapping[str, float]], own: Mapping[str, str]) -> dict[str, Mapping[str, float]]:
+    return {**factors, **{new: factors[old] for old, new in own.items() if old in factors}}
+
+
+def sections_of(member: Member) -> tuple[str, ...]:
+    """Every section that a member has somewhere, the one it is named by first."""
+    return tuple(dict.fromkeys((member.section, *(s for p in member.pieces for s in (p.first, p.last)))))
+
+
+def in_state(frame: Frame, section: str) -> tuple[float, float | None]:
+    """I and A of a section in the state of stiffness that the frame's tables are of."""
+    s = frame.sections[section]
+    factors = frame.states[frame.state].sections.get(section, {}) if frame.state else {}
+    return s.I * factors.get("I", 1.0), None if s.A is None else s.A * factors.get("A", 1.0)
 
 
 def with_section_factors(frame: Frame, name: str, bending: float, stretching: float) -> Frame:
@@ -194,7 +217,7 @@ def usable(frame: Frame) -> bool:
     t = frame.member_table
     if not ((t.clear > 0).all() and (t.length > 0).all()):
         return False
-    if frame.analysis.axial == "elastic" and not (t.A > 0).all():
+    if not ((t.A > 0) | t.rigid).all():
         return False
     return frame.analysis.shear == "rigid" or bool(((t.shear_area > 0) & (t.G > 0)).all())
 

@@ -17,8 +17,10 @@ from crosscheck.frame.model import Frame
 from crosscheck.opinions.slope_deflection.prepared import prepared
 from crosscheck.problems import UnusableInput
 from crosscheck.suspects.observation import observe
+from crosscheck.suspects.situations import SituationsSweep
 from crosscheck.suspects.suspect import Option, Suspect
 from crosscheck.suspects.sweep import PLACES_UP_TO, Sweep, Weighed
+from crosscheck.suspects.week import has_week
 
 if TYPE_CHECKING:
     from crosscheck.check import Opinions
@@ -82,7 +84,7 @@ def search(
         return Findings((), "no value could be compared")
     if not (np.abs(seen.residual) > seen.allowed).any():
         return Findings((), "no value is further off than allowed")
-    sweep = Sweep(seen, closed, prepared(frame), answer)
+    sweep = SituationsSweep(seen, closed, answer) if has_week(frame) else Sweep(seen, closed, prepared(frame), answer)
     ranked = sweep.singles()
     if not ranked or not ranked[0].within:
         ranked = sorted([*ranked, *sweep.pairs(ranked)], key=lambda w: w.score)
@@ -138,7 +140,9 @@ def _confirmed(sweep: Sweep, weighed: Weighed) -> Weighed | None:
             return None
         weighed = again
     try:
-        study(option.change.frame(sweep.frame))
+        changed = option.change.frame(sweep.frame)
+        for plain in {id(p): p for p in map(changed.under, sweep.seen.names)}.values():
+            study(plain)
     except UnusableInput:
         return None
     return weighed

@@ -9,7 +9,14 @@ from functools import partial
 import numpy as np
 
 from crosscheck.frame.model import Floats, Frame, Ints, SelfWeight
-from crosscheck.suspects.changes import Change, with_material_factor, with_member, with_section_factors
+from crosscheck.suspects.changes import (
+    Change,
+    in_state,
+    sections_of,
+    with_material_factor,
+    with_member,
+    with_section_factors,
+)
 from crosscheck.suspects.members import COMMON, SPAN_OF_FACTORS
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.suspect import Family, Option, named
@@ -41,7 +48,7 @@ def groups(frame: Frame) -> Iterator[Group]:
     members = list(frame.members.values())
     elastic = frame.analysis.axial == "elastic"
     for name in frame.sections:
-        of = np.array([k for k, m in enumerate(members) if m.section == name], dtype=np.int64)
+        of = np.array([k for k, m in enumerate(members) if name in sections_of(m)], dtype=np.int64)
         if len(of):
             for what in ("EI", "EA", "EI and EA") if elastic else ("EI",):
                 yield Group("section", name, what, of)
@@ -53,6 +60,8 @@ def groups(frame: Frame) -> Iterator[Group]:
 
 def _foretold(frame: Frame, group: Group) -> bool:
     """Whether the factorised matrix serves: few members, and no shear stiffness or weight that changes along."""
+    if group.table == "section" and frame.member_table.varying[group.members].any():
+        return False  # only some of its length changes
     if len(group.members) > MOST_TOGETHER or (group.table == "material" and frame.analysis.shear == "elastic"):
         return False
     heavy = any(isinstance(q, SelfWeight) for c in frame.cases.values() for q in c.loads)
@@ -155,6 +164,7 @@ def _swap_delta(screen: Screen, group: Group, other: str) -> Floats | None:
     """Foretold where stiffness alone changes; depth, weight and shear need another solution."""
     frame = screen.frame
     plain = frame.analysis.shear == "rigid" and len(group.members) <= MOST_TOGETHER
+    plain = plain and not frame.member_table.varying[group.members].any()
     acts = any(not hasattr(q, "force") and not hasattr(q, "first") for c in frame.cases.values() for q in c.loads)
     if not plain or acts:
         return None
@@ -162,13 +172,22 @@ def _swap_delta(screen: Screen, group: Group, other: str) -> Floats | None:
     if group.table == "material":
         ratio = frame.materials[other].E / frame.materials[group.name].E
         return _delta(screen, group.members, ratio * one, ratio * one)
-    new, old = frame.sections[other], frame.sections[group.name]
-    stretching = new.A / old.A if new.A and old.A else 1.0
-    return _delta(screen, group.members, new.I / old.I * one, stretching * one)
+    (new, area), (old, before) = in_state(frame, other), in_state(frame, group.name)
+    stretching = area / before if area and before else 1.0
+    return _delta(screen, group.members, new / old * one, stretching * one)
 
 
 def _given(frame: Frame, table: str, name: str, other: str) -> Frame:
-    mine = [n for n, m in frame.members.items() if getattr(m, table) == name]
-    for member in mine:
-        frame = with_member(frame, member, **{table: other})
+    for member in list(frame.members.values()):
+        if member.pieces and table == "section":
+            pieces = tuple(
+                replace(p, first=_for(p.first, name, other), last=_for(p.last, name, other)) for p in member.pieces
+            )
+            frame = with_member(frame, member.name, section=_for(member.section, name, other), pieces=pieces)
+        elif getattr(member, table) == name:
+            frame = with_member(frame, member.name, **{table: other})
     return frame
+
+
+def _for(section: str, name: str, other: str) -> str:
+    return other if section == name else section

@@ -18,6 +18,7 @@ from crosscheck.frame.model import (
     Frame,
     JointCouple,
     JointForce,
+    Lean,
     Load,
     Misfit,
     PointCouple,
@@ -108,7 +109,7 @@ def _deltas(screen: Screen, moves: list[_Move]) -> Floats:
 def _weights(frame: Frame, load: SelfWeight) -> list[Load]:
     """Self weight as line loads on the members."""
     t = frame.member_table
-    w = load.factor * t.weight * t.A
+    w = load.factor * t.own_weight
     return [
         Spread(load.entry, name, float(w[m]), float(w[m]), 270.0, 0.0, float(t.length[m]))
         for m, name in enumerate(frame.members)
@@ -122,7 +123,8 @@ def _moves(frame: Frame, case: str) -> Iterator[_Move]:
     loads = frame.cases[case].loads
     entries: dict[int, list[int]] = {}
     for k, load in enumerate(loads):
-        entries.setdefault(load.entry, []).append(k)
+        if not isinstance(load, Lean):  # it is no load of its own: it follows the others
+            entries.setdefault(load.entry, []).append(k)
     for entry, places in entries.items():
         where = (f"{case}[{entry}]",)
         what = _what(frame, [loads[k] for k in places])
@@ -269,7 +271,8 @@ def _factors_of_entries(screen: Screen) -> Iterator[Option]:
     for case in frame.cases:
         entries: dict[int, list[int]] = {}
         for k, load in enumerate(frame.cases[case].loads):
-            entries.setdefault(load.entry, []).append(k)
+            if not isinstance(load, Lean):
+                entries.setdefault(load.entry, []).append(k)
         for entry, places in entries.items():
             moves.append(_Move(case, dict.fromkeys(places, ()), (f"{case}[{entry}]",), "", FACTOR))
     gone = _deltas(screen, moves)

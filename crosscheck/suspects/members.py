@@ -9,7 +9,7 @@ from functools import partial
 import numpy as np
 
 from crosscheck.frame.model import FREE, HELD, Floats, Frame, SelfWeight, Temperature
-from crosscheck.suspects.changes import Change, with_member, with_member_factors
+from crosscheck.suspects.changes import Change, in_state, with_member, with_member_factors
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.suspect import Family, Option, Placed, named
 
@@ -91,11 +91,15 @@ def _fixed(frame: Frame, m: int) -> Iterator[_Trial]:
             yield _Trial(m, 1.0, factor, own, "stiffness", f"{label} had {factor:g} times its EA", STIFFNESS + 0.2)
             yield _Trial(m, factor, factor, own, "stiffness", f"{label} had {factor:g} times its EI and EA", STIFFNESS)
     s = frame.sections[member.section]
+    if member.pieces:
+        return
+    bends, stretches = in_state(frame, member.section)
     for q in frame.sections.values():
-        stretch = q.A / s.A if q.A and s.A else 1.0
+        new, area = in_state(frame, q.name)
+        stretch = area / stretches if area and stretches else 1.0
         if q.name != s.name:
             yield _Trial(
-                m, q.I / s.I, stretch, own, "stiffness", f"{label} was given section {q.name}", OTHER_SECTION, q.name
+                m, new / bends, stretch, own, "stiffness", f"{label} was given section {q.name}", OTHER_SECTION, q.name
             )
 
 
@@ -202,7 +206,7 @@ def section_options(frame: Frame) -> Iterator[Placed]:
         return
     for m, member in enumerate(frame.members.values()):
         label = named(frame, "member", member.name)
-        for other in frame.sections:
+        for other in frame.sections if not member.pieces else ():
             if other != member.section:
                 change = Change(partial(with_member, name=member.name, section=other))
                 says = f"{label} was given section {other}"

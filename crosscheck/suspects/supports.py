@@ -35,7 +35,8 @@ def support_options(screen: Screen) -> Iterator[Option]:
             texts.append(says)
             costs.append(cost)
     block, wanted = np.array(joints, dtype=np.int64), np.array(stiffness, dtype=float).reshape(-1, 3)
-    actions = [screen.base.support_actions(name, block, wanted) for name in screen.seen.names]
+    actual = wanted * _state_factors(frame)[block]
+    actions = [screen.base.support_actions(name, block, actual) for name in screen.seen.names]
     good = np.all([np.isfinite(a).all(axis=1) for a in actions], axis=0)
     left = screen.left_by(screen.support_grams, block, [np.nan_to_num(a) for a in actions])
     names = list(frame.joints)
@@ -46,6 +47,12 @@ def support_options(screen: Screen) -> Iterator[Option]:
         if good[k]:
             delta = screen.delta_of(screen.effects.reaction, joints[k], [a[k] for a in actions])
             yield _option(frame, names[joints[k]], wanted[k], texts[k], costs[k], delta)
+
+
+def _state_factors(frame: Frame) -> Floats:
+    """(j, 3) factors on support stiffness of the state that the frame's tables are of."""
+    of = frame.states[frame.state].supports if frame.state else {}
+    return np.array([[of.get(joint, {}).get(axis, 1.0) for axis in AXES] for joint in frame.joints])
 
 
 def _current(frame: Frame, joint: str) -> Support:
@@ -125,8 +132,10 @@ def _fit_spring(
 ) -> tuple[float, Floats] | None:
     """The stiffness that leaves least over, and its effect; None where it improves little."""
 
+    factors = _state_factors(screen.frame)[j]
+
     def actions(stiffness: Floats) -> list[Floats]:
-        wanted = np.array([_with(own, axis, float(k)) for k in stiffness])
+        wanted = np.array([_with(own, axis, float(k)) for k in stiffness]) * factors
         return [screen.base.support_actions(n, np.full(len(wanted), j), wanted) for n in screen.seen.names]
 
     def delta(k: float) -> Floats:

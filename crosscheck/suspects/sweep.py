@@ -192,7 +192,8 @@ class Sweep:
             told.sort(key=lambda w: w.rough)
             told = [w for o in told[: 4 * CONFIRMED] if (w := self.solve(o.option)) is not None]
         quick += told
-        quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame)]) + self._other_cases()
+        quick += self._solved([*whole_options(self.frame), *temperature_options(self.frame)])
+        quick += [] if self.stand_in else self._other_cases()
         quick += adjusted(self)
         quick.sort(key=lambda w: w.score)
         if not (quick and quick[0].fits) and not self.stand_in:

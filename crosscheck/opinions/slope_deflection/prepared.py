@@ -32,6 +32,7 @@ from crosscheck.frame.model import (
     LoadCase,
     MemberTable,
     Settlement,
+    Variation,
 )
 from crosscheck.opinions.slope_deflection.members import coefficients, end_actions, fixed_ends, simple_beam_rotations
 from crosscheck.opinions.slope_deflection.spans import ClosedFormSpans
@@ -231,7 +232,9 @@ class Prepared:
         state = self._state(name)
         fixed = state.fixed[0]
         ends = end_actions(self.frame, state.forces[:, :2, 0], state.forces[:, 2, 0] + fixed.axial, fixed)
-        return gathered(self.frame, ends) - state.tables[0].joint
+        pull = gathered(self.frame, ends) - state.tables[0].joint
+        ties = self._axes.T @ (self.system.ties.T @ state.ties[:, 0])
+        return np.asarray(pull + np.asarray(ties).reshape(-1, 3))
 
     # --- effects ---
 
@@ -344,6 +347,8 @@ class Prepared:
             stiff = replace(self.frame)
             t = self.frame.member_table
             stiff.__dict__["member_table"] = replace(t, I=t.I * STIFFER)
+            if t.varying.any():
+                stiff.__dict__["variation"] = replace(self.frame.variation, I=self.frame.variation.I * STIFFER)
             rest = simple_beam_rotations(stiff, table)
             self._turns[name] = simple_beam_rotations(self.frame, table) - rest, rest
         return self._turns[name]
@@ -385,6 +390,8 @@ class Prepared:
         fields = {f: getattr(t, f)[member] for f in MemberTable.__dataclass_fields__}
         fields |= {"I": fields["I"] * bending, "A": fields["A"] * stretching, "turn": turn}
         bench.__dict__["member_table"] = MemberTable(**fields)
+        if fields["varying"].any():
+            bench.__dict__["variation"] = _each_varied(self.frame.variation, member, bending, stretching)
         new = coefficients(bench)
         blocks = np.zeros((len(member), 3, 3))
         blocks[:, :2, :2] = new.stiffness
@@ -508,6 +515,10 @@ class Prepared:
         of = np.array([self.frame.member_index[load.member] for load in loads])  # type: ignore[union-attr]
         copies = {str(k): replace(members[m], name=str(k)) for k, m in enumerate(of.tolist())}
         bench = replace(self.frame, members=copies, combinations={})
+        whole = self.frame.member_table
+        bench.__dict__["member_table"] = MemberTable(**{f: getattr(whole, f)[of] for f in MemberTable.__dataclass_fields__})
+        if whole.varying[of].any():
+            bench.__dict__["variation"] = _each_varied(self.frame.variation, of, np.ones(len(of)), np.ones(len(of)))
         each_load: list[Any] = list(loads)
         case = tuple(replace(load, member=str(k)) for k, load in enumerate(each_load))
         table = _one_case(bench, case)
@@ -550,6 +561,28 @@ class Prepared:
         out[row, place[copy]] += value
 
 
+def _each_varied(v: Variation, member: Ints, bending: Floats, stretching: Floats) -> Variation:
+    """The pieces of each of some members (n,), as those of members 0 to n - 1, with I and A times factors (n,)."""
+    first, last = np.searchsorted(v.member, member), np.searchsorted(v.member, member, side="right")
+    count = last - first
+    own = np.repeat(np.arange(len(member)), count)
+    row = np.arange(len(own)) + np.repeat(first - (np.cumsum(count) - count), count)
+    fields = {f: getattr(v, f)[row] for f in Variation.__dataclass_fields__}
+    fields |= {"member": own, "I": fields["I"] * bending[own, None], "A": fields["A"] * stretching[own, None]}
+    return Variation(**fields)
+
+
+def working_frame(frame: Frame, name: str) -> Frame:
+    """The frame without the one-way members and supports that are out under a case or combination in first order; all of
+    them stay in where no settled state is found."""
+    if not frame.one_way:
+        return frame
+    from crosscheck.opinions.slope_deflection.one_way import OneWay
+
+    settled = OneWay(frame).settled(name)
+    return frame if settled is None else settled.frame
+
+
 def prepared(frame: Frame) -> Prepared:
     """The frame with its matrix factorised. Raises ArithmeticError where it can move freely."""
     return Prepared(frame)
@@ -571,7 +604,7 @@ def _gathered_each(frame: Frame, ends: Floats) -> Floats:
 
 def _one_case(frame: Frame, loads: tuple[Load, ...]) -> LoadTable:
     changed = replace(frame, cases={"": LoadCase("", loads)}, combinations={})
-    for name in ("member_table", "joint_index", "member_index", "support_table", "xy"):
+    for name in ("member_table", "variation", "joint_index", "member_index", "support_table", "xy"):
         if name in frame.__dict__:
             changed.__dict__[name] = frame.__dict__[name]
     return load_table(changed, "")

@@ -229,7 +229,7 @@ def _levers(frame: Frame, s: Stretches) -> tuple[Floats, Floats]:
 
 
 def _by_member(frame: Frame, s: Stretches, rows: Floats) -> Floats:
-    out = np.zeros((len(frame.members), rows.shape[1]))
+    out = np.zeros((len(frame.member_table.length), rows.shape[1]))
     np.add.at(out, s.member, rows)
     return out
 

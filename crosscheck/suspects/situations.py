@@ -1,0 +1,181 @@
+"""The sweep over a frame whose cases and combinations differ in stiffness, in order or in what works, or that has what no
+low-rank change foretells.
+
+Everything is judged by solving again, each case or combination in its own state and order, without superposition. Mistakes
+of the week's grammar are few and all tried. For all others a frame of one stiffness and first order stands in, that of
+the situation which is furthest off: it foretells the same differences, and the likeliest of what it names are solved again.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import replace
+from functools import partial
+
+import numpy as np
+
+from crosscheck.answer import Answer, Silent, joined
+from crosscheck.compare.claimed import ClosedClaim
+from crosscheck.frame.kinematics import study
+from crosscheck.frame.model import Frame, Ints
+from crosscheck.opinions import slope_deflection
+from crosscheck.opinions.slope_deflection.prepared import prepared, working_frame
+from crosscheck.problems import UnusableInput
+from crosscheck.suspects.adjusted import adjusted
+from crosscheck.suspects.changes import Change, of_case, usable
+from crosscheck.suspects.observation import Observation
+from crosscheck.suspects.paste import paste_options
+from crosscheck.suspects.suspect import Family, Option
+from crosscheck.suspects.sweep import Sweep, Weighed
+from crosscheck.suspects.week import week_options
+from crosscheck.suspects.whole import other_order, temperature_options, whole_options
+
+LIKELIEST, FITS = 40, 4
+"""Options of the stand-in that are solved again, and how many of them have their number fitted anew."""
+LIKELIEST_SLOW, FITS_SLOW = 20, 2
+"""The same where a claimed combination is of second order."""
+
+
+class SituationsSweep(Sweep):
+    """As a Sweep, without a matrix factorised once: there is no one matrix."""
+
+    def __init__(self, seen: Observation, closed: ClosedClaim, answer: Answer) -> None:
+        self.seen, self.closed, self.answer, self.stand_in = seen, closed, answer, False
+        self.frame = seen.frame
+        self.solved = 0
+        self.results = {}
+
+    @property
+    def slow(self) -> bool:
+        return any(self.frame.under(name).analysis.order == 2 for name in self.seen.names)
+
+    def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
+        """None: each pair would be another search."""
+        return []
+
+    # --- solving
+
+    def answer_to(self, changed: Frame, names: Sequence[str], loads_only: bool) -> Answer | None:
+        """The changed frame's results, each name in its own situation; None where one has none."""
+        self.solved += 1
+        groups: dict[int, tuple[Frame, list[str]]] = {}
+        for name in names:
+            plain = changed.under(name)
+            groups.setdefault(id(plain), (plain, []))[1].append(name)
+        parts: list[tuple[tuple[str, ...], Answer | Silent]] = []
+        with np.errstate(all="ignore"):
+            for plain, group in groups.values():
+                part = _solved(plain, tuple(group))
+                if part is None:
+                    return None
+                parts.append((tuple(group), part))
+        whole = joined(parts)
+        return whole if isinstance(whole, Answer) else None
+
+    # --- gathering
+
+    def singles(self) -> list[Weighed]:
+        """Every single mistake worth telling, best first."""
+        found = [self.weigh(o) for o in paste_options(self.seen)]
+        found += self._solved(week_options(self.frame, self.seen.names)) + self._other_cases()
+        if not any(w.fits for w in found):
+            # What is common to every frame costs more to try.
+            found += self._solved([*whole_options(self.frame), *temperature_options(self.frame)])
+            found += [] if self.frame.one_way else list(adjusted(self))
+            found += self._solved(other_order(self.frame))
+        if not self.large and not any(w.fits for w in found):
+            found += self._by_stand_in()
+        return sorted(found, key=lambda w: w.score)
+
+    def _other_cases(self) -> list[Weighed]:
+        """Results of one case standing under the name of another: all are at hand."""
+        seen, out = self.seen, []
+        for k, name in enumerate(seen.names):
+            rows = np.flatnonzero(seen.case == k)
+            for other in self.frame.names:
+                if other == name or other not in self.answer.cases:
+                    continue
+                said = seen.said.copy()
+                names = tuple(other if n == name else n for n in seen.names)
+                said[rows] = seen.read(self.answer, names, rows)[rows]
+                change = Change(claim=partial(of_case, case=name, other=other))
+                option = Option("load case", (), f"the results of {other} stand under {name}", change, 0.2)
+                if np.isfinite(said).all():
+                    out.append(self.weigh(option, said))
+        return out
+
+    # --- one frame that stands in for all
+
+    def _by_stand_in(self) -> list[Weighed]:
+        """What explains the same differences from a frame of one stiffness and first order, solved again."""
+        inner = self._stand_in()
+        if inner is None:
+            return []
+        with np.errstate(all="ignore"):
+            ranked = [w.option for w in inner.singles() if w.option.change.frame is not None and w.option.claimed is None]
+        distinct = {(o.where, o.says): replace(o, delta=None) for o in ranked}
+        likeliest, fits = (LIKELIEST_SLOW, FITS_SLOW) if self.slow else (LIKELIEST, FITS)
+        found = sorted(self._solved(list(distinct.values())[:likeliest]), key=lambda w: w.rough)
+        for w in [] if any(w.fits for w in found) else found[:fits]:
+            found += self._fitted_again(w)
+        return found
+
+    def _fitted_again(self, w: Weighed) -> Iterator[Weighed]:
+        if w.option.again is not None:
+            at, p = w.option.again
+            better = self.fit(Family(at, (p, 1.1 * p), p > 0))
+            if better is not None:
+                yield better
+
+    def _stand_in(self) -> Sweep | None:
+        """A sweep over the part of the claim that is furthest off, in a frame of first order with what works under it; None
+        where that frame can move."""
+        name = self._furthest()
+        frame, names = self._first_order(name)
+        index = {n: k for k, n in enumerate(names)}
+        rows = np.flatnonzero([self.seen.names[k] in index for k in self.seen.case])
+        case = np.array([index[self.seen.names[k]] for k in self.seen.case[rows]], dtype=np.int64)
+        try:
+            base = prepared(frame)
+            answer = base.answer(names)
+        except (ArithmeticError, np.linalg.LinAlgError, UnusableInput):
+            return None
+        part = _part(self.seen, frame, names, rows, case)
+        said = part.read(answer)
+        good = np.isfinite(said)
+        part = replace(part, said=said, value=said + part.residual)
+        return Sweep(part, self.closed, base, answer, True) if good.all() and len(rows) else None
+
+    def _furthest(self) -> str:
+        """The claimed name whose values are furthest off in all, in units of tolerance."""
+        off = (self.seen.residual / self.seen.allowed) ** 2
+        total = np.bincount(self.seen.case, weights=off, minlength=len(self.seen.names))
+        return self.seen.names[int(np.argmax(total))]
+
+    def _first_order(self, name: str) -> tuple[Frame, tuple[str, ...]]:
+        """The frame that stands in for the situation of a name, and the claimed names that are in the same one."""
+        plain = self.frame.under(name)
+        same = tuple(n for n in self.seen.names if self.frame.under(n) is plain)
+        first = plain if plain.analysis.order == 1 else replace(plain, analysis=replace(plain.analysis, order=1))
+        return (working_frame(first, name), (name,)) if self.frame.one_way else (first, same)
+
+
+def _part(seen: Observation, frame: Frame, names: tuple[str, ...], rows: Ints, case: Ints) -> Observation:
+    """Some rows of an observation, of other names and of a frame that stands in."""
+    return Observation(
+        frame, names, tuple(seen.values[k] for k in rows.tolist()), case, seen.part(rows), seen.extreme[rows],
+        seen.value[rows], seen.said[rows], seen.half[rows], seen.allowed[rows], seen.at,
+    )  # fmt: skip
+
+
+def _solved(plain: Frame, names: tuple[str, ...]) -> Answer | None:
+    """Results of a frame in one situation; None where it can move, lacks a number or has none for some name."""
+    try:
+        if not usable(plain):
+            return None
+        if plain.analysis.order == 1 and not plain.one_way:
+            return prepared(plain).answer(names, deflections=True)
+        answer = slope_deflection.opine(plain, study(plain), names)
+    except (ArithmeticError, np.linalg.LinAlgError, RuntimeError, UnusableInput):
+        return None
+    return answer if isinstance(answer, Answer) and all(n in answer.cases for n in names) else None
