@@ -187,6 +187,14 @@ def test_taper_constants() -> None:
     assert found == pytest.approx(exact, rel=1e-13)
 
 
+def test_working_shows_the_stiffness_of_a_taper() -> None:
+    """F07 again, as the table of factors has it: far end held, and its carry-over."""
+    frame = tapered('{ joint = "A", couple = 1 }', ("roller", "fixed"), length=1.0, r=0.5)
+    factors = next(t for t in working(frame, study(frame), "case") if t.heading.startswith("Distribution"))
+    assert factors.rows[0][:2] == ("A", "A-B")
+    assert factors.rows[0][2:] == pytest.approx((5.459579939529795, 1.0, 0.6757607636774412), rel=1e-13)
+
+
 # --- tapered members: closed forms ------------------------------------------------------------------
 
 LENGTH, R, I0, A0, S0, H0 = 3.0, 1.7, 2.0, 5.0, 4.0, 0.4

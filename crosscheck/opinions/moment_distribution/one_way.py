@@ -1,11 +1,11 @@
 """Members and supports that work one way only: which of them work in a case.
 
 Whether a part works is tried: from all in place on, the part that works the wrong way worst is taken out, or the one that
-was taken out and would work again worst is put back, one at a time, until each does what it may. States seen before are
-not gone back to. Where that leads round in a circle the first of the parts that are wrong, in a fixed order, is changed
-instead, which comes to an end in every frame that stands with all of them out (K. G. Murty, "Note on a Bard-type scheme
-for solving the complementarity problem", Opsearch 11 (1974), 123-130, from memory); and a few parts are tried in every
-way there is.
+was taken out and would work again worst is put back, one at a time, until each does what it may; all that are wrong are
+changed at once where that leaves fewer wrong. States seen before are not gone back to. Where that leads round in a circle
+the first of the parts that are wrong, in a fixed order, is changed instead, which comes to an end in every frame that
+stands with all of them out (K. G. Murty, "Note on a Bard-type scheme for solving the complementarity problem", Opsearch
+11 (1974), 123-130, from memory); and a few parts are tried in every way there is.
 
 A frame with parts taken out may be able to move freely. It is then let go against hardly any resistance, and what this
 closes is put back.
@@ -136,11 +136,20 @@ def _worst_first(out: Out, tried: Tried[Found], seen: dict[Out, Judged[Found]]) 
         judged = tried(out)
         if judged.settled:
             return judged
+        many = out ^ frozenset(judged.wrong)
+        if judged.found is not None and many not in seen and _gains(judged, tried(many)):
+            out = many
+            continue
         fresh = [out ^ {part} for part in judged.wrong if out ^ {part} not in seen]
         if not fresh:
             return None
         out = fresh[0]
     return None
+
+
+def _gains(before: Judged[Found], after: Judged[Found]) -> bool:
+    """Whether a state that stands has less that is wrong than another."""
+    return after.found is not None and len(after.wrong) < len(before.wrong)
 
 
 def _in_order(out: Out, tried: Tried[Found]) -> Judged[Found] | None:
