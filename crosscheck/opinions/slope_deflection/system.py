@@ -236,16 +236,13 @@ def penalty(frame: Frame, axial: Floats) -> float:
 
 def tie_rows(frame: Frame) -> Sparse:
     """(t, 3j): from joint displacements along the support axes to how much further than its tie's first joint each
-    further joint moves along the tie. A joint that neither member nor support holds goes wherever its tie takes it, and
-    ties nothing."""
+    further joint moves along the tie."""
     rows: list[tuple[int, int, float]] = []
     count = 0
-    adrift = (frame.support_table.stiffness[:, :2] == FREE).all(axis=1)
-    adrift[frame.member_table.ends.ravel()] = False
     for tie in frame.ties.values():
         c, s = direction_cosines(tie.direction)
-        bound = [3 * k for k in (frame.joint_index[joint] for joint in tie.joints) if not adrift[k]]
-        for first, other in ((bound[0], other) for other in bound[1:]):
+        first, *others = (3 * frame.joint_index[joint] for joint in tie.joints)
+        for other in others:
             rows += [(count, first, -c), (count, first + 1, -s), (count, other, c), (count, other + 1, s)]
             count += 1
     row, column, data = np.array(rows, dtype=float).reshape(-1, 3).T
