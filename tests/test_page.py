@@ -166,6 +166,18 @@ def test_not_for_acceptance_stands_across_what_is_open(folder: Path) -> None:
     assert re.search(r'class="verdict agree".*?<strong>agree</strong>', text)
 
 
+def test_an_undecided_record_is_open_and_takes_no_comfort_from_silence(folder: Path) -> None:
+    frame = FRAME + '[loads.wind]\napply = [{ joint = "B", force = 2, direction = "right" }]\n'
+    folder.joinpath("f.toml").write_text(frame, encoding="utf-8")
+    folder.joinpath("few.csv").write_text("member,joint,moment kNm\nA-B,A,1.234\n", encoding="utf-8")
+    status, text = verified(folder, "few.csv")
+    page = Page(text)
+    assert status == 3
+    assert "the verdict is undecided" in page.text and "NOT FOR ACCEPTANCE" in page.text
+    assert "Nothing could be compared." in page.text
+    assert "None in the 18 values compared." in Page(verified(folder, "good.csv", "--case", "dead")[1]).text
+
+
 HOSTILE = "<script>alert(1)</script><img src=x onerror=alert(2)>{{7*7}}&lt;\u202egnp.exe\u200b" + "x" * 400
 
 

@@ -43,8 +43,8 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
         _drawing(frame, numbered),
         _printed_input(result),
         _suspects(result),
-        _differences(frame, numbered, "Differences between the claim and the opinions", claim=True),
-        _differences(frame, _own_differences(opinions), "Differences between the opinions", claim=False),
+        _claim_differences(result, numbered),
+        _own_section(_own_differences(opinions)),
         Section("Audit of the claim", _audits(frame, result.audits)),
         *(_case(opinions, name, result, numbered) for name in names[: _pictured(frame)]),
         *_tables(opinions, names),
@@ -69,7 +69,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
     sections = [
         checked(frame, terminal.opinions_facts(result), around, result.warnings),
         _drawing(frame, numbered),
-        _differences(frame, numbered, "Differences between the opinions", claim=False),
+        _own_section(numbered),
         *(_case(result, name, None, numbered) for name in result.names[: _pictured(frame)]),
         *_tables(result, list(result.names)),
         Section("Not compared", (Says(tuple(terminal.undetermined_lines(result)) or ("Nothing was left out.",)),)),
@@ -220,10 +220,18 @@ def _suspects(result: Verification) -> Section:
     return Section("Suspects", (Grid(caption, columns, tuple(rows)), *([Says(tuple(ties))] if ties else [])))
 
 
-def _differences(frame: Frame, numbered: Sequence[tuple[int, Difference]], title: str, claim: bool) -> Section:
-    if not numbered:
-        return Section(title, (Says(("None.",)),) if claim else ())
-    return Section(title, (_claim_grid(frame, numbered) if claim else _own_grid(numbered),))
+def _claim_differences(result: Verification, numbered: Sequence[tuple[int, Difference]]) -> Section:
+    """Where there are none, in how many values: none of none is no comfort."""
+    title = "Differences between the claim and the opinions"
+    if numbered:
+        return Section(title, (_claim_grid(result.opinions.frame, numbered),))
+    compared = sum(c.compared for c in result.cases)
+    says = f"None in the {words.counted(compared, 'value')} compared." if compared else "Nothing could be compared."
+    return Section(title, (Says((says,)),))
+
+
+def _own_section(numbered: Sequence[tuple[int, Difference]]) -> Section:
+    return Section("Differences between the opinions", (_own_grid(numbered),) if numbered else ())
 
 
 def _claim_grid(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Grid:
