@@ -126,7 +126,6 @@ VALUES = {  # values compared in each: (bent, beam, storeys)
     "calfem nodes.txt": (27, 33, 36), "calfem elements.txt": (75, 75, 150),
     "pynite nodes.txt": (36, 31, 54), "pynite end forces.txt": (30, 30, 60), "pynite extremes.txt": (30, 30, 60),
     "pynite stations.csv": (75, 75, 150),
-    "opensees tables.txt": (66, 61, 114), "opensees global forces.csv": (30, 30, 60),
 }  # fmt: skip
 FRAMES = ("bent", "beam", "storeys")
 CASES = [(frame, kind, counts[k]) for kind, counts in VALUES.items() for k, frame in enumerate(FRAMES)]
@@ -155,10 +154,3 @@ def test_one_spoiled_value_of_a_printout_is_not_agreed_to(frame: str, kind: str,
     printed = max(values_of[line], key=lambda t: abs(float(t)))
     wrong = f"{float(printed) * 1.4:.6g}".rjust(len(printed))
     assert kept(frame).judge(text.replace(line, line.replace(printed, wrong)))[0] != "agree"
-
-
-@pytest.mark.parametrize("frame", FRAMES)
-def test_lists_of_a_library_that_name_no_columns_are_undecided(frame: str) -> None:
-    verdict, closed, _ = kept(frame).judge((PRINTOUTS / f"{frame}.opensees print.txt").read_text(encoding="utf-8"))
-    assert verdict == "undecided"
-    assert "say what its columns are" in closed.undecided[0]

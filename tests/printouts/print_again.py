@@ -3,7 +3,7 @@ libraries' own means and with pandas, numpy and tabulate, as somebody who uses t
 
 Not run by the tests, and none of these is a dependency. In an environment of its own:
 
-    pip install PyNiteFEA==3.2.0 calfem-python-small==3.6.5 openseespy==3.7.1.2 pandas prettytable
+    pip install PyNiteFEA==3.2.0 calfem-python-small==3.6.5 pandas prettytable
     python print_again.py
 
 The frames are read from the TOML files beside this one and not by crosscheck. Only loads on joints and uniform loads
@@ -188,60 +188,7 @@ def print_pynite(name: str) -> None:
     (HERE / f"{name}.pynite stations.csv").write_text(stations.to_csv(index=False), encoding="utf-8")
 
 
-# --- openseespy: lists printed node by node and element by element, and its own print
-
-
-def opensees(frame: Frame) -> Any:
-    import openseespy.opensees as ops
-
-    ops.wipe()
-    ops.model("basic", "-ndm", 2, "-ndf", 3)
-    for j, (x, y) in frame.joints.items():
-        ops.node(int(j), x, y)
-    for j, flags in frame.supports.items():
-        ops.fix(int(j), *flags)
-    ops.geomTransf("Linear", 1)
-    for name, m in frame.members.items():
-        A, inertia = frame.properties(name)
-        ops.element("elasticBeamColumn", int(name), int(m["from"]), int(m["to"]), A, frame.E, inertia, 1)
-    ops.timeSeries("Linear", 1)
-    ops.pattern("Plain", 1, 1)
-    for name in frame.uniform:
-        ops.eleLoad("-ele", int(name), "-type", "-beamUniform", *frame.across_and_along(name))
-    for j, (fx, fy) in frame.forces.items():
-        ops.load(int(j), fx, fy, 0.0)
-    for word, kind in (("system", "BandGeneral"), ("numberer", "Plain"), ("constraints", "Plain")):
-        getattr(ops, word)(kind)
-    ops.integrator("LoadControl", 1.0)
-    ops.algorithm("Linear")
-    ops.analysis("Static")
-    ops.analyze(1)
-    ops.reactions()
-    return ops
-
-
-def print_opensees(name: str) -> None:
-    frame = Frame(name)
-    ops = opensees(frame)
-    nodes = [[tag, *ops.nodeDisp(tag), *ops.nodeReaction(tag)] for tag in ops.getNodeTags()]
-    heads = ["node", "ux", "uy", "rz", "Rx", "Ry", "Mz"]
-    text = pd.DataFrame(nodes, columns=heads).to_string(index=False) + "\n\n"
-    forces = [[tag, *ops.eleResponse(tag, "localForce")] for tag in ops.getEleTags()]
-    heads = ["ele", "N_1", "V_1", "M_1", "N_2", "V_2", "M_2"]
-    text += pd.DataFrame(forces, columns=heads).round(3).to_string(index=False) + "\n"
-    (HERE / f"{name}.opensees tables.txt").write_text(text, encoding="utf-8")
-    global_forces = [[tag, *ops.eleResponse(tag, "force")] for tag in ops.getEleTags()]
-    heads = ["Element", "Fx_i", "Fy_i", "Mz_i", "Fx_j", "Fy_j", "Mz_j"]
-    text = pd.DataFrame(global_forces, columns=heads).to_csv(index=False, float_format="%.6g")
-    (HERE / f"{name}.opensees global forces.csv").write_text(text, encoding="utf-8")
-    (HERE / f"{name}.opensees print.txt").unlink(missing_ok=True)
-    ops.printModel("-file", str(HERE / f"{name}.opensees print.txt"), "-node")
-    ops.printModel("-file", str(HERE / f"{name}.opensees print.txt"), "-ele")
-    ops.wipe()
-
-
 if __name__ == "__main__":
     for which in ("bent", "beam", "storeys"):
         print_calfem(which)
         print_pynite(which)
-        print_opensees(which)
