@@ -30,7 +30,7 @@ from tests.mutation.alter import Mutant, mutants
 from tests.mutation.patch import caches, install
 from tests.mutation.rooms import ROOMS, ROOT, Room, known
 
-SECONDS = 60
+SECONDS = 240
 """CPU seconds after which a mutant counts as noticed: it makes somebody wait."""
 MODULES = {"slope-deflection": slope_deflection, "moment-distribution": moment_distribution, "library": library}
 BECAME = {
