@@ -6,8 +6,8 @@ import importlib
 import inspect as python
 from dataclasses import dataclass
 
-from crosscheck.answer import Answer
-from crosscheck.check import critical_factors
+from crosscheck.answer import Answer, Silent, joined
+from crosscheck.check import critical_factors, situations
 from crosscheck.frame.kinematics import mechanisms, study
 from crosscheck.frame.model import Frame
 from crosscheck.problems import UnusableInput
@@ -66,7 +66,7 @@ def subject_of(frame: Frame, limits: Limits | None = None, stability: bool = Tru
         return Subject(frame, motions, limits=limits)
     try:
         found = study(frame)
-        answer = importlib.import_module(OPINION).opine(frame, found) if frame.cases else None
+        answer = _answer(frame) if frame.cases else None
     except UnusableInput as error:
         return Subject(frame, limits=limits, refused=error.problems)
     if not isinstance(answer, Answer):
@@ -74,6 +74,12 @@ def subject_of(frame: Frame, limits: Limits | None = None, stability: bool = Tru
     critical = critical_factors(frame) if stability else {}
     rough = storey_factors(frame, found, answer.cases) if stability else {}
     return Subject(frame, (), found, answer, critical, rough, limits)
+
+
+def _answer(frame: Frame) -> Answer | Silent:
+    """Every case and combination in its own state of stiffness and order. Raises UnusableInput."""
+    opine = importlib.import_module(OPINION).opine
+    return joined([(names, opine(plain, study(plain), names)) for plain, names in situations(frame, frame.names)])
 
 
 def inspect(subject: Subject) -> list[Finding]:

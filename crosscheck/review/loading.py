@@ -203,7 +203,8 @@ def unloaded_span(subject: Subject) -> Iterator[Finding]:
     Source: common practice.
     """
     names = list(subject.frame.members)
-    loaded = {name: _loaded(subject, name) for name in subject.frame.cases}
+    # An arrangement of a stated pattern leaves spans bare on purpose.
+    loaded = {name: _loaded(subject, name) for name, case in subject.frame.cases.items() if not case.arranged}
     long = [run for run in runs(subject) if len(run) >= 3]
     for name, here in loaded.items():
         for run in long:
