@@ -34,6 +34,8 @@ FEWEST = 4
 """After so many rounds, corrections that no longer halve are rounding noise and end the rounds too."""
 TRACE = 1e-6
 """Share of the largest 12 EI/l^3 times the largest displacement that counts as an action where there is none larger."""
+FEW = 16
+"""Cases up to which values are looked through case by case."""
 UNMOVED = 1e-9
 """Displacements below this share of the largest force over the largest stiffness are none."""
 STILL = 1e-15
@@ -135,9 +137,9 @@ class System:
         last = np.inf
         # Corrections are judged by the largest displacement so far: the final ones may be nothing but rounding noise. Where
         # loads go straight into supports every displacement is.
-        loads = np.abs(outer).reshape(-1, 3, outer.shape[1])[:, :2].max(axis=(0, 1), initial=0.0)
+        loads = _largest(outer.reshape(-1, 3, outer.shape[1])[:, :2].reshape(-1, outer.shape[1]))
         least = UNMOVED * np.maximum(loads, self._largest_elastic(forces)) / self._stiffest_way
-        reach = np.maximum(np.abs(shift).max(axis=0, initial=0.0), least)
+        reach = np.maximum(_largest(shift), least)
         for done in range(1, ROUNDS + 1):
             residual = outer - every.T @ forces - self.spring[:, None] * shift
             step = np.zeros_like(shift)
@@ -145,7 +147,7 @@ class System:
             shift = shift + step
             bent = every @ step
             forces = forces + self._stiffness @ bent
-            reach = np.maximum(reach, np.abs(shift).max(axis=0, initial=0.0))
+            reach = np.maximum(reach, _largest(shift))
             shares = _shares(step, reach)
             size = float(shares.max(initial=0.0))
             if size <= STILL or (done >= FEWEST and size >= last / 2):
@@ -164,7 +166,7 @@ class System:
         by_member = np.abs(forces[: 3 * len(self.rigid)]).reshape(-1, 3, forces.shape[1])
         by_member[:, :2] /= self.frame.member_table.clear[:, None, None]
         by_member[self.rigid, 2] = 0.0
-        return np.asarray(by_member.max(axis=(0, 1), initial=0.0))
+        return _largest(by_member.reshape(-1, forces.shape[1]))
 
     @property
     def _stiffest_way(self) -> float:
@@ -177,7 +179,7 @@ class System:
         by_member = np.abs(forces).reshape(-1, 3, forces.shape[1])
         by_member[:, :2] /= self.frame.member_table.clear[:, None, None]
         trace = TRACE * self.stiffest * reach
-        return np.asarray(np.maximum(by_member.max(axis=(0, 1), initial=0.0), trace))
+        return np.asarray(np.maximum(_largest(by_member.reshape(-1, forces.shape[1])), trace))
 
     def _joint_loads(self, table: LoadTable, fixed: FixedEnds) -> Floats:
         """(3j,) forces on the joints along their support axes: those applied, and those that the members' loads bring
@@ -217,9 +219,17 @@ class Solution:
         return CaseAnswer(ends, joints, reactions)
 
 
+def _largest(values: Floats) -> Floats:
+    """(cases,) the largest size in each column of (n, cases)."""
+    if values.shape[1] > FEW:
+        return np.asarray(np.abs(values).max(axis=0, initial=0.0))
+    # Of few columns one by one: numpy is several times slower along short rows.
+    return np.array([np.abs(column).max(initial=0.0) for column in values.T])
+
+
 def _shares(step: Floats, reach: Floats) -> Floats:
     """(cases,) largest correction (n, cases) of each case as a share of that case's reach (cases,)."""
-    size = np.abs(step).max(axis=0, initial=0.0)
+    size = _largest(step)
     return np.asarray(size / np.where(reach > 0.0, reach, 1.0))
 
 
