@@ -13,7 +13,9 @@ import pytest
 from crosscheck.answer import MOMENT, WorkTable
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.model import Frame
+from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions import slope_deflection
+from crosscheck.opinions.slope_deflection.prepared import prepared
 from tests.exact import Exact
 from tests.exact_frames import exact_frames
 
@@ -109,3 +111,19 @@ def test_fixed_end_moments_in_the_working() -> None:
     assert next(r for r in rows if r[0] == "B-C")[5:] == pytest.approx((-36.0, 36.0))
     assert next(r for r in rows if r[0] == "A-B")[5:] == pytest.approx((0.0, 0.0))
     assert Exact(frame).cases["q"].ends[1, 0, MOMENT] != pytest.approx(-36.0)
+
+
+def test_how_stiffly_a_frame_resists_at_a_free_end() -> None:
+    """EA/L along a cantilever, 3 EI/L^3 across it and EI/L against a couple at its tip: common practice."""
+    beam = read_frame_text("""
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [4, 0] }
+members."A-B" = { section = "s", material = "m" }
+supports.A = "fixed"
+[loads.q]
+apply = [{ joint = "B", force = 1, direction = "down" }]
+""")
+    found = prepared(beam).support_stiffness[1]
+    assert found == pytest.approx((200e6 * 5e-3 / 4, 3 * 2e4 / 64, 2e4 / 4), rel=1e-9)
