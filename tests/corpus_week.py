@@ -1,0 +1,346 @@
+"""Seeded mistakes of the checking week: states, leans, arrangements, ties, haunches, one-way parts, order by combination.
+
+As tests/corpus.py: the other analysis is solved by moment distribution, each case in its own state and order, and mistakes
+are drawn from small functions that the suspects do not know. Frames are the demonstrations of the week in cases/ and random
+ones (tests/week_frames.py). `python -m tests.corpus_week FIRST LAST PER` prints the table for some seeds; seeds 0 to 3 are
+the demonstrations.
+"""
+
+from __future__ import annotations
+
+import math
+import sys
+import time
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import replace
+from functools import lru_cache
+from pathlib import Path
+from random import Random
+from typing import Any
+
+import numpy as np
+
+from crosscheck import check
+from crosscheck.answer import Answer, CaseAnswer, Silent, joined
+from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
+from crosscheck.compare.differences import worst
+from crosscheck.compare.opinions import Comparison
+from crosscheck.frame.kinematics import study
+from crosscheck.frame.model import FREE, HELD, Combination, Frame, Lean, Piece, Section
+from crosscheck.opinions import moment_distribution, slope_deflection
+from crosscheck.problems import UnusableInput
+from crosscheck.suspects import Suspect, search
+from tests.corpus import CLAIM, EFFECT, FAINT, Mistake, Record, case_values, closed_claim, judged, table
+from tests.week_frames import week_frame
+
+CASES = Path(__file__).parents[1] / "cases"
+DEMONSTRATIONS = ("depot", "workshop", "rack", "causeway")
+
+
+# --- solving
+
+
+def solved(frame: Frame, names: tuple[str, ...], by: Any = moment_distribution) -> Answer | None:
+    """Results of each name in its own situation; None where there are none."""
+    parts: list[tuple[tuple[str, ...], Answer | Silent]] = []
+    try:
+        for plain, group in check.situations(frame, names):
+            parts.append((group, by.opine(plain, study(plain), group)))
+    except (UnusableInput, ArithmeticError, np.linalg.LinAlgError, RuntimeError):
+        return None
+    found = joined(parts)
+    return found if isinstance(found, Answer) and all(n in found.cases for n in names) else None
+
+
+@lru_cache(maxsize=8)
+def opinions_on(frame: Frame) -> check.Opinions | None:
+    """Opinions with slope-deflection alone, of all names that it speaks for."""
+    try:
+        parts = [(g, slope_deflection.opine(p, study(p), g)) for p, g in check.situations(frame, frame.names)]
+    except UnusableInput:
+        return None
+    answer = joined(parts)
+    if not isinstance(answer, Answer):
+        return None
+    answers = {"slope-deflection": answer}
+    comparison = Comparison(frame, answers)
+    return check.Opinions(frame, study(frame), frame.names, answers, {}, {n: comparison.judge(n) for n in frame.names})
+
+
+@lru_cache(maxsize=8)
+def the_frame(seed: int) -> Frame:
+    """Demonstrations as they are; of every five random frames, one has a combination of second order near its critical
+    load, and another leans five times as much, so that effects of both are seen."""
+    if seed < len(DEMONSTRATIONS):
+        return check.read(CASES / f"{DEMONSTRATIONS[seed]}.toml")
+    frame = week_frame(seed)
+    if seed % 5 == 0 and frame.combinations and not frame.one_way:
+        return _near_critical(frame)
+    if seed % 5 == 1:
+        return replace(frame, combinations={n: replace(c, lean=5 * c.lean) for n, c in frame.combinations.items()})
+    return frame
+
+
+def _near_critical(frame: Frame) -> Frame:
+    """The last combination in second order, its loads scaled to a fifth of the critical where there is one."""
+    name, c = list(frame.combinations.items())[-1]
+    try:
+        plain = frame.under(name)
+        factor = slope_deflection.critical_factors(plain, (name,), 1e6).get(name, math.inf)
+        scaled = {case: f * factor / 5.0 for case, f in c.factors.items()} if math.isfinite(factor) else c.factors
+        changed = replace(frame, combinations={**frame.combinations, name: replace(c, factors=scaled, order=2)})
+        study(changed.under(name))
+    except UnusableInput:
+        return frame
+    return changed
+
+
+# --- mistakes
+
+
+def _with(frame: Frame, combination: Combination, **fields: Any) -> Frame:
+    """Whoever had one combination wrong had all that it was stated with."""
+    mine = {
+        n: replace(c, **fields) if (c.stated or n) == (combination.stated or combination.name) else c
+        for n, c in frame.combinations.items()
+    }
+    return replace(frame, combinations=mine)
+
+
+def _member(frame: Frame, name: str, **fields: Any) -> Frame:
+    return replace(frame, members={**frame.members, name: replace(frame.members[name], **fields)})
+
+
+def mistakes(frame: Frame, name: str, r: Random) -> Iterator[Mistake]:
+    """All mistakes that the results of one case or combination may show."""
+    if name in frame.combinations:
+        yield from _of_combination(frame, frame.combinations[name])
+    yield from _of_spans(frame, name)
+    yield from _of_members(frame)
+    yield from _of_parts(frame)
+    for case in frame.combinations[name].factors if name in frame.combinations else (name,):
+        loads = frame.cases[case].loads
+        for load in loads:
+            if isinstance(load, Lean):
+                kept = tuple(q for q in loads if q is not load)
+                other = replace(frame, cases={**frame.cases, case: replace(frame.cases[case], loads=kept)})
+                yield Mistake("load", "lean of a case left out", (f"{case}[{load.entry}]",), other)
+
+
+def _names(state: Any) -> tuple[str, ...]:
+    names = dict.fromkeys(n for t in ("sections", "members", "materials", "supports") for n in getattr(state, t))
+    return tuple(dict.fromkeys([*names, *(f"{w} {n}" for n in names for w in ("section", "member", "material", "joint"))]))
+
+
+def _of_combination(frame: Frame, c: Combination) -> Iterator[Mistake]:
+    if c.stiffness:
+        state = frame.states[c.stiffness]
+        only = bool(state.supports) and not (state.sections or state.members or state.materials)
+        kind, sort = ("support", "service springs") if only else ("stiffness", "gross for state")
+        yield Mistake(kind, sort, _names(state), _with(frame, c, stiffness=""))
+        if state.supports and not only:
+            stiff = replace(state, supports={})
+            where = (*state.supports, *(f"joint {j}" for j in state.supports))
+            yield Mistake("support", "service springs", where, replace(frame, states={**frame.states, state.name: stiff}))
+    for other in frame.states.values():
+        if other.name != c.stiffness:
+            sort = "another state" if c.stiffness else "state for gross"
+            yield Mistake("stiffness", sort, _names(other), _with(frame, c, stiffness=other.name))
+    if c.lean:
+        where = (c.stated or c.name,)
+        yield Mistake("load", "lean left out", where, _with(frame, c, lean=0.0))
+        yield Mistake("load", "lean to the other side", where, _with(frame, c, lean=-c.lean))
+    if any(o.order for o in frame.combinations.values()):
+        order = c.order or frame.analysis.order
+        yield Mistake("idealisation", "order of a combination", (), _with(frame, c, order=3 - order))
+
+
+def _of_spans(frame: Frame, name: str) -> Iterator[Mistake]:
+    factors = frame.combinations[name].factors if name in frame.combinations else {name: 1.0}
+    for case, factor in factors.items():
+        stated = frame.cases[case].arranged or case
+        others = [c.name for c in frame.cases.values() if stated in (c.name, c.arranged) and c.name != case]
+        for other in others if len(others) else ():
+            sort = "all spans loaded" if other == stated else "another arrangement"
+            if name in frame.combinations:
+                new = {k: f for k, f in factors.items() if k != case} | {other: factor}
+                combination = replace(frame.combinations[name], factors=new)
+                changed = replace(frame, combinations={**frame.combinations, name: combination})
+            else:
+                loads = replace(frame.cases[case], loads=frame.cases[other].loads)
+                changed = replace(frame, cases={**frame.cases, case: loads})
+            yield Mistake("load", sort, (stated,), changed)
+
+
+def _of_members(frame: Frame) -> Iterator[Mistake]:
+    """Haunches and tapers left out or turned, rigid members that stretch and the reverse."""
+    varying = [m for m in frame.members.values() if m.pieces]
+    for m in varying:
+        for section in dict.fromkeys((m.section, m.pieces[0].first, m.pieces[-1].last)):
+            sort = "haunch or taper left out"
+            yield Mistake("stiffness", sort, _called(m.name), _member(frame, m.name, pieces=(), section=section))
+        ends = [0.0, *(p.until for p in m.pieces)]
+        turned = tuple(
+            Piece(p.last, p.first, 1 - ends[k] if k else 1.0) for k, p in reversed(list(enumerate(m.pieces)))
+        )
+        if turned != m.pieces:
+            yield Mistake("stiffness", "end for end", _called(m.name), _member(frame, m.name, pieces=turned))
+    if len(varying) > 1:
+        plain = {m.name: replace(m, pieces=()) for m in varying}
+        where = tuple(w for m in varying for w in _called(m.name))
+        yield Mistake("stiffness", "all haunches left out", where, replace(frame, members={**frame.members, **plain}))
+    if frame.analysis.axial == "elastic" and any(m.axial for m in frame.members.values()):
+        for m in frame.members.values():
+            if not m.only:
+                sort = "rigid member that stretched" if m.axial else "member taken as rigid"
+                new = _member(frame, m.name, axial="" if m.axial else "rigid")
+                yield Mistake("idealisation", sort, _called(m.name), new)
+
+
+def _called(member: str) -> tuple[str, ...]:
+    return member, f"member {member}"
+
+
+def _of_parts(frame: Frame) -> Iterator[Mistake]:
+    """Ties left out, one-way parts that worked both ways."""
+    for tie in frame.ties.values():
+        ties = {n: t for n, t in frame.ties.items() if n != tie.name}
+        where = (*tie.joints, *(f"joint {j}" for j in tie.joints))
+        yield Mistake("geometry", "tie left out", where, replace(frame, ties=ties))
+    for m in frame.members.values():
+        if m.only:
+            yield Mistake("stiffness", "one-way member two-way", _called(m.name), _member(frame, m.name, only=""))
+    for joint, s in frame.supports.items():
+        if s.x_only or s.y_only:
+            supports = {**frame.supports, joint: replace(s, x_only="", y_only="")}
+            where = (joint, f"joint {joint}")
+            yield Mistake("support", "one-way support two-way", where, replace(frame, supports=supports))
+
+
+def common(frame: Frame, name: str, r: Random) -> Iterator[Mistake]:
+    """Mistakes that any frame may have, on these frames: supports, hinges, one member's section, a load left out."""
+    for joint, s in frame.supports.items():
+        if s.rotation == HELD:
+            supports = {**frame.supports, joint: replace(s, rotation=FREE)}
+            yield Mistake("support", "base pinned", (joint, f"joint {joint}"), replace(frame, supports=supports))
+    for m in r.sample(list(frame.members.values()), min(4, len(frame.members))):
+        if m.turn_from == HELD:
+            yield Mistake("end release", "hinge", _called(m.name), _member(frame, m.name, turn_from=FREE))
+        own: dict[str, Section] = {}
+        for s in dict.fromkeys((m.section, *(p.first for p in m.pieces), *(p.last for p in m.pieces))):
+            own[f"{s} half"] = replace(frame.sections[s], name=f"{s} half", I=0.5 * frame.sections[s].I)
+        half = _member(frame, m.name, section=f"{m.section} half", pieces=tuple(
+            replace(p, first=f"{p.first} half", last=f"{p.last} half") for p in m.pieces))  # fmt: skip
+        states = {n: replace(t, sections=_halved(t.sections)) for n, t in frame.states.items()}
+        where = _called(m.name)
+        yield Mistake("stiffness", "half of I", where, replace(half, sections={**frame.sections, **own}, states=states))
+    for case in frame.combinations[name].factors if name in frame.combinations else (name,):
+        loads = frame.cases[case].loads
+        entries = sorted({q.entry for q in loads if not isinstance(q, Lean)})
+        if len(entries) > 1:
+            entry = r.choice(entries)
+            kept = replace(frame.cases[case], loads=tuple(q for q in loads if q.entry != entry))
+            yield Mistake("load", "load left out", (f"{case}[{entry}]",), replace(frame, cases={**frame.cases, case: kept}))
+
+
+def _halved(factors: Mapping[str, Mapping[str, float]]) -> dict[str, Mapping[str, float]]:
+    return {**factors, **{f"{s} half": f for s, f in factors.items()}}
+
+
+# --- claims, and what is made of them
+
+
+def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, str, Mistake, list[ClaimedValue]]]:
+    """The claims of one frame at 4 digits, every sort of mistake once before any comes twice; effect over 3% of peak."""
+    r, frame = Random(seed), the_frame(seed)
+    opinions = opinions_on(frame)
+    if opinions is None:
+        return
+    answer = opinions.answers["slope-deflection"]
+    pool = []
+    for name in r.sample(frame.names, min(len(frame.names), 6)):
+        if name in answer.cases:
+            pool += [(name, m) for m in sorts(frame, name, r)]
+    r.shuffle(pool)
+    seen: dict[str, int] = {}
+    ranked = []
+    for k, (name, mistake) in enumerate(pool):
+        seen[mistake.sort] = seen.get(mistake.sort, 0) + 1
+        ranked.append((seen[mistake.sort], k, name, mistake))
+    taken = 0
+    for _, _, name, mistake in sorted(ranked, key=lambda x: x[:2]):
+        if taken == per:
+            return
+        assert mistake.frame is not None
+        other = solved(mistake.frame, (name,))
+        if other is None:
+            continue
+        least = max(EFFECT * _peak(answer.cases[name]), FAINT * opinions.judgements[name].scales.moments)
+        off = np.abs(np.nan_to_num(other.cases[name].ends[:, :, 2] - answer.cases[name].ends[:, :, 2])).max()
+        if off >= least > 0:
+            taken += 1
+            yield frame, name, mistake, case_values(mistake.frame, other.cases[name], name, 4, seed % 2 == 0)
+
+
+def _peak(case: CaseAnswer) -> float:
+    return float(np.abs(np.nan_to_num(case.ends[:, :, 2])).max(initial=0.0))
+
+
+def tried(frame: Frame, name: str, mistake: Mistake, values: list[ClaimedValue], seed: int) -> Record:
+    """Judge the claim and look for suspects."""
+    opinions, closed = opinions_on(frame), closed_claim(values)
+    assert opinions is not None
+    claims = judged(frame, opinions, closed)
+    start = time.process_time()
+    found = search(frame, opinions, closed, claims, CLAIM) if any(c.verdict == "disagree" for c in claims) else None
+    spent = time.process_time() - start
+    suspects = found.suspects if found else ()
+    rank = next((k + 1 for k, s in enumerate(suspects) if right(frame, name, mistake, s, closed)), 0)
+    says = tuple(f"{s.kind} {s.where}: {s.says}" for s in suspects[:3])
+    return Record(seed, mistake.kind, mistake.sort, mistake.where, worst([c.verdict for c in claims]), rank, len(suspects),
+                  says, suspects[0].explains if suspects else 0.0, spent)  # fmt: skip
+
+
+def right(frame: Frame, name: str, mistake: Mistake, suspect: Suspect, closed: ClosedClaim) -> bool:
+    """The true mistake (kind, and a place of it), or one whose results, by moment distribution, the claim cannot tell."""
+    if suspect.kind == mistake.kind and (not mistake.where or set(mistake.where) & set(suspect.where)):
+        return True
+    changed, claim = suspect.change.apply(frame, closed)
+    answer = solved(changed, claim.cases)
+    if answer is None:
+        return False
+    told = {
+        (v.case, v.kind, v.quantity, v.member, v.joint): v.value
+        for n in claim.cases for v in case_values(changed, answer.cases[n], n, 15, False)
+    }  # fmt: skip
+    if any(v.kind == "span" for v in claim.values):
+        return False
+    return all(
+        math.isclose(there, v.value, rel_tol=1e-6, abs_tol=1.06 * v.half_digit)
+        for v in claim.values
+        if (there := told.get((v.case, v.kind, v.quantity, v.member, v.joint))) is not None
+    )
+
+
+def run(seeds: Iterable[int], per: int, sorts: Any = mistakes) -> Iterator[Record]:
+    for seed in seeds:
+        for frame, name, mistake, values in drawn(seed, per, sorts):
+            yield tried(frame, name, mistake, values, seed)
+
+
+def main(arguments: list[str]) -> None:
+    first, last, per = map(int, arguments[:3])
+    sorts = common if "common" in arguments else mistakes
+    records = []
+    for record in run(range(first, last), per, sorts):
+        records.append(record)
+        if record.rank != 1:
+            says = f"{record.verdict} {record.rank} {record.first}"
+            print(record.seed, record.sort, record.where, says, f"{record.seconds:.1f} s", flush=True)
+    print(table(records))
+    spent = sorted(r.seconds for r in records)
+    print(f"seconds of processor a claim: median {spent[len(spent) // 2]:.2f}, worst {spent[-1]:.2f}")
+
+
+if __name__ == "__main__":
+    main(sys.argv[1:])
