@@ -54,12 +54,15 @@ def verification_document(result: Verification) -> dict[str, Any]:
 
 
 def frame_part(frame: Frame) -> dict[str, Any]:
-    return {
+    part: dict[str, Any] = {
         "title": frame.title,
         "file": frame.file,
         "sha256": frame.sha256,
         "units": {"force": frame.units.force, "length": frame.units.length},
     }
+    if frame.includes:
+        part["includes"] = [{"file": one.file, "sha256": one.sha256} for one in frame.includes]
+    return part
 
 
 def idealisation_part(frame: Frame) -> dict[str, Any]:

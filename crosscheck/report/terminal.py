@@ -177,6 +177,8 @@ def frame_facts(frame: Frame) -> list[tuple[str, str]]:
         ("size", f"{words.counted(len(frame.joints), 'joint')}, {words.counted(len(frame.members), 'member')}, "
                  f"{words.counted(len(frame.supports), 'support')}; {frame.units.force}, {frame.units.length}"),
         ("idealisation", words.idealisation(frame)),
+        *((what, said) for what, said in words.by_combination(frame)),
+        *(("included", f"{one.file}, sha256 {one.sha256[:12]}") for one in frame.includes),
     ]  # fmt: skip
 
 

@@ -99,6 +99,20 @@ def idealisation(frame: Frame) -> str:
     return f"{axial}, shear {a.shear}, {'first' if a.order == 1 else 'second'} order"
 
 
+def by_combination(frame: Frame) -> list[tuple[str, str]]:
+    """Which combinations have an order of theory, a state of stiffness or a lean of their own."""
+    groups: dict[str, dict[str, None]] = {}
+    for one in frame.combinations.values():
+        if one.order and one.order != frame.analysis.order:
+            groups.setdefault("first order" if one.order == 1 else "second order", {})[one.stated or one.name] = None
+        if one.stiffness:
+            groups.setdefault(f"stiffness {one.stiffness}", {})[one.stated or one.name] = None
+        if one.lean:
+            groups.setdefault(f"lean of {100 * one.lean:g}%", {})[one.stated or one.name] = None
+    said = "; ".join(f"{what}: {some(list(names))}" for what, names in groups.items())
+    return [("of combinations", said)] if said else []
+
+
 def opinions_value(d: Difference) -> float | None:
     """The opinions' value beside a claim's: the first that gives one."""
     return next((v for o, v in d.values.items() if o != "claim" and v is not None), None)

@@ -83,7 +83,7 @@ def put_on_record(standard: Standard, result: Opinions, reason: str, today: date
 def _entry(result: Opinions, reason: str, today: datetime.date, claims: list[str]) -> Entry:
     frame = result.frame
     a = frame.analysis
-    facts = {
+    facts: dict[str, Any] = {
         "reason": reason.strip(),
         "date": today,
         "crosscheck": __version__,
@@ -95,6 +95,8 @@ def _entry(result: Opinions, reason: str, today: datetime.date, claims: list[str
         "opinions": list(result.answers),
         "agree_to": float(f"{max(closeness(result.answers, j) for j in result.judgements.values()):.1e}"),
     }
+    if frame.includes:
+        facts["includes"] = {one.file: one.sha256 for one in frame.includes}
     return Entry(facts, {name: _agreed_tables(result, name) for name in result.names})
 
 
