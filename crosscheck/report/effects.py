@@ -28,7 +28,9 @@ def critical_line(frame: Frame, critical: Mapping[str, float]) -> str:
     others = sorted((f, c) for c, f in critical.items() if c != case and f < USUAL)
     more = "".join(f", {c} {f:.3g}" for f, c in others[:3])
     line = f"Critical load factor: {case} {least:.3g}{more}"
-    if least >= USUAL or frame.analysis.order == 2:
+    of_first_order = [factor for case, factor in critical.items() if frame.under(case).analysis.order == 1]
+    least = min(of_first_order, default=math.inf)
+    if least >= USUAL:
         return f"{line}."
     if least <= 1.0:
         return f"{line}: past its critical load; first-order results mean nothing there."
