@@ -129,6 +129,18 @@ def test_linear_taper_by_exact_integration() -> None:
     np.testing.assert_allclose(constants(frame)[:4], expected, rtol=1e-13)
 
 
+def test_a_taper_ten_times_as_deep() -> None:
+    """Depth 1 to 10, I its cube. With t = 1 + 9 x the flexibilities are integrals of powers of t: f11 = (31.5 + ln 10)/729,
+    f12 = -(4.95 - ln 10)/729, f22 = (ln 10 - 1.305)/729."""
+    text = BEAM.replace("[joints]", "[sections.e]\nI = 1000\ndepth = 10\n[joints]")
+    frame = read_frame_text(text.format(profile='taper = ["c", "e"]', points=""))
+    log = np.log(10.0)
+    f11, f12, f22 = (31.5 + log) / 729, -(4.95 - log) / 729, (log - 1.305) / 729
+    determinant = f11 * f22 - f12 * f12
+    expected = -f12 / f22, -f12 / f11, f22 / determinant, f11 / determinant
+    np.testing.assert_allclose(constants(frame)[:4], expected, rtol=1e-12)
+
+
 def test_one_step_by_hand() -> None:
     """A cantilever of 2 EI over its first half, tip load P: deflection P L3/EI (1/24 + 7/48) = 9/48 P L3/EI."""
     text = BEAM.format(profile='profile = [["d", "50%"], ["c", "100%"]]', points="").split("[loads.turn_A]")[0]

@@ -34,8 +34,8 @@ NOTHING = 1e-11
 """Influence of a gap on a force below this share of the frame's largest stiffness is rounding."""
 FREE_PIVOT = 1e-13
 """A pivot below this share of its own diagonal entry is a movement without resistance."""
-FURTHER = 20
-"""States tried for every part, and once as many more."""
+FURTHER, ENOUGH = 20, 300
+"""States tried for every part, and once as many more; but no more than so many in all."""
 MOST = 8
 """Parts named where no state was found."""
 NONE_FOUND = "no settled state of the one-way members and supports was found"
@@ -215,11 +215,11 @@ def search(
     one of the parts taken out is put back.
 
     judged: of the parts out, what it finds and which parts are wrong; None where the frame cannot stand so. most: how
-    many states are tried, by default FURTHER for every part.
+    many states are tried, by default FURTHER for every part, up to ENOUGH.
     """
     known: set[bytes] = set()
     out: Bools | None = first
-    for _ in range(most or FURTHER * (1 + len(first))):
+    for _ in range(most or min(ENOUGH, FURTHER * (1 + len(first)))):
         if out is None:
             return None
         known.add(out.tobytes())
