@@ -85,6 +85,13 @@ def wild() -> dict[str, tuple[str, int]]:
         for e, j in enumerate((member.joint_from, member.joint_to)):
             rows.append(f"{member.name};{j};" + ";".join(f"{x:.2f}".replace(".", ",") for x in c.ends[m, e]))
     out["semicolons, decimal commas and a row of units"] = "\n".join(rows), 30
+
+    rows = ["Member end forces, kN m, dead", "Member,Joint,N,V,M"]
+    for m, member in enumerate(members):
+        for e, j in enumerate((member.joint_from, member.joint_to)):
+            rows.append(f"{member.name},{j}," + ",".join(f"{x:.2f}" for x in c.ends[m, e]))
+    out["a title with commas above heads with commas"] = "\n".join(rows), 30
+    out["a title that is units alone"] = "\n".join(["Forces, kN m", *rows[1:]]), 30
     return out
 
 

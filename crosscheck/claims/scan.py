@@ -14,17 +14,21 @@ from crosscheck.claims.numbers import is_blank, parse_number
 from crosscheck.claims.reading import LineTrace
 from crosscheck.claims.sentences import looks_told
 from crosscheck.claims.split import Cell, Separator, is_rule, join_units, separator_of, split, wide_cells
+from crosscheck.claims.which import which_of
 from crosscheck.claims.words import RESULT_NOUNS, head_of, is_header_word, unit_of
 
 LONGEST_HEADING = 300
 LONGEST_LINE = 20_000
 """Characters: a longer line is no row of a table, and reading it must not take long."""
 _CASE = re.compile(
-    r"(?:load\s*(?:case|combination|comb\w*)|lc|l/c|case|combination|comb(?:o|ination)?|loading|results? for|load)\b"
+    r"(?:load\s*(?:case|combination|comb\w*)|lc|l/c|case|combination|comb(?:o|ination)?|loading|results? for|load"
+    r"|envelopes?(?:\s+(?:of|for))?)\b"
     r"(?:\s*(?:no|nr|number|name)\b\.?)?[\s:#=.\u2013-]*(.+)",
     re.IGNORECASE,
 )
 _CASE_LABEL = re.compile(r"\W*(?:load\s*(?:case|combination|comb)|lc|case|comb(?:o|ination)?)\b\W*\w", re.IGNORECASE)
+_OF_ENVELOPE = re.compile(r"(\S+)\s+envelopes?\b", re.IGNORECASE)
+_ENVELOPE_LABEL = re.compile(r"\W*envelope\W+([^\W_]\S*)\W*", re.IGNORECASE)
 _MEMBER = re.compile(r"(?:members?|memb|mbr|beams?|elements?|elem|bars?|rods?|columns?)\b[\s:#=.]*(\S.*)", re.IGNORECASE)
 _TOTAL = re.compile(
     r"(?:sum|totals?|sigma|\u03a3|\u2211|sub-?total|resultant|average|mean|applied|check)\b|[\u03a3\u2211]", re.I
@@ -48,6 +52,7 @@ _TELLING = re.compile(
 _DASHES = frozenset("-\u2013\u2212")
 _DIGIT = re.compile(r"\d")
 _WORDS = re.compile(r"[\s,;:.()]+")
+_NAME_PARTS = re.compile(r"[\s,;()]+")
 _SPOILT = re.compile(r"\d|\*\*|##|^#|^[+-]?(?:inf|infinity|overflow)$", re.IGNORECASE)
 """What is left of a number that was printed too wide, divided by zero or mistyped."""
 _DATE = re.compile(
@@ -100,6 +105,12 @@ def _names_columns(cells: list[str]) -> bool:
     units = sum(unit_of(c.strip("[](){}")) is not None for c in cells)
     results = any(h.noun in RESULT_NOUNS or h.noun in ("x", "E", "I", "A") or h.which for h in known)
     return len(known) + units >= 0.6 * len(cells) and (results or len(known) == len(cells))
+
+
+def _is_envelope_label(text: str) -> bool:
+    """ "Envelope SLS": one word that is none of a table's own names the envelope."""
+    found = _ENVELOPE_LABEL.fullmatch(text)
+    return bool(found) and not is_header_word(found.group(1)) and not _TITLE.search(found.group(1))  # type: ignore[union-attr]
 
 
 def _end_numbers(filled: list[str]) -> int:
@@ -156,6 +167,8 @@ def scan(lines: list[str], names: Names) -> Scan:
 class _Scanner:
     def __init__(self, names: Names) -> None:
         self.names = names
+        known = (*names.frame.cases, *names.frame.envelopes)
+        self.case_words = frozenset(w for name in known for w in _NAME_PARTS.split(name.casefold()) if w)
         self.out = Scan()
         self.table: RawTable | None = None
         self.heading: list[str] = []
@@ -257,6 +270,8 @@ class _Scanner:
             return False
         if _UNITS_SENTENCE.search(text):
             return False
+        if separator != "blank" and len(filled) > 1 and _Scanner._is_units(filled[1:]):
+            return False  # "Member end forces, kN m" is a title with its units
         if _names_columns([t for t in filled if not is_number(t)]):
             return True
         return separator == "blank" and _names_columns([c.text for c in wide_cells(text)])
@@ -266,11 +281,13 @@ class _Scanner:
     def _heading_of_case(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
         if numbers > 1 and len(filled) > 3 or numbers and self._under_cases(filled):
             return None
+        if numbers and self._under_heads(filled) and any(which_of(t) or self._knows(t) for t in filled):
+            return None  # a row whose last cell names what governs
         label = self._case_in(text)
         if label is None:
             return None
         name = self._resolve_case(label)
-        if name is None and (len(label) > 30 or not _CASE_LABEL.match(text.strip())):
+        if name is None and (len(label) > 30 or not (_CASE_LABEL.match(text.strip()) or _is_envelope_label(text))):
             return None
         if name is None and numbers and self.table is not None and self._fits(filled):
             return None
@@ -288,8 +305,11 @@ class _Scanner:
         if found := re.search(r"\b(?:load case|case|combination|lc|results for)\b[\s:#=]*(.+)", tidy, re.IGNORECASE):
             label = found.group(1).strip(" .:*\"'|)")
             return label if self._resolve_case(label) else None
+        if found := _OF_ENVELOPE.search(tidy):
+            return found.group(1) if self._resolve_case(found.group(1)) else None
         parts = [p.strip() for p in re.split(r"\s[-\u2013\u2014]\s|[,;:()\[\]]", tidy) if p.strip()]
-        exact = [p for p in parts if p.casefold() in {c.casefold() for c in self.names.frame.cases}]
+        known = (*self.names.frame.cases, *self.names.frame.envelopes)
+        exact = [p for p in parts if p.casefold() in {c.casefold() for c in known}]
         return exact[0] if len(exact) == 1 and len(exact[0]) > 1 else None
 
     def _resolve_case(self, label: str) -> str | None:
@@ -366,7 +386,8 @@ class _Scanner:
             return "total", ""
         if _DATE.search(text) and not self._fits(filled) and not self._knows(filled[0]):
             return "remark", "a date, a page or the like"
-        words = [t for t in filled if not is_number(t) and not self._knows(t) and len(re.sub(r"\W", "", t)) > 1]
+        words = [t for t in filled if not is_number(t) and not self._knows(t) and not self._of_envelope(t)
+                 and len(re.sub(r"\W", "", t)) > 1]  # fmt: skip
         if len(words) > max(2, numbers) and not self._under_heads(filled):
             self.out.remarks.append((number, text))
             return "remark", ""
@@ -376,6 +397,10 @@ class _Scanner:
         self.table.rows.append((number, text))
         self.table.blocks.append(self.block)
         return "row", ""
+
+    def _of_envelope(self, text: str) -> bool:
+        """ "max", "min", or a word of the name of what governs."""
+        return which_of(text) is not None or text.casefold().strip(",;()") in self.case_words
 
     def _under_heads(self, filled: list[str]) -> bool:
         """Has the line as many cells as the table has heads?"""
