@@ -247,7 +247,7 @@ def test_named_files_are_plain_names(key: str, name: str, tmp_path: Path) -> Non
     folder.mkdir()
     put(tmp_path, "name,x,y\nX,1,1\n", "secret.csv")
     text = TABLED.replace("{name}", name) if key == "tables" else f'include = ["{name}"]\n' + ONE_CASE
-    status, said = guarded("opinions", put(folder, text), "-q")
+    status, said = guarded("opinions", put(folder, text), "-q", secret=str(tmp_path / "secret.csv"))
     assert status == 2 and said.count("crosscheck:") >= 1, said
 
 

@@ -15,7 +15,7 @@ MOST_CELLS = 20_000_000
 """Rows times columns of one sheet."""
 _PLACE = re.compile(rb'<c r="([A-Z]{1,4})([0-9]{1,8})"')
 _REPEATED = re.compile(
-    rb'<table:table-(?:row|cell)[^>]*number-(?:rows|columns)-repeated="([0-9]+)"[^>]*[^/]>(.{0,400})', re.S
+    rb'<table:table-(?:row|cell)[^>]*number-(?:rows|columns)-repeated="([0-9]+)"([^>]*)>(.{0,400})', re.S
 )
 
 
@@ -72,6 +72,7 @@ def _column(letters: bytes) -> int:
 
 def _few_repeats(content: bytes) -> None:
     """Rows and cells that hold something, repeated; empty ones at a sheet's end are usual and cost nothing."""
-    for count, inside in _REPEATED.findall(content):
-        if int(count) > MOST_CELLS // 1000 and b"<text:" in inside.partition(b"</table:table-")[0]:
+    for count, rest, inside in _REPEATED.findall(content):
+        filled = not rest.endswith(b"/")
+        if filled and int(count) > MOST_CELLS // 1000 and b"<text:" in inside.partition(b"</table:table-")[0]:
             raise TooLarge(f"a row or cell repeated {int(count)} times")
