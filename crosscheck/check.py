@@ -178,7 +178,7 @@ def verify(
     tolerance = claim_tolerance(frame.analysis.tolerance if relative is None else relative)
     closed = close(reading, frame, opinions.answers, case, tolerance)
     cases = ClaimComparison(frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
-    audits = tuple(_audit(frame, opinions, closed, name) for name in closed.cases)
+    audits = _audits(frame, opinions, closed)
     verdict, grounds = _verdict(opinions, closed, cases, audits)
     found: tuple[Suspect, ...] = ()
     why = ""
@@ -209,7 +209,8 @@ def cases_needed(frame: Frame, reading: Reading, case: str | None) -> tuple[str,
     named = {entry.case for entry in reading.entries}
     if not named or None in named:
         return None
-    return tuple(name for name in frame.names if name in named)
+    meant = {n for name in named for n in frame.meant(str(name))}
+    return tuple(name for name in frame.names if name in meant)
 
 
 @dataclass(frozen=True, slots=True)
@@ -237,12 +238,15 @@ def _suspects(
     opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], tolerance: Tolerance
 ) -> tuple[tuple[Suspect, ...], str]:
     from crosscheck.suspects import Suspect, search
+    from crosscheck.suspects.enveloped import as_governing, envelope_suspects
 
     if closed.reversed_load:
         says = "the load acts the other way: member forces, reactions and displacements are all reversed"
         return (Suspect("load", (), says, 1.0),), ""
-    found = search(opinions.frame, opinions, closed, cases, tolerance)
-    return found.suspects, found.why
+    own = envelope_suspects(opinions, closed, cases)
+    found = search(opinions.frame, opinions, *as_governing(opinions.frame, closed, cases), tolerance)
+    suspects = tuple(sorted([*own, *found.suspects], key=lambda s: not s.fits)) if own else found.suspects
+    return suspects, "" if suspects else found.why
 
 
 def as_suspected(result: Verification, number: int) -> Verification:
@@ -256,7 +260,7 @@ def as_suspected(result: Verification, number: int) -> Verification:
     frame, closed = result.suspects[number - 1].change.apply(result.opinions.frame, result.closed)
     opinions = ask(frame, result.opinions.names)
     cases = ClaimComparison(frame, opinions.answers, opinions.judgements, result.tolerance).judge(closed)
-    audits = tuple(_audit(frame, opinions, closed, name) for name in closed.cases)
+    audits = _audits(frame, opinions, closed)
     verdict, grounds = _verdict(opinions, closed, cases, audits)
     return Verification(opinions, closed, result.tolerance, tuple(cases), audits, (), verdict, tuple(grounds))
 
@@ -267,8 +271,9 @@ def _verdict(
     """CONTRACT: how verify judges. The opinions must agree before a claim can."""
     grounds: list[str] = []
     verdicts: list[Verdict] = [c.verdict for c in cases]
-    for name, audit in zip(closed.cases, audits, strict=True):
-        judged = opinions.judgements[name]
+    audited = {audit.case: audit for audit in audits}
+    for name in dict.fromkeys(n for case in closed.cases for n in opinions.frame.meant(case)):
+        judged, audit = opinions.judgements[name], audited.get(name)
         if judged.verdict == "disagree":
             return "undecided", [f"the opinions disagree with each other on {name}"]
         if judged.verdict == "undecided" and not _alone_but_proven(cases, name, audit):
@@ -294,9 +299,14 @@ def _verdict(
     return worst(verdicts), grounds
 
 
-def _alone_but_proven(cases: list[CaseClaim], name: str, audit: CaseAudit) -> bool:
+def _alone_but_proven(cases: list[CaseClaim], name: str, audit: CaseAudit | None) -> bool:
     agrees = any(c.case == name and c.verdict == "agree" for c in cases)
-    return agrees and audit.compatibility is not None and audit.compatibility.solution
+    return agrees and audit is not None and audit.compatibility is not None and audit.compatibility.solution
+
+
+def _audits(frame: Frame, opinions: Opinions, closed: ClosedClaim) -> tuple[CaseAudit, ...]:
+    """Of every single case of the claim: an envelope is no state of balance."""
+    return tuple(_audit(frame, opinions, closed, name) for name in closed.cases if name not in frame.several)
 
 
 def _audit(frame: Frame, opinions: Opinions, closed: ClosedClaim, name: str) -> CaseAudit:

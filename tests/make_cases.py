@@ -120,6 +120,37 @@ class Results:
         at = [f"{v:.3f}" for v in x]
         return [(names[m], at[k], [c[k] for c in columns]) for k, m in enumerate(members.tolist())]
 
+    def envelope_ends(self, name: str) -> list[tuple[str, str, list[Row], list[Row]]]:
+        """(member, joint, greatest and least N V M, and for each of the two and of the three what governs)."""
+        p, names = self.printing, self.frame.meant(name)
+        stack = np.stack([self.answer.cases[n].ends for n in names])
+        units, signs = (p.force, p.force, p.moment), (p.axial, p.shear, p.bending)
+        printed = stack * np.array(signs)
+        by = printed.argmax(axis=0), printed.argmin(axis=0)
+        most = [np.take_along_axis(printed, w[None], 0)[0].reshape(-1, 3) for w in by]
+        columns = [[p.column(values[:, q], units[q], self.frame) for q in range(3)] for values in most]
+        places = [(m.name, j) for m in self.frame.members.values() for j in (m.joint_from, m.joint_to)]
+        flat = [w.reshape(-1, 3) for w in by]
+        return [
+            (m, j, [[c[k] for c in columns[b]] for b in (0, 1)], [[names[flat[b][k, q]] for q in range(3)] for b in (0, 1)])
+            for k, (m, j) in enumerate(places)
+        ]
+
+    def envelope_along(self, name: str) -> list[tuple[str, str, list[str]]]:
+        """(member, distance, greatest M, what governs it, least M, what governs it) at the tenths of each member."""
+        p, length, names = self.printing, self.frame.member_table.length, self.frame.meant(name)
+        members = np.repeat(np.arange(len(length)), 11)
+        x = np.tile(np.arange(11) / 10, len(length)) * length[members]
+        side = np.where(np.tile(np.arange(11), len(length)) < 10, 1, -1)
+        stack = np.stack([self.answer.spans.along(n, members, x, side)[:, MOMENT] for n in names])
+        most = [p.column(values, p.moment, self.frame) for values in (stack.max(axis=0), stack.min(axis=0))]
+        by = stack.argmax(axis=0), stack.argmin(axis=0)
+        keys = list(self.frame.members)
+        return [
+            (keys[m], f"{x[k]:.3f}", [most[0][k], names[by[0][k]], most[1][k], names[by[1][k]]])
+            for k, m in enumerate(members.tolist())
+        ]
+
     def extremes(self, case: str) -> list[tuple[str, Row]]:
         """(member, greatest and least V, greatest and least M)."""
         p = self.printing
@@ -194,6 +225,25 @@ def extremes_only(r: Results, cases: Sequence[str]) -> list[Table]:
     p = r.printing
     heads = ["Member", *(f"{w} {q} ({u})" for q, u in (("V", p.force), ("M", p.moment)) for w in ("max", "min"))]
     return [Table([f"Load case: {c}"], heads, [[m, *v] for m, v in r.extremes(c)]) for c in cases]
+
+
+def envelope_ends(r: Results, cases: Sequence[str]) -> list[Table]:
+    """A table an envelope: two rows a member end, the greatest and the least moment and shear, each with what governs."""
+    p = r.printing
+    heads = ["Member", "Joint", "Max/min", f"M ({p.moment})", "Combination", f"V ({p.force})", "Combination"]
+    return [
+        Table([f"Envelope {c}"], heads,
+              [[m, j, which, values[b][2], by[b][2], values[b][1], by[b][1]]
+               for m, j, values, by in r.envelope_ends(c) for b, which in enumerate(("max", "min"))])
+        for c in cases
+    ]  # fmt: skip
+
+
+def envelope_along(r: Results, cases: Sequence[str]) -> list[Table]:
+    """A table an envelope: greatest and least moments at the tenths of each member, each with what governs it."""
+    p = r.printing
+    heads = ["Member", f"x [{r.frame.units.length}]", f"M max [{p.moment}]", "governing", f"M min [{p.moment}]", "governing"]
+    return [Table([f"Envelope: {c}"], heads, [[m, x, *v] for m, x, v in r.envelope_along(c)]) for c in cases]
 
 
 def together(*layouts: Layout) -> Layout:

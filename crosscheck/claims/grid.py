@@ -19,6 +19,7 @@ from crosscheck.claims.words import Head, head_of, is_header_word, unit_of
 
 Row = list[str]
 MOST_COLUMNS = 40
+MOST_NAME_WORDS = 9
 
 
 @dataclass(slots=True)
@@ -126,6 +127,9 @@ _DASHES = ("-", "\u2013", "\u2212", "\u2014", "to", "->", "\u2192", "/")
 
 def _name_size(cells: list[Cell], k: int, names: Names) -> int:
     """How many cells from k make one name."""
+    for size in range(min(MOST_NAME_WORDS, len(cells) - k), 4, -1):
+        if " ".join(c.text for c in cells[k : k + size]) in names.frame.cases:  # "ultimate (wind, imposed odd spans)"
+            return size
     for size in (4, 3, 2):
         part = cells[k : k + size]
         dashed = size == 3 and part[1:2] and part[1].text in _DASHES

@@ -12,23 +12,19 @@ from crosscheck.claims.grid import Grid
 from crosscheck.claims.names import Names, plain
 from crosscheck.claims.numbers import is_blank, parse_number
 from crosscheck.claims.scan import RawTable, is_number
+from crosscheck.claims.which import which_of
 from crosscheck.claims.words import NUMBERED_AXIS, RESULT_NOUNS, Head, Size
 from crosscheck.frame.units import ANGLE, FORCE, LENGTH, MOMENT
 
 START_WORDS = frozenset({"i", "start", "from", "1", "left", "near", "a", "first", "begin", "end1", "endi", "bottom", "0"})
 LAST_WORDS = frozenset({"j", "end", "to", "2", "right", "far", "b", "second", "last", "end2", "endj", "top"})
-WHICH_WORDS = {
-    "max": "max", "maximum": "max", "largest": "max", "+": "max", "min": "min", "minimum": "min", "smallest": "min",
-    "abs": "size", "absmax": "size", "maxabs": "size", "absolute": "size", "peak": "size", "extreme": "size",
-}  # fmt: skip
-
-
 MOST_HEADS = 200
 
 
 @dataclass(frozen=True, slots=True)
 class Role:
-    """What a column is for: "" (not used), member, joint, start joint, end joint, end, case, station, which, value."""
+    """What a column is for: "" (not used), member, joint, start joint, end joint, end, case, station, which, value, or
+    governs (the governing combination of the value in column `of`; of the whole row where that is negative)."""
 
     name: str = ""
     quantity: str = ""
@@ -37,6 +33,7 @@ class Role:
     unit: Size | None = None
     share: bool = False
     axes: str = ""
+    of: int = -1
     kind: str = ""
     """Where it differs from the table's: displacements beside the reactions of the same joints."""
 
@@ -86,6 +83,10 @@ def _filled(grid: Grid, table: RawTable, names: Names) -> list[Head]:
     results = {h.noun for h in heads}
     member_wanted = not any(h.noun == "member" for h in heads) and not any(table.blocks)
     for k, head in enumerate(heads):
+        if head.which and not head.noun and _share(column(grid, k), which_of) >= 0.6:
+            heads[k] = replace(head, noun="which", which="")  # "Max/Min" above "max", "min"
+        elif head.which and not head.noun and head.unit and head.unit.dimension == MOMENT:
+            heads[k] = replace(head, noun="M")  # "max [kNm]"
         if head.noun not in ("", "id") or head.which:
             continue
         cells = column(grid, k)
@@ -113,7 +114,7 @@ def _noun_of_cells(cells: list[str], names: Names, member_first: bool) -> str:
         "member": _share(cells, lambda t: names.member(t) is not None),
         "joint": _share(cells, lambda t: names.joint(t) is not None),
         "end": _share(cells, lambda t: plain(t) in START_WORDS | LAST_WORDS) if not _share(cells, is_number) else 0.0,
-        "which": _share(cells, lambda t: plain(t) in WHICH_WORDS),
+        "which": _share(cells, which_of),
         "case": _share(cells, lambda t: names.case(t) is not None),
     }
     order = ["member", "joint", "which", "case", "end"] if member_first else ["joint", "member", "which", "case", "end"]
@@ -170,8 +171,8 @@ def _connects(heads: list[Head]) -> bool:
 
 def _which_or_case(role: Role, cells: list[str], names: Names) -> Role:
     """A head such as "end" or "case" is held to its cells."""
-    if role.name == "which" and _share(cells, lambda t: plain(t) in WHICH_WORDS) < 0.5:
-        return Role()
+    if role.name == "which" and _share(cells, which_of) < 0.5:
+        return Role("case") if cells and _share(cells, names.case) == 1.0 else Role()
     return role
 
 
@@ -227,7 +228,8 @@ def _kind(heads: list[Head], roles: list[Role], table: RawTable) -> tuple[str, s
     if station and (of_member or nouns & {"N", "V"} or "M" in nouns):
         return ("span", "") if of_member else ("", "values along a member whose name is not said")
     if of_member and (forces or "R" in nouns):
-        if "which" in names_of or any(h.which for h in heads):
+        of_ends = {"joint", "end"} & names_of or any(h.end is not None and h.noun in RESULT_NOUNS for h in heads)
+        if ("which" in names_of or any(h.which for h in heads)) and not of_ends:
             return "extreme", ""
         return "end", ""
     if "joint" in names_of and (forces or "R" in nouns or "x" in nouns):
@@ -299,7 +301,10 @@ def _values(kind: str, heads: list[Head], roles: list[Role], grid: Grid) -> tupl
         roles[k] = Role("station", unit=heads[k].unit, share=heads[k].share)
     groups = sorted({(h.end, h.which) for h in heads if h.noun in "NVMFRDTwx"}, key=str)
     why = ""
-    left = {k for k, h in enumerate(heads) if h.noun in RESULT_NOUNS and not roles[k].name}
+    left = {
+        k for k, h in enumerate(heads)
+        if not roles[k].name and (h.noun in RESULT_NOUNS or h.which and not h.noun and _any_number(column(grid, k)))
+    }  # fmt: skip
     for end, which in groups:
         mine = [k for k, h in enumerate(heads) if (h.end, h.which) == (end, which) and not roles[k].name]
         for quantity, wanted in _TARGETS[kind].items():

@@ -149,7 +149,7 @@ class Names:
         self.frame = frame
         self._members = _Book(frame.members, "member", members or {})
         self._joints = _Book(frame.xy, "joint", joints or {})
-        self._cases = _Book(frame.cases, "case", cases or {})
+        self._cases = _Book((*frame.cases, *frame.envelopes), "case", cases or {})
         self._between: dict[tuple[str, str], list[str]] = {}
         for name, ends in frame.members.items():
             self._between.setdefault(ends, []).append(name)

@@ -10,8 +10,9 @@ from pathlib import Path
 
 from crosscheck.claims.decode import lines_of, read_source, refuse
 from crosscheck.claims.echo import Echo, Piece, echo_facts, in_our_names, learn, pieces_stated
+from crosscheck.claims.enveloping import governing, once, with_governing
 from crosscheck.claims.grid import Grid, grid_of
-from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, WHICH_WORDS, Meaning, Role, column, dimension_of, meaning_of
+from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, Meaning, Role, column, dimension_of, meaning_of
 from crosscheck.claims.names import MemberHit, Names, plain
 from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.readfile import checked
@@ -19,6 +20,7 @@ from crosscheck.claims.reading import EchoFact, Entry, FrameNames, Kind, LineTra
 from crosscheck.claims.scan import RawTable, Scan, cells_of, is_number, scan
 from crosscheck.claims.sentences import entries_told
 from crosscheck.claims.stated import Stated, stated_in, states_face, with_options
+from crosscheck.claims.which import Which, which_of
 from crosscheck.claims.words import Size, unit_of
 from crosscheck.frame.units import Dimension
 
@@ -62,6 +64,7 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
     if reader.left_inside:
         whole = ", ".join(sorted(reader.left_inside))
         reader.notes.append(f"values inside {whole} are not compared: it is not said where its parts meet")
+    reader.notes += reader.envelope_notes()
     if not reader.entries and not reader.foreign and not reader.undecided and not scanned.unknown_cases:
         refuse(file or "claim", *_nothing(scanned, reader))
     return Reading(
@@ -108,7 +111,7 @@ class _Place:
     place: int | None = None
     case: str | None = None
     at: Number | None = None
-    which: str = ""
+    which: Which | None = None
 
 
 @dataclass(slots=True)
@@ -119,6 +122,8 @@ class _Carried:
     case: str = ""
     start: str = ""
     last: str = ""
+    pair: dict[str, str] = field(default_factory=dict)
+    """Of the rows "max" and "min" of one place."""
 
 
 class _Misread(Exception):
@@ -156,12 +161,16 @@ class _Reader:
     left_inside: set[str] = field(default_factory=set)
     untold: list[str] = field(default_factory=list)
     """Why values in words were not understood."""
+    without_case: int = 0
+    """Values that go with an extreme of another quantity, of a combination that is not named."""
+    ungoverned: int = 0
+    """Extremes whose governing combination has a name that the frame does not know."""
     commas: bool = False
     """Does any table of the paste show that its commas stand before decimals? A table that cannot tell follows it."""
 
     def understood(self, raw: RawTable) -> _Table:
         grid = grid_of(raw, self.names, self.options.columns)
-        return raw, grid, meaning_of(grid, raw, self.names)
+        return raw, grid, with_governing(meaning_of(grid, raw, self.names), grid, self.names)
 
     def learn(self, read: list[_Table]) -> None:
         """Names from the other model's own input, and from the reading file's lists of elements."""
@@ -208,6 +217,15 @@ class _Reader:
         line, why = self.unread[0]
         many = f"{len(self.unread)} results" if len(self.unread) > 1 else "a result"
         return [f"{many} could not be read (line {line}: {why}); correct what is printed, or leave it empty"]
+
+    def envelope_notes(self) -> Iterator[str]:
+        """What of an envelope's table is not compared."""
+        if n := self.without_case:
+            values = f"{n} values that go" if n > 1 else "a value that goes"
+            yield f"{values} with an extreme of another quantity: not compared, the combination is not named"
+        if n := self.ungoverned:
+            which = f"{n} governing combinations" if n > 1 else "a governing combination"
+            yield f"{which} not compared: the frame has no such name; say which is meant under [cases] of a reading file"
 
     def _keep(self, entries: list[Entry], raw: RawTable) -> None:
         """Entries of a table; end values whose end nothing tells are not understood."""
@@ -276,16 +294,15 @@ class _Reader:
     def _place(
         self, row: list[str], meaning: Meaning, carried: _Carried, raw: RawTable, block: MemberHit | None, comma: bool
     ) -> _Place:
-        cells = {r.name: row[k] for k, r in enumerate(meaning.roles) if r.name and r.name != "value"}
-        place = _Place(case=self._case(cells, carried, raw))
+        cells = {r.name: row[k] for k, r in enumerate(meaning.roles) if r.name not in ("", "value", "governs")}
+        cells = once(cells, carried.pair, cells.get("member", ""))
+        place = _Place(case=self._case(cells, carried, raw), which=which_of(cells.get("which", "")))
         if meaning.kind in ("reaction", "displacement"):
             place.joint = self._joint(cells.get("joint", ""))
             return place
         place.member = self._member(cells, carried, block)
         if meaning.kind == "end":
             self._end(place, cells)
-        if "which" in cells:
-            place.which = WHICH_WORDS.get(plain(cells["which"]), "")
         if "station" in cells:
             place.at = self._station(cells["station"], comma)
         return place
@@ -391,7 +408,30 @@ class _Reader:
                 continue
             entry = self._entry(table, line, role, number, unit, meaning, place, station)
             if entry is not None:
+                entry = self._enveloped(entry, row, k, meaning, place)
+            if entry is not None:
                 yield entry
+
+    def _enveloped(self, entry: Entry, row: list[str], k: int, meaning: Meaning, place: _Place) -> Entry | None:
+        """The entry as an envelope's extreme, where its row or column says it is one, with what governs it; a value that
+        goes with another quantity's extreme is one of the combination that governs that."""
+        which = place.which
+        if which is None and not meaning.roles[k].which:
+            return entry
+        own = which is None or which.is_of(entry.quantity)
+        values = sum(r.name == "value" for r in meaning.roles)
+        if not own:
+            named = next((row[j] for j, r in enumerate(meaning.roles) if r.name == "governs"), "")
+            case = self.names.case(named) if named else None
+            if case not in self.names.frame.cases or entry.kind == "extreme":
+                self.without_case += 1
+                return None
+            return replace(entry, case=case, along=True)
+        label = governing(row, meaning.roles, k, values == 1 or bool(which and which.noun))
+        name = self.names.case(label) if label else None
+        self.ungoverned += bool(label) and not is_blank(label) and name is None
+        bound = meaning.roles[k].which or (which.which if which else "")
+        return replace(entry, extreme=bound or None, governs=name or "")
 
     def _entry(
         self, table: int, line: int, role: Role, number: Number, unit: Size | None, meaning: Meaning, place: _Place,
@@ -413,7 +453,7 @@ class _Reader:
         if kind == "extreme" and hit.part is not None:
             raise _Misread("the largest value of a part of a member is not that of the member")
         if kind == "extreme":
-            which = role.which or place.which or "size"
+            which = role.which or (place.which.which if place.which else "size")
             return Entry(
                 table, line, kind, role.quantity, number, unit, hit.name, run=hit.run, case=place.case, extreme=which,
                 axes=role.axes,

@@ -132,7 +132,7 @@ def _names(
     key: str, table: Mapping[str, Any], file: str, names: FrameNames, problems: list[Problem]
 ) -> dict[str, dict[str, Any]]:
     """A map of names; for members also the other way round: a member of the frame to the elements it was divided into."""
-    valid: Iterable[str] = {"members": names.members, "joints": names.xy, "cases": names.cases}[key]
+    valid: Iterable[str] = {"members": names.members, "joints": names.xy, "cases": (*names.cases, *names.envelopes)}[key]
     one: dict[str, Any] = {}
     parts: dict[str, Any] = {}
     for theirs, ours in table.items():

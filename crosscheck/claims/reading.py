@@ -24,6 +24,7 @@ class FrameNames:
     """The names a paste may use, with what is needed to recognise them by place.
 
     members: name to its from and to joint. xy: joint coordinates. force, length: N and m in the frame's units.
+    envelopes: names that stand for several cases or combinations: envelopes, and combinations that became several.
     """
 
     members: Mapping[str, tuple[str, str]]
@@ -34,6 +35,7 @@ class FrameNames:
     """Joints whose support holds or springs the rotation, so that a moment can react there."""
     force: float = 1000.0
     length: float = 1.0
+    envelopes: tuple[str, ...] = ()
 
     @classmethod
     def of(cls, frame: Frame) -> FrameNames:
@@ -45,6 +47,7 @@ class FrameNames:
             turning=frozenset(s.joint for s in frame.supports.values() if s.rotation != FREE),
             force=frame.units.newton,
             length=frame.units.metre,
+            envelopes=frame.several,
         )
 
 
@@ -85,7 +88,10 @@ class Entry:
       the paste does not say. Either of end and place may be None while run is 0.
     at: distance from the paste's start, in `at_unit` (a share of the length where `at_share`).
     case: name in the frame, or None where the paste names none. unit: as stated, or None.
-    extreme: for kind "extreme": "max", "min" or "size".
+    extreme: for kind "extreme": "max", "min" or "size" along the member; for the others the same of the values that
+      several cases have at that place, "" or None where it is not one of an envelope's.
+    governs: the case or combination that the paste says it comes from. along: the value is one of case `case` that goes
+      with an envelope's extreme of another quantity.
     """
 
     table: int
@@ -115,6 +121,8 @@ class Entry:
     """The part's length."""
     sense: str = ""
     """From words: "size" where no direction is said, "said" where one is (the sign is then no open choice)."""
+    governs: str = ""
+    along: bool = False
     comma_open: bool = False
     """The number's comma may stand before decimals (as read) or thousands."""
 

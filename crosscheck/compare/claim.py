@@ -23,12 +23,38 @@ ZERO = 1e-6
 
 
 @dataclass(frozen=True, slots=True)
+class Enveloped:
+    """A claimed value of an envelope beside what one opinion says at its place in each of the cases; allowed: the
+    difference that is."""
+
+    value: ClaimedValue
+    said: Mapping[str, float]
+    allowed: float
+
+    @property
+    def governing(self) -> str:
+        """The case of the opinion's extreme, the first of equals."""
+        return self._extreme(frozenset())[0]
+
+    def apart(self, without: frozenset[str]) -> float:
+        """How far the claim is from the extreme over all cases but these (over all where none is left)."""
+        said = self._extreme(without)[1]
+        size = self.value.extreme == "size"
+        return abs(abs(self.value.value) - abs(said)) if size else abs(self.value.value - said)
+
+    def _extreme(self, without: frozenset[str]) -> tuple[str, float]:
+        left = {n: x for n, x in self.said.items() if n not in without} or self.said
+        sign = {"max": 1.0, "min": -1.0}.get(self.value.extreme or "")
+        return max(left.items(), key=lambda item: abs(item[1]) if sign is None else sign * item[1])
+
+
+@dataclass(frozen=True, slots=True)
 class CaseClaim:
     """The claim on one case.
 
     compared: values judged; of: values that the case has (end actions, displacements and reactions that are determined)
     and any others that the claim gives; by_floor: those that agree only because of the floor.
-    not_compared: values left out, each with why.
+    not_compared: values left out, each with why. enveloped: of an envelope, the values compared, case by case.
     """
 
     case: str
@@ -38,6 +64,7 @@ class CaseClaim:
     of: int
     by_floor: int
     not_compared: tuple[tuple[ClaimedValue, str], ...] = ()
+    enveloped: tuple[Enveloped, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -56,6 +83,7 @@ class _Tally:
     compared: int = 0
     by_floor: int = 0
     left: list[tuple[ClaimedValue, str]] = field(default_factory=list)
+    enveloped: list[Enveloped] = field(default_factory=list)
 
 
 class ClaimComparison:
@@ -75,25 +103,29 @@ class ClaimComparison:
         return [self._judge(case, values) for case, values in by_case.items()]
 
     def _judge(self, case: str, values: list[ClaimedValue]) -> CaseClaim:
-        answers = {o: a for o, a in self.answers.items() if case in a.cases}
+        parts = self.frame.meant(case) or (case,)
+        answers = {o: a for o, a in self.answers.items() if all(n in a.cases for n in parts)}
         tally = _Tally()
         if answers:
-            known = {o: self._known(a, case) for o, a in answers.items()}
-            references = self._references(answers, known, case, values)
-            scales = self.judgements[case].scales
+            known = {n: {o: self._known(a, n) for o, a in answers.items()} for n in parts}
+            found = {n: self._references(answers, known[n], n, values) for n in parts}
             for k, value in enumerate(values):
-                self._one(value, {o: r[k] for o, r in references.items()}, next(iter(known.values())), scales, tally)
+                by_part = {n: {o: r[k] for o, r in found[n].items()} for n in parts}
+                self._one(value, by_part, {n: next(iter(known[n].values())) for n in parts}, tally)
         else:
-            tally.left = [(v, "no opinion speaks for this case") for v in values]
+            silent = "this case" if len(parts) == 1 else "all that it stands for"
+            tally.left = [(v, f"no opinion speaks for {silent}") for v in values]
         verdict: Verdict = "disagree" if tally.differences else "agree" if tally.compared else "undecided"
         beyond = sum(1 for v in values if v.kind in ("span", "extreme"))
         return CaseClaim(
-            case, verdict, tuple(worst_first(tally.differences)), tally.compared, self._whole(case) + beyond,
-            tally.by_floor, tuple(tally.left),
+            case, verdict, tuple(worst_first(tally.differences)), tally.compared,
+            self._whole(case) * (2 if case in self.frame.several else 1) + beyond,
+            tally.by_floor, tuple(tally.left), tuple(tally.enveloped),
         )  # fmt: skip
 
     def _whole(self, case: str) -> int:
-        """How many values the case has: end actions, displacements and reactions that are determined."""
+        """How many values the case has: end actions, displacements and reactions that are determined (an envelope has a
+        greatest and a least one of each)."""
         none = next(iter(self.answers.values())).undetermined
         supported = [self.frame.joint_index[name] for name in self.frame.supports]
         return (
@@ -166,15 +198,20 @@ class ClaimComparison:
     # --- judging one value ---
 
     def _one(
-        self, v: ClaimedValue, said: Mapping[str, tuple[float, ...]], known: _Known, scales: Scales, tally: _Tally
-    ) -> None:
+        self, v: ClaimedValue, by_part: Mapping[str, Mapping[str, tuple[float, ...]]], known: Mapping[str, _Known],
+        tally: _Tally,
+    ) -> None:  # fmt: skip
+        """by_part: by case (several where v is an envelope's) and opinion what is said at its place; known: one opinion's
+        whole answer by case, for the scales."""
+        said = over_cases(v.extreme, [*by_part.values()])
         nearest = {o: _nearest(v, r) for o, r in said.items()}
         given = {o: r for o, r in nearest.items() if np.isfinite(r)}
         if not given:
             tally.left.append((v, "undetermined in this idealisation"))
             return
         unsupported = v.kind == "reaction" and v.joint not in self.frame.supports
-        scale = scales.of(v.quantity) if unsupported else self._scale(v, known, scales)
+        scales = {n: self.judgements[n].scales for n in by_part}
+        scale = max(s.of(v.quantity) if unsupported else self._scale(v, known[n], s) for n, s in scales.items())
         reference = next(iter(given.values()))
         claimed = abs(v.value) if v.extreme == "size" else v.value
         reference = abs(reference) if v.extreme == "size" else reference
@@ -188,9 +225,16 @@ class ClaimComparison:
                 tally.left.append((v, "printed too coarsely to judge"))
                 return
         tally.compared += 1
-        if apart <= may:
+        if v.case in self.frame.several:
+            opinion = next(iter(given))
+            there = {n: x for n, said in by_part.items() if np.isfinite(x := _nearest(v, said[opinion]))}
+            tally.enveloped.append(Enveloped(v, there, may))
+        if apart <= may and v.governs and (other := self._other_governs(v, by_part, may)):
+            tally.differences.append(other)
+        elif apart <= may:
             relative = max(self.tolerance.relative * max(abs(claimed), abs(reference)), v.half_digit)
             tally.by_floor += int(apart > relative)
+        if apart <= may:
             return
         values: dict[str, float | None] = {o: (r if np.isfinite(r) else None) for o, r in nearest.items()}
         values["claim"] = v.value
@@ -198,6 +242,24 @@ class ClaimComparison:
         tally.differences.append(
             Difference(_place(v), values, apart, may, abs(claimed) < abs(reference), note, v.line)
         )
+
+    def _other_governs(
+        self, v: ClaimedValue, by_part: Mapping[str, Mapping[str, tuple[float, ...]]], may: float
+    ) -> Difference | None:
+        """A difference where what the claim says governs does not have this value there, or is not of the envelope."""
+        named = self.frame.meant(v.governs)
+        opinion = next(iter(next(iter(by_part.values()))))
+        there = {n: _nearest(v, said[opinion]) for n, said in by_part.items()}
+        size = abs if v.extreme == "size" else float
+        off = {n: abs(size(x) - size(v.value)) for n, x in there.items() if np.isfinite(x)}
+        inside = [n for n in named if n in off]
+        if any(off[n] <= may for n in inside):
+            return None
+        governs = ", ".join(n for n in off if off[n] <= may)
+        note = f"governs by the claim: {v.governs}{'' if inside else f', which is not in {v.case}'}; by us: {governs}"
+        best = min(inside, key=off.__getitem__, default=None)
+        values: dict[str, float | None] = {opinion: there[best] if best else None, "claim": v.value}
+        return Difference(_place(v), values, off[best] if best else 0.0, may, False, note, v.line)
 
     def _scale(self, v: ClaimedValue, known: _Known, scales: Scales) -> float:
         """The member's or joint's own largest value of the quantity, but no less than a share of the case's scale."""
@@ -214,6 +276,19 @@ class ClaimComparison:
         else:
             own = np.array([self._extreme(v, known)])
         return max(_largest(own), least)
+
+
+def over_cases(extreme: str | None, said: list[Mapping[str, tuple[float, ...]]]) -> dict[str, tuple[float, ...]]:
+    """By opinion, the greatest ("max"), least ("min") or largest of what several cases say, on each side of a jump."""
+    if len(said) == 1:
+        return dict(said[0])
+    pick = {"max": max, "min": min}.get(extreme or "", lambda values: max(values, key=abs))
+    out: dict[str, tuple[float, ...]] = {}
+    for opinion in said[0]:
+        sides = zip(*(s[opinion] for s in said), strict=True)
+        finite = [[x for x in side if np.isfinite(x)] for side in sides]
+        out[opinion] = tuple(pick(side) if side else float("nan") for side in finite)
+    return out
 
 
 def _largest(values: Floats) -> float:

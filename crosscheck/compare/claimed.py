@@ -17,7 +17,9 @@ class ClaimedValue:
       "reaction" (fx, fy, moment at `joint`), "displacement" (dx, dy, rotation at `joint`), "extreme" (largest or
       smallest value along `member`, or of all members or joints where `member` and `joint` are None).
     value, half_digit: the value and half a unit of its last printed digit, carried through the unit change.
-    extreme: for kind "extreme" which one: "max", "min" or "size" (largest magnitude).
+    extreme: for kind "extreme" which one: "max", "min" or "size" (largest magnitude); for the other kinds the same of an
+      envelope's values at that place, None where it is a value of one case.
+    governs: the case or combination that the claim says an envelope's value comes from, "" where it says none.
     line: line of the claim it stands on; printed: the text as printed.
     """
 
@@ -32,6 +34,7 @@ class ClaimedValue:
     line: int
     printed: str = ""
     extreme: Literal["max", "min", "size"] | None = None
+    governs: str = ""
 
 
 @dataclass(frozen=True, slots=True)

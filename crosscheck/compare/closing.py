@@ -14,11 +14,12 @@ import numpy as np
 from crosscheck.answer import Answer
 from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
+from crosscheck.compare.enveloped import candidates, prepared, silent_part, unaudited
 from crosscheck.compare.fit import Choice, Fitted, Fitter
 from crosscheck.compare.fit_conventions import Batch, distance, placed
 from crosscheck.compare.fit_signs import Senses, narrowed, plain_where_loads_turn, senses
 from crosscheck.compare.fit_stations import with_stations
-from crosscheck.compare.fit_values import Reference
+from crosscheck.compare.fit_values import EnvelopeReference, Reference
 from crosscheck.compare.fit_variants import open_moment, variants
 from crosscheck.compare.tolerance import Tolerance
 from crosscheck.frame.model import Frame
@@ -41,7 +42,7 @@ def close(
     closer = _Closer(reading, frame, answers, tolerance)
     if not answers:
         return closer.result((), [], ["no opinion speaks for this frame"])
-    entries, notes = _of_case(reading, case)
+    entries, notes = _of_case(reading, frame, case)
     ways: list[tuple[int, ClosedClaim]] = []
     ways_said: list[str] = []
     open_moments = any(open_moment(e) for e in entries)
@@ -83,26 +84,40 @@ def _without_open_moments(closer: _Closer, entries: list[Entry], notes: list[str
 def _close_case(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
     frame, answers = closer.frame, closer.answers
     if case is not None:
-        return closer.close([replace(e, case=case) for e in entries], notes)
+        return closer.close([e if e.along else replace(e, case=case) for e in entries], notes)
     if all(e.case is not None for e in entries):
         return closer.close(entries, notes)
-    spoken = [n for n in frame.names if any(n in a.cases for a in answers.values())]
-    if len(frame.names) == 1:
+    if len(frame.names) == 1 and not frame.several:
         return closer.close([replace(e, case=e.case or frame.names[0]) for e in entries], notes)
-    return _by_fit(closer, entries, spoken, notes)
+    singles, several = candidates(entries, frame, answers)
+    if not singles and not several:
+        reason = "the claim gives greatest and least values of several cases, and the frame has no envelope; state one"
+        return closer.result((), notes, [reason])
+    if singles and several:
+        closed = _by_fit(closer, entries, singles, notes, told=False)
+        if closed is not None:
+            return closed
+    closed = _by_fit(closer, entries, several or singles, notes)
+    assert closed is not None
+    return closed
 
 
-def _of_case(reading: Reading, case: str | None) -> tuple[list[Entry], list[str]]:
-    """Entries of the case asked for; with none asked for, all."""
+def _of_case(reading: Reading, frame: Frame, case: str | None) -> tuple[list[Entry], list[str]]:
+    """Entries of the case asked for; with none asked for, all. Values that go with an envelope's extremes are of one of
+    the cases that it stands for."""
     if case is None:
         return list(reading.entries), []
-    entries = [e for e in reading.entries if e.case in (None, case)]
+    meant = frame.meant(case)
+    entries = [e for e in reading.entries if e.case in (None, case) or e.along and e.case in meant]
     left = len(reading.entries) - len(entries)
     return entries, [f"{left} values of other cases are left out"] if left else []
 
 
-def _by_fit(closer: _Closer, entries: list[Entry], names: list[str], notes: list[str]) -> ClosedClaim:
-    """The one case that the values without a case fit; undecided where none or several do."""
+def _by_fit(
+    closer: _Closer, entries: list[Entry], names: list[str], notes: list[str], told: bool = True
+) -> ClosedClaim | None:
+    """The one case that the values without a case fit; undecided where none or several do. told: whether that is said
+    where none does, or None given."""
     tried = {n: closer.close([replace(e, case=e.case or n) for e in entries], notes) for n in names}
     known = {*closer.result((), [], []).undecided}  # what is undecided in the reading itself, whichever case is meant
     fitting = [n for n, closed in tried.items() if not closer.bad[n] and known.issuperset(closed.undecided)]
@@ -110,8 +125,11 @@ def _by_fit(closer: _Closer, entries: list[Entry], names: list[str], notes: list
         name = fitting[0]
         said = f'the claim names no case; "{name}" is the only one of {len(names)} that it fits'
         return replace(tried[name], notes=(said, *tried[name].notes))
+    if not fitting and not told:
+        return None
     why = "fits none of them" if not fitting else f"fits {' and '.join(fitting)}"
-    reason = f"the claim names no load case and {why}; say which with --case ({', '.join(closer.frame.names)})"
+    known_names = (*closer.frame.names, *closer.frame.several)
+    reason = f"the claim names no load case and {why}; say which with --case ({', '.join(known_names)})"
     return closer.result((), notes, [reason])
 
 
@@ -132,10 +150,13 @@ class _Closer:
     def close(self, entries: list[Entry], notes: Iterable[str]) -> ClosedClaim:
         """Every entry has its case by now. Counts in `bad` the values that fit no choice."""
         notes = list(notes)
-        cases = tuple(n for n in self.frame.names if any(e.case == n for e in entries))
-        silent = [n for n in cases if not any(n in a.cases for a in self.answers.values())]
-        undecided = [f"no opinion speaks for {n}" for n in silent]
-        entries = [e for e in entries if e.case not in silent]
+        named = {e.case for e in entries}
+        cases = tuple(n for n in (*self.frame.names, *self.frame.several) if n in named)
+        missing = {n: part for n in cases if (part := silent_part(self.frame, self.answers, n))}
+        undecided = [f"no opinion speaks for {p}{f' of {n}' if n != p else ''}" for n, p in missing.items()]
+        silent = [*missing]
+        entries, loose = prepared([e for e in entries if e.case not in silent], self.frame)
+        undecided += loose
         entries = with_stations(entries, self.frame)
         batches = _batches(entries, self.frame, cases)
         fitter = Fitter(self.frame.units, [self._reference(n) for n in cases if n not in silent], self.tolerance)
@@ -155,6 +176,7 @@ class _Closer:
             if id(f) not in open_choices or sure_to_fail:
                 values += self._values(f, entries, cases, meant)
         closed = self.result(cases, notes, undecided)
+        closed = replace(closed, notes=(*closed.notes, *unaudited(cases, self.frame)))
         return replace(
             closed,
             values=tuple(sorted(values, key=lambda v: v.line)),
@@ -164,7 +186,12 @@ class _Closer:
             reversed_load=meant.reversed_load,
         )
 
-    def _reference(self, name: str) -> Reference:
+    def _reference(self, name: str) -> Reference | EnvelopeReference:
+        if name in self.frame.several:
+            return EnvelopeReference(tuple(self._single(n) for n in self.frame.meant(name)))
+        return self._single(name)
+
+    def _single(self, name: str) -> Reference:
         if name not in self._references:
             self._references[name] = Reference(self.frame, self.answers, name)
         return self._references[name]
@@ -172,7 +199,7 @@ class _Closer:
     def result(self, cases: tuple[str, ...], notes: list[str], undecided: list[str]) -> ClosedClaim:
         r = self.reading
         unknown = [
-            f'load case "{label}" is not one of the frame\'s ({", ".join(self.frame.names)}); '
+            f'load case "{label}" is not one of the frame\'s ({", ".join((*self.frame.names, *self.frame.several))}); '
             "say which it is in a reading file, or with --case"
             for label in r.unknown_cases
         ]
@@ -206,6 +233,7 @@ class _Closer:
                     line=e.line,
                     printed=e.number.printed,
                     extreme=_turned(e.extreme, float(sign[k])),  # type: ignore[arg-type]
+                    governs=e.governs,
                 )  # fmt: skip
             )
         return out

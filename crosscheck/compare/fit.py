@@ -14,7 +14,7 @@ import numpy as np
 
 from crosscheck.compare.fit_conventions import Batch, Convention, conventions, expected
 from crosscheck.compare.fit_units import UnitChoice, angle_choices, arm_choices, force_choices, length_choices
-from crosscheck.compare.fit_values import Reference
+from crosscheck.compare.fit_values import EnvelopeReference, Reference
 from crosscheck.compare.tolerance import COARSE, LEAST_SHARE, Tolerance, allowed
 from crosscheck.frame.model import Bools, Floats, Units
 
@@ -65,7 +65,7 @@ class Fitted:
 class Fitter:
     """Tries choices on batches. `references` in the order of each batch's cases."""
 
-    def __init__(self, units: Units, references: list[Reference], tolerance: Tolerance) -> None:
+    def __init__(self, units: Units, references: list[Reference | EnvelopeReference], tolerance: Tolerance) -> None:
         self.units, self.references, self.tolerance = units, references, tolerance
 
     def fit(self, batches: list[Batch]) -> list[Fitted]:
@@ -132,9 +132,9 @@ class _Trial:
         return Choice(unit, convention, bad, telling, known & (size_apart > may), misses, side)
 
 
-def _expected(batch: Batch, references: list[Reference], tried: list[Convention]) -> list[Floats]:
+def _expected(batch: Batch, references: list[Reference | EnvelopeReference], tried: list[Convention]) -> list[Floats]:
     """What the opinion says in every convention; the two signs of one are each other's negative, but for extremes."""
-    if batch.kind == "extreme":
+    if batch.kind == "extreme" or batch.extreme.any():
         return [expected(batch, references, c) for c in tried]
     straight = {(c.form, c.rule): expected(batch, references, c) for c in tried if c.sign == 1}
     return [c.sign * straight[c.form, c.rule] for c in tried]
@@ -149,7 +149,7 @@ def _nearer(said: Floats, value: Floats) -> Floats:
     return np.where(takes_first & np.isfinite(first), first, second)
 
 
-def _scales(batch: Batch, references: list[Reference]) -> tuple[Floats, Bools]:
+def _scales(batch: Batch, references: list[Reference | EnvelopeReference]) -> tuple[Floats, Bools]:
     """(n,) the scale of each value, and where a reaction stands at a joint without support."""
     scale = np.zeros(len(batch.value))
     unsupported = np.zeros(len(batch.value), dtype=bool)
@@ -171,7 +171,7 @@ def _scales(batch: Batch, references: list[Reference]) -> tuple[Floats, Bools]:
     return scale, unsupported
 
 
-def _extreme_scale(batch: Batch, mine: Bools, reference: Reference) -> Floats:
+def _extreme_scale(batch: Batch, mine: Bools, reference: Reference | EnvelopeReference) -> Floats:
     """The member's or joint's own scale; of an extreme over all of them its own size."""
     member, joint = batch.member[mine], batch.joint[mine]
     most = np.abs(reference.extremes_of(batch.quantity, member, joint)).max(axis=1)

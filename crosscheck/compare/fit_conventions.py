@@ -17,7 +17,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from crosscheck.compare.fit_stations import at_jumps
-from crosscheck.compare.fit_values import COLUMN, Reference, joint_column
+from crosscheck.compare.fit_values import COLUMN, EnvelopeReference, Reference, joint_column
 from crosscheck.frame.model import Bools, Floats, Frame, Ints
 
 RULES = ("frame", "rows", "reversed", "rightward", "leftward", "downward")
@@ -69,7 +69,7 @@ class Batch:
 
     member, joint: indices, -1 for none. end, place: 0, 1 or -1 (not said). run: +1, -1 or 0. at: distance from the paste's
     start in the frame's length, or a share of the member's length where at_share; at_half: half its last printed digit.
-    extreme: 1 max, -1 min, 0 size.
+    extreme: 1 max, -1 min, 0 size (of values of one place: none, or size where unsigned).
     cut: where inside its member a part of it ends; origin: where a part begins (NaN for whole members); both from the
       frame's `from` joint. unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value,
       half: as printed. factor: to the frame's units, NaN where no unit is stated.
@@ -162,7 +162,7 @@ def distance(batch: Batch, frame: Frame, r: Ints) -> Floats:
     return at_jumps(frame, batch.member, x, batch.at_half * unit)
 
 
-def expected(batch: Batch, references: list[Reference], convention: Convention) -> Floats:
+def expected(batch: Batch, references: list[Reference | EnvelopeReference], convention: Convention) -> Floats:
     """(n, k) what the opinion's value reads in this convention, in the frame's units; k = 2 where a value along a
     member may
     stand on either side of a jump, else 1."""
@@ -170,7 +170,18 @@ def expected(batch: Batch, references: list[Reference], convention: Convention) 
     for k, reference in enumerate(references):
         mine = np.flatnonzero(batch.case == k)
         if len(mine):
-            out[mine] = _expected_in(_part(batch, mine), reference, convention)
+            some = _part(batch, mine)
+            out[mine] = _over_cases(some.extreme, [_expected_in(some, r, convention) for r in reference.parts])
+    return out
+
+
+def _over_cases(which: Ints, said: list[Floats]) -> Floats:
+    """(n, k) of what several cases say, as printed: the greatest (1), the least (-1) or the largest in size."""
+    if len(said) == 1:
+        return said[0]
+    greatest, least = np.fmax.reduce(said), np.fmin.reduce(said)
+    largest = np.where(np.abs(greatest) >= np.abs(least), greatest, least)
+    out: Floats = np.where(which[:, None] > 0, greatest, np.where(which[:, None] < 0, least, largest))
     return out
 
 

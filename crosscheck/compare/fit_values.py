@@ -6,6 +6,7 @@ The same measure as crosscheck.compare.claim uses on single values, over arrays:
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
@@ -35,6 +36,11 @@ class Reference:
         self.answer = next((a for a in given if not a.spans.sampled), given[0])
         self.result: CaseAnswer = self.answer.cases[case]
         self.scales: Scales = case_scales(frame, load_table(frame, case), [a.cases[case] for a in given])
+
+    @property
+    def parts(self) -> tuple[Reference, ...]:
+        """References of single cases: itself alone."""
+        return (self,)
 
     def along(self, member: Ints, x: Floats, side: int) -> Floats:
         """(n, 4) values at distances x of members, just before or after them; NaN off the member."""
@@ -81,3 +87,40 @@ class Reference:
         own = np.abs(np.nan_to_num(self.result.reactions if kind == "reaction" else self.result.joints))
         size = own[:, 2] if joint_column(quantity) == 2 else own[:, :2].max(axis=1, initial=0.0)
         return np.maximum(size, LEAST_SHARE * self.scales.of(quantity))
+
+
+class EnvelopeReference:
+    """References of the cases and combinations of an envelope; its scales are the greatest of theirs."""
+
+    def __init__(self, parts: tuple[Reference, ...]) -> None:
+        self.parts, self.frame = parts, parts[0].frame
+
+    @property
+    def scales(self) -> EnvelopeScales:
+        return EnvelopeScales(tuple(p.scales for p in self.parts))
+
+    def extremes_of(self, quantity: str, member: Ints, joint: Ints) -> Floats:
+        """(n, 2) as a Reference's, over all parts."""
+        found = np.stack([p.extremes_of(quantity, member, joint) for p in self.parts])
+        out: Floats = np.stack([np.fmin.reduce(found[:, :, 0]), np.fmax.reduce(found[:, :, 1])], axis=1)
+        return out
+
+    def member_scale(self, quantity: str) -> Floats:
+        """(m,) the greatest of its parts' scales."""
+        out: Floats = np.max([p.member_scale(quantity) for p in self.parts], axis=0)
+        return out
+
+    def joint_scale(self, quantity: str, kind: str) -> Floats:
+        """(j,) the greatest of its parts' scales."""
+        out: Floats = np.max([p.joint_scale(quantity, kind) for p in self.parts], axis=0)
+        return out
+
+
+@dataclass(frozen=True, slots=True)
+class EnvelopeScales:
+    """The greatest of several cases' scales."""
+
+    parts: tuple[Scales, ...]
+
+    def of(self, quantity: str) -> float:
+        return max(p.of(quantity) for p in self.parts)

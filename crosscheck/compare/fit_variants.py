@@ -90,6 +90,8 @@ def in_member_axes(entries: list[Entry], frame: Frame) -> list[Entry] | None:
             pairs.setdefault((e.line, e.member, _end(e)), {})[e.quantity] = e
     if any(set(p) != {"axial", "shear"} or end is None for (_, _, end), p in pairs.items()):
         return None
+    if any(e.extreme for p in pairs.values() for e in p.values()):
+        return None  # the greatest of two components need not come from one case
     out = [e for e in entries if not (e.axes == "open" and e.kind == "end")]
     for (_, member, end), pair in pairs.items():
         assert end is not None
@@ -137,7 +139,7 @@ def in_global_axes(entries: list[Entry], frame: Frame) -> list[Entry] | None:
     for e in entries:
         if e.kind == "reaction" and _tilt(e, frame):
             pairs.setdefault((e.line, e.joint), {})[e.quantity] = e
-    if any(set(p) != {"fx", "fy"} for p in pairs.values()):
+    if any(set(p) != {"fx", "fy"} or any(e.extreme for e in p.values()) for p in pairs.values()):
         return None
     out = [e for e in entries if not (e.kind == "reaction" and _tilt(e, frame))]
     for pair in pairs.values():

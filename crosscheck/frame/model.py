@@ -383,6 +383,13 @@ class Frame:
         return tuple(one.name for one in self.combinations.values() if one.stated == name)
 
     @cached_property
+    def several(self) -> tuple[str, ...]:
+        """Names that stand for several cases or combinations: envelopes, and combinations that became several."""
+        known = {*self.cases, *self.combinations, *self.envelopes}
+        stated = dict.fromkeys(c.stated for c in self.combinations.values() if c.stated and c.stated not in known)
+        return (*self.envelopes, *stated)
+
+    @cached_property
     def joint_index(self) -> dict[str, int]:
         return {name: k for k, name in enumerate(self.joints)}
 
