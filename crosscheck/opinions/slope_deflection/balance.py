@@ -213,7 +213,8 @@ class _Path:
 
     def __init__(self, case: CaseInSecondOrder, first: Floats) -> None:
         self.case, self.first = case, first
-        self.size = max(_largest(first), 1e-300)
+        # Loads along a member may be all the axial force that it has in first order, and what its stretch adds be rounding.
+        self.size = max(_largest(first), _largest(case.pulls(first)), 1e-300)
 
     def followed(self) -> State:
         """The state at the end of the path that starts from no load. Raises PastCritical where it ends before."""
