@@ -1,7 +1,8 @@
 """Random frames of the checking week in second order: stepped and tapered members, ties, single rigid members, one-way
 parts, states of stiffness and leans, each case loaded to between 0.1 and 0.7 of its critical load factor.
 
-Both of our own opinions agree to 1e-8 of scale, or both say that the case finds no balance. Where nothing buckles the load stands as it is.
+Both of our own opinions agree to 1e-8 of scale, or both say that the case finds no balance. Where nothing buckles the
+load stands as it is.
 """
 
 from __future__ import annotations
