@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from crosscheck.frame.model import Floats
+from crosscheck.frame.model import Combination, Floats, Frame
 from crosscheck.review.finding import Finding, Subject, listed
 
 
@@ -21,7 +21,8 @@ def unused_cases(subject: Subject) -> Iterator[Finding]:
     if not subject.frame.combinations:
         return
     used = {case for c in subject.frame.combinations.values() for case, factor in c.factors.items() if factor}
-    left = [name for name in subject.frame.cases if name not in used]
+    used |= {subject.frame.cases[case].arranged for case in used}
+    left = [name for name, case in subject.frame.cases.items() if name not in used and not case.arranged]
     if left:
         yield Finding("check", tuple(left), f"no combination uses load case{'s' if len(left) > 1 else ''} {listed(left)}")
 
@@ -90,15 +91,14 @@ def uplift_combination(subject: Subject) -> Iterator[Finding]:
     frame = subject.frame
     if not frame.combinations:
         return
-    total = {name: subject.total(name) for name in frame.cases}
+    total = {name: subject.total(name) for name, case in frame.cases.items() if not case.arranged}
+    used = [_as_stated(frame, c) for c in frame.combinations.values()]
     weight = [n for n, t in total.items() if t[1] < 0 and abs(t[1]) > abs(t[0])]
     missing: dict[str, list[str]] = {"check": [], "note": []}
     for name, t in total.items():
         if not t[:2].any() or not weight or not (t[1] > 1e-9 * abs(t[0]) or abs(t[0]) > abs(t[1])):
             continue
-        least = any(
-            c.factors.get(name) and all(c.factors.get(w, 0.0) <= 1.0 for w in weight) for c in frame.combinations.values()
-        )
+        least = any(factors.get(name) and all(factors.get(w, 0.0) <= 1.0 for w in weight) for factors in used)
         if not least:
             missing["check" if t[1] > 0.05 * np.abs(t[:2]).max() else "note"].append(name)
     for grade, names in missing.items():
@@ -106,6 +106,11 @@ def uplift_combination(subject: Subject) -> Iterator[Finding]:
             least_load = f"the least vertical load (factors up to 1.0 on {listed(weight)})"
             says = f"no combination has {listed(names)} with {least_load}"
             yield Finding("check" if grade == "check" else "note", tuple(names), says)
+
+
+def _as_stated(frame: Frame, combination: Combination) -> dict[str, float]:
+    """Its factors, those of arrangements as those of the case that they are arrangements of."""
+    return {frame.cases[case].arranged or case: factor for case, factor in combination.factors.items()}
 
 
 def light_factors(subject: Subject) -> Iterator[Finding]:

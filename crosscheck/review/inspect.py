@@ -11,7 +11,7 @@ from crosscheck.check import critical_factors, situations
 from crosscheck.frame.kinematics import mechanisms, study
 from crosscheck.frame.model import Frame
 from crosscheck.problems import UnusableInput
-from crosscheck.review import behaviour, combinations, connection, loading, properties, stability, stiffness, symmetry
+from crosscheck.review import behaviour, combinations, connection, loading, properties, stability, stiffness, symmetry, week
 from crosscheck.review.finding import RANK, Check, Finding, Limits, Subject
 from crosscheck.review.storeys import OPINION, storey_factors
 
@@ -26,6 +26,8 @@ CHECKS: tuple[Check, ...] = (
     loading.doubled_loads, loading.unloaded_span,
     combinations.unused_cases, combinations.twice, combinations.opposing_winds, combinations.uplift_combination,
     combinations.light_factors,
+    week.excluding_cases, week.uneven_states, week.uneven_leans, week.uneven_orders, week.unused_states, week.state_factors,
+    week.lean_sizes, week.idle_patterns, week.ties, week.idle_one_way, week.haunches, week.included_files,
     behaviour.sway, behaviour.deflection, behaviour.uplift, behaviour.thrust, behaviour.locked_temperature,
     stability.second_order, stability.critical_factors, behaviour.undetermined, behaviour.said_by_the_reader,
 )  # fmt: skip
@@ -72,7 +74,7 @@ def subject_of(frame: Frame, limits: Limits | None = None, stability: bool = Tru
     if not isinstance(answer, Answer):
         return Subject(frame, (), found, limits=limits)
     critical = critical_factors(frame) if stability else {}
-    rough = storey_factors(frame, found, answer.cases) if stability else {}
+    rough = _storeys(frame, answer) if stability else {}
     return Subject(frame, (), found, answer, critical, rough, limits)
 
 
@@ -80,6 +82,15 @@ def _answer(frame: Frame) -> Answer | Silent:
     """Every case and combination in its own state of stiffness and order. Raises UnusableInput."""
     opine = importlib.import_module(OPINION).opine
     return joined([(names, opine(plain, study(plain), names)) for plain, names in situations(frame, frame.names)])
+
+
+def _storeys(frame: Frame, answer: Answer) -> dict[str, float]:
+    """The storey formula's factor of each case and combination, in its own state of stiffness."""
+    found: dict[str, float] = {}
+    for plain, names in situations(frame, frame.names):
+        cases = {name: answer.cases[name] for name in names if name in answer.cases}
+        found |= storey_factors(plain, study(plain), cases)
+    return found
 
 
 def inspect(subject: Subject) -> list[Finding]:

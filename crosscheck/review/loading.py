@@ -44,7 +44,9 @@ def totals(subject: Subject) -> Iterator[Finding]:
     Source: statics.
     """
     f, length = subject.frame.units.force, subject.frame.units.length
-    for name in subject.frame.cases:
+    for name, case in subject.frame.cases.items():
+        if case.arranged:  # part of what its case adds up to
+            continue
         fx, fy, moment = (float(v) for v in subject.total(name))
         size = max(abs(fx), abs(fy))
         if size == 0:

@@ -108,6 +108,8 @@ def slenderness(subject: Subject) -> Iterator[Finding]:
     for name in _used(subject, "section"):
         s = subject.frame.sections[name]
         own = [k for k, m in enumerate(subject.frame.members.values()) if m.section == name]
+        if not own:  # of parts of stepped and tapered members only
+            continue
         ratio = float(t.length[own].max()) / (12 * s.I) ** 0.25
         if not SLENDER[0] <= ratio <= SLENDER[1]:
             word = "stocky" if ratio < SLENDER[0] else "slender"
@@ -168,4 +170,6 @@ def shear_areas(subject: Subject) -> Iterator[Finding]:
 
 def _used(subject: Subject, what: str) -> list[str]:
     """Names of the sections or materials in use, in the file's order."""
-    return list(dict.fromkeys(getattr(m, what) for m in subject.frame.members.values()))
+    members = subject.frame.members.values()
+    pieces = [s for m in members for p in m.pieces for s in (p.first, p.last)] if what == "section" else []
+    return list(dict.fromkeys([*(getattr(m, what) for m in members), *pieces]))

@@ -24,8 +24,9 @@ def second_order(subject: Subject) -> Iterator[Finding]:
     if past:
         says = f"past the critical load of the frame: the critical load factor of {past[0]} is {_factor(subject, past[0])}"
         yield Finding("serious", tuple(past), says + and_more(len(past) - 1))
-    low = [(f, c) for f, c in worst if 1.0 < f < subject.limits.critical]
-    if low and subject.frame.analysis.order == 1:
+    frame = subject.frame
+    low = [(f, c) for f, c in worst if 1.0 < f < subject.limits.critical and frame.under(c).analysis.order == 1]
+    if low:
         factor, case = low[0]
         gain = 100 * (1 / (1 - 1 / factor) - 1)
         below = f"below {subject.limits.critical:g}{and_more(len(low) - 1)}"
