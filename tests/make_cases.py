@@ -242,7 +242,8 @@ def envelope_ends(r: Results, cases: Sequence[str]) -> list[Table]:
 def envelope_along(r: Results, cases: Sequence[str]) -> list[Table]:
     """A table an envelope: greatest and least moments at the tenths of each member, each with what governs it."""
     p = r.printing
-    heads = ["Member", f"x [{r.frame.units.length}]", f"M max [{p.moment}]", "governing", f"M min [{p.moment}]", "governing"]
+    extremes = [head for which in ("max", "min") for head in (f"M {which} [{p.moment}]", "governing")]
+    heads = ["Member", f"x [{r.frame.units.length}]", *extremes]
     return [Table([f"Envelope: {c}"], heads, [[m, x, *v] for m, x, v in r.envelope_along(c)]) for c in cases]
 
 

@@ -15,6 +15,7 @@ from crosscheck.claims.names import Names, without_prefix
 from crosscheck.claims.numbers import is_blank
 from crosscheck.claims.scan import RawTable, is_number
 from crosscheck.claims.split import Cell, Separator, join_units, separator_of, split, wide_cells
+from crosscheck.claims.which import which_of
 from crosscheck.claims.words import Head, head_of, is_header_word, unit_of
 
 Row = list[str]
@@ -128,7 +129,8 @@ _DASHES = ("-", "\u2013", "\u2212", "\u2014", "to", "->", "\u2192", "/")
 def _name_size(cells: list[Cell], k: int, names: Names) -> int:
     """How many cells from k make one name."""
     for size in range(min(MOST_NAME_WORDS, len(cells) - k), 4, -1):
-        if " ".join(c.text for c in cells[k : k + size]) in names.frame.cases:  # "ultimate (wind, imposed odd spans)"
+        text = " ".join(c.text for c in cells[k : k + size])
+        if text in names.frame.cases or text in names.frame.envelopes:  # "ultimate (wind, imposed odd spans)"
             return size
     for size in (4, 3, 2):
         part = cells[k : k + size]
@@ -143,8 +145,11 @@ def _name_size(cells: list[Cell], k: int, names: Names) -> int:
 
 
 def _is_one_name(text: str, part: list[Cell], names: Names) -> bool:
-    if text in names.frame.members or text in names.frame.xy or text in names.frame.cases:
+    known = (names.frame.members, names.frame.xy, names.frame.cases, names.frame.envelopes)
+    if any(text in some for some in known):
         return True
+    if len(part) == 2 and (which := which_of(text)) and which.noun:
+        return True  # "max M"
     if len(part) == 2:
         bare = {without_prefix(text, kind) for kind in ("member", "joint", "case")}
         return part[1].text in bare or (part[1].text.lstrip("#:.") in bare)

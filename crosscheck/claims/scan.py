@@ -399,8 +399,9 @@ class _Scanner:
         return "row", ""
 
     def _of_envelope(self, text: str) -> bool:
-        """ "max", "min", or a word of the name of what governs."""
-        return which_of(text) is not None or text.casefold().strip(",;()") in self.case_words
+        """ "max", "min", or the name of what governs, or a word of it."""
+        named = text.casefold().strip(",;()") in self.case_words or self.names.case(text) is not None
+        return named or which_of(text) is not None
 
     def _under_heads(self, filled: list[str]) -> bool:
         """Has the line as many cells as the table has heads?"""

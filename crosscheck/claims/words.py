@@ -54,7 +54,8 @@ _NOUN_WORDS = {
     "w": "deflection deflections defl sag",
     "D": "displacement displacements disp displ displs translation translations trans movement movements sway drift",
     "R": "reaction reactions react reac rct rxn rxns",
-    "case": "case cases lc loadcase combination combinations combo comb combn loading lcase loadcomb loadcombination ldc governing governs decisive determining",
+    "case": "case cases lc loadcase combination combinations combo comb combn loading lcase loadcomb loadcombination ldc "
+    "governing governs decisive determining",
     "which": "extreme extremes envelope env type kind maxmin",
     "station": "station stations sta stn dist distance loc location pos position abscissa offset",
     "I": "inertia ixx iyy izz",
