@@ -3,7 +3,8 @@
 Every member load is a sum of brackets c <x - a>^n (W. H. Macaulay, Messenger of Mathematics 48 (1919), 129-130), in the
 sagging moment of the member as a simple beam, in its shear and in its axial force. A deformation is the integral of the
 strain times the force of a unit load (J. C. Maxwell 1864, O. Mohr 1874), and a bracket times a linear unit-load
-moment integrates in closed form. This is the audit's own road: no stiffness, no fixed-end action, no quadrature.
+moment integrates in closed form. This is the audit's own road: no stiffness, no fixed-end action. Stepped and tapered
+members have the same integrals with their true sections under them (varying.py).
 
 Deformations of a member are (end rotation from its chord at `from`, the same at `to`, elongation), clockwise positive,
 between its joints; the forces that go with them are (moment at `from`, moment at `to`, axial force at `from`).
@@ -16,9 +17,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from crosscheck.audit.equilibrium import pieces, resultants
+from crosscheck.audit.brackets import Brackets, simple_beam
+from crosscheck.audit.varying import ByPiece, by_piece
 from crosscheck.frame.loads import LoadTable
-from crosscheck.frame.model import FREE, HELD, Floats, Frame, Ints
+from crosscheck.frame.model import FREE, HELD, Floats, Frame
 
 BENDING, SHEAR_STRAIN, STRETCH, CONNECTION, IMPOSED = range(5)
 """Where a deformation comes from: bending, shear, axial force, semi-rigid connections, temperature and misfit."""
@@ -31,12 +33,14 @@ class Flexibility:
     matrix: (5, m, 3, 3) by source (IMPOSED is nil); load: (5, m, 3) deformations of the loads on the simple beam with
     no axial force at its `from` end. Total deformation = sum over sources of matrix @ forces + load.
     connection: (m, 2, 3) forces to sagging moment in the end connections, connection_load: (m, 2) its constant part.
+    by_piece: what each piece of the stepped and tapered members has in it.
     """
 
     matrix: Floats
     load: Floats
     connection: Floats
     connection_load: Floats
+    by_piece: ByPiece
 
     @property
     def total(self) -> Floats:
@@ -48,76 +52,11 @@ class Flexibility:
         """(m, 3)."""
         return np.asarray(self.load.sum(axis=0))
 
-
-@dataclass(frozen=True, slots=True)
-class _Brackets:
-    """(n,) each: member, power 0 to 3, start of the bracket, coefficient. Before its start a bracket is nil."""
-
-    member: Ints
-    power: Ints
-    start: Floats
-    factor: Floats
-
-    @staticmethod
-    def of(*rows: tuple[Ints, int, Floats, Floats]) -> _Brackets:
-        """From groups of equal power."""
-        return _Brackets(
-            np.concatenate([r[0] for r in rows]),
-            np.concatenate([np.full(len(r[0]), r[1]) for r in rows]),
-            np.concatenate([r[2] for r in rows]),
-            np.concatenate([r[3] for r in rows]),
-        )
-
-    def integral(self, low: Floats, high: Floats, constant: Floats, slope: Floats) -> Floats:
-        """(m,) integral from low to high of the brackets times (constant + slope x); all (m,)."""
-        m, n = self.member, self.power
-        t0 = np.maximum(low[m] - self.start, 0.0)
-        t1 = np.maximum(high[m] - self.start, 0.0)
-        first = (t1 ** (n + 1) - t0 ** (n + 1)) / (n + 1)
-        second = (t1 ** (n + 2) - t0 ** (n + 2)) / (n + 2)
-        part = self.factor * (constant[m] * first + slope[m] * (self.start * first + second))
-        total = np.zeros(len(low))
-        np.add.at(total, m, part)
-        return total
-
-    def value(self, x: Floats, after: bool) -> Floats:
-        """(m,) the sum at x of each member, just before x, or just after it where `after`."""
-        t = x[self.member] - self.start
-        on = t >= 0 if after else t > 0
-        total = np.zeros(len(x))
-        np.add.at(total, self.member, np.where(on, self.factor * np.maximum(t, 0.0) ** self.power, 0.0))
-        return total
-
-
-def _line_brackets(line: Floats, column: int, power: int) -> list[tuple[Ints, int, Floats, Floats]]:
-    """A stretch from w0 to w1, integrated `power` times: it begins at its start and is taken off again at its end."""
-    member = line[:, 6].astype(np.int64)
-    start, end, w0, w1 = line[:, 0], line[:, 1], line[:, column], line[:, column + 1]
-    slope = np.divide(w1 - w0, end - start, out=np.zeros_like(w0), where=end > start)
-    over = float(np.prod(np.arange(1, power + 1)))
-    return [
-        (member, power, start, w0 / over), (member, power + 1, start, slope / (over * (power + 1))),
-        (member, power, end, -w1 / over), (member, power + 1, end, -slope / (over * (power + 1))),
-    ]  # fmt: skip
-
-
-def _simple_beam(loads: LoadTable, length: Floats) -> tuple[_Brackets, _Brackets, _Brackets]:
-    """Sagging moment and shear of each member on two simple supports, and its axial force with none at `from`."""
-    part = pieces(loads)
-    point, line = part.point, part.line
-    every = np.arange(len(length))
-    zero = np.zeros(len(length))
-    member = point[:, 4].astype(np.int64)
-    at, along, across, couple = point[:, 0], point[:, 1], point[:, 2], point[:, 3]
-    total = resultants(part, len(length))
-    # The shear at `from` is what makes the moment at `to` nil: V L + (moment of the loads about `to`) = 0.
-    first = -(total[:, 1] + total[:, 2] / length)
-    moment = _Brackets.of(
-        (every, 1, zero, first), (member, 1, at, across), (member, 0, at, couple), *_line_brackets(line, 4, 2)
-    )
-    shear = _Brackets.of((every, 0, zero, first), (member, 0, at, across), *_line_brackets(line, 4, 1))
-    axial = _Brackets.of((member, 0, at, -along), *((m, n, a, -c) for m, n, a, c in _line_brackets(line, 2, 1)))
-    return moment, shear, axial
+    @property
+    def held_axial(self) -> Floats:
+        """(m,) axial force at `from` with which the loads along a member do not change its length; nil if it is rigid."""
+        soft = self.matrix[STRETCH, :, 2, 2]
+        return np.asarray(np.divide(-self.load[STRETCH, :, 2], soft, out=np.zeros(len(soft)), where=soft > 0))
 
 
 def flexibility(frame: Frame, loads: LoadTable) -> Flexibility:
@@ -125,7 +64,7 @@ def flexibility(frame: Frame, loads: LoadTable) -> Flexibility:
     t = frame.member_table
     m = len(t.length)
     low, high = t.zone[:, 0], t.length - t.zone[:, 1]
-    moment, shear, axial = _simple_beam(loads, t.length)
+    moment, shear, axial = simple_beam(loads, t.length)
     bend, slide, pull = _softness(frame)
     one, none = np.ones(m), np.zeros(m)
     # A unit clockwise moment at `from` gives 1 - x/L, one at `to` gives -x/L (sagging); both shears are -1/L.
@@ -140,20 +79,32 @@ def flexibility(frame: Frame, loads: LoadTable) -> Flexibility:
             matrix[SHEAR_STRAIN, :, a, b] = slide * sa * sb * (high - low)
     matrix[STRETCH, :, 2, 2] = pull * (high - low)
     load[STRETCH, :, 2] = pull * axial.integral(low, high, one, none)
+    pieces = by_piece(frame, loads, moment, shear, axial)
+    _put_pieces(frame, pieces, matrix, load)
     load[IMPOSED, :, 2] = _warmth(frame, loads) * (high - low) + loads.misfit
     connection, connection_load = _connections(frame, moment)
     soft = np.where((t.turn != FREE) & (t.turn != HELD), 1 / np.where(t.turn == FREE, 1.0, t.turn), 0.0)
     matrix[CONNECTION] = np.einsum("me,mea,meb->mab", soft, connection, connection)
     load[CONNECTION] = np.einsum("me,mea,me->ma", soft, connection, connection_load)
-    return Flexibility(matrix, load, connection, connection_load)
+    return Flexibility(matrix, load, connection, connection_load, pieces)
+
+
+def _put_pieces(frame: Frame, pieces: ByPiece, matrix: Floats, load: Floats) -> None:
+    """Put the sums over the pieces in place of what means over the length have given."""
+    varying, member = frame.member_table.varying, frame.variation.member
+    sources = slice(BENDING, STRETCH + 1)
+    matrix[sources, varying], load[sources, varying], load[IMPOSED, varying] = 0.0, 0.0, 0.0
+    np.add.at(matrix[sources].swapaxes(0, 1), member, pieces.matrix)
+    np.add.at(load[sources].swapaxes(0, 1), member, pieces.load)
+    np.add.at(load[IMPOSED], member, pieces.imposed)
 
 
 def _softness(frame: Frame) -> tuple[Floats, Floats, Floats]:
-    """(m,) 1/EI, 1/(G shear_area) and 1/EA; nil where the idealisation makes the member rigid."""
+    """(m,) 1/EI, 1/(G shear_area) and 1/EA; nil where the idealisation, or its own word, makes the member rigid."""
     t = frame.member_table
     none = np.zeros(len(t.length))
     slide = 1 / (t.G * t.shear_area) if frame.analysis.shear == "elastic" else none
-    pull = 1 / (t.E * t.A) if frame.analysis.axial == "elastic" else none
+    pull = np.where(t.rigid, 0.0, 1 / (t.E * np.where(t.rigid, 1.0, t.A)))
     return 1 / (t.E * t.I), slide, pull
 
 
@@ -180,7 +131,7 @@ def _product(low: Floats, high: Floats, a: tuple[Floats, Floats], b: tuple[Float
     return np.asarray((high - low) / 6 * ends)
 
 
-def _connections(frame: Frame, moment: _Brackets) -> tuple[Floats, Floats]:
+def _connections(frame: Frame, moment: Brackets) -> tuple[Floats, Floats]:
     """(m, 2, 3) and (m, 2): sagging moment in the end connections as forces @ row + constant.
 
     Loads at the face of the zone act inside the connection (loads.LoadTable): the moment is taken just outside it.
