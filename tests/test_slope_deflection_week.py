@@ -875,3 +875,33 @@ def test_one_member_axially_rigid_in_second_order() -> None:
         stiff[area] = replace(frame, sections={**frame.sections, "stiff": section}, members=members, analysis=second)
     for name in rigid.cases:
         close(everything(rigid, name, rigid), of_no_give(stiff, name, rigid), 1e-8)
+
+
+STEPPED_BAR = """
+units = "kN m"
+[materials.m]
+E = 1
+[sections]
+thick = {{ I = 1, A = 2, depth = 1 }}
+thin = {{ I = 1, A = 1, depth = 1 }}
+[joints]
+A = [0, 0]
+B = [{length!r}, 0]
+[members]
+AB = {{ from = "A", to = "B", material = "m", profile = [["thick", "25.6%"], ["thin", "84.3%"], ["thick", "100%"]] }}
+[supports]
+A = "fixed"
+[loads.p]
+apply = [{{ member = "AB", force = 1, at = {at!r}, direction = "along" }}]
+"""
+
+
+def test_a_load_counts_once_wherever_rounding_puts_it() -> None:
+    """A bar pulled at any place of its thin part lengthens by 0.256 L/2 + (a - 0.256 L): the places where stretches end
+    are the loads' own, to the last bit (start plus length may pass one)."""
+    for k in range(200):
+        length = 5180.695698553057 + k / 7.0
+        at = length * (0.3 + 0.5 * k / 199.0)
+        frame = read_frame_text(STEPPED_BAR.format(length=length, at=at))
+        moved = float(opinion(frame).cases["p"].joints[1, 0])
+        assert moved == pytest.approx(at - 0.128 * length, rel=1e-12), (k, at)

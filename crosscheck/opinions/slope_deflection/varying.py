@@ -42,12 +42,14 @@ HALVINGS = 50
 class Stretches:
     """Parts of the flexible parts of the stepped and tapered members, sorted by member and along it, (s,) rows.
 
-    start: distance from the `from` joint; rank: number along its member. bend, shear, pull: (s, TERMS) coefficients in
+    start, end: distances from the `from` joint, exactly those of the cuts: start plus length may miss a load there by
+    rounding. rank: number along its member. bend, shear, pull: (s, TERMS) coefficients in
     powers of xi of 1/EI, 1/(G As) and 1/(EA); curve: the same of alpha/depth. NaN where a property is not stated.
     """
 
     member: Ints
     start: Floats
+    end: Floats
     length: Floats
     rank: Ints
     bend: Floats
@@ -60,9 +62,10 @@ def stretches(frame: Frame, table: LoadTable | None = None) -> Stretches:
     """Cut at the faces, where pieces meet, where a property has changed enough, and where the loads of a case change."""
     member, x = _cuts(frame, table)
     inner = np.flatnonzero((member[1:] == member[:-1]) & (x[1:] > x[:-1]))
-    member, start, length = member[inner], x[inner], x[inner + 1] - x[inner]
+    member, start, end = member[inner], x[inner], x[inner + 1]
+    length = end - start
     rank = np.arange(len(member)) - np.searchsorted(member, member)
-    return Stretches(member, start, length, rank, *property_series(frame, member, start, length))
+    return Stretches(member, start, end, length, rank, *property_series(frame, member, start, length))
 
 
 def property_series(frame: Frame, member: Ints, start: Floats, length: Floats) -> tuple[Floats, Floats, Floats, Floats]:
@@ -251,7 +254,7 @@ def load_series(frame: Frame, table: LoadTable) -> LoadSeries:
     s, t = stretches(frame, table), frame.member_table
     runs = LoadRuns(frame, table)
     places = s.start[:, None] + s.length[:, None] * PLACES
-    places[:, -1] = s.start + s.length
+    places[:, -1] = s.end
     side = np.broadcast_to(np.where(PLACES == 1.0, -1, 1), places.shape)
     member = np.repeat(s.member, len(PLACES))
     sums = runs.sums(member, places.ravel(), side.ravel())
