@@ -244,7 +244,8 @@ def _suspects(
         says = "the load acts the other way: member forces, reactions and displacements are all reversed"
         return (Suspect("load", (), says, 1.0),), ""
     own = envelope_suspects(opinions, closed, cases)
-    found = search(opinions.frame, opinions, *as_governing(opinions.frame, closed, cases), tolerance)
+    as_cases, judged, over = as_governing(opinions.frame, closed, cases)
+    found = search(opinions.frame, opinions, as_cases, judged, tolerance, over=over)
     suspects = tuple(sorted([*own, *found.suspects], key=lambda s: not s.fits)) if own else found.suspects
     return suspects, "" if suspects else found.why
 

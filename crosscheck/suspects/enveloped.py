@@ -38,11 +38,14 @@ class _Left:
     names: frozenset[str]
 
 
-def as_governing(frame: Frame, closed: ClosedClaim, claims: Sequence[CaseClaim]) -> tuple[ClosedClaim, list[CaseClaim]]:
-    """The claim with each value of an envelope as one of the combination that governs it, and the judgements likewise."""
+def as_governing(
+    frame: Frame, closed: ClosedClaim, claims: Sequence[CaseClaim]
+) -> tuple[ClosedClaim, list[CaseClaim], dict[int, tuple[str, ...]]]:
+    """The claim with each value of an envelope as one of the combination that governs it, the judgements likewise, and of
+    which cases and combinations each such value is the extreme, by its id."""
     governs = {id(e.value): e.governing for c in claims for e in c.enveloped}
     if not governs:
-        return closed, list(claims)
+        return closed, list(claims), {}
     moved = {id(v): replace(v, case=governs[id(v)]) if id(v) in governs else v for v in closed.values}
     values = tuple(v for v in moved.values() if v.case not in frame.several)
     cases = tuple(n for n in frame.names if any(v.case == n for v in values))
@@ -51,7 +54,8 @@ def as_governing(frame: Frame, closed: ClosedClaim, claims: Sequence[CaseClaim])
         CaseClaim(n, "disagree", (), sum(v.case == n for v in values), 0, 0, tuple(x for x in left if x[0].case == n))
         for n in cases
     ]
-    return replace(closed, cases=cases, values=values), judged
+    over = {id(moved[id(v)]): frame.meant(v.case) for v in closed.values if id(v) in governs}
+    return replace(closed, cases=cases, values=values), judged, over
 
 
 def envelope_suspects(opinions: Opinions, closed: ClosedClaim, claims: Sequence[CaseClaim]) -> list[Suspect]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -65,8 +65,13 @@ def search(
     claims: Sequence[CaseClaim],
     tolerance: Tolerance,
     limit: int = 10,
+    over: Mapping[int, tuple[str, ...]] | None = None,
 ) -> Findings:
-    """Suspects for a claim on whose values the verdict is disagree."""
+    """Suspects for a claim on whose values the verdict is disagree.
+
+    over: of values that are the extreme of several cases and combinations, by id, these names; such a value stands in the
+    claim under the one that governs it.
+    """
     answer = _spokesman(opinions)
     if answer is None:
         return Findings((), "no opinion gives what could be compared")
@@ -84,7 +89,10 @@ def search(
         return Findings((), "no value could be compared")
     if not (np.abs(seen.residual) > seen.allowed).any():
         return Findings((), "no value is further off than allowed")
-    sweep = SituationsSweep(seen, closed, answer) if has_week(frame) else Sweep(seen, closed, prepared(frame), answer)
+    if over or has_week(frame):
+        sweep: Sweep = SituationsSweep(seen, closed, answer, over or {})
+    else:
+        sweep = Sweep(seen, closed, prepared(frame), answer)
     ranked = sweep.singles()
     if not ranked or not ranked[0].within:
         ranked = sorted([*ranked, *sweep.pairs(ranked)], key=lambda w: w.score)
@@ -141,7 +149,7 @@ def _confirmed(sweep: Sweep, weighed: Weighed) -> Weighed | None:
         weighed = again
     try:
         changed = option.change.frame(sweep.frame)
-        for plain in {id(p): p for p in map(changed.under, sweep.seen.names)}.values():
+        for plain in {id(p): p for p in map(changed.under, sweep.names)}.values():
             study(plain)
     except UnusableInput:
         return None

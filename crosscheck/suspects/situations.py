@@ -8,7 +8,7 @@ the situation which is furthest off: it foretells the same differences, and the 
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
 from functools import partial
 
@@ -17,7 +17,7 @@ import numpy as np
 from crosscheck.answer import Answer, Silent, joined
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.frame.kinematics import study
-from crosscheck.frame.model import Frame, Ints
+from crosscheck.frame.model import Floats, Frame, Ints
 from crosscheck.opinions import slope_deflection
 from crosscheck.opinions.slope_deflection.prepared import prepared, working_frame
 from crosscheck.problems import UnusableInput
@@ -39,15 +39,44 @@ LIKELIEST_SLOW, FITS_SLOW = 20, 2
 class SituationsSweep(Sweep):
     """As a Sweep, without a matrix factorised once: there is no one matrix."""
 
-    def __init__(self, seen: Observation, closed: ClosedClaim, answer: Answer) -> None:
-        self.seen, self.closed, self.answer, self.stand_in = seen, closed, answer, False
+    def __init__(
+        self, seen: Observation, closed: ClosedClaim, answer: Answer, over: Mapping[int, tuple[str, ...]]
+    ) -> None:
+        """over: the names that a value is the extreme of, by the value's id."""
+        self.closed, self.answer, self.stand_in = closed, answer, False
         self.frame = seen.frame
         self.solved = 0
         self.results = {}
+        self._over: dict[tuple[str, ...], Ints] = {}
+        for names in dict.fromkeys(over.values()):
+            self._over[names] = np.flatnonzero([over.get(id(v)) == names for v in seen.values])
+        self.seen = seen
+        if over:
+            size = np.array([v.extreme == "size" for v in seen.values])
+            value = np.where(size, np.abs(seen.value), seen.value)
+            self.seen = replace(seen, said=self._read(answer, seen.frame, self.names), value=value)
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """With all those of which some value is the extreme."""
+        return tuple(dict.fromkeys((*self.seen.names, *(n for names in self._over for n in names))))
 
     @property
     def slow(self) -> bool:
-        return any(self.frame.under(name).analysis.order == 2 for name in self.seen.names)
+        return any(self.frame.under(name).analysis.order == 2 for name in self.names)
+
+    def _read(self, answer: Answer, changed: Frame, names: tuple[str, ...]) -> Floats:
+        """The values, those of envelopes as extremes over all that they are of."""
+        own = self.seen.names
+        if not self._over or changed.members.keys() != self.frame.members.keys():
+            return super()._read(answer, changed, own)
+        out = self.seen.read(answer, own)
+        for several, rows in self._over.items():
+            stack = np.stack([self.seen.read(answer, (n,) * len(own), rows)[rows] for n in several])
+            out[rows] = [
+                _extreme(column, self.seen.values[k].extreme) for column, k in zip(stack.T, rows.tolist(), strict=True)
+            ]
+        return out
 
     def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
         """None: each pair would be another search."""
@@ -77,11 +106,12 @@ class SituationsSweep(Sweep):
     def singles(self) -> list[Weighed]:
         """Every single mistake worth telling, best first."""
         found = [self.weigh(o) for o in paste_options(self.seen)]
-        found += self._solved(week_options(self.frame, self.seen.names)) + self._other_cases()
+        found += self._solved(week_options(self.frame, self.names, not self._over))
+        found += [] if self._over else self._other_cases()
         if not any(w.fits for w in found):
             # What is common to every frame costs more to try.
             found += self._solved([*whole_options(self.frame), *temperature_options(self.frame)])
-            found += [] if self.frame.one_way else list(adjusted(self))
+            found += [] if self.frame.one_way or self._over else list(adjusted(self))
             found += self._solved(other_order(self.frame))
         if not self.large and not any(w.fits for w in found):
             found += self._by_stand_in()
@@ -158,6 +188,12 @@ class SituationsSweep(Sweep):
         same = tuple(n for n in self.seen.names if self.frame.under(n) is plain)
         first = plain if plain.analysis.order == 1 else replace(plain, analysis=replace(plain.analysis, order=1))
         return (working_frame(first, name), (name,)) if self.frame.one_way else (first, same)
+
+
+def _extreme(values: Floats, which: str | None) -> float:
+    if which == "size":
+        return float(np.abs(values).max())
+    return float(values.max() if which == "max" else values.min())
 
 
 def _part(seen: Observation, frame: Frame, names: tuple[str, ...], rows: Ints, case: Ints) -> Observation:

@@ -104,6 +104,11 @@ class Sweep:
         self._least: dict[tuple[tuple[int, ...], tuple[int, ...]], float] = {}
 
     @property
+    def names(self) -> tuple[str, ...]:
+        """Cases and combinations that the claim's values come from."""
+        return self.seen.names
+
+    @property
     def slow(self) -> bool:
         """In second order another solution costs a hundred times one of first order: few are tried."""
         return self.frame.analysis.order == 2
@@ -150,7 +155,7 @@ class Sweep:
         if option.change.frame is None:
             return self.weigh(option)
         changed = option.change.frame(self.frame)
-        names = self.seen.names
+        names = self.names
         answer = self.answer_to(changed, names, option.change.loads_only)
         if answer is None:
             return None

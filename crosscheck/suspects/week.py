@@ -36,14 +36,15 @@ def has_week(frame: Frame) -> bool:
     return own or leans or members or frame.one_way or bool(frame.ties or frame.patterns or frame.exclusive)
 
 
-def week_options(frame: Frame, names: Collection[str]) -> Iterator[Option]:
-    """Every single mistake of the week's grammar. names: the claim's cases and combinations."""
+def week_options(frame: Frame, names: Collection[str], alone: bool = True) -> Iterator[Option]:
+    """Every single mistake of the week's grammar. names: the claim's cases and combinations; alone: whether arrangements
+    are tried in each of them by itself, too."""
     claimed = [frame.combinations[n] for n in names if n in frame.combinations]
     yield from _states(frame, claimed)
     yield from _orders(frame, claimed)
     yield from _leans(frame, claimed)
     yield from _entries_that_lean(frame, {case for n in names for case in case_factors(frame, n)})
-    yield from _arrangements(frame, names)
+    yield from _arrangements(frame, names, alone)
     yield from _excluded(frame, claimed)
     yield from _prismatic(frame)
     yield from _ties(frame)
@@ -203,7 +204,7 @@ def _spans(frame: Frame, case: str) -> str:
     return case[len(stated) + 2 : -1] if stated else "all spans"
 
 
-def _arrangements(frame: Frame, names: Collection[str]) -> Iterator[Option]:
+def _arrangements(frame: Frame, names: Collection[str], alone: bool) -> Iterator[Option]:
     """All spans loaded in place of an arrangement, or another arrangement: in every claimed combination that has it, and
     in each."""
     used: dict[str, list[str]] = {}
@@ -220,9 +221,9 @@ def _arrangements(frame: Frame, names: Collection[str]) -> Iterator[Option]:
             says = f"{stated} was on {_spans(frame, other)} in place of {_spans(frame, case)}"
             change = partial(_arranged, names=tuple(where), case=case, other=other)
             yield Option("load", (stated,), says, Change(change), cost)
-            for name in where if len(where) > 1 else ():
-                alone = partial(_arranged, names=(name,), case=case, other=other)
-                yield Option("load", (stated,), f"{says} in {name} alone", Change(alone), cost + ONE_OF_SEVERAL)
+            for name in where if alone and len(where) > 1 else ():
+                there = partial(_arranged, names=(name,), case=case, other=other)
+                yield Option("load", (stated,), f"{says} in {name} alone", Change(there), cost + ONE_OF_SEVERAL)
     yield from _every_span(frame, used)
 
 
