@@ -45,7 +45,7 @@ exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided
 examples:
   crosscheck verify hall.toml hall.claim.txt         a claim and the opinions
   crosscheck verify hall.toml - --case wind < mail.txt   pasted, of one case
-  crosscheck verify hall.toml --value "B2 max 412 kNm"   one value out of a mail
+  crosscheck verify hall.toml --value "B1-C1 max 412 kNm"   one value out of a mail
   crosscheck verify hall.toml r.csv --show-reading   how the table is understood
   crosscheck verify hall.toml r.csv --units "kN mm"  what it does not say itself
   crosscheck verify hall.toml r.csv --suspect 1      as suspect 1 supposes
@@ -206,7 +206,7 @@ def _add_verify(commands: Any) -> None:
     command.add_argument("--reading", metavar="PATH", help="reading file (TOML): units, columns, signs, names")
     command.add_argument("--sheet", metavar="NAME", help="sheet of a spreadsheet file")
     command.add_argument("--value", metavar="TEXT", action="append", default=[],
-                         help='a value in words, "B2 max 412 kNm"; may be repeated')  # fmt: skip
+                         help='a value in words, "B1-C1 max 412 kNm"; may be repeated')  # fmt: skip
     command.add_argument("--suspect", metavar="N", type=int, help="compare the claim with what suspect N supposes")
     command.add_argument("--against", metavar="OTHER", help="another printout of the same frame instead of the "
                          "opinions: what moved between the two, by their printed rounding")  # fmt: skip

@@ -254,8 +254,9 @@ class _Reader:
         entries, odd = entries_told(text, 0, len(self.tables) + 1, self.names)
         if odd or not entries:
             refuse(
-                "", f'--value "{text}" is not understood{": " + odd[0] if odd else ""}', 'write it like "B2 max 412 kNm"'
-            )
+                "", f'--value "{text}" is not understood{": " + odd[0] if odd else ""}',
+                'write it like "B1-C1 max 412 kNm", with names of the frame',
+            )  # fmt: skip
         self.entries += entries
 
     def _unused(self, raw: RawTable, meaning: Meaning) -> None:

@@ -60,7 +60,7 @@ class ReadingOptions:
     signs: quantity to convention in words ({"moment": "anticlockwise", "axial": "compression"}).
     members, joints, cases: the paste's name to the frame's. parts: a member of the frame to the elements
       that the paste divides it into, in order. file: a reading file (TOML) that states all these.
-    values: further values in words ("B2 max 412 kNm"). sheet: of a spreadsheet. face: values stand at the face.
+    values: further values in words ("B1-C1 max 412 kNm"). sheet: of a spreadsheet. face: values stand at the face.
     """
 
     units: str | Mapping[str, str] | None = None

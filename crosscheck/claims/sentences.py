@@ -1,4 +1,4 @@
-"""Values in words, as an e-mail or --value gives them: "B2 max 412 kNm, roof sway 18 mm".
+"""Values in words, as an e-mail or --value gives them: "B1-C1 max 412 kNm, roof sway 18 mm".
 
 Each part with a number is read for what it is of (a member, a joint, or the whole frame), which quantity, and whether
 it is a

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Iterable, Sequence
+from io import StringIO
 from typing import IO, Any
 
 import numpy as np
@@ -47,6 +48,14 @@ def show(report: RenderableType, file: IO[str] | None = None) -> None:
     with out.capture() as captured:
         out.print(report)
     out.file.write("".join(f"{line.rstrip()}\n" for line in captured.get().splitlines()))
+
+
+def plain_text(report: RenderableType, width: int) -> str:
+    """A report as text without colours, `width` characters a line."""
+    out = Console(file=StringIO(), highlight=False, emoji=False, markup=False, width=width, color_system=None)
+    with out.capture() as captured:
+        out.print(report)
+    return "".join(f"{line.rstrip()}\n" for line in captured.get().splitlines())
 
 
 def headline(report: RenderableType) -> RenderableType:
