@@ -444,6 +444,16 @@ CLAIMS = (
     Claim("wall.water.claim.md", "Wrong: the water was taken to stand over the whole height of the wall.",
           together(member_ends, reactions), ("water",), bars, expect="disagree, load water[0]",
           change=((', direction = "right", end = 2.0', ', direction = "right"'),)),
+    Claim("depot.claim.tsv", "Right: an envelope by member ends, each value with the combination that governs it.",
+          envelope_ends, ("uls",), TAB),
+    Claim("depot.patterns.claim.tsv", "Wrong: the imposed load was on all spans only, its arrangements left out.",
+          envelope_ends, ("uls",), TAB, expect="disagree, load imposed",
+          change=(('["all", "alternate", "adjacent"]', '["all"]'),)),
+    Claim("causeway.claim.txt", "Right: an envelope along the spans, aligned by blanks, with what governs.",
+          envelope_along, ("uls",)),
+    Claim("causeway.adjacent.claim.txt", "Wrong: no two spans side by side were loaded alone.",
+          envelope_along, ("uls",), expect="disagree, load crowd",
+          change=(('[patterns.crowd]', '[patterns.crowd]\narrangements = ["all", "alternate"]'),)),
 )  # fmt: skip
 
 

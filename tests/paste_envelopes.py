@@ -134,6 +134,11 @@ class Column:
     kind: str
     values: np.ndarray
     scale: np.ndarray
+    case_scale: float
+
+
+Printed = tuple[list[str], list[list[object]], list[str]]
+"""Heads, rows and the kind of each column."""
 
 
 @dataclass
@@ -255,10 +260,13 @@ class Maker:
             shown = flat
         largest = float(np.nanmax(np.abs(shown), initial=0.0))
         self.largest[kind] = max(self.largest.get(kind, 0.0), largest)
-        size = np.abs(np.nan_to_num(shown)).max(axis=0) > 0.03 * largest
+        quantity = {"force": "shear", "moment": "moment", "length": "dx"}[kind]
+        # What is small beside the case's own scale is not judged: tolerance has a floor.
+        case_scale = self.size[kind] * max(self.known.comparison.judgements[n].scales.of(quantity) for n in self.names)
+        size = np.abs(np.nan_to_num(shown)).max(axis=0) > max(0.03 * largest, 0.004 * case_scale)
         ends = (size[::2], size[1::2]) if self.spec.layout in ("ends", "ends by quantity", "going along") else (size,)
         self.fixed &= all(int(end.sum()) >= 3 for end in ends)
-        return Column(head, kind, flat, np.full(flat.shape[1], largest))
+        return Column(head, kind, flat, np.full(flat.shape[1], max(largest, 0.1 * case_scale)), case_scale)
 
     # -- the envelope
 
@@ -287,8 +295,7 @@ class Maker:
         text = self._text(heads, rows, kinds)
         return Paste(spec, text, self.values, spec.envelope if spec.named == "option" else None, self.fixed, self.planted)
 
-    def _rows(self, cells: list[list[str]], columns: list[Column], heads: list[str]) -> tuple[list[str], list[list[object]], list[str]]:
-        alone = len(columns) == 1
+    def _rows(self, cells: list[list[str]], columns: list[Column], heads: list[str]) -> Printed:
         rows: list[list[object]] = []
         for p, where in enumerate(cells):
             for which, word in enumerate(("max", "min")):
@@ -303,10 +310,9 @@ class Maker:
         for c in columns:
             out_heads += [c.head, *named]
             kinds += [c.kind, *[""] * len(named)]
-        del alone
         return out_heads, rows, kinds
 
-    def _columns(self, cells: list[list[str]], columns: list[Column], heads: list[str]) -> tuple[list[str], list[list[object]], list[str]]:
+    def _columns(self, cells: list[list[str]], columns: list[Column], heads: list[str]) -> Printed:
         named = ["LC"] if self.spec.governing != "none" else []
         out_heads, kinds = list(heads), [""] * len(heads)
         for c in columns:
@@ -323,7 +329,7 @@ class Maker:
             rows.append(row)
         return out_heads, rows, kinds
 
-    def _going_along(self, cells: list[list[str]], columns: list[Column], heads: list[str]) -> tuple[list[str], list[list[object]], list[str]]:
+    def _going_along(self, cells: list[list[str]], columns: list[Column], heads: list[str]) -> Printed:
         """Rows "max M": the extreme of one quantity, and the others in the same combination."""
         rows: list[list[object]] = []
         for p, where in enumerate(cells):
@@ -382,7 +388,7 @@ class Maker:
     def _worth(self, cell: object) -> bool:
         if not isinstance(cell, tuple) or not np.isfinite(cell[0]):
             return False
-        return abs(cell[0]) >= SHARE * self.largest[cell[1].kind] > 0
+        return abs(cell[0]) >= max(SHARE * self.largest[cell[1].kind], 0.02 * cell[1].case_scale) > 0
 
     def _decimals(self, rows: list[list[object]]) -> dict[str, int]:
         largest: dict[str, float] = {}
@@ -408,8 +414,6 @@ class Maker:
         separator = self.spec.separator
         if separator == "aligned":
             widths = [max(len(line[j]) for line in lines) + 2 for j in range(len(lines[0]))]
-            text = [[c.isdigit() or "." in c for c in line] for line in lines]
-            del text
             return ["  ".join(c.ljust(w) for c, w in zip(line, widths, strict=True)).rstrip() for line in lines]
         if separator == "bar":
             out = ["| " + " | ".join(line) + " |" for line in lines]
@@ -476,9 +480,8 @@ class Tally:
                 self.drawn[f"{name} {getattr(paste.spec, name)}"] += 1
                 self.right[f"{name} {getattr(paste.spec, name)}"] += ok
         if not ok and (paste.fixed or outcome.verdict != "undecided"):
-            self.failures.append(
-                f"{seed} {outcome.verdict} {outcome.compared}/{paste.values} ({outcome.differences}) {paste.spec}: {outcome.why}"
-            )
+            said = f"{outcome.verdict} {outcome.compared}/{paste.values} ({outcome.differences})"
+            self.failures.append(f"{seed} {said} {paste.spec}: {outcome.why}")
         kind = PLANTS[seed % len(PLANTS)]
         wrong = make(seed, kind)
         if ok and wrong.planted:

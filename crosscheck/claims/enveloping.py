@@ -29,10 +29,10 @@ def with_governing(meaning: Meaning, grid: Grid, names: Names) -> Meaning:
     cases = [k for k, r in enumerate(roles) if r.name == "case" or not r.name and _says_governs(grid, k)]
     if not cases or not any(r.name == "which" or r.which for r in roles):
         return meaning
-    out = [
-        Role("governs", of=_left_of(k, roles)) if k in cases and _governs(meaning.kind, k, cases, roles, grid, names) else r
-        for k, r in enumerate(roles)
-    ]
+    out = list(roles)
+    for k in cases:
+        if _governs(meaning.kind, k, cases, roles, grid, names):
+            out[k] = Role("governs", of=_left_of(k, roles, len(cases) > 1))
     return replace(meaning, roles=tuple(out))
 
 
@@ -54,9 +54,12 @@ def _governs(kind: str, k: int, cases: list[int], roles: tuple[Role, ...], grid:
     return len(set(column(grid, k))) > 1 and len(set(rows)) == len(rows)
 
 
-def _left_of(k: int, roles: tuple[Role, ...]) -> int:
-    """The column of values that a governing combination stands right behind; -1 where it is that of the whole row."""
-    behind = any(r.name == "value" for r in roles[k + 1 :])
+def _left_of(k: int, roles: tuple[Role, ...], several: bool) -> int:
+    """The column of values that a governing combination stands right behind; -1 where it is that of the whole row.
+
+    several: the table has more than one column of them.
+    """
+    behind = several or any(r.name == "value" for r in roles[k + 1 :])
     return k - 1 if k and roles[k - 1].name == "value" and (behind or roles[k - 1].which) else -1
 
 

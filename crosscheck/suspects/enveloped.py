@@ -6,7 +6,7 @@ For every other mistake an envelope's value stands for the combination that gove
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import partial
 from typing import TYPE_CHECKING
@@ -70,6 +70,16 @@ def envelope_suspects(opinions: Opinions, closed: ClosedClaim, claims: Sequence[
     return sorted(found, key=lambda s: (not s.fits, -s.explains))[:MOST]
 
 
+def ranked_together(own: Sequence[Suspect], others: Sequence[Suspect]) -> tuple[Suspect, ...]:
+    """Suspects of the envelope and those of its frame, those that fit first, with what ties across the two."""
+
+    def tied(mine: Sequence[Suspect], theirs: Sequence[Suspect]) -> list[Suspect]:
+        words = tuple(f"{s.says}; results of single combinations would tell" for s in theirs if s.fits)
+        return [replace(s, tied_with=(*s.tied_with, *words)) if s.fits else s for s in mine]
+
+    return tuple(sorted([*tied(own, others), *tied(others, own)], key=lambda s: not s.fits))
+
+
 # --- left out of the envelope
 
 
@@ -97,6 +107,8 @@ def _candidates(frame: Frame, enveloped: Sequence[Enveloped]) -> Iterator[_Left]
         for stated, loaded in _patterns(frame, meant).items():
             says = f"{stated} was on all spans only: its arrangements were left out of {name}"
             yield _Left("load", (stated,), says, frozenset(n for some in loaded.values() for n in some))
+            for kind, some in _kinds(stated, loaded).items():
+                yield _Left("load", (stated,), f"{kind} arrangements of {stated} were left out of {name}", frozenset(some))
             for case, some in loaded.items() if len(loaded) > 1 else ():
                 yield _Left("load", (stated,), f"{case} was left out of {name}", frozenset(some))
         groups: dict[str, list[str]] = {}
@@ -116,6 +128,15 @@ def _patterns(frame: Frame, names: Iterable[str]) -> dict[str, dict[str, list[st
             if frame.cases[case].arranged:
                 out.setdefault(frame.cases[case].arranged, {}).setdefault(case, []).append(n)
     return out
+
+
+def _kinds(stated: str, loaded: Mapping[str, list[str]]) -> dict[str, list[str]]:
+    """The combinations with arrangements of one sort, where there are both: alternate spans loaded, or two side by side."""
+    out: dict[str, list[str]] = {}
+    for case, some in loaded.items():
+        kind = "adjacent" if case[len(stated) + 2 :].startswith("spans ") else "alternate"
+        out.setdefault(kind, []).extend(some)
+    return out if len(out) > 1 else {}
 
 
 def _without(frame: Frame, names: frozenset[str]) -> Frame:
