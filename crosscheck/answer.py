@@ -8,7 +8,7 @@ cannot give, and for nothing else: `Answer.undetermined` says which values may b
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Protocol
 
 import numpy as np
@@ -67,7 +67,10 @@ class Spans(Protocol):
 
 @dataclass(frozen=True, slots=True)
 class Answer:
-    """A given opinion. `cases` by load case and combination name; `silent`: cases it could not speak for, and why."""
+    """A given opinion. `cases` by load case and combination name; `silent`: cases it could not speak for, and why.
+
+    adrift: by case, (j, 3) displacements that one-way parts at rest leave open in that case: NaN there.
+    """
 
     opinion: str
     cases: Mapping[str, CaseAnswer]
@@ -75,6 +78,7 @@ class Answer:
     spans: Spans
     silent: Mapping[str, str] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
+    adrift: Mapping[str, Bools] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, slots=True)
@@ -102,6 +106,39 @@ class _SpansByName:
         return self.by_name[name].turning_points(name)
 
 
+@dataclass(frozen=True, slots=True)
+class _SpansAdrift:
+    """Spans of an answer, without the displacements of members one of whose ends is adrift."""
+
+    spans: Spans
+    members: Mapping[str, Bools]
+
+    @property
+    def sampled(self) -> bool:
+        return self.spans.sampled
+
+    def along(self, name: str, member: Ints, x: Floats, side: Ints) -> Floats:
+        values = self.spans.along(name, member, x, side)
+        if name in self.members:
+            values = np.where(self.members[name][member][:, None] & (np.arange(4) == ACROSS), np.nan, values)
+        return values
+
+    def turning_points(self, name: str) -> tuple[Ints, Floats]:
+        return self.spans.turning_points(name)
+
+
+def without_adrift(answer: Answer, ends: Ints, adrift: Mapping[str, Bools]) -> Answer:
+    """The answer with null for displacements that are adrift (by case, (j, 3)). ends: (m, 2) joints of the members."""
+    adrift = {name: open_ones for name, open_ones in adrift.items() if open_ones.any()}
+    if not adrift:
+        return answer
+    cases = dict(answer.cases)
+    for name, open_ones in adrift.items():
+        cases[name] = replace(cases[name], joints=np.where(open_ones, np.nan, cases[name].joints))
+    members = {name: np.asarray(open_ones[ends].any(axis=(1, 2))) for name, open_ones in adrift.items()}
+    return replace(answer, cases=cases, spans=_SpansAdrift(answer.spans, members), adrift=adrift)
+
+
 def joined(parts: Sequence[tuple[tuple[str, ...], Answer | Silent]]) -> Answer | Silent:
     """One answer from those to the same frame in several situations, each for its own names; an opinion that abstains
     in one of them is silent on its names, and Silent where it abstains in all."""
@@ -118,6 +155,7 @@ def joined(parts: Sequence[tuple[tuple[str, ...], Answer | Silent]]) -> Answer |
         _SpansByName({name: said.spans for said in given for name in said.cases}),
         silent,
         tuple(dict.fromkeys(note for said in given for note in said.notes)),
+        {name: open_ones for said in given for name, open_ones in said.adrift.items()},
     )
 
 

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from crosscheck.answer import Answer, CaseAnswer, Silent, WorkTable, joined
+from crosscheck.answer import Answer, CaseAnswer, Silent, WorkTable, joined, without_adrift
 from crosscheck.compare.claim import CaseClaim, ClaimComparison
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.compare.differences import Verdict, worst
@@ -145,7 +145,16 @@ def _ask_one(name: str, frame: Frame, found: Study, wanted: tuple[str, ...], any
         raise
     except Exception as error:  # noqa: BLE001 - whatever it is, it silences this opinion alone and is said
         return Silent(name, f"failed inside ({type(error).__name__}: {error}); please report this")
-    return said
+    return _settled_displacements(frame, said) if frame.one_way and isinstance(said, Answer) else said
+
+
+def _settled_displacements(frame: Frame, said: Answer) -> Answer:
+    """The answer without the displacements that one-way parts at rest leave open."""
+    from crosscheck.frame.drift import adrift
+    from crosscheck.frame.loads import load_table
+
+    found = {name: adrift(frame, load_table(frame, name), case) for name, case in said.cases.items()}
+    return without_adrift(said, frame.member_table.ends, found)
 
 
 def chosen_names(frame: Frame, case: str | None) -> tuple[str, ...] | None:
@@ -238,7 +247,7 @@ def _suspects(
     opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], tolerance: Tolerance
 ) -> tuple[tuple[Suspect, ...], str]:
     from crosscheck.suspects import Suspect, search
-    from crosscheck.suspects.enveloped import as_governing, envelope_suspects
+    from crosscheck.suspects.enveloped import as_governing, envelope_suspects, ranked_together
 
     if closed.reversed_load:
         says = "the load acts the other way: member forces, reactions and displacements are all reversed"
@@ -246,7 +255,7 @@ def _suspects(
     own = envelope_suspects(opinions, closed, cases)
     as_cases, judged, over = as_governing(opinions.frame, closed, cases)
     found = search(opinions.frame, opinions, as_cases, judged, tolerance, over=over)
-    suspects = tuple(sorted([*own, *found.suspects], key=lambda s: not s.fits)) if own else found.suspects
+    suspects = ranked_together(own, found.suspects) if own else found.suspects
     return suspects, "" if suspects else found.why
 
 

@@ -88,7 +88,10 @@ class Comparison:
         axial[:, :, 0] = none.axial[:, None]
         cases: dict[str, CaseAnswer] = {o: a.cases[name] for o, a in answers.items()}
         yield _sheet("member_ends", END_QUANTITIES, scales, {o: c.ends for o, c in cases.items()}, axial)
-        yield _sheet("joints", JOINT_QUANTITIES, scales, {o: c.joints for o, c in cases.items()}, none.joints)
+        # What one-way parts at rest leave open in this case, by everybody who speaks.
+        adrift = [a.adrift.get(name, np.zeros_like(none.joints)) for a in answers.values()]
+        open_ones = none.joints | np.logical_and.reduce(adrift)
+        yield _sheet("joints", JOINT_QUANTITIES, scales, {o: c.joints for o, c in cases.items()}, open_ones)
         pulls = {o: c.reactions for o, c in cases.items()}
         yield _sheet("reactions", REACTION_QUANTITIES, scales, pulls, none.reactions)
         s = self.stations

@@ -83,7 +83,9 @@ def table(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> 
         if side == "right":
             made.add_column(head, justify="right", no_wrap=True, min_width=longest)
         else:
-            made.add_column(head, overflow="fold", min_width=min(longest, UNBROKEN))
+            # A cell of several words may stand on two lines: what does not fit beside it would be cut off unseen.
+            word = max(len(word) for text in (head, *(row[k] for row in rows)) for word in text.split() or [""])
+            made.add_column(head, overflow="fold", min_width=min(word, UNBROKEN))
     for row in rows:
         made.add_row(*[Text(cell) for cell in row])
     return Padding(made, (0, 0, 0, 2), expand=False)
@@ -174,6 +176,14 @@ def undetermined_lines(result: Opinions) -> list[str]:
     loose = [joints[k] for k in np.flatnonzero(none.joints.any(axis=1))]
     if loose:
         lines.append(f"Undetermined (nothing resists it): rotation or movement of joint {words.some(loose)}")
+    drifting: dict[str, dict[str, None]] = {}
+    for answer in result.answers.values():
+        for case, open_ones in answer.adrift.items():
+            which = words.some([joints[k] for k in np.flatnonzero(open_ones.any(axis=1))])
+            drifting.setdefault(which, {})[case] = None
+    for which, cases in drifting.items():
+        why = "one-way parts are at rest and let it move"
+        lines.append(f"Undetermined in {words.some(list(cases))} ({why}): movement of {which}")
     pulls = [joints[k] for k in np.flatnonzero(none.reactions.any(axis=1))]
     if pulls:
         lines.append(f"Undetermined (axially rigid): reactions at {words.some(pulls)}")
@@ -490,7 +500,7 @@ def _claim_differences(
             words.short(d.difference), words.short(d.allowed), d.note or side, str(d.line or ""),
         ))  # fmt: skip
     columns = [("place", "left"), ("quantity", "left"), ("claim", "right"), ("opinions", "right"),
-               ("differ by", "right"), ("allowed", "right"), ("claim is", "left"), ("line", "right")]  # fmt: skip
+               ("differ\nby", "right"), ("allowed", "right"), ("claim\nis", "left"), ("line", "right")]  # fmt: skip
     title = f"Differences in {case}: {len(differences):,} of {compared:,} values, unsafe side first, then worst first"
     return [heading(title), table(columns, rows), *more(len(differences), MOST_DIFFERENCES)]
 
