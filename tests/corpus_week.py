@@ -3,7 +3,7 @@
 As tests/corpus.py: the other analysis is solved by moment distribution, each case in its own state and order, and mistakes
 are drawn from small functions that the suspects do not know. Frames are the demonstrations of the week in cases/ and random
 ones (tests/week_frames.py). `python -m tests.corpus_week FIRST LAST PER` prints the table for some seeds; seeds 0 to 3 are
-the demonstrations.
+the demonstrations. With a further word `envelopes`, claims that are envelopes; with `common`, mistakes of any frame.
 """
 
 from __future__ import annotations
@@ -303,7 +303,7 @@ def tried(frame: Frame, name: str, mistake: Mistake, values: list[ClaimedValue],
 
 def right(frame: Frame, name: str, mistake: Mistake, suspect: Suspect, closed: ClosedClaim) -> bool:
     """The true mistake (kind, and a place of it), or one whose results, by moment distribution, the claim cannot tell."""
-    if suspect.kind == mistake.kind and (not mistake.where or set(mistake.where) & set(suspect.where)):
+    if named_by(mistake, suspect):
         return True
     changed, claim = suspect.change.apply(frame, closed)
     answer = solved(changed, claim.cases)
@@ -328,11 +328,89 @@ def run(seeds: Iterable[int], per: int, sorts: Any = mistakes) -> Iterator[Recor
             yield tried(frame, name, mistake, values, seed)
 
 
+# --- claims that are envelopes
+
+
+def envelope_values(frame: Frame, answer: Answer, name: str, digits: int = 4) -> list[ClaimedValue]:
+    """Greatest and least end actions and reactions of an envelope as a claim."""
+    parts = [case_values(frame, answer.cases[n], name, digits, True) for n in frame.envelopes[name].names]
+    out = []
+    for same in zip(*parts, strict=True):
+        for which, pick in (("max", max), ("min", min)):
+            best = pick(same, key=lambda v: v.value)
+            if best.kind != "displacement":
+                out.append(replace(best, extreme=which))  # type: ignore[arg-type]
+    return out
+
+
+def enveloped(seed: int, per: int) -> Iterator[tuple[Frame, str, Mistake, list[ClaimedValue]]]:
+    """Envelopes of a frame with a mistake, every sort once before any twice; effect over 3% of the envelope's peak."""
+    r, frame = Random(seed), the_frame(seed)
+    opinions = opinions_on(frame)
+    answer = None if opinions is None else opinions.answers["slope-deflection"]
+    if answer is None or not frame.envelopes:
+        return
+    name = r.choice(list(frame.envelopes))
+    names = frame.envelopes[name].names
+    if not all(n in answer.cases for n in names):
+        return
+    pool = {m.sort: m for n in r.sample(names, min(len(names), 4)) for m in mistakes(frame, n, r)
+            if m.sort not in ("another arrangement", "all spans loaded")}  # fmt: skip
+    right_stack = np.stack([answer.cases[n].ends[:, :, 2] for n in names])
+    for mistake in [m for _, m in sorted(pool.items())][:per]:
+        assert mistake.frame is not None
+        other = solved(mistake.frame, names)
+        if other is None:
+            continue
+        stack = np.stack([other.cases[n].ends[:, :, 2] for n in names])
+        off = max(np.nanmax(np.abs(f(stack, axis=0) - f(right_stack, axis=0))) for f in (np.max, np.min))
+        if off >= EFFECT * np.nanmax(np.abs(right_stack)) > 0:
+            yield frame, name, mistake, envelope_values(mistake.frame, other, name)
+
+
+def tried_envelope(frame: Frame, mistake: Mistake, values: list[ClaimedValue], seed: int) -> Record:
+    """Judge an envelope's claim and look for suspects, as `verify` does."""
+    opinions, closed = opinions_on(frame), closed_claim(values)
+    assert opinions is not None
+    claims = judged(frame, opinions, closed)
+    start = time.process_time()
+    wrong = any(c.verdict == "disagree" for c in claims)
+    suspects = check._suspects(opinions, closed, claims, CLAIM)[0] if wrong else ()
+    spent = time.process_time() - start
+    rank = next((k + 1 for k, s in enumerate(suspects) if named_by(mistake, s) or _as_said(frame, s, closed)), 0)
+    says = tuple(f"{s.kind} {s.where}: {s.says}" for s in suspects[:3])
+    return Record(seed, mistake.kind, mistake.sort, mistake.where, worst([c.verdict for c in claims]), rank, len(suspects),
+                  says, suspects[0].explains if suspects else 0.0, spent)  # fmt: skip
+
+
+def _as_said(frame: Frame, suspect: Suspect, closed: ClosedClaim) -> bool:
+    """Whether the claim cannot tell the envelope of the frame so changed, by moment distribution, from its own."""
+    changed, claim = suspect.change.apply(frame, closed)
+    (name,) = claim.cases
+    answer = solved(changed, changed.envelopes[name].names)
+    if answer is None:
+        return False
+    pairs = zip(envelope_values(changed, answer, name, 15), claim.values, strict=True)
+    return all(math.isclose(there.value, v.value, rel_tol=1e-6, abs_tol=1.06 * v.half_digit) for there, v in pairs)
+
+
+def named_by(mistake: Mistake, suspect: Suspect) -> bool:
+    """Whether a suspect names the kind and the place of a mistake."""
+    return suspect.kind == mistake.kind and (not mistake.where or bool(set(mistake.where) & set(suspect.where)))
+
+
+def run_enveloped(seeds: Iterable[int], per: int) -> Iterator[Record]:
+    for seed in seeds:
+        for frame, _, mistake, values in enveloped(seed, per):
+            yield tried_envelope(frame, mistake, values, seed)
+
+
 def main(arguments: list[str]) -> None:
     first, last, per = map(int, arguments[:3])
+    seeds = range(first, last)
     sorts = common if "common" in arguments else mistakes
     records = []
-    for record in run(range(first, last), per, sorts):
+    for record in run_enveloped(seeds, per) if "envelopes" in arguments else run(seeds, per, sorts):
         records.append(record)
         if record.rank != 1:
             says = f"{record.verdict} {record.rank} {record.first}"

@@ -9,6 +9,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from crosscheck import check
 from crosscheck.frame.model import HELD, Frame
 from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions.slope_deflection.prepared import prepared, working_frame
@@ -16,7 +17,7 @@ from crosscheck.suspects import search
 from crosscheck.suspects.changes import in_state, with_member_factors
 from crosscheck.suspects.week import has_week
 from tests.corpus import CLAIM, case_values, closed_claim, judged, table
-from tests.corpus_week import common, opinions_on, run, solved, the_frame
+from tests.corpus_week import common, envelope_values, opinions_on, run, run_enveloped, solved, the_frame
 from tests.random_frames import random_frame
 from tests.week_frames import week_frame
 
@@ -72,6 +73,53 @@ def test_right_claims_have_no_suspects(seed: int, digits: int) -> None:
     found, claims = _found(frame, frame, names, digits)
     assert not any(c.verdict == "disagree" for c in claims)
     assert found.suspects == ()
+
+
+# --- claims that are envelopes
+
+
+@pytest.mark.parametrize("seed", (DEPOT, CAUSEWAY, *range(4, 60)) if FULL else (CAUSEWAY, 4, 18))
+def test_mistakes_come_first_for_envelopes_too(seed: int) -> None:
+    records = list(run_enveloped([seed], 5))
+    assert records or FULL
+    assert all(r.verdict == "disagree" for r in records), table(records)
+    assert all(r.rank == 1 for r in records), [(r.sort, r.where, r.first) for r in records]
+
+
+def test_a_right_envelope_has_no_suspects() -> None:
+    frame = the_frame(CAUSEWAY)
+    answer, opinions = solved(frame, frame.envelopes["uls"].names), opinions_on(frame)
+    assert answer is not None and opinions is not None
+    closed = closed_claim(envelope_values(frame, answer, "uls"))
+    claims = judged(frame, opinions, closed)
+    assert [c.verdict for c in claims] == ["agree"]
+    assert check._suspects(opinions, closed, claims, CLAIM)[0] == ()
+
+
+def test_an_envelopes_values_are_extremes_over_all_combinations_of_the_changed_frame() -> None:
+    """Where a mistake makes another combination govern, the true one still meets every value to its printed rounding."""
+    frame = the_frame(DEPOT)
+    other = _combined(_combined(frame, "ultimate", stiffness=""), "windy", stiffness="")
+    answer, opinions = solved(other, frame.envelopes["uls"].names), opinions_on(frame)
+    assert answer is not None and opinions is not None
+    closed = closed_claim(envelope_values(other, answer, "uls"))
+    first = check._suspects(opinions, closed, judged(frame, opinions, closed), CLAIM)[0][0]
+    assert (first.kind, first.fits) == ("stiffness", True)
+    assert first.explains == pytest.approx(1.0, abs=1e-9)
+
+
+def test_what_explains_an_envelope_as_well_is_said() -> None:
+    frame = the_frame(18)  # its combinations have the same factors: one gone astray, or left out, is the same to see
+    records = [r for r in run_enveloped([18], 9) if r.sort == "gross for state"]
+    assert records and records[0].rank == 1
+    opinions, other = opinions_on(frame), _combined(frame, "cracked one", stiffness="")
+    name = next(iter(frame.envelopes))
+    answer = solved(other, frame.envelopes[name].names)
+    assert answer is not None and opinions is not None
+    closed = closed_claim(envelope_values(other, answer, name))
+    suspects = check._suspects(opinions, closed, judged(frame, opinions, closed), CLAIM)[0]
+    assert {s.kind for s in suspects if s.fits} == {"load case", "stiffness"}
+    assert all("results of single combinations would tell" in " ".join(s.tied_with) for s in suspects if s.fits)
 
 
 # --- claims of several combinations

@@ -85,7 +85,7 @@ def ranked_together(own: Sequence[Suspect], others: Sequence[Suspect]) -> tuple[
 
 def _left_out(frame: Frame, enveloped: Sequence[Enveloped]) -> Iterator[Suspect]:
     before = _misfit(enveloped, frozenset())
-    if not before > 0:
+    if all(e.apart(frozenset()) <= e.allowed for e in enveloped):
         return
     for left in _candidates(frame, enveloped):
         after = _misfit(enveloped, left.names)
