@@ -39,7 +39,8 @@ class ForceBound:
     energy: bound on the root of s'F s of the difference s; size: the same measure of the claim itself (for a share).
     moved: how far the claim was moved to balance exactly; misfit: of the moved forces, with the nearest compatible
       displacements; energy = moved + misfit. solver_free: moved + misfit with the claimed displacements; None where
-      they are not all given, or the frame is axially rigid (rounded displacements would stretch it).
+      they are not all given, or the frame has rigid members, ties (rounded displacements would stretch them) or one-way
+      parts.
     moment: (m, 2) bound on the error of each end moment; axial: (m,) of the axial force at `from`, NaN if rigid.
     """
 
@@ -77,7 +78,7 @@ def hypercircle(frame: Frame, findings: CompatibilityFindings, values: CaseAnswe
     reach = _reach(system, len(frame.members))
     error = np.abs(off[: 3 * len(frame.members)]).reshape(-1, 3) * SAFE + (misfit * SAFE + slack) * reach
     error += ROUND_OFF * np.array([done.scales.moment, done.scales.moment, done.scales.force])
-    axial = np.full(len(error), np.nan) if frame.analysis.axial == "rigid" else error[:, 2]
+    axial = np.where(frame.member_table.rigid, np.nan, error[:, 2])
     free = None if values is None else _solver_free(frame, system, deformation, values)
     return ForceBound(
         case=findings.case, energy=(moved + misfit) * SAFE + slack, size=size, moved=moved, misfit=misfit,
@@ -139,7 +140,8 @@ def _joint_loads(frame: Frame, case: str) -> Floats:
     ends[:, 0, 1] = -ends[:, 1, 1] - load[:, 1]
     ends[:, 1, 0] = -load[:, 0]
     rows = np.flatnonzero(np.array([kind == JOINT for kind in system.kind]))
-    total = system.matrix[rows] @ np.concatenate([ends.ravel(), np.zeros(3 * j)]) + system.constant[rows]
+    values = np.concatenate([ends.ravel(), np.zeros(3 * j + system.ties)])
+    total = system.matrix[rows] @ values + system.constant[rows]
     s = frame.support_table
     turned = total.reshape(-1, 3).copy()
     fx, fy = turned[:, 0].copy(), turned[:, 1].copy()
@@ -166,7 +168,7 @@ def _reach(system: Fit, m: int) -> Floats:
 
 def _solver_free(frame: Frame, system: Fit, deformation: Floats, values: CaseAnswer) -> float | None:
     """Misfit of the balanced forces with the claimed displacements, supports where the frame holds them."""
-    if frame.analysis.axial == "rigid":
+    if frame.member_table.rigid.any() or frame.ties or frame.one_way:
         return None
     s = frame.support_table
     dx, dy, turn = values.joints.T

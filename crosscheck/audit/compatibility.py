@@ -25,7 +25,7 @@ COARSE = 0.05
 """Of the largest value of its kind: a rounding beyond this proves nothing (as for single values, CONTRACT.md)."""
 UNTESTED = 1e-6
 """A condition whose own misfit would show less than this share of a change in it is no test of it."""
-ROTATION, ELONGATION, SUPPORT = "end rotation", "elongation", "support"
+ROTATION, ELONGATION, SUPPORT, TIE = "end rotation", "elongation", "support", "tie"
 AXES = ("x", "y", "rotation")
 
 
@@ -34,7 +34,8 @@ class CompatibilityCheck:
     """One member end, one member's length or one sprung support: what the claim makes it do, and what fits best.
 
     kind: "end rotation" (radians, clockwise, at joint `where` of `member`), "elongation" (length, of `member`;
-      `where` is empty) or "support" (movement or rotation along axis `direction` of the sprung support `where`).
+      `where` is empty), "support" (movement or rotation along axis `direction` of the sprung support `where`) or "tie"
+      (how much further than the tie's first joint its joint `where` moves along it).
     rotation: what the claimed values give (named as the contract's key); expected: what fits everything else best.
     allowed: the most that rounding can part the two. ok: whether they are within it.
     """
@@ -124,7 +125,7 @@ def _lacking(frame: Frame, done: Balance, undetermined: Undetermined | None) -> 
     """Values that the claim and statics leave out and the idealisation does not excuse, by quantity."""
     m, j = len(frame.members), len(frame.joints)
     missing = done.completed.missing
-    ends, reactions = missing[: 6 * m].reshape(m, 2, 3).copy(), missing[6 * m :].reshape(j, 3).copy()
+    ends, reactions = missing[: 6 * m].reshape(m, 2, 3).copy(), missing[6 * m : _own(frame)].reshape(j, 3).copy()
     if undetermined is not None:
         ends[undetermined.axial, :, 0] = False
         reactions[undetermined.reactions] = False
@@ -134,6 +135,11 @@ def _lacking(frame: Frame, done: Balance, undetermined: Undetermined | None) -> 
         if lack.any():
             said.append(f"{int(lack.sum())} values of {quantity} are neither given nor follow from statics")
     return said
+
+
+def _own(frame: Frame) -> int:
+    """How many values are the members' and supports'; those after them are forces in ties."""
+    return 6 * len(frame.members) + 3 * len(frame.joints)
 
 
 def _unjudged(done: Balance) -> list[str]:
@@ -149,7 +155,7 @@ def _unbalanced_unknown(done: Balance) -> bool:
 
 def _coarse(frame: Frame, done: Balance) -> list[str]:
     """Forces or moments whose rounding is so large that passing proves nothing, by kind."""
-    couples = couple_values(len(frame.members), len(frame.joints))
+    couples = couple_values(len(frame.members), len(frame.joints), len(done.completed.value) - _own(frame))
     value, half = np.abs(np.nan_to_num(done.completed.value)), done.completed.half_width
     said = []
     for kind, which in (("moments", couples), ("forces", ~couples)):
@@ -224,12 +230,15 @@ def _tell(
     frame = system.frame
     members, joints = list(frame.members), list(frame.joints)
     m = len(members)
+    further = [frame.joint_index[joint] for tie in frame.ties.values() for joint in tie.joints[1:]]
     turns = displacements.reshape(-1, 3)
     raw = system.geometry.matrix @ displacements
     checks: list[CompatibilityCheck] = []
     for k, place, share in zip(rows.tolist(), *_main_entries(system, rows), strict=True):
         where, member, direction = "", members[place // 3] if place < 3 * m else "", ""
-        if place >= 3 * m:
+        if place >= 3 * (m + len(joints)):
+            kind, where, expected = TIE, joints[further[place - 3 * (m + len(joints))]], float(raw[place])
+        elif place >= 3 * m:
             joint, axis = divmod(place - 3 * m, 3)
             kind, where, direction, expected = SUPPORT, joints[joint], AXES[axis], float(turns[joint, axis])
         elif place % 3 == 2:

@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy import sparse
 
-from crosscheck.audit.equilibrium import FREE_SUPPORT, HINGE, Equations, Sparse, couple_values
+from crosscheck.audit.equilibrium import FREE_SUPPORT, HINGE, Equations, Sparse
 from crosscheck.frame.model import Bools, Floats, Ints
 
 TOGETHER = 1200
@@ -128,7 +128,7 @@ class _Completer:
         self.constant = np.zeros(len(values))
         self.combination: Sparse = sparse.diags_array(self.known.astype(float)).tocsr()
         # Couples are measured in forces at a length of the frame, so that ranks do not hang on units.
-        column_scale = np.where(couple_values(system.members, system.joints), length, 1.0)
+        column_scale = np.where(system.value_couples, length, 1.0)
         self.row_scale = np.where(system.couples, 1 / length, 1.0)
         self.column_scale = column_scale
         self.scaled: Sparse = (

@@ -1,8 +1,10 @@
 """The equations of equilibrium of every joint, member, hinge and free support direction, as one sparse table.
 
 The unknowns of statics are laid out as one vector of `values`: the end actions of every member (axial, shear, moment
-at the `from` end, then at the `to` end), then the reactions of every joint (fx, fy, moment). An equation is a row
-`matrix @ values + constant = 0`; what is left over when claimed values are put in is an unbalanced force or couple.
+at the `from` end, then at the `to` end), then the reactions of every joint (fx, fy, moment), and then the forces in the
+ties, which nobody claims: one for each further joint of a tie, acting on it along the tie and the other way on the tie's
+first joint (the transpose of kinematics.tied). An equation is a row `matrix @ values + constant = 0`; what is left over
+when claimed values are put in is an unbalanced force or couple.
 Newton's laws for a rigid body (Principia, 1687) on the undisplaced frame; no stiffness enters.
 """
 
@@ -15,6 +17,7 @@ import numpy as np
 from scipy import sparse
 
 from crosscheck.answer import CaseAnswer
+from crosscheck.frame.kinematics import tied
 from crosscheck.frame.loads import LoadTable, load_table
 from crosscheck.frame.model import FREE, Bools, Floats, Frame, Ints
 
@@ -32,7 +35,7 @@ class Equations:
     kind, component: what each row balances; component is "fx", "fy" (forces) or "moment", and "along", "across" for
     a member's own axes. place: (e,) member index for member and hinge rows, else joint index. end: (e,) of a hinge row.
     block: (e,) rows of one member, or of one joint, share a block: they are completed and judged together.
-    members, joints: counts.
+    members, joints, ties: counts (ties: of values).
     """
 
     matrix: Sparse
@@ -44,6 +47,18 @@ class Equations:
     block: Ints
     members: int
     joints: int
+    ties: int
+
+    @property
+    def value_couples(self) -> Bools:
+        """(v,) True where a value is a moment."""
+        return couple_values(self.members, self.joints, self.ties)
+
+    @property
+    def tie_values(self) -> Bools:
+        """(v,) True where a value is the force in a tie."""
+        own = 6 * self.members + 3 * self.joints
+        return np.arange(own + self.ties) >= own
 
     @property
     def couples(self) -> Bools:
@@ -61,14 +76,14 @@ def reaction_index(members: int, joint: Ints | int, component: int) -> Ints:
     return np.asarray(6 * members + 3 * np.asarray(joint) + component, dtype=np.int64)
 
 
-def value_vector(values: CaseAnswer) -> Floats:
-    """(6 m + 3 j,) end actions and reactions in one row; NaN where nothing is said."""
-    return np.concatenate([values.ends.ravel(), values.reactions.ravel()])
+def value_vector(values: CaseAnswer, ties: int) -> Floats:
+    """(6 m + 3 j + ties,) end actions, reactions and (nobody's word) ties in one row; NaN where nothing is said."""
+    return np.concatenate([values.ends.ravel(), values.reactions.ravel(), np.full(ties, np.nan)])
 
 
-def couple_values(members: int, joints: int) -> Bools:
-    """(6 m + 3 j,) True where a value is a moment."""
-    return np.tile([False, False, True], 2 * members + joints)
+def couple_values(members: int, joints: int, ties: int) -> Bools:
+    """(6 m + 3 j + ties,) True where a value is a moment."""
+    return np.concatenate([np.tile([False, False, True], 2 * members + joints), np.zeros(ties, dtype=bool)])
 
 
 @dataclass(frozen=True, slots=True)
@@ -183,9 +198,13 @@ def equations(frame: Frame, name: str, loads: LoadTable | None = None) -> Equati
     ).tocsr()
     matrix.eliminate_zeros()
     joint_matrix, joint_constant = _joint_rows(frame, loads)
+    pull = tied(frame).T.tocsr()
+    pull.eliminate_zeros()
+    ties = pull.shape[1]
+    whole = sparse.block_array([[matrix, sparse.csr_array((rows.count, ties))], [joint_matrix, pull]]).tocsr()
     every = np.arange(j)
     return Equations(
-        matrix=sparse.vstack([matrix, joint_matrix]).tocsr(),
+        matrix=whole,
         constant=np.concatenate([*rows.constant, joint_constant]),
         kind=(*rows.kind, *[JOINT] * (3 * j)),
         component=(*rows.component, *["fx", "fy", "moment"] * j),
@@ -194,6 +213,7 @@ def equations(frame: Frame, name: str, loads: LoadTable | None = None) -> Equati
         block=np.concatenate([*rows.block, m + np.repeat(every, 3)]),
         members=m,
         joints=j,
+        ties=ties,
     )
 
 

@@ -8,7 +8,8 @@ change of units then changes nothing. With L = S^-1 (1 - projection on B), r = S
 
 The augmented matrix [[S, B], [B', 0]] gives u and L d at once without squaring the condition of B, and an axially
 rigid member is simply a nil in S: its elongation must be what is imposed (A. Bjorck, Numerical Methods for Least
-Squares Problems, SIAM 1996, section 2.5). A single slip a is tested by W. Baarda, A Testing Procedure for Use in
+Squares Problems, SIAM 1996, section 2.5). So is a tie: how far its joints part must be nil. A one-way member that is
+taken out has no row at all: its length is free. A single slip a is tested by W. Baarda, A Testing Procedure for Use in
 Geodetic Networks, Delft 1968: its size is a'Ld / a'La, and it explains (a'Ld)^2 / (a'La d'Ld) of the squared misfit.
 """
 
@@ -25,6 +26,7 @@ from scipy.sparse.linalg import splu
 from crosscheck.audit.equilibrium import Sparse, couple_values, end_index, reaction_index
 from crosscheck.audit.flexibility import STRETCH, Flexibility, flexibility
 from crosscheck.audit.statics import ROUND_OFF, Balance
+from crosscheck.frame.kinematics import tied
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import FREE, HELD, Bools, Floats, Frame, Ints
 
@@ -40,10 +42,11 @@ ARITHMETIC = 1e-3
 
 @dataclass(frozen=True, slots=True)
 class Geometry:
-    """What joint displacements do to deformations, whatever is claimed.
+    """What joint displacements do to raw deformations, whatever is claimed.
 
-    matrix: (3 m + 3 j, 3 j) over displacements in the supports' own axes: three rows a member, then the displacements
-      themselves (for support springs). held: (3 j,) directions that cannot move. stiffness: (3 j,).
+    matrix: (q, 3 j) over displacements in the supports' own axes: three rows a member, then the displacements themselves
+      (for support springs), then how far the joints of ties part; q = 3 m + 3 j + ties.
+    held: (3 j,) directions that cannot move. stiffness: (3 j,).
     to_global: (3 j, 3 j) turns displacements in support axes into global ones.
     """
 
@@ -86,7 +89,7 @@ def geometry(frame: Frame) -> Geometry:
         shape=(3 * j, 3 * j),
     ).tocsr()
     stiffness = s.stiffness.ravel()
-    matrix = sparse.vstack([members @ axes, sparse.eye_array(3 * j)]).tocsr()
+    matrix = sparse.vstack([members @ axes, sparse.eye_array(3 * j), tied(frame) @ axes]).tocsr()
     return Geometry(matrix, stiffness == HELD, stiffness, axes)
 
 
@@ -94,11 +97,11 @@ def geometry(frame: Frame) -> Geometry:
 class Fit:
     """The fit of one case. n conditions (rows), c displacements (columns), v values.
 
-    keep: (n, 3 m + 3 j) reduces raw deformations to those that can be judged: hinges and missing values projected out.
-    weight: (n, n) covariance S of rounding; rigid: (n,) True where a row is the elongation of a rigid member.
+    keep: (n, q) reduces raw deformations to those that can be judged: hinges and missing values projected out.
+    weight: (n, n) covariance S of rounding; rigid: (n,) True where a row is the elongation of a rigid member, or a tie.
     base: (n, c) B of the independent free displacements; columns: (c,) which of the 3 j they are.
-    raw_flexibility: (3 m + 3 j, 3 m + 3 j). forces, rounding: (3 m + 3 j,) forces that go with the raw deformations
-      (reactions along the supports' own axes), nil where missing, and the rounding of each.
+    raw_flexibility: (q, q). forces, rounding: (q,) forces that go with the raw deformations
+      (reactions along the supports' own axes, forces in ties), nil where missing, and the rounding of each.
     source: (n, v) deformations from given values; d: (n,) deformations less those of settled supports.
     lost_rows: rigid elongations that repeat others; settlement: (3 j,) of held directions.
     reduced: missing values cost conditions.
@@ -255,17 +258,18 @@ def fit(frame: Frame, balance: Balance, energy: bool = False) -> Fit:
     g, soft = geometry(frame), flexibility(frame, loads)
     m, j = len(frame.members), len(frame.joints)
     done, scales = balance.completed, balance.scales
-    couples = couple_values(m, j)
+    ties = g.matrix.shape[0] - 3 * m - 3 * j
+    couples = couple_values(m, j, ties)
     floor = ROUND_OFF * np.where(couples, scales.moment, scales.force)
     floor = np.where(floor > 0, floor, 1.0)
     # An unloaded case has no scale of its own; any will do, for all its values are nil.
-    pick = _picker(frame)
+    pick = _picker(frame, ties)
     forces = pick @ np.nan_to_num(done.value)
     missing = (abs(pick) @ done.missing.astype(float)) > 0
     rounding = abs(pick) @ (done.half_width + floor)
     raw_flex = _raw_flexibility(g, soft)
     settlement = loads.settlement.ravel()
-    imposed = np.concatenate([soft.total_load.ravel(), settlement])
+    imposed = np.concatenate([soft.total_load.ravel(), settlement, np.zeros(ties)])
     raw = raw_flex @ forces + imposed - g.matrix @ np.where(g.held, settlement, 0.0)
     keep, rigid = _keep(frame, g, soft, missing)
     loose = raw_flex @ sparse.diags_array(rounding)
@@ -274,10 +278,13 @@ def fit(frame: Frame, balance: Balance, energy: bool = False) -> Fit:
     base = (keep @ g.matrix[:, ~g.held]).tocsc()
     scale = np.where(np.arange(3 * j) % 3 == 2, 1.0, scales.length)[~g.held]
     unit = _units(frame, keep, rigid, weight)
-    length = np.concatenate([np.tile([1.0, 1.0, scales.length], m), np.tile([scales.length, scales.length, 1.0], j)])
+    length = np.concatenate([
+        np.tile([1.0, 1.0, scales.length], m), np.tile([scales.length, scales.length, 1.0], j),
+        np.full(ties, scales.length),
+    ])  # fmt: skip
     plain = 1 / (abs(keep) @ length) * (abs(keep) @ np.ones(len(length)))
     shape = (sparse.diags_array(plain) @ base @ sparse.diags_array(scale)).tocsc()
-    reduced = _reduced(g, soft, missing)
+    reduced = _reduced(g, soft, missing) or bool(frame.out_members or frame.out_supports)
     good = _independent(shape, reduced)
     fine = np.ones(len(rigid), dtype=bool)
     fine[rigid] = _independent(shape[np.flatnonzero(rigid)][:, np.flatnonzero(good)].T.tocsc(), True)
@@ -296,8 +303,8 @@ def fit(frame: Frame, balance: Balance, energy: bool = False) -> Fit:
     )  # fmt: skip
 
 
-def _picker(frame: Frame) -> Sparse:
-    """(3 m + 3 j, v): moments and axial force at `from` of every member, then reactions in the supports' own axes."""
+def _picker(frame: Frame, ties: int) -> Sparse:
+    """(q, v): moments and axial force at `from` of every member, reactions in the supports' own axes, forces in ties."""
     s = frame.support_table
     m, j = len(frame.members), len(frame.joints)
     every, joint = np.arange(m), np.arange(j)
@@ -313,7 +320,7 @@ def _picker(frame: Frame) -> Sparse:
     row, column, entry = (np.concatenate([x[k] for x in triplets]) for k in range(3))
     matrix = sparse.coo_array((entry, (row, column)), shape=(3 * m + 3 * j, 6 * m + 3 * j)).tocsr()
     matrix.eliminate_zeros()
-    return matrix
+    return sparse.block_diag([matrix, sparse.eye_array(ties)]).tocsr()
 
 
 def abs_springs(raw: Sparse, first: int) -> Sparse:
@@ -327,7 +334,7 @@ def _sprung(g: Geometry) -> Bools:
 
 
 def _raw_flexibility(g: Geometry, soft: Flexibility) -> Sparse:
-    """(3 m + 3 j, 3 m + 3 j): member flexibilities; a support spring moves by settlement - reaction / k."""
+    """(q, q): member flexibilities; a support spring moves by settlement - reaction / k; a tie gives nothing."""
     blocks = soft.total
     m = len(blocks)
     row = (3 * np.arange(m)[:, None, None] + np.arange(3)[None, :, None] + np.zeros((1, 1, 3), dtype=int)).ravel()
@@ -335,14 +342,16 @@ def _raw_flexibility(g: Geometry, soft: Flexibility) -> Sparse:
     members = sparse.coo_array((blocks.ravel(), (row, column)), shape=(3 * m, 3 * m))
     sprung = _sprung(g)
     springs = np.where(sprung, -1 / np.where(sprung, g.stiffness, 1.0), 0.0)
-    return sparse.block_diag([members, sparse.diags_array(springs)]).tocsr()
+    ties = g.matrix.shape[0] - 3 * m - len(springs)
+    return sparse.block_diag([members, sparse.diags_array(springs), sparse.csr_array((ties, ties))]).tocsr()
 
 
 def _keep(frame: Frame, g: Geometry, soft: Flexibility, missing: Bools) -> tuple[Sparse, Bools]:
-    """Rows that reduce the raw deformations to what can be judged, and which are elongations of rigid members.
+    """Rows that reduce the raw deformations to what can be judged, and which are elongations of rigid members or ties.
 
     A hinge turns by any amount, and a missing moment bends by any amount: what is left of the two end rotations is
-    what neither can change. A missing axial force leaves nothing of the elongation, but for a rigid member.
+    what neither can change. A missing axial force leaves nothing of the elongation, but for a rigid member; nor does a
+    one-way member that is taken out.
     """
     t = frame.member_table
     m = len(t.length)
@@ -361,9 +370,11 @@ def _keep(frame: Frame, g: Geometry, soft: Flexibility, missing: Bools) -> tuple
             triples += [(count, 3 * k, left[0]), (count, 3 * k + 1, left[1])]
             count += 1
     rigid = soft.matrix[STRETCH, :, 2, 2] == 0
-    stretch = np.flatnonzero(rigid | ~missing[2 : 3 * m : 3])
-    springs = np.flatnonzero(_sprung(g) & ~missing[3 * m :])
-    tail = np.concatenate([3 * stretch + 2, 3 * m + springs])
+    stretch = np.flatnonzero((rigid | ~missing[2 : 3 * m : 3]) & ~t.slack)
+    joints = len(g.stiffness)
+    springs = np.flatnonzero(_sprung(g) & ~missing[3 * m : 3 * m + joints])
+    ties = np.arange(3 * m + joints, len(missing))
+    tail = np.concatenate([3 * stretch + 2, 3 * m + springs, ties])
     extra = np.array(triples).reshape(-1, 3)
     row = np.concatenate([np.arange(2 * len(both)), extra[:, 0], count + np.arange(len(tail))]).astype(int)
     column = np.concatenate([rows[0][0], extra[:, 1], tail]).astype(int)
@@ -372,6 +383,7 @@ def _keep(frame: Frame, g: Geometry, soft: Flexibility, missing: Bools) -> tuple
     keep = sparse.coo_array((entry, (row, column)), shape=(total, len(missing))).tocsr()
     flags = np.zeros(total, dtype=bool)
     flags[count : count + len(stretch)] = rigid[stretch]
+    flags[total - len(ties) :] = True
     return keep, flags
 
 
@@ -379,7 +391,8 @@ def _reduced(g: Geometry, soft: Flexibility, missing: Bools) -> bool:
     """Whether a value is missing that deforms something: then the rest may leave displacements open."""
     m = len(soft.load[0])
     deforms = np.column_stack([np.ones((m, 2), dtype=bool), soft.matrix[STRETCH, :, 2, 2] > 0]).ravel()
-    return bool((missing[: 3 * m] & deforms).any() or (missing[3 * m :] & _sprung(g)).any())
+    springs = missing[3 * m : 3 * m + len(g.stiffness)] & _sprung(g)
+    return bool((missing[: 3 * m] & deforms).any() or springs.any())
 
 
 def _left_null(spans: Floats) -> Floats | None:
@@ -393,11 +406,14 @@ def _left_null(spans: Floats) -> Floats | None:
 
 
 def _units(frame: Frame, keep: Sparse, rigid: Bools, weight: Sparse) -> Floats:
-    """(n,) the rounding of each row; for a rigid elongation that of its member's ends at the member's length."""
+    """(n,) the rounding of each row; for a rigid elongation that of its member's ends at the member's length, for a tie
+    at that of the longest member."""
     unit = np.sqrt(weight.diagonal())
     typical = float(np.median(unit[unit > 0])) if (unit > 0).any() else 1.0
+    length = frame.member_table.length
     owner = keep[np.flatnonzero(rigid)].indices // 3
-    unit[rigid] = typical * frame.member_table.length[owner]
+    tie = owner >= len(length)
+    unit[rigid] = typical * np.where(tie, length.max(initial=0.0), length[np.where(tie, 0, owner)])
     unit[unit == 0] = typical
     return np.asarray(unit)
 

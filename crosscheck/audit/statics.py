@@ -21,7 +21,6 @@ from crosscheck.audit.equilibrium import (
     MEMBER,
     Equations,
     Sparse,
-    couple_values,
     end_index,
     equations,
     pieces,
@@ -29,6 +28,7 @@ from crosscheck.audit.equilibrium import (
     resultants,
     value_vector,
 )
+from crosscheck.frame.kinematics import tied
 from crosscheck.frame.loads import LoadTable, load_table
 from crosscheck.frame.model import FREE, Bools, Floats, Frame, Ints
 
@@ -110,19 +110,18 @@ def balance(frame: Frame, name: str, values: CaseAnswer, half: CaseAnswer | None
     """Statics of a case with its completed values."""
     loads = load_table(frame, name)
     system = equations(frame, name, loads)
-    given = value_vector(values)
-    rounding = np.zeros_like(given) if half is None else np.nan_to_num(value_vector(half))
-    scales = _scales(frame, loads, given)
+    given = value_vector(values, system.ties)
+    rounding = np.zeros_like(given) if half is None else np.nan_to_num(value_vector(half, system.ties))
+    scales = _scales(frame, loads, given, system.value_couples)
     completed = complete(system, given, rounding, scales.length)
     judge = _Judge(frame, name, system, completed, scales)
     checks = [*judge.rows(), *judge.joints_together(), *_cuts(frame, loads, judge)]
     return Balance(name, tuple(checks), completed, scales)
 
 
-def _scales(frame: Frame, loads: LoadTable, values: Floats) -> Scales:
+def _scales(frame: Frame, loads: LoadTable, values: Floats, couples: Bools) -> Scales:
     """Largest force and moment among loads and values; a moment scale no less than force times the longest member."""
     length = float(frame.member_table.length.max(initial=0.0)) or 1.0
-    couples = couple_values(len(frame.members), len(frame.joints))
     size = np.abs(np.nan_to_num(values))
     member = np.abs(resultants(pieces(loads), len(frame.members)))
     force = max(
@@ -167,11 +166,23 @@ class _Judge:
         unsupported = (self.frame.support_table.stiffness == FREE).all(axis=1)
         idle = np.array([kind == FREE_SUPPORT for kind in s.kind])
         idle[idle] = unsupported[s.place[idle]]
-        shown = (~by_rule | spoken) & ~(idle & (residual == 0))
+        shown = (~by_rule | spoken) & ~(idle & (residual == 0)) & ~(lost & self._for_ties_alone())
+        # What still holds the force of a tie after that balances the tied joints together, not this one alone.
+        together = abs(matrix) @ s.tie_values.astype(float) > RANK
         return [
-            self._check(k, float(residual[k]), float(allowed[k]), bool(judged[k]), bool(used[k]))
+            self._check(k, float(residual[k]), float(allowed[k]), bool(judged[k]), bool(used[k]), bool(together[k]))
             for k in np.flatnonzero(shown).tolist()
         ]
+
+    def _for_ties_alone(self) -> Bools:
+        """(e,) rows of blocks that gave the forces of ties, which nobody claims, and nothing else: no want of the claim."""
+        s = self.system
+        gave = self.done.by >= 0
+        blocks = np.unique(self.done.by[gave & s.tie_values])
+        other = np.unique(np.concatenate([
+            self.done.by[gave & ~s.tie_values], s.block[(abs(s.matrix) @ self.done.missing.astype(float)) > 0],
+        ]))  # fmt: skip
+        return np.isin(s.block, np.setdiff1d(blocks, other))
 
     def _without_used(self, matrix: Sparse, constant: Floats) -> tuple[Sparse, Floats, Bools]:
         """The equations less what completing has used up, and which rows say nothing any more.
@@ -209,8 +220,7 @@ class _Judge:
         Rows that no used value enters are left alone, and do not appear.
         """
         s = self.system
-        couples = couple_values(s.members, s.joints)
-        columns = sparse.diags_array(np.where(couples, self.scales.length, 1.0))
+        columns = sparse.diags_array(np.where(s.value_couples, self.scales.length, 1.0))
         scaled: Sparse = sparse.diags_array(scale) @ s.matrix @ columns
         entries = Entries.of(scaled, s.block)
         used = self.done.missing[entries.column] | (self.done.by[entries.column] == entries.block)
@@ -219,9 +229,15 @@ class _Judge:
         taken[np.abs(taken) < 1e-12] = 0.0
         return taken, stack.rows
 
-    def _check(self, k: int, residual: float, allowed: float, judged: bool, used: bool) -> StaticCheck:
+    def _check(
+        self, k: int, residual: float, allowed: float, judged: bool, used: bool, together: bool
+    ) -> StaticCheck:
         s = self.system
         kind, place = s.kind[k], int(s.place[k])
+        if together and judged:
+            rows = s.matrix[:, s.tie_values & (abs(s.matrix[[k]]).sum(axis=0) > 0)].tocoo().coords[0]
+            names = ", ".join(self.joints[p] for p in np.unique(s.place[rows]).tolist())
+            return self.check(TOGETHER_CHECK, names, s.component[k], residual, allowed, judged, used)
         where = self.members[place] if kind in (MEMBER, HINGE) else self.joints[place]
         joint = self.joints[int(self.frame.member_table.ends[place, s.end[k]])] if kind == HINGE else ""
         return self.check(kind, where, s.component[k], residual, allowed, judged, used, joint)
@@ -269,7 +285,7 @@ class _Judge:
 
     def _range(self, rows: Ints, columns: Ints, scale: Floats) -> tuple[Floats, int]:
         """Orthonormal basis of what the values of `columns` can account for, and its rank."""
-        couples = couple_values(self.system.members, self.system.joints)[columns]
+        couples = self.system.value_couples[columns]
         dense = scale[:, None] * self.system.matrix[rows][:, columns].toarray()
         dense = dense * np.where(couples, self.scales.length, 1.0)
         left, size, _ = np.linalg.svd(dense, full_matrices=False)
@@ -346,7 +362,13 @@ def _part_above(frame: Frame, loads: LoadTable, above: Bools) -> tuple[Sparse, f
     row = sparse.coo_array(
         (entries, (np.zeros(len(columns), dtype=int), columns)), shape=(1, 6 * m + 3 * len(above))
     )
-    return row.tocsr(), float(constant)
+    ties = tied(frame)[:, 3 * np.flatnonzero(above)].sum(axis=1)
+    return sparse.hstack([row, _cleared(np.asarray(ties).reshape(1, -1))]).tocsr(), float(constant)
+
+
+def _cleared(entries: Floats) -> Sparse:
+    """Without what rounding alone leaves."""
+    return sparse.csr_array(np.where(np.abs(entries) > RANK, entries, 0.0))
 
 
 def _whole(frame: Frame, loads: LoadTable) -> tuple[Sparse, Floats]:
@@ -364,6 +386,12 @@ def _whole(frame: Frame, loads: LoadTable) -> tuple[Sparse, Floats]:
     ]
     row, column, entry = (np.concatenate([e[k] for e in entries]) for k in range(3))
     matrix = sparse.coo_array((entry, (row.astype(int), column)), shape=(3, 6 * m + 3 * j)).tocsr()
+    # A tie's forces add up to nothing; where its joints do not lie along it they make a couple.
+    pull = tied(frame).toarray().reshape(-1, j, 3)
+    turn = (pull[..., 0] @ arm[:, 1] - pull[..., 1] @ arm[:, 0]) / float(t.length.max())
+    ties = np.zeros((3, len(pull)))
+    ties[2] = np.where(np.abs(turn) > RANK, turn * float(t.length.max()), 0.0)
+    matrix = sparse.hstack([matrix, sparse.csr_array(ties)]).tocsr()
     load = resultants(pieces(loads), m)
     fx, fy = load[:, 0] * t.cos - load[:, 1] * t.sin, load[:, 0] * t.sin + load[:, 1] * t.cos
     start = arm[t.ends[:, 0]]

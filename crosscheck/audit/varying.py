@@ -66,7 +66,7 @@ def by_piece(frame: Frame, loads: LoadTable, moment: Brackets, shear: Brackets, 
     unit[BENDING, 0], unit[BENDING, 1] = 1 - x / length, -x / length
     unit[SHEAR_STRAIN, :2] = -1 / length
     unit[STRETCH, 2] = 1.0
-    force = np.stack([_values(b, k, x) for b in (moment, shear, axial)])
+    force = np.stack([_values(b, k, x, low) for b in (moment, shear, axial)])
     np.add.at(found.matrix, rows, np.einsum("scn,sacn,sbcn->csab", soft, unit, unit))
     np.add.at(found.load, rows, np.einsum("scn,scn,sacn->csa", soft, force, unit))
     warm = loads.difference[k] != 0
@@ -134,12 +134,12 @@ def _depth_marks(frame: Frame, row: int, low: float, high: float) -> Floats:
     return np.asarray(marks[(marks > low) & (marks < high)])
 
 
-def _values(brackets: Brackets, member: Ints, x: Floats) -> Floats:
-    """(c, n) the sum of each cut's member's brackets at x."""
+def _values(brackets: Brackets, member: Ints, x: Floats, low: Floats) -> Floats:
+    """(c, n) the sum at x of each cut's member's brackets, those that begin where the cut ends left out."""
     found = np.zeros(x.shape)
     for k in np.unique(member).tolist():
         own, here = brackets.member == k, member == k
-        t = x[here][:, :, None] - brackets.start[own]
-        power = brackets.power[own]
-        found[here] = np.where(t > 0, np.maximum(t, 0.0) ** power, 0.0) @ brackets.factor[own]
+        on = brackets.start[own] <= low[here][:, None]
+        t = np.maximum(x[here][:, :, None] - brackets.start[own], 0.0)
+        found[here] = (on[:, None, :] * t ** brackets.power[own]) @ brackets.factor[own]
     return found
