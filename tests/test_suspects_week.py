@@ -143,6 +143,36 @@ def test_a_state_forgotten_throughout_is_one_mistake() -> None:
     assert "in ultimate, windy" in first.says and first.fits
 
 
+def test_another_number_in_a_state_is_fitted() -> None:
+    frame = the_frame(DEPOT)
+    state = frame.states["cracked"]
+    new = replace(state, sections={**state.sections, "concrete_beam": {"I": 0.5}})
+    other = replace(frame, states={**frame.states, "cracked": new})
+    names = ("ultimate (imposed odd spans)", "windy (wind_left)", "lasting")
+    first = _found(frame, other, names)[0].suspects[0]
+    assert (first.kind, first.where) == ("stiffness", ("concrete_beam",))
+    assert first.says == "state cracked had 0.5 on I of concrete_beam in place of 0.35"
+
+
+def test_another_lean_is_fitted() -> None:
+    frame = read_frame_text(LEANING)
+    first = _found(frame, _combined(frame, "both", lean=0.035), ("both",))[0].suspects[0]
+    assert (first.kind, first.says) == ("load", "the lean was 0.035 in place of 0.02 in both")
+
+
+def test_nothing_that_explains_is_said_so() -> None:
+    """A claim of noise: no suspect, and the sentence says that pairs were not tried."""
+    frame = the_frame(CAUSEWAY)
+    answer, opinions = solved(frame, ("ultimate",)), opinions_on(frame)
+    assert answer is not None and opinions is not None
+    noise = np.random.default_rng(3)
+    values = [replace(v, value=v.value * noise.uniform(0.5, 1.5))
+              for v in case_values(frame, answer.cases["ultimate"], "ultimate", 4, True)]  # fmt: skip
+    closed = closed_claim(values)
+    found = search(frame, opinions, closed, judged(frame, opinions, closed), CLAIM)
+    assert found.suspects == () and "pairs of mistakes are not tried" in found.why
+
+
 def test_a_haunch_left_out_shows_in_all_states() -> None:
     frame = the_frame(CAUSEWAY)
     other = replace(frame, members={**frame.members, "C-D": replace(frame.members["C-D"], pieces=(), section="span")})

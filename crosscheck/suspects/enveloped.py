@@ -46,7 +46,7 @@ def as_governing(
     governs = {id(e.value): e.governing for c in claims for e in c.enveloped}
     if not governs:
         return closed, list(claims), {}
-    moved = {id(v): replace(v, case=governs[id(v)]) if id(v) in governs else v for v in closed.values}
+    moved = {id(v): replace(v, case=governs.get(id(v), v.case), beside="") for v in closed.values}
     values = tuple(v for v in moved.values() if v.case not in frame.several)
     cases = tuple(n for n in frame.names if any(v.case == n for v in values))
     left = [(moved.get(id(v), v), why) for c in claims for v, why in c.not_compared]
@@ -64,7 +64,7 @@ def envelope_suspects(opinions: Opinions, closed: ClosedClaim, claims: Sequence[
     enveloped = [e for c in claims for e in c.enveloped]
     if not enveloped:
         return []
-    others = sum(len(c.differences) for c in claims if c.case not in frame.several)
+    others = sum(d.place.case not in frame.several for c in claims for d in c.differences)
     found = [] if others else list(_left_out(frame, enveloped))
     found += _mixed(frame, opinions, closed, claims)
     return sorted(found, key=lambda s: (not s.fits, -s.explains))[:MOST]
@@ -153,9 +153,9 @@ def _mixed(
     frame: Frame, opinions: Opinions, closed: ClosedClaim, claims: Sequence[CaseClaim]
 ) -> Iterator[Suspect]:
     """Values printed beside an extreme as of its combination, which are those of other combinations of the envelope."""
-    beside: dict[int, str] = {v.line: v.case for v in closed.values if v.case in frame.several and v.line}
-    wrong = [(d, beside[d.line]) for c in claims if c.case not in frame.several
-             for d in c.differences if d.line in beside]  # fmt: skip
+    beside: dict[tuple[int, str, str], str] = {(v.line, v.case, v.quantity): v.beside for v in closed.values if v.beside}
+    wrong = [(d, name) for c in claims for d in c.differences
+             if (name := beside.get((d.line or 0, d.place.case, d.place.quantity)))]  # fmt: skip
     if not wrong:
         return
     all_wrong = [d for c in claims for d in c.differences]

@@ -31,6 +31,10 @@ NEAR = 4.0
 """How much worse in score than the first a suspect may be and still be named."""
 MOST_TIES = 5
 NOTHING_EXPLAINS = "nothing tried, alone or in pairs, explains the difference; start from statics and compatibility"
+NOTHING_ALONE = (
+    "nothing tried explains the difference; pairs of mistakes are not tried where cases differ in stiffness, order or in "
+    "what works: start from statics and compatibility"
+)
 PLACES_NOT_TRIED = (
     f"no mistake of the paste, of a section or material, or of the whole frame explains the difference; in a frame of more "
     f"than {PLACES_UP_TO} members its single members, joints and loads are not tried: start from statics"
@@ -97,7 +101,7 @@ def search(
     if not ranked or not ranked[0].within:
         ranked = sorted([*ranked, *sweep.pairs(ranked)], key=lambda w: w.score)
     told = _told(sweep, ranked, limit)
-    why = "" if told else PLACES_NOT_TRIED if sweep.large else NOTHING_EXPLAINS
+    why = "" if told else PLACES_NOT_TRIED if sweep.large else NOTHING_EXPLAINS if sweep.pairwise else NOTHING_ALONE
     return Findings(tuple(told), why, sweep.solved)
 
 

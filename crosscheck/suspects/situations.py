@@ -11,6 +11,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
 from functools import partial
+from itertools import islice
 
 import numpy as np
 
@@ -27,17 +28,23 @@ from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.suspect import Family, Option
 from crosscheck.suspects.sweep import Sweep, Weighed
-from crosscheck.suspects.week import week_options
+from crosscheck.suspects.week import week_families, week_options
 from crosscheck.suspects.whole import other_order, temperature_options, whole_options
 
 LIKELIEST, FITS = 40, 4
 """Options of the stand-in that are solved again, and how many of them have their number fitted anew."""
+MOST, MOST_SLOW, MOST_LARGE = 240, 80, 40
+"""Mistakes of the week's grammar that are tried; where a claimed combination is of second order; and in large frames."""
+NUMBERS = 12
+"""Factors of states, and leans, fitted."""
 LIKELIEST_SLOW, FITS_SLOW = 20, 2
 """The same where a claimed combination is of second order."""
 
 
 class SituationsSweep(Sweep):
     """As a Sweep, without a matrix factorised once: there is no one matrix."""
+
+    pairwise = False
 
     def __init__(
         self, seen: Observation, closed: ClosedClaim, answer: Answer, over: Mapping[int, tuple[str, ...]]
@@ -106,16 +113,23 @@ class SituationsSweep(Sweep):
     def singles(self) -> list[Weighed]:
         """Every single mistake worth telling, best first."""
         found = [self.weigh(o) for o in paste_options(self.seen)]
-        found += self._solved(week_options(self.frame, self.names, not self._over))
+        found += self._solved(self._of_the_week())
         found += [] if self._over else self._other_cases()
         if not any(w.fits for w in found):
             # What is common to every frame costs more to try.
             found += self._solved([*whole_options(self.frame), *temperature_options(self.frame)])
             found += [] if self.frame.one_way or self._over else list(adjusted(self))
             found += self._solved(other_order(self.frame))
-        if not self.large and not any(w.fits for w in found):
+        if not any(w.fits for w in found):
+            found += self._fitted(islice(week_families(self.frame, self.names), NUMBERS))
+        if not any(w.fits for w in found):
             found += self._by_stand_in()
         return sorted(found, key=lambda w: w.score)
+
+    def _of_the_week(self) -> list[Option]:
+        """The commonest mistakes of the week's grammar, as many as there is time for."""
+        options = sorted(week_options(self.frame, self.names, not self._over), key=lambda o: o.cost)
+        return options[: MOST_LARGE if self.large else MOST_SLOW if self.slow else MOST]
 
     def _other_cases(self) -> list[Weighed]:
         """Results of one case standing under the name of another: all are at hand."""

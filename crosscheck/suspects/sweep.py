@@ -90,7 +90,9 @@ class Weighed:
 
 
 class Sweep:
-    """One observation and everything tried on it."""
+    """One observation and everything tried on it. pairwise: whether pairs of mistakes are among it."""
+
+    pairwise = True
 
     def __init__(
         self, seen: Observation, closed: ClosedClaim, base: Prepared, answer: Answer, stand_in: bool = False

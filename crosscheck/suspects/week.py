@@ -15,7 +15,7 @@ from typing import Any
 from crosscheck.frame.loads import case_factors
 from crosscheck.frame.model import Combination, Frame, Lean, Load, Member, Piece, StiffnessState, Tie
 from crosscheck.suspects.changes import Change, sections_of, with_loads, with_member, with_support
-from crosscheck.suspects.suspect import Option, named
+from crosscheck.suspects.suspect import Family, Option, named
 
 STATE_OUT, STATE_IN, STATE_OTHER, STATE_PART = 0.0, 0.3, 0.3, 0.3
 ORDER, LEAN_OUT, LEAN_OTHER, LEAN_ENTRY = 0.1, 0.1, 0.2, 0.1
@@ -24,6 +24,7 @@ PRISMATIC, REVERSED, ALL_PRISMATIC = 0.1, 0.3, 0.1
 TIE_OUT, TWO_WAY, ALL_TWO_WAY, RIGID_OUT, RIGID_IN, ALL_RIGID_OUT = 0.1, 0.1, 0.2, 0.1, 0.5, 0.2
 ONE_OF_SEVERAL = 0.2
 """What it costs that only one of several had the mistake."""
+FACTOR = 0.5
 MOST_MEMBERS = 60
 """Members of a frame each of which is tried as axially rigid."""
 
@@ -50,6 +51,41 @@ def week_options(frame: Frame, names: Collection[str], alone: bool = True) -> It
     yield from _ties(frame)
     yield from _one_way(frame)
     yield from _rigid(frame)
+
+
+def week_families(frame: Frame, names: Collection[str]) -> Iterator[Family]:
+    """Factors of the claimed states, and leans of the claimed combinations, that had another number, to be fitted."""
+    claimed = [frame.combinations[n] for n in names if n in frame.combinations]
+    for name in dict.fromkeys(c.stiffness for c in claimed if c.stiffness):
+        for kind, table in TABLES:
+            for thing, factors in getattr(frame.states[name], table).items():
+                for key in ("I", "E") if kind != "support" else tuple(factors):
+                    if key in factors:
+                        at = partial(_other_factor, frame, name, kind, table, thing, key)
+                        yield Family(at, (0.7 * factors[key], 1.4 * factors[key]))
+    for lean, stated in _together(claimed, lambda c: c.lean).items():
+        if lean:
+            yield Family(partial(_other_lean, frame, tuple(stated), lean), (0.5 * lean, 2.0 * lean), False)
+
+
+def _other_factor(frame: Frame, state: str, kind: str, table: str, thing: str, key: str, p: float) -> Option:
+    old = getattr(frame.states[state], table)[thing][key]
+    says = f"state {state} had {p:.4g} on {key} of {thing} in place of {old:g}"
+    change = Change(partial(_with_factor, state=state, table=table, thing=thing, key=key, factor=p))
+    of = "support" if kind == "support" else "stiffness"
+    return Option(of, (_label(frame, kind, thing),), says, change, FACTOR, fitted=1)
+
+
+def _with_factor(frame: Frame, state: str, table: str, thing: str, key: str, factor: float) -> Frame:
+    of: Any = frame.states[state]
+    things = getattr(of, table)
+    new = replace(of, **{table: {**things, thing: {**things[thing], key: factor}}})
+    return replace(frame, states={**frame.states, state: new})
+
+
+def _other_lean(frame: Frame, of: tuple[str, ...], lean: float, p: float) -> Option:
+    says = f"the lean was {p:.4g} in place of {lean:g} in {', '.join(of)}"
+    return replace(_changed("load", of, says, of, {"lean": p}, FACTOR), fitted=1)
 
 
 # --- what combinations say of themselves
