@@ -7,7 +7,8 @@ Mathematics 5 (1947), 241-269. For forces s that satisfy statics and any compati
 
 with F the flexibility of the members and of the support springs and D its inverse, so |s - true| is at most the misfit
 |F s + d0 - B u| measured with D. Claimed forces are first moved to the nearest s that balances exactly. The bound on
-the claim is the length of that move plus the misfit of s. With the claimed displacements for u no solver is used;
+the claim is the length of that move plus the misfit of s (one-way parts: _past_rest). With the claimed displacements for
+u no solver is used;
 with the nearest u the bound is attained, but finding it is a displacement solution. Axially rigid members hold no
 energy.
 """
@@ -24,6 +25,8 @@ from crosscheck.audit.compatibility import CompatibilityFindings
 from crosscheck.audit.completion import Entries
 from crosscheck.audit.equilibrium import JOINT, Sparse, equations, pieces, resultants
 from crosscheck.audit.fit import Fit, abs_springs, fit
+from crosscheck.audit.flexibility import STRETCH
+from crosscheck.audit.slack import gaps, slack_axial
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import FREE, Floats, Frame
 
@@ -59,6 +62,8 @@ def hypercircle(frame: Frame, findings: CompatibilityFindings, values: CaseAnswe
     done = findings.balance
     if findings.fit is None:
         return findings.says
+    # The frame as the claim has it: without the one-way parts that do not work.
+    frame = findings.fit.frame
     if not done.holds:
         return "no bound: statics fails beyond rounding"
     if _incomplete(frame, findings):
@@ -71,8 +76,13 @@ def hypercircle(frame: Frame, findings: CompatibilityFindings, values: CaseAnswe
     off = claimed - balanced
     moved = _root(off @ (metric @ off))
     deformation = system.d + system.keep @ (raw @ (balanced - claimed))
-    spread, _ = system.solve(deformation)
+    spread, movement = system.solve(deformation)
     misfit = _root(deformation @ spread)
+    if frame.one_way:
+        past = _past_rest(system, findings, balanced, movement)
+        if past is None:
+            return "no bound: a one-way part works the wrong way, or a support that has let go would have to work"
+        misfit = float(np.hypot(misfit, past))
     size = _root(claimed @ (metric @ claimed))
     slack = ROUND_OFF * size
     reach = _reach(system, len(frame.members))
@@ -116,10 +126,12 @@ def _nearest_balanced(frame: Frame, case: str, system: Fit, claimed: Floats) -> 
 
 
 def _at_hinges(system: Fit, m: int) -> Floats:
-    """(3 m + 3 j,) smallest end moments with no moment at any hinge, for the loads on the members."""
+    """(q,) smallest end moments with no moment at any hinge, for the loads on the members, and axial forces of members
+    that are slack."""
     soft = system.flexibility
     hinged = system.frame.member_table.turn == FREE
     start = np.zeros(system.keep.shape[1])
+    start[2 : 3 * m : 3] = slack_axial(soft, system.frame)
     for k in np.flatnonzero(hinged.any(axis=1)).tolist():
         rows = soft.connection[k, hinged[k], :2]
         start[3 * k : 3 * k + 2] = np.linalg.lstsq(rows, -soft.connection_load[k, hinged[k]], rcond=None)[0]
@@ -163,7 +175,36 @@ def _reach(system: Fit, m: int) -> Floats:
     ).tocsr()
     spread = system.keep.T.tocsr()
     square = np.asarray((spread @ stiff).multiply(spread).sum(axis=1)).ravel()
+    # Slack members hold energy too, if they work in truth.
+    slack = np.flatnonzero(system.frame.member_table.slack)
+    square[3 * slack + 2] = 1 / system.flexibility.matrix[STRETCH, slack, 2, 2]
     return np.asarray(np.sqrt(np.maximum(square[: 3 * m], 0.0)).reshape(m, 3))
+
+
+def _past_rest(system: Fit, findings: CompatibilityFindings, balanced: Floats, movement: Floats) -> float | None:
+    """Misfit of one-way parts: root of the energy of lengths past those at rest in members taken as slack; None where
+    there is no bound for the sake of a force of the wrong sense, or of a support.
+
+    With forces s of the right sense, and deformations F s + gap that fit but for a misfit r, gaps on the slack side
+    where s is nil, (s - true)'(gap - true gap) is not negative, and |s - true|^2 <= |s - true| |r| follows.
+    """
+    parts = findings.balance.one_way
+    index, held = system.frame.member_index, system.flexibility.held_axial
+    tiny = ROUND_OFF * findings.balance.scales.force
+    for part in parts:
+        k = index.get(part.where, -1) if not part.axis else -1
+        force = float(balanced[3 * k + 2] - held[k]) if k >= 0 else part.force
+        if part.sense * force < -(tiny if k >= 0 else part.allowed):
+            return None
+    place = system.settlement.copy()
+    place[system.columns] = movement
+    total = 0.0
+    for gap in gaps(system, findings.case, place):
+        if gap.axis and gap.reach > gap.allowed:
+            return None
+        if not gap.axis and gap.reach > 0:
+            total += gap.reach**2 / float(system.flexibility.matrix[STRETCH, index[gap.where], 2, 2])
+    return _root(total)
 
 
 def _solver_free(frame: Frame, system: Fit, deformation: Floats, values: CaseAnswer) -> float | None:

@@ -3,7 +3,8 @@
 Slope-deflection turned round: forces give each member's end rotations from its chord and its elongation, and these
 must belong to one set of joint displacements that the supports allow. A misfit says that the results came from other
 stiffnesses, supports or connections than the frame's. By the uniqueness of linear elasticity (G. Kirchhoff 1859)
-results that are complete, balance and fit ARE the solution of this frame, whatever any solver says.
+results that are complete, balance and fit ARE the solution of this frame, whatever any solver says. One-way parts: by
+the claim's own forces they work or do not (one_way.py), and those that do not must be on their slack side.
 
 Rounding is carried through as an interval: `allowed` is the most that half a unit of the last digit of every given
 value, each in its worst direction, can do to the quantity (beyond fit.DENSE_ROWS conditions, a bound on that by norms).
@@ -18,6 +19,8 @@ import numpy as np
 from crosscheck.answer import CaseAnswer, Undetermined
 from crosscheck.audit.equilibrium import JOINT, MEMBER, couple_values
 from crosscheck.audit.fit import Fit, fit
+from crosscheck.audit.one_way import at_work
+from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import ROUND_OFF, TOGETHER_CHECK, Balance, balance
 from crosscheck.frame.model import Floats, Frame, Ints
 
@@ -26,6 +29,7 @@ COARSE = 0.05
 UNTESTED = 1e-6
 """A condition whose own misfit would show less than this share of a change in it is no test of it."""
 ROTATION, ELONGATION, SUPPORT, TIE = "end rotation", "elongation", "support", "tie"
+SLACK, LET_GO = "slack length", "support let go"
 AXES = ("x", "y", "rotation")
 
 
@@ -35,7 +39,8 @@ class CompatibilityCheck:
 
     kind: "end rotation" (radians, clockwise, at joint `where` of `member`), "elongation" (length, of `member`;
       `where` is empty), "support" (movement or rotation along axis `direction` of the sprung support `where`) or "tie"
-      (how much further than the tie's first joint its joint `where` moves along it).
+      (how much further than the tie's first joint its joint `where` moves along it). Of one-way parts that do not work
+      by the claim, "slack length" (of `member`) and "support let go" (of `where`): how far past where they would work.
     rotation: what the claimed values give (named as the contract's key); expected: what fits everything else best.
     allowed: the most that rounding can part the two. ok: whether they are within it.
     """
@@ -95,11 +100,13 @@ def compatibility(
     if frame.analysis.order == 2:
         why = "compatibility is judged in first order only"
         return CompatibilityFindings(name, (), 0, 0, 0.0, None, False, False, why, (why,), done, None)
+    frame, done = _at_work(frame, name, values, half, done)
     system = fit(frame, done)
-    checks = _fitted(system, name)
+    slack, open_ = _slack(system, name)
+    checks = [*_fitted(system, name), *slack]
     dimension = system.dimension
     whole = indeterminacy(frame) if system.reduced else dimension
-    lacking = [*_lacking(frame, done, undetermined), *_coarse(frame, done)]
+    lacking = [*_lacking(frame, done, undetermined), *_coarse(frame, done), *open_]
     not_judged = [*lacking, *_unjudged(done)]
     if dimension < whole:
         not_judged.append(f"{whole - dimension} of {whole} conditions of compatibility")
@@ -111,6 +118,28 @@ def compatibility(
         name, tuple(checks), dimension, whole, float(np.sqrt(system.squared)), holds, complete, solution, says,
         tuple(not_judged), done, system, tuple(_displaced(system, name, values, half)),
     )  # fmt: skip
+
+
+def _at_work(
+    frame: Frame, name: str, values: CaseAnswer, half: CaseAnswer | None, done: Balance
+) -> tuple[Frame, Balance]:
+    """The frame without the one-way parts that do not work by the claim, and its statics."""
+    state = at_work(frame, done.one_way)
+    return (frame, done) if state is frame else (state, balance(state, name, values, half))
+
+
+def _slack(system: Fit, name: str) -> tuple[list[CompatibilityCheck], list[str]]:
+    """Whether the one-way parts that do not work are where they need not, and a word on those that nobody can tell."""
+    checks, open_ = [], []
+    for gap in gaps(system, name, system.displacements):
+        ok = gap.reach <= gap.allowed
+        if not ok and not gap.determined:
+            open_.append(f"whether {gap.where} is slack")
+            continue
+        where, member = (gap.where, "") if gap.axis else ("", gap.where)
+        kind = LET_GO if gap.axis else SLACK
+        checks.append(CompatibilityCheck(name, kind, where, member, gap.reach, 0.0, gap.allowed, ok, gap.axis))
+    return checks, open_
 
 
 def indeterminacy(frame: Frame) -> int:
@@ -167,6 +196,9 @@ def _coarse(frame: Frame, done: Balance) -> list[str]:
 def _conclusion(done: Balance, holds: bool | None, solution: bool, dimension: int, whole: int) -> str:
     if solution:
         return "this claim satisfies statics and compatibility, therefore it is the solution"
+    wrong = [part.says for part in done.one_way if part.wrong]
+    if wrong:
+        return "; ".join(wrong)
     if holds is None:
         return "compatibility could not be tested by what the claim gives"
     tested = f"{dimension} of {whole} independent conditions"

@@ -28,6 +28,7 @@ from crosscheck.audit.equilibrium import (
     resultants,
     value_vector,
 )
+from crosscheck.audit.one_way import Part, parts
 from crosscheck.frame.kinematics import tied
 from crosscheck.frame.loads import LoadTable, load_table
 from crosscheck.frame.model import FREE, Bools, Floats, Frame, Ints
@@ -35,6 +36,7 @@ from crosscheck.frame.model import FREE, Bools, Floats, Frame, Ints
 ROUND_OFF = 1e-9
 """Of the case's largest force or moment: what arithmetic alone may leave over."""
 STOREY, WHOLE, TOGETHER_CHECK = "storey balance", "whole frame", "joints together"
+ONE_WAY = "one-way part"
 UPRIGHT = 0.8
 """A member whose run is at least this share vertical counts as a column (within 37 degrees of plumb)."""
 SECOND_ORDER = "couples balance on the displaced frame only (order = 2)"
@@ -45,8 +47,10 @@ class StaticCheck:
     """One balance. residual: the unbalanced force or clockwise couple, in the frame's units and global axes ("along",
     "across": the member's own; free support: the support's own); NaN where it could not be judged.
 
-    check: "joint balance", "member balance", "end release", "free support", "storey balance", "whole frame" or
-      "joints together". where: joint or member name (empty for the whole frame; levels for a storey); joint: of an end
+    check: "joint balance", "member balance", "end release", "free support", "storey balance", "whole frame",
+      "joints together" or "one-way part" (a member or support that works one way only; residual is then its force, of
+      stretch or along the support's own axis, and ok whether that may be).
+    where: joint or member name (empty for the whole frame; levels for a storey); joint: of an end
       release, its joint. component: "fx", "fy", "moment", "along" or "across".
     allowed: rounding of the values times their arms, plus round-off. ok: None where not judged, and `why`.
     used: True where completed values enter.
@@ -77,13 +81,14 @@ class Scales:
 class Balance:
     """Statics of one case, with what compatibility and the bound need of it again.
 
-    checks: every balance. completed: all values that statics gives. scales: of the case.
+    checks: every balance. completed: all values that statics gives. scales: of the case. one_way: the one-way parts.
     """
 
     case: str
     checks: tuple[StaticCheck, ...]
     completed: Completed
     scales: Scales
+    one_way: tuple[Part, ...] = ()
 
     @property
     def holds(self) -> bool:
@@ -115,8 +120,19 @@ def balance(frame: Frame, name: str, values: CaseAnswer, half: CaseAnswer | None
     scales = _scales(frame, loads, given, system.value_couples)
     completed = complete(system, given, rounding, scales.length)
     judge = _Judge(frame, name, system, completed, scales)
-    checks = [*judge.rows(), *judge.joints_together(), *_cuts(frame, loads, judge)]
-    return Balance(name, tuple(checks), completed, scales)
+    one_way = parts(frame, loads, completed, ROUND_OFF * scales.force) if frame.one_way else []
+    checks = [*judge.rows(), *judge.joints_together(), *_cuts(frame, loads, judge), *_one_way(name, one_way)]
+    return Balance(name, tuple(checks), completed, scales, tuple(one_way))
+
+
+def _one_way(case: str, found: list[Part]) -> list[StaticCheck]:
+    """Whether parts that work one way are claimed to work that way; one whose force is not known is not judged."""
+    component = {"": "along", "x": "fx", "y": "fy"}
+    return [
+        StaticCheck(case, ONE_WAY, p.where, p.force, p.allowed, None if np.isnan(p.force) else not p.wrong,
+                    component[p.axis], "", "its force is not known" if np.isnan(p.force) else "")
+        for p in found
+    ]  # fmt: skip
 
 
 def _scales(frame: Frame, loads: LoadTable, values: Floats, couples: Bools) -> Scales:
@@ -402,5 +418,5 @@ def _whole(frame: Frame, loads: LoadTable) -> tuple[Sparse, Floats]:
     return matrix, constant
 
 
-CHECKS = (MEMBER, HINGE, FREE_SUPPORT, JOINT, STOREY, WHOLE, TOGETHER_CHECK)
+CHECKS = (MEMBER, HINGE, FREE_SUPPORT, JOINT, STOREY, WHOLE, TOGETHER_CHECK, ONE_WAY)
 """Every kind of check, in the order they come."""
