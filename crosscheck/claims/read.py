@@ -427,7 +427,7 @@ class _Reader:
             if case not in self.names.frame.cases or entry.kind == "extreme":
                 self.without_case += 1
                 return None
-            return replace(entry, case=case, along=True)
+            return replace(entry, case=case, along=True, beside=place.case)
         label = governing(row, meaning.roles, k, values == 1 or bool(which and which.noun))
         name = self.names.case(label) if label else None
         self.ungoverned += bool(label) and not is_blank(label) and name is None

@@ -91,7 +91,7 @@ class Entry:
     extreme: for kind "extreme": "max", "min" or "size" along the member; for the others the same of the values that
       several cases have at that place, "" or None where it is not one of an envelope's.
     governs: the case or combination that the paste says it comes from. along: the value is one of case `case` that goes
-      with an envelope's extreme of another quantity.
+      with an extreme of another quantity, of the envelope `beside` (None where the paste does not name it).
     """
 
     table: int
@@ -123,6 +123,7 @@ class Entry:
     """From words: "size" where no direction is said, "said" where one is (the sign is then no open choice)."""
     governs: str = ""
     along: bool = False
+    beside: str | None = None
     comma_open: bool = False
     """The number's comma may stand before decimals (as read) or thousands."""
 

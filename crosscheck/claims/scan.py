@@ -281,7 +281,7 @@ class _Scanner:
     def _heading_of_case(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
         if numbers > 1 and len(filled) > 3 or numbers and self._under_cases(filled):
             return None
-        if numbers and self._under_heads(filled) and any(which_of(t) or self._knows(t) for t in filled):
+        if numbers and any(which_of(t) or self._knows(t) for t in filled[:4]) and self._as_wide_as_heads(text, filled):
             return None  # a row whose last cell names what governs
         label = self._case_in(text)
         if label is None:
@@ -388,7 +388,7 @@ class _Scanner:
             return "remark", "a date, a page or the like"
         words = [t for t in filled if not is_number(t) and not self._knows(t) and not self._of_envelope(t)
                  and len(re.sub(r"\W", "", t)) > 1]  # fmt: skip
-        if len(words) > max(2, numbers) and not self._under_heads(filled):
+        if len(words) > max(2, numbers) and not self._as_wide_as_heads(text, filled):
             self.out.remarks.append((number, text))
             return "remark", ""
         if self.table is None:
@@ -397,6 +397,14 @@ class _Scanner:
         self.table.rows.append((number, text))
         self.table.blocks.append(self.block)
         return "row", ""
+
+    def _as_wide_as_heads(self, text: str, filled: list[str]) -> bool:
+        """ The same by cells that are words, or that two blanks part."""
+        if self._under_heads(filled) or self.table is None or not self.table.heads:
+            return self._under_heads(filled)
+        head = self.table.heads[0][1]
+        alike = separator_of(text) == separator_of(head) == "blank"
+        return alike and len(wide_cells(text)) == len(wide_cells(head)) > 2
 
     def _of_envelope(self, text: str) -> bool:
         """ "max", "min", or the name of what governs, or a word of it."""

@@ -99,7 +99,7 @@ class ClaimComparison:
         """One judgement a case that the claim speaks of, in the claim's order of cases."""
         by_case: dict[str, list[ClaimedValue]] = {case: [] for case in closed.cases}
         for value in closed.values:
-            by_case.setdefault(value.case, []).append(value)
+            by_case.setdefault(value.beside or value.case, []).append(value)
         return [self._judge(case, values) for case, values in by_case.items()]
 
     def _judge(self, case: str, values: list[ClaimedValue]) -> CaseClaim:
@@ -110,13 +110,17 @@ class ClaimComparison:
             known = {n: {o: self._known(a, n) for o, a in answers.items()} for n in parts}
             found = {n: self._references(answers, known[n], n, values) for n in parts}
             for k, value in enumerate(values):
-                by_part = {n: {o: r[k] for o, r in found[n].items()} for n in parts}
-                self._one(value, by_part, {n: next(iter(known[n].values())) for n in parts}, tally)
+                mine = parts if value.case == case else (value.case,)
+                if mine[0] not in known:
+                    tally.left.append((value, f"{value.case} is not of {case}"))
+                    continue
+                by_part = {n: {o: r[k] for o, r in found[n].items()} for n in mine}
+                self._one(value, by_part, {n: next(iter(known[n].values())) for n in mine}, tally)
         else:
             silent = "this case" if len(parts) == 1 else "all that it stands for"
             tally.left = [(v, f"no opinion speaks for {silent}") for v in values]
         verdict: Verdict = "disagree" if tally.differences else "agree" if tally.compared else "undecided"
-        beyond = sum(1 for v in values if v.kind in ("span", "extreme"))
+        beyond = sum(1 for v in values if v.kind in ("span", "extreme") or v.beside)
         return CaseClaim(
             case, verdict, tuple(worst_first(tally.differences)), tally.compared,
             self._whole(case) * (2 if case in self.frame.several else 1) + beyond,

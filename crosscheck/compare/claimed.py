@@ -20,6 +20,7 @@ class ClaimedValue:
     extreme: for kind "extreme" which one: "max", "min" or "size" (largest magnitude); for the other kinds the same of an
       envelope's values at that place, None where it is a value of one case.
     governs: the case or combination that the claim says an envelope's value comes from, "" where it says none.
+    beside: the envelope whose extreme of another quantity this value of `case` is said to go with, "" for any other.
     line: line of the claim it stands on; printed: the text as printed.
     """
 
@@ -35,6 +36,7 @@ class ClaimedValue:
     printed: str = ""
     extreme: Literal["max", "min", "size"] | None = None
     governs: str = ""
+    beside: str = ""
 
 
 @dataclass(frozen=True, slots=True)

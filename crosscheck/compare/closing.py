@@ -14,7 +14,7 @@ import numpy as np
 from crosscheck.answer import Answer
 from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
-from crosscheck.compare.enveloped import candidates, prepared, silent_part, unaudited
+from crosscheck.compare.enveloped import as_of, candidates, name_of, prepared, silent_part, unaudited
 from crosscheck.compare.fit import Choice, Fitted, Fitter
 from crosscheck.compare.fit_conventions import Batch, distance, placed
 from crosscheck.compare.fit_signs import Senses, narrowed, plain_where_loads_turn, senses
@@ -42,7 +42,7 @@ def close(
     closer = _Closer(reading, frame, answers, tolerance)
     if not answers:
         return closer.result((), [], ["no opinion speaks for this frame"])
-    entries, notes = _of_case(reading, frame, case)
+    entries, notes = _of_case(reading, case)
     ways: list[tuple[int, ClosedClaim]] = []
     ways_said: list[str] = []
     open_moments = any(open_moment(e) for e in entries)
@@ -84,11 +84,11 @@ def _without_open_moments(closer: _Closer, entries: list[Entry], notes: list[str
 def _close_case(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
     frame, answers = closer.frame, closer.answers
     if case is not None:
-        return closer.close([e if e.along else replace(e, case=case) for e in entries], notes)
-    if all(e.case is not None for e in entries):
+        return closer.close([as_of(e, case) for e in entries], notes)
+    if all(name_of(e) is not None for e in entries):
         return closer.close(entries, notes)
     if len(frame.names) == 1 and not frame.several:
-        return closer.close([replace(e, case=e.case or frame.names[0]) for e in entries], notes)
+        return closer.close([as_of(e, name_of(e) or frame.names[0]) for e in entries], notes)
     singles, several = candidates(entries, frame, answers)
     if not singles and not several:
         reason = "the claim gives greatest and least values of several cases, and the frame has no envelope; state one"
@@ -102,13 +102,11 @@ def _close_case(closer: _Closer, entries: list[Entry], notes: list[str], case: s
     return closed
 
 
-def _of_case(reading: Reading, frame: Frame, case: str | None) -> tuple[list[Entry], list[str]]:
-    """Entries of the case asked for; with none asked for, all. Values that go with an envelope's extremes are of one of
-    the cases that it stands for."""
+def _of_case(reading: Reading, case: str | None) -> tuple[list[Entry], list[str]]:
+    """Entries of the case asked for; with none asked for, all."""
     if case is None:
         return list(reading.entries), []
-    meant = frame.meant(case)
-    entries = [e for e in reading.entries if e.case in (None, case) or e.along and e.case in meant]
+    entries = [e for e in reading.entries if name_of(e) in (None, case)]
     left = len(reading.entries) - len(entries)
     return entries, [f"{left} values of other cases are left out"] if left else []
 
@@ -118,7 +116,7 @@ def _by_fit(
 ) -> ClosedClaim | None:
     """The one case that the values without a case fit; undecided where none or several do. told: whether that is said
     where none does, or None given."""
-    tried = {n: closer.close([replace(e, case=e.case or n) for e in entries], notes) for n in names}
+    tried = {n: closer.close([as_of(e, name_of(e) or n) for e in entries], notes) for n in names}
     known = {*closer.result((), [], []).undecided}  # what is undecided in the reading itself, whichever case is meant
     fitting = [n for n, closed in tried.items() if not closer.bad[n] and known.issuperset(closed.undecided)]
     if len(fitting) == 1:
@@ -150,16 +148,17 @@ class _Closer:
     def close(self, entries: list[Entry], notes: Iterable[str]) -> ClosedClaim:
         """Every entry has its case by now. Counts in `bad` the values that fit no choice."""
         notes = list(notes)
-        named = {e.case for e in entries}
-        cases = tuple(n for n in (*self.frame.names, *self.frame.several) if n in named)
-        missing = {n: part for n in cases if (part := silent_part(self.frame, self.answers, n))}
+        known = (*self.frame.names, *self.frame.several)
+        named, judged = {e.case for e in entries}, {name_of(e) for e in entries}
+        every, cases = (tuple(n for n in known if n in some) for some in (named, judged))
+        missing = {n: part for n in every if (part := silent_part(self.frame, self.answers, n))}
         undecided = [f"no opinion speaks for {p}{f' of {n}' if n != p else ''}" for n, p in missing.items()]
-        silent = [*missing]
+        silent, every = [*missing], tuple(n for n in every if n not in missing)
         entries, loose = prepared([e for e in entries if e.case not in silent], self.frame)
         undecided += loose
         entries = with_stations(entries, self.frame)
-        batches = _batches(entries, self.frame, cases)
-        fitter = Fitter(self.frame.units, [self._reference(n) for n in cases if n not in silent], self.tolerance)
+        batches = _batches(entries, self.frame, every)
+        fitter = Fitter(self.frame.units, [self._reference(n) for n in every], self.tolerance)
         fitted = [narrowed(f, self.reading.signs) for f in fitter.fit(batches)]
         plain_where_loads_turn(fitted, self.reading.signs)
         meant = senses(fitted, self.reading.signs)
@@ -174,7 +173,7 @@ class _Closer:
         values: list[ClaimedValue] = []
         for f in fitted:
             if id(f) not in open_choices or sure_to_fail:
-                values += self._values(f, entries, cases, meant)
+                values += self._values(f, entries, every, meant)
         closed = self.result(cases, notes, undecided)
         closed = replace(closed, notes=(*closed.notes, *unaudited(cases, self.frame)))
         return replace(
@@ -234,6 +233,7 @@ class _Closer:
                     printed=e.number.printed,
                     extreme=_turned(e.extreme, float(sign[k])),  # type: ignore[arg-type]
                     governs=e.governs,
+                    beside=e.beside or "",
                 )  # fmt: skip
             )
         return out
@@ -274,6 +274,7 @@ def _batch(kind: str, quantity: str, where: list[int], entries: list[Entry], fra
         extreme=ints(_EXTREME.get(e.extreme or "size", 0) for e in mine),
         cut=np.array([np.nan if e.cut is None else e.cut for e in mine]),
         origin=np.array([np.nan if e.origin is None else e.origin for e in mine]),
+        governs=ints(frame.names.index(e.governs) if e.governs in frame.names else None for e in mine),
         unsigned=np.array([e.sense == "size" or e.extreme == "size" for e in mine]), said=mine[0].sense == "said",
         value=np.array([e.number.value for e in mine]), half=np.array([e.number.half for e in mine]),
         factor=np.array([_factor(e, frame) for e in mine]), entry=np.array(where, dtype=np.int64),
@@ -312,7 +313,8 @@ def _open(fitted: list[Fitted], meant: Senses) -> dict[int, str]:
     if total and total < FIXED_BY and not out:
         for f in fitted:
             if f.taken.fits and f.taken.telling.any() and not _same_whichever(f) and not meant.stated(f):
-                out[id(f)] = f"too few values ({total}) to tell the sign of {f.batch.quantity}; state it"
+                what = f"too few values ({total}) to tell the sign of {f.batch.quantity}"
+                out[id(f)] = f"{what}; state it with signs in a reading file"
     return out
 
 

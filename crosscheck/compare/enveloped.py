@@ -19,6 +19,16 @@ def bounded(e: Entry) -> bool:
     return e.kind != "extreme" and e.extreme in ("max", "min", "size")
 
 
+def name_of(e: Entry) -> str | None:
+    """The case or envelope that the entry is judged as a part of; None where the paste does not name it."""
+    return e.beside if e.along else e.case
+
+
+def as_of(e: Entry, name: str) -> Entry:
+    """The entry as one of `name`."""
+    return replace(e, beside=name) if e.along else replace(e, case=name)
+
+
 def prepared(entries: list[Entry], frame: Frame) -> tuple[list[Entry], list[str]]:
     """The entries that can be judged, each with its case, and reasons why others cannot.
 
@@ -49,8 +59,8 @@ def candidates(entries: list[Entry], frame: Frame, answers: Mapping[str, Answer]
     of one place."""
     singles = [n for n in frame.names if silent_part(frame, answers, n) is None]
     several = [n for n in frame.several if silent_part(frame, answers, n) is None]
-    loose = [e for e in entries if e.case is None]
-    if any(bounded(e) for e in loose):
+    loose = [e for e in entries if name_of(e) is None]
+    if any(bounded(e) or e.along for e in loose):
         return [], several
     extremes = all(e.kind == "extreme" or e.sense for e in loose)
     return singles, several if extremes else []

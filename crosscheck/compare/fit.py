@@ -12,7 +12,7 @@ from itertools import product
 
 import numpy as np
 
-from crosscheck.compare.fit_conventions import Batch, Convention, conventions, expected
+from crosscheck.compare.fit_conventions import Batch, Convention, conventions, expected, of_governing
 from crosscheck.compare.fit_units import UnitChoice, angle_choices, arm_choices, force_choices, length_choices
 from crosscheck.compare.fit_values import EnvelopeReference, Reference
 from crosscheck.compare.tolerance import COARSE, LEAST_SHARE, Tolerance, allowed
@@ -91,6 +91,8 @@ class _Trial:
         self.open = bool(np.isnan(batch.factor).any())
         self.conventions = conventions(batch)
         self.expected = _expected(batch, fitter.references, self.conventions)
+        governed = bool((batch.governs >= 0).any())
+        self.governing = [of_governing(batch, fitter.references, c) if governed else None for c in self.conventions]
         self.scale, self.unsupported = _scales(batch, fitter.references)
         self._known: dict[float, list[Choice]] = {}
 
@@ -100,7 +102,8 @@ class _Trial:
             factor = np.where(np.isnan(self.batch.factor), key, self.batch.factor)
             value, half = self.batch.value * factor, self.batch.half * factor
             self._known[key] = [
-                self._choice(unit, c, e, value, half) for c, e in zip(self.conventions, self.expected, strict=True)
+                self._choice(unit, c, e, g, value, half)
+                for c, e, g in zip(self.conventions, self.expected, self.governing, strict=True)
             ]
         return self._known[key]
 
@@ -111,7 +114,10 @@ class _Trial:
     def fitted(self, unit: UnitChoice | None) -> Fitted:
         return Fitted(self.batch, self.choices(unit), self.best(unit))
 
-    def _choice(self, unit: UnitChoice | None, convention: Convention, said: Floats, value: Floats, half: Floats) -> Choice:
+    def _choice(
+        self, unit: UnitChoice | None, convention: Convention, said: Floats, governing: Floats | None, value: Floats,
+        half: Floats,
+    ) -> Choice:  # fmt: skip
         side = np.where(said[:, 0] < 0, -1.0, 1.0) * convention.sign
         value = np.where(self.batch.unsigned, np.abs(value), value)
         said = np.where(self.batch.unsigned[:, None], np.abs(said), said)
@@ -121,6 +127,9 @@ class _Trial:
                        allowed(value, said, self.tolerance, self.scale, half))  # fmt: skip
         known = np.isfinite(said) & ((half <= COARSE * self.scale) | self.unsupported)
         apart = np.abs(value - said)
+        if governing is not None:  # what is said to govern must have the value, too
+            named = np.abs(governing) if self.batch.unsigned.all() else governing
+            apart = np.fmax(apart, np.abs(value - _nearer(named, value)))
         bad = known & (apart > may)
         size_apart = np.abs(np.abs(value) - _nearer(sizes, np.abs(value)))
         telling = known & ((np.abs(said) > may) | (np.abs(value) > may))

@@ -71,7 +71,8 @@ class Batch:
     start in the frame's length, or a share of the member's length where at_share; at_half: half its last printed digit.
     extreme: 1 max, -1 min, 0 size (of values of one place: none, or size where unsigned).
     cut: where inside its member a part of it ends; origin: where a part begins (NaN for whole members); both from the
-      frame's `from` joint. unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value,
+      frame's `from` joint. governs: index of the case that an envelope's value is said to come from, -1 for none.
+    unsigned: sizes only. said: the sign is stated in words. case: index into `cases`. value,
       half: as printed. factor: to the frame's units, NaN where no unit is stated.
     """
 
@@ -90,6 +91,7 @@ class Batch:
     extreme: Ints
     cut: Floats
     origin: Floats
+    governs: Ints
     unsigned: Bools
     said: bool
     value: Floats
@@ -172,6 +174,17 @@ def expected(batch: Batch, references: list[Reference | EnvelopeReference], conv
         if len(mine):
             some = _part(batch, mine)
             out[mine] = _over_cases(some.extreme, [_expected_in(some, r, convention) for r in reference.parts])
+    return out
+
+
+def of_governing(batch: Batch, references: list[Reference | EnvelopeReference], convention: Convention) -> Floats:
+    """(n, k) as expected(), of the case alone that an envelope's value is said to come from; NaN where none is named."""
+    out = np.full((len(batch.value), 2 if batch.kind == "span" else 1), np.nan)
+    for k, reference in enumerate(references):
+        for part in reference.parts:
+            mine = np.flatnonzero((batch.case == k) & (batch.governs == reference.frame.names.index(part.case)))
+            if len(mine):
+                out[mine] = _expected_in(_part(batch, mine), part, convention)
     return out
 
 
