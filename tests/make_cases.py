@@ -454,6 +454,31 @@ CLAIMS = (
     Claim("causeway.adjacent.claim.txt", "Wrong: no two spans side by side were loaded alone.",
           envelope_along, ("uls",), expect="disagree, load crowd",
           change=(('[patterns.crowd]', '[patterns.crowd]\narrangements = ["all", "alternate"]'),)),
+    Claim("depot.cracked.claim.txt", "Wrong: the gross sections were used where the frame says cracked ones.", together(
+          member_ends, reactions), ("windy (wind_left)",), expect="disagree, stiffness",
+          change=(("concrete_beam = { I = 0.35 }\nconcrete_column = { I = 0.7 }",
+                   "concrete_beam = { I = 1.0 }\nconcrete_column = { I = 1.0 }"),)),
+    Claim("workshop.claim.txt", "Right: second order by combination, haunches, bases softer in the ultimate state.",
+          together(both_ends_in_a_row, reactions), ("winter", "in_use")),
+    Claim("workshop.haunch.claim.txt", "Wrong: the haunches were left out.", together(member_ends, reactions), ("in_use",),
+          expect="disagree, stiffness", change=(
+              ('[["haunch", "rafter"], "18%"], ["rafter", "100%"]', '["rafter", "100%"]'),
+              ('["rafter", "82%"], [["rafter", "haunch"], "100%"]', '["rafter", "100%"]'))),
+    Claim("workshop.bases.claim.txt", "Wrong: the stiffness of the bases in use was taken for the ultimate state.",
+          together(member_ends, reactions, displacements), ("storm",), expect="disagree, support",
+          change=(("A = { rotation = 0.4 }\nE = { rotation = 0.4 }", "A = { rotation = 1.0 }\nE = { rotation = 1.0 }"),)),
+    Claim("rack.claim.csv", "Right: rods that pull only, a leaning line that is tied, second order.",
+          together(member_ends, reactions), ("working", "storm"), COMMA),
+    Claim("rack.lean.claim.txt", "Wrong: the lean of the posts was left out.", together(member_ends, reactions),
+          ("working",), expect="disagree, load", change=(
+              ("working = { dead = 1.35, full = 1.5, anchor = 1.35, lean = 0.005, order = 2 }",
+               "working = { dead = 1.35, full = 1.5, anchor = 1.35, order = 2 }"),)),
+    Claim("rack.prop.claim.txt", "Wrong: the loose prop was taken to hold the beam down too.",
+          together(member_ends, reactions), ("empty",), expect="disagree, support P",
+          change=(('P = { y = "push" }', 'P = { y = "held" }'),)),
+    Claim("causeway.springs.claim.txt", "Wrong: the piers' stiffness for passing loads was taken for lasting ones.",
+          together(member_ends, reactions, displacements), ("lasting",), expect="disagree, support",
+          change=(("B = { y = 0.5 }\nC = { y = 0.5 }\nD = { y = 0.5 }\n", ""),)),
 )  # fmt: skip
 
 
