@@ -20,7 +20,7 @@ from functools import cached_property
 from typing import Any
 
 import numpy as np
-from scipy import sparse
+from scipy import linalg, sparse
 from scipy.sparse.linalg import splu
 
 from crosscheck.audit.equilibrium import Sparse, couple_values, end_index, reaction_index
@@ -35,6 +35,11 @@ DENSE_ROWS = 3000
 DEPENDENT = 1e-11
 """A pivot of the scaled geometry below this belongs to a column that the ones before it make up."""
 NUDGE = 1e-14
+DENSE_SEARCH = 400
+"""Up to so many columns, dependent ones are found by a dense decomposition."""
+PARALLEL = 1e-9
+"""Of unit columns: what is left of one, less its parts along the others, when it is made up of them (as
+kinematics.SINGULAR)."""
 BATCH = 400
 ARITHMETIC = 1e-3
 """Of a row's rounding, round-off of values included: what solving may add."""
@@ -419,15 +424,23 @@ def _units(frame: Frame, keep: Sparse, rigid: Bools, weight: Sparse) -> Floats:
 
 
 def _independent(matrix: Sparse, search: bool) -> Bools:
-    """(c,) which columns of `matrix` (n, c) the ones before them do not make up; without `search` only nil ones fall.
+    """(c,) columns of `matrix` (n, c) that the others of them do not make up; without `search` only nil ones fall.
 
-    Gauss elimination of M'M with a nudge on the diagonal: a pivot that vanishes marks a dependent column.
+    Orthogonal decomposition with pivoting where that is quick. Otherwise Gauss elimination of M'M with a nudge on the
+    diagonal: a pivot that vanishes marks a dependent column (one that is all but parallel to another may slip through).
     """
     size = np.sqrt(np.asarray(matrix.multiply(matrix).sum(axis=0)).ravel())
     good = np.asarray(size > 1e-12 * size.max(initial=0.0))
     if not search or not good.any():
         return good
     unit = matrix[:, np.flatnonzero(good)] @ sparse.diags_array(1 / size[good])
+    if unit.shape[1] <= DENSE_SEARCH:
+        upper, order = linalg.qr(unit.toarray(), mode="r", pivoting=True)
+        own = np.abs(np.diagonal(upper))
+        kept = np.zeros(unit.shape[1], dtype=bool)
+        kept[order[: int((own > PARALLEL * own[0]).sum())]] = True
+        good[good] = kept
+        return good
     square = (unit.T @ unit + NUDGE * sparse.eye_array(int(good.sum()))).tocsc()
     factors = splu(square, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
     pivots = np.abs(factors.U.diagonal())[factors.perm_c]
