@@ -9,12 +9,14 @@ import shlex
 import subprocess
 import sys
 import time
+from collections import Counter
 from pathlib import Path
 
 import pytest
 
 from crosscheck import __version__
 from crosscheck.cli import _parser, main
+from crosscheck.report import terminal
 from crosscheck.suite.beside import frames_below
 from crosscheck.waiting import WIDTH, waiting
 from tests.calls import CASES, ONE_CASE, PORTAL, Call, call, claim_of, of_case, put
@@ -245,3 +247,13 @@ def test_main_returns_the_status(tmp_path: Path, capsys: pytest.CaptureFixture[s
     assert main(["opinions", str(put(tmp_path, PORTAL))]) == 0
     assert main(["opinions", str(tmp_path / "absent.toml")]) == 2
     assert "absent.toml" in capsys.readouterr().err
+
+
+@pytest.mark.parametrize("claim", ["-3.65e+07 right", "1.100"])
+def test_nothing_of_a_table_is_cut_off_at_80_columns(claim: str) -> None:
+    heads = [("place", "left"), ("quantity", "left"), ("claim", "right"), ("opinions", "right"), ("differ\nby", "right"),
+             ("allowed", "right"), ("claim\nis", "left"), ("line", "right")]  # fmt: skip
+    row = ("A-B at B", "moment", claim, "-5.362e+07 right", "1.71e+07", "5.36e+05", "low", "1234")
+    out = terminal.plain_text(terminal.table(heads, [row]), 80)
+    assert max(len(line) for line in out.splitlines()) <= 80
+    assert Counter(out.split()) == Counter(" ".join((*(head for head, _ in heads), *row)).split())

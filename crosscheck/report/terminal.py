@@ -8,11 +8,13 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
 from io import StringIO
 from typing import IO, Any
 
 import numpy as np
-from rich.console import Console, Group, RenderableType
+from rich.console import Console, ConsoleOptions, Group, RenderableType, RenderResult
+from rich.measure import Measurement
 from rich.padding import Padding
 from rich.table import Table
 from rich.text import Text
@@ -74,21 +76,41 @@ UNBROKEN = 16
 """Names up to this long are never broken over lines; numbers never are, however long."""
 
 
+@dataclass(frozen=True, slots=True)
+class _Fitting:
+    """A plain table; names stand whole, two blanks apart, where there is room. Where there is not, blanks and names of
+    several words give way: what stood beyond the edge would be cut off unseen."""
+
+    columns: Sequence[tuple[str, str]]
+    rows: Sequence[Sequence[str]]
+
+    def __rich_console__(self, console: Console, options: ConsoleOptions) -> RenderResult:
+        made = self._made(2, whole=True)
+        for blanks, whole in ((1, True), (2, False), (1, False)):
+            if Measurement.get(console, options.update(max_width=10_000), made).minimum <= options.max_width:
+                break
+            made = self._made(blanks, whole)
+        yield made
+
+    def _made(self, blanks: int, whole: bool) -> Table:
+        made = Table(box=None, pad_edge=False, padding=(0, blanks, 0, 0), header_style="underline", show_edge=False)
+        for k, (head, side) in enumerate(self.columns):
+            texts = [*head.splitlines(), *(row[k] for row in self.rows)]
+            longest = max((len(text) for text in texts), default=0)
+            if side == "right":
+                made.add_column(head, justify="right", no_wrap=True, min_width=longest)
+            else:
+                word = longest if whole else max((len(w) for text in texts for w in text.split()), default=0)
+                narrow = word if not whole and longest <= UNBROKEN else None  # long texts find a width of their own
+                made.add_column(head, overflow="fold", min_width=min(word, UNBROKEN), max_width=narrow)
+        for row in self.rows:
+            made.add_row(*[Text(cell) for cell in row])
+        return made
+
+
 def table(columns: Sequence[tuple[str, str]], rows: Iterable[Sequence[str]]) -> RenderableType:
-    """A plain table; columns as (head, "left" or "right"). Right-hand columns are numbers."""
-    rows = list(rows)
-    made = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="underline", show_edge=False)
-    for k, (head, side) in enumerate(columns):
-        longest = max(len(text) for text in (*head.splitlines(), "", *(row[k] for row in rows)))
-        if side == "right":
-            made.add_column(head, justify="right", no_wrap=True, min_width=longest)
-        else:
-            # A cell of several words may stand on two lines: what does not fit beside it would be cut off unseen.
-            word = max(len(word) for text in (head, *(row[k] for row in rows)) for word in text.split() or [""])
-            made.add_column(head, overflow="fold", min_width=min(word, UNBROKEN))
-    for row in rows:
-        made.add_row(*[Text(cell) for cell in row])
-    return Padding(made, (0, 0, 0, 2), expand=False)
+    """A plain table; columns as (head, "left" or "right"). Right-hand columns are numbers, which are never broken."""
+    return Padding(_Fitting(columns, list(rows)), (0, 0, 0, 2), expand=False)
 
 
 def facts(rows: Iterable[tuple[str, str]]) -> RenderableType:
