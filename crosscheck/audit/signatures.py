@@ -18,10 +18,16 @@ from scipy.sparse.linalg import splu
 from crosscheck.audit.compatibility import CompatibilityFindings
 from crosscheck.audit.equilibrium import Sparse
 from crosscheck.audit.fit import NUDGE, Fit
-from crosscheck.audit.flexibility import BENDING, SHEAR_STRAIN, STRETCH
-from crosscheck.frame.model import FREE, HELD, Bools, Floats, Ints
+from crosscheck.audit.flexibility import BENDING, SHEAR_STRAIN, STRETCH, flexibility
+from crosscheck.frame.loads import load_table
+from crosscheck.frame.model import FREE, HELD, Bools, Floats, Frame, Ints, Member
 
-SUPPORT, END, LENGTH = "support", "end", "length"
+SUPPORT, END, LENGTH, TIE = "support", "end", "length", "tie"
+PROFILE = "profile"
+LIGHT, DEEP, REVERSED = "all of its lightest section", "all of its deepest section", "profile end for end"
+EACH_STEPPED = "every stepped or tapered member"
+KINDS = ("EI", "shear stiffness", "EA")
+"""Factors by source of deformation (flexibility.BENDING, SHEAR_STRAIN, STRETCH)."""
 BOTH = "x and y"
 """Direction of a support that gives way between its axes, because rigid members stop it along each of them."""
 STOPPED = 1e-6
@@ -42,13 +48,15 @@ class Signature:
     """One candidate and what it would explain.
 
     kind: "support" (one direction gives way), "end" (a member end turns against its joint), "length" (a member's
-      elongation is off), "EI", "EA", "shear stiffness" (by a factor, of a member or of all of a section), "E" (of a
-      material, and with it G: bending, axial and shear together).
-    of, where: "joint", "member", "section" or "material", and its name. joint: of an "end", its joint.
+      elongation is off), "tie" (a joint of a tie parts from it), "profile" (a stepped or tapered member taken for another:
+      `direction` says which; a size of 1 is that very member), "EI", "EA", "shear stiffness" (by a factor, of a member or
+      of all of a section), "E" (of a material, and with it G: bending, axial and shear together).
+    of, where: "joint", "member", "members" (every stepped or tapered one), "section" (its prismatic parts) or "material",
+      and its name. joint: of an "end", its joint.
     direction: of a "support" one of "x", "y", "rotation" in its own axes, or "x and y" (between the two).
     share: of the squared misfit it explains, 0 to 1. size: movement, rotation or stretch of the slip, or 1 - 1/factor.
     allowed: how large a size rounding alone could give; significant: size beyond that.
-    fitted: what the claim goes with: the stiffness left (0: free, or a hinge), or the factor; NaN for "length".
+    fitted: what the claim goes with: the stiffness left (0: free, or a hinge), or the factor; NaN for the others.
     """
 
     kind: str
@@ -142,7 +150,7 @@ class _Candidates:
 def signatures(findings: CompatibilityFindings, slips_only: bool = False) -> SignatureTable:
     """Every single candidate of the case, best first; invisible ones left out.
 
-    slips_only: supports, ends and lengths only (the local findings of compatibility).
+    slips_only: supports, ends, lengths and ties only (the local findings of compatibility).
     """
     system = findings.fit
     if system is None:
@@ -151,8 +159,10 @@ def signatures(findings: CompatibilityFindings, slips_only: bool = False) -> Sig
     _supports(system, candidates)
     _ends(system, candidates)
     _lengths(system, candidates)
+    _ties(system, candidates)
     if not slips_only:
         _factors(system, candidates)
+        _profiles(system, findings.case, candidates)
     if not candidates.labels:
         return SignatureTable(system, (), sparse.csc_array((len(system.d), 0)))
     columns = (system.keep @ candidates.matrix(system.keep.shape[1])).tocsc()
@@ -195,7 +205,7 @@ def _judge(system: Fit, candidates: _Candidates, columns: Sparse) -> SignatureTa
 
 def _fitted(kind: str, size: float, allowed: float, force: float, soft: float) -> float:
     """Stiffness left at a slip, or factor of stiffness; nil stiffness where no force acts there to speak of."""
-    if kind == LENGTH:
+    if kind in (LENGTH, TIE, PROFILE):
         return float("nan")
     if kind not in (SUPPORT, END):
         return 1 / (1 - size) if abs(1 - size) > 1e-12 else float("inf")
@@ -291,14 +301,66 @@ def _lengths(system: Fit, into: _Candidates) -> None:
         into.add(Signature(LENGTH, "member", name, 0, 0, 0, 0), np.array([3 * k + 2]), np.ones(1))
 
 
+def _ties(system: Fit, into: _Candidates) -> None:
+    """A further joint of a tie moves by itself, or its first joint does (all others stay together)."""
+    place = 3 * (len(system.frame.members) + len(system.frame.joints))
+    for tie in system.frame.ties.values():
+        rows = place + np.arange(len(tie.joints) - 1)
+        place += len(rows)
+        for row, joint in zip(rows, tie.joints[1:], strict=True):
+            into.add(Signature(TIE, "joint", joint, 0, 0, 0, 0, direction=tie.name), np.array([row]), np.ones(1))
+        if len(rows) > 1:
+            label = Signature(TIE, "joint", tie.joints[0], 0, 0, 0, 0, direction=tie.name)
+            into.add(label, rows, np.ones(len(rows)))
+
+
+def _profiles(system: Fit, case: str, into: _Candidates) -> None:
+    """Stepped and tapered members taken as prismatic, or turned end for end: the difference of the deformations."""
+    frame = system.frame
+    varying = np.flatnonzero(frame.member_table.varying)
+    forces = system.forces[: 3 * len(frame.members)].reshape(-1, 3)
+    if not len(varying):
+        return
+    loads = load_table(frame, case)
+    for word in (LIGHT, DEEP, REVERSED):
+        other = flexibility(replace(frame, members={n: _taken_as(frame, m, word) for n, m in frame.members.items()}), loads)
+        change = (system.flexibility.total - other.total) @ forces[:, :, None]
+        deformation = change[:, :, 0] + system.flexibility.total_load - other.total_load
+        for k in varying.tolist():
+            label = Signature(PROFILE, "member", list(frame.members)[k], 0, 0, 0, 0, direction=word)
+            _factor(into, label, np.array([k]), deformation)
+        if len(varying) > 1:
+            label = Signature(PROFILE, "members", EACH_STEPPED, 0, 0, 0, 0, direction=word)
+            _factor(into, label, varying, deformation)
+
+
+def _taken_as(frame: Frame, member: Member, word: str) -> Member:
+    """A stepped or tapered member as another; the others as they are."""
+    if not member.pieces:
+        return member
+    if word == REVERSED:
+        starts = [0.0, *(piece.until for piece in member.pieces[:-1])]
+        turned = tuple(
+            replace(piece, first=piece.last, last=piece.first, until=1.0 - start)
+            for piece, start in zip(reversed(member.pieces), reversed(starts), strict=True)
+        )
+        return replace(member, pieces=turned)
+    names = dict.fromkeys(name for piece in member.pieces for name in (piece.first, piece.last))
+    choose = min if word == LIGHT else max
+    return replace(member, pieces=(), section=choose(names, key=lambda name: frame.sections[name].I))
+
+
 def _factors(system: Fit, into: _Candidates) -> None:
-    """The deformations of bending, of axial force or of shear by a factor: of a member, a section, a material."""
+    """The deformations of bending, of axial force or of shear by a factor: of a member, a section, a material.
+
+    Of stepped members a section has its own pieces; a tapered piece is of neither of its two sections.
+    """
     frame, soft = system.frame, system.flexibility
     forces = system.forces[: 3 * len(frame.members)].reshape(-1, 3)
     part = np.einsum("smab,mb->sma", soft.matrix, forces) + soft.load
     members = list(frame.members.values())
     sources: list[tuple[str, Floats]] = [(BENDING_FACTOR, part[BENDING])]
-    if frame.analysis.axial == "elastic":
+    if not frame.member_table.rigid.all():
         sources.append((AXIAL_FACTOR, part[STRETCH]))
     if frame.analysis.shear == "elastic":
         sources.append((SHEAR_FACTOR, part[SHEAR_STRAIN]))
@@ -306,14 +368,25 @@ def _factors(system: Fit, into: _Candidates) -> None:
         for k, member in enumerate(members):
             _factor(into, Signature(kind, "member", member.name, 0, 0, 0, 0), np.array([k]), deformation)
         for section in frame.sections:
-            chosen = np.array([k for k, member in enumerate(members) if member.section == section], dtype=np.int64)
+            own = deformation * np.array([not m.pieces and m.section == section for m in members])[:, None]
+            np.add.at(own, *_of_pieces(system, section, KINDS.index(kind), forces))
+            chosen = np.flatnonzero(own.any(axis=1))
             if len(chosen):
-                _factor(into, Signature(kind, "section", section, 0, 0, 0, 0), chosen, deformation)
+                _factor(into, Signature(kind, "section", section, 0, 0, 0, 0), chosen, own)
     for material in frame.materials:
         chosen = np.array([k for k, member in enumerate(members) if member.material == material], dtype=np.int64)
         if len(chosen):
             every = part[BENDING] + part[STRETCH] + part[SHEAR_STRAIN]
             _factor(into, Signature(MODULUS, "material", material, 0, 0, 0, 0), chosen, every)
+
+
+def _of_pieces(system: Fit, section: str, source: int, forces: Floats) -> tuple[Ints, Floats]:
+    """Members (k,) and deformations (k, 3) of the pieces that are of this section from end to end."""
+    parts, member = system.flexibility.by_piece, system.frame.variation.member
+    pieces = [piece for m in system.frame.members.values() for piece in m.pieces]
+    rows = np.array([k for k, p in enumerate(pieces) if p.first == p.last == section], dtype=np.int64)
+    bent = np.einsum("pab,pb->pa", parts.matrix[rows, source], forces[member[rows]]) + parts.load[rows, source]
+    return member[rows], bent
 
 
 def _factor(into: _Candidates, label: Signature, chosen: Ints, deformation: Floats) -> None:
