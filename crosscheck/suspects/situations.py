@@ -152,7 +152,12 @@ class SituationsSweep(Sweep):
 
     def _by_stand_in(self) -> list[Weighed]:
         """What explains the same differences from a frame of one stiffness and first order, solved again."""
-        inner = self._stand_in()
+        name = self._furthest()
+        frame, names = self._first_order(name)
+        inner = self._stand_in(frame, names, True)
+        as_claimed = self._working_as_claimed(frame, name) if self.frame.one_way else frame
+        if (as_claimed.out_members, as_claimed.out_supports) != (frame.out_members, frame.out_supports):
+            inner = self._stand_in(as_claimed, names, False) or inner
         if inner is None:
             return []
         with np.errstate(all="ignore"):
@@ -171,11 +176,10 @@ class SituationsSweep(Sweep):
             if better is not None:
                 yield better
 
-    def _stand_in(self) -> Sweep | None:
-        """A sweep over the part of the claim that is furthest off, in a frame of first order with what works under it; None
-        where that frame can move."""
-        name = self._furthest()
-        frame, names = self._first_order(name)
+    def _stand_in(self, frame: Frame, names: tuple[str, ...], same: bool) -> Sweep | None:
+        """A sweep over the claim's part of these names, in a frame of first order that stands in for them; None where that
+        frame can move. same: whether the frame is ours but for effects of second order, so that it has to explain how far
+        the claim is from our results; else it has to explain the claim."""
         index = {n: k for k, n in enumerate(names)}
         rows = np.flatnonzero([self.seen.names[k] in index for k in self.seen.case])
         case = np.array([index[self.seen.names[k]] for k in self.seen.case[rows]], dtype=np.int64)
@@ -187,8 +191,25 @@ class SituationsSweep(Sweep):
         part = _part(self.seen, frame, names, rows, case)
         said = part.read(answer)
         good = np.isfinite(said)
-        part = replace(part, said=said, value=said + part.residual)
+        part = replace(part, said=said, value=said + part.residual if same else part.value)
         return Sweep(part, self.closed, base, answer, True) if good.all() and len(rows) else None
+
+    def _working_as_claimed(self, frame: Frame, name: str) -> Frame:
+        """The frame with those one-way parts out that the claim gives no force in, as far as it gives any."""
+        members, supports = set(frame.out_members), set(frame.out_supports)
+        for v in self.seen.values:
+            if v.case != name:
+                continue
+            if v.kind == "end" and v.quantity == "axial" and (only := _only(frame, v.member)):
+                works = (v.value if only == "tension" else -v.value) > v.half_digit
+                (members.discard if works else members.add)(str(v.member))
+            if v.kind == "reaction" and v.quantity in ("fx", "fy") and v.joint in frame.supports:
+                s, axis = frame.supports[v.joint], v.quantity[1]
+                only = getattr(s, f"{axis}_only")
+                if only and s.angle == 0.0:
+                    works = (v.value if only == "push" else -v.value) > v.half_digit
+                    (supports.discard if works else supports.add)((v.joint, axis))
+        return replace(frame, out_members=frozenset(members), out_supports=frozenset(supports))
 
     def _furthest(self) -> str:
         """The claimed name whose values are furthest off in all, in units of tolerance."""
@@ -202,6 +223,11 @@ class SituationsSweep(Sweep):
         same = tuple(n for n in self.seen.names if self.frame.under(n) is plain)
         first = plain if plain.analysis.order == 1 else replace(plain, analysis=replace(plain.analysis, order=1))
         return (working_frame(first, name), (name,)) if self.frame.one_way else (first, same)
+
+
+def _only(frame: Frame, member: str | None) -> str:
+    """The one sense in which a member works; "" where it works in both, or is none of the frame's."""
+    return frame.members[member].only if member in frame.members else ""
 
 
 def _extreme(values: Floats, which: str | None) -> float:
