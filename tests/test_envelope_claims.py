@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import json
 import os
+import shutil
 import subprocess
 import sys
 from functools import cache
@@ -95,7 +96,8 @@ def moments(name: str = "uls", frame_text: str = BEAM) -> np.ndarray:
 
 def ends() -> list[tuple[str, str, int, int]]:
     frame, _ = asked(BEAM)
-    return [(m.name, j, k, e) for k, m in enumerate(frame.members.values()) for e, j in enumerate((m.joint_from, m.joint_to))]
+    members = enumerate(frame.members.values())
+    return [(m.name, j, k, e) for k, m in members for e, j in enumerate((m.joint_from, m.joint_to))]
 
 
 def pairs(heading: str = "Envelope uls", governing: bool = False) -> list[str]:
@@ -382,9 +384,11 @@ def test_claims_beside_the_demonstrations_do_what_they_are_there_for(name: str) 
 
 def test_the_command_gives_verdict_json_and_record(tmp_path: Path) -> None:
     page, document = tmp_path / "check.html", tmp_path / "check.json"
+    for file in ("causeway.toml", "causeway.adjacent.claim.txt", "office-sections.toml"):  # a report keeps a log beside
+        shutil.copy(CASES / file, tmp_path)
     done = subprocess.run(
-        [sys.executable, "-m", "crosscheck", "verify", str(CASES / "causeway.toml"),
-         str(CASES / "causeway.adjacent.claim.txt"), "--case", "uls", "--report", str(page), "--json", str(document)],
+        [sys.executable, "-m", "crosscheck", "verify", str(tmp_path / "causeway.toml"),
+         str(tmp_path / "causeway.adjacent.claim.txt"), "--case", "uls", "--report", str(page), "--json", str(document)],
         capture_output=True, text=True, encoding="utf-8", check=False,
     )  # fmt: skip
     assert done.returncode == 1, done.stderr
@@ -394,5 +398,6 @@ def test_the_command_gives_verdict_json_and_record(tmp_path: Path) -> None:
     assert {d["case"] for d in said["disagreements"]} == {"uls"}
     assert said["statics"] == said["compatibility"] == []
     text = page.read_text(encoding="utf-8")
-    assert "Envelope uls" in text
+    assert "envelope uls" in text
+    assert ", least" in text
     assert "no state of balance" in text

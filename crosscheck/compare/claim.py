@@ -308,4 +308,5 @@ def _nearest(v: ClaimedValue, said: Iterable[float]) -> float:
 
 def _place(v: ClaimedValue) -> Place:
     of = {"end": "member_ends", "span": "spans", "reaction": "reactions", "displacement": "joints"}
-    return Place(v.case, of.get(v.kind, "extremes"), v.quantity, v.member, v.joint, v.at)  # type: ignore[arg-type]
+    extreme = v.extreme if v.kind != "extreme" and v.extreme in ("max", "min") else ""
+    return Place(v.case, of.get(v.kind, "extremes"), v.quantity, v.member, v.joint, v.at, extreme)  # type: ignore[arg-type]

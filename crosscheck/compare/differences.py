@@ -20,6 +20,7 @@ class Place:
     """What a value is of: a quantity of a case at a member's end, along a member, or at a joint.
 
     at: distance along the member for values within a span, else None. of: which table it stands in.
+    extreme: "max" or "min" where it is the greatest or least of an envelope there, else "".
     """
 
     case: str
@@ -28,6 +29,7 @@ class Place:
     member: str | None = None
     joint: str | None = None
     at: float | None = None
+    extreme: str = ""
 
 
 @dataclass(frozen=True, slots=True)

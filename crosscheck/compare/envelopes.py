@@ -69,8 +69,9 @@ def extremes_of(stack: Floats) -> Extremes:
 
 
 def envelope(frame: Frame, answer: Answer, name: str) -> EnvelopeAnswer | None:
-    """The opinion's envelope of that name; None where it speaks for none of its cases."""
-    wanted = frame.envelopes[name].names
+    """The opinion's envelope of that name (an envelope's, or a combination's that became several); None where it speaks
+    for none of its cases."""
+    wanted = frame.meant(name)
     spoken = tuple(n for n in wanted if n in answer.cases)
     if not spoken:
         return None

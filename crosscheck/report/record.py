@@ -20,6 +20,7 @@ from crosscheck.report import terminal, words
 from crosscheck.report.about import ABOUT, FILED, Circumstances
 from crosscheck.report.closing import closing_sections, review_section, sign_off, verbatim
 from crosscheck.report.content import Block, Facts, Grid, Record, Says, Section
+from crosscheck.report.enveloped import envelope_sections
 from crosscheck.report.gist import opinions_gist, verify_gist
 from crosscheck.report.pictures import CasePictures, frame_picture, loads_picture
 from crosscheck.review.finding import Finding, Subject
@@ -45,9 +46,10 @@ def verify_record(result: Verification, around: Circumstances) -> Record:
         _suspects(result),
         _claim_differences(result, numbered),
         _own_section(_own_differences(opinions)),
-        Section("Audit of the claim", _audits(frame, result.audits)),
+        Section("Audit of the claim", _audits(frame, result.audits) or _of_envelopes(result)),
         *(_case(opinions, name, result, numbered) for name in names[: _pictured(frame)]),
         *_tables(opinions, names),
+        *envelope_sections(opinions, [n for n in result.closed.cases if n in frame.several]),
         Section("Not compared", (Says(tuple(terminal.not_compared_lines(result)) or ("Nothing was left out.",)),)),
         *closing_sections(opinions, around, numbered),
     ]
@@ -72,6 +74,7 @@ def opinions_record(result: Opinions, around: Circumstances) -> Record:
         _own_section(numbered),
         *(_case(result, name, None, numbered) for name in result.names[: _pictured(frame)]),
         *_tables(result, list(result.names)),
+        *envelope_sections(result, result.envelopes),
         Section("Not compared", (Says(tuple(terminal.undetermined_lines(result)) or ("Nothing was left out.",)),)),
         *closing_sections(result, around, numbered),
     ]
@@ -270,6 +273,12 @@ def _audits(frame: Frame, audits: Sequence[CaseAudit]) -> tuple[Block, ...]:
     says = f"The claim does not give enough to judge statics or compatibility of {words.some(silent)}."
     blocks = [b for audit in audits if audit.case not in silent for b in _audit(frame, audit)]
     return (*blocks, *([Says((says,))] if silent else []))
+
+
+def _of_envelopes(result: Verification) -> tuple[Block, ...]:
+    several = [n for n in result.closed.cases if n in result.opinions.frame.several]
+    says = f"None of {words.some(several)}: an envelope is no state of balance."
+    return (Says((says,)),) if several else ()
 
 
 def _audit(frame: Frame, audit: CaseAudit) -> list[Block]:

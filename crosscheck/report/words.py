@@ -48,7 +48,11 @@ def short(value: float) -> str:
 
 
 def place(p: Place) -> str:
-    """Where a value stands, in words."""
+    """Where a value stands, in words, and whether it is the greatest or least there."""
+    return _where(p) + {"max": ", greatest", "min": ", least"}.get(p.extreme, "")
+
+
+def _where(p: Place) -> str:
     if p.member and p.joint:
         return f"{p.member} at {p.joint}"
     if p.member and p.at is not None:
