@@ -305,7 +305,7 @@ def _verdict(
         grounds.append("it has results for members or joints that the frame lacks")
     if not sum(c.compared for c in cases):
         verdicts.append("undecided")
-        grounds.append("no value could be compared")
+        grounds.append("no value could be compared" + ("" if closed.values else "; is it a claim of this frame?"))
     return worst(verdicts), grounds
 
 

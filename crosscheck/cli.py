@@ -350,6 +350,9 @@ def _refuse_together(args: argparse.Namespace) -> None:
     if args.claim is None and not args.value:
         advice = "name a file, or - for standard input, or --value"
         raise UnusableInput([Problem("", None, "CLAIM", "no claim given", advice)])
+    if str(args.claim).endswith(".toml") and not args.frame.endswith(".toml"):
+        advice = "the frame stands first, the claim second"
+        raise UnusableInput([Problem(args.claim, None, "CLAIM", "is a frame file", advice)])
     if args.against is not None and (args.against == "-" or args.claim is None):
         says, advice = "compares two printouts, each a file (the first may be -)", "name CLAIM and --against OTHER"
         raise UnusableInput([Problem("", None, "--against", says, advice)])

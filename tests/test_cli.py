@@ -257,3 +257,9 @@ def test_nothing_of_a_table_is_cut_off_at_80_columns(claim: str) -> None:
     out = terminal.plain_text(terminal.table(heads, [row]), 80)
     assert max(len(line) for line in out.splitlines()) <= 80
     assert Counter(out.split()) == Counter(" ".join((*(head for head, _ in heads), *row)).split())
+
+
+def test_a_claim_before_its_frame_is_told_so(tmp_path: Path) -> None:
+    frame, claim = put(tmp_path, PORTAL), put(tmp_path, "Member,End,M\nAB,A,1\n", "frame.claim.csv")
+    said = call("verify", claim, frame)
+    assert said.status == 2 and "the frame stands first, the claim second" in said.err

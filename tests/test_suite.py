@@ -102,6 +102,15 @@ def test_states_are_told_apart(tmp_path: Path) -> None:
     }  # fmt: skip
 
 
+def test_a_claim_that_a_change_of_the_frame_put_out_is_told_with_the_change(tmp_path: Path) -> None:
+    frame = recorded(tmp_path)
+    assert check_frame(Standard(frame)).says.endswith("values hold")
+    frame.write_text(SHED.replace('A = "fixed"', 'A = "pinned"'), encoding="utf-8")
+    outcome = check_frame(Standard(frame))
+    assert outcome.state == "disagree"
+    assert outcome.says.endswith("expected to agree; the frame file has changed since its values went on record")
+
+
 def test_exit_statuses(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     empty = tmp_path / "empty"
     empty.mkdir()

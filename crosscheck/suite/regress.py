@@ -97,7 +97,7 @@ def _check(standard: Standard, today: datetime.date) -> FrameOutcome:
     bad = [c for c in claims if not c.held]
     if bad:
         state = "undecided" if all(c.verdict == "undecided" for c in bad) else "disagree"
-        says = "; ".join(f"{c.file}: {c.says}" for c in bad)
+        says = "; ".join(f"{c.file}: {c.says}" for c in bad) + _since_recorded(standard, frame.content)
         return FrameOutcome(standard, state, says, tuple(found), claims, accepted)
     if not standard.record.exists():
         return FrameOutcome(standard, "never on record", "no values on record", (), claims, accepted)
@@ -107,6 +107,15 @@ def _check(standard: Standard, today: datetime.date) -> FrameOutcome:
     older = record.now.facts["frame_sha256"] != frame.content
     state, says = _state(bool(moved), older, gone, len(moved), compared)
     return FrameOutcome(standard, state, says, tuple(moved), claims, accepted, compared)
+
+
+def _since_recorded(standard: Standard, content: str) -> str:
+    """The likeliest cause of a claim that no longer agrees, where it is one: the frame is not what it was."""
+    try:
+        changed = standard.record.exists() and read_record(standard.record).now.facts["frame_sha256"] != content
+    except UnusableInput:
+        return ""  # said when the claims are in order
+    return "; the frame file has changed since its values went on record" if changed else ""
 
 
 def _state(moved: bool, older: bool, gone: Sequence[str], count: int, compared: int) -> tuple[str, str]:
