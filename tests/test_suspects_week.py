@@ -14,7 +14,9 @@ from crosscheck.frame.model import HELD, Frame
 from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions.slope_deflection.prepared import prepared, working_frame
 from crosscheck.suspects import search
-from crosscheck.suspects.changes import in_state, with_member_factors
+from crosscheck.suspects.changes import in_state, with_load, with_member_factors
+from crosscheck.suspects.observation import observe
+from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.week import has_week
 from tests.corpus import CLAIM, case_values, closed_claim, judged, table
 from tests.corpus_week import common, envelope_values, opinions_on, run, run_enveloped, solved, the_frame
@@ -249,6 +251,22 @@ def test_a_stepped_members_change_is_foretold() -> None:
     shift = -(base._unit[0].T @ (base.B.T @ np.eye(3 * len(frame.members))[:, 3 * m : 3 * m + 3] @ actions))
     rotation = changed.joints[:, 2] - now.joints[:, 2]
     np.testing.assert_allclose(shift.reshape(-1, 3)[:, 2], rotation, atol=1e-9 * np.abs(rotation).max() + 1e-15)
+
+
+def test_the_temperature_of_a_member_that_cannot_stretch_is_foretold() -> None:
+    """An axially rigid frame that can follow: what leaving one of two temperatures out does, against solving again."""
+    frame = the_frame(31)
+    base, opinions = prepared(frame), opinions_on(frame)
+    assert opinions is not None and frame.analysis.axial == "rigid"
+    values = case_values(frame, opinions.answers["slope-deflection"].cases["case0"], "case0", 6, True)
+    scales = {"case0": opinions.judgements["case0"].scales}
+    seen = observe(frame, opinions.answers["slope-deflection"], ("case0",), values, CLAIM, scales)
+    screen = Screen(seen, base)
+    load = frame.cases["case0"].loads[1]
+    without = seen.read(base.answer(("case0",), with_load(frame, "case0", {1: ()})))
+    change = (without - seen.said)[screen.rows]
+    assert np.abs(change).max() > 0.1 * np.abs(seen.said).max()
+    np.testing.assert_allclose(-screen.load_deltas([load])[:, 0], change, rtol=1e-6, atol=1e-7 * np.abs(seen.said).max())
 
 
 def test_the_frame_that_works_under_a_case() -> None:

@@ -524,8 +524,10 @@ class Prepared:
         table = _one_case(bench, case)
         fixed = fixed_ends(bench, table, self.system.coefficients.stiffness[of])
         rigid = self.system.rigid[of]
-        axial = np.where(rigid, self._blocks[of, 2, 2], self.system.coefficients.axial[of])
-        pulled = -axial * fixed.stretch
+        pulled = np.where(rigid, 0.0, -self.system.coefficients.axial[of] * fixed.stretch)
+        longer = np.flatnonzero(rigid & (fixed.stretch != 0.0))
+        if len(longer):  # no pair of forces does what a rigid member's elongation does
+            out[:, place[longer]] += self.stretch_effects(places)[:, of[longer]] * fixed.stretch[longer]
         ends = end_actions(bench, fixed.moments, pulled + fixed.axial, fixed)
         on_joints = _gathered_each(bench, ends)
         t = bench.member_table
