@@ -45,7 +45,7 @@ exit status: 0 agree, 1 disagree, 2 unusable input, 3 undecided
 examples:
   crosscheck verify hall.toml hall.claim.txt         a claim and the opinions
   crosscheck verify hall.toml - --case wind < mail.txt   pasted, of one case
-  crosscheck verify hall.toml --value "B1-C1 max 412 kNm"   one value out of a mail
+  crosscheck verify hall.toml --value "B1-C1 max 412 kNm"  one value of a mail
   crosscheck verify hall.toml r.csv --show-reading   how the table is understood
   crosscheck verify hall.toml r.csv --units "kN mm"  what it does not say itself
   crosscheck verify hall.toml r.csv --suspect 1      as suspect 1 supposes

@@ -176,8 +176,9 @@ def examine(name: str, count: int, seed: int) -> list[Mutant]:
         raise SystemExit(f"{name}: the unaltered opinion does not pass the comparison")
     warm(room)
     every = dict.fromkeys(test for tests in room.tests.values() for test in tests)
-    if in_a_fork(lambda: tested(list(every))) != SURVIVED:
-        raise SystemExit(f"{name}: the tests fail unaltered, or take too long")
+    for test in every:
+        if in_a_fork(lambda test=test: tested([test])) != SURVIVED:  # type: ignore[misc]
+            raise SystemExit(f"{name}: {test} fails unaltered, or takes too long")
     tally, survivors, excused = Counter[str](), [], known()
     for k, mutant in enumerate(chosen):
         became = _became(room, heard, mutant)
