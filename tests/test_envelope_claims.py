@@ -204,6 +204,28 @@ def test_signs_that_are_turned_turn_max_and_min() -> None:
     assert result.closed.signs["moment"].startswith("anticlockwise")
 
 
+PARTED = BEAM.replace(
+    "[combinations]", "[loads.storm]\napply = [{ member = \"A-B\", force = 20, at = 3, direction = \"up\" }]\n"
+    "[loads.calm]\napply = [{ member = \"A-B\", force = 5, at = 3, direction = \"down\" }]\n[combinations]\n"
+    "windy = { dead = 1.0, storm = 1.5, calm = 1.5 }",
+).replace("[materials.s]", 'exclusive = [["storm", "calm"]]\n[materials.s]', 1)  # fmt: skip
+
+
+def test_a_combination_that_became_several_is_one_of_them_or_all() -> None:
+    frame, _ = asked(PARTED)
+    names = frame.meant("windy")
+    assert len(names) == 2
+    one = answer(PARTED).cases[names[0]].ends[:, :, 2]
+    rows = ["Load case: windy", "Member\tEnd\tM [kNm]", *(f"{m}\t{j}\t{one[k, e]:.3f}" for m, j, k, e in ends())]
+    plain = judged("\n".join(rows), PARTED)
+    assert (plain.verdict, plain.closed.cases) == ("agree", (names[0],))
+    assert "windy became 2 combinations" in plain.closed.notes
+    stack = moments("windy", PARTED)
+    rows = ["Member\tEnd\tM max [kNm]\tM min [kNm]"]
+    rows += [f"{m}\t{j}\t{stack[:, k, e].max():.3f}\t{stack[:, k, e].min():.3f}" for m, j, k, e in ends()]
+    assert judged("\n".join(rows), PARTED, case="windy").verdict == "agree"
+
+
 # --- what governs
 
 

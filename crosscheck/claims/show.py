@@ -43,7 +43,7 @@ def _row(e: Entry) -> str:
         where += f" at {e.joint}" if e.joint else f" at its {('start', 'end')[e.place or 0]}"
     if e.at is not None:
         where += f" at {e.at:g}{' L' if e.at_share else ''}"
-    case = f" [{e.case}]" if e.case else ""
+    case = f" [{e.case or 'no case'}{f', by {e.governs}' if e.governs else ''}]" if e.case or e.governs else ""
     which = f"{e.extreme} " if e.extreme else ""
     unit = e.unit.text if e.unit else "not stated"
     return f"  {e.line:>5}  {which + e.quantity + ' ' + where + case:<32} {e.number.printed:>14}  {unit}"

@@ -14,7 +14,7 @@ import numpy as np
 from crosscheck.answer import Answer
 from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
-from crosscheck.compare.enveloped import as_of, candidates, name_of, prepared, silent_part, unaudited
+from crosscheck.compare.enveloped import as_of, candidates, name_of, parted_name, prepared, silent_part, unaudited
 from crosscheck.compare.fit import Choice, Fitted, Fitter
 from crosscheck.compare.fit_conventions import Batch, distance, placed
 from crosscheck.compare.fit_signs import Senses, narrowed, plain_where_loads_turn, senses
@@ -84,7 +84,13 @@ def _without_open_moments(closer: _Closer, entries: list[Entry], notes: list[str
 def _close_case(closer: _Closer, entries: list[Entry], notes: list[str], case: str | None) -> ClosedClaim:
     frame, answers = closer.frame, closer.answers
     if case is not None:
-        return closer.close([as_of(e, case) for e in entries], notes)
+        entries = [as_of(e, case) for e in entries]
+    if parted := parted_name(entries, frame):
+        meant = frame.meant(parted)
+        opened = [replace(e, case=None) if e.case == parted else e for e in entries]
+        closed = _by_fit(closer, opened, list(meant), [*notes, f"{parted} became {len(meant)} combinations"])
+        assert closed is not None
+        return closed
     if all(name_of(e) is not None for e in entries):
         return closer.close(entries, notes)
     if len(frame.names) == 1 and not frame.several:

@@ -29,6 +29,14 @@ def as_of(e: Entry, name: str) -> Entry:
     return replace(e, beside=name) if e.along else replace(e, case=name)
 
 
+def parted_name(entries: list[Entry], frame: Frame) -> str | None:
+    """The combination that became several (no envelope) of which plain values are said to be: they are of one of these."""
+    mine = [e for e in entries if e.case in frame.several and e.case not in frame.envelopes]
+    names = {e.case for e in mine}
+    plain = all(e.kind != "extreme" and e.extreme is None and not e.sense for e in mine)
+    return names.pop() if len(names) == 1 and plain else None
+
+
 def prepared(entries: list[Entry], frame: Frame) -> tuple[list[Entry], list[str]]:
     """The entries that can be judged, each with its case, and reasons why others cannot.
 
