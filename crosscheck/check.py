@@ -90,6 +90,7 @@ class Verification:
     grounds: why the verdict is what it is, one sentence each. undecided: the choices that would settle it.
     no_suspects: why none is named, where the claim disagrees. facts: how the other model's own input, where the paste
     holds it, differs from the frame; each with its kind (geometry, stiffness, support or load) and place.
+    supposed: what a suspect says, where frame and claim are judged as it supposes and not as stated.
     """
 
     opinions: Opinions
@@ -103,6 +104,7 @@ class Verification:
     undecided: tuple[str, ...] = field(default=())
     no_suspects: str = ""
     facts: tuple[Finding, ...] = ()
+    supposed: str = ""
 
 
 def ask(frame: Frame, names: Sequence[str] | None = None, any_size: bool = False) -> Opinions:
@@ -267,12 +269,15 @@ def as_suspected(result: Verification, number: int) -> Verification:
     if not 1 <= number <= len(result.suspects):
         known = f"give 1 to {len(result.suspects)}" if result.suspects else "this claim has no suspects"
         raise UnusableInput([Problem("", None, "--suspect", f"there is no suspect {number}", known)])
-    frame, closed = result.suspects[number - 1].change.apply(result.opinions.frame, result.closed)
+    suspect = result.suspects[number - 1]
+    frame, closed = suspect.change.apply(result.opinions.frame, result.closed)
     opinions = ask(frame, result.opinions.names)
     cases = ClaimComparison(frame, opinions.answers, opinions.judgements, result.tolerance).judge(closed)
     audits = _audits(frame, opinions, closed)
     verdict, grounds = _verdict(opinions, closed, cases, audits)
-    return Verification(opinions, closed, result.tolerance, tuple(cases), audits, (), verdict, tuple(grounds))
+    return Verification(
+        opinions, closed, result.tolerance, tuple(cases), audits, (), verdict, tuple(grounds), supposed=suspect.says
+    )
 
 
 def _verdict(

@@ -68,4 +68,5 @@ def _about_file(path: str) -> dict[str, object]:
         return tomllib.loads(Path(path).read_text(encoding="utf-8-sig"))
     except (OSError, ValueError) as error:
         advice = f"KEY=TEXT, or a TOML file with keys {', '.join(ABOUT)}"
-        raise UnusableInput([Problem(path, None, "--about", f"cannot be read ({error})", advice)]) from None
+        why = (error.strerror or str(error)).lower() if isinstance(error, OSError) else str(error)
+        raise UnusableInput([Problem(path, None, "--about", f"cannot be read ({why})", advice)]) from None

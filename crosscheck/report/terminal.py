@@ -411,7 +411,10 @@ def verify_report(
 ) -> RenderableType:
     """What `crosscheck verify` prints; critical and effects as in opinions_report."""
     opinions = result.opinions
-    parts: list[RenderableType] = [_verdict_line(result.verdict, claim_sentence(result))]
+    sentence = claim_sentence(result)
+    if result.supposed:  # in the first line, which --quiet prints alone
+        sentence = f"Supposing that {result.supposed}, which is not what was stated: {sentence[0].lower()}{sentence[1:]}"
+    parts: list[RenderableType] = [_verdict_line(result.verdict, sentence)]
     parts += [Text(f"  {line}") for line in beside(result)]
     parts += _warnings(opinions)
     parts += [Text(line) for line in (*undetermined_lines(opinions), critical) if line]
