@@ -3,7 +3,8 @@
 As tests/corpus.py: the other analysis is solved by moment distribution, each case in its own state and order, and mistakes
 are drawn from small functions that the suspects do not know. Frames are the demonstrations of the week in cases/ and random
 ones (tests/week_frames.py). `python -m tests.corpus_week FIRST LAST PER` prints the table for some seeds; seeds 0 to 3 are
-the demonstrations. With a further word `envelopes`, claims that are envelopes; with `common`, mistakes of any frame.
+the demonstrations. With a further word `envelopes`, claims that are envelopes; with `common`, mistakes of any frame;
+with `right`, right claims.
 """
 
 from __future__ import annotations
@@ -405,9 +406,30 @@ def run_enveloped(seeds: Iterable[int], per: int) -> Iterator[Record]:
             yield tried_envelope(frame, mistake, values, seed)
 
 
+def right_claims(seed: int, per: int) -> Iterator[tuple[str, int, str, int]]:
+    """(case, digits, verdict, suspects) of a frame's own results by moment distribution, printed to 3 to 6 digits."""
+    frame, r = the_frame(seed), Random(f"right {seed}")
+    opinions = opinions_on(frame)
+    if opinions is None:
+        return
+    said = opinions.answers["slope-deflection"].cases
+    for name in r.sample([n for n in frame.names if n in said], min(per, len(said))):
+        answer, digits = solved(frame, (name,)), r.randint(3, 6)
+        if answer is not None:
+            closed = closed_claim(case_values(frame, answer.cases[name], name, digits, seed % 2 == 0))
+            claims = judged(frame, opinions, closed)
+            found = search(frame, opinions, closed, claims, CLAIM)
+            yield name, digits, worst([c.verdict for c in claims]), len(found.suspects)
+
+
 def main(arguments: list[str]) -> None:
     first, last, per = map(int, arguments[:3])
     seeds = range(first, last)
+    if "right" in arguments:
+        every = [(seed, *found) for seed in seeds for found in right_claims(seed, per)]
+        wrong = [f for f in every if f[3] == "disagree" or f[4]]
+        print(f"{len(every)} right claims; disagree or with a suspect: {wrong or 'none'}")
+        return
     sorts = common if "common" in arguments else mistakes
     records = []
     for record in run_enveloped(seeds, per) if "envelopes" in arguments else run(seeds, per, sorts):

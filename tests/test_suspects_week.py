@@ -19,7 +19,7 @@ from crosscheck.suspects.observation import observe
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.week import has_week
 from tests.corpus import CLAIM, case_values, closed_claim, judged, table
-from tests.corpus_week import common, envelope_values, opinions_on, run, run_enveloped, solved, the_frame
+from tests.corpus_week import common, envelope_values, opinions_on, right_claims, run, run_enveloped, solved, the_frame
 from tests.random_frames import random_frame
 from tests.week_frames import week_frame
 
@@ -75,6 +75,12 @@ def test_right_claims_have_no_suspects(seed: int, digits: int) -> None:
     found, claims = _found(frame, frame, names, digits)
     assert not any(c.verdict == "disagree" for c in claims)
     assert found.suspects == ()
+
+
+@pytest.mark.parametrize("seed", range(104) if FULL else (14, 15, 16))
+def test_right_claims_of_any_case_have_no_suspects(seed: int) -> None:
+    found = list(right_claims(seed, 5))
+    assert [f for f in found if f[2] == "disagree" or f[3]] == []
 
 
 # --- claims that are envelopes
