@@ -22,6 +22,7 @@ from crosscheck.opinions import library, moment_distribution, slope_deflection
 from tests.exact import Exact
 from tests.random_frames import features_of, random_frame, random_frame_text
 from tests.truth import Truth
+from tests.truth_week import WeekTruth
 
 COLUMNS = {
     "ends": ("axial", "shear", "moment"),
@@ -118,7 +119,7 @@ def _pairs(frame: Frame, name: str, one: Given, other: Given) -> dict[str, tuple
 def along(of: Given) -> Along:
     if isinstance(of, Answer):
         return of.spans.along
-    assert isinstance(of, Truth | Exact)
+    assert isinstance(of, Truth | WeekTruth | Exact)
     return of.along
 
 

@@ -9,9 +9,14 @@ equations exactly between loads (they are polynomials there). Then:
     three equations a member    the state that arrives is the displacement of the `to` joint
     one equation a connection   kink = moment / stiffness, or moment = 0, or kink = 0
     one equation a restraint    displacement = settlement, or reaction = -stiffness * (displacement - settlement)
+    one equation a tied joint   it moves as the tie's first joint does; its unknown is the tie's force
 
 Flexibilities and not stiffnesses appear, so axially rigid (or shear-rigid) members are a zero and no limit. What the
 equations leave undetermined is the null space of their matrix; what they cannot follow is its left null space.
+
+A stepped or tapered member is integrated by Gauss's points over each of its pieces, self weight that varies with it
+likewise. The frame is taken in its state of stiffness and with its one-way parts that are out left out: which those are,
+and which state belongs to a name, is the business of tests/truth_week.py.
 
 Inside: rotations are counter-clockwise (phi), axial u along and w across the member. Signs of results are the README's.
 """
@@ -19,8 +24,8 @@ Inside: rotations are counter-clockwise (phi), axial u along and w across the me
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -34,6 +39,7 @@ from crosscheck.frame.model import (
     Frame,
     JointCouple,
     JointForce,
+    Lean,
     Load,
     Member,
     Misfit,
@@ -53,6 +59,9 @@ NEAR = 1e-9
 ZERO = 1e-11
 """Singular values below this share of the largest are zero; between it and SURE the frame is not to be judged."""
 SURE = 1e-9
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(32)
+SHARE, WEIGHT = (_NODES + 1.0) / 2.0, _WEIGHTS / 2.0
+"""Gauss's points and weights on 0 to 1: exact to 1e-16 for a depth that grows threefold, 1e-12 for twentyfold."""
 
 
 class Mechanism(Exception):
@@ -65,24 +74,45 @@ class CannotFollow(Exception):
 
 @dataclass(frozen=True)
 class Piece:
-    """A stretch of member whose state is polynomial. p along, q across: load intensity at x0 and its slope."""
+    """A stretch of member whose state is smooth. p along, q across: load intensity at x0 and its slope.
+
+    part: which piece of a stepped or tapered member it belongs to; -1 in a prismatic one.
+    """
 
     x0: float
     x1: float
     flexible: bool
     p: tuple[float, float]
     q: tuple[float, float]
+    part: int = -1
+
+
+@dataclass(frozen=True)
+class Stiff:
+    """Elastic properties of a section of a member in a state of stiffness; NaN where not stated."""
+
+    E: float
+    G: float
+    I: float  # noqa: E741
+    A: float
+    shear_area: float
 
 
 @dataclass(frozen=True)
 class Loads:
-    """Loads of one case on joints, supports and members, factors applied; (m,) lists hold tuples a member."""
+    """Loads of one case on joints, supports and members, factors applied; (m,) lists hold tuples a member.
+
+    weight: self weight of stepped and tapered members, times it down and to the right. pull: (m,) forces that slack
+    members are given.
+    """
 
     joint: Array
     settlement: Array
     points: list[list[tuple[float, float, float, float]]]
     lines: list[list[tuple[float, float, float, float, float, float]]]
     strain: Array
+    weight: Array
+    pull: Array
 
 
 class Truth:
@@ -95,7 +125,8 @@ class Truth:
         self.joints = list(frame.joints)
         self.place = {name: 3 * k for k, name in enumerate(self.joints)}
         self.columns = _numbering(frame)
-        self.size = 3 * len(self.joints) + 5 * len(self.members) + len(self.columns)
+        self.ties = [(t.joints[0], joint, t.direction) for t in frame.ties.values() for joint in t.joints[1:]]
+        self.size = 3 * len(self.joints) + 5 * len(self.members) + len(self.ties) + len(self.columns)
         self._scale()
         self._loads = {name: self._gather(name) for name in (frame.names if names is None else names)}
         self.matrix = self._matrix()
@@ -125,17 +156,52 @@ class Truth:
     def _gather(self, name: str) -> Loads:
         frame = self.frame
         factors = {name: 1.0} if name in frame.cases else frame.combinations[name].factors
-        loads = Loads(
-            joint=np.zeros((len(self.joints), 3)),
-            settlement=np.zeros((len(self.joints), 3)),
-            points=[[] for _ in self.members],
-            lines=[[] for _ in self.members],
-            strain=np.zeros((len(self.members), 3)),
-        )
+        lean = 0.0 if name in frame.cases else frame.combinations[name].lean
+        loads = _nothing(frame)
         for case, factor in factors.items():
+            own = sum(load.share for load in frame.cases[case].loads if isinstance(load, Lean))
             for load in frame.cases[case].loads:
                 self._add(loads, load, factor)
+                # What leans in the case is the case's own and goes with its factor; what leans in the combination is a
+                # share of what acts down in it.
+                for share, times in ((own * factor, 1.0), (lean, factor)):
+                    if share:
+                        self._lean(loads, load, times, share)
         return loads
+
+    def _lean(self, to: Loads, load: Load, factor: float, share: float) -> None:
+        """Add `share` of the part of factor * load that acts down, to the right where it acts."""
+        match load:
+            case JointForce() | PointForce():
+                down = -factor * load.force * self._up(load)
+                if down > 0.0:
+                    self._add(to, replace(load, force=down, direction=0.0), share)
+            case Spread():
+                w = -factor * self._up(load)
+                if load.projection:
+                    w *= abs(self._local(self.frame.member_index[load.member], load.direction)[1])
+                self._lean_spread(to, load, w * load.first, w * load.last, share)
+            case SelfWeight():
+                self._add_weight(to, 0.0, share * max(0.0, factor * load.factor))
+
+    def _up(self, load: JointForce | PointForce | Spread) -> float:
+        """The global upward component of a unit of the load."""
+        if isinstance(load.direction, str):
+            assert not isinstance(load, JointForce)
+            cos, sin, _ = self.run(self.frame.members[load.member])
+            return sin if load.direction == "along" else cos
+        return _unit(load.direction)[1]
+
+    def _lean_spread(self, to: Loads, load: Spread, first: float, last: float, share: float) -> None:
+        """first, last: intensity down per length of member; where it changes its sense only the part down leans."""
+        start, end = load.start, load.end
+        if first < 0.0 < last:
+            start, first = start + (end - start) * first / (first - last), 0.0
+        elif last < 0.0 < first:
+            end, last = start + (end - start) * first / (first - last), 0.0
+        if first + last > 0.0:
+            sideways = replace(load, first=first, last=last, direction=0.0, start=start, end=end, projection=False)
+            self._add(to, sideways, share)
 
     def _add(self, to: Loads, load: Load, factor: float) -> None:
         frame = self.frame
@@ -167,15 +233,19 @@ class Truth:
             case Misfit():
                 to.strain[frame.member_index[load.member], 2] += factor * load.too_long
             case SelfWeight():
-                self._add_weight(to, factor * load.factor)
+                self._add_weight(to, factor * load.factor, 0.0)
 
-    def _add_weight(self, to: Loads, factor: float) -> None:
+    def _add_weight(self, to: Loads, down: float, right: float) -> None:
+        """Times self weight down, and to the right; of the stated sections in every state."""
+        to.weight[:] += down, right
         for k, m in enumerate(self.members):
+            if m.pieces:
+                continue
             cos, sin, length = self.run(m)
             area, density = self.frame.sections[m.section].A, self.frame.materials[m.material].weight
             assert area is not None and density is not None
-            w = factor * area * density
-            to.lines[k].append((0.0, length, -w * sin, -w * sin, -w * cos, -w * cos))
+            along, across = area * density * (right * cos - down * sin), area * density * (-right * sin - down * cos)
+            to.lines[k].append((0.0, length, along, along, across, across))
 
     def _local(self, m: int, direction: float | str) -> tuple[float, float]:
         if direction == "along":
@@ -188,16 +258,43 @@ class Truth:
 
     # -- one member ---------------------------------------------------------------------------------------------------
     def _flexibility(self, m: Member) -> tuple[float, float, float]:
-        """Per length: axial, bending, shear."""
-        section, material = self.frame.sections[m.section], self.frame.materials[m.material]
+        """Per length of a prismatic member: axial, bending, shear."""
+        stiff = _effective(self.frame, m, m.section)
         axial = shear = 0.0
-        if self.frame.analysis.axial == "elastic":
-            assert section.A is not None
-            axial = 1.0 / (material.E * section.A)
+        if not self._keeps_length(m):
+            axial = 1.0 / (stiff.E * stiff.A)
         if self.frame.analysis.shear == "elastic":
-            assert section.shear_area is not None and material.G is not None
-            shear = 1.0 / (material.G * section.shear_area)
-        return axial, 1.0 / (material.E * section.I), shear
+            shear = 1.0 / (stiff.G * stiff.shear_area)
+        return axial, 1.0 / (stiff.E * stiff.I), shear
+
+    def _keeps_length(self, m: Member) -> bool:
+        return self.frame.analysis.axial == "rigid" or m.axial == "rigid"
+
+    def _varying_flexibility(self, m: Member, part: int, x: Array) -> tuple[Array, Array, Array, Array]:
+        """Per length at distances x in a piece of a stepped or tapered member: axial, bending, shear; and the depth."""
+        piece, share = m.pieces[part], self._share(m, part, x)
+        first, last = _effective(self.frame, m, piece.first), _effective(self.frame, m, piece.last)
+        depths = tuple(self.frame.sections[name].depth for name in (piece.first, piece.last))
+        axial = shear = np.zeros_like(x)
+        if not self._keeps_length(m):
+            axial = 1.0 / (first.E * _by_depth(first.A, last.A, depths, share))
+        if self.frame.analysis.shear == "elastic":
+            shear = 1.0 / (first.G * _by_depth(first.shear_area, last.shear_area, depths, share))
+        bending = 1.0 / (first.E * _by_depth(first.I, last.I, depths, share))
+        d0, d1 = (depth or math.nan for depth in depths)
+        return axial, bending, shear, d0 + (d1 - d0) * share
+
+    def _varying_weight(self, m: Member, part: int, x: Array) -> Array:
+        """Weight per length as stated at distances x in a piece of a stepped or tapered member."""
+        first, last = (self.frame.sections[name] for name in (m.pieces[part].first, m.pieces[part].last))
+        density = self.frame.materials[m.material].weight
+        assert first.A is not None and last.A is not None and density is not None
+        return density * _by_depth(first.A, last.A, (first.depth, last.depth), self._share(m, part, x))
+
+    def _share(self, m: Member, part: int, x: Array) -> Array:
+        """How far into the piece, from 0 to 1."""
+        before = m.pieces[part - 1].until if part else 0.0
+        return (x / self.run(m)[2] - before) / (m.pieces[part].until - before)
 
     def _pieces(self, k: int, loads: Loads, upto: float, after: bool) -> list[Piece | tuple[float, ...] | str]:
         """What happens between the `from` joint and `upto`, in order: pieces, point loads, "from" and "to" connections.
@@ -208,6 +305,7 @@ class Truth:
         length = self.run(m)[2]
         faces = (m.rigid_from, length - m.rigid_to)
         marks = sorted({0.0, length, *faces})
+        inner = [piece.until * length for piece in m.pieces[:-1]]
 
         def snap(x: float) -> float:
             return next((mark for mark in marks if abs(x - mark) <= NEAR * length), x)
@@ -215,7 +313,7 @@ class Truth:
         points = [(snap(x), *rest) for x, *rest in loads.points[k]]
         lines = [(snap(a), snap(b), *rest) for a, b, *rest in loads.lines[k]]
         upto = snap(upto)
-        cuts = sorted({*marks, *(p[0] for p in points), *(x for line in lines for x in line[:2]), upto})
+        cuts = sorted({*marks, *map(snap, inner), *(p[0] for p in points), *(x for line in lines for x in line[:2]), upto})
         happens: list[Piece | tuple[float, ...] | str] = []
         for x0, x1 in zip(cuts, [*cuts[1:], math.inf], strict=True):
             # Outside the flexible part a point load acts on the zone; at a face it acts inside the connection.
@@ -228,7 +326,8 @@ class Truth:
             if x0 >= upto:
                 return happens
             p, q = _intensity(lines, x0, x1)
-            happens.append(Piece(x0, x1, faces[0] <= x0 < faces[1], p, q))
+            part = sum(x <= (x0 + x1) / 2 for x in inner) if m.pieces else -1
+            happens.append(Piece(x0, x1, faces[0] <= x0 < faces[1], p, q, part))
         return happens
 
     def _arrive(self, k: int, loads: Loads | None, upto: float, after: bool) -> tuple[Array, dict[str, Array]]:
@@ -240,11 +339,13 @@ class Truth:
         mean, difference, misfit = loads.strain[k]
         stretch = mean * (material.alpha or 0.0)
         bend = difference * (material.alpha or 0.0) / (section.depth or 1.0) if difference else 0.0
-        flexibility = self._flexibility(m)
+        flexibility = (0.0, 0.0, 0.0) if m.pieces else self._flexibility(m)
         state = np.eye(6, 9)
         at_connection: dict[str, Array] = {}
         for event in self._pieces(k, loads, upto, after):
-            if isinstance(event, Piece):
+            if isinstance(event, Piece) and event.part >= 0:
+                state = self._advance_varying(state, event, k, loads)
+            elif isinstance(event, Piece):
                 f, strain = (flexibility, (stretch, bend)) if event.flexible else ((0.0, 0.0, 0.0), (0.0, 0.0))
                 state = _advance(state, event, f, strain)
             elif isinstance(event, str):
@@ -259,6 +360,44 @@ class Truth:
                 state[M, ONE] += couple
         return state, at_connection
 
+    def _advance_varying(self, state: Array, piece: Piece, k: int, loads: Loads) -> Array:
+        """The state at the far end of a stretch of a stepped or tapered member."""
+        m, h = self.members[k], piece.x1 - piece.x0
+        s = h * SHARE
+        one = np.zeros(9)
+        one[ONE] = 1.0
+        P, Q, R = self._load_before(m, piece, loads, np.append(s, h))
+        n = state[N] - P[:, None] * one
+        v = state[V] + Q[:, None] * one
+        moment = state[M] + np.append(s, h)[:, None] * state[V] + R[:, None] * one
+        new = state.copy()
+        new[N], new[V], new[M] = n[-1], v[-1], moment[-1]
+        new[W] = state[W] + h * state[PHI]
+        if not piece.flexible:
+            return new
+        axial, bending, shear, depth = self._varying_flexibility(m, piece.part, piece.x0 + s)
+        mean, difference, _ = loads.strain[k] * (self.frame.materials[m.material].alpha or 0.0)
+        bend = difference / depth if difference else np.zeros_like(s)
+        curvature = bending[:, None] * moment[:-1] + bend[:, None] * one
+        new[U] = state[U] + h * (WEIGHT * axial) @ n[:-1] + mean * h * one
+        new[PHI] = state[PHI] + h * WEIGHT @ curvature
+        new[W] += h * (WEIGHT * (h - s)) @ curvature - h * (WEIGHT * shear) @ v[:-1]
+        return new
+
+    def _load_before(self, m: Member, piece: Piece, loads: Loads, s: Array) -> tuple[Array, Array, Array]:
+        """Load along and across from the start of the stretch to s (n,), and the moment of the latter about s."""
+        (p, dp), (q, dq) = piece.p, piece.q
+        P, Q, R = p * s + dp * s**2 / 2, q * s + dq * s**2 / 2, q * s**2 / 2 + dq * s**3 / 6
+        if loads.weight.any():
+            cos, sin, _ = self.run(m)
+            down, right = loads.weight
+            t = s[:, None] * SHARE
+            w = self._varying_weight(m, piece.part, piece.x0 + t)
+            total, about = s * (w @ WEIGHT), s * ((w * (s[:, None] - t)) @ WEIGHT)
+            along, across = right * cos - down * sin, -right * sin - down * cos
+            P, Q, R = P + along * total, Q + across * total, R + across * about
+        return P, Q, R
+
     # -- the equations ------------------------------------------------------------------------------------------------
     def _scales(self) -> tuple[Array, Array]:
         """Size of every unknown and of every equation."""
@@ -270,10 +409,13 @@ class Truth:
         balance = np.tile([force, force, moment], len(self.joints))
         fit = np.concatenate([[length, length, 1.0, *self._connection_scale(m)] for m in self.members])
         held = np.array([self._restraint_scale(joint, axis) for joint, axis in self.columns])
-        return unknowns, np.concatenate([balance, fit, held])
+        count = len(self.columns)
+        ties = np.ones(len(self.ties))
+        unknowns = np.concatenate([unknowns[: len(unknowns) - count], force * ties, unknowns[len(unknowns) - count :]])
+        return unknowns, np.concatenate([balance, fit, length * ties, held])
 
     def _connection_scale(self, m: Member) -> list[float]:
-        return [self.unit_moment if k == FREE else 1.0 for k in (m.turn_from, m.turn_to)]
+        return [self.unit_moment if k == FREE else 1.0 for k in _turns(self.frame, m)]
 
     def _restraint_scale(self, joint: str, axis: int) -> float:
         size = 1.0 if axis == 2 else self.unit_length
@@ -290,6 +432,11 @@ class Truth:
         b[: 3 * len(self.joints)] -= loads.joint.ravel()
         for k in range(len(self.members)):
             self._member_rows(k, loads, a, b)
+        for k, (first, other, direction) in enumerate(self.ties):
+            own, toward = self.size - len(self.columns) - len(self.ties) + k, np.array(_unit(direction))
+            for joint, sign in ((first, -1.0), (other, 1.0)):
+                a[self.place[joint] : self.place[joint] + 2, own] += sign * toward
+                a[own, self.place[joint] : self.place[joint] + 2] += sign * toward
         for k, (joint, axis) in enumerate(self.columns):
             self._restraint_row(k, joint, axis, loads, a, b)
         return a, b
@@ -309,7 +456,12 @@ class Truth:
         a[own : own + 3, j1 : j1 + 3] -= turn
         a[own : own + 3, own : own + 5] = state[:3, N:ONE]
         b[own : own + 3] = -state[:3, ONE]
-        for row, end, stiffness in ((own + 3, "from", m.turn_from), (own + 4, "to", m.turn_to)):
+        if m.name in self.frame.out_members:
+            # No force of its own stretch: loads along it go to its ends as if these were held, and it takes no part.
+            a[own, j0 : j0 + 3] = a[own, j1 : j1 + 3] = 0.0
+            b[own] += self.free_elongation(k, loads) + state[U, N] * loads.pull[k]
+        turn_from, turn_to = _turns(self.frame, m)
+        for row, end, stiffness in ((own + 3, "from", turn_from), (own + 4, "to", turn_to)):
             kink = own + 3 + (end == "to")
             if stiffness == HELD:
                 a[row, kink] = 1.0
@@ -318,6 +470,17 @@ class Truth:
             a[row, own : own + 3] += moment[N : M + 1]
             a[row, kink] += 0.0 if stiffness == FREE else 1.0
             b[row] = -moment[ONE]
+
+    def free_elongation(self, k: int, loads: Loads) -> float:
+        """What temperature and misfit alone would lengthen a member by."""
+        m = self.members[k]
+        mean, _, misfit = loads.strain[k]
+        clear = self.run(m)[2] - m.rigid_from - m.rigid_to
+        return float(mean * (self.frame.materials[m.material].alpha or 0.0) * clear + misfit)
+
+    def axial_flexibility(self, k: int) -> float:
+        """Elongation of a member under a unit of axial force."""
+        return float(self._arrive(k, None, self.run(self.members[k])[2], after=True)[0][U, N])
 
     def _restraint_row(self, k: int, joint: str, axis: int, loads: Loads, a: Array, b: Array) -> None:
         direction = _support_axes(self.frame, joint)[axis]
@@ -357,7 +520,8 @@ class Truth:
         # A joint's own rotation moves nothing where every end is hinged at the joint itself, without a zone.
         joined, gripped = set(), set()
         for m in self.members:
-            ends = ((m.joint_from, m.turn_from, m.rigid_from), (m.joint_to, m.turn_to, m.rigid_to))
+            turn_from, turn_to = _turns(self.frame, m)
+            ends = ((m.joint_from, turn_from, m.rigid_from), (m.joint_to, turn_to, m.rigid_to))
             joined |= {joint for joint, _, _ in ends}
             gripped |= {joint for joint, turn, zone in ends if turn != FREE or zone > 0.0}
         return [
@@ -470,8 +634,57 @@ def _numbering(frame: Frame) -> list[tuple[str, int]]:
 
 
 def _restraints(frame: Frame, joint: str) -> tuple[float, float, float]:
+    """Along the support's own x and y, and against rotation: in the frame's state, without what is out."""
     support = next(s for s in frame.supports.values() if s.joint == joint)
-    return support.x, support.y, support.rotation
+    factor = _words(frame, "supports", joint)
+    x = FREE if (joint, "x") in frame.out_supports else support.x * factor.get("x", 1.0)
+    y = FREE if (joint, "y") in frame.out_supports else support.y * factor.get("y", 1.0)
+    return x, y, support.rotation * factor.get("rotation", 1.0)
+
+
+def _words(frame: Frame, kind: str, name: str) -> Mapping[str, float]:
+    """Factors that the frame's state of stiffness has for this thing."""
+    found: Mapping[str, float] = getattr(frame.states[frame.state], kind).get(name, {}) if frame.state else {}
+    return found
+
+
+def _turns(frame: Frame, m: Member) -> tuple[float, float]:
+    """Stiffness of the end connections in the frame's state."""
+    factor = _words(frame, "members", m.name)
+    return m.turn_from * factor.get("spring_from", 1.0), m.turn_to * factor.get("spring_to", 1.0)
+
+
+def _effective(frame: Frame, m: Member, section: str) -> Stiff:
+    """A section of a member in the frame's state: the member's own factor replaces that of its section or material, and
+    one on E alone is on G too."""
+    own, by_section, by_material = (
+        _words(frame, kind, name)
+        for kind, name in (("members", m.name), ("sections", section), ("materials", m.material))
+    )
+
+    def value(stated: float | None, key: str, other: Mapping[str, float]) -> float:
+        return math.nan if stated is None else stated * own.get(key, other.get(key, 1.0))
+
+    stated, material = frame.sections[section], frame.materials[m.material]
+    on_G = own if own.keys() & {"E", "G"} else by_material
+    return Stiff(
+        E=value(material.E, "E", by_material),
+        G=math.nan if material.G is None else material.G * on_G.get("G", on_G.get("E", 1.0)),
+        I=value(stated.I, "I", by_section),
+        A=value(stated.A, "A", by_section),
+        shear_area=value(stated.shear_area, "shear_area", by_section),
+    )
+
+
+def _by_depth(first: float, last: float, depths: tuple[float | None, ...], share: Array) -> Array:
+    """A property in between, by the power of the depth (which goes straight) that fits both ends."""
+    if first == last:
+        return np.full_like(share, first)
+    d0, d1 = depths
+    assert d0 is not None and d1 is not None
+    depth = d0 + (d1 - d0) * share
+    result: Array = first * np.exp(math.log(last / first) * np.log(depth / d0) / math.log(d1 / d0))
+    return result
 
 
 def _support_axes(frame: Frame, joint: str) -> Array:
@@ -494,6 +707,8 @@ def _nothing(frame: Frame) -> Loads:
         [[] for _ in range(members)],
         [[] for _ in range(members)],
         np.zeros((members, 3)),
+        np.zeros(2),
+        np.zeros(members),
     )
 
 
