@@ -264,3 +264,10 @@ def test_a_claim_before_its_frame_is_told_so(tmp_path: Path) -> None:
     frame, claim = put(tmp_path, PORTAL), put(tmp_path, "Member,End,M\nAB,A,1\n", "frame.claim.csv")
     said = call("verify", claim, frame)
     assert said.status == 2 and "the frame stands first, the claim second" in said.err
+
+
+def test_two_values_alone_stand_against_no_others(tmp_path: Path) -> None:
+    """A claim of one member's values has no others that would tell them for a slip."""
+    frame = put(tmp_path, ONE_CASE)
+    said = call("verify", frame, "--value", "M_AB = -12.4", "--value", "M_BA = 3.1")
+    assert said.status == 1 and "against all the others" not in said.out

@@ -111,7 +111,8 @@ def _spokesman(opinions: Opinions) -> Answer | None:
 
 
 def _told(sweep: Sweep, ranked: list[Weighed], limit: int) -> list[Suspect]:
-    """The best of the ranking without repetitions, confirmed by solving again, with their ties."""
+    """The best of the ranking without repetitions, confirmed by solving again, with their ties. What fits as many numbers
+    as there are values explains nothing."""
     kept: list[Weighed] = []
     said: set[tuple[str, tuple[str, ...], str]] = set()
     for weighed in ranked:
@@ -119,7 +120,7 @@ def _told(sweep: Sweep, ranked: list[Weighed], limit: int) -> list[Suspect]:
             break
         option = weighed.option
         key = (option.kind, option.where, option.says)
-        if key in said or not _enough(weighed):
+        if key in said or not _enough(weighed) or option.fitted >= len(sweep.seen.value):
             continue
         said.add(key)
         if option.fitted and any(_stands_for(k, option) for k in kept):

@@ -247,7 +247,13 @@ def _rows(seen: Observation) -> Iterator[Option]:
         rows = np.array([k for key in wrong for k in table[key].values()])
         where = _places(seen, rows[:1])
         says = f"only the values of {where[0]} stand against all the others"
-        yield _replaced(seen, rows, seen.said[rows], "transcription", where, says, LONE_ROW)
+        if _outnumbered(seen, rows):
+            yield _replaced(seen, rows, seen.said[rows], "transcription", where, says, LONE_ROW)
+
+
+def _outnumbered(seen: Observation, rows: Ints) -> bool:
+    """Whether there are as many other values: against none, or few, these stand for what they are."""
+    return 2 * len(rows) <= len(seen.values)
 
 
 def _swapped(
@@ -331,6 +337,8 @@ def _lone_row(
         if np.all(np.abs(seen.value[rows] - seen.value[theirs]) <= seen.meets[theirs]):
             says = f"the row of {_row_words(seen, int(rows[0]))} holds the values of {_row_words(seen, int(theirs[0]))}"
             yield _replaced(seen, rows, seen.said[rows], "transcription", _places(seen, rows), says, SWAP)
+    if not _outnumbered(seen, rows):
+        return
     says = f"only the row of {_row_words(seen, int(rows[0]))} stands against all the others"
     yield _replaced(seen, rows, seen.said[rows], "transcription", _places(seen, rows), says, LONE_ROW)
 
@@ -357,7 +365,7 @@ def _values(seen: Observation) -> Iterator[Option]:
                 seen, row, seen.value[row] * factor, "transcription", where, says, SLIP, seen.half[row] * factor
             )
         yield _replaced(seen, row, -seen.value[row], "signs", where, f"the {what} has the other sign", ONE_SIGN)
-    if len(bad) == 1:
+    if len(bad) == 1 and _outnumbered(seen, bad):
         k = int(bad[0])
         says = f"only the {seen.values[k].quantity} of {_row_words(seen, k)} stands against all the others"
         yield _replaced(seen, bad, seen.said[bad], "transcription", _places(seen, bad), says, LONE)
