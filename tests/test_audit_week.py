@@ -356,6 +356,62 @@ def test_a_rod_taken_as_slack_that_its_ends_would_stretch_is_told() -> None:
     assert found.balance.holds
 
 
+TOWER = """
+units = "kN m"
+[materials]
+m = { E = 2e8 }
+[sections]
+post = { I = 5e-5, A = 5e-3 }
+rod = { I = 1e-9, A = 4e-4 }
+[joints]
+A = [0, 0]
+B = [0, 4]
+C = [0, 8]
+D = [5, 0]
+E = [5, 4]
+F = [5, 8]
+[members]
+"A-B" = { section = "post", material = "m", hinge = "both" }
+"B-C" = { section = "post", material = "m", hinge = "both" }
+"D-E" = { section = "post", material = "m", hinge = "both" }
+"E-F" = { section = "post", material = "m", hinge = "both" }
+"B-E" = { section = "post", material = "m", hinge = "both" }
+"C-F" = { section = "post", material = "m", hinge = "both" }
+"A-E" = { section = "rod", material = "m", hinge = "both", only = "tension" }
+"D-B" = { section = "rod", material = "m", hinge = "both", only = "tension" }
+"B-F" = { section = "rod", material = "m", hinge = "both", only = "tension" }
+"E-C" = { section = "rod", material = "m", hinge = "both", only = "tension" }
+[supports]
+A = "pinned"
+D = "pinned"
+[loads]
+low = { apply = [{ joint = "B", force = 30, direction = "right" }] }
+weight = { apply = [{ joints = ["B", "E"], force = 30, direction = "down" }] }
+top = { apply = [{ joint = "C", force = 30, direction = "right" }] }
+"""
+
+
+@pytest.mark.parametrize("digits", [3, 6, None])
+@pytest.mark.parametrize("case", ["low", "weight", "top"])
+def test_rods_without_force_where_nothing_else_holds_a_storey(case: str, digits: int | None) -> None:
+    """Without the rods at rest the upper storey can sway: what matters is that some sway leaves them all slack."""
+    frame = read_frame_text(TOWER)
+    found = judged(frame, case, answered(frame, case), digits)
+    assert found.solution, (found.says, found.not_judged)
+    assert found.fit is not None
+    assert len(found.fit.frame.out_members) == {"low": 3, "weight": 4, "top": 2}[case]
+
+
+def test_two_rods_that_no_sway_leaves_slack_are_told() -> None:
+    """Posts of the upper storey made too long: with nothing in the rods both would have to be stretched."""
+    frame = read_frame_text(TOWER + 'long = { apply = [{ members = ["B-C", "E-F"], misfit = 0.01 }] }\n')
+    nil = CaseAnswer(np.zeros((10, 2, 3)), np.full((6, 3), np.nan), np.zeros((6, 3)))
+    found = judged(frame, "long", nil)
+    assert found.balance.holds
+    assert {c.member for c in found.checks if c.kind == "slack length" and not c.ok} & {"B-F", "E-C"}
+    assert judged(frame, "long", answered(frame, "long"), 5).solution
+
+
 LIFTED = """
 units = "kN m"
 [materials]

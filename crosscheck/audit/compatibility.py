@@ -20,9 +20,9 @@ from crosscheck.answer import CaseAnswer, Undetermined
 from crosscheck.audit.equilibrium import JOINT, MEMBER, couple_values
 from crosscheck.audit.fit import Fit, fit
 from crosscheck.audit.one_way import at_work
-from crosscheck.audit.slack import gaps
+from crosscheck.audit.slack import best_gaps, gaps
 from crosscheck.audit.statics import ROUND_OFF, TOGETHER_CHECK, Balance, balance
-from crosscheck.frame.model import Floats, Frame, Ints
+from crosscheck.frame.model import FREE, Bools, Floats, Frame, Ints
 
 COARSE = 0.05
 """Of the largest value of its kind: a rounding beyond this proves nothing (as for single values, CONTRACT.md)."""
@@ -99,7 +99,8 @@ def compatibility(
     done = balance(frame, name, values, half) if statics is None else statics
     if frame.analysis.order == 2:
         why = "compatibility is judged in first order only"
-        return CompatibilityFindings(name, (), 0, 0, 0.0, None, False, False, why, (why,), done, None)
+        says = "; ".join([*_wrong_ways(done), why])
+        return CompatibilityFindings(name, (), 0, 0, 0.0, None, False, False, says, (why,), done, None)
     frame, done = _at_work(frame, name, values, half, done)
     system = fit(frame, done)
     slack, open_ = _slack(system, name)
@@ -131,7 +132,10 @@ def _at_work(
 def _slack(system: Fit, name: str) -> tuple[list[CompatibilityCheck], list[str]]:
     """Whether the one-way parts that do not work are where they need not, and a word on those that nobody can tell."""
     checks, open_ = [], []
-    for gap in gaps(system, name, system.displacements):
+    found = gaps(system, name, system.displacements)
+    if any(gap.reach > gap.allowed and not gap.determined for gap in found):
+        found = best_gaps(system, found)
+    for gap in found:
         ok = gap.reach <= gap.allowed
         if not ok and not gap.determined:
             open_.append(f"whether {gap.where} is slack")
@@ -187,17 +191,35 @@ def _coarse(frame: Frame, done: Balance) -> list[str]:
     couples = couple_values(len(frame.members), len(frame.joints), len(done.completed.value) - _own(frame))
     value, half = np.abs(np.nan_to_num(done.completed.value)), done.completed.half_width
     said = []
-    for kind, which in (("moments", couples), ("forces", ~couples)):
+    asked = ~_nil_by_rule(frame, len(value))
+    for kind, which in (("moments", couples & asked), ("forces", ~couples & asked)):
         if half[which].max(initial=0.0) > COARSE * value[which].max(initial=0.0):
             said.append(f"{kind} are printed too coarsely to prove anything")
     return said
 
 
+def _nil_by_rule(frame: Frame, count: int) -> Bools:
+    """(count,) values that are nil whatever the load: moments at hinges, reactions where nothing is supported. However
+    coarsely they are printed, nothing hangs on them."""
+    t, s = frame.member_table, frame.support_table
+    ends = np.zeros((len(t.length), 2, 3), dtype=bool)
+    ends[..., 2] = (t.turn == FREE) & (t.zone == 0)
+    free = s.stiffness == FREE
+    free[:, :2] = free[:, :2].all(axis=1, keepdims=True)
+    nil = np.zeros(count, dtype=bool)
+    nil[: _own(frame)] = np.concatenate([ends.ravel(), free.ravel()])
+    return nil
+
+
+def _wrong_ways(done: Balance) -> list[str]:
+    """A sentence on every one-way part that is claimed to work the other way."""
+    return [part.says for part in done.one_way if part.wrong]
+
+
 def _conclusion(done: Balance, holds: bool | None, solution: bool, dimension: int, whole: int) -> str:
     if solution:
         return "this claim satisfies statics and compatibility, therefore it is the solution"
-    wrong = [part.says for part in done.one_way if part.wrong]
-    if wrong:
+    if wrong := _wrong_ways(done):
         return "; ".join(wrong)
     if holds is None:
         return "compatibility could not be tested by what the claim gives"
