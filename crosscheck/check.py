@@ -256,7 +256,8 @@ def _suspects(
         return (Suspect("load", (), says, 1.0),), ""
     own = envelope_suspects(opinions, closed, cases)
     as_cases, judged, over = as_governing(opinions.frame, closed, cases)
-    found = search(opinions.frame, opinions, as_cases, judged, tolerance, over=over)
+    explained = any(s.fits for s in own)
+    found = search(opinions.frame, opinions, as_cases, judged, tolerance, over=over, explained=explained)
     suspects = ranked_together(own, found.suspects) if own else found.suspects
     return suspects, "" if suspects else found.why
 

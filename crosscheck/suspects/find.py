@@ -70,11 +70,13 @@ def search(
     tolerance: Tolerance,
     limit: int = 10,
     over: Mapping[int, tuple[str, ...]] | None = None,
+    explained: bool = False,
 ) -> Findings:
     """Suspects for a claim on whose values the verdict is disagree.
 
     over: of values that are the extreme of several cases and combinations, by id, these names; such a value stands in the
-    claim under the one that governs it.
+    claim under the one that governs it. explained: whether something explains them already, so that only the commonest
+    mistakes are tried, for what explains them as well.
     """
     answer = _spokesman(opinions)
     if answer is None:
@@ -94,7 +96,7 @@ def search(
     if not (np.abs(seen.residual) > seen.allowed).any():
         return Findings((), "no value is further off than allowed")
     if over or has_week(frame):
-        sweep: Sweep = SituationsSweep(seen, closed, answer, over or {})
+        sweep: Sweep = SituationsSweep(seen, closed, answer, over or {}, explained)
     else:
         sweep = Sweep(seen, closed, prepared(frame), answer)
     ranked = sweep.singles()

@@ -47,9 +47,11 @@ class SituationsSweep(Sweep):
     pairwise = False
 
     def __init__(
-        self, seen: Observation, closed: ClosedClaim, answer: Answer, over: Mapping[int, tuple[str, ...]]
-    ) -> None:
-        """over: the names that a value is the extreme of, by the value's id."""
+        self, seen: Observation, closed: ClosedClaim, answer: Answer, over: Mapping[int, tuple[str, ...]],
+        explained: bool = False,
+    ) -> None:  # fmt: skip
+        """over: the names that a value is the extreme of, by the value's id. explained: to try few."""
+        self.explained = explained
         self.closed, self.answer, self.stand_in = closed, answer, False
         self.frame = seen.frame
         self.solved = 0
@@ -115,6 +117,8 @@ class SituationsSweep(Sweep):
         found = [self.weigh(o) for o in paste_options(self.seen)]
         found += self._solved(self._of_the_week())
         found += [] if self._over else self._other_cases()
+        if self.explained:
+            return sorted(found, key=lambda w: w.score)
         if not any(w.fits for w in found):
             # What is common to every frame costs more to try.
             found += self._solved([*whole_options(self.frame), *temperature_options(self.frame)])
