@@ -38,6 +38,8 @@ CLOSE_BY = 0.01
 """So near it may lie in any case: the way may bend sharply."""
 BESIDE = 1e-6
 """Share of a step by which a balance between two may lie outside."""
+BACK = 0.02
+"""Share of a step by which a look back tells whether the load was growing."""
 SMALL = 1e-6
 """Change by which it is tried out how answers change."""
 LEAVE = 1e-3
@@ -79,7 +81,9 @@ def gradually(prescribed: Prescribed, first: Floats) -> Greatest:
         falls = ahead[-1] < min(here[-1], 1.0)
         top = _vertex(prescribed, place, [before, here, ahead]) if falls else ahead
         if top[-1] >= 1.0:
-            whole = _whole(prescribed, place, here, top, falls)
+            # The greatest load may lie behind the last balance already: then that one is beyond it.
+            passed = falls and (top - here)[place] * (here - before)[place] < 0.0
+            whole = _whole(prescribed, place, before if passed else here, top, falls)
             if whole is not None:
                 return Greatest(whole, True)
             step, grows = step / 2, False
@@ -100,8 +104,19 @@ def _whole(prescribed: Prescribed, place: int, here: Floats, top: Floats, falls:
     answer = unchanged(prescribed(LOAD, 1.0), here + part * (top - here))
     if answer is None:
         return None
-    reached = (answer[0] - here)[place] / (top - here)[place]
-    return answer[0] if -BESIDE <= reached <= 1.0 + BESIDE else None
+    whole = answer[0]
+    reached = (whole - here)[place] / (top - here)[place]
+    return whole if -BESIDE <= reached <= 1.0 + BESIDE and _rises(prescribed, here, whole) else None
+
+
+def _rises(prescribed: Prescribed, here: Floats, whole: Floats) -> bool:
+    """Whether the load still grows on the way to a balance under the whole of it: a step may have gone past the greatest
+    load, and what lies beyond that is not what growing load leads to."""
+    way = whole - here
+    place = int(np.argmax(np.abs(way[:LOAD])))
+    back = whole - BACK * way
+    answer = unchanged(prescribed(place, float(back[place])), back)
+    return answer is not None and answer[0][LOAD] < 1.0
 
 
 def _vertex(prescribed: Prescribed, place: int, three: list[Floats]) -> Floats:
