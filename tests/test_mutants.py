@@ -12,10 +12,16 @@ import pytest
 
 from crosscheck.answer import MOMENT, WorkTable
 from crosscheck.frame.kinematics import study
+from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Frame
 from crosscheck.frame.reader import read_frame_text
-from crosscheck.opinions import slope_deflection
-from crosscheck.opinions.slope_deflection.prepared import prepared
+from crosscheck.opinions import moment_distribution, slope_deflection
+from crosscheck.opinions.library.model import Vectors
+from crosscheck.opinions.library.results import _rigid_limit
+from crosscheck.opinions.slope_deflection.balance import _trial
+from crosscheck.opinions.slope_deflection.one_way import complementary
+from crosscheck.opinions.slope_deflection.prepared import END, Places, prepared
+from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
 from tests.exact import Exact
 from tests.exact_frames import exact_frames
 
@@ -87,6 +93,8 @@ def test_the_working_of_slope_deflection_can_be_followed_by_hand(title: str) -> 
                 expected = (-inside if end else inside) if zone else ends[k, end, 2]
                 assert head == f"M {m.name} at {(m.joint_from, m.joint_to)[end]}"
                 assert got == pytest.approx(expected, abs=DIGITS * size), text
+        places = [(m.name, joint) for m in frame.members.values() for joint in (m.joint_from, m.joint_to)]
+        assert [row[:2] for row in tables["End actions"].rows] == places
         for row, got_ends in zip(tables["End actions"].rows, ends.reshape(-1, 3), strict=True):
             assert np.allclose([float(v) for v in row[2:]], got_ends, rtol=1e-9, atol=1e-9 * np.abs(ends).max())  # type: ignore[arg-type]
 
@@ -127,3 +135,108 @@ apply = [{ joint = "B", force = 1, direction = "down" }]
 """)
     found = prepared(beam).support_stiffness[1]
     assert found == pytest.approx((200e6 * 5e-3 / 4, 3 * 2e4 / 64, 2e4 / 4), rel=1e-9)
+
+
+ZONED = """
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [0, 4], C = [6, 4], D = [6, 0] }
+[members]
+"A-B" = { section = "s", material = "m", rigid_to = 0.3 }
+"B-C" = { section = "s", material = "m", rigid_from = 0.5, rigid_to = 0.25 }
+"C-D" = { section = "s", material = "m", rigid_from = 0.4 }
+[supports]
+A = "fixed"
+D = "fixed"
+[analysis]
+axial = "elastic"
+[loads.q]
+apply = [{ joint = "B", force = 1, direction = "right" }]
+"""
+
+
+def test_what_a_unit_force_does_at_the_ends_of_members_with_rigid_zones() -> None:
+    """Effects, of which suspects are made, against the exact end actions under that force as a load."""
+    frame = read_frame_text(ZONED)
+    member, end, column = (a.ravel() for a in np.meshgrid(range(3), range(2), range(3), indexing="ij"))
+    none = np.full(18, -1)
+    places = Places(np.full(18, END), column, member, end, none, np.zeros(18), none)
+    joint = list(frame.joints).index("B")
+    got = prepared(frame).effects(places).force[:, 3 * joint]
+    assert np.allclose(got.reshape(3, 2, 3), Exact(frame).cases["q"].ends, rtol=1e-9, atol=1e-10)
+
+
+@pytest.mark.parametrize(("start", "expected"), [((-5, -6), (4 / 3, 7 / 3)), ((-5, 6), (2.5, 0)), ((1, 2), (0, 0))])
+def test_forces_and_gaps_of_one_way_parts_by_pivoting(start: tuple[float, float], expected: tuple[float, float]) -> None:
+    """z >= 0 and w = q + M z >= 0, one of each pair nought, M = (2 1, 1 2): both equations solved; one; none (by hand)."""
+    matrix = np.array([[2.0, 1.0], [1.0, 2.0]])
+    found = complementary(matrix, np.array(start, dtype=float))
+    assert found is not None and found == pytest.approx(expected, abs=1e-12)
+
+
+TALL = """
+units = "kN mm"
+materials.m = { E = 200 }
+sections.s = { I = 1e14, A = 1e8 }
+joints = { A = [0, 0], B = [0, 3e6], C = [4e6, 3e6], D = [4e6, 0], E = [0, 6e6], F = [4e6, 6e6] }
+[members]
+"A-B" = { section = "s", material = "m" }
+"B-C" = { section = "s", material = "m" }
+"D-C" = { section = "s", material = "m" }
+"B-E" = { section = "s", material = "m" }
+"E-F" = { section = "s", material = "m" }
+"C-F" = { section = "s", material = "m" }
+[supports]
+A = "fixed"
+D = "pinned"
+[analysis]
+axial = "elastic"
+[loads.q]
+apply = [{ joint = "E", force = 7, direction = "right" }, { joint = "B", force = 5, direction = "right" }]
+"""
+
+
+def test_distribution_goes_on_until_sways_are_balanced_however_long_the_lengths_are_in_figures() -> None:
+    """A frame of kilometres in millimetres: unbalanced forces are measured by forces, not by moments (a million times)."""
+    frame = read_frame_text(TALL)
+    said = moment_distribution.opine(frame, study(frame))
+    expected = Exact(frame).cases["q"].ends
+    size = np.abs(expected).max(axis=(0, 1))
+    assert (np.abs(said.cases["q"].ends - expected).max(axis=(0, 1)) <= 1e-11 * size).all()  # type: ignore[union-attr]
+
+
+def test_the_error_of_the_rigid_limit_knows_no_unit_of_length() -> None:
+    """The library's axially rigid answer: couples are judged per length and rotations by it, so m and mm say the same."""
+    rng = np.random.default_rng(1)
+
+    def judged(unit: float) -> float:
+        made = []
+        for c in (1.0, 2.0, 4.0):
+            pieces, nodes = rng.normal(size=(2, 3, 2, 3))
+            made.append(Vectors(pieces * [1, 1, unit] * c, nodes[:, 0] * [unit, unit, 1], np.zeros((3, 3))))
+        return _rigid_limit(made, 5.0 * unit, 1e-3 * unit)[1]
+
+    here = judged(1.0)
+    rng = np.random.default_rng(1)
+    assert judged(1000.0) == pytest.approx(here, rel=1e-12)
+
+
+def test_the_size_by_which_axial_forces_that_are_rounding_are_measured() -> None:
+    """A cantilever pushed across at its tip has no axial force: the shear, which is the load, is what it is measured by."""
+    frame = read_frame_text("""
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [4, 0] }
+members."A-B" = { section = "s", material = "m" }
+supports.A = "fixed"
+analysis.order = 2
+[loads.q]
+apply = [{ joint = "B", force = 3, direction = "down" }]
+[loads.w]
+apply = [{ member = "A-B", uniform = 3, direction = "down" }]
+""")
+    for name, shear in (("q", 3.0), ("w", 12.0)):
+        trial = _trial(CaseInSecondOrder(frame, load_table(frame, name)), 1.0, np.zeros(1))
+        assert trial is not None and trial.size == pytest.approx(shear, rel=1e-9)
