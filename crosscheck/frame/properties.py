@@ -65,8 +65,9 @@ class Variation:
 
     start, end: distances from the `from` joint. I, A, shear_area, depth: (p, 2) at the start and the end of the piece;
     in between, depth is straight and a property v is v_start (depth/depth_start)**power with the power that fits its
-    end. NaN where not stated. weight: (p, 2) weight per length as stated at its ends, which follows the power of A's.
-    `power` columns: I, A, shear_area; 0 where the piece is prismatic.
+    end. NaN where not stated. `power` columns: I, A, shear_area; 0 where the piece is prismatic.
+    weight: (p, 2) weight per length at its ends, by the area as stated in every state, and so with weight_power (p,) of
+    its own.
     """
 
     member: Ints
@@ -78,6 +79,7 @@ class Variation:
     depth: Floats
     weight: Floats
     power: Floats
+    weight_power: Floats
 
     def at(self, rows: Ints, x: Floats) -> tuple[Floats, Floats, Floats, Floats]:
         """I, A, shear_area and depth at distances x (n,) or (n, k) in the pieces `rows` (n,)."""
@@ -223,7 +225,7 @@ def variation(frame: Frame) -> Variation:
     return Variation(
         member=table[:, 0].astype(np.int64), start=table[:, 1], end=table[:, 2],
         I=pairs[0], A=pairs[1], shear_area=pairs[2], depth=depth, weight=pairs[4],
-        power=np.column_stack([_power(pair, depth) for pair in pairs[:3]]),
+        power=np.column_stack([_power(pair, depth) for pair in pairs[:3]]), weight_power=_power(pairs[4], depth),
     )  # fmt: skip
 
 
