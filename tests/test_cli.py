@@ -271,3 +271,9 @@ def test_two_values_alone_stand_against_no_others(tmp_path: Path) -> None:
     frame = put(tmp_path, ONE_CASE)
     said = call("verify", frame, "--value", "M_AB = -12.4", "--value", "M_BA = 3.1")
     assert said.status == 1 and "against all the others" not in said.out
+
+
+def test_a_greatest_value_is_looked_for_with_a_member_missing_too() -> None:
+    """A claim of one extreme value, which no slip of its own explains: every member is taken out in turn."""
+    said = call("verify", CASES / "hall.toml", "--case", "dead", "--value", "B1-C1 max 50 kNm")
+    assert said.status == 1 and "Suspects" in said.out and not said.err

@@ -18,6 +18,7 @@ from crosscheck.answer import Answer, CaseAnswer
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.model import Floats, Frame
+from crosscheck.frame.stations import stations
 from crosscheck.opinions import slope_deflection
 from crosscheck.opinions.slope_deflection.prepared import Prepared, prepared
 from crosscheck.problems import UnusableInput
@@ -460,7 +461,7 @@ def _without_missing(seen: Observation, answer: Answer, changed: Frame, names: t
     part = Observation(
         changed, seen.names, tuple(seen.values[k] for k in keep), seen.case[keep],
         replace(moved, **{f: getattr(moved, f)[keep] for f in ("kind", "column", "member", "end", "joint", "x", "side")}),
-        seen.extreme[keep], seen.value[keep], seen.said[keep], seen.half[keep], seen.allowed[keep], seen.at,
+        seen.extreme[keep], seen.value[keep], seen.said[keep], seen.half[keep], seen.allowed[keep], stations(changed),
     )  # fmt: skip
     out = np.zeros(len(seen.value))
     out[keep] = part.read(answer, names)
