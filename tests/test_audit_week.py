@@ -347,6 +347,13 @@ def test_a_rod_that_is_claimed_to_push_is_told() -> None:
     ]  # fmt: skip
 
 
+def test_the_sense_of_one_way_parts_is_judged_in_second_order_too() -> None:
+    frame = read_frame_text(BRACED + "order = 2\n")
+    found = judged(frame, "wind", answered(without(frame), "wind"), 4)
+    assert found.says.startswith("down works in tension only and is claimed in compression; ")
+    assert not found.balance.holds
+
+
 def test_a_rod_taken_as_slack_that_its_ends_would_stretch_is_told() -> None:
     frame = read_frame_text(BRACED)
     claim = answered(without(frame, "up", "down"), "wind")
@@ -546,6 +553,34 @@ def test_a_whole_stepped_member_and_one_of_its_sections_by_a_factor() -> None:
     claim = answered(replace(frame, sections={**frame.sections, "over_pier": softer}), "crowd")
     found = {(s.kind, s.where): s for s in best(frame, "crowd", claim, None)}
     assert found["EI", "over_pier"].fitted == pytest.approx(0.6, rel=1e-9)
+
+
+def with_stiffer_member(frame: Frame, name: str, factor: float) -> Frame:
+    """One member's EI times the factor all along it, whatever its profile."""
+    member = frame.members[name]
+    used = {member.section, *(s for p in member.pieces for s in (p.first, p.last))}
+    sections = [replace(frame.sections[s], name=f"{s} of {name}", I=factor * frame.sections[s].I) for s in sorted(used)]
+    own = {section.name: section for section in sections}
+    pieces = tuple(replace(p, first=f"{p.first} of {name}", last=f"{p.last} of {name}") for p in member.pieces)
+    changed = replace(member, section=f"{member.section} of {name}", pieces=pieces)
+    return replace(frame, members={**frame.members, name: changed}, sections={**frame.sections, **own})
+
+
+@pytest.mark.parametrize("seed", SEEDS)
+def test_one_wrong_stiffness_is_located_and_sized(seed: int) -> None:
+    """The frame as stated, so that no state of stiffness names the sections that are changed here."""
+    frame = replace(week_frame(seed), combinations={}, envelopes={})
+    name = next(iter(frame.cases))
+    moment = np.abs(answered(frame, name).ends[..., 2]).max(axis=1)
+    wrong = list(frame.members)[int(np.argmax(moment))]
+    found = judged(frame, name, answered(with_stiffer_member(frame, wrong, 1.6), name))
+    assert found.balance.holds
+    own = [s for s in signatures(found).entries if (s.kind, s.where) == ("EI", wrong)] if found.dimension else []
+    if not own:
+        assert found.holds  # a member that no condition tests
+        return
+    assert own[0].share == pytest.approx(1, abs=1e-6)
+    assert own[0].fitted == pytest.approx(1.6, rel=1e-5)
 
 
 def test_gross_stiffness_in_a_cracked_state_does_not_fit() -> None:

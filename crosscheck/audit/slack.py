@@ -79,10 +79,13 @@ def best_gaps(system: Fit, found: list[Gap]) -> list[Gap]:
     table = np.column_stack([change, -np.ones(len(found))])
     cost = np.append(np.zeros(loose.shape[1]), 1.0)
     limits = [(-MOST_MOVED, MOST_MOVED)] * loose.shape[1] + [(-1.0, None)]
-    best = optimize.linprog(cost, A_ub=table, b_ub=(allowed - reach) / size, bounds=limits)
+    exact = {"primal_feasibility_tolerance": 1e-10, "dual_feasibility_tolerance": 1e-10}
+    best = optimize.linprog(cost, A_ub=table, b_ub=(allowed - reach) / size, bounds=limits, options=exact)
     if best.x is None:
         return found
-    return [replace(gap, reach=float(r)) for gap, r in zip(found, reach + size * change @ best.x[:-1], strict=True)]
+    # Where even that leaves one past its rest, no set of displacements does without.
+    reached = reach + size * change @ best.x[:-1]
+    return [replace(gap, reach=float(r), determined=True) for gap, r in zip(found, reached, strict=True)]
 
 
 def _interval(system: Fit, row: Floats, own: float) -> tuple[float, bool]:
