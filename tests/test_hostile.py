@@ -1,11 +1,12 @@
 """Files made to harm: they run no code, read no other file, and exhaust neither memory nor time.
 
-Every child process here is held to a gigabyte and to some seconds of processor time by the operating system, so that a file
+Every child process here is held to two gigabytes and to some seconds of processor time by the system, so that a file
 that does exhaust them fails the test and not the machine.
 """
 
 from __future__ import annotations
 
+import json
 import os
 import subprocess
 import sys
@@ -22,10 +23,9 @@ from tests.calls import ONE_CASE, call, put
 SECONDS, BYTES = 60, 2 << 30
 
 GUARD = """
-import os, resource, sys
+import json, os, resource, sys
 resource.setrlimit(resource.RLIMIT_CPU, ({seconds}, {seconds} + 5))
 resource.setrlimit(resource.RLIMIT_AS, ({bytes}, {bytes}))
-opened = []
 def watch(event, args):
     if event in ("os.system", "subprocess.Popen", "socket.connect", "os.exec", "os.posix_spawn", "urllib.Request"):
         print("FORBIDDEN", event, file=sys.stderr); os._exit(99)
@@ -34,20 +34,31 @@ def watch(event, args):
 from crosscheck.cli import main
 import pandas, openpyxl
 sys.addaudithook(watch)
-sys.exit(main(sys.argv[1:]))
+for argv in json.loads(sys.stdin.read()):
+    sys.stderr.write("\\x1e%d\\x1e" % main(argv))
+    sys.stdout.flush(), sys.stderr.flush()
 """
 
 
-def guarded(*argv: str | Path, secret: str = "secret") -> tuple[int, str]:
-    """Exit status and all that was printed, of a process that may neither start others nor open the secret file."""
+def guarded_each(argvs: list[list[str | Path]], secret: str = "secret") -> list[tuple[int, str]]:
+    """Exit status and all that was printed of each command, in a process that may neither start others nor open the
+    secret file."""
     code = GUARD.format(seconds=SECONDS, bytes=BYTES, secret=secret)
     got = subprocess.run(
-        [sys.executable, "-c", code, *map(str, argv)], capture_output=True, check=False, timeout=10 * SECONDS,
-        env=os.environ | {"OPENBLAS_NUM_THREADS": "1"},
+        [sys.executable, "-c", code], input=json.dumps([list(map(str, a)) for a in argvs]).encode(), check=False,
+        stdout=subprocess.PIPE, stderr=subprocess.STDOUT, timeout=10 * SECONDS,
+        env=os.environ | {"OPENBLAS_NUM_THREADS": "1", "PYTHONUNBUFFERED": "1"},
     )  # fmt: skip
-    said = (got.stdout + got.stderr).decode(errors="replace")
-    assert "Traceback" not in said and "FORBIDDEN" not in said, said[-2000:]
-    return got.returncode, said
+    said = got.stdout.decode(errors="replace")
+    assert got.returncode == 0 and "Traceback" not in said and "FORBIDDEN" not in said, said[-2000:]
+    parts = said.split("\x1e")
+    assert len(parts) == 2 * len(argvs) + 1, said[-2000:]
+    return [(int(status), text) for text, status in zip(parts[:-1:2], parts[1::2], strict=True)]
+
+
+def guarded(*argv: str | Path, secret: str = "secret") -> tuple[int, str]:
+    """The same of one command."""
+    return guarded_each([list(argv)], secret)[0]
 
 
 pytestmark = pytest.mark.skipif(os.name == "nt", reason="limits are set by the resource module")
@@ -235,20 +246,24 @@ def test_claims_have_a_greatest_size(monkeypatch: pytest.MonkeyPatch, tmp_path: 
 TABLED = ONE_CASE.replace("[joints]\n", '[tables]\njoints = "{name}"\n[joints]\n')
 
 
-@pytest.mark.parametrize(
-    "name",
-    ["../secret.csv", "/etc/passwd", "..\\\\secret.csv", "C:/secret.csv", "sub/../../secret.csv", "//server/secret.csv",
-     "~/secret.csv", "$HOME/secret.csv", "file:///etc/passwd", "secret.csv\\u0000.csv", "http://localhost/secret.csv"],
+NAMES = (
+    "../secret.csv", "/etc/passwd", "..\\\\secret.csv", "C:/secret.csv", "sub/../../secret.csv", "//server/secret.csv",
+    "~/secret.csv", "$HOME/secret.csv", "file:///etc/passwd", "secret.csv\\u0000.csv", "http://localhost/secret.csv",
 )  # fmt: skip
+
+
 @pytest.mark.parametrize("key", ["tables", "include"])
-def test_named_files_are_plain_names(key: str, name: str, tmp_path: Path) -> None:
+def test_named_files_are_plain_names(key: str, tmp_path: Path) -> None:
     """A table lies in the frame's folder or below it. An include may lie above, but is named .toml, from the folder."""
     folder = tmp_path / "set"
     folder.mkdir()
     put(tmp_path, "name,x,y\nX,1,1\n", "secret.csv")
-    text = TABLED.replace("{name}", name) if key == "tables" else f'include = ["{name}"]\n' + ONE_CASE
-    status, said = guarded("opinions", put(folder, text), "-q", secret=str(tmp_path / "secret.csv"))
-    assert status == 2 and said.count("crosscheck:") >= 1, said
+    argvs: list[list[str | Path]] = []
+    for k, name in enumerate(NAMES):
+        text = TABLED.replace("{name}", name) if key == "tables" else f'include = ["{name}"]\n' + ONE_CASE
+        argvs.append(["opinions", put(folder, text, f"frame{k}.toml"), "-q"])
+    for name, (status, said) in zip(NAMES, guarded_each(argvs, secret=str(tmp_path / "secret.csv")), strict=True):
+        assert status == 2 and said.count("crosscheck:") >= 1, (name, said)
 
 
 @pytest.mark.parametrize("kind", ["tables", "include"])

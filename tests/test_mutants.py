@@ -206,20 +206,15 @@ def test_distribution_goes_on_until_sways_are_balanced_however_long_the_lengths_
     assert (np.abs(said.cases["q"].ends - expected).max(axis=(0, 1)) <= 1e-11 * size).all()  # type: ignore[union-attr]
 
 
-def test_the_error_of_the_rigid_limit_knows_no_unit_of_length() -> None:
-    """The library's axially rigid answer: couples are judged per length and rotations by it, so m and mm say the same."""
-    rng = np.random.default_rng(1)
-
-    def judged(unit: float) -> float:
-        made = []
-        for c in (1.0, 2.0, 4.0):
-            pieces, nodes = rng.normal(size=(2, 3, 2, 3))
-            made.append(Vectors(pieces * [1, 1, unit] * c, nodes[:, 0] * [unit, unit, 1], np.zeros((3, 3))))
-        return _rigid_limit(made, 5.0 * unit, 1e-3 * unit)[1]
-
-    here = judged(1.0)
-    rng = np.random.default_rng(1)
-    assert judged(1000.0) == pytest.approx(here, rel=1e-12)
+@pytest.mark.parametrize("length", [2.0, 5000.0])
+def test_the_error_of_the_rigid_limit_counts_couples_per_length(length: float) -> None:
+    """A force 1 that stays, a couple of 0, 0, k at c, 2c, 4c: its limit 8k/3 lies 2k/3 off that of one term (by hand)."""
+    couple = 1e-3
+    nodes = np.zeros((1, 3))
+    made = [Vectors(np.array([[[1.0, 0.0, m], [0.0] * 3]]), nodes, nodes) for m in (0.0, 0.0, couple)]
+    limit, error = _rigid_limit(made, length, 1e-3)
+    assert limit.pieces[0, 0] == pytest.approx((1.0, 0.0, 8 * couple / 3), rel=1e-12)
+    assert error == pytest.approx(2 * couple / 3 / length, rel=1e-9)
 
 
 def test_the_size_by_which_axial_forces_that_are_rounding_are_measured() -> None:
@@ -235,8 +230,8 @@ analysis.order = 2
 [loads.q]
 apply = [{ joint = "B", force = 3, direction = "down" }]
 [loads.w]
-apply = [{ member = "A-B", uniform = 3, direction = "down" }]
+apply = [{ member = "A-B", force = 5, at = 1, direction = "down" }]
 """)
-    for name, shear in (("q", 3.0), ("w", 12.0)):
+    for name, shear in (("q", 3.0), ("w", 5.0)):
         trial = _trial(CaseInSecondOrder(frame, load_table(frame, name)), 1.0, np.zeros(1))
         assert trial is not None and trial.size == pytest.approx(shear, rel=1e-9)
