@@ -349,7 +349,8 @@ def test_a_rod_that_is_claimed_to_push_is_told() -> None:
 
 def test_the_sense_of_one_way_parts_is_judged_in_second_order_too() -> None:
     frame = read_frame_text(BRACED + "order = 2\n")
-    found = judged(frame, "wind", answered(without(frame), "wind"), 4)
+    claim = answered(without(read_frame_text(BRACED)), "wind")
+    found = judged(frame, "wind", claim, 4)
     assert found.says.startswith("down works in tension only and is claimed in compression; ")
     assert not found.balance.holds
 
