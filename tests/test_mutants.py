@@ -208,7 +208,7 @@ def test_distribution_goes_on_until_sways_are_balanced_however_long_the_lengths_
 
 @pytest.mark.parametrize("length", [2.0, 5000.0])
 def test_the_error_of_the_rigid_limit_counts_couples_per_length(length: float) -> None:
-    """A force 1 that stays, a couple of 0, 0, k at c, 2c, 4c: its limit 8k/3 lies 2k/3 off that of one term (by hand)."""
+    """A force 1 that stays, a couple of 0, 0, k at c, 2c, 4c: the limit 8k/3 lies 2k/3 off that of one term (by hand)."""
     couple = 1e-3
     nodes = np.zeros((1, 3))
     made = [Vectors(np.array([[[1.0, 0.0, m], [0.0] * 3]]), nodes, nodes) for m in (0.0, 0.0, couple)]
