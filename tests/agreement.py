@@ -6,7 +6,7 @@ crosscheck.compare.tolerance), the largest over every case and combination, kind
 
 from __future__ import annotations
 
-from collections.abc import Callable, Collection, Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -84,13 +84,11 @@ def must_speak(heard: Heard) -> bool:
     return not bars & heard.features
 
 
-def apart(
-    frame: Frame, one: Given, other: Given, partial: bool = False, kinds: Collection[str] = COLUMNS
-) -> tuple[float, str]:
+def apart(frame: Frame, one: Given, other: Given, partial: bool = False) -> tuple[float, str]:
     """The largest difference as a share of its scale, and where; infinite where one gives what the other does not.
 
     partial: cases for which `other` does not speak, and values along members that it leaves out (the library has them
-    at its own joints only), are passed over. kinds: which of COLUMNS to look at.
+    at its own joints only), are passed over.
     """
     worst, where = 0.0, ""
     for name in frame.names:
@@ -99,8 +97,7 @@ def apart(
         pairs = _pairs(frame, name, one, other)
         cases = [one.cases[name], other.cases[name]]
         scales = case_scales(frame, load_table(frame, name), cases, [s[:, ACROSS] for s in pairs["spans"]])
-        for kind in kinds:
-            left, right = pairs[kind]
+        for kind, (left, right) in pairs.items():
             share, index = _largest(left, right, COLUMNS[kind], scales, partial and kind == "spans")
             if share > worst:
                 worst, where = share, f"{name} {kind} {index} {left[index]!r} against {right[index]!r}"
