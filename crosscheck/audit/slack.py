@@ -79,8 +79,9 @@ def best_gaps(system: Fit, found: list[Gap]) -> list[Gap]:
     table = np.column_stack([change, -np.ones(len(found))])
     cost = np.append(np.zeros(loose.shape[1]), 1.0)
     limits = [(-MOST_MOVED, MOST_MOVED)] * loose.shape[1] + [(-1.0, None)]
-    exact = {"primal_feasibility_tolerance": 1e-10, "dual_feasibility_tolerance": 1e-10}
-    best = optimize.linprog(cost, A_ub=table, b_ub=(allowed - reach) / size, bounds=limits, options=exact)
+    best = optimize.linprog(
+        cost, A_ub=table, b_ub=(allowed - reach) / size, bounds=limits, options={"primal_feasibility_tolerance": 1e-10}
+    )
     if best.x is None:
         return found
     # Where even that leaves one past its rest, no set of displacements does without.
