@@ -248,6 +248,17 @@ def compare_printouts(
 def _suspects(
     opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], tolerance: Tolerance
 ) -> tuple[tuple[Suspect, ...], str]:
+    """What would explain the difference, or why nothing is named. A search that fails inside says so: the verdict, which
+    does not hang on it, must not be lost to it."""
+    try:
+        return _searched(opinions, closed, cases, tolerance)
+    except Exception as error:  # noqa: BLE001 - as for an opinion that fails inside
+        return (), f"the search for suspects failed inside ({type(error).__name__}: {error}); please report this"
+
+
+def _searched(
+    opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], tolerance: Tolerance
+) -> tuple[tuple[Suspect, ...], str]:
     from crosscheck.suspects import Suspect, search
     from crosscheck.suspects.enveloped import as_governing, envelope_suspects, ranked_together
 

@@ -879,3 +879,22 @@ def test_the_process_itself(portal: Path, tmp_path: Path) -> None:
         )
         assert done.returncode == status
         assert b"\x1b" not in done.stdout + done.stderr and b"Traceback" not in done.stderr
+
+
+def test_a_search_for_suspects_that_fails_inside_costs_no_verdict(
+    portal: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def fails(*_: Any, **__: Any) -> Any:
+        raise ZeroDivisionError("planted")
+
+    monkeypatch.setattr("crosscheck.suspects.search", fails)
+    wrong = dead().replace("1", "7", 40)
+    done = call("verify", portal, "-", "--case", "dead", stdin=wrong.encode())
+    assert done.status == 1 and "Traceback" not in done.err
+    assert "the search for suspects failed inside (ZeroDivisionError: planted)" in " ".join(done.out.split())
+
+
+def test_a_sheet_of_a_text_is_refused(portal: Path, tmp_path: Path) -> None:
+    claim = put(tmp_path, dead(), "claim.txt")
+    done = call("verify", portal, claim, "--sheet", "Results")
+    assert done.status == 2 and "--sheet goes with a spreadsheet file" in done.err

@@ -84,6 +84,8 @@ def read_source(path_or_dash: str | Path, sheet: str | None = None) -> tuple[str
     digest = hashlib.sha256(data).hexdigest()
     if Path(file).suffix.lower() in SPREADSHEETS:
         return file, digest, _spreadsheet(Path(file), sheet)
+    if sheet is not None:
+        refuse(file, "--sheet goes with a spreadsheet file, and this is text", "leave --sheet out")
     return file, digest, decode(data, file)
 
 
