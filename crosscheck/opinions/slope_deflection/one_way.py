@@ -140,6 +140,8 @@ class OneWay:
         """(parts, parts): force of each per unit gap of each, all parts in place."""
         blank = load_table_of_nothing(self.frame)
         tables = [_imposed(blank, part) for part in self.parts]
+        if not tables:
+            return np.zeros((0, 0))
         solution = self.whole.solve(tables)
         columns = [self._forces(solution, k) for k in range(len(tables))]
         matrix = np.stack(columns, axis=1)
