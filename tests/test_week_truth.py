@@ -229,7 +229,8 @@ def values(answer: Answer, frame: Frame, parts: int) -> np.ndarray[tuple[int], n
 def test_members_that_vary_are_what_many_prismatic_members_come_to(opinion: object) -> None:
     """The error of prismatic members falls with the square of their number: a quarter for twice as many, and what it falls
     towards (Richardson 1911) is the answer for the tapered and stepped members themselves."""
-    whole = portal(WHOLE, {"AB": '["A-B"]', "BC": '["B-C"]'}, '{ member = "B-C", force = 40, at = "60%", direction = "down" }')
+    lone = '{ member = "B-C", force = 40, at = "60%", direction = "down" }'
+    whole = portal(WHOLE, {"AB": '["A-B"]', "BC": '["B-C"]'}, lone)
     frames = {1: whole, **{parts: divided(parts) for parts in (50, 100, 200)}}
     found = {}
     for parts, frame in frames.items():
