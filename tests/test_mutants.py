@@ -6,11 +6,17 @@ Named after what they hold; checked against the exact solutions of tests/exact.p
 from __future__ import annotations
 
 import re
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
 
-from crosscheck.answer import MOMENT, WorkTable
+from crosscheck.answer import MOMENT, CaseAnswer, WorkTable
+from crosscheck.audit.bound import ForceBound, hypercircle
+from crosscheck.audit.compatibility import compatibility
+from crosscheck.audit.equilibrium import Pieces, zone_moment
+from crosscheck.audit.statics import storeys
+from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Frame
@@ -235,3 +241,52 @@ apply = [{ member = "A-B", force = 5, at = 1, direction = "down" }]
     for name, shear in (("q", 3.0), ("w", 5.0)):
         trial = _trial(CaseInSecondOrder(frame, load_table(frame, name)), 1.0, np.zeros(1))
         assert trial is not None and trial.size == pytest.approx(shear, rel=1e-9)
+
+
+# --- the audit
+
+
+def test_a_taper_is_cut_in_equal_ratios_of_its_depth() -> None:
+    """From 0.2 to 1.0 over 3 m, beginning 1 m along the member: four cuts, for 1.5^3 < 5 < 1.5^4 (by hand)."""
+    variation = SimpleNamespace(depth=np.array([[0.2, 1.0]]), start=np.array([1.0]), end=np.array([4.0]))
+    marks = _depth_marks(SimpleNamespace(variation=variation), 0, 1.0, 4.0)  # type: ignore[arg-type]
+    depth = 0.2 + 0.8 * (np.concatenate([[1.0], marks, [4.0]]) - 1.0) / 3.0
+    assert len(marks) == 3 and depth[1:] / depth[:-1] == pytest.approx([5**0.25] * 4) and CHANGE >= 5**0.25
+
+
+def test_heights_that_hardly_differ_are_one_level() -> None:
+    """5 mm on 10 m are less than a thousandth of the frame's height: one storey, told from the feet to the lower top."""
+    frame = read_frame_text(ZONED.replace("B = [0, 4], C = [6, 4]", "B = [0, 10], C = [6, 10.005]"))
+    assert [(where, above.tolist()) for where, above in storeys(frame)] == [("y = 0 to 10", [False, True, True, False])]
+
+
+@pytest.mark.parametrize(("at_end", "expected"), [(0, -2 * 0.2 - 7), (1, -3 * 0.15 + 9)])
+def test_what_loads_on_a_rigid_zone_put_on_its_face(at_end: int, expected: float) -> None:
+    """Force times its distance from the face, and couples as they are: what stands beyond the face does not count."""
+    point = np.array([
+        [0.3, 0, -2, 0, 0], [0.4, 0, 0, -7, 0], [3, 0, -5, 4, 0], [5.9, 0, -3, 0, 0], [5.95, 0, 0, -9, 0],
+    ])  # fmt: skip
+    found = zone_moment(Pieces(point, np.zeros((0, 7))), np.array([6.0]), np.array([(0.5, 0.25)[at_end]]), at_end)
+    assert found == pytest.approx([expected], rel=1e-12)
+
+
+def test_what_a_claim_lacks_is_told_by_quantity() -> None:
+    """Axial forces alone of a portal fixed at both feet: three redundants leave shears, moments and reactions open."""
+    frame = read_frame_text(ZONED)
+    ends = Exact(frame).cases["q"].ends
+    axial = np.where(np.arange(3) == 0, ends, np.nan)
+    none = np.full((4, 3), np.nan)
+    said = compatibility(frame, "q", CaseAnswer(axial, none, none)).not_judged
+    lacking = [s.split(" of ")[1].split(" are ")[0] for s in said if "neither given" in s]
+    shear = np.where(np.arange(3) == 1, np.nan, ends)
+    assert "end moment" in lacking and "axial force" not in lacking
+    assert not any("neither" in s for s in compatibility(frame, "q", CaseAnswer(shear, none, none)).not_judged)
+
+
+@pytest.mark.parametrize("force", [1.0, 1e-9])
+def test_the_bound_on_right_results_is_rounding_however_small_the_load(force: float) -> None:
+    frame = read_frame_text(ZONED.replace("force = 1,", f"force = {force},"))
+    exact = Exact(frame).cases["q"]
+    values = CaseAnswer(exact.ends, exact.joints, exact.reactions)
+    bound = hypercircle(frame, compatibility(frame, "q", values), values)
+    assert isinstance(bound, ForceBound) and bound.energy < 1e-9 * bound.size
