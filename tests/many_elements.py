@@ -4,7 +4,10 @@ Every flexible part is cut at its loads and between them, into `parts` elements 
 first order (with shear strain, J. S. Przemieniecki, "Theory of Matrix Structural Analysis", 1968, sections 5.6 and 15.2)
 and the consistent geometric matrix of its own, varying axial force. All unknowns are in one dense matrix; nothing is
 condensed. The axial forces are put in again until they stay. Its error falls with the fourth power of the elements'
-length, with shear strain with the second (the strain is constant in an element).
+length, with shear strain the second (the strain is constant in an element).
+
+Stepped and tapered members are cut at their pieces too, and their elements integrate the varying stiffness with the same
+cubic: still the fourth power. Ties are held like supports. One-way parts are not for this: the frame is taken as it is.
 
 Unknowns: dx, dy and counter-clockwise turn of every joint; for every member the turns of the faces behind hinges and
 springs, and y and turn (local) of the places within.
@@ -17,6 +20,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from scipy.linalg import eigh
 
+from crosscheck.frame.kinematics import tied
 from crosscheck.frame.loads import LoadTable, load_table
 from crosscheck.frame.model import HELD, Floats, Frame
 
@@ -56,6 +60,7 @@ class ManyElements:
         marks = np.concatenate([
             [low, high], loads.point_at[loads.point_member == k],
             loads.line_start[loads.line_member == k], loads.line_end[loads.line_member == k],
+            self.frame.variation.end[self.frame.variation.member == k],
         ])  # fmt: skip
         marks = np.sort(marks[(marks >= low) & (marks <= high)])
         marks = marks[np.append(True, np.diff(marks) > 1e-7 * t.length[k])]
@@ -100,6 +105,9 @@ class ManyElements:
         elastic = self.frame.analysis.shear == "elastic"
         for i, h in enumerate(np.diff(x)):
             at = slice(2 * i, 2 * i + 4)
+            if t.varying[k]:
+                line.stiffness[at, at] += self._varying_element(k, float(x[i]), h)
+                continue
             phi = 12 * EI / (t.G[k] * t.shear_area[k] * h * h) if elastic else 0.0
             line.stiffness[at, at] += EI / (h**3 * (1 + phi)) * np.array([
                 [12, 6 * h, -12, 6 * h], [6 * h, (4 + phi) * h * h, -6 * h, (2 - phi) * h * h],
@@ -108,10 +116,41 @@ class ManyElements:
         self._line_loads(k, line)
         return line
 
-    def _shapes(self, k: int, h: float) -> tuple[Floats, Floats]:
-        """(4, g) displacement and its slope at Gauss's points of an element."""
-        t, z = self.t, GAUSS
-        phi = 12 * t.E[k] * t.I[k] / (t.G[k] * t.shear_area[k] * h * h) if self.frame.analysis.shear == "elastic" else 0
+    def _sections(self, k: int, x: Floats) -> tuple[Floats, Floats, Floats, Floats]:
+        """E I, G times shear area, E A and depth at places x (n,) of one element of a member."""
+        t, v = self.t, self.frame.variation
+        if t.varying[k]:
+            rows = np.flatnonzero(v.member == k)
+            row = rows[int(np.searchsorted(v.end[rows], x.mean()))]
+            I, A, shear_area, depth = (of[0] for of in v.at(np.array([row]), x[None]))  # noqa: E741
+        else:
+            I, A, shear_area, depth = (np.full_like(x, of[k]) for of in (t.I, t.A, t.shear_area, t.depth))  # noqa: E741
+        return t.E[k] * I, t.G[k] * shear_area, t.E[k] * A, depth
+
+    def _phi(self, k: int, a: float, h: float) -> float:
+        """Shear to bending stiffness of the element from a to a + h, by the section at its middle."""
+        if self.frame.analysis.shear != "elastic":
+            return 0.0
+        EI, GA, _, _ = self._sections(k, np.array([a + h / 2]))
+        return float(12 * EI[0] / (GA[0] * h * h))
+
+    def _curvature(self, phi: float, h: float) -> Floats:
+        """(4, g) curvature at Gauss's points of an element."""
+        z = GAUSS
+        return np.array([-6 + 12 * z, h * (6 * z - 4 - phi), 6 - 12 * z, h * (6 * z - 2 + phi)]) / (h * h * (1 + phi))
+
+    def _varying_element(self, k: int, a: float, h: float) -> Floats:
+        phi, (EI, GA, _, _) = self._phi(k, a, h), self._sections(k, a + GAUSS * h)
+        bent = self._curvature(phi, h)
+        matrix = (bent * EI * SHARE * h) @ bent.T
+        if phi:
+            sheared = phi / (2 * (1 + phi)) * np.array([2 / h, 1.0, -2 / h, 1.0])
+            matrix += GA @ SHARE * h * np.outer(sheared, sheared)
+        return np.asarray(matrix)
+
+    def _shapes(self, k: int, a: float, h: float) -> tuple[Floats, Floats]:
+        """(4, g) displacement and its slope at Gauss's points of the element from a to a + h."""
+        z, phi = GAUSS, self._phi(k, a, h)
         y = [
             1 + phi - phi * z - 3 * z**2 + 2 * z**3, h * ((1 + phi / 2) * z - (2 + phi / 2) * z**2 + z**3),
             phi * z + 3 * z**2 - 2 * z**3, h * (-phi / 2 * z + (phi / 2 - 1) * z**2 + z**3),
@@ -127,13 +166,18 @@ class ManyElements:
         for i, h in enumerate(np.diff(x)):
             at = x[i] + GAUSS * h
             push = _intensity(loads, k, at, loads.line_across) * SHARE * h
-            line.load[2 * i : 2 * i + 4] += self._shapes(k, h)[0] @ push
+            line.load[2 * i : 2 * i + 4] += self._shapes(k, float(x[i]), h)[0] @ push
         for p in np.flatnonzero(loads.point_member == k):
             i = int(np.argmin(np.abs(x - loads.point_at[p])))
             if abs(x[i] - loads.point_at[p]) < 1e-6 * self.t.length[k]:
                 line.load[2 * i] += loads.point_across[p]
                 line.load[2 * i + 1] -= loads.point_couple[p]
-        if loads.difference[k]:
+        if loads.difference[k] and self.t.varying[k]:
+            for i, h in enumerate(np.diff(x)):
+                EI, _, _, depth = self._sections(k, x[i] + GAUSS * h)
+                bend = EI * self.t.alpha[k] * loads.difference[k] / depth * SHARE * h
+                line.load[2 * i : 2 * i + 4] += self._curvature(self._phi(k, float(x[i]), h), h) @ bend
+        elif loads.difference[k]:
             bend = self.t.E[k] * self.t.I[k] * self.t.alpha[k] * loads.difference[k] / self.t.depth[k]
             line.load[1] -= bend
             line.load[-1] += bend
@@ -159,7 +203,7 @@ class ManyElements:
     # --- the whole ---------------------------------------------------------------------------------
 
     def _assemble(self) -> None:
-        frame, t, loads = self.frame, self.t, self.loads
+        t, loads = self.t, self.loads
         self.matrix, self.right = np.zeros((self.count, self.count)), np.zeros(self.count)
         for k, line in enumerate(self.lines):
             self.matrix += line.maps.T @ line.stiffness @ line.maps
@@ -175,19 +219,18 @@ class ManyElements:
             self.right += self.along[k] * self._joint_rows(k, 1)[0]
         self._supports()
         self.longer = np.array([self._longer(k) for k in range(len(t.length))])
-        rigid = frame.analysis.axial == "rigid"
-        self.spring = np.zeros(len(t.length)) if rigid else t.E * t.A / t.clear
+        self.spring = np.array([0.0 if t.rigid[k] else 1.0 / self._axial(k) for k in range(len(t.length))])
+        rigid = self.stretch[t.rigid]
         self.matrix += self.stretch.T @ (self.spring[:, None] * self.stretch)
         self.right += self.stretch.T @ (self.spring * self.longer)
         held = np.array(self.held).reshape(-1, self.count)
         loose = [np.eye(self.count)[i] for i in np.flatnonzero(np.abs(self.matrix).sum(axis=0) == 0)]
         # Turns and places that nothing uses, faces without a connection among them.
-        loose = [r for r in loose if not np.any(held @ r) and not (rigid and np.any(self.stretch @ r))]
+        loose = [r for r in loose if not np.any(held @ r) and not np.any(rigid @ r)]
         self.fixed = np.vstack([held, *[r[None] for r in loose]])
         self.fixed_value = np.append(np.array(self.held_value), np.zeros(len(loose)))
-        if rigid:
-            self.fixed = np.vstack([self.fixed, self.stretch])
-            self.fixed_value = np.append(self.fixed_value, self.longer)
+        self.fixed = np.vstack([self.fixed, rigid])
+        self.fixed_value = np.append(self.fixed_value, self.longer[t.rigid])
         _, values, right = np.linalg.svd(self.fixed)
         rank = int(np.sum(values > 1e-9 * values[0]))
         self.free = right[rank:].T
@@ -207,6 +250,17 @@ class ManyElements:
                 elif stiffness:
                     self.matrix += stiffness * np.outer(row, row)
                     self.right += stiffness * moved * row
+        for row in tied(self.frame).toarray():
+            self.held.append(np.append(row, np.zeros(self.count - len(row))))
+            self.held_value.append(0.0)
+
+    def _axial(self, k: int) -> float:
+        """Elongation under a unit of axial force."""
+        t, x = self.t, self.lines[k].x
+        if not t.varying[k]:
+            return float(t.clear[k] / (t.E[k] * t.A[k]))
+        parts = zip(x[:-1], np.diff(x), strict=True)
+        return float(sum((SHARE / self._sections(k, a + GAUSS * h)[2]).sum() * h for a, h in parts))
 
     def _longer(self, k: int) -> float:
         """Lengthening without axial force at the `from` end."""
@@ -214,9 +268,10 @@ class ManyElements:
         longer = float(loads.misfit[k])
         if loads.mean[k]:
             longer += t.alpha[k] * loads.mean[k] * t.clear[k]
-        if self.frame.analysis.axial == "elastic":
+        if not t.rigid[k]:
             for a, b in zip(self.lines[k].x[:-1], self.lines[k].x[1:], strict=True):
-                longer -= float(_along(loads, k, a + GAUSS * (b - a)) @ SHARE) * (b - a) / (t.E[k] * t.A[k])
+                at = a + GAUSS * (b - a)
+                longer -= float(_along(loads, k, at) / self._sections(k, at)[2] @ SHARE) * (b - a)
         return longer
 
     def geometric(self, axial: Floats, scale: float) -> Floats:
@@ -228,7 +283,7 @@ class ManyElements:
         line = self.lines[k]
         own = np.zeros_like(line.stiffness)
         for i, h in enumerate(np.diff(line.x)):
-            slope = self._shapes(k, h)[1]
+            slope = self._shapes(k, float(line.x[i]), h)[1]
             pull = (axial - scale * _along(self.loads, k, line.x[i] + GAUSS * h)) * SHARE * h
             own[2 * i : 2 * i + 4, 2 * i : 2 * i + 4] += (slope * pull) @ slope.T
         matrix = line.maps.T @ own @ line.maps
@@ -251,10 +306,10 @@ class ManyElements:
         z, matrix = self.free, self.matrix + self.geometric(axial, scale)
         moved = self.particular + z @ np.linalg.solve(z.T @ matrix @ z, z.T @ (self.right - matrix @ self.particular))
         pull = self.spring * (self.stretch @ moved - self.longer)
-        if self.frame.analysis.axial == "rigid":
+        if self.t.rigid.any():
             left = self.right - matrix @ moved
             forces = np.linalg.lstsq(self.fixed.T, left, rcond=1e-10)[0]
-            pull = forces[-len(axial) :]
+            pull[self.t.rigid] = forces[len(forces) - np.count_nonzero(self.t.rigid) :]
         return moved, pull
 
     def settle(self, most: int = 200) -> ManyElements:
