@@ -13,7 +13,7 @@ import pytest
 
 from crosscheck.answer import MOMENT, CaseAnswer, WorkTable
 from crosscheck.audit.bound import ForceBound, hypercircle
-from crosscheck.audit.compatibility import compatibility
+from crosscheck.audit.compatibility import _own_axes, compatibility
 from crosscheck.audit.equilibrium import Pieces, zone_moment
 from crosscheck.audit.statics import storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
@@ -255,9 +255,13 @@ def test_a_taper_is_cut_in_equal_ratios_of_its_depth() -> None:
 
 
 def test_heights_that_hardly_differ_are_one_level() -> None:
-    """5 mm on 10 m are less than a thousandth of the frame's height: one storey, told from the feet to the lower top."""
-    frame = read_frame_text(ZONED.replace("B = [0, 4], C = [6, 4]", "B = [0, 10], C = [6, 10.005]"))
-    assert [(where, above.tolist()) for where, above in storeys(frame)] == [("y = 0 to 10", [False, True, True, False])]
+    """A column 5 mm lower than two others of 10 m, less than a thousandth of the frame's height: no storey between."""
+    text = ZONED.replace("B = [0, 4], C = [6, 4]", "B = [0, 10.005], C = [6, 10.005], E = [12, 10], F = [12, 0]")
+    for member in ("C-E", "E-F"):
+        text = text.replace("[supports]", f'"{member}" = {{ section = "s", material = "m" }}\n[supports]')
+    frame = read_frame_text(text.replace("[supports]", '[supports]\nF = "fixed"'))
+    found = [(where, above.tolist()) for where, above in storeys(frame)]
+    assert found == [("y = 0 to 10", [False, True, True, True, False, False])]
 
 
 @pytest.mark.parametrize(("at_end", "expected"), [(0, -2 * 0.2 - 7), (1, -3 * 0.15 + 9)])
@@ -290,3 +294,22 @@ def test_the_bound_on_right_results_is_rounding_however_small_the_load(force: fl
     values = CaseAnswer(exact.ends, exact.joints, exact.reactions)
     bound = hypercircle(frame, compatibility(frame, "q", values), values)
     assert isinstance(bound, ForceBound) and bound.energy < 1e-9 * bound.size
+
+
+def test_a_spring_that_gives_too_much_in_the_claimed_displacements_is_named() -> None:
+    """Results of a spring a third as stiff: told by joint and direction, with what the stated one would give, a third."""
+    springy = ZONED.replace('D = "fixed"', 'D = { x = "held", y = 3000, rotation = "held" }')
+    softer = Exact(read_frame_text(springy.replace("3000", "1000"))).cases["q"]
+    claim = CaseAnswer(softer.ends, softer.joints, softer.reactions)
+    wrong = [c for c in compatibility(read_frame_text(springy), "q", claim).displaced if not c.ok]
+    assert [(c.kind, c.where, c.direction) for c in wrong] == [("support", "D", "y")]
+    assert wrong[0].rotation == pytest.approx(softer.joints[3, 1] / 3, rel=1e-9)
+
+
+@pytest.mark.parametrize(("spread", "sign"), [(False, -1), (True, 1)])
+def test_displacements_along_a_support_turned_by_thirty_degrees(spread: bool, sign: int) -> None:
+    """(3, -2) or roundings (3, 2) along axes turned counter-clockwise; of roundings, the most that they may add up to."""
+    table, cos = SimpleNamespace(cos=np.array([np.sqrt(0.75)]), sin=np.array([0.5])), np.sqrt(0.75)
+    system = SimpleNamespace(frame=SimpleNamespace(support_table=table))
+    got = _own_axes(system, np.array([[3.0, 2.0 * sign, 5.0]]), spread)  # type: ignore[arg-type]
+    assert got[0] == pytest.approx([3 * cos + sign, sign * (1.5 + 2 * cos), 5], rel=1e-12)

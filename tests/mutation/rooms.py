@@ -57,7 +57,7 @@ ROOMS = {
         {
             **dict.fromkeys(("second_order", "bent_spans", "displaced", "displaced_working", "critical", "stretches"),
                             SECOND_ORDER),
-            **dict.fromkeys(("gradual", "one_way", "varying"), OTHER_WEEK),
+            **dict.fromkeys(("gradual", "one_way", "varying", "members", "spans", "pieces"), OTHER_WEEK),
             "*": ("tests/test_exact.py", "tests/test_moment_distribution.py", "tests/test_mutants.py"),
         },
         "moment-distribution",
@@ -69,7 +69,7 @@ ROOMS = {
         {"*": ("tests/test_exact.py", "tests/test_library.py", "tests/test_mutants.py")}, "library",
     ),
     "audit": Room(
-        "crosscheck/audit", 100, 4, {"*": ("tests/test_audit.py", "tests/test_mutants.py")},
+        "crosscheck/audit", 100, 4, {"*": ("tests/test_mutants.py", "tests/test_audit.py", "tests/test_audit_week.py")},
     ),
     "compare": Room(
         "crosscheck/compare", 100, 5,
