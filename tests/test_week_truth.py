@@ -1,6 +1,6 @@
 """Both of our own opinions are right about frames of the checking week: by the tests' own solver (tests/truth.py and
 tests/truth_week.py: no stiffness, no fixed-end actions, no load table, no trial of states), and, for stepped and tapered
-members, by their division into many prismatic members.
+members, by their division into many prismatic members; in second order by many elements (tests/many_elements.py).
 
 A default run looks at every fifth of the 200 random frames; all of them with CROSSCHECK_WEEK=full in the environment.
 """
@@ -22,6 +22,8 @@ from crosscheck.frame.model import Frame, SelfWeight
 from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions import moment_distribution, slope_deflection
 from tests.agreement import apart
+from tests.test_second_order import LOADED, falls, largest_error
+from tests.test_week_second_order import loaded
 from tests.truth import SURE
 from tests.truth_week import WeekTruth
 from tests.week_frames import week_frame
@@ -241,3 +243,23 @@ def test_members_that_vary_are_what_many_prismatic_members_come_to(opinion: obje
     assert 1e-6 < errors[2] < 1e-4
     assert errors[0] / errors[1] == pytest.approx(4.0, abs=0.02) and errors[1] / errors[2] == pytest.approx(4.0, abs=0.01)
     assert np.abs((4 * found[200] - found[100]) / 3 - found[1]).max() < 1e-8
+
+
+# --- second order ----------------------------------------------------------------------------------------
+
+SECOND = (3, 8, 9, 21, 22, 24, 33, 34, 40, 52, 53, 58, 63, 68)
+"""Frames without one-way parts: with tapers, steps, ties, single rigid members, states of stiffness and leans."""
+
+
+@pytest.mark.parametrize("seed", SECOND)
+def test_many_elements_converge_to_the_answer_in_second_order(seed: int) -> None:
+    """The error of 4 and of 12 elements between any two loads against both opinions: by the power of their length with
+    which that of many elements falls (tests/many_elements.py)."""
+    found = loaded(seed)
+    assert found is not None and not found.one_way
+    first = next(iter(found.combinations.values()))
+    frame = replace(found, combinations={LOADED: replace(first, name=LOADED)}).under(LOADED)
+    answers = ask(frame, (LOADED,)).answers
+    for name in OWN:
+        coarse, fine = (largest_error(frame, answers[name], parts) for parts in (4, 12))
+        assert coarse < 0.1 and falls(frame, coarse, fine), (name, coarse, fine)
