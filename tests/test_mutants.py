@@ -15,7 +15,7 @@ from crosscheck.answer import MOMENT, CaseAnswer, WorkTable
 from crosscheck.audit.bound import ForceBound, hypercircle
 from crosscheck.audit.compatibility import _own_axes, compatibility
 from crosscheck.audit.equilibrium import Pieces, zone_moment
-from crosscheck.audit.statics import storeys
+from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.loads import load_table
@@ -313,3 +313,58 @@ def test_displacements_along_a_support_turned_by_thirty_degrees(spread: bool, si
     system = SimpleNamespace(frame=SimpleNamespace(support_table=table))
     got = _own_axes(system, np.array([[3.0, 2.0 * sign, 5.0]]), spread)  # type: ignore[arg-type]
     assert got[0] == pytest.approx([3 * cos + sign, sign * (1.5 + 2 * cos), 5], rel=1e-12)
+
+
+BOX = """
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [0, 4], C = [6, 4], D = [6, 0] }
+[members]
+"A-B" = { section = "s", material = "m" }
+"B-C" = { section = "s", material = "m" }
+"C-D" = { section = "s", material = "m" }
+"D-A" = { section = "s", material = "m" }
+[supports]
+A = "pinned"
+D = { y = "held" }
+[loads.q]
+apply = [{ joint = "B", force = 7, direction = "right" }]
+"""
+
+
+@pytest.mark.parametrize("more", [0.0, 1.0])
+def test_joints_of_a_ring_without_moments_are_balanced_together(more: float) -> None:
+    """All eight end moments missing: four joints and four members leave one condition, that shear times length adds up to
+    nought. A shear 1 kN too large over 4 m is 4 kNm, or 4 / sqrt(8) by the norm, on the longest of 6 m (by hand)."""
+    frame = read_frame_text(BOX)
+    exact = Exact(frame).cases["q"]
+    ends = exact.ends.copy()
+    ends[..., MOMENT], ends[0, :, 1] = np.nan, ends[0, :, 1] + more
+    found = compatibility(frame, "q", CaseAnswer(ends, exact.joints, exact.reactions)).balance
+    (check,) = [c for c in found.checks if c.check == TOGETHER_CHECK]
+    assert check.ok is (more == 0.0) and check.where == "A, B, C, D"
+    assert abs(check.residual) == pytest.approx(4 * more / np.sqrt(8) / 6, rel=1e-9, abs=1e-9)
+
+
+def test_the_effect_of_sway_is_the_same_in_other_units() -> None:
+    """A column that carries 100 kN and is pushed aside by 10: in newtons the moments are a thousand times the figures."""
+    text = """
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [0, 4] }
+members."A-B" = { section = "s", material = "m" }
+supports.A = "fixed"
+[loads.q]
+apply = [{ joint = "B", force = 10, direction = "right" }, { joint = "B", force = 100, direction = "down" }]
+"""
+    newtons = text.replace("kN m", "N m").replace("200e6", "200e9").replace("= 10,", "= 10e3,").replace("= 100,", "= 1e5,")
+    moments = []
+    for one in (text, newtons):
+        answer = prepared(read_frame_text(one)).sway_answer(["q"])
+        assert answer is not None
+        moments.append(answer.cases["q"].ends[0, 0, MOMENT])
+    # P d / L more shear on d = H L^3 / (3 EI) (1 - P L^2 / (3 EI))^-1: M = H L / (1 - P L^2 / (3 EI)) (by hand).
+    assert abs(moments[0]) == pytest.approx(40 / (1 - 100 * 16 / (3 * 2e4)), rel=1e-9)
+    assert moments[1] == pytest.approx(1000 * moments[0], rel=1e-9)
