@@ -22,8 +22,9 @@ from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import Frame
 from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions import moment_distribution, slope_deflection
+from crosscheck.opinions.library import results
 from crosscheck.opinions.library.model import Vectors
-from crosscheck.opinions.library.results import _rigid_limit
+from crosscheck.opinions.library.results import _rigid_limit, solve_case
 from crosscheck.opinions.slope_deflection.balance import _trial
 from crosscheck.opinions.slope_deflection.one_way import complementary
 from crosscheck.opinions.slope_deflection.prepared import END, Places, prepared
@@ -221,6 +222,20 @@ def test_the_error_of_the_rigid_limit_counts_couples_per_length(length: float) -
     limit, error = _rigid_limit(made, length, 1e-3)
     assert limit.pieces[0, 0] == pytest.approx((1.0, 0.0, 8 * couple / 3), rel=1e-12)
     assert error == pytest.approx(2 * couple / 3 / length, rel=1e-9)
+
+
+def test_displacements_of_an_axially_rigid_frame_are_measured_by_its_members(monkeypatch: pytest.MonkeyPatch) -> None:
+    """L^3 / EI of the middle one of three members of 4, 6 and 4 m: displacements far below it times the force are none."""
+    frame = read_frame_text(ZONED.replace('axial = "elastic"', 'axial = "rigid"'))
+    asked = []
+
+    def heard(at: list[Vectors], length: float, supple: float) -> tuple[Vectors, float]:
+        asked.append((length, supple))
+        return _rigid_limit(at, length, supple)
+
+    monkeypatch.setattr(results, "_rigid_limit", heard)
+    solve_case(frame, load_table(frame, "q"))
+    assert asked[0] == pytest.approx((6.0, 64 / 2e4), rel=1e-12)
 
 
 def test_the_size_by_which_axial_forces_that_are_rounding_are_measured() -> None:
