@@ -11,7 +11,7 @@ from types import SimpleNamespace
 import numpy as np
 import pytest
 
-from crosscheck.answer import MOMENT, CaseAnswer, WorkTable
+from crosscheck.answer import ACROSS, MOMENT, CaseAnswer, WorkTable
 from crosscheck.audit.bound import ForceBound, hypercircle
 from crosscheck.audit.compatibility import _own_axes, compatibility
 from crosscheck.audit.equilibrium import Pieces, zone_moment
@@ -211,6 +211,31 @@ def test_distribution_goes_on_until_sways_are_balanced_however_long_the_lengths_
     expected = Exact(frame).cases["q"].ends
     size = np.abs(expected).max(axis=(0, 1))
     assert (np.abs(said.cases["q"].ends - expected).max(axis=(0, 1)) <= 1e-11 * size).all()  # type: ignore[union-attr]
+
+
+def test_the_deflection_of_a_taper_whose_chord_turns_is_greatest_where_distribution_says() -> None:
+    """One end settles, so that the chord and not only the axis slopes: no place of a fine row lies lower, and the slope
+    there, by a difference of two places beside it, is nought against that of the chord."""
+    frame = read_frame_text("""
+units = "kN m"
+materials.m = { E = 200e6 }
+sections = { small = { I = 1e-4, A = 5e-3, depth = 0.2 }, large = { I = 8e-4, A = 1e-2, depth = 0.4 } }
+joints = { A = [0, 0], B = [6, 0] }
+members."A-B" = { taper = ["small", "large"], material = "m" }
+supports = { A = "pinned", B = "roller" }
+[loads.q]
+apply = [{ member = "A-B", uniform = 10, direction = "down" }, { joint = "B", settlement = { down = 0.004 } }]
+""")
+    spans = moment_distribution.opine(frame, study(frame)).spans  # type: ignore[union-attr]
+
+    def across(x: np.ndarray) -> np.ndarray:
+        return np.asarray(spans.along("q", np.zeros(len(x), dtype=np.int64), x, np.ones(len(x), dtype=np.int64))[:, ACROSS])
+
+    places = spans.turning_points("q")[1]
+    lowest = places[np.argmin(across(places))]
+    assert across(np.array([lowest]))[0] <= across(np.linspace(0.0, 5.999, 600)).min() < -0.004
+    beside = across(lowest + np.array([-1e-3, 1e-3]))
+    assert abs(beside[1] - beside[0]) / 2e-3 < 1e-3 * 0.004 / 6
 
 
 @pytest.mark.parametrize("length", [2.0, 5000.0])
