@@ -19,11 +19,12 @@ from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.loads import load_table
-from crosscheck.frame.model import Frame
+from crosscheck.frame.model import FREE, HELD, Frame
 from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions import moment_distribution, slope_deflection
 from crosscheck.opinions.library import results
 from crosscheck.opinions.library.model import Vectors
+from crosscheck.opinions.library.qualification import _has_turned_roller
 from crosscheck.opinions.library.results import _rigid_limit, solve_case
 from crosscheck.opinions.slope_deflection.balance import _trial
 from crosscheck.opinions.slope_deflection.one_way import complementary
@@ -261,6 +262,12 @@ def test_displacements_of_an_axially_rigid_frame_are_measured_by_its_members(mon
     monkeypatch.setattr(results, "_rigid_limit", heard)
     solve_case(frame, load_table(frame, "q"))
     assert asked[0] == pytest.approx((6.0, 64 / 2e4), rel=1e-12)
+
+
+@pytest.mark.parametrize(("cos", "sin", "turned"), [(1.0, 0.0, False), (0.0, 1.0, False), (0.8, 0.6, True)])
+def test_a_roller_turned_by_a_right_angle_is_not_a_turned_one_to_the_library(cos: float, sin: float, turned: bool) -> None:
+    table = SimpleNamespace(cos=np.array([cos]), sin=np.array([sin]), stiffness=np.array([[FREE, HELD, FREE]]))
+    assert _has_turned_roller(SimpleNamespace(support_table=table)) is turned  # type: ignore[arg-type]
 
 
 def test_the_size_by_which_axial_forces_that_are_rounding_are_measured() -> None:
