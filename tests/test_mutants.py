@@ -25,7 +25,7 @@ from crosscheck.opinions import moment_distribution, slope_deflection
 from crosscheck.opinions.library import results
 from crosscheck.opinions.library.model import Vectors
 from crosscheck.opinions.library.qualification import _has_turned_roller
-from crosscheck.opinions.library.results import _rigid_limit, solve_case
+from crosscheck.opinions.library.results import _rigid_limit, along, solve_case
 from crosscheck.opinions.slope_deflection.balance import _trial
 from crosscheck.opinions.slope_deflection.one_way import complementary
 from crosscheck.opinions.slope_deflection.prepared import END, Places, prepared
@@ -262,6 +262,17 @@ def test_displacements_of_an_axially_rigid_frame_are_measured_by_its_members(mon
     monkeypatch.setattr(results, "_rigid_limit", heard)
     solve_case(frame, load_table(frame, "q"))
     assert asked[0] == pytest.approx((6.0, 64 / 2e4), rel=1e-12)
+
+
+@pytest.mark.parametrize("off", [-1e-11, 0.0, 1e-11])
+def test_a_place_is_found_by_a_distance_just_before_or_after_it(off: float) -> None:
+    """The library's values at a load in a member asked for with a trace of rounding: the same as at the load itself."""
+    load = '{ joint = "B", force = 1, direction = "right" }, { member = "B-C", force = 5, at = 2, direction = "down" }'
+    plain = re.sub(r", rigid_\w+ = [\d.]+", "", ZONED)
+    frame = read_frame_text(plain.replace('{ joint = "B", force = 1, direction = "right" }', load))
+    solved = solve_case(frame, load_table(frame, "q"))
+    found = along(frame, solved, np.array([1]), np.array([2.0 + off]), np.array([1]))[0, 2]
+    assert found == pytest.approx(Exact(frame).along("q", [1], [2.0], [1])[0, 2], rel=1e-9)
 
 
 @pytest.mark.parametrize(("cos", "sin", "turned"), [(1.0, 0.0, False), (0.0, 1.0, False), (0.8, 0.6, True)])
