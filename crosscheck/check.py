@@ -143,11 +143,11 @@ def _ask_one(name: str, frame: Frame, found: Study, wanted: tuple[str, ...], any
     more = {"size_limit": None} if any_size and name == "library" else {}
     try:
         said: Answer | Silent = importlib.import_module(OPINIONS[name]).opine(frame, found, wanted, **more)
+        return _settled_displacements(frame, said) if frame.one_way and isinstance(said, Answer) else said
     except UnusableInput:
         raise
     except Exception as error:  # noqa: BLE001 - whatever it is, it silences this opinion alone and is said
         return Silent(name, f"failed inside ({type(error).__name__}: {error}); please report this")
-    return _settled_displacements(frame, said) if frame.one_way and isinstance(said, Answer) else said
 
 
 def _settled_displacements(frame: Frame, said: Answer) -> Answer:

@@ -254,3 +254,39 @@ def test_what_cannot_be_is_said_in_one_line(b1: str, rest: str, words: str) -> N
     with pytest.raises(UnusableInput) as caught:
         read_frame_text(text)
     assert [words in str(problem) for problem in caught.value.problems] == [True]
+
+
+def test_a_case_of_two_either_or_groups_is_not_brought_back_by_the_other() -> None:
+    made = frame("[combinations]\nw = { dead = 1, wind_left = 1, wind_right = 1, imposed = 1 }",
+                 top='exclusive = [["wind_left", "wind_right"], ["wind_left", "imposed"]]')  # fmt: skip
+    assert [set(c.factors) for c in made.combinations.values()] == [
+        {"dead", "wind_left"}, {"dead", "wind_right", "imposed"},
+    ]  # fmt: skip
+
+
+EITHER = 'exclusive = [["wind_left", "wind_right"]]'
+
+
+@pytest.mark.parametrize(("rest", "top", "words"), [
+    ('[patterns.imposed]\nspans = [["b1"], ["b2"], ["b3"]]\n[loads."imposed (odd spans)"]\napply = []\n', "",
+     'its arrangement "imposed (odd spans)" has the name of a load case'),
+    ('[combinations]\nw = { wind_left = 1, wind_right = 1 }\n"w (wind_left)" = { dead = 1 }\n', EITHER,
+     'becomes "w (wind_left)", and something else has that name'),
+    ('[combinations]\n"w (wind_left)" = { dead = 1 }\nw = { wind_left = 1, wind_right = 1 }\n', EITHER,
+     'becomes "w (wind_left)", and something else has that name'),
+])  # fmt: skip
+def test_nothing_stated_is_lost_to_a_name_that_is_made(rest: str, top: str, words: str) -> None:
+    with pytest.raises(UnusableInput) as caught:
+        frame(rest, top=top)
+    assert [words in str(problem) for problem in caught.value.problems] == [True]
+
+
+def test_choices_without_end_are_refused_at_once() -> None:
+    """2 to the power of 30 combinations would be made."""
+    cases = [f"c{k}" for k in range(60)]
+    groups = ", ".join(f'["{a}", "{b}"]' for a, b in zip(cases[::2], cases[1::2], strict=True))
+    factors = ", ".join(f"{case} = 1" for case in cases)
+    with pytest.raises(UnusableInput) as caught:
+        frame(f"[combinations]\nw = {{ {factors} }}\n", top=f"exclusive = [{groups}]",
+              tail="".join(f"[loads.{case}]\napply = []\n" for case in cases))  # fmt: skip
+    assert "make more than 1000 cases and combinations" in str(caught.value.problems[0])

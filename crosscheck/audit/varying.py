@@ -3,8 +3,8 @@
 The same unit-load integrals as for prismatic members (flexibility.py), with the true section under each strain. A taper
 has powers of its depth there, so the integrals are summed: every piece is cut where a load begins, ends or stands and
 where the depth has changed by a half, and each cut is integrated by the rule of C. W. Clenshaw and A. R. Curtis, A method
-for numerical integration on an automatic computer, Numerische Mathematik 2 (1960), 197-205. Within a cut the strains
-are analytic; the nearest singular place (no depth) lies so far off that ORDER + 1 nodes leave less than 1e-13.
+for numerical integration on an automatic computer, Numerische Mathematik 2 (1960), 197-205 (from memory). Within a cut the
+strains are analytic; the nearest singular place (no depth) lies so far off that ORDER + 1 nodes leave less than 1e-13.
 """
 
 from __future__ import annotations

@@ -56,7 +56,11 @@ def combined(
     for pattern in patterns.values():
         further = _arranged_cases(pattern, cases[pattern.case])
         arranged[pattern.case] = [Arrangement(label, case.name, pattern.case) for label, case in further.items()]
-        every |= {case.name: case for case in further.values()}
+        for case in further.values():
+            if case.name in every:
+                says = f"its arrangement {shown(case.name)} has the name of a load case"
+                check.note(("patterns", pattern.case), says, "call that load case something else")
+            every[case.name] = case
     exclusive = _exclusive(check, data, cases)
     stated = _Combinations(check, cases, states).read(data.get("combinations", {}))
     combinations: dict[str, Combination] = {}
@@ -65,12 +69,17 @@ def combined(
         both = tuple(case for group in exclusive if len(g := _in(group, one)) > 1 for case in g)
         if both:
             parted[one.name] = both
-        for further_one in _alternatives(one, exclusive, arranged, patterns):
-            combinations[further_one.name] = further_one
-        if len(every) + len(combinations) > MOST:
-            says = f"the patterns make more than {MOST} cases and combinations"
-            check.note(("patterns",) if patterns else ("combinations",), says, "arrange fewer spans at once")
+        room = MOST - len(every) - len(combinations)
+        made = list(itertools.islice(_alternatives(one, exclusive, arranged, patterns), max(room, 0) + 1))
+        if len(made) > room:
+            says = f"patterns and cases that exclude each other make more than {MOST} cases and combinations"
+            check.note(("combinations", one.name), says, "arrange fewer spans, or choose among fewer cases, at once")
             break
+        for further_one in made:
+            if further_one.name in combinations or (further_one.stated and further_one.name in every):
+                says = f"becomes {shown(further_one.name)}, and something else has that name"
+                check.note(("combinations", one.name), says, "give the other a name of its own")
+            combinations[further_one.name] = further_one
     envelopes = _envelopes(check, data.get("envelopes", {}), every, combinations)
     return Combined(every, combinations, patterns, exclusive, parted, envelopes)
 
@@ -225,11 +234,14 @@ def _alternatives(
     """The combinations that a stated one stands for: one for each choice among cases that exclude each other, and for
     each arrangement of its patterns; itself where nothing is to choose."""
     groups = [used for group in exclusive if len(used := _in(group, one)) > 1]
-    for chosen in itertools.product(*groups):
+    for picks in itertools.product(*groups):
+        chosen = tuple(dict.fromkeys(picks))
+        if any(len({*group} & {*chosen}) > 1 for group in groups):
+            continue  # a case of two groups: what one of them leaves out another may not bring back
         without = {case for group in groups for case in group} - {*chosen}
         factors = {case: factor for case, factor in one.factors.items() if case not in without}
         loaded = [_choices(case, further, patterns) for case, further in arranged.items() if factors.get(case)]
-        for picked in itertools.islice(itertools.product(*loaded), MOST + 1):
+        for picked in itertools.product(*loaded):
             label = ", ".join([*chosen, *(f"{a.of} {a.label}" for a in picked if a.label)])
             swapped = {a.of: a.case for a in picked}
             kept = {swapped.get(case, case): factor for case, factor in factors.items()}

@@ -3,8 +3,8 @@
 As a frame gives way its axial forces change, and the load that goes with them may have a greatest value. Steps of load
 find no way round it; so each step is one of whatever changes fastest there, the load or the axial force of a member,
 and the rest is found that goes with it (W. C. Rheinboldt and J. V. Burkardt, "A locally parameterized continuation
-process", ACM Trans. Math. Software 9 (1983), 215-235). The greatest load is where a parabola through three such
-balances has its vertex, taken afresh until it stays.
+process", ACM Trans. Math. Software 9 (1983), 215-235; from memory). The greatest load is where a parabola through three
+such balances has its vertex, taken afresh until it stays.
 
 A balance is a vector: the members' axial forces as shares of the largest in first order, then the share of the load.
 """
@@ -148,7 +148,7 @@ def unchanged(answered: Answered, taken: Floats, near: float = np.inf) -> tuple[
     """A vector that comes out as it was put in, and the rounds that it took; None where it is not soon found, or not as
     `near` to the first one. By Newton's method: how the answer changes is tried out with small changes, one direction
     after another until enough is known (D. A. Knoll and D. E. Keyes, "Jacobian-free Newton-Krylov methods", J. Comput.
-    Phys. 193 (2004), 357-397)."""
+    Phys. 193 (2004), 357-397; from memory)."""
     start, before = taken, np.inf
     for rounds in range(1, ROUNDS + 1):
         answer = answered(taken)

@@ -9,8 +9,8 @@ forces on the unknowns that a unit more of each axial force brings on the displa
 so that one sparse factorisation of the tangent K + G D B, not symmetric, gives the next N (M. A. Woodbury, 1950, for the
 inverse). Where first-order axial forces are not close, the balance is followed from no load on by steps along its own
 arc, on which load and axial forces are unknowns together (E. Riks, "An incremental approach to the solution of snapping
-and buckling problems", Int. J. Solids Structures 15 (1979), 529-551; M. A. Crisfield 1981). Where the load on that path
-is largest the tangent is singular and the frame gives way: no balance is reached beyond.
+and buckling problems", Int. J. Solids Structures 15 (1979), 529-551; M. A. Crisfield 1981; from memory). Where the load
+on that path is largest the tangent is singular and the frame gives way: no balance is reached beyond.
 """
 
 from __future__ import annotations
