@@ -20,8 +20,10 @@ from crosscheck.review.finding import Finding
 
 SHARED = {
     ("slope-deflection", "moment-distribution"):
-        "the frame file and its reader; directions and places of loads; the list of what is a mechanism or undetermined; "
-        "numpy, scipy's sparse factorisation",
+        "the frame file and its reader; directions and places of loads, the weight of a tapered piece laid out as 16 "
+        "straight loads among them (right to 8e-8 of its effects); what patterns, either-or cases, states of stiffness and "
+        "leans make of it; the list of what is a mechanism, tied or undetermined, and which displacements slack parts "
+        "leave open; numpy, scipy's sparse factorisation",
     ("slope-deflection", "library"):
         "the frame file and its reader; directions and places of loads; the list of what is undetermined; numpy",
     ("moment-distribution", "library"):
