@@ -279,7 +279,7 @@ class _Scanner:
     # -- headings
 
     def _heading_of_case(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
-        if numbers > 1 and len(filled) > 3 or numbers and self._under_cases(filled):
+        if numbers > 1 and len(filled) > 3 or numbers and self._under_cases(text, filled):
             return None
         if numbers and any(which_of(t) or self._knows(t) for t in filled[:4]) and self._as_wide_as_heads(text, filled):
             return None  # a row whose last cell names what governs
@@ -400,8 +400,8 @@ class _Scanner:
 
     def _as_wide_as_heads(self, text: str, filled: list[str]) -> bool:
         """ The same by cells that are words, or that two blanks part."""
-        if self._under_heads(filled) or self.table is None or not self.table.heads:
-            return self._under_heads(filled)
+        if self._under_heads(text, filled) or self.table is None or not self.table.heads:
+            return self._under_heads(text, filled)
         head = self.table.heads[0][1]
         alike = separator_of(text) == separator_of(head) == "blank"
         return alike and len(wide_cells(text)) == len(wide_cells(head)) > 2
@@ -411,15 +411,18 @@ class _Scanner:
         named = text.casefold().strip(",;()") in self.case_words or self.names.case(text) is not None
         return named or which_of(text) is not None
 
-    def _under_heads(self, filled: list[str]) -> bool:
-        """Has the line as many cells as the table has heads?"""
+    def _under_heads(self, text: str, filled: list[str]) -> bool:
+        """Has the line as many cells as the table has heads? Blank ones count between separators that can be seen."""
         if self.table is None or not self.table.heads:
             return False
-        return len([c for c in cells_of(self.table.heads[0][1])[1] if c.text]) == len(filled)
+        (separator, cells), (as_heads, heads) = cells_of(text), cells_of(self.table.heads[0][1])
+        if separator == as_heads != "blank" and len(cells) == len(heads):
+            return True
+        return len([c for c in heads if c.text]) == len(filled)
 
-    def _under_cases(self, filled: list[str]) -> bool:
+    def _under_cases(self, text: str, filled: list[str]) -> bool:
         """Is it a row of a table whose first column names the case?"""
-        if self.table is None or not self.table.heads or not self._under_heads(filled):
+        if self.table is None or not self.table.heads or not self._under_heads(text, filled):
             return False
         return head_of(next((c.text for c in cells_of(self.table.heads[0][1])[1] if c.text), "")).noun == "case"
 

@@ -14,17 +14,18 @@ from collections import Counter
 from collections.abc import Callable, Sequence
 from contextlib import redirect_stderr, redirect_stdout
 from dataclasses import dataclass
+from functools import cached_property
 from pathlib import Path
 
 import pytest
 
-from crosscheck.answer import Answer
-from crosscheck.check import OPINIONS, Opinions, ask
+from crosscheck.answer import Answer, Silent, joined
+from crosscheck.check import OPINIONS, Opinions, _ask_one, ask, situations
 from crosscheck.compare.opinions import Comparison
+from crosscheck.frame.kinematics import Study, study
 from crosscheck.frame.model import Frame
 from crosscheck.frame.needs import with_analysis
 from crosscheck.frame.reader import read_frame
-from crosscheck.opinions import library, moment_distribution, slope_deflection
 from crosscheck.problems import UnusableInput
 from tests.mutation.alter import Mutant, mutants
 from tests.mutation.patch import caches, install
@@ -32,7 +33,6 @@ from tests.mutation.rooms import ROOMS, ROOT, Room, known
 
 SECONDS = 240
 """CPU seconds after which a mutant counts as noticed: it makes somebody wait."""
-MODULES = {"slope-deflection": slope_deflection, "moment-distribution": moment_distribution, "library": library}
 BECAME = {
     1: "by comparison", 2: "by comparison, another idealisation", 3: "fell silent, aloud", 5: "not installed",
 }  # fmt: skip
@@ -52,6 +52,15 @@ class Heard:
     title: str
     found: Opinions
     otherwise: bool = False
+
+    @cached_property
+    def asked(self) -> list[tuple[Frame, Study, tuple[str, ...]]]:
+        """The frame in each state and order that it is asked in, with what all opinions are told of it."""
+        return [(plain, study(plain), group) for plain, group in situations(self.found.frame, self.found.names)]
+
+    def said_by(self, opinion: str) -> Answer | Silent:
+        """What an opinion says now, as `check.ask` hears it."""
+        return joined([(group, _ask_one(opinion, plain, told, group, False)) for plain, told, group in self.asked])
 
 
 def demonstrations() -> list[Heard]:
@@ -90,9 +99,8 @@ def within_reach(room: Room, heard: list[Heard], module: str) -> list[Heard]:
     """The demonstrations in which a module has any part."""
     if module in room.unheard:
         return []
-    if module in room.second_order:
-        return [h for h in heard if h.found.frame.analysis.order == 2]
-    return [h for h in heard if h.found.frame.analysis.order == 1]
+    order = 2 if module in room.second_order else 1
+    return [h for h in heard if any(plain.analysis.order == order for plain, _, _ in h.asked)]
 
 
 def compared(room: Room, heard: list[Heard]) -> int:
@@ -103,8 +111,8 @@ def compared(room: Room, heard: list[Heard]) -> int:
         if room.opinion not in before.answers:
             continue
         try:
-            said = MODULES[room.opinion].opine(before.frame, before.study, before.names)
-        except Exception:  # noqa: BLE001 - check.ask makes it an opinion that fell silent, and says so
+            said = one.said_by(room.opinion)
+        except UnusableInput:
             return SILENT
         if not isinstance(said, Answer) or dict(said.silent) != dict(before.answers[room.opinion].silent):
             return SILENT
