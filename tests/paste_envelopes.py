@@ -167,8 +167,19 @@ class Maker:
         self.size = {"force": u.newton / F, "moment": u.newton * u.metre / F / arm, "length": u.metre / D, "angle": 1 / T,
                      "arm": u.metre / arm}  # fmt: skip
         self.values = 0
-        self.fixed = True
+        self.fixed = not (spec.named == "fit" and self.fits_others())
         self.largest: dict[str, float] = {}
+
+    def fits_others(self) -> bool:
+        """Has another name of several cases the same extremes? What does not say which is meant must then be undecided."""
+        others = [n for n in self.frame.several if n != self.spec.envelope]
+        return any(np.allclose(self._bounds(n), self._bounds(self.spec.envelope), rtol=0.0, atol=0.004) for n in others)
+
+    def _bounds(self, name: str) -> np.ndarray:
+        """Greatest and least member-end actions over the cases that a name stands for, beside the largest of their kind."""
+        ends = np.stack([self.known.answer.cases[n].ends for n in self.frame.meant(name)])
+        ends = ends / np.maximum(np.abs(ends).max(axis=(0, 1, 2)), 1e-300)
+        return np.stack([ends.max(axis=0), ends.min(axis=0)])
 
     # -- what is printed, case by case
 
