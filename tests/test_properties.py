@@ -240,6 +240,59 @@ def test_law_of_verify(law: str, slip: bool) -> None:
     assert kept >= 3
 
 
+@pytest.mark.parametrize("slip", [False, True], ids=["right", "wrong"])
+def test_superposition_in_verify(slip: bool) -> None:
+    """Cases printed by one of the opinions, added up by hand, are the combination's results to `verify`."""
+    kept = 0
+
+    @some(VERIFIED)
+    @given(st.integers(0, 39), st.sampled_from([1.35, -0.6, 0.9]), st.sampled_from([1.5, 1.05, -1.0]))
+    def holds(seed: int, first: float, second: float) -> None:
+        nonlocal kept
+        frame = drawn(seed)
+        a, b = list(frame.cases)[:2] if len(frame.cases) > 1 else ("", "")
+        assume(a and frame.cases[a].loads and frame.cases[b].loads)
+        frame = replace(frame, cases={n: frame.cases[n] for n in (a, b)})
+        parts = _answers(frame, slip, (a, b))
+        added = CaseAnswer(*(
+            first * getattr(parts[a], kind) + second * getattr(parts[b], kind) for kind in ("ends", "joints", "reactions")
+        ))  # fmt: skip
+        combined = replace(frame, combinations={"sum": Combination("sum", {a: first, b: second})})
+        assert _verdict(combined, printed(combined, {"sum": added})) == ("disagree" if slip else "agree"), seed
+        kept += 1
+
+    holds()
+    assert kept >= 2
+
+
+@pytest.mark.parametrize("slip", [False, True], ids=["right", "wrong"])
+def test_reciprocity_in_verify(slip: bool) -> None:
+    """The movement of one joint under a load on another, claimed for that of the other under the first load (Maxwell)."""
+    kept = 0
+
+    @some(VERIFIED)
+    @given(st.integers(0, 39), st.integers(0, 2**32 - 1))
+    def holds(seed: int, dice: int) -> None:
+        nonlocal kept
+        frame, throw = drawn(seed), np.random.default_rng(dice)
+        joints = sorted({j for m in frame.members.values() for j in (m.joint_from, m.joint_to)})
+        here, there = (joints[int(throw.integers(len(joints)))] for _ in range(2))
+        loads = {"along": JointForce(0, here, 1.0, 0.0), "up": JointForce(0, there, 1.0, 90.0)}
+        loaded = replace(frame, cases={n: LoadCase(n, (one,)) for n, one in loads.items()}, combinations={})
+        said = heard("slope-deflection", loaded)
+        assert said is not None
+        dx = float(said.cases["up"].joints[loaded.joint_index[here], 0])
+        case = said.cases["along"]
+        assume(math.isfinite(dx))
+        assume(abs(dx) > 0.05 * case_scales(loaded, load_table(loaded, "along"), [case]).displacements)
+        case.joints[loaded.joint_index[there], 1] = dx * (1.3 if slip else 1.0)
+        assert _verdict(loaded, printed(loaded, {"along": case})) == ("disagree" if slip else "agree"), seed
+        kept += 1
+
+    holds()
+    assert kept >= 3
+
+
 def test_the_measure_can_fail() -> None:
     """A mirror that forgets to turn the couples round is seen."""
     frame = drawn(1)
