@@ -39,15 +39,16 @@ class Room:
 
 SUSPECTS = ("tests/test_suspects.py",)
 SECOND_ORDER = ("tests/test_second_order.py -k not(agree_up_to_near)and(not(many_elements))",)
-WEEK = ("tests/test_slope_deflection_week.py",)
-OTHER_WEEK = ("tests/test_moment_distribution_week.py",)
+RANDOM = "tests/test_agreement.py"
+WEEK = ("tests/test_slope_deflection_week.py", "tests/test_week_agreement.py")
+OTHER_WEEK = ("tests/test_moment_distribution_week.py", "tests/test_week_agreement.py")
 ROOMS = {
     "slope_deflection": Room(
         "crosscheck/opinions/slope_deflection", 200, 1,
         {
             "prepared": SUSPECTS, "second_order": SECOND_ORDER, "division": SECOND_ORDER, "displaced_spans": SECOND_ORDER,
             "balance": (*SECOND_ORDER, *WEEK), "varying": WEEK, "one_way": WEEK, "parting": WEEK,
-            "*": ("tests/test_exact.py", "tests/published/test_published.py", "tests/test_mutants.py"),
+            "*": (RANDOM, "tests/test_exact.py", "tests/published/test_published.py", "tests/test_mutants.py"),
         },
         "slope-deflection", frozenset({"second_order", "division", "displaced_spans", "balance"}),
         frozenset({"prepared", "equations", "one_way", "parting"}),
@@ -58,7 +59,7 @@ ROOMS = {
             **dict.fromkeys(("second_order", "bent_spans", "displaced", "displaced_working", "critical", "stretches"),
                             SECOND_ORDER),
             **dict.fromkeys(("gradual", "one_way", "varying", "members", "spans", "pieces"), OTHER_WEEK),
-            "*": ("tests/test_exact.py", "tests/test_moment_distribution.py", "tests/test_mutants.py"),
+            "*": (RANDOM, "tests/test_exact.py", "tests/test_moment_distribution.py", "tests/test_mutants.py"),
         },
         "moment-distribution",
         frozenset({"second_order", "bent_spans", "displaced", "critical", "stretches", "gradual"}),
@@ -66,7 +67,7 @@ ROOMS = {
     ),
     "library": Room(
         "crosscheck/opinions/library", 200, 3,
-        {"*": ("tests/test_exact.py", "tests/test_library.py", "tests/test_mutants.py")}, "library",
+        {"*": ("tests/test_mutants.py", "tests/test_library.py", RANDOM, "tests/test_exact.py")}, "library",
     ),
     "audit": Room(
         "crosscheck/audit", 100, 4, {"*": ("tests/test_mutants.py", "tests/test_audit.py", "tests/test_audit_week.py")},
