@@ -27,7 +27,7 @@ from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.differences import worst
 from crosscheck.compare.opinions import Comparison
 from crosscheck.frame.kinematics import study
-from crosscheck.frame.model import FREE, HELD, Combination, Frame, Lean, Piece, Section
+from crosscheck.frame.model import FREE, HELD, Combination, Frame, Lean, Piece, Section, StiffnessState
 from crosscheck.opinions import moment_distribution, slope_deflection
 from crosscheck.problems import UnusableInput
 from crosscheck.suspects import Suspect, search
@@ -36,6 +36,8 @@ from tests.week_frames import week_frame
 
 CASES = Path(__file__).parents[1] / "cases"
 DEMONSTRATIONS = ("depot", "workshop", "rack", "causeway")
+SCARCE = ("lean left out", "order of a combination", "service springs")
+"""Sorts of mistakes that few frames can have, or show: drawn before the others."""
 
 
 # --- solving
@@ -70,21 +72,66 @@ def opinions_on(frame: Frame) -> check.Opinions | None:
 
 @lru_cache(maxsize=8)
 def the_frame(seed: int) -> Frame:
-    """Demonstrations as they are; of every five random frames, one has a combination of second order near its critical
-    load, and another leans five times as much, so that effects of both are seen."""
+    """Demonstrations as they are; random frames so that leans, springs of a state and orders of combinations show.
+
+    Of every five random frames two have a combination of second order near its critical load, two lean enough to be seen
+    (all that lean already by five times as much), and two have springs that are others in one combination.
+    """
     if seed < len(DEMONSTRATIONS):
         return check.read(CASES / f"{DEMONSTRATIONS[seed]}.toml")
-    frame = week_frame(seed)
-    if seed % 5 == 0 and frame.combinations and not frame.one_way:
-        return _near_critical(frame)
-    if seed % 5 == 1:
-        return replace(frame, combinations={n: replace(c, lean=5 * c.lean) for n, c in frame.combinations.items()})
-    return frame
+    frame, kind = week_frame(seed), seed % 5
+    if kind in (2, 4):
+        frame = _sprung(frame, Random(f"sprung {seed}"))
+    if kind in (1, 4):
+        frame = _leaning(frame)
+    return _near_critical(frame) if kind in (0, 3) and not frame.one_way else frame
+
+
+def _last(frame: Frame) -> Combination:
+    """The last combination, or one of all cases where there is none."""
+    return list(frame.combinations.values())[-1] if frame.combinations else Combination("all", dict.fromkeys(frame.cases, 1.0))
+
+
+def _leaning(frame: Frame) -> Frame:
+    if not any(c.lean for c in frame.combinations.values()):
+        last = _last(frame)
+        return replace(frame, combinations={**frame.combinations, last.name: replace(last, lean=0.02)})
+    return replace(frame, combinations={n: replace(c, lean=5 * c.lean) for n, c in frame.combinations.items()})
+
+
+def _sprung(frame: Frame, r: Random) -> Frame:
+    """One or two supports on springs of about a member's own stiffness, with factors on them in the state of the last
+    combination; the frame as it is where it has no support to spring, or cannot be used so."""
+    t = frame.member_table
+    supports, factors = dict(frame.supports), {}
+    for joint in r.sample(list(supports), min(2, len(supports))):
+        s, on = supports[joint], np.flatnonzero((t.ends == frame.joint_index[joint]).any(axis=1))
+        axes = [a for a in ("y", "rotation") if getattr(s, a) == HELD and not (s.x_only or s.y_only)]
+        if axes and len(on):
+            axis, m = r.choice(axes), int(on[0])
+            turn = 4.0 * t.E[m] * t.I[m] / t.length[m]
+            size = float(turn if axis == "rotation" else 12.0 * turn / t.length[m] ** 2)
+            supports[joint] = replace(s, **{axis: size * r.uniform(0.3, 3.0)})
+            factors[joint] = {axis: r.choice([0.3, 0.5, 2.0])}
+    if not factors:
+        return frame
+    last = _last(frame)
+    state = frame.states.get(last.stiffness, StiffnessState("springs"))
+    states = {**frame.states, state.name: replace(state, supports={**state.supports, **factors})}
+    combinations = {**frame.combinations, last.name: replace(last, stiffness=state.name)}
+    changed = replace(frame, supports=supports, states=states, combinations=combinations)
+    try:
+        for name in changed.names:
+            study(changed.under(name))
+    except UnusableInput:
+        return frame
+    return changed
 
 
 def _near_critical(frame: Frame) -> Frame:
     """The last combination in second order, its loads scaled to a fifth of the critical where there is one."""
-    name, c = list(frame.combinations.items())[-1]
+    c, name = _last(frame), _last(frame).name
+    frame = replace(frame, combinations={**frame.combinations, name: c})
     try:
         plain = frame.under(name)
         factor = slope_deflection.critical_factors(plain, (name,), 1e6).get(name, math.inf)
@@ -252,14 +299,17 @@ def _halved(factors: Mapping[str, Mapping[str, float]]) -> dict[str, Mapping[str
 
 
 def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, str, Mistake, list[ClaimedValue]]]:
-    """The claims of one frame at 4 digits, every sort of mistake once before any comes twice; effect over 3% of peak."""
+    """The claims of one frame at 4 digits, every sort of mistake once before any comes twice, the scarce ones first; effect
+    over 3% of peak."""
     r, frame = Random(seed), the_frame(seed)
     opinions = opinions_on(frame)
     if opinions is None:
         return
     answer = opinions.answers["slope-deflection"]
     pool = []
-    for name in r.sample(frame.names, min(len(frame.names), 6)):
+    telling = [n for n, c in frame.combinations.items() if c.lean or c.order or _springs(frame, c)]
+    chosen = [*r.sample(telling, min(len(telling), 2)), *r.sample(frame.names, min(len(frame.names), 6))]
+    for name in dict.fromkeys(chosen):
         if name in answer.cases:
             pool += [(name, m) for m in sorts(frame, name, r)]
     r.shuffle(pool)
@@ -267,9 +317,9 @@ def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, s
     ranked = []
     for k, (name, mistake) in enumerate(pool):
         seen[mistake.sort] = seen.get(mistake.sort, 0) + 1
-        ranked.append((seen[mistake.sort], k, name, mistake))
+        ranked.append((seen[mistake.sort], mistake.sort not in SCARCE, k, name, mistake))
     taken = 0
-    for _, _, name, mistake in sorted(ranked, key=lambda x: x[:2]):
+    for *_, name, mistake in sorted(ranked, key=lambda x: x[:3]):
         if taken == per:
             return
         assert mistake.frame is not None
@@ -281,6 +331,10 @@ def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, s
         if off >= least > 0:
             taken += 1
             yield frame, name, mistake, case_values(mistake.frame, other.cases[name], name, 4, seed % 2 == 0)
+
+
+def _springs(frame: Frame, c: Combination) -> bool:
+    return bool(c.stiffness and frame.states[c.stiffness].supports)
 
 
 def _peak(case: CaseAnswer) -> float:

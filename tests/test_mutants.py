@@ -26,8 +26,10 @@ from crosscheck.opinions.library import results
 from crosscheck.opinions.library.model import Vectors
 from crosscheck.opinions.library.qualification import _has_turned_roller
 from crosscheck.opinions.library.results import _rigid_limit, along, solve_case
+from crosscheck.opinions.moment_distribution import gradual
+from crosscheck.opinions.slope_deflection import balance
 from crosscheck.opinions.slope_deflection.balance import _trial
-from crosscheck.opinions.slope_deflection.one_way import complementary
+from crosscheck.opinions.slope_deflection.one_way import complementary, wrong
 from crosscheck.opinions.slope_deflection.prepared import END, Places, prepared
 from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
 from tests.exact import Exact
@@ -299,6 +301,43 @@ apply = [{ member = "A-B", force = 5, at = 1, direction = "down" }]
     for name, shear in (("q", 3.0), ("w", 5.0)):
         trial = _trial(CaseInSecondOrder(frame, load_table(frame, name)), 1.0, np.zeros(1))
         assert trial is not None and trial.size == pytest.approx(shear, rel=1e-9)
+
+
+@pytest.mark.parametrize("noise", [1e-13, -1e-13])
+def test_a_one_way_part_at_rest_is_right_in_place_and_out(noise: float) -> None:
+    """By definition: a part works the wrong way where its force is against it, a part that is out where its gap closes."""
+    out = np.array([False, False, True, True])
+    found = wrong(np.array([noise * 7, -1.0, 0.0, 0.0]), np.array([0.0, 0.0, noise * 0.3, -0.1]), 7.0, 0.3, out)
+    assert found.tolist() == [False, True, False, True]
+
+
+@pytest.mark.parametrize(("step", "rounds"), [(0.1, 2), (0.4, 4)])
+def test_a_search_off_the_path_is_given_up(step: float, rounds: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Each round strays by half the first-order force: more than three steps from where it set out is too far."""
+    stray = SimpleNamespace(
+        regular=True, by_load=np.zeros(1), gap=np.ones(1), ahead=lambda change: 0.5 * change,
+    )  # fmt: skip
+    monkeypatch.setattr(balance, "_trial", lambda *_: stray)
+    path = object.__new__(balance._Path)
+    path.case, path.size = None, 1.0  # type: ignore[assignment]
+    assert path._next(balance._Point(np.zeros(2), np.array([0.0, 1.0]), None), step) == (rounds, None)
+
+
+@pytest.mark.parametrize("outer", [(1.0, 1.9, 3.4), (0.5, 2.4, 2.6), (1.5, 1.6, 2.6), (2.4, 2.3, 1.2)])
+def test_the_greatest_load_is_found_by_few_balances(outer: tuple[float, float, float]) -> None:
+    """Of a cubic whose greatest value is 0.9 at 2 by definition: to a few ten-millionths, by at most eight balances."""
+    asked: list[float] = []
+
+    def balance_at(value: float) -> np.ndarray:
+        return np.array([value, 0.9 - 0.4 * (value - 2.0) ** 2 - 0.2 * (value - 2.0) ** 3])
+
+    def prescribed(place: int, value: float) -> gradual.Answered:
+        asked.append(value)
+        return lambda _: balance_at(value)
+
+    found = gradual._vertex(prescribed, 0, [balance_at(x) for x in outer])
+    assert found[-1] == pytest.approx(0.9, abs=3e-7) and len(asked) <= 8
+    assert all(min(outer) < value < max(outer) for value in asked)
 
 
 # --- the audit
