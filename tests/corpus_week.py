@@ -75,7 +75,7 @@ def the_frame(seed: int) -> Frame:
     """Demonstrations as they are; random frames so that leans, springs of a state and orders of combinations show.
 
     Of every five random frames two have a combination of second order near its critical load, two lean enough to be seen
-    (all that lean already by five times as much), and two have springs that are others in one combination.
+    (all that lean already by ten times as much), and two have springs that are others in one combination.
     """
     if seed < len(DEMONSTRATIONS):
         return check.read(CASES / f"{DEMONSTRATIONS[seed]}.toml")
@@ -84,19 +84,20 @@ def the_frame(seed: int) -> Frame:
         frame = _sprung(frame, Random(f"sprung {seed}"))
     if kind in (1, 4):
         frame = _leaning(frame)
-    return _near_critical(frame) if kind in (0, 3) and not frame.one_way else frame
+    return _near_critical(frame, 5.0 if kind == 0 else 3.0) if kind in (0, 3) and not frame.one_way else frame
 
 
 def _last(frame: Frame) -> Combination:
     """The last combination, or one of all cases where there is none."""
-    return list(frame.combinations.values())[-1] if frame.combinations else Combination("all", dict.fromkeys(frame.cases, 1.0))
+    every = list(frame.combinations.values())
+    return every[-1] if every else Combination("all", dict.fromkeys(frame.cases, 1.0))
 
 
 def _leaning(frame: Frame) -> Frame:
     if not any(c.lean for c in frame.combinations.values()):
         last = _last(frame)
-        return replace(frame, combinations={**frame.combinations, last.name: replace(last, lean=0.02)})
-    return replace(frame, combinations={n: replace(c, lean=5 * c.lean) for n, c in frame.combinations.items()})
+        return replace(frame, combinations={**frame.combinations, last.name: replace(last, lean=0.05)})
+    return replace(frame, combinations={n: replace(c, lean=10 * c.lean) for n, c in frame.combinations.items()})
 
 
 def _sprung(frame: Frame, r: Random) -> Frame:
@@ -128,14 +129,14 @@ def _sprung(frame: Frame, r: Random) -> Frame:
     return changed
 
 
-def _near_critical(frame: Frame) -> Frame:
-    """The last combination in second order, its loads scaled to a fifth of the critical where there is one."""
+def _near_critical(frame: Frame, below: float) -> Frame:
+    """The last combination in second order, its loads scaled to so many times less than the critical where there is one."""
     c, name = _last(frame), _last(frame).name
     frame = replace(frame, combinations={**frame.combinations, name: c})
     try:
         plain = frame.under(name)
         factor = slope_deflection.critical_factors(plain, (name,), 1e6).get(name, math.inf)
-        scaled = {case: f * factor / 5.0 for case, f in c.factors.items()} if math.isfinite(factor) else c.factors
+        scaled = {case: f * factor / below for case, f in c.factors.items()} if math.isfinite(factor) else c.factors
         changed = replace(frame, combinations={**frame.combinations, name: replace(c, factors=scaled, order=2)})
         study(changed.under(name))
     except UnusableInput:
@@ -299,8 +300,8 @@ def _halved(factors: Mapping[str, Mapping[str, float]]) -> dict[str, Mapping[str
 
 
 def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, str, Mistake, list[ClaimedValue]]]:
-    """The claims of one frame at 4 digits, every sort of mistake once before any comes twice, the scarce ones first; effect
-    over 3% of peak."""
+    """The claims of one frame at 4 digits, every sort of mistake once before any comes twice, the scarce ones twice and
+    first; effect over 3% of peak."""
     r, frame = Random(seed), the_frame(seed)
     opinions = opinions_on(frame)
     if opinions is None:
@@ -317,7 +318,8 @@ def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, s
     ranked = []
     for k, (name, mistake) in enumerate(pool):
         seen[mistake.sort] = seen.get(mistake.sort, 0) + 1
-        ranked.append((seen[mistake.sort], mistake.sort not in SCARCE, k, name, mistake))
+        scarce = mistake.sort in SCARCE
+        ranked.append((seen[mistake.sort] - scarce, not scarce, k, name, mistake))
     taken = 0
     for *_, name, mistake in sorted(ranked, key=lambda x: x[:3]):
         if taken == per:
