@@ -117,9 +117,7 @@ def test_an_envelopes_values_are_extremes_over_all_combinations_of_the_changed_f
 
 
 def test_what_explains_an_envelope_as_well_is_said() -> None:
-    frame = the_frame(18)  # its combinations have the same factors: one gone astray, or left out, is the same to see
-    records = [r for r in run_enveloped([18], 9) if r.sort == "gross for state"]
-    assert records and records[0].rank == 1
+    frame = week_frame(18)  # its combinations have the same factors: one gone astray, or left out, is the same to see
     opinions, other = opinions_on(frame), _combined(frame, "cracked one", stiffness="")
     name = next(iter(frame.envelopes))
     answer = solved(other, frame.envelopes[name].names)
