@@ -7,6 +7,7 @@ on either side, at every point load of any case. They are geometry: the extremes
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -34,9 +35,16 @@ class Stations:
 
 def stations(frame: Frame, tables: list[LoadTable] | None = None) -> Stations:
     """The stations of every member, from the loads of all cases (or of the given tables)."""
-    if tables is None:
-        # A combination with a lean of its own has loads that none of its cases has.
-        tables = [load_table(frame, name) for name in frame.names if name in frame.cases or leans(frame, name)]
+    return _of_all_cases(frame) if tables is None else _of(frame, tables)
+
+
+@lru_cache(maxsize=8)  # a report asks for them once a case
+def _of_all_cases(frame: Frame) -> Stations:
+    # A combination with a lean of its own has loads that none of its cases has.
+    return _of(frame, [load_table(frame, name) for name in frame.names if name in frame.cases or leans(frame, name)])
+
+
+def _of(frame: Frame, tables: list[LoadTable]) -> Stations:
     t = frame.member_table
     count = len(t.length)
     every = np.arange(count)
