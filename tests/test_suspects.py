@@ -253,6 +253,17 @@ def test_a_softer_frame_is_explained_without_rounding() -> None:
     assert tried_ >= (300 if FULL else 6)
 
 
+def test_another_kind_of_support_near_the_critical_load_is_known_by_its_reactions() -> None:
+    """Seed 307: forecasts of first order have the true kind 282nd, with three times the difference it removes."""
+
+    def kinds(m: Mistake) -> bool:
+        return m.sort == "another kind"
+
+    records = [tried(*found, 307) for found in drawn(307, 5, choose=kinds)]
+    assert len(records) == 5
+    assert all((r.verdict, r.rank) == ("disagree", 1) for r in records), records
+
+
 def test_right_claims_are_never_suspected() -> None:
     count = 0
     for seed in range(500, 700 if FULL else 503):

@@ -26,6 +26,7 @@ from crosscheck.suspects.adjusted import adjusted
 from crosscheck.suspects.changes import Change, of_case, usable
 from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.paste import paste_options
+from crosscheck.suspects.supports import kinds_by_reactions
 from crosscheck.suspects.suspect import Family, Option
 from crosscheck.suspects.sweep import Sweep, Weighed
 from crosscheck.suspects.week import week_families, week_options
@@ -168,7 +169,8 @@ class SituationsSweep(Sweep):
             ranked = [w.option for w in inner.singles() if w.option.change.frame is not None and w.option.claimed is None]
         distinct = {(o.where, o.says): replace(o, delta=None) for o in ranked}
         likeliest, fits = (LIKELIEST_SLOW, FITS_SLOW) if self.slow else (LIKELIEST, FITS)
-        found = sorted(self._solved(list(distinct.values())[:likeliest]), key=lambda w: w.rough)
+        chosen = [*(kinds_by_reactions(self.seen) if self.slow else ()), *islice(distinct.values(), likeliest)]
+        found = sorted(self._solved({(o.where, o.says): o for o in chosen}.values()), key=lambda w: w.rough)
         for w in [] if any(w.fits for w in found) else found[:fits]:
             found += self._fitted_again(w)
         return found

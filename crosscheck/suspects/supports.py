@@ -9,7 +9,9 @@ from functools import partial
 import numpy as np
 
 from crosscheck.frame.model import FREE, HELD, Floats, Frame, Support
+from crosscheck.opinions.slope_deflection.prepared import REACTION
 from crosscheck.suspects.changes import Change, kind_of, with_support
+from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.suspect import Option, named
 
@@ -47,6 +49,28 @@ def support_options(screen: Screen) -> Iterator[Option]:
         if good[k]:
             delta = screen.delta_of(screen.effects.reaction, joints[k], [a[k] for a in actions])
             yield _option(frame, names[joints[k]], wanted[k], texts[k], costs[k], delta)
+
+
+def kinds_by_reactions(seen: Observation) -> Iterator[Option]:
+    """Supports of that kind which gives nothing where the claim prints nothing and something where it prints something.
+
+    No forecast is needed for these, so that none can miss them: in second order one of first order may. Reactions are along
+    the frame's axes, hence none at turned supports.
+    """
+    nil = np.abs(seen.value) <= seen.noise
+    ours_nil = np.abs(seen.said) <= seen.allowed
+    for joint in seen.frame.supports:
+        own = _current(seen.frame, joint)
+        at = (seen.places.kind == REACTION) & (seen.places.joint == seen.frame.joint_index[joint])
+        loose: dict[int, bool] = {}
+        for axis, name in enumerate(AXES if own.angle == 0.0 else ()):
+            rows = np.flatnonzero(at & (seen.places.column == axis))
+            if len(rows) and (getattr(own, name) == FREE or not ours_nil[rows].all()):
+                loose[axis] = bool(nil[rows].all())
+        if any(loose[axis] != (getattr(own, AXES[axis]) == FREE) for axis in loose):
+            for kind, says, cost in _kinds(seen.frame, joint):
+                if all((kind[axis] == FREE) == free for axis, free in loose.items()):
+                    yield _option(seen.frame, joint, np.array(kind), says, cost, None)
 
 
 def _state_factors(frame: Frame) -> Floats:

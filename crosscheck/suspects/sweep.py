@@ -31,7 +31,7 @@ from crosscheck.suspects.members import heavy_families, member_fits, member_opti
 from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.screen import Screen
-from crosscheck.suspects.supports import support_fits, support_options
+from crosscheck.suspects.supports import kinds_by_reactions, support_fits, support_options
 from crosscheck.suspects.suspect import Family, Option
 from crosscheck.suspects.whole import other_order, temperature_options, whole_options
 from crosscheck.suspects.zones import zone_families
@@ -234,7 +234,8 @@ class Sweep:
         # What softens a frame near its critical load does far more than first order foretells.
         places = {o.where for o in ranked[:SLOW_PLACES]}
         beside = [o for o in ranked[SLOW_FEW:] if o.where in places and not o.fitted][:SLOW_FEW]
-        found = sorted(self._solved([*ranked[:SLOW_FEW], *beside]), key=lambda w: w.rough)
+        likeliest = {(o.where, o.says): o for o in [*kinds_by_reactions(seen), *ranked[:SLOW_FEW], *beside]}
+        found = sorted(self._solved(likeliest.values()), key=lambda w: w.rough)
         if not any(w.fits for w in found):
             for w in found[:SLOW_FITS]:
                 if w.option.again is not None:
