@@ -156,6 +156,98 @@ def test_history_is_kept_and_readable(tmp_path: Path) -> None:
     assert record.before == (before,)
 
 
+ENVELOPED = SHED + """gust = { wind = 1.5 }
+
+[envelopes]
+"at its most" = ["strength", "gust"]
+"""
+
+
+@pytest.fixture
+def enveloped(tmp_path: Path) -> Path:
+    """The shed with an envelope over two combinations, on record."""
+    path = tmp_path / "shed.toml"
+    path.write_text(ENVELOPED, encoding="utf-8")
+    assert main(["record", str(path), "--reason", "first issue"]) == 0
+    return path
+
+
+def test_envelopes_go_on_record_by_what_they_are_over(enveloped: Path) -> None:
+    record = read_record(enveloped.with_name("shed.record.toml"))
+    assert record.now.envelopes == {"at its most": ("strength", "gust")}
+    assert check_frame(Standard(enveloped)).state == "held"
+    assert main(["record", str(enveloped), "--reason", "again"]) == 0
+    assert read_record(enveloped.with_name("shed.record.toml")).before == (record.now,)
+
+
+def _record_replaced(frame: Path, old: str, new: str) -> FrameOutcome:
+    path = frame.with_name("shed.record.toml")
+    text = path.read_text(encoding="utf-8")
+    assert text.count(old) == 1
+    path.write_text(text.replace(old, new), encoding="utf-8")
+    return check_frame(Standard(frame))
+
+
+def test_an_envelope_over_other_names_has_moved_though_no_case_has(enveloped: Path) -> None:
+    """The greatest and least values that moved are told, with what governs."""
+    outcome = _record_replaced(enveloped, '["strength", "gust"]', '["strength", "dead"]')
+    assert outcome.state == "moved"
+    assert "envelope at its most: over gust now only, over dead on record only" in outcome.says
+    cases = check.ask(check.read(enveloped)).answers["slope-deflection"].cases
+    strength, gust, dead = (cases[n].ends[0, 0, 2] for n in ("strength", "gust", "dead"))
+    told = [d for d in outcome.differences if (d.place.member, d.place.joint, d.place.quantity) == ("A-B", "A", "moment")]
+    assert strength < dead < gust < 0
+    (greatest,) = told
+    assert greatest.place.case == "at its most" and greatest.place.extreme == "max"
+    assert greatest.values == pytest.approx({"now": gust, "on record": dead}, rel=1e-9)
+    assert greatest.note == "gust governs now, dead on record"
+    assert all(d.place.case == "at its most" for d in outcome.differences)
+
+
+def test_an_envelope_over_the_same_names_in_another_order_holds(enveloped: Path) -> None:
+    assert _record_replaced(enveloped, '["strength", "gust"]', '["gust", "strength"]').state == "held"
+
+
+def test_an_envelope_that_the_record_does_not_speak_of_is_said(enveloped: Path) -> None:
+    """A record from before envelopes were on record still holds."""
+    outcome = _record_replaced(enveloped, '[now.envelopes]\n"at its most" = ["strength", "gust"]\n', "")
+    assert outcome.state == "held"
+    assert outcome.says.endswith("values hold; envelope at its most is not on record")
+
+
+def test_an_envelope_that_the_frame_has_no_longer_is_said(enveloped: Path) -> None:
+    enveloped.write_text(ENVELOPED[: ENVELOPED.index("[envelopes]")], encoding="utf-8")
+    outcome = check_frame(Standard(enveloped))
+    assert outcome.state == "record older than the frame"
+    assert outcome.says.endswith("values hold; envelope at its most: over strength, gust on record only")
+
+
+def test_two_sets_whose_envelopes_are_over_other_names_have_moved(enveloped: Path, tmp_path: Path) -> None:
+    there = tmp_path / "there"
+    there.mkdir()
+    text = enveloped.with_name("shed.record.toml").read_text(encoding="utf-8")
+    (there / "shed.toml").write_text(ENVELOPED, encoding="utf-8")
+    (there / "shed.record.toml").write_text(text, encoding="utf-8")
+    assert main(["regress", str(enveloped), "--against", str(there)]) == 0
+    (there / "shed.record.toml").write_text(text.replace('"strength", "gust"', '"strength"'), encoding="utf-8")
+    assert main(["regress", str(enveloped), "--against", str(there)]) == 1
+
+
+def test_an_included_file_is_on_record_by_its_whole_name(tmp_path: Path) -> None:
+    """A name with dots, blanks and slashes is one key of TOML, quoted."""
+    (tmp_path / "office files").mkdir()
+    sections = SHED[SHED.index("[sections.post]") : SHED.index("[joints]")]
+    (tmp_path / "office files" / "sections.of.2026.toml").write_text(sections, encoding="utf-8")
+    path = tmp_path / "shed.toml"
+    include = 'include = ["office files/sections.of.2026.toml"]\n'
+    path.write_text(include + SHED.replace(sections, ""), encoding="utf-8")
+    assert main(["record", str(path), "--reason", "first issue"]) == 0
+    includes = read_record(tmp_path / "shed.record.toml").now.facts["includes"]
+    assert list(includes) == ["office files/sections.of.2026.toml"]
+    assert re.fullmatch("[0-9a-f]{64}", *includes.values())
+    assert check_frame(Standard(path)).state == "held"
+
+
 def test_refused_when_opinions_disagree(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     import dataclasses
 

@@ -52,8 +52,7 @@ def frame_report(frame: FrameOutcome) -> RenderableType:
     parts: list[RenderableType] = [heading(f"{frame.label}: {frame.state}"), Text(f"  {frame.says}")]
     rows = [
         (d.place.case, words.place(d.place), d.place.quantity,
-         "; ".join(f"{name} {words.number(v)}" for name, v in d.values.items()),
-         words.short(d.difference), words.short(d.allowed))
+         words.both_say(d), words.short(d.difference), words.short(d.allowed))
         for d in frame.differences[:MOST_DIFFERENCES]
     ]  # fmt: skip
     if rows:
@@ -123,8 +122,7 @@ def junit(outcome: SuiteOutcome) -> str:
 def _plain(frame: FrameOutcome) -> str:
     lines = [frame.says]
     for d in frame.differences[:MOST_DIFFERENCES]:
-        values = "; ".join(f"{name} {words.number(v)}" for name, v in d.values.items())
-        lines.append(f"{d.place.case}: {words.place(d.place)}, {d.place.quantity}: {values}; "
+        lines.append(f"{d.place.case}: {words.place(d.place)}, {d.place.quantity}: {words.both_say(d)}; "
                      f"differ by {words.short(d.difference)}, allowed {words.short(d.allowed)}")  # fmt: skip
     return "\n".join(lines)
 

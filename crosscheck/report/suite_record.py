@@ -84,7 +84,7 @@ def _frame_record(f: FrameOutcome, frame: Frame | None, around: Circumstances) -
 def _differences(numbered: list[tuple[int, Difference]]) -> Block:
     rows = tuple(
         (str(k), d.place.case, words.place(d.place), d.place.quantity,
-         "; ".join(f"{name} {words.number(v)}" for name, v in d.values.items()), words.short(d.difference),
+         words.both_say(d), words.short(d.difference),
          words.short(d.allowed), "")
         for k, d in numbered
     )  # fmt: skip

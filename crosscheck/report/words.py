@@ -64,6 +64,11 @@ def _where(p: Place) -> str:
     return "whole frame"
 
 
+def both_say(d: Difference) -> str:
+    """What each side says at a place, and a note to it."""
+    return "; ".join([*(f"{name} {number(v)}" for name, v in d.values.items()), *([d.note] if d.note else [])])
+
+
 def tension_face(frame: Frame, member: str, span_moment: float | None, scale: float = 0.0) -> str:
     """Which face of the member a moment stretches: "bottom", "top", "left", "right"; none for noise of `scale`.
 

@@ -17,9 +17,8 @@ import numpy as np
 from crosscheck import __version__
 from crosscheck.answer import CaseAnswer
 from crosscheck.check import Opinions, ask, read
-from crosscheck.compare.differences import Difference, Place, worst_first
 from crosscheck.compare.opinions import END_QUANTITIES, JOINT_QUANTITIES, REACTION_QUANTITIES, closeness
-from crosscheck.compare.tolerance import RECORD, Scales, allowed
+from crosscheck.compare.tolerance import Scales
 from crosscheck.files import alone, replace_text
 from crosscheck.frame.model import Floats, Frame
 from crosscheck.problems import Problem, UnusableInput
@@ -43,10 +42,14 @@ class Refused(Exception):
 
 @dataclass(frozen=True, slots=True)
 class Entry:
-    """One state of the record. facts: reason, date, versions and the like, as written; values: case, table, rows."""
+    """One state of the record. facts: reason, date, versions and the like, as written; values: case, table, rows.
+
+    envelopes: by name the cases and combinations that each is over. Their extremes follow from the values of these.
+    """
 
     facts: Mapping[str, Any]
     values: Mapping[str, Mapping[str, Rows]]
+    envelopes: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, slots=True)
@@ -97,10 +100,11 @@ def _entry(result: Opinions, reason: str, today: datetime.date, claims: list[str
     }
     if frame.includes:
         facts["includes"] = {one.file: one.sha256 for one in frame.includes}
-    return Entry(facts, {name: _agreed_tables(result, name) for name in result.names})
+    values = {name: agreed_tables(result, name) for name in result.names}
+    return Entry(facts, values, {name: frame.envelopes[name].names for name in result.envelopes})
 
 
-def _agreed_tables(result: Opinions, name: str) -> dict[str, Rows]:
+def agreed_tables(result: Opinions, name: str) -> dict[str, Rows]:
     agreed = next(a.cases[name] for a in result.answers.values() if name in a.cases)
     return _tables(result.frame, agreed, result.judgements[name].scales)
 
@@ -143,6 +147,8 @@ def as_text(frame_name: str, record: Record) -> str:
 
 def _entry_lines(entry: Entry, name: str, head: str) -> list[str]:
     lines = [head, *(f"{key} = {_value(v)}" for key, v in entry.facts.items()), ""]
+    if entry.envelopes:
+        lines += [f"[{name}.envelopes]", *(f"{_text(key)} = {_value(list(of))}" for key, of in entry.envelopes.items()), ""]
     for case, tables in entry.values.items():
         for table, rows in tables.items():
             lines.append(f"[{name}.values.{_text(case)}.{table}]")
@@ -157,10 +163,15 @@ def _value(value: Any) -> str:
     if isinstance(value, datetime.date):
         return value.isoformat()
     if isinstance(value, Mapping):
-        return "{ " + ", ".join(f"{k} = {_value(v)}" for k, v in value.items()) + " }"
+        return "{ " + ", ".join(f"{_key(k)} = {_value(v)}" for k, v in value.items()) + " }"
     if isinstance(value, list):
         return "[" + ", ".join(_value(v) for v in value) + "]"
     return repr(value)
+
+
+def _key(key: str) -> str:
+    """A bare key where TOML has it bare and as one: a file's name has dots and slashes."""
+    return key if key and all(c.isascii() and (c.isalnum() or c in "-_") for c in key) else _text(key)
 
 
 def _text(text: str) -> str:
@@ -228,82 +239,16 @@ def read_record(path: Path) -> Record:
 
 
 def _read_entry(data: Mapping[str, Any]) -> Entry:
-    facts = {k: v for k, v in data.items() if k != "values"}
+    facts = {k: v for k, v in data.items() if k not in ("values", "envelopes")}
+    envelopes = {name: tuple(map(str, of)) for name, of in data.get("envelopes", {}).items()}
     values = {
         case: {table: {key: _read_row(row) for key, row in rows.items()} for table, rows in tables.items()}
         for case, tables in data["values"].items()
     }
     for needed in ("reason", "date", "frame_sha256"):
         facts[needed]
-    return Entry(facts, values)
+    return Entry(facts, values, envelopes)
 
 
 def _read_row(row: list[Any]) -> tuple[float | None, ...]:
     return tuple(None if v == UNDETERMINED else float(v) for v in row)
-
-
-# --- comparing
-
-
-def compare_tables(
-    case: str, ours: Mapping[str, Rows], theirs: Mapping[str, Rows], scales: Scales, names: tuple[str, str]
-) -> tuple[list[Difference], int]:
-    """Differences of two sets of tables of one case by the tolerance for records, and how many values were compared."""
-    found: list[Difference] = []
-    compared = 0
-    for table, quantities in QUANTITIES.items():
-        mine, other = ours.get(table, {}), theirs.get(table, {})
-        for key in [*mine, *(k for k in other if k not in mine)]:
-            for k, quantity in enumerate(quantities):
-                a = mine[key][k] if key in mine else None
-                b = other[key][k] if key in other else None
-                if a is None and b is None:
-                    continue
-                compared += 1
-                found += _moved(_place(case, table, key, quantity), a, b, scales.of(quantity), names)
-    return worst_first(found), compared
-
-
-def _moved(
-    place: Place, a: float | None, b: float | None, scale: float, names: tuple[str, str]
-) -> list[Difference]:
-    values = {names[0]: a, names[1]: b}
-    if a is None or b is None:
-        return [Difference(place, values, float("inf"), 0.0, note="only one of the two gives a value")]
-    may = float(allowed(a, b, RECORD, scale))
-    apart = abs(a - b)
-    return [] if apart <= may else [Difference(place, values, apart, may)]
-
-
-def _place(case: str, table: str, key: str, quantity: str) -> Place:
-    if table == "ends":
-        member, _, joint = key.rpartition(" at ")
-        return Place(case, "member_ends", quantity, member=member, joint=joint)
-    return Place(case, "joints" if table == "joints" else "reactions", quantity, joint=key)
-
-
-def table_scales(*sides: Mapping[str, Rows]) -> Scales:
-    """Scales of a case from values alone, for two records whose frames are not solved again."""
-
-    def largest(table: str, columns: tuple[int, ...]) -> float:
-        rows = [row for side in sides for row in side.get(table, {}).values()]
-        return max((abs(row[c] or 0.0) for row in rows for c in columns), default=0.0)
-
-    forces = max(largest("ends", (0, 1)), largest("reactions", (0, 1)))
-    moments = max(largest("ends", (2,)), largest("reactions", (2,)))
-    return Scales(forces, moments, largest("joints", (0, 1)), largest("joints", (2,)))
-
-
-def against_record(result: Opinions, record: Record) -> tuple[list[Difference], int]:
-    """What moved since the values went on record, and how many values were compared."""
-    found: list[Difference] = []
-    compared = 0
-    for name in [*result.names, *(n for n in record.now.values if n not in result.names)]:
-        if name in result.judgements:
-            ours, scales = _agreed_tables(result, name), result.judgements[name].scales
-        else:
-            ours, scales = {}, Scales(1.0, 1.0, 1.0, 1.0)
-        differences, count = compare_tables(name, ours, record.now.values.get(name, {}), scales, ("now", "on record"))
-        found += differences
-        compared += count
-    return worst_first(found), compared

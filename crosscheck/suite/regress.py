@@ -16,7 +16,8 @@ from crosscheck.frame.reader import sources
 from crosscheck.problems import Problem, UnusableInput
 from crosscheck.suite.accepted import Accepted, read_accepted
 from crosscheck.suite.beside import Expectation, Standard, expectation, frames_below, standards
-from crosscheck.suite.record import against_record, compare_tables, read_record, table_scales
+from crosscheck.suite.moved import Moved, against_record, between_records
+from crosscheck.suite.record import read_record
 from crosscheck.suite.spread import spread
 
 STATES = (
@@ -102,11 +103,11 @@ def _check(standard: Standard, today: datetime.date) -> FrameOutcome:
     if not standard.record.exists():
         return FrameOutcome(standard, "never on record", "no values on record", (), claims, accepted)
     record = read_record(standard.record)
-    moved, compared = against_record(result, record)
+    moved = against_record(result, record)
     gone = [c for c in record.now.facts.get("claims", []) if not standard.path.with_name(c).exists()]
     older = record.now.facts["frame_sha256"] != frame.content
-    state, says = _state(bool(moved), older, gone, len(moved), compared)
-    return FrameOutcome(standard, state, says, tuple(moved), claims, accepted, compared)
+    state, says = _state(moved, older, gone)
+    return FrameOutcome(standard, state, says, moved.differences, claims, accepted, moved.compared)
 
 
 def _since_recorded(standard: Standard, content: str) -> str:
@@ -118,17 +119,16 @@ def _since_recorded(standard: Standard, content: str) -> str:
     return "; the frame file has changed since its values went on record" if changed else ""
 
 
-def _state(moved: bool, older: bool, gone: Sequence[str], count: int, compared: int) -> tuple[str, str]:
+def _state(moved: Moved, older: bool, gone: Sequence[str]) -> tuple[str, str]:
     if older:
-        tail = f"; {count:,} of {compared:,} values moved" if moved else "; no value moved"
-        return "record older than the frame", f"the frame file has changed since its values went on record{tail}"
-    if moved:
-        return "moved", f"{count:,} of {compared:,} values moved"
+        return "record older than the frame", f"the frame file has changed since its values went on record; {moved.says}"
+    if moved.any:
+        return "moved", moved.says
     if gone:
         return "claim deleted", f"{', '.join(gone)} lay beside the frame when it went on record"
-    if compared == 0:
+    if moved.compared == 0:
         return "undecided", "nothing on record could be compared"
-    return "held", f"{compared:,} values hold"
+    return "held", moved.says
 
 
 def _claims(
@@ -284,21 +284,8 @@ def _against_one(frame: Standard, twin: Standard) -> FrameOutcome:
         which = " and ".join(p.as_posix() for p in (ours, theirs) if not p.exists())
         return FrameOutcome(frame, "never on record", f"no values on record at {which}")
     try:
-        found, compared = _compare_records(ours, theirs)
+        found = between_records(read_record(ours), read_record(theirs))
     except UnusableInput as error:
         return FrameOutcome(frame, "unreadable", "; ".join(str(p) for p in error.problems[:3]))
-    state = "moved" if found else "held" if compared else "undecided"
-    says = f"{len(found):,} of {compared:,} values moved" if found else f"{compared:,} values hold"
-    return FrameOutcome(frame, state, says, tuple(found), compared=compared)
-
-
-def _compare_records(ours: Path, theirs: Path) -> tuple[list[Difference], int]:
-    here, there = read_record(ours).now, read_record(theirs).now
-    found: list[Difference] = []
-    compared = 0
-    for case in [*here.values, *(c for c in there.values if c not in here.values)]:
-        a, b = here.values.get(case, {}), there.values.get(case, {})
-        differences, count = compare_tables(case, a, b, table_scales(a, b), ("here", "there"))
-        found += differences
-        compared += count
-    return found, compared
+    state = "moved" if found.any else "held" if found.compared else "undecided"
+    return FrameOutcome(frame, state, found.says, found.differences, compared=found.compared)
