@@ -18,7 +18,7 @@ from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, pars
 from crosscheck.claims.readfile import checked
 from crosscheck.claims.reading import EchoFact, Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
 from crosscheck.claims.scan import RawTable, Scan, cells_of, is_number, scan
-from crosscheck.claims.sentences import entries_told
+from crosscheck.claims.sentences import entries_told, speaks_of_results
 from crosscheck.claims.stated import Stated, stated_in, states_face, with_options
 from crosscheck.claims.which import Which, which_of
 from crosscheck.claims.words import Size, unit_of
@@ -57,6 +57,7 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
         reader.table(raw, grid, meaning)
     for line, sentence, case in scanned.sentences:
         reader.sentence(line, sentence, case)
+    reader.unread_words()
     for sentence in options.values:
         reader.value(sentence, file)
     if not reader.entries and reader.untold:
@@ -246,6 +247,17 @@ class _Reader:
         self.entries += [replace(e, case=e.case or case) for e in entries]
         self.untold += odd
         rows = [(line, text.strip()[:200], why) for why in odd]
+        self.odd += rows
+        self._trace(rows)
+
+    def unread_words(self) -> None:
+        """Headings, remarks and heads of no rows that hold a value in words which nothing has read."""
+        idle = {line for table in self.scanned.tables if not table.rows for line, _ in table.heads}
+        rows = [
+            (line, trace.text.strip(), "a value in words that is not understood")
+            for line, trace in sorted(self.scanned.trace.items())
+            if (trace.taken_for in ("heading", "remark") and not trace.why or line in idle) and speaks_of_results(trace.text)
+        ]
         self.odd += rows
         self._trace(rows)
 

@@ -1,29 +1,24 @@
 """Values in words, as an e-mail or --value gives them: "B1-C1 max 412 kNm, roof sway 18 mm".
 
-Each part with a number is read for what it is of (a member, a joint, or the whole frame), which quantity, and whether
-it is a
-largest value. A value without a stated direction is a size: it is compared without its sign.
+Each number with a unit is read for what it is of (a member, a joint, or the whole frame), which quantity, and whether it is
+a largest value. A value without a stated direction is a size: it is compared without its sign. A moment, shear or axial
+force whose place is not said counts as the frame's largest only where it says so (max, peak, up to).
 """
 
 from __future__ import annotations
 
 import re
-from collections.abc import Iterator
 from dataclasses import dataclass, replace
+from math import copysign, hypot
 
 from crosscheck.claims.names import MemberHit, Names
-from crosscheck.claims.numbers import Number, parse_number
+from crosscheck.claims.numbers import Number, comma_use, parse_number
+from crosscheck.claims.phrases import Told, end_symbols, is_length, is_moment, spelled_out, told
 from crosscheck.claims.reading import Entry
-from crosscheck.claims.words import Size, unit_of
 from crosscheck.frame.units import ANGLE, FORCE, LENGTH, MOMENT, Dimension
 
-_PART = re.compile(r"\s*(?:[;\n]|,(?!\d)|\band\b|(?<=[a-z])\.\s)\s*", re.IGNORECASE)
-_VALUE = re.compile(
-    r"(?<![\w.,])(?P<number>[+\-\u2212]?\d+(?:[.,]\d+)*(?:[eE][+-]?\d+)?)\s*"
-    r"(?P<unit>[A-Za-z\u00b5%\u00b0\u2030]+(?:[ .*\u00b7-]?(?:mm|cm|m|ft|in)\b)?)?"
-)
 _WORDS = {
-    "axial": r"axial|normal|thrust|tie force|compression|tension|\bN(?:_?max|_?min)?\b|\bNEd\b",
+    "axial": r"axial|normal|(?<!horizontal )thrust|tie force|compression|tension|\bN(?:_?max|_?min)?\b|\bNEd\b",
     "shear": r"shear|\bV(?:_?max|_?min)?\b|\bVEd\b",
     "moment": r"moment|bending|hogging|sagging|\bM(?:_?max|_?min)?\b|\bMEd\b|\bBM\b",
     "rotation": r"rotation|slope|turns?\b",
@@ -35,134 +30,234 @@ _WORDS = {
 _MOST = re.compile(r"\bmax(?:imum|\.)?\b|max\b|\bpeak\b|\blargest\b|\bgreatest\b|\bup to\b|\bmin(?:imum)?\b", re.IGNORECASE)
 _SENSE = {"up": ("fy", 1), "upward": ("fy", 1), "upwards": ("fy", 1), "down": ("fy", -1), "downward": ("fy", -1),
           "downwards": ("fy", -1), "right": ("fx", 1), "left": ("fx", -1)}  # fmt: skip
+_SORT = re.compile("|".join([*_WORDS.values(), _MOST.pattern]), re.IGNORECASE)
 _BEARING = re.compile(r"reaction|\b[RF]y\b", re.IGNORECASE)
+_REACTS = re.compile(r"reaction|\b(?:H|R[xy]?|F[xy])\b")
+"""Where these stand on the line, V at a support is what it bears."""
+_NOT_FROM_MEMBER = re.compile(
+    r"\b(?:knees?|eaves?|ridges?|apex|base|bases|foot|feet|tops?|bottoms?|haunch(?:es)?|corners?|crown|valley|supports?|"
+    r"columns?|rafters?|beams?|purlins?|braces?|bracing|roof|floor|gridlines?)\b", re.IGNORECASE)  # fmt: skip
+"""A place of a building, which names no member or joint of the frame."""
 _MOVES = {"fx": "dx", "fy": "dy"}
 _BY_DIMENSION: dict[Dimension, tuple[str, ...]] = {
     FORCE: ("axial", "shear", "fx", "fy"), MOMENT: ("moment",), LENGTH: ("dx", "dy", "across"), ANGLE: ("rotation",),
 }  # fmt: skip
-
-
-@dataclass(frozen=True, slots=True)
-class _Told:
-    """One value and what its words say."""
-
-    number: Number
-    unit: Size | None
-    words: str
-
-
-_END_SYMBOL = re.compile(
-    r"(?<![A-Za-z0-9])(?P<letter>[MVNQ])(?:_|\s?\(|\s)?\{?"
-    r"(?P<first>[A-Za-z0-9']{1,6}?)[-,]?(?P<last>[A-Za-z0-9']{1,6})[)}]?"
-    r"\s*(?:[=:]|\s)\s*(?P<number>[+\-\u2212]?\d+(?:[.,]\d+)?(?:[eE][+-]?\d+)?-?)\s*"
-    r"(?P<unit>[A-Za-z]+(?:[ .*\u00b7-]?m+\b)?)?"
-)
-_LETTERS_OF = {"M": "moment", "V": "shear", "Q": "shear", "N": "axial"}
-
-
-def _end_symbols(text: str, names: Names) -> Iterator[tuple[str, str, str, Number, Size | None]]:
-    """End actions in the notation of hand methods: "M_AB = -12.4", the action on member AB at A. (quantity, member,
-    joint, ...)"""
-    for m in _END_SYMBOL.finditer(text):
-        joined = m.group("first") + m.group("last")
-        if joined.isdigit() and "_" not in m.group():
-            continue  # "N12" is rather a joint's name
-        for k in range(1, len(joined)):
-            first, last = names.joint(joined[:k]), names.joint(joined[k:])
-            hit = names.between(first, last) if first and last else None
-            number = parse_number(m.group("number"), "," in m.group("number"))
-            if hit and first and number:
-                yield _LETTERS_OF[m.group("letter")], hit.name, first, number, _unit(m.group("unit"))
-                break
-
-
-def _is_one_moment(told: _Told, names: Names) -> bool:
-    """One moment of one member, and no other number: "A-B at A  12.4 kNm"."""
-    alone = not _VALUE.search(told.words)
-    return alone and told.unit is not None and told.unit.dimension == MOMENT and _places(told.words, names)[0] is not None
+_ALONG = ("axial", "shear", "moment", "across")
+_UNIT_FIRST = re.compile(r"[(\[]([^)\]\d]{1,8})[)\]]\s*:[^\d]*([+-]?\d+(?:[.,]\d+)?)")
+"""The unit of a list in front of it: "Reactions (kN): A 38.3"."""
+_OPEN_COMMA = re.compile(r"\D*[1-9]\d{0,2},\d{3}(?!\d)\D*")
+_UPRIGHT = 0.2
+"""Below this cosine a member counts as upright: sagging and hogging say nothing of it."""
 
 
 def looks_told(text: str, names: Names) -> bool:
     """Is the line a sentence with values in it, rather than a row of a table?"""
     if not any(c.isdigit() for c in text):
         return False
-    if any(True for _ in _end_symbols(text, names)):
+    text = spelled_out(text, names)
+    if any(True for _ in end_symbols(text, names)):
         return True
-    told = list(_told(text))
-    if len(told) == 1 and _is_one_moment(told[0], names):
+    said = list(told(text))
+    if len(said) == 1 and _is_one_moment(said[0], names):
         return True
-    return bool(told) and all(t.unit and t.unit.dimension in _BY_DIMENSION for t in told) and any(
+    return bool(said) and all(t.unit and t.unit.dimension in _BY_DIMENSION for t in said) and any(
         _MOST.search(t.words) or any(re.search(p, t.words, re.IGNORECASE) for q, p in _WORDS.items() if q != "fy")
-        or _BEARING.search(t.words)
-        for t in told
+        or _BEARING.search(t.words) or is_length(t) and turned_by_word(t) and re.search("mov", t.words, re.IGNORECASE)
+        for t in said
     )  # fmt: skip
 
 
-def _told(text: str) -> Iterator[_Told]:
-    for part in _PART.split(text):
-        found = [m for m in _VALUE.finditer(part) if m.group("unit") and _unit(m.group("unit"))]
-        found = found or list(_VALUE.finditer(part))[-1:]
-        if not found:
-            continue
-        m = found[-1]
-        number = parse_number(m.group("number"), "," in m.group("number") and "." not in m.group("number"))
-        if number is not None:
-            rest = part[: m.start()] + " " + part[m.end() :] if _unit(m.group("unit")) else part[: m.start()]
-            yield _Told(number, _unit(m.group("unit")), rest)
+def speaks_of_results(text: str) -> bool:
+    """Does a line that was taken for a heading or a remark name a quantity and a value with its unit?"""
+    text = _UNIT_FIRST.sub(r"\2 \1", text)
+    return any(t.unit and t.unit.dimension in _BY_DIMENSION and _quantities(t) for t in told(text[:500]))
 
 
-def _unit(text: str | None) -> Size | None:
-    return (unit_of(text) or unit_of(text.split()[0])) if text else None
+def _quantities(said: Told) -> list[str]:
+    """Words of the value that are longer than a letter and name a quantity which its unit allows."""
+    allowed = _BY_DIMENSION.get(said.unit.dimension, ()) if said.unit else ()
+    return [m.group() for q in allowed for m in re.finditer(_WORDS[q], said.words, re.IGNORECASE) if len(m.group()) > 2]
+
+
+def _is_one_moment(said: Told, names: Names) -> bool:
+    """One moment of one member, and no other number: "A-B at A  12.4 kNm"."""
+    alone = not re.search(r"(?<![\w.,])[+\-\u2212]?\d+(?:[.,]\d+)*(?![\w-])", said.words)
+    return alone and is_moment(said) and _places(said.words, names).member is not None
 
 
 def entries_told(text: str, line: int, table: int, names: Names) -> tuple[list[Entry], list[str]]:
     """The values of a sentence, and of each part that was not understood why."""
     out: list[Entry] = []
     odd: list[str] = []
-    for quantity, member, joint, number, unit in _end_symbols(text, names):
-        end = names.frame.members[member].index(joint)
-        out.append(Entry(table, line, "end", quantity, number, unit, member=member, joint=joint, end=end))
-    if out:
-        return out, odd
-    for told in _told(text):
-        entry, why = _entry(told, line, table, names, out[-1] if out else None)
-        if entry:
-            out.append(entry)
-        else:
-            odd.append(why)
-    return out, odd
+    text = spelled_out(text, names)
+    rest = text
+    for s in end_symbols(text, names):
+        end = names.frame.members[s.member].index(s.joint)
+        out.append(Entry(table, line, "end", s.quantity, s.number, s.unit, member=s.member, joint=s.joint, end=end))
+        rest = rest[: s.start] + " " * (s.stop - s.start) + rest[s.stop :]
+    only_units = bool(out)  # what stands between symbols is a value only with a unit of its own
+    before: Entry | None = None
+    last: Told | None = None
+    for bare in told(rest):
+        if only_units and bare.unit is None:
+            continue
+        said = last = _with_manner(bare, last, names)
+        found, why = _Sentence(rest, line, table, names, before).entries(said)
+        out += found
+        odd += [why] if why else []
+        before = found[-1] if found else before
+    return _with_commas(out), odd
 
 
-def _entry(told: _Told, line: int, table: int, names: Names, before: Entry | None) -> tuple[Entry | None, str]:
-    """What one value is. Without a name of its own it is of the member or joint before it, or of the whole frame."""
-    member, joint, case = _places(told.words, names)
-    if member is None and joint is None and before is not None and before.line == line:
-        joint = before.joint if before.kind != "end" else None  # "Rx at A 7 kN, Ry 28 kN"
-    quantity = _quantity(told, member, joint)
-    if quantity is None:
-        return None, f'it is not said which quantity {told.number.printed} is ("{told.words.strip()[:60]}")'
-    if case is None and before is not None:
-        case = before.case
-    sense, turned = _sense(told, quantity)
-    number = replace(told.number, value=turned * told.number.value)
-    blank = Entry(table, line, "extreme", sense, number, told.unit, case=case, extreme="size", sense="size")
-    if sense in ("fx", "fy") and joint is None:
-        return None, f"it is not said which support the {told.number.printed} are for"
-    if turned_by_word(told) and joint is not None and sense in ("fx", "fy", "dx", "dy"):
-        if sense in ("fx", "fy"):
-            return replace(blank, kind="reaction", joint=joint, extreme=None, sense="said"), ""
-        return replace(blank, kind="displacement", joint=joint, extreme=None, sense="said"), ""
-    if sense in ("axial", "shear", "moment", "across"):
-        if member is not None and joint is not None and not _MOST.search(told.words):
-            end = names.frame.members[member.name].index(joint) if joint in names.frame.members[member.name] else None
-            if end is None:
-                return None, f"{joint} is not an end of member {member.name}"
-            return replace(blank, kind="end", member=member.name, end=end, joint=joint, extreme=None), ""
-        if member is None and joint is not None and sense == "moment":
-            return _moment_at(joint, blank, names)
-        whole = member.name if member else before.member if before is not None and joint is None else None
-        return replace(blank, member=whole, extreme="size"), ""
-    return replace(blank, joint=joint), ""
+def _with_manner(said: Told, last: Told | None, names: Names) -> Told:
+    """A value whose words name a place and no quantity is of the same sort as the one before it: "Max sagging moment in AB
+    36.7 kNm, in BC 101.6 kNm"."""
+    alike = last is not None and last.unit is not None and said.unit is not None
+    if last is None or not alike or last.unit.dimension != said.unit.dimension or _sorts(said.words):  # type: ignore[union-attr]
+        return said
+    places = _places(said.words, names)
+    if places.member is None and not places.joints:
+        return said
+    most = places.member is not None and not places.joints
+    sorts = [word for word in _sorts(last.words) if most or not _MOST.match(word)]
+    return replace(said, words=f"{said.words} {' '.join(sorts)}")
+
+
+def _sorts(words: str) -> list[str]:
+    """The words that say what sort of value is meant; letters count as capitals only."""
+    return [m.group() for m in _SORT.finditer(words) if len(m.group()) > 1 or m.group().isupper()]
+
+
+def _with_commas(entries: list[Entry]) -> list[Entry]:
+    """Commas before decimals or thousands, as far as the sentence's numbers tell; open where they do not."""
+    use = comma_use(e.number.printed for e in entries)
+    if use == "unsure":
+        return [replace(e, comma_open=bool(_OPEN_COMMA.fullmatch(e.number.printed))) for e in entries]
+    if use == "thousands":
+        return [replace(e, number=_as_thousands(e.number)) for e in entries]
+    return entries
+
+
+def _as_thousands(number: Number) -> Number:
+    read = parse_number(number.printed)
+    if read is None:
+        return number
+    return replace(read, value=copysign(read.value, number.value))
+
+
+@dataclass(frozen=True, slots=True)
+class _Places:
+    """What the words name: a member, joints, a case; several joints only where they are listed ("A & D")."""
+
+    member: MemberHit | None
+    joints: tuple[str, ...]
+    case: str | None
+
+
+@dataclass(frozen=True, slots=True)
+class _Sentence:
+    """One sentence, and the value before the one that is read: without a name of its own, a value is of the member or
+    joint before it."""
+
+    text: str
+    line: int
+    table: int
+    names: Names
+    before: Entry | None
+
+    def entries(self, said: Told) -> tuple[list[Entry], str]:
+        """What one value is: one entry, or one a joint of those listed; or why it is not understood."""
+        places = _places(said.words, self.names)
+        if len(places.joints) < 2:
+            entry, why = self._entry(said, places.member, next(iter(places.joints), None), places.case)
+            return ([entry] if entry else []), why
+        read = [self._entry(said, places.member, joint, places.case) for joint in places.joints]
+        whys = [why for _, why in read if why]
+        return ([] if whys else [entry for entry, _ in read if entry]), (whys[0] if whys else "")
+
+    def _entry(
+        self, said: Told, member: MemberHit | None, joint: str | None, case: str | None
+    ) -> tuple[Entry | None, str]:
+        before = self.before
+        unnamed = member is None and joint is None
+        elsewhere = _NOT_FROM_MEMBER.search(said.words) if unnamed else None
+        if unnamed and before is not None and not elsewhere:
+            joint = before.joint if before.kind != "end" else None  # "Rx at A 7 kN, Ry 28 kN"
+        quantity = self._quantity(said, member, joint)
+        if quantity is None:
+            return None, f'it is not said which quantity {said.number.printed} is ("{said.words.strip()[:60]}")'
+        if case is None and before is not None:
+            case = before.case
+        sense, turned = _sense(said, quantity)
+        number = replace(said.number, value=turned * said.number.value)
+        blank = Entry(self.table, self.line, "extreme", sense, number, said.unit, case=case, extreme="size", sense="size")
+        if sense in ("fx", "fy") and joint is None:
+            return None, f"it is not said which support the {said.number.printed} are for"
+        if turned_by_word(said) and joint is not None and sense in ("fx", "fy", "dx", "dy"):
+            kind = "reaction" if sense in ("fx", "fy") else "displacement"
+            return replace(blank, kind=kind, joint=joint, extreme=None, sense="said"), ""  # type: ignore[arg-type]
+        if sense not in _ALONG:
+            return replace(blank, joint=joint), ""
+        if member is None and before is not None and before.member and not elsewhere:
+            # "B-C at B 51.2 kNm, at C 48.0": the second is of the same member
+            carried = unnamed or joint in self.names.frame.members[before.member]
+            member = MemberHit(before.member, 0) if carried else None
+        return self._along(said, sense, member, joint, blank)
+
+    def _along(
+        self, said: Told, sense: str, member: MemberHit | None, joint: str | None, blank: Entry
+    ) -> tuple[Entry | None, str]:
+        """A value along a member: at a station or an end, its largest, or the largest of the frame."""
+        names, most = self.names, bool(_MOST.search(said.words))
+        if member is None:
+            if joint is not None and sense == "moment":
+                return _moment_at(joint, blank, names)
+            if joint is not None or sense != "across" and (not most or _NOT_FROM_MEMBER.search(said.words)):
+                return None, f"it is not said which member or joint the {said.number.printed} are of"
+            if sense == "moment" and _bends(said):
+                return None, f"it is not said of which member the {said.number.printed} are the most"
+            return (_directed(blank, _pulls(said)) if sense == "axial" else blank), ""
+        bent = _bent(_bends(said), member.name, names) if sense == "moment" else _pulls(said) if sense == "axial" else 0
+        blank = _directed(replace(blank, member=member.name), bent)
+        if said.station is not None and not most:
+            return self._at_station(said, blank)
+        if joint is None or most:
+            return blank, ""
+        if joint not in names.frame.members[member.name]:
+            return None, f"{joint} is not an end of member {member.name}"
+        end = names.frame.members[member.name].index(joint)
+        if bent and end == 1 and sense == "moment":
+            # clockwise on the end
+            blank = replace(blank, number=replace(blank.number, value=-blank.number.value))
+        return replace(blank, kind="end", end=end, joint=joint, extreme=None), ""
+
+    def _at_station(self, said: Told, blank: Entry) -> tuple[Entry | None, str]:
+        """At a distance from the member's `from` joint, or from the one that is named."""
+        assert said.station is not None and blank.member is not None
+        station, pair = said.station, self.names.frame.members[blank.member]
+        at, half, size, share = station.at.value, station.at.half, station.unit, station.unit.text == "%"
+        if share:
+            at, half = at / 100, half / 100
+        origin = self.names.joint(station.origin) if station.origin else None
+        if origin is not None and origin not in pair:
+            return None, f"{origin} is not an end of member {blank.member}"
+        if origin == pair[1]:
+            (ax, ay), (bx, by) = (self.names.frame.xy[j] for j in pair)
+            whole = 1.0 if share else hypot(bx - ax, by - ay) * self.names.frame.length / size.factor
+            at = whole - at
+        unit = None if share else size
+        return replace(blank, kind="span", at=at, at_half=half, at_unit=unit, at_share=share, run=1, extreme=None), ""
+
+    def _quantity(self, said: Told, member: MemberHit | None, joint: str | None) -> str | None:
+        """The quantity that the words name among those that the unit allows; the unit alone where only one fits."""
+        quantity = _named(said, member, joint)
+        if quantity == "shear" and member is None and joint in self.names.frame.supports and _V_ALONE.search(said.words):
+            # V at a support is the shear there, or what the support bears, as the rest of the line has it
+            return "fy" if _REACTS.search(self.text) and not re.search("shear", said.words, re.IGNORECASE) else quantity
+        return quantity
+
+
+_V_ALONE = re.compile(r"\bV\b")
 
 
 def _moment_at(joint: str, blank: Entry, names: Names) -> tuple[Entry | None, str]:
@@ -176,14 +271,45 @@ def _moment_at(joint: str, blank: Entry, names: Names) -> tuple[Entry | None, st
     return None, f"it is not said which member's moment at {joint} the {blank.number.printed} are"
 
 
-def turned_by_word(told: _Told) -> bool:
+def _bends(said: Told) -> int:
+    """+1 where the words say sagging, -1 hogging, 0 where neither or both."""
+    sags, hogs = (bool(re.search(rf"\b{word}\b", said.words, re.IGNORECASE)) for word in ("sagging", "hogging"))
+    return int(sags) - int(hogs)
+
+
+def _directed(blank: Entry, sign: int) -> Entry:
+    """The greatest or least value with the sign that words give it; as it is where they give none."""
+    if not sign:
+        return blank
+    number = replace(blank.number, value=sign * abs(blank.number.value))
+    return replace(blank, number=number, extreme="max" if sign > 0 else "min", sense="said")
+
+
+def _pulls(said: Told) -> int:
+    """+1 where the words say tension, -1 compression, 0 where neither or both."""
+    pulls, presses = (bool(re.search(rf"\b{w}", said.words, re.IGNORECASE)) for w in ("tensi", "compressi"))
+    return int(pulls) - int(presses)
+
+
+def _bent(bends: int, member: str, names: Names) -> int:
+    """The sign that sagging or hogging has along a member, 0 for an upright one.
+
+    Sagging is tension below, which is local -y where the member runs to the right."""
+    (ax, ay), (bx, by) = (names.frame.xy[j] for j in names.frame.members[member])
+    length = hypot(bx - ax, by - ay)
+    if not length or abs(bx - ax) < _UPRIGHT * length:
+        return 0
+    return bends if bx > ax else -bends
+
+
+def turned_by_word(said: Told) -> bool:
     """Does a word (up, down, left, right) give the direction?"""
-    return any(re.search(rf"\b{w}\b", told.words, re.IGNORECASE) for w in _SENSE)
+    return any(re.search(rf"\b{w}\b", said.words, re.IGNORECASE) for w in _SENSE)
 
 
-def _sense(told: _Told, quantity: str) -> tuple[str, int]:
+def _sense(said: Told, quantity: str) -> tuple[str, int]:
     for word, (axis, sign) in _SENSE.items():
-        if re.search(rf"\b{word}\b", told.words, re.IGNORECASE):
+        if re.search(rf"\b{word}\b", said.words, re.IGNORECASE):
             if quantity in ("fx", "fy"):
                 return axis, sign
             if quantity in ("dx", "dy"):
@@ -191,8 +317,9 @@ def _sense(told: _Told, quantity: str) -> tuple[str, int]:
     return quantity, 1
 
 
-def _places(words: str, names: Names) -> tuple[MemberHit | None, str | None, str | None]:
-    """The member, joint and case that the words name, each if exactly one is named."""
+def _places(words: str, names: Names) -> _Places:
+    """The member, joints and case that the words name; a member or case only where exactly one is named, and a joint beside
+    others only where they are listed."""
     tokens = re.findall(r"[^\s,;:=()]+", words)
     members: dict[str, MemberHit] = {}
     joints: dict[str, str] = {}
@@ -200,7 +327,7 @@ def _places(words: str, names: Names) -> tuple[MemberHit | None, str | None, str
     for size in (3, 2, 1):
         for k in range(len(tokens) - size + 1):
             text = " ".join(tokens[k : k + size])
-            if size == 1 and _is_common(text):
+            if "&" in text or size == 1 and _is_common(text):
                 continue
             if (hit := names.member(text)) and not members:
                 members[hit.name] = hit
@@ -209,9 +336,10 @@ def _places(words: str, names: Names) -> tuple[MemberHit | None, str | None, str
             elif case := names.case(text):
                 cases.add(case)
     member = next(iter(members.values())) if len(members) == 1 else None
-    if member and len(joints) > 1:
+    listed = "&" in tokens and len(joints) == tokens.count("&") + 1
+    if len(joints) > 1 and (member or not listed):
         joints = {}
-    return member, next(iter(joints)) if len(joints) == 1 else None, cases.pop() if len(cases) == 1 else None
+    return _Places(member, tuple(joints), cases.pop() if len(cases) == 1 else None)
 
 
 def _is_common(token: str) -> bool:
@@ -222,22 +350,21 @@ def _is_common(token: str) -> bool:
     ) or token in ("M", "V", "N", "R", "H")  # fmt: skip
 
 
-def _quantity(told: _Told, member: MemberHit | None, joint: str | None) -> str | None:
-    """The quantity that the words name among those that the unit allows; the unit alone where only one fits."""
-    allowed = _BY_DIMENSION.get(told.unit.dimension, ()) if told.unit else tuple(_WORDS)
+def _named(said: Told, member: MemberHit | None, joint: str | None) -> str | None:
+    allowed = _BY_DIMENSION.get(said.unit.dimension, ()) if said.unit else tuple(_WORDS)
     named = [
-        q for q in _WORDS if q in allowed and re.search(_WORDS[q], told.words, re.IGNORECASE if q not in _LETTERS else 0)
+        q for q in _WORDS if q in allowed and re.search(_WORDS[q], said.words, re.IGNORECASE if q not in _LETTERS else 0)
     ]
-    named = named or [q for q in _WORDS if q in allowed and re.search(_WORDS[q], told.words, re.IGNORECASE)]
+    named = named or [q for q in _WORDS if q in allowed and re.search(_WORDS[q], said.words, re.IGNORECASE)]
     if "across" in named and len(named) > 1:
         named.remove("across")
     if named == ["across"] and member is None:
         return "dy"
     if named:
         return named[0]
-    if told.unit and told.unit.dimension == FORCE and joint is not None and member is None and turned_by_word(told):
+    if said.unit and said.unit.dimension == FORCE and joint is not None and member is None and turned_by_word(said):
         return "fy"
-    if told.unit and told.unit.dimension == LENGTH and turned_by_word(told):
+    if is_length(said) and turned_by_word(said):
         return "dy"
     return allowed[0] if len(allowed) == 1 else None
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -243,6 +243,8 @@ class ClaimComparison:
         values: dict[str, float | None] = {o: (r if np.isfinite(r) else None) for o, r in nearest.items()}
         values["claim"] = v.value
         note = "no support here, so nothing can react" if unsupported else ""
+        if v.kind == "extreme" and v.extreme == "size" and len(known) == 1:
+            note = self._of_other_sign(v, next(iter(known.values())), scale)
         tally.differences.append(
             Difference(_place(v), values, apart, may, abs(claimed) < abs(reference), note, v.line)
         )
@@ -264,6 +266,17 @@ class ClaimComparison:
         best = min(inside, key=off.__getitem__, default=None)
         values: dict[str, float | None] = {opinion: there[best] if best else None, "claim": v.value}
         return Difference(_place(v), values, off[best] if best else 0.0, may, False, note, v.line)
+
+    def _of_other_sign(self, v: ClaimedValue, known: _Known, scale: float) -> str:
+        """What to say where the claimed size is that of the largest value of the other sign."""
+        ends = [self._extreme(replace(v, extreme="max"), known), self._extreme(replace(v, extreme="min"), known)]
+        other, claimed = min(map(abs, ends)), abs(v.value)
+        if ends[0] * ends[1] < 0 and abs(claimed - other) <= float(
+            allowed(claimed, other, self.tolerance, scale, v.half_digit)
+        ):
+            words = {"moment": 'say "sagging" or "hogging"', "axial": 'say "tension" or "compression"'}.get(v.quantity)
+            return f"the size of the largest with the other sign{f'; {words} if that is meant' if words else ''}"
+        return ""
 
     def _scale(self, v: ClaimedValue, known: _Known, scales: Scales) -> float:
         """The member's or joint's own largest value of the quantity, but no less than a share of the case's scale."""

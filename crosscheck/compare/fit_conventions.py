@@ -102,10 +102,10 @@ class Batch:
 
 def conventions(batch: Batch) -> list[Convention]:
     """Every convention the batch may be printed in, the plainest first."""
-    if batch.said:
-        return [Convention("", 1, "frame", WORDS[batch.kind, batch.quantity, ""][0])]
     family = "along" if batch.kind in ("span", "extreme") else batch.kind
     forms = _FORMS.get((batch.kind, batch.quantity), ("internal",) if family == "along" else ("",))
+    if batch.said:
+        return [Convention(forms[0], 1, "frame", WORDS[family, batch.quantity, forms[0]][0])]
     out = []
     for form in forms:
         for rule in _rules(batch, form):

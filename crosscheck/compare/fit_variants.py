@@ -7,7 +7,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import replace
-from math import cos, radians, sin
+from math import copysign, cos, radians, sin
 
 import numpy as np
 
@@ -50,7 +50,10 @@ def _other_ways(entries: list[Entry], frame: Frame, face: bool) -> Iterator[Vari
 
 def _as_thousands(e: Entry) -> Entry:
     number = parse_number(e.number.printed, decimal_comma=False)
-    return replace(e, number=number) if e.comma_open and number else e
+    if not e.comma_open or number is None:
+        return e
+    # "down" and "hogging" have turned the sign of a value in words; it stays turned.
+    return replace(e, number=replace(number, value=copysign(number.value, e.number.value)))
 
 
 def _end(e: Entry) -> int | None:

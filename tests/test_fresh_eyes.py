@@ -1,0 +1,115 @@
+"""What an engineer with a deadline stumbled over, who knew the README alone: each check failed before it was mended.
+
+Expected values are closed forms (Kleinlogel's portal with fixed feet; the three-moment equation for a beam of two spans),
+which the comments give; from memory.
+"""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+
+from tests.calls import Call, call, put
+
+PORTAL = """
+title = "Portal with fixed feet"
+units = "kN m"
+materials.s = { E = "210 GPa" }
+sections.c = { I = "10000 cm^4" }
+joints = { A = [0, 0], B = [0, 4], C = [8, 4], D = [8, 0] }
+members."A-B" = { section = "c", material = "s" }
+members."B-C" = { section = "c", material = "s" }
+members."C-D" = { section = "c", material = "s" }
+supports = { A = "fixed", D = "fixed" }
+analysis = { axial = "rigid" }
+loads.wind.apply = [{ joint = "B", force = 40, direction = "right" }]
+loads.dead.apply = [{ member = "B-C", uniform = 12, direction = "down" }]
+"""
+"""k = h / L = 1/2. Dead: M_B = w L^2 / (6 (k + 2)) = 51.2, M_A = 25.6, mid span 96 - 51.2 = 44.8. Wind: M_A = P h / 2
+(3 k + 1) / (6 k + 1) = 50, M_B = 80 - 50 = 30, V = 60 / 8 = 7.5, H = 20."""
+
+BEAM = """
+title = "Beam of two spans"
+units = "N mm"
+materials.s = { E = 200000 }
+sections.b = { I = 80e6, A = 5000 }
+joints = { A = [0, 0], B = [6000, 0], C = [14000, 0] }
+members.AB = { from = "A", to = "B", section = "b", material = "s" }
+members.BC = { from = "C", to = "B", section = "b", material = "s" }
+supports = { A = "pinned", B = "roller", C = "roller" }
+loads.q.apply = [{ members = ["AB", "BC"], uniform = 20, direction = "down" }]
+"""
+"""M_B = -w (a^3 + b^3) / (8 (a + b)) = -130 kNm; R_A = 60 - 130/6 = 38.33, R_C = 80 - 130/8 = 63.75, R_B = 177.92 kN; in
+the spans R^2 / (2 w) = 36.74 and 101.6 kNm. BC runs from right to left on purpose: sagging is tension below in it, too."""
+
+
+def told(tmp_path: Path, frame: str, case: str, *lines: str) -> Call:
+    """What verify says of values in words."""
+    claim = put(tmp_path, "\n".join(lines) + "\n", "claim.txt")
+    return call("verify", put(tmp_path, frame), claim, "--case", case)
+
+
+RIGHT = [
+    (PORTAL, "wind", 3, "Hi, for the wind case I get M_A = -50.0 kNm, M_B = 30 kNm, and the sway is 8.9 mm to the right."),
+    (PORTAL, "dead", 3, "B-C max sagging 44.8 kNm, B-C hogging 51.2 kNm at B, B-C midspan moment 44.8 kNm"),
+    (PORTAL, "dead", 2, "moment in B-C at 2 m from C 20.8 kNm sagging, moment in B-C 20.8 kNm at 25%"),
+    (PORTAL, "wind", 4, "Reactions: A H = 20 kN, V = 7.5 kN\nReactions: D H = 20 kN, V = 7.5 kN"),
+    (PORTAL, "wind", 3, "M_AB = -50 kNm, M_BA = -30 kNm, sway 8.89 mm"),
+    (PORTAL, "wind", 3, "moments are 50 kNm at both A and D, sway 8.9 mm"),
+    (PORTAL, "wind", 1, "B moves 8.89 mm to the right"),
+    (PORTAL, "wind", 2, "axial force in A-B 7.5 kN tension, in C-D 7.5 kN compression"),
+    (PORTAL, "dead", 1, "With 12 kN/m the largest moment is 51.2 kNm"),
+    (PORTAL, "dead", 2, "moment at B 51.2 kNm shear in B-C 48 kN"),
+    (BEAM, "q", 4, "Moment over B: 130 kNm hogging. Max sagging moment in span AB 36.7 kNm, in span BC 101.6 kNm.\n"
+                   "Max deflection span BC 34.8 mm"),
+    (BEAM, "q", 3, "Support reactions (kN): A 38.3, B 177.9, C 63.8"),
+    (BEAM, "q", 3, "RA = 38.3 kN, RB = 177.9 kN and R_C = 63.75 kN"),
+    (BEAM, "q", 3, "Ay = 38.3 kN, By = 177.9 kN, C_y = 63.75 kN"),
+    (BEAM, "q", 2, "Vertical reaction at B is 177.9 kN and at A 38.3 kN"),
+    (BEAM, "q", 3, "Reaction at B 177,917 N, at A 38,333 N, moment AB at B 129,998,000.0 N mm"),
+]  # fmt: skip
+
+
+@pytest.mark.parametrize(("frame", "case", "count", "text"), RIGHT, ids=[r[3][:40] for r in RIGHT])
+def test_right_values_in_words_agree(tmp_path: Path, frame: str, case: str, count: int, text: str) -> None:
+    said = told(tmp_path, frame, case, text)
+    assert said.status == 0 and f"the {count} value" in " ".join(said.out.split()), said.out
+
+
+WRONG = [
+    (PORTAL, "dead", "B-C max sagging 51.2 kNm"),
+    (PORTAL, "dead", "moment in B-C at 2 m from C 20.8 kNm hogging"),
+    (PORTAL, "dead", "moment B-C at C 51.2 kNm sagging"),
+    (PORTAL, "wind", "axial force in A-B 7.5 kN compression"),
+    (PORTAL, "wind", "B moves 8.89 mm to the left"),
+    (PORTAL, "wind", "moments are 50 kNm at both A and B"),
+    (BEAM, "q", "max sagging moment in BC 130 kNm"),
+    (BEAM, "q", "RA = 38.3 kN, RB = 187.9 kN"),
+]
+
+
+@pytest.mark.parametrize(("frame", "case", "text"), WRONG, ids=[w[2][:40] for w in WRONG])
+def test_wrong_values_in_words_disagree(tmp_path: Path, frame: str, case: str, text: str) -> None:
+    assert told(tmp_path, frame, case, text).status == 1
+
+
+PLACELESS = ["knee moment 30 kNm", "base moments are 40 kNm", "horizontal thrust 35 kN", "moment 30 kNm"]
+
+
+@pytest.mark.parametrize("text", PLACELESS)
+def test_a_value_of_no_place_is_not_compared_and_that_is_said(tmp_path: Path, text: str) -> None:
+    """A knee is no joint of the frame, and its moment not the frame's largest."""
+    said = told(tmp_path, PORTAL, "wind", "A-B at A 50 kNm", text)
+    assert said.status == 0 and "it is not said which" in said.out
+
+
+def test_words_with_a_value_that_nothing_reads_are_said(tmp_path: Path) -> None:
+    """They were taken for a heading, and nothing said so."""
+    said = told(tmp_path, PORTAL, "wind", "A-B at A 50 kNm", "", "Support reactions (kN): left 20.0, right 20.0")
+    assert "a value in words that is not understood" in " ".join(said.out.split()), said.out
+
+
+def test_the_size_of_the_other_sign_is_said(tmp_path: Path) -> None:
+    said = told(tmp_path, PORTAL, "dead", "B-C max 44.8 kNm")
+    assert said.status == 1 and 'say "sagging" or "hogging"' in " ".join(said.out.split())
