@@ -6,15 +6,18 @@ Named after what they hold; checked against the exact solutions of tests/exact.p
 from __future__ import annotations
 
 import re
+from dataclasses import replace
 from types import SimpleNamespace
 
 import numpy as np
 import pytest
 
 from crosscheck.answer import ACROSS, MOMENT, CaseAnswer, WorkTable
+from crosscheck.audit import fit, one_way
 from crosscheck.audit.bound import ForceBound, hypercircle
 from crosscheck.audit.compatibility import _own_axes, compatibility
-from crosscheck.audit.equilibrium import Pieces, zone_moment
+from crosscheck.audit.equilibrium import Pieces, reaction_index, zone_moment
+from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.frame.kinematics import study
@@ -411,6 +414,74 @@ def test_displacements_along_a_support_turned_by_thirty_degrees(spread: bool, si
     got = _own_axes(system, np.array([[3.0, 2.0 * sign, 5.0]]), spread)  # type: ignore[arg-type]
     assert got[0] == pytest.approx([3 * cos + sign, sign * (1.5 + 2 * cos), 5], rel=1e-12)
 
+
+@pytest.mark.parametrize(("axis", "expected"), [("x", 3 * np.sqrt(0.75) - 1), ("y", -1.5 - 2 * np.sqrt(0.75))])
+def test_the_force_of_a_one_way_direction_of_a_turned_support(axis: str, expected: float) -> None:
+    """Reactions (3, -2) along axes turned counter-clockwise by thirty degrees."""
+    frame = read_frame_text(f"""
+units = "kN m"
+materials.m = {{ E = 200e6 }}
+sections.s = {{ I = 1e-4, A = 5e-3 }}
+joints = {{ A = [0, 0], B = [6, 0] }}
+members."A-B" = {{ section = "s", material = "m" }}
+supports = {{ A = "fixed", B = {{ x = "held", y = "held", {axis} = "push", angle = 30 }} }}
+[loads.q]
+apply = []
+[analysis]
+axial = "elastic"
+""".replace(f'{axis} = "held", ', ""))
+    value = np.zeros(12)
+    value[[int(reaction_index(1, 1, c)) for c in (0, 1)]] = 3.0, -2.0
+    done = SimpleNamespace(value=value, half_width=np.zeros(12))
+    (part,) = one_way.parts(frame, load_table(frame, "q"), done, 0.0)  # type: ignore[arg-type]
+    assert (part.axis, part.force) == (axis, pytest.approx(expected, rel=1e-12))
+
+
+def test_the_bound_on_rounding_of_large_frames_is_never_less_than_the_interval_of_small_ones(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """By Cauchy's inequality: the norm of the roundings times that of what carries them."""
+    frame = read_frame_text(ZONED)
+    exact = Exact(frame).cases["q"]
+    values = CaseAnswer(exact.ends, exact.joints, exact.reactions)
+    half = CaseAnswer(*(np.full(v.shape, 5e-4) for v in (values.ends, values.joints, values.reactions)))
+    interval = compatibility(frame, "q", values, half).fit.allowed  # type: ignore[union-attr]
+    monkeypatch.setattr(fit, "DENSE_ROWS", 0)
+    bound = compatibility(frame, "q", values, half).fit.allowed  # type: ignore[union-attr]
+    assert (interval > 0).any() and (bound >= 0.999 * interval).all()
+
+
+def test_the_rounding_of_a_slack_rod_s_own_force_lets_its_length_be_off() -> None:
+    """By L/EA times so much: 5 m of 4 cm2 of steel (the diagonal of 3 m by 4 m)."""
+    frame = read_frame_text(SLACK)
+    said = slope_deflection.opine(frame, study(frame)).cases["q"]  # type: ignore[union-attr]
+    system = compatibility(frame, "q", said).fit
+    assert system is not None and system.frame.out_members == {"down"}
+    k, shift = frame.member_index["down"], np.zeros(12)
+    more = system.rounding.copy()
+    more[3 * k + 2] += 7.0
+    (one,), (other,) = (gaps(s, "q", shift) for s in (system, replace(system, rounding=more)))
+    assert other.allowed - one.allowed == pytest.approx(7.0 * 5 / (200e6 * 4e-4), rel=1e-6)
+
+
+SLACK = """
+units = "kN m"
+materials.m = { E = 200e6 }
+sections = { post = { I = 1e-4, A = 5e-3 }, rod = { I = 1e-9, A = 4e-4 } }
+joints = { A = [0, 0], B = [0, 4], C = [3, 4], D = [3, 0] }
+[members]
+"A-B" = { section = "post", material = "m" }
+"B-C" = { section = "post", material = "m" }
+down = { from = "D", to = "B", section = "rod", material = "m", hinge = "both", only = "tension" }
+"D-C" = { section = "post", material = "m" }
+[supports]
+A = "fixed"
+D = "fixed"
+[loads.q]
+apply = [{ joint = "B", force = 30, direction = "right" }]
+[analysis]
+axial = "elastic"
+"""
 
 BOX = """
 units = "kN m"

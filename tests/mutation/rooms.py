@@ -1,6 +1,6 @@
 """What is altered, how many, and who must notice.
 
-tests: arguments of pytest by the altered module's name, "*" for every module, the sharpest and quickest first. A mutant
+tests: arguments of pytest by the altered module's name, "*" for every module and first, for they are the quickest. A mutant
 that the comparison on cases/ lets through must be noticed by one of them; the whole suite notices at least as much.
 """
 
@@ -14,6 +14,10 @@ from pathlib import Path
 ROOT = Path(__file__).resolve().parents[2]
 KNOWN = Path(__file__).with_name("known.toml")
 """Survivors looked at one by one: mutants that change nothing, each with its reason."""
+
+
+RANDOM = "tests/test_agreement.py"
+"""Of an opinion, the last to notice: 500 random frames."""
 
 
 @dataclass(frozen=True)
@@ -33,13 +37,16 @@ class Room:
     def modules(self) -> list[Path]:
         return sorted((ROOT / self.folder).glob("*.py"))
 
+    @property
+    def every_test(self) -> list[str]:
+        return list(dict.fromkeys(test for module in self.tests for test in self.who_notices(module)))
+
     def who_notices(self, module: str) -> tuple[str, ...]:
-        return (*self.tests.get(module, ()), *self.tests.get("*", ()))
+        return (*self.tests.get("*", ()), *self.tests.get(module, ()), *((RANDOM,) if self.opinion else ()))
 
 
 SUSPECTS = ("tests/test_suspects.py",)
 SECOND_ORDER = ("tests/test_second_order.py -k not(agree_up_to_near)and(not(many_elements))",)
-RANDOM = "tests/test_agreement.py"
 WEEK = ("tests/test_slope_deflection_week.py", "tests/test_week_agreement.py")
 OTHER_WEEK = ("tests/test_moment_distribution_week.py", "tests/test_week_agreement.py")
 ROOMS = {
@@ -48,7 +55,7 @@ ROOMS = {
         {
             "prepared": SUSPECTS, "second_order": SECOND_ORDER, "division": SECOND_ORDER, "displaced_spans": SECOND_ORDER,
             "balance": (*SECOND_ORDER, *WEEK), "varying": WEEK, "one_way": WEEK, "parting": WEEK,
-            "*": (RANDOM, "tests/test_exact.py", "tests/published/test_published.py", "tests/test_mutants.py"),
+            "*": ("tests/test_mutants.py", "tests/test_exact.py", "tests/published/test_published.py"),
         },
         "slope-deflection", frozenset({"second_order", "division", "displaced_spans", "balance"}),
         frozenset({"prepared", "equations", "one_way", "parting"}),
@@ -59,7 +66,7 @@ ROOMS = {
             **dict.fromkeys(("second_order", "bent_spans", "displaced", "displaced_working", "critical", "stretches"),
                             SECOND_ORDER),
             **dict.fromkeys(("gradual", "one_way", "varying", "members", "spans", "pieces"), OTHER_WEEK),
-            "*": (RANDOM, "tests/test_exact.py", "tests/test_moment_distribution.py", "tests/test_mutants.py"),
+            "*": ("tests/test_mutants.py", "tests/test_exact.py", "tests/test_moment_distribution.py"),
         },
         "moment-distribution",
         frozenset({"second_order", "bent_spans", "displaced", "critical", "stretches", "gradual"}),
@@ -67,7 +74,7 @@ ROOMS = {
     ),
     "library": Room(
         "crosscheck/opinions/library", 200, 3,
-        {"*": ("tests/test_mutants.py", "tests/test_library.py", RANDOM, "tests/test_exact.py")}, "library",
+        {"*": ("tests/test_mutants.py", "tests/test_library.py", "tests/test_exact.py")}, "library",
     ),
     "audit": Room(
         "crosscheck/audit", 100, 4, {"*": ("tests/test_mutants.py", "tests/test_audit.py", "tests/test_audit_week.py")},

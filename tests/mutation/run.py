@@ -167,8 +167,7 @@ def drawn(room: Room, count: int, seed: int) -> list[Mutant]:
 def warm(room: Room) -> None:
     """Import and collect everything once, so that each child finds it done."""
     with redirect_stdout(io.StringIO()), redirect_stderr(io.StringIO()):
-        every = dict.fromkeys(test for tests in room.tests.values() for test in tests)
-        pytest.main([*{test.split()[0] for test in every}, "--collect-only", "-q", "-p", "no:cacheprovider", *PLAIN])
+        pytest.main([*{test.split()[0] for test in room.every_test}, "--collect-only", "-q", "-p", "no:cacheprovider", *PLAIN])
     exact = sys.modules.get("tests.test_exact")
     for title in exact.FRAMES if exact else ():
         exact.solved(title)  # type: ignore[union-attr]
@@ -183,8 +182,7 @@ def examine(name: str, count: int, seed: int) -> list[Mutant]:
     if room.opinion and in_a_fork(lambda: compared(room, heard)) != SURVIVED:
         raise SystemExit(f"{name}: the unaltered opinion does not pass the comparison")
     warm(room)
-    every = dict.fromkeys(test for tests in room.tests.values() for test in tests)
-    for test in every:
+    for test in room.every_test:
         if in_a_fork(lambda test=test: tested([test])) != SURVIVED:  # type: ignore[misc]
             raise SystemExit(f"{name}: {test} fails unaltered, or takes too long")
     tally, survivors, excused = Counter[str](), [], known()
