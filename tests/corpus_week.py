@@ -84,7 +84,7 @@ def the_frame(seed: int) -> Frame:
         frame = _sprung(frame, Random(f"sprung {seed}"))
     if kind in (1, 4):
         frame = _leaning(frame)
-    return _near_critical(frame, 5.0 if kind == 0 else 3.0) if kind in (0, 3) and not frame.one_way else frame
+    return _near_critical(frame, 4.0 if kind == 0 else 2.5) if kind in (0, 3) and not frame.one_way else frame
 
 
 def _last(frame: Frame) -> Combination:
@@ -309,7 +309,7 @@ def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, s
     answer = opinions.answers["slope-deflection"]
     pool = []
     telling = [n for n, c in frame.combinations.items() if c.lean or c.order or _springs(frame, c)]
-    chosen = [*r.sample(telling, min(len(telling), 2)), *r.sample(frame.names, min(len(frame.names), 6))]
+    chosen = [*r.sample(telling, min(len(telling), 3)), *r.sample(frame.names, min(len(frame.names), 6))]
     for name in dict.fromkeys(chosen):
         if name in answer.cases:
             pool += [(name, m) for m in sorts(frame, name, r)]

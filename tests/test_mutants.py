@@ -13,7 +13,7 @@ import numpy as np
 import pytest
 
 from crosscheck.answer import ACROSS, MOMENT, CaseAnswer, WorkTable
-from crosscheck.audit import fit, one_way
+from crosscheck.audit import bound, fit, one_way
 from crosscheck.audit.bound import ForceBound, hypercircle
 from crosscheck.audit.compatibility import _own_axes, compatibility
 from crosscheck.audit.equilibrium import Pieces, reaction_index, zone_moment
@@ -462,6 +462,20 @@ def test_the_rounding_of_a_slack_rod_s_own_force_lets_its_length_be_off() -> Non
     more[3 * k + 2] += 7.0
     (one,), (other,) = (gaps(s, "q", shift) for s in (system, replace(system, rounding=more)))
     assert other.allowed - one.allowed == pytest.approx(7.0 * 5 / (200e6 * 4e-4), rel=1e-6)
+
+
+def test_the_bound_on_each_value_is_as_wide_as_it_is_made_safe(monkeypatch: pytest.MonkeyPatch) -> None:
+    """All that a bound is made of, but for rounding, is multiplied by what makes it safe: twice that, twice the bound."""
+    frame = read_frame_text(ZONED)
+    other = Exact(read_frame_text(ZONED.replace("D = \"fixed\"", "D = \"pinned\"")))
+    wrong = CaseAnswer(other.cases["q"].ends, other.cases["q"].joints, other.cases["q"].reactions)
+    found = []
+    for safe in (1.0, 2.0):
+        monkeypatch.setattr(bound, "SAFE", safe)
+        of = hypercircle(frame, compatibility(frame, "q", wrong), wrong)
+        assert isinstance(of, ForceBound)
+        found.append(of.moment)
+    assert (found[0] > 1e-3).all() and found[1] == pytest.approx(2 * found[0], rel=1e-6)
 
 
 SLACK = """

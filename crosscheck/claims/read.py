@@ -256,7 +256,8 @@ class _Reader:
         rows = [
             (line, trace.text.strip(), "a value in words that is not understood")
             for line, trace in sorted(self.scanned.trace.items())
-            if (trace.taken_for in ("heading", "remark") and not trace.why or line in idle) and speaks_of_results(trace.text)
+            if line in idle or trace.taken_for in ("heading", "remark") and not trace.why
+            if speaks_of_results(trace.text)
         ]
         self.odd += rows
         self._trace(rows)

@@ -167,7 +167,8 @@ def drawn(room: Room, count: int, seed: int) -> list[Mutant]:
 def warm(room: Room) -> None:
     """Import and collect everything once, so that each child finds it done."""
     with redirect_stdout(io.StringIO()), redirect_stderr(io.StringIO()):
-        pytest.main([*{test.split()[0] for test in room.every_test}, "--collect-only", "-q", "-p", "no:cacheprovider", *PLAIN])
+        files = {test.split()[0] for test in room.every_test}
+        pytest.main([*files, "--collect-only", "-q", "-p", "no:cacheprovider", *PLAIN])
     exact = sys.modules.get("tests.test_exact")
     for title in exact.FRAMES if exact else ():
         exact.solved(title)  # type: ignore[union-attr]
