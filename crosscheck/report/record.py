@@ -361,18 +361,21 @@ def _results(opinions: Opinions, name: str) -> list[Block]:
     if answer is None:
         return []
     frame, case = opinions.frame, answer.cases[name]
+    scales = [opinions.judgements[name].scales]
+    at_ends, moves, pulls = (words.quiet(values, scales, of) for values, of in (
+        (case.ends, words.ENDS), (case.joints, words.JOINTS), (case.reactions, words.REACTIONS)))  # fmt: skip
     whose = "as agreed" if opinions.judgements[name].verdict == "agree" else f"by {answer.opinion}"
-    scale = [_largest(case.ends[:, :, k]) for k in range(3)]
+    scale = [_largest(at_ends[:, :, k]) for k in range(3)]
     ends = tuple(
-        (m.name, joint, *(words.number(float(case.ends[k, end, c]), scale[c]) for c in range(3)),
-         words.end_face(frame, m.name, joint, float(case.ends[k, end, 2]), scale[2]))
+        (m.name, joint, *(words.number(float(at_ends[k, end, c]), scale[c]) for c in range(3)),
+         words.end_face(frame, m.name, joint, float(at_ends[k, end, 2]), scale[2]))
         for k, m in enumerate(frame.members.values())
         for end, joint in ((0, m.joint_from), (1, m.joint_to))
     )  # fmt: skip
-    move = [_largest(case.joints[:, c]) for c in range(3)]
-    pull = [_largest(case.reactions[:, :2])] * 2 + [_largest(case.reactions[:, 2])]
-    joints = tuple((j, *_numbers(case.joints[k], move)) for k, j in enumerate(frame.joints))
-    supports = tuple((j, *_numbers(case.reactions[frame.joint_index[j]], pull)) for j in frame.supports)
+    move = [_largest(moves[:, c]) for c in range(3)]
+    pull = [_largest(pulls[:, :2])] * 2 + [_largest(pulls[:, 2])]
+    joints = tuple((j, *_numbers(moves[k], move)) for k, j in enumerate(frame.joints))
+    supports = tuple((j, *_numbers(pulls[frame.joint_index[j]], pull)) for j in frame.supports)
     return [
         Grid(f"End actions {whose}: axial tension positive, shear along local y, moment clockwise.",
              (("member", "left"), ("at", "left"), *_heads(frame, ("axial", "shear", "moment")), ("tension", "left")), ends),

@@ -24,7 +24,7 @@ from crosscheck.check import CaseAudit, Opinions, Verification
 from crosscheck.compare.differences import Difference, Verdict
 from crosscheck.compare.envelopes import NOBODY, Extremes, envelope
 from crosscheck.compare.opinions import CaseJudgement, with_turning_points
-from crosscheck.compare.tolerance import CLAIM, OWN
+from crosscheck.compare.tolerance import CLAIM, OWN, Scales
 from crosscheck.frame.model import Frame
 from crosscheck.frame.stations import stations
 from crosscheck.problems import UnusableInput
@@ -272,10 +272,10 @@ def _results(result: Opinions, name: str) -> list[RenderableType]:
     agreed = result.judgements[name].verdict == "agree"
     whose = "as agreed" if agreed else f"by {answer.opinion} alone" if len(given) == 1 else f"by {answer.opinion}"
     parts: list[RenderableType] = [heading(f"{name}: results {whose}")]
-    parts += [_end_table(result.frame, answer, name), *more(2 * len(result.frame.members), MOST_ROWS)]
-    parts += [Text(""), _along_table(result.frame, answer, name), *more(len(result.frame.members), MOST_ROWS)]
+    parts += [_end_table(result, answer, name), *more(2 * len(result.frame.members), MOST_ROWS)]
+    parts += [Text(""), _along_table(result, answer, name), *more(len(result.frame.members), MOST_ROWS)]
     parts += [Text(""), _joint_table(result, answer, name), *more(len(result.frame.joints), MOST_ROWS)]
-    parts += [Text(""), _reaction_table(result.frame, answer, name)]
+    parts += [Text(""), _reaction_table(result, answer, name)]
     return parts
 
 
@@ -286,6 +286,7 @@ def _envelope(result: Opinions, name: str) -> list[RenderableType]:
     if not given:
         return []
     found = given[0]
+    scales = [result.judgements[n].scales for n in found.names]
     parts: list[RenderableType] = [heading(f"Envelope {name}, of {words.counted(len(found.names), 'case')}")]
     numbered = [f"{k + 1} {one}" for k, one in enumerate(found.names)]
     parts.append(Text("Governing, by number: " + "; ".join(numbered)))
@@ -295,13 +296,13 @@ def _envelope(result: Opinions, name: str) -> list[RenderableType]:
     places = [(m.name, joint) for m in members for joint in (m.joint_from, m.joint_to)]
     columns = [("member", "left"), ("at", "left")]
     for c, quantity in enumerate(("axial", "shear", "moment")):
-        cells = [_extreme_cells(found.ends, (k // 2, k % 2, c)) for k in range(len(places))]
+        cells = [_extreme_cells(found.ends, (k // 2, k % 2, c), scales, words.ENDS) for k in range(len(places))]
         rows = [(*place, *row) for place, row in zip(places, cells, strict=True)]
         parts += [Text(""), table([*columns, *_extreme_heads(frame, quantity)], rows)]
     parts += more(2 * len(frame.members), MOST_ROWS)
     supports = list(frame.supports)[:MOST_ROWS]
     for c, quantity in enumerate(("fx", "fy", "moment")):
-        rows = [(j, *_extreme_cells(found.reactions, (frame.joint_index[j], c))) for j in supports]
+        rows = [(j, *_extreme_cells(found.reactions, (frame.joint_index[j], c), scales, words.REACTIONS)) for j in supports]
         parts += [Text(""), table([("support", "left"), *_extreme_heads(frame, quantity)], rows)]
     return parts
 
@@ -311,9 +312,10 @@ def _extreme_heads(frame: Frame, quantity: str) -> list[tuple[str, str]]:
     return [(f"{quantity}, {unit}\ngreatest", "right"), ("by", "right"), ("least", "right"), ("by", "right")]
 
 
-def _extreme_cells(e: Extremes, at: tuple[int, ...]) -> list[str]:
-    scale = max(_largest(e.greatest[..., at[-1]]), _largest(e.least[..., at[-1]]))
-    both = (e.greatest[at], e.greatest_by[at]), (e.least[at], e.least_by[at])
+def _extreme_cells(e: Extremes, at: tuple[int, ...], scales: Sequence[Scales], quantities: Sequence[str]) -> list[str]:
+    greatest, least = (words.quiet(v, scales, quantities) for v in (e.greatest, e.least))
+    scale = max(_largest(greatest[..., at[-1]]), _largest(least[..., at[-1]]))
+    both = (greatest[at], e.greatest_by[at]), (least[at], e.least_by[at])
     return [c for v, by in both for c in (words.number(float(v), scale), str(int(by) + 1) if by != NOBODY else "")]
 
 
@@ -326,8 +328,9 @@ def _largest(values: Any) -> float:
     return max(finite, default=0.0)
 
 
-def _end_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
-    ends = answer.cases[name].ends
+def _end_table(result: Opinions, answer: Answer, name: str) -> RenderableType:
+    frame = result.frame
+    ends = words.quiet(answer.cases[name].ends, [result.judgements[name].scales], words.ENDS)
     scale = [_largest(ends[:, :, k]) for k in range(3)]
     rows = []
     for m, member in enumerate(list(frame.members.values())[: MOST_ROWS // 2]):
@@ -339,9 +342,11 @@ def _end_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
     return table(columns, rows)
 
 
-def _along_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
+def _along_table(result: Opinions, answer: Answer, name: str) -> RenderableType:
+    frame = result.frame
     member, x, side = with_turning_points(answer, name, stations(frame))
     values = answer.spans.along(name, member, x, side)
+    values = words.quiet(values, [result.judgements[name].scales], (*words.ENDS, "across"))
     scale = _largest(values[:, MOMENT]), _largest(values[:, 3])
     rows = []
     for m, title in enumerate(list(frame.members)[:MOST_ROWS]):
@@ -365,10 +370,8 @@ def _at(value: float, x: float, scale: float) -> tuple[str, str]:
 
 
 def _joint_table(result: Opinions, answer: Answer, name: str) -> RenderableType:
-    frame, scales = result.frame, result.judgements[name].scales
-    moves = answer.cases[name].joints
-    noise = words.NOISE * np.array([scales.of(q) for q in ("dx", "dy", "rotation")])
-    moves = np.where(np.abs(moves) <= noise, 0.0, moves)
+    frame = result.frame
+    moves = words.quiet(answer.cases[name].joints, [result.judgements[name].scales], words.JOINTS)
     scale = [_largest(moves[:, c]) for c in range(3)]
     rows = [
         (joint, *[words.number(float(moves[k, c]), scale[c]) for c in range(3)])
@@ -377,8 +380,9 @@ def _joint_table(result: Opinions, answer: Answer, name: str) -> RenderableType:
     return table([("joint", "left"), *_heads(frame, ("dx", "dy", "rotation"))], rows)
 
 
-def _reaction_table(frame: Frame, answer: Answer, name: str) -> RenderableType:
-    pulls = answer.cases[name].reactions
+def _reaction_table(result: Opinions, answer: Answer, name: str) -> RenderableType:
+    frame = result.frame
+    pulls = words.quiet(answer.cases[name].reactions, [result.judgements[name].scales], words.REACTIONS)
     force, moment = _largest(pulls[:, :2]), _largest(pulls[:, 2])
     rows = []
     for joint in list(frame.supports)[:MOST_ROWS]:

@@ -5,8 +5,11 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 
+import numpy as np
+
 from crosscheck.compare.differences import Difference, Place
-from crosscheck.frame.model import Frame
+from crosscheck.compare.tolerance import Scales
+from crosscheck.frame.model import Floats, Frame
 
 CAUTIONS = (
     "This supports and does not replace a licensed engineer's judgement; local codes govern.",
@@ -16,6 +19,8 @@ CAUTIONS = (
 )
 NOISE = 1e-9
 """Of the largest value of its kind: below this a value is rounding, shown as zero and without a tension face."""
+ENDS, JOINTS, REACTIONS = ("axial", "shear", "moment"), ("dx", "dy", "rotation"), ("fx", "fy", "moment")
+"""Quantities in the order of an answer's columns."""
 
 
 def unit_of(frame: Frame, quantity: str) -> str:
@@ -26,6 +31,15 @@ def unit_of(frame: Frame, quantity: str) -> str:
     if quantity == "moment":
         return f"{force} {length}"
     return "rad" if quantity == "rotation" else length
+
+
+def quiet(values: Floats, scales: Sequence[Scales], quantities: Sequence[str]) -> Floats:
+    """Values (..., quantities) with rounding noise, by the largest scale of the cases they come from, as plain zero.
+
+    Where no member end has a moment, the largest of them is noise too."""
+    noise = NOISE * np.array([max(s.of(q) for s in scales) for q in quantities])
+    out: Floats = np.where(np.abs(values) <= noise, 0.0, values)
+    return out
 
 
 def number(value: float | None, scale: float | None = None) -> str:

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from crosscheck.frame.model import FREE, HELD, Floats, Support
+from crosscheck.frame.model import FREE, HELD, Floats, Member, Support
 from crosscheck.review.finding import Finding, Subject, global_loads
 
 FEW = 0.2
@@ -50,13 +50,24 @@ def _traits(subject: Subject, name: str, turned: bool = False) -> tuple[object, 
     t, k = subject.frame.member_table, subject.frame.member_index[name]
     backward = (t.cos[k] < -1e-9 or (abs(t.cos[k]) <= 1e-9 and t.sin[k] < 0)) != (turned and abs(t.cos[k]) > 1e-9)
     ends = (m.turn_to, m.turn_from) if backward else (m.turn_from, m.turn_to)
-    return m.section, m.material, *ends
+    return _makeup(m, backward), m.material, *ends
+
+
+def _makeup(m: Member, backward: bool) -> object:
+    """The section, or the pieces of a stepped or tapered member: first section, last section, share of the length; from its
+    right or upper end where backward."""
+    if not m.pieces:
+        return m.section
+    starts = (0.0, *(piece.until for piece in m.pieces))
+    pieces = [(p.first, p.last, round(p.until - start, 9)) for p, start in zip(m.pieces, starts, strict=False)]
+    return tuple((last, first, share) for first, last, share in reversed(pieces)) if backward else tuple(pieces)
 
 
 def _difference(subject: Subject, a: str, b: str) -> str:
     one, two = _traits(subject, a), _traits(subject, b, turned=True)
     if one[0] != two[0]:
-        return f"section ({one[0]}, {two[0]})"
+        plain = isinstance(one[0], str) and isinstance(two[0], str)
+        return f"section ({one[0]}, {two[0]})" if plain else "the sections along them"
     return f"material ({one[1]}, {two[1]})" if one[1] != two[1] else "their end connections"
 
 
