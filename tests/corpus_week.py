@@ -308,9 +308,7 @@ def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, s
         return
     answer = opinions.answers["slope-deflection"]
     pool = []
-    telling = [n for n, c in frame.combinations.items() if c.lean or c.order or _springs(frame, c)]
-    chosen = [*r.sample(telling, min(len(telling), 3)), *r.sample(frame.names, min(len(frame.names), 6))]
-    for name in dict.fromkeys(chosen):
+    for name in dict.fromkeys([*_telling(frame, r), *r.sample(frame.names, min(len(frame.names), 6))]):
         if name in answer.cases:
             pool += [(name, m) for m in sorts(frame, name, r)]
     r.shuffle(pool)
@@ -335,8 +333,15 @@ def drawn(seed: int, per: int, sorts: Any = mistakes) -> Iterator[tuple[Frame, s
             yield frame, name, mistake, case_values(mistake.frame, other.cases[name], name, 4, seed % 2 == 0)
 
 
-def _springs(frame: Frame, c: Combination) -> bool:
-    return bool(c.stiffness and frame.states[c.stiffness].supports)
+def _telling(frame: Frame, r: Random) -> Iterator[str]:
+    """Some of the combinations that lean, have an order, or have springs of their own."""
+
+    def springs(c: Combination) -> bool:
+        return bool(c.stiffness and frame.states[c.stiffness].supports)
+
+    every = frame.combinations.values()
+    for some in ([c for c in every if c.lean], [c for c in every if c.order], list(filter(springs, every))):
+        yield from (c.name for c in r.sample(some, min(len(some), 3)))
 
 
 def _peak(case: CaseAnswer) -> float:
