@@ -319,7 +319,9 @@ def _verdict(
         grounds += closed.undecided
     if closed.foreign:
         verdicts.append("undecided")
-        grounds.append("it has results for members or joints that the frame lacks")
+        grounds.append(
+            "it has results for members or joints that the frame lacks; a reading file says which of the frame's they are"
+        )
     if not sum(c.compared for c in cases):
         verdicts.append("undecided")
         grounds.append("no value could be compared" + ("" if closed.values else "; is it a claim of this frame?"))

@@ -11,7 +11,7 @@ from pathlib import Path
 
 import pytest
 
-from tests.calls import Call, call, put
+from tests.calls import CASES, Call, call, put
 
 PORTAL = """
 title = "Portal with fixed feet"
@@ -162,3 +162,57 @@ def test_tapers_that_mirror_each_other_are_symmetrical(tmp_path: Path) -> None:
     for right, wrong in (('taper = ["deep", "light"]', 'taper = ["light", "deep"]'), ('"80%"', '"70%"')):
         slip = TAPERED.replace(right, wrong)
         assert "symmetrical, but" in call("inspect", put(tmp_path, slip)).out
+
+
+def test_a_claim_of_another_frame_is_told_by_its_names(tmp_path: Path) -> None:
+    """It was said that heads did not match the columns, because names that nobody knows tell no columns."""
+    said = call("verify", CASES / "canopy.toml", CASES / "hall.foot.claim.txt")
+    reasons = " ".join(said.out.split("Critical")[0].split())
+    assert said.status == 3 and "heads do not match" not in reasons
+    assert reasons.index('none of the names it prints ("A0-A1", "A0", "A1" ...)') < reasons.index("load case")
+
+
+def numbered(tmp_path: Path) -> Path:
+    """The portal with names of members that say nothing of their joints."""
+    text = PORTAL.replace('member = "B-C"', 'member = "beam"')
+    for key, name in (("A-B", "left"), ("B-C", "beam"), ("C-D", "right")):
+        text = text.replace(f'members."{key}" = {{', f'members.{name} = {{ from = "{key[0]}", to = "{key[2]}",')
+    return put(tmp_path, text)
+
+
+ELEMENTS = """Elem Node    N      V       M
+11   A     -48.0  -19.2    25.6
+     B     -48.0   19.2    51.2
+12   B     -19.2   48.0   -51.2
+     C     -19.2   48.0    51.2
+13   C     -48.0   19.2   -51.2
+     D     -48.0  -19.2   -25.6
+"""
+
+
+def test_members_of_other_numbers_are_told_by_their_joints(tmp_path: Path) -> None:
+    """Both joints of each were printed, and every row was refused as of a member that the frame lacks."""
+    frame = numbered(tmp_path)
+    said = call("verify", frame, put(tmp_path, ELEMENTS, "c.txt"), "--case", "dead")
+    assert said.status == 0 and "told by their joints: 11 is left, 12 is beam, 13 is right" in " ".join(said.out.split())
+    wrong = call("verify", frame, put(tmp_path, ELEMENTS.replace("25.6\n", "26.5\n", 1), "c.txt"), "--case", "dead")
+    assert wrong.status == 1
+    half = "\n".join(row for row in ELEMENTS.splitlines() if "12 " not in row)  # now member 11 has three joints
+    assert call("verify", frame, put(tmp_path, half, "c.txt"), "--case", "dead").status == 3
+
+
+def test_what_a_suspect_supposes_stands_in_the_document() -> None:
+    """A script that reads `verdict` alone would take "agree" for the stated frame's."""
+    of = CASES / "hall.toml", CASES / "hall.foot.claim.txt"
+    supposing = call("verify", *of, "--suspect", "1", "--json", "-").document
+    assert supposing["supposed"] == "B0 was analysed as pinned" and supposing["verdict"] == "agree"
+    assert "supposed" not in call("verify", *of, "--json", "-").document
+
+
+def test_noise_beside_a_claim_is_zero() -> None:
+    from crosscheck.compare.differences import Difference, Place
+    from crosscheck.report import words
+
+    place = Place("dead", "member_ends", "axial", "A-B", "A", None)
+    said = words.both_say(Difference(place, {"slope-deflection": 5.9e-31, "claim": 2.0}, 2.0, 0.1, True))
+    assert said.startswith("slope-deflection 0; claim 2")

@@ -52,6 +52,14 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
     reader = _Reader(names, options, stated, scanned)
     read = [reader.understood(raw) for raw in scanned.tables if raw.rows]
     reader.learn(read)
+    reader.learn_by_joints(read)
+    reader.strange = _strange(read, names)
+    if reader.strange:
+        some = ", ".join(f'"{label}"' for label in reader.strange[:3])
+        reader.undecided.append(
+            f"none of the names it prints ({some} ...) is one of the frame's; is it a claim of this frame? If it is, "
+            "a reading file says which members and joints they are"
+        )
     reader.commas = any(commas_are_decimal(_numbers(grid)) for _, grid, _ in read)
     for raw, grid, meaning in read:
         reader.table(raw, grid, meaning)
@@ -85,6 +93,26 @@ def _read(text: str, frame_names: FrameNames, options: ReadingOptions, file: str
         expect=scanned.expect,
         face=options.face if options.face is not None else states_face(scanned),
     )
+
+
+def _strange(read: list[_Table], names: Names) -> list[str]:
+    """The names of members and joints that the tables of results print, where the frame has none of them."""
+    labels: dict[str, None] = {}
+    for raw, grid, meaning in read:
+        if meaning.kind.startswith("echo"):
+            continue
+        if any(raw.blocks):
+            return []
+        of = [k for k, r in enumerate(meaning.roles) if r.name in ("member", "joint", "start joint", "end joint")]
+        cells = [row[k] for row in grid.rows for k in of] if meaning.kind else [t for _, x in raw.rows for t in _words(x)]
+        labels |= dict.fromkeys(c for c in cells if not is_blank(c))
+    known = any(names.member(c) or names.joint(c) for c in labels)
+    return [] if known or len(labels) < 2 else list(labels)
+
+
+def _words(text: str) -> list[str]:
+    """What of a row of a table that cannot be understood may be names."""
+    return [c.text for c in cells_of(text)[1] if c.text and not is_number(c.text)]
 
 
 def _nothing(scanned: Scan, reader: _Reader) -> tuple[str, str]:
@@ -160,6 +188,8 @@ class _Reader:
     undecided: list[str] = field(default_factory=list)
     echo: list[EchoFact] = field(default_factory=list)
     left_inside: set[str] = field(default_factory=set)
+    strange: list[str] = field(default_factory=list)
+    """The names that it prints, where none is the frame's."""
     untold: list[str] = field(default_factory=list)
     """Why values in words were not understood."""
     without_case: int = 0
@@ -189,6 +219,34 @@ class _Reader:
         self.echo, self.notes = in_our_names(echo, self.names), [*self.notes, *echo.notes]
         if hits or echo.joints:
             read[:] = [t if t[2].kind.startswith("echo") else self.understood(t[0]) for t in read]
+
+    def learn_by_joints(self, read: list[_Table]) -> None:
+        """Members of other names, each told by both its joints in a table of member ends."""
+        ends: dict[str, set[str]] = {}
+        for _, grid, meaning in read:
+            at = {r.name: k for k, r in enumerate(meaning.roles)}
+            if meaning.kind != "end" or not {"member", "joint"} <= at.keys():
+                continue
+            label = ""
+            for row in grid.rows:
+                label = label if is_blank(row[at["member"]]) else row[at["member"]]
+                if label and not is_blank(row[at["joint"]]):
+                    ends.setdefault(label, set()).add(row[at["joint"]])
+        if not ends or any(self.names.member(label) for label in ends):
+            return  # some names are the frame's, so the others are no other numbering
+        hits = {}
+        for label, joints in ends.items():
+            pair = [self.names.joint(j) for j in sorted(joints)]
+            hit = self.names.between(str(pair[0]), str(pair[1])) if len(pair) == 2 and all(pair) else None
+            if hit is None:
+                return
+            hits[label] = replace(hit, run=0)
+        if len({hit.name for hit in hits.values()}) < len(hits):
+            return
+        self.names.learn({}, hits, ())
+        said = ", ".join(f"{label} is {hit.name}" for label, hit in list(hits.items())[:4])
+        self.notes.append(f"members have other names and are told by their joints: {said}{' ...' if len(hits) > 4 else ''}")
+        read[:] = [t if t[2].kind.startswith("echo") else self.understood(t[0]) for t in read]
 
     def table(self, raw: RawTable, grid: Grid, meaning: Meaning) -> None:
         """Reads one table into entries; what cannot be used is noted by line."""
@@ -277,7 +335,7 @@ class _Reader:
         self.odd += rows
         self._trace(rows)
         busy = [text for _, text in raw.rows if sum(is_number(c.text) for c in cells_of(text)[1]) >= 2]
-        if raw.heads or len(busy) >= 2:
+        if not self.strange and (raw.heads or len(busy) >= 2):
             self.undecided.append(
                 f"the table at line {raw.rows[0][0]} cannot be understood ({meaning.why}); "
                 "say what its columns are with --columns"

@@ -49,6 +49,8 @@ def verification_document(result: Verification) -> dict[str, Any]:
         "compatibility": [row for audit in result.audits for row in _compatibility_part(audit)],
         "suspects": [_suspect_part(s) for s in result.suspects],
     }
+    if result.supposed:
+        document["supposed"] = result.supposed  # frame, claim and verdict are as a suspect supposes, not as stated
     document["verdict"] = result.verdict
     return document
 

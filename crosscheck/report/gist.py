@@ -45,7 +45,7 @@ def opinions_gist(
     """Of opinions without a claim."""
     rows: Rows = []
     for _, d in numbered[:1]:
-        values = ", ".join(f"{name} {words.number(v)}" for name, v in d.values.items())
+        values = ", ".join(f"{name} {words.said(d, name)}" for name in d.values)
         unit = words.unit_of(result.frame, d.place.quantity)
         rows.append(("First difference", f"{words.place(d.place)}, {d.place.quantity} in {d.place.case}: {values} {unit}"))
     asked = [n for n in result.frame.names if n not in result.names]

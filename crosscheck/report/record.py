@@ -258,7 +258,7 @@ def _claim_grid(frame: Frame, numbered: Sequence[tuple[int, Difference]]) -> Gri
 def _own_grid(numbered: Sequence[tuple[int, Difference]]) -> Grid:
     names = [n for n in OPINIONS if any(n in d.values for _, d in numbered)]
     rows = tuple(
-        (str(k), d.place.case, words.place(d.place), d.place.quantity, *(words.number(d.values.get(n)) for n in names),
+        (str(k), d.place.case, words.place(d.place), d.place.quantity, *(words.said(d, n) for n in names),
          words.short(d.difference), words.short(d.allowed), "")
         for k, d in numbered
     )  # fmt: skip

@@ -246,7 +246,7 @@ def _opinion_differences(frame: Frame, judged: CaseJudgement) -> list[Renderable
         return []
     names = list(judged.spoke)
     rows = [
-        (words.place(d.place), d.place.quantity, *[words.number(d.values.get(n)) for n in names],
+        (words.place(d.place), d.place.quantity, *[words.said(d, n) for n in names],
          words.short(d.difference), words.short(d.allowed))
         for d in judged.differences[:MOST_DIFFERENCES]
     ]  # fmt: skip

@@ -80,7 +80,14 @@ def _where(p: Place) -> str:
 
 def both_say(d: Difference) -> str:
     """What each side says at a place, and a note to it."""
-    return "; ".join([*(f"{name} {number(v)}" for name, v in d.values.items()), *([d.note] if d.note else [])])
+    return "; ".join([*(f"{name} {said(d, name)}" for name in d.values), *([d.note] if d.note else [])])
+
+
+def said(d: Difference, name: str) -> str:
+    """What one side says at a difference's place; rounding noise beside the others is zero."""
+    value = d.values.get(name)
+    largest = max((abs(v) for v in d.values.values() if v is not None and not math.isnan(v)), default=0.0)
+    return "0" if value is not None and abs(value) <= NOISE * max(largest, d.allowed) else number(value)
 
 
 def tension_face(frame: Frame, member: str, span_moment: float | None, scale: float = 0.0) -> str:
