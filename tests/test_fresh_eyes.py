@@ -195,6 +195,8 @@ def test_members_of_other_numbers_are_told_by_their_joints(tmp_path: Path) -> No
     frame = numbered(tmp_path)
     said = call("verify", frame, put(tmp_path, ELEMENTS, "c.txt"), "--case", "dead")
     assert said.status == 0 and "told by their joints: 11 is left, 12 is beam, 13 is right" in " ".join(said.out.split())
+    named = ELEMENTS.replace("11 ", "X1").replace("12 ", "X2").replace("13 ", "X3")
+    assert call("verify", frame, put(tmp_path, named, "c.txt"), "--case", "dead").status == 3  # names, not numbers
     wrong = call("verify", frame, put(tmp_path, ELEMENTS.replace("25.6\n", "26.5\n", 1), "c.txt"), "--case", "dead")
     assert wrong.status == 1
     half = "\n".join(row for row in ELEMENTS.splitlines() if "12 " not in row)  # now member 11 has three joints

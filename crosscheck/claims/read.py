@@ -13,7 +13,7 @@ from crosscheck.claims.echo import Echo, Piece, echo_facts, in_our_names, learn,
 from crosscheck.claims.enveloping import governing, once, with_governing
 from crosscheck.claims.grid import Grid, grid_of
 from crosscheck.claims.meaning import LAST_WORDS, START_WORDS, Meaning, Role, column, dimension_of, meaning_of
-from crosscheck.claims.names import MemberHit, Names, plain
+from crosscheck.claims.names import MemberHit, Names, plain, without_prefix
 from crosscheck.claims.numbers import Number, commas_are_decimal, is_blank, parse_number
 from crosscheck.claims.readfile import checked
 from crosscheck.claims.reading import EchoFact, Entry, FrameNames, Kind, LineTrace, Reading, ReadingOptions, TableRead
@@ -221,7 +221,8 @@ class _Reader:
             read[:] = [t if t[2].kind.startswith("echo") else self.understood(t[0]) for t in read]
 
     def learn_by_joints(self, read: list[_Table]) -> None:
-        """Members of other names, each told by both its joints in a table of member ends."""
+        """Members that the paste only numbers, each told by both its joints in a table of member ends. Names that are not
+        numbers are names: a member that the frame lacks stays one."""
         ends: dict[str, set[str]] = {}
         for _, grid, meaning in read:
             at = {r.name: k for k, r in enumerate(meaning.roles)}
@@ -232,8 +233,9 @@ class _Reader:
                 label = label if is_blank(row[at["member"]]) else row[at["member"]]
                 if label and not is_blank(row[at["joint"]]):
                     ends.setdefault(label, set()).add(row[at["joint"]])
-        if not ends or any(self.names.member(label) for label in ends):
-            return  # some names are the frame's, so the others are no other numbering
+        numbers = all(without_prefix(label, "member").isdigit() for label in ends)
+        if not ends or not numbers or any(self.names.member(label) for label in ends):
+            return  # where some names are the frame's, the others are no other numbering
         hits = {}
         for label, joints in ends.items():
             pair = [self.names.joint(j) for j in sorted(joints)]
@@ -244,8 +246,8 @@ class _Reader:
         if len({hit.name for hit in hits.values()}) < len(hits):
             return
         self.names.learn({}, hits, ())
-        said = ", ".join(f"{label} is {hit.name}" for label, hit in list(hits.items())[:4])
-        self.notes.append(f"members have other names and are told by their joints: {said}{' ...' if len(hits) > 4 else ''}")
+        said = [f"{label} is {hit.name}" for label, hit in list(hits.items())[:4]] + ["..."] * (len(hits) > 4)
+        self.notes.append(f"members have other numbers and are told by their joints: {', '.join(said)}")
         read[:] = [t if t[2].kind.startswith("echo") else self.understood(t[0]) for t in read]
 
     def table(self, raw: RawTable, grid: Grid, meaning: Meaning) -> None:
