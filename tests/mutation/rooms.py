@@ -77,7 +77,8 @@ ROOMS = {
         {"*": ("tests/test_mutants.py", "tests/test_library.py", "tests/test_exact.py")}, "library",
     ),
     "audit": Room(
-        "crosscheck/audit", 100, 4, {"*": ("tests/test_mutants.py", "tests/test_audit.py", "tests/test_audit_week.py")},
+        "crosscheck/audit", 100, 4,
+        {"*": ("tests/test_mutants.py", "tests/test_audit.py", "tests/test_audit_corpus.py", "tests/test_audit_week.py")},
     ),
     "compare": Room(
         "crosscheck/compare", 100, 5,
