@@ -218,3 +218,33 @@ def test_noise_beside_a_claim_is_zero() -> None:
     place = Place("dead", "member_ends", "axial", "A-B", "A", None)
     said = words.both_say(Difference(place, {"slope-deflection": 5.9e-31, "claim": 2.0}, 2.0, 0.1, True))
     assert said.startswith("slope-deflection 0; claim 2")
+
+
+TRUSS = """
+units = "kN m"
+materials.s = { E = "210 GPa" }
+sections.b = { I = "500 cm^4", A = "40 cm^2" }
+joints = { A = [0, 0], B = [4, 0], C = [2, 1.5] }
+members.left = { from = "A", to = "C", section = "b", material = "s", hinge = "both" }
+members.right = { from = "C", to = "B", section = "b", material = "s", hinge = "both" }
+members.tie = { from = "A", to = "B", section = "b", material = "s", hinge = "both" }
+supports = { A = "pinned", B = "roller" }
+loads.P.apply = [{ joint = "C", force = 60, direction = "down" }]
+"""
+"""Joint C by statics: 60 / 2 / 0.6 = 50 kN compression in the inclined bars, 50 * 0.8 = 40 kN tension in the tie."""
+BARS = ["Bar,Force (kN)\nleft,-50.0\nright,-50.0\ntie,40.0\n",
+        "Member\tAxial (kN)\nleft\t50.0 C\nright\t50.0 C\ntie\t40.0 T\n",
+        "Member;N (kN);T/C\nleft;50,0;C\nright;50,0;C\ntie;40,0;T\n",
+        "Member   Axial (kN)\nleft     50.0 (C)\nright    50.0 (C)\ntie      40.0 (T)\n"]  # fmt: skip
+
+
+@pytest.mark.parametrize("text", BARS)
+def test_a_table_of_bar_forces_is_read(tmp_path: Path, text: str) -> None:
+    """One axial force a member names no end, and none of them was compared; T and C were tonnes and no number."""
+    frame = put(tmp_path, TRUSS)
+    said = call("verify", frame, put(tmp_path, text, "c.txt"))
+    assert said.status == 0 and "the 3 values" in " ".join(said.out.split()), said.out
+    for right, wrong in (("tie", "left"), ("40.0 T", "40.0 C"), ("40,0;T", "40,0;C"), ("(T)", "(C)"), ("40.0", "44.0")):
+        if right in text and (right != "tie" or "T" not in text):
+            slip = text.replace(right, wrong, 1)
+            assert call("verify", frame, put(tmp_path, slip, "c.txt")).status != 0, slip

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
 from math import hypot, isnan
@@ -290,6 +291,7 @@ class _Reader:
 
     def _keep(self, entries: list[Entry], raw: RawTable) -> None:
         """Entries of a table; end values whose end nothing tells are not understood."""
+        entries = self._of_bars(entries)
         lost = {e.line for e in entries if e.kind == "end" and e.end is None and e.place is None}
         self.entries += [e for e in entries if e.line not in lost]
         rows = [(line, text, "which end of the member is not said") for line, text in raw.rows if line in lost]
@@ -300,6 +302,16 @@ class _Reader:
                 f"{len(rows)} rows from line {rows[0][0]} do not say which end of the member they are for; "
                 "name the joint or the end, or say what the columns are with --columns"
             )
+
+    def _of_bars(self, entries: list[Entry]) -> list[Entry]:
+        """One axial force a member, as tables of bar forces have it: taken at half the member's length, since all of it
+        has that force but for its own load along it."""
+        places = [(e.case, e.member, e.extreme) for e in entries]
+        open_ones = all(e.kind == "end" and e.quantity == "axial" and e.end is None and e.place is None for e in entries)
+        if not entries or not open_ones or len(set(places)) < len(places):
+            return entries
+        self.notes.append("axial forces of whole members are compared at half their length")
+        return [replace(e, kind="span", at=0.5, at_share=True, run=1) for e in entries]
 
     def sentence(self, line: int, text: str, case: str | None) -> None:
         """Values in words on a line of the paste."""
@@ -471,6 +483,9 @@ class _Reader:
                 continue
             number = parse_number(row[k], comma)
             unit = role.unit or self.stated.unit(role.quantity)
+            pulls = _pulls(number, row, k, meaning) if number is not None and role.quantity == "axial" else 0
+            if number is not None and pulls:
+                number = replace(number, value=pulls * abs(number.value), tail=_PULLS.sub("", number.tail))
             if number is not None and number.tail:
                 stuck = unit_of(number.tail)
                 number, unit = (number, stuck) if stuck and _suits(stuck, role.quantity) else (None, unit)
@@ -484,7 +499,7 @@ class _Reader:
             if entry is not None:
                 entry = self._enveloped(entry, row, k, meaning, place)
             if entry is not None:
-                yield entry
+                yield replace(entry, sense="said") if pulls else entry
 
     def _enveloped(self, entry: Entry, row: list[str], k: int, meaning: Meaning, place: _Place) -> Entry | None:
         """The entry as an envelope's extreme, where its row or column says it is one, with what governs it; a value that
@@ -560,6 +575,20 @@ class _Reader:
             end = 0 if at == 0.0 else 1
             return replace(entry, end=end, joint=(first, last)[end])
         return replace(entry, end=spot if hit.run > 0 else 1 - spot, cut=at)
+
+
+_PULLS = re.compile(r"\s*\(?\b(?:(?P<pulls>t|tens(?:ion|ile)?)|c|comp(?:ression|ressive)?)\b\.?\)?$", re.IGNORECASE)
+"""Tension or compression said by a letter or a word: "188.7 (C)", or T and C in a column of their own."""
+
+
+def _pulls(number: Number, row: list[str], k: int, meaning: Meaning) -> int:
+    """+1 where a letter says tension, -1 compression, 0 where none does.
+
+    A T behind a number is tonnes unless the head states a unit."""
+    stuck = _PULLS.match(number.tail) if meaning.roles[k].unit or number.tail.strip("()").upper() == "C" else None
+    beside = (_PULLS.fullmatch(c) for c, r in zip(row, meaning.roles, strict=True) if not r.name and c)
+    found = stuck or next((m for m in beside if m), None)
+    return 0 if found is None else 1 if found.group("pulls") else -1
 
 
 def _suits(unit: Size, quantity: str) -> bool:
