@@ -365,8 +365,11 @@ def tried(frame: Frame, name: str, mistake: Mistake, values: list[ClaimedValue],
 
 def right(frame: Frame, name: str, mistake: Mistake, suspect: Suspect, closed: ClosedClaim) -> bool:
     """The true mistake (kind, and a place of it), or one whose results, by moment distribution, the claim cannot tell."""
-    if named_by(mistake, suspect):
-        return True
+    return named_by(mistake, suspect) or indistinct(frame, suspect, closed)
+
+
+def indistinct(frame: Frame, suspect: Suspect, closed: ClosedClaim) -> bool:
+    """Whether the claim cannot tell the results of what a suspect says, by moment distribution, from its own."""
     changed, claim = suspect.change.apply(frame, closed)
     answer = solved(changed, claim.cases)
     if answer is None:
@@ -382,6 +385,106 @@ def right(frame: Frame, name: str, mistake: Mistake, suspect: Suspect, closed: C
         for v in claim.values
         if (there := told.get((v.case, v.kind, v.quantity, v.member, v.joint))) is not None
     )
+
+
+# --- two mistakes at once
+
+
+def drawn_pairs(seed: int, per: int) -> Iterator[tuple[Frame, str, tuple[Mistake, Mistake], list[ClaimedValue]]]:
+    """Claims with a mistake of the week and a second, of the week or of any frame, at 4 digits; each of the two changes
+    what the other alone makes by more than 3% of the peak end moment."""
+    r, frame = Random(f"pairs {seed}"), the_frame(seed)
+    opinions = opinions_on(frame)
+    if opinions is None:
+        return
+    answer = opinions.answers["slope-deflection"]
+    names = dict.fromkeys([*_telling(frame, r), *r.sample(frame.names, min(len(frame.names), 6))])
+    chosen = r.sample([n for n in names if n in answer.cases], min(per, len([n for n in names if n in answer.cases])))
+    for name in chosen * -(-per // max(len(chosen), 1)):
+        if per > 0 and (found := _pair(frame, name, r, answer.cases[name], opinions)):
+            per -= 1
+            yield frame, name, found[0], case_values(found[1], found[2], name, 4, seed % 2 == 0)
+
+
+def _pair(
+    frame: Frame, name: str, r: Random, right: CaseAnswer, opinions: check.Opinions
+) -> tuple[tuple[Mistake, Mistake], Frame, CaseAnswer] | None:
+    """Two mistakes, the frame with both and its results; None where some draws gave no two that show."""
+    least = max(EFFECT * _peak(right), FAINT * opinions.judgements[name].scales.moments)
+    for _ in range(8):
+        sorts: dict[str, list[Mistake]] = {}
+        for m in mistakes(frame, name, r):
+            sorts.setdefault(m.sort, []).append(m)
+        if not sorts:
+            return None
+        one = r.choice(sorts[r.choice(sorted(sorts))])
+        assert one.frame is not None
+        seconds: dict[str, list[Mistake]] = {}
+        for m in (*mistakes(one.frame, name, r), *common(one.frame, name, r)):
+            if m.sort != one.sort:
+                seconds.setdefault(m.sort, []).append(m)
+        two = r.choice(seconds[r.choice(sorted(seconds))])
+        assert two.frame is not None
+        found = [solved(f, (name,)) for f in (two.frame, one.frame, *_like(frame, name, two))]
+        if len(found) < 3 or found[0] is None:
+            continue
+        both, *parts = (f.cases[name] for f in found if f is not None)
+        if all(_off(both, other) >= least > 0 for other in (right, *parts)):
+            return (one, two), two.frame, both
+    return None
+
+
+def _like(frame: Frame, name: str, mistake: Mistake) -> list[Frame]:
+    """The frame as stated with the like of a mistake drawn for another one; none where it has no such mistake."""
+    for k in range(40):
+        for m in (*mistakes(frame, name, Random(k)), *common(frame, name, Random(k))):
+            if (m.sort, m.where) == (mistake.sort, mistake.where) and m.frame is not None:
+                return [m.frame]
+    return []
+
+
+def _off(one: CaseAnswer, two: CaseAnswer) -> float:
+    """The largest difference of an end moment."""
+    return float(np.abs(np.nan_to_num(one.ends[:, :, 2] - two.ends[:, :, 2])).max(initial=0.0))
+
+
+def tried_pair(
+    frame: Frame, name: str, pair: tuple[Mistake, Mistake], values: list[ClaimedValue], seed: int
+) -> Record:
+    """As tried(), of two mistakes. Right is a suspect of two that names kind and places of both, or whose results the
+    claim cannot tell from its own."""
+    opinions, closed = opinions_on(frame), closed_claim(values)
+    assert opinions is not None
+    claims = judged(frame, opinions, closed)
+    start = time.process_time()
+    found = search(frame, opinions, closed, claims, CLAIM) if any(c.verdict == "disagree" for c in claims) else None
+    spent = time.process_time() - start
+    suspects = found.suspects if found else ()
+    rank = next((k + 1 for k, s in enumerate(suspects) if _names_both(pair, s) or indistinct(frame, s, closed)), 0)
+    says = tuple(f"{s.kind} {s.where}: {s.says}" for s in suspects[:3])
+    kind = "week and week" if pair[1].sort in WEEK_SORTS else "week and common"
+    where = tuple(dict.fromkeys(w for m in pair for w in m.where))
+    return Record(seed, kind, f"{pair[0].sort} + {pair[1].sort}", where, worst([c.verdict for c in claims]), rank,
+                  len(suspects), says, suspects[0].explains if suspects else 0.0, spent)  # fmt: skip
+
+
+WEEK_SORTS = (
+    "service springs", "gross for state", "another state", "state for gross", "lean left out", "lean to the other side",
+    "order of a combination", "all spans loaded", "another arrangement", "haunch or taper left out", "end for end",
+    "all haunches left out", "rigid member that stretched", "member taken as rigid", "tie left out",
+    "one-way member two-way", "lean of a case left out", "one-way support two-way",
+)  # fmt: skip
+
+
+def _names_both(pair: tuple[Mistake, Mistake], suspect: Suspect) -> bool:
+    places = all(not m.where or set(m.where) & set(suspect.where) for m in pair)
+    return ", and " in suspect.says and suspect.kind in {m.kind for m in pair} and places
+
+
+def run_pairs(seeds: Iterable[int], per: int) -> Iterator[Record]:
+    for seed in seeds:
+        for frame, name, pair, values in drawn_pairs(seed, per):
+            yield tried_pair(frame, name, pair, values, seed)
 
 
 def run(seeds: Iterable[int], per: int, sorts: Any = mistakes) -> Iterator[Record]:
@@ -493,12 +596,13 @@ def main(arguments: list[str]) -> None:
         return
     sorts = common if "common" in arguments else mistakes
     records = []
-    for record in run_enveloped(seeds, per) if "envelopes" in arguments else run(seeds, per, sorts):
+    several = run_enveloped if "envelopes" in arguments else run_pairs if "pairs" in arguments else None
+    for record in several(seeds, per) if several else run(seeds, per, sorts):
         records.append(record)
         if record.rank != 1:
             says = f"{record.verdict} {record.rank} {record.first}"
             print(record.seed, record.sort, record.where, says, f"{record.seconds:.1f} s", flush=True)
-    print(table(records))
+    print(table([replace(r, sort="") for r in records] if "pairs" in arguments else records))
     spent = sorted(r.seconds for r in records)
     print(f"seconds of processor a claim: median {spent[len(spent) // 2]:.2f}, worst {spent[-1]:.2f}")
 

@@ -16,7 +16,8 @@ from crosscheck.answer import ACROSS, MOMENT, CaseAnswer, WorkTable
 from crosscheck.audit import bound, fit, one_way
 from crosscheck.audit.bound import ForceBound, hypercircle
 from crosscheck.audit.compatibility import _own_axes, compatibility
-from crosscheck.audit.equilibrium import Pieces, reaction_index, zone_moment
+from crosscheck.audit.equilibrium import FREE_SUPPORT, JOINT, Pieces, equations, reaction_index, zone_moment
+from crosscheck.audit.signatures import DEEP, LIGHT, REVERSED, signatures
 from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
@@ -476,6 +477,62 @@ def test_the_bound_on_each_value_is_as_wide_as_it_is_made_safe(monkeypatch: pyte
         assert isinstance(of, ForceBound)
         found.append(of.moment)
     assert (found[0] > 1e-3).all() and found[1] == pytest.approx(2 * found[0], rel=1e-6)
+
+
+def test_conditions_of_members_and_joints_are_kept_apart() -> None:
+    """Each member and each joint is a block of its own: what one block completes, another may be judged by."""
+    frame = read_frame_text(ZONED)
+    found = equations(frame, "q")
+    at_joint = np.isin(found.kind, [JOINT, FREE_SUPPORT])
+    owner = np.where(at_joint, len(frame.members) + found.place, found.place)
+    assert (found.block == owner).all() and len(set(found.block.tolist())) == len(frame.members) + len(frame.joints)
+
+
+@pytest.mark.parametrize("member", ["A-B", "B-C", "C-D"])
+def test_a_length_that_does_not_fit_is_found_by_member(member: str) -> None:
+    """Results of a frame with one member 2 mm too long, against the frame without: the whole misfit, and its size."""
+    too_long = ZONED.replace("apply = [{", f'apply = [{{ member = "{member}", misfit = 0.002 }}, {{')
+    other = Exact(read_frame_text(too_long)).cases["q"]
+    found = compatibility(read_frame_text(ZONED), "q", CaseAnswer(other.ends, other.joints, other.reactions))
+    (own,) = [s for s in signatures(found).entries if (s.kind, s.where) == ("length", member)]
+    assert own.share == pytest.approx(1.0, abs=1e-9) and abs(own.size) == pytest.approx(0.002, rel=1e-6)
+
+
+@pytest.mark.parametrize("ends", ['taper = ["s", "t"]', 'taper = ["t", "s"]'])
+@pytest.mark.parametrize("word", [REVERSED, LIGHT, DEEP])
+def test_a_taper_taken_as_another_is_found_by_its_whole_misfit(word: str, ends: str) -> None:
+    """Results of the frame with the thick end at the other joint, or with the thin or the thick section all along."""
+    text = ZONED.replace("sections.s =", "sections.t = { I = 9e-4, A = 9e-3, depth = 0.6 }\nsections.s =")
+    text = text.replace("A = 5e-3 }", "A = 5e-3, depth = 0.3 }", 1)
+    turned = 'taper = ["t", "s"]' if ends == 'taper = ["s", "t"]' else 'taper = ["s", "t"]'
+    taken = {REVERSED: turned, LIGHT: 'section = "s"', DEEP: 'section = "t"'}[word]
+    frame, other = (read_frame_text(text.replace('"B-C" = { section = "s"', f'"B-C" = {{ {t}')) for t in (ends, taken))
+    said = slope_deflection.opine(other, study(other)).cases["q"]  # type: ignore[union-attr]
+    best = signatures(compatibility(frame, "q", said)).entries
+    (own,) = [s for s in best if (s.kind, s.where, s.direction) == ("profile", "B-C", word)]
+    assert own.share == pytest.approx(1.0, abs=1e-6) and own.size == pytest.approx(1.0, rel=1e-4)
+
+
+def test_a_support_that_gives_the_one_way_that_a_rigid_member_leaves_is_sized() -> None:
+    """A strut at forty-five degrees, rigid along itself: its pinned end can only give across, here by 5000 kN/m."""
+    text = """
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], J = [3, 3] }
+members."A-J" = { section = "s", material = "m" }
+supports = { A = "fixed", J = "pinned" }
+[analysis]
+axial = "rigid"
+[loads.q]
+apply = [{ member = "A-J", force = 10, at = 2, direction = "across" }]
+"""
+    frame = read_frame_text(text)
+    other = read_frame_text(text.replace('J = "pinned"', 'J = { x = "held", y = 5000, angle = 45 }'))
+    said = slope_deflection.opine(other, study(other)).cases["q"]  # type: ignore[union-attr]
+    found = signatures(compatibility(frame, "q", said, None, study(frame).undetermined)).entries
+    (own,) = [s for s in found if (s.kind, s.where, s.direction) == ("support", "J", "x and y")]
+    assert own.share == pytest.approx(1.0, abs=1e-9) and own.fitted == pytest.approx(5000, rel=1e-6)
 
 
 SLACK = """
