@@ -287,13 +287,11 @@ def test_a_roller_turned_by_a_right_angle_is_not_a_turned_one_to_the_library(cos
     assert _has_turned_roller(SimpleNamespace(support_table=table)) is turned  # type: ignore[arg-type]
 
 
-def test_the_size_by_which_axial_forces_that_are_rounding_are_measured() -> None:
-    """A cantilever pushed across at its tip has no axial force: the shear, which is the load, is what it is measured by."""
-    frame = read_frame_text("""
+WHOLE = """
 units = "kN m"
 materials.m = { E = 200e6 }
 sections.s = { I = 1e-4, A = 5e-3 }
-joints = { A = [0, 0], B = [4, 0] }
+joints = { A = [0, 0], M = [1, 0], B = [4, 0] }
 members."A-B" = { section = "s", material = "m" }
 supports.A = "fixed"
 analysis.order = 2
@@ -301,9 +299,18 @@ analysis.order = 2
 apply = [{ joint = "B", force = 3, direction = "down" }]
 [loads.w]
 apply = [{ member = "A-B", force = 5, at = 1, direction = "down" }]
-""")
+"""
+DIVIDED = WHOLE.replace(
+    'members."A-B" =', 'members."A-M" = { section = "s", material = "m" }\nmembers."M-B" ='
+).replace('member = "A-B"', 'member = "M-B"')  # fmt: skip
+
+
+@pytest.mark.parametrize("text", [WHOLE.replace("M = [1, 0], ", ""), DIVIDED], ids=["whole", "divided"])
+def test_the_size_by_which_axial_forces_that_are_rounding_are_measured(text: str) -> None:
+    """A cantilever pushed across at its tip has no axial force: the shear, which is the load, is what it is measured by."""
+    frame = read_frame_text(text)
     for name, shear in (("q", 3.0), ("w", 5.0)):
-        trial = _trial(CaseInSecondOrder(frame, load_table(frame, name)), 1.0, np.zeros(1))
+        trial = _trial(CaseInSecondOrder(frame, load_table(frame, name)), 1.0, np.zeros(len(frame.members)))
         assert trial is not None and trial.size == pytest.approx(shear, rel=1e-9)
 
 
