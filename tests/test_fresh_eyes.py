@@ -248,3 +248,27 @@ def test_a_table_of_bar_forces_is_read(tmp_path: Path, text: str) -> None:
         if right in text and (right != "tie" or "T" not in text):
             slip = text.replace(right, wrong, 1)
             assert call("verify", frame, put(tmp_path, slip, "c.txt")).status != 0, slip
+
+
+MOMENTS = ["Member  Joint  M (kNm)", "A-B  A  25.6", "A-B  B  51.2", "C-D  C  -51.2", "C-D  D  -25.6"]
+
+
+@pytest.mark.parametrize("line", [1, 2, 3, 4])
+def test_a_row_whose_only_value_is_mistyped_is_not_lost(tmp_path: Path, line: int) -> None:
+    """"C-D  D  -25.6O" was taken for the head of a further table, and the claim agreed without it."""
+    rows = [row + "O" if k == line else row for k, row in enumerate(MOMENTS)]
+    said = call("verify", put(tmp_path, PORTAL), put(tmp_path, "\n".join(rows), "c.txt"), "--case", "dead")
+    assert said.status == 3 and f"line {line + 1}:" in said.out
+
+
+def test_statics_that_could_not_be_tested_is_not_said_to_fail(tmp_path: Path) -> None:
+    said = call("verify", put(tmp_path, PORTAL), put(tmp_path, "\n".join(MOMENTS[:4]), "c.txt"), "--case", "dead")
+    words = " ".join(said.out.split())
+    assert "nothing could be judged" in words and "statics could not be tested by what the claim gives" in words
+    assert "statics is not satisfied" not in words and "statics fails" not in words
+
+
+def test_an_unknown_key_of_the_record_is_said_to_be_one(tmp_path: Path) -> None:
+    """It was taken for the name of a file that is not there."""
+    said = call("opinions", put(tmp_path, PORTAL), "--report", tmp_path / "r.html", "--about", "jobb=Quay 4")
+    assert said.status == 2 and "jobb" in said.err and 'did you mean "job"' in said.err

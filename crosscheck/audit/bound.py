@@ -65,7 +65,7 @@ def hypercircle(frame: Frame, findings: CompatibilityFindings, values: CaseAnswe
     # The frame as the claim has it: without the one-way parts that do not work.
     frame = findings.fit.frame
     if not done.holds:
-        return "no bound: statics fails beyond rounding"
+        return f"no bound: statics {'fails beyond rounding' if done.fails else 'could not be tested by what is claimed'}"
     if _incomplete(frame, findings):
         return "no bound: the claim does not give every end moment and axial force"
     system = fit(frame, done, energy=True)

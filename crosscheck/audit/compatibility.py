@@ -227,7 +227,8 @@ def _conclusion(done: Balance, holds: bool | None, solution: bool, dimension: in
     if not holds:
         return f"the claimed deformations do not fit together ({tested} tested)"
     if not done.holds:
-        return f"the claimed deformations fit together ({tested} tested), but statics is not satisfied"
+        but = "statics is not satisfied" if done.fails else "statics could not be tested by what the claim gives"
+        return f"the claimed deformations fit together ({tested} tested), but {but}"
     return f"the claimed deformations fit together ({tested} tested), but not everything could be judged"
 
 

@@ -97,6 +97,11 @@ class Balance:
         return bool(judged) and all(judged)
 
     @property
+    def fails(self) -> bool:
+        """Some check that could be judged does not hold."""
+        return any(c.ok is False for c in self.checks)
+
+    @property
     def unjudged(self) -> tuple[StaticCheck, ...]:
         return tuple(c for c in self.checks if c.ok is None)
 

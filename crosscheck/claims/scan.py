@@ -13,7 +13,7 @@ from crosscheck.claims.names import MemberHit, Names, plain, without_prefix
 from crosscheck.claims.numbers import is_blank, parse_number
 from crosscheck.claims.reading import LineTrace
 from crosscheck.claims.sentences import looks_told
-from crosscheck.claims.split import Cell, Separator, is_rule, join_units, separator_of, split, wide_cells
+from crosscheck.claims.split import PULLS, Cell, Separator, is_rule, join_units, separator_of, split, wide_cells
 from crosscheck.claims.which import which_of
 from crosscheck.claims.words import RESULT_NOUNS, head_of, is_header_word, unit_of
 
@@ -55,6 +55,8 @@ _WORDS = re.compile(r"[\s,;:.()]+")
 _NAME_PARTS = re.compile(r"[\s,;()]+")
 _SPOILT = re.compile(r"\d|\*\*|##|^#|^[+-]?(?:inf|infinity|overflow)$", re.IGNORECASE)
 """What is left of a number that was printed too wide, divided by zero or mistyped."""
+_MISTYPED = re.compile(r"[+\-\u2212]?\d*[.,]?\d")
+"""What a mistyped number begins with."""
 _DATE = re.compile(
     r"\b\d{1,4}[-/.]\d{1,2}[-/.]\d{1,4}\b|\b\d{1,2}:\d{2}\b|\bpage\b|\bsheet\b|\bprinted\b|\bversion\b|\brev(?:ision)?\b"
     r"|\bdate\b|\bproject\b|\bjob\b|\bcopyright\b|\bfile\b|https?:|\bdtype\b|\bname:|\[\d+ rows x \d+ columns\]",
@@ -156,7 +158,7 @@ def is_prose(text: str) -> bool:
 def is_number(text: str) -> bool:
     """A number, alone or with a unit stuck to it."""
     read = parse_number(text) or parse_number(text, decimal_comma=True)
-    return read is not None and (not read.tail or unit_of(read.tail) is not None)
+    return read is not None and (not read.tail or unit_of(read.tail) is not None or read.tail.upper() in PULLS)
 
 
 def scan(lines: list[str], names: Names) -> Scan:
@@ -203,6 +205,7 @@ class _Scanner:
         numbers = sum(is_number(t) for t in filled)
         return (
             self._sentence(number, body, filled)
+            or self._mistyped_row(number, body, filled, numbers)
             or self._joining_row(number, body, filled, separator)
             or self._head(number, body, filled, numbers, separator)
             or self._heading_of_case(number, body, filled, numbers)
@@ -462,6 +465,18 @@ class _Scanner:
             return None
         if not values:
             return None
+        self.table.rows.append((number, text))
+        self.table.blocks.append(self.block)
+        return "row", ""
+
+    def _mistyped_row(self, number: int, text: str, filled: list[str], numbers: int) -> tuple[str, str] | None:
+        """A row whose only values are mistyped ("C-D  D  -25.6O"): letters that look like heads make no head of it."""
+        if numbers or self.table is None or not self.table.heads or len(filled) < 2 or not self._knows(filled[0]):
+            return None
+        values = [t for t in filled[1:] if not self._knows(t)]
+        if not values or not all(map(_MISTYPED.match, values)):
+            return None
+        self.heading = []
         self.table.rows.append((number, text))
         self.table.blocks.append(self.block)
         return "row", ""

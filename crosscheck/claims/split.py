@@ -100,6 +100,10 @@ def wide_cells(line: str) -> list[Cell]:
     return [Cell(m.start(), m.end(), m.group()) for m in _WIDE.finditer(line.translate(_BAR).replace("|", " "))]
 
 
+PULLS = frozenset(["(C)", "(T)"])
+"""Compression or tension, behind an axial force."""
+
+
 def join_units(cells: list[Cell]) -> list[Cell]:
     """Puts a unit that stands after its number ("12.3 kN", "4.5 kN m") into the number's cell."""
     out: list[Cell] = []
@@ -113,6 +117,8 @@ def join_units(cells: list[Cell]) -> list[Cell]:
 
 
 def _takes_unit(number: str, unit: str) -> bool:
+    if unit.upper() in PULLS:
+        return parse_number(number) is not None or parse_number(number, decimal_comma=True) is not None
     if unit[:1].isdigit() or not (unit[0].isalpha() or unit[0] in "%\u00b0"):
         return False
     read = parse_number(number) or parse_number(number, decimal_comma=True)

@@ -51,7 +51,8 @@ def read_about(given: Iterable[str]) -> dict[str, str]:
     problems = []
     for item in given:
         key, equals, text = item.partition("=")
-        pairs = [(key.strip(), text.strip())] if equals and key.strip() in ABOUT else list(_about_file(item).items())
+        stated = equals and (key.strip() in ABOUT or not Path(item).exists())
+        pairs = [(key.strip(), text.strip())] if stated else list(_about_file(item).items())
         for name, value in pairs:
             if name in ABOUT:
                 about[name] = str(value)

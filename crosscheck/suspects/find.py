@@ -32,8 +32,8 @@ NEAR = 4.0
 MOST_TIES = 5
 NOTHING_EXPLAINS = "nothing tried, alone or in pairs, explains the difference; start from statics and compatibility"
 NOTHING_ALONE = (
-    "nothing tried explains the difference; pairs of mistakes are not tried where cases differ in stiffness, order or in "
-    "what works: start from statics and compatibility"
+    "nothing tried explains the difference; pairs of mistakes are not tried in frames of second order, nor for envelopes: "
+    "start from statics and compatibility"
 )
 PLACES_NOT_TRIED = (
     f"no mistake of the paste, of a section or material, or of the whole frame explains the difference; in a frame of more "

@@ -28,7 +28,7 @@ from crosscheck.suspects.observation import Observation
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.supports import kinds_by_reactions
 from crosscheck.suspects.suspect import Family, Option
-from crosscheck.suspects.sweep import Sweep, Weighed
+from crosscheck.suspects.sweep import Sweep, Weighed, paired, same_place
 from crosscheck.suspects.week import week_families, week_options
 from crosscheck.suspects.whole import other_order, temperature_options, whole_options
 
@@ -40,12 +40,17 @@ NUMBERS = 12
 """Factors of states, and leans, fitted."""
 LIKELIEST_SLOW, FITS_SLOW = 20, 2
 """The same where a claimed combination is of second order."""
+PAIRS, PAIRS_SLOW = 80, 40
+"""Pairs of mistakes that are solved again, likeliest by the sum of what each does alone; and in second order."""
+FEWEST_OFF = 4
+"""Values further off than allowed, for pairs to be tried: of so many pairs some would meet three values by chance."""
+BEGIN = 8
+"""First mistakes for each of which a second is looked for in the frame that has it: half of them as the likeliest of
+pairs, half as what explains most alone."""
 
 
 class SituationsSweep(Sweep):
     """As a Sweep, without a matrix factorised once: there is no one matrix."""
-
-    pairwise = False
 
     def __init__(
         self, seen: Observation, closed: ClosedClaim, answer: Answer, over: Mapping[int, tuple[str, ...]],
@@ -57,6 +62,7 @@ class SituationsSweep(Sweep):
         self.frame = seen.frame
         self.solved = 0
         self.results = {}
+        self._foretold: list[tuple[Option, Floats]] = []
         self._over: dict[tuple[str, ...], Ints] = {}
         for names in dict.fromkeys(over.values()):
             self._over[names] = np.flatnonzero([over.get(id(v)) == names for v in seen.values])
@@ -87,10 +93,6 @@ class SituationsSweep(Sweep):
                 _extreme(column, self.seen.values[k].extreme) for column, k in zip(stack.T, rows.tolist(), strict=True)
             ]
         return out
-
-    def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
-        """None: each pair would be another search."""
-        return []
 
     # --- solving
 
@@ -155,7 +157,7 @@ class SituationsSweep(Sweep):
 
     # --- one frame that stands in for all
 
-    def _by_stand_in(self) -> list[Weighed]:
+    def _by_stand_in(self, fitting: bool = True) -> list[Weighed]:
         """What explains the same differences from a frame of one stiffness and first order, solved again."""
         name = self._furthest()
         frame, names = self._first_order(name)
@@ -166,12 +168,16 @@ class SituationsSweep(Sweep):
         if inner is None:
             return []
         with np.errstate(all="ignore"):
-            ranked = [w.option for w in inner.singles() if w.option.change.frame is not None and w.option.claimed is None]
-        distinct = {(o.where, o.says): replace(o, delta=None) for o in ranked}
+            every = inner.singles() if fitting else inner.cheap_singles()
+            ranked = [w for w in every if w.option.change.frame is not None and w.option.claimed is None]
+        alone = {(w.option.where, w.option.says): (replace(w.option, delta=None), w.said - inner.seen.said) for w in ranked}
+        distinct = {key: option for key, (option, _) in alone.items()}
+        if len(inner.seen.value) == len(self.seen.value):
+            self._foretold = list(alone.values())
         likeliest, fits = (LIKELIEST_SLOW, FITS_SLOW) if self.slow else (LIKELIEST, FITS)
         chosen = [*(kinds_by_reactions(self.seen) if self.slow else ()), *islice(distinct.values(), likeliest)]
         found = sorted(self._solved({(o.where, o.says): o for o in chosen}.values()), key=lambda w: w.rough)
-        for w in [] if any(w.fits for w in found) else found[:fits]:
+        for w in [] if any(w.fits for w in found) or not fitting else found[:fits]:
             found += self._fitted_again(w)
         return found
 
@@ -229,6 +235,69 @@ class SituationsSweep(Sweep):
         same = tuple(n for n in self.seen.names if self.frame.under(n) is plain)
         first = plain if plain.analysis.order == 1 else replace(plain, analysis=replace(plain.analysis, order=1))
         return (working_frame(first, name), (name,)) if self.frame.one_way else (first, same)
+
+    # --- pairs
+
+    @property
+    def pairwise(self) -> bool:
+        return not (self.large or self._over)
+
+    def pairs(self, singles: list[Weighed], first: int = BEGIN) -> list[Weighed]:
+        """Two mistakes together: those whose effects add up best to the difference, solved again; then what is second in a
+        frame that has the first, for the likeliest of these."""
+        own = sorted(filter(_of_the_frame, singles), key=lambda w: w.rough)
+        found = [*((w.option, w.said - self.seen.said) for w in own), *self._foretold]
+        alone = list({(o.where, o.says): (o, delta) for o, delta in reversed(found)}.values())[::-1]
+        if not self.pairwise or self.seen.off.sum() < FEWEST_OFF or len(alone) < 2:
+            return []
+        likeliest = list(self._likeliest_pairs([delta for _, delta in alone], [o for o, _ in alone]))
+        together = [paired(alone[a][0], alone[b][0]) for a, b in likeliest[: PAIRS_SLOW if self.slow else PAIRS]]
+        out = self._solved(together)
+        begin = list(dict.fromkeys(k for pair in likeliest for k in pair))[: first // 2]
+        begin += [k for k in range(len(own)) if k not in begin][: first - len(begin)]
+        for k in [] if self.slow else begin:
+            if any(w.fits for w in out):
+                break
+            out += self._seconds(alone[k][0])
+        return sorted(out, key=lambda w: w.score)
+
+    def _likeliest_pairs(self, deltas: list[Floats], options: list[Option]) -> Iterator[tuple[int, int]]:
+        """Pairs by what would be left over if effects simply added up, in tolerances; those of one place left out."""
+        d = np.array(deltas) / self.seen.allowed
+        r = self.seen.residual / self.seen.allowed
+        size, along = (d**2).sum(axis=1), d @ r
+        left = (size - 2 * along)[:, None] + (size - 2 * along)[None, :] + 2 * d @ d.T
+        a, b = np.triu_indices(len(d), 1)
+        for k in np.argsort(left[a, b], kind="stable")[: 20 * PAIRS].tolist():
+            if not same_place(options[a[k]], options[b[k]]):
+                yield int(a[k]), int(b[k])
+
+    def _seconds(self, one: Option) -> Iterator[Weighed]:
+        """What explains the rest in the frame that has the first mistake."""
+        changed, claim = one.change.apply(self.frame, self.closed)
+        answer = self.answer_to(changed, self.names, False)
+        if answer is None or changed.members.keys() != self.frame.members.keys():
+            return
+        said = self.seen.read(answer)
+        if not np.isfinite(said).all():
+            return
+        inner = SituationsSweep(replace(self.seen, frame=changed, said=said), claim, answer, {})
+        for two in inner.seconds():
+            if not same_place(one, two.option):
+                yield self.weigh(paired(one, two.option), two.said)
+
+    def seconds(self) -> list[Weighed]:
+        """Singles of the frame without the searches that fit a number."""
+        found = self._solved(self._of_the_week())
+        if not any(w.fits for w in found):
+            found += self._by_stand_in(False)
+        return sorted(filter(_of_the_frame, found), key=lambda w: w.rough)[:8]
+
+
+def _of_the_frame(w: Weighed) -> bool:
+    """Whether the mistake is in the frame alone, and has no number fitted to the whole difference."""
+    o = w.option
+    return o.change.frame is not None and o.claimed is None and o.half is None and not o.fitted
 
 
 def _only(frame: Frame, member: str | None) -> str:

@@ -91,9 +91,7 @@ class Weighed:
 
 
 class Sweep:
-    """One observation and everything tried on it. pairwise: whether pairs of mistakes are among it."""
-
-    pairwise = True
+    """One observation and everything tried on it."""
 
     def __init__(
         self, seen: Observation, closed: ClosedClaim, base: Prepared, answer: Answer, stand_in: bool = False
@@ -392,10 +390,15 @@ class Sweep:
 
     # --- pairs ---
 
+    @property
+    def pairwise(self) -> bool:
+        """Whether pairs of mistakes are tried."""
+        return not (self.slow or self.large)
+
     def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
         """Two mistakes together, begun from the singles that explain most."""
         out: list[Weighed] = []
-        if self.slow or self.large:
+        if not self.pairwise:
             return out
         begin = sorted((w for w in singles if w.explains > 0.05), key=lambda w: w.rough)[:first]
         for one in begin:
@@ -418,15 +421,11 @@ class Sweep:
         with np.errstate(all="ignore"):
             best = inner.cheap_singles()
         for two in best[:8]:
-            if two.option.where == option.where and two.option.kind == option.kind:
+            if same_place(option, two.option):
                 continue
             if not all(self._known(where) for where in two.option.where):
                 continue
-            both = Option(
-                option.kind, tuple(dict.fromkeys((*option.where, *two.option.where))),
-                f"{option.says}, and {two.option.says}", option.change.then(two.option.change),
-                PAIR + option.cost + two.option.cost, claimed=two.claimed, fitted=option.fitted + two.option.fitted,
-            )  # fmt: skip
+            both = replace(paired(option, two.option), claimed=two.claimed)
             yield self.weigh(both, two.said)
 
     def _known(self, where: str) -> bool:
@@ -447,6 +446,19 @@ class Sweep:
 
 PAIR = 2.5
 """What a second mistake costs."""
+
+
+def paired(one: Option, two: Option) -> Option:
+    """Both mistakes, the second in the frame that has the first."""
+    return Option(
+        one.kind, tuple(dict.fromkeys((*one.where, *two.where))), f"{one.says}, and {two.says}",
+        one.change.then(two.change), PAIR + one.cost + two.cost, fitted=one.fitted + two.fitted,
+    )  # fmt: skip
+
+
+def same_place(one: Option, two: Option) -> bool:
+    """Whether two mistakes are of one kind at one place, so that together they are a third of that kind."""
+    return (one.kind, one.where) == (two.kind, two.where)
 
 
 def _without_missing(seen: Observation, answer: Answer, changed: Frame, names: tuple[str, ...]) -> Floats:
