@@ -44,9 +44,8 @@ PAIRS, PAIRS_SLOW = 80, 40
 """Pairs of mistakes that are solved again, likeliest by the sum of what each does alone; and in second order."""
 FEWEST_OFF = 4
 """Values further off than allowed, for pairs to be tried: of so many pairs some would meet three values by chance."""
-BEGIN = 8
-"""First mistakes for each of which a second is looked for in the frame that has it: half of them as the likeliest of
-pairs, half as what explains most alone."""
+BEGIN = 4
+"""First mistakes of each of three sorts for which a second is looked for in the frame that has them."""
 
 
 class SituationsSweep(Sweep):
@@ -242,7 +241,7 @@ class SituationsSweep(Sweep):
     def pairwise(self) -> bool:
         return not (self.large or self._over)
 
-    def pairs(self, singles: list[Weighed], first: int = BEGIN) -> list[Weighed]:
+    def pairs(self, singles: list[Weighed], first: int = 0) -> list[Weighed]:
         """Two mistakes together: those whose effects add up best to the difference, solved again; then what is second in a
         frame that has the first, for the likeliest of these."""
         own = sorted(filter(_of_the_frame, singles), key=lambda w: w.rough)
@@ -253,12 +252,10 @@ class SituationsSweep(Sweep):
         likeliest = list(self._likeliest_pairs([delta for _, delta in alone], [o for o, _ in alone]))
         together = [paired(alone[a][0], alone[b][0]) for a, b in likeliest[: PAIRS_SLOW if self.slow else PAIRS]]
         out = self._solved(together)
-        begin = list(dict.fromkeys(k for pair in likeliest for k in pair))[: first // 2]
-        begin += [k for k in range(len(own)) if k not in begin][: first - len(begin)]
-        for k in [] if self.slow else begin:
+        for one in self._beginnings([o for o, _ in alone], [k for pair in likeliest for k in pair], own, first or self._few()):
             if any(w.fits for w in out):
                 break
-            out += self._seconds(alone[k][0])
+            out += self._seconds(one)
         return sorted(out, key=lambda w: w.score)
 
     def _likeliest_pairs(self, deltas: list[Floats], options: list[Option]) -> Iterator[tuple[int, int]]:
@@ -271,6 +268,24 @@ class SituationsSweep(Sweep):
         for k in np.argsort(left[a, b], kind="stable")[: 20 * PAIRS].tolist():
             if not same_place(options[a[k]], options[b[k]]):
                 yield int(a[k]), int(b[k])
+
+    def _few(self) -> int:
+        """Each solution of a frame with one-way parts is a search of its own."""
+        return BEGIN // 2 if self.frame.one_way else BEGIN
+
+    def _beginnings(self, options: list[Option], likeliest: list[int], own: list[Weighed], few: int) -> list[Option]:
+        """First mistakes that leave all in first order: the likeliest of pairs, what explains most alone, the commonest."""
+        commonest = sorted((w.option for w in own), key=lambda o: o.cost)
+        chosen: dict[int, Option] = {}
+        for some in ([options[k] for k in likeliest], [w.option for w in own], commonest):
+            quick = (o for o in dict.fromkeys(some) if id(o) not in chosen and self._first_order_after(o))
+            chosen.update((id(o), o) for o in islice(quick, few))
+        return list(chosen.values())
+
+    def _first_order_after(self, one: Option) -> bool:
+        assert one.change.frame is not None
+        changed = one.change.frame(self.frame)
+        return all(changed.under(name).analysis.order == 1 for name in self.names)
 
     def _seconds(self, one: Option) -> Iterator[Weighed]:
         """What explains the rest in the frame that has the first mistake."""
