@@ -105,15 +105,15 @@ def _strange(read: list[_Table], names: Names) -> list[str]:
         if any(raw.blocks):
             return []
         of = [k for k, r in enumerate(meaning.roles) if r.name in ("member", "joint", "start joint", "end joint")]
-        cells = [row[k] for row in grid.rows for k in of] if meaning.kind else [t for _, x in raw.rows for t in _words(x)]
+        cells = [row[k] for row in grid.rows for k in of] if meaning.kind else [_first_word(text) for _, text in raw.rows]
         labels |= dict.fromkeys(c for c in cells if not is_blank(c))
     known = any(names.member(c) or names.joint(c) for c in labels)
     return [] if known or len(labels) < 2 else list(labels)
 
 
-def _words(text: str) -> list[str]:
-    """What of a row of a table that cannot be understood may be names."""
-    return [c.text for c in cells_of(text)[1] if c.text and not is_number(c.text)]
+def _first_word(text: str) -> str:
+    """What of a row of a table that cannot be understood may be a name."""
+    return next((c.text for c in cells_of(text)[1] if c.text and not is_number(c.text)), "")
 
 
 def _nothing(scanned: Scan, reader: _Reader) -> tuple[str, str]:

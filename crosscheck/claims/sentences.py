@@ -46,6 +46,7 @@ _ALONG = ("axial", "shear", "moment", "across")
 _UNIT_FIRST = re.compile(r"[(\[]([^)\]\d]{1,8})[)\]]\s*:[^\d]*([+-]?\d+(?:[.,]\d+)?)")
 """The unit of a list in front of it: "Reactions (kN): A 38.3"."""
 _OPEN_COMMA = re.compile(r"\D*[1-9]\d{0,2},\d{3}(?!\d)\D*")
+_SAGS, _HOGS = re.compile(r"(?i:\bsagging\b)|\bM\+"), re.compile(r"(?i:\bhogging\b)|\bM[-\u2212](?!\w)")
 _UPRIGHT = 0.2
 """Below this cosine a member counts as upright: sagging and hogging say nothing of it."""
 
@@ -98,15 +99,25 @@ def entries_told(text: str, line: int, table: int, names: Names) -> tuple[list[E
     only_units = bool(out)  # what stands between symbols is a value only with a unit of its own
     before: Entry | None = None
     last: Told | None = None
+    member: str | None = None
     for bare in told(rest):
         if only_units and bare.unit is None:
             continue
         said = last = _with_manner(bare, last, names)
-        found, why = _Sentence(rest, line, table, names, before).entries(said)
+        member = _member_named(said, member, names)
+        found, why = _Sentence(rest, line, table, names, before, member).entries(said)
         out += found
         odd += [why] if why else []
         before = found[-1] if found else before
     return _with_commas(out), odd
+
+
+def _member_named(said: Told, before: str | None, names: Names) -> str | None:
+    """The member that is spoken of: the last one named, until a joint elsewhere is."""
+    places = _places(said.words, names)
+    if places.member is not None:
+        return places.member.name
+    return before if before and all(j in names.frame.members[before] for j in places.joints) else None
 
 
 def _with_manner(said: Told, last: Told | None, names: Names) -> Told:
@@ -156,14 +167,16 @@ class _Places:
 
 @dataclass(frozen=True, slots=True)
 class _Sentence:
-    """One sentence, and the value before the one that is read: without a name of its own, a value is of the member or
-    joint before it."""
+    """One sentence, and the value before the one that is read.
+
+    Without a name of its own, a value is of the joint before it, or of the member that was named last (spoken_of)."""
 
     text: str
     line: int
     table: int
     names: Names
     before: Entry | None
+    spoken_of: str | None
 
     def entries(self, said: Told) -> tuple[list[Entry], str]:
         """What one value is: one entry, or one a joint of those listed; or why it is not understood."""
@@ -198,10 +211,8 @@ class _Sentence:
             return replace(blank, kind=kind, joint=joint, extreme=None, sense="said"), ""  # type: ignore[arg-type]
         if sense not in _ALONG:
             return replace(blank, joint=joint), ""
-        if member is None and before is not None and before.member and not elsewhere:
-            # "B-C at B 51.2 kNm, at C 48.0": the second is of the same member
-            carried = unnamed or joint in self.names.frame.members[before.member]
-            member = MemberHit(before.member, 0) if carried else None
+        if member is None and self.spoken_of and not elsewhere:
+            member = MemberHit(self.spoken_of, 0)  # "B-C at B 51.2 kNm, at C 48.0": the second is of the same member
         return self._along(said, sense, member, joint, blank)
 
     def _along(
@@ -272,9 +283,8 @@ def _moment_at(joint: str, blank: Entry, names: Names) -> tuple[Entry | None, st
 
 
 def _bends(said: Told) -> int:
-    """+1 where the words say sagging, -1 hogging, 0 where neither or both."""
-    sags, hogs = (bool(re.search(rf"\b{word}\b", said.words, re.IGNORECASE)) for word in ("sagging", "hogging"))
-    return int(sags) - int(hogs)
+    """+1 where the words say sagging (M+), -1 hogging (M-), 0 where neither or both."""
+    return int(bool(_SAGS.search(said.words))) - int(bool(_HOGS.search(said.words)))
 
 
 def _directed(blank: Entry, sign: int) -> Entry:
@@ -356,6 +366,8 @@ def _named(said: Told, member: MemberHit | None, joint: str | None) -> str | Non
         q for q in _WORDS if q in allowed and re.search(_WORDS[q], said.words, re.IGNORECASE if q not in _LETTERS else 0)
     ]
     named = named or [q for q in _WORDS if q in allowed and re.search(_WORDS[q], said.words, re.IGNORECASE)]
+    if "axial" in named and {"fx", "fy"} & {*named} and member is None and joint is not None:
+        named.remove("axial")  # the thrust of a support
     if "across" in named and len(named) > 1:
         named.remove("across")
     if named == ["across"] and member is None:
