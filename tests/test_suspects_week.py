@@ -19,7 +19,18 @@ from crosscheck.suspects.observation import observe
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.week import has_week
 from tests.corpus import CLAIM, case_values, closed_claim, judged, table
-from tests.corpus_week import common, envelope_values, opinions_on, right_claims, run, run_enveloped, solved, the_frame
+from tests.corpus_week import (
+    common,
+    drawn_pairs,
+    envelope_values,
+    opinions_on,
+    right_claims,
+    run,
+    run_enveloped,
+    run_pairs,
+    solved,
+    the_frame,
+)
 from tests.random_frames import random_frame
 from tests.week_frames import week_frame
 
@@ -81,6 +92,41 @@ def test_right_claims_have_no_suspects(seed: int, digits: int) -> None:
 def test_right_claims_of_any_case_have_no_suspects(seed: int) -> None:
     found = list(right_claims(seed, 5))
     assert [f for f in found if f[2] == "disagree" or f[3]] == []
+
+
+# --- two mistakes at once
+
+
+@pytest.mark.parametrize("seed", (DEPOT, WORKSHOP, RACK, CAUSEWAY, *range(4, 84)) if FULL else (CAUSEWAY, 18, 33))
+def test_pairs_of_mistakes_are_named_together(seed: int) -> None:
+    records = list(run_pairs([seed], 2))
+    assert records or FULL
+    assert all(r.verdict == "disagree" for r in records)
+    assert all(r.rank == 1 for r in records), [(r.sort, r.where, r.first) for r in records]
+
+
+def test_effects_that_do_not_add_up_are_found_one_after_the_other() -> None:
+    """Gross stiffness for cracked, and half of one member's I: neither is likely before the other is known."""
+    (frame, _, pair, values), *_ = drawn_pairs(4, 3)
+    assert {m.sort for m in pair} == {"gross for state", "half of I"}
+    opinions, closed = opinions_on(frame), closed_claim(values)
+    assert opinions is not None
+    suspects = search(frame, opinions, closed, judged(frame, opinions, closed), CLAIM).suspects
+    assert all(s.fits and "stiffness as stated was used in place of state cracked" in s.says for s in suspects[:2])
+    assert any("and 3-2 had 0.5 times its EI" in s.says for s in suspects[:2])
+
+
+def test_few_values_are_not_explained_by_pairs() -> None:
+    """Three values, each wrong in its own way: some pair of so many would meet them by chance."""
+    frame = the_frame(CAUSEWAY)
+    answer, opinions = solved(frame, ("ultimate",)), opinions_on(frame)
+    assert answer is not None and opinions is not None
+    values = [v for v in case_values(frame, answer.cases["ultimate"], "ultimate", 3, True) if v.quantity == "moment"]
+    three = [v for v in values if v.value][:3]
+    wrong = [replace(v, value=v.value * f) for v, f in zip(three, (0.7, 1.2, 0.9), strict=True)]
+    closed = closed_claim(wrong)
+    found = search(frame, opinions, closed, judged(frame, opinions, closed), CLAIM)
+    assert not any(", and " in s.says for s in found.suspects)
 
 
 # --- claims that are envelopes

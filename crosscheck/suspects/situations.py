@@ -252,7 +252,8 @@ class SituationsSweep(Sweep):
         likeliest = list(self._likeliest_pairs([delta for _, delta in alone], [o for o, _ in alone]))
         together = [paired(alone[a][0], alone[b][0]) for a, b in likeliest[: PAIRS_SLOW if self.slow else PAIRS]]
         out = self._solved(together)
-        for one in self._beginnings([o for o, _ in alone], [k for pair in likeliest for k in pair], own, first or self._few()):
+        of_pairs = [alone[k][0] for pair in likeliest for k in pair]
+        for one in self._beginnings((of_pairs, [w.option for w in own]), first or self._few()):
             if any(w.fits for w in out):
                 break
             out += self._seconds(one)
@@ -273,11 +274,11 @@ class SituationsSweep(Sweep):
         """Each solution of a frame with one-way parts is a search of its own."""
         return BEGIN // 2 if self.frame.one_way else BEGIN
 
-    def _beginnings(self, options: list[Option], likeliest: list[int], own: list[Weighed], few: int) -> list[Option]:
+    def _beginnings(self, rankings: tuple[list[Option], list[Option]], few: int) -> list[Option]:
         """First mistakes that leave all in first order: the likeliest of pairs, what explains most alone, the commonest."""
-        commonest = sorted((w.option for w in own), key=lambda o: o.cost)
+        commonest = sorted(rankings[1], key=lambda o: o.cost)
         chosen: dict[int, Option] = {}
-        for some in ([options[k] for k in likeliest], [w.option for w in own], commonest):
+        for some in (*rankings, commonest):
             quick = (o for o in dict.fromkeys(some) if id(o) not in chosen and self._first_order_after(o))
             chosen.update((id(o), o) for o in islice(quick, few))
         return list(chosen.values())
