@@ -97,7 +97,7 @@ def test_right_claims_of_any_case_have_no_suspects(seed: int) -> None:
 # --- two mistakes at once
 
 
-@pytest.mark.parametrize("seed", (DEPOT, WORKSHOP, RACK, CAUSEWAY, *range(4, 84)) if FULL else (CAUSEWAY, 18, 33))
+@pytest.mark.parametrize("seed", (DEPOT, WORKSHOP, RACK, CAUSEWAY, *range(4, 84)) if FULL else (CAUSEWAY, 33))
 def test_pairs_of_mistakes_are_named_together(seed: int) -> None:
     records = list(run_pairs([seed], 2))
     assert records or FULL

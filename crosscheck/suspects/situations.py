@@ -44,8 +44,9 @@ PAIRS, PAIRS_SLOW = 80, 40
 """Pairs of mistakes that are solved again, likeliest by the sum of what each does alone; and in second order."""
 FEWEST_OFF = 4
 """Values further off than allowed, for pairs to be tried: of so many pairs some would meet three values by chance."""
-BEGIN = 4
-"""First mistakes of each of three sorts for which a second is looked for in the frame that has them."""
+BEGIN, BEGIN_ONE_WAY = (4, 4, 6), (2, 2, 3)
+"""First mistakes for each of which a second is looked for in the frame that has it: of the likeliest pairs, of those that
+explain most alone, of the commonest; and where parts work one way only, each solution a search of its own."""
 
 
 class SituationsSweep(Sweep):
@@ -241,7 +242,7 @@ class SituationsSweep(Sweep):
     def pairwise(self) -> bool:
         return not (self.large or self._over)
 
-    def pairs(self, singles: list[Weighed], first: int = 0) -> list[Weighed]:
+    def pairs(self, singles: list[Weighed]) -> list[Weighed]:
         """Two mistakes together: those whose effects add up best to the difference, solved again; then what is second in a
         frame that has the first, for the likeliest of these."""
         own = sorted(filter(_of_the_frame, singles), key=lambda w: w.rough)
@@ -253,7 +254,7 @@ class SituationsSweep(Sweep):
         together = [paired(alone[a][0], alone[b][0]) for a, b in likeliest[: PAIRS_SLOW if self.slow else PAIRS]]
         out = self._solved(together)
         of_pairs = [alone[k][0] for pair in likeliest for k in pair]
-        for one in self._beginnings((of_pairs, [w.option for w in own]), first or self._few()):
+        for one in self._beginnings(of_pairs, [w.option for w in own]):
             if any(w.fits for w in out):
                 break
             out += self._seconds(one)
@@ -270,15 +271,11 @@ class SituationsSweep(Sweep):
             if not same_place(options[a[k]], options[b[k]]):
                 yield int(a[k]), int(b[k])
 
-    def _few(self) -> int:
-        """Each solution of a frame with one-way parts is a search of its own."""
-        return BEGIN // 2 if self.frame.one_way else BEGIN
-
-    def _beginnings(self, rankings: tuple[list[Option], list[Option]], few: int) -> list[Option]:
-        """First mistakes that leave all in first order: the likeliest of pairs, what explains most alone, the commonest."""
-        commonest = sorted(rankings[1], key=lambda o: o.cost)
+    def _beginnings(self, of_pairs: list[Option], alone: list[Option]) -> list[Option]:
+        """First mistakes that leave all in first order."""
         chosen: dict[int, Option] = {}
-        for some in (*rankings, commonest):
+        rankings = (of_pairs, alone, sorted(alone, key=lambda o: o.cost))
+        for some, few in zip(rankings, BEGIN_ONE_WAY if self.frame.one_way else BEGIN, strict=True):
             quick = (o for o in dict.fromkeys(some) if id(o) not in chosen and self._first_order_after(o))
             chosen.update((id(o), o) for o in islice(quick, few))
         return list(chosen.values())

@@ -395,12 +395,12 @@ class Sweep:
         """Whether pairs of mistakes are tried."""
         return not (self.slow or self.large)
 
-    def pairs(self, singles: list[Weighed], first: int = 6) -> list[Weighed]:
+    def pairs(self, singles: list[Weighed]) -> list[Weighed]:
         """Two mistakes together, begun from the singles that explain most."""
         out: list[Weighed] = []
         if not self.pairwise:
             return out
-        begin = sorted((w for w in singles if w.explains > 0.05), key=lambda w: w.rough)[:first]
+        begin = sorted((w for w in singles if w.explains > 0.05), key=lambda w: w.rough)[:BEGIN]
         for one in begin:
             out += self._second(one)
             if any(w.fits for w in out):
@@ -444,6 +444,8 @@ class Sweep:
         return sorted(found, key=lambda w: w.score)
 
 
+BEGIN = 6
+"""Singles for each of which a second is looked for."""
 PAIR = 2.5
 """What a second mistake costs."""
 
