@@ -785,6 +785,82 @@ def run(seeds: Iterable[int], per: int, digits: int | None = 4, only: str = "all
             yield tried(frame, case, mistake, opinions, values, seed)
 
 
+# --- two mistakes at once
+
+
+def drawn_pairs(
+    seed: int, per: int
+) -> Iterator[tuple[Frame, str, tuple[Mistake, Mistake], check.Opinions, list[ClaimedValue]]]:
+    """Claims of one random frame with two mistakes of the frame, at 4 digits; each of the two changes what the other alone
+    makes by more than 3% of the peak end moment."""
+    r = Random(f"pairs {seed}")
+    found = corpus_frame(seed, r)
+    if found is None:
+        return
+    frame, case, opinions = found
+    base = opinions.answers["slope-deflection"].cases[case]
+    peak = float(np.abs(np.nan_to_num(base.ends[:, :, 2])).max(initial=0.0))
+    least = max(EFFECT * peak, FAINT * opinions.judgements[case].scales.moments)
+    for _ in range(6 * per):
+        if per == 0 or not peak:
+            return
+        one = _any_sort(_of_the_frame(frame, case, r), r)
+        two = None if one is None or one.frame is None else _any_sort(_of_the_frame(one.frame, case, r), r)
+        if one is None or two is None or two.frame is None:
+            continue
+        alike = [m for k in range(20) for m in _of_the_frame(frame, case, Random(k))
+                 if (m.sort, m.where) == (two.sort, two.where)][:1]  # fmt: skip
+        values, *alone = (claimed(frame, m, case, 4, seed % 2 == 0, "all") for m in (two, one, *alike))
+        against = [base, *(a.cases[case] for m in (one, *alike) if (a := solved(m.frame or frame, (case,))) is not None)]
+        if alike and values and all(alone) and all(_effect(frame, c, values) >= least for c in against):
+            per -= 1
+            yield frame, case, (one, two), opinions, values
+
+
+def _of_the_frame(frame: Frame, case: str, r: Random) -> list[Mistake]:
+    """Mistakes of the frame alone, all its members kept."""
+    every = mistakes(frame, case, r)
+    return [m for m in every if m.frame is not None and not (m.paste or m.name or m.adjust) and m.sort != "member missing"]
+
+
+def _any_sort(some: list[Mistake], r: Random) -> Mistake | None:
+    """One of the mistakes, every sort as likely."""
+    sorts = sorted({m.sort for m in some})
+    return r.choice([m for m in some if m.sort == r.choice(sorts)] or some) if sorts else None
+
+
+def tried_pair(
+    frame: Frame, case: str, pair: tuple[Mistake, Mistake], opinions: check.Opinions, values: list[ClaimedValue], seed: int
+) -> Record:
+    """As tried(), of two mistakes. Right is a suspect of two that names a kind and places of both, or whose results the
+    claim cannot tell from its own."""
+    closed = closed_claim(values)
+    claims = judged(frame, opinions, closed)
+    start = time.process_time()
+    found = search(frame, opinions, closed, claims, CLAIM) if any(c.verdict == "disagree" for c in claims) else None
+    spent = time.process_time() - start
+    suspects = found.suspects if found else ()
+    nobody = Mistake("", "", ("",))
+    rank = next((k + 1 for k, s in enumerate(suspects) if both_named(pair, s) or right(frame, case, nobody, s, closed)), 0)
+    order = "second order" if frame.analysis.order == 2 else "first order"
+    where = tuple(w for m in pair for w in m.where)
+    says = tuple(f"{s.kind} {s.where}: {s.says}" for s in suspects[:3])
+    return Record(seed, order, f"{pair[0].sort} + {pair[1].sort}", where, worst([c.verdict for c in claims]), rank,
+                  len(suspects), says, suspects[0].explains if suspects else 0.0, spent)  # fmt: skip
+
+
+def both_named(pair: tuple[Mistake, Mistake], suspect: Suspect) -> bool:
+    """Whether a suspect is of two mistakes, of a kind of theirs, and names a place of each that has one."""
+    places = all(not m.where or set(m.where) & set(suspect.where) for m in pair)
+    return ", and " in suspect.says and suspect.kind in {m.kind for m in pair} and places
+
+
+def run_pairs(seeds: Iterable[int], per: int) -> Iterator[Record]:
+    for seed in seeds:
+        for frame, case, pair, opinions, values in drawn_pairs(seed, per):
+            yield tried_pair(frame, case, pair, opinions, values, seed)
+
+
 def table(records: list[Record]) -> str:
     """Per kind and sort: how many, called disagree, right first, right among the first three, none named."""
     rows: dict[tuple[str, str], list[Record]] = {}
@@ -806,10 +882,10 @@ if __name__ == "__main__":
     what = sys.argv[4] if len(sys.argv) > 4 else "all"
     done: list[Record] = []
     try:
-        for got in run(range(first, last), each, only=what):
+        for got in run_pairs(range(first, last), each) if what == "pairs" else run(range(first, last), each, only=what):
             done.append(got)
             if got.rank != 1:
                 print(got, flush=True)
     finally:
-        print(table(done))
+        print(table([replace(x, sort="pairs") for x in done] if what == "pairs" else done))
     print(f"{len({x.seed for x in done})} frames, {sum(x.seconds for x in done) / max(len(done), 1):.3f} s each")

@@ -31,7 +31,7 @@ from crosscheck.frame.model import FREE, HELD, Combination, Frame, Lean, Piece, 
 from crosscheck.opinions import moment_distribution, slope_deflection
 from crosscheck.problems import UnusableInput
 from crosscheck.suspects import Suspect, search
-from tests.corpus import CLAIM, EFFECT, FAINT, Mistake, Record, case_values, closed_claim, judged, table
+from tests.corpus import CLAIM, EFFECT, FAINT, Mistake, Record, both_named, case_values, closed_claim, judged, table
 from tests.week_frames import week_frame
 
 CASES = Path(__file__).parents[1] / "cases"
@@ -460,7 +460,7 @@ def tried_pair(
     found = search(frame, opinions, closed, claims, CLAIM) if any(c.verdict == "disagree" for c in claims) else None
     spent = time.process_time() - start
     suspects = found.suspects if found else ()
-    rank = next((k + 1 for k, s in enumerate(suspects) if _names_both(pair, s) or indistinct(frame, s, closed)), 0)
+    rank = next((k + 1 for k, s in enumerate(suspects) if both_named(pair, s) or indistinct(frame, s, closed)), 0)
     says = tuple(f"{s.kind} {s.where}: {s.says}" for s in suspects[:3])
     kind = "week and week" if pair[1].sort in WEEK_SORTS else "week and common"
     where = tuple(dict.fromkeys(w for m in pair for w in m.where))
@@ -474,11 +474,6 @@ WEEK_SORTS = (
     "all haunches left out", "rigid member that stretched", "member taken as rigid", "tie left out",
     "one-way member two-way", "lean of a case left out", "one-way support two-way",
 )  # fmt: skip
-
-
-def _names_both(pair: tuple[Mistake, Mistake], suspect: Suspect) -> bool:
-    places = all(not m.where or set(m.where) & set(suspect.where) for m in pair)
-    return ", and " in suspect.says and suspect.kind in {m.kind for m in pair} and places
 
 
 def run_pairs(seeds: Iterable[int], per: int) -> Iterator[Record]:

@@ -425,7 +425,8 @@ class Sweep:
                 continue
             if not all(self._known(where) for where in two.option.where):
                 continue
-            both = replace(paired(option, two.option), claimed=two.claimed)
+            # With a delta, so that it is confirmed by solving before it is told.
+            both = replace(paired(option, two.option), claimed=two.claimed, delta=two.said - self.seen.said)
             yield self.weigh(both, two.said)
 
     def _known(self, where: str) -> bool:
