@@ -282,3 +282,45 @@ def test_a_member_that_was_only_inferred_is_not_carried_on(tmp_path: Path) -> No
     said = told(tmp_path, PORTAL, "wind", "moment at B 30 kNm, max 50 kNm")
     assert said.status == 0 and "the 2 values" in " ".join(said.out.split())
     assert "it is not said which" in told(tmp_path, PORTAL, "wind", "moment at B 30 kNm, 35 kNm").out
+
+
+INPUT = """NODES
+Node  X(m)  Y(m)
+A 0 0
+B 0 4
+C 8 4
+D 8 0
+SECTION  Ix(cm4)
+c 11000
+SUPPORTS
+Node DX DY RZ
+A 1 1 1
+D 1 1 0
+LOAD TOTALS
+Case Fx Fy (kN)
+dead 0 -96
+wind 44 0
+"""
+
+
+def test_printed_input_in_tables_below_each_other_is_all_compared(tmp_path: Path) -> None:
+    """Heads parted by single blanks, and marks under DX, DY, RZ, were no heads: the rows were read as I of the loads."""
+    said = call("inspect", put(tmp_path, PORTAL), "--echo", put(tmp_path, INPUT, "input.txt"))
+    words = " ".join(said.out.split())
+    assert said.status == 1 and "3 serious" in words
+    assert "I of c = 0.00011" in words and "total x of wind = 44" in words and "D held in x, y, the frame" in words
+    assert "prints I of" not in words and "not recognised as input" not in words
+
+
+def test_rows_of_printed_input_that_nobody_reads_are_counted(tmp_path: Path) -> None:
+    text = INPUT + "SPRINGS\nNode Kx Ky\nA 120 130\nD 120 130\n"
+    said = call("inspect", put(tmp_path, PORTAL), "--echo", put(tmp_path, text, "input.txt"))
+    assert "2 rows of numbers of the other model's printed input not compared" in " ".join(said.out.split())
+
+
+def test_hand_methods_beside_noise_print_zero(tmp_path: Path) -> None:
+    """A pinned foot has no moment; 9.861e-32 stood beside the portal method's 0."""
+    frame = PORTAL.replace('A = "fixed", D = "fixed"', 'A = "pinned", D = "pinned"')
+    said = call("inspect", put(tmp_path, frame), "--approximate")
+    table = said.out.split("Approximate")[1].split("Cautions")[0]
+    assert "portal" in table and "e-" not in table

@@ -61,10 +61,11 @@ def _explanation(told: Explanation) -> RenderableType:
 def _approximated(rough: Approximation) -> list[RenderableType]:
     parts: list[RenderableType] = [heading("Approximate values beside the computed ones: rough; far off wants a reason")]
     if rough.sidesway:
+        largest = {c: max(s.computed for s in rough.sidesway if s.case == c) for c in {s.case for s in rough.sidesway}}
         columns = [("case", "left"), ("member", "left"), ("at", "left"), ("portal method", "right"),
                    ("cantilever method", "right"), ("computed", "right")]  # fmt: skip
         rows = [
-            (s.case, s.member, s.joint, *(words.number(v, s.computed) for v in (s.portal, s.cantilever, s.computed)))
+            (s.case, s.member, s.joint, *_sizes((s.portal, s.cantilever, s.computed), largest.get(s.case, 0.0)))
             for s in rough.sidesway[:MOST_ROWS]
         ]
         parts += [Text("  sizes of end moments"), table(columns, rows), *more(len(rough.sidesway), MOST_ROWS)]
@@ -79,6 +80,11 @@ def _approximated(rough: Approximation) -> list[RenderableType]:
         parts += [Text("  where the free moment is greatest; hogging: what the ends take of it"), table(columns, rows)]
         parts += more(len(rough.free), MOST_ROWS)
     return parts + [Text(f"  {note}") for note in rough.notes]
+
+
+def _sizes(values: Sequence[float], largest: float) -> list[str]:
+    """Values beside each other, with the digits of the computed one; rounding noise of the case is zero."""
+    return [words.number(0.0 if abs(v) <= words.NOISE * largest else v, values[-1]) for v in values]
 
 
 def review_document(subject: Subject, findings: list[Finding], rough: Approximation | None = None) -> dict[str, Any]:

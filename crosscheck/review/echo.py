@@ -32,7 +32,14 @@ LENGTHS = {"m": 1.0, "cm": 0.01, "mm": 0.001, "ft": 0.3048, "in": 0.0254}
 
 def echoed(subject: Subject, path: str | Path) -> list[Finding]:
     """The file's facts beside the frame. Raises UnusableInput where it cannot be opened or holds none."""
-    return list(compared(subject, read_echo(path, FrameNames.of(subject.frame))))
+    facts, unread = read_echo(path, FrameNames.of(subject.frame))
+    findings = list(compared(subject, facts))
+    if unread:
+        rows = f"{len(unread)} rows of numbers" if len(unread) > 1 else "a row of numbers"
+        why = f"not recognised as input (first in line {unread[0]})"
+        says = f"{rows} of the other model's printed input not compared: {why}"
+        findings.append(Finding("note", (), says, "echo"))
+    return findings
 
 
 def compared(subject: Subject, facts: Sequence[EchoFact]) -> Iterator[Finding]:

@@ -23,7 +23,8 @@ ROLES = {
     "member": r"members?|elements?|beams?|bars?|elem|(member|element|beam|bar) (no|nr|name|id|label)",
     "start": r"start|from|i|(start|from|first|i) ?(joint|node|end)|(joint|node) ?(i|1|a|start|from)|end ?(i|1|a)",
     "last": r"end|to|j|(end|to|last|second|j) ?(joint|node|end)|(joint|node) ?(j|2|b|end|to)|end ?(j|2|b)",
-    "x": r"x|x ?coord(inate)?|ux|tx", "y": r"y|y ?coord(inate)?|uy|ty", "z": r"z|z ?coord(inate)?|uz|tz",
+    "x": r"x|x ?coord(inate)?", "y": r"y|y ?coord(inate)?", "z": r"z|z ?coord(inate)?",
+    "dx": r"[dut]x", "dy": r"[dut]y", "dz": r"[dut]z",
     "turn": r"r|rot|rotation|rz|ry|mz|rotz",
     "type": r"type|condition|fixity|restraint|kind|support type",
     "section": r"sections?|profile|property|section (name|no|id)", "material": r"materials?|material (name|no|id)",
@@ -40,17 +41,26 @@ _FREE = frozenset({"0", "no", "n", "false", "free", "-", "f", "released"})
 _WORDS = {"fixed": "111", "encastre": "111", "clamped": "111", "built-in": "111", "pin": "110", "hinge": "110",
           "roller": "010", "sliding": "010"}  # fmt: skip
 _BRACKET = re.compile(r"[\[(]([^\])]*)[\])]")
+_BEFORE_BRACKET = re.compile(r"\s+(?=[\[(])")
+_LETTER = re.compile(r"[^\W\d_]")
 Cells = dict[str, str]
 
 
-def read_echo(path_or_dash: str | Path, frame_names: FrameNames) -> tuple[EchoFact, ...]:
-    """Facts in the file, or "-" for standard input. Raises UnusableInput where it cannot be opened or holds none."""
+def read_echo(path_or_dash: str | Path, frame_names: FrameNames) -> tuple[tuple[EchoFact, ...], tuple[int, ...]]:
+    """Facts in the file, or "-" for standard input, and the lines of numbers that hold none. Raises UnusableInput where it
+    cannot be opened or holds no fact."""
     file, _, text = read_source(path_or_dash)
     found = echo_of(text, frame_names)
     if not found:
         advice = "tables such as Joint, X, Y; Member, Start, End; Section, I, A; Support, Type; Load case, Fx, Fy"
         refuse(file or "echo", "holds no input of a model that is recognised", advice)
-    return found
+    told = {fact.line for fact in found}
+    unread = (k for k, line in enumerate(lines_of(text), 1) if k not in told and _numbers(line) >= 2)
+    return found, tuple(unread)
+
+
+def _numbers(line: str) -> int:
+    return sum(parse_number(cell) is not None for cell in _cells(line))
 
 
 def echo_of(text: str, frame_names: FrameNames) -> tuple[EchoFact, ...]:
@@ -68,6 +78,8 @@ def echo_of(text: str, frame_names: FrameNames) -> tuple[EchoFact, ...]:
         row = _fitted(line, len(heads))
         if heads and row:
             tables[-1].append(list(_facts(number, heads, _roles(heads), row, names, comma)))
+        elif _LETTER.search(_BRACKET.sub(" ", line)) and not any(c.isdigit() for c in line):
+            heads = []  # a title, or heads that nobody knows: what follows is not of the table above
     # Supports are told row by row or not at all: a table of displacements has zeros in some of its rows only.
     return tuple(f for rows in tables for facts in rows for f in facts if f.what != "support" or all(rows))
 
@@ -77,10 +89,12 @@ def _cells(line: str) -> list[str]:
 
 
 def _head_cells(line: str) -> list[str]:
-    """Cells of a line of heads; where blanks part them, two or more do, because a unit may stand behind one."""
+    """Cells of a line of heads. Where blanks part them, two or more do, because a unit may stand behind one; single ones
+    where that leaves one cell, with units in brackets put to their heads."""
     if separator_of(line) != "blank":
         return _cells(line)
-    return [c.text.strip() for c in wide_cells(line) if c.text.strip()]
+    wide = [c.text.strip() for c in wide_cells(line) if c.text.strip()]
+    return wide if len(wide) > 1 else _cells(_BEFORE_BRACKET.sub("", line))
 
 
 def _fitted(line: str, width: int) -> list[str]:
@@ -143,7 +157,8 @@ def _support(line: int, cell: Cells, names: Names) -> Iterator[EchoFact]:
         word = next((w for w in _WORDS if cell["type"].lower().startswith(w)), None)
         flags = _WORDS[word] if word else ""
     else:
-        marks = [cell.get(k, "").lower() for k in ("x", "y" if "y" in cell else "z", "turn")]
+        up = "y" if {"y", "dy"} & set(cell) else "z"
+        marks = [cell.get(k, cell.get(f"d{k}", "")).lower() for k in ("x", up)] + [cell.get("turn", "").lower()]
         flags = "".join("1" if m in _HELD else "0" if m in _FREE else "?" for m in marks)
     if flags and "?" not in flags:
         yield EchoFact(line, "support", where, flags)
