@@ -102,10 +102,12 @@ PLACELESS = ["knee moment 30 kNm", "base moments are 40 kNm", "horizontal thrust
 
 
 @pytest.mark.parametrize("text", PLACELESS)
-def test_a_value_of_no_place_is_not_compared_and_that_is_said(tmp_path: Path, text: str) -> None:
-    """A knee is no joint of the frame, and its moment not the frame's largest."""
+def test_a_result_of_no_place_keeps_a_claim_from_agreeing(tmp_path: Path, text: str) -> None:
+    """A knee is no joint of the frame, and its moment not the frame's largest; nor is it passed over, as no row of a table
+    is. A number that is no result is."""
     said = told(tmp_path, PORTAL, "wind", "A-B at A 50 kNm", text)
-    assert said.status == 0 and "it is not said which" in said.out
+    assert said.status == 3 and "it is not said which" in said.out
+    assert told(tmp_path, PORTAL, "wind", "A-B at A 50 kNm", "with 40 kN at the eaves").status == 0
 
 
 def test_words_with_a_value_that_nothing_reads_are_said(tmp_path: Path) -> None:
@@ -282,6 +284,16 @@ def test_a_member_that_was_only_inferred_is_not_carried_on(tmp_path: Path) -> No
     said = told(tmp_path, PORTAL, "wind", "moment at B 30 kNm, max 50 kNm")
     assert said.status == 0 and "the 2 values" in " ".join(said.out.split())
     assert "it is not said which" in told(tmp_path, PORTAL, "wind", "moment at B 30 kNm, 35 kNm").out
+
+
+@pytest.mark.parametrize("text", ["B-C at B 30 kNm, max moment 50 kNm", "shear in B-C at B 7.5 kN and max moment 50 kNm"])
+def test_the_largest_after_a_members_end_may_be_the_frames(tmp_path: Path, text: str) -> None:
+    """The frame's largest is 50, B-C's 30: which is meant, nobody can tell."""
+    said = told(tmp_path, PORTAL, "wind", text)
+    assert said.status == 3 and "the most of B-C or of the whole frame" in " ".join(said.out.split())
+    of_it = told(tmp_path, PORTAL, "wind", "B-C max moment 30 kNm, max shear 7.5 kN")
+    assert of_it.status == 0 and "the 2 values" in " ".join(of_it.out.split())
+    assert told(tmp_path, PORTAL, "wind", "H_A = 20 kN, max moment 50 kNm").status == 0
 
 
 INPUT = """NODES

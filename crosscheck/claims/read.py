@@ -278,7 +278,7 @@ class _Reader:
             return []
         line, why = self.unread[0]
         many = f"{len(self.unread)} results" if len(self.unread) > 1 else "a result"
-        return [f"{many} could not be read (line {line}: {why}); correct what is printed, or leave it empty"]
+        return [f"{many} could not be read (line {line}: {why}); correct what is printed, or leave it out"]
 
     def envelope_notes(self) -> Iterator[str]:
         """What of an envelope's table is not compared."""
@@ -317,8 +317,9 @@ class _Reader:
         """Values in words on a line of the paste."""
         entries, odd = entries_told(text, line, len(self.tables) + 1, self.names)
         self.entries += [replace(e, case=e.case or case) for e in entries]
-        self.untold += odd
-        rows = [(line, text.strip()[:200], why) for why in odd]
+        self.untold += [part.why for part in odd]
+        self.unread += [(line, part.why) for part in odd if part.result]
+        rows = [(line, text.strip()[:200], part.why) for part in odd]
         self.odd += rows
         self._trace(rows)
 
@@ -339,7 +340,7 @@ class _Reader:
         entries, odd = entries_told(text, 0, len(self.tables) + 1, self.names)
         if odd or not entries:
             refuse(
-                "", f'--value "{text}" is not understood{": " + odd[0] if odd else ""}',
+                "", f'--value "{text}" is not understood{": " + odd[0].why if odd else ""}',
                 'write it like "B1-C1 max 412 kNm", with names of the frame',
             )  # fmt: skip
         self.entries += entries

@@ -86,10 +86,18 @@ def _is_one_moment(said: Told, names: Names) -> bool:
     return alone and is_moment(said) and _places(said.words, names).member is not None
 
 
-def entries_told(text: str, line: int, table: int, names: Names) -> tuple[list[Entry], list[str]]:
+@dataclass(frozen=True, slots=True)
+class Unread:
+    """Why a value in words is not compared. result: its words name a quantity, so that it is surely meant as a result."""
+
+    why: str
+    result: bool
+
+
+def entries_told(text: str, line: int, table: int, names: Names) -> tuple[list[Entry], list[Unread]]:
     """The values of a sentence, and of each part that was not understood why."""
     out: list[Entry] = []
-    odd: list[str] = []
+    odd: list[Unread] = []
     text = spelled_out(text, names)
     rest = text
     for s in end_symbols(text, names):
@@ -107,7 +115,7 @@ def entries_told(text: str, line: int, table: int, names: Names) -> tuple[list[E
         member = _member_named(said, member, names)
         found, why = _Sentence(rest, line, table, names, before, member).entries(said)
         out += found
-        odd += [why] if why else []
+        odd += [Unread(why, bool(_quantities(said)))] if why else []
         before = found[-1] if found else before
     return _with_commas(out), odd
 
@@ -194,7 +202,8 @@ class _Sentence:
         before = self.before
         unnamed = member is None and joint is None
         elsewhere = _NOT_FROM_MEMBER.search(said.words) if unnamed else None
-        if unnamed and before is not None and not elsewhere:
+        most = bool(_MOST.search(said.words))
+        if unnamed and before is not None and not elsewhere and not most:
             joint = before.joint if before.kind != "end" else None  # "Rx at A 7 kN, Ry 28 kN"
         quantity = self._quantity(said, member, joint)
         if quantity is None:
@@ -212,6 +221,10 @@ class _Sentence:
         if sense not in _ALONG:
             return replace(blank, joint=joint), ""
         if member is None and self.spoken_of and not elsewhere:
+            alike = before is None or before.kind != "extreme" or before.quantity == sense
+            if unnamed and most and alike:  # "B-C max 412 kNm, max shear 35 kN" is of B-C, but "..., max 500 kNm"?
+                whose = f"of {self.spoken_of} or of the whole frame"
+                return None, f"it is not said whether the {said.number.printed} are the most {whose}"
             member = MemberHit(self.spoken_of, 0)  # "B-C at B 51.2 kNm, at C 48.0": the second is of the same member
         return self._along(said, sense, member, joint, blank)
 
