@@ -336,3 +336,13 @@ def test_hand_methods_beside_noise_print_zero(tmp_path: Path) -> None:
     said = call("inspect", put(tmp_path, frame), "--approximate")
     table = said.out.split("Approximate")[1].split("Cautions")[0]
     assert "portal" in table and "e-" not in table
+
+
+def test_an_axial_force_that_varies_needs_its_place(tmp_path: Path) -> None:
+    """40 kN hang along the tie: its ends have 40 and 80 kN, and neither is the force of the whole bar."""
+    load = '{ joint = "C", force = 60, direction = "down" }'
+    along = '{ member = "tie", uniform = 10, direction = "right" }'
+    frame = put(tmp_path, TRUSS.replace(load, f"{load}, {along}"))
+    said = call("verify", frame, put(tmp_path, BARS[1].replace("40.0 T", "80.0 T"), "c.txt"))
+    words = " ".join(said.out.split())
+    assert said.status == 3 and "not said where along tie the axial force is" in words and "(2 values compared" in words

@@ -304,14 +304,12 @@ class _Reader:
             )
 
     def _of_bars(self, entries: list[Entry]) -> list[Entry]:
-        """One axial force a member, as tables of bar forces have it: taken at half the member's length, since all of it
-        has that force but for its own load along it."""
+        """One axial force a member, as tables of bar forces have it: all of a bar has one force but for loads along it."""
         places = [(e.case, e.member, e.extreme) for e in entries]
         open_ones = all(e.kind == "end" and e.quantity == "axial" and e.end is None and e.place is None for e in entries)
         if not entries or not open_ones or len(set(places)) < len(places):
             return entries
-        self.notes.append("axial forces of whole members are compared at half their length")
-        return [replace(e, kind="span", at=0.5, at_share=True, run=1) for e in entries]
+        return [replace(e, kind="span", at=0.5, at_share=True, run=1, whole=True) for e in entries]
 
     def sentence(self, line: int, text: str, case: str | None) -> None:
         """Values in words on a line of the paste."""

@@ -124,6 +124,8 @@ class Entry:
     governs: str = ""
     along: bool = False
     beside: str | None = None
+    whole: bool = False
+    """An axial force of a whole member: the paste names no place along it."""
     comma_open: bool = False
     """The number's comma may stand before decimals (as read) or thousands."""
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field, replace
 
 import numpy as np
 
-from crosscheck.answer import Answer
+from crosscheck.answer import AXIAL, Answer
 from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claimed import ClaimedValue, ClosedClaim
 from crosscheck.compare.enveloped import as_of, candidates, name_of, parted_name, prepared, silent_part, unaudited
@@ -162,6 +162,8 @@ class _Closer:
         silent, every = [*missing], tuple(n for n in every if n not in missing)
         entries, loose = prepared([e for e in entries if e.case not in silent], self.frame)
         undecided += loose
+        entries, varying = self._of_whole_members(entries)
+        undecided += varying
         entries = with_stations(entries, self.frame)
         batches = _batches(entries, self.frame, every)
         fitter = Fitter(self.frame.units, [self._reference(n) for n in every], self.tolerance)
@@ -190,6 +192,26 @@ class _Closer:
             fits={key: _fits(f) for key, f in _by_key(fitted)},
             reversed_load=meant.reversed_load,
         )
+
+    def _of_whole_members(self, entries: list[Entry]) -> tuple[list[Entry], list[str]]:
+        """Without the axial forces of whole members along which ours varies by more than the tolerance."""
+        out, varying = [], []
+        for e in entries:
+            if e.whole and any(self._varies(str(e.member), part) for part in self._reference(str(e.case)).parts):
+                varying.append(str(e.member))
+            else:
+                out.append(e)
+        if not varying:
+            return entries, []
+        members = f"{', '.join(varying[:5])}{' ...' if len(varying) > 5 else ''}"
+        reason = f"it is not said where along {members} the axial force is, which varies there; name the joint or the end"
+        return out, [reason]
+
+    def _varies(self, member: str, part: Reference) -> bool:
+        """Does the axial force along a member differ by more than half the tolerance of a claim?"""
+        m = self.frame.member_index[member]
+        least, greatest = part.extremes[m, :, AXIAL]
+        return bool(greatest - least > 0.5 * self.tolerance.relative * part.member_scale("axial")[m])
 
     def _reference(self, name: str) -> Reference | EnvelopeReference:
         if name in self.frame.several:
