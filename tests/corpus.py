@@ -811,7 +811,8 @@ def drawn_pairs(
         alike = [m for k in range(20) for m in _of_the_frame(frame, case, Random(k))
                  if (m.sort, m.where) == (two.sort, two.where)][:1]  # fmt: skip
         values, *alone = (claimed(frame, m, case, 4, seed % 2 == 0, "all") for m in (two, one, *alike))
-        against = [base, *(a.cases[case] for m in (one, *alike) if (a := solved(m.frame or frame, (case,))) is not None)]
+        answers = [solved(m.frame or frame, (case,)) for m in (one, *alike)]
+        against = [base, *(a.cases[case] for a in answers if a is not None and case in a.cases)]
         if alike and values and all(alone) and all(_effect(frame, c, values) >= least for c in against):
             per -= 1
             yield frame, case, (one, two), opinions, values
@@ -825,8 +826,10 @@ def _of_the_frame(frame: Frame, case: str, r: Random) -> list[Mistake]:
 
 def _any_sort(some: list[Mistake], r: Random) -> Mistake | None:
     """One of the mistakes, every sort as likely."""
-    sorts = sorted({m.sort for m in some})
-    return r.choice([m for m in some if m.sort == r.choice(sorts)] or some) if sorts else None
+    if not some:
+        return None
+    sort = r.choice(sorted({m.sort for m in some}))
+    return r.choice([m for m in some if m.sort == sort])
 
 
 def tried_pair(

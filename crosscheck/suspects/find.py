@@ -101,7 +101,8 @@ def search(
         sweep = Sweep(seen, closed, prepared(frame), answer)
     ranked = sweep.singles()
     if not ranked or not ranked[0].within:
-        ranked = sorted([*ranked, *sweep.pairs(ranked)], key=lambda w: w.score)
+        # Of so many pairs some explain much by chance: only what leaves every value within tolerance is told.
+        ranked = sorted([*ranked, *(w for w in sweep.pairs(ranked) if w.within)], key=lambda w: w.score)
     told = _told(sweep, ranked, limit)
     why = "" if told else PLACES_NOT_TRIED if sweep.large else NOTHING_EXPLAINS if sweep.pairwise else NOTHING_ALONE
     return Findings(tuple(told), why, sweep.solved)

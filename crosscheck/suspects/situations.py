@@ -25,10 +25,11 @@ from crosscheck.problems import UnusableInput
 from crosscheck.suspects.adjusted import adjusted
 from crosscheck.suspects.changes import Change, of_case, usable
 from crosscheck.suspects.observation import Observation
+from crosscheck.suspects.pairs import Effect, adding_up, paired, same_place
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.supports import kinds_by_reactions
 from crosscheck.suspects.suspect import Family, Option
-from crosscheck.suspects.sweep import Sweep, Weighed, paired, same_place
+from crosscheck.suspects.sweep import Sweep, Weighed
 from crosscheck.suspects.week import week_families, week_options
 from crosscheck.suspects.whole import other_order, temperature_options, whole_options
 
@@ -42,8 +43,6 @@ LIKELIEST_SLOW, FITS_SLOW = 20, 2
 """The same where a claimed combination is of second order."""
 PAIRS, PAIRS_SLOW = 80, 40
 """Pairs of mistakes that are solved again, likeliest by the sum of what each does alone; and in second order."""
-FEWEST_OFF = 4
-"""Values further off than allowed, for pairs to be tried: of so many pairs some would meet three values by chance."""
 BEGIN, BEGIN_ONE_WAY = (4, 4, 6), (2, 2, 3)
 """First mistakes for each of which a second is looked for in the frame that has it: of the likeliest pairs, of those that
 explain most alone, of the commonest; and where parts work one way only, each solution a search of its own."""
@@ -62,7 +61,7 @@ class SituationsSweep(Sweep):
         self.frame = seen.frame
         self.solved = 0
         self.results = {}
-        self._foretold: list[tuple[Option, Floats]] = []
+        self._foretold: list[Effect] = []
         self._over: dict[tuple[str, ...], Ints] = {}
         for names in dict.fromkeys(over.values()):
             self._over[names] = np.flatnonzero([over.get(id(v)) == names for v in seen.values])
@@ -245,31 +244,20 @@ class SituationsSweep(Sweep):
     def pairs(self, singles: list[Weighed]) -> list[Weighed]:
         """Two mistakes together: those whose effects add up best to the difference, solved again; then what is second in a
         frame that has the first, for the likeliest of these."""
+        if not self.pairwise:
+            return []
         own = sorted(filter(_of_the_frame, singles), key=lambda w: w.rough)
         found = [*((w.option, w.said - self.seen.said) for w in own), *self._foretold]
         alone = list({(o.where, o.says): (o, delta) for o, delta in reversed(found)}.values())[::-1]
-        if not self.pairwise or self.seen.off.sum() < FEWEST_OFF or len(alone) < 2:
+        likeliest = list(adding_up(alone, self.seen.residual, self.seen.allowed))
+        if not likeliest:
             return []
-        likeliest = list(self._likeliest_pairs([delta for _, delta in alone], [o for o, _ in alone]))
-        together = [paired(alone[a][0], alone[b][0]) for a, b in likeliest[: PAIRS_SLOW if self.slow else PAIRS]]
-        out = self._solved(together)
-        of_pairs = [alone[k][0] for pair in likeliest for k in pair]
-        for one in self._beginnings(of_pairs, [w.option for w in own]):
+        out = list(self.both(likeliest[: PAIRS_SLOW if self.slow else PAIRS]))
+        for one in self._beginnings([o for pair in likeliest for o in pair], [w.option for w in own]):
             if any(w.fits for w in out):
                 break
             out += self._seconds(one)
         return sorted(out, key=lambda w: w.score)
-
-    def _likeliest_pairs(self, deltas: list[Floats], options: list[Option]) -> Iterator[tuple[int, int]]:
-        """Pairs by what would be left over if effects simply added up, in tolerances; those of one place left out."""
-        d = np.array(deltas) / self.seen.allowed
-        r = self.seen.residual / self.seen.allowed
-        size, along = (d**2).sum(axis=1), d @ r
-        left = (size - 2 * along)[:, None] + (size - 2 * along)[None, :] + 2 * d @ d.T
-        a, b = np.triu_indices(len(d), 1)
-        for k in np.argsort(left[a, b], kind="stable")[: 20 * PAIRS].tolist():
-            if not same_place(options[a[k]], options[b[k]]):
-                yield int(a[k]), int(b[k])
 
     def _beginnings(self, of_pairs: list[Option], alone: list[Option]) -> list[Option]:
         """First mistakes that leave all in first order."""

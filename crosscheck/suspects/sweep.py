@@ -11,6 +11,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import partial
 from heapq import nsmallest
+from itertools import islice
 
 import numpy as np
 
@@ -29,6 +30,7 @@ from crosscheck.suspects.groups import group_fits, group_options, large_families
 from crosscheck.suspects.loads import case_options, load_options
 from crosscheck.suspects.members import heavy_families, member_fits, member_options, section_options
 from crosscheck.suspects.observation import Observation
+from crosscheck.suspects.pairs import Effect, adding_up, paired, same_place
 from crosscheck.suspects.paste import paste_options
 from crosscheck.suspects.screen import Screen
 from crosscheck.suspects.supports import kinds_by_reactions, support_fits, support_options
@@ -397,8 +399,10 @@ class Sweep:
 
     def pairs(self, singles: list[Weighed]) -> list[Weighed]:
         """Two mistakes together, begun from the singles that explain most."""
-        out: list[Weighed] = []
         if not self.pairwise:
+            return []
+        out = self._adding_up([w for w in singles if w.option.change.frame is not None and w.option.claimed is None])
+        if any(w.fits for w in out):
             return out
         begin = sorted((w for w in singles if w.explains > 0.05), key=lambda w: w.rough)[:BEGIN]
         for one in begin:
@@ -406,6 +410,22 @@ class Sweep:
             if any(w.fits for w in out):
                 break
         return sorted(out, key=lambda w: w.score)
+
+    def _adding_up(self, singles: list[Weighed]) -> list[Weighed]:
+        """Pairs of mistakes of the frame whose effects add up to the difference, solved again, best first."""
+        effects: list[Effect] = [(w.option, w.said - self.seen.said) for w in sorted(singles, key=lambda w: w.rough)]
+        pairs = adding_up(effects, self.seen.residual, self.seen.allowed)
+        return sorted(self.both(islice(pairs, PAIRS)), key=lambda w: w.score)
+
+    def both(self, pairs: Iterable[tuple[Option, Option]]) -> Iterator[Weighed]:
+        """Pairs solved; none where the first takes away what the second is a mistake of."""
+        for pair in pairs:
+            try:
+                found = self.solve(paired(*pair))
+            except (KeyError, IndexError, ValueError, UnusableInput):
+                continue
+            if found is not None:
+                yield found
 
     def _second(self, one: Weighed) -> Iterator[Weighed]:
         option = one.option
@@ -445,23 +465,8 @@ class Sweep:
         return sorted(found, key=lambda w: w.score)
 
 
-BEGIN = 6
-"""Singles for each of which a second is looked for."""
-PAIR = 2.5
-"""What a second mistake costs."""
-
-
-def paired(one: Option, two: Option) -> Option:
-    """Both mistakes, the second in the frame that has the first."""
-    return Option(
-        one.kind, tuple(dict.fromkeys((*one.where, *two.where))), f"{one.says}, and {two.says}",
-        one.change.then(two.change), PAIR + one.cost + two.cost, fitted=one.fitted + two.fitted,
-    )  # fmt: skip
-
-
-def same_place(one: Option, two: Option) -> bool:
-    """Whether two mistakes are of one kind at one place, so that together they are a third of that kind."""
-    return (one.kind, one.where) == (two.kind, two.where)
+BEGIN, PAIRS = 6, 40
+"""Singles for each of which a second is looked for; pairs whose effects add up that are solved again."""
 
 
 def _without_missing(seen: Observation, answer: Answer, changed: Frame, names: tuple[str, ...]) -> Floats:
