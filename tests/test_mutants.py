@@ -7,7 +7,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import replace
-from types import SimpleNamespace
+from types import ModuleType, SimpleNamespace
 
 import numpy as np
 import pytest
@@ -349,6 +349,46 @@ def test_the_greatest_load_is_found_by_few_balances(outer: tuple[float, float, f
     found = gradual._vertex(prescribed, 0, [balance_at(x) for x in outer])
     assert found[-1] == pytest.approx(0.9, abs=3e-7) and len(asked) <= 8
     assert all(min(outer) < value < max(outer) for value in asked)
+
+
+TURNED = """
+units = "kN m"
+materials.m = { E = 200e6 }
+sections = { s = { I = 1e-4, A = 5e-3, depth = 0.3 }, t = { I = 1e-4, A = 5e-3, depth = 0.3 } }
+joints = { A = [0, 0], B = [6, 0] }
+members."A-B" = { section = "s", material = "m" }
+supports = { A = "fixed", B = { y = "held" } }
+analysis.order = 1
+[loads.q]
+apply = [
+  { joint = "B", force = 300, direction = "left" }, { member = "A-B", uniform = 20, direction = "along" },
+  { member = "A-B", varying = [-9, 15], direction = "across" },
+]
+"""
+
+
+@pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
+@pytest.mark.parametrize("order", [1, 2])
+def test_shear_is_greatest_where_the_load_changes_sign(order: int, opinion: ModuleType) -> None:
+    """At 6 * 9 / 24 m, though the range from 1.8 to 2.4 m is looked at just there; loads along the member beside it."""
+    frame = read_frame_text(TURNED.replace("order = 1", f"order = {order}"))
+    spans = opinion.opine(frame, study(frame)).spans
+    assert np.abs(spans.turning_points("q")[1] - 2.25).min() < 1e-9
+
+
+@pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
+@pytest.mark.parametrize("order", [1, 2])
+@pytest.mark.parametrize("section", ['section = "s"', 'taper = ["s", "t"]'])
+def test_a_simple_span_is_lowest_in_the_middle(section: str, order: int, opinion: ModuleType) -> None:
+    """Where its slope is looked at too; with a joint's rigid zone the middle is none of the tenths of the length."""
+    text = TURNED.replace('section = "s"', f"rigid_from = 0.31, {section}").replace('"fixed"', '"pinned"')
+    text = text[: text.index("apply")] + 'apply = [{ member = "A-B", uniform = 9, direction = "down", start = 0.31 }]\n'
+    frame = read_frame_text(text.replace("order = 1", f"order = {order}"))
+    spans = opinion.opine(frame, study(frame)).spans
+    x = np.linspace(0.0, 6.0, 4001)
+    none = np.zeros(len(x), dtype=np.int64)
+    lowest = x[np.argmin(spans.along("q", none, x, np.where(x < 6.0, 1, -1))[:, ACROSS])]
+    assert np.abs(spans.turning_points("q")[1] - lowest).min() < 2e-3
 
 
 # --- the audit

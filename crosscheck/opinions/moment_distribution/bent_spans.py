@@ -89,13 +89,14 @@ class BentSpans:
         pieces = bent.pieces
         real = np.flatnonzero(pieces.size > 0)
         at = bent.rates(real, np.broadcast_to(LOOKS, (len(real), len(LOOKS))))
-        which, row, column = np.nonzero(np.sign(at[:, :, :-1]) * np.sign(at[:, :, 1:]) < 0)
+        rising = at >= 0.0  # so that a rate that is nought just where it is looked at is found too
+        which, row, column = np.nonzero(rising[:, :, :-1] != rising[:, :, 1:])
         low, high = LOOKS[column], LOOKS[column + 1]
-        sign = np.sign(at[which, row, column])
+        rose = rising[which, row, column]
         for _ in range(HALVINGS if len(row) else 0):
             middle = (low + high) / 2
             here = bent.rates(real[row], middle[:, None])[which, np.arange(len(row)), 0]
-            same = np.sign(here) == sign
+            same = (here >= 0.0) == rose
             low, high = np.where(same, middle, low), np.where(same, high, middle)
         piece = real[row]
         member, x = pieces.member[piece], pieces.start[piece] + pieces.size[piece] * (low + high) / 2

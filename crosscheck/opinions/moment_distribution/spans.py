@@ -153,11 +153,12 @@ def _level_places(m: Members, bent: Bent, piece: Ints) -> list[tuple[Ints, Float
     starts of those where shear strain jumps."""
     size = bent.pieces.size[piece]
     at = np.stack([_slope(m, bent, piece, size * look) for look in LOOKS], axis=1)
-    row, column = np.nonzero(np.sign(at[:, :-1]) * np.sign(at[:, 1:]) < 0)
-    low, high, sign = LOOKS[column], LOOKS[column + 1], np.sign(at[row, column])
+    rising = at >= 0.0  # so that a slope that is nought just where it is looked at is found too
+    row, column = np.nonzero(rising[:, :-1] != rising[:, 1:])
+    low, high, rose = LOOKS[column], LOOKS[column + 1], rising[row, column]
     for _ in range(HALVINGS if len(row) else 0):
         middle = (low + high) / 2
-        same = np.sign(_slope(m, bent, piece[row], size[row] * middle)) == sign
+        same = (_slope(m, bent, piece[row], size[row] * middle) >= 0.0) == rose
         low, high = np.where(same, middle, low), np.where(same, high, middle)
     after = piece[bent.pieces.inner[piece - 1]]
     before = m.flexibility(bent.pieces, after - 1, bent.pieces.size[after - 1, None]).slide[:, 0]

@@ -210,14 +210,17 @@ def _polynomial(coefficients: Floats, piece: Ints, xi: Floats) -> Floats:
 def _zeros(
     fn: Callable[[Ints, Floats, Ints], Floats], member: Ints, a: Floats, b: Floats
 ) -> tuple[Ints, Floats]:
-    """Places where fn changes sign within stretches, by halving."""
+    """Places where fn changes sign within stretches, by halving, or from one stretch to the next."""
     after, before = np.ones(len(a), dtype=np.int64), np.full(len(a), -1)
     low, high = fn(member, a, after), fn(member, b, before)
     change = np.signbit(low) != np.signbit(high)
+    # Just before and just after a place that two stretches share, rounding may have either sign.
+    between = (member[1:] == member[:-1]) & (np.signbit(high[:-1]) != np.signbit(low[1:]))
+    shared = member[1:][between], a[1:][between]
     member, a, b, low = member[change], a[change], b[change], low[change]
     after = after[: len(a)]
     for _ in range(HALVINGS if len(a) else 0):
         middle = (a + b) / 2
         same = np.signbit(fn(member, middle, after)) == np.signbit(low)
         a, b = np.where(same, middle, a), np.where(same, b, middle)
-    return member, (a + b) / 2
+    return np.concatenate([member, shared[0]]), np.concatenate([(a + b) / 2, shared[1]])
