@@ -58,6 +58,9 @@ RIGHT = [
     (PORTAL, "wind", 4, "Reactions: A H = 20 kN, V = 7.5 kN\nReactions: D H = 20 kN, V = 7.5 kN"),
     (PORTAL, "wind", 3, "M_AB = -50 kNm, M_BA = -30 kNm, sway 8.89 mm"),
     (PORTAL, "wind", 3, "moments are 50 kNm at both A and D, sway 8.9 mm"),
+    (PORTAL, "wind", 1, "Dx = 8.89 mm"),
+    (PORTAL, "dead", 2, "B-C has a hogging moment of 51.2 kNm at B and a sagging moment of 44.8 kNm in the middle."),
+    (PORTAL, "wind", 2, "Dx = 20 kN, D_y = 7.5 kN"),
     (PORTAL, "wind", 1, "B moves 8.89 mm to the right"),
     (PORTAL, "wind", 2, "axial force in A-B 7.5 kN tension, in C-D 7.5 kN compression"),
     (PORTAL, "dead", 1, "With 12 kN/m the largest moment is 51.2 kNm"),
@@ -98,7 +101,7 @@ def test_wrong_values_in_words_disagree(tmp_path: Path, frame: str, case: str, t
     assert told(tmp_path, frame, case, text).status == 1
 
 
-PLACELESS = ["knee moment 30 kNm", "base moments are 40 kNm", "horizontal thrust 35 kN", "moment 30 kNm"]
+PLACELESS = ["knee moment 30 kNm", "M top 30 kNm", "base moments are 40 kNm", "horizontal thrust 35 kN", "moment 30 kNm"]
 
 
 @pytest.mark.parametrize("text", PLACELESS)

@@ -24,7 +24,11 @@ _LOAD = re.compile(r"(?<![\w.,])[+\-\u2212]?\d+(?:[.,]\d+)*\s*[A-Za-z]+\s*/\s*[A
 _NUMBER = r"[+\-\u2212]?\d+(?:[.,]\d+)?(?:[eE][+-]?\d+)?"
 _NAME = r"[A-Za-z0-9']{1,6}"
 _AT_JOINT = re.compile(rf"(?<![A-Za-z0-9_])(?P<letter>[MVHR])(?:_?\{{?|\s?\()(?P<joint>{_NAME})[)}}]?(?=\s*[=:])")
-_ALONG_AXIS = re.compile(rf"(?<![A-Za-z0-9_])R?_?(?P<joint>{_NAME}?)_?\{{?(?P<axis>[xyhvHV])\}}?(?=\s*[=:])")
+_ALONG_AXIS = re.compile(
+    rf"(?<![A-Za-z0-9_])R?_?(?P<joint>{_NAME}?)_?\{{?(?P<axis>[xyhvHV])\}}?"
+    rf"(?=\s*[=:]\s*{_NUMBER}\s*(?:[kM]|da)?(?:N|gf|lbf?|ips?|tf)\b)"
+)
+"""A reaction by its joint and axis; "Dx = 9 mm" is a displacement."""
 _AT_JOINT_WORDS = {"M": "moment at", "V": "V at", "H": "Rx at", "R": "reaction at"}
 _AXIS_WORDS = {"x": "Rx at", "h": "Rx at", "y": "Ry at", "v": "Ry at"}
 _LIST = re.compile(
@@ -38,7 +42,7 @@ _STATION = re.compile(
     re.IGNORECASE,
 )
 _MIDSPAN = re.compile(
-    r"\b(?:at\s+)?mid[\s-]?span\b|\bat\s+(?:the\s+)?(?:mid(?:dle|-?point)?|cent(?:re|er))\b|\bmid[\s-]?point\b", re.I
+    r"\b(?:at\s+)?mid[\s-]?span\b|\b(?:at|in)\s+(?:the\s+)?(?:mid(?:dle|-?point)?|cent(?:re|er))\b|\bmid[\s-]?point\b", re.I
 )
 
 
@@ -150,7 +154,7 @@ def _listed(text: str, names: Names) -> str:
 
 def _kept_together(m: re.Match[str], names: Names) -> str:
     """ "A and D" without the word that parts values; "at B and C max" of a member C is left as it is."""
-    if names.joint(m.group("first")) and names.joint(m.group("last")):
+    if m.group("last") not in ("a", "i") and names.joint(m.group("first")) and names.joint(m.group("last")):
         return f"{m.group('first')} & {m.group('last')}"
     return m.group()
 

@@ -75,9 +75,10 @@ def speaks_of_results(text: str) -> bool:
 
 
 def _quantities(said: Told) -> list[str]:
-    """Words of the value that are longer than a letter and name a quantity which its unit allows."""
+    """Words of the value that name a quantity which its unit allows; letters count as capitals only."""
     allowed = _BY_DIMENSION.get(said.unit.dimension, ()) if said.unit else ()
-    return [m.group() for q in allowed for m in re.finditer(_WORDS[q], said.words, re.IGNORECASE) if len(m.group()) > 2]
+    found = (m.group() for q in allowed for m in re.finditer(_WORDS[q], said.words, re.IGNORECASE))
+    return [word for word in found if len(word) > 2 or word.isupper()]
 
 
 def _is_one_moment(said: Told, names: Names) -> bool:
