@@ -507,9 +507,9 @@ def enveloped(seed: int, per: int) -> Iterator[tuple[Frame, str, Mistake, list[C
     """Envelopes of a frame with a mistake, every sort once before any twice; effect over 3% of the envelope's peak."""
     r, frame = Random(seed), the_frame(seed)
     opinions = opinions_on(frame)
-    answer = None if opinions is None else opinions.answers["slope-deflection"]
-    if answer is None or not frame.envelopes:
+    if opinions is None or not frame.envelopes:
         return
+    answer = opinions.answers["slope-deflection"]
     name = r.choice(list(frame.envelopes))
     names = frame.envelopes[name].names
     if not all(n in answer.cases for n in names):
@@ -517,6 +517,8 @@ def enveloped(seed: int, per: int) -> Iterator[tuple[Frame, str, Mistake, list[C
     pool = {m.sort: m for n in r.sample(names, min(len(names), 4)) for m in mistakes(frame, n, r)
             if m.sort not in ("another arrangement", "all spans loaded")}  # fmt: skip
     right_stack = np.stack([answer.cases[n].ends[:, :, 2] for n in names])
+    faint = FAINT * max(opinions.judgements[n].scales.moments for n in names)
+    least = max(EFFECT * float(np.nanmax(np.abs(right_stack))), faint)
     for mistake in [m for _, m in sorted(pool.items())][:per]:
         assert mistake.frame is not None
         other = solved(mistake.frame, names)
@@ -524,7 +526,7 @@ def enveloped(seed: int, per: int) -> Iterator[tuple[Frame, str, Mistake, list[C
             continue
         stack = np.stack([other.cases[n].ends[:, :, 2] for n in names])
         off = max(np.nanmax(np.abs(f(stack, axis=0) - f(right_stack, axis=0))) for f in (np.max, np.min))
-        if off >= EFFECT * np.nanmax(np.abs(right_stack)) > 0:
+        if off >= least > 0:
             yield frame, name, mistake, envelope_values(mistake.frame, other, name)
 
 
