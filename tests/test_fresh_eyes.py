@@ -349,3 +349,11 @@ def test_an_axial_force_that_varies_needs_its_place(tmp_path: Path) -> None:
     said = call("verify", frame, put(tmp_path, BARS[1].replace("40.0 T", "80.0 T"), "c.txt"))
     words = " ".join(said.out.split())
     assert said.status == 3 and "not said where along tie the axial force is" in words and "(2 values compared" in words
+
+
+def test_a_value_in_words_below_a_table_is_read(tmp_path: Path) -> None:
+    """It has about as many words as the row above it has cells, and was left out as a heading."""
+    table = "Support  H (kN)  V (kN)  M (kNm)\nA  -20.0  -7.5  -50.0\nD  -20.0  7.5  -50.0\n"
+    said = told(tmp_path, PORTAL, "wind", table + "Sway at eaves = 8.9 mm.")
+    assert said.status == 0 and "the 7 values" in " ".join(said.out.split())
+    assert told(tmp_path, PORTAL, "wind", table + "Sway at eaves = 9.8 mm.").status == 1

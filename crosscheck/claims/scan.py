@@ -379,6 +379,8 @@ class _Scanner:
         assert self.table
         if not self.table.rows:
             return any(self._knows(t) for t in filled[:3])
+        if "=" in filled and not self._knows(filled[0]) and not is_number(filled[0]):
+            return False  # "Sway at eaves = 8.9 mm" is as wide as the row above it
         last = [c.text for c in cells_of(self.table.rows[-1][1])[1]]
         return sum(map(is_number, last)) == sum(map(is_number, filled)) or self._fits(filled, named=False)
 
