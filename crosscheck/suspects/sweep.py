@@ -52,6 +52,8 @@ SLOW_FEW, SLOW_FITS, SLOW_PLACES = 24, 4, 2
 of which all is tried."""
 TURNS = 14
 """Most steps of a fit that solves again."""
+LARGEST = 300.0
+"""Of the logarithm of a factor that is fitted: beyond it nothing changes any more."""
 PROMISE = 0.5
 """A family that leaves more than this share over after two steps is not fitted further."""
 RIVALS, MOST_SHARE, STAND_IN_SHARE = 4.0, 0.02, 0.3
@@ -345,7 +347,7 @@ class Sweep:
         if not tried:
             return None
         at = np.log if family.logarithmic else float
-        back = (lambda q: float(np.exp(q))) if family.logarithmic else float
+        back = (lambda q: float(np.exp(np.clip(q, -LARGEST, LARGEST)))) if family.logarithmic else float
         nil = self.weigh(Option("", (), "", family.at(family.starts[0]).change, 0.0))
         points = [(0.0, nil), *((float(at(p)), w) for p, w in tried)]
         points.sort(key=lambda pw: pw[1].rough)
