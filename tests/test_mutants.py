@@ -334,6 +334,25 @@ def test_a_search_off_the_path_is_given_up(step: float, rounds: int, monkeypatch
     assert path._next(balance._Point(np.zeros(2), np.array([0.0, 1.0]), None), step) == (rounds, None)
 
 
+@pytest.mark.parametrize(("shrinks", "found"), [(0.5, False), (0.1, True)])
+def test_first_order_axial_forces_are_started_from_only_where_rounds_close_in(
+    shrinks: float, found: bool, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Rounds that only halve what is off may be on their way to another balance: the path is followed then."""
+    off = [0.4]
+
+    def trial(*_: object) -> SimpleNamespace:
+        off.append(off[-1] * shrinks)
+        now = off[-1] if off[-1] > 1e-9 else 0.0
+        none = SimpleNamespace(negative_pivots=0)
+        return SimpleNamespace(
+            equations=none, off=now, stable=True, state="state", gap=np.zeros(1), ahead=lambda change: change, size=1.0
+        )
+
+    monkeypatch.setattr(balance, "_trial", trial)
+    assert (balance._at_once(None, np.zeros(1)) == "state") is found  # type: ignore[arg-type, comparison-overlap]
+
+
 @pytest.mark.parametrize("outer", [(1.0, 1.9, 3.4), (0.5, 2.4, 2.6), (1.5, 1.6, 2.6), (2.4, 2.3, 1.2)])
 def test_the_greatest_load_is_found_by_few_balances(outer: tuple[float, float, float]) -> None:
     """Of a cubic whose greatest value is 0.9 at 2 by definition: to a few ten-millionths, by at most eight balances."""

@@ -89,7 +89,8 @@ def test_another_kind_of_support_is_foretold(seed: int) -> None:
     name = seen.names[0]
     for joint in frame.joints:
         j, now = frame.joint_index[joint], frame.supports.get(joint, Support(joint, FREE, FREE, FREE))
-        for kind in ((HELD, HELD, HELD), (HELD, HELD, FREE), (FREE, HELD, FREE), (HELD, FREE, FREE)):
+        turn = float(screen.base.support_stiffness[j, 2])  # a spring as stiff as the frame itself tells most
+        for kind in ((HELD, HELD, HELD), (HELD, HELD, FREE), (FREE, HELD, FREE), (HELD, FREE, FREE), (HELD, HELD, turn)):
             actions = screen.base.support_actions(name, np.array([j]), np.array([kind]))[0]
             support = replace(now, x=kind[0], y=kind[1], rotation=kind[2])
             changed = replace(frame, supports={**frame.supports, joint: support})

@@ -60,7 +60,7 @@ ROOMS = {
         "crosscheck/opinions/slope_deflection", 200, 1,
         {
             "prepared": SUSPECTS, "second_order": SECOND_ORDER, "division": SECOND_ORDER, "displaced_spans": SECOND_ORDER,
-            "balance": (*SECOND_ORDER, *WEEK), "varying": WEEK, "one_way": WEEK, "parting": WEEK,
+            "balance": SECOND_ORDER, "varying": WEEK, "one_way": WEEK, "parting": WEEK,
             "*": ("tests/test_mutants.py", "tests/test_exact.py", "tests/published/test_published.py"),
         },
         "slope-deflection", frozenset({"second_order", "division", "displaced_spans", "balance"}),
@@ -89,7 +89,8 @@ ROOMS = {
     "compare": Room(
         "crosscheck/compare", 100, 5,
         {"*": ("tests/test_mutants.py", "tests/test_claims_variants.py", "tests/test_claims.py",
-               "tests/test_claims_parts.py", "tests/test_claims_wild.py", "tests/published/test_patterns.py", "tests/test_claims_pastes.py",
+               "tests/test_claims_parts.py", "tests/test_claims_wild.py",
+               "tests/published/test_patterns.py", "tests/test_claims_pastes.py",
                "tests/test_envelope_claims.py", "tests/test_exact_limits.py", "tests/test_cases.py")},
     ),
 }  # fmt: skip

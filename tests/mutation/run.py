@@ -31,7 +31,7 @@ from tests.mutation.alter import Mutant, mutants
 from tests.mutation.patch import caches, install
 from tests.mutation.rooms import ROOMS, ROOT, Room, known
 
-SECONDS = 400
+SECONDS = 150
 """CPU seconds after which a mutant counts as noticed: it makes somebody wait."""
 BECAME = {
     1: "by comparison", 2: "by comparison, another idealisation", 3: "fell silent, aloud", 5: "not installed",
