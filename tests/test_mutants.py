@@ -21,6 +21,9 @@ from crosscheck.audit.signatures import DEEP, LIGHT, REVERSED, signatures
 from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
+from crosscheck.compare.fit_conventions import member_runs
+from crosscheck.compare.fit_stations import at_jumps
+from crosscheck.compare.tolerance import full_restraint
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.loads import load_table
 from crosscheck.frame.model import FREE, HELD, Frame
@@ -673,3 +676,45 @@ apply = [{ joint = "B", force = 10, direction = "right" }, { joint = "B", force 
     # P d / L more shear on d = H L^3 / (3 EI) (1 - P L^2 / (3 EI))^-1: M = H L / (1 - P L^2 / (3 EI)) (by hand).
     assert abs(moments[0]) == pytest.approx(40 / (1 - 100 * 16 / (3 * 2e4)), rel=1e-9)
     assert moments[1] == pytest.approx(1000 * moments[0], rel=1e-9)
+
+
+# --- the comparison
+
+
+def test_moments_of_full_restraint_add_up_sinking_and_turning() -> None:
+    """6 EI / L^2 times the sinking and 4 EI / L times the turn of one end (slope-deflection): EI = 2e4 kN m2, 4 m."""
+    frame = read_frame_text("""
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [4, 0] }
+members."A-B" = { section = "s", material = "m" }
+supports = { A = "fixed", B = "fixed" }
+[loads.q]
+apply = [{ joint = "B", settlement = { down = 0.01, rotation = 0.002 } }]
+""")
+    found = full_restraint(frame, load_table(frame, "q"))
+    assert found.moments == pytest.approx(2e4 * (6 * 0.01 / 16 + 4 * 0.002 / 4), rel=1e-12)
+
+
+@pytest.mark.parametrize(("rule", "runs"), [
+    ("frame", [1, 1, 1, 1, 1, 1]), ("reversed", [-1] * 6), ("rightward", [1, -1, 1, -1, 1, -1]),
+    ("leftward", [-1, 1, -1, 1, -1, 1]), ("downward", [1, -1, -1, 1, 1, -1]),
+])  # fmt: skip
+def test_which_way_members_run_by_a_rule(rule: str, runs: list[int]) -> None:
+    """Right, left, up, down, to the upper right, to the lower left: upright ones run up, or down where the rule says so."""
+    ways = np.array([[1, 0], [-1, 0], [0, 1], [0, -1], [0.6, 0.8], [-0.8, -0.6]])
+    table = SimpleNamespace(cos=ways[:, 0], sin=ways[:, 1])
+    found = member_runs(SimpleNamespace(member_table=table), rule)  # type: ignore[arg-type]
+    assert found.tolist() == runs
+
+
+def test_a_place_near_a_point_load_is_meant_at_it() -> None:
+    """Loads at 1, 2 and 5 m of two members of 6 m; places are printed to a centimetre."""
+    places = [("B-C", 1, "down"), ("B-C", 2, "down"), ("B-C", 5, "down"), ("C-D", 3, "right")]
+    loads = [f'{{ member = "{m}", force = 1, at = {at}, direction = "{way}" }}, ' for m, at, way in places]
+    frame = read_frame_text(ZONED.replace("apply = [", "apply = [" + "".join(loads)))
+    x = np.array([0.996, 1.004, 2.004, 1.996, 4.997, 5.004, 1.02, 3.003, 2.997, 1.003])
+    member = np.array([1, 1, 1, 1, 1, 1, 1, 2, 2, 0])
+    found = at_jumps(frame, member, x, np.full(len(x), 0.005))
+    assert found.tolist() == [1, 1, 2, 2, 5, 5, 1.02, 3, 3, 1.003]
