@@ -37,7 +37,7 @@ from crosscheck.opinions.moment_distribution import gradual
 from crosscheck.opinions.slope_deflection import balance
 from crosscheck.opinions.slope_deflection.balance import _trial
 from crosscheck.opinions.slope_deflection.one_way import complementary, wrong
-from crosscheck.opinions.slope_deflection.prepared import END, Places, prepared
+from crosscheck.opinions.slope_deflection.prepared import END, Places, _each_varied, prepared
 from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
 from tests.exact import Exact
 from tests.exact_frames import exact_frames
@@ -411,6 +411,20 @@ def test_a_simple_span_is_lowest_in_the_middle(section: str, order: int, opinion
     none = np.zeros(len(x), dtype=np.int64)
     lowest = x[np.argmin(spans.along("q", none, x, np.where(x < 6.0, 1, -1))[:, ACROSS])]
     assert np.abs(spans.turning_points("q")[1] - lowest).min() < 2e-3
+
+
+def test_pieces_of_some_members_with_their_properties_by_factors() -> None:
+    text = TURNED.replace("B = [6, 0] }", "B = [6, 0], C = [9, 0] }").replace('section = "s"', 'taper = ["s", "t"]')
+    text = text.replace("[loads.q]", 'members."B-C" = { taper = ["t", "s"], material = "m" }\n[loads.q]', 1)
+    text = text.replace("analysis.order = 1\n", "", 1)
+    thicker = "t = { I = 7e-4, A = 9e-3, depth = 0.6"
+    v = read_frame_text(text.replace("t = { I = 1e-4, A = 5e-3, depth = 0.3", thicker)).variation
+    found = _each_varied(v, np.array([1, 0, 1]), np.array([2.0, 1.0, 3.0]), np.array([5.0, 1.0, 0.5]))
+    assert found.member.tolist() == [0, 1, 2]
+    again = v.I[[1, 0, 1]], v.A[[1, 0, 1]], v.depth[[1, 0, 1]]
+    assert found.I / again[0] == pytest.approx(np.array([[2.0, 2.0], [1.0, 1.0], [3.0, 3.0]]))
+    assert found.A / again[1] == pytest.approx(np.array([[5.0, 5.0], [1.0, 1.0], [0.5, 0.5]]))
+    assert (found.depth == again[2]).all()
 
 
 # --- the audit
