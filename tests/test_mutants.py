@@ -427,6 +427,21 @@ def test_pieces_of_some_members_with_their_properties_by_factors() -> None:
     assert (found.depth == again[2]).all()
 
 
+@pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
+def test_what_shear_adds_to_the_deflection_behind_a_point_load(opinion: ModuleType) -> None:
+    """Of a simple span: F a (L - x) / (L G As) where the load stands at a before x; by difference to rigid in shear."""
+    text = TURNED.replace('"fixed"', '"pinned"').replace("E = 200e6", "E = 200e6, G = 80e6")
+    text = text.replace("depth = 0.3", "depth = 0.3, shear_area = 2e-3")
+    text = text[: text.index("apply")] + 'apply = [{ member = "A-B", force = 50, at = 1.5, direction = "down" }]\n'
+    across = []
+    for shear in ("elastic", "rigid"):
+        frame = read_frame_text(text.replace("analysis.order = 1", f'analysis.shear = "{shear}"'))
+        x = np.array([2.0, 3.7, 5.5])
+        none = np.zeros(3, dtype=np.int64)
+        across.append(opinion.opine(frame, study(frame)).spans.along("q", none, x, none + 1)[:, ACROSS])
+    assert across[1] - across[0] == pytest.approx(50 * 1.5 * (6 - x) / (6 * 80e6 * 2e-3), rel=1e-9)
+
+
 # --- the audit
 
 
@@ -669,8 +684,9 @@ def test_joints_of_a_ring_without_moments_are_balanced_together(more: float) -> 
     assert abs(check.residual) == pytest.approx(4 * more / np.sqrt(8) / 6, rel=1e-9, abs=1e-9)
 
 
-def test_the_effect_of_sway_is_the_same_in_other_units() -> None:
-    """A column that carries 100 kN and is pushed aside by 10: in newtons the moments are a thousand times the figures."""
+def test_the_effect_of_sway_is_the_same_however_large_its_figures() -> None:
+    """A column that carries 100 kN and is pushed aside by 10: in newtons the moments are a thousand times the figures, and
+    a millionth if all is a millionth."""
     text = """
 units = "kN m"
 materials.m = { E = 200e6 }
@@ -682,14 +698,15 @@ supports.A = "fixed"
 apply = [{ joint = "B", force = 10, direction = "right" }, { joint = "B", force = 100, direction = "down" }]
 """
     newtons = text.replace("kN m", "N m").replace("200e6", "200e9").replace("= 10,", "= 10e3,").replace("= 100,", "= 1e5,")
+    faint = text.replace("200e6", "200").replace("= 10,", "= 1e-5,").replace("= 100,", "= 1e-4,")
     moments = []
-    for one in (text, newtons):
+    for one in (text, newtons, faint):
         answer = prepared(read_frame_text(one)).sway_answer(["q"])
         assert answer is not None
         moments.append(answer.cases["q"].ends[0, 0, MOMENT])
     # P d / L more shear on d = H L^3 / (3 EI) (1 - P L^2 / (3 EI))^-1: M = H L / (1 - P L^2 / (3 EI)) (by hand).
     assert abs(moments[0]) == pytest.approx(40 / (1 - 100 * 16 / (3 * 2e4)), rel=1e-9)
-    assert moments[1] == pytest.approx(1000 * moments[0], rel=1e-9)
+    assert moments[1:] == pytest.approx([1000 * moments[0], 1e-6 * moments[0]], rel=1e-9)
 
 
 # --- the comparison
