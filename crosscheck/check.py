@@ -40,6 +40,9 @@ OPINIONS = {
 }
 
 
+MOST_SUSPECTS = 10
+
+
 @dataclass(frozen=True, slots=True)
 class Opinions:
     """What the opinions say of a frame, and how they compare. `names`: the cases and combinations asked for."""
@@ -197,6 +200,7 @@ def verify(
         # Another case pasted by mistake is among the suspects, so all cases are needed now.
         whole = opinions if opinions.names == frame.names else ask(frame)
         found, why = _suspects(whole, closed, cases, tolerance)
+        found = _with_pasted(found, whole, reading, case, cases, tolerance)
     return Verification(
         opinions, closed, tolerance, tuple(cases), audits, found, verdict, tuple(grounds), closed.undecided, why,
         printed_input(frame, reading),
@@ -256,6 +260,19 @@ def _suspects(
         return (), f"the search for suspects failed inside ({type(error).__name__}: {error}); please report this"
 
 
+def _with_pasted(
+    found: tuple[Suspect, ...], opinions: Opinions, reading: Reading, case: str | None, cases: list[CaseClaim],
+    tolerance: Tolerance,
+) -> tuple[Suspect, ...]:  # fmt: skip
+    """The suspects, with what only shows when the paste is read again as another case's before them."""
+    from crosscheck.suspects.pasted import pasted_from
+
+    known = {s.says for s in found if s.fits}
+    first = [s for s in pasted_from(opinions, reading, case, cases, tolerance) if s.says not in known]
+    told = {s.says for s in first}
+    return (*first, *(s for s in found if s.says not in told))[:MOST_SUSPECTS]
+
+
 def _searched(
     opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], tolerance: Tolerance
 ) -> tuple[tuple[Suspect, ...], str]:
@@ -283,7 +300,9 @@ def as_suspected(result: Verification, number: int) -> Verification:
         raise UnusableInput([Problem("", None, "--suspect", f"there is no suspect {number}", known)])
     suspect = result.suspects[number - 1]
     frame, closed = suspect.change.apply(result.opinions.frame, result.closed)
-    opinions = ask(frame, result.opinions.names)
+    # The claim may now speak of a case that nobody was asked for: the one whose results it has.
+    meant = (n for name in closed.cases for n in frame.meant(name))
+    opinions = ask(frame, tuple(dict.fromkeys((*result.opinions.names, *meant))))
     cases = ClaimComparison(frame, opinions.answers, opinions.judgements, result.tolerance).judge(closed)
     audits = _audits(frame, opinions, closed)
     verdict, grounds = _verdict(opinions, closed, cases, audits)

@@ -39,6 +39,7 @@ from crosscheck.opinions.slope_deflection.balance import _trial
 from crosscheck.opinions.slope_deflection.one_way import complementary, wrong
 from crosscheck.opinions.slope_deflection.prepared import END, Places, _each_varied, prepared
 from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
+from crosscheck.opinions.slope_deflection.varying import Bent
 from tests.exact import Exact
 from tests.exact_frames import exact_frames
 
@@ -346,7 +347,7 @@ def test_first_order_axial_forces_are_started_from_only_where_rounds_close_in(
 
     def trial(*_: object) -> SimpleNamespace:
         off.append(off[-1] * shrinks)
-        now = off[-1] if off[-1] > 1e-9 else 0.0
+        now = off[-1] if off[-1] > 1e-2 else 0.0
         none = SimpleNamespace(negative_pivots=0)
         return SimpleNamespace(
             equations=none, off=now, stable=True, state="state", gap=np.zeros(1), ahead=lambda change: change, size=1.0
@@ -391,11 +392,13 @@ apply = [
 
 @pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
 @pytest.mark.parametrize("order", [1, 2])
-def test_shear_is_greatest_where_the_load_changes_sign(order: int, opinion: ModuleType) -> None:
-    """At 6 * 9 / 24 m, though the range from 1.8 to 2.4 m is looked at just there; loads along the member beside it."""
-    frame = read_frame_text(TURNED.replace("order = 1", f"order = {order}"))
+@pytest.mark.parametrize("last", [15, 14])
+def test_shear_is_greatest_where_the_load_changes_sign(last: int, order: int, opinion: ModuleType) -> None:
+    """At 6 * 9 / 24 m, though the range from 1.8 to 2.4 m is looked at just there, and at 6 * 9 / 23 m; with loads along
+    the member besides."""
+    frame = read_frame_text(TURNED.replace("order = 1", f"order = {order}").replace("15]", f"{last}]"))
     spans = opinion.opine(frame, study(frame)).spans
-    assert np.abs(spans.turning_points("q")[1] - 2.25).min() < 1e-9
+    assert np.abs(spans.turning_points("q")[1] - 54 / (9 + last)).min() < 1e-9
 
 
 @pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
@@ -440,6 +443,19 @@ def test_what_shear_adds_to_the_deflection_behind_a_point_load(opinion: ModuleTy
         none = np.zeros(3, dtype=np.int64)
         across.append(opinion.opine(frame, study(frame)).spans.along("q", none, x, none + 1)[:, ACROSS])
     assert across[1] - across[0] == pytest.approx(50 * 1.5 * (6 - x) / (6 * 80e6 * 2e-3), rel=1e-9)
+
+
+def test_a_slope_that_changes_sign_from_one_stretch_to_the_next_is_level_there() -> None:
+    """Two members: slopes -1, -1, 1 and -1, 1 on their stretches, plus chords that change neither; and one that does."""
+    stretches = SimpleNamespace(
+        member=np.array([0, 0, 0, 1, 1]), start=np.array([0.0, 1.0, 3.0, 0.0, 2.5]), length=np.array([1.0, 2, 1, 2.5, 2])
+    )
+    slope = np.zeros((5, 4))
+    slope[:, 0] = -1, -1, 1, -1, 1
+    bent = SimpleNamespace(stretches=stretches, slope=slope)
+    member, x = Bent.level(bent, np.array([0.5, -0.5]))  # type: ignore[arg-type]
+    assert (member.tolist(), x.tolist()) == ([0, 1], [3.0, 2.5])
+    assert Bent.level(bent, np.array([1.5, 0.0]))[0].tolist() == [1]  # type: ignore[arg-type]
 
 
 # --- the audit

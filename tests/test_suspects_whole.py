@@ -9,6 +9,8 @@ import numpy as np
 import pytest
 
 from crosscheck import check
+from crosscheck.answer import CaseAnswer
+from crosscheck.claims import FrameNames, read_claim_text
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.frame.model import FREE, Frame, Spread
 from crosscheck.opinions import slope_deflection
@@ -16,6 +18,8 @@ from crosscheck.opinions.slope_deflection.prepared import prepared
 from crosscheck.suspects import Suspect, search
 from tests.benchmarks.bench_suspects import grid
 from tests.corpus import CLAIM, _sway_alone, _with_zones, case_values, closed_claim, judged, opinions_on, solved, times
+from tests.make_cases import CASES
+from tests.transforms import printed
 
 
 def heavy(order: int = 1) -> Frame:
@@ -171,3 +175,25 @@ def test_mistakes_in_a_frame_of_second_order_are_named(what: str) -> None:
     suspects, _ = named_for(frame, results(other))
     assert suspects[0].kind == kind and where in suspects[0].where
     assert suspects[0].explains > 0.99
+
+
+@pytest.mark.parametrize("name", ["hall", "depot"])
+def test_results_of_another_case_are_named_whatever_signs_the_paste_has(name: str) -> None:
+    """Under the wrong case's name the signs cannot be told: compression positive, moments that sag positive."""
+    frame = check.read(CASES / f"{name}.toml")
+    answer = check.ask(frame).answers["slope-deflection"]
+    names = [n for n in frame.names if len(frame.meant(n)) == 1][-3:]
+    for stated in names:
+        for other in (n for n in names if n != stated):
+            case = answer.cases[other]
+            ends = case.ends * np.array([[-1.0, 1.0, 1.0], [-1.0, -1.0, -1.0]])
+            text = printed(frame, {stated: CaseAnswer(ends, case.joints, case.reactions)})
+            found = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), every_case=False)
+            if found.verdict != "disagree":  # the two cases may be alike
+                assert np.allclose(ends, answer.cases[stated].ends, rtol=0.02, atol=0.02 * np.abs(ends).max())
+                continue
+            says = f"the results of {other} stand under {stated}"
+            # Of arrangements of one pattern, the other arrangement says the same.
+            number = [s.says for s in found.suspects if s.fits].index(says) + 1
+            assert number <= (1 if name == "hall" else 3), (stated, other)
+            assert check.as_suspected(found, number).verdict == "agree"
