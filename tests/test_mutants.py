@@ -458,6 +458,25 @@ def test_a_slope_that_changes_sign_from_one_stretch_to_the_next_is_level_there()
     assert Bent.level(bent, np.array([1.5, 0.0]))[0].tolist() == [1]  # type: ignore[arg-type]
 
 
+@pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
+@pytest.mark.parametrize("section", ['section = "s"', 'taper = ["s", "t"]'])
+def test_second_order_without_axial_forces_is_first_order(section: str, opinion: ModuleType) -> None:
+    """By definition; of a propped member that is soft in shear, ends and deflection."""
+    text = TURNED.replace("E = 200e6", "E = 200e6, G = 80e6").replace('section = "s"', section)
+    text = text.replace("s = { I = 1e-4, A = 5e-3, depth = 0.3", "s = { I = 1e-4, A = 5e-3, depth = 0.3, shear_area = 2e-4")
+    text = text.replace("t = { I = 1e-4, A = 5e-3, depth = 0.3", "t = { I = 8e-4, A = 9e-3, depth = 0.6, shear_area = 3e-4")
+    text = text[: text.index("apply")] + 'apply = [{ member = "A-B", varying = [-9, 15], direction = "across" }]\n'
+    x = np.array([0.7, 2.0, 3.7, 5.5])
+    none = np.zeros(4, dtype=np.int64)
+    found = []
+    for order in (1, 2):
+        frame = read_frame_text(text.replace("analysis.order = 1", f'analysis = {{ order = {order}, shear = "elastic" }}'))
+        said = opinion.opine(frame, study(frame))
+        across = said.spans.along("q", none, x, none + 1)[:, ACROSS]
+        found.append(np.concatenate([said.cases["q"].ends[..., 1:].ravel(), across]))
+    assert found[1] == pytest.approx(found[0], rel=1e-8)
+
+
 # --- the audit
 
 

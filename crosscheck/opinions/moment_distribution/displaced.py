@@ -241,7 +241,7 @@ class Displaced:
         """What moments and forces at the joints are sums of."""
         length = self.held.members.table.length
         force = _largest(ends[:, 2] / length) + sum(map(_largest, (case.force, position.push, position.axial)))
-        moment = _largest(ends[:, :2]) + _largest(case.couple)
+        moment = _largest(ends[:, :2]) + _largest(case.couple) + _largest(position.twist)
         return moment + force * _largest(length), force
 
     def _apply(self, position: Position, turned: Floats, swayed: Floats) -> None:

@@ -295,7 +295,8 @@ def unbalanced(held: Held, given: Given, state: State, cases: Ints) -> tuple[Flo
     parts = (given.force, state.push, state.axial)
     shear = (ends.sum(axis=1) / length[:, None]).max(axis=0, initial=0.0)
     size_force = shear + sum(np.abs(part[:, cases]).max(axis=0, initial=0.0) for part in parts)
-    size_moment = ends.max(axis=(0, 1), initial=0.0) + np.abs(given.couple[:, cases]).max(axis=0, initial=0.0)
+    outside = sum(np.abs(part[:, cases]).max(axis=0, initial=0.0) for part in (given.couple, state.twist))
+    size_moment = ends.max(axis=(0, 1), initial=0.0) + outside
     # A moment is the small sum of forces on long arms as much as of moments: where there is none, that is rounding.
     return moment, np.asarray(force), size_moment + size_force * length.max(initial=0.0), np.asarray(size_force)
 
