@@ -357,6 +357,46 @@ def test_first_order_axial_forces_are_started_from_only_where_rounds_close_in(
     assert (balance._at_once(None, np.zeros(1)) == "state") is found  # type: ignore[arg-type, comparison-overlap]
 
 
+@pytest.mark.parametrize(("falls", "part"), [(False, 0.8), (True, 1.0 - np.sqrt(0.2))])
+def test_the_whole_load_is_looked_for_where_a_line_or_a_parabola_has_it(falls: bool, part: float) -> None:
+    """From 0.6 of the load to 1.1: four fifths of the way by a line, less by a parabola that is level at its end."""
+    tried: list[np.ndarray] = []
+
+    def prescribed(place: int, value: float) -> gradual.Answered:
+        def answered(balance_taken: np.ndarray) -> np.ndarray:
+            tried.append(balance_taken)
+            return np.where(np.arange(3) == place, value, balance_taken)
+
+        return answered
+
+    here, top = np.array([0.3, -0.2, 0.6]), np.array([0.8, 0.4, 1.1])
+    gradual._whole(prescribed, 0, here, top, falls)
+    assert tried[0] == pytest.approx(here + part * (top - here), rel=1e-12)
+
+
+def test_a_vertex_is_looked_for_between_the_balances_beside_it() -> None:
+    """What goes with the value asked for is guessed from the two known balances that it lies between, by a line."""
+    def balance_at(value: float) -> np.ndarray:
+        return np.array([value, 0.5 * value**2, 0.9 - 0.4 * (value - 2.0) ** 2 - 0.2 * (value - 2.0) ** 3])
+
+    known = {x: balance_at(x) for x in (1.0, 1.9, 3.4)}
+    guessed: list[tuple[float, float]] = []
+
+    def prescribed(place: int, value: float) -> gradual.Answered:
+        def answered(taken: np.ndarray) -> np.ndarray:
+            if value not in known:
+                at = sorted(known)
+                guessed.append((float(taken[1]), float(np.interp(value, at, [known[x][1] for x in at]))))
+                known[value] = balance_at(value)
+            return balance_at(value)
+
+        return answered
+
+    gradual._vertex(prescribed, 0, list(known.values()))
+    assert len(guessed) > 3
+    assert [g for g, _ in guessed] == pytest.approx([line for _, line in guessed], rel=1e-9)
+
+
 @pytest.mark.parametrize("outer", [(1.0, 1.9, 3.4), (0.5, 2.4, 2.6), (1.5, 1.6, 2.6), (2.4, 2.3, 1.2)])
 def test_the_greatest_load_is_found_by_few_balances(outer: tuple[float, float, float]) -> None:
     """Of a cubic whose greatest value is 0.9 at 2 by definition: to a few ten-millionths, by at most eight balances."""
@@ -461,11 +501,12 @@ def test_a_slope_that_changes_sign_from_one_stretch_to_the_next_is_level_there()
 @pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
 @pytest.mark.parametrize("section", ['section = "s"', 'taper = ["s", "t"]'])
 def test_second_order_without_axial_forces_is_first_order(section: str, opinion: ModuleType) -> None:
-    """By definition; of a propped member that is soft in shear, ends and deflection."""
-    text = TURNED.replace("E = 200e6", "E = 200e6, G = 80e6").replace('section = "s"', section)
+    """By definition; of a propped member that is soft in shear and warmer on one side, ends and deflection."""
+    text = TURNED.replace("E = 200e6", "E = 200e6, G = 80e6, alpha = 1e-5").replace('section = "s"', section)
     text = text.replace("s = { I = 1e-4, A = 5e-3, depth = 0.3", "s = { I = 1e-4, A = 5e-3, depth = 0.3, shear_area = 2e-4")
     text = text.replace("t = { I = 1e-4, A = 5e-3, depth = 0.3", "t = { I = 8e-4, A = 9e-3, depth = 0.6, shear_area = 3e-4")
-    text = text[: text.index("apply")] + 'apply = [{ member = "A-B", varying = [-9, 15], direction = "across" }]\n'
+    loads = '{ member = "A-B", varying = [-9, 15], direction = "across" }, { member = "A-B", difference = 40 }'
+    text = text[: text.index("apply")] + f"apply = [{loads}]\n"
     x = np.array([0.7, 2.0, 3.7, 5.5])
     none = np.zeros(4, dtype=np.int64)
     found = []
