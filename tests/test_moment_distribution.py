@@ -557,6 +557,7 @@ def test_working_adds_up(seed: int) -> None:
     for heading in ("Distribution, joints held against sway", "End moments", "Fixed-end moments, every joint held"):
         for row in tables[heading].rows:
             *parts, total = (float(v or 0.0) for v in row[2:])
+            assert "-0.0" not in map(str, row[2:])
             assert sum(parts) == pytest.approx(total, abs=1e-6 * size)
     for joint, member, *_, final in tables["End moments"].rows:
         m = frame.member_index[str(member)]

@@ -11,6 +11,8 @@ from types import ModuleType, SimpleNamespace
 
 import numpy as np
 import pytest
+from scipy import sparse
+from scipy.sparse.linalg import splu
 
 from crosscheck.answer import ACROSS, MOMENT, CaseAnswer, WorkTable
 from crosscheck.audit import bound, fit, one_way
@@ -33,11 +35,13 @@ from crosscheck.opinions.library import results
 from crosscheck.opinions.library.model import Vectors
 from crosscheck.opinions.library.qualification import _has_turned_roller
 from crosscheck.opinions.library.results import _rigid_limit, along, solve_case
-from crosscheck.opinions.moment_distribution import gradual
+from crosscheck.opinions.moment_distribution import critical, gradual
+from crosscheck.opinions.moment_distribution.sways import _refined
+from crosscheck.opinions.moment_distribution.varying import Varying
 from crosscheck.opinions.slope_deflection import balance
 from crosscheck.opinions.slope_deflection.balance import _trial
 from crosscheck.opinions.slope_deflection.one_way import complementary, wrong
-from crosscheck.opinions.slope_deflection.prepared import END, Places, _each_varied, prepared
+from crosscheck.opinions.slope_deflection.prepared import END, SPAN, Places, _each_varied, prepared
 from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
 from crosscheck.opinions.slope_deflection.varying import Bent
 from tests.exact import Exact
@@ -318,6 +322,12 @@ def test_the_size_by_which_axial_forces_that_are_rounding_are_measured(text: str
         assert trial is not None and trial.size == pytest.approx(shear, rel=1e-9)
 
 
+def test_pivoting_ends_where_the_artificial_variable_can_leave_with_another() -> None:
+    """Three parts without effect on each other, one of them without stiffness: only the third works, by 1/5 (by hand)."""
+    found = complementary(np.diag([0.0, 4.0, 5.0]), np.array([0.0, 2.0, -1.0]))
+    assert found is not None and found == pytest.approx([0.0, 0.0, 0.2])
+
+
 @pytest.mark.parametrize("noise", [1e-13, -1e-13])
 def test_a_one_way_part_at_rest_is_right_in_place_and_out(noise: float) -> None:
     """By definition: a part works the wrong way where its force is against it, a part that is out where its gap closes."""
@@ -456,6 +466,18 @@ def test_a_simple_span_is_lowest_in_the_middle(section: str, order: int, opinion
     assert np.abs(spans.turning_points("q")[1] - lowest).min() < 2e-3
 
 
+def test_moments_along_members_under_a_unit_force_are_read_as_they_are_told() -> None:
+    """Effects at places along members, of which suspects are made, against the moments along them under that load."""
+    frame = read_frame_text(ZONED)
+    member, x = np.array([0, 1, 1, 2]), np.array([1.3, 0.7, 4.0, 2.2])
+    none = np.full(4, -1)
+    places = Places(np.full(4, SPAN), np.full(4, 2), member, none, none, x, np.ones(4, dtype=np.int64))
+    got = prepared(frame).effects(places).force[:, 3 * list(frame.joints).index("B")]
+    said = slope_deflection.opine(frame, study(frame))
+    along = said.spans.along("q", member, x, np.ones(4, dtype=np.int64))[:, MOMENT]  # type: ignore[union-attr]
+    assert got == pytest.approx(along, rel=1e-9)
+
+
 def test_pieces_of_some_members_with_their_properties_by_factors() -> None:
     text = TURNED.replace("B = [6, 0] }", "B = [6, 0], C = [9, 0] }").replace('section = "s"', 'taper = ["s", "t"]')
     text = text.replace("[loads.q]", 'members."B-C" = { taper = ["t", "s"], material = "m" }\n[loads.q]', 1)
@@ -516,6 +538,71 @@ def test_second_order_without_axial_forces_is_first_order(section: str, opinion:
         across = said.spans.along("q", none, x, none + 1)[:, ACROSS]
         found.append(np.concatenate([said.cases["q"].ends[..., 1:].ravel(), across]))
     assert found[1] == pytest.approx(found[0], rel=1e-8)
+
+
+def test_the_peak_of_the_path_is_looked_for_between_two_points_of_it() -> None:
+    """Load 0.9 - (s - 0.3)^2 over the arc s: from 0.1 to 0.7 along a direction that has all of the arc."""
+    path, steps = object.__new__(balance._Path), []
+
+    def point(s: float) -> balance._Point:
+        return balance._Point(np.array([s, 0.9 - (s - 0.3) ** 2]), np.array([1.0, -2 * (s - 0.3)]), None)
+
+    def ahead(here: balance._Point, step: float) -> tuple[int, balance._Point]:
+        steps.append(step)
+        return 1, point(float(here.at[0]) + step)
+
+    path._next = ahead  # type: ignore[method-assign, assignment]
+    low = balance._Point(np.array([0.1, 0.86]), np.array([1.0, 0.0]), None)
+    found = path._peak(low, point(0.7))
+    assert found is not None and found.share == pytest.approx(0.9, abs=1e-6)
+    assert all(0.0 < step < 0.6 for step in steps)
+
+
+def test_marks_that_miss_a_place_by_rounding_are_that_place() -> None:
+    """Of two members of 4 m: the one at 1 m has a place, those at 2.5 m and on the other member have none beside them."""
+    some = SimpleNamespace(
+        length=np.array([4.0, 4.0]), mark_member=np.array([0, 0, 1]), mark_x=np.array([1.0 + 1e-14, 2.5, 1.0])
+    )
+    member, x = Varying.marks_beside(some, np.array([0, 0, 1, 1]), np.array([1.0, 3.0, 0.0, 4.0]))  # type: ignore[arg-type]
+    assert (member.tolist(), x.tolist()) == ([0, 1], [2.5, 1.0])
+
+
+@pytest.mark.parametrize("critical_at", [0.3, 0.9, 1.0, 1.7, 2.5, 2.9, 5.1])
+def test_a_critical_load_is_bracketed(critical_at: float) -> None:
+    low, high = critical._bracket(SimpleNamespace(stable=lambda factor: factor < critical_at))  # type: ignore[arg-type]
+    assert low < critical_at <= high <= 2 * low
+
+
+def test_a_solution_is_improved_by_what_it_leaves_over() -> None:
+    """With factors of a matrix a ten-thousandth too large, the error of one ten-thousandth becomes its square."""
+    matrix = sparse.csc_array(np.array([[4.0, 1.0], [1.0, 3.0]]))
+    factor = splu(sparse.csc_matrix(1.0001 * matrix.toarray()))
+    right = np.array([1.0, -2.0])
+    found = _refined(factor, matrix, right, "N")
+    assert found == pytest.approx(np.linalg.solve(matrix.toarray(), right), rel=1e-7)
+
+
+STEPPED = TURNED.replace("E = 200e6", "E = 200e6, G = 80e6").replace(
+    'section = "s"', 'profile = [["s", "40%"], ["t", "100%"]]'
+).replace("s = { I = 1e-4, A = 5e-3, depth = 0.3", "s = { I = 1e-4, A = 5e-3, depth = 0.3, shear_area = 3e-4").replace(
+    "t = { I = 1e-4, A = 5e-3, depth = 0.3", "t = { I = 1e-4, A = 5e-3, depth = 0.3, shear_area = 2e-4"
+).replace("analysis.order = 1", 'analysis.shear = "elastic"')  # fmt: skip
+
+
+@pytest.mark.parametrize("opinion", [slope_deflection, moment_distribution], ids=["slope-deflection", "distribution"])
+def test_the_axis_has_a_kink_where_shear_strain_jumps(opinion: ModuleType) -> None:
+    """At a step of the shear area by a half, 2.4 m along: a place where the deflection may be greatest."""
+    frame = read_frame_text(STEPPED)
+    slope = []
+    spans = opinion.opine(frame, study(frame)).spans
+    x = np.array([2.4 - 2e-4, 2.4 - 1e-4, 2.4 + 1e-4, 2.4 + 2e-4])
+    none = np.zeros(4, dtype=np.int64)
+    across = spans.along("q", none, x, none + 1)[:, ACROSS]
+    slope = np.diff(across)[[0, 2]] / 1e-4
+    shear = float(spans.along("q", none[:1], np.array([2.4]), none[:1] + 1)[0, 1])
+    assert slope[1] - slope[0] == pytest.approx(-shear * (1 / 2e-4 - 1 / 3e-4) / 80e6, rel=1e-2)
+    if opinion is moment_distribution:  # slope-deflection takes the place up only where the slope changes sign there
+        assert np.abs(spans.turning_points("q")[1] - 2.4).min() < 1e-9
 
 
 # --- the audit
