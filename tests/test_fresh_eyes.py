@@ -9,9 +9,13 @@ from __future__ import annotations
 import re
 from pathlib import Path
 
+import numpy as np
 import pytest
 
+from crosscheck import check
+from crosscheck.claims import FrameNames, read_claim_text
 from tests.calls import CASES, Call, call, put
+from tests.transforms import printed
 
 PORTAL = """
 title = "Portal with fixed feet"
@@ -357,3 +361,35 @@ def test_a_value_in_words_below_a_table_is_read(tmp_path: Path) -> None:
     said = told(tmp_path, PORTAL, "wind", table + "Sway at eaves = 8.9 mm.")
     assert said.status == 0 and "the 7 values" in " ".join(said.out.split())
     assert told(tmp_path, PORTAL, "wind", table + "Sway at eaves = 9.8 mm.").status == 1
+
+
+LIMITS = [
+    "Deflection limit L/300 = 20 mm, ok.", "Allowable horizontal deflection h/150 = 30 mm", "Total load 145 kN",
+    "Max utilisation 0.87 (column).", "Self weight 12.5 kN included.", "Analysis time 0.4 s",
+    "Wind pressure 0.9 kN/m2 on the long side.",
+]  # fmt: skip
+AROUND = ["{} (limit 500 kNm)", "{} < 500 kNm", "{}, capacity 500 kNm", "ultimate limit state: {}"]
+
+
+@pytest.mark.parametrize("sentence", LIMITS)
+@pytest.mark.parametrize("where", ["before", "after"])
+def test_what_is_no_result_is_not_taken_for_one(sentence: str, where: str) -> None:
+    """What may be borne, what is applied, what the analysis took: said beside a right table of results."""
+    frame = check.read(CASES / "shed.toml")
+    name = frame.names[0]
+    table = printed(frame, {name: check.ask(frame).answers["slope-deflection"].cases[name]})
+    text = f"{sentence}\n\n{table}" if where == "before" else f"{table}\n{sentence}\n"
+    found = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), suspects=False, every_case=False)
+    assert found.verdict == "agree"
+
+
+@pytest.mark.parametrize(("factor", "verdict"), [(1.0, "agree"), (1.2, "disagree")])
+@pytest.mark.parametrize("around", AROUND)
+def test_a_result_beside_its_limit_is_compared(around: str, factor: float, verdict: str) -> None:
+    frame = check.read(CASES / "shed.toml")
+    name = frame.names[0]
+    ends = np.abs(check.ask(frame).answers["slope-deflection"].cases[name].ends[:, :, 2])
+    member = list(frame.members)[int(np.argmax(ends.max(axis=1)))]
+    text = around.format(f"{member} end moment max {factor * ends.max():.2f} kNm")
+    found = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), case=name, suspects=False)
+    assert found.verdict == verdict

@@ -558,6 +558,15 @@ def test_the_peak_of_the_path_is_looked_for_between_two_points_of_it() -> None:
     assert all(0.0 < step < 0.6 for step in steps)
 
 
+def test_the_critical_load_of_rigid_members_is_that_of_no_softness(monkeypatch: pytest.MonkeyPatch) -> None:
+    """A factor that is too small by as much as the members standing in for rigid ones are soft: none is left of it."""
+    case = object.__new__(CaseInSecondOrder)
+    case.rigid, case.firm, case.stretch_stiffness = np.array([True]), 1e6, np.array([1e6])  # type: ignore[misc]
+    monkeypatch.setattr(CaseInSecondOrder, "_compressed", lambda *_: True)
+    monkeypatch.setattr(CaseInSecondOrder, "_least_factor", lambda self, *_: 3.0 * (1 - 1e3 / self.firm))
+    assert case.critical_factor(np.array([-1.0])) == pytest.approx(3.0, rel=1e-12)
+
+
 def test_marks_that_miss_a_place_by_rounding_are_that_place() -> None:
     """Of two members of 4 m: the one at 1 m has a place, those at 2.5 m and on the other member have none beside them."""
     some = SimpleNamespace(

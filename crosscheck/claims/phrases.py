@@ -21,6 +21,10 @@ _VALUE = re.compile(
 )
 _LOAD = re.compile(r"(?<![\w.,])[+\-\u2212]?\d+(?:[.,]\d+)*\s*[A-Za-z]+\s*/\s*[A-Za-z]\w*")
 """A load of so much a length ("12 kN/m"), which is no result."""
+_LIMIT = re.compile(
+    r"(?:[(\[]\s*)?(?:\b(?:limit(?:s|ed|ing)?\b(?!\s+state)|allowables?\b|allowed\b|permissible\b|permitted\b|capacity\b"
+    r"|resistance\b|utili[sz]ation\b|criteri(?:on|a)\b)|<=?|\u2264)[^;,()\[\]]*[)\]]?", re.IGNORECASE)  # fmt: skip
+"""What may be or can be borne ("limit L/300 = 20 mm", "< 25 mm"), which is no result."""
 _NUMBER = r"[+\-\u2212]?\d+(?:[.,]\d+)?(?:[eE][+-]?\d+)?"
 _NAME = r"[A-Za-z0-9']{1,6}"
 _AT_JOINT = re.compile(rf"(?<![A-Za-z0-9_])(?P<letter>[MVHR])(?:_?\{{?|\s?\()(?P<joint>{_NAME})[)}}]?(?=\s*[=:])")
@@ -68,7 +72,7 @@ class Told:
 
 def told(text: str) -> Iterator[Told]:
     """Every number with a result's unit; in a part without one the last number."""
-    for part in _PART.split(_LOAD.sub(" ", text)):
+    for part in _PART.split(_LOAD.sub(" ", _LIMIT.sub(" ", text))):
         station, part = _station(part)
         found = [m for m in _VALUE.finditer(part) if m.group("unit") and size_of(m.group("unit"))]
         found = found or list(_VALUE.finditer(part))[-1:]

@@ -393,7 +393,8 @@ class _Scanner:
             return "remark", "a date, a page or the like"
         words = [t for t in filled if not is_number(t) and not self._knows(t) and not self._of_envelope(t)
                  and len(re.sub(r"\W", "", t)) > 1]  # fmt: skip
-        if len(words) > max(2, numbers) and not self._as_wide_as_heads(text, filled):
+        told = self._parted_otherwise(text) and not self._knows(filled[0])
+        if len(words) > max(1 if told else 2, numbers) and (told or not self._as_wide_as_heads(text, filled)):
             self.out.remarks.append((number, text))
             return "remark", ""
         if self.table is None:
@@ -402,6 +403,12 @@ class _Scanner:
         self.table.rows.append((number, text))
         self.table.blocks.append(self.block)
         return "row", ""
+
+    def _parted_otherwise(self, text: str) -> bool:
+        """Is it a line of words below a table whose cells tabs, commas or bars part?"""
+        if self.table is None or not self.table.rows:
+            return False
+        return separator_of(text) == "blank" != separator_of(self.table.rows[-1][1])
 
     def _as_wide_as_heads(self, text: str, filled: list[str]) -> bool:
         """ The same by cells that are words, or that two blanks part."""
