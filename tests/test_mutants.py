@@ -36,6 +36,7 @@ from crosscheck.opinions.library.model import Vectors
 from crosscheck.opinions.library.qualification import _has_turned_roller
 from crosscheck.opinions.library.results import _rigid_limit, along, solve_case
 from crosscheck.opinions.moment_distribution import critical, gradual
+from crosscheck.opinions.moment_distribution import one_way as distribution_one_way
 from crosscheck.opinions.moment_distribution.sways import _refined
 from crosscheck.opinions.moment_distribution.varying import Varying
 from crosscheck.opinions.slope_deflection import balance
@@ -565,6 +566,32 @@ def test_the_critical_load_of_rigid_members_is_that_of_no_softness(monkeypatch: 
     monkeypatch.setattr(CaseInSecondOrder, "_compressed", lambda *_: True)
     monkeypatch.setattr(CaseInSecondOrder, "_least_factor", lambda self, *_: 3.0 * (1 - 1e3 / self.firm))
     assert case.critical_factor(np.array([-1.0])) == pytest.approx(3.0, rel=1e-12)
+
+
+def test_of_what_is_wrong_the_worst_is_changed_first() -> None:
+    """Parts 1 and 0 are wrong, in this order, in a frame that does not stand: the first of them changed, all is right."""
+    asked: list[frozenset[int]] = []
+
+    def tried(out: frozenset[int]) -> distribution_one_way.Judged[str]:
+        asked.append(out)
+        return distribution_one_way.Judged((), "found") if out == {1} else distribution_one_way.Judged((1, 0), None)
+
+    found = distribution_one_way._worst_first(frozenset(), tried, {})
+    assert found is not None and found.found == "found" and asked == [frozenset(), frozenset({1})]
+
+
+@pytest.mark.parametrize("direction", [0, 90, 40])
+def test_a_tie_to_a_joint_on_a_turned_roller(direction: str) -> None:
+    """Both opinions, and the joints' displacements along the tie are the same."""
+    text = ZONED.replace('D = "fixed"', 'D = { y = "held", rotation = "held", angle = 25 }').replace(
+        "[supports]", f'[ties]\nt = {{ joints = ["B", "D"], direction = {direction} }}\n[supports]'
+    )
+    frame = read_frame_text(text)
+    one, other = (o.opine(frame, study(frame)).cases["q"] for o in (slope_deflection, moment_distribution))
+    assert other.ends == pytest.approx(one.ends, rel=1e-9, abs=1e-9)
+    assert other.joints == pytest.approx(one.joints, rel=1e-9, abs=1e-12)
+    along = one.joints[:, :2] @ [np.cos(np.radians(direction)), np.sin(np.radians(direction))]
+    assert along[1] == pytest.approx(along[3], rel=1e-8) and abs(along[1]) > 1e-9
 
 
 def test_marks_that_miss_a_place_by_rounding_are_that_place() -> None:
