@@ -37,6 +37,7 @@ from crosscheck.opinions.library.qualification import _has_turned_roller
 from crosscheck.opinions.library.results import _rigid_limit, along, solve_case
 from crosscheck.opinions.moment_distribution import critical, gradual
 from crosscheck.opinions.moment_distribution import one_way as distribution_one_way
+from crosscheck.opinions.moment_distribution.members import cut_up, members
 from crosscheck.opinions.moment_distribution.sways import _refined
 from crosscheck.opinions.moment_distribution.varying import Varying
 from crosscheck.opinions.slope_deflection import balance
@@ -566,6 +567,15 @@ def test_the_critical_load_of_rigid_members_is_that_of_no_softness(monkeypatch: 
     monkeypatch.setattr(CaseInSecondOrder, "_compressed", lambda *_: True)
     monkeypatch.setattr(CaseInSecondOrder, "_least_factor", lambda self, *_: 3.0 * (1 - 1e3 / self.firm))
     assert case.critical_factor(np.array([-1.0])) == pytest.approx(3.0, rel=1e-12)
+
+
+@pytest.mark.parametrize(("share", "zone"), [(10, 5.4), (40, 3.6), (30, 4.2), (70, 1.8)])
+def test_a_piece_that_ends_at_a_face_leaves_no_sliver(share: int, zone: float) -> None:
+    """Distances that differ by rounding alone: 10% of 6 m and 6 - 5.4 m, and others."""
+    text = STEPPED.replace('"40%"', f'"{share}%"').replace('"100%"]]', f'"100%"]], rigid_to = {zone}')
+    frame = read_frame_text(text)
+    size = cut_up(members(frame), load_table(frame, "q")).size
+    assert ((size == 0.0) | (size > 1e-6)).all() and (size > 1e-6).sum() == 2
 
 
 def test_of_what_is_wrong_the_worst_is_changed_first() -> None:
