@@ -430,13 +430,18 @@ FAR = 100.0
 """Critical load factors above this are as good as none."""
 
 
-def critical_factors(frame: Frame, names: Sequence[str] | None = None) -> dict[str, float]:
+def critical_factors(
+    frame: Frame, names: Sequence[str] | None = None, enough: float | None = None
+) -> dict[str, float]:
     """Critical load factor of each case and combination (or of `names`) by stability functions, to three digits;
-    infinite above FAR. Empty for a frame of more than QUICK members, and where there is no case."""
+    infinite above FAR. Empty for a frame of more than QUICK members, and where there is no case.
+
+    enough: where given, factors above it that are not the least are infinite too, which is quick for many cases.
+    """
     if len(frame.members) > QUICK or not frame.names:
         return {}
     module = importlib.import_module(OPINIONS["slope-deflection"])
     found: dict[str, float] = {}
     for plain, group in situations(frame, frame.names if names is None else names):
-        found |= module.critical_factors(plain, group, FAR)
+        found |= module.critical_factors(plain, group, FAR, enough)
     return found

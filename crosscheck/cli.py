@@ -375,9 +375,9 @@ def _effects(args: argparse.Namespace, result: Opinions) -> tuple[str, list[Rend
     """The line on the critical load factor, and what the idealisation does to the results where that is asked for."""
     from crosscheck import check
     from crosscheck.idealisations import key_values, variants
-    from crosscheck.report.effects import critical_line, idealisations_table
+    from crosscheck.report.effects import USUAL, critical_line, idealisations_table
 
-    line = critical_line(result.frame, check.critical_factors(result.frame, result.names))
+    line = critical_line(result.frame, check.critical_factors(result.frame, result.names, USUAL))
     if not args.idealisations:
         return line, []
     found = variants(result.frame, result.names)

@@ -103,11 +103,11 @@ def record(frame: str | Path, reason: str, variant: str = "") -> Path:
 
 def printed(result: Opinions | Verification, width: int = 100) -> str:
     """The report that the commands print, as text of `width` characters a line (80 or more)."""
-    from crosscheck.report.effects import critical_line
+    from crosscheck.report.effects import USUAL, critical_line
     from crosscheck.report.terminal import opinions_report, plain_text, verify_report
 
     opinions = _opinions(result)
-    critical = critical_line(opinions.frame, check.critical_factors(opinions.frame, opinions.names))
+    critical = critical_line(opinions.frame, check.critical_factors(opinions.frame, opinions.names, USUAL))
     if isinstance(result, Verification):
         return plain_text(verify_report(result, critical), width)
     return plain_text(opinions_report(result, (), critical), width)

@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import pytest
 
+from crosscheck import check
 from crosscheck.check import critical_factors
 from crosscheck.frame.reader import read_frame_text
 from crosscheck.idealisations import key_values, variants
-from crosscheck.report.effects import critical_line
+from crosscheck.report.effects import USUAL, critical_line
+from tests.calls import CASES
 from tests.slips import sound
 
 CANTILEVER = """
@@ -64,3 +66,9 @@ def test_critical_factor_of_a_cantilever() -> None:
 
 def test_far_from_critical_is_said_without_a_number() -> None:
     assert critical_line(sound("continuous"), {"dead": float("inf")}) == "Critical load factor: 100 or more in every case."
+
+
+@pytest.mark.parametrize("name", ["depot", "hall", "rack", "workshop", "canopy"])
+def test_the_line_says_the_same_where_factors_that_it_does_not_tell_are_not_found(name: str) -> None:
+    frame = check.read(CASES / f"{name}.toml")
+    assert critical_line(frame, critical_factors(frame, None, USUAL)) == critical_line(frame, critical_factors(frame))

@@ -21,9 +21,15 @@ VERIFY_LIMIT, HELP_LIMIT = 1.6, 1.3
 
 
 def largest_frame() -> str:
-    """The demonstration frame with the most values on record, which is the one with the most members and cases."""
-    sizes = {path: len(path.read_bytes()) for path in CASES.glob("*.record.toml")}
-    return max(sizes, key=sizes.__getitem__).name.removesuffix(".record.toml")
+    """The demonstration frame with the most members, each counted for every case and combination."""
+    from crosscheck import check
+
+    frames = {name: check.read(CASES / f"{name}.toml") for name in recorded()}
+    return max(frames, key=lambda name: len(frames[name].members) * len(frames[name].names))
+
+
+def recorded() -> list[str]:
+    return sorted(path.name.removesuffix(".record.toml") for path in CASES.glob("*.record.toml"))
 
 
 def right_claim(name: str) -> Path:

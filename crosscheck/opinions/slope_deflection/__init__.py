@@ -110,11 +110,14 @@ def _balanced(frame: Frame, names: tuple[str, ...]) -> Iterator[tuple[str, tuple
             yield name, str(past)
 
 
-def critical_factors(frame: Frame, names: Sequence[str] | None = None, beyond: float | None = None) -> dict[str, float]:
+def critical_factors(
+    frame: Frame, names: Sequence[str] | None = None, beyond: float | None = None, enough: float | None = None
+) -> dict[str, float]:
     """Critical load factor of each case and combination: the least factor on its first-order axial forces at which the
     frame or a member in it buckles; inf where nothing is compressed enough.
 
     beyond: where given, factors above it are inf as well and those below are found to three digits, which is quick.
+    enough: where given, so are those above it and above the least of the cases before.
     A frame with one-way parts has those of the state that each case settles in; a case that settles in none is left out.
     """
     from crosscheck.opinions.slope_deflection.one_way import OneWay
@@ -122,13 +125,15 @@ def critical_factors(frame: Frame, names: Sequence[str] | None = None, beyond: f
 
     names = frame.names if names is None else tuple(names)
     one_way = OneWay(frame) if frame.one_way else None
-    factors = {}
+    factors: dict[str, float] = {}
     for name in names:
         settled = one_way.settled(name) if one_way else None
         if one_way and settled is None:
             continue
         case = CaseInSecondOrder(settled.frame if settled else frame, load_table(frame, name))
         close, most = (EXACT, BEYOND) if beyond is None else (THREE_DIGITS, beyond)
+        if enough is not None:
+            most = min(most, max(enough, min(factors.values(), default=most)))
         factors[name] = case.critical_factor(case.first_order(), close, most)
     return factors
 
