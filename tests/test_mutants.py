@@ -32,6 +32,7 @@ from crosscheck.frame.model import FREE, HELD, Frame
 from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions import moment_distribution, slope_deflection
 from crosscheck.opinions.library import results
+from crosscheck.opinions.library.mesh import _places
 from crosscheck.opinions.library.model import Vectors
 from crosscheck.opinions.library.qualification import _has_turned_roller
 from crosscheck.opinions.library.results import _rigid_limit, along, solve_case
@@ -40,8 +41,9 @@ from crosscheck.opinions.moment_distribution import one_way as distribution_one_
 from crosscheck.opinions.moment_distribution.members import cut_up, members
 from crosscheck.opinions.moment_distribution.sways import _refined
 from crosscheck.opinions.moment_distribution.varying import Varying
-from crosscheck.opinions.slope_deflection import balance
+from crosscheck.opinions.slope_deflection import balance, displaced_one_way
 from crosscheck.opinions.slope_deflection.balance import _trial
+from crosscheck.opinions.slope_deflection.displaced_one_way import DisplacedOneWay
 from crosscheck.opinions.slope_deflection.one_way import complementary, wrong
 from crosscheck.opinions.slope_deflection.prepared import END, SPAN, Places, _each_varied, prepared
 from crosscheck.opinions.slope_deflection.second_order import CaseInSecondOrder
@@ -289,6 +291,25 @@ def test_a_place_is_found_by_a_distance_just_before_or_after_it(off: float) -> N
     solved = solve_case(frame, load_table(frame, "q"))
     found = along(frame, solved, np.array([1]), np.array([2.0 + off]), np.array([1]))[0, 2]
     assert found == pytest.approx(Exact(frame).along("q", [1], [2.0], [1])[0, 2], rel=1e-9)
+    last = along(frame, solved, np.array([2]), np.array([4.0 + off]), np.array([-1]))[0, 2]  # the very last place of all
+    assert last == pytest.approx(Exact(frame).along("q", [2], [4.0], [-1])[0, 2], rel=1e-9)
+
+
+def test_places_that_lie_close_together_are_not_parted_by_the_library() -> None:
+    """Two loads 1 cm apart on 6 m, a third beyond: the member is divided at the first and at the third."""
+    loads = "".join(f'{{ member = "B-C", force = 1, at = {at}, direction = "down" }}, ' for at in (1, 1.01, 4))
+    frame = read_frame_text(ZONED.replace("apply = [", f"apply = [{loads}"))
+    found = _places(frame, load_table(frame, "q"), 1, None).tolist()
+    assert {0.0, 1.0, 4.0, 6.0} <= set(found) and 1.01 not in found
+
+
+@pytest.mark.parametrize(("supple", "force"), [(5.0, 7.0), (1e3, 2.0), (1e-2, 300.0)])
+def test_displacements_that_are_nought_are_measured_by_the_largest_force(supple: float, force: float) -> None:
+    """0, 0, e at c, 2c, 4c: 2e/3 off that of one term, against a ten-thousandth of what the force would move."""
+    e = 1e-6 * supple * force
+    pieces = np.array([[[force, 0.0, 0.0], [0.0] * 3]])
+    made = [Vectors(pieces, np.array([[x, 0.0, 0.0]]), np.zeros((1, 3))) for x in (0.0, 0.0, e)]
+    assert _rigid_limit(made, 2.0, supple)[1] == pytest.approx(2 * e / 3 / (1e-4 * supple * force), rel=1e-9)
 
 
 @pytest.mark.parametrize(("cos", "sin", "turned"), [(1.0, 0.0, False), (0.0, 1.0, False), (0.8, 0.6, True)])
@@ -576,6 +597,19 @@ def test_a_piece_that_ends_at_a_face_leaves_no_sliver(share: int, zone: float) -
     frame = read_frame_text(text)
     size = cut_up(members(frame), load_table(frame, "q")).size
     assert ((size == 0.0) | (size > 1e-6)).all() and (size > 1e-6).sum() == 2
+
+
+def test_why_no_state_of_one_way_parts_is_in_balance_is_told_of_the_first_tried(monkeypatch: pytest.MonkeyPatch) -> None:
+    """The first is what the case asks for; the others are guesses after it."""
+    def judged(self: object, table: object, out: object, past: list[object]) -> None:
+        past.extend(["first", "second"])
+
+    monkeypatch.setattr(DisplacedOneWay, "_judged", judged)
+    monkeypatch.setattr(displaced_one_way, "search", lambda first, judge, most: judge(first))
+    monkeypatch.setattr(displaced_one_way, "_why", lambda case: f"why the {case}")
+    frame = read_frame_text(SLACK)
+    one_way = SimpleNamespace(frame=frame, first=lambda table: np.zeros(1, dtype=bool), none_found="none")
+    assert DisplacedOneWay(one_way).settled("q") == "why the first"  # type: ignore[arg-type]
 
 
 def test_of_what_is_wrong_the_worst_is_changed_first() -> None:

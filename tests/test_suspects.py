@@ -12,6 +12,7 @@ import pytest
 
 from crosscheck.answer import Answer
 from crosscheck.frame.model import FREE, HELD, Frame, SelfWeight, Spread, Support
+from crosscheck.frame.reader import read_frame_text
 from crosscheck.opinions.slope_deflection.prepared import prepared
 from crosscheck.problems import UnusableInput
 from crosscheck.suspects import find, search
@@ -99,6 +100,31 @@ def test_another_kind_of_support_is_foretold(seed: int) -> None:
                 continue
             foretold = seen.said + screen.delta_of(screen.effects.reaction, j, [actions])
             assert _far(seen, foretold, answer) < 1e-4, (joint, kind)
+
+
+def test_another_spring_below_a_support_that_settles_is_foretold() -> None:
+    """A portal one foot of which stands on a spring whose ground sinks: three times and half as stiff."""
+    frame = read_frame_text("""
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [0, 4], C = [6, 4], D = [6, 0] }
+members."A-B" = { section = "s", material = "m" }
+members."B-C" = { section = "s", material = "m" }
+members."D-C" = { section = "s", material = "m" }
+supports = { A = "fixed", D = { x = "held", y = 3000, rotation = "held" } }
+analysis.axial = "elastic"
+[loads.q]
+apply = [{ joint = "B", force = 10, direction = "right" }, { joint = "D", settlement = { down = 0.004 } }]
+""")
+    seen, screen = _observed(frame)
+    j = frame.joint_index["D"]
+    for stiffness in (9000.0, 1500.0):
+        actions = screen.base.support_actions("q", np.array([j]), np.array([[HELD, stiffness, HELD]]))[0]
+        changed = replace(frame, supports={**frame.supports, "D": replace(frame.supports["D"], y=stiffness)})
+        answer = solved(changed, ("q",))
+        assert answer is not None
+        assert _far(seen, seen.said + screen.delta_of(screen.effects.reaction, j, [actions]), answer) < 1e-4
 
 
 @pytest.mark.parametrize("seed", FORETOLD)
