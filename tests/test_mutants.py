@@ -612,6 +612,16 @@ def test_why_no_state_of_one_way_parts_is_in_balance_is_told_of_the_first_tried(
     assert DisplacedOneWay(one_way).settled("q") == "why the first"  # type: ignore[arg-type]
 
 
+def test_what_is_out_of_a_state_is_told_by_number() -> None:
+    """Members before supports: a rod and two supports that can only push, of which the last joint's is out."""
+    text = SLACK.replace('A = "fixed"', 'A = { x = "held", y = "push", rotation = "held" }')
+    text = text.replace('D = "fixed"', 'D = { x = "held", y = "push", rotation = "held" }')
+    parts = distribution_one_way.one_way_parts(read_frame_text(text))
+    for out in (frozenset({2}), frozenset({0, 1}), frozenset({1}), frozenset({0, 2})):
+        assert parts.out_of(parts.state(out)) == out
+    assert parts.state(frozenset({2})).out_supports == {("D", "y")}
+
+
 def test_of_what_is_wrong_the_worst_is_changed_first() -> None:
     """Parts 1 and 0 are wrong, in this order, in a frame that does not stand: the first of them changed, all is right."""
     asked: list[frozenset[int]] = []
