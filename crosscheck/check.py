@@ -265,10 +265,11 @@ def _with_pasted(
     tolerance: Tolerance,
 ) -> tuple[Suspect, ...]:  # fmt: skip
     """The suspects, with what only shows when the paste is read again as another case's before them."""
-    from crosscheck.suspects.pasted import pasted_from
+    from crosscheck.suspects.pasted import columns_exchanged, pasted_from
 
     known = {s.says for s in found if s.fits}
-    first = [s for s in pasted_from(opinions, reading, case, cases, tolerance) if s.says not in known]
+    again = (pasted_from, columns_exchanged)
+    first = [s for read in again for s in read(opinions, reading, case, cases, tolerance) if s.says not in known]
     told = {s.says for s in first}
     return (*first, *(s for s in found if s.says not in told))[:MOST_SUSPECTS]
 

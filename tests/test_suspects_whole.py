@@ -197,3 +197,16 @@ def test_results_of_another_case_are_named_whatever_signs_the_paste_has(name: st
             number = [s.says for s in found.suspects if s.fits].index(says) + 1
             assert number <= (1 if name == "hall" else 3), (stated, other)
             assert check.as_suspected(found, number).verdict == "agree"
+
+
+@pytest.mark.parametrize("name", ["hall", "workshop"])
+def test_two_columns_under_each_other_s_heads_are_named(name: str) -> None:
+    """Axial force and shear exchanged: no sign convention makes either of the other."""
+    frame = check.read(CASES / f"{name}.toml")
+    case_name = frame.names[0]
+    case = check.ask(frame, [case_name]).answers["slope-deflection"].cases[case_name]
+    text = printed(frame, {case_name: CaseAnswer(case.ends[..., [1, 0, 2]], case.joints, case.reactions)})
+    found = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), every_case=False)
+    assert found.verdict == "disagree"
+    assert found.suspects[0].says == "the columns of axial force and shear are exchanged"
+    assert check.as_suspected(found, 1).verdict == "agree"

@@ -1,5 +1,5 @@
-"""Results of one case under the name of another, where the paste must be read again to see it: what it leaves open, signs
-and units, was told by the results of the wrong case."""
+"""Results of one case under the name of another, or one quantity's under the head of another, where the paste must be read
+again to see it: what it leaves open, signs and units, was told by the wrong results."""
 
 from __future__ import annotations
 
@@ -20,6 +20,11 @@ from crosscheck.suspects.suspect import Suspect
 if TYPE_CHECKING:
     from crosscheck.check import Opinions
 
+EXCHANGED = (
+    ("axial", "shear", "axial force and shear"), ("fx", "fy", "reactions along x and along y"),
+    ("dx", "dy", "displacements along x and along y"),
+)  # fmt: skip
+"""Quantities of one unit whose columns may stand under each other's heads."""
 FEWEST = 6
 """Values that must fit: fewer would fit some case in some signs."""
 MOST = 60
@@ -40,6 +45,31 @@ def pasted_from(
                 change = Change(claim=partial(_exchanged, case=claim.case, again=again))
                 out.append(Suspect("load case", (), says, 1.0, change=change, fits=True))
     return out
+
+
+def columns_exchanged(
+    opinions: Opinions, reading: Reading, asked: str | None, claims: Sequence[CaseClaim], tolerance: Tolerance
+) -> list[Suspect]:
+    """Pairs of columns of which each stands under the other's head: exchanged, the whole claim agrees."""
+    out = []
+    compared = sum(claim.compared for claim in claims)
+    for one, two, words in EXCHANGED if compared >= FEWEST else ():
+        other = {one: two, two: one}
+        if not {one, two} <= {e.quantity for e in reading.entries}:
+            continue
+        entries = tuple(replace(e, quantity=other.get(e.quantity, e.quantity)) for e in reading.entries)
+        closed = close(replace(reading, entries=entries), opinions.frame, opinions.answers, asked, tolerance)
+        judged = ClaimComparison(opinions.frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
+        fits = bool(judged) and all(c.verdict == "agree" for c in judged) and sum(c.compared for c in judged) >= compared
+        if fits and not closed.undecided and not closed.reversed_load:
+            says = f"the columns of {words} are exchanged"
+            change = Change(claim=partial(_instead, again=closed))
+            out.append(Suspect("transcription", (), says, 1.0, change=change, fits=True))
+    return out
+
+
+def _instead(closed: ClosedClaim, again: ClosedClaim) -> ClosedClaim:
+    return again
 
 
 def _read_as(
