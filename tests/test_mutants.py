@@ -23,7 +23,7 @@ from crosscheck.audit.signatures import DEEP, LIGHT, REVERSED, signatures
 from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
-from crosscheck.compare.fit_conventions import member_runs
+from crosscheck.compare.fit_conventions import conventions, member_runs
 from crosscheck.compare.fit_stations import at_jumps
 from crosscheck.compare.tolerance import full_restraint
 from crosscheck.frame.kinematics import study
@@ -1002,3 +1002,12 @@ def test_a_place_near_a_point_load_is_meant_at_it() -> None:
     member = np.array([1, 1, 1, 1, 1, 1, 1, 2, 2, 0])
     found = at_jumps(frame, member, x, np.full(len(x), 0.005))
     assert found.tolist() == [1, 1, 2, 2, 5, 5, 1.02, 3, 3, 1.003]
+
+
+@pytest.mark.parametrize(("kind", "quantity", "words"), [
+    ("reaction", "fy", "on the frame, up"), ("displacement", "dx", "right"), ("end", "axial", "tension"),
+])  # fmt: skip
+def test_a_direction_that_is_said_in_words_is_told_as_such(kind: str, quantity: str, words: str) -> None:
+    """Positive is what the words say: up, right, tension."""
+    (only,) = conventions(SimpleNamespace(kind=kind, quantity=quantity, said=True))  # type: ignore[arg-type]
+    assert words in only.words and only.sign == 1
