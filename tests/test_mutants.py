@@ -578,7 +578,7 @@ def test_the_peak_of_the_path_is_looked_for_between_two_points_of_it() -> None:
     low = balance._Point(np.array([0.1, 0.86]), np.array([1.0, 0.0]), None)
     found = path._peak(low, point(0.7))
     assert found is not None and found.share == pytest.approx(0.9, abs=1e-6)
-    assert all(0.0 < step < 0.6 for step in steps)
+    assert steps[0] == pytest.approx(0.3) and all(0.0 < step < 0.6 for step in steps)  # at first half way
 
 
 def test_the_critical_load_of_rigid_members_is_that_of_no_softness(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -979,6 +979,7 @@ apply = [{ joint = "B", settlement = { down = 0.01, rotation = 0.002 } }]
 """)
     found = full_restraint(frame, load_table(frame, "q"))
     assert found.moments == pytest.approx(2e4 * (6 * 0.01 / 16 + 4 * 0.002 / 4), rel=1e-12)
+    assert found.displacements == pytest.approx(0.01 + 0.002 * 4, rel=1e-12)  # the turn carried over the longest member
 
 
 @pytest.mark.parametrize(("rule", "runs"), [
