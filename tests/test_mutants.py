@@ -25,6 +25,7 @@ from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.compare.fit_conventions import conventions, member_runs
 from crosscheck.compare.fit_stations import at_jumps
+from crosscheck.compare.opinions import Comparison
 from crosscheck.compare.tolerance import full_restraint
 from crosscheck.frame.kinematics import study
 from crosscheck.frame.loads import load_table
@@ -1012,3 +1013,18 @@ def test_a_direction_that_is_said_in_words_is_told_as_such(kind: str, quantity: 
     """Positive is what the words say: up, right, tension."""
     (only,) = conventions(SimpleNamespace(kind=kind, quantity=quantity, said=True))  # type: ignore[arg-type]
     assert words in only.words and only.sign == 1
+
+
+@pytest.mark.parametrize(("table", "row", "place"), [
+    ("joints", (2, 1), ("joints", "dy", "C", "")), ("reactions", (3, 0), ("reactions", "fx", "D", "")),
+    ("ends", (1, 1, 2), ("member_ends", "moment", "C", "B-C")), ("ends", (2, 0, 0), ("member_ends", "axial", "C", "C-D")),
+])  # fmt: skip
+def test_where_opinions_differ_is_told_by_name(table: str, row: tuple[int, ...], place: tuple[str, str, str, str]) -> None:
+    frame = read_frame_text(ZONED)
+    one = slope_deflection.opine(frame, study(frame))
+    other = moment_distribution.opine(frame, study(frame))
+    values = getattr(other.cases["q"], table).copy()  # type: ignore[union-attr]
+    values[row] += 0.3 * np.nanmax(np.abs(values))
+    changed = replace(other, cases={"q": replace(other.cases["q"], **{table: values})})  # type: ignore[union-attr, type-var]
+    found = Comparison(frame, {"slope-deflection": one, "moment-distribution": changed}).judge("q")  # type: ignore[dict-item]
+    assert [(d.place.of, d.place.quantity, d.place.joint, d.place.member or "") for d in found.differences] == [place]
