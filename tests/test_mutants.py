@@ -14,6 +14,7 @@ import pytest
 from scipy import sparse
 from scipy.sparse.linalg import splu
 
+from crosscheck import check
 from crosscheck.answer import ACROSS, MOMENT, CaseAnswer, WorkTable
 from crosscheck.audit import bound, fit, one_way
 from crosscheck.audit.bound import ForceBound, hypercircle
@@ -23,6 +24,7 @@ from crosscheck.audit.signatures import DEEP, LIGHT, REVERSED, signatures
 from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
+from crosscheck.claims import FrameNames, read_claim_text
 from crosscheck.compare.fit_conventions import conventions, member_runs
 from crosscheck.compare.fit_stations import at_jumps
 from crosscheck.compare.opinions import Comparison
@@ -1028,3 +1030,13 @@ def test_where_opinions_differ_is_told_by_name(table: str, row: tuple[int, ...],
     changed = replace(other, cases={"q": replace(other.cases["q"], **{table: values})})  # type: ignore[union-attr, type-var]
     found = Comparison(frame, {"slope-deflection": one, "moment-distribution": changed}).judge("q")  # type: ignore[dict-item]
     assert [(d.place.of, d.place.quantity, d.place.joint, d.place.member or "") for d in found.differences] == [place]
+
+
+def test_of_how_many_values_a_claim_is_judged() -> None:
+    """Three members' six end actions, four joints' three displacements, two supports' three reactions; six are claimed."""
+    frame = read_frame_text(ZONED)
+    said = slope_deflection.opine(frame, study(frame)).cases["q"]  # type: ignore[union-attr]
+    rows = [f"B-C\t{joint}\t" + "\t".join(f"{v:.6g}" for v in said.ends[1, e]) for e, joint in enumerate("BC")]
+    text = "\n".join(["Load case: q", "Member\tJoint\tN [kN]\tV [kN]\tM [kNm]", *rows])
+    (case,) = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), suspects=False).cases
+    assert (case.compared, case.of, case.verdict) == (6, 3 * 6 + 4 * 3 + 2 * 3, "agree")
