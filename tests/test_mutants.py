@@ -27,6 +27,7 @@ from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.claims import FrameNames, read_claim_text
 from crosscheck.compare.fit_conventions import conventions, member_runs
 from crosscheck.compare.fit_stations import at_jumps
+from crosscheck.compare.fit_variants import in_global_axes
 from crosscheck.compare.opinions import Comparison
 from crosscheck.compare.tolerance import full_restraint
 from crosscheck.frame.kinematics import study
@@ -1040,3 +1041,13 @@ def test_of_how_many_values_a_claim_is_judged() -> None:
     text = "\n".join(["Load case: q", "Member\tJoint\tN [kN]\tV [kN]\tM [kNm]", *rows])
     (case,) = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), suspects=False).cases
     assert (case.compared, case.of, case.verdict) == (6, 3 * 6 + 4 * 3 + 2 * 3, "agree")
+
+
+def test_reactions_along_a_turned_support_s_axes_in_global_ones() -> None:
+    """3.0 and 2.0 along axes turned by thirty degrees, each within a half of its last digit: what may be lost adds up."""
+    frame = read_frame_text(ZONED.replace('D = "fixed"', 'D = { x = "held", y = "held", rotation = "held", angle = 30 }'))
+    reading = read_claim_text("Load case: q\nJoint\tFx [kN]\tFy [kN]\nD\t3.0\t2.0\n", FrameNames.of(frame))
+    found = {e.quantity: e.number for e in in_global_axes(list(reading.entries), frame) or ()}
+    cos, sin = np.sqrt(0.75), 0.5
+    assert (found["fx"].value, found["fy"].value) == pytest.approx((3 * cos - 2 * sin, 3 * sin + 2 * cos))
+    assert (found["fx"].half, found["fy"].half) == pytest.approx((0.05 * (cos + sin), 0.05 * (cos + sin)))
