@@ -43,6 +43,7 @@ from crosscheck.opinions.library.results import _rigid_limit, along, solve_case
 from crosscheck.opinions.moment_distribution import critical, gradual
 from crosscheck.opinions.moment_distribution import one_way as distribution_one_way
 from crosscheck.opinions.moment_distribution.members import cut_up, members
+from crosscheck.opinions.moment_distribution.stretches import parts_needed
 from crosscheck.opinions.moment_distribution.sways import _refined
 from crosscheck.opinions.moment_distribution.varying import Varying
 from crosscheck.opinions.slope_deflection import balance, displaced_one_way
@@ -626,6 +627,14 @@ def test_what_is_out_of_a_state_is_told_by_number() -> None:
     assert parts.state(frozenset({2})).out_supports == {("D", "y")}
 
 
+@pytest.mark.parametrize(("push", "off"), [(15900.0, False), (16100.0, True)])
+def test_a_member_shears_off_under_its_shear_stiffness(push: float, off: bool) -> None:
+    """G shear_area of the weaker piece: 80e6 times 2e-4."""
+    frame = read_frame_text(STEPPED[: STEPPED.index("apply")] + "apply = []\n")
+    m = members(frame)
+    assert parts_needed(m, cut_up(m, load_table(frame, "q")), np.array([-push]))[1] is off
+
+
 def test_of_what_is_wrong_the_worst_is_changed_first() -> None:
     """Parts 1 and 0 are wrong, in this order, in a frame that does not stand: the first of them changed, all is right."""
     asked: list[frozenset[int]] = []
@@ -984,6 +993,23 @@ apply = [{ joint = "B", settlement = { down = 0.01, rotation = 0.002 } }]
     found = full_restraint(frame, load_table(frame, "q"))
     assert found.moments == pytest.approx(2e4 * (6 * 0.01 / 16 + 4 * 0.002 / 4), rel=1e-12)
     assert found.displacements == pytest.approx(0.01 + 0.002 * 4, rel=1e-12)  # the turn carried over the longest member
+
+
+def test_displacements_of_full_restraint_count_the_curvature_of_temperature() -> None:
+    """alpha dT / depth over the longest member squared: 1e-5 30 / 0.3 on 4 m."""
+    frame = read_frame_text("""
+units = "kN m"
+materials.m = { E = 200e6, alpha = 1e-5 }
+sections.s = { I = 1e-4, A = 5e-3, depth = 0.3 }
+joints = { A = [0, 0], B = [4, 0] }
+members."A-B" = { section = "s", material = "m" }
+supports = { A = "fixed", B = "fixed" }
+[loads.q]
+apply = [{ member = "A-B", difference = 30 }]
+""")
+    found = full_restraint(frame, load_table(frame, "q"))
+    assert found.displacements == pytest.approx(1e-3 * 16, rel=1e-12)
+    assert found.moments == pytest.approx(2e4 * 1e-3, rel=1e-12)
 
 
 @pytest.mark.parametrize(("rule", "runs"), [
