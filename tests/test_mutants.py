@@ -25,6 +25,7 @@ from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.claims import FrameNames, read_claim_text
+from crosscheck.compare.fit import UnitChoice, _one_system
 from crosscheck.compare.fit_conventions import conventions, member_runs
 from crosscheck.compare.fit_stations import at_jumps
 from crosscheck.compare.fit_variants import in_global_axes
@@ -1077,3 +1078,11 @@ def test_reactions_along_a_turned_support_s_axes_in_global_ones() -> None:
     cos, sin = np.sqrt(0.75), 0.5
     assert (found["fx"].value, found["fy"].value) == pytest.approx((3 * cos - 2 * sin, 3 * sin + 2 * cos))
     assert (found["fx"].half, found["fy"].half) == pytest.approx((0.05 * (cos + sin), 0.05 * (cos + sin)))
+
+
+def test_of_units_that_fit_alike_the_frame_s_own_are_taken() -> None:
+    own_force, own_arm = UnitChoice("kN", 1.0, True), UnitChoice("m", 1.0, True)
+    force, arm = UnitChoice("N", 1e-3, False), UnitChoice("mm", 1e-3, False)
+    trial = SimpleNamespace(batch=SimpleNamespace(quantity="moment"), best=lambda unit: SimpleNamespace(misses=0))
+    (found,) = _one_system([trial], [force, own_force], [arm, own_arm]).values()  # type: ignore[list-item]
+    assert found is not None and (found.text, found.own) == ("kN m", True)
