@@ -828,6 +828,8 @@ def test_the_rounding_of_a_slack_rod_s_own_force_lets_its_length_be_off() -> Non
     more[3 * k + 2] += 7.0
     (one,), (other,) = (gaps(s, "q", shift) for s in (system, replace(system, rounding=more)))
     assert other.allowed - one.allowed == pytest.approx(7.0 * 5 / (200e6 * 4e-4), rel=1e-6)
+    shift[3 * frame.joint_index["B"]] = 0.01  # to the right, three fifths of it along the rod
+    assert abs(gaps(system, "q", shift)[0].reach - one.reach) == pytest.approx(0.006, rel=1e-9)
 
 
 def test_the_bound_on_each_value_is_as_wide_as_it_is_made_safe(monkeypatch: pytest.MonkeyPatch) -> None:
