@@ -1015,6 +1015,22 @@ apply = [{ member = "A-B", difference = 30 }]
     assert found.moments == pytest.approx(2e4 * 1e-3, rel=1e-12)
 
 
+def test_forces_of_full_restraint_are_those_of_the_strain() -> None:
+    """EA (misfit + movement) / L of a member that may shorten: 1e6 kN (0.002 + 0.001) / 4."""
+    frame = read_frame_text("""
+units = "kN m"
+materials.m = { E = 200e6 }
+sections.s = { I = 1e-4, A = 5e-3 }
+joints = { A = [0, 0], B = [4, 0] }
+members."A-B" = { section = "s", material = "m" }
+supports = { A = "fixed", B = "fixed" }
+analysis.axial = "elastic"
+[loads.q]
+apply = [{ member = "A-B", misfit = 0.002 }, { joint = "B", settlement = { down = 0.001 } }]
+""")
+    assert full_restraint(frame, load_table(frame, "q")).forces == pytest.approx(1e6 * 0.003 / 4, rel=1e-12)
+
+
 @pytest.mark.parametrize(("rule", "runs"), [
     ("frame", [1, 1, 1, 1, 1, 1]), ("reversed", [-1] * 6), ("rightward", [1, -1, 1, -1, 1, -1]),
     ("leftward", [-1, 1, -1, 1, -1, 1]), ("downward", [1, -1, -1, 1, 1, -1]),
