@@ -1104,3 +1104,18 @@ def test_of_units_that_fit_alike_the_frame_s_own_are_taken() -> None:
     trial = SimpleNamespace(batch=SimpleNamespace(quantity="moment"), best=lambda unit: SimpleNamespace(misses=0))
     (found,) = _one_system([trial], [force, own_force], [arm, own_arm]).values()  # type: ignore[list-item]
     assert found is not None and (found.text, found.own) == ("kN m", True)
+
+
+def test_a_way_of_reading_that_two_values_tell_is_asked_for() -> None:
+    """Of one member: axial forces and shears are alike at the joints and at the faces of its zones, both moments not."""
+    frame = read_frame_text(ZONED)
+    said = slope_deflection.opine(frame, study(frame))
+    ends = said.cases["q"].ends[1].copy()  # type: ignore[union-attr]
+    x, side = np.array([0.0, 0.5, 5.75, 6.0]), np.array([1, 1, -1, -1])
+    at = said.spans.along("q", np.ones(4, dtype=np.int64), x, side)[:, MOMENT]  # type: ignore[union-attr]
+    ends[0, 2], ends[1, 2] = at[1] * np.sign(ends[0, 2] / at[0]), at[2] * np.sign(ends[1, 2] / at[3])
+    rows = [f"B-C\t{joint}\t" + "\t".join(f"{v:.6g}" for v in ends[e]) for e, joint in enumerate("BC")]
+    text = "\n".join(["Load case: q", "Member\tJoint\tN [kN]\tV [kN]\tM [kNm]", *rows])
+    found = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), suspects=False)
+    assert found.verdict == "undecided"
+    assert any("but only 2 values tell that" in reason for reason in found.undecided), (found.verdict, found.undecided)
