@@ -25,7 +25,7 @@ from crosscheck.audit.slack import gaps
 from crosscheck.audit.statics import TOGETHER_CHECK, storeys
 from crosscheck.audit.varying import CHANGE, _depth_marks
 from crosscheck.claims import FrameNames, read_claim_text
-from crosscheck.compare.fit import UnitChoice, _one_system
+from crosscheck.compare.fit import UnitChoice, _extreme_scale, _one_system
 from crosscheck.compare.fit_conventions import conventions, member_runs
 from crosscheck.compare.fit_stations import at_jumps
 from crosscheck.compare.fit_variants import in_global_axes
@@ -1119,3 +1119,14 @@ def test_a_way_of_reading_that_two_values_tell_is_asked_for() -> None:
     found = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), suspects=False)
     assert found.verdict == "undecided"
     assert any("but only 2 values tell that" in reason for reason in found.undecided), (found.verdict, found.undecided)
+
+
+def test_an_extreme_of_the_frame_is_measured_by_a_tenth_of_the_case_at_least() -> None:
+    """Extremes of 1 and -0.5 where the case's moments are of the size of 50; and of 20, which is more than a tenth."""
+    batch = SimpleNamespace(quantity="moment", member=np.array([-1, -1]), joint=np.array([-1, -1]))
+    reference = SimpleNamespace(
+        extremes_of=lambda quantity, member, joint: np.array([[1.0, -0.5], [20.0, -3.0]]),
+        scales=SimpleNamespace(of=lambda quantity: 50.0),
+    )
+    found = _extreme_scale(batch, np.array([True, True]), reference)  # type: ignore[arg-type]
+    assert found.tolist() == [5.0, 20.0]
