@@ -122,7 +122,8 @@ def test_what_full_restraint_and_traces_of_it_cause() -> None:
 def test_the_forces_on_each_member_add_up() -> None:
     """3 kN at a point and 2 to 4 kN/m from 1 m to 5 m: 3 + 3 x 4."""
     text = BEAM.replace("force = 12, at = 4, ", "force = 3, at = 4, ").replace(
-        '"down" }]', '"down" }, { member = "A-B", varying = [2, 4], start = 1, end = 5, direction = "down" }]')
+        '"down" }]', '"down" }, { member = "A-B", varying = [2, 4], start = 1, end = 5, direction = "down" }]'
+    )
     frame = read_frame_text(text)
     assert member_load_totals(frame, load_table(frame, "q")) == pytest.approx([15.0])
 
