@@ -88,7 +88,8 @@ ROOMS = {
     ),
     "compare": Room(
         "crosscheck/compare", 100, 5,
-        {"*": ("tests/test_mutants.py", "tests/test_claims_variants.py", "tests/test_claims.py",
+        {"*": ("tests/test_mutants.py", "tests/test_mutants_compare_a.py", "tests/test_mutants_compare_b.py",
+               "tests/test_mutants_compare_c.py", "tests/test_claims_variants.py", "tests/test_claims.py",
                "tests/test_claims_parts.py", "tests/test_claims_wild.py",
                "tests/published/test_patterns.py", "tests/test_claims_pastes.py",
                "tests/test_envelope_claims.py", "tests/test_exact_limits.py", "tests/test_cases.py")},
