@@ -40,9 +40,6 @@ OPINIONS = {
 }
 
 
-MOST_SUSPECTS = 10
-
-
 @dataclass(frozen=True, slots=True)
 class Opinions:
     """What the opinions say of a frame, and how they compare. `names`: the cases and combinations asked for."""
@@ -199,8 +196,7 @@ def verify(
     if suspects and verdict == "disagree":
         # Another case pasted by mistake is among the suspects, so all cases are needed now.
         whole = opinions if opinions.names == frame.names else ask(frame)
-        found, why = _suspects(whole, closed, cases, tolerance)
-        found = _with_pasted(found, whole, reading, case, cases, tolerance)
+        found, why = _suspects(whole, reading, case, closed, cases, tolerance)
     return Verification(
         opinions, closed, tolerance, tuple(cases), audits, found, verdict, tuple(grounds), closed.undecided, why,
         printed_input(frame, reading),
@@ -250,28 +246,19 @@ def compare_printouts(
 
 
 def _suspects(
-    opinions: Opinions, closed: ClosedClaim, cases: list[CaseClaim], tolerance: Tolerance
-) -> tuple[tuple[Suspect, ...], str]:
+    opinions: Opinions, reading: Reading, case: str | None, closed: ClosedClaim, cases: list[CaseClaim],
+    tolerance: Tolerance,
+) -> tuple[tuple[Suspect, ...], str]:  # fmt: skip
     """What would explain the difference, or why nothing is named. A search that fails inside says so: the verdict, which
     does not hang on it, must not be lost to it."""
     try:
-        return _searched(opinions, closed, cases, tolerance)
+        from crosscheck.suspects.pasted import read_again
+
+        found, why = _searched(opinions, closed, cases, tolerance)
+        found = read_again(found, opinions, reading, case, cases, tolerance)
+        return found, "" if found else why
     except Exception as error:  # noqa: BLE001 - as for an opinion that fails inside
         return (), f"the search for suspects failed inside ({type(error).__name__}: {error}); please report this"
-
-
-def _with_pasted(
-    found: tuple[Suspect, ...], opinions: Opinions, reading: Reading, case: str | None, cases: list[CaseClaim],
-    tolerance: Tolerance,
-) -> tuple[Suspect, ...]:  # fmt: skip
-    """The suspects, with what only shows when the paste is read again as another case's before them."""
-    from crosscheck.suspects.pasted import columns_exchanged, pasted_from
-
-    known = {s.says for s in found if s.fits}
-    again = (pasted_from, columns_exchanged)
-    first = [s for read in again for s in read(opinions, reading, case, cases, tolerance) if s.says not in known]
-    told = {s.says for s in first}
-    return (*first, *(s for s in found if s.says not in told))[:MOST_SUSPECTS]
 
 
 def _searched(

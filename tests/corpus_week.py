@@ -537,7 +537,7 @@ def tried_envelope(frame: Frame, mistake: Mistake, values: list[ClaimedValue], s
     claims = judged(frame, opinions, closed)
     start = time.process_time()
     wrong = any(c.verdict == "disagree" for c in claims)
-    suspects = check._suspects(opinions, closed, claims, CLAIM)[0] if wrong else ()
+    suspects = check._searched(opinions, closed, claims, CLAIM)[0] if wrong else ()
     spent = time.process_time() - start
     rank = next((k + 1 for k, s in enumerate(suspects) if named_by(mistake, s) or _as_said(frame, s, closed)), 0)
     says = tuple(f"{s.kind} {s.where}: {s.says}" for s in suspects[:3])

@@ -980,19 +980,21 @@ apply = [{ joint = "B", force = 10, direction = "right" }, { joint = "B", force 
 
 # --- the comparison
 
-
-def test_moments_of_full_restraint_add_up_sinking_and_turning() -> None:
-    """6 EI / L^2 times the sinking and 4 EI / L times the turn of one end (slope-deflection): EI = 2e4 kN m2, 4 m."""
-    frame = read_frame_text("""
+HELD_FAST = """
 units = "kN m"
-materials.m = { E = 200e6 }
-sections.s = { I = 1e-4, A = 5e-3 }
+materials.m = { E = 200e6, alpha = 1e-5 }
+sections.s = { I = 1e-4, A = 5e-3, depth = 0.3 }
 joints = { A = [0, 0], B = [4, 0] }
 members."A-B" = { section = "s", material = "m" }
 supports = { A = "fixed", B = "fixed" }
+analysis.axial = "elastic"
 [loads.q]
-apply = [{ joint = "B", settlement = { down = 0.01, rotation = 0.002 } }]
-""")
+"""
+
+
+def test_moments_of_full_restraint_add_up_sinking_and_turning() -> None:
+    """6 EI / L^2 times the sinking and 4 EI / L times the turn of one end (slope-deflection): EI = 2e4 kN m2, 4 m."""
+    frame = read_frame_text(HELD_FAST + 'apply = [{ joint = "B", settlement = { down = 0.01, rotation = 0.002 } }]\n')
     found = full_restraint(frame, load_table(frame, "q"))
     assert found.moments == pytest.approx(2e4 * (6 * 0.01 / 16 + 4 * 0.002 / 4), rel=1e-12)
     assert found.displacements == pytest.approx(0.01 + 0.002 * 4, rel=1e-12)  # the turn carried over the longest member
@@ -1000,16 +1002,7 @@ apply = [{ joint = "B", settlement = { down = 0.01, rotation = 0.002 } }]
 
 def test_displacements_of_full_restraint_count_the_curvature_of_temperature() -> None:
     """alpha dT / depth over the longest member squared: 1e-5 30 / 0.3 on 4 m."""
-    frame = read_frame_text("""
-units = "kN m"
-materials.m = { E = 200e6, alpha = 1e-5 }
-sections.s = { I = 1e-4, A = 5e-3, depth = 0.3 }
-joints = { A = [0, 0], B = [4, 0] }
-members."A-B" = { section = "s", material = "m" }
-supports = { A = "fixed", B = "fixed" }
-[loads.q]
-apply = [{ member = "A-B", difference = 30 }]
-""")
+    frame = read_frame_text(HELD_FAST + 'apply = [{ member = "A-B", difference = 30 }]\n')
     found = full_restraint(frame, load_table(frame, "q"))
     assert found.displacements == pytest.approx(1e-3 * 16, rel=1e-12)
     assert found.moments == pytest.approx(2e4 * 1e-3, rel=1e-12)
@@ -1017,17 +1010,8 @@ apply = [{ member = "A-B", difference = 30 }]
 
 def test_forces_of_full_restraint_are_those_of_the_strain() -> None:
     """EA (misfit + movement) / L of a member that may shorten: 1e6 kN (0.002 + 0.001) / 4."""
-    frame = read_frame_text("""
-units = "kN m"
-materials.m = { E = 200e6 }
-sections.s = { I = 1e-4, A = 5e-3 }
-joints = { A = [0, 0], B = [4, 0] }
-members."A-B" = { section = "s", material = "m" }
-supports = { A = "fixed", B = "fixed" }
-analysis.axial = "elastic"
-[loads.q]
-apply = [{ member = "A-B", misfit = 0.002 }, { joint = "B", settlement = { down = 0.001 } }]
-""")
+    loads = '{ member = "A-B", misfit = 0.002 }, { joint = "B", settlement = { down = 0.001 } }'
+    frame = read_frame_text(HELD_FAST + f"apply = [{loads}]\n")
     assert full_restraint(frame, load_table(frame, "q")).forces == pytest.approx(1e6 * 0.003 / 4, rel=1e-12)
 
 

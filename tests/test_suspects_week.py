@@ -153,7 +153,7 @@ def test_a_right_envelope_has_no_suspects() -> None:
     closed = closed_claim(envelope_values(frame, answer, "uls"))
     claims = judged(frame, opinions, closed)
     assert [c.verdict for c in claims] == ["agree"]
-    assert check._suspects(opinions, closed, claims, CLAIM)[0] == ()
+    assert check._searched(opinions, closed, claims, CLAIM)[0] == ()
 
 
 def test_an_envelopes_values_are_extremes_over_all_combinations_of_the_changed_frame() -> None:
@@ -163,7 +163,7 @@ def test_an_envelopes_values_are_extremes_over_all_combinations_of_the_changed_f
     answer, opinions = solved(other, frame.envelopes["uls"].names), opinions_on(frame)
     assert answer is not None and opinions is not None
     closed = closed_claim(envelope_values(other, answer, "uls"))
-    first = check._suspects(opinions, closed, judged(frame, opinions, closed), CLAIM)[0][0]
+    first = check._searched(opinions, closed, judged(frame, opinions, closed), CLAIM)[0][0]
     assert (first.kind, first.fits) == ("stiffness", True)
     assert first.explains == pytest.approx(1.0, abs=1e-9)
 
@@ -175,7 +175,7 @@ def test_what_explains_an_envelope_as_well_is_said() -> None:
     answer = solved(other, frame.envelopes[name].names)
     assert answer is not None and opinions is not None
     closed = closed_claim(envelope_values(other, answer, name))
-    suspects = check._suspects(opinions, closed, judged(frame, opinions, closed), CLAIM)[0]
+    suspects = check._searched(opinions, closed, judged(frame, opinions, closed), CLAIM)[0]
     assert {s.kind for s in suspects if s.fits} == {"load case", "stiffness"}
     assert all("results of single combinations would tell" in " ".join(s.tied_with) for s in suspects if s.fits)
 

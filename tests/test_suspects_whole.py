@@ -15,7 +15,7 @@ from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.frame.model import FREE, Frame, Spread
 from crosscheck.opinions import slope_deflection
 from crosscheck.opinions.slope_deflection.prepared import prepared
-from crosscheck.suspects import Suspect, search
+from crosscheck.suspects import Suspect, pasted, search
 from tests.benchmarks.bench_suspects import grid
 from tests.corpus import CLAIM, _sway_alone, _with_zones, case_values, closed_claim, judged, opinions_on, solved, times
 from tests.make_cases import CASES
@@ -210,3 +210,17 @@ def test_two_columns_under_each_other_s_heads_are_named(name: str) -> None:
     assert found.verdict == "disagree"
     assert found.suspects[0].says == "the columns of axial force and shear are exchanged"
     assert check.as_suspected(found, 1).verdict == "agree"
+
+
+def test_a_second_reading_that_fails_inside_does_not_cost_the_verdict(monkeypatch: pytest.MonkeyPatch) -> None:
+    frame = check.read(CASES / "hall.toml")
+    name = frame.names[0]
+    case = check.ask(frame, [name]).answers["slope-deflection"].cases[name]
+    text = printed(frame, {name: CaseAnswer(case.ends[..., [1, 0, 2]], case.joints, case.reactions)})
+
+    def fails(*_: object) -> None:
+        raise ZeroDivisionError
+
+    monkeypatch.setattr(pasted, "close", fails)
+    found = check.verify(frame, read_claim_text(text, FrameNames.of(frame)), every_case=False)
+    assert found.verdict == "disagree" and "failed inside (ZeroDivisionError" in found.no_suspects

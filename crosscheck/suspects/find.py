@@ -29,6 +29,8 @@ EXPLAINS_ENOUGH = 0.9
 """A change that removes less of the difference than this, and leaves values beyond tolerance, is no suspect."""
 NEAR = 4.0
 """How much worse in score than the first a suspect may be and still be named."""
+LIMIT = 10
+"""Most suspects named."""
 MOST_TIES = 5
 NOTHING_EXPLAINS = "nothing tried, alone or in pairs, explains the difference; start from statics and compatibility"
 NOTHING_ALONE = (
@@ -56,7 +58,7 @@ def find(
     closed: ClosedClaim,
     claims: Sequence[CaseClaim],
     tolerance: Tolerance,
-    limit: int = 10,
+    limit: int = LIMIT,
 ) -> tuple[Suspect, ...]:
     """The suspects alone; see search()."""
     return search(frame, opinions, closed, claims, tolerance, limit).suspects
@@ -68,7 +70,7 @@ def search(
     closed: ClosedClaim,
     claims: Sequence[CaseClaim],
     tolerance: Tolerance,
-    limit: int = 10,
+    limit: int = LIMIT,
     over: Mapping[int, tuple[str, ...]] | None = None,
     explained: bool = False,
 ) -> Findings:

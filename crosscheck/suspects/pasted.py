@@ -3,18 +3,19 @@ again to see it: what it leaves open, signs and units, was told by the wrong res
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import replace
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass, replace
 from functools import partial
 from typing import TYPE_CHECKING
 
-from crosscheck.claims.reading import Reading
+from crosscheck.claims.reading import Entry, Reading
 from crosscheck.compare.claim import CaseClaim, ClaimComparison
 from crosscheck.compare.claimed import ClosedClaim
 from crosscheck.compare.closing import close
 from crosscheck.compare.enveloped import as_of, name_of
 from crosscheck.compare.tolerance import Tolerance
 from crosscheck.suspects.changes import Change
+from crosscheck.suspects.find import LIMIT
 from crosscheck.suspects.suspect import Suspect
 
 if TYPE_CHECKING:
@@ -31,57 +32,67 @@ MOST = 60
 """Cases tried."""
 
 
-def pasted_from(
-    opinions: Opinions, reading: Reading, asked: str | None, claims: Sequence[CaseClaim], tolerance: Tolerance
-) -> list[Suspect]:
-    """Cases whose results the paste has in full where it names another. asked: the case given to what names none."""
-    out = []
-    for claim in claims:
-        wrong = claim.verdict == "disagree" and 2 * len(claim.differences) >= claim.compared >= FEWEST
-        for other in opinions.frame.names[:MOST] if wrong and claim.case in opinions.frame.names else ():
-            again = None if other == claim.case else _read_as(opinions, reading, asked, claim, other, tolerance)
-            if again is not None:
-                says = f"the results of {other} stand under {claim.case}"
-                change = Change(claim=partial(_exchanged, case=claim.case, again=again))
-                out.append(Suspect("load case", (), says, 1.0, change=change, fits=True))
-    return out
+def read_again(
+    found: Sequence[Suspect], opinions: Opinions, reading: Reading, asked: str | None, claims: Sequence[CaseClaim],
+    tolerance: Tolerance,
+) -> tuple[Suspect, ...]:  # fmt: skip
+    """The suspects found, with those before them that only show when the paste is read again. asked: the case given to what
+    names none."""
+    known = {s.says for s in found if s.fits}
+    again = _Again(opinions, reading, asked, tolerance)
+    first = [s for s in (*again.other_cases(claims), *again.exchanged(claims)) if s.says not in known]
+    told = {s.says for s in first}
+    return (*first, *(s for s in found if s.says not in told))[:LIMIT]
 
 
-def columns_exchanged(
-    opinions: Opinions, reading: Reading, asked: str | None, claims: Sequence[CaseClaim], tolerance: Tolerance
-) -> list[Suspect]:
-    """Pairs of columns of which each stands under the other's head: exchanged, the whole claim agrees."""
-    out = []
-    compared = sum(claim.compared for claim in claims)
-    for one, two, words in EXCHANGED if compared >= FEWEST else ():
-        other = {one: two, two: one}
-        if not {one, two} <= {e.quantity for e in reading.entries}:
-            continue
-        entries = tuple(replace(e, quantity=other.get(e.quantity, e.quantity)) for e in reading.entries)
-        closed = close(replace(reading, entries=entries), opinions.frame, opinions.answers, asked, tolerance)
-        judged = ClaimComparison(opinions.frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
-        fits = bool(judged) and all(c.verdict == "agree" for c in judged) and sum(c.compared for c in judged) >= compared
-        if fits and not closed.undecided and not closed.reversed_load:
-            says = f"the columns of {words} are exchanged"
-            change = Change(claim=partial(_instead, again=closed))
-            out.append(Suspect("transcription", (), says, 1.0, change=change, fits=True))
-    return out
+@dataclass(frozen=True)
+class _Again:
+    opinions: Opinions
+    reading: Reading
+    asked: str | None
+    tolerance: Tolerance
+
+    def other_cases(self, claims: Sequence[CaseClaim]) -> Iterator[Suspect]:
+        """Cases whose results the paste has in full where it names another."""
+        names = self.opinions.frame.names
+        for claim in claims:
+            wrong = claim.verdict == "disagree" and 2 * len(claim.differences) >= claim.compared >= FEWEST
+            meant = (claim.case, None) if self.asked == claim.case else (claim.case,)
+            own = [e for e in self.reading.entries if name_of(e) in meant]
+            tried = names[:MOST] if wrong and claim.case in names else ()
+            for other in (name for name in tried if name != claim.case):
+                closed = self._agreeing([as_of(e, other) for e in own], None, claim.compared)
+                if closed is not None:
+                    says = f"the results of {other} stand under {claim.case}"
+                    yield _suspect("load case", says, partial(_exchanged, case=claim.case, again=closed))
+
+    def exchanged(self, claims: Sequence[CaseClaim]) -> Iterator[Suspect]:
+        """Pairs of columns of which each stands under the other's head: exchanged, the whole claim agrees."""
+        compared = sum(claim.compared for claim in claims)
+        for one, two, words in EXCHANGED if compared >= FEWEST else ():
+            other = {one: two, two: one}
+            entries = [replace(e, quantity=other.get(e.quantity, e.quantity)) for e in self.reading.entries]
+            both = other.keys() <= {e.quantity for e in self.reading.entries}
+            closed = self._agreeing(entries, self.asked, compared) if both else None
+            if closed is not None:
+                says = f"the columns of {words} are exchanged"
+                yield _suspect("transcription", says, partial(_instead, again=closed))
+
+    def _agreeing(self, entries: Sequence[Entry], asked: str | None, compared: int) -> ClosedClaim | None:
+        """The claim that these entries make; None where not all of at least so many values agree."""
+        o = self.opinions
+        closed = close(replace(self.reading, entries=tuple(entries)), o.frame, o.answers, asked, self.tolerance)
+        judged = ClaimComparison(o.frame, o.answers, o.judgements, self.tolerance).judge(closed)
+        fits = all(c.verdict == "agree" for c in judged) and sum(c.compared for c in judged) >= compared
+        return closed if fits and not closed.undecided and not closed.reversed_load else None
+
+
+def _suspect(kind: str, says: str, claim: Callable[[ClosedClaim], ClosedClaim]) -> Suspect:
+    return Suspect(kind, (), says, 1.0, change=Change(claim=claim), fits=True)
 
 
 def _instead(closed: ClosedClaim, again: ClosedClaim) -> ClosedClaim:
     return again
-
-
-def _read_as(
-    opinions: Opinions, reading: Reading, asked: str | None, claim: CaseClaim, other: str, tolerance: Tolerance
-) -> ClosedClaim | None:
-    """The case's part of the paste as results of another; None where not every value then agrees."""
-    names = (claim.case, None) if asked == claim.case else (claim.case,)
-    entries = tuple(as_of(e, other) for e in reading.entries if name_of(e) in names)
-    closed = close(replace(reading, entries=entries), opinions.frame, opinions.answers, None, tolerance)
-    judged = ClaimComparison(opinions.frame, opinions.answers, opinions.judgements, tolerance).judge(closed)
-    fits = len(judged) == 1 and judged[0].verdict == "agree" and judged[0].compared >= claim.compared
-    return closed if fits and not closed.undecided and not closed.reversed_load else None
 
 
 def _exchanged(closed: ClosedClaim, case: str, again: ClosedClaim) -> ClosedClaim:
